@@ -1,0 +1,49 @@
+"""What can be wrong with a body or a question about it, in physical terms.
+
+CoreError
+├── NotPhysical         a size, conductivity, map or source that no body can have
+├── NoSteadyState       the flows given cannot balance, so no steady field exists
+├── OutsideBody         a place asked for that is not in the closed body
+├── AccuracyNotReached  the bound reached is wider than the one asked for
+└── Interrupted         the time allowed for the computation is over
+
+A message names the thing, the value received and what is allowed. `field` says which part of the body or the
+question it is about, as a path of plain words such as `("sources", 1, "density")`, empty when it is the whole.
+"""
+
+
+class CoreError(Exception):
+    """Base of all errors that the solver core raises on purpose."""
+
+    def __init__(self, message: str, field: tuple[str | int, ...] = ()) -> None:
+        super().__init__(message)
+        self.message = message
+        self.field = field
+
+
+class NotPhysical(CoreError):
+    """A body that cannot exist: a negative length, a map that does not cover its face."""
+
+
+class NoSteadyState(CoreError):
+    """Every face is insulated or has a given inflow and the flows do not add up to zero."""
+
+    def __init__(self, message: str, imbalance: float, field: tuple[str | int, ...] = ()) -> None:
+        super().__init__(message, field)
+        self.imbalance = imbalance
+
+
+class OutsideBody(CoreError):
+    """A grid coordinate, point, plane or rectangle that lies outside the closed body."""
+
+
+class AccuracyNotReached(CoreError):
+    """The bound that can be promised is wider than the accuracy asked for."""
+
+    def __init__(self, message: str, bound: float, field: tuple[str | int, ...] = ()) -> None:
+        super().__init__(message, field)
+        self.bound = bound
+
+
+class Interrupted(CoreError):
+    """The time allowed was over before the answer was complete."""
