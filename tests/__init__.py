@@ -1,0 +1,1 @@
+"""Tests of the service and its core: `python3 -m tests`."""
