@@ -1,0 +1,1 @@
+"""Independent evidence for the solver core: published figures and high-precision values."""
