@@ -31,7 +31,7 @@ ENV PATH=/opt/stillfield/venv/bin:$PATH \
     OMP_NUM_THREADS=1 \
     STILLFIELD_HOST=0.0.0.0 \
     STILLFIELD_PORT=8000 \
-    STILLFIELD_STORE=/data/problems.sqlite3
+    STILLFIELD_STORE_PATH=/data/stillfield-problems.sqlite3
 WORKDIR /opt/stillfield
 USER 10001:10001
 VOLUME /data

@@ -112,9 +112,7 @@ def test_every_package_imported_is_declared(package: str) -> None:
 
     undeclared = {}
     for module, names in graph(read_sources(package)).items():
-        for top in (
-            {name.partition(".")[0] for name in names} - sys.stdlib_module_names - {"service", "tests"}
-        ):
+        for top in {name.partition(".")[0] for name in names} - known:
             providers = {canonicalize_name(name) for name in distributions.get(top, [top])}
             if not {COMES_WITH.get(name, name) for name in providers} & declared:
                 undeclared[module] = top
