@@ -11,9 +11,11 @@ rank of the table of cell values or readings, found by a singular value decompos
 
 from __future__ import annotations
 
+import hashlib
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -42,6 +44,18 @@ class Profiles:
         for array in (self.knots, self.left, self.right):
             array.setflags(write=False)
 
+    @cached_property
+    def digest(self) -> bytes:
+        """Fingerprint of the numbers, by which eigen-integrals are cached."""
+        content = b"".join(array.tobytes() for array in (self.knots, self.left, self.right))
+        return hashlib.sha256(content + repr(self.left.shape).encode()).digest()
+
+    def __hash__(self) -> int:
+        return hash(self.digest)
+
+    def __eq__(self, other: object) -> bool:
+        return isinstance(other, Profiles) and self.digest == other.digest
+
     @property
     def n_profiles(self) -> int:
         """How many functions there are."""
@@ -65,6 +79,10 @@ class Profiles:
         """Slopes, shape (n_points, n_profiles); the mean of both sides exactly on a knot."""
         slopes = self.slopes
         return 0.5 * (slopes[self._piece(coordinates, "left")] + slopes[self._piece(coordinates, "right")])
+
+    def scaled(self, factor: float) -> Profiles:
+        """The same profiles times a number."""
+        return self if factor == 1.0 else Profiles(self.knots, self.left * factor, self.right * factor)
 
     def integrals(self, low: FloatArray, high: FloatArray) -> FloatArray:
         """Integral of each profile over each interval, shape (n_intervals, n_profiles)."""
@@ -124,16 +142,19 @@ class Patch:
 class FaceMap:
     """Data over a face. Build one with `uniform`, `patches` or `readings`.
 
-    first, second: the profiles along the face's two axes; the map is the sum of the products of their columns.
+    first_knots, second_knots: places along the face's two axes, the first 0; the last may be infinite.
+    table: a value for each cell between the knots, or for each pair of knots when the data are bilinear.
+    bilinear: which of the two.
     extent: lengths of the face the map was made for, or None for a uniform map, which fits every face.
-    lowest, highest: range of the data.
+    usual: the background, or for readings the lowest; the level other faces are likely to share.
     """
 
-    first: Profiles
-    second: Profiles
+    first_knots: FloatArray
+    second_knots: FloatArray
+    table: FloatArray
+    bilinear: bool
     extent: tuple[float, float] | None
-    lowest: float
-    highest: float
+    usual: float
 
     @classmethod
     def uniform(cls, value: float) -> FaceMap:
@@ -141,8 +162,7 @@ class FaceMap:
         if not math.isfinite(value):
             raise NotPhysical("A value on a face is not a finite number.")
         knots = np.array([0.0, math.inf])
-        ones = np.ones((1, 1))
-        return cls(Profiles(knots, value * ones, value * ones), Profiles(knots, ones, ones), None, value, value)
+        return cls(knots, knots, np.full((1, 1), float(value)), False, None, float(value))
 
     @classmethod
     def patches(cls, extent: tuple[float, float], background: float, patches: Sequence[Patch]) -> FaceMap:
@@ -151,24 +171,17 @@ class FaceMap:
         extent: lengths of the face along its two axes; the second may be infinite.
         Raises NotPhysical for a patch that is empty, outside the face or over another one.
         """
-        _check_patches(extent, patches)
-        knots = [
+        _check_patches(extent, background, patches)
+        first, second = (
             np.unique([0.0, extent[0], *(p for patch in patches for p in (patch.where.p_low, patch.where.p_high))]),
             np.unique([0.0, extent[1], *(q for patch in patches for q in (patch.where.q_low, patch.where.q_high))]),
-        ]
-        cells = np.full((knots[0].size - 1, knots[1].size - 1), background)
-        for patch in patches:
-            rows = slice(*np.searchsorted(knots[0], (patch.where.p_low, patch.where.p_high)))
-            columns = slice(*np.searchsorted(knots[1], (patch.where.q_low, patch.where.q_high)))
-            cells[rows, columns] = patch.value
-        along_first, along_second = _factor(cells)
-        return cls(
-            Profiles(knots[0], along_first, along_first.copy()),
-            Profiles(knots[1], along_second, along_second.copy()),
-            extent,
-            float(cells.min()),
-            float(cells.max()),
         )
+        cells = np.full((first.size - 1, second.size - 1), float(background))
+        for patch in patches:
+            rows = slice(*np.searchsorted(first, (patch.where.p_low, patch.where.p_high)))
+            columns = slice(*np.searchsorted(second, (patch.where.q_low, patch.where.q_high)))
+            cells[rows, columns] = patch.value
+        return cls(first, second, cells, False, extent, float(background))
 
     @classmethod
     def readings(
@@ -196,19 +209,44 @@ class FaceMap:
             )
         if not np.isfinite(values).all():
             raise NotPhysical("The table of readings has entries that are not finite numbers.", ("table",))
-        along_first, along_second = _factor(values)
-        return cls(
-            _hats(np.asarray(first_axis, dtype=float), along_first, extent[0], extend, "first_axis"),
-            _hats(np.asarray(second_axis, dtype=float), along_second, extent[1], extend, "second_axis"),
-            extent,
-            float(values.min()),
-            float(values.max()),
-        )
+        first, values = _reach_edges(np.asarray(first_axis, dtype=float), values, extent[0], extend, "first_axis")
+        second, values = _reach_edges(np.asarray(second_axis, dtype=float), values.T, extent[1], extend, "second_axis")
+        return cls(first, second, values.T.copy(), True, extent, float(values.min()))
+
+    @property
+    def lowest(self) -> float:
+        """Least of the data."""
+        return float(self.table.min())
+
+    @property
+    def highest(self) -> float:
+        """Greatest of the data."""
+        return float(self.table.max())
 
     @property
     def is_uniform(self) -> bool:
         """Whether the data are the same everywhere."""
         return self.lowest == self.highest
+
+    @property
+    def first(self) -> Profiles:
+        """Profiles along the first axis; the map is the sum of products of their columns with those of `second`."""
+        return self._factors[0]
+
+    @property
+    def second(self) -> Profiles:
+        """Profiles along the second axis."""
+        return self._factors[1]
+
+    @cached_property
+    def _factors(self) -> tuple[Profiles, Profiles]:
+        along_first, along_second = _factor(self.table)
+        return self._profiles(self.first_knots, along_first), self._profiles(self.second_knots, along_second)
+
+    def _profiles(self, knots: FloatArray, values: FloatArray) -> Profiles:
+        if self.bilinear:
+            return Profiles(knots, values[:-1].copy(), values[1:].copy())
+        return Profiles(knots, values, values.copy())
 
     def at(self, first: FloatArray, second: FloatArray) -> FloatArray:
         """Values on the grid of two axes, shape (first.size, second.size)."""
@@ -216,20 +254,7 @@ class FaceMap:
 
     def minus(self, reference: float) -> FaceMap:
         """The same map counted from another zero."""
-        if reference == 0.0:
-            return self
-        if self.is_uniform:
-            shifted = FaceMap.uniform(self.lowest - reference)
-            return FaceMap(shifted.first, shifted.second, self.extent, shifted.lowest, shifted.highest)
-        constant = np.full((self.first.left.shape[0], 1), -reference)
-        ones = np.ones((self.second.left.shape[0], 1))
-        return FaceMap(
-            _beside(self.first, constant),
-            _beside(self.second, ones),
-            self.extent,
-            self.lowest - reference,
-            self.highest - reference,
-        )
+        return replace(self, table=self.table - reference, usual=self.usual - reference)
 
     def check_covers(self, first_length: float, second_length: float, face: str) -> None:
         """Raise NotPhysical unless the map was made for a face of these lengths."""
@@ -241,21 +266,31 @@ class FaceMap:
             )
 
 
-def _beside(profiles: Profiles, constant: FloatArray) -> Profiles:
-    return Profiles(profiles.knots, np.hstack([profiles.left, constant]), np.hstack([profiles.right, constant]))
-
-
 def _factor(table: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Columns A and B with table = A B^T, as few as the numerical rank of the table asks for (at least one)."""
-    if (table == table.flat[0]).all():
-        return np.full((table.shape[0], 1), table.flat[0]), np.ones((table.shape[1], 1))
-    left, singular, right = np.linalg.svd(table, full_matrices=False)
-    rank = max(1, int(np.count_nonzero(singular > RANK_TOLERANCE * max(table.shape) * singular[0])))
-    return left[:, :rank] * singular[:rank], right[:rank].T.copy()
+    """Columns A and B with table = A B^T, as few as the numerical rank of the table asks for (at least one).
+
+    Rows and columns of zeros stay exactly zero: the reference level drives nothing.
+    """
+    rows, columns = table.any(axis=1), table.any(axis=0)
+    along_first, along_second = np.zeros((table.shape[0], 1)), np.zeros((table.shape[1], 1))
+    core = table[np.ix_(rows, columns)]
+    if core.size == 0:
+        return along_first, along_second
+    if (core == core.flat[0]).all():
+        along_first[rows], along_second[columns] = core.flat[0], 1.0
+        return along_first, along_second
+    left, singular, right = np.linalg.svd(core, full_matrices=False)
+    rank = int(np.count_nonzero(singular > RANK_TOLERANCE * max(table.shape) * singular[0]))
+    along_first, along_second = np.zeros((table.shape[0], rank)), np.zeros((table.shape[1], rank))
+    along_first[rows] = left[:, :rank] * singular[:rank]
+    along_second[columns] = right[:rank].T
+    return along_first, along_second
 
 
-def _hats(axis: FloatArray, values: FloatArray, length: float, extend: bool, name: str) -> Profiles:
-    """Profiles linear between the places of an axis, held constant from its ends to the edges if allowed."""
+def _reach_edges(
+    axis: FloatArray, values: FloatArray, length: float, extend: bool, name: str
+) -> tuple[FloatArray, FloatArray]:
+    """An axis of readings and its table, rows along the axis, carried to the edges of the face if allowed."""
     if axis.size < 2 or not np.isfinite(axis).all() or (np.diff(axis) <= 0).any():
         raise NotPhysical("An axis of readings needs at least two places in increasing order.", (name,))
     if axis[0] < 0 or axis[-1] > length:
@@ -272,10 +307,12 @@ def _hats(axis: FloatArray, values: FloatArray, length: float, extend: bool, nam
         axis, values = np.concatenate([[0.0], axis]), np.vstack([values[:1], values])
     if axis[-1] < length:
         axis, values = np.concatenate([axis, [length]]), np.vstack([values, values[-1:]])
-    return Profiles(axis, values[:-1].copy(), values[1:].copy())
+    return axis, values
 
 
-def _check_patches(extent: tuple[float, float], patches: Sequence[Patch]) -> None:
+def _check_patches(extent: tuple[float, float], background: float, patches: Sequence[Patch]) -> None:
+    if not math.isfinite(background):
+        raise NotPhysical("The background is not a finite number.", ("background",))
     for index, patch in enumerate(patches):
         where = patch.where
         if not math.isfinite(patch.value):

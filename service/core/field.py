@@ -1,0 +1,237 @@
+"""Potential and flux density on grids and at points, by the time form, with a bound at every place."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core import time_form
+from service.core.errors import AccuracyNotReached, OutsideBody
+from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order
+from service.core.lines.time_response import Places, TimeResponse, respond
+from service.core.problem import AXES, Body
+from service.core.singular import has_no_finite_flux
+from service.core.split import Part
+
+FloatArray = NDArray[np.float64]
+KeepGoing = Callable[[], None]
+
+# Points are served in runs of this many, so that memory stays bounded and a computation can be stopped.
+POINTS_AT_ONCE = 2048
+
+# The flux is computed on a step finer by this factor in error, since it is asked next to edges where it is large.
+FLUX_HEADROOM = 1e-3
+
+# Headroom between the error factor aimed at and the sum of absolute values that multiplies it, per part.
+SPREAD_HEADROOM = 8.0
+
+
+@dataclass(frozen=True, eq=False)
+class Grid:
+    """Three axes of coordinates whose tensor product is asked for; an axis of one place makes a plane or a line."""
+
+    x: FloatArray
+    y: FloatArray
+    z: FloatArray
+
+    @property
+    def axes(self) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """The axes in the order x, y, z."""
+        return self.x, self.y, self.z
+
+    @property
+    def shape(self) -> tuple[int, int, int]:
+        """How many places along each axis."""
+        return self.x.size, self.y.size, self.z.size
+
+
+@dataclass(frozen=True, eq=False)
+class Field:
+    """Answers at places: shape (n_x, n_y, n_z) on a grid, (n,) at points.
+
+    potential, potential_bound: values and a bound that holds at all of them.
+    flux: flow per area along x, y, z, shape (3, ...), NaN exactly on a line where it has no finite value.
+    flux_bound: bound on each component, the shape of the potential. Both are None where flux was not asked for.
+    node_count: nodes of the time form, the most that any part took.
+    """
+
+    potential: FloatArray
+    potential_bound: float
+    flux: FloatArray | None
+    flux_bound: FloatArray | None
+    node_count: int
+
+
+@dataclass(frozen=True, eq=False)
+class Setting:
+    """What the fields of one body are computed from."""
+
+    body: Body
+    lines: tuple[Line, Line, Line]
+    parts: tuple[Part, ...]
+    reference: float
+    span: float
+
+
+def on_grid(
+    setting: Setting, grid: Grid, *, tolerance: float, with_flux: bool, keep_going: KeepGoing | None = None
+) -> Field:
+    """Field on the tensor product of three axes.
+
+    tolerance: absolute, in the unit of the potential.
+    Raises OutsideBody and AccuracyNotReached.
+    """
+    check_inside(setting.body, grid.axes)
+    potential, bound, nodes = _accurate(setting, grid.axes, tolerance, True, keep_going)
+    flux = flux_bound = None
+    if with_flux:
+        flux, flux_bound = _flux(setting, grid.axes, tolerance, True, keep_going)
+        x, y, z = np.meshgrid(*grid.axes, indexing="ij", sparse=True)
+        flux[:, has_no_finite_flux(setting.body, (x, y, z), grid.shape)] = np.nan
+    return Field(potential, bound, flux, flux_bound, nodes)
+
+
+def at_points(
+    setting: Setting, points: FloatArray, *, tolerance: float, with_flux: bool, keep_going: KeepGoing | None = None
+) -> Field:
+    """Field at points, shape (n, 3). Raises OutsideBody and AccuracyNotReached."""
+    columns = (points[:, 0], points[:, 1], points[:, 2])
+    check_inside(setting.body, columns)
+    pieces = []
+    for start in range(0, points.shape[0], POINTS_AT_ONCE):
+        chunk = [column[start : start + POINTS_AT_ONCE] for column in columns]
+        potential, bound, nodes = _accurate(setting, chunk, tolerance, False, keep_going)
+        flux = flux_bound = None
+        if with_flux:
+            flux, flux_bound = _flux(setting, chunk, tolerance, False, keep_going)
+            flux[:, has_no_finite_flux(setting.body, (chunk[0], chunk[1], chunk[2]), chunk[0].shape)] = np.nan
+        pieces.append(Field(potential, bound, flux, flux_bound, nodes))
+    return pieces[0] if len(pieces) == 1 else _joined(pieces)
+
+
+def check_inside(body: Body, columns: Sequence[FloatArray]) -> None:
+    """Raise OutsideBody for a coordinate that is not in the closed body."""
+    for axis, column in enumerate(columns):
+        wrong = ~((column >= 0) & (column <= body.size[axis]) & np.isfinite(column))
+        if wrong.any():
+            index = int(np.argmax(wrong))
+            raise OutsideBody(
+                f"{AXES[axis]} = {column[index]:g} is outside the body, which reaches from 0 to "
+                f"{body.size[axis]:g} along {AXES[axis]}.",
+                (AXES[axis], index),
+            )
+
+
+def rough_potential(setting: Setting, columns: Sequence[FloatArray]) -> FloatArray:
+    """Potential on a small grid to a few digits, for scales."""
+    values = (VALUE, VALUE, VALUE)
+    return _sum_of_parts(setting, columns, values, time_form.COARSEST_STEP, True, None)[0]
+
+
+def kept_rows() -> time_form.Rows:
+    """A function that answers for a line as `respond` does and keeps the answers for parts that share them."""
+    kept: dict[tuple[object, ...], TimeResponse] = {}
+
+    def rows(line: Line, drive: Drive, places: Places, times: FloatArray) -> TimeResponse:
+        key = (line, drive, places.order, places.low.tobytes(), times[0], times.size)
+        if key not in kept:
+            kept[key] = respond(line, drive, places, times)
+        return kept[key]
+
+    return rows
+
+
+def step_for(setting: Setting, tolerance: float) -> float:
+    """The step in ln t to begin with for an absolute tolerance."""
+    size = SPREAD_HEADROOM * max(setting.span, 1e-300) * max(len(setting.parts), 1)
+    return time_form.step_for(max(tolerance, 1e-300) / size)
+
+
+def _accurate(
+    setting: Setting, columns: Sequence[FloatArray], tolerance: float, tensor: bool, keep_going: KeepGoing | None
+) -> tuple[FloatArray, float, int]:
+    """Potential within the tolerance, its bound and the nodes taken; a finer step where the first is not enough."""
+    step = step_for(setting, tolerance)
+    while True:
+        potential, bounds, nodes = _sum_of_parts(setting, columns, (VALUE, VALUE, VALUE), step, tensor, keep_going)
+        bound = _largest(bounds, tensor)
+        if bound <= tolerance:
+            return potential + setting.reference, bound, nodes
+        if step <= time_form.FINEST_STEP:
+            raise AccuracyNotReached(
+                f"The accuracy asked for is {tolerance:.3g}; the best bound that can be promised here is {bound:.3g}.",
+                bound,
+                ("accuracy",),
+            )
+        step = time_form.step_for(0.5 * time_form.step_error(step) * tolerance / bound)
+
+
+def _largest(bounds: list[FloatArray], tensor: bool) -> float:
+    if tensor:
+        return min(float(bound.max()) for bound in bounds)
+    return float(bounds[0].max())
+
+
+def _flux(
+    setting: Setting, columns: Sequence[FloatArray], tolerance: float, tensor: bool, keep_going: KeepGoing | None
+) -> tuple[FloatArray, FloatArray]:
+    shape = tuple(column.size for column in columns) if tensor else columns[0].shape
+    flux, flux_bound = np.zeros((3, *shape)), np.zeros(shape)
+    step = step_for(setting, FLUX_HEADROOM * tolerance)
+    for axis in range(3):
+        orders: list[Order] = [VALUE, VALUE, VALUE]
+        orders[axis] = SLOPE
+        slope, bounds, _ = _sum_of_parts(setting, columns, (orders[0], orders[1], orders[2]), step, tensor, keep_going)
+        factor = math.sqrt(setting.body.conductivity[axis])
+        flux[axis] = -factor * slope
+        if tensor:
+            x, y, z = bounds
+            bound = np.minimum(np.minimum(x[:, None, None], y[:, None]), z)
+        else:
+            bound = bounds[0]
+        np.maximum(flux_bound, factor * bound, out=flux_bound)
+    return flux, flux_bound
+
+
+def _sum_of_parts(
+    setting: Setting,
+    columns: Sequence[FloatArray],
+    orders: tuple[Order, Order, Order],
+    step: float,
+    tensor: bool,
+    keep_going: KeepGoing | None,
+) -> tuple[FloatArray, list[FloatArray], int]:
+    shape = tuple(column.size for column in columns) if tensor else columns[0].shape
+    places = [Places(column, order) for column, order in zip(columns, orders, strict=True)]
+    total = np.zeros(shape)
+    bounds = [np.zeros(column.size) for column in columns] if tensor else [np.zeros(shape)]
+    nodes, rows = 0, kept_rows()
+    for part in setting.parts:
+        if keep_going is not None:
+            keep_going()
+        integral = time_form.integrate(setting.lines, part, places, step, rows)
+        nodes = max(nodes, integral.node_count)
+        if tensor:
+            total += time_form.on_grid(integral)
+            for bound, more in zip(bounds, time_form.bound_on_grid(integral), strict=True):
+                bound += more
+        else:
+            total += time_form.at_points(integral)
+            bounds[0] += time_form.bound_at_points(integral)
+    return total, bounds, nodes
+
+
+def _joined(pieces: list[Field]) -> Field:
+    fluxes = [piece.flux for piece in pieces if piece.flux is not None]
+    bounds = [piece.flux_bound for piece in pieces if piece.flux_bound is not None]
+    return Field(
+        np.concatenate([piece.potential for piece in pieces]),
+        max(piece.potential_bound for piece in pieces),
+        np.concatenate(fluxes, axis=1) if fluxes else None,
+        np.concatenate(bounds) if bounds else None,
+        max(piece.node_count for piece in pieces),
+    )

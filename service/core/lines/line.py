@@ -1,0 +1,94 @@
+"""One axis of a body as a line: a rod with a condition at each end.
+
+A field in a box is a product of three such lines in the time form. Distances are taken in the caller's length unit,
+where the difference of two given coordinates is exact, and only then scaled by 1 / sqrt(conductivity), which makes
+the body isotropic (Carslaw and Jaeger 1959, section 1.20). Everything a line answers is in the scaled length.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core.maps import Profiles
+
+FloatArray = NDArray[np.float64]
+
+# What is asked of a line: the value, the slope, or the antiderivative along the scaled length.
+Order = Literal[-1, 0, 1]
+SLOPE: Order = -1
+VALUE: Order = 0
+PRIMITIVE: Order = 1
+
+
+@dataclass(frozen=True)
+class Line:
+    """A rod from 0 to `length`.
+
+    length: in the caller's unit, > 0; infinite for a half-line that begins at 0.
+    scale: scaled length per caller's length, 1 / sqrt(conductivity).
+    film_low, film_high: H of phi' = H phi (low) and phi' = -H phi (high) per scaled length; 0 insulated, inf held.
+    """
+
+    length: float
+    scale: float
+    film_low: float
+    film_high: float
+
+    @cached_property
+    def extent(self) -> float:
+        """Scaled length."""
+        return self.length * self.scale
+
+    @property
+    def is_endless(self) -> bool:
+        """Whether the line has no far end."""
+        return self.length == math.inf
+
+    @property
+    def biot_numbers(self) -> tuple[float, float]:
+        """H times the scaled length at both ends; of a finite line."""
+        return self.film_low * self.extent, self.film_high * self.extent
+
+    @property
+    def keeps_its_mean(self) -> bool:
+        """Whether nothing leaves the line at either end."""
+        return self.film_low == 0.0 and self.film_high == 0.0 and not self.is_endless
+
+
+@dataclass(frozen=True)
+class WallDrive:
+    """A line driven at one end with a unit of its data: 1 if held, ambient 1 behind a film, inflow 1 if insulated.
+
+    An inflow counts as potential per scaled length.
+    """
+
+    high: bool
+
+
+Drive = Profiles | WallDrive
+
+
+def wall_distance(line: Line, coordinates: FloatArray, *, high: bool) -> FloatArray:
+    """Scaled distance of places from one end."""
+    return (line.length - coordinates) * line.scale if high else coordinates * line.scale
+
+
+def breaks_of(line: Line, profiles: Profiles) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Knots with the jumps of value and of slope that the profiles, zero outside the line, have there.
+
+    Returns knots in the caller's unit, shape (n_breaks,), jumps and slope jumps per scaled length, shape
+    (n_breaks, n_profiles). On a half-line the last piece ends nowhere and has no last break.
+    """
+    slopes = profiles.slopes / line.scale
+    nothing = np.zeros((1, profiles.n_profiles))
+    jumps = np.vstack([profiles.left, nothing]) - np.vstack([nothing, profiles.right])
+    slope_jumps = np.vstack([slopes, nothing]) - np.vstack([nothing, slopes])
+    if line.is_endless:
+        return profiles.knots[:-1], jumps[:-1], slope_jumps[:-1]
+    return np.minimum(profiles.knots, line.length), jumps, slope_jumps

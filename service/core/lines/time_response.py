@@ -1,0 +1,116 @@
+"""What a line answers at given times, by images while they are short and by eigenfunctions after that.
+
+Both forms are exact to rounding where they meet, so that a field, a mean or a total is one integral over time of
+products of three lines' answers, whatever drives the body.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core.lines import images
+from service.core.lines.line import PRIMITIVE, Drive, Line, Order, WallDrive
+from service.core.lines.modes import eigen_integrals, modes_of
+from service.core.maps import Profiles
+
+FloatArray = NDArray[np.float64]
+
+# At t / l^2 = images.LATEST the first mode left out is below exp(-(30 pi)^2 * 0.006) = 7e-24.
+MODE_COUNT = 30
+
+
+@dataclass(frozen=True, eq=False)
+class Places:
+    """Where a line is asked, and for what: values or slopes at places, or integrals over intervals.
+
+    low: places, or lower ends of the intervals, in the caller's unit, shape (n,). high: upper ends, or None.
+    order: VALUE or SLOPE for places; PRIMITIVE for intervals.
+    """
+
+    low: FloatArray
+    order: Order
+    high: FloatArray | None = None
+
+    def profile(self, line: Line, profiles: Profiles) -> FloatArray:
+        """The same asked of the profiles themselves, shape (n, n_profiles), per scaled length."""
+        if self.high is not None:
+            return profiles.integrals(self.low, self.high) * line.scale
+        if self.order == -1:
+            return profiles.slope_at(self.low) / line.scale
+        return profiles.at(self.low)
+
+    def initial(self, line: Line, profiles: Profiles) -> FloatArray:
+        """What the line answers just after time 0: the profile, but 0 on a held end and for a slope on any end."""
+        values = self.profile(line, profiles)
+        if self.high is None:
+            for place, film in ((0.0, line.film_low), (line.length, line.film_high)):
+                if film == math.inf or self.order == -1:
+                    values[self.low == place] = 0.0
+        return values
+
+
+@dataclass(frozen=True, eq=False)
+class TimeResponse:
+    """Answer of a line to its drive.
+
+    total: shape (n, n_times, n_profiles). initial: what it is just after time 0, shape (n, n_profiles): the profile,
+    0 on a held end and for slopes on any end, and zero for a driven end. departure: total less initial, with digits of its own.
+    """
+
+    total: FloatArray
+    departure: FloatArray
+    initial: FloatArray
+
+
+def respond(line: Line, drive: Drive, places: Places, times: FloatArray) -> TimeResponse:
+    """Answer of a line at the given times (scaled length squared), which have to increase."""
+    count = int(np.searchsorted(times, images.LATEST * line.extent**2, side="right"))
+    root_time = np.sqrt(times[:count])
+    columns = 1 if isinstance(drive, WallDrive) else drive.n_profiles
+    total = np.empty((places.low.size, times.size, columns))
+    if isinstance(drive, WallDrive):
+        initial = np.zeros((places.low.size, 1))
+        early = _early_wall(line, drive, places, root_time)
+    else:
+        initial = places.initial(line, drive)
+        profile = places.profile(line, drive)
+        early = _early_departure(line, drive, places, root_time)
+        # Where the line leaves its profile at once, the departure is from what it becomes.
+        early = np.where((profile == initial)[:, None, :], early, early + (profile - initial)[:, None, :])
+    departure = np.empty_like(total)
+    departure[:, :count] = early
+    total[:, :count] = early + initial[:, None, :]
+    if count < times.size:
+        total[:, count:] = _late(line, drive, places, times[count:])
+        departure[:, count:] = total[:, count:] - initial[:, None, :]
+    return TimeResponse(total, departure, initial)
+
+
+def _early_wall(line: Line, drive: WallDrive, places: Places, root_time: FloatArray) -> FloatArray:
+    if places.high is None:
+        return images.wall_kernel(line, drive, places.low, root_time, places.order)
+    upper = images.wall_kernel(line, drive, places.high, root_time, PRIMITIVE)
+    return upper - images.wall_kernel(line, drive, places.low, root_time, PRIMITIVE)
+
+
+def _early_departure(line: Line, drive: Profiles, places: Places, root_time: FloatArray) -> FloatArray:
+    if places.high is None:
+        return images.departure(line, drive, places.low, root_time, places.order)
+    upper = images.departure(line, drive, places.high, root_time, PRIMITIVE)
+    return upper - images.departure(line, drive, places.low, root_time, PRIMITIVE)
+
+
+def _late(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
+    modes = modes_of(line, MODE_COUNT)
+    shapes = modes.at(places.low, places.order)
+    if places.high is not None:
+        shapes = modes.at(places.high, places.order) - shapes
+    decay = np.exp(-np.outer(modes.rates, times))
+    strengths = eigen_integrals(line, drive, MODE_COUNT)
+    # One matrix product for all profiles: (n, modes) times (modes, times x profiles).
+    driven = (decay[:, :, None] * strengths[:, None, :]).reshape(MODE_COUNT, -1)
+    return (shapes @ driven).reshape(places.low.size, times.size, strengths.shape[1])

@@ -1,0 +1,137 @@
+"""Lines on the surface where the flux density has no finite value.
+
+- Inside a face: where its data jump (flux like 1/r beside a held face, like ln r along an inflow or film face), and
+  where the slope of a held face's data jumps (ln r).
+- On an edge of two held faces: where their values differ (1/r).
+- On an edge of a held face with an inflow or film face: where the flow the held data drive through the edge differs
+  from what the other face gives (ln r).
+
+At other edges of a rectangular body the local solution is a polynomial to first order and the flux is finite.
+Source: local solutions in a corner of angle pi/2 (Carslaw and Jaeger 1959, chapter V; Grisvard, Elliptic Problems in
+Nonsmooth Domains, 1985, chapter 4, for the powers that occur; from memory).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core.maps import FaceMap
+from service.core.problem import AXES, Body, Face, Film, Held, axes_along, axis_of, is_high, map_of
+
+FloatArray = NDArray[np.float64]
+
+# Data that differ by less than this part of their size do not jump: they were given in decimal.
+SAME = 1e-12
+
+
+@dataclass(frozen=True, eq=False)
+class LocalData:
+    """Data of a face seen from the four sides of places on it: values and slopes along its two axes, (4, ...)."""
+
+    values: FloatArray
+    slopes: tuple[FloatArray, FloatArray]
+
+
+def local_data(face_map: FaceMap, p: FloatArray, q: FloatArray) -> LocalData:
+    """Limits of the data from both sides along both axes; on the border of the face from inside only."""
+    knots_p, knots_q, table = face_map.first_knots, face_map.second_knots, face_map.table
+    p, q = np.broadcast_arrays(p, q)
+    values, slopes_p, slopes_q = [], [], []
+    for side_p in ("left", "right"):
+        i = np.clip(np.searchsorted(knots_p, p, side=side_p) - 1, 0, knots_p.size - 2)  # type: ignore[call-overload]
+        for side_q in ("left", "right"):
+            j = np.clip(np.searchsorted(knots_q, q, side=side_q) - 1, 0, knots_q.size - 2)  # type: ignore[call-overload]
+            if not face_map.bilinear:
+                values.append(table[i, j])
+                slopes_p.append(np.zeros(p.shape))
+                slopes_q.append(np.zeros(p.shape))
+                continue
+            width_p, width_q = knots_p[i + 1] - knots_p[i], knots_q[j + 1] - knots_q[j]
+            s = (p - knots_p[i]) / width_p
+            t = np.where(np.isfinite(width_q), (q - knots_q[j]) / width_q, 0.0)
+            low, high = table[i, j] * (1 - t) + table[i, j + 1] * t, table[i + 1, j] * (1 - t) + table[i + 1, j + 1] * t
+            near, far = table[i, j] * (1 - s) + table[i + 1, j] * s, table[i, j + 1] * (1 - s) + table[i + 1, j + 1] * s
+            values.append(low * (1 - s) + high * s)
+            slopes_p.append((high - low) / width_p)
+            slopes_q.append((far - near) / width_q)
+    return LocalData(np.array(values), (np.array(slopes_p), np.array(slopes_q)))
+
+
+def has_no_finite_flux(body: Body, places: Sequence[FloatArray], shape: tuple[int, ...]) -> NDArray[np.bool_]:
+    """Where the flux has no finite value; places: three arrays that broadcast to the shape."""
+    found = np.zeros(shape, dtype=bool)
+    for face in body.present_faces:
+        axis = axis_of(face)
+        end = body.size[axis] if is_high(face) else 0.0
+        on_face = places[axis] == end
+        if not on_face.any():
+            continue
+        found |= on_face & _jumps(body, face, places)
+        if isinstance(body.faces[face], Held):
+            for other in body.present_faces:
+                if axis_of(other) != axis:
+                    other_end = body.size[axis_of(other)] if is_high(other) else 0.0
+                    on_edge = on_face & (places[axis_of(other)] == other_end)
+                    if on_edge.any():
+                        found |= on_edge & _edge_mismatch(body, face, other, places)
+    return found
+
+
+def _face_data(body: Body, face: Face, places: Sequence[FloatArray]) -> LocalData | None:
+    face_map = map_of(body.faces[face])
+    first, second = axes_along(face)
+    return None if face_map is None else local_data(face_map, places[first], places[second])
+
+
+def _varies(values: FloatArray, size: float) -> NDArray[np.bool_]:
+    return np.asarray(values.max(axis=0) - values.min(axis=0) > SAME * size)
+
+
+def _jumps(body: Body, face: Face, places: Sequence[FloatArray]) -> NDArray[np.bool_]:
+    face_map = map_of(body.faces[face])
+    data = _face_data(body, face, places)
+    if data is None or face_map is None or face_map.is_uniform:
+        return np.zeros((), dtype=bool)
+    size = max(abs(face_map.lowest), abs(face_map.highest))
+    found = _varies(data.values, size)
+    if isinstance(body.faces[face], Held) and face_map.bilinear:
+        for slopes in data.slopes:
+            found = found | _varies(slopes, float(np.abs(slopes).max()))
+    return found
+
+
+def _edge_mismatch(body: Body, held: Face, other: Face, places: Sequence[FloatArray]) -> NDArray[np.bool_]:
+    """Whether what a held face shows at its edge with another face disagrees with that face's data."""
+    held_data = _face_data(body, held, places)
+    assert held_data is not None
+    condition = body.faces[other]
+    other_data = _face_data(body, other, places)
+    values = held_data.values.mean(axis=0)
+    if isinstance(condition, Held):
+        assert other_data is not None
+        theirs = other_data.values.mean(axis=0)
+        return np.asarray(np.abs(values - theirs) > SAME * np.maximum(np.abs(values), np.abs(theirs)))
+    across = axis_of(other)
+    slope = held_data.slopes[axes_along(held).index(across)].mean(axis=0)
+    driven = body.conductivity[across] * slope * (1.0 if is_high(other) else -1.0)
+    given = np.zeros(()) if other_data is None else other_data.values.mean(axis=0)
+    if isinstance(condition, Film):
+        given = condition.coefficient * (given - values)
+        scale = condition.coefficient * np.abs(values) + np.abs(driven)
+    else:
+        scale = np.maximum(np.abs(given), np.abs(driven))
+    return np.asarray(np.abs(given - driven) > SAME * scale)
+
+
+def edge_name(first: Face, second: Face) -> str:
+    """Name of the edge of two faces, as answers give it."""
+    return f"edge {first}/{second}"
+
+
+def line_name(face: Face, axis: int, place: float) -> str:
+    """Name of a line inside a face, as answers give it."""
+    return f"line {AXES[axis]} = {place:g} on {face}"

@@ -1,0 +1,108 @@
+"""The solved problem: everything an engineer can ask of one body."""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core import field as fields
+from service.core.field import Field, Grid, KeepGoing, Setting
+from service.core.lines.line import Line
+from service.core.problem import Body, Film, Held, map_of
+from service.core.solvability import check_steady_state, level_is_pinned
+from service.core.split import Part, lines_of, parts_of, reference_level
+
+FloatArray = NDArray[np.float64]
+
+
+def solve(body: Body) -> Solution:
+    """Check that a body has a steady field and make it ready to be asked. Raises NoSteadyState."""
+    check_steady_state(body)
+    lines = lines_of(body)
+    reference = reference_level(body)
+    parts = parts_of(body, reference)
+    return Solution(Setting(body, lines, parts, reference, _span(body, lines, parts)))
+
+
+class Solution:
+    """A body with its field, computed where and when it is asked for."""
+
+    def __init__(self, setting: Setting) -> None:
+        self._setting = setting
+
+    @property
+    def body(self) -> Body:
+        """The body as given."""
+        return self._setting.body
+
+    @property
+    def span(self) -> float:
+        """Range of the potential that accuracies refer to: of the data, or what flows and generation raise."""
+        return self._setting.span
+
+    @property
+    def reference(self) -> float:
+        """The level the parts of the problem are counted from."""
+        return self._setting.reference
+
+    @property
+    def level_pinned(self) -> bool:
+        """Whether the data leave the level open and the field is counted from its own mean."""
+        return level_is_pinned(self.body)
+
+    def field(
+        self, grid: Grid, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
+    ) -> Field:
+        """Potential, and flux density if asked for, on a grid."""
+        return fields.on_grid(
+            self._setting, grid, tolerance=tolerance, with_flux=with_flux, keep_going=keep_going
+        )
+
+    def field_at(
+        self, points: FloatArray, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
+    ) -> Field:
+        """Potential, and flux density if asked for, at points, shape (n, 3)."""
+        return fields.at_points(
+            self._setting, points, tolerance=tolerance, with_flux=with_flux, keep_going=keep_going
+        )
+
+
+def _span(body: Body, lines: tuple[Line, Line, Line], parts: tuple[Part, ...]) -> float:
+    """Range of held values and ambients, or what inflows and sources raise, whichever is larger.
+
+    The latter is read off a few places of the body, to the two digits that a scale needs.
+    """
+    levels = [map_of(condition) for condition in body.faces.values() if isinstance(condition, Held | Film)]
+    given = [level for face_map in levels if face_map is not None for level in (face_map.lowest, face_map.highest)]
+    span = max(given) - min(given) if given else 0.0
+    flows = tuple(part for part in parts if part.wall_axis is None or lines_end_is_insulated(lines, part))
+    if flows:
+        setting = Setting(body, lines, flows, 0.0, 1.0)
+        columns = [_sample(lines, flows, axis) for axis in range(3)]
+        potential = fields.rough_potential(setting, columns)
+        span = max(span, float(potential.max() - min(potential.min(), 0.0)), -float(potential.min()))
+    return span
+
+
+def lines_end_is_insulated(lines: tuple[Line, Line, Line], part: Part) -> bool:
+    """Whether a part is driven by a given inflow."""
+    assert part.wall_axis is not None
+    line = lines[part.wall_axis]
+    return (line.film_high if part.is_high else line.film_low) == 0.0
+
+
+def _sample(lines: tuple[Line, Line, Line], parts: tuple[Part, ...], axis: int) -> FloatArray:
+    line = lines[axis]
+    if line.is_endless:
+        widest = max(other.extent for other in lines if not other.is_endless) / line.scale
+        places = [0.0, 0.5 * widest, widest]
+    else:
+        places = [0.0, 0.5 * line.length, line.length]
+    for part in parts:
+        knots = part.knots(axis)
+        if knots.size > 2:
+            middle = 0.5 * (knots[1:] + knots[:-1])
+            places.extend(middle[np.isfinite(middle)])
+    unique = np.unique(places)
+    return unique[np.unique(np.linspace(0, unique.size - 1, min(unique.size, 9)).astype(int))]
+

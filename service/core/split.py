@@ -1,0 +1,135 @@
+"""One problem as a sum of problems, each driven by a single face or by the sources.
+
+Every part has the homogeneous conditions of the whole body, so that one set of lines serves all of them. A reference
+level is taken off first; data equal to it drive nothing, and a body held at one value is at that value exactly.
+"""
+
+from __future__ import annotations
+
+import math
+from collections import Counter
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core.lines.line import Drive, Line, WallDrive
+from service.core.maps import FaceMap, Profiles
+from service.core.problem import AXES, Body, BoxSource, Face, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
+
+FloatArray = NDArray[np.float64]
+
+SOURCES = "sources"
+
+
+@dataclass(frozen=True, eq=False)
+class Part:
+    """A part of the problem: for each axis what drives that line; the columns of profiles belong together.
+
+    wall_axis: the axis whose end is driven, None for generation inside. cause: the face, or SOURCES.
+    face_map: the data of the face, counted from the reference, or None.
+    """
+
+    drives: tuple[Drive, Drive, Drive]
+    wall_axis: int | None
+    cause: Face | str
+    face_map: FaceMap | None
+
+    @property
+    def columns(self) -> int:
+        """How many products of profiles the part is the sum of."""
+        return max(drive.n_profiles for drive in self.drives if isinstance(drive, Profiles))
+
+    @property
+    def is_high(self) -> bool:
+        """Whether the driven end is the high one."""
+        return any(drive.high for drive in self.drives if isinstance(drive, WallDrive))
+
+    def knots(self, axis: int) -> FloatArray:
+        """Knots of the profiles along an axis; none along the driven one."""
+        drive = self.drives[axis]
+        return drive.knots if isinstance(drive, Profiles) else np.zeros(0)
+
+
+def film_of(body: Body, face: Face) -> float:
+    """H per scaled length of a face: 0 for a given inflow or insulation, infinite for a held value."""
+    condition = body.faces.get(face)
+    if isinstance(condition, Held):
+        return math.inf
+    if isinstance(condition, Film):
+        return condition.coefficient / math.sqrt(body.conductivity[axis_of(face)])
+    return 0.0
+
+
+def lines_of(body: Body) -> tuple[Line, Line, Line]:
+    """The three lines whose product the body is."""
+    x, y, z = (
+        Line(
+            body.size[axis],
+            1 / math.sqrt(body.conductivity[axis]),
+            film_of(body, f"{AXES[axis]}_low"),  # type: ignore[arg-type]
+            film_of(body, f"{AXES[axis]}_high"),  # type: ignore[arg-type]
+        )
+        for axis in range(3)
+    )
+    return x, y, z
+
+
+def reference_level(body: Body) -> float:
+    """The level everything is counted from: the one that leaves most faces undriven.
+
+    In an endless bar its sides count first: what they come to far away drives flows without end.
+    """
+    levels: Counter[float] = Counter()
+    for face in body.present_faces:
+        condition = body.faces[face]
+        if isinstance(condition, Held | Film):
+            face_map = map_of(condition)
+            assert face_map is not None
+            side_of_bar = body.size[2] == math.inf and axis_of(face) != 2
+            levels[face_map.usual] += 10 if side_of_bar else 1
+    return levels.most_common(1)[0][0] if levels else 0.0
+
+
+def parts_of(body: Body, reference: float) -> tuple[Part, ...]:
+    """The driven faces and the sources of a body, leaving out what drives nothing."""
+    parts = [part for face in body.present_faces if (part := _face_part(body, face, reference)) is not None]
+    sources = [source for source in body.sources if source.density != 0.0]
+    if sources:
+        parts.append(Part(_source_profiles(body, sources), None, SOURCES, None))
+    return tuple(parts)
+
+
+def _face_part(body: Body, face: Face, reference: float) -> Part | None:
+    condition = body.faces[face]
+    face_map = map_of(condition)
+    if face_map is None:
+        return None
+    axis = axis_of(face)
+    factor = 1.0
+    if isinstance(condition, Inflow):
+        factor = 1 / math.sqrt(body.conductivity[axis])
+    else:
+        face_map = face_map.minus(reference)
+    if face_map.is_uniform and face_map.lowest == 0.0:
+        return None
+    first, second = axes_along(face)
+    drives: list[Drive] = [WallDrive(is_high(face))] * 3
+    drives[first] = face_map.first.scaled(factor)
+    drives[second] = face_map.second
+    return Part((drives[0], drives[1], drives[2]), axis, face, face_map)
+
+
+def _source_profiles(body: Body, sources: list[BoxSource]) -> tuple[Profiles, Profiles, Profiles]:
+    """Indicator profiles of all boxes on common knots, one column a box; the densities go with the x profiles."""
+    profiles = []
+    for axis in range(3):
+        low = np.array([source.low[axis] for source in sources])
+        high = np.array([source.high[axis] for source in sources])
+        knots = np.unique(np.concatenate([[0.0, body.size[axis]], low, high]))
+        inside = (knots[:-1, None] >= low) & (knots[1:, None] <= high)
+        values = inside.astype(float)
+        if axis == 0:
+            values = values * np.array([source.density for source in sources])
+        profiles.append(Profiles(knots, values, values.copy()))
+    return profiles[0], profiles[1], profiles[2]

@@ -1,0 +1,349 @@
+"""The time form: a steady field as the time integral of three lines multiplied.
+
+    u = integral from 0 to infinity of X(x, t) Y(y, t) Z(z, t) dt
+
+by the trapezoidal rule in s = ln t, which converges exponentially since every factor is analytic in t and decays or
+stays bounded in each sector |arg t| < pi / 2 (Trefethen and Weideman, SIAM Review 56, 2014). Ewald (1921) split
+sums this way; the Green's-function literature calls it time partitioning (Cole, Beck, Haji-Sheikh and Litkouhi 2011).
+
+Two parts of the integral are known in closed form and taken out first, because the rule alone would need endless
+ranges: what the two lines along a driven face still show of their profiles at short times, and the part that never
+decays when nothing leaves the body sideways.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.ndimage import maximum_filter1d
+
+from service.core.lines import laplace
+from service.core.lines.line import Drive, Line, WallDrive, breaks_of, wall_distance
+from service.core.lines.modes import modes_of
+from service.core.lines.time_response import Places, TimeResponse, respond
+from service.core.maps import Profiles
+from service.core.split import Part
+
+FloatArray = NDArray[np.float64]
+Factors = tuple[FloatArray, FloatArray, FloatArray]
+
+# The range of integration ends where the integrand is below exp(-CUT) = 4e-18 of its size.
+CUT = 40.0
+
+# Angle kept between the contour shifted by i (pi / 2 - ANGLE) and the edge of the sector, in the error bound; near
+# the best for steps around 0.3.
+ANGLE = 0.08
+
+# Steps in ln t outside this range are not taken: coarser saves little, finer is below rounding.
+COARSEST_STEP, FINEST_STEP = 0.5, 0.2
+
+# Rounding in a product of three factors, relative to what their lines carry: special functions, sums over breaks.
+ROUNDING = 8e-15
+
+# Where a line leaves its profile at once, as sqrt(t), the range begins where that is below rounding; a slope on a
+# driven face meets it with t^(-3/2) and needs its square.
+EARLIEST, EARLIEST_FOR_SLOPES = 1e-17, 1e-30
+
+# Part of the slowest time constant by which every range has begun: (t / release)^(5/2) is then below rounding.
+LATEST_BEGINNING = 3e-7
+
+Rows = Callable[[Line, Drive, Places, FloatArray], TimeResponse]
+
+
+@dataclass(frozen=True, eq=False)
+class Product:
+    """Sum over nodes q and columns r of weight_q X_iqr Y_jqr Z_kqr.
+
+    factors: shape (n, n_nodes, n_columns) each; a factor may have 1 in place of n_nodes or n_columns.
+    """
+
+    weights: FloatArray
+    factors: Factors
+
+
+@dataclass(frozen=True, eq=False)
+class Integral:
+    """A part's time integral on the product of three sets of places: what to add up, and on which step in ln t."""
+
+    products: tuple[Product, ...]
+    step: float
+    node_count: int
+
+
+def step_error(step: float) -> float:
+    """Relative error of the trapezoidal rule in ln t, on the integral of absolute values.
+
+    On the contour shifted by i d, d = pi / 2 - ANGLE, a one-dimensional kernel is at most (sin ANGLE)^(-1/2) of its
+    size at the time t / sin(ANGLE), and there are three of them; the rule's error is 2 / (exp(2 pi d / step) - 1)
+    times the integral on that contour.
+    """
+    shift = math.pi / 2 - ANGLE
+    return 2 * math.sin(ANGLE) ** -1.5 / math.expm1(2 * math.pi * shift / step)
+
+
+def step_for(relative_error: float) -> float:
+    """The coarsest step whose error is below the one given, within the range worth taking."""
+    shift = math.pi / 2 - ANGLE
+    step = 2 * math.pi * shift / math.log1p(2 * math.sin(ANGLE) ** -1.5 / relative_error)
+    return min(max(step, FINEST_STEP), COARSEST_STEP)
+
+
+def integrate(
+    lines: Sequence[Line], part: Part, places: Sequence[Places], step: float, rows: Rows = respond
+) -> Integral:
+    """Set up the time integral of one part on the tensor product of three sets of places.
+
+    rows: how a line's answer is had, so that a caller may keep answers that several parts or quantities share.
+    """
+    smooth = _profile_is_taken_out(lines, part, places)
+    slowest = slowest_rate(lines)
+    last = CUT / slowest
+    undying = _undying(lines)
+    first = _first_time(lines, part, places, smooth)
+    # A plain integrand begins only when the front from its end arrives; the others begin with what is let go.
+    first = min(first, LATEST_BEGINNING / slowest if smooth or undying else last / 16)
+    times = np.exp(step * np.arange(math.floor(math.log(first) / step), math.ceil(math.log(last) / step) + 1))
+    answers = [rows(lines[axis], part.drives[axis], places[axis], times) for axis in range(3)]
+    nodes = _Nodes(times, step * times, 1 / slowest)
+    if smooth:
+        products = _with_profile_taken_out(lines, part, places, answers, nodes)
+    else:
+        products = [Product(nodes.weights, (answers[0].total, answers[1].total, answers[2].total))]
+    if undying:
+        products += _never_decaying(lines, part, places, answers, nodes)
+    return Integral(tuple(products), step, times.size)
+
+
+def slowest_rate(lines: Sequence[Line]) -> float:
+    """Decay rate of the slowest product of modes, not counting one that does not decay at all."""
+    finite = [line for line in lines if not line.is_endless]
+    rates = [modes_of(line, 2).rates for line in finite]
+    together = sum(float(rate[0]) for rate in rates)
+    return together if together > 0 else min(float(rate[1]) for rate in rates)
+
+
+def on_grid(integral: Integral) -> FloatArray:
+    """The integral on the tensor product, shape (n_x, n_y, n_z), by matrix products."""
+    return sum((_contract(product) for product in integral.products[1:]), start=_contract(integral.products[0]))
+
+
+def at_points(integral: Integral) -> FloatArray:
+    """The integral at points, the three sets of places read side by side, shape (n,)."""
+    total = np.zeros(())
+    for product in integral.products:
+        x, y, z = product.factors
+        total = total + ((x * y * z).sum(axis=2) * product.weights).sum(axis=1)
+    return total
+
+
+def bound_on_grid(integral: Integral) -> Factors:
+    """Error bounds for each coordinate of a grid, shape (n,) each; each of the three holds, so the least does."""
+    bounds = [np.zeros(factor.shape[0]) for factor in integral.products[0].factors]
+    relative = step_error(integral.step)
+    for product in integral.products:
+        sizes = [_widened(np.abs(factor), integral.step) for factor in product.factors]
+        most = [size.max(axis=0, keepdims=True) for size in sizes]
+        rounding = ROUNDING * float(_weigh(most[0] * most[1] * most[2], product.weights)[0])
+        for axis in range(3):
+            others = most[(axis + 1) % 3] * most[(axis + 2) % 3]
+            bounds[axis] += relative * _weigh(sizes[axis] * others, product.weights) + rounding
+    return bounds[0], bounds[1], bounds[2]
+
+
+def bound_at_points(integral: Integral) -> FloatArray:
+    """Error bound at each point, shape (n,)."""
+    total = np.zeros(())
+    for product in integral.products:
+        x, y, z = (_widened(np.abs(factor), integral.step) for factor in product.factors)
+        total = total + (step_error(integral.step) + ROUNDING) * _weigh(x * y * z, product.weights)
+    return total
+
+
+def _weigh(sizes: FloatArray, weights: FloatArray) -> FloatArray:
+    return (sizes.sum(axis=2) * np.abs(weights)).sum(axis=1)
+
+
+def _widened(sizes: FloatArray, step: float) -> FloatArray:
+    """At each node the largest size up to the time 1 / sin(ANGLE) later, which bounds it on the shifted contour."""
+    if sizes.shape[1] == 1:
+        return sizes
+    reach = math.ceil(-math.log(math.sin(ANGLE)) / step)
+    return np.asarray(maximum_filter1d(sizes, 2 * reach + 1, axis=1, mode="nearest", origin=-reach))
+
+
+@dataclass(frozen=True, eq=False)
+class _Nodes:
+    """Nodes of the rule: times, weights, and the time scale on which a profile that was taken out is let go."""
+
+    times: FloatArray
+    weights: FloatArray
+    release: float
+
+    @property
+    def kept(self) -> FloatArray:
+        """1 less the share taken out, chi = 3 e^-r - 3 e^-2r + e^-3r with r = t / release: (1 - e^-r)^3."""
+        return -(np.expm1(-self.times / self.release) ** 3)
+
+    def transformed(self, line: Line, drive: Drive, places: Places) -> FloatArray:
+        """Integral over all times of chi times a line's answer, shape (n, 1, n_columns)."""
+        rates = np.sqrt(np.array([1.0, 2.0, 3.0]) / self.release)
+        answers = laplace.transform(line, drive, places, rates)
+        return np.einsum("ngr,g->nr", answers, np.array([3.0, -3.0, 1.0]))[:, None, :]
+
+
+def _profile_is_taken_out(lines: Sequence[Line], part: Part, places: Sequence[Places]) -> bool:
+    """Whether the driven line is asked on its driven end, or for a slope, where its kernel is not integrable alone."""
+    if part.wall_axis is None:
+        return False
+    drive, asked = part.drives[part.wall_axis], places[part.wall_axis]
+    assert isinstance(drive, WallDrive)
+    if asked.order == -1:
+        return True
+    end = lines[part.wall_axis].length if drive.high else 0.0
+    return bool((asked.low == end).any() or (asked.high is not None and (asked.high == end).any()))
+
+
+def _with_profile_taken_out(
+    lines: Sequence[Line], part: Part, places: Sequence[Places], answers: Sequence[TimeResponse], nodes: _Nodes
+) -> list[Product]:
+    """AB Z = (AB - chi ab) Z + chi ab Z with a, b the initial profiles; the last is known in closed form.
+
+    AB - chi ab = (A - a) B + a (B - b + b (1 - chi)), where each bracket keeps its digits.
+    """
+    wall = part.wall_axis
+    assert wall is not None
+    a, b = (axis for axis in range(3) if axis != wall)
+    initial_a, initial_b = answers[a].initial[:, None, :], answers[b].initial[:, None, :]
+    kernel = answers[wall].total
+    slow_b = answers[b].departure + initial_b * nodes.kept[None, :, None]
+    closed = nodes.transformed(lines[wall], part.drives[wall], places[wall])
+
+    def product(weights: FloatArray, at_a: FloatArray, at_b: FloatArray, at_wall: FloatArray) -> Product:
+        ordered = {a: at_a, b: at_b, wall: at_wall}
+        return Product(weights, (ordered[0], ordered[1], ordered[2]))
+
+    return [
+        product(nodes.weights, answers[a].departure, answers[b].total, kernel),
+        product(nodes.weights, initial_a, slow_b, kernel),
+        product(np.ones(1), initial_a, initial_b, closed),
+    ]
+
+
+def _undying(lines: Sequence[Line]) -> bool:
+    """Whether the product of the lines' means never decays: a closed body, or a bar with insulated sides."""
+    sides_keep = lines[0].keeps_its_mean and lines[1].keeps_its_mean
+    return sides_keep and (lines[2].keeps_its_mean or lines[2].is_endless)
+
+
+def _never_decaying(
+    lines: Sequence[Line],
+    part: Part,
+    places: Sequence[Places],
+    answers: Sequence[TimeResponse],
+    nodes: _Nodes,
+) -> list[Product]:
+    """What replaces the product of means, which never decays, in a body that loses nothing sideways.
+
+    In a closed body it is dropped: the drives' means cancel, and the field is counted from its mean. In a bar with
+    insulated sides it is the one-dimensional field along the bar, known in closed form.
+    """
+    limits = [_limit(lines[axis], part.drives[axis], places[axis])[:, None, :] for axis in range(3)]
+    if lines[2].keeps_its_mean:
+        # The integral of chi is release (3 - 3/2 + 1/3).
+        dropped = float(nodes.weights @ nodes.kept) + nodes.release * 11 / 6
+        return [Product(np.array([-dropped]), (limits[0], limits[1], limits[2]))]
+    steady = laplace.transform(lines[2], part.drives[2], places[2], np.zeros(1))
+    steady = steady - nodes.transformed(lines[2], part.drives[2], places[2])
+    return [
+        Product(-nodes.weights * nodes.kept, (limits[0], limits[1], answers[2].total)),
+        Product(np.ones(1), (limits[0], limits[1], steady)),
+    ]
+
+
+def _limit(line: Line, drive: Drive, places: Places) -> FloatArray:
+    """What a line that keeps its mean comes to, shape (n, n_columns); zero for another line."""
+    columns = 1 if isinstance(drive, WallDrive) else drive.n_profiles
+    if not line.keeps_its_mean or places.order == -1:
+        return np.zeros((places.low.size, columns))
+    if isinstance(drive, WallDrive):
+        mean = np.ones(1) / line.extent
+    else:
+        mean = drive.integrals(np.zeros(1), np.array([line.length]))[0] / line.length
+    span = np.ones(places.low.size) if places.high is None else (places.high - places.low) * line.scale
+    return span[:, None] * mean
+
+
+def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], smooth: bool) -> float:
+    """Where the integrand begins to matter."""
+    least = min(line.extent for line in lines if not line.is_endless)
+    film = max((film for line in lines for film in (line.film_low, line.film_high) if film < math.inf), default=0.0)
+    slopes = any(asked.order == -1 for asked in places)
+    floor = least**2 * (
+        EARLIEST_FOR_SLOPES / (1 + film * least) ** 2 if slopes else EARLIEST / (1 + film * least)
+    )
+    wall = part.wall_axis
+    from_wall = 0.0
+    if wall is not None:
+        drive = part.drives[wall]
+        assert isinstance(drive, WallDrive)
+        from_wall = _nearest_to_wall(lines[wall], drive, places[wall]) ** 2 / (4 * CUT)
+        if not smooth:
+            return from_wall
+    elif not slopes:
+        return floor
+    along = [axis for axis in range(3) if axis != wall]
+    nearest = min(_nearest_to_break(lines[axis], part.drives[axis], places[axis]) for axis in along)
+    return max(from_wall, floor, min(nearest**2 / (4 * CUT), least**2) if nearest > 0 else 0.0)
+
+
+def _nearest_to_wall(line: Line, drive: WallDrive, places: Places) -> float:
+    ends = [places.low] if places.high is None else [places.low, places.high]
+    return min(float(wall_distance(line, end, high=drive.high).min()) for end in ends)
+
+
+def _nearest_to_break(line: Line, drive: Drive, places: Places) -> float:
+    """Least scaled distance from a place to a break of the profiles; 0 for intervals, which may end on one."""
+    if places.high is not None:
+        return 0.0
+    assert isinstance(drive, Profiles)
+    knots, jumps, slope_jumps = breaks_of(line, drive)
+    active = jumps.any(axis=1) | slope_jumps.any(axis=1)
+    if line.film_low == 0.0:
+        # An insulated end mirrors the profile, and only a slope makes a break of it.
+        active[0] = slope_jumps[0].any()
+    if line.film_high == 0.0 and not line.is_endless:
+        active[-1] = slope_jumps[-1].any()
+    if not active.any():
+        return math.inf
+    return float(np.abs(places.low[:, None] - knots[active]).min()) * line.scale
+
+
+def _contract(product: Product) -> FloatArray:
+    """Sum over nodes and columns on the tensor product, one matrix product for each place of the shortest axis."""
+    nodes = max(factor.shape[1] for factor in product.factors)
+    columns = max(factor.shape[2] for factor in product.factors)
+    shape = [factor.shape[0] for factor in product.factors]
+    loop = int(np.argmin(shape))
+    first, second = (axis for axis in range(3) if axis != loop)
+    flat = [
+        np.broadcast_to(factor, (factor.shape[0], nodes, columns)).reshape(factor.shape[0], -1)
+        for factor in product.factors
+    ]
+    weighted = flat[loop] * np.repeat(np.broadcast_to(product.weights, nodes), columns)
+    right = np.ascontiguousarray(flat[second].T)
+    size = np.abs(flat[first]).max(axis=0) * np.abs(flat[second]).max(axis=0)
+    result = np.empty((shape[loop], shape[first], shape[second]))
+    for index, row in enumerate(weighted):
+        kept = _kept(np.abs(row) * size)
+        np.matmul(flat[first][:, kept] * row[kept], right[kept], out=result[index])
+    return np.moveaxis(result, 0, loop)
+
+
+def _kept(sizes: FloatArray) -> slice:
+    """The run of nodes outside of which nothing adds a digit: few times matter at any one distance."""
+    needed = np.flatnonzero(sizes > 1e-18 * sizes.sum())
+    return slice(needed[0], needed[-1] + 1) if needed.size else slice(0, 0)
