@@ -14,7 +14,7 @@ from service.core.errors import AccuracyNotReached, OutsideBody
 from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order
 from service.core.lines.time_response import Places, TimeResponse, respond
 from service.core.problem import AXES, Body
-from service.core.singular import has_no_finite_flux
+from service.core.singular import has_no_finite_flux, held_edges
 from service.core.split import Part
 
 FloatArray = NDArray[np.float64]
@@ -86,13 +86,8 @@ def on_grid(
     Raises OutsideBody and AccuracyNotReached.
     """
     check_inside(setting.body, grid.axes)
-    potential, bound, nodes = _accurate(setting, grid.axes, tolerance, True, keep_going)
-    flux = flux_bound = None
-    if with_flux:
-        flux, flux_bound = _flux(setting, grid.axes, tolerance, True, keep_going)
-        x, y, z = np.meshgrid(*grid.axes, indexing="ij", sparse=True)
-        flux[:, has_no_finite_flux(setting.body, (x, y, z), grid.shape)] = np.nan
-    return Field(potential, bound, flux, flux_bound, nodes)
+    places = np.meshgrid(*grid.axes, indexing="ij", sparse=True)
+    return _field(setting, grid.axes, places, grid.shape, tolerance, with_flux, keep_going)
 
 
 def at_points(
@@ -104,13 +99,36 @@ def at_points(
     pieces = []
     for start in range(0, points.shape[0], POINTS_AT_ONCE):
         chunk = [column[start : start + POINTS_AT_ONCE] for column in columns]
-        potential, bound, nodes = _accurate(setting, chunk, tolerance, False, keep_going)
-        flux = flux_bound = None
-        if with_flux:
-            flux, flux_bound = _flux(setting, chunk, tolerance, False, keep_going)
-            flux[:, has_no_finite_flux(setting.body, (chunk[0], chunk[1], chunk[2]), chunk[0].shape)] = np.nan
-        pieces.append(Field(potential, bound, flux, flux_bound, nodes))
+        pieces.append(_field(setting, chunk, chunk, chunk[0].shape, tolerance, with_flux, keep_going))
     return pieces[0] if len(pieces) == 1 else _joined(pieces)
+
+
+def _field(
+    setting: Setting,
+    columns: Sequence[FloatArray],
+    places: Sequence[FloatArray],
+    shape: tuple[int, ...],
+    tolerance: float,
+    with_flux: bool,
+    keep_going: KeepGoing | None,
+) -> Field:
+    """The field on columns of coordinates, read as a tensor product where the shape has three dimensions.
+
+    places: the same coordinates, shaped to broadcast to `shape`.
+    """
+    tensor = len(shape) == 3
+    potential, bound, nodes = _accurate(setting, columns, tolerance, tensor, keep_going)
+    edges = held_edges(setting.body, places, shape)
+    if edges is not None:
+        potential[edges.here] = edges.potential[edges.here]
+    if not with_flux:
+        return Field(potential, bound, None, None, nodes)
+    flux, flux_bound = _flux(setting, columns, tolerance, tensor, keep_going)
+    if edges is not None:
+        conductivity = np.array(setting.body.conductivity)[:, None]
+        flux[:, edges.here] = -conductivity * edges.slopes[:, edges.here]
+    flux[:, has_no_finite_flux(setting.body, places, shape)] = np.nan
+    return Field(potential, bound, flux, flux_bound, nodes)
 
 
 def check_inside(body: Body, columns: Sequence[FloatArray]) -> None:

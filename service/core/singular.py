@@ -3,10 +3,11 @@
 - Inside a face: where its data jump (flux like 1/r beside a held face, like ln r along an inflow or film face), and
   where the slope of a held face's data jumps (ln r).
 - On an edge of two held faces: where their values differ (1/r).
-- On an edge of a held face with an inflow or film face: where the flow the held data drive through the edge differs
-  from what the other face gives (ln r).
+- On an edge of a held face with an inflow or film face that gives or takes a flow there (ln r).
 
-At other edges of a rectangular body the local solution is a polynomial to first order and the flux is finite.
+The last is an edge where the flux is withheld even if the held data happen to drive just the flow the other face
+gives. At other edges of a rectangular body the local solution is a polynomial to first order and the flux is finite;
+on an edge of held faces that agree it follows from their data alone.
 Source: local solutions in a corner of angle pi/2 (Carslaw and Jaeger 1959, chapter V; Grisvard, Elliptic Problems in
 Nonsmooth Domains, 1985, chapter 4, for the powers that occur; from memory).
 """
@@ -66,16 +67,14 @@ def has_no_finite_flux(body: Body, places: Sequence[FloatArray], shape: tuple[in
     found = np.zeros(shape, dtype=bool)
     for face in body.present_faces:
         axis = axis_of(face)
-        end = body.size[axis] if is_high(face) else 0.0
-        on_face = places[axis] == end
+        on_face = places[axis] == _end(body, face)
         if not on_face.any():
             continue
         found |= on_face & _jumps(body, face, places)
         if isinstance(body.faces[face], Held):
             for other in body.present_faces:
                 if axis_of(other) != axis:
-                    other_end = body.size[axis_of(other)] if is_high(other) else 0.0
-                    on_edge = on_face & (places[axis_of(other)] == other_end)
+                    on_edge = on_face & (places[axis_of(other)] == _end(body, other))
                     if on_edge.any():
                         found |= on_edge & _edge_mismatch(body, face, other, places)
     return found
@@ -115,16 +114,49 @@ def _edge_mismatch(body: Body, held: Face, other: Face, places: Sequence[FloatAr
         assert other_data is not None
         theirs = other_data.values.mean(axis=0)
         return np.asarray(np.abs(values - theirs) > SAME * np.maximum(np.abs(values), np.abs(theirs)))
-    across = axis_of(other)
-    slope = held_data.slopes[axes_along(held).index(across)].mean(axis=0)
-    driven = body.conductivity[across] * slope * (1.0 if is_high(other) else -1.0)
-    given = np.zeros(()) if other_data is None else other_data.values.mean(axis=0)
+    slope = held_data.slopes[axes_along(held).index(axis_of(other))]
+    given = np.zeros(()) if other_data is None else np.abs(other_data.values).max(axis=0)
     if isinstance(condition, Film):
-        given = condition.coefficient * (given - values)
-        scale = condition.coefficient * np.abs(values) + np.abs(driven)
-    else:
-        scale = np.maximum(np.abs(given), np.abs(driven))
-    return np.asarray(np.abs(given - driven) > SAME * scale)
+        assert other_data is not None
+        given = np.abs(other_data.values - held_data.values).max(axis=0)
+        return np.asarray((given > SAME * np.abs(values)) | (np.abs(slope).max(axis=0) > 0))
+    return np.asarray((given > 0) | (np.abs(slope).max(axis=0) > 0))
+
+
+@dataclass(frozen=True, eq=False)
+class HeldEdges:
+    """Places on an edge of two or three held faces, where each part of the problem shows only its own face.
+
+    here: which places. potential: mean of what the faces say. slopes: along x, y, z, from the faces' data.
+    """
+
+    here: NDArray[np.bool_]
+    potential: FloatArray
+    slopes: FloatArray
+
+
+def held_edges(body: Body, places: Sequence[FloatArray], shape: tuple[int, ...]) -> HeldEdges | None:
+    """What held faces say on the edges where they meet, or None when no place is on one."""
+    faces = [face for face in body.present_faces if isinstance(body.faces[face], Held)]
+    on_face = {face: places[axis_of(face)] == _end(body, face) for face in faces}
+    faces = [face for face in faces if on_face[face].any()]
+    count = sum((np.broadcast_to(on_face[face], shape).astype(int) for face in faces), start=np.zeros(shape, dtype=int))
+    if not (count >= 2).any():
+        return None
+    potential, slopes, slope_count = np.zeros(shape), np.zeros((3, *shape)), np.zeros((3, *shape))
+    for face in faces:
+        data = _face_data(body, face, places)
+        assert data is not None
+        here = np.broadcast_to(on_face[face], shape)
+        potential = potential + np.where(here, data.values.mean(axis=0), 0.0)
+        for axis, slope in zip(axes_along(face), data.slopes, strict=True):
+            slopes[axis] += np.where(here, slope.mean(axis=0), 0.0)
+            slope_count[axis] += here
+    return HeldEdges(count >= 2, potential / np.maximum(count, 1), slopes / np.maximum(slope_count, 1))
+
+
+def _end(body: Body, face: Face) -> float:
+    return body.size[axis_of(face)] if is_high(face) else 0.0
 
 
 def edge_name(first: Face, second: Face) -> str:

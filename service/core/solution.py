@@ -6,11 +6,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import field as fields
+from service.core import totals
 from service.core.field import Field, Grid, KeepGoing, Setting
 from service.core.lines.line import Line
-from service.core.problem import Body, Film, Held, map_of
+from service.core.maps import Rectangle
+from service.core.problem import Body, Face, Film, Held, map_of
 from service.core.solvability import check_steady_state, level_is_pinned
 from service.core.split import Part, lines_of, parts_of, reference_level
+from service.core.totals import Balance, Bounded, Total
 
 FloatArray = NDArray[np.float64]
 
@@ -65,6 +68,26 @@ class Solution:
         return fields.at_points(
             self._setting, points, tolerance=tolerance, with_flux=with_flux, keep_going=keep_going
         )
+
+    def mean(self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float) -> Bounded:
+        """Mean of the potential over a face or a rectangle of it."""
+        return totals.mean(self._setting, face, rectangle, tolerance)
+
+    def face_total(
+        self, face: Face, rectangle: Rectangle | None = None, *, gap: float | None = None, tolerance: float
+    ) -> Total:
+        """Flow into the body through a face or a rectangle of it; unbounded where held values meet in a jump."""
+        return totals.face_total(self._setting, face, rectangle, gap, tolerance)
+
+    def plane_total(
+        self, axis: int, position: float, rectangle: Rectangle | None = None, *, tolerance: float
+    ) -> Total:
+        """Flow along an axis through a plane square to it or a rectangle of that plane."""
+        return totals.plane_total(self._setting, axis, position, rectangle, tolerance)
+
+    def balance(self, *, gap: float | None = None, tolerance: float) -> Balance:
+        """Inflow of every face, generation, and what is left over."""
+        return totals.balance(self._setting, tolerance, gap)
 
 
 def _span(body: Body, lines: tuple[Line, Line, Line], parts: tuple[Part, ...]) -> float:

@@ -6,14 +6,13 @@ is below 1e-9 of the span of the data (issue of a certificate: met to the accura
 
 from __future__ import annotations
 
-import math
 import os
 
 import numpy as np
 import pytest
 
 from service.core import solve
-from tests.core.reference.cases import Case
+from tests.core.reference.cases import Case, Cells
 from tests.core.reference.high_precision import HighPrecision, NoFiniteValue
 from tests.core.reference.random_cases import Place, hard_places, random_case
 
@@ -25,12 +24,23 @@ SEEDS = range(int(os.environ.get("STILLFIELD_BOUND_SEEDS", "24")))
 
 
 def scale_at(case: Case, place: Place) -> float:
-    """Largest k / distance over the axes: what turns a difference of potential into a flux at this place."""
-    scales = []
-    for k, length, c in zip(case.conductivity, case.size, place, strict=True):
-        distances = [d for d in (c, length - c) if 0 < d < math.inf]
-        scales.append(k / min(distances))
+    """Largest k / distance, over faces and lines where data jump: what turns a difference of potential into a flux."""
+    scales = [k / length for k, length in zip(case.conductivity, case.size, strict=True)]
+    for axis, (k, length, c) in enumerate(zip(case.conductivity, case.size, place, strict=True)):
+        distances = [abs(c - at) for at in (0.0, length, *jump_places(case, axis))]
+        scales.extend(k / distance for distance in distances if distance > 0)
     return max(scales)
+
+
+def jump_places(case: Case, axis: int) -> list[float]:
+    """Coordinates along an axis at which a patch of any face begins or ends."""
+    found: list[float] = []
+    for face, wall in case.walls.items():
+        across = [other for other in range(3) if other != "xyz".index(face[0])]
+        if isinstance(wall.data, Cells) and axis in across:
+            which = across.index(axis)
+            found.extend(value for patch in wall.data.patches for value in patch[2 * which : 2 * which + 2])
+    return found
 
 
 @pytest.mark.parametrize("seed", SEEDS)

@@ -26,8 +26,9 @@ SMALL_LENGTH = 1.0
 def transform(line: Line, drive: Drive, places: Places, gamma: FloatArray) -> FloatArray:
     """The transformed answer, shape (n, n_gamma, n_profiles).
 
-    gamma: >= 0, shape (n_gamma,), per scaled length. At 0 it is the steady one-dimensional solution, which for a
-    half-line insulated at its end is meant up to a constant: it counts from its value far away.
+    gamma: >= 0, shape (n_gamma,), per scaled length. At 0 it is the steady one-dimensional solution. A line that
+    loses nothing has none: it answers for the drive less its mean, counted from the mean of the answer. A half-line
+    insulated at its end counts from its value far away.
     """
     if isinstance(drive, WallDrive):
         if places.high is None:
@@ -95,6 +96,8 @@ def _wall_by_hyperbolics(
     line: Line, drive: WallDrive, coordinates: FloatArray, gamma: float, order: Order
 ) -> FloatArray:
     near, far = (line.film_high, line.film_low) if drive.high else (line.film_low, line.film_high)
+    if gamma == 0.0 and line.keeps_its_mean:
+        return _closed_line_wall(line, drive, coordinates, order)
     # psi grows from the far end: psi' = H psi there; the answer is psi over what it does at the near end.
     d = wall_distance(line, coordinates, high=not drive.high)
     whole = np.array([line.extent])
@@ -108,6 +111,17 @@ def _wall_by_hyperbolics(
         factor = near / (slope + near * value)
     towards = 1.0 if drive.high else -1.0
     return factor * _psi(far, d, gamma, order) * (1.0 if order == 0 else towards)
+
+
+def _closed_line_wall(line: Line, drive: WallDrive, coordinates: FloatArray, order: Order) -> FloatArray:
+    """(l - s)^2 / 2l - l / 6: an inflow at one end taken out evenly all along, with mean zero."""
+    d, length = wall_distance(line, coordinates, high=not drive.high), line.extent
+    towards = 1.0 if drive.high else -1.0
+    if order == 0:
+        return d * d / (2 * length) - length / 6
+    if order == -1:
+        return towards * d / length
+    return towards * (d**3 / (6 * length) - d * length / 6)
 
 
 def _psi(film: float, d: FloatArray, gamma: float, order: Order) -> FloatArray:
@@ -235,6 +249,12 @@ def _by_green_function(line: Line, profiles: Profiles, places: Places, gamma: fl
 
 
 def _green(line: Line, x: FloatArray, source: FloatArray, gamma: float, order: Order) -> FloatArray:
+    if gamma == 0.0 and line.keeps_its_mean:
+        # l / 3 - max(x, x') + (x^2 + x'^2) / 2l, whose mean is zero
+        length, here, there = line.extent, x * line.scale, source * line.scale
+        if order == -1:
+            return here / length - np.where(here >= there, 1.0, 0.0)
+        return length / 3 - np.maximum(here, there) + (here * here + there * there) / (2 * length)
     low = lambda place, n: _psi(line.film_low, place * line.scale, gamma, n)  # noqa: E731
     high = lambda place, n: _psi(line.film_high, (line.length - place) * line.scale, gamma, n)  # noqa: E731
     end = np.array([line.length])

@@ -98,10 +98,26 @@ def _early_wall(line: Line, drive: WallDrive, places: Places, root_time: FloatAr
 
 
 def _early_departure(line: Line, drive: Profiles, places: Places, root_time: FloatArray) -> FloatArray:
+    if places.order == -1:
+        return _early_slope(line, drive, places, root_time)
     if places.high is None:
         return images.departure(line, drive, places.low, root_time, places.order)
     upper = images.departure(line, drive, places.high, root_time, PRIMITIVE)
     return upper - images.departure(line, drive, places.low, root_time, PRIMITIVE)
+
+
+def _early_slope(line: Line, drive: Profiles, places: Places, root_time: FloatArray) -> FloatArray:
+    """Slopes less those of the profile. On an end with little film the slope is H times the value, and so it is had
+    from the value: the images' slopes would cancel there to a rounding error larger than itself.
+    """
+    slopes = images.departure(line, drive, places.low, root_time, places.order)
+    for end, film, sign in ((0.0, line.film_low, 1.0), (line.length, line.film_high, -1.0)):
+        on_end = places.low == end
+        if on_end.any() and 0.0 < film * line.extent < 1.0:
+            at_end = places.low[on_end]
+            values = images.departure(line, drive, at_end, root_time, 0) + drive.at(at_end)[:, None, :]
+            slopes[on_end] = sign * film * values - drive.slope_at(at_end)[:, None, :] / line.scale
+    return slopes
 
 
 def _late(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
