@@ -1,0 +1,69 @@
+"""create_app(settings): joins routes, error documents, limits and the static page."""
+
+from __future__ import annotations
+
+from collections.abc import AsyncIterator
+from contextlib import asynccontextmanager
+
+from fastapi import FastAPI
+from starlette.middleware.cors import CORSMiddleware
+
+from service import __version__, openapi, problem_details
+from service.middleware import BodyLimit, Counting, LastResort, SecurityHeaders
+from service.routes import convergence, fields, flux_totals, health, pages, problems
+from service.settings import Settings
+from service.state import open_state
+
+_TAGS = [
+    {"name": "problems", "description": "Check and store a problem."},
+    {"name": "answers", "description": "Questions about a problem."},
+    {"name": "operation", "description": "Health, caches and counts."},
+]
+
+
+def create_app(settings: Settings | None = None) -> FastAPI:
+    """The service for some settings, those of the environment by default.
+
+    The store is opened and the worker's threads start with the app's lifespan.
+    """
+    settings = Settings() if settings is None else settings
+
+    @asynccontextmanager
+    async def lifespan(app: FastAPI) -> AsyncIterator[None]:
+        app.state.service = open_state(settings)
+        try:
+            yield
+        finally:
+            app.state.service.close()
+
+    app = FastAPI(
+        title="Stillfield",
+        summary="Steady potential fields in rectangular bodies, with an error bound on every number.",
+        description=openapi.DESCRIPTION,
+        version=__version__,
+        lifespan=lifespan,
+        docs_url=None,
+        redoc_url=None,
+        openapi_tags=_TAGS,
+        redirect_slashes=False,
+    )
+    openapi.install(app)
+    problem_details.install(app)
+    for module in (problems, fields, flux_totals, convergence, health, pages):
+        app.include_router(module.router)
+    pages.mount_files(app)
+
+    # The last one added is the outermost.
+    app.add_middleware(BodyLimit, limit=settings.body_bytes)
+    if settings.cors_origins:
+        app.add_middleware(
+            CORSMiddleware,
+            allow_origins=settings.cors_origins,
+            allow_methods=["GET", "POST"],
+            allow_headers=["Content-Type", "If-None-Match"],
+            expose_headers=["ETag", "Location", "Retry-After", "Server-Timing"],
+        )
+    app.add_middleware(LastResort)
+    app.add_middleware(SecurityHeaders)
+    app.add_middleware(Counting, count=lambda: app.state.service.metrics.count)
+    return app

@@ -1,0 +1,96 @@
+"""What a request would cost, known before it starts, and the refusal when it is too much."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from typing import Protocol
+
+from service.models import evaluate as models
+from service.refusals import Path, TooCostly
+from service.settings import Settings
+
+
+class Notes(Protocol):
+    """Where sentences about fields are kept."""
+
+    def add(self, path: Path, detail: str, code: str) -> None:
+        """Note what is wrong with a field."""
+
+
+class Estimate(Protocol):
+    """What the solver says a grid costs."""
+
+    @property
+    def multiplications(self) -> float:
+        """Multiplications, about."""
+
+    @property
+    def bytes(self) -> float:
+        """Working memory, about."""
+
+
+class Estimating(Protocol):
+    """What can tell the cost of a grid before it is computed."""
+
+    def estimate(self, n_grid_points: int, axes_sizes: tuple[int, int, int], with_flux: bool) -> Estimate:
+        """The cost of one grid."""
+
+
+def check_count(notes: Notes, path: Path, what: str, count: int, limit: int) -> None:
+    """Note a list that is too long."""
+    if count > limit:
+        notes.add(path, f"There are {count} {what}; at most {limit} are allowed in one request.", "too-many")
+
+
+def check_grid_points(notes: Notes, grids: Sequence[models.Grid], limit: int) -> None:
+    """Note grids that have more places than allowed, each alone or all together."""
+    counts = [math.prod(_places(axis) for axis in (grid.x, grid.y, grid.z)) for grid in grids]
+    for index, count in enumerate(counts):
+        if count > limit:
+            detail = f"The grid has {count} places; at most {limit} are allowed in one request."
+            notes.add(("evaluate", "grids", index), detail, "too-many")
+    if sum(counts) > limit and max(counts) <= limit:
+        detail = f"The grids have {sum(counts)} places together; at most {limit} are allowed in one request."
+        notes.add(("evaluate", "grids"), detail, "too-many")
+
+
+def _places(axis: float | str | list[float | str] | models.EvenAxis) -> int:
+    if isinstance(axis, models.EvenAxis):
+        return axis.count
+    return len(axis) if isinstance(axis, list) else 1
+
+
+def check_answer(size: int, limit: int) -> None:
+    """Raise TooCostly for an answer of more bytes than allowed."""
+    if size > limit:
+        raise TooCostly(
+            f"The answer would take up to {size} bytes; at most {limit} are sent. Ask for fewer places, or "
+            "for the binary form of the answer, which is smaller.",
+            size,
+            limit,
+        )
+
+
+def check_fields(
+    solution: Estimating, shapes: Sequence[tuple[int, int, int]], with_flux: bool, settings: Settings
+) -> None:
+    """Raise TooCostly when grids of these shapes take more work or memory than allowed."""
+    estimates = [solution.estimate(math.prod(shape), shape, with_flux) for shape in shapes]
+    work = sum(estimate.multiplications for estimate in estimates)
+    memory = max((estimate.bytes for estimate in estimates), default=0.0)
+    if work > settings.cost_multiplications:
+        raise TooCostly(
+            f"The request would take about {work:.2g} multiplications; at most "
+            f"{settings.cost_multiplications:.2g} are allowed. Ask for fewer places, less accuracy or the "
+            "potential alone.",
+            work,
+            settings.cost_multiplications,
+        )
+    if memory > settings.memory_bytes:
+        raise TooCostly(
+            f"The request would take about {memory:.2g} bytes of memory; at most {settings.memory_bytes:.2g} "
+            "are allowed. Ask for smaller grids.",
+            memory,
+            settings.memory_bytes,
+        )

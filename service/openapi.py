@@ -1,0 +1,127 @@
+"""The OpenAPI document: examples of openapi_examples/, our error documents in place of the stock ones."""
+
+from __future__ import annotations
+
+import json
+from functools import lru_cache
+from pathlib import Path
+from typing import Any
+
+from fastapi import FastAPI
+from fastapi.openapi.models import Example
+from fastapi.openapi.utils import get_openapi
+from pydantic import BaseModel
+
+from service.media import ARRAYS
+from service.models.problem_details import ProblemDetails
+
+# Beside the package in a checkout, in an installation and in the image.
+EXAMPLES = Path(__file__).resolve().parent.parent / "openapi_examples"
+
+_PROBLEM_SCHEMA = "#/components/schemas/ProblemDetails"
+
+_ERRORS = {
+    400: "The body is not JSON as it has to be.",
+    404: "There is nothing at this address.",
+    406: "The answer has no form that the client accepts.",
+    413: "The body is too long.",
+    415: "The body is not application/json.",
+    422: "Fields of the request cannot be used, no such body or steady state exists, or a limit of the "
+    "server is passed; `type` tells which.",
+    503: "The service is busy; Retry-After tells when to try again.",
+    507: "The store of problems is full.",
+}
+
+DESCRIPTION = """
+Steady potential fields (temperature, electric potential, concentration, hydraulic head) in rectangular
+bodies, with an error bound on every number.
+
+A **problem** is a block, or a bar that is semi-infinite along z, with what is known on its faces and what is
+generated inside. Send it with each question, or store it once and name its `problem_id`. A bare number is in
+the declared unit of its kind; a text such as `"25 mm"` carries its own. An inflow is positive into the body,
+a flux component along its axis. Every error is a document of RFC 9457 with a pointer to each field at fault.
+"""
+
+
+@lru_cache(maxsize=1)
+def load_examples() -> dict[str, dict[str, Any]]:
+    """All example files by name: {"summary", "description", "method", "path", "request", "answer"} each."""
+    return {
+        file.stem: json.loads(file.read_text(encoding="utf-8")) for file in sorted(EXAMPLES.glob("*.json"))
+    }
+
+
+def body_examples(path: str) -> dict[str, Example]:
+    """The example requests of one call, as OpenAPI shows them."""
+    return {
+        name: {
+            "summary": example["summary"],
+            "description": example["description"],
+            "value": example["request"],
+        }
+        for name, example in load_examples().items()
+        if example["path"] == path
+    }
+
+
+def error_responses(*statuses: int) -> dict[int | str, dict[str, Any]]:
+    """Descriptions of error answers, as problem documents only."""
+    return {
+        status: {
+            "description": _ERRORS[status],
+            "content": {"application/problem+json": {"schema": {"$ref": _PROBLEM_SCHEMA}}},
+        }
+        for status in statuses
+    }
+
+
+def answer_responses(model: type[BaseModel]) -> dict[int | str, dict[str, Any]]:
+    """Descriptions of the answers of a call that takes a question."""
+    return {
+        200: {
+            "model": model,
+            "description": "The answer. `ETag` names its content, `Server-Timing` tells where the time went.",
+            "content": {
+                ARRAYS: {
+                    "schema": {
+                        "type": "string",
+                        "format": "binary",
+                        "description": "The same with arrays as entries of a ZIP archive of .npy files "
+                        "(numpy.load); the entry `answer` is the JSON with the name of an entry in place of "
+                        "each array. NaN stands for null.",
+                    }
+                }
+            },
+        },
+        **error_responses(400, 406, 413, 415, 422, 503),
+    }
+
+
+def install(app: FastAPI) -> None:
+    """Make the app serve this document."""
+
+    def openapi() -> dict[str, Any]:
+        if app.openapi_schema is None:
+            app.openapi_schema = _document(app)
+        return app.openapi_schema
+
+    app.openapi = openapi  # type: ignore[method-assign]
+
+
+def _document(app: FastAPI) -> dict[str, Any]:
+    document = get_openapi(
+        title=app.title,
+        version=app.version,
+        summary=app.summary,
+        description=app.description,
+        routes=app.routes,
+        tags=app.openapi_tags,
+    )
+    schemas = document["components"]["schemas"]
+    # The stock error documents: ours are declared on every call.
+    for name in ("HTTPValidationError", "ValidationError"):
+        schemas.pop(name, None)
+    details = ProblemDetails.model_json_schema(ref_template="#/components/schemas/{model}")
+    schemas.update(details.pop("$defs"))
+    schemas["ProblemDetails"] = details
+    return document

@@ -1,0 +1,106 @@
+"""The way from a question to its answer that the calls share: kept answers, worker, encoding and headers."""
+
+from __future__ import annotations
+
+import hashlib
+import time
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Any, Generic, TypeVar
+
+from fastapi import Request, Response
+
+from service import __version__
+from service.core import CoreError, Solution
+from service.media import ARRAYS_FORM, Form, choose_form, encode
+from service.models.evaluate import Question
+from service.refusals import TooCostly
+from service.request_body import StrictJsonRoute
+from service.settings import Settings
+from service.state import KeptAnswer, State, state_of
+from service.translation.answers import KeepGoing
+from service.translation.problem import ReadProblem
+from service.translation.solving import point_into_question
+
+Asked = TypeVar("Asked", bound=Question)
+Wanted = TypeVar("Wanted")
+
+
+@dataclass(frozen=True)
+class Call(Generic[Asked, Wanted]):
+    """The three steps of one call: read the question, refuse what is too costly, answer."""
+
+    read: Callable[[Asked, ReadProblem, Solution, Settings], Wanted]
+    check_cost: Callable[[Wanted, Solution, Settings, int], None]
+    answer: Callable[[ReadProblem, Solution, Wanted, KeepGoing], dict[str, Any]]
+
+
+class AnswerRoute(StrictJsonRoute):
+    """A route whose answers are kept under the digest of the request, so that asking again costs no work."""
+
+    def answered_before(self, request: Request) -> Response | None:
+        """The answer to a request of the same bytes and form, if it is still kept."""
+        form = choose_form(request.headers.get("accept"))
+        kept = state_of(request).answers.get(_key(request, form))
+        return None if kept is None else _response(kept, 'cache;desc="hit"')
+
+
+async def answer(request: Request, question: Asked, call: Call[Asked, Wanted]) -> Response:
+    """Answer a question off the event loop, and keep the answer."""
+    state = state_of(request)
+    form = choose_form(request.headers.get("accept"))
+    key = _key(request, form)
+    (body, times), waited = await state.worker.run(
+        lambda keep_going: _work(state, question, call, form, keep_going)
+    )
+    kept = KeptAnswer(body, form.media_type, f'"{key}"', form.file_name)
+    state.answers.keep(key, kept)
+    times = {"queue": waited, **times}
+    return _response(kept, ", ".join(f"{name};dur={1000 * seconds:.3f}" for name, seconds in times.items()))
+
+
+def _work(
+    state: State, question: Asked, call: Call[Asked, Wanted], form: Form, keep_going: KeepGoing
+) -> tuple[bytes, dict[str, float]]:
+    """The encoded answer and the seconds that each step took. Runs in a thread of the worker."""
+    times = {}
+    started = time.perf_counter()
+
+    def lap(name: str) -> None:
+        nonlocal started
+        now = time.perf_counter()
+        times[name] = now - started
+        started = now
+
+    solved = state.solver.of_question(question)
+    try:
+        wanted = call.read(question, solved.problem, solved.solution, state.settings)
+        call.check_cost(wanted, solved.solution, state.settings, form.bytes_a_number)
+        lap("prepare")
+        content = call.answer(solved.problem, solved.solution, wanted, keep_going)
+        lap("compute")
+    except CoreError as error:
+        point_into_question(error)
+        raise
+    body = encode(content, form)
+    lap("encode")
+    if len(body) > state.settings.answer_bytes:
+        raise TooCostly(
+            f"The answer takes {len(body)} bytes; at most {state.settings.answer_bytes} are sent.",
+            len(body),
+            state.settings.answer_bytes,
+        )
+    return body, times
+
+
+def _key(request: Request, form: Form) -> str:
+    """Digest of all an answer depends on: the call, the request's bytes, the form and the release."""
+    parts = (request.scope["path"], request.state.body_digest, form.media_type, __version__)
+    return hashlib.sha256("\n".join(parts).encode()).hexdigest()
+
+
+def _response(kept: KeptAnswer, timing: str) -> Response:
+    headers = {"ETag": kept.etag, "Vary": "Accept", "Server-Timing": timing}
+    if kept.media_type == ARRAYS_FORM.media_type:
+        headers["Content-Disposition"] = f'attachment; filename="{kept.file_name}"'
+    return Response(kept.body, media_type=kept.media_type, headers=headers)

@@ -1,0 +1,79 @@
+"""Whether the service lives and is ready, what it is doing, and counts for a scraper.
+
+Never limited, never queued.
+"""
+
+from __future__ import annotations
+
+import asyncio
+from typing import Any
+
+from fastapi import APIRouter, Request, Response
+from prometheus_client import CONTENT_TYPE_LATEST
+
+from service import __version__
+from service.models.answers import Diagnostics, Health
+from service.openapi import error_responses
+from service.problem_details import TYPES, problem_response
+from service.state import state_of
+
+router = APIRouter(tags=["operation"])
+
+READY_WITHIN_SECONDS = 2.0
+
+
+@router.get("/health/live", summary="Whether the process answers", response_model=Health)
+async def live() -> dict[str, str]:
+    """Answers as long as the process takes requests at all."""
+    return {"status": "ok"}
+
+
+@router.get(
+    "/health/ready",
+    summary="Whether questions can be answered",
+    response_model=Health,
+    responses=error_responses(503),
+)
+async def ready(request: Request) -> Any:
+    """Answers ok when the store can be read, within two seconds; otherwise 503."""
+    state = state_of(request)
+    try:
+        await asyncio.wait_for(asyncio.to_thread(state.store.report), READY_WITHIN_SECONDS)
+    except Exception:
+        return problem_response("not-ready", "The store of problems does not answer.")
+    return {"status": "ok"}
+
+
+@router.get("/v1/diagnostics", summary="What the service is doing", response_model=Diagnostics)
+async def diagnostics(request: Request) -> dict[str, Any]:
+    """Hits and misses of everything that is kept, how busy the worker is, how full the store is."""
+    state = state_of(request)
+    store = await asyncio.to_thread(state.store.report)
+    return {
+        "version": __version__,
+        "caches": state.metrics.caches(),
+        "work": state.metrics.work(),
+        "store": {"problems": store.problems, "size": store.size, "limit": store.limit},
+    }
+
+
+@router.get(
+    "/metrics",
+    summary="Counts for a scraper",
+    response_class=Response,
+    responses={
+        200: {"content": {"text/plain": {"schema": {"type": "string"}}}, "description": "Counts as text."}
+    },
+)
+async def metrics(request: Request) -> Response:
+    """Requests, times, caches and work in the text form of Prometheus."""
+    return Response(state_of(request).metrics.text(), media_type=CONTENT_TYPE_LATEST)
+
+
+@router.get("/problem-types/{name}", include_in_schema=False, response_model=None)
+async def problem_type(name: str) -> Response | dict[str, Any]:
+    """What the address in an error's `type` stands for."""
+    found = TYPES.get(name)
+    if found is None:
+        return problem_response("not-found", "There is no such type of error.")
+    return {"type": f"/problem-types/{found.name}", "title": found.title, "status": found.status}

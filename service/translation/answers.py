@@ -1,0 +1,121 @@
+"""What every answer carries: the problem's id, the units, the certificate and warnings."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core import Solution
+from service.core.problem import AXES, Film, Held
+from service.models import evaluate as models
+from service.refusals import Path
+from service.translation.collector import Collector
+from service.translation.problem import ReadProblem
+from service.units import Kind, UnitSystem
+
+FloatArray = NDArray[np.float64]
+KeepGoing = Callable[[], None]
+Warning_ = dict[str, str]
+
+# Both representations are evaluated at these; a handful tells as much as many and costs little.
+MOST_CHECK_PLACES = 12
+
+
+def read_tolerance(collector: Collector, accuracy: models.Accuracy, solution: Solution) -> float:
+    """Largest error allowed, in the declared unit of the potential."""
+    if accuracy.absolute is not None:
+        path: Path = ("accuracy", "absolute")
+        return collector.read_positive(Kind.POTENTIAL_DIFFERENCE, accuracy.absolute, path, "The accuracy")
+    assert accuracy.relative is not None
+    # A body whose data are all alike has no span; any number will then do.
+    return accuracy.relative * (solution.span or 1.0)
+
+
+def units_shown(units: UnitSystem) -> dict[str, str]:
+    """The unit of each kind of quantity in the answer."""
+    return {kind.value: units.declared[kind] for kind in Kind}
+
+
+def certificate(
+    solution: Solution, places: FloatArray, tolerance: float, bounds: Iterable[float] = ()
+) -> dict[str, Any]:
+    """Evidence for the answer. bounds: error bounds of the potentials in it, the largest of which is stated.
+
+    places: where both representations are compared, shape (n_places, 3).
+    """
+    found = solution.certificate(places, tolerance=tolerance)
+    return {
+        "error_bound": max([found.error_bound, *bounds]),
+        "accuracy_asked": tolerance,
+        "agreement": found.agreement,
+        "agreement_bound": found.check_bound,
+        "checked_places": found.checked_places,
+        "terms": dict(found.terms),
+        "method": found.method,
+    }
+
+
+def check_places(candidates: FloatArray) -> FloatArray:
+    """At most MOST_CHECK_PLACES of the places asked for, evenly chosen from all of them."""
+    if len(candidates) <= MOST_CHECK_PLACES:
+        return candidates
+    chosen = np.linspace(0, len(candidates) - 1, MOST_CHECK_PLACES).round().astype(int)
+    checked: FloatArray = candidates[chosen]
+    return checked
+
+
+def place_inside(problem: ReadProblem) -> FloatArray:
+    """The middle of the body, or of its first cube's length when it is semi-infinite; shape (1, 3)."""
+    a, b, c = problem.body.size
+    return np.array([[a / 2, b / 2, c / 2 if np.isfinite(c) else max(a, b) / 2]])
+
+
+def warning(code: str, message: str, where: str) -> Warning_:
+    """One remark.
+
+    where: a JSON pointer into the answer, or into the problem where it begins with #/problem.
+    """
+    return {"code": code, "message": message, "where": where}
+
+
+def problem_warnings(problem: ReadProblem, solution: Solution) -> list[Warning_]:
+    """Remarks that hold for every answer about the problem."""
+    warnings = []
+    if solution.level_pinned:
+        warnings.append(
+            warning(
+                "level-pinned",
+                "No face fixes the level of the potential; it is chosen so that the mean over the body, or "
+                "the value far along a semi-infinite one, is zero. Differences and fluxes do not depend on "
+                "it.",
+                "#/problem/faces",
+            )
+        )
+    for face, count in problem.filled.items():
+        condition = problem.body.faces[face]
+        datum = (
+            "value" if isinstance(condition, Held) else "ambient" if isinstance(condition, Film) else "inflow"
+        )
+        readings = "reading was" if count == 1 else "readings were"
+        warnings.append(
+            warning(
+                "readings-filled",
+                f"{count} missing {readings} filled from the neighbours. Error bounds hold for the filled "
+                "table.",
+                f"#/problem/faces/{face}/{datum}",
+            )
+        )
+    return warnings
+
+
+def vector(units: UnitSystem, flux: FloatArray) -> dict[str, FloatArray]:
+    """Components of a flux density along the axes, in the declared unit. flux: shape (3, ...)."""
+    return {axis: units.write_array(Kind.FLUX, flux[index]) for index, axis in enumerate(AXES)}
+
+
+def number_or_none(value: float) -> float | None:
+    """A number of an answer; None for one that is not finite."""
+    return float(value) if np.isfinite(value) else None

@@ -1,0 +1,63 @@
+"""Reading the fields of a request one by one, so that one answer names all that are wrong."""
+
+from __future__ import annotations
+
+import math
+
+from service.core.errors import CoreError
+from service.models.face_maps import Interval
+from service.refusals import Issue, Path, RequestRefused
+from service.unit_text import UnitError
+from service.units import Kind, UnitSystem
+
+# What stands for a number that could not be read; the request is refused before anyone works with it.
+UNREAD = math.nan
+
+
+class Collector:
+    """Reads fields in the units of a problem and keeps a sentence for each that cannot be used.
+
+    prefix: path of the problem in the request, empty when the body is the problem itself.
+    """
+
+    def __init__(self, units: UnitSystem, prefix: Path = ()) -> None:
+        self.units = units
+        self.prefix = prefix
+        self.issues: list[Issue] = []
+
+    def add(self, path: Path, detail: str, code: str) -> None:
+        """Note what is wrong with the field at a path below the prefix."""
+        self.issues.append(Issue(self.prefix + path, detail, code))
+
+    def add_core_error(self, path: Path, error: CoreError) -> None:
+        """Note what the solver says about a part that lies at a path below the prefix."""
+        self.add(path + error.field, error.message, "not-physical")
+
+    def read(self, kind: Kind, value: float | str, path: Path) -> float:
+        """The number in the solver's units, UNREAD if there is none."""
+        try:
+            return self.units.read(kind, value)
+        except UnitError as error:
+            self.add(path, str(error), "unit")
+            return UNREAD
+
+    def read_positive(self, kind: Kind, value: float | str, path: Path, what: str) -> float:
+        """As `read`, for a quantity that has to be greater than zero; `what` begins the sentence."""
+        number = self.read(kind, value, path)
+        if number <= 0:
+            shown = self.units.show(kind, value)
+            self.add(path, f"{what} is {shown}; it has to be greater than zero.", "not-positive")
+            return UNREAD
+        return number
+
+    def read_interval(self, interval: Interval, length: float, path: Path) -> tuple[float, float]:
+        """From and to along an axis of the body that is `length` long; "end" is its far side."""
+        low = self.read(Kind.LENGTH, interval[0], (*path, 0))
+        if interval[1] == "end":
+            return low, length
+        return low, self.read(Kind.LENGTH, interval[1], (*path, 1))
+
+    def raise_if_any(self) -> None:
+        """Refuse the request if a field could not be used."""
+        if self.issues:
+            raise RequestRefused(tuple(self.issues))

@@ -1,0 +1,170 @@
+"""Total flow through faces, parts of faces and planes, and the balance: the question read, and its answer."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+from service import cost
+from service.core import Balance, Solution, Total
+from service.core.problem import AXES, Face, axes_along
+from service.models import evaluate as models
+from service.settings import Settings
+from service.translation import answers
+from service.translation.answers import KeepGoing
+from service.translation.collector import Collector
+from service.translation.fields import describe_part, rectangle_shown
+from service.translation.places import FacePart, PlaceReader, PlanePart
+from service.translation.problem import ReadProblem
+from service.units import Kind, UnitSystem
+
+
+@dataclass(frozen=True)
+class TotalsWanted:
+    """A question about totals in the solver's numbers. gap: width left out along jumps, or None."""
+
+    faces: tuple[Face, ...]
+    parts: tuple[FacePart, ...]
+    planes: tuple[PlanePart, ...]
+    gap: float | None
+    tolerance: float
+
+
+def read_totals(
+    question: models.FluxTotalsQuestion, problem: ReadProblem, solution: Solution, settings: Settings
+) -> TotalsWanted:
+    """The question in the solver's numbers. Raises RequestRefused with a sentence for each field at fault."""
+    collector = Collector(problem.units)
+    ask = question.evaluate
+    count = len(ask.patches) + len(ask.planes)
+    cost.check_count(collector, ("evaluate",), "patches and planes", count, settings.totals)
+    collector.raise_if_any()
+
+    reader = PlaceReader(collector, settings, problem)
+    faces = problem.body.present_faces
+    if ask.faces is not None:
+        for index, face in enumerate(ask.faces):
+            reader.is_present(face, ("evaluate", "faces", index))
+        faces = tuple(face for face in ask.faces)
+    parts = [reader.face_part(part, ("evaluate", "patches", index)) for index, part in enumerate(ask.patches)]
+    planes = [reader.plane(plane, ("evaluate", "planes", index)) for index, plane in enumerate(ask.planes)]
+    gap = None
+    if ask.edge_gap is not None:
+        gap = collector.read_positive(Kind.LENGTH, ask.edge_gap, ("evaluate", "edge_gap"), "The edge gap")
+    tolerance = answers.read_tolerance(collector, question.accuracy, solution)
+    collector.raise_if_any()
+    return TotalsWanted(
+        tuple(dict.fromkeys(faces)),
+        tuple(part for part in parts if part is not None),
+        tuple(plane for plane in planes if plane is not None),
+        gap,
+        tolerance,
+    )
+
+
+def answer_totals(
+    problem: ReadProblem, solution: Solution, wanted: TotalsWanted, keep_going: KeepGoing
+) -> dict[str, Any]:
+    """The answer to a question about totals."""
+    units = problem.units
+    warnings = answers.problem_warnings(problem, solution)
+
+    def shown(total: Total, word: str, where: str) -> dict[str, Any]:
+        keep_going()
+        if total.value is None:
+            warnings.append(_unbounded_warning(total, where))
+        return _total(units, total, word)
+
+    tolerance, gap = wanted.tolerance, wanted.gap
+    balance = solution.balance(gap=gap, tolerance=tolerance)
+    faces = {face: shown(balance.inflow[face], "inflow", f"#/faces/{face}") for face in wanted.faces}
+    patches = [
+        describe_part(part)
+        | shown(
+            solution.face_total(part.face, part.where, gap=gap, tolerance=tolerance),
+            "inflow",
+            f"#/patches/{index}",
+        )
+        for index, part in enumerate(wanted.parts)
+    ]
+    planes = [
+        _plane_described(plane)
+        | shown(
+            solution.plane_total(plane.axis, plane.position, plane.where, tolerance=tolerance),
+            "flow",
+            f"#/planes/{index}",
+        )
+        for index, plane in enumerate(wanted.planes)
+    ]
+    keep_going()
+    return {
+        "problem_id": problem.problem_id,
+        "potential": problem.potential,
+        "units": answers.units_shown(units),
+        "certificate": answers.certificate(solution, answers.place_inside(problem), tolerance),
+        "warnings": warnings,
+        "faces": faces,
+        "patches": patches,
+        "planes": planes,
+        "balance": _balance(units, balance),
+    }
+
+
+def check_cost(wanted: TotalsWanted, solution: Solution, settings: Settings, bytes_a_number: int) -> None:
+    """Totals are integrals of factors: their number is bounded, and the time limit bounds the rest."""
+
+
+def _total(units: UnitSystem, total: Total, word: str) -> dict[str, Any]:
+    """A total in the declared unit; null with its causes where it is unbounded."""
+    answer: dict[str, Any] = {word: None, "error_bound": None}
+    if total.value is not None:
+        answer[word] = units.write(Kind.FLOW, float(total.value))
+        if total.error_bound is not None:
+            answer["error_bound"] = units.write(Kind.FLOW, float(total.error_bound))
+    if total.causes:
+        answer["unbounded"] = [
+            {
+                "kind": cause.kind,
+                "line": cause.line,
+                "coefficient": units.write(Kind.FLOW, float(cause.coefficient)),
+                "largest_jump": float(cause.largest_jump),
+            }
+            for cause in total.causes
+        ]
+    if total.with_gap is not None:
+        answer["with_gap"] = {
+            word: units.write(Kind.FLOW, float(total.with_gap.value)),
+            "error_bound": units.write(Kind.FLOW, float(total.with_gap.error_bound)),
+        }
+    return answer
+
+
+def _unbounded_warning(total: Total, where: str) -> answers.Warning_:
+    lines = ", ".join(cause.line for cause in total.causes)
+    return answers.warning(
+        "unbounded-total",
+        f"The total has no finite value, because of: {lines}. Name an edge gap to get the flow through the "
+        "rest.",
+        where,
+    )
+
+
+def _plane_described(plane: PlanePart) -> dict[str, Any]:
+    described: dict[str, Any] = {} if plane.name is None else {"name": plane.name}
+    described |= {"axis": AXES[plane.axis], "position": plane.position}
+    if plane.where is not None:
+        described["rectangle"] = rectangle_shown(plane.where, axes_along(plane.axis))
+    return described
+
+
+def _balance(units: UnitSystem, balance: Balance) -> dict[str, Any]:
+    def flow(value: float | None) -> float | None:
+        return None if value is None else answers.number_or_none(units.write(Kind.FLOW, float(value)))
+
+    return {
+        "closed": None if balance.closed is None else bool(balance.closed),
+        "generation": flow(balance.generation),
+        "residual": flow(balance.residual),
+        "error_bound": flow(balance.error_bound),
+        "unbounded_faces": [face for face, total in balance.inflow.items() if total.value is None],
+    }

@@ -1,0 +1,200 @@
+"""Places a question names: grids, points, parts of faces and planes, each checked to lie in the body."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core.maps import Rectangle
+from service.core.problem import AXES, Face, axes_along
+from service.models import evaluate as models
+from service.refusals import Path
+from service.settings import Settings
+from service.translation.collector import Collector
+from service.translation.face_maps import FaceReader
+from service.translation.problem import ReadProblem
+from service.units import Kind
+
+FloatArray = NDArray[np.float64]
+
+
+@dataclass(frozen=True)
+class GridPlaces:
+    """A rectilinear grid. axes: places along x, y and z."""
+
+    name: str | None
+    axes: tuple[FloatArray, FloatArray, FloatArray]
+
+    @property
+    def shape(self) -> tuple[int, int, int]:
+        """Number of places along x, y and z."""
+        return self.axes[0].size, self.axes[1].size, self.axes[2].size
+
+
+@dataclass(frozen=True)
+class NamedPoint:
+    """One place."""
+
+    name: str | None
+    at: tuple[float, float, float]
+
+
+@dataclass(frozen=True)
+class FacePart:
+    """A face or a rectangle of it. patch: number of the patch it is, if it is one."""
+
+    name: str | None
+    face: Face
+    patch: int | None
+    where: Rectangle | None
+
+
+@dataclass(frozen=True)
+class PlanePart:
+    """A plane square to an axis (0, 1, 2) at a position, or a rectangle of it."""
+
+    name: str | None
+    axis: int
+    position: float
+    where: Rectangle | None
+
+
+class PlaceReader:
+    """Reads the places of one question, noting with its path each that lies outside the body."""
+
+    def __init__(self, collector: Collector, settings: Settings, problem: ReadProblem) -> None:
+        self.collector = collector
+        self.settings = settings
+        self.problem = problem
+        self.size = problem.body.size
+
+    def grid(self, grid: models.Grid, path: Path) -> GridPlaces:
+        """The places of a grid."""
+        axes = [
+            self._axis(places, index, (*path, axis))
+            for index, (axis, places) in enumerate(zip(AXES, (grid.x, grid.y, grid.z), strict=True))
+        ]
+        return GridPlaces(grid.name, (axes[0], axes[1], axes[2]))
+
+    def point(self, point: models.Point, path: Path) -> NamedPoint:
+        """The place of a point."""
+        at = [self._inside(value, axis, (*path, "at", axis)) for axis, value in enumerate(point.at)]
+        return NamedPoint(point.name, (at[0], at[1], at[2]))
+
+    def face_part(self, part: models.FacePart, path: Path) -> FacePart | None:
+        """A face, one of its patches or a rectangle of it; None when it is none of these, which is then
+        noted.
+        """
+        face = part.face
+        if not self.is_present(face, (*path, "face")):
+            return None
+        has_intervals = any(interval is not None for interval in (part.x, part.y, part.z))
+        if part.patch is not None:
+            if has_intervals:
+                self.collector.add(
+                    (*path, "patch"), "Give either a patch or intervals along the axes.", "one-of"
+                )
+                return None
+            return self._patch(part, face, (*path, "patch"))
+        if not has_intervals:
+            return FacePart(part.name, face, None, None)
+        where = FaceReader(self.collector, self.settings, face, self.size).rectangle(part, path)
+        if where is None or not self._rectangle_fits(where, axes_along(face), path):
+            return None
+        return FacePart(part.name, face, None, where)
+
+    def is_present(self, face: Face, path: Path) -> bool:
+        """Whether the body has the face; noted when it has not."""
+        if face in self.problem.body.present_faces:
+            return True
+        self.collector.add(path, f"A semi-infinite body has no face {face}.", "no-such-face")
+        return False
+
+    def is_endless(self, part: FacePart) -> bool:
+        """Whether the part reaches without end along a semi-infinite body."""
+        if part.where is None:
+            return any(math.isinf(self.size[axis]) for axis in axes_along(part.face))
+        return math.isinf(part.where.p_high) or math.isinf(part.where.q_high)
+
+    def plane(self, plane: models.Plane, path: Path) -> PlanePart | None:
+        """A plane or a rectangle of it; None when it is neither, which is then noted."""
+        given = {axis: getattr(plane, axis) for axis in AXES}
+        fixed = [axis for axis, value in given.items() if value is not None and not isinstance(value, list)]
+        if len(fixed) != 1:
+            detail = 'Give one length along exactly one axis, such as {"z": 20}; intervals along the others '
+            "are free."
+            self.collector.add(path, detail, "plane")
+            return None
+        axis = AXES.index(fixed[0])
+        position = self._inside(given[fixed[0]], axis, (*path, fixed[0]))
+        along = axes_along(axis)
+        if all(given[AXES[other]] is None for other in along):
+            return PlanePart(plane.name, axis, position, None)
+        ends: list[float] = []
+        for other in along:
+            interval = given[AXES[other]]
+            ends.extend(
+                (0.0, self.size[other])
+                if interval is None
+                else self.collector.read_interval(interval, self.size[other], (*path, AXES[other]))
+            )
+        where = Rectangle(*ends)
+        return (
+            PlanePart(plane.name, axis, position, where) if self._rectangle_fits(where, along, path) else None
+        )
+
+    def _axis(
+        self, places: float | str | list[float | str] | models.EvenAxis, axis: int, path: Path
+    ) -> FloatArray:
+        if isinstance(places, models.EvenAxis):
+            first = self._inside(places.from_, axis, (*path, "from"))
+            last = self._inside(places.to, axis, (*path, "to"))
+            if last <= first:
+                self.collector.add(path, "`to` has to be greater than `from`.", "order")
+            return np.linspace(first, last, places.count)
+        if isinstance(places, list):
+            values = [self._inside(value, axis, (*path, index)) for index, value in enumerate(places)]
+            if (np.diff(values) <= 0).any():
+                self.collector.add(path, "The places have to increase.", "order")
+            return np.array(values)
+        return np.array([self._inside(places, axis, path)])
+
+    def _inside(self, value: float | str, axis: int, path: Path) -> float:
+        """A coordinate of the closed body."""
+        place = self.collector.read(Kind.LENGTH, value, path)
+        length = self.size[axis]
+        if place < 0 or place > length:
+            units = self.problem.units
+            shown = units.show(Kind.LENGTH, value)
+            reach = (
+                "from 0 without end" if math.isinf(length) else f"from 0 to {units.show(Kind.LENGTH, length)}"
+            )
+            self.collector.add(
+                path, f"{AXES[axis]} = {shown} lies outside the body, which reaches {reach}.", "outside-body"
+            )
+        return place
+
+    def _rectangle_fits(self, where: Rectangle, along: tuple[int, int], path: Path) -> bool:
+        noted = len(self.collector.issues)
+        ends = ((where.p_low, where.p_high), (where.q_low, where.q_high))
+        for axis, (low, high) in zip(along, ends, strict=True):
+            if not 0 <= low < high <= self.size[axis]:
+                self.collector.add(
+                    (*path, AXES[axis]),
+                    f"The interval from {low:g} to {high:g} has to have a positive extent and lie between 0 "
+                    f"and {self.size[axis]:g}.",
+                    "outside-body",
+                )
+        return len(self.collector.issues) == noted
+
+    def _patch(self, part: models.FacePart, face: Face, path: Path) -> FacePart | None:
+        patches = self.problem.patches.get(face, ())
+        for index, patch in enumerate(patches):
+            if part.patch in (index, patch.name):
+                return FacePart(part.name or patch.name, face, index, patch.where)
+        has = f"has the patches 0 to {len(patches) - 1}" if patches else "has no patches"
+        self.collector.add(path, f"There is no such patch; the face {face} {has}.", "no-such-patch")
+        return None

@@ -1,0 +1,89 @@
+"""From a problem, or the id of a stored one, to the solver's solution, with errors that point into the
+request.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from service.core import Solution, solve
+from service.core.errors import (
+    AccuracyNotReached,
+    CoreError,
+    Interrupted,
+    NoSteadyState,
+    NotPhysical,
+    OutsideBody,
+)
+from service.kept import Kept
+from service.models.evaluate import Question
+from service.models.problem import Problem
+from service.refusals import Issue, Path, RequestRefused
+from service.settings import Settings
+from service.store import ProblemStore
+from service.translation.problem import ReadProblem, canonical, path_in_request, problem_id_of, read_problem
+from service.units import Kind
+
+
+@dataclass(frozen=True)
+class Solved:
+    """A problem with its solution, ready for questions."""
+
+    problem: ReadProblem
+    solution: Solution
+
+
+class Solver:
+    """Solves problems, and keeps the solutions of the last ones for the next question."""
+
+    def __init__(self, settings: Settings, store: ProblemStore) -> None:
+        self._settings = settings
+        self._store = store
+        self.kept: Kept[Solved] = Kept(settings.solutions_kept)
+
+    def of_question(self, question: Question) -> Solved:
+        """The solution of the problem a question is about.
+
+        Raises RequestRefused for an id that is not stored, and what reading and solving the problem raise.
+        """
+        if question.problem is not None:
+            return self.of_problem(question.problem, ("problem",))
+        assert question.problem_id is not None
+        solved = self.kept.get(question.problem_id)
+        if solved is None:
+            content = self._store.get(question.problem_id)
+            if content is None:
+                detail = (
+                    "No problem is stored under this id; post it to /v1/problems, or send the problem itself."
+                )
+                raise RequestRefused((Issue(("problem_id",), detail, "unknown-problem"),))
+            solved = self.of_problem(Problem.model_validate_json(content), ("problem_id",))
+        return solved
+
+    def of_problem(self, problem: Problem, prefix: Path = ()) -> Solved:
+        """The solution of a problem that stands in the request at `prefix`."""
+        problem_id = problem_id_of(canonical(problem))
+        solved = self.kept.get(problem_id)
+        if solved is None:
+            read = read_problem(problem, self._settings, prefix)
+            try:
+                solved = Solved(read, solve(read.body))
+            except CoreError as error:
+                error.field = prefix + path_in_request(error, problem)
+                if isinstance(error, NoSteadyState):
+                    error.imbalance = read.units.write(Kind.FLOW, error.imbalance)
+                raise
+            self.kept.keep(problem_id, solved)
+        return solved
+
+
+def point_into_question(error: CoreError) -> None:
+    """Make an error the solver raised while it answered point to the part of the question it is about."""
+    if isinstance(error, AccuracyNotReached):
+        error.field = ("accuracy",)
+    elif error.field == ("edge_gap",):
+        error.field = ("evaluate", "edge_gap")
+    elif isinstance(error, OutsideBody | NotPhysical):
+        error.field = ("evaluate",)
+    elif isinstance(error, Interrupted):
+        error.field = ()
