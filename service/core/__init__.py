@@ -1,5 +1,8 @@
 """The solver core: steady potential fields in rectangular bodies. It knows no web and converts no units."""
 
+from service.core.caches import CacheReport, cache_report
+from service.core.certificate import Certificate
+from service.core.convergence import Convergence, NodeStep, Overshoot, SeriesStep
 from service.core.errors import (
     AccuracyNotReached,
     CoreError,
@@ -8,6 +11,8 @@ from service.core.errors import (
     NotPhysical,
     OutsideBody,
 )
+from service.core.estimate import Estimate
+from service.core.extremes import Extremes, Place
 from service.core.field import Field, Grid
 from service.core.maps import FaceMap, Patch, Rectangle
 from service.core.problem import (
@@ -23,15 +28,23 @@ from service.core.problem import (
     Insulated,
 )
 from service.core.solution import Solution, solve
+from service.core.totals import Balance, Bounded, Total, UnboundedCause
 
 __all__ = [
     "AXES",
     "FACES",
     "AccuracyNotReached",
+    "Balance",
     "Body",
+    "Bounded",
     "BoxSource",
+    "CacheReport",
+    "Certificate",
     "Condition",
+    "Convergence",
     "CoreError",
+    "Estimate",
+    "Extremes",
     "Face",
     "FaceMap",
     "Field",
@@ -42,10 +55,17 @@ __all__ = [
     "Insulated",
     "Interrupted",
     "NoSteadyState",
+    "NodeStep",
     "NotPhysical",
     "OutsideBody",
+    "Overshoot",
     "Patch",
+    "Place",
     "Rectangle",
+    "SeriesStep",
     "Solution",
+    "Total",
+    "UnboundedCause",
+    "cache_report",
     "solve",
 ]

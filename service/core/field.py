@@ -29,6 +29,9 @@ FLUX_HEADROOM = 1e-3
 # Headroom between the error factor aimed at and the sum of absolute values that multiplies it, per part.
 SPREAD_HEADROOM = 8.0
 
+# Rounding of the sum of parts and the reference when it is stored, relative to the answer.
+STORED = 4e-16
+
 
 @dataclass(frozen=True, eq=False)
 class Grid:
@@ -176,9 +179,10 @@ def _accurate(
     step = step_for(setting, tolerance)
     while True:
         potential, bounds, nodes = _sum_of_parts(setting, columns, (VALUE, VALUE, VALUE), step, tensor, keep_going)
-        bound = _largest(bounds, tensor)
+        potential += setting.reference
+        bound = _largest(bounds, tensor) + STORED * float(np.abs(potential).max())
         if bound <= tolerance:
-            return potential + setting.reference, bound, nodes
+            return potential, bound, nodes
         if step <= time_form.FINEST_STEP:
             raise AccuracyNotReached(
                 f"The accuracy asked for is {tolerance:.3g}; the best bound that can be promised here is {bound:.3g}.",
@@ -212,7 +216,7 @@ def _flux(
         else:
             bound = bounds[0]
         np.maximum(flux_bound, factor * bound, out=flux_bound)
-    return flux, flux_bound
+    return flux, flux_bound + STORED * np.abs(flux).max(axis=0)
 
 
 def _sum_of_parts(

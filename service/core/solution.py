@@ -5,8 +5,12 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core import certificate, convergence, estimate, extremes, totals
 from service.core import field as fields
-from service.core import totals
+from service.core.certificate import Certificate
+from service.core.convergence import Convergence, Overshoot
+from service.core.estimate import Estimate
+from service.core.extremes import Extremes
 from service.core.field import Field, Grid, KeepGoing, Setting
 from service.core.lines.line import Line
 from service.core.maps import Rectangle
@@ -68,6 +72,38 @@ class Solution:
         return fields.at_points(
             self._setting, points, tolerance=tolerance, with_flux=with_flux, keep_going=keep_going
         )
+
+    def extremes(self, *, tolerance: float, keep_going: KeepGoing | None = None) -> Extremes:
+        """The hottest and the coldest place of the closed body."""
+        return extremes.find(self._setting, tolerance, keep_going)
+
+    def certificate(self, points: FloatArray, error_bound: float, *, tolerance: float) -> Certificate:
+        """What stands behind an answer with that bound: agreement of both representations at some of its points."""
+        return certificate.certify(self._setting, points, error_bound, tolerance)
+
+    def convergence(
+        self, points: FloatArray, *, tolerance: float, keep_going: KeepGoing | None = None
+    ) -> list[Convergence]:
+        """How the answers at points, shape (n, 3), converge."""
+        fields.check_inside(self.body, (points[:, 0], points[:, 1], points[:, 2]))
+        answers = []
+        for point in points:
+            if keep_going is not None:
+                keep_going()
+            answers.append(convergence.converge(self._setting, point, tolerance))
+        return answers
+
+    def overshoot(self, terms: int) -> list[Overshoot]:
+        """By how much a series of so many modes per axis overshoots the data of each driven face."""
+        return convergence.overshoots(self._setting, terms)
+
+    def estimate_grid(self, shape: tuple[int, int, int], *, tolerance: float, with_flux: bool = False) -> Estimate:
+        """Cost of a field on a grid."""
+        return estimate.on_grid(self._setting, shape, tolerance, with_flux)
+
+    def estimate_points(self, count: int, *, tolerance: float, with_flux: bool = False) -> Estimate:
+        """Cost of a field at points."""
+        return estimate.at_points(self._setting, count, tolerance, with_flux)
 
     def mean(self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float) -> Bounded:
         """Mean of the potential over a face or a rectangle of it."""

@@ -57,13 +57,25 @@ def map_integral(face_map: FaceMap, low: tuple[float, float], high: tuple[float,
     return float(np.nansum(first * second))
 
 
-def given_inflow(body: Body, face: Face) -> float:
-    """Total of the given inflow of a face; zero for other conditions."""
+def given_inflows(body: Body, face: Face) -> list[float]:
+    """Given inflow of a face, stretch by stretch between its knots; empty for other conditions.
+
+    On the side of an endless bar it is counted from what it comes to far away.
+    """
     condition = body.faces[face]
     if not isinstance(condition, Inflow):
-        return 0.0
+        return []
     first, second = axes_along(face)
-    return map_integral(condition.inflow, (0.0, 0.0), (body.size[first], body.size[second]))
+    face_map = condition.inflow
+    widths = np.diff(np.minimum(face_map.first_knots, body.size[first]))
+    heights = np.diff(np.minimum(face_map.second_knots, body.size[second]))
+    cells = face_map.table
+    if face_map.bilinear:
+        cells = 0.25 * (cells[1:, 1:] + cells[1:, :-1] + cells[:-1, 1:] + cells[:-1, :-1])
+    if math.isinf(body.size[second]):
+        # What goes on for ever cancels between the sides, which has been checked; the rest counts.
+        cells, heights = (cells - cells[:, -1:])[:, :-1], heights[:-1]
+    return [float(flow) for flow in (cells * widths[:, None] * heights).ravel()]
 
 
 def generation(body: Body) -> float:
@@ -77,13 +89,21 @@ def generation(body: Body) -> float:
 
 def total_given(body: Body) -> tuple[float, float]:
     """Sum of all given inflows and generation, and the sum of their sizes."""
-    flows = [given_inflow(body, face) for face in body.present_faces]
-    sizes = [
-        source.density * math.prod(high - low for low, high in zip(source.low, source.high, strict=True))
-        for source in body.sources
-        if source.density != 0.0
-    ]
-    return math.fsum(flows + sizes), math.fsum(map(abs, flows + sizes))
+    flows = [flow for face in body.present_faces for flow in given_inflows(body, face)]
+    for source in body.sources:
+        section = source.density * (source.high[0] - source.low[0]) * (source.high[1] - source.low[1])
+        # A source without end is counted from what it is far away, like an inflow.
+        flows.append(section * (-source.low[2] if source.high[2] == math.inf else source.high[2] - source.low[2]))
+    return math.fsum(flows), math.fsum(map(abs, flows))
+
+
+def _far_inflows(face_map: FaceMap, across: float) -> list[float]:
+    """Inflow per length far along the bar, stretch by stretch across a side."""
+    widths = np.diff(np.minimum(face_map.first_knots, across))
+    far = face_map.table[:, -1]
+    if face_map.bilinear:
+        far = 0.5 * (far[1:] + far[:-1])
+    return [float(flow) for flow in widths * far]
 
 
 def _flow_per_length_far_away(body: Body) -> tuple[float, float]:
@@ -92,8 +112,7 @@ def _flow_per_length_far_away(body: Body) -> tuple[float, float]:
         condition = body.faces[face]
         if isinstance(condition, Inflow):
             across = body.size[axes_along(face)[0]]
-            along = condition.inflow.first.integrals(np.zeros(1), np.array([across]))[0]
-            flows.append(float(along @ condition.inflow.second.right[-1]))
+            flows.extend(_far_inflows(condition.inflow, across))
     for source in body.sources:
         if source.high[2] == math.inf:
             flows.append(

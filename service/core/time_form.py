@@ -22,9 +22,10 @@ from numpy.typing import NDArray
 from scipy.ndimage import maximum_filter1d
 
 from service.core.lines import laplace
+from service.core.lines.images import LATEST
 from service.core.lines.line import Drive, Line, WallDrive, breaks_of, wall_distance
-from service.core.lines.modes import modes_of
-from service.core.lines.time_response import Places, TimeResponse, respond
+from service.core.lines.modes import eigen_integrals, modes_of
+from service.core.lines.time_response import MODE_COUNT, Places, TimeResponse, respond
 from service.core.maps import Profiles
 from service.core.split import Part
 
@@ -36,7 +37,7 @@ CUT = 40.0
 
 # Angle kept between the contour shifted by i (pi / 2 - ANGLE) and the edge of the sector, in the error bound; near
 # the best for steps around 0.3.
-ANGLE = 0.08
+ANGLE = 0.12
 
 # Steps in ln t outside this range are not taken: coarser saves little, finer is below rounding.
 COARSEST_STEP, FINEST_STEP = 0.5, 0.2
@@ -67,28 +68,35 @@ class Product:
 
 @dataclass(frozen=True, eq=False)
 class Integral:
-    """A part's time integral on the product of three sets of places: what to add up, and on which step in ln t."""
+    """A part's time integral on the product of three sets of places.
+
+    products: what to add up. carried: for each axis, what rounding in its factor refers to at each node, shape
+    (1, n_nodes, n_columns). step: in ln t. power: of 1 / sin(ANGLE) in the error of the rule.
+    """
 
     products: tuple[Product, ...]
+    carried: Factors
     step: float
+    power: float
     node_count: int
 
 
-def step_error(step: float) -> float:
+def step_error(step: float, power: float = 2.5) -> float:
     """Relative error of the trapezoidal rule in ln t, on the integral of absolute values.
 
-    On the contour shifted by i d, d = pi / 2 - ANGLE, a one-dimensional kernel is at most (sin ANGLE)^(-1/2) of its
-    size at the time t / sin(ANGLE), and there are three of them; the rule's error is 2 / (exp(2 pi d / step) - 1)
-    times the integral on that contour.
+    On the contour shifted by i d, d = pi / 2 - ANGLE, a kernel w^p exp(-w^2) t^(-q) with w = distance / 2 sqrt t is
+    (1 / sin ANGLE)^(p / 2 + q) times what it is at the time t / sin(ANGLE): 1/2 for each of three lines that carry
+    a profile, 1 more for a driven end (q = 1, p = 1), 1 more again for its slope (q = 3/2, p = 2). The rule's error
+    is 2 / (exp(2 pi d / step) - 1) times the integral on that contour.
     """
     shift = math.pi / 2 - ANGLE
-    return 2 * math.sin(ANGLE) ** -1.5 / math.expm1(2 * math.pi * shift / step)
+    return 2 * math.sin(ANGLE) ** -power / math.expm1(2 * math.pi * shift / step)
 
 
 def step_for(relative_error: float) -> float:
     """The coarsest step whose error is below the one given, within the range worth taking."""
     shift = math.pi / 2 - ANGLE
-    step = 2 * math.pi * shift / math.log1p(2 * math.sin(ANGLE) ** -1.5 / relative_error)
+    step = 2 * math.pi * shift / math.log1p(2 * math.sin(ANGLE) ** -2.5 / relative_error)
     return min(max(step, FINEST_STEP), COARSEST_STEP)
 
 
@@ -115,7 +123,9 @@ def integrate(
         products = [Product(nodes.weights, (answers[0].total, answers[1].total, answers[2].total))]
     if undying:
         products += _never_decaying(lines, part, places, answers, nodes)
-    return Integral(tuple(products), step, times.size)
+    carried = [_carried(lines[axis], part.drives[axis], places[axis], times) for axis in range(3)]
+    power = 1.5 if part.wall_axis is None else 3.5 if places[part.wall_axis].order == -1 else 2.5
+    return Integral(tuple(products), (carried[0], carried[1], carried[2]), step, power, times.size)
 
 
 def slowest_rate(lines: Sequence[Line]) -> float:
@@ -143,11 +153,11 @@ def at_points(integral: Integral) -> FloatArray:
 def bound_on_grid(integral: Integral) -> Factors:
     """Error bounds for each coordinate of a grid, shape (n,) each; each of the three holds, so the least does."""
     bounds = [np.zeros(factor.shape[0]) for factor in integral.products[0].factors]
-    relative = step_error(integral.step)
+    relative = step_error(integral.step, integral.power)
     for product in integral.products:
         sizes = [_widened(np.abs(factor), integral.step) for factor in product.factors]
         most = [size.max(axis=0, keepdims=True) for size in sizes]
-        rounding = ROUNDING * float(_weigh(most[0] * most[1] * most[2], product.weights)[0])
+        rounding = ROUNDING * float(_rounded(integral, product, most)[0])
         for axis in range(3):
             others = most[(axis + 1) % 3] * most[(axis + 2) % 3]
             bounds[axis] += relative * _weigh(sizes[axis] * others, product.weights) + rounding
@@ -157,10 +167,41 @@ def bound_on_grid(integral: Integral) -> Factors:
 def bound_at_points(integral: Integral) -> FloatArray:
     """Error bound at each point, shape (n,)."""
     total = np.zeros(())
+    relative = step_error(integral.step, integral.power)
     for product in integral.products:
-        x, y, z = (_widened(np.abs(factor), integral.step) for factor in product.factors)
-        total = total + (step_error(integral.step) + ROUNDING) * _weigh(x * y * z, product.weights)
+        sizes = [_widened(np.abs(factor), integral.step) for factor in product.factors]
+        total = total + relative * _weigh(sizes[0] * sizes[1] * sizes[2], product.weights)
+        total = total + ROUNDING * _rounded(integral, product, sizes)
     return total
+
+
+def _rounded(integral: Integral, product: Product, sizes: Sequence[FloatArray]) -> FloatArray:
+    """Sum over nodes of what rounding refers to: a factor's own size, or what its modes carry where they cancel."""
+    if product.weights.size == 1:
+        return _weigh(sizes[0] * sizes[1] * sizes[2], product.weights)
+    x, y, z = (np.maximum(size, carried) for size, carried in zip(sizes, integral.carried, strict=True))
+    return _weigh(x * y * z, product.weights)
+
+
+def _carried(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
+    """Size of the modes that a line's late answers are summed from, shape (1, n_times, n_columns); 0 before that.
+
+    Early answers are sums of images that keep their digits where they are small.
+    """
+    columns = 1 if isinstance(drive, WallDrive) else drive.n_profiles
+    sizes = np.zeros((1, times.size, columns))
+    if line.is_endless:
+        return sizes
+    late = times > LATEST * line.extent**2
+    modes = modes_of(line, 2)
+    decay = np.exp(-modes.rates[0] * times[late])[:, None]
+    strength = np.abs(eigen_integrals(line, drive, MODE_COUNT)).max(axis=0)
+    wave = float(modes.wave_numbers[1])
+    factor = wave if places.order == -1 else 1.0
+    if places.high is not None:
+        factor = float((places.high - places.low).max()) * line.scale
+    sizes[0, late] = decay * strength * factor
+    return sizes
 
 
 def _weigh(sizes: FloatArray, weights: FloatArray) -> FloatArray:

@@ -48,6 +48,27 @@ def _wall(line: Line, drive: WallDrive, coordinates: FloatArray, gamma: FloatArr
     return np.stack(columns, axis=1)[:, :, None]
 
 
+def wall_values(line: Line, drive: WallDrive, place: float, gamma: FloatArray) -> FloatArray:
+    """The transformed answer of a driven line at one place for many gamma, shape (n_gamma,)."""
+    values = np.empty_like(gamma)
+    long = gamma > 0 if line.is_endless else gamma * line.extent > SMALL_LENGTH
+    at = np.array([place])
+    steady = gamma == 0.0
+    if steady.any():
+        values[steady] = _wall(line, drive, at, np.zeros(1), VALUE)[0, 0, 0]
+    if not long.all():
+        values[~long & ~steady] = _wall_by_hyperbolics(line, drive, at, gamma[~long & ~steady], VALUE)
+    near, far = (line.film_high, line.film_low) if drive.high else (line.film_low, line.film_high)
+    s, g = float(wall_distance(line, at, high=drive.high)[0]), gamma[long]
+    answer = np.exp(-g * s)
+    if not line.is_endless:
+        back = reflection(far, g)
+        echo = back * reflection(near, g) * np.exp(-2 * g * line.extent)
+        answer = (answer + back * np.exp(-g * (2 * line.extent - s))) / (1 - echo)
+    values[long] = wall_amplitude(near, g) * answer
+    return values
+
+
 def reflection(film: float, gamma: FloatArray | float) -> FloatArray:
     """R = (gamma - H) / (gamma + H): 1 for an insulated end, -1 for a held one."""
     if film == math.inf:
@@ -93,16 +114,18 @@ def _steady_half_line_wall(s: FloatArray, film: float, order: Order) -> FloatArr
 
 
 def _wall_by_hyperbolics(
-    line: Line, drive: WallDrive, coordinates: FloatArray, gamma: float, order: Order
+    line: Line, drive: WallDrive, coordinates: FloatArray, gamma: float | FloatArray, order: Order
 ) -> FloatArray:
+    """At one gamma for many places, or at many for one place."""
     near, far = (line.film_high, line.film_low) if drive.high else (line.film_low, line.film_high)
-    if gamma == 0.0 and line.keeps_its_mean:
+    if np.ndim(gamma) == 0 and gamma == 0.0 and line.keeps_its_mean:
         return _closed_line_wall(line, drive, coordinates, order)
     # psi grows from the far end: psi' = H psi there; the answer is psi over what it does at the near end.
     d = wall_distance(line, coordinates, high=not drive.high)
     whole = np.array([line.extent])
-    value = float(_psi(far, whole, gamma, VALUE)[0])
-    slope = float(_psi(far, whole, gamma, -1)[0])
+    value = _psi(far, whole, gamma, VALUE)
+    slope = _psi(far, whole, gamma, -1)
+    factor: FloatArray
     if near == math.inf:
         factor = 1.0 / value
     elif near == 0.0:
@@ -124,7 +147,7 @@ def _closed_line_wall(line: Line, drive: WallDrive, coordinates: FloatArray, ord
     return towards * (d**3 / (6 * length) - d * length / 6)
 
 
-def _psi(film: float, d: FloatArray, gamma: float, order: Order) -> FloatArray:
+def _psi(film: float, d: FloatArray, gamma: float | FloatArray, order: Order) -> FloatArray:
     """cosh(gamma d) + (H / gamma) sinh(gamma d), from an end; sinh(gamma d) / gamma from a held one."""
     y = gamma * d
     sinhc = np.where(y == 0, 1.0, np.sinh(y) / np.where(y == 0, 1.0, y))

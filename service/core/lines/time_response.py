@@ -75,6 +75,9 @@ def respond(line: Line, drive: Drive, places: Places, times: FloatArray) -> Time
     if isinstance(drive, WallDrive):
         initial = np.zeros((places.low.size, 1))
         early = _early_wall(line, drive, places, root_time)
+    elif count == 0:
+        initial = places.initial(line, drive)
+        early = np.zeros((places.low.size, 0, columns))
     else:
         initial = places.initial(line, drive)
         profile = places.profile(line, drive)

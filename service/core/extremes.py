@@ -1,0 +1,240 @@
+"""The hottest and the coldest place of a body.
+
+A steady field without generation has its extremes on the surface (maximum principle), and on an insulated part of it
+only if nothing flows in there. So where nothing flows in, the highest held value is the answer if no ambient is
+higher, exactly. Otherwise the closed body is searched: on a grid that follows its faces, patches and boxes, then
+around every place that could still hold the extreme, on finer and finer grids.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.ndimage import maximum_filter
+
+from service.core import field
+from service.core.field import Grid, Setting
+from service.core.problem import AXES, Body, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
+
+FloatArray = NDArray[np.float64]
+
+# Places along an axis of the first grid at the most, and starts that are followed.
+FIRST_PLACES, STARTS = 25, 4
+
+# Accuracy of the first grid, in parts of the span.
+FIRST_ACCURACY = 1e-6
+
+# Places of each finer grid in parts of its half width, and by how much the next one is narrower.
+FINER = np.linspace(-1.0, 1.0, 5)
+NARROWING = 4.0
+
+# How many times the rise of a parabola above the highest of its three points is allowed for a peak between them.
+PEAK_SAFETY = 4.0
+
+# A grid narrower than this part of the body ends the search.
+SMALLEST_WIDTH = 1e-9
+
+
+@dataclass(frozen=True)
+class Place:
+    """An extreme of the field.
+
+    value: of the potential there. error_bound: of that value, and of how far the peak it belongs to may exceed it.
+    where: "inside", or the faces the place is on, such as "face z_low".
+    """
+
+    position: tuple[float, float, float]
+    value: float
+    error_bound: float
+    where: str
+
+
+@dataclass(frozen=True)
+class Extremes:
+    """The places of the highest and lowest potential."""
+
+    hottest: Place
+    coldest: Place
+
+
+def find(setting: Setting, tolerance: float, keep_going: field.KeepGoing | None) -> Extremes:
+    """Hottest and coldest place of the closed body."""
+    return Extremes(
+        _extreme(setting, tolerance, 1.0, keep_going),
+        _extreme(setting, tolerance, -1.0, keep_going),
+    )
+
+
+def _extreme(setting: Setting, tolerance: float, sign: float, keep_going: field.KeepGoing | None) -> Place:
+    held = _extreme_held(setting.body, sign)
+    if held is not None and not _may_exceed(setting.body, sign * held.value, sign):
+        return held
+    return _by_search(setting, tolerance, sign, held, keep_going)
+
+
+def _may_exceed(body: Body, level: float, sign: float) -> bool:
+    """Whether an inflow, a source or an ambient could lift the potential above a level (below, for sign -1)."""
+    for condition in body.faces.values():
+        if isinstance(condition, Inflow) and (sign * condition.inflow.table).max() > 0:
+            return True
+        if isinstance(condition, Film) and (sign * condition.ambient.table).max() > level:
+            return True
+    return any(sign * source.density > 0 for source in body.sources)
+
+
+def _extreme_held(body: Body, sign: float) -> Place | None:
+    """The highest (lowest) held value and a place where it is held."""
+    best: tuple[float, tuple[float, float, float]] | None = None
+    for face in body.present_faces:
+        condition = body.faces[face]
+        if isinstance(condition, Held):
+            face_map = condition.value
+            table = sign * face_map.table
+            i, j = np.unravel_index(int(table.argmax()), table.shape)
+            if best is None or table[i, j] > best[0]:
+                place = [0.0, 0.0, 0.0]
+                place[axis_of(face)] = body.size[axis_of(face)] if is_high(face) else 0.0
+                knots = (face_map.first_knots, face_map.second_knots)
+                for axis, knot, index in zip(axes_along(face), knots, (int(i), int(j)), strict=True):
+                    place[axis] = _representative(knot, index, face_map.bilinear, body.size[axis])
+                best = float(table[i, j]), (place[0], place[1], place[2])
+    if best is None:
+        return None
+    return Place(best[1], sign * best[0], 0.0, _where(body, best[1]))
+
+
+def _representative(knots: FloatArray, index: int, bilinear: bool, length: float) -> float:
+    """A reading's own place, or the middle of a cell (its beginning if the cell has no end)."""
+    if bilinear:
+        return float(min(knots[index], length))
+    low, high = float(knots[index]), float(min(knots[index + 1], length))
+    return low if math.isinf(high) else 0.5 * (low + high)
+
+
+def _by_search(
+    setting: Setting, tolerance: float, sign: float, held: Place | None, keep_going: field.KeepGoing | None
+) -> Place:
+    axes = [_first_places(setting, axis) for axis in range(3)]
+    values = sign * _field(setting, axes, max(tolerance, FIRST_ACCURACY * setting.span), keep_going).potential
+    best = held
+    for start in _starts(values):
+        # A peak that does not come near the best so far, by twice the steps around it, is not followed.
+        if best is not None and values[start] + 2 * _steps(values, start) < sign * best.value:
+            continue
+        found = _climb(setting, axes, start, tolerance, sign, keep_going)
+        if best is None or sign * found.value > sign * best.value:
+            best = found
+    assert best is not None
+    return best
+
+
+def _starts(values: FloatArray) -> list[tuple[int, int, int]]:
+    """Places of the first grid that are not below any neighbour, the highest few."""
+    peaks = np.argwhere(values >= maximum_filter(values, size=3, mode="nearest"))
+    order = np.argsort([-values[tuple(peak)] for peak in peaks], kind="stable")
+    return [(int(i), int(j), int(k)) for i, j, k in peaks[order[:STARTS]]]
+
+
+def _steps(values: FloatArray, at: tuple[int, int, int]) -> float:
+    """Sum over the axes of the smaller step from a peak to its neighbours, which a smooth peak cannot exceed."""
+    total = 0.0
+    for axis in range(3):
+        line = np.moveaxis(values, axis, 0)[(slice(None), *(at[other] for other in range(3) if other != axis))]
+        here = at[axis]
+        near = [abs(float(line[here] - line[other])) for other in (here - 1, here + 1) if 0 <= other < line.size]
+        total += min(near, default=0.0)
+    return total
+
+
+def _climb(
+    setting: Setting,
+    axes: list[FloatArray],
+    start: tuple[int, int, int],
+    tolerance: float,
+    sign: float,
+    keep_going: field.KeepGoing | None,
+) -> Place:
+    """Follow one peak on finer and finer grids until what lies between their places is below the tolerance."""
+    place = [float(axis[index]) for axis, index in zip(axes, start, strict=True)]
+    widths = [
+        max(float(axis[min(index + 1, axis.size - 1)]) - value, value - float(axis[max(index - 1, 0)]))
+        for axis, index, value in zip(axes, start, place, strict=True)
+    ]
+    while True:
+        local = [
+            np.unique(np.clip(at + width * FINER, axis[0], axis[-1]))
+            for at, width, axis in zip(place, widths, axes, strict=True)
+        ]
+        answer = _field(setting, local, tolerance, keep_going)
+        values = sign * answer.potential
+        top = np.unravel_index(int(values.argmax()), values.shape)
+        index = (int(top[0]), int(top[1]), int(top[2]))
+        place = [float(axis[i]) for axis, i in zip(local, index, strict=True)]
+        vertices = [_vertex(local[axis], values, index, axis) for axis in range(3)]
+        gap = PEAK_SAFETY * sum(rise for _, rise in vertices)
+        if gap <= tolerance or max(widths) <= SMALLEST_WIDTH * max(axis[-1] - axis[0] for axis in axes):
+            found = (place[0], place[1], place[2])
+            return Place(found, sign * float(values[index]), answer.potential_bound + gap, _where(setting.body, found))
+        place = [vertex for vertex, _ in vertices]
+        widths = [width / NARROWING for width in widths]
+
+
+def _vertex(places: FloatArray, values: FloatArray, top: tuple[int, int, int], axis: int) -> tuple[float, float]:
+    """Top of the parabola through a grid's highest value and its neighbours along an axis, and its rise above it.
+
+    At the end of the axis with the field falling from it, the end itself and 0.
+    """
+    line = np.moveaxis(values, axis, 0)[(slice(None), *(top[other] for other in range(3) if other != axis))]
+    here = top[axis]
+    if places.size < 3:
+        return float(places[here]), 0.0
+    middle = min(max(here, 1), places.size - 2)
+    x, y = places[middle - 1 : middle + 2], line[middle - 1 : middle + 2]
+    left, right = (y[1] - y[0]) / (x[1] - x[0]), (y[2] - y[1]) / (x[2] - x[1])
+    curvature = (right - left) / (x[2] - x[0])
+    if curvature >= 0.0:
+        return float(places[here]), 0.0
+    vertex = 0.5 * (x[0] + x[1]) - 0.5 * left / curvature
+    vertex = float(min(max(vertex, places[0]), places[-1]))
+    rise = y[1] + (vertex - x[1]) * (left + curvature * (vertex - x[0])) - line[here]
+    return vertex, max(float(rise), 0.0)
+
+
+def _field(
+    setting: Setting, axes: list[FloatArray], tolerance: float, keep_going: field.KeepGoing | None
+) -> field.Field:
+    grid = Grid(axes[0], axes[1], axes[2])
+    return field.on_grid(setting, grid, tolerance=tolerance, with_flux=False, keep_going=keep_going)
+
+
+def _first_places(setting: Setting, axis: int) -> FloatArray:
+    """Ends, knots and the middles between them, and an even or, along an endless bar, widening spread."""
+    line = setting.lines[axis]
+    if line.is_endless:
+        widest = max(other.extent for other in setting.lines if not other.is_endless) / line.scale
+        spread = np.concatenate([[0.0], widest * np.geomspace(0.02, 20.0, 11)])
+    else:
+        spread = line.length * np.linspace(0.0, 1.0, 11)
+    places = [spread]
+    for part in setting.parts:
+        knots = part.knots(axis)
+        knots = knots[np.isfinite(knots)]
+        places += [knots, 0.5 * (knots[1:] + knots[:-1])]
+    unique = np.unique(np.concatenate(places))
+    unique = unique[unique <= line.length]
+    if unique.size > FIRST_PLACES:
+        unique = unique[np.unique(np.linspace(0, unique.size - 1, FIRST_PLACES).round().astype(int))]
+    return unique
+
+
+def _where(body: Body, place: tuple[float, float, float]) -> str:
+    names = []
+    for axis, value in enumerate(place):
+        if value == 0.0:
+            names.append(f"{AXES[axis]}_low")
+        elif value == body.size[axis]:
+            names.append(f"{AXES[axis]}_high")
+    return "face " + "/".join(names) if names else "inside"

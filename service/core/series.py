@@ -1,0 +1,221 @@
+"""The eigenfunction series: the second, independent form of the same field, with a bound on what it leaves out.
+
+Two lines give eigenfunctions, the third is solved along its axis for each pair of modes (separation of variables,
+Carslaw and Jaeger 1959, chapters V and VI). A driven end sends exp(-gamma s) along the axis. Where the axis carries a
+profile f instead, the answer is f / gamma^2 plus waves from the breaks of f; the first is f times a field of one
+dimension fewer, which is treated the same way:
+
+    u = sum over mn of c_m c_n phi_m phi_n W(z; gamma_mn) + f(z) [ sum over m of c_m phi_m W(y; gamma_m) + f(y) U(x) ]
+
+Any order of the axes will do, and the one with the farthest breaks needs the fewest terms. A mode that does not
+decay has no f / gamma^2; its share is the one-dimensional field whose mean is zero, and the sums stay consistent.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+from itertools import permutations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core.lines import laplace
+from service.core.lines.line import VALUE, Drive, Line, WallDrive, breaks_of, wall_distance
+from service.core.lines.modes import eigen_integrals, modes_of
+from service.core.lines.time_response import Places
+from service.core.split import Part
+
+FloatArray = NDArray[np.float64]
+
+# Waves are summed until exp(-gamma distance) is below exp(-36) = 2e-16.
+LAST_EXPONENT = 36.0
+
+# More terms than this are not summed at one place; the time form stands alone there.
+MOST_TERMS = 250_000
+
+# Rounding of one term relative to its size.
+ROUNDING = 4e-15
+
+
+@dataclass(frozen=True)
+class SeriesValue:
+    """A part's field at one place. bound: on what was left out and on rounding. terms: how many were summed."""
+
+    value: float
+    bound: float
+    terms: int
+
+
+@dataclass(frozen=True)
+class PartialSum:
+    """The double series cut at `terms` modes along each of its two axes: its value and a bound on the rest.
+
+    bound: infinite where no bound exists, on the driven face itself.
+    """
+
+    terms: int
+    value: float
+    bound: float
+
+
+def summed(lines: Sequence[Line], part: Part, point: Sequence[float]) -> SeriesValue | None:
+    """A part's field at a point by the order of axes that takes the fewest terms, or None if all take too many."""
+    best: tuple[float, tuple[int, int, int]] | None = None
+    for order in permutations(range(3)):
+        if any(lines[axis].is_endless for axis in order[1:]):
+            continue
+        cost = _cost(lines, part, point, (order[0], order[1], order[2]))
+        if cost <= MOST_TERMS and (best is None or cost < best[0]):
+            best = cost, (order[0], order[1], order[2])
+    return None if best is None else _sum(lines, part, point, best[1])
+
+
+def reach(line: Line, drive: Drive, place: float) -> float:
+    """Scaled distance from a place to the nearest break of what drives its line, infinite where there is none."""
+    if isinstance(drive, WallDrive):
+        return float(wall_distance(line, np.array([place]), high=drive.high)[0])
+    knots, jumps, slope_jumps = breaks_of(line, drive)
+    active = jumps.any(axis=1) | slope_jumps.any(axis=1)
+    if line.film_low == 0.0:
+        active[0] = slope_jumps[0].any()
+    if line.film_high == 0.0 and not line.is_endless:
+        active[-1] = slope_jumps[-1].any()
+    if not active.any():
+        return math.inf
+    return float(np.abs(place - knots[active]).min()) * line.scale
+
+
+def _modes_needed(lines: Sequence[Line], axes: Sequence[int], distance: float) -> list[float]:
+    if distance == 0.0:
+        return [math.inf for _ in axes]
+    return [lines[axis].extent * LAST_EXPONENT / distance / math.pi + 2 for axis in axes]
+
+
+def _cost(lines: Sequence[Line], part: Part, point: Sequence[float], order: tuple[int, int, int]) -> float:
+    first = reach(lines[order[0]], part.drives[order[0]], point[order[0]])
+    cost = math.prod(_modes_needed(lines, order[1:], first)) * part.columns
+    if isinstance(part.drives[order[0]], WallDrive):
+        return cost
+    second = reach(lines[order[1]], part.drives[order[1]], point[order[1]])
+    return cost + math.prod(_modes_needed(lines, order[2:], second)) * part.columns
+
+
+def _sum(lines: Sequence[Line], part: Part, point: Sequence[float], order: tuple[int, int, int]) -> SeriesValue:
+    total, size, terms, left_out = 0.0, 0.0, 0, 0.0
+    initial = np.ones(1)
+    for depth in range(3):
+        axis, rest = order[depth], order[depth + 1 :]
+        drive, line = part.drives[axis], lines[axis]
+        distance = reach(line, drive, point[axis])
+        counts = [int(count) for count in _modes_needed(lines, rest, distance)]
+        amplitudes, rates = _products(lines, part, point, rest, counts)
+        if math.isinf(distance) and rates.size > 1:
+            # Without breaks there are no waves; only a mode that does not decay has a share.
+            amplitudes, rates = amplitudes[:1], rates[:1]
+        waves = _waves(line, drive, point[axis], rates)
+        contributions = (amplitudes * waves) * initial
+        total += float(contributions.sum())
+        size += float(np.abs(contributions).sum()) + float(
+            (np.abs(amplitudes * initial).max(axis=1) * _profile_share(line, drive, point[axis], rates)).sum()
+        )
+        terms += rates.size
+        if rates.size > 1:
+            left_out += math.exp(-LAST_EXPONENT) * rates.size * float(np.abs(amplitudes * waves).max())
+        if isinstance(drive, WallDrive):
+            break
+        initial = initial * drive.at(np.array([point[axis]]))[0]
+    return SeriesValue(total, ROUNDING * size + left_out, terms)
+
+
+def _products(
+    lines: Sequence[Line], part: Part, point: Sequence[float], axes: Sequence[int], counts: Sequence[int]
+) -> tuple[FloatArray, FloatArray]:
+    """Coefficients times eigenfunctions at the point for all pairs of modes, and their rates: (n, columns), (n,)."""
+    amplitudes, rates = np.ones((1, 1)), np.zeros(1)
+    for axis, count in zip(axes, counts, strict=True):
+        modes = modes_of(lines[axis], count)
+        shapes = modes.at(np.array([point[axis]]), VALUE)[0]
+        here = eigen_integrals(lines[axis], part.drives[axis], count) * shapes[:, None]
+        amplitudes = (amplitudes[:, None, :] * here[None, :, :]).reshape(amplitudes.shape[0] * count, -1)
+        rates = (rates[:, None] + modes.rates).ravel()
+    return amplitudes, rates
+
+
+def _waves(line: Line, drive: Drive, place: float, rates: FloatArray) -> FloatArray:
+    """What travels along the axis at each rate: all of a driven end's answer, the waves of a profile, (n, columns)."""
+    places = Places(np.array([place]), VALUE)
+    gamma = np.sqrt(rates)
+    if isinstance(drive, WallDrive):
+        return laplace.wall_values(line, drive, place, gamma)[:, None]
+    waves = np.empty((rates.size, drive.n_profiles))
+    steady = rates == 0.0
+    if steady.any():
+        waves[steady] = laplace.transform(line, drive, places, np.zeros(1))[0]
+    if not steady.all():
+        waves[~steady] = laplace.departure(line, drive, places, gamma[~steady])[0]
+    return waves
+
+
+def _profile_share(line: Line, drive: Drive, place: float, rates: FloatArray) -> FloatArray:
+    """Size of f / gamma^2, whose rounding the waves carry where the two nearly cancel."""
+    if isinstance(drive, WallDrive):
+        return np.zeros_like(rates)
+    size = float(np.abs(drive.left).max())
+    return np.where(rates > 0, size / np.where(rates > 0, rates, 1.0), 0.0)
+
+
+def partial_sums(
+    lines: Sequence[Line], part: Part, point: Sequence[float], axial: int, terms: Sequence[int]
+) -> list[PartialSum]:
+    """A part's double series along one axis, cut at each of the given numbers of modes per axis.
+
+    The whole answer of the axial line is in every term, as in a textbook's series. The bound on the rest uses that
+    coefficients do not grow and that gamma >= (alpha_m + beta_n) / sqrt 2.
+    """
+    axes = [axis for axis in range(3) if axis != axial]
+    most = max(terms)
+    amplitudes, rates = _products(lines, part, point, axes, (most, most))
+    line, drive = lines[axial], part.drives[axial]
+    waves = _waves(line, drive, point[axial], rates)
+    if not isinstance(drive, WallDrive):
+        share = np.where(rates > 0, 1 / np.where(rates > 0, rates, 1.0), 0.0)
+        waves = waves + share[:, None] * drive.at(np.array([point[axial]]))
+    table = (amplitudes * waves).sum(axis=1).reshape(most, most)
+    sums = table.cumsum(axis=0).cumsum(axis=1)
+    return [
+        PartialSum(count, float(sums[count - 1, count - 1]), tail_bound(lines, part, point, axial, count))
+        for count in terms
+    ]
+
+
+def tail_bound(lines: Sequence[Line], part: Part, point: Sequence[float], axial: int, count: int) -> float:
+    """Bound on all terms with m or n at or beyond `count`."""
+    line, drive = lines[axial], part.drives[axial]
+    if not isinstance(drive, WallDrive):
+        return math.inf
+    distance = reach(line, drive, point[axial])
+    axes = [axis for axis in range(3) if axis != axial]
+    ratios = [math.exp(-math.pi / lines[axis].extent * distance / math.sqrt(2)) for axis in axes]
+    if max(ratios) == 1.0:
+        return math.inf
+    # Modes are within [m pi, (m + 1) pi] / extent, so the slowest left out has at least this gamma.
+    gamma = min(math.pi * count / lines[axis].extent for axis in axes)
+    film = line.film_high if drive.high else line.film_low
+    amplitude = 2 * float(laplace.wall_amplitude(film, gamma))
+    if not line.is_endless:
+        amplitude /= -math.expm1(-2 * gamma * line.extent)
+    sizes = [_coefficient_bound(lines[axis], part.drives[axis]) for axis in axes]
+    products = float((sizes[0] * sizes[1]).sum())
+    first, second = ratios
+    sums = first**count / (1 - first) / (1 - second) + second**count / (1 - second) / (1 - first)
+    return amplitude * products * sums
+
+
+def _coefficient_bound(line: Line, drive: Drive) -> FloatArray:
+    """Bound on coefficient times eigenfunction of any mode: 2 times the mean of the profile's size, per column."""
+    assert not isinstance(drive, WallDrive)
+    knots = np.minimum(drive.knots, line.length)
+    size = np.maximum(np.abs(drive.left), np.abs(drive.right))
+    return np.asarray(2.0 * (np.diff(knots) @ size) / line.length)
