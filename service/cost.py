@@ -30,13 +30,6 @@ class Estimate(Protocol):
         """Working memory, about."""
 
 
-class Estimating(Protocol):
-    """What can tell the cost of a grid before it is computed."""
-
-    def estimate(self, n_grid_points: int, axes_sizes: tuple[int, int, int], with_flux: bool) -> Estimate:
-        """The cost of one grid."""
-
-
 def check_count(notes: Notes, path: Path, what: str, count: int, limit: int) -> None:
     """Note a list that is too long."""
     if count > limit:
@@ -72,11 +65,8 @@ def check_answer(size: int, limit: int) -> None:
         )
 
 
-def check_fields(
-    solution: Estimating, shapes: Sequence[tuple[int, int, int]], with_flux: bool, settings: Settings
-) -> None:
-    """Raise TooCostly when grids of these shapes take more work or memory than allowed."""
-    estimates = [solution.estimate(math.prod(shape), shape, with_flux) for shape in shapes]
+def check_work(estimates: Sequence[Estimate], settings: Settings) -> None:
+    """Raise TooCostly when these, one after the other, take more work or memory than allowed."""
     work = sum(estimate.multiplications for estimate in estimates)
     memory = max((estimate.bytes for estimate in estimates), default=0.0)
     if work > settings.cost_multiplications:

@@ -9,8 +9,8 @@ from prometheus_client import CollectorRegistry, Counter, Histogram, generate_la
 from prometheus_client.core import CounterMetricFamily, GaugeMetricFamily
 from prometheus_client.registry import Collector
 
-from service.core import cache_report
-from service.kept import Kept
+from service.core import CacheReport, cache_report
+from service.kept import Kept, KeptReport
 from service.worker import Worker
 
 # From a cached plane to the default time limit.
@@ -51,7 +51,7 @@ class Metrics:
 
     def caches(self) -> dict[str, dict[str, int]]:
         """Hits, misses, size and limit of everything that is kept for the next request."""
-        reports = {
+        reports: dict[str, CacheReport | KeptReport] = {
             **cache_report(),
             "solutions": self._solutions.report(),
             "answers": self._answers.report(),

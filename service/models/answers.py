@@ -348,6 +348,10 @@ class TimeStep(Model):
     error: float = Field(
         description="How far it is from the answer; unit `potential_difference`.", examples=[2e-6]
     )
+    error_bound: float | None = Field(
+        description="Bound on that, known before; unit `potential_difference`. null where there is none.",
+        examples=[5e-5],
+    )
 
 
 class TenfoldTighter(Model):

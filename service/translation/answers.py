@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Sequence
 from typing import Any
 
 import numpy as np
@@ -19,9 +19,6 @@ from service.units import Kind, UnitSystem
 FloatArray = NDArray[np.float64]
 KeepGoing = Callable[[], None]
 Warning_ = dict[str, str]
-
-# Both representations are evaluated at these; a handful tells as much as many and costs little.
-MOST_CHECK_PLACES = 12
 
 
 def read_tolerance(collector: Collector, accuracy: models.Accuracy, solution: Solution) -> float:
@@ -40,31 +37,36 @@ def units_shown(units: UnitSystem) -> dict[str, str]:
 
 
 def certificate(
-    solution: Solution, places: FloatArray, tolerance: float, bounds: Iterable[float] = ()
+    problem: ReadProblem,
+    solution: Solution,
+    places: FloatArray,
+    tolerance: float,
+    bounds: Sequence[float] = (),
 ) -> dict[str, Any]:
-    """Evidence for the answer. bounds: error bounds of the potentials in it, the largest of which is stated.
+    """Evidence for the answer.
 
-    places: where both representations are compared, shape (n_places, 3).
+    places: some or all places of the answer, shape (n_places, 3); a place inside the body where there is
+    none. bounds: error bounds of the potentials in the answer, the largest of which is stated; that of the
+    potential at the places where there is none.
     """
-    found = solution.certificate(places, tolerance=tolerance)
+    if not len(places):
+        places = place_inside(problem)
+    if not bounds:
+        bounds = [solution.field_at(places, tolerance=tolerance).potential_bound]
+    found = solution.certificate(places, float(max(bounds)), tolerance=tolerance)
     return {
-        "error_bound": max([found.error_bound, *bounds]),
+        "error_bound": found.error_bound,
         "accuracy_asked": tolerance,
         "agreement": found.agreement,
         "agreement_bound": found.check_bound,
         "checked_places": found.checked_places,
-        "terms": dict(found.terms),
+        "terms": {
+            "time_nodes": found.time_nodes,
+            "products": found.products,
+            "series_terms": found.series_terms,
+        },
         "method": found.method,
     }
-
-
-def check_places(candidates: FloatArray) -> FloatArray:
-    """At most MOST_CHECK_PLACES of the places asked for, evenly chosen from all of them."""
-    if len(candidates) <= MOST_CHECK_PLACES:
-        return candidates
-    chosen = np.linspace(0, len(candidates) - 1, MOST_CHECK_PLACES).round().astype(int)
-    checked: FloatArray = candidates[chosen]
-    return checked
 
 
 def place_inside(problem: ReadProblem) -> FloatArray:

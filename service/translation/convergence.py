@@ -58,12 +58,12 @@ def answer_convergence(
         points.append(({} if point.name is None else {"name": point.name}) | _point(point, found))
         bounds.append(float(found.error_bound))
     keep_going()
-    places = answers.check_places(np.array([point.at for point in wanted.points]))
+    places = np.array([point.at for point in wanted.points])
     return {
         "problem_id": problem.problem_id,
         "potential": problem.potential,
         "units": answers.units_shown(problem.units),
-        "certificate": answers.certificate(solution, places, wanted.tolerance, bounds),
+        "certificate": answers.certificate(problem, solution, places, wanted.tolerance, bounds),
         "warnings": answers.problem_warnings(problem, solution),
         "points": points,
         "overshoot": [
@@ -71,7 +71,7 @@ def answer_convergence(
                 "face": overshoot.face,
                 "terms": int(overshoot.terms),
                 "overshoot": answers.number_or_none(float(overshoot.overshoot)),
-                "at": _plain(overshoot.at),
+                "at": [float(coordinate) for coordinate in overshoot.at],
             }
             for overshoot in solution.overshoot(wanted.overshoot_terms)
         ],
@@ -97,14 +97,19 @@ def _point(point: NamedPoint, found: Convergence) -> dict[str, Any]:
                 "terms": int(step.terms),
                 "value": answers.number_or_none(float(step.value)),
                 "error": answers.number_or_none(float(step.error)),
-                "tail_bound": answers.number_or_none(float(step.tail_bound)),
+                "tail_bound": _maybe(step.tail_bound),
             }
             for step in found.series
         ],
         "time_nodes": int(found.node_count),
         "time_steps": [
-            {"nodes": int(step.nodes), "value": float(step.value), "error": float(step.error)}
-            for step in found.time_steps
+            {
+                "nodes": int(step.nodes),
+                "value": float(step.value),
+                "error": float(step.error),
+                "error_bound": answers.number_or_none(float(step.error_bound)),
+            }
+            for step in found.time_form
         ],
         "tenfold_tighter": {
             "time_nodes": int(found.node_count_tenfold),
@@ -115,8 +120,3 @@ def _point(point: NamedPoint, found: Convergence) -> dict[str, Any]:
 
 def _maybe(value: float | None) -> float | None:
     return None if value is None else answers.number_or_none(float(value))
-
-
-def _plain(value: Any) -> Any:
-    """A place of an overshoot: coordinates as plain numbers."""
-    return [answers.number_or_none(float(part)) for part in value]

@@ -87,10 +87,14 @@ def read_fields(
 def check_cost(wanted: FieldsWanted, solution: Solution, settings: Settings, bytes_a_number: int) -> None:
     """Raise TooCostly when the work, its memory or the answer would pass a limit."""
     cost.check_answer(wanted.numbers * bytes_a_number, settings.answer_bytes)
-    shapes = [grid.shape for grid in wanted.grids]
+    tolerance, with_flux = wanted.tolerance, wanted.with_flux
+    estimates = [
+        solution.estimate_grid(grid.shape, tolerance=tolerance, with_flux=with_flux) for grid in wanted.grids
+    ]
     if wanted.points:
-        shapes.append((len(wanted.points), 1, 1))
-    cost.check_fields(solution, shapes, wanted.with_flux, settings)
+        count = len(wanted.points)
+        estimates.append(solution.estimate_points(count, tolerance=tolerance, with_flux=with_flux))
+    cost.check_work(estimates, settings)
 
 
 def answer_fields(
@@ -121,10 +125,9 @@ def answer_fields(
     answer: dict[str, Any] = {"grids": grids, "points": points}
     if wanted.extremes:
         keep_going()
-        extremes = solution.extremes(tolerance=wanted.tolerance)
+        extremes = solution.extremes(tolerance=wanted.tolerance, keep_going=keep_going)
         answer["extremes"] = {"highest": _place(extremes.hottest), "lowest": _place(extremes.coldest)}
         bounds += [extremes.hottest.error_bound, extremes.coldest.error_bound]
-        places.append(np.array([extremes.hottest.position, extremes.coldest.position], dtype=float))
     if wanted.means:
         answer["means"] = []
         for part in wanted.means:
@@ -135,13 +138,13 @@ def answer_fields(
             )
             bounds.append(float(mean.error_bound))
     keep_going()
-    every_place = np.concatenate(places)
-    checked = answers.check_places(every_place if len(every_place) else answers.place_inside(problem))
     return {
         "problem_id": problem.problem_id,
         "potential": problem.potential,
         "units": answers.units_shown(units),
-        "certificate": answers.certificate(solution, checked, wanted.tolerance, bounds),
+        "certificate": answers.certificate(
+            problem, solution, np.concatenate(places), wanted.tolerance, bounds
+        ),
         "warnings": warnings,
         **answer,
     }

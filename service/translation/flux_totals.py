@@ -101,7 +101,7 @@ def answer_totals(
         "problem_id": problem.problem_id,
         "potential": problem.potential,
         "units": answers.units_shown(units),
-        "certificate": answers.certificate(solution, answers.place_inside(problem), tolerance),
+        "certificate": answers.certificate(problem, solution, answers.place_inside(problem), tolerance),
         "warnings": warnings,
         "faces": faces,
         "patches": patches,
