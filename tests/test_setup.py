@@ -145,7 +145,8 @@ def test_changed_lock_is_installed_into_the_same_environment(checkout: Checkout)
 @pytest.mark.parametrize("left_behind", ["installing", "nothing but a folder"])
 def test_half_made_environment_is_made_anew(checkout: Checkout, left_behind: str) -> None:
     if left_behind == "installing":
-        venv.create(checkout.environment)
+        # With pip, so that nothing but the mark shows it.
+        venv.create(checkout.environment, with_pip=True)
         (checkout.environment / first_run.HALF_MADE).touch()
     else:
         checkout.environment.mkdir()
