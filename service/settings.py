@@ -48,7 +48,7 @@ class Settings(BaseSettings):
     means: PositiveInt = Field(100, description="Most mean values in one request.")
 
     cost_multiplications: PositiveFloat = Field(
-        4e11, description="Most multiplications estimated for one request; about 10^10 take a second."
+        4e10, description="Most multiplications estimated for one request; about 10^9 take a second."
     )
     memory_bytes: PositiveInt = Field(
         1024 * MEBIBYTE, description="Most working memory estimated for one request."

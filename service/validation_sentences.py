@@ -77,7 +77,7 @@ def _unknown_key(key: str) -> str:
     known = _known_keys()
     close = [] if key in known else difflib.get_close_matches(key, known, n=1)
     if close:
-        return f'This key is not known here; did you mean "{close[0]}"?'
+        return f'This key is not known here; the nearest one that is known is "{close[0]}".'
     return "This key is not known here; leave it out."
 
 

@@ -6,7 +6,7 @@ from typing import Annotated
 
 from fastapi import APIRouter, Body, Request, Response
 
-from service.models.answers import ConvergenceAnswer
+from service.models.convergence_answer import ConvergenceAnswer
 from service.models.evaluate import ConvergenceQuestion
 from service.openapi import answer_responses, body_examples
 from service.routes.answering import AnswerRoute, Call, answer

@@ -6,8 +6,8 @@ from typing import Annotated
 
 from fastapi import APIRouter, Body, Request, Response
 
-from service.models.answers import FieldsAnswer
 from service.models.evaluate import FieldsQuestion
+from service.models.fields_answer import FieldsAnswer
 from service.openapi import answer_responses, body_examples
 from service.routes.answering import AnswerRoute, Call, answer
 from service.translation.fields import answer_fields, check_cost, read_fields

@@ -6,8 +6,8 @@ from typing import Annotated
 
 from fastapi import APIRouter, Body, Request, Response
 
-from service.models.answers import FluxTotalsAnswer
 from service.models.evaluate import FluxTotalsQuestion
+from service.models.flux_totals_answer import FluxTotalsAnswer
 from service.openapi import answer_responses, body_examples
 from service.routes.answering import AnswerRoute, Call, answer
 from service.translation.flux_totals import answer_totals, check_cost, read_totals

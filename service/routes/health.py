@@ -12,7 +12,7 @@ from fastapi import APIRouter, Request, Response
 from prometheus_client import CONTENT_TYPE_LATEST
 
 from service import __version__
-from service.models.answers import Diagnostics, Health
+from service.models.operation import Diagnostics, Health
 from service.openapi import error_responses
 from service.problem_details import TYPES, problem_response
 from service.state import state_of

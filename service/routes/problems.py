@@ -9,7 +9,7 @@ from pydantic_core import to_json
 
 from service import __version__
 from service.media import JSON, check_accepts_json
-from service.models.answers import ProblemAnswer
+from service.models.operation import ProblemAnswer
 from service.models.problem import Problem
 from service.openapi import body_examples, error_responses
 from service.refusals import UnknownProblem

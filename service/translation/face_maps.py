@@ -94,8 +94,10 @@ class FaceReader:
 
     def _patches(self, kind: Kind, data: PatchesMap, path: Path) -> FaceContents | None:
         if len(data.patches) > self.settings.patches:
-            detail = f"There are {len(data.patches)} patches; at most {self.settings.patches} are allowed on "
-            "a face."
+            detail = (
+                f"There are {len(data.patches)} patches; at most {self.settings.patches} are allowed on "
+                "a face."
+            )
             self.collector.add((*path, "patches"), detail, "too-many")
             return None
         background = self.collector.read(kind, data.background, (*path, "background"))
@@ -105,7 +107,7 @@ class FaceReader:
             value = self.collector.read(kind, patch.value, (*here, "value"))
             where = self.rectangle(patch, here)
             self._check_name(data.patches[:index], patch, here)
-            if where is not None:
+            if where is not None and not math.isnan(value):
                 patches.append(maps.Patch(where, value))
                 named.append(NamedPatch(patch.name, where))
         if len(patches) < len(data.patches) or math.isnan(background) or self._has_unread_extent():
@@ -121,8 +123,10 @@ class FaceReader:
         if readings is None:
             return None
         if readings.table.size > self.settings.readings:
-            detail = f"There are {readings.table.size} readings; at most {self.settings.readings} are "
-            "allowed on a face."
+            detail = (
+                f"There are {readings.table.size} readings; at most {self.settings.readings} are "
+                "allowed on a face."
+            )
             self.collector.add(path, detail, "too-many")
             return None
         missing = int(np.isnan(readings.table).sum())

@@ -124,8 +124,10 @@ class PlaceReader:
         given = {axis: getattr(plane, axis) for axis in AXES}
         fixed = [axis for axis, value in given.items() if value is not None and not isinstance(value, list)]
         if len(fixed) != 1:
-            detail = 'Give one length along exactly one axis, such as {"z": 20}; intervals along the others '
-            "are free."
+            detail = (
+                'Give one length along exactly one axis, such as {"z": 20}; intervals along the others '
+                "are free."
+            )
             self.collector.add(path, detail, "plane")
             return None
         axis = AXES.index(fixed[0])

@@ -5,10 +5,10 @@ from __future__ import annotations
 import httpx
 import pytest
 
-from service.models.answers import ProblemAnswer
+from service.models.operation import ProblemAnswer
 from service.settings import Settings
 from tests.api.client import check_problem_document, open_client, pointers
-from tests.api.halden_reach import block, changed, sight_port_bar, slab
+from tests.api.halden_reach import Json, block, changed, sight_port_bar, slab
 
 pytestmark = pytest.mark.anyio
 
@@ -111,7 +111,7 @@ async def test_imbalance_is_stated_in_the_declared_unit_of_flow(client: httpx.As
 
 
 async def test_open_level_is_remarked(client: httpx.AsyncClient) -> None:
-    faces = {name: {"condition": "insulated"} for name in block()["faces"]}
+    faces: dict[str, Json] = {name: {"condition": "insulated"} for name in block()["faces"]}
     faces["x_low"] = {"condition": "flux", "inflow": 100}
     faces["x_high"] = {"condition": "flux", "inflow": -100}
     answer = (await client.post("/v1/problems", json=block(**faces))).json()

@@ -1,0 +1,115 @@
+"""The answer to POST /v1/fields."""
+
+from __future__ import annotations
+
+from pydantic import Field
+
+from service.models.answers import Answer, PartAnswer
+from service.models.base import Model
+
+# In x, y, z order; null where the flux has no finite value.
+Table = list[list[list[float | None]]]
+
+
+class Axes(Model):
+    """Places along the axes of a grid, lengths."""
+
+    x: list[float] = Field(description="Places along x; unit `length`.", examples=[[0, 20, 40]])
+    y: list[float] = Field(description="Places along y; unit `length`.", examples=[[0, 30, 60]])
+    z: list[float] = Field(description="Places along z; unit `length`.", examples=[[20]])
+
+
+class FluxTables(Model):
+    """Components of the flux density on a grid, each in x, y, z order, positive along its axis."""
+
+    x: Table = Field(description="Component along x; unit `flux`.", examples=[[[[1250.0]]]])
+    y: Table = Field(description="Component along y; unit `flux`.", examples=[[[[0.0]]]])
+    z: Table = Field(description="Component along z; unit `flux`.", examples=[[[[-310.5]]]])
+
+
+class Flux(Model):
+    """Components of the flux density at a point, each positive along its axis; null where it has no finite
+    value.
+    """
+
+    x: float | None = Field(description="Component along x; unit `flux`.", examples=[1250.0])
+    y: float | None = Field(description="Component along y; unit `flux`.", examples=[0.0])
+    z: float | None = Field(description="Component along z; unit `flux`.", examples=[-310.5])
+
+
+class GridAnswer(Model):
+    """Values on one grid, in x, y, z order."""
+
+    name: str | None = Field(None, description="The name the request gave.", examples=["mid-plane"])
+    shape: list[int] = Field(description="Number of places along x, y and z.", examples=[[3, 3, 1]])
+    axes: Axes = Field(description="Places along the axes.")
+    potential: Table | None = Field(
+        None, description="The potential; unit `potential`.", examples=[[[[30.0], [31.5]], [[30.0], [33.0]]]]
+    )
+    error_bound: float | None = Field(
+        None,
+        description="No potential on the grid is further off; unit `potential_difference`.",
+        examples=[4e-8],
+    )
+    flux: FluxTables | None = Field(
+        None, description="The flux density vector; null where it has no finite value."
+    )
+    flux_error_bound: Table | None = Field(
+        None,
+        description="No component of the flux at the place is further off; unit `flux`.",
+        examples=[[[[1e-6]]]],
+    )
+
+
+class PointAnswer(Model):
+    """Values at one point."""
+
+    name: str | None = Field(None, description="The name the request gave.", examples=["probe A"])
+    at: list[float] = Field(description="Where, along x, y and z; unit `length`.", examples=[[20, 30, 5]])
+    potential: float | None = Field(None, description="The potential; unit `potential`.", examples=[412.3])
+    error_bound: float | None = Field(
+        None, description="The potential is not further off; unit `potential_difference`.", examples=[4e-8]
+    )
+    flux: Flux | None = Field(None, description="The flux density vector.")
+    flux_error_bound: float | None = Field(
+        None, description="No component of the flux is further off; unit `flux`.", examples=[1e-6]
+    )
+
+
+class ExtremePlace(Model):
+    """A place of highest or lowest potential."""
+
+    at: list[float | None] = Field(
+        description="Where, along x, y and z; unit `length`. null where it lies infinitely far.",
+        examples=[[20, 30, 0]],
+    )
+    value: float = Field(description="The potential there; unit `potential`.", examples=[640.0])
+    error_bound: float = Field(
+        description="The extreme is not further off; unit `potential_difference`.", examples=[0.0]
+    )
+    where: str = Field(description="On which face, or inside.", examples=["face z_low"])
+
+
+class Extremes(Model):
+    """The places of highest and lowest potential of the body."""
+
+    highest: ExtremePlace = Field(description="The highest potential: the hottest place of a temperature.")
+    lowest: ExtremePlace = Field(description="The lowest potential: the coldest place of a temperature.")
+
+
+class MeanAnswer(PartAnswer):
+    """The mean potential of a face or a part of it."""
+
+    value: float = Field(description="The mean; unit `potential`.", examples=[412.3])
+    error_bound: float = Field(
+        description="The mean is not further off; unit `potential_difference`.", examples=[4e-8]
+    )
+
+
+class FieldsAnswer(Answer):
+    """Potential and flux on grids and at points."""
+
+    grids: list[GridAnswer] = Field(description="Values on each grid, in the order asked for.")
+    points: list[PointAnswer] = Field(description="Values at each point, in the order asked for.")
+    extremes: Extremes | None = Field(None, description="The highest and lowest potential, if asked for.")
+    means: list[MeanAnswer] | None = Field(None, description="The means, in the order asked for.")
