@@ -194,7 +194,7 @@ def _overshoot(setting: Setting, part: Part, axes: list[int], terms: int) -> Ove
         assert isinstance(drive, Profiles)
         sums.append(modes_of(line, terms).at(at, VALUE) @ eigen_integrals(line, drive, terms))
         data.append(drive.at(at))
-    summed, given = sums[0] @ sums[1].T, data[0] @ data[1].T
+    summed, given = part.factor * (sums[0] @ sums[1].T), part.factor * (data[0] @ data[1].T)
     highest, lowest = max(float(given.max()), 0.0), min(float(given.min()), 0.0)
     excess = np.maximum(summed - highest, lowest - summed)
     i, j = np.unravel_index(int(excess.argmax()), excess.shape)

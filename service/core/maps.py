@@ -73,6 +73,8 @@ class Profiles:
 
     def at(self, coordinates: FloatArray) -> FloatArray:
         """Values, shape (n_points, n_profiles); the mean of both sides exactly on a jump."""
+        if self.is_constant:
+            return np.repeat(self.left, coordinates.size, axis=0)
         return 0.5 * (self._from_side(coordinates, "left") + self._from_side(coordinates, "right"))
 
     def slope_at(self, coordinates: FloatArray) -> FloatArray:
@@ -80,9 +82,10 @@ class Profiles:
         slopes = self.slopes
         return 0.5 * (slopes[self._piece(coordinates, "left")] + slopes[self._piece(coordinates, "right")])
 
-    def scaled(self, factor: float) -> Profiles:
-        """The same profiles times a number."""
-        return self if factor == 1.0 else Profiles(self.knots, self.left * factor, self.right * factor)
+    @cached_property
+    def is_constant(self) -> bool:
+        """Whether none of the profiles changes along the line."""
+        return self.left.shape[0] == 1 and bool((self.left == self.right).all())
 
     def integrals(self, low: FloatArray, high: FloatArray) -> FloatArray:
         """Integral of each profile over each interval, shape (n_intervals, n_profiles)."""

@@ -133,7 +133,7 @@ def _products(
     lines: Sequence[Line], part: Part, point: Sequence[float], axes: Sequence[int], counts: Sequence[int]
 ) -> tuple[FloatArray, FloatArray]:
     """Coefficients times eigenfunctions at the point for all pairs of modes, and their rates: (n, columns), (n,)."""
-    amplitudes, rates = np.ones((1, 1)), np.zeros(1)
+    amplitudes, rates = np.full((1, 1), part.factor), np.zeros(1)
     for axis, count in zip(axes, counts, strict=True):
         modes = modes_of(lines[axis], count)
         shapes = modes.at(np.array([point[axis]]), VALUE)[0]
@@ -207,7 +207,7 @@ def tail_bound(lines: Sequence[Line], part: Part, point: Sequence[float], axial:
     if not line.is_endless:
         amplitude /= -math.expm1(-2 * gamma * line.extent)
     sizes = [_coefficient_bound(lines[axis], part.drives[axis]) for axis in axes]
-    products = float((sizes[0] * sizes[1]).sum())
+    products = abs(part.factor) * float((sizes[0] * sizes[1]).sum())
     first, second = ratios
     sums = first**count / (1 - first) / (1 - second) + second**count / (1 - second) / (1 - first)
     return amplitude * products * sums

@@ -21,16 +21,19 @@ FloatArray = NDArray[np.float64]
 
 SOURCES = "sources"
 
+UNIT = FaceMap.uniform(1.0).first
+
 
 @dataclass(frozen=True, eq=False)
 class Part:
     """A part of the problem: for each axis what drives that line; the columns of profiles belong together.
 
-    wall_axis: the axis whose end is driven, None for generation inside. cause: the face, or SOURCES.
+    factor: the field is this times the product of the lines' answers. wall_axis: the axis whose end is driven, None for generation inside. cause: the face, or SOURCES.
     face_map: the data of the face, counted from the reference, or None.
     """
 
     drives: tuple[Drive, Drive, Drive]
+    factor: float
     wall_axis: int | None
     cause: Face | str
     face_map: FaceMap | None
@@ -96,7 +99,7 @@ def parts_of(body: Body, reference: float) -> tuple[Part, ...]:
     parts = [part for face in body.present_faces if (part := _face_part(body, face, reference)) is not None]
     sources = [source for source in body.sources if source.density != 0.0]
     if sources:
-        parts.append(Part(_source_profiles(body, sources), None, SOURCES, None))
+        parts.append(Part(_source_profiles(body, sources), 1.0, None, SOURCES, None))
     return tuple(parts)
 
 
@@ -115,9 +118,12 @@ def _face_part(body: Body, face: Face, reference: float) -> Part | None:
         return None
     first, second = axes_along(face)
     drives: list[Drive] = [WallDrive(is_high(face))] * 3
-    drives[first] = face_map.first.scaled(factor)
-    drives[second] = face_map.second
-    return Part((drives[0], drives[1], drives[2]), axis, face, face_map)
+    drives[first], drives[second] = face_map.first, face_map.second
+    if face_map.is_uniform:
+        # One unit profile for all uniform faces, so that their lines' answers are shared.
+        drives[first] = drives[second] = UNIT
+        factor *= face_map.lowest
+    return Part((drives[0], drives[1], drives[2]), factor, axis, face, face_map)
 
 
 def _source_profiles(body: Body, sources: list[BoxSource]) -> tuple[Profiles, Profiles, Profiles]:

@@ -47,7 +47,14 @@ ROUNDING = 8e-15
 
 # Where a line leaves its profile at once, as sqrt(t), the range begins where that is below rounding; a slope on a
 # driven face meets it with t^(-3/2) and needs its square.
-EARLIEST, EARLIEST_FOR_SLOPES = 1e-17, 1e-30
+# The first is a part of the rule's own error.
+EARLIEST, EARLIEST_FOR_SLOPES = 1e-3, 1e-30
+
+# Up to so many places along the shortest axis it does not pay to look for the nodes that matter at each.
+FEW_PLACES = 8
+
+# Ranges begin at multiples of this in ln t.
+LATTICE = 3.0
 
 # Part of the slowest time constant by which every range has begun: (t / release)^(5/2) is then below rounding.
 LATEST_BEGINNING = 3e-7
@@ -111,12 +118,14 @@ def integrate(
     slowest = slowest_rate(lines)
     last = CUT / slowest
     undying = _undying(lines)
-    first = _first_time(lines, part, places, smooth)
+    first = _first_time(lines, part, places, smooth, EARLIEST * step_error(step))
     # A plain integrand begins only when the front from its end arrives; the others begin with what is let go.
     first = min(first, LATEST_BEGINNING / slowest if smooth or undying else last / 16)
-    times = np.exp(step * np.arange(math.floor(math.log(first) / step), math.ceil(math.log(last) / step) + 1))
+    # Parts that begin at about the same time begin together, and share the answers of their lines.
+    begin = LATTICE * math.floor(math.log(first) / LATTICE)
+    times = np.exp(step * np.arange(math.floor(begin / step), math.ceil(math.log(last) / step) + 1))
     answers = [rows(lines[axis], part.drives[axis], places[axis], times) for axis in range(3)]
-    nodes = _Nodes(times, step * times, 1 / slowest)
+    nodes = _Nodes(times, step * times * part.factor, 1 / slowest, part.factor)
     if smooth:
         products = _with_profile_taken_out(lines, part, places, answers, nodes)
     else:
@@ -194,13 +203,15 @@ def _carried(line: Line, drive: Drive, places: Places, times: FloatArray) -> Flo
         return sizes
     late = times > LATEST * line.extent**2
     modes = modes_of(line, 2)
-    decay = np.exp(-modes.rates[0] * times[late])[:, None]
-    strength = np.abs(eigen_integrals(line, drive, MODE_COUNT)).max(axis=0)
-    wave = float(modes.wave_numbers[1])
-    factor = wave if places.order == -1 else 1.0
+    strengths = np.abs(eigen_integrals(line, drive, MODE_COUNT))
+    slowest = np.abs(places.mode_shapes(line)[:, 0]).max()
+    factor = float(modes.wave_numbers[1]) if places.order == -1 else 1.0
     if places.high is not None:
         factor = float((places.high - places.low).max()) * line.scale
-    sizes[0, late] = decay * strength * factor
+    # The slowest mode as it is at the places asked; the others by the strongest of them, at the pace of the second.
+    decay = np.exp(-np.outer(times[late], modes.rates))
+    sizes[0, late] = decay[:, :1] * strengths[0] * float(slowest)
+    sizes[0, late] += decay[:, 1:] * strengths[1:].max(axis=0) * factor
     return sizes
 
 
@@ -218,11 +229,14 @@ def _widened(sizes: FloatArray, step: float) -> FloatArray:
 
 @dataclass(frozen=True, eq=False)
 class _Nodes:
-    """Nodes of the rule: times, weights, and the time scale on which a profile that was taken out is let go."""
+    """Nodes of the rule: times, weights with the part's factor, that factor, and the time scale on which a profile
+    that was taken out is let go.
+    """
 
     times: FloatArray
     weights: FloatArray
     release: float
+    factor: float
 
     @property
     def kept(self) -> FloatArray:
@@ -270,7 +284,7 @@ def _with_profile_taken_out(
     return [
         product(nodes.weights, answers[a].departure, answers[b].total, kernel),
         product(nodes.weights, initial_a, slow_b, kernel),
-        product(np.ones(1), initial_a, initial_b, closed),
+        product(np.full(1, nodes.factor), initial_a, initial_b, closed),
     ]
 
 
@@ -295,13 +309,13 @@ def _never_decaying(
     limits = [_limit(lines[axis], part.drives[axis], places[axis])[:, None, :] for axis in range(3)]
     if lines[2].keeps_its_mean:
         # The integral of chi is release (3 - 3/2 + 1/3).
-        dropped = float(nodes.weights @ nodes.kept) + nodes.release * 11 / 6
+        dropped = float(nodes.weights @ nodes.kept) + nodes.factor * nodes.release * 11 / 6
         return [Product(np.array([-dropped]), (limits[0], limits[1], limits[2]))]
     steady = laplace.transform(lines[2], part.drives[2], places[2], np.zeros(1))
     steady = steady - nodes.transformed(lines[2], part.drives[2], places[2])
     return [
         Product(-nodes.weights * nodes.kept, (limits[0], limits[1], answers[2].total)),
-        Product(np.ones(1), (limits[0], limits[1], steady)),
+        Product(np.full(1, nodes.factor), (limits[0], limits[1], steady)),
     ]
 
 
@@ -318,13 +332,15 @@ def _limit(line: Line, drive: Drive, places: Places) -> FloatArray:
     return span[:, None] * mean
 
 
-def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], smooth: bool) -> float:
+def _first_time(
+    lines: Sequence[Line], part: Part, places: Sequence[Places], smooth: bool, earliest: float
+) -> float:
     """Where the integrand begins to matter."""
     least = min(line.extent for line in lines if not line.is_endless)
     film = max((film for line in lines for film in (line.film_low, line.film_high) if film < math.inf), default=0.0)
     slopes = any(asked.order == -1 for asked in places)
     floor = least**2 * (
-        EARLIEST_FOR_SLOPES / (1 + film * least) ** 2 if slopes else EARLIEST / (1 + film * least)
+        EARLIEST_FOR_SLOPES / (1 + film * least) ** 2 if slopes else earliest / (1 + film * least)
     )
     wall = part.wall_axis
     from_wall = 0.0
@@ -375,6 +391,9 @@ def _contract(product: Product) -> FloatArray:
         for factor in product.factors
     ]
     weighted = flat[loop] * np.repeat(np.broadcast_to(product.weights, nodes), columns)
+    if shape[loop] <= FEW_PLACES:
+        few = np.stack([(flat[first] * row) @ flat[second].T for row in weighted])
+        return np.moveaxis(few, 0, loop)
     right = np.ascontiguousarray(flat[second].T)
     size = np.abs(flat[first]).max(axis=0) * np.abs(flat[second]).max(axis=0)
     result = np.empty((shape[loop], shape[first], shape[second]))

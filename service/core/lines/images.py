@@ -34,6 +34,9 @@ SQRT_PI = math.sqrt(math.pi)
 # Up to this t / l^2 the second image is below exp(-1 / (4 * 0.006)) = 8e-19 of the first. See modes for later times.
 LATEST = 0.006
 
+# A front has arrived within this many sqrt(t): beyond it exp(-w^2) is below 1e-19.
+ARRIVAL = 13.2
+
 # Below this H sqrt(t) the differences that define K_1 and K_2 cancel, and their power series is short.
 SMALL_FILM = 0.1
 SERIES_TERMS = 13
@@ -43,7 +46,7 @@ LARGE_ARGUMENT = 10.0
 
 
 def free(order: int, distance: FloatArray, root_time: FloatArray) -> FloatArray:
-    """g_n for n = -1, 0, 1, 2 at distances >= 0; root_time is sqrt(t), of a shape that broadcasts."""
+    """g_n for n = -1, 0, 1, 2 at distances >= 0; root_time is sqrt(t), both of shape (n,)."""
     w = distance / (2 * root_time)
     if order == 0:
         return np.asarray(0.5 * erfc(w))
@@ -55,15 +58,18 @@ def free(order: int, distance: FloatArray, root_time: FloatArray) -> FloatArray:
     return 0.5 * root_time**2 * ((1 + 2 * w * w) * erfc(w) - 2 / SQRT_PI * w * gauss)
 
 
-def derivative_of_erfcx(y: FloatArray) -> FloatArray:
+def derivative_of_erfcx(y: FloatArray, erfcx_of_y: FloatArray) -> FloatArray:
     """-erfcx'(y) / 2 = 1 / sqrt(pi) - y erfcx(y), for y >= 0, to 2e-14 of itself."""
+    plain = 1 / SQRT_PI - y * erfcx_of_y
     large = y > LARGE_ARGUMENT
-    square = 1.0 / (2.0 * np.where(large, y, LARGE_ARGUMENT) ** 2)
+    if not large.any():
+        return plain
+    square = 1.0 / (2.0 * y[large] ** 2)
     series = np.ones_like(square)
     for k in range(13, 0, -1):
         series = 1.0 - (2 * k + 1) * square * series
-    moderate = np.where(large, 0.0, y)
-    return np.where(large, square * series / SQRT_PI, 1 / SQRT_PI - moderate * erfcx(moderate))
+    plain[large] = square * series / SQRT_PI
+    return plain
 
 
 def film_part(order: int, distance: FloatArray, root_time: FloatArray, film: float) -> FloatArray:
@@ -74,20 +80,20 @@ def film_part(order: int, distance: FloatArray, root_time: FloatArray, film: flo
         return np.asarray(np.exp(-w * w) * erfcx(w + eta))
     if order == -1:
         y = w + eta
+        scaled = erfcx(y)
         # exp(-w^2) / sqrt(pi t) - H K_0, written without the difference
-        return np.exp(-w * w) / root_time * (derivative_of_erfcx(y) + w * erfcx(y))
+        return np.exp(-w * w) / root_time * (derivative_of_erfcx(y, scaled) + w * scaled)
     below = film_part(order - 1, distance, root_time, film)
-    by_difference = (2 * free(order - 1, distance, root_time) - below) / film
-    if eta.min() >= SMALL_FILM:
-        return by_difference
-    return np.where(eta < SMALL_FILM, _small_film(order, distance, root_time, film), by_difference)
+    values = (2 * free(order - 1, distance, root_time) - below) / film
+    small = eta < SMALL_FILM
+    values[small] = _small_film(order, distance[small], root_time[small], film)
+    return values
 
 
 def _small_film(order: int, distance: FloatArray, root_time: FloatArray, film: float) -> FloatArray:
     """K_n = 2 sum over k of (-H)^k g_(n+k), which follows from K_n = 2 g_n - H K_(n+1)."""
     before, this = free(order - 1, distance, root_time), free(order, distance, root_time)
     total, factor = 2 * this, 2.0
-    root_time = np.where(film * root_time < SMALL_FILM, root_time, 0.0)
     for k in range(1, SERIES_TERMS):
         n = order + k
         # n g_n = 2 t g_(n-2) - d g_(n-1)
@@ -97,13 +103,25 @@ def _small_film(order: int, distance: FloatArray, root_time: FloatArray, film: f
     return total
 
 
-def reflected(order: int, distance: FloatArray, root_time: FloatArray, film: float) -> FloatArray:
-    """rho_n for n = -1, 0, 1, 2: what an end adds at the mirrored distance."""
+def end_part(order: int, distance: FloatArray, root_time: FloatArray, film: float) -> FloatArray:
+    """K_n of any end: 0 if held, 2 g_n if insulated."""
     if film == math.inf:
-        return free(order, distance, root_time)
+        return np.zeros_like(distance)
     if film == 0.0:
-        return -free(order, distance, root_time)
-    return free(order, distance, root_time) - film_part(order, distance, root_time, film)
+        return 2 * free(order, distance, root_time)
+    return film_part(order, distance, root_time, film)
+
+
+def reflected(order: int, distance: FloatArray, root_time: FloatArray, film: float) -> FloatArray:
+    """rho_n = g_n - K_n for n = -1, 0, 1, 2: what an end adds at the mirrored distance."""
+    return free(order, distance, root_time) - end_part(order, distance, root_time, film)
+
+
+def with_its_image(order: int, distance: FloatArray, root_time: FloatArray, film: float) -> FloatArray:
+    """g_n + rho_n: a jump on the end itself together with its image; exactly 0 on an insulated end."""
+    if film == 0.0:
+        return np.zeros_like(distance)
+    return 2 * free(order, distance, root_time) - end_part(order, distance, root_time, film)
 
 
 def departure(
@@ -111,28 +129,43 @@ def departure(
 ) -> FloatArray:
     """u - f (order 0), its slope (-1) or antiderivative (1), shape (n_points, n_times, n_profiles)."""
     knots, jumps, slope_jumps = breaks_of(line, profiles)
-    total = _from_breaks(line, knots, jumps, slope_jumps, coordinates, root_time, order)
-    inner = slice(None) if line.is_endless else slice(0, -1)
-    low = (wall_distance(line, coordinates, high=False)[:, None] + knots[inner] * line.scale)[:, :, None]
-    sign = -1.0 if order == 0 else 1.0
-    total += sign * _contract(lambda n: reflected(n, low, root_time, line.film_low), jumps[inner], order)
-    total += sign * _contract(lambda n: reflected(n, low, root_time, line.film_low), slope_jumps[inner], order + 1)
+    last = knots.size if line.is_endless else knots.size - 1
+    total = np.zeros((coordinates.size, root_time.size, profiles.n_profiles))
+    low = wall_distance(line, coordinates, high=False)[:, None]
+    total += _from_end(low, root_time, line.film_low, jumps[:1], slope_jumps[:1], order, high=False)
     if not line.is_endless:
-        high = wall_distance(line, coordinates, high=True)[:, None] + (line.length - knots[1:]) * line.scale
-        high = high[:, :, None]
-        total += _contract(lambda n: reflected(n, high, root_time, line.film_high), jumps[1:], order)
-        total -= _contract(lambda n: reflected(n, high, root_time, line.film_high), slope_jumps[1:], order + 1)
+        high = wall_distance(line, coordinates, high=True)[:, None]
+        total += _from_end(high, root_time, line.film_high, jumps[last:], slope_jumps[last:], order, high=True)
+    if last > 1:
+        inner = slice(1, last)
+        total += _from_inside(line, knots[inner], jumps[inner], slope_jumps[inner], coordinates, root_time, order)
     return total
 
 
-def _contract(kernel: Callable[[int], FloatArray], weights: FloatArray, order: int) -> FloatArray | float:
-    """Sum over breaks of kernel times weight; nothing is computed for weights that are all zero."""
-    if not weights.any():
-        return 0.0
-    return np.einsum("pbt,br->ptr", kernel(order), weights)
+def _from_end(
+    distance: FloatArray,
+    root_time: FloatArray,
+    film: float,
+    jump: FloatArray,
+    slope_jump: FloatArray,
+    order: Order,
+    *,
+    high: bool,
+) -> FloatArray | float:
+    """What the break on an end sends out, together with its own image: J (g + rho) and S K."""
+    sign = -1.0 if order == 0 and not high else 1.0
+    total = _sum(lambda d, t: with_its_image(order, d, t, film), distance, root_time, sign * jump)
+    inward = -1.0 if high else 1.0
+    if order == 0:
+        return total + _sum(lambda d, t: end_part(1, d, t, film), distance, root_time, slope_jump)
+    if order == -1:
+        return total + _sum(lambda d, t: end_part(0, d, t, film), distance, root_time, -inward * slope_jump)
+    # The antiderivative of K_1 from the end on.
+    constant = 0.5 * root_time[:, None] ** 2 * (inward * slope_jump)
+    return total + constant + _sum(lambda d, t: end_part(2, d, t, film), distance, root_time, -inward * slope_jump)
 
 
-def _from_breaks(
+def _from_inside(
     line: Line,
     knots: FloatArray,
     jumps: FloatArray,
@@ -140,26 +173,56 @@ def _from_breaks(
     coordinates: FloatArray,
     root_time: FloatArray,
     order: Order,
-) -> FloatArray:
+) -> FloatArray | float:
+    """What breaks inside the line send out, and their images in both ends."""
     difference = (coordinates[:, None] - knots) * line.scale
-    side = np.sign(difference)
-    # On an end the inside is meant, on a jump inside the line the mean of both sides.
-    side[:, 0] = 1.0
+    # On a jump the mean of both sides is meant.
+    side, distance = np.sign(difference), np.abs(difference)
+    jump_side, slope_side = (-side, None) if order == 0 else (None, -side)
+    total = _sum(lambda d, t: free(order, d, t), distance, root_time, jumps, jump_side)
+    total += _sum(lambda d, t: free(order + 1, d, t), distance, root_time, slope_jumps, slope_side)
+    if order == 1 and slope_jumps.any():
+        total += np.einsum("pb,t,br->ptr", side, 0.5 * root_time**2, slope_jumps)
+    sign = -1.0 if order == 0 else 1.0
+    low = wall_distance(line, coordinates, high=False)[:, None] + knots * line.scale
+    total += _sum(lambda d, t: reflected(order, d, t, line.film_low), low, root_time, sign * jumps)
+    total += _sum(lambda d, t: reflected(order + 1, d, t, line.film_low), low, root_time, sign * slope_jumps)
     if not line.is_endless:
-        side[:, -1] = -1.0
-    distance, side = np.abs(difference)[:, :, None], side[:, :, None]
-    total = np.zeros((coordinates.size, root_time.size, jumps.shape[1]))
-    if order == 0:
-        total += _contract(lambda n: -side * free(n, distance, root_time), jumps, 0)
-        total += _contract(lambda n: free(n, distance, root_time), slope_jumps, 1)
-    elif order == -1:
-        total += _contract(lambda n: free(n, distance, root_time), jumps, -1)
-        total += _contract(lambda n: -side * free(n, distance, root_time), slope_jumps, 0)
-    else:
-        at_break = 0.5 * root_time**2
-        total += _contract(lambda n: free(n, distance, root_time), jumps, 1)
-        total += _contract(lambda n: side * (at_break - free(n, distance, root_time)), slope_jumps, 2)
+        high = wall_distance(line, coordinates, high=True)[:, None] + (line.length - knots) * line.scale
+        total += _sum(lambda d, t: reflected(order, d, t, line.film_high), high, root_time, jumps)
+        total += _sum(lambda d, t: reflected(order + 1, d, t, line.film_high), high, root_time, -slope_jumps)
     return total
+
+
+def _sum(
+    kernel: Callable[[FloatArray, FloatArray], FloatArray],
+    distance: FloatArray,
+    root_time: FloatArray,
+    weights: FloatArray,
+    side: FloatArray | None = None,
+) -> FloatArray | float:
+    """Sum over breaks of kernel times weight (times the side): distance (n_points, n_breaks) to (n_points, n_times, r).
+
+    Computed only where a front has arrived, and not at all for weights that are all zero.
+    """
+    if not weights.any():
+        return 0.0
+    values = _where_arrived(kernel, distance[:, :, None], root_time)
+    if side is not None:
+        values *= side[:, :, None]
+    if weights.shape[0] == 1:
+        return values[:, 0, :, None] * weights[0]
+    return np.einsum("pbt,br->ptr", values, weights)
+
+
+def _where_arrived(
+    kernel: Callable[[FloatArray, FloatArray], FloatArray], distance: FloatArray, root_time: FloatArray
+) -> FloatArray:
+    arrived = distance < ARRIVAL * root_time
+    values = np.zeros(arrived.shape)
+    near = np.broadcast_to(distance, arrived.shape)[arrived]
+    values[arrived] = kernel(near, np.broadcast_to(root_time, arrived.shape)[arrived])
+    return values
 
 
 def wall_kernel(
@@ -170,17 +233,17 @@ def wall_kernel(
     Held: s / (2 sqrt(pi) t^(3/2)) exp(-s^2 / 4t). Film: H K_(-1). Insulated: exp(-s^2 / 4t) / sqrt(pi t).
     The image in the far end is below exp(-1 / (4 LATEST)) for the times this serves.
     """
-    s = wall_distance(line, coordinates, high=drive.high)[:, None]
     film = line.film_high if drive.high else line.film_low
-    w = s / (2 * root_time)
-    if film == math.inf:
-        kernel = _held_kernel(w, root_time, order)
-    elif film == 0.0:
-        kernel = _insulated_kernel(w, root_time, order)
-    else:
-        kernel = _film_kernel(w, root_time, film, order)
+
+    def kernel(distance: FloatArray, root: FloatArray) -> FloatArray:
+        w = distance / (2 * root)
+        if film == math.inf:
+            return _held_kernel(w, root, order)
+        return _insulated_kernel(w, root, order) if film == 0.0 else _film_kernel(w, root, film, order)
+
+    values = _where_arrived(kernel, wall_distance(line, coordinates, high=drive.high)[:, None], root_time)
     # Away from the high end is towards the low one.
-    return (kernel if order == 0 or not drive.high else -kernel)[:, :, None]
+    return (values if order == 0 or not drive.high else -values)[:, :, None]
 
 
 def _held_kernel(w: FloatArray, root_time: FloatArray, order: Order) -> FloatArray:
@@ -202,11 +265,12 @@ def _insulated_kernel(w: FloatArray, root_time: FloatArray, order: Order) -> Flo
 
 
 def _film_kernel(w: FloatArray, root_time: FloatArray, film: float, order: Order) -> FloatArray:
-    y = w + film * root_time
-    gauss = np.exp(-w * w)
+    eta = film * root_time
+    y = w + eta
+    scaled = erfcx(y)
+    gauss = film * np.exp(-w * w)
     if order == 0:
-        return film * gauss / root_time * (derivative_of_erfcx(y) + w * erfcx(y))
+        return gauss / root_time * (derivative_of_erfcx(y, scaled) + w * scaled)
     if order == -1:
-        eta = film * root_time
-        return film * gauss / root_time**2 * ((eta - w) * derivative_of_erfcx(y) - w * w * erfcx(y))
-    return -film * gauss * erfcx(y)
+        return gauss / root_time**2 * ((eta - w) * derivative_of_erfcx(y, scaled) - w * w * scaled)
+    return -gauss * scaled

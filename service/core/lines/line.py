@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, lru_cache
 from typing import Literal
 
 import numpy as np
@@ -79,11 +79,12 @@ def wall_distance(line: Line, coordinates: FloatArray, *, high: bool) -> FloatAr
     return (line.length - coordinates) * line.scale if high else coordinates * line.scale
 
 
+@lru_cache(maxsize=1024)
 def breaks_of(line: Line, profiles: Profiles) -> tuple[FloatArray, FloatArray, FloatArray]:
     """Knots with the jumps of value and of slope that the profiles, zero outside the line, have there.
 
     Returns knots in the caller's unit, shape (n_breaks,), jumps and slope jumps per scaled length, shape
-    (n_breaks, n_profiles). On a half-line the last piece ends nowhere and has no last break.
+    (n_breaks, n_profiles); shared arrays, not to be written to. On a half-line the last piece ends nowhere and has no last break.
     """
     slopes = profiles.slopes / line.scale
     nothing = np.zeros((1, profiles.n_profiles))

@@ -52,16 +52,16 @@ class Modes:
         """
         low = wall_distance(self.line, coordinates, high=False)[:, None]
         high = wall_distance(self.line, coordinates, high=True)[:, None]
-        from_low = _wave(self.wave_numbers, low, self.cosine_low, self.sine_low, order)
-        from_high = _wave(self.wave_numbers, high, self.cosine_high, self.sine_high, order) * self.parity
+        from_low = low <= high
+        cosine = np.where(from_low, self.cosine_low, self.cosine_high * self.parity)
+        sine = np.where(from_low, self.sine_low, self.sine_high * self.parity)
+        waves = _wave(self.wave_numbers, np.minimum(low, high), cosine, sine, order)
         if order == 0:
-            return np.where(low <= high, from_low, from_high)
+            return waves
         if order == -1:
-            return np.where(low <= high, from_low, -from_high)
-        whole = _wave(
-            self.wave_numbers, np.array([[self.line.extent]]), self.cosine_low, self.sine_low, order
-        )
-        return np.where(low <= high, from_low, whole - from_high)
+            return np.where(from_low, waves, -waves)
+        whole = _wave(self.wave_numbers, np.array([[self.line.extent]]), self.cosine_low, self.sine_low, order)
+        return np.where(from_low, waves, whole - waves)
 
 
 def _wave(wave: FloatArray, distance: FloatArray, cosine: FloatArray, sine: FloatArray, order: Order) -> FloatArray:

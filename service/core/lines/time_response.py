@@ -7,7 +7,7 @@ products of three lines' answers, whatever drives the body.
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
@@ -34,6 +34,15 @@ class Places:
     low: FloatArray
     order: Order
     high: FloatArray | None = None
+    _shapes: dict[Line, FloatArray] = field(default_factory=dict, repr=False)
+
+    def mode_shapes(self, line: Line) -> FloatArray:
+        """The line's eigenfunctions asked in the same way, shape (n, MODE_COUNT), kept for the next time."""
+        if line not in self._shapes:
+            modes = modes_of(line, MODE_COUNT)
+            shapes = modes.at(self.low, self.order)
+            self._shapes[line] = shapes if self.high is None else modes.at(self.high, self.order) - shapes
+        return self._shapes[line]
 
     def profile(self, line: Line, profiles: Profiles) -> FloatArray:
         """The same asked of the profiles themselves, shape (n, n_profiles), per scaled length."""
@@ -125,9 +134,7 @@ def _early_slope(line: Line, drive: Profiles, places: Places, root_time: FloatAr
 
 def _late(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
     modes = modes_of(line, MODE_COUNT)
-    shapes = modes.at(places.low, places.order)
-    if places.high is not None:
-        shapes = modes.at(places.high, places.order) - shapes
+    shapes = places.mode_shapes(line)
     decay = np.exp(-np.outer(modes.rates, times))
     strengths = eigen_integrals(line, drive, MODE_COUNT)
     # One matrix product for all profiles: (n, modes) times (modes, times x profiles).
