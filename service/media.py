@@ -101,7 +101,7 @@ def _archive(answer: dict[str, Any]) -> bytes:
     with zipfile.ZipFile(buffer, "w", zipfile.ZIP_STORED) as archive:
         for name, array in {"answer": np.array(text), **arrays}.items():
             with archive.open(zipfile.ZipInfo(f"{name}.npy", _NO_TIME), "w", force_zip64=True) as entry:
-                np.lib.format.write_array(entry, np.ascontiguousarray(array), allow_pickle=False)
+                np.lib.format.write_array(entry, np.asarray(array, order="C"), allow_pickle=False)
     return buffer.getvalue()
 
 
