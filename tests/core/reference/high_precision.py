@@ -22,9 +22,9 @@ from tests.core.reference.kernels import ONE, ZERO, Number, arithmetic
 from tests.core.reference.lines import SMALL_EXPONENT, Line, Profile, ProfileResponse, WallResponse
 from tests.core.reference.steady_line import attenuated_held_wall, steady_profile, steady_wall
 
-# The error of the trapezoidal rule is about exp(-pi^2 / step) = 3e-23.
-STEP = arithmetic.mpf("0.19")
-NEGLIGIBLE = arithmetic.mpf("1e-25")
+# The error of the trapezoidal rule is about exp(-pi^2 / step) = 2e-27.
+STEP = arithmetic.mpf("0.16")
+NEGLIGIBLE = arithmetic.mpf("1e-26")
 LIMIT_OF_NODES = 6000
 
 Terms = list[tuple[tuple[int, int, int], Number]]
