@@ -176,6 +176,10 @@ def _accurate(
     setting: Setting, columns: Sequence[FloatArray], tolerance: float, tensor: bool, keep_going: KeepGoing | None
 ) -> tuple[FloatArray, float, int]:
     """Potential within the tolerance, its bound and the nodes taken; a finer step where the first is not enough."""
+    if not setting.parts:
+        # Nothing drives the body: it is at the reference level, exactly.
+        shape = tuple(column.size for column in columns) if tensor else columns[0].shape
+        return np.full(shape, setting.reference), 0.0, 0
     step = step_for(setting, tolerance)
     while True:
         potential, bounds, nodes = _sum_of_parts(setting, columns, (VALUE, VALUE, VALUE), step, tensor, keep_going)

@@ -103,7 +103,7 @@ def step_error(step: float, power: float = 2.5) -> float:
 def step_for(relative_error: float) -> float:
     """The coarsest step whose error is below the one given, within the range worth taking."""
     shift = math.pi / 2 - ANGLE
-    step = 2 * math.pi * shift / math.log1p(2 * math.sin(ANGLE) ** -2.5 / relative_error)
+    step = 2 * math.pi * shift / math.log1p(2 * math.sin(ANGLE) ** -2.5 / max(relative_error, 1e-30))
     return min(max(step, FINEST_STEP), COARSEST_STEP)
 
 
@@ -335,48 +335,65 @@ def _limit(line: Line, drive: Drive, places: Places) -> FloatArray:
 def _first_time(
     lines: Sequence[Line], part: Part, places: Sequence[Places], smooth: bool, earliest: float
 ) -> float:
-    """Where the integrand begins to matter."""
+    """Where the integrand begins to matter.
+
+    A front from a jump matters as soon as it arrives at the nearest place that is not on the jump itself. A kink, a
+    film end or the end of an interval matters from the beginning, but only as sqrt(t).
+    """
+    wall = part.wall_axis
+    if wall is not None and not smooth:
+        return _nearest_to_wall(lines[wall], part.drives[wall], places[wall]) ** 2 / (4 * CUT)
+    slopes = any(asked.order == -1 for asked in places)
     least = min(line.extent for line in lines if not line.is_endless)
     film = max((film for line in lines for film in (line.film_low, line.film_high) if film < math.inf), default=0.0)
-    slopes = any(asked.order == -1 for asked in places)
     floor = least**2 * (
         EARLIEST_FOR_SLOPES / (1 + film * least) ** 2 if slopes else earliest / (1 + film * least)
     )
-    wall = part.wall_axis
-    from_wall = 0.0
-    if wall is not None:
-        drive = part.drives[wall]
-        assert isinstance(drive, WallDrive)
-        from_wall = _nearest_to_wall(lines[wall], drive, places[wall]) ** 2 / (4 * CUT)
-        if not smooth:
-            return from_wall
-    elif not slopes:
+    if wall is None and not slopes:
         return floor
+    if wall is not None and _film_at(lines[wall], part.drives[wall]) > 0:
+        # The kernel of a held end, or of a film like it, is large up to the square of the distance from it.
+        floor = min(floor, _nearest_to_wall(lines[wall], part.drives[wall], places[wall]) ** 2 / (4 * CUT))
     along = [axis for axis in range(3) if axis != wall]
-    nearest = min(_nearest_to_break(lines[axis], part.drives[axis], places[axis]) for axis in along)
-    return max(from_wall, floor, min(nearest**2 / (4 * CUT), least**2) if nearest > 0 else 0.0)
+    jump, other = np.min([_nearest_to_break(lines[axis], part.drives[axis], places[axis]) for axis in along], axis=0)
+    return float(min(jump**2 / (4 * CUT), max(other**2 / (4 * CUT), floor), least**2))
 
 
-def _nearest_to_wall(line: Line, drive: WallDrive, places: Places) -> float:
+def _film_at(line: Line, drive: Drive) -> float:
+    assert isinstance(drive, WallDrive)
+    return line.film_high if drive.high else line.film_low
+
+
+def _nearest_to_wall(line: Line, drive: Drive, places: Places) -> float:
+    """Least scaled distance from the driven end, of places that are not on it."""
+    assert isinstance(drive, WallDrive)
     ends = [places.low] if places.high is None else [places.low, places.high]
-    return min(float(wall_distance(line, end, high=drive.high).min()) for end in ends)
+    distances = np.concatenate([wall_distance(line, end, high=drive.high) for end in ends])
+    return float(distances[distances > 0].min(initial=line.extent))
 
 
-def _nearest_to_break(line: Line, drive: Drive, places: Places) -> float:
-    """Least scaled distance from a place to a break of the profiles; 0 for intervals, which may end on one."""
-    if places.high is not None:
-        return 0.0
+def _nearest_to_break(line: Line, drive: Drive, places: Places) -> tuple[float, float]:
+    """Least scaled distance to a jump from a place not on it, and to a kink or film end; infinite if there is none.
+
+    Intervals may end on a break, which shows as sqrt(t) like a kink.
+    """
     assert isinstance(drive, Profiles)
+    if places.high is not None:
+        return math.inf, 0.0
     knots, jumps, slope_jumps = breaks_of(line, drive)
-    active = jumps.any(axis=1) | slope_jumps.any(axis=1)
-    if line.film_low == 0.0:
-        # An insulated end mirrors the profile, and only a slope makes a break of it.
-        active[0] = slope_jumps[0].any()
-    if line.film_high == 0.0 and not line.is_endless:
-        active[-1] = slope_jumps[-1].any()
-    if not active.any():
-        return math.inf
-    return float(np.abs(places.low[:, None] - knots[active]).min()) * line.scale
+    has_jump, has_kink = jumps.any(axis=1), slope_jumps.any(axis=1)
+    ends = [(0, line.film_low)] if line.is_endless else [(0, line.film_low), (-1, line.film_high)]
+    for index, film in ends:
+        # An insulated end mirrors the profile; behind a film the profile begins to change as sqrt(t).
+        has_kink[index] |= has_jump[index] and 0.0 < film < math.inf
+        has_jump[index] &= film == math.inf
+    distances = np.abs(places.low[:, None] - knots) * line.scale
+    near_jump = distances[:, has_jump]
+    other = float(distances[:, has_kink].min(initial=math.inf))
+    if places.order == -1 and (near_jump == 0).any():
+        # On a held end the slope begins as 1 / sqrt(t).
+        other = 0.0
+    return float(near_jump[near_jump > 0].min(initial=math.inf)), other
 
 
 def _contract(product: Product) -> FloatArray:

@@ -148,12 +148,13 @@ def face_total(
         if not math.isfinite(given):
             return Total(None, None, (UnboundedCause("endless", face, _far_inflow(condition, rectangle), 0.0),))
         return Total(given, 4e-16 * abs(given))
-    sign = -1.0 if is_high(face) else 1.0
     causes = unbounded_lines(body, face, rectangle) if isinstance(condition, Held) else []
     net = [cause for cause, _ in causes if cause.coefficient != 0.0]
-    if net:
-        return Total(None, None, tuple(net), _with_gap(setting, face, rectangle, causes, gap, sign, tolerance))
-    return finite_part(setting, face, rectangle, tolerance)
+    finite = finite_part(setting, face, rectangle, tolerance)
+    if not net:
+        return finite
+    with_gap = _with_gap(setting, face, rectangle, causes, gap, tolerance)
+    return Total(None, None, (*net, *finite.causes), with_gap)
 
 
 def finite_part(setting: Setting, face: Face, rectangle: Rectangle, tolerance: float) -> Total:
@@ -325,7 +326,6 @@ def _with_gap(
     rectangle: Rectangle,
     causes: Sequence[tuple[UnboundedCause, tuple[int, bool]]],
     gap: float | None,
-    sign: float,
     tolerance: float,
 ) -> Bounded | None:
     if gap is None:

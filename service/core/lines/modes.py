@@ -16,7 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core.lines.eigenvalues import roots
-from service.core.lines.line import Drive, Line, Order, WallDrive, wall_distance
+from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order, WallDrive, wall_distance
 from service.core.maps import Profiles
 
 FloatArray = NDArray[np.float64]
@@ -46,7 +46,7 @@ class Modes:
         return self.wave_numbers**2
 
     def at(self, coordinates: FloatArray, order: Order) -> FloatArray:
-        """Eigenfunctions, their slopes or antiderivatives at places, shape (n_points, count).
+        """Eigenfunctions (VALUE) or their slopes (SLOPE) at places, shape (n_points, count).
 
         Counted from the nearer end, so that a place next to a held face keeps its digits.
         """
@@ -55,25 +55,16 @@ class Modes:
         from_low = low <= high
         cosine = np.where(from_low, self.cosine_low, self.cosine_high * self.parity)
         sine = np.where(from_low, self.sine_low, self.sine_high * self.parity)
-        waves = _wave(self.wave_numbers, np.minimum(low, high), cosine, sine, order)
-        if order == 0:
-            return waves
-        if order == -1:
-            return np.where(from_low, waves, -waves)
-        whole = _wave(self.wave_numbers, np.array([[self.line.extent]]), self.cosine_low, self.sine_low, order)
-        return np.where(from_low, waves, whole - waves)
+        phase = self.wave_numbers * np.minimum(low, high)
+        if order == VALUE:
+            return cosine * np.cos(phase) + sine * np.sin(phase)
+        slope = self.wave_numbers * (sine * np.cos(phase) - cosine * np.sin(phase))
+        return np.where(from_low, slope, -slope)
 
-
-def _wave(wave: FloatArray, distance: FloatArray, cosine: FloatArray, sine: FloatArray, order: Order) -> FloatArray:
-    """cos(wave distance - theta), its derivative, or its integral from 0, by distance from the end theta is of."""
-    phase = wave * distance
-    if order == 0:
-        return cosine * np.cos(phase) + sine * np.sin(phase)
-    if order == -1:
-        return wave * (sine * np.cos(phase) - cosine * np.sin(phase))
-    # sin(phase) / wave and (1 - cos(phase)) / wave, which stay finite when the wave number does not.
-    half = distance * np.sinc(phase / (2 * math.pi))
-    return cosine * distance * np.sinc(phase / math.pi) + sine * half * np.sin(phase / 2)
+    def over(self, low: FloatArray, high: FloatArray) -> FloatArray:
+        """Integrals of the eigenfunctions over intervals, in scaled length, shape (n_intervals, count)."""
+        half = 0.5 * (high - low)[:, None] * self.line.scale
+        return 2 * half * np.sinc(self.wave_numbers * half / math.pi) * self.at(0.5 * (low + high), VALUE)
 
 
 @lru_cache(maxsize=2048)
@@ -136,16 +127,14 @@ def _end_strength(modes: Modes, drive: WallDrive) -> FloatArray:
 def _profile_integrals(modes: Modes, profiles: Profiles) -> FloatArray:
     line = modes.line
     knots = np.minimum(profiles.knots, line.length)
-    middle = 0.5 * (knots[1:] + knots[:-1])
-    half = 0.5 * line.scale * np.diff(knots)
-    phase = modes.wave_numbers[:, None] * half
-    # integral of cos over a piece: width * sinc; of (x - middle) cos: the spherical Bessel function of order 1
-    mean = 0.5 * (profiles.left + profiles.right)
-    total = (modes.at(middle, 0).T * (2 * half * np.sinc(phase / math.pi))) @ mean
+    total = modes.over(knots[:-1], knots[1:]).T @ (0.5 * (profiles.left + profiles.right))
     rise = 0.5 * (profiles.right - profiles.left)
     if rise.any():
+        # integral of (x - middle) cos over a piece: the spherical Bessel function of order 1
+        middle, half = 0.5 * (knots[1:] + knots[:-1]), 0.5 * line.scale * np.diff(knots)
+        phase = modes.wave_numbers[:, None] * half
         odd = 2 * half * _bessel_over_wave(phase) / np.where(modes.wave_numbers == 0, 1.0, modes.wave_numbers)[:, None]
-        total = total + (modes.at(middle, -1).T * odd) @ rise
+        total = total + (modes.at(middle, SLOPE).T * odd) @ rise
     return total
 
 

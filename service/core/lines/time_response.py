@@ -40,8 +40,8 @@ class Places:
         """The line's eigenfunctions asked in the same way, shape (n, MODE_COUNT), kept for the next time."""
         if line not in self._shapes:
             modes = modes_of(line, MODE_COUNT)
-            shapes = modes.at(self.low, self.order)
-            self._shapes[line] = shapes if self.high is None else modes.at(self.high, self.order) - shapes
+            asked = modes.at(self.low, self.order) if self.high is None else modes.over(self.low, self.high)
+            self._shapes[line] = asked
         return self._shapes[line]
 
     def profile(self, line: Line, profiles: Profiles) -> FloatArray:
@@ -67,7 +67,8 @@ class TimeResponse:
     """Answer of a line to its drive.
 
     total: shape (n, n_times, n_profiles). initial: what it is just after time 0, shape (n, n_profiles): the profile,
-    0 on a held end and for slopes on any end, and zero for a driven end. departure: total less initial, with digits of its own.
+    0 on a held end and for slopes on any end, and zero for a driven end. departure: total less initial, with digits
+    of its own.
     """
 
     total: FloatArray
@@ -84,6 +85,11 @@ def respond(line: Line, drive: Drive, places: Places, times: FloatArray) -> Time
     if isinstance(drive, WallDrive):
         initial = np.zeros((places.low.size, 1))
         early = _early_wall(line, drive, places, root_time)
+    elif drive.is_constant and line.film_low == line.film_high == 0.0:
+        # An even profile between insulated ends stays as it is, exactly.
+        initial = places.initial(line, drive)
+        total[:] = initial[:, None, :]
+        return TimeResponse(total, np.zeros_like(total), initial)
     elif count == 0:
         initial = places.initial(line, drive)
         early = np.zeros((places.low.size, 0, columns))
@@ -134,9 +140,8 @@ def _early_slope(line: Line, drive: Profiles, places: Places, root_time: FloatAr
 
 def _late(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
     modes = modes_of(line, MODE_COUNT)
-    shapes = places.mode_shapes(line)
     decay = np.exp(-np.outer(modes.rates, times))
     strengths = eigen_integrals(line, drive, MODE_COUNT)
     # One matrix product for all profiles: (n, modes) times (modes, times x profiles).
     driven = (decay[:, :, None] * strengths[:, None, :]).reshape(MODE_COUNT, -1)
-    return (shapes @ driven).reshape(places.low.size, times.size, strengths.shape[1])
+    return (places.mode_shapes(line) @ driven).reshape(places.low.size, times.size, strengths.shape[1])
