@@ -23,8 +23,8 @@ WIDEST = 1000
 # What the reference itself may be off, of the span and of span times k / distance (`test_reference.py`).
 REFERENCE_ERROR = 1e-22
 
-# STILLFIELD_BOUND_SEEDS=400 runs as many random bodies; the default keeps to about half a minute.
-SEEDS = range(int(os.environ.get("STILLFIELD_BOUND_SEEDS", "16")))
+# BOUND_SEEDS=400 runs as many random bodies; the default keeps to about half a minute.
+SEEDS = range(int(os.environ.get("BOUND_SEEDS", "16")))
 
 PAD = Cells(0.0, ((0.25, 0.5, 0.25, 0.75, 2.0),))
 DRAIN = Cells(0.0, ((0.5, 0.75, 0.25, 0.75, -2.0),))
@@ -47,13 +47,19 @@ SPECIAL_CASES: dict[str, tuple[Case, tuple[Place, ...]]] = {
         ((0.3, 0.4, 0.5), (0.9, 0.1, 0.0)),
     ),
     "one face driven, five films of Biot number 1e9": (
-        Case((1.0, 1.0, 1.0), (1.0, 2.0, 0.5),
-             {**dict.fromkeys(FACES, Wall("R", 0.0, 1e9)), "z_low": Wall("R", PAD, 1e9)}),
+        Case(
+            (1.0, 1.0, 1.0),
+            (1.0, 2.0, 0.5),
+            {**dict.fromkeys(FACES, Wall("R", 0.0, 1e9)), "z_low": Wall("R", PAD, 1e9)},
+        ),
         ((0.3, 0.4, 0.0), (0.25 + 1e-8, 0.5, 1e-6), (0.5, 0.5, 0.5)),
     ),
     "levels of some hundreds and a span of one": (
-        Case((1.0, 1.0, math.inf), (1.0, 1.0, 1.0),
-             walls(x_low=Wall("D", 300.0), x_high=Wall("R", 300.0, 2.0), z_low=Wall("D", 301.0))),
+        Case(
+            (1.0, 1.0, math.inf),
+            (1.0, 1.0, 1.0),
+            walls(x_low=Wall("D", 300.0), x_high=Wall("R", 300.0, 2.0), z_low=Wall("D", 301.0)),
+        ),
         ((0.3, 0.4, 1e-6), (0.5, 0.5, 0.5), (0.5, 0.5, 9.0)),
     ),
 }

@@ -19,34 +19,52 @@ PAD = Cells(0.0, ((0.25, 0.75, 0.25, 0.5, 10.0),))
 
 CASES = {
     "held bump among cold faces": Case(
-        (1.0, 1.0, 1.0), (1.0, 1.0, 1.0),
+        (1.0, 1.0, 1.0),
+        (1.0, 1.0, 1.0),
         walls(x_low="D", x_high="D", y_low="D", y_high="D", z_low=Wall("D", BUMP), z_high="D"),
     ),
     "inflow pad over a film": Case(
-        (1.0, 1.0, 1.0), (2.0, 2.0, 2.0), walls(z_low=Wall("N", PAD), z_high=Wall("R", 5.0, 3.0)),
+        (1.0, 1.0, 1.0),
+        (2.0, 2.0, 2.0),
+        walls(z_low=Wall("N", PAD), z_high=Wall("R", 5.0, 3.0)),
     ),
     "films with mapped ambient and a held side": Case(
-        (1.0, 1.0, 1.0), (1.0, 1.0, 1.0),
+        (1.0, 1.0, 1.0),
+        (1.0, 1.0, 1.0),
         walls(x_low=Wall("D", 20.0), y_high=Wall("R", SLOPE, 4.0), z_high=Wall("R", SLOPE, 0.5)),
     ),
     "box source between cold sides": Case(
-        (1.0, 1.0, 1.0), (1.0, 1.0, 1.0), walls(x_low="D", x_high="D", z_low=Wall("R", 0.0, 2.0)),
+        (1.0, 1.0, 1.0),
+        (1.0, 1.0, 1.0),
+        walls(x_low="D", x_high="D", z_low=Wall("R", 0.0, 2.0)),
         (((0.25, 0.0, 0.25), (0.75, 0.5, 0.5), 8.0),),
     ),
     "orthotropic body with every kind of face": Case(
-        (1.0, 1.0, 1.0), (4.0, 1.0, 0.5),
-        walls(x_low="D", x_high=Wall("R", 1.0, 2.0), y_low=Wall("N", 1.5), z_low=Wall("N", PAD), z_high=Wall("R", 0.0, 3.0)),
+        (1.0, 1.0, 1.0),
+        (4.0, 1.0, 0.5),
+        walls(
+            x_low="D",
+            x_high=Wall("R", 1.0, 2.0),
+            y_low=Wall("N", 1.5),
+            z_low=Wall("N", PAD),
+            z_high=Wall("R", 0.0, 3.0),
+        ),
         (((0.0, 0.0, 0.0), (1.0, 1.0, 1.0), 1.0),),
     ),
     "flat orthotropic plate": Case(
-        (4.0, 2.0, 0.25), (1.0, 2.0, 0.125),
-        walls(z_low=Wall("N", Cells(0.0, ((1.0, 2.0, 0.5, 1.0, 3.0),))), z_high=Wall("R", 0.0, 1.0), x_high="D"),
+        (4.0, 2.0, 0.25),
+        (1.0, 2.0, 0.125),
+        walls(
+            z_low=Wall("N", Cells(0.0, ((1.0, 2.0, 0.5, 1.0, 3.0),))), z_high=Wall("R", 0.0, 1.0), x_high="D"
+        ),
     ),
 }
 
 COARSE, FINE = (8, 8, 8), (16, 16, 16)
 # Fractions of the sides; all are nodes of both meshes.
-PLACES = np.array([(0.5, 0.5, 0.5), (0.25, 0.5, 0.125), (0.75, 0.25, 0.75), (0.5, 0.375, 0.0), (1.0, 0.75, 0.5)])
+PLACES = np.array(
+    [(0.5, 0.5, 0.5), (0.25, 0.5, 0.125), (0.75, 0.25, 0.75), (0.5, 0.375, 0.0), (1.0, 0.75, 0.5)]
+)
 
 
 @pytest.mark.parametrize("name", CASES)

@@ -29,7 +29,9 @@ SEEDS = st.integers(min_value=1000, max_value=10**6)
 BODIES = settings(max_examples=25, deadline=None, derandomize=True)
 
 
-def answer(case: Case, places: list[Place], with_flux: bool = False) -> tuple[Solution, NDArray[np.float64], float]:
+def answer(
+    case: Case, places: list[Place], with_flux: bool = False
+) -> tuple[Solution, NDArray[np.float64], float]:
     """Solution, potentials at places and their bound."""
     solution = solve(case.body())
     found = solution.field_at(np.array(places), tolerance=ACCURACY * scale(solution), with_flux=with_flux)
@@ -43,7 +45,9 @@ def scale(solution: Solution) -> float:
 
 def data_range(case: Case) -> float:
     """Largest size of any number given on a face that is a potential."""
-    return max((abs(v) for wall in case.walls.values() if wall.kind != "N" for v in _numbers(wall.data)), default=0.0)
+    return max(
+        (abs(v) for wall in case.walls.values() if wall.kind != "N" for v in _numbers(wall.data)), default=0.0
+    )
 
 
 def _numbers(data: Data) -> list[float]:
@@ -174,7 +178,9 @@ def flow_scale(solution: Solution, case: Case) -> float:
     """Span times the largest conductance of the body from face to face."""
     lengths = [length if math.isfinite(length) else max(case.size[:2]) for length in case.size]
     volume = math.prod(lengths)
-    return solution.span * max(k * volume / length**2 for k, length in zip(case.conductivity, lengths, strict=True))
+    return solution.span * max(
+        k * volume / length**2 for k, length in zip(case.conductivity, lengths, strict=True)
+    )
 
 
 def mirror(case: Case, axis: int) -> Case:
@@ -228,10 +234,14 @@ def test_fields_of_two_sets_of_data_add_up(seed: int) -> None:
     case = random_case(seed)
     places = list(hard_places(case, seed).values())
     other_walls = {
-        face: wall if wall.kind == "N" else replace(wall, data=0.25 * (i + 1)) for i, (face, wall) in
-        enumerate(case.walls.items())
+        face: wall if wall.kind == "N" else replace(wall, data=0.25 * (i + 1))
+        for i, (face, wall) in enumerate(case.walls.items())
     }
-    other = replace(case, walls={f: replace(w, data=0.0) if w.kind == "N" else w for f, w in other_walls.items()}, sources=())
+    other = replace(
+        case,
+        walls={f: replace(w, data=0.0) if w.kind == "N" else w for f, w in other_walls.items()},
+        sources=(),
+    )
     total_walls = {
         face: replace(wall, data=change_data(wall.data, lambda v, more=other.walls[face].data: v + more))  # type: ignore[misc]
         for face, wall in case.walls.items()
@@ -269,12 +279,18 @@ def stretch(case: Case, factors: list[float]) -> Case:
         f, g = factors[across[0]], factors[across[1]]
         data = wall.data if wall.kind != "N" else change_data(wall.data, lambda v, s=factors[axis]: v / s)  # type: ignore[misc]
         if isinstance(data, Cells):
-            data = Cells(data.background, tuple((a / f, b / f, c / g, d / g, v) for a, b, c, d, v in data.patches))
+            data = Cells(
+                data.background, tuple((a / f, b / f, c / g, d / g, v) for a, b, c, d, v in data.patches)
+            )
         elif isinstance(data, Readings):
             data = Readings(tuple(p / f for p in data.first), tuple(q / g for q in data.second), data.table)
         made[face] = Wall(wall.kind, data, wall.coefficient / factors[axis])
     sources = tuple(
-        (tuple(c / f for c, f in zip(low, factors, strict=True)), tuple(c / f for c, f in zip(high, factors, strict=True)), q)
+        (
+            tuple(c / f for c, f in zip(low, factors, strict=True)),
+            tuple(c / f for c, f in zip(high, factors, strict=True)),
+            q,
+        )
         for low, high, q in case.sources
     )
     size = tuple(length / f for length, f in zip(case.size, factors, strict=True))
@@ -321,9 +337,16 @@ PADS: dict[str, tuple[Face, tuple[float, float, float, float], Face, tuple[float
 def test_rise_of_one_pad_by_another_is_mutual(name: str) -> None:
     first_face, first, second_face, second = PADS[name]
     rises = []
-    for driven, pad, read, where in ((first_face, first, second_face, second), (second_face, second, first_face, first)):
+    for driven, pad, read, where in (
+        (first_face, first, second_face, second),
+        (second_face, second, first_face, first),
+    ):
         area = (pad[1] - pad[0]) * (pad[3] - pad[2])
-        given_walls = {"y_high": Wall("R", 0.0, 3.0), "y_low": Wall("D"), driven: Wall("N", Cells(0.0, ((*pad, 1 / area),)))}
+        given_walls = {
+            "y_high": Wall("R", 0.0, 3.0),
+            "y_low": Wall("D"),
+            driven: Wall("N", Cells(0.0, ((*pad, 1 / area),))),
+        }
         case = Case((1.0, 0.8, 0.3), (1.0, 2.0, 0.5), walls(**given_walls))
         mean = solve(case.body()).mean(read, Rectangle(*where), tolerance=1e-10)
         assert mean.error_bound < 1e-9
@@ -348,10 +371,15 @@ def test_trilinear_field_is_reproduced_within_its_bounds(kinds: str, place: Plac
 
 
 def test_two_dimensional_part_is_exactly_flat() -> None:
-    case = Case((0.6, 1.0, 0.37), (52.0, 52.0, 52.0),
-                walls(y_low=Wall("D", 100.0), x_high=Wall("R", 0.0, 750.0), y_high=Wall("R", 0.0, 750.0)))
+    case = Case(
+        (0.6, 1.0, 0.37),
+        (52.0, 52.0, 52.0),
+        walls(y_low=Wall("D", 100.0), x_high=Wall("R", 0.0, 750.0), y_high=Wall("R", 0.0, 750.0)),
+    )
     heights = (0.0, 1e-7, 0.1, 0.2, 0.37)
-    found = solve(case.body()).field_at(np.array([(0.3, 0.2, z) for z in heights]), tolerance=1e-7, with_flux=True)
+    found = solve(case.body()).field_at(
+        np.array([(0.3, 0.2, z) for z in heights]), tolerance=1e-7, with_flux=True
+    )
     assert found.flux is not None
     assert (found.flux[2] == 0.0).all()
     assert np.ptp(found.potential) <= ROUNDING * 100
@@ -390,8 +418,11 @@ def test_flow_through_parallel_planes_is_the_same_between_insulated_sides() -> N
 
 
 def test_parts_of_a_face_add_up_to_the_face() -> None:
-    case = Case((1.0, 1.0, 0.5), (1.0, 2.0, 0.5), walls(z_low=Wall("R", Cells(1.0, ((0.2, 0.5, 0.1, 0.5, 4.0),)), 2.0),
-                                                        x_low=Wall("R", 0.5, 3.0)))
+    case = Case(
+        (1.0, 1.0, 0.5),
+        (1.0, 2.0, 0.5),
+        walls(z_low=Wall("R", Cells(1.0, ((0.2, 0.5, 0.1, 0.5, 4.0),)), 2.0), x_low=Wall("R", 0.5, 3.0)),
+    )
     solution = solve(case.body())
     parts = [Rectangle(0.0, 0.3, 0.0, 1.0), Rectangle(0.3, 1.0, 0.0, 0.4), Rectangle(0.3, 1.0, 0.4, 1.0)]
     totals = [solution.face_total("z_low", part, tolerance=1e-11) for part in parts]

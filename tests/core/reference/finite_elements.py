@@ -33,7 +33,9 @@ def data_at(data: Data, first: FloatArray, second: FloatArray) -> FloatArray:
         return values
     if isinstance(data, (int, float)):
         return np.full(np.shape(first), float(data))
-    table = RegularGridInterpolator((data.first, data.second), np.array(data.table), bounds_error=False, fill_value=None)
+    table = RegularGridInterpolator(
+        (data.first, data.second), np.array(data.table), bounds_error=False, fill_value=None
+    )
     return np.asarray(table(np.stack([first, second], axis=-1)))
 
 
@@ -71,7 +73,9 @@ def solve_by_finite_elements(case: Case, cells: tuple[int, int, int]) -> Callabl
             for node, value in zip(nodes, values, strict=True):
                 held.setdefault(int(node), []).append(float(value))
             continue
-        facets = mesh.facets_satisfying(lambda x, a=axis, at=place: np.abs(x[a] - at) < ON_FACE * case.size[a])
+        facets = mesh.facets_satisfying(
+            lambda x, a=axis, at=place: np.abs(x[a] - at) < ON_FACE * case.size[a]
+        )
         on_face = FacetBasis(mesh, element, facets=facets)
         factor = 1.0 if wall.kind == "N" else wall.coefficient
 

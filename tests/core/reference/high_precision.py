@@ -100,12 +100,17 @@ def hats(places: Sequence[float]) -> tuple[Profile, ...]:
     return tuple(found)
 
 
-def split_data(data: Data, extent: tuple[float, float]) -> tuple[tuple[Profile, ...], tuple[Profile, ...], dict]:
+def split_data(
+    data: Data, extent: tuple[float, float]
+) -> tuple[tuple[Profile, ...], tuple[Profile, ...], dict]:
     """A map as sum of coefficient[i, j] * first[i](p) * second[j](q)."""
     if isinstance(data, (int, float)):
         return (indicator(0, extent[0]),), (indicator(0, extent[1]),), {(0, 0): arithmetic.mpf(data)}
     if isinstance(data, Cells):
-        edges = [sorted({0.0, extent[k], *(p[i] for p in data.patches for i in (2 * k, 2 * k + 1))}) for k in (0, 1)]
+        edges = [
+            sorted({0.0, extent[k], *(p[i] for p in data.patches for i in (2 * k, 2 * k + 1))})
+            for k in (0, 1)
+        ]
         bases = [tuple(indicator(*pair) for pair in zip(edge[:-1], edge[1:], strict=True)) for edge in edges]
         table = {}
         for i, p in enumerate(edges[0][:-1]):
@@ -256,7 +261,9 @@ class HighPrecision:
         axis = drive.axis
         assert axis is not None
         unit: Response = ([ONE], [ZERO])
-        local = contract(drive.terms, [unit if i == axis else f.local() for i, f in enumerate(drive.factors)])[0]
+        local = contract(
+            drive.terms, [unit if i == axis else f.local() for i, f in enumerate(drive.factors)]
+        )[0]
         if constant and axis == 2:
             local -= constant[0]
         inward = -local * (wall.film if wall.end == "R" else ONE) / wall.line.conductivity

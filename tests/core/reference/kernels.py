@@ -15,12 +15,15 @@ at the end of a half line the reflected responses need one function more,
 
 from __future__ import annotations
 
+from typing import Any, TypeAlias
+
 import mpmath
 
 # 45 digits leave more than 20 after the worst cancellation: a film of Biot number 1e-9 at a distance of 1e-8 sides.
 arithmetic = mpmath.mp.clone()
 arithmetic.dps = 45
-Number = mpmath.mpf
+# mpmath carries no types; the name says what is meant.
+Number: TypeAlias = Any
 
 ZERO = arithmetic.mpf(0)
 ONE = arithmetic.mpf(1)

@@ -140,12 +140,18 @@ class Line:
         def rough(angle: float) -> float:
             total = 0.0
             for end, film in ((self.low, low), (self.high, high)):
-                total += math.atan2(float(film * length), angle) if end == "R" else (math.pi / 2) * (end == "D")
+                total += (
+                    math.atan2(float(film * length), angle) if end == "R" else (math.pi / 2) * (end == "D")
+                )
             return angle - index * math.pi - total
 
         if "R" not in (self.low, self.high):
-            return (index * arithmetic.pi + self._angle(self.low, low, ONE) + self._angle(self.high, high, ONE)) / length
-        start = brentq(rough, max(index * math.pi, 1e-300), (index + 1) * math.pi + 1e-9, xtol=1e-300, rtol=1e-15)
+            return (
+                index * arithmetic.pi + self._angle(self.low, low, ONE) + self._angle(self.high, high, ONE)
+            ) / length
+        start = brentq(
+            rough, max(index * math.pi, 1e-300), (index + 1) * math.pi + 1e-9, xtol=1e-300, rtol=1e-15
+        )
         beta = arithmetic.mpf(start) / length
         for _ in range(4):
             miss = beta * length - index * arithmetic.pi
@@ -225,7 +231,11 @@ class ProfileResponse:
             value, slope = mode.at(self.place)
             parts = [mode.projection(f, self.line.length) / mode.squared_norm for f in self.profiles]
             self._weights.append(
-                (self.line.conductivity * mode.beta**2, [c * value for c in parts], [c * slope for c in parts])
+                (
+                    self.line.conductivity * mode.beta**2,
+                    [c * value for c in parts],
+                    [c * slope for c in parts],
+                )
             )
         return self._weights[index]
 
@@ -281,7 +291,10 @@ class WallResponse:
         else:
             H = self.film / k
             w = spread.film(z, H)
-            value, inward = 2 * self.film * (s0 - H * w), 2 * self.film * (H * s0 - H * H * w - z * s0 / (2 * T))
+            value, inward = (
+                2 * self.film * (s0 - H * w),
+                2 * self.film * (H * s0 - H * H * w - z * s0 / (2 * T)),
+            )
         return value, -inward if self.at_high else inward
 
     def _by_modes(self, time: Number) -> tuple[Number, Number]:

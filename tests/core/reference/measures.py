@@ -61,7 +61,8 @@ def _mean(quantity: Quantity) -> float:
     solution = solution_of(quantity)
     rectangle = quantity.details.get("rectangle")
     return solution.mean(
-        quantity.details["face"], None if rectangle is None else Rectangle(*rectangle),
+        quantity.details["face"],
+        None if rectangle is None else Rectangle(*rectangle),
         tolerance=ACCURACY * solution.span,
     ).value
 
@@ -137,10 +138,14 @@ def _corner_contacts(quantity: Quantity) -> float:
 
 def _corner_relation(quantity: Quantity) -> float:
     long, short = quantity.details["sides"]
-    return math.exp(-math.pi * _corner_resistance(long, short)) + math.exp(-math.pi * _corner_resistance(short, long))
+    return math.exp(-math.pi * _corner_resistance(long, short)) + math.exp(
+        -math.pi * _corner_resistance(short, long)
+    )
 
 
-def _pad_on_cube(side: float, length: float, width: float) -> tuple[Solution, tuple[float, float, float, float]]:
+def _pad_on_cube(
+    side: float, length: float, width: float
+) -> tuple[Solution, tuple[float, float, float, float]]:
     middle = side / 2
     where = (middle - length / 2, middle + length / 2, middle - width / 2, middle + width / 2)
     cold = dict.fromkeys(("x_low", "x_high", "y_low", "y_high", "z_high"), Wall("D"))

@@ -50,9 +50,7 @@ class Quantity:
 def published_quantities() -> tuple[Quantity, ...]:
     """Everything in published.json."""
     document = json.loads(Path(__file__).with_name("published.json").read_text(encoding="utf-8"))
-    return tuple(
-        _quantity(case, quantity) for case in document["cases"] for quantity in case["quantities"]
-    )
+    return tuple(_quantity(case, quantity) for case in document["cases"] for quantity in case["quantities"])
 
 
 def _quantity(case: Mapping[str, Any], quantity: Mapping[str, Any]) -> Quantity:
@@ -65,7 +63,9 @@ def _quantity(case: Mapping[str, Any], quantity: Mapping[str, Any]) -> Quantity:
         quantity["how"],
         quantity,
         _case(case["body"], quantity) if "body" in case else None,
-        None if printed is None else Printed(printed["value"], printed["as"], printed["tolerance"], printed["agrees"]),
+        None
+        if printed is None
+        else Printed(printed["value"], printed["as"], printed["tolerance"], printed["agrees"]),
         None if value is None else float(value),
     )
 
@@ -79,7 +79,9 @@ def _case(body: Mapping[str, Any], quantity: Mapping[str, Any]) -> Case:
     source = float(body["source"])
     whole = ((0.0, 0.0, 0.0), (size[0], size[1], size[2]), source)
     return Case(
-        (size[0], size[1], size[2]), tuple(map(float, body["conductivity"])), walls,  # type: ignore[arg-type]
+        (size[0], size[1], size[2]),
+        tuple(map(float, body["conductivity"])),
+        walls,  # type: ignore[arg-type]
         (whole,) if source else (),
     )
 

@@ -81,7 +81,10 @@ def _map(random: np.random.Generator, extent: tuple[float, float], strength: flo
 
 
 def _sources(
-    random: np.random.Generator, size: Sequence[float], lengths: Sequence[float], conductivity: Sequence[float]
+    random: np.random.Generator,
+    size: Sequence[float],
+    lengths: Sequence[float],
+    conductivity: Sequence[float],
 ) -> tuple[tuple[Place, Place, float], ...]:
     if random.random() > 0.3:
         return ()

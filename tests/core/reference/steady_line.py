@@ -33,7 +33,9 @@ class _Particular:
         return -total / self.line.conductivity
 
 
-def steady(line: Line, source: Profile, place: Number, low_drive: Number, high_drive: Number) -> tuple[Number, Number]:
+def steady(
+    line: Line, source: Profile, place: Number, low_drive: Number, high_drive: Number
+) -> tuple[Number, Number]:
     """V and V' at a place for a source and end data (held value, inflow or ambient), both ends together."""
     if line.is_insulated:
         mean = (source.integral(line.length) + low_drive + high_drive) / line.length
@@ -62,11 +64,20 @@ def _constants(
         return -particular.integral() / L - gradient * L / 2, gradient
     end, end_slope = particular.at(L)
     rows = {
-        "low": {"D": (ONE, ZERO, low_drive), "N": (ZERO, -k, low_drive),
-                "R": (line.low_film, -k, line.low_film * low_drive)},
-        "high": {"D": (ONE, L, high_drive - end), "N": (ZERO, k, high_drive - k * end_slope),
-                 "R": (line.high_film, line.high_film * L + k,
-                       line.high_film * (high_drive - end) - k * end_slope)},
+        "low": {
+            "D": (ONE, ZERO, low_drive),
+            "N": (ZERO, -k, low_drive),
+            "R": (line.low_film, -k, line.low_film * low_drive),
+        },
+        "high": {
+            "D": (ONE, L, high_drive - end),
+            "N": (ZERO, k, high_drive - k * end_slope),
+            "R": (
+                line.high_film,
+                line.high_film * L + k,
+                line.high_film * (high_drive - end) - k * end_slope,
+            ),
+        },
     }
     a, b, r = rows["low"][line.low]
     c, d, s = rows["high"][line.high]

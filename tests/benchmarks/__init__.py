@@ -1,0 +1,1 @@
+"""Measured ratios of one run: `python3 -m tests.benchmarks`."""
