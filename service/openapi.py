@@ -64,6 +64,19 @@ def body_examples(path: str) -> dict[str, Example]:
     }
 
 
+def answer_examples(path: str) -> dict[str, Any]:
+    """The answers to the example requests of one call, as content of a response."""
+    return {
+        "application/json": {
+            "examples": {
+                name: {"summary": example["summary"], "value": example["answer"]}
+                for name, example in load_examples().items()
+                if example["path"] == path
+            }
+        }
+    }
+
+
 def error_responses(*statuses: int) -> dict[int | str, dict[str, Any]]:
     """Descriptions of error answers, as problem documents only."""
     return {
@@ -75,13 +88,14 @@ def error_responses(*statuses: int) -> dict[int | str, dict[str, Any]]:
     }
 
 
-def answer_responses(model: type[BaseModel]) -> dict[int | str, dict[str, Any]]:
+def answer_responses(path: str, model: type[BaseModel]) -> dict[int | str, dict[str, Any]]:
     """Descriptions of the answers of a call that takes a question."""
     return {
         200: {
             "model": model,
             "description": "The answer. `ETag` names its content, `Server-Timing` tells where the time went.",
             "content": {
+                **answer_examples(path),
                 ARRAYS: {
                     "schema": {
                         "type": "string",
@@ -90,7 +104,7 @@ def answer_responses(model: type[BaseModel]) -> dict[int | str, dict[str, Any]]:
                         "(numpy.load); the entry `answer` is the JSON with the name of an entry in place of "
                         "each array. NaN stands for null.",
                     }
-                }
+                },
             },
         },
         **error_responses(400, 406, 413, 415, 422, 503),
@@ -117,6 +131,9 @@ def _document(app: FastAPI) -> dict[str, Any]:
         routes=app.routes,
         tags=app.openapi_tags,
     )
+    for item in document["paths"].values():
+        for operation in item.values():
+            _drop_stock_errors(operation["responses"])
     schemas = document["components"]["schemas"]
     # The stock error documents: ours are declared on every call.
     for name in ("HTTPValidationError", "ValidationError"):
@@ -125,3 +142,9 @@ def _document(app: FastAPI) -> dict[str, Any]:
     schemas.update(details.pop("$defs"))
     schemas["ProblemDetails"] = details
     return document
+
+
+def _drop_stock_errors(responses: dict[str, Any]) -> None:
+    """Take out the framework's 422 where a call declares none of its own: its parameters cannot fail."""
+    if "application/json" in responses.get("422", {}).get("content", {}):
+        del responses["422"]

@@ -35,9 +35,9 @@ Interval = Annotated[
 class AxisIntervals(Model):
     """Intervals along some of the three axes; which of them are wanted depends on the face or plane."""
 
-    x: Interval | None = None
-    y: Interval | None = None
-    z: Interval | None = None
+    x: Interval | None = Field(None, description="From and to along x, lengths.", examples=[[5, 35]])
+    y: Interval | None = Field(None, description="From and to along y, lengths.", examples=[[10, 50]])
+    z: Interval | None = Field(None, description="From and to along z, lengths.", examples=[[10, "end"]])
 
 
 class Patch(AxisIntervals):
@@ -138,7 +138,7 @@ class SamplesMap(Model):
 class FormulaMap(Model):
     """A formula in the coordinates of the face. Refused for now."""
 
-    map: Literal["formula"]
+    map: Literal["formula"] = Field(description="Which kind of map this is.")
 
     @model_validator(mode="before")
     @classmethod

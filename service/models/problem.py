@@ -97,9 +97,15 @@ class Body(Model):
 class Source(Model):
     """A box inside the body with uniform generation per volume. Sources may overlap and then add up."""
 
-    x: Interval | None = Field(None, description="From and to along x; the whole length if left out.")
-    y: Interval | None = Field(None, description="From and to along y; the whole length if left out.")
-    z: Interval | None = Field(None, description="From and to along z; the whole length if left out.")
+    x: Interval | None = Field(
+        None, description="From and to along x; the whole length if left out.", examples=[[0, 40]]
+    )
+    y: Interval | None = Field(
+        None, description="From and to along y; the whole length if left out.", examples=[[0, 60]]
+    )
+    z: Interval | None = Field(
+        None, description="From and to along z; the whole length if left out.", examples=[[0, 20]]
+    )
     density: Quantity = Field(
         description="Generation per volume, in the declared unit `density`; negative for a sink.",
         examples=["2 MW/m^3"],

@@ -20,7 +20,7 @@ _CALL = Call(read_convergence, check_cost, answer_convergence)
 @router.post(
     "/convergence",
     summary="How the answer converges at some places",
-    responses=answer_responses(ConvergenceAnswer),
+    responses=answer_responses("/v1/convergence", ConvergenceAnswer),
     response_class=Response,
 )
 async def convergence(

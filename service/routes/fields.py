@@ -20,7 +20,7 @@ _CALL = Call(read_fields, check_cost, answer_fields)
 @router.post(
     "/fields",
     summary="Potential and flux on grids and at points",
-    responses=answer_responses(FieldsAnswer),
+    responses=answer_responses("/v1/fields", FieldsAnswer),
     response_class=Response,
 )
 async def fields(

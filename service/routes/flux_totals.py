@@ -20,7 +20,7 @@ _CALL = Call(read_totals, check_cost, answer_totals)
 @router.post(
     "/flux-totals",
     summary="Total flow through faces, patches and planes",
-    responses=answer_responses(FluxTotalsAnswer),
+    responses=answer_responses("/v1/flux-totals", FluxTotalsAnswer),
     response_class=Response,
 )
 async def flux_totals(

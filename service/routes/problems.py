@@ -11,7 +11,7 @@ from service import __version__
 from service.media import JSON, check_accepts_json
 from service.models.operation import ProblemAnswer
 from service.models.problem import Problem
-from service.openapi import body_examples, error_responses
+from service.openapi import answer_examples, body_examples, error_responses
 from service.refusals import UnknownProblem
 from service.request_body import StrictJsonRoute
 from service.state import State, state_of
@@ -31,6 +31,7 @@ router = APIRouter(prefix="/v1", tags=["problems"], route_class=StrictJsonRoute)
         201: {
             "model": ProblemAnswer,
             "description": "The problem is new and was stored; `Location` has its address.",
+            "content": answer_examples("/v1/problems"),
         },
         200: {"model": ProblemAnswer, "description": "The same problem was stored before."},
         **error_responses(400, 406, 413, 415, 422, 503, 507),

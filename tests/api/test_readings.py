@@ -75,7 +75,7 @@ def test_unreadable_csv_is_refused_with_row_and_column(text: str, sentence: str)
 
 
 def test_smooth_filling_reproduces_bilinear_readings() -> None:
-    """A table linear along each axis solves the discrete equation, so its missing entries are found exactly."""
+    """A table linear along each axis solves the discrete equation, so missing entries are found exactly."""
     first, second = [0.0, 1.0, 4.0, 9.0], [0.0, 2.0, 3.0, 7.0, 8.0]
     whole = 3.0 + 2.0 * np.array(first)[:, None] - np.array(second)[None, :]
     table = whole.copy()

@@ -1,0 +1,112 @@
+"""Every file in openapi_examples/ is sent and its answer compared.
+
+Two answers to one question agree within the error bounds both state. What is evidence and not answer, such as
+the number of terms that were summed, may change with every release and is compared in kind only.
+"""
+
+from __future__ import annotations
+
+from typing import Any
+
+import httpx
+import pytest
+
+from service.models.base import Model
+from service.models.convergence_answer import ConvergenceAnswer
+from service.models.fields_answer import FieldsAnswer
+from service.models.flux_totals_answer import FluxTotalsAnswer
+from service.models.operation import ProblemAnswer
+from service.openapi import load_examples
+
+pytestmark = pytest.mark.anyio
+
+EXAMPLES = load_examples()
+
+MODELS: dict[str, type[Model]] = {
+    "/v1/problems": ProblemAnswer,
+    "/v1/fields": FieldsAnswer,
+    "/v1/flux-totals": FluxTotalsAnswer,
+    "/v1/convergence": ConvergenceAnswer,
+}
+
+BOUNDS = ("error_bound", "flux_error_bound")
+EVIDENCE = {
+    *BOUNDS,
+    "agreement",
+    "agreement_bound",
+    "checked_places",
+    "terms_needed",
+    "time_nodes",
+    "time_steps",
+    "series",
+    "series_terms",
+    "products",
+    "cost_ratio",
+    "residual",
+}
+
+
+def check_alike(found: Any, expected: Any, where: str = "", bound: float = 0.0) -> None:
+    """Fail unless two answers have one shape and their numbers agree within the bounds stated beside them."""
+    if isinstance(expected, dict):
+        assert list(found) == list(expected), where
+        stated = [
+            bound,
+            *(largest(answer[name]) for answer in (found, expected) for name in BOUNDS if name in answer),
+        ]
+        for key in expected:
+            if key in EVIDENCE:
+                assert type(found[key]) is type(expected[key]), f"{where}/{key}"
+            else:
+                check_alike(found[key], expected[key], f"{where}/{key}", 2 * max(stated))
+    elif isinstance(expected, list):
+        assert len(found) == len(expected), where
+        for index, pair in enumerate(zip(found, expected, strict=True)):
+            check_alike(*pair, f"{where}/{index}", bound)
+    elif isinstance(expected, float):
+        # Coordinates and the like have no bound; they are the same up to rounding.
+        assert found == pytest.approx(expected, rel=1e-12, abs=bound), where
+    else:
+        assert found == expected, where
+
+
+def largest(bounds: Any) -> float:
+    """The largest of nested bounds, 0 where there is none."""
+    if isinstance(bounds, list):
+        return max(map(largest, bounds), default=0.0)
+    return float(bounds or 0.0)
+
+
+def test_there_are_examples_of_every_call_and_every_potential() -> None:
+    assert len(EXAMPLES) >= 8
+    assert {example["path"] for example in EXAMPLES.values()} == set(MODELS)
+    assert {example["method"] for example in EXAMPLES.values()} == {"POST"}
+    potentials = {
+        example["request"].get("problem", example["request"])["potential"] for example in EXAMPLES.values()
+    }
+    assert potentials == {"temperature", "electric_potential", "concentration", "hydraulic_head"}
+
+
+@pytest.mark.parametrize("name", EXAMPLES)
+async def test_example_is_answered_as_it_says(client: httpx.AsyncClient, name: str) -> None:
+    example = EXAMPLES[name]
+    assert set(example) == {"summary", "description", "method", "path", "request", "answer"}
+    answer = await client.post(example["path"], json=example["request"])
+    assert answer.status_code in (200, 201), answer.text
+    MODELS[example["path"]].model_validate(answer.json())
+    check_alike(answer.json(), example["answer"])
+
+
+def test_answers_that_differ_by_more_than_their_bounds_would_be_found() -> None:
+    expected = {"points": [{"at": [1.0], "potential": 5.0, "error_bound": 1e-6, "flux": {"x": None}}]}
+    check_alike(expected, expected)
+    within = {"points": [{"at": [1.0], "potential": 5.0 + 1.9e-6, "error_bound": 1e-6, "flux": {"x": None}}]}
+    check_alike(within, expected)
+    for other in (
+        {"at": [1.0], "potential": 5.0 + 3e-6, "error_bound": 1e-6, "flux": {"x": None}},
+        {"at": [1.1], "potential": 5.0, "error_bound": 1e-6, "flux": {"x": None}},
+        {"at": [1.0], "potential": 5.0, "error_bound": None, "flux": {"x": None}},
+        {"at": [1.0], "potential": 5.0, "error_bound": 1e-6, "flux": {"x": 0.0}},
+    ):
+        with pytest.raises(AssertionError):
+            check_alike({"points": [other]}, expected)
