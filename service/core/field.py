@@ -121,15 +121,15 @@ def _field(
     """
     tensor = len(shape) == 3
     potential, bound, nodes = _accurate(setting, columns, tolerance, tensor, keep_going)
-    edges = held_edges(setting.body, places, shape)
-    if edges is not None:
-        potential[edges.here] = edges.potential[edges.here]
+    edges = held_edges(setting.body, columns, tensor=tensor)
+    for edge in edges:
+        potential[edge.index] = edge.potential
     if not with_flux:
         return Field(potential, bound, None, None, nodes)
     flux, flux_bound = _flux(setting, columns, tolerance, tensor, keep_going)
-    if edges is not None:
-        conductivity = np.array(setting.body.conductivity)[:, None]
-        flux[:, edges.here] = -conductivity * edges.slopes[:, edges.here]
+    for edge in edges:
+        for component, conductivity, slope in zip(flux, setting.body.conductivity, edge.slopes, strict=True):
+            component[edge.index] = -conductivity * slope
     flux[:, has_no_finite_flux(setting.body, places, shape)] = np.nan
     return Field(potential, bound, flux, flux_bound, nodes)
 
@@ -149,8 +149,9 @@ def check_inside(body: Body, columns: Sequence[FloatArray]) -> None:
 
 def rough_potential(setting: Setting, columns: Sequence[FloatArray]) -> FloatArray:
     """Potential on a small grid to a few digits, for scales."""
-    values = (VALUE, VALUE, VALUE)
-    return _sum_of_parts(setting, columns, values, time_form.COARSEST_STEP, True, None)[0]
+    places = [Places(column, VALUE) for column in columns]
+    integrals = [time_form.integrate(setting.lines, part, places, time_form.COARSEST_STEP) for part in setting.parts]
+    return sum((time_form.on_grid(integral) for integral in integrals), start=np.zeros(()))
 
 
 def kept_rows() -> time_form.Rows:
@@ -182,9 +183,13 @@ def _accurate(
         return np.full(shape, setting.reference), 0.0, 0
     step = step_for(setting, tolerance)
     while True:
-        potential, bounds, nodes = _sum_of_parts(setting, columns, (VALUE, VALUE, VALUE), step, tensor, keep_going)
-        potential += setting.reference
-        bound = _largest(bounds, tensor) + STORED * float(np.abs(potential).max())
+        potential, bounds, nodes = _sum_of_parts(
+            setting, columns, (VALUE, VALUE, VALUE), step, tensor, keep_going, enough=0.5 * tolerance
+        )
+        if setting.reference != 0.0:
+            potential += setting.reference
+        largest = max(float(potential.max()), -float(potential.min()))
+        bound = _largest(bounds, tensor) + STORED * largest
         if bound <= tolerance:
             return potential, bound, nodes
         if step <= time_form.FINEST_STEP:
@@ -230,10 +235,15 @@ def _sum_of_parts(
     step: float,
     tensor: bool,
     keep_going: KeepGoing | None,
+    enough: float = 0.0,
 ) -> tuple[FloatArray, list[FloatArray], int]:
+    """Sum over the parts, its bounds (of each coordinate on a grid, of each point else), and the most nodes taken.
+
+    enough: a bound that needs no sharpening.
+    """
     shape = tuple(column.size for column in columns) if tensor else columns[0].shape
     places = [Places(column, order) for column, order in zip(columns, orders, strict=True)]
-    total = np.zeros(shape)
+    total: FloatArray | None = None
     bounds = [np.zeros(column.size) for column in columns] if tensor else [np.zeros(shape)]
     nodes, rows = 0, kept_rows()
     for part in setting.parts:
@@ -241,14 +251,17 @@ def _sum_of_parts(
             keep_going()
         integral = time_form.integrate(setting.lines, part, places, step, rows)
         nodes = max(nodes, integral.node_count)
+        answer = time_form.on_grid(integral) if tensor else time_form.at_points(integral)
+        total = answer if total is None else np.add(total, answer, out=total)
         if tensor:
-            total += time_form.on_grid(integral)
-            for bound, more in zip(bounds, time_form.bound_on_grid(integral), strict=True):
-                bound += more
+            quick = time_form.bound_everywhere(integral) if enough > 0.0 else math.inf
+            sharp = quick > enough / len(setting.parts)
+            more = time_form.bound_on_grid(integral) if sharp else (quick, quick, quick)
+            for bound, part_bound in zip(bounds, more, strict=True):
+                bound += part_bound
         else:
-            total += time_form.at_points(integral)
             bounds[0] += time_form.bound_at_points(integral)
-    return total, bounds, nodes
+    return np.zeros(shape) if total is None else total, bounds, nodes
 
 
 def _joined(pieces: list[Field]) -> Field:

@@ -88,7 +88,8 @@ def reach(line: Line, drive: Drive, place: float) -> float:
     """Scaled distance from a place to the nearest break of what drives its line, infinite where there is none."""
     if isinstance(drive, WallDrive):
         return float(wall_distance(line, np.array([place]), high=drive.high)[0])
-    knots, jumps, slope_jumps = breaks_of(line, drive)
+    breaks = breaks_of(line, drive)
+    knots, jumps, slope_jumps = breaks.knots, breaks.jumps, breaks.slope_jumps
     active = jumps.any(axis=1) | slope_jumps.any(axis=1)
     if line.film_low == 0.0:
         active[0] = slope_jumps[0].any()

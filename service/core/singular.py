@@ -16,6 +16,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import combinations
 
 import numpy as np
 from numpy.typing import NDArray
@@ -41,6 +42,9 @@ def local_data(face_map: FaceMap, p: FloatArray, q: FloatArray) -> LocalData:
     """Limits of the data from both sides along both axes; on the border of the face from inside only."""
     knots_p, knots_q, table = face_map.first_knots, face_map.second_knots, face_map.table
     p, q = np.broadcast_arrays(p, q)
+    if face_map.is_uniform:
+        nothing = np.zeros((1, *p.shape))
+        return LocalData(np.full((1, *p.shape), face_map.lowest), (nothing, nothing))
     values, slopes_p, slopes_q = [], [], []
     for side_p in ("left", "right"):
         i = np.clip(np.searchsorted(knots_p, p, side=side_p) - 1, 0, knots_p.size - 2)  # type: ignore[call-overload]
@@ -124,35 +128,58 @@ def _edge_mismatch(body: Body, held: Face, other: Face, places: Sequence[FloatAr
 
 
 @dataclass(frozen=True, eq=False)
-class HeldEdges:
-    """Places on an edge of two or three held faces, where each part of the problem shows only its own face.
+class HeldEdge:
+    """Places on an edge of two held faces, where each part of the problem shows only its own face.
 
-    here: which places. potential: mean of what the faces say. slopes: along x, y, z, from the faces' data.
+    index: of these places in the answer. potential: mean of what the held faces there say. slopes: along x, y, z,
+    from the faces' data.
     """
 
-    here: NDArray[np.bool_]
+    index: tuple[NDArray[np.intp], ...]
     potential: FloatArray
     slopes: FloatArray
 
 
-def held_edges(body: Body, places: Sequence[FloatArray], shape: tuple[int, ...]) -> HeldEdges | None:
-    """What held faces say on the edges where they meet, or None when no place is on one."""
-    faces = [face for face in body.present_faces if isinstance(body.faces[face], Held)]
-    on_face = {face: places[axis_of(face)] == _end(body, face) for face in faces}
-    faces = [face for face in faces if on_face[face].any()]
-    count = sum((np.broadcast_to(on_face[face], shape).astype(int) for face in faces), start=np.zeros(shape, dtype=int))
-    if not (count >= 2).any():
-        return None
-    potential, slopes, slope_count = np.zeros(shape), np.zeros((3, *shape)), np.zeros((3, *shape))
-    for face in faces:
+def held_edges(body: Body, columns: Sequence[FloatArray], *, tensor: bool) -> list[HeldEdge]:
+    """What held faces say where two or three of them meet.
+
+    columns: coordinates along x, y, z, read as a tensor product or side by side.
+    """
+    held = [face for face in body.present_faces if isinstance(body.faces[face], Held)]
+    found = []
+    for first, second in combinations(held, 2):
+        if axis_of(first) == axis_of(second):
+            continue
+        on_first, on_second = (columns[axis_of(face)] == _end(body, face) for face in (first, second))
+        if not (on_first.any() and on_second.any()):
+            continue
+        if tensor:
+            chosen = [np.arange(column.size) for column in columns]
+            chosen[axis_of(first)], chosen[axis_of(second)] = np.flatnonzero(on_first), np.flatnonzero(on_second)
+            index = np.ix_(*chosen)
+            places = [column[at] for column, at in zip(columns, index, strict=True)]
+        else:
+            index = np.nonzero(on_first & on_second)
+            places = [column[index] for column in columns]
+        found.append(HeldEdge(index, *_said_by(body, held, places)))
+    return found
+
+
+def _said_by(body: Body, held: Sequence[Face], places: Sequence[FloatArray]) -> tuple[FloatArray, FloatArray]:
+    """Mean potential and slopes of the data of all held faces that the places are on."""
+    shape = np.broadcast_shapes(*(place.shape for place in places))
+    count, potential = np.zeros(shape), np.zeros(shape)
+    slopes, slope_count = np.zeros((3, *shape)), np.zeros((3, *shape))
+    for face in held:
+        here = np.broadcast_to(places[axis_of(face)] == _end(body, face), shape)
         data = _face_data(body, face, places)
         assert data is not None
-        here = np.broadcast_to(on_face[face], shape)
-        potential = potential + np.where(here, data.values.mean(axis=0), 0.0)
+        count += here
+        potential += np.where(here, data.values.mean(axis=0), 0.0)
         for axis, slope in zip(axes_along(face), data.slopes, strict=True):
             slopes[axis] += np.where(here, slope.mean(axis=0), 0.0)
             slope_count[axis] += here
-    return HeldEdges(count >= 2, potential / np.maximum(count, 1), slopes / np.maximum(slope_count, 1))
+    return potential / count, slopes / slope_count
 
 
 def _end(body: Body, face: Face) -> float:

@@ -159,6 +159,16 @@ def at_points(integral: Integral) -> FloatArray:
     return total
 
 
+def bound_everywhere(integral: Integral) -> float:
+    """One error bound for all places, less sharp than the others and quick."""
+    total, relative = 0.0, step_error(integral.step, integral.power)
+    for product in integral.products:
+        most = [_widened(np.abs(f).max(axis=0, keepdims=True), integral.step) for f in product.factors]
+        total += relative * float(_weigh(most[0] * most[1] * most[2], product.weights)[0])
+        total += ROUNDING * float(_rounded(integral, product, most)[0])
+    return total
+
+
 def bound_on_grid(integral: Integral) -> Factors:
     """Error bounds for each coordinate of a grid, shape (n,) each; each of the three holds, so the least does."""
     bounds = [np.zeros(factor.shape[0]) for factor in integral.products[0].factors]
@@ -380,7 +390,8 @@ def _nearest_to_break(line: Line, drive: Drive, places: Places) -> tuple[float, 
     assert isinstance(drive, Profiles)
     if places.high is not None:
         return math.inf, 0.0
-    knots, jumps, slope_jumps = breaks_of(line, drive)
+    breaks = breaks_of(line, drive)
+    knots, jumps, slope_jumps = breaks.knots, breaks.jumps, breaks.slope_jumps
     has_jump, has_kink = jumps.any(axis=1), slope_jumps.any(axis=1)
     ends = [(0, line.film_low)] if line.is_endless else [(0, line.film_low), (-1, line.film_high)]
     for index, film in ends:

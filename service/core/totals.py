@@ -281,6 +281,8 @@ def _jump_along(
 
 def _side_value(face_map: FaceMap, index: int, place: float, at: FloatArray, *, from_above: bool) -> FloatArray:
     """Values along a line of a map where one axis is at `place`, from its upper or lower side."""
+    if face_map.is_uniform:
+        return np.full_like(at, face_map.lowest)
     fixed = np.full_like(at, place)
     p, q = (fixed, at) if index == 0 else (at, fixed)
     values = local_data(face_map, p, q).values

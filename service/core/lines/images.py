@@ -24,7 +24,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.special import erfc, erfcx
 
-from service.core.lines.line import Line, Order, WallDrive, breaks_of, wall_distance
+from service.core.lines.line import Breaks, Line, Order, WallDrive, breaks_of, wall_distance
 from service.core.maps import Profiles
 
 FloatArray = NDArray[np.float64]
@@ -128,34 +128,32 @@ def departure(
     line: Line, profiles: Profiles, coordinates: FloatArray, root_time: FloatArray, order: Order
 ) -> FloatArray:
     """u - f (order 0), its slope (-1) or antiderivative (1), shape (n_points, n_times, n_profiles)."""
-    knots, jumps, slope_jumps = breaks_of(line, profiles)
-    last = knots.size if line.is_endless else knots.size - 1
-    total = np.zeros((coordinates.size, root_time.size, profiles.n_profiles))
+    breaks = breaks_of(line, profiles)
+    last = breaks.knots.size if line.is_endless else breaks.knots.size - 1
     low = wall_distance(line, coordinates, high=False)[:, None]
-    total += _from_end(low, root_time, line.film_low, jumps[:1], slope_jumps[:1], order, high=False)
+    total = np.zeros((coordinates.size, root_time.size, profiles.n_profiles))
+    total += _from_end(low, root_time, line.film_low, breaks, 0, order)
     if not line.is_endless:
         high = wall_distance(line, coordinates, high=True)[:, None]
-        total += _from_end(high, root_time, line.film_high, jumps[last:], slope_jumps[last:], order, high=True)
+        total += _from_end(high, root_time, line.film_high, breaks, last, order)
     if last > 1:
-        inner = slice(1, last)
-        total += _from_inside(line, knots[inner], jumps[inner], slope_jumps[inner], coordinates, root_time, order)
+        total += _from_inside(line, breaks, slice(1, last), coordinates, root_time, order)
     return total
 
 
 def _from_end(
-    distance: FloatArray,
-    root_time: FloatArray,
-    film: float,
-    jump: FloatArray,
-    slope_jump: FloatArray,
-    order: Order,
-    *,
-    high: bool,
+    distance: FloatArray, root_time: FloatArray, film: float, breaks: Breaks, index: int, order: Order
 ) -> FloatArray | float:
     """What the break on an end sends out, together with its own image: J (g + rho) and S K."""
-    sign = -1.0 if order == 0 and not high else 1.0
-    total = _sum(lambda d, t: with_its_image(order, d, t, film), distance, root_time, sign * jump)
-    inward = -1.0 if high else 1.0
+    inward = 1.0 if index == 0 else -1.0
+    sign = -inward if order == 0 else 1.0
+    end = slice(index, index + 1)
+    total: FloatArray | float = 0.0
+    if film > 0.0:
+        total = _sum(lambda d, t: with_its_image(order, d, t, film), distance, root_time, sign * breaks.jumps[end])
+    if not breaks.has_slopes:
+        return total
+    slope_jump = breaks.slope_jumps[end]
     if order == 0:
         return total + _sum(lambda d, t: end_part(1, d, t, film), distance, root_time, slope_jump)
     if order == -1:
@@ -166,30 +164,28 @@ def _from_end(
 
 
 def _from_inside(
-    line: Line,
-    knots: FloatArray,
-    jumps: FloatArray,
-    slope_jumps: FloatArray,
-    coordinates: FloatArray,
-    root_time: FloatArray,
-    order: Order,
+    line: Line, breaks: Breaks, inner: slice, coordinates: FloatArray, root_time: FloatArray, order: Order
 ) -> FloatArray | float:
     """What breaks inside the line send out, and their images in both ends."""
+    knots, jumps, slope_jumps = breaks.knots[inner], breaks.jumps[inner], breaks.slope_jumps[inner]
     difference = (coordinates[:, None] - knots) * line.scale
     # On a jump the mean of both sides is meant.
     side, distance = np.sign(difference), np.abs(difference)
     jump_side, slope_side = (-side, None) if order == 0 else (None, -side)
-    total = _sum(lambda d, t: free(order, d, t), distance, root_time, jumps, jump_side)
-    total += _sum(lambda d, t: free(order + 1, d, t), distance, root_time, slope_jumps, slope_side)
-    if order == 1 and slope_jumps.any():
-        total += np.einsum("pb,t,br->ptr", side, 0.5 * root_time**2, slope_jumps)
     sign = -1.0 if order == 0 else 1.0
     low = wall_distance(line, coordinates, high=False)[:, None] + knots * line.scale
+    total = _sum(lambda d, t: free(order, d, t), distance, root_time, jumps, jump_side)
     total += _sum(lambda d, t: reflected(order, d, t, line.film_low), low, root_time, sign * jumps)
-    total += _sum(lambda d, t: reflected(order + 1, d, t, line.film_low), low, root_time, sign * slope_jumps)
-    if not line.is_endless:
-        high = wall_distance(line, coordinates, high=True)[:, None] + (line.length - knots) * line.scale
-        total += _sum(lambda d, t: reflected(order, d, t, line.film_high), high, root_time, jumps)
+    if breaks.has_slopes:
+        total += _sum(lambda d, t: free(order + 1, d, t), distance, root_time, slope_jumps, slope_side)
+        total += _sum(lambda d, t: reflected(order + 1, d, t, line.film_low), low, root_time, sign * slope_jumps)
+        if order == 1:
+            total += np.einsum("pb,t,br->ptr", side, 0.5 * root_time**2, slope_jumps)
+    if line.is_endless:
+        return total
+    high = wall_distance(line, coordinates, high=True)[:, None] + (line.length - knots) * line.scale
+    total += _sum(lambda d, t: reflected(order, d, t, line.film_high), high, root_time, jumps)
+    if breaks.has_slopes:
         total += _sum(lambda d, t: reflected(order + 1, d, t, line.film_high), high, root_time, -slope_jumps)
     return total
 
@@ -203,10 +199,8 @@ def _sum(
 ) -> FloatArray | float:
     """Sum over breaks of kernel times weight (times the side): distance (n_points, n_breaks) to (n_points, n_times, r).
 
-    Computed only where a front has arrived, and not at all for weights that are all zero.
+    Computed only where a front has arrived.
     """
-    if not weights.any():
-        return 0.0
     values = _where_arrived(kernel, distance[:, :, None], root_time)
     if side is not None:
         values *= side[:, :, None]

@@ -188,7 +188,8 @@ def _waves(line: Line, profiles: Profiles, coordinates: FloatArray, gamma: Float
     A factor exp(-gamma s) changes by -gamma or 1 / -gamma from one order to the next where s grows with x, and by
     +gamma or 1 / gamma where it falls.
     """
-    knots, jumps, slope_jumps = breaks_of(line, profiles)
+    breaks = breaks_of(line, profiles)
+    knots, jumps, slope_jumps = breaks.knots, breaks.jumps, breaks.slope_jumps
     g = gamma[None, None, :]
     low_distance = wall_distance(line, coordinates, high=False)[:, None, None]
     low_knot = (knots * line.scale)[None, :, None]

@@ -79,17 +79,28 @@ def wall_distance(line: Line, coordinates: FloatArray, *, high: bool) -> FloatAr
     return (line.length - coordinates) * line.scale if high else coordinates * line.scale
 
 
-@lru_cache(maxsize=1024)
-def breaks_of(line: Line, profiles: Profiles) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Knots with the jumps of value and of slope that the profiles, zero outside the line, have there.
+@dataclass(frozen=True, eq=False)
+class Breaks:
+    """Knots with the jumps of value and of slope that profiles, zero outside their line, have there.
 
-    Returns knots in the caller's unit, shape (n_breaks,), jumps and slope jumps per scaled length, shape
-    (n_breaks, n_profiles); shared arrays, not to be written to. On a half-line the last piece ends nowhere and has no last break.
+    knots: in the caller's unit, shape (n_breaks,). jumps, slope_jumps: per scaled length, (n_breaks, n_profiles).
+    has_slopes: whether any slope jumps. On a half-line the last piece ends nowhere and has no last break.
     """
+
+    knots: FloatArray
+    jumps: FloatArray
+    slope_jumps: FloatArray
+    has_slopes: bool
+
+
+@lru_cache(maxsize=1024)
+def breaks_of(line: Line, profiles: Profiles) -> Breaks:
+    """The breaks of profiles on a line."""
     slopes = profiles.slopes / line.scale
     nothing = np.zeros((1, profiles.n_profiles))
     jumps = np.vstack([profiles.left, nothing]) - np.vstack([nothing, profiles.right])
     slope_jumps = np.vstack([slopes, nothing]) - np.vstack([nothing, slopes])
+    knots = np.minimum(profiles.knots, line.length)
     if line.is_endless:
-        return profiles.knots[:-1], jumps[:-1], slope_jumps[:-1]
-    return np.minimum(profiles.knots, line.length), jumps, slope_jumps
+        knots, jumps, slope_jumps = knots[:-1], jumps[:-1], slope_jumps[:-1]
+    return Breaks(knots, jumps, slope_jumps, bool(slope_jumps.any()))

@@ -54,7 +54,9 @@ class Places:
 
     def initial(self, line: Line, profiles: Profiles) -> FloatArray:
         """What the line answers just after time 0: the profile, but 0 on a held end and for a slope on any end."""
-        values = self.profile(line, profiles)
+        return self._settled(line, self.profile(line, profiles).copy())
+
+    def _settled(self, line: Line, values: FloatArray) -> FloatArray:
         if self.high is None:
             for place, film in ((0.0, line.film_low), (line.length, line.film_high)):
                 if film == math.inf or self.order == -1:
@@ -95,10 +97,9 @@ def respond(line: Line, drive: Drive, places: Places, times: FloatArray) -> Time
         early = np.zeros((places.low.size, 0, columns))
     else:
         initial = places.initial(line, drive)
-        profile = places.profile(line, drive)
         early = _early_departure(line, drive, places, root_time)
         # Where the line leaves its profile at once, the departure is from what it becomes.
-        early = np.where((profile == initial)[:, None, :], early, early + (profile - initial)[:, None, :])
+        early += (places.profile(line, drive) - initial)[:, None, :]
     departure = np.empty_like(total)
     departure[:, :count] = early
     total[:, :count] = early + initial[:, None, :]
