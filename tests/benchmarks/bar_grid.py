@@ -1,4 +1,4 @@
-"""A grid of a million points on a semi-infinite bar, from a millionth of a width to ten widths from its hot end."""
+"""A million points on a semi-infinite bar, from a millionth of a width to ten widths from its end."""
 
 from __future__ import annotations
 
@@ -55,11 +55,13 @@ def against_finite_differences() -> list[str]:
     exact = solve(BAR.body()).field(Grid(x, x, z), tolerance=1e-12, with_flux=False).potential
     other_error = float(np.abs(differences - exact).max())
     return [
-        f"101 x 101 x 101 grid, z from 1e-6 to 10 widths, tolerance {TOLERANCE:g}: {core_time * 1e3:.1f} ms, "
-        f"bound {found.potential_bound:.1e}, worst error at {CHECKED} places {core_error:.1e}, {found.node_count} nodes",
-        f"7-point finite differences + algebraic multigrid, {differences.size:,} unknowns: {other_time:.2f} s, "
-        f"worst error at its own nodes {other_error:.1e}",
-        f"time ratio {other_time / core_time:.0f} (wanted 150), error ratio {other_error / core_error:.1e} (wanted 1e8)",
+        f"101 x 101 x 101 grid, z from 1e-6 to 10 widths, tolerance {TOLERANCE:g}: {core_time * 1e3:.1f} ms",
+        f"its bound {found.potential_bound:.1e}, worst error at {CHECKED} places {core_error:.1e}, "
+        f"{found.node_count} nodes",
+        f"7-point finite differences + algebraic multigrid, {differences.size:,} unknowns: "
+        f"{other_time:.2f} s, worst error at its own nodes {other_error:.1e}",
+        f"time ratio {other_time / core_time:.0f} (wanted 150 or more), "
+        f"error ratio {other_error / core_error:.1e} (wanted 1e8 or more)",
     ]
 
 
@@ -70,7 +72,8 @@ def against_one_product() -> list[str]:
     left = random.random((101 * 101, found.node_count))
     right = random.random((found.node_count, 101))
     core_time, product_time = shortest(field_on_grid, 9), shortest(lambda: left @ right, 9)
+    shapes = f"({left.shape[0]} x {left.shape[1]}) @ ({right.shape[0]} x {right.shape[1]})"
     return [
-        f"one ({left.shape[0]} x {left.shape[1]}) @ ({right.shape[0]} x 101) product: {product_time * 1e3:.1f} ms; "
-        f"the field: {core_time * 1e3:.1f} ms; ratio {core_time / product_time:.1f} (wanted at most 5)"
+        f"one {shapes} product {product_time * 1e3:.1f} ms, the field {core_time * 1e3:.1f} ms: "
+        f"ratio {core_time / product_time:.1f} (wanted at most 5)"
     ]

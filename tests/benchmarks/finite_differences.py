@@ -22,7 +22,8 @@ def second_difference(count: int) -> sparse.dia_matrix:
 
 
 def solve_bar() -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Unit square bar, sides at 0, end at 1, cut off at 3.3 widths: the field at inner nodes, and their x and z.
+    """Unit square bar, sides at 0, end at 1, cut off at 3.3 widths: the field at inner nodes, and their x
+    and z.
 
     The cut costs exp(-3.3 pi sqrt 2) = 4e-7. Shape of the field (49, 49, 164).
     """

@@ -134,7 +134,7 @@ def against_empty_route() -> list[str]:
         }
     again, empty, ready = times["/v1/fields"], times["/empty"], times["/ready"]
     return [
-        f"41 x 41 plane asked the first time {first * 1e3:.1f} ms, again {again * 1e3:.2f} ms ({len(answer.content)} bytes); "
-        f"a route that returns the array {empty * 1e3:.2f} ms, ready bytes {ready * 1e3:.2f} ms",
+        f"41 x 41 plane: first {first * 1e3:.1f} ms, again {again * 1e3:.2f} ms, {len(answer.content)} bytes",
+        f"a route that returns the array {empty * 1e3:.2f} ms, one with ready bytes {ready * 1e3:.2f} ms",
         f"ratio to the route that returns the array {again / empty:.2f} (wanted at most 3)",
     ]

@@ -17,9 +17,8 @@ def with_points_and_tolerance() -> list[str]:
         axis = np.linspace(0.0, 1.0, count)
         grid = Grid(axis, axis, np.geomspace(1e-6, 10.0, count))
         times[count] = shortest(lambda grid=grid: field_on_grid(grid), 3)  # type: ignore[misc]
-        lines.append(
-            f"{count**3:>9,} points: {times[count] * 1e3:8.2f} ms, {times[count] / count**3 * 1e9:7.1f} ns a point"
-        )
+        each = times[count] / count**3
+        lines.append(f"{count**3:>9,} points: {times[count] * 1e3:8.2f} ms, {each * 1e9:7.1f} ns a point")
     growth = np.log(times[161] / times[81]) / np.log(161**3 / 81**3)
     lines.append(f"time grows like the number of points to the power {growth:.2f} (linear is 1)")
     spent = {}

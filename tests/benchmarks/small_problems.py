@@ -42,6 +42,6 @@ def in_sequence() -> list[str]:
         answer(index)
     elapsed, processor = time.perf_counter() - begin, time.process_time() - processor
     return [
-        f"{COUNT} different film problems, 41 x 41 plane, tolerance 1e-9 of the span: {COUNT / elapsed:.0f} a second "
-        f"({COUNT / processor:.0f} per second of processor time; wanted 150)"
+        f"{COUNT} different film problems, 41 x 41 plane, tolerance 1e-9 of the span: "
+        f"{COUNT / elapsed:.0f} a second ({COUNT / processor:.0f} per second of processor time; wanted 150)"
     ]

@@ -1,7 +1,7 @@
 """The error bound is a bound, and not a wide one: random bodies against values of more than twenty digits.
 
-No value is further from the reference than its bound, and no bound is more than a thousand times the error unless it
-is below 1e-9 of the span of the data (issue of a certificate: met to the accuracy asked for).
+No value is further from the reference than its bound, and no bound is more than a thousand times the error
+unless it is below 1e-9 of the span of the data (issue of a certificate: met to the accuracy asked for).
 """
 
 from __future__ import annotations
@@ -66,7 +66,9 @@ SPECIAL_CASES: dict[str, tuple[Case, tuple[Place, ...]]] = {
 
 
 def scale_at(case: Case, place: Place) -> float:
-    """Largest k / distance, over faces and lines where data jump: what turns a difference of potential into a flux."""
+    """Largest k / distance, over faces and lines where data jump: what turns a difference of potential into
+    a flux.
+    """
     scales = [k / length for k, length in zip(case.conductivity, case.size, strict=True)]
     for axis, (k, length, c) in enumerate(zip(case.conductivity, case.size, place, strict=True)):
         distances = [abs(c - at) for at in (0.0, length, *jump_places(case, axis))]
@@ -86,7 +88,9 @@ def jump_places(case: Case, axis: int) -> list[float]:
 
 
 def check_against_reference(case: Case, place: Place, name: str) -> None:
-    """Value and flux at one place: neither further from the reference than its bound, nor the bound too wide."""
+    """Value and flux at one place: neither further from the reference than its bound, nor the bound too
+    wide.
+    """
     solution = solve(case.body())
     potential, flux = HighPrecision(case).potential_and_flux(place)
     found = solution.field_at(np.array([place]), tolerance=ACCURACY * solution.span, with_flux=True)

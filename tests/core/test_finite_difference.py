@@ -1,7 +1,7 @@
 """The core against finite elements on two meshes, which estimate their own error.
 
-The elements converge with the square of the mesh width, so the finer mesh is off by about a third of the difference
-between both; the core has to lie within the whole difference.
+The elements converge with the square of the mesh width, so the finer mesh is off by about a third of the
+difference between both; the core has to lie within the whole difference.
 """
 
 from __future__ import annotations

@@ -1,13 +1,12 @@
 """What physics demands of any field, on random bodies of the whole range.
 
-Each tolerance is the bound that the answers themselves carry: a claim fails when two answers that physics makes equal
-differ by more than both bounds allow. ROUNDING stands for what the comparison itself rounds.
+Each tolerance is the bound that the answers themselves carry: a claim fails when two answers that physics
+makes equal differ by more than both bounds allow. ROUNDING stands for what the comparison itself rounds.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
 from dataclasses import replace
 
 import numpy as np
@@ -17,9 +16,19 @@ from hypothesis import strategies as st
 from numpy.typing import NDArray
 
 from service.core import NoSteadyState, Rectangle, Solution, solve
-from service.core.problem import Face, opposite
-from tests.core.reference.cases import Case, Cells, Data, Readings, Wall, walls
+from service.core.problem import Face
+from tests.core.reference.cases import Case, Cells, Wall, walls
 from tests.core.reference.random_cases import Place, hard_places, random_case
+from tests.core.reference.transformations import (
+    change_data,
+    data_range,
+    mirror,
+    numbers_of,
+    shrink,
+    stretch,
+    triple,
+    value_on,
+)
 from tests.core.reference.trilinear import KINDS, PLACES, trilinear_case, trilinear_field
 
 ACCURACY = 1e-9
@@ -41,31 +50,6 @@ def answer(
 def scale(solution: Solution) -> float:
     """The span of the data, or one for a body all at one level."""
     return solution.span or 1.0
-
-
-def data_range(case: Case) -> float:
-    """Largest size of any number given on a face that is a potential."""
-    return max(
-        (abs(v) for wall in case.walls.values() if wall.kind != "N" for v in _numbers(wall.data)), default=0.0
-    )
-
-
-def _numbers(data: Data) -> list[float]:
-    if isinstance(data, Cells):
-        return [data.background, *(patch[4] for patch in data.patches)]
-    if isinstance(data, Readings):
-        return [value for row in data.table for value in row]
-    return [data]
-
-
-def change_data(data: Data, change: Callable[[float], float]) -> Data:
-    """The same map with every number changed."""
-    if isinstance(data, Cells):
-        patches = tuple((*patch[:4], change(patch[4])) for patch in data.patches)
-        return Cells(change(data.background), patches)
-    if isinstance(data, Readings):
-        return Readings(data.first, data.second, tuple(tuple(change(v) for v in row) for row in data.table))
-    return change(data)
 
 
 @BODIES
@@ -95,17 +79,6 @@ def test_conditions_of_the_faces_are_met(seed: int) -> None:
             assert abs(inflow - given_by_film) <= found.flux_bound[0] + slack
 
 
-def value_on(data: Data, place: list[float]) -> float:
-    """Data of a face at one place of it, by hand."""
-    if isinstance(data, Cells):
-        inside = [v for a, b, c, d, v in data.patches if a < place[0] < b and c < place[1] < d]
-        return inside[0] if inside else data.background
-    if isinstance(data, Readings):
-        rows = [float(np.interp(place[1], data.second, row)) for row in data.table]
-        return float(np.interp(place[0], data.first, rows))
-    return data
-
-
 @BODIES
 @given(SEEDS)
 def test_no_value_leaves_the_range_of_the_data_without_generation(seed: int) -> None:
@@ -114,7 +87,7 @@ def test_no_value_leaves_the_range_of_the_data_without_generation(seed: int) -> 
     made = {}
     for face, wall in case.walls.items():
         made[face] = wall if wall.kind != "N" else Wall("N")
-        given_levels += _numbers(made[face].data)
+        given_levels += numbers_of(made[face].data)
     case = replace(case, walls=made, sources=())
     _, values, bound = answer(case, list(hard_places(random_case(seed), seed).values()))
     assert values.max() <= max(given_levels) + bound
@@ -183,49 +156,17 @@ def flow_scale(solution: Solution, case: Case) -> float:
     )
 
 
-def mirror(case: Case, axis: int) -> Case:
-    """The body turned end for end along one axis."""
-    length = case.size[axis]
-    made = {}
-    for face, wall in case.walls.items():
-        across = [other for other in range(3) if other != "xyz".index(face[0])]
-        data = _mirror_data(wall.data, across.index(axis), length) if axis in across else wall.data
-        made[opposite(face) if axis not in across else face] = replace(wall, data=data)
-    sources = []
-    for low, high, density in case.sources:
-        new_low, new_high = list(low), list(high)
-        new_low[axis], new_high[axis] = length - high[axis], length - low[axis]
-        sources.append((tuple(new_low), tuple(new_high), density))
-    return replace(case, walls=made, sources=tuple(sources))
-
-
-def _mirror_data(data: Data, which: int, length: float) -> Data:
-    if isinstance(data, Cells):
-        patches = []
-        for patch in data.patches:
-            new = list(patch)
-            new[2 * which], new[2 * which + 1] = length - patch[2 * which + 1], length - patch[2 * which]
-            patches.append(tuple(new))
-        return Cells(data.background, tuple(patches))  # type: ignore[arg-type]
-    if isinstance(data, Readings):
-        axes = [data.first, data.second]
-        axes[which] = tuple(length - place for place in reversed(axes[which]))
-        table = np.flip(np.array(data.table), axis=which)
-        return Readings(axes[0], axes[1], tuple(tuple(float(v) for v in row) for row in table))
-    return data
-
-
 @BODIES
 @given(SEEDS, st.integers(min_value=0, max_value=1))
 def test_mirrored_body_has_the_mirrored_field(seed: int, axis: int) -> None:
     case = random_case(seed)
     places = [place for name, place in hard_places(case, seed).items() if name != "close to a jump line"]
-    mirrored = [(*place[:axis], case.size[axis] - place[axis], *place[axis + 1 :]) for place in places]
+    turned = [triple([*p[:axis], case.size[axis] - p[axis], *p[axis + 1 :]]) for p in places]
     solution, values, bound = answer(case, places)
-    _, turned, other_bound = answer(mirror(case, axis), mirrored)  # type: ignore[arg-type]
-    # Turning rounds the places by an ulp of the side, which matters next to a face in proportion to its nearness.
+    _, other, other_bound = answer(mirror(case, axis), turned)
+    # Turning rounds the places by an ulp of the side, which matters next to a face in proportion to nearness.
     slack = 1e-9 * scale(solution)
-    assert np.abs(values - turned).max() <= bound + other_bound + slack
+    assert np.abs(values - other).max() <= bound + other_bound + slack
 
 
 @BODIES
@@ -233,20 +174,12 @@ def test_mirrored_body_has_the_mirrored_field(seed: int, axis: int) -> None:
 def test_fields_of_two_sets_of_data_add_up(seed: int) -> None:
     case = random_case(seed)
     places = list(hard_places(case, seed).values())
-    other_walls = {
-        face: wall if wall.kind == "N" else replace(wall, data=0.25 * (i + 1))
-        for i, (face, wall) in enumerate(case.walls.items())
+    added = {
+        face: 0.0 if wall.kind == "N" else 0.25 * (i + 1) for i, (face, wall) in enumerate(case.walls.items())
     }
-    other = replace(
-        case,
-        walls={f: replace(w, data=0.0) if w.kind == "N" else w for f, w in other_walls.items()},
-        sources=(),
-    )
-    total_walls = {
-        face: replace(wall, data=change_data(wall.data, lambda v, more=other.walls[face].data: v + more))  # type: ignore[misc]
-        for face, wall in case.walls.items()
-    }
-    total = replace(case, walls=total_walls)
+    other = replace(case, walls={f: replace(w, data=added[f]) for f, w in case.walls.items()}, sources=())
+    both = {f: replace(w, data=change_data(w.data, 1.0, added[f])) for f, w in case.walls.items()}
+    total = replace(case, walls=both)
     answers = [answer(each, places) for each in (case, other, total)]
     difference = np.abs(answers[0][1] + answers[1][1] - answers[2][1]).max()
     rounding = ROUNDING * (data_range(total) + data_range(case) + max(scale(each[0]) for each in answers))
@@ -256,46 +189,17 @@ def test_fields_of_two_sets_of_data_add_up(seed: int) -> None:
 @BODIES
 @given(SEEDS)
 def test_stretched_axes_give_the_same_field(seed: int) -> None:
-    """Lengths over sqrt(k), flows and film coefficients over sqrt(k) of their axis: an isotropic body, same field.
+    """Lengths over sqrt(k), flows and film coefficients over sqrt(k) of their axis: an isotropic body, same
+    field.
 
     Powers of two keep the stretched numbers exact (Carslaw and Jaeger 1959, section 1.20).
     """
     case = random_case(seed)
     factors = [2.0 ** round(math.log2(math.sqrt(k))) for k in case.conductivity]
-    stretched = stretch(case, factors)
     places = list(hard_places(case, seed).values())
-    moved = [tuple(c / f for c, f in zip(place, factors, strict=True)) for place in places]
     solution, values, bound = answer(case, places)
-    _, other, other_bound = answer(stretched, moved)  # type: ignore[arg-type]
+    _, other, other_bound = answer(stretch(case, factors), [shrink(place, factors) for place in places])
     assert np.abs(values - other).max() <= bound + other_bound + ROUNDING * scale(solution)
-
-
-def stretch(case: Case, factors: list[float]) -> Case:
-    """Lengths along each axis divided by its factor, conductivities by its square."""
-    made = {}
-    for face, wall in case.walls.items():
-        axis = "xyz".index(face[0])
-        across = [other for other in range(3) if other != axis]
-        f, g = factors[across[0]], factors[across[1]]
-        data = wall.data if wall.kind != "N" else change_data(wall.data, lambda v, s=factors[axis]: v / s)  # type: ignore[misc]
-        if isinstance(data, Cells):
-            data = Cells(
-                data.background, tuple((a / f, b / f, c / g, d / g, v) for a, b, c, d, v in data.patches)
-            )
-        elif isinstance(data, Readings):
-            data = Readings(tuple(p / f for p in data.first), tuple(q / g for q in data.second), data.table)
-        made[face] = Wall(wall.kind, data, wall.coefficient / factors[axis])
-    sources = tuple(
-        (
-            tuple(c / f for c, f in zip(low, factors, strict=True)),
-            tuple(c / f for c, f in zip(high, factors, strict=True)),
-            q,
-        )
-        for low, high, q in case.sources
-    )
-    size = tuple(length / f for length, f in zip(case.size, factors, strict=True))
-    conductivity = tuple(k / f**2 for k, f in zip(case.conductivity, factors, strict=True))
-    return Case(size, conductivity, made, sources)  # type: ignore[arg-type]
 
 
 @BODIES
@@ -398,8 +302,9 @@ def test_balanced_insulated_body_has_mean_zero_and_says_so() -> None:
     case = Case((1.0, 1.0, 0.5), (1.0, 2.0, 0.5), walls(**pads))
     solution = solve(case.body())
     assert solution.level_pinned
-    # Simpson's rule over z of the mean over x and y of a field that is a parabola or line there: here a line.
-    mean = [solution.mean(face, tolerance=1e-10).value for face in ("z_low", "z_high")]  # type: ignore[arg-type]
+    # The mean over x and y is a straight line in z, so that the mean of its ends is that of the body.
+    ends: tuple[Face, Face] = ("z_low", "z_high")
+    mean = [solution.mean(face, tolerance=1e-10).value for face in ends]
     assert sum(mean) == pytest.approx(0.0, abs=1e-10)
     assert mean[0] - mean[1] == pytest.approx(1.0 * 0.5 / 0.5, rel=1e-9)
 

@@ -1,8 +1,8 @@
 """The core against every published figure, to its printed precision, and against ten-digit values to 1e-9.
 
-`tests/core/reference/published.json` holds the figures with their sources. Where a printed figure is itself off
-(a slip in the last place, or a coarse method behind it) the independent value decides and the printed figure is
-shown to be off.
+`tests/core/reference/published.json` holds the figures with their sources. Where a printed figure is itself
+off (a slip in the last place, or a coarse method behind it) the independent value decides and the printed
+figure is shown to be off.
 """
 
 from __future__ import annotations
@@ -22,7 +22,9 @@ def _of(*measures: str) -> list[Quantity]:
 
 
 def scale_of(quantity: Quantity) -> float:
-    """What 1e-9 refers to: the span of the data for a potential where there is one, otherwise the value itself."""
+    """What 1e-9 refers to: the span of the data for a potential where there is one, otherwise the value
+    itself.
+    """
     assert quantity.value is not None
     if quantity.how in POTENTIALS:
         return max(solution_of(quantity).span, abs(quantity.value))
@@ -43,7 +45,8 @@ def test_published_figure_and_ten_digit_value(quantity: Quantity) -> None:
     assert found == pytest.approx(quantity.value, rel=0, abs=TEN_DIGITS * scale_of(quantity))
     if quantity.printed is not None:
         off = abs(found - quantity.printed.value)
-        # Printed agrees: within what its rounding allows. Otherwise the printed figure is off by more than that.
+        # Printed agrees: within what its rounding allows. Otherwise the printed figure is off by more than
+        # that.
         assert (off <= quantity.printed.tolerance) is quantity.printed.agrees, quantity.source
 
 

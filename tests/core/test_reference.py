@@ -1,6 +1,7 @@
 """The reference values themselves: two independent ways agree, and fields known in closed form come out.
 
-The tolerance of 1e-20 of the span is what `tests/core/reference` promises; double precision knows sixteen digits.
+The tolerance of 1e-20 of the span is what `tests/core/reference` promises; double precision knows sixteen
+digits.
 """
 
 from __future__ import annotations

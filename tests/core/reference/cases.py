@@ -55,7 +55,7 @@ class Wall:
 
 @dataclass(frozen=True)
 class Case:
-    """A body: size (the last may be infinite), conductivity, walls by face, box sources (low, high, density)."""
+    """A body; the last size may be infinite; sources are tuples (low, high, density)."""
 
     size: tuple[float, float, float]
     conductivity: tuple[float, float, float]

@@ -8,6 +8,7 @@ Weak form, with q the inflow, h the film coefficient and U its ambient:
 from __future__ import annotations
 
 from collections.abc import Callable
+from typing import Any
 
 import numpy as np
 import pyamg
@@ -40,62 +41,26 @@ def data_at(data: Data, first: FloatArray, second: FloatArray) -> FloatArray:
 
 
 def solve_by_finite_elements(case: Case, cells: tuple[int, int, int]) -> Callable[[FloatArray], FloatArray]:
-    """Nodal values on a uniform mesh; the answer looks values up at places that are nodes, shape (n_places, 3)."""
+    """Solve on a uniform mesh; the answer looks up values at places that are nodes, shape (n_places, 3)."""
     axes = [np.linspace(0.0, length, count + 1) for length, count in zip(case.size, cells, strict=True)]
     mesh = MeshHex.init_tensor(*axes)
-    element = ElementHex1()
-    basis = Basis(mesh, element)
-    k = case.conductivity
-
-    @BilinearForm
-    def conduction(u, v, w):  # type: ignore[no-untyped-def]
-        return sum(k[i] * u.grad[i] * v.grad[i] for i in range(3))
-
-    @LinearForm
-    def generation(v, w):  # type: ignore[no-untyped-def]
-        total = 0.0
-        for low, high, density in case.sources:
-            inside = np.ones_like(w.x[0], dtype=bool)
-            for i in range(3):
-                inside &= (w.x[i] > low[i]) & (w.x[i] < high[i])
-            total = total + density * inside
-        return total * v
-
-    matrix, load = conduction.assemble(basis), generation.assemble(basis)
+    matrix, load = _conduction_and_generation(case, mesh)
     held: dict[int, list[float]] = {}
     for face in case.faces:
-        wall = case.walls[face]
-        axis, across = _axes(face)
-        place = case.size[axis] if face.endswith("high") else 0.0
-        if wall.kind == "D":
-            nodes = np.flatnonzero(np.abs(mesh.p[axis] - place) < ON_FACE * case.size[axis])
-            values = data_at(wall.data, mesh.p[across[0]][nodes], mesh.p[across[1]][nodes])
-            for node, value in zip(nodes, values, strict=True):
-                held.setdefault(int(node), []).append(float(value))
-            continue
-        facets = mesh.facets_satisfying(
-            lambda x, a=axis, at=place: np.abs(x[a] - at) < ON_FACE * case.size[a]
-        )
-        on_face = FacetBasis(mesh, element, facets=facets)
-        factor = 1.0 if wall.kind == "N" else wall.coefficient
-
-        @LinearForm
-        def driving(v, w, data=wall.data, factor=factor, across=across):  # type: ignore[no-untyped-def]
-            return factor * data_at(data, w.x[across[0]], w.x[across[1]]) * v
-
-        load = load + driving.assemble(on_face)
-        if wall.kind == "R":
-            film = BilinearForm(lambda u, v, w, h=factor: h * u * v)
-            matrix = matrix + film.assemble(on_face)
+        if case.walls[face].kind == "D":
+            for node, value in _held_nodes(case, face, mesh).items():
+                held.setdefault(node, []).append(value)
+        else:
+            film, driving = _film_and_driving(case, face, mesh)
+            matrix, load = matrix + film, load + driving
     solution = np.zeros(mesh.p.shape[1])
     nodes = np.array(sorted(held), dtype=int)
     # Where faces with different held values meet, the node takes the mean of both.
     solution[nodes] = [float(np.mean(held[int(node)])) for node in nodes]
+    inner = np.arange(solution.size)
     if nodes.size:
-        inner_matrix, inner_load, solution, inner = condense(matrix, load, x=solution, D=nodes)
-    else:
-        inner_matrix, inner_load, inner = matrix, load, np.arange(solution.size)
-    solution[inner] = _solve(inner_matrix.tocsr(), inner_load)
+        matrix, load, solution, inner = condense(matrix, load, x=solution, D=nodes)
+    solution[inner] = _solve(matrix.tocsr(), load)
 
     def look_up(places: FloatArray) -> FloatArray:
         found = []
@@ -109,12 +74,60 @@ def solve_by_finite_elements(case: Case, cells: tuple[int, int, int]) -> Callabl
     return look_up
 
 
+def _conduction_and_generation(case: Case, mesh: MeshHex) -> tuple[Any, FloatArray]:
+    k = case.conductivity
+
+    def conduction(u: Any, v: Any, w: Any) -> Any:
+        return sum(k[i] * u.grad[i] * v.grad[i] for i in range(3))
+
+    def generation(v: Any, w: Any) -> Any:
+        total = np.zeros_like(w.x[0])
+        for low, high, density in case.sources:
+            inside = np.ones_like(w.x[0], dtype=bool)
+            for i in range(3):
+                inside &= (w.x[i] > low[i]) & (w.x[i] < high[i])
+            total = total + density * inside
+        return total * v
+
+    basis = Basis(mesh, ElementHex1())
+    return BilinearForm(conduction).assemble(basis), LinearForm(generation).assemble(basis)
+
+
+def _held_nodes(case: Case, face: Face, mesh: MeshHex) -> dict[int, float]:
+    axis, across = _axes(face)
+    nodes = np.flatnonzero(np.abs(mesh.p[axis] - _position(case, face)) < ON_FACE * case.size[axis])
+    values = data_at(case.walls[face].data, mesh.p[across[0]][nodes], mesh.p[across[1]][nodes])
+    return {int(node): float(value) for node, value in zip(nodes, values, strict=True)}
+
+
+def _film_and_driving(case: Case, face: Face, mesh: MeshHex) -> tuple[Any, FloatArray]:
+    """Matrix h u v and load h U v of a film face, or nothing and q v of one with a given inflow."""
+    wall = case.walls[face]
+    axis, across = _axes(face)
+    facets = mesh.facets_satisfying(
+        lambda x: np.abs(x[axis] - _position(case, face)) < ON_FACE * case.size[axis]
+    )
+    basis = FacetBasis(mesh, ElementHex1(), facets=facets)
+    film = wall.coefficient if wall.kind == "R" else 0.0
+    strength = wall.coefficient if wall.kind == "R" else 1.0
+
+    def driving(v: Any, w: Any) -> Any:
+        return strength * data_at(wall.data, w.x[across[0]], w.x[across[1]]) * v
+
+    matrix = BilinearForm(lambda u, v, w: film * u * v).assemble(basis)
+    return matrix, LinearForm(driving).assemble(basis)
+
+
 def _axes(face: Face) -> tuple[int, list[int]]:
     axis = "xyz".index(face[0])
     return axis, [other for other in range(3) if other != axis]
 
 
-def _solve(matrix, load: FloatArray) -> FloatArray:  # type: ignore[no-untyped-def]
+def _position(case: Case, face: Face) -> float:
+    return case.size[_axes(face)[0]] if face.endswith("high") else 0.0
+
+
+def _solve(matrix: Any, load: FloatArray) -> FloatArray:
     preconditioner = pyamg.smoothed_aggregation_solver(matrix).aspreconditioner()
     solution, failed = cg(matrix, load, rtol=1e-11, M=preconditioner, maxiter=400)
     assert failed == 0

@@ -2,12 +2,13 @@
 
     u = sum over driven faces and sources of  int_0^inf  X(t) Y(t) Z(t) dt,
 
-each factor by images at short times and eigenfunctions at long ones, in 45-digit arithmetic; the integral by the
-trapezoidal rule in log t (Trefethen and Weideman, SIAM Review 56, 2014). `series.py` computes the same by double
-eigenfunction series; `test_reference.py` compares both and fields known in closed form.
+each factor by images at short times and eigenfunctions at long ones, in 45-digit arithmetic; the integral
+by the trapezoidal rule in log t (Trefethen and Weideman, SIAM Review 56, 2014). `series.py` computes the
+same by double eigenfunction series; `test_reference.py` compares both and fields known in closed form.
 
-What cannot be integrated as it stands is taken out first and added in closed form: the part that never decays when
-both x and y are insulated, and on a held face the local value, without which the normal flux has no finite integral.
+What cannot be integrated as it stands is taken out first and added in closed form: the part that never
+decays when both x and y are insulated, and on a held face the local value, without which the normal flux
+has no finite integral.
 """
 
 from __future__ import annotations
@@ -15,8 +16,9 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
-from service.core import Face
+from service.core import FACES, Face
 from tests.core.reference.cases import Case, Cells, Data
 from tests.core.reference.kernels import ONE, ZERO, Number, arithmetic
 from tests.core.reference.lines import SMALL_EXPONENT, Line, Profile, ProfileResponse, WallResponse
@@ -52,6 +54,10 @@ class Drive:
         factor = None if self.axis is None else self.factors[self.axis]
         return factor if isinstance(factor, WallResponse) else None
 
+    def local_factors(self) -> list[Response]:
+        """Values and slopes of the data themselves, one along the driven axis."""
+        return [f.local() if isinstance(f, ProfileResponse) else ([ONE], [ZERO]) for f in self.factors]
+
     def first_time(self) -> Number:
         """Before this time every response is a mere power of time."""
         scales = [d * d / f.line.conductivity for f in self.factors for d in f.distances() if d > 0]
@@ -60,10 +66,9 @@ class Drive:
 
 def make_line(case: Case, axis: int) -> Line:
     """The line of an axis with its end conditions."""
-    name = "xyz"[axis]
-    low = case.walls[f"{name}_low"]  # type: ignore[index]
     endless = math.isinf(case.size[axis])
-    high = None if endless else case.walls[f"{name}_high"]  # type: ignore[index]
+    low = case.walls[FACES[2 * axis]]
+    high = None if endless else case.walls[FACES[2 * axis + 1]]
     number = arithmetic.mpf
     return Line(
         number(case.size[axis]),
@@ -86,7 +91,7 @@ def indicator(low: float, high: float) -> Profile:
 def hats(places: Sequence[float]) -> tuple[Profile, ...]:
     """Functions that are one at one place, zero at the others and linear between."""
     at = [arithmetic.mpf(place) for place in places]
-    slopes = [ZERO, *(1 / (right - left) for left, right in zip(at[:-1], at[1:], strict=True)), ZERO]
+    slopes = [ZERO, *(1 / (right - left) for left, right in pairwise(at)), ZERO]
     found = []
     for i, place in enumerate(at):
         rise, fall = slopes[i], slopes[i + 1]
@@ -102,7 +107,7 @@ def hats(places: Sequence[float]) -> tuple[Profile, ...]:
 
 def split_data(
     data: Data, extent: tuple[float, float]
-) -> tuple[tuple[Profile, ...], tuple[Profile, ...], dict]:
+) -> tuple[tuple[Profile, ...], tuple[Profile, ...], dict[tuple[int, int], Number]]:
     """A map as sum of coefficient[i, j] * first[i](p) * second[j](q)."""
     if isinstance(data, (int, float)):
         return (indicator(0, extent[0]),), (indicator(0, extent[1]),), {(0, 0): arithmetic.mpf(data)}
@@ -111,7 +116,7 @@ def split_data(
             sorted({0.0, extent[k], *(p[i] for p in data.patches for i in (2 * k, 2 * k + 1))})
             for k in (0, 1)
         ]
-        bases = [tuple(indicator(*pair) for pair in zip(edge[:-1], edge[1:], strict=True)) for edge in edges]
+        bases = [tuple(indicator(*pair) for pair in pairwise(edge)) for edge in edges]
         table = {}
         for i, p in enumerate(edges[0][:-1]):
             for j, q in enumerate(edges[1][:-1]):
@@ -128,7 +133,8 @@ class HighPrecision:
     def __init__(self, case: Case) -> None:
         self.case = case
         self.lines = [make_line(case, axis) for axis in range(3)]
-        # x and y insulated: a constant over the section never decays, and the line along z is treated on its own.
+        # x and y insulated: a constant over the section never decays, and the line along z is treated on
+        # its own.
         self.constant_section = self.lines[0].is_insulated and self.lines[1].is_insulated
         self._found: dict[tuple[float, ...], tuple[Number, list[Number]]] = {}
 
@@ -209,7 +215,7 @@ class HighPrecision:
         axis = drive.axis
         assert axis is not None
         unit: Response = ([ONE], [ZERO])
-        local = contract(drive.terms, [unit if i == axis else f.local() for i, f in enumerate(drive.factors)])
+        local = contract(drive.terms, drive.local_factors())
         kept = list(local)
         if constant:
             kept[0] -= constant[0]
@@ -230,7 +236,7 @@ class HighPrecision:
         return _add(steady, trapezoid(integrand, last, drive.first_time()))
 
     def _slowest_rate(self, without: int | None) -> Number:
-        """Slowest decay of the product of lines, one of them left out, beside the constant over the section."""
+        """Slowest decay of the product of lines, beside the constant over the section."""
         rates = [ZERO if axis == without else line.rate(0) for axis, line in enumerate(self.lines)]
         if self.constant_section:
             return min(self.lines[0].rate(1), self.lines[1].rate(1)) + rates[2]
@@ -240,7 +246,7 @@ class HighPrecision:
         return SMALL_EXPONENT / self._slowest_rate(None)
 
     def _constant_part(self, drive: Drive) -> tuple[list[Number], list[Number]]:
-        """Closed-form u and gradient of the part constant over the section, and its weight on each z response."""
+        """u and gradient of the part constant over the section; its weight on each z response."""
         if not self.constant_section:
             return [ZERO] * 4, []
         x, y, z = drive.factors
@@ -257,13 +263,10 @@ class HighPrecision:
         return total, weights
 
     def _slope_on_own_face(self, drive: Drive, wall: WallResponse, constant: list[Number]) -> list[Number]:
-        """The normal slope that the data themselves make on their face, which the integral misses exactly there."""
+        """The slope that data make on their own face, which the integral misses exactly there."""
         axis = drive.axis
         assert axis is not None
-        unit: Response = ([ONE], [ZERO])
-        local = contract(
-            drive.terms, [unit if i == axis else f.local() for i, f in enumerate(drive.factors)]
-        )[0]
+        local = contract(drive.terms, drive.local_factors())[0]
         if constant and axis == 2:
             local -= constant[0]
         inward = -local * (wall.film if wall.end == "R" else ONE) / wall.line.conductivity
@@ -297,7 +300,7 @@ def _add(first: Sequence[Number], second: Sequence[Number]) -> list[Number]:
 
 
 def trapezoid(integrand: Callable[[Number], list[Number]], last: Number, first: Number) -> list[Number]:
-    """Integral over all times of a function that is nothing after `last` and a mere power of time before `first`."""
+    """Integral of what is nothing after `last` and a mere power of time before `first`."""
     total = [ZERO] * 4
     peaks = [ZERO] * 4
     shrink = arithmetic.exp(-STEP)

@@ -1,12 +1,12 @@
 """Heat kernels of a half line in high-precision arithmetic.
 
-Everything here is written from the equations and shares no code with the solver core, so that agreement with it
-means something. `y` is a distance along the line, `spread` is T = k t (length squared), and
+Everything here is written from the equations and shares no code with the solver core, so that agreement
+with it means something. `y` is a distance along the line, `spread` is T = k t (length squared), and
 
     s0(y) = exp(-y^2 / 4T) / (2 sqrt(pi T)),   s1(y) = int_y^inf s0,   s2(y) = int_y^inf s1
 
-are the responses of an endless line to a point, a step and a ramp at distance y. With a film of strength H = h/k
-at the end of a half line the reflected responses need one function more,
+are the responses of an endless line to a point, a step and a ramp at distance y. With a film of strength H
+= h/k at the end of a half line the reflected responses need one function more,
 
     w(y) = exp(H y + H^2 T) erfc(y / (2 sqrt T) + H sqrt T) / 2
 
@@ -19,7 +19,8 @@ from typing import Any, TypeAlias
 
 import mpmath
 
-# 45 digits leave more than 20 after the worst cancellation: a film of Biot number 1e-9 at a distance of 1e-8 sides.
+# 45 digits leave more than 20 after the worst cancellation: a film of Biot number 1e-9 at a distance of
+# 1e-8 sides.
 arithmetic = mpmath.mp.clone()
 arithmetic.dps = 45
 # mpmath carries no types; the name says what is meant.

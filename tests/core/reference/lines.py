@@ -116,14 +116,13 @@ class Line:
         return arithmetic.pi / 2 if end == "D" else ZERO
 
     def _next_mode(self, index: int) -> Mode:
-        low, high = self.strengths
         if self.is_insulated and index == 0:
             return Mode(ZERO, ONE, ZERO, self.length)
         beta = self._root(index)
         if self.low == "D":
             cosine, sine = ZERO, ONE
         else:
-            cosine, sine = ONE, low / beta
+            cosine, sine = ONE, self.strengths[0] / beta
         angle = beta * self.length
         norm = (
             (cosine**2 + sine**2) * self.length / 2

@@ -1,7 +1,7 @@
 """How each published number is got from the solver core.
 
-Each measure takes a quantity and gives the number the core makes of it. Limits (half-space, point contacts, vanishing
-pads) are approached by finite bodies; each says what the limit costs.
+Each measure takes a quantity and gives the number the core makes of it. Limits (half-space, point contacts,
+vanishing pads) are approached by finite bodies; each says what the limit costs.
 """
 
 from __future__ import annotations
@@ -44,7 +44,8 @@ def _difference(quantity: Quantity) -> float:
 
 def _decay(quantity: Quantity) -> float:
     solution = solution_of(quantity)
-    # At 4.5 widths the next mode is down by exp(-(pi sqrt 10 - pi sqrt 2) 4.5) = 2e-11; 4e-11 is left at 5.5 widths.
+    # At 4.5 widths the next mode is down by exp(-(pi sqrt 10 - pi sqrt 2) 4.5) = 2e-11; 4e-11 is left at
+    # 5.5 widths.
     near, far = (value_at(solution, place, 1e-16) for place in quantity.details["at"])
     return math.log(near / far)
 
@@ -87,12 +88,12 @@ def _plane_total(quantity: Quantity) -> float:
 def _finite_part(quantity: Quantity) -> float:
     """Flow through z = 1e-10 less its logarithm; what is left out is of the order of the distance."""
     distance = 1e-10
-    growth = quantity.details["coefficient"] / math.pi
+    growth: float = quantity.details["coefficient"] / math.pi
     return _plane_flow(solution_of(quantity), 2, distance) - growth * math.log(1 / distance)
 
 
 def _edge_coefficient(quantity: Quantity) -> float:
-    """Growth of the total per factor e of the gap, for the first edge named; edges are one long, the jump is one."""
+    """Growth of the total per factor e of the gap, for the first of four unit edges and a unit jump."""
     solution = solution_of(quantity)
     total = solution.face_total(quantity.details["face"], tolerance=ACCURACY * solution.span)
     assert total.value is None
@@ -101,7 +102,7 @@ def _edge_coefficient(quantity: Quantity) -> float:
 
 
 def _overshoot(quantity: Quantity) -> float:
-    """Height of the first overshoot of the sine series of a unit step, the end of a strip, with 4000 terms."""
+    """First overshoot of the sine series of a unit step, the end of a strip, with 4000 terms."""
     strip = Case((1.0, 1.0, math.inf), (1.0, 1.0, 1.0), walls(x_low="D", x_high="D", z_low=Wall("D", 1.0)))
     (found,) = solve(strip.body()).overshoot(4000)
     return 1.0 + found.overshoot
@@ -122,8 +123,8 @@ def _amplitude(quantity: Quantity) -> float:
 def _corner_resistance(long: float, across: float) -> float:
     """Voltage over the opposite corners per unit current through strips at two corners of a sheet.
 
-    Strips of width w in place of points cost about w^2 / 3, here 3e-13 for strips of a millionth; a binary fraction
-    keeps both strips equal to the last digit, so that the currents cancel.
+    Strips of width w in place of points cost about w^2 / 3, here 3e-13 for strips of a millionth; a binary
+    fraction keeps both strips equal to the last digit, so that the currents cancel.
     """
     w = 2.0**-20
     contacts = Cells(0.0, ((0.0, w, 0.0, 1.0, 1 / w), (long - w, long, 0.0, 1.0, -1 / w)))
@@ -155,7 +156,7 @@ def _pad_on_cube(
 
 
 def _half_space_limit(read: Callable[[float], float]) -> float:
-    """Limit for a cube that grows: u = u_inf + c1 / side + c3 / side^3 + O(side^-5), three sizes leave about 1e-12."""
+    """Limit for a cube that grows: u + c1 / side + c3 / side^3 + O(side^-5), here about 1e-12."""
     values = [read(side) for side in (128.0, 256.0, 512.0)]
     first = [2 * values[1] - values[0], 2 * values[2] - values[1]]
     return (8 * first[1] - first[0]) / 7
@@ -184,7 +185,7 @@ def _half_space_mean(quantity: Quantity) -> float:
 
 
 def constriction(eps: float) -> float:
-    """k sqrt(A) R of a square pad of side eps on the end of a unit bar, cut at six widths: exp(-12 pi) = 4e-17."""
+    """k sqrt(A) R of a square pad on a unit bar, cut at six widths: exp(-12 pi) = 4e-17."""
     where = (0.5 - eps / 2, 0.5 + eps / 2, 0.5 - eps / 2, 0.5 + eps / 2)
     pad = Wall("N", Cells(0.0, ((*where, 1 / eps**2),)))
     solution = solve(Case((1.0, 1.0, 6.0), (1.0, 1.0, 1.0), walls(z_low=pad, z_high=Wall("D"))).body())
@@ -197,7 +198,7 @@ def _constriction(quantity: Quantity) -> float:
 
 
 def _constriction_slope(quantity: Quantity) -> float:
-    """Slope at vanishing pads from psi(eps) = psi_0 - a eps + b eps^3: two small pads take b out; left is O(eps^4)."""
+    """Slope a of psi_0 - a eps + b eps^3 + O(eps^5): two small pads take b out."""
     at_zero = 0.4732010044093393  # mean rise of a square on a half-space, ten digits in the same table
     slopes = [(at_zero - constriction(eps)) / eps for eps in (0.01, 0.02)]
     return (4 * slopes[0] - slopes[1]) / 3

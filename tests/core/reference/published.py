@@ -10,6 +10,7 @@ from functools import cache
 from pathlib import Path
 from typing import Any
 
+from service.core import Face
 from tests.core.reference.cases import Case, Cells, Data, Wall
 
 KINDS = {"held": "D", "inflow": "N", "film": "R"}
@@ -29,7 +30,8 @@ class Printed:
 class Quantity:
     """One number of a published case.
 
-    how: how the number is got from a solution, a key of `measures.MEASURES`; details: what that needs to know.
+    how: how the number is got from a solution, a key of `measures.MEASURES`; details: what that needs to
+    know.
     value: independent value to ten digits or more, None where only a limit is stated.
     """
 
@@ -73,17 +75,13 @@ def _quantity(case: Mapping[str, Any], quantity: Mapping[str, Any]) -> Quantity:
 def _case(body: Mapping[str, Any], quantity: Mapping[str, Any]) -> Case:
     """The case's body with the changes a quantity asks for: another size, faces held or insulated."""
     size = [math.inf if s == "semi-infinite" else float(s) for s in quantity.get("size", body["size"])]
-    walls = {face: _wall(wall) for face, wall in body["faces"].items()}
+    walls: dict[Face, Wall] = {face: _wall(wall) for face, wall in body["faces"].items()}
     walls |= {face: Wall("D", float(value)) for face, value in quantity.get("held_at", {}).items()}
     walls |= {face: Wall("N") for face in quantity.get("insulated", ())}
     source = float(body["source"])
     whole = ((0.0, 0.0, 0.0), (size[0], size[1], size[2]), source)
-    return Case(
-        (size[0], size[1], size[2]),
-        tuple(map(float, body["conductivity"])),
-        walls,  # type: ignore[arg-type]
-        (whole,) if source else (),
-    )
+    kx, ky, kz = map(float, body["conductivity"])
+    return Case((size[0], size[1], size[2]), (kx, ky, kz), walls, (whole,) if source else ())
 
 
 def _wall(wall: Mapping[str, Any]) -> Wall:
@@ -92,5 +90,6 @@ def _wall(wall: Mapping[str, Any]) -> Wall:
 
 def _data(data: Any) -> Data:
     if isinstance(data, Mapping):
-        return Cells(float(data["background"]), tuple(tuple(map(float, p)) for p in data["patches"]))  # type: ignore[misc]
+        patches = [(float(a), float(b), float(c), float(d), float(v)) for a, b, c, d, v in data["patches"]]
+        return Cells(float(data["background"]), tuple(patches))
     return float(data)

@@ -1,7 +1,8 @@
 """Random bodies over the whole range promised, and the places where they are hardest.
 
-Sides from micrometres to kilometres with aspect ratios to 1e6, conductivities that differ by up to 1e6, Biot numbers
-from 1e-9 to 1e9; patches, tables, box sources; blocks and bars. A seed makes the same body everywhere.
+Sides from micrometres to kilometres with aspect ratios to 1e6, conductivities that differ by up to 1e6,
+Biot numbers from 1e-9 to 1e9; patches, tables, box sources; blocks and bars. A seed makes the same body
+everywhere.
 """
 
 from __future__ import annotations
@@ -52,7 +53,7 @@ def random_case(seed: int) -> Case:
 
 
 def _kinds(random: np.random.Generator, faces: Sequence[Face], endless: bool) -> dict[Face, str]:
-    """Kinds of faces, not all of them with a given inflow; on a bar something else along the sides or end as well."""
+    """Kinds of faces, not all of them with a given inflow, on a bar along its sides."""
     while True:
         kinds = {face: str(random.choice(["D", "N", "R"])) for face in faces}
         needed = faces[:4] if endless else faces
@@ -95,7 +96,7 @@ def _sources(
 
 
 def hard_places(case: Case, seed: int) -> dict[str, Place]:
-    """Named places: in the body, on a face, a millionth of a width from a driven face, 1e-8 from a jump line."""
+    """Named places: inside, on a face, a millionth of a width off it, 1e-8 from a jump line."""
     random = np.random.default_rng([62, seed])
     reach = [length if math.isfinite(length) else min(case.size[:2]) for length in case.size]
     inside = [float(f) * length for f, length in zip(random.uniform(0.02, 0.98, size=3), reach, strict=True)]

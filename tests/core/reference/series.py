@@ -2,8 +2,8 @@
 
     u = sum over m, n of  c_mn X_m(x) Y_n(y) w_mn(z),      k_z (w'' - gamma^2 w) + q = 0
 
-(and the same with the axes exchanged). Converges like exp(-gamma d), d the distance from the driven face or from
-the source along the axis that is not expanded, so it serves places well away from what drives them.
+(and the same with the axes exchanged). Converges like exp(-gamma d), d the distance from the driven face or
+from the source along the axis that is not expanded, so it serves places well away from what drives them.
 """
 
 from __future__ import annotations
@@ -86,7 +86,8 @@ def by_series(reference: HighPrecision, place: tuple[float, float, float], axes:
 def _one_drive(drive: Drive, axis: int) -> list[Number]:
     first, second = (other for other in range(3) if other != axis)
     p, q, along = drive.factors[first], drive.factors[second], drive.factors[axis]
-    assert isinstance(p, ProfileResponse) and isinstance(q, ProfileResponse)
+    assert isinstance(p, ProfileResponse)
+    assert isinstance(q, ProfileResponse)
     table: dict[tuple[int, int], Number] = {}
     for index, coefficient in drive.terms:
         table[index[first], index[second]] = coefficient

@@ -2,8 +2,8 @@
 
     k V'' + q = 0 with the line's end conditions; V'' k = rate V for the attenuated wall response
 
-A line with both ends insulated has no steady state of its own: the mean of the driving is taken out first and the
-mean of V is zero. An endless line insulated at its low end is counted from its far level.
+A line with both ends insulated has no steady state of its own: the mean of the driving is taken out first
+and the mean of V is zero. An endless line insulated at its low end is counted from its far level.
 """
 
 from __future__ import annotations
@@ -94,12 +94,12 @@ def steady_profile(line: Line, source: Profile, place: Number) -> tuple[Number, 
 
 
 def steady_wall(line: Line, at_high: bool, place: Number) -> tuple[Number, Number]:
-    """Time integral of the response to unit data at an end, its constant part taken out on an insulated line."""
+    """Time integral of the response to unit data at an end, without its constant part."""
     return steady(line, NOTHING, place, ZERO if at_high else ONE, ONE if at_high else ZERO)
 
 
 def attenuated_held_wall(line: Line, at_high: bool, place: Number, rate: Number) -> tuple[Number, Number]:
-    """Time integral of exp(-rate t) times the response to a unit held value at an end: V and V' along the axis."""
+    """Time integral of exp(-rate t) times the response to a unit held value: V and V'."""
     if rate == 0:
         return steady_wall(line, at_high, place)
     depth = line.length - place if at_high else place

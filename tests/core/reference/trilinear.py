@@ -1,17 +1,18 @@
-"""A field that solves the equation exactly whatever the conductivities, with faces of every kind made from it.
+"""A field that solves the equation exactly whatever the conductivities, with faces of every kind made from
+it.
 
     u = 3 + x - 2 y + ... + 2 x y z      (each u_xx = u_yy = u_zz = 0)
 
-Its traces on the faces are bilinear, so held values, inflows and ambients are exact tables of readings. All numbers
-are binary fractions, exact in double precision.
+Its traces on the faces are bilinear, so held values, inflows and ambients are exact tables of readings. All
+numbers are binary fractions, exact in double precision.
 """
 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from typing import TypeVar
+from typing import Any
 
-from service.core import FACES
+from service.core import FACES, Face
 from tests.core.reference.cases import Case, Readings, Wall
 
 SIZE = (1.0, 0.5, 2.0)
@@ -23,17 +24,15 @@ KINDS = ("DNRDNR", "NDDRRN", "RRRRRR", "DDDDDD", "NNNNND")
 # In the body, a millionth from a face, on a face, and close to a corner.
 PLACES = ((0.3, 0.2, 0.7), (2.0**-20, 0.25, 1.0), (0.0, 0.2, 0.7), (1 - 2.0**-26, 2.0**-27, 2 - 2.0**-25))
 
-T = TypeVar("T")
 
-
-def trilinear_field(case: Case, place: Sequence[T]) -> tuple[T, list[T]]:
+def trilinear_field(case: Case, place: Sequence[Any]) -> tuple[Any, list[Any]]:
     """u and the flux density at a place, in the arithmetic of the place."""
-    x, y, z = place  # type: ignore[misc]
-    u = 3 + x - 2 * y + z / 2 + 0.75 * x * y - 1.5 * y * z + 0.25 * x * z + 2 * x * y * z  # type: ignore[operator]
+    x, y, z = place
+    u = 3 + x - 2 * y + z / 2 + 0.75 * x * y - 1.5 * y * z + 0.25 * x * z + 2 * x * y * z
     slopes = [
-        1 + 0.75 * y + 0.25 * z + 2 * y * z,  # type: ignore[operator]
-        -2 + 0.75 * x - 1.5 * z + 2 * x * z,  # type: ignore[operator]
-        0.5 - 1.5 * y + 0.25 * x + 2 * x * y,  # type: ignore[operator]
+        1 + 0.75 * y + 0.25 * z + 2 * y * z,
+        -2 + 0.75 * x - 1.5 * z + 2 * x * z,
+        0.5 - 1.5 * y + 0.25 * x + 2 * x * y,
     ]
     return u, [-k * slope for k, slope in zip(case.conductivity, slopes, strict=True)]
 
@@ -41,7 +40,7 @@ def trilinear_field(case: Case, place: Sequence[T]) -> tuple[T, list[T]]:
 def trilinear_case(kinds: str, size: tuple[float, float, float] = SIZE) -> Case:
     """The body with faces of the given kinds, in the order of FACES, all made from the field."""
     bare = Case(size, CONDUCTIVITY, {})
-    given: dict[str, Wall] = {}
+    given: dict[Face, Wall] = {}
     for face, kind in zip(FACES, kinds, strict=True):
         axis, high = "xyz".index(face[0]), face.endswith("high")
         first, second = bare.extent(face)
@@ -57,4 +56,4 @@ def trilinear_case(kinds: str, size: tuple[float, float, float] = SIZE) -> Case:
             rows.append(tuple(row))
         data = Readings((0.0, first / 2, first), (0.0, second), tuple(rows))
         given[face] = Wall(kind, data, FILMS[face] if kind == "R" else 0.0)
-    return Case(size, CONDUCTIVITY, given)  # type: ignore[arg-type]
+    return Case(size, CONDUCTIVITY, given)
