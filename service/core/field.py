@@ -189,7 +189,7 @@ def _accurate(
         if setting.reference != 0.0:
             potential += setting.reference
         largest = max(float(potential.max()), -float(potential.min()))
-        bound = _largest(bounds, tensor) + STORED * largest
+        bound = _largest(bounds, tensor) + STORED * largest + time_form.CUT_ERROR * setting.span
         if bound <= tolerance:
             return potential, bound, nodes
         if step <= time_form.FINEST_STEP:
@@ -225,7 +225,8 @@ def _flux(
         else:
             bound = bounds[0]
         np.maximum(flux_bound, factor * bound, out=flux_bound)
-    return flux, flux_bound + STORED * np.abs(flux).max(axis=0)
+    steepest = max(math.sqrt(k) / line.extent for k, line in zip(setting.body.conductivity, setting.lines, strict=True))
+    return flux, flux_bound + STORED * np.abs(flux).max(axis=0) + time_form.CUT_ERROR * setting.span * steepest
 
 
 def _sum_of_parts(

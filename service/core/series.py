@@ -131,7 +131,7 @@ def _sum(lines: Sequence[Line], part: Part, point: Sequence[float], order: tuple
         contributions = (amplitudes * waves) * initial
         total += float(contributions.sum())
         size += float(np.abs(contributions).sum())
-        shares += float(np.abs(amplitudes * initial).max(axis=1) @ _profile_share(drive, rates))
+        shares += float(np.abs(amplitudes * initial).max(axis=1) @ _profile_share(line, drive, rates))
         terms += rates.size
         if rates.size > 1:
             left_out += math.exp(-LAST_EXPONENT) * rates.size * float(np.abs(amplitudes * waves).max())
@@ -162,19 +162,25 @@ def _waves(line: Line, drive: Drive, place: float, rates: FloatArray) -> FloatAr
     if isinstance(drive, WallDrive):
         return laplace.wall_values(line, drive, place, gamma)[:, None]
     waves = np.empty((rates.size, drive.n_profiles))
-    steady = rates == 0.0
-    if steady.any():
-        waves[steady] = laplace.transform(line, drive, places, np.zeros(1))[0]
-    if not steady.all():
-        waves[~steady] = laplace.departure(line, drive, places, gamma[~steady])[0]
+    # Short waves by their closed form; where the line is short against them that cancels, and the whole answer is had.
+    whole = gamma == 0.0 if line.is_endless else gamma * line.extent <= laplace.SMALL_LENGTH
+    if whole.any():
+        share = np.where(rates[whole] > 0, 1 / np.where(rates[whole] > 0, rates[whole], 1.0), 0.0)
+        waves[whole] = laplace.transform(line, drive, places, gamma[whole])[0]
+        waves[whole] -= share[:, None] * drive.at(places.low)
+    if not whole.all():
+        waves[~whole] = laplace.departure(line, drive, places, gamma[~whole])[0]
     return waves
 
 
-def _profile_share(drive: Drive, rates: FloatArray) -> FloatArray:
-    """Size of f / gamma^2, whose rounding the waves carry where the two nearly cancel."""
+def _profile_share(line: Line, drive: Drive, rates: FloatArray) -> FloatArray:
+    """Size of f / gamma^2 and of the kinks' waves, whose rounding remains where they nearly cancel."""
     if isinstance(drive, WallDrive):
         return np.zeros_like(rates)
     size = float(np.abs(drive.left).max())
+    if line.is_endless:
+        slope = float(np.abs(drive.slopes).max()) / line.scale
+        size = size + slope / np.sqrt(np.where(rates > 0, rates, 1.0))
     return np.where(rates > 0, size / np.where(rates > 0, rates, 1.0), 0.0)
 
 

@@ -32,8 +32,9 @@ from service.core.split import Part
 FloatArray = NDArray[np.float64]
 Factors = tuple[FloatArray, FloatArray, FloatArray]
 
-# The range of integration ends where the integrand is below exp(-CUT) = 4e-18 of its size.
-CUT = 40.0
+# The range of integration ends where the integrand is below exp(-CUT) = 4e-18 of its size; what is cut at both ends
+# is below CUT_ERROR of what drives the body.
+CUT, CUT_ERROR = 40.0, 2e-17
 
 # Angle kept between the contour shifted by i (pi / 2 - ANGLE) and the edge of the sector, in the error bound; near
 # the best for steps around 0.3.
@@ -230,11 +231,14 @@ def _weigh(sizes: FloatArray, weights: FloatArray) -> FloatArray:
 
 
 def _widened(sizes: FloatArray, step: float) -> FloatArray:
-    """At each node the largest size up to the time 1 / sin(ANGLE) later, which bounds it on the shifted contour."""
+    """At each node the largest size within a factor 1 / sin(ANGLE) in time, which bounds it on the shifted contour.
+
+    There a front is as wide as it is that much later, and a mode has decayed as little as it has that much earlier.
+    """
     if sizes.shape[1] == 1:
         return sizes
     reach = math.ceil(-math.log(math.sin(ANGLE)) / step)
-    return np.asarray(maximum_filter1d(sizes, 2 * reach + 1, axis=1, mode="nearest", origin=-reach))
+    return np.asarray(maximum_filter1d(sizes, 2 * reach + 1, axis=1, mode="nearest"))
 
 
 @dataclass(frozen=True, eq=False)
