@@ -24,7 +24,7 @@ WIDEST = 1000
 REFERENCE_ERROR = 1e-22
 
 # BOUND_SEEDS=400 runs as many random bodies; the default keeps to about half a minute.
-SEEDS = range(int(os.environ.get("BOUND_SEEDS", "16")))
+SEEDS = range(int(os.environ.get("BOUND_SEEDS", "12")))
 
 PAD = Cells(0.0, ((0.25, 0.5, 0.25, 0.75, 2.0),))
 DRAIN = Cells(0.0, ((0.5, 0.75, 0.25, 0.75, -2.0),))

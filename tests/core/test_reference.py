@@ -13,6 +13,7 @@ import pytest
 
 from tests.core.reference.cases import Case, Cells, Readings, Wall, walls
 from tests.core.reference.high_precision import HighPrecision
+from tests.core.reference.intervals import OverRectangles
 from tests.core.reference.kernels import Number, arithmetic
 from tests.core.reference.series import by_series
 from tests.core.reference.trilinear import KINDS, PLACES, trilinear_case, trilinear_field
@@ -127,8 +128,8 @@ def test_time_integral_and_double_series_agree(name: str) -> None:
         assert abs(part + k * slope) < 10 * TWENTY_DIGITS
 
 
-# Every kind of mixture at two places: close to a corner, and one of the others in turn.
-PAIRS = [(kinds, place) for i, kinds in enumerate(KINDS) for place in (PLACES[3], PLACES[i % 3])]
+# Every kind of mixture at one place each, the hardest (close to a corner) for the one with most kinds.
+PAIRS = list(zip(KINDS, (*reversed(PLACES), PLACES[1]), strict=True))
 
 
 @pytest.mark.parametrize(("kinds", "place"), PAIRS, ids=str)
@@ -160,8 +161,11 @@ def test_closed_form_of_the_strip(place: tuple[float, float, float]) -> None:
 PARTITION = Cells(1.0, ((0.25, 0.5, 0.25, 0.5, 1.0), (0.5, 0.75, 0.0, 0.5, 1.0)))
 
 
-@pytest.mark.parametrize("size_z", [1.0, INFINITE], ids=["block", "bar"])
-@pytest.mark.parametrize("place", [(0.25, 0.25 + 1e-8, 0.0), (0.5, 1e-7, 1e-6), (0.4, 0.6, 0.7)], ids=str)
+@pytest.mark.parametrize(
+    ("size_z", "place"),
+    [(1.0, (0.25, 0.25 + 1e-8, 0.0)), (INFINITE, (0.5, 1e-7, 1e-6)), (1.0, (0.4, 0.6, 0.7))],
+    ids=["block, beside a jump line", "bar, beside two faces", "block, inside"],
+)
 def test_patches_that_cover_everything_with_one_make_one(
     size_z: float, place: tuple[float, float, float]
 ) -> None:
@@ -225,3 +229,22 @@ def test_uniform_source_between_films_is_a_parabola() -> None:
     potential, flux = HighPrecision(case).potential_and_flux((0.3, 0.0, 0.5))
     assert abs(potential - (3 * 0.5 * 1.5 / 1.0 + 3 * 2.0 / 8)) < TWENTY_DIGITS
     assert abs(flux[2] - 3 * (0.5 - 1.0)) < TWENTY_DIGITS
+
+
+def test_integrals_over_rectangles_add_up_and_meet_known_values() -> None:
+    """Spreading plate of the published table; halves of a section make the whole."""
+    pad = (0.0375, 0.0625, 0.0375, 0.0625)
+    plate = Case(
+        (0.1, 0.1, 0.0013),
+        (200.0, 200.0, 200.0),
+        walls(z_low=Wall("N", Cells(0.0, ((*pad, 1600.0),))), z_high=Wall("R", 0.0, 100.0)),
+    )
+    over = OverRectangles(plate, 2)
+    area = (arithmetic.mpf(pad[1]) - arithmetic.mpf(pad[0])) ** 2
+    assert abs(over.integral(0.0, pad)[0] / area - arithmetic.mpf("1.52697555238767")) < 1e-14
+    whole = over.integral(0.001, (0.0, 0.1, 0.0, 0.1))
+    halves = [over.integral(0.001, (*ends, 0.0, 0.1)) for ends in ((0.0, 0.03), (0.03, 0.1))]
+    for which in (0, 1):
+        assert abs(halves[0][which] + halves[1][which] - whole[which]) < TWENTY_DIGITS
+    # All that goes in, 1600 on the pad, goes through every section.
+    assert abs(whole[1] - 1600 * area) < TWENTY_DIGITS

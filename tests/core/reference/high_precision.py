@@ -2,7 +2,7 @@
 
     u = sum over driven faces and sources of  int_0^inf  X(t) Y(t) Z(t) dt,
 
-each factor by images at short times and eigenfunctions at long ones, in 45-digit arithmetic; the integral
+each factor by images at short times and eigenfunctions at long ones, in 60-digit arithmetic; the integral
 by the trapezoidal rule in log t (Trefethen and Weideman, SIAM Review 56, 2014). `series.py` computes the
 same by double eigenfunction series; `test_reference.py` compares both and fields known in closed form.
 
@@ -26,7 +26,8 @@ from tests.core.reference.steady_line import attenuated_held_wall, steady_profil
 
 # The error of the trapezoidal rule is about exp(-pi^2 / step) = 2e-27.
 STEP = arithmetic.mpf("0.16")
-NEGLIGIBLE = arithmetic.mpf("1e-26")
+# Below this part of the largest term a sum that shrinks like the root of time is cut off, some ten terms short.
+NEGLIGIBLE = arithmetic.mpf("1e-24")
 LIMIT_OF_NODES = 6000
 
 Terms = list[tuple[tuple[int, int, int], Number]]
@@ -203,7 +204,7 @@ class HighPrecision:
 
         if drive.wall is not None and drive.wall.depth == 0:
             steady = _add(steady, self._slope_on_own_face(drive, drive.wall, constant))
-        return _add(steady, trapezoid(integrand, self._last_time(drive), drive.first_time()))
+        return _add(steady, trapezoid(integrand, self._last_time(drive), drive.first_time(), steady))
 
     def _integrate_held(self, drive: Drive, wall: WallResponse) -> list[Number]:
         """As above for a held face: the local value, slowly attenuated, is integrated in closed form.
@@ -233,7 +234,11 @@ class HighPrecision:
             return _along(across, axis, z, dz)
 
         last = SMALL_EXPONENT / (rate + wall.line.rate(0))
-        return _add(steady, trapezoid(integrand, last, drive.first_time()))
+        beside = list(steady)
+        if not wall.line.is_endless:
+            # A slope far below value / length is nothing beside those of other drives.
+            beside[1 + axis] = max(abs(beside[1 + axis]), abs(local[0]) / wall.line.length)
+        return _add(steady, trapezoid(integrand, last, drive.first_time(), beside))
 
     def _slowest_rate(self, without: int | None) -> Number:
         """Slowest decay of the product of lines, beside the constant over the section."""
@@ -299,10 +304,15 @@ def _add(first: Sequence[Number], second: Sequence[Number]) -> list[Number]:
     return [a + b for a, b in zip(first, second, strict=True)]
 
 
-def trapezoid(integrand: Callable[[Number], list[Number]], last: Number, first: Number) -> list[Number]:
-    """Integral of what is nothing after `last` and a mere power of time before `first`."""
+def trapezoid(
+    integrand: Callable[[Number], list[Number]], last: Number, first: Number, beside: Sequence[Number]
+) -> list[Number]:
+    """Integral of what is nothing after `last` and a mere power of time before `first`.
+
+    beside: what the integrals are added to; terms that are negligible beside it end the sum.
+    """
     total = [ZERO] * 4
-    peaks = [ZERO] * 4
+    peaks = [abs(part) for part in beside]
     shrink = arithmetic.exp(-STEP)
     time = last
     quiet = 0

@@ -19,10 +19,10 @@ from typing import Any, TypeAlias
 
 import mpmath
 
-# 45 digits leave more than 20 after the worst cancellation: a film of Biot number 1e-9 at a distance of
+# 60 digits leave more than 20 after the worst cancellation: a film of Biot number 1e-9 at a distance of
 # 1e-8 sides.
 arithmetic = mpmath.mp.clone()
-arithmetic.dps = 45
+arithmetic.dps = 60
 # mpmath carries no types; the name says what is meant.
 Number: TypeAlias = Any
 
