@@ -1,7 +1,8 @@
-"""Bounds of means and of flows through faces, parts of faces and planes, against values of more than twenty digits.
+"""Bounds of means and of flows through faces, parts of faces and planes, against values of more than twenty
+digits.
 
-Random bodies of the whole range, driven on the faces square to one axis; a random rectangle of that axis' faces
-and of a plane between them.
+Random bodies of the whole range, driven on the faces square to one axis; a random rectangle of that axis'
+faces and of a plane between them.
 """
 
 from __future__ import annotations

@@ -26,7 +26,8 @@ from tests.core.reference.steady_line import attenuated_held_wall, steady_profil
 
 # The error of the trapezoidal rule is about exp(-pi^2 / step) = 2e-27.
 STEP = arithmetic.mpf("0.16")
-# Below this part of the largest term a sum that shrinks like the root of time is cut off, some ten terms short.
+# Below this part of the largest term a sum that shrinks like the root of time is cut off, some ten terms
+# short.
 NEGLIGIBLE = arithmetic.mpf("1e-24")
 LIMIT_OF_NODES = 6000
 
