@@ -28,7 +28,8 @@ from service.core.problem import (
     Insulated,
 )
 from service.core.solution import Solution, solve
-from service.core.totals import Balance, Bounded, Total, UnboundedCause
+from service.core.totals import Balance, Bounded, Total
+from service.core.unbounded import UnboundedCause
 
 __all__ = [
     "AXES",

@@ -1,4 +1,4 @@
-"""How an answer converges: by terms of the eigenfunction series, by nodes of the time form, and what more would cost."""
+"""How an answer converges: by terms of the series, by nodes of the time form, and what a tighter answer costs."""
 
 from __future__ import annotations
 
@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import field, series, time_form
+from service.core import field, series, time_error, time_form
 from service.core.certificate import by_series
 from service.core.field import Setting
 from service.core.lines.line import VALUE, Line
@@ -174,7 +174,7 @@ def _node_step(setting: Setting, place: FloatArray, step: float, value: float) -
     for part in setting.parts:
         integral = time_form.integrate(setting.lines, part, places, step)
         total += float(time_form.at_points(integral)[0])
-        bound += float(time_form.bound_at_points(integral)[0])
+        bound += float(time_error.bound_at_points(integral)[0])
         nodes = max(nodes, integral.node_count)
     return NodeStep(nodes, total, abs(total - value), bound)
 

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 
-from service.core import field, time_form
+from service.core import field, time_range
 from service.core.field import Setting
 
 # Factors of one line cost about this many multiplications a value: special functions and sums over breaks.
@@ -58,5 +58,5 @@ def at_points(setting: Setting, count: int, tolerance: float, with_flux: bool) -
 def _nodes(setting: Setting, tolerance: float) -> float:
     """Nodes of the longest range any part can take: from the earliest time that is looked at to the last."""
     least = min(line.extent for line in setting.lines if not line.is_endless)
-    last = time_form.CUT / time_form.slowest_rate(setting.lines)
-    return (math.log(last / least**2) - math.log(time_form.EARLIEST_FOR_SLOPES)) / field.step_for(setting, tolerance)
+    last = time_range.CUT / time_range.slowest_rate(setting.lines)
+    return (math.log(last / least**2) - math.log(time_range.EARLIEST_FOR_SLOPES)) / field.step_for(setting, tolerance)

@@ -17,7 +17,7 @@ from scipy.ndimage import maximum_filter
 
 from service.core import field
 from service.core.field import Grid, Setting
-from service.core.problem import AXES, Body, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
+from service.core.problem import AXES, Body, Film, Held, Inflow, axes_along, axis_of, is_high
 
 FloatArray = NDArray[np.float64]
 
@@ -142,11 +142,17 @@ def _steps(values: FloatArray, at: tuple[int, int, int]) -> float:
     """Sum over the axes of the smaller step from a peak to its neighbours, which a smooth peak cannot exceed."""
     total = 0.0
     for axis in range(3):
-        line = np.moveaxis(values, axis, 0)[(slice(None), *(at[other] for other in range(3) if other != axis))]
+        line = _line_through(values, at, axis)
         here = at[axis]
         near = [abs(float(line[here] - line[other])) for other in (here - 1, here + 1) if 0 <= other < line.size]
         total += min(near, default=0.0)
     return total
+
+
+def _line_through(values: FloatArray, at: tuple[int, int, int], axis: int) -> FloatArray:
+    """Values along an axis through a place of a grid."""
+    first, second = (at[other] for other in range(3) if other != axis)
+    return np.asarray(np.moveaxis(values, axis, 0)[:, first, second])
 
 
 def _climb(
@@ -187,7 +193,7 @@ def _vertex(places: FloatArray, values: FloatArray, top: tuple[int, int, int], a
 
     At the end of the axis with the field falling from it, the end itself and 0.
     """
-    line = np.moveaxis(values, axis, 0)[(slice(None), *(top[other] for other in range(3) if other != axis))]
+    line = _line_through(values, top, axis)
     here = top[axis]
     if places.size < 3:
         return float(places[here]), 0.0

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import time_form
+from service.core import time_error, time_form, time_range
 from service.core.errors import AccuracyNotReached, OutsideBody
 from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order
 from service.core.lines.time_response import Places, TimeResponse, respond
@@ -150,7 +150,7 @@ def check_inside(body: Body, columns: Sequence[FloatArray]) -> None:
 def rough_potential(setting: Setting, columns: Sequence[FloatArray]) -> FloatArray:
     """Potential on a small grid to a few digits, for scales."""
     places = [Places(column, VALUE) for column in columns]
-    integrals = [time_form.integrate(setting.lines, part, places, time_form.COARSEST_STEP) for part in setting.parts]
+    integrals = [time_form.integrate(setting.lines, part, places, time_error.COARSEST_STEP) for part in setting.parts]
     return sum((time_form.on_grid(integral) for integral in integrals), start=np.zeros(()))
 
 
@@ -170,7 +170,7 @@ def kept_rows() -> time_form.Rows:
 def step_for(setting: Setting, tolerance: float) -> float:
     """The step in ln t to begin with for an absolute tolerance."""
     size = SPREAD_HEADROOM * max(setting.span, 1e-300) * max(len(setting.parts), 1)
-    return time_form.step_for(max(tolerance, 1e-300) / size)
+    return time_error.step_for(max(tolerance, 1e-300) / size)
 
 
 def _accurate(
@@ -189,16 +189,16 @@ def _accurate(
         if setting.reference != 0.0:
             potential += setting.reference
         largest = max(float(potential.max()), -float(potential.min()))
-        bound = _largest(bounds, tensor) + STORED * largest + time_form.CUT_ERROR * setting.span
+        bound = _largest(bounds, tensor) + STORED * largest + time_range.CUT_ERROR * setting.span
         if bound <= tolerance:
             return potential, bound, nodes
-        if step <= time_form.FINEST_STEP:
+        if step <= time_error.FINEST_STEP:
             raise AccuracyNotReached(
                 f"The accuracy asked for is {tolerance:.3g}; the best bound that can be promised here is {bound:.3g}.",
                 bound,
                 ("accuracy",),
             )
-        step = time_form.step_for(0.5 * time_form.step_error(step) * tolerance / bound)
+        step = time_error.step_for(0.5 * time_error.step_error(step) * tolerance / bound)
 
 
 def _largest(bounds: list[FloatArray], tensor: bool) -> float:
@@ -226,7 +226,7 @@ def _flux(
             bound = bounds[0]
         np.maximum(flux_bound, factor * bound, out=flux_bound)
     steepest = max(math.sqrt(k) / line.extent for k, line in zip(setting.body.conductivity, setting.lines, strict=True))
-    return flux, flux_bound + STORED * np.abs(flux).max(axis=0) + time_form.CUT_ERROR * setting.span * steepest
+    return flux, flux_bound + STORED * np.abs(flux).max(axis=0) + time_range.CUT_ERROR * setting.span * steepest
 
 
 def _sum_of_parts(
@@ -255,13 +255,13 @@ def _sum_of_parts(
         answer = time_form.on_grid(integral) if tensor else time_form.at_points(integral)
         total = answer if total is None else np.add(total, answer, out=total)
         if tensor:
-            quick = time_form.bound_everywhere(integral) if enough > 0.0 else math.inf
+            quick = time_error.bound_everywhere(integral) if enough > 0.0 else math.inf
             sharp = quick > enough / len(setting.parts)
-            more = time_form.bound_on_grid(integral) if sharp else (quick, quick, quick)
+            more = time_error.bound_on_grid(integral) if sharp else (quick, quick, quick)
             for bound, part_bound in zip(bounds, more, strict=True):
                 bound += part_bound
         else:
-            bounds[0] += time_form.bound_at_points(integral)
+            bounds[0] += time_error.bound_at_points(integral)
     return np.zeros(shape) if total is None else total, bounds, nodes
 
 

@@ -127,9 +127,8 @@ class Rectangle:
 
     def overlaps(self, other: Rectangle) -> bool:
         """Whether the two share more than an edge."""
-        return (
-            max(self.p_low, other.p_low) < min(self.p_high, other.p_high)
-            and max(self.q_low, other.q_low) < min(self.q_high, other.q_high)
+        return max(self.p_low, other.p_low) < min(self.p_high, other.p_high) and max(self.q_low, other.q_low) < min(
+            self.q_high, other.q_high
         )
 
 

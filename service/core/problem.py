@@ -137,9 +137,7 @@ class Body:
         for face, condition in self.faces.items():
             if face not in self.present_faces:
                 raise NotPhysical(f"A semi-infinite bar has no face {face}.", ("faces", face))
-            if isinstance(condition, Film) and not (
-                condition.coefficient > 0 and math.isfinite(condition.coefficient)
-            ):
+            if isinstance(condition, Film) and not (condition.coefficient > 0 and math.isfinite(condition.coefficient)):
                 raise NotPhysical(
                     f"The film coefficient of {face} is {condition.coefficient:g}; it has to be greater than zero.",
                     ("faces", face, "coefficient"),

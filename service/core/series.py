@@ -16,13 +16,12 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
-from itertools import permutations
 
 import numpy as np
 from numpy.typing import NDArray
 
 from service.core.lines import laplace
-from service.core.lines.line import VALUE, Drive, Line, WallDrive, breaks_of, wall_distance
+from service.core.lines.line import VALUE, Drive, Line, WallDrive, active_breaks, wall_distance
 from service.core.lines.modes import eigen_integrals, modes_of
 from service.core.lines.time_response import Places
 from service.core.split import Part
@@ -34,6 +33,8 @@ LAST_EXPONENT = 36.0
 
 # More terms than this are not summed at one place; the time form stands alone there.
 MOST_TERMS = 250_000
+
+ORDERS: tuple[tuple[int, int, int], ...] = ((0, 1, 2), (0, 2, 1), (1, 0, 2), (1, 2, 0), (2, 0, 1), (2, 1, 0))
 
 # Rounding of one term relative to its size, and where f / gamma^2 and the waves cancel relative to that: there the
 # error of gamma counts as well.
@@ -69,7 +70,7 @@ def summed(lines: Sequence[Line], part: Part, point: Sequence[float]) -> SeriesV
     """A part's field at a point by the order of axes that gives the best bound, or None if all take too many terms."""
     orders = [
         (_cost(lines, part, point, order), order)
-        for order in permutations((0, 1, 2))
+        for order in ORDERS
         if not any(lines[axis].is_endless for axis in order[1:])
     ]
     best: SeriesValue | None = None
@@ -88,13 +89,8 @@ def reach(line: Line, drive: Drive, place: float) -> float:
     """Scaled distance from a place to the nearest break of what drives its line, infinite where there is none."""
     if isinstance(drive, WallDrive):
         return float(wall_distance(line, np.array([place]), high=drive.high)[0])
-    breaks = breaks_of(line, drive)
-    knots, jumps, slope_jumps = breaks.knots, breaks.jumps, breaks.slope_jumps
-    active = jumps.any(axis=1) | slope_jumps.any(axis=1)
-    if line.film_low == 0.0:
-        active[0] = slope_jumps[0].any()
-    if line.film_high == 0.0 and not line.is_endless:
-        active[-1] = slope_jumps[-1].any()
+    knots, has_jump, has_kink = active_breaks(line, drive)
+    active = has_jump | has_kink
     if not active.any():
         return math.inf
     return float(np.abs(place - knots[active]).min()) * line.scale
@@ -177,11 +173,12 @@ def _profile_share(line: Line, drive: Drive, rates: FloatArray) -> FloatArray:
     """Size of f / gamma^2 and of the kinks' waves, whose rounding remains where they nearly cancel."""
     if isinstance(drive, WallDrive):
         return np.zeros_like(rates)
-    size = float(np.abs(drive.left).max())
+    decaying = rates > 0
+    divisor = np.where(decaying, rates, 1.0)
+    sizes = np.full_like(rates, np.abs(drive.left).max())
     if line.is_endless:
-        slope = float(np.abs(drive.slopes).max()) / line.scale
-        size = size + slope / np.sqrt(np.where(rates > 0, rates, 1.0))
-    return np.where(rates > 0, size / np.where(rates > 0, rates, 1.0), 0.0)
+        sizes += float(np.abs(drive.slopes).max()) / line.scale / np.sqrt(divisor)
+    return np.where(decaying, sizes / divisor, 0.0)
 
 
 def partial_sums(

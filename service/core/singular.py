@@ -47,9 +47,9 @@ def local_data(face_map: FaceMap, p: FloatArray, q: FloatArray) -> LocalData:
         return LocalData(np.full((1, *p.shape), face_map.lowest), (nothing, nothing))
     values, slopes_p, slopes_q = [], [], []
     for side_p in ("left", "right"):
-        i = np.clip(np.searchsorted(knots_p, p, side=side_p) - 1, 0, knots_p.size - 2)  # type: ignore[call-overload]
+        i = np.clip(np.searchsorted(knots_p, p, side=side_p) - 1, 0, knots_p.size - 2)
         for side_q in ("left", "right"):
-            j = np.clip(np.searchsorted(knots_q, q, side=side_q) - 1, 0, knots_q.size - 2)  # type: ignore[call-overload]
+            j = np.clip(np.searchsorted(knots_q, q, side=side_q) - 1, 0, knots_q.size - 2)
             if not face_map.bilinear:
                 values.append(table[i, j])
                 slopes_p.append(np.zeros(p.shape))

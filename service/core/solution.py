@@ -61,17 +61,13 @@ class Solution:
         self, grid: Grid, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
     ) -> Field:
         """Potential, and flux density if asked for, on a grid."""
-        return fields.on_grid(
-            self._setting, grid, tolerance=tolerance, with_flux=with_flux, keep_going=keep_going
-        )
+        return fields.on_grid(self._setting, grid, tolerance=tolerance, with_flux=with_flux, keep_going=keep_going)
 
     def field_at(
         self, points: FloatArray, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
     ) -> Field:
         """Potential, and flux density if asked for, at points, shape (n, 3)."""
-        return fields.at_points(
-            self._setting, points, tolerance=tolerance, with_flux=with_flux, keep_going=keep_going
-        )
+        return fields.at_points(self._setting, points, tolerance=tolerance, with_flux=with_flux, keep_going=keep_going)
 
     def extremes(self, *, tolerance: float, keep_going: KeepGoing | None = None) -> Extremes:
         """The hottest and the coldest place of the closed body."""
@@ -115,9 +111,7 @@ class Solution:
         """Flow into the body through a face or a rectangle of it; unbounded where held values meet in a jump."""
         return totals.face_total(self._setting, face, rectangle, gap, tolerance)
 
-    def plane_total(
-        self, axis: int, position: float, rectangle: Rectangle | None = None, *, tolerance: float
-    ) -> Total:
+    def plane_total(self, axis: int, position: float, rectangle: Rectangle | None = None, *, tolerance: float) -> Total:
         """Flow along an axis through a plane square to it or a rectangle of that plane."""
         return totals.plane_total(self._setting, axis, position, rectangle, tolerance)
 
@@ -164,4 +158,3 @@ def _sample(lines: tuple[Line, Line, Line], parts: tuple[Part, ...], axis: int) 
             places.extend(middle[np.isfinite(middle)])
     unique = np.unique(places)
     return unique[np.unique(np.linspace(0, unique.size - 1, min(unique.size, 9)).astype(int))]
-

@@ -50,11 +50,11 @@ def check_steady_state(body: Body) -> None:
             )
 
 
-def map_integral(face_map: FaceMap, low: tuple[float, float], high: tuple[float, float]) -> float:
-    """Integral of a map over a rectangle of its face."""
+def map_integral(face_map: FaceMap, low: tuple[float, float], high: tuple[float, float]) -> tuple[float, float]:
+    """Integral of a map over a bounded rectangle of its face, and the sum of the sizes of its products."""
     first = face_map.first.integrals(np.array([low[0]]), np.array([high[0]]))
     second = face_map.second.integrals(np.array([low[1]]), np.array([high[1]]))
-    return float(np.nansum(first * second))
+    return float((first * second).sum()), float(np.abs(first * second).sum())
 
 
 def given_inflows(body: Body, face: Face) -> list[float]:
@@ -113,9 +113,9 @@ def _flow_per_length_far_away(body: Body) -> tuple[float, float]:
         if isinstance(condition, Inflow):
             across = body.size[axes_along(face)[0]]
             flows.extend(_far_inflows(condition.inflow, across))
-    for source in body.sources:
-        if source.high[2] == math.inf:
-            flows.append(
-                source.density * (source.high[0] - source.low[0]) * (source.high[1] - source.low[1])
-            )
+    flows.extend(
+        source.density * (source.high[0] - source.low[0]) * (source.high[1] - source.low[1])
+        for source in body.sources
+        if source.high[2] == math.inf
+    )
     return math.fsum(flows), math.fsum(map(abs, flows))

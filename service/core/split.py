@@ -28,8 +28,9 @@ UNIT = FaceMap.uniform(1.0).first
 class Part:
     """A part of the problem: for each axis what drives that line; the columns of profiles belong together.
 
-    factor: the field is this times the product of the lines' answers. wall_axis: the axis whose end is driven, None for generation inside. cause: the face, or SOURCES.
-    face_map: the data of the face, counted from the reference, or None.
+    factor: the field is this times the product of the lines' answers. wall_axis: the axis whose end is driven, None
+    for generation inside. cause: the face, or SOURCES. face_map: the data of the face, counted from the reference,
+    or None.
     """
 
     drives: tuple[Drive, Drive, Drive]

@@ -4,11 +4,6 @@ A total over a held face is unbounded where the face meets another value in a ju
 the flux is 2 k J / (pi r), beside a jump inside a held face k J / (pi r), with k the geometric mean of the
 conductivities across the line (elementary local solutions u = 2 J theta / pi and J theta / pi). Each factor e by
 which a gap left out beside the line shrinks adds `coefficient` to the total.
-
-A bounded total is the limit of totals with a gap. The time integral of each part begins at a common time instead of
-ending at a common gap, and the two differ by a constant: for a held face's own data f at an edge with another held
-face, (2 / pi) k f per length, because  integral over r > gap of 2 / (pi r)  and the same cut in time at t0 differ by
-(2 / pi) (1 + gamma / 2) there and by (2 / pi) gamma / 2 for the other face's data (gamma: Euler's constant).
 """
 
 from __future__ import annotations
@@ -20,23 +15,20 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import time_form
+from service.core import time_error, time_form, time_range
 from service.core.errors import NotPhysical, OutsideBody
-from service.core.field import Setting, kept_rows, step_for
+from service.core.field import STORED, Setting, kept_rows, step_for
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE
 from service.core.lines.time_response import Places
-from service.core.maps import FaceMap, Rectangle
-from service.core.problem import AXES, Body, Face, Held, Inflow, Insulated, axes_along, axis_of, is_high, map_of
-from service.core.singular import edge_name, line_name, local_data
+from service.core.maps import Rectangle
+from service.core.problem import AXES, Body, Face, Held, Inflow, Insulated, axes_along, axis_of, is_high
 from service.core.solvability import generation, map_integral
+from service.core.unbounded import NO_JUMP, UnboundedCause, cut_constant, unbounded_lines
 
 FloatArray = NDArray[np.float64]
 
 # Totals are computed with an error factor this much below the field's: their bound is in flow, not in potential.
 HEADROOM = 1e-3
-
-# Where an unbounded coefficient is below this part of what its line could carry it is zero: two maps that meet.
-NO_JUMP = 1e-12
 
 
 @dataclass(frozen=True)
@@ -45,21 +37,6 @@ class Bounded:
 
     value: float
     error_bound: float
-
-
-@dataclass(frozen=True)
-class UnboundedCause:
-    """Why a total has no bound.
-
-    kind: "edge" of two held faces, "jump_line" inside a held face, or "endless" for a side that goes on for ever.
-    line: which. coefficient: flow gained for each factor e by which the gap shrinks; for "endless" flow per length.
-    largest_jump: largest difference of the values that meet.
-    """
-
-    kind: str
-    line: str
-    coefficient: float
-    largest_jump: float
 
 
 @dataclass(frozen=True)
@@ -111,9 +88,7 @@ def mean(setting: Setting, face: Face, rectangle: Rectangle | None, tolerance: f
     return Bounded(setting.reference + value / scale, bound / scale)
 
 
-def plane_total(
-    setting: Setting, axis: int, position: float, rectangle: Rectangle | None, tolerance: float
-) -> Total:
+def plane_total(setting: Setting, axis: int, position: float, rectangle: Rectangle | None, tolerance: float) -> Total:
     """Flow in the direction of an axis through a plane square to it, strictly inside the body or on its faces."""
     if not (0 <= position <= setting.body.size[axis] and math.isfinite(position)):
         raise OutsideBody(
@@ -129,9 +104,7 @@ def plane_total(
     return _flow(setting, axis, position, rectangle, 1.0, tolerance)
 
 
-def face_total(
-    setting: Setting, face: Face, rectangle: Rectangle | None, gap: float | None, tolerance: float
-) -> Total:
+def face_total(setting: Setting, face: Face, rectangle: Rectangle | None, gap: float | None, tolerance: float) -> Total:
     """Flow into the body through a face or a rectangle of it.
 
     gap: width of the strip to leave out along each line that makes the total unbounded, for `with_gap`.
@@ -142,12 +115,7 @@ def face_total(
     if isinstance(condition, Insulated):
         return Total(0.0, 0.0)
     if isinstance(condition, Inflow):
-        given = map_integral(
-            condition.inflow, (rectangle.p_low, rectangle.q_low), (rectangle.p_high, rectangle.q_high)
-        )
-        if not math.isfinite(given):
-            return Total(None, None, (UnboundedCause("endless", face, _far_inflow(condition, rectangle), 0.0),))
-        return Total(given, 4e-16 * abs(given))
+        return _given_total(face, condition, rectangle)
     causes = unbounded_lines(body, face, rectangle) if isinstance(condition, Held) else []
     net = [cause for cause, _ in causes if cause.coefficient != 0.0]
     finite = finite_part(setting, face, rectangle, tolerance)
@@ -164,7 +132,7 @@ def finite_part(setting: Setting, face: Face, rectangle: Rectangle, tolerance: f
     total = _flow(setting, axis, _end(setting.body, face), rectangle, sign, tolerance)
     if total.value is None:
         return total
-    return Total(total.value - _cut_constant(setting, face, rectangle), total.error_bound)
+    return Total(total.value - cut_constant(setting.body, face, rectangle, setting.reference), total.error_bound)
 
 
 def balance(setting: Setting, tolerance: float, gap: float | None) -> Balance:
@@ -179,147 +147,13 @@ def balance(setting: Setting, tolerance: float, gap: float | None) -> Balance:
     for face, total in inflow.items():
         if total.value is None:
             total = finite_part(setting, face, whole_face(body, axis_of(face)), tolerance)
-        assert total.value is not None and total.error_bound is not None
+        assert total.value is not None
+        assert total.error_bound is not None
         values.append(total.value)
         bounds.append(total.error_bound)
     residual = math.fsum(values)
     bound = math.fsum(bounds)
     return Balance(inflow, generated, residual, bound, abs(residual) <= bound)
-
-
-def unbounded_lines(body: Body, face: Face, rectangle: Rectangle) -> list[tuple[UnboundedCause, tuple[int, bool]]]:
-    """Borders of a rectangle of a held face along which the flow out of it has no bound.
-
-    Each with which border it is: the axis along the face (0 or 1) that the border is square to, and whether it is
-    the high one. A line that the rectangle reaches across is no cause: the two sides cancel.
-    """
-    causes = []
-    for index in (0, 1):
-        for high in (False, True):
-            cause = _border_cause(body, face, rectangle, index, high)
-            if cause is not None:
-                causes.append((cause, (index, high)))
-    return causes
-
-
-def _border_cause(body: Body, face: Face, rectangle: Rectangle, index: int, high: bool) -> UnboundedCause | None:
-    axis = axis_of(face)
-    across, along = axes_along(face)[index], axes_along(face)[1 - index]
-    place, (low, top) = _border(rectangle, index, high)
-    if math.isinf(place):
-        return None
-    own = map_of(body.faces[face])
-    assert own is not None
-    knots = own.second_knots if index == 0 else own.first_knots
-    neighbour: FaceMap | None = None
-    name, kind, share = line_name(face, across, place), "jump_line", 1.0
-    if place in (0.0, body.size[across]):
-        other: Face = f"{AXES[across]}_{'low' if place == 0.0 else 'high'}"  # type: ignore[assignment]
-        condition = body.faces[other]
-        if not isinstance(condition, Held):
-            return None
-        neighbour = condition.value
-        along_first = axes_along(other)[0] == along
-        knots = np.concatenate([knots, neighbour.first_knots if along_first else neighbour.second_knots])
-        name, kind, share = edge_name(face, other), "edge", 2.0
-    at, weights = _fine_rule(knots, low, top)
-    if at.size == 0:
-        return None
-    jump, size = _jump_along(body, face, own, neighbour, index, place, high, at)
-    net, largest = float(weights @ jump), float(np.abs(jump).max())
-    if largest <= NO_JUMP * size:
-        return None
-    mean_conductivity = math.sqrt(body.conductivity[axis] * body.conductivity[across])
-    coefficient = share / math.pi * mean_conductivity * net
-    if abs(net) <= NO_JUMP * float(weights @ np.abs(jump)):
-        coefficient = 0.0
-    return UnboundedCause(kind, name, coefficient, largest)
-
-
-def _border(rectangle: Rectangle, index: int, high: bool) -> tuple[float, tuple[float, float]]:
-    """Where a border lies and from where to where it runs."""
-    p, q = (rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high)
-    across, along = (p, q) if index == 0 else (q, p)
-    return across[1 if high else 0], along
-
-
-def _fine_rule(knots: FloatArray, low: float, high: float) -> tuple[FloatArray, FloatArray]:
-    """Gauss points and weights on each stretch between knots, exact for the bilinear data of both faces."""
-    if math.isinf(high):
-        finite = knots[np.isfinite(knots)]
-        high = max(float(finite.max()), low) + 1.0
-    cuts = np.unique(np.concatenate([[low, high], knots[(knots > low) & (knots < high)]]))
-    nodes, weights = np.polynomial.legendre.leggauss(4)
-    half = 0.5 * np.diff(cuts)
-    middle = 0.5 * (cuts[1:] + cuts[:-1])
-    return (middle[:, None] + half[:, None] * nodes).ravel(), (half[:, None] * weights).ravel()
-
-
-def _jump_along(
-    body: Body,
-    face: Face,
-    own: FaceMap,
-    neighbour: FaceMap | None,
-    index: int,
-    place: float,
-    high: bool,
-    at: FloatArray,
-) -> tuple[FloatArray, float]:
-    """Own value less the other's along a border, and the size of the data."""
-    inside = _side_value(own, index, place, at, from_above=not high)
-    if neighbour is None:
-        outside = _side_value(own, index, place, at, from_above=high)
-    else:
-        # On the neighbour the edge is where its own axis, square to this face, ends.
-        across = axes_along(face)[index]
-        end = body.size[axis_of(face)] if is_high(face) else 0.0
-        position = 1 - axes_along(across).index(axes_along(face)[1 - index])
-        outside = _side_value(neighbour, position, end, at, from_above=end == 0.0)
-    size = float(max(np.abs(inside).max(), np.abs(outside).max()))
-    return inside - outside, size
-
-
-def _side_value(face_map: FaceMap, index: int, place: float, at: FloatArray, *, from_above: bool) -> FloatArray:
-    """Values along a line of a map where one axis is at `place`, from its upper or lower side."""
-    if face_map.is_uniform:
-        return np.full_like(at, face_map.lowest)
-    fixed = np.full_like(at, place)
-    p, q = (fixed, at) if index == 0 else (at, fixed)
-    values = local_data(face_map, p, q).values
-    # The order of the four sides: (left, left), (left, right), (right, left), (right, right).
-    if index == 0:
-        pair = values[2:] if from_above else values[:2]
-    else:
-        pair = values[1::2] if from_above else values[0::2]
-    return np.asarray(pair.mean(axis=0))
-
-
-def _cut_constant(setting: Setting, face: Face, rectangle: Rectangle) -> float:
-    """What the cut in time adds to a held face's total at its edges with other held faces (see the module)."""
-    body, axis = setting.body, axis_of(face)
-    condition = body.faces[face]
-    if not isinstance(condition, Held):
-        return 0.0
-    own = condition.value.minus(setting.reference)
-    total = 0.0
-    for index in (0, 1):
-        across = axes_along(face)[index]
-        for high in (False, True):
-            place, (low, top) = _border(rectangle, index, high)
-            knots = own.second_knots if index == 0 else own.first_knots
-            at, weights = _fine_rule(knots, low, top)
-            if math.isinf(place) or at.size == 0:
-                continue
-            mean_conductivity = math.sqrt(body.conductivity[axis] * body.conductivity[across])
-            inside = _side_value(own, index, place, at, from_above=not high)
-            if place in (0.0, body.size[across]):
-                other: Face = f"{AXES[across]}_{'low' if place == 0.0 else 'high'}"  # type: ignore[assignment]
-                if isinstance(body.faces[other], Held):
-                    total += 2 / math.pi * mean_conductivity * float(weights @ inside)
-            else:
-                outside = _side_value(own, index, place, at, from_above=high)
-                total += 1 / math.pi * mean_conductivity * float(weights @ (inside - outside))
-    return total
 
 
 def _with_gap(
@@ -344,9 +178,7 @@ def _with_gap(
     return Bounded(total.value, total.error_bound)
 
 
-def _flow(
-    setting: Setting, axis: int, position: float, rectangle: Rectangle, sign: float, tolerance: float
-) -> Total:
+def _flow(setting: Setting, axis: int, position: float, rectangle: Rectangle, sign: float, tolerance: float) -> Total:
     """sign times the flow along an axis through a rectangle of a plane; endless ones are followed to the far field."""
     first, second = axes_along(axis)
     factor = -sign * math.sqrt(setting.body.conductivity[axis])
@@ -367,7 +199,7 @@ def _far_along(setting: Setting) -> float:
     """A distance along an endless bar beyond which the field shows nothing of its end, in the caller's unit."""
     knots = [part.knots(2) for part in setting.parts]
     last = max((float(knot[np.isfinite(knot)].max()) for knot in knots if knot.size), default=0.0)
-    return last + 2 * time_form.CUT / math.sqrt(time_form.slowest_rate(setting.lines)) / setting.lines[2].scale
+    return last + 2 * time_range.CUT / math.sqrt(time_range.slowest_rate(setting.lines)) / setting.lines[2].scale
 
 
 def _integral(
@@ -383,7 +215,7 @@ def _integral(
     for part in setting.parts:
         integral = time_form.integrate(setting.lines, part, places, step, rows)
         value += float(time_form.at_points(integral)[0])
-        bound += float(time_form.bound_at_points(integral)[0])
+        bound += float(time_error.bound_at_points(integral)[0])
     return value, bound
 
 
@@ -409,9 +241,19 @@ def _end(body: Body, face: Face) -> float:
     return body.size[axis_of(face)] if is_high(face) else 0.0
 
 
-def _far_inflow(condition: Inflow, rectangle: Rectangle) -> float:
-    first = condition.inflow.first.integrals(np.array([rectangle.p_low]), np.array([rectangle.p_high]))[0]
-    return float(first @ condition.inflow.second.right[-1])
+def _given_total(face: Face, condition: Inflow, rectangle: Rectangle) -> Total:
+    """A given inflow integrated over a rectangle; its bound is the rounding of the products it is summed from."""
+    given = condition.inflow
+    if math.isinf(rectangle.q_high):
+        first = given.first.integrals(np.array([rectangle.p_low]), np.array([rectangle.p_high]))[0]
+        far = float(first @ given.second.right[-1])
+        size = float(np.abs(first) @ np.abs(given.second.right[-1]))
+        if abs(far) > NO_JUMP * size or (size > 0 and given.is_uniform):
+            return Total(None, None, (UnboundedCause("endless", face, far, 0.0),))
+        last = max(float(given.second_knots[-2]), rectangle.q_low)
+        rectangle = Rectangle(rectangle.p_low, rectangle.p_high, rectangle.q_low, last)
+    value, size = map_integral(given, (rectangle.p_low, rectangle.q_low), (rectangle.p_high, rectangle.q_high))
+    return Total(value, STORED * size)
 
 
 def _negated(total: Total) -> Total:

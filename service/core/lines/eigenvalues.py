@@ -35,10 +35,8 @@ def roots(biot_low: float, biot_high: float, count: int) -> FloatArray:
     their appendix IV tabulates the two special cases.
     """
     m = np.arange(count, dtype=float)
-    if biot_low == 0.0 and biot_high == 0.0:
-        found = m * math.pi
-    else:
-        found = _newton(m * math.pi, biot_low, biot_high)
+    both_insulated = biot_low == 0.0 and biot_high == 0.0
+    found = m * math.pi if both_insulated else _newton(m * math.pi, biot_low, biot_high)
     found.setflags(write=False)
     return found
 

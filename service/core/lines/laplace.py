@@ -9,11 +9,13 @@ reflections nearly cancel, and the same solution is written with cosh and sinh o
 from __future__ import annotations
 
 import math
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines.line import PRIMITIVE, VALUE, Drive, Line, Order, WallDrive, breaks_of, wall_distance
+from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Drive, Line, Order, WallDrive, breaks_of, wall_distance
+from service.core.lines.steady import closed_line_wall, half_line_profile, half_line_wall
 from service.core.lines.time_response import Places
 from service.core.maps import Profiles
 
@@ -90,7 +92,7 @@ def _wall_by_waves(line: Line, drive: WallDrive, coordinates: FloatArray, gamma:
     s = wall_distance(line, coordinates, high=drive.high)
     amplitude = float(wall_amplitude(near, gamma)) if gamma > 0 or near > 0 else 0.0
     if gamma == 0.0:
-        return _steady_half_line_wall(s, near, order)
+        return half_line_wall(s, near, order)
     back, echo = np.zeros_like(s), 0.0
     if not line.is_endless:
         returned = float(reflection(far, gamma))
@@ -106,20 +108,13 @@ def _wall_by_waves(line: Line, drive: WallDrive, coordinates: FloatArray, gamma:
     return inward * factor * (back - forth) / gamma
 
 
-def _steady_half_line_wall(s: FloatArray, film: float, order: Order) -> FloatArray:
-    """A half-line at rest takes the held value or the ambient; under an inflow it falls in a straight line."""
-    if film == 0.0:
-        return (-0.5 * s * s, -np.ones_like(s), -s)[(1, -1, 0).index(order)]
-    return (s, np.zeros_like(s), np.ones_like(s))[(1, -1, 0).index(order)]
-
-
 def _wall_by_hyperbolics(
     line: Line, drive: WallDrive, coordinates: FloatArray, gamma: float | FloatArray, order: Order
 ) -> FloatArray:
     """At one gamma for many places, or at many for one place."""
     near, far = (line.film_high, line.film_low) if drive.high else (line.film_low, line.film_high)
     if np.ndim(gamma) == 0 and gamma == 0.0 and line.keeps_its_mean:
-        return _closed_line_wall(line, drive, coordinates, order)
+        return closed_line_wall(line, drive, coordinates, order)
     # psi grows from the far end: psi' = H psi there; the answer is psi over what it does at the near end.
     d = wall_distance(line, coordinates, high=not drive.high)
     whole = np.array([line.extent])
@@ -134,17 +129,6 @@ def _wall_by_hyperbolics(
         factor = near / (slope + near * value)
     towards = 1.0 if drive.high else -1.0
     return factor * _psi(far, d, gamma, order) * (1.0 if order == 0 else towards)
-
-
-def _closed_line_wall(line: Line, drive: WallDrive, coordinates: FloatArray, order: Order) -> FloatArray:
-    """(l - s)^2 / 2l - l / 6: an inflow at one end taken out evenly all along, with mean zero."""
-    d, length = wall_distance(line, coordinates, high=not drive.high), line.extent
-    towards = 1.0 if drive.high else -1.0
-    if order == 0:
-        return d * d / (2 * length) - length / 6
-    if order == -1:
-        return towards * d / length
-    return towards * (d**3 / (6 * length) - d * length / 6)
 
 
 def _psi(film: float, d: FloatArray, gamma: float | FloatArray, order: Order) -> FloatArray:
@@ -166,7 +150,7 @@ def _psi(film: float, d: FloatArray, gamma: float | FloatArray, order: Order) ->
 
 def _profile(line: Line, profiles: Profiles, places: Places, gamma: float) -> FloatArray:
     if gamma == 0.0 and line.is_endless:
-        return _steady_half_line(line, profiles, places)
+        return half_line_profile(line, profiles, places)
     if line.is_endless or gamma * line.extent > SMALL_LENGTH:
         waves = departure(line, profiles, places, np.array([gamma]))[:, 0]
         return waves + places.profile(line, profiles) / gamma**2
@@ -177,9 +161,7 @@ def departure(line: Line, profiles: Profiles, places: Places, gamma: FloatArray)
     """The transformed answer less f / gamma^2: waves from the breaks, shape (n, n_gamma, n_profiles)."""
     if places.high is None:
         return _waves(line, profiles, places.low, gamma, places.order)
-    return _waves(line, profiles, places.high, gamma, PRIMITIVE) - _waves(
-        line, profiles, places.low, gamma, PRIMITIVE
-    )
+    return _waves(line, profiles, places.high, gamma, PRIMITIVE) - _waves(line, profiles, places.low, gamma, PRIMITIVE)
 
 
 def _waves(line: Line, profiles: Profiles, coordinates: FloatArray, gamma: FloatArray, order: Order) -> FloatArray:
@@ -253,7 +235,7 @@ def _by_green_function(line: Line, profiles: Profiles, places: Places, gamma: fl
         for index in range(places.low.size):
             inside = knots[(knots > places.low[index]) & (knots < places.high[index])]
             cuts = np.concatenate([[places.low[index]], inside, [places.high[index]]])
-            for start, stop in zip(cuts[:-1], cuts[1:], strict=True):
+            for start, stop in pairwise(cuts):
                 middle, half = 0.5 * (start + stop), 0.5 * (stop - start)
                 at = _by_green_function(line, profiles, Places(middle + half * nodes, VALUE), gamma)
                 total[index] += (weights * half * line.scale) @ at
@@ -279,78 +261,16 @@ def _green(line: Line, x: FloatArray, source: FloatArray, gamma: float, order: O
         if order == -1:
             return here / length - np.where(here >= there, 1.0, 0.0)
         return length / 3 - np.maximum(here, there) + (here * here + there * there) / (2 * length)
-    low = lambda place, n: _psi(line.film_low, place * line.scale, gamma, n)  # noqa: E731
-    high = lambda place, n: _psi(line.film_high, (line.length - place) * line.scale, gamma, n)  # noqa: E731
+
+    def low(place: FloatArray, n: Order) -> FloatArray:
+        return _psi(line.film_low, place * line.scale, gamma, n)
+
+    def high(place: FloatArray, n: Order) -> FloatArray:
+        return _psi(line.film_high, (line.length - place) * line.scale, gamma, n)
+
     end = np.array([line.length])
-    if line.film_high == math.inf:
-        wronskian = low(end, VALUE)
-    else:
-        wronskian = low(end, -1) + line.film_high * low(end, VALUE)
-    above = low(source, VALUE) * (high(x, VALUE) if order == 0 else -high(x, -1))
+    held = line.film_high == math.inf
+    wronskian = low(end, VALUE) if held else low(end, SLOPE) + line.film_high * low(end, VALUE)
+    above = low(source, VALUE) * (high(x, VALUE) if order == 0 else -high(x, SLOPE))
     below = high(source, VALUE) * low(x, order)
     return np.where(x >= source, above, below) / wronskian
-
-
-def _steady_half_line(line: Line, profiles: Profiles, places: Places) -> FloatArray:
-    """The steady answer of a half-line to generation on a bounded part of it.
-
-    Green's function is min(x, x') + 1 / H, or -max(x, x') with an insulated end, where a constant is left open.
-    What the profiles come to far away is left out.
-    """
-    knots = profiles.knots * line.scale
-    finite = np.isfinite(knots[1:])
-    columns = np.zeros((places.low.size, profiles.n_profiles))
-    for piece in np.flatnonzero(finite):
-        start, stop = knots[piece], knots[piece + 1]
-        # Generation that has no end has to cancel between the drives of a body, so that each may go without it.
-        left, slope = profiles.left[piece] - profiles.left[-1], profiles.slopes[piece] / line.scale
-        if places.high is None:
-            shape = _half_line_piece(line, places.low * line.scale, start, stop, places.order)
-        else:
-            shape = _half_line_piece(line, places.high * line.scale, start, stop, PRIMITIVE)
-            shape = shape - _half_line_piece(line, places.low * line.scale, start, stop, PRIMITIVE)
-        columns += shape[0][:, None] * left + shape[1][:, None] * slope
-    return columns
-
-
-def _half_line_piece(
-    line: Line, x: FloatArray, start: float, stop: float, order: Order
-) -> tuple[FloatArray, FloatArray]:
-    """Answer to 1 and to (x' - start) on one piece: polynomials in x, by moments of the piece to the right of x."""
-    width = stop - start
-    whole = (width, width**2 / 2)
-    first_moment = (start * whole[0] + whole[1], start * whole[1] + width**3 / 3)
-    answers = []
-    for n in range(2):
-        # Beyond[k] is the k-fold integral from x to infinity of the piece's generation, k = 1, 2, 3.
-        beyond = [_beyond(x, start, width, n, k) for k in (1, 2, 3)]
-        # U = integral of min(x, x') f = first moment - twofold integral beyond x
-        level = whole[n] / line.film_low if 0 < line.film_low < math.inf else 0.0
-        constant = first_moment[n] + level
-        if line.film_low == 0.0:
-            # -max(x, x') = min(x, x') - x - x'
-            value, slope, primitive = -beyond[1] - whole[n] * x, beyond[0] - whole[n], beyond[2] - whole[n] * x * x / 2
-        else:
-            value, slope = constant - beyond[1], beyond[0]
-            primitive = constant * x + beyond[2]
-        answers.append({0: value, -1: slope, 1: primitive}[order])
-    return answers[0], answers[1]
-
-
-def _beyond(x: FloatArray, start: float, width: float, power: int, fold: int) -> FloatArray:
-    """The k-fold integral from x upwards of (x' - start)^power on [start, start + width], zero elsewhere."""
-    y = np.clip(x - start, 0.0, width)
-    rest = width - y
-    # Inside the piece: integral of (x' - y)^(k-1) / (k-1)! times x'^power from y to width.
-    inside = rest**fold / math.factorial(fold)
-    if power == 1:
-        inside = y * inside + rest ** (fold + 1) * fold / math.factorial(fold + 1)
-    # Left of the piece the moments are taken about x.
-    before = np.maximum(start - x, 0.0)
-    total = inside
-    for shift in range(1, fold):
-        lower = width ** (fold - shift) / math.factorial(fold - shift)
-        if power == 1:
-            lower = width ** (fold - shift + 1) * (fold - shift) / math.factorial(fold - shift + 1)
-        total = total + np.where(before > 0, before**shift / math.factorial(shift) * lower, 0.0)
-    return total

@@ -104,3 +104,18 @@ def breaks_of(line: Line, profiles: Profiles) -> Breaks:
     if line.is_endless:
         knots, jumps, slope_jumps = knots[:-1], jumps[:-1], slope_jumps[:-1]
     return Breaks(knots, jumps, slope_jumps, bool(slope_jumps.any()))
+
+
+def active_breaks(line: Line, profiles: Profiles) -> tuple[FloatArray, NDArray[np.bool_], NDArray[np.bool_]]:
+    """Knots, and which of them send out a jump and which a kink as time begins, shape (n_breaks,) each.
+
+    An insulated end mirrors the profile and sends out nothing but a slope; behind a film the profile begins to
+    change as sqrt(t), like a kink.
+    """
+    breaks = breaks_of(line, profiles)
+    has_jump, has_kink = np.array(breaks.jumps.any(axis=1)), np.array(breaks.slope_jumps.any(axis=1))
+    ends = [(0, line.film_low)] if line.is_endless else [(0, line.film_low), (-1, line.film_high)]
+    for index, film in ends:
+        has_kink[index] |= has_jump[index] and 0.0 < film < math.inf
+        has_jump[index] &= film == math.inf
+    return breaks.knots, has_jump, has_kink

@@ -143,5 +143,6 @@ def _bessel_over_wave(phase: FloatArray) -> FloatArray:
     small = np.abs(phase) < 0.3
     y = np.where(small, 1.0, phase)
     square = np.where(small, phase, 0.0) ** 2
-    series = np.where(small, phase, 0.0) / 3 * (1 - square / 10 * (1 - square / 28 * (1 - square / 54 * (1 - square / 88))))
+    nested = 1 - square / 10 * (1 - square / 28 * (1 - square / 54 * (1 - square / 88)))
+    series = np.where(small, phase, 0.0) / 3 * nested
     return np.where(small, series, (np.sin(y) - y * np.cos(y)) / (y * y))

@@ -1,0 +1,129 @@
+"""From when to when the time integral has to run."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core.lines.line import Drive, Line, WallDrive, active_breaks, wall_distance
+from service.core.lines.modes import modes_of
+from service.core.lines.time_response import Places
+from service.core.maps import Profiles
+from service.core.split import Part
+
+FloatArray = NDArray[np.float64]
+
+# The range of integration ends where the integrand is below exp(-CUT) = 2e-22 of its size; what is cut at both ends
+# is below CUT_ERROR of what drives the body.
+CUT, CUT_ERROR = 50.0, 1e-21
+
+# Where a line leaves its profile as sqrt(t), the range begins where that is below this part of the rule's own error;
+# a slope on a driven face meets it with t^(-3/2), and begins where the square of that is below rounding.
+EARLIEST, EARLIEST_FOR_SLOPES = 1e-3, 1e-30
+
+# Part of the slowest time constant by which a range has begun where a profile or a mean is let go with it:
+# (t / release)^(5/2) is then below rounding.
+LATEST_BEGINNING = 3e-7
+
+# Ranges begin at multiples of this in ln t: parts that begin at about the same time share their lines' answers.
+LATTICE = 3.0
+
+
+def times_for(
+    lines: Sequence[Line], part: Part, places: Sequence[Places], step: float, rule_error: float
+) -> FloatArray:
+    """Nodes of the time integral of a part, evenly spaced in ln t.
+
+    rule_error: relative error of the trapezoidal rule on that step.
+    """
+    slowest = slowest_rate(lines)
+    last = CUT / slowest
+    lets_go = profile_is_taken_out(lines, part, places) or is_undying(lines)
+    first = _first_time(lines, part, places, EARLIEST * rule_error)
+    # A plain integrand begins only when the front from its end arrives; the others begin with what is let go.
+    first = min(first, LATEST_BEGINNING / slowest if lets_go else last / 16)
+    begin = LATTICE * math.floor(math.log(first) / LATTICE)
+    return np.exp(step * np.arange(math.floor(begin / step), math.ceil(math.log(last) / step) + 1))
+
+
+def slowest_rate(lines: Sequence[Line]) -> float:
+    """Decay rate of the slowest product of modes, not counting one that does not decay at all."""
+    finite = [line for line in lines if not line.is_endless]
+    rates = [modes_of(line, 2).rates for line in finite]
+    together = sum(float(rate[0]) for rate in rates)
+    return together if together > 0 else min(float(rate[1]) for rate in rates)
+
+
+def is_undying(lines: Sequence[Line]) -> bool:
+    """Whether the product of the lines' means never decays: a closed body, or a bar with insulated sides."""
+    sides_keep = lines[0].keeps_its_mean and lines[1].keeps_its_mean
+    return sides_keep and (lines[2].keeps_its_mean or lines[2].is_endless)
+
+
+def profile_is_taken_out(lines: Sequence[Line], part: Part, places: Sequence[Places]) -> bool:
+    """Whether the driven line is asked on its driven end, or for a slope, where its kernel is not integrable alone."""
+    if part.wall_axis is None:
+        return False
+    drive, asked = part.drives[part.wall_axis], places[part.wall_axis]
+    assert isinstance(drive, WallDrive)
+    if asked.order == -1:
+        return True
+    end = lines[part.wall_axis].length if drive.high else 0.0
+    return bool((asked.low == end).any() or (asked.high is not None and (asked.high == end).any()))
+
+
+def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], earliest: float) -> float:
+    """Where the integrand begins to matter.
+
+    A front from a jump matters as soon as it arrives at the nearest place that is not on the jump itself. A kink, a
+    film end or the end of an interval matters from the beginning, but only as sqrt(t).
+    """
+    wall = part.wall_axis
+    if wall is not None and not profile_is_taken_out(lines, part, places):
+        return _nearest_to_wall(lines[wall], part.drives[wall], places[wall]) ** 2 / (4 * CUT)
+    slopes = any(asked.order == -1 for asked in places)
+    least = min(line.extent for line in lines if not line.is_endless)
+    film = max((film for line in lines for film in (line.film_low, line.film_high) if film < math.inf), default=0.0)
+    floor = least**2 * (EARLIEST_FOR_SLOPES / (1 + film * least) ** 2 if slopes else earliest / (1 + film * least))
+    if wall is None and not slopes:
+        return floor
+    if wall is not None and _film_at(lines[wall], part.drives[wall]) > 0:
+        # The kernel of a held end, or of a film like it, is large up to the square of the distance from it.
+        floor = min(floor, _nearest_to_wall(lines[wall], part.drives[wall], places[wall]) ** 2 / (4 * CUT))
+    along = [axis for axis in range(3) if axis != wall]
+    jump, other = np.min([_nearest_to_break(lines[axis], part.drives[axis], places[axis]) for axis in along], axis=0)
+    return float(min(jump**2 / (4 * CUT), max(other**2 / (4 * CUT), floor), least**2))
+
+
+def _film_at(line: Line, drive: Drive) -> float:
+    assert isinstance(drive, WallDrive)
+    return line.film_high if drive.high else line.film_low
+
+
+def _nearest_to_wall(line: Line, drive: Drive, places: Places) -> float:
+    """Least scaled distance from the driven end, of places that are not on it."""
+    assert isinstance(drive, WallDrive)
+    ends = [places.low] if places.high is None else [places.low, places.high]
+    distances = np.concatenate([wall_distance(line, end, high=drive.high) for end in ends])
+    return float(distances[distances > 0].min(initial=line.extent))
+
+
+def _nearest_to_break(line: Line, drive: Drive, places: Places) -> tuple[float, float]:
+    """Least scaled distance to a jump from a place not on it, and to a kink or film end; infinite if there is none.
+
+    Intervals may end on a break, which shows as sqrt(t) like a kink.
+    """
+    assert isinstance(drive, Profiles)
+    if places.high is not None:
+        return math.inf, 0.0
+    knots, has_jump, has_kink = active_breaks(line, drive)
+    distances = np.abs(places.low[:, None] - knots) * line.scale
+    near_jump = distances[:, has_jump]
+    other = float(distances[:, has_kink].min(initial=math.inf))
+    if places.order == -1 and (near_jump == 0).any():
+        # On a held end the slope begins as 1 / sqrt(t).
+        other = 0.0
+    return float(near_jump[near_jump > 0].min(initial=math.inf)), other

@@ -1,0 +1,175 @@
+"""Lines along which the flow out of a held face has no bound.
+
+Beside the edge of two held faces that differ by J the flux is 2 k J / (pi r), beside a jump J inside a held face
+k J / (pi r), with k the geometric mean of the conductivities across the line (elementary local solutions
+u = 2 J theta / pi and J theta / pi). Each factor e by which a gap left out beside the line shrinks adds
+`coefficient` to the total.
+
+A bounded total is the limit of totals with a gap. The time integral of each part begins at a common time instead of
+ending at a common gap, and the two differ by a constant: for a held face's own data f at an edge with another held
+face, (2 / pi) k f per length, because  integral over r > gap of 2 / (pi r)  and the same cut in time at t0 differ by
+(2 / pi) (1 + gamma / 2) there and by (2 / pi) gamma / 2 for the other face's data (gamma: Euler's constant).
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core.maps import FaceMap, Rectangle
+from service.core.problem import AXES, Body, Face, Held, axes_along, axis_of, is_high, map_of
+from service.core.singular import edge_name, line_name, local_data
+
+FloatArray = NDArray[np.float64]
+
+# Where a jump, or the sum of jumps along a line, is below this part of the data's size it is zero: two maps that meet.
+NO_JUMP = 1e-12
+
+
+@dataclass(frozen=True)
+class UnboundedCause:
+    """Why a total has no bound.
+
+    kind: "edge" of two held faces, "jump_line" inside a held face, or "endless" for a side that goes on for ever.
+    line: which. coefficient: flow gained for each factor e by which the gap shrinks; for "endless" flow per length.
+    largest_jump: largest difference of the values that meet.
+    """
+
+    kind: str
+    line: str
+    coefficient: float
+    largest_jump: float
+
+
+def unbounded_lines(body: Body, face: Face, rectangle: Rectangle) -> list[tuple[UnboundedCause, tuple[int, bool]]]:
+    """Borders of a rectangle of a held face along which the flow out of it has no bound.
+
+    Each with which border it is: the axis along the face (0 or 1) that the border is square to, and whether it is
+    the high one. A line that the rectangle reaches across is no cause: the two sides cancel.
+    """
+    causes = []
+    for index in (0, 1):
+        for high in (False, True):
+            cause = _border_cause(body, face, rectangle, index, high)
+            if cause is not None:
+                causes.append((cause, (index, high)))
+    return causes
+
+
+def _border_cause(body: Body, face: Face, rectangle: Rectangle, index: int, high: bool) -> UnboundedCause | None:
+    axis = axis_of(face)
+    across, along = axes_along(face)[index], axes_along(face)[1 - index]
+    place, (low, top) = _border(rectangle, index, high)
+    if math.isinf(place):
+        return None
+    own = map_of(body.faces[face])
+    assert own is not None
+    knots = own.second_knots if index == 0 else own.first_knots
+    neighbour: FaceMap | None = None
+    name, kind, share = line_name(face, across, place), "jump_line", 1.0
+    if place in (0.0, body.size[across]):
+        other: Face = f"{AXES[across]}_{'low' if place == 0.0 else 'high'}"  # type: ignore[assignment]
+        condition = body.faces[other]
+        if not isinstance(condition, Held):
+            return None
+        neighbour = condition.value
+        along_first = axes_along(other)[0] == along
+        knots = np.concatenate([knots, neighbour.first_knots if along_first else neighbour.second_knots])
+        name, kind, share = edge_name(face, other), "edge", 2.0
+    at, weights = _fine_rule(knots, low, top)
+    if at.size == 0:
+        return None
+    jump, size = _jump_along(body, face, own, neighbour, index, place, high, at)
+    net, largest = float(weights @ jump), float(np.abs(jump).max())
+    if largest <= NO_JUMP * size:
+        return None
+    mean_conductivity = math.sqrt(body.conductivity[axis] * body.conductivity[across])
+    coefficient = share / math.pi * mean_conductivity * net
+    if abs(net) <= NO_JUMP * float(weights @ np.abs(jump)):
+        coefficient = 0.0
+    return UnboundedCause(kind, name, coefficient, largest)
+
+
+def _border(rectangle: Rectangle, index: int, high: bool) -> tuple[float, tuple[float, float]]:
+    """Where a border lies and from where to where it runs."""
+    p, q = (rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high)
+    across, along = (p, q) if index == 0 else (q, p)
+    return across[1 if high else 0], along
+
+
+def _fine_rule(knots: FloatArray, low: float, high: float) -> tuple[FloatArray, FloatArray]:
+    """Gauss points and weights on each stretch between knots, exact for the bilinear data of both faces."""
+    if math.isinf(high):
+        finite = knots[np.isfinite(knots)]
+        high = max(float(finite.max()), low) + 1.0
+    cuts = np.unique(np.concatenate([[low, high], knots[(knots > low) & (knots < high)]]))
+    nodes, weights = np.polynomial.legendre.leggauss(4)
+    half = 0.5 * np.diff(cuts)
+    middle = 0.5 * (cuts[1:] + cuts[:-1])
+    return (middle[:, None] + half[:, None] * nodes).ravel(), (half[:, None] * weights).ravel()
+
+
+def _jump_along(
+    body: Body,
+    face: Face,
+    own: FaceMap,
+    neighbour: FaceMap | None,
+    index: int,
+    place: float,
+    high: bool,
+    at: FloatArray,
+) -> tuple[FloatArray, float]:
+    """Own value less the other's along a border, and the size of the data."""
+    inside = _side_value(own, index, place, at, from_above=not high)
+    if neighbour is None:
+        outside = _side_value(own, index, place, at, from_above=high)
+    else:
+        # On the neighbour the edge is where its own axis, square to this face, ends.
+        across = axes_along(face)[index]
+        end = body.size[axis_of(face)] if is_high(face) else 0.0
+        position = 1 - axes_along(across).index(axes_along(face)[1 - index])
+        outside = _side_value(neighbour, position, end, at, from_above=end == 0.0)
+    size = float(max(np.abs(inside).max(), np.abs(outside).max()))
+    return inside - outside, size
+
+
+def _side_value(face_map: FaceMap, index: int, place: float, at: FloatArray, *, from_above: bool) -> FloatArray:
+    """Values along a line of a map where one axis is at `place`, from its upper or lower side."""
+    if face_map.is_uniform:
+        return np.full_like(at, face_map.lowest)
+    fixed = np.full_like(at, place)
+    p, q = (fixed, at) if index == 0 else (at, fixed)
+    values = local_data(face_map, p, q).values
+    # The order of the four sides: (left, left), (left, right), (right, left), (right, right).
+    by_side = values.reshape(2, 2, *at.shape) if index == 0 else values.reshape(2, 2, *at.shape).swapaxes(0, 1)
+    return np.asarray(by_side[1 if from_above else 0].mean(axis=0))
+
+
+def cut_constant(body: Body, face: Face, rectangle: Rectangle, reference: float) -> float:
+    """What the cut in time adds to a held face's total at its edges with other held faces (see the module)."""
+    axis, condition = axis_of(face), body.faces[face]
+    if not isinstance(condition, Held):
+        return 0.0
+    own = condition.value.minus(reference)
+    total = 0.0
+    for index in (0, 1):
+        across = axes_along(face)[index]
+        for high in (False, True):
+            place, (low, top) = _border(rectangle, index, high)
+            knots = own.second_knots if index == 0 else own.first_knots
+            at, weights = _fine_rule(knots, low, top)
+            if math.isinf(place) or at.size == 0:
+                continue
+            mean_conductivity = math.sqrt(body.conductivity[axis] * body.conductivity[across])
+            inside = _side_value(own, index, place, at, from_above=not high)
+            if place in (0.0, body.size[across]):
+                other: Face = f"{AXES[across]}_{'low' if place == 0.0 else 'high'}"  # type: ignore[assignment]
+                if isinstance(body.faces[other], Held):
+                    total += 2 / math.pi * mean_conductivity * float(weights @ inside)
+            else:
+                outside = _side_value(own, index, place, at, from_above=high)
+                total += 1 / math.pi * mean_conductivity * float(weights @ (inside - outside))
+    return total
