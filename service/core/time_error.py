@@ -101,16 +101,11 @@ def _rule_error(integral: Integral) -> float:
 def _rounded(integral: Integral, product: Product, sizes: Sequence[FloatArray]) -> FloatArray:
     """Sum over nodes of what rounding refers to: a factor's own size, or what its modes carry where they cancel."""
     if product.weights.size > 1:
-        sizes = [
-            np.maximum(size, _carried(line, drive, places, integral.times))
-            for size, line, drive, places in zip(
-                sizes, integral.lines, integral.part.drives, integral.places, strict=True
-            )
-        ]
+        sizes = [np.maximum(size, carried) for size, carried in zip(sizes, integral.carried, strict=True)]
     return _weigh(sizes[0] * sizes[1] * sizes[2], product.weights)
 
 
-def _carried(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
+def carried_by(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
     """Size of the modes that a line's late answers are summed from, shape (1, n_times, n_columns); 0 before that.
 
     Early answers are sums of images that keep their digits where they are small.

@@ -15,6 +15,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -23,7 +24,7 @@ from service.core.lines import laplace
 from service.core.lines.line import Drive, Line, WallDrive
 from service.core.lines.time_response import Places, TimeResponse, respond
 from service.core.split import Part
-from service.core.time_error import step_error
+from service.core.time_error import carried_by, step_error
 from service.core.time_range import is_undying, profile_is_taken_out, slowest_rate, times_for
 
 FloatArray = NDArray[np.float64]
@@ -59,6 +60,15 @@ class Integral:
     times: FloatArray
     step: float
     products: tuple[Product, ...]
+
+    @cached_property
+    def carried(self) -> Factors:
+        """For each axis what rounding in its factor refers to at each node, shape (1, n_nodes, n_columns)."""
+        x, y, z = (
+            carried_by(line, drive, places, self.times)
+            for line, drive, places in zip(self.lines, self.part.drives, self.places, strict=True)
+        )
+        return x, y, z
 
     @property
     def node_count(self) -> int:
@@ -193,14 +203,13 @@ def _contract(product: Product) -> FloatArray:
     shape = [factor.shape[0] for factor in product.factors]
     loop = int(np.argmin(shape))
     first, second = (axis for axis in range(3) if axis != loop)
+    if shape[loop] <= FEW_PLACES and columns == 1:
+        return _contract_few(product, loop, first, second)
     flat = [
         np.broadcast_to(factor, (factor.shape[0], nodes, columns)).reshape(factor.shape[0], -1)
         for factor in product.factors
     ]
     weighted = flat[loop] * np.repeat(np.broadcast_to(product.weights, nodes), columns)
-    if shape[loop] <= FEW_PLACES:
-        few = np.stack([(flat[first] * row) @ flat[second].T for row in weighted])
-        return np.moveaxis(few, 0, loop)
     right = np.ascontiguousarray(flat[second].T)
     size = np.abs(flat[first]).max(axis=0) * np.abs(flat[second]).max(axis=0)
     result = np.empty((shape[loop], shape[first], shape[second]))
@@ -208,6 +217,21 @@ def _contract(product: Product) -> FloatArray:
         kept = _kept(np.abs(row) * size)
         np.matmul(flat[first][:, kept] * row[kept], right[kept], out=result[index])
     return np.moveaxis(result, 0, loop)
+
+
+def _contract_few(product: Product, loop: int, first: int, second: int) -> FloatArray:
+    """The same for a product of single columns at few places along an axis: a plane or a line."""
+    rows, left, right = (np.asarray(product.factors[axis][:, :, 0]) for axis in (loop, first, second))
+    if right.shape[1] == 1:
+        left, right = right, left
+        first, second = second, first
+    weighted = rows * product.weights
+    if right.shape[1] == 1:
+        planes = [row.sum() * (left @ right.T) for row in weighted]
+    else:
+        planes = [(left * row) @ right.T for row in weighted]
+    result = np.stack(planes)
+    return np.moveaxis(result if first < second else result.swapaxes(1, 2), 0, loop)
 
 
 def _kept(sizes: FloatArray) -> slice:

@@ -212,11 +212,11 @@ def _sum(
 def _where_arrived(
     kernel: Callable[[FloatArray, FloatArray], FloatArray], distance: FloatArray, root_time: FloatArray
 ) -> FloatArray:
-    arrived = distance < ARRIVAL * root_time
-    values = np.zeros(arrived.shape)
-    near = np.broadcast_to(distance, arrived.shape)[arrived]
-    values[arrived] = kernel(near, np.broadcast_to(root_time, arrived.shape)[arrived])
-    return values
+    arrived = np.flatnonzero(distance < ARRIVAL * root_time)
+    values = np.zeros(distance.size * root_time.size)
+    at, when = np.divmod(arrived, root_time.size)
+    values[arrived] = kernel(distance.ravel()[at], root_time[when])
+    return values.reshape(*distance.shape[:-1], root_time.size)
 
 
 def wall_kernel(

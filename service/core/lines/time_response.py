@@ -35,6 +35,7 @@ class Places:
     order: Order
     high: FloatArray | None = None
     _shapes: dict[Line, FloatArray] = field(default_factory=dict, repr=False)
+    _profiles: dict[tuple[Line, Profiles], FloatArray] = field(default_factory=dict, repr=False)
 
     def mode_shapes(self, line: Line) -> FloatArray:
         """The line's eigenfunctions asked in the same way, shape (n, MODE_COUNT), kept for the next time."""
@@ -46,11 +47,15 @@ class Places:
 
     def profile(self, line: Line, profiles: Profiles) -> FloatArray:
         """The same asked of the profiles themselves, shape (n, n_profiles), per scaled length."""
-        if self.high is not None:
-            return profiles.integrals(self.low, self.high) * line.scale
-        if self.order == -1:
-            return profiles.slope_at(self.low) / line.scale
-        return profiles.at(self.low)
+        key = (line, profiles)
+        if key not in self._profiles:
+            if self.high is not None:
+                self._profiles[key] = profiles.integrals(self.low, self.high) * line.scale
+            elif self.order == -1:
+                self._profiles[key] = profiles.slope_at(self.low) / line.scale
+            else:
+                self._profiles[key] = profiles.at(self.low)
+        return self._profiles[key]
 
     def initial(self, line: Line, profiles: Profiles) -> FloatArray:
         """What the line answers just after time 0: the profile, but 0 on a held end and for a slope on any end."""
