@@ -112,10 +112,7 @@ def _map_arrays(value: Any, change: Any, name: str = "") -> Any:
     if isinstance(value, np.ndarray):
         return change(name, value)
     if isinstance(value, dict):
-        return {
-            key: _map_arrays(entry, change, f"{name}_{key}" if name else str(key))
-            for key, entry in value.items()
-        }
+        return {key: _map_arrays(entry, change, f"{name}_{key}" if name else str(key)) for key, entry in value.items()}
     if isinstance(value, list):
         return [_map_arrays(entry, change, f"{name}_{index}") for index, entry in enumerate(value)]
     return value

@@ -59,8 +59,7 @@ class BodyLimit:
 
     async def _refuse(self, scope: Scope, receive: Receive, send: Send) -> None:
         detail = (
-            f"The body is longer than {self._limit} bytes; store the problem once and refer to its id, "
-            "or send less."
+            f"The body is longer than {self._limit} bytes; store the problem once and refer to its id, or send less."
         )
         # What is left of the body is not read, so the connection cannot be used again.
         response = problem_response("body-too-large", detail, headers={"Connection": "close"})

@@ -14,23 +14,50 @@ from pydantic import BaseModel
 
 from service.media import ARRAYS
 from service.models.problem_details import ProblemDetails
+from service.problem_details import MEDIA_TYPE, document
+from service.refusals import Issue
 
 # Beside the package in a checkout, in an installation and in the image.
 EXAMPLES = Path(__file__).resolve().parent.parent / "openapi_examples"
 
 _PROBLEM_SCHEMA = "#/components/schemas/ProblemDetails"
 
+# For each status a description, and an error that ends in it: its type and its sentence.
 _ERRORS = {
-    400: "The body is not JSON as it has to be.",
-    404: "There is nothing at this address.",
-    406: "The answer has no form that the client accepts.",
-    413: "The body is too long.",
-    415: "The body is not application/json.",
-    422: "Fields of the request cannot be used, no such body or steady state exists, or a limit of the "
-    "server is passed; `type` tells which.",
-    503: "The service is busy; Retry-After tells when to try again.",
-    507: "The store of problems is full.",
+    400: ("The body is not JSON as it has to be.", "malformed-body", "The body is empty; a JSON object is wanted."),
+    404: ("There is nothing at this address.", "not-found", "No problem is stored under this id."),
+    406: (
+        "The answer has no form that the client accepts.",
+        "not-acceptable",
+        f"Answers are application/json or {ARRAYS}; name one of them in Accept, or leave it out.",
+    ),
+    413: ("The body is too long.", "body-too-large", "The body is longer than 2097152 bytes."),
+    415: (
+        "The body is not application/json.",
+        "unsupported-media-type",
+        "The body has to be sent with the header Content-Type: application/json.",
+    ),
+    422: (
+        "Fields of the request cannot be used, no such body or steady state exists, or a limit of the server "
+        "is passed; `type` tells which.",
+        "invalid-request",
+        "One field of the request cannot be used; see `errors`.",
+    ),
+    503: (
+        "The service is busy; Retry-After tells when to try again.",
+        "queue-full",
+        "All 4 workers are busy and 32 requests wait; try again later.",
+    ),
+    507: (
+        "The store of problems is full.",
+        "store-full",
+        "The problem needs 2048 bytes and 512 are free; send the problem with each question instead of its id.",
+    ),
 }
+
+_ISSUE = Issue(
+    ("problem", "body", "size", "x"), 'The unit "kg" does not measure length; wanted is a length such as mm.', "unit"
+)
 
 DESCRIPTION = """
 Steady potential fields (temperature, electric potential, concentration, hydraulic head) in rectangular
@@ -46,9 +73,7 @@ a flux component along its axis. Every error is a document of RFC 9457 with a po
 @lru_cache(maxsize=1)
 def load_examples() -> dict[str, dict[str, Any]]:
     """All example files by name: {"summary", "description", "method", "path", "request", "answer"} each."""
-    return {
-        file.stem: json.loads(file.read_text(encoding="utf-8")) for file in sorted(EXAMPLES.glob("*.json"))
-    }
+    return {file.stem: json.loads(file.read_text(encoding="utf-8")) for file in sorted(EXAMPLES.glob("*.json"))}
 
 
 def body_examples(path: str) -> dict[str, Example]:
@@ -79,13 +104,15 @@ def answer_examples(path: str) -> dict[str, Any]:
 
 def error_responses(*statuses: int) -> dict[int | str, dict[str, Any]]:
     """Descriptions of error answers, as problem documents only."""
-    return {
-        status: {
-            "description": _ERRORS[status],
-            "content": {"application/problem+json": {"schema": {"$ref": _PROBLEM_SCHEMA}}},
+    responses: dict[int | str, dict[str, Any]] = {}
+    for status in statuses:
+        description, kind, detail = _ERRORS[status]
+        example = document(kind, detail, (_ISSUE,) if kind == "invalid-request" else ())
+        responses[status] = {
+            "description": description,
+            "content": {MEDIA_TYPE: {"schema": {"$ref": _PROBLEM_SCHEMA}, "example": example}},
         }
-        for status in statuses
-    }
+    return responses
 
 
 def answer_responses(path: str, model: type[BaseModel]) -> dict[int | str, dict[str, Any]]:

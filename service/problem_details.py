@@ -162,9 +162,7 @@ async def _on_validation(_: Request, error: Exception) -> Response:
 async def _on_http_exception(request: Request, error: Exception) -> Response:
     """What the framework itself raises: unknown paths and methods above all."""
     assert isinstance(error, HTTPException)
-    kind = _TYPE_OF_STATUS.get(
-        error.status_code, "bad-request" if error.status_code < 500 else "internal-error"
-    )
+    kind = _TYPE_OF_STATUS.get(error.status_code, "bad-request" if error.status_code < 500 else "internal-error")
     headers = error.headers or {}
     details = {
         "not-found": "No such address; the calls are described at /docs.",

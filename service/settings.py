@@ -27,18 +27,14 @@ class Settings(BaseSettings):
         default_factory=list, description="Origins whose pages may call the service, as a JSON list."
     )
 
-    store_path: Path = Field(
-        Path("stillfield-problems.sqlite3"), description="File that keeps the stored problems."
-    )
+    store_path: Path = Field(Path("stillfield-problems.sqlite3"), description="File that keeps the stored problems.")
     store_bytes: PositiveInt = Field(
         512 * MEBIBYTE, description="Size of all stored problems together; beyond it new ones are refused."
     )
 
     body_bytes: PositiveInt = Field(2 * MEBIBYTE, description="Largest request body.")
     grids: PositiveInt = Field(16, description="Most grids in one request.")
-    grid_points: PositiveInt = Field(
-        2_000_000, description="Most places of all grids of one request together."
-    )
+    grid_points: PositiveInt = Field(2_000_000, description="Most places of all grids of one request together.")
     points: PositiveInt = Field(2_000, description="Most named points in one request.")
     convergence_points: PositiveInt = Field(16, description="Most points in one convergence request.")
     patches: PositiveInt = Field(200, description="Most patches on one face.")
@@ -50,12 +46,8 @@ class Settings(BaseSettings):
     cost_multiplications: PositiveFloat = Field(
         4e10, description="Most multiplications estimated for one request; about 10^9 take a second."
     )
-    memory_bytes: PositiveInt = Field(
-        1024 * MEBIBYTE, description="Most working memory estimated for one request."
-    )
-    answer_bytes: PositiveInt = Field(
-        128 * MEBIBYTE, description="Largest answer, estimated before the work."
-    )
+    memory_bytes: PositiveInt = Field(1024 * MEBIBYTE, description="Most working memory estimated for one request.")
+    answer_bytes: PositiveInt = Field(128 * MEBIBYTE, description="Largest answer, estimated before the work.")
     time_limit_seconds: PositiveFloat = Field(30.0, description="Longest computation of one request.")
 
     worker_threads: PositiveInt = Field(

@@ -4,6 +4,7 @@ all.
 
 from __future__ import annotations
 
+import sqlite3
 from dataclasses import dataclass
 
 from fastapi import Request
@@ -44,8 +45,17 @@ class State:
 
 
 def open_state(settings: Settings) -> State:
-    """A fresh state: the store's file is opened and the threads are ready."""
-    store = ProblemStore(settings.store_path, settings.store_bytes)
+    """A fresh state: the store's file is opened and the threads are ready.
+
+    Raises RuntimeError with a sentence for whoever starts the service when the file cannot be opened.
+    """
+    try:
+        store = ProblemStore(settings.store_path, settings.store_bytes)
+    except (OSError, sqlite3.Error) as error:
+        raise RuntimeError(
+            f"The store of problems at {settings.store_path} cannot be opened ({error}); "
+            "set STILLFIELD_STORE_PATH to a file that can be written."
+        ) from None
     worker = Worker(settings.worker_threads, settings.queue_length, settings.time_limit_seconds)
     solver = Solver(settings, store)
     answers: Kept[KeptAnswer] = Kept(settings.answer_cache_bytes, lambda answer: len(answer.body))

@@ -34,9 +34,7 @@ class ProblemStore:
         self._lock = threading.Lock()
         if str(path) != ":memory:":
             path.parent.mkdir(parents=True, exist_ok=True)
-        self._connection = sqlite3.connect(
-            path, timeout=_BUSY_SECONDS, isolation_level=None, check_same_thread=False
-        )
+        self._connection = sqlite3.connect(path, timeout=_BUSY_SECONDS, isolation_level=None, check_same_thread=False)
         # Readers do not wait for the writer, and what was answered as stored is on the disk.
         self._connection.execute("PRAGMA journal_mode=WAL")
         self._connection.execute("PRAGMA synchronous=FULL")
@@ -62,9 +60,7 @@ class ProblemStore:
     def get(self, problem_id: str) -> bytes | None:
         """The canonical text of a problem, None if it is not stored."""
         with self._lock:
-            row = self._connection.execute(
-                "SELECT content FROM problem WHERE id = ?", (problem_id,)
-            ).fetchone()
+            row = self._connection.execute("SELECT content FROM problem WHERE id = ?", (problem_id,)).fetchone()
         return None if row is None else bytes(row[0])
 
     def report(self) -> StoreReport:
@@ -81,10 +77,7 @@ class ProblemStore:
             self._connection.close()
 
     def _has(self, problem_id: str) -> bool:
-        return (
-            self._connection.execute("SELECT 1 FROM problem WHERE id = ?", (problem_id,)).fetchone()
-            is not None
-        )
+        return self._connection.execute("SELECT 1 FROM problem WHERE id = ?", (problem_id,)).fetchone() is not None
 
     def _check_room(self, wanted: int) -> None:
         (used,) = self._connection.execute("SELECT COALESCE(SUM(LENGTH(content)), 0) FROM problem").fetchone()

@@ -105,9 +105,7 @@ def _split(text: str) -> tuple[Fraction, str]:
     if not unit:
         raise UnitError("The text has no unit; add one, or write a bare number for the declared unit.")
     if unit[0] in ",.'_":
-        raise UnitError(
-            "The number is not readable; write decimals with a point and leave thousands unmarked."
-        )
+        raise UnitError("The number is not readable; write decimals with a point and leave thousands unmarked.")
     _check_unit_text(unit)
     if abs(float(number)) > LARGEST_NUMBER:
         raise UnitError(f"The number is too large; at most {LARGEST_NUMBER:g} is read.")

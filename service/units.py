@@ -43,9 +43,7 @@ class Physics:
     defaults: Mapping[Kind, str]
 
 
-def _names(
-    potential: str, conductivity: str, film: str, flux: str, density: str, flow: str
-) -> dict[Kind, str]:
+def _names(potential: str, conductivity: str, film: str, flux: str, density: str, flow: str) -> dict[Kind, str]:
     return {
         Kind.LENGTH: "a length",
         Kind.POTENTIAL: potential,
@@ -58,9 +56,7 @@ def _names(
     }
 
 
-def _units(
-    potential: str, conductivity: str, film: str, flux: str, density: str, flow: str
-) -> dict[Kind, str]:
+def _units(potential: str, conductivity: str, film: str, flux: str, density: str, flow: str) -> dict[Kind, str]:
     return {
         Kind.LENGTH: "m",
         Kind.POTENTIAL: potential,
@@ -157,9 +153,7 @@ class UnitSystem:
     @cached_property
     def _targets(self) -> dict[Kind, Target]:
         names = PHYSICS[self.potential].names
-        return {
-            kind: Target(unit, names[kind], kind is Kind.POTENTIAL) for kind, unit in self.declared.items()
-        }
+        return {kind: Target(unit, names[kind], kind is Kind.POTENTIAL) for kind, unit in self.declared.items()}
 
     @cached_property
     def _to_solver(self) -> dict[Kind, float]:

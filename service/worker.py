@@ -64,8 +64,7 @@ class Worker:
             if self._pending >= self._threads + self._queue_length:
                 self._turned_away += 1
                 raise QueueFull(
-                    f"All {self._threads} workers are busy and {self._queue_length} requests wait; try again "
-                    "later.",
+                    f"All {self._threads} workers are busy and {self._queue_length} requests wait; try again later.",
                     self._retry_after(),
                 )
             self._pending += 1

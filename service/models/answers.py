@@ -44,9 +44,7 @@ class Terms(Model):
     products: int = Field(
         description="Products of one-dimensional profiles that the data were split into.", examples=[2]
     )
-    series_terms: int = Field(
-        description="Terms of the double series at the checked places.", examples=[4096]
-    )
+    series_terms: int = Field(description="Terms of the double series at the checked places.", examples=[4096])
 
 
 class Certificate(Model):
@@ -70,9 +68,7 @@ class Certificate(Model):
     )
     checked_places: int = Field(description="At how many places both were evaluated.", examples=[3])
     terms: Terms = Field(description="How much was summed.")
-    method: str = Field(
-        description="How the answer was computed.", examples=["time form, checked by double series"]
-    )
+    method: str = Field(description="How the answer was computed.", examples=["time form, checked by double series"])
 
 
 class Remark(Model):

@@ -18,8 +18,7 @@ class SeriesStep(Model):
         description="How far it is from the answer; unit `potential_difference`.", examples=[0.0031]
     )
     tail_bound: float | None = Field(
-        description="Bound on the sum of all further terms; unit `potential_difference`. null where there is "
-        "none.",
+        description="Bound on the sum of all further terms; unit `potential_difference`. null where there is none.",
         examples=[0.02],
     )
 
@@ -29,9 +28,7 @@ class TimeStep(Model):
 
     nodes: int = Field(description="Nodes.", examples=[23])
     value: float = Field(description="Its value; unit `potential`.", examples=[412.3])
-    error: float = Field(
-        description="How far it is from the answer; unit `potential_difference`.", examples=[2e-6]
-    )
+    error: float = Field(description="How far it is from the answer; unit `potential_difference`.", examples=[2e-6])
     error_bound: float | None = Field(
         description="Bound on that, known before; unit `potential_difference`. null where there is none.",
         examples=[5e-5],
@@ -51,9 +48,7 @@ class ConvergencePoint(Model):
     name: str | None = Field(None, description="The name the request gave.", examples=["probe A"])
     at: list[float] = Field(description="Where, along x, y and z; unit `length`.", examples=[[20, 30, 5]])
     value: float = Field(description="The potential; unit `potential`.", examples=[412.3])
-    error_bound: float = Field(
-        description="It is not further off; unit `potential_difference`.", examples=[4e-8]
-    )
+    error_bound: float = Field(description="It is not further off; unit `potential_difference`.", examples=[4e-8])
     agreement: float | None = Field(
         description="Difference between the two representations; unit `potential_difference`. null where "
         "only one can be evaluated.",
@@ -64,14 +59,11 @@ class ConvergencePoint(Model):
         examples=[5e-9],
     )
     terms_needed: int | None = Field(
-        description="Series terms along each axis for the accuracy asked for; null where no number is "
-        "enough.",
+        description="Series terms along each axis for the accuracy asked for; null where no number is enough.",
         examples=[41],
     )
     series: list[SeriesStep] = Field(description="The double series with more and more terms.")
-    time_nodes: int = Field(
-        description="Nodes the integral over time takes for the accuracy asked for.", examples=[46]
-    )
+    time_nodes: int = Field(description="Nodes the integral over time takes for the accuracy asked for.", examples=[46])
     time_steps: list[TimeStep] = Field(description="The integral over time with more and more nodes.")
     tenfold_tighter: TenfoldTighter = Field(description="What ten times more accuracy costs.")
 

@@ -47,9 +47,7 @@ GridAxis = Annotated[
 class Grid(Model):
     """Places on a rectilinear grid. One fixed axis makes a plane, two make a line, three a point."""
 
-    name: Name | None = Field(
-        None, description="What to call the grid in the answer.", examples=["mid-plane"]
-    )
+    name: Name | None = Field(None, description="What to call the grid in the answer.", examples=["mid-plane"])
     x: GridAxis = Field(
         description="Places along x: one length, a list of lengths, or from, to and count.",
         examples=[{"from": 0, "to": 40, "count": 81}],
@@ -78,9 +76,7 @@ class Point(Model):
 
 def _check_patch_reference(value: Any) -> int | str:
     if isinstance(value, bool) or not isinstance(value, int | str) or value == "":
-        raise PydanticCustomError(
-            "patch", "The number of a patch, counted from 0, or its name is wanted here."
-        )
+        raise PydanticCustomError("patch", "The number of a patch, counted from 0, or its name is wanted here.")
     return value
 
 
@@ -93,9 +89,7 @@ class FacePart(AxisIntervals):
         description="A patch of the face's map, by its number from 0 or its name.",
         examples=["sight port", 0],
     )
-    name: Name | None = Field(
-        None, description="What to call the part in the answer.", examples=["left half"]
-    )
+    name: Name | None = Field(None, description="What to call the part in the answer.", examples=["left half"])
 
 
 def _kind_of_extent(value: Any) -> str:
@@ -181,9 +175,7 @@ class FieldsEvaluate(Model):
         default_factory=list,
         max_length=LONGEST_LIST,
         description="Grids of places.",
-        examples=[
-            [{"name": "mid-plane", "x": {"from": 0, "to": 40, "count": 81}, "y": [0, 30, 60], "z": 20}]
-        ],
+        examples=[[{"name": "mid-plane", "x": {"from": 0, "to": 40, "count": 81}, "y": [0, 30, 60], "z": 20}]],
     )
     points: list[Point] = Field(
         default_factory=list,
@@ -213,9 +205,7 @@ class FieldsEvaluate(Model):
     @model_validator(mode="after")
     def _something(self) -> Self:
         if not (self.grids or self.points or self.means or self.extremes):
-            raise PydanticCustomError(
-                "nothing", "Ask for something: `grids`, `points`, `means` or `extremes`."
-            )
+            raise PydanticCustomError("nothing", "Ask for something: `grids`, `points`, `means` or `extremes`.")
         return self
 
 

@@ -111,8 +111,7 @@ class SamplesMap(Model):
     )
     beyond: Literal["refuse", "hold"] = Field(
         "refuse",
-        description="What to do where the readings end before the face: refuse, or hold the outermost "
-        "reading.",
+        description="What to do where the readings end before the face: refuse, or hold the outermost reading.",
         examples=["hold"],
     )
     fill_missing: Literal["smooth"] | None = Field(
@@ -125,13 +124,9 @@ class SamplesMap(Model):
     @model_validator(mode="after")
     def _one_form(self) -> SamplesMap:
         if (self.csv is None) == (self.table is None):
-            raise PydanticCustomError(
-                "one_of", "Give the readings either as `table` with its axes or as `csv`."
-            )
+            raise PydanticCustomError("one_of", "Give the readings either as `table` with its axes or as `csv`.")
         if self.csv is not None and (self.x or self.y or self.z):
-            raise PydanticCustomError(
-                "one_of", "The axes of readings in `csv` stand in the text; leave x, y, z out."
-            )
+            raise PydanticCustomError("one_of", "The axes of readings in `csv` stand in the text; leave x, y, z out.")
         return self
 
 

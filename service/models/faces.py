@@ -35,12 +35,9 @@ class FluxFace(Model):
 class FilmFace(Model):
     """The flow per area into the body is coefficient * (ambient - potential)."""
 
-    condition: Literal["film"] = Field(
-        description="The inflow is coefficient * (ambient - potential of the face)."
-    )
+    condition: Literal["film"] = Field(description="The inflow is coefficient * (ambient - potential of the face).")
     coefficient: Quantity = Field(
-        description="Film coefficient of the whole face, greater than zero, in the declared unit "
-        "`film_coefficient`.",
+        description="Film coefficient of the whole face, greater than zero, in the declared unit `film_coefficient`.",
         examples=["850 W/(m^2 K)"],
     )
     ambient: FaceData = Field(

@@ -51,9 +51,7 @@ class GridAnswer(Model):
         description="No potential on the grid is further off; unit `potential_difference`.",
         examples=[4e-8],
     )
-    flux: FluxTables | None = Field(
-        None, description="The flux density vector; null where it has no finite value."
-    )
+    flux: FluxTables | None = Field(None, description="The flux density vector; null where it has no finite value.")
     flux_error_bound: Table | None = Field(
         None,
         description="No component of the flux at the place is further off; unit `flux`.",
@@ -101,9 +99,7 @@ class MeanAnswer(PartAnswer):
     """The mean potential of a face or a part of it."""
 
     value: float = Field(description="The mean; unit `potential`.", examples=[412.3])
-    error_bound: float = Field(
-        description="The mean is not further off; unit `potential_difference`.", examples=[4e-8]
-    )
+    error_bound: float = Field(description="The mean is not further off; unit `potential_difference`.", examples=[4e-8])
 
 
 class FieldsAnswer(Answer):

@@ -45,9 +45,7 @@ class InflowTotal(Model):
     )
     error_bound: float | None = Field(description="It is not further off; unit `flow`.", examples=[1e-6])
     unbounded: list[UnboundedCause] | None = Field(None, description="Why the inflow has no finite value.")
-    with_gap: InflowWithGap | None = Field(
-        None, description="The inflow with the gap, if `edge_gap` was named."
-    )
+    with_gap: InflowWithGap | None = Field(None, description="The inflow with the gap, if `edge_gap` was named.")
 
 
 class PartInflowTotal(PartAnswer, InflowTotal):
@@ -88,9 +86,7 @@ class Balance(Model):
         "without end has no finite inflow.",
         examples=[True],
     )
-    generation: float | None = Field(
-        description="Generation in the whole body; unit `flow`.", examples=[96000.0]
-    )
+    generation: float | None = Field(description="Generation in the whole body; unit `flow`.", examples=[96000.0])
     residual: float | None = Field(
         description="Sum of inflows and generation; unit `flow`. Where held values jump, the parts that grow "
         "without bound cancel between the faces and the sum of what is left is given.",
@@ -100,17 +96,13 @@ class Balance(Model):
         description="How far from zero the residual may be by the bounds of its terms; unit `flow`.",
         examples=[5e-7],
     )
-    unbounded_faces: list[FaceName] = Field(
-        description="Faces whose inflow has no finite value.", examples=[["z_low"]]
-    )
+    unbounded_faces: list[FaceName] = Field(description="Faces whose inflow has no finite value.", examples=[["z_low"]])
 
 
 class FluxTotalsAnswer(Answer):
     """Total flow through faces, parts of faces and planes."""
 
     faces: FaceTotals = Field(description="Inflow of each face asked for.")
-    patches: list[PartInflowTotal] = Field(
-        description="Inflow of each part asked for, in the order asked for."
-    )
+    patches: list[PartInflowTotal] = Field(description="Inflow of each part asked for, in the order asked for.")
     planes: list[PlaneFlowTotal] = Field(description="Flow through each plane, in the order asked for.")
     balance: Balance = Field(description="Inflow of all faces plus generation.")

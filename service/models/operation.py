@@ -65,6 +65,4 @@ class Diagnostics(Model):
 class Health(Model):
     """Whether the service is well."""
 
-    status: Literal["ok"] = Field(
-        description="Always ok; otherwise an error document comes.", examples=["ok"]
-    )
+    status: Literal["ok"] = Field(description="Always ok; otherwise an error document comes.", examples=["ok"])

@@ -48,9 +48,7 @@ class ProblemDetails(BaseModel):
         description="What the request would take, where a limit is passed; unit in `detail`.",
         examples=[4.2e12],
     )
-    limit: float | None = Field(
-        None, description="The limit that is passed; unit in `detail`.", examples=[4e11]
-    )
+    limit: float | None = Field(None, description="The limit that is passed; unit in `detail`.", examples=[4e11])
     imbalance: float | None = Field(
         None,
         description="Flow that the given inflows and sources add up to where they have to add up to zero, in "

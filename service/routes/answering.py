@@ -50,9 +50,7 @@ async def answer(request: Request, question: Asked, call: Call[Asked, Wanted]) -
     state = state_of(request)
     form = choose_form(request.headers.get("accept"))
     key = _key(request, form)
-    (body, times), waited = await state.worker.run(
-        lambda keep_going: _work(state, question, call, form, keep_going)
-    )
+    (body, times), waited = await state.worker.run(lambda keep_going: _work(state, question, call, form, keep_going))
     kept = KeptAnswer(body, form.media_type, f'"{key}"', form.file_name)
     state.answers.keep(key, kept)
     times = {"queue": waited, **times}

@@ -32,7 +32,7 @@ async def live() -> dict[str, str]:
     "/health/ready",
     summary="Whether questions can be answered",
     response_model=Health,
-    responses=error_responses(503),
+    responses={503: error_responses(503)[503] | {"description": "The store of problems does not answer."}},
 )
 async def ready(request: Request) -> Any:
     """Answers ok when the store can be read, within two seconds; otherwise 503."""
@@ -61,9 +61,7 @@ async def diagnostics(request: Request) -> dict[str, Any]:
     "/metrics",
     summary="Counts for a scraper",
     response_class=Response,
-    responses={
-        200: {"content": {"text/plain": {"schema": {"type": "string"}}}, "description": "Counts as text."}
-    },
+    responses={200: {"content": {"text/plain": {"schema": {"type": "string"}}}, "description": "Counts as text."}},
 )
 async def metrics(request: Request) -> Response:
     """Requests, times, caches and work in the text form of Prometheus."""

@@ -98,15 +98,12 @@ def problem_warnings(problem: ReadProblem, solution: Solution) -> list[Warning_]
         )
     for face, count in problem.filled.items():
         condition = problem.body.faces[face]
-        datum = (
-            "value" if isinstance(condition, Held) else "ambient" if isinstance(condition, Film) else "inflow"
-        )
+        datum = "value" if isinstance(condition, Held) else "ambient" if isinstance(condition, Film) else "inflow"
         readings = "reading was" if count == 1 else "readings were"
         warnings.append(
             warning(
                 "readings-filled",
-                f"{count} missing {readings} filled from the neighbours. Error bounds hold for the filled "
-                "table.",
+                f"{count} missing {readings} filled from the neighbours. Error bounds hold for the filled table.",
                 f"#/problem/faces/{face}/{datum}",
             )
         )

@@ -9,6 +9,7 @@ import numpy as np
 
 from service import cost
 from service.core import Convergence, Solution
+from service.core.problem import map_of
 from service.models import evaluate as models
 from service.settings import Settings
 from service.translation import answers
@@ -17,14 +18,21 @@ from service.translation.collector import Collector
 from service.translation.places import NamedPoint, PlaceReader
 from service.translation.problem import ReadProblem
 
+# Places around each knot of a map at which the solver looks for the overshoot, about.
+PLACES_A_KNOT = 50
+
 
 @dataclass(frozen=True)
 class ConvergenceWanted:
-    """A question about convergence in the solver's numbers."""
+    """A question about convergence in the solver's numbers.
+
+    memory_bytes: most that the overshoot may take.
+    """
 
     points: tuple[NamedPoint, ...]
     overshoot_terms: int
     tolerance: float
+    memory_bytes: float
 
 
 def read_convergence(
@@ -33,17 +41,13 @@ def read_convergence(
     """The question in the solver's numbers. Raises RequestRefused with a sentence for each field at fault."""
     collector = Collector(problem.units)
     ask = question.evaluate
-    cost.check_count(
-        collector, ("evaluate", "points"), "points", len(ask.points), settings.convergence_points
-    )
+    cost.check_count(collector, ("evaluate", "points"), "points", len(ask.points), settings.convergence_points)
     collector.raise_if_any()
     reader = PlaceReader(collector, settings, problem)
-    points = tuple(
-        reader.point(point, ("evaluate", "points", index)) for index, point in enumerate(ask.points)
-    )
+    points = tuple(reader.point(point, ("evaluate", "points", index)) for index, point in enumerate(ask.points))
     tolerance = answers.read_tolerance(collector, question.accuracy, solution)
     collector.raise_if_any()
-    return ConvergenceWanted(points, ask.overshoot_terms, tolerance)
+    return ConvergenceWanted(points, ask.overshoot_terms, tolerance, settings.memory_bytes)
 
 
 def answer_convergence(
@@ -58,29 +62,63 @@ def answer_convergence(
         points.append(({} if point.name is None else {"name": point.name}) | _point(point, found))
         bounds.append(float(found.error_bound))
     keep_going()
+    warnings = answers.problem_warnings(problem, solution)
+    overshoot = _overshoot(problem, solution, wanted)
+    if overshoot is None:
+        overshoot = []
+        warnings.append(
+            answers.warning(
+                "overshoot-left-out",
+                "The overshoot was not computed: with so many patches or readings it would take too much "
+                "memory. Ask for fewer `overshoot_terms`, or for a map with fewer places.",
+                "#/overshoot",
+            )
+        )
     places = np.array([point.at for point in wanted.points])
     return {
         "problem_id": problem.problem_id,
         "potential": problem.potential,
         "units": answers.units_shown(problem.units),
         "certificate": answers.certificate(problem, solution, places, wanted.tolerance, bounds),
-        "warnings": answers.problem_warnings(problem, solution),
+        "warnings": warnings,
         "points": points,
-        "overshoot": [
-            {
-                "face": overshoot.face,
-                "terms": int(overshoot.terms),
-                "overshoot": answers.number_or_none(float(overshoot.overshoot)),
-                "at": [float(coordinate) for coordinate in overshoot.at],
-            }
-            for overshoot in solution.overshoot(wanted.overshoot_terms)
-        ],
+        "overshoot": overshoot,
     }
 
 
-def check_cost(
-    wanted: ConvergenceWanted, solution: Solution, settings: Settings, bytes_a_number: int
-) -> None:
+def _overshoot(problem: ReadProblem, solution: Solution, wanted: ConvergenceWanted) -> list[dict[str, Any]] | None:
+    """Overshoot of the truncated series on each driven face, None where the tables for it would be too large."""
+    if _overshoot_bytes(problem, wanted.overshoot_terms) > wanted.memory_bytes:
+        return None
+    return [
+        {
+            "face": found.face,
+            "terms": int(found.terms),
+            "overshoot": answers.number_or_none(float(found.overshoot)),
+            "at": [float(coordinate) for coordinate in found.at],
+        }
+        for found in solution.overshoot(wanted.overshoot_terms)
+    ]
+
+
+def _overshoot_bytes(problem: ReadProblem, terms: int) -> float:
+    """Size of the tables for the overshoot of the face with most knots.
+
+    The solver looks at about fifty places around each knot and evaluates all terms there: a table of places
+    by terms for each axis, and a few of places by places.
+    """
+    largest = 0.0
+    for condition in problem.body.faces.values():
+        face_map = map_of(condition)
+        if face_map is not None:
+            first, second = (
+                PLACES_A_KNOT * (knots.size + 1) for knots in (face_map.first_knots, face_map.second_knots)
+            )
+            largest = max(largest, 8.0 * (3 * (first + second) * terms + 4 * first * second))
+    return largest
+
+
+def check_cost(wanted: ConvergenceWanted, solution: Solution, settings: Settings, bytes_a_number: int) -> None:
     """The number of points is bounded, and so is the series at each; the time limit bounds the rest."""
 
 

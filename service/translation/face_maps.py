@@ -44,9 +44,7 @@ class FaceReader:
     size: edge lengths of the body in the declared unit, NaN where they could not be read.
     """
 
-    def __init__(
-        self, collector: Collector, settings: Settings, face: Face, size: tuple[float, float, float]
-    ) -> None:
+    def __init__(self, collector: Collector, settings: Settings, face: Face, size: tuple[float, float, float]) -> None:
         self.collector = collector
         self.settings = settings
         self.face = face
@@ -94,10 +92,7 @@ class FaceReader:
 
     def _patches(self, kind: Kind, data: PatchesMap, path: Path) -> FaceContents | None:
         if len(data.patches) > self.settings.patches:
-            detail = (
-                f"There are {len(data.patches)} patches; at most {self.settings.patches} are allowed on "
-                "a face."
-            )
+            detail = f"There are {len(data.patches)} patches; at most {self.settings.patches} are allowed on a face."
             self.collector.add((*path, "patches"), detail, "too-many")
             return None
         background = self.collector.read(kind, data.background, (*path, "background"))
@@ -124,8 +119,7 @@ class FaceReader:
             return None
         if readings.table.size > self.settings.readings:
             detail = (
-                f"There are {readings.table.size} readings; at most {self.settings.readings} are "
-                "allowed on a face."
+                f"There are {readings.table.size} readings; at most {self.settings.readings} are allowed on a face."
             )
             self.collector.add(path, detail, "too-many")
             return None
@@ -173,9 +167,7 @@ class FaceReader:
                 detail = f"The places of the readings along {axis} are required on the face {self.face}."
                 self.collector.add((*path, axis), detail, "missing")
             else:
-                places.append(
-                    [self.collector.read(Kind.LENGTH, v, (*path, axis, i)) for i, v in enumerate(values)]
-                )
+                places.append([self.collector.read(Kind.LENGTH, v, (*path, axis, i)) for i, v in enumerate(values)])
         assert data.table is not None
         if len(self.collector.issues) > noted or not self._check_shape(data.table, places, path):
             return None
@@ -203,9 +195,7 @@ class FaceReader:
     def _check_increasing(self, readings: Readings) -> None:
         for axis, name in ((readings.first_axis, self.axes[0]), (readings.second_axis, self.axes[1])):
             if len(axis) < 2 or (np.diff(axis) <= 0).any():
-                raise errors.NotPhysical(
-                    "An axis of readings needs at least two places in increasing order.", (name,)
-                )
+                raise errors.NotPhysical("An axis of readings needs at least two places in increasing order.", (name,))
 
     def _refuse_missing(self, readings: Readings, missing: int, path: Path) -> None:
         places = [

@@ -63,9 +63,7 @@ def read_fields(
 
     reader = PlaceReader(collector, settings, problem)
     grids = tuple(reader.grid(grid, ("evaluate", "grids", index)) for index, grid in enumerate(ask.grids))
-    points = tuple(
-        reader.point(point, ("evaluate", "points", index)) for index, point in enumerate(ask.points)
-    )
+    points = tuple(reader.point(point, ("evaluate", "points", index)) for index, point in enumerate(ask.points))
     means = [reader.face_part(part, ("evaluate", "means", index)) for index, part in enumerate(ask.means)]
     for index, part in enumerate(means):
         if part is not None and reader.is_endless(part):
@@ -88,64 +86,103 @@ def check_cost(wanted: FieldsWanted, solution: Solution, settings: Settings, byt
     """Raise TooCostly when the work, its memory or the answer would pass a limit."""
     cost.check_answer(wanted.numbers * bytes_a_number, settings.answer_bytes)
     tolerance, with_flux = wanted.tolerance, wanted.with_flux
-    estimates = [
-        solution.estimate_grid(grid.shape, tolerance=tolerance, with_flux=with_flux) for grid in wanted.grids
-    ]
+    estimates = [solution.estimate_grid(grid.shape, tolerance=tolerance, with_flux=with_flux) for grid in wanted.grids]
     if wanted.points:
         count = len(wanted.points)
         estimates.append(solution.estimate_points(count, tolerance=tolerance, with_flux=with_flux))
     cost.check_work(estimates, settings)
 
 
+class _Answering:
+    """Answers the parts of one question, and collects what they say of accuracy on the way."""
+
+    def __init__(self, problem: ReadProblem, solution: Solution, wanted: FieldsWanted, keep_going: KeepGoing) -> None:
+        self.units = problem.units
+        self.solution = solution
+        self.wanted = wanted
+        self.keep_going = keep_going
+        self.warnings = answers.problem_warnings(problem, solution)
+        self.bounds: list[float] = []
+        self.places = [wanted.points_array]
+
+    def grid(self, index: int, grid: GridPlaces) -> dict[str, Any]:
+        """Values on one grid."""
+        wanted = self.wanted
+        found = self.solution.field(
+            Grid(*grid.axes),
+            tolerance=wanted.tolerance,
+            with_flux=wanted.with_flux,
+            keep_going=self.keep_going,
+        )
+        self.warnings += _flux_warnings(found, f"#/grids/{index}/flux")
+        self.bounds.append(float(found.potential_bound))
+        self.places.append(_corners_and_middle(grid))
+        return _grid_answer(self.units, grid, found, wanted)
+
+    def points(self) -> list[dict[str, Any]]:
+        """Values at all points."""
+        wanted = self.wanted
+        if not wanted.points:
+            return []
+        found = self.solution.field_at(
+            wanted.points_array,
+            tolerance=wanted.tolerance,
+            with_flux=wanted.with_flux,
+            keep_going=self.keep_going,
+        )
+        self.warnings += _flux_warnings(found, "#/points")
+        self.bounds.append(float(found.potential_bound))
+        return [_point_answer(self.units, point, found, row, wanted) for row, point in enumerate(wanted.points)]
+
+    def extremes(self) -> dict[str, Any]:
+        """The highest and the lowest potential of the body."""
+        self.keep_going()
+        found = self.solution.extremes(tolerance=self.wanted.tolerance, keep_going=self.keep_going)
+        self._note_bound(found.hottest.error_bound, "#/extremes/highest")
+        self._note_bound(found.coldest.error_bound, "#/extremes/lowest")
+        return {"highest": _place(found.hottest), "lowest": _place(found.coldest)}
+
+    def mean(self, index: int, part: FacePart) -> dict[str, Any]:
+        """The mean of one part of a face."""
+        self.keep_going()
+        mean = self.solution.mean(part.face, part.where, tolerance=self.wanted.tolerance)
+        self._note_bound(mean.error_bound, f"#/means/{index}")
+        return describe_part(part) | {"value": float(mean.value), "error_bound": float(mean.error_bound)}
+
+    def _note_bound(self, bound: float, where: str) -> None:
+        self.bounds.append(float(bound))
+        if bound > self.wanted.tolerance:
+            self.warnings.append(
+                answers.warning(
+                    "accuracy-not-reached",
+                    f"The bound of this number is {bound:.2g}, wider than the accuracy asked for, "
+                    f"{self.wanted.tolerance:.2g}.",
+                    where,
+                )
+            )
+
+
 def answer_fields(
     problem: ReadProblem, solution: Solution, wanted: FieldsWanted, keep_going: KeepGoing
 ) -> dict[str, Any]:
     """The answer, with numpy arrays for its tables."""
-    units = problem.units
-    warnings = answers.problem_warnings(problem, solution)
-    bounds: list[float] = []
-    places = [wanted.points_array]
-    grids = []
-    for index, grid in enumerate(wanted.grids):
-        found = solution.field(
-            Grid(*grid.axes), tolerance=wanted.tolerance, with_flux=wanted.with_flux, keep_going=keep_going
-        )
-        grids.append(_grid_answer(units, grid, found, wanted))
-        warnings += _flux_warnings(found, f"#/grids/{index}/flux")
-        bounds.append(float(found.potential_bound))
-        places.append(_corners_and_middle(grid))
-    points = []
-    if wanted.points:
-        found = solution.field_at(
-            wanted.points_array, tolerance=wanted.tolerance, with_flux=wanted.with_flux, keep_going=keep_going
-        )
-        points = [_point_answer(units, point, found, row, wanted) for row, point in enumerate(wanted.points)]
-        warnings += _flux_warnings(found, "#/points")
-        bounds.append(float(found.potential_bound))
-    answer: dict[str, Any] = {"grids": grids, "points": points}
+    answering = _Answering(problem, solution, wanted, keep_going)
+    answer: dict[str, Any] = {
+        "grids": [answering.grid(index, grid) for index, grid in enumerate(wanted.grids)],
+        "points": answering.points(),
+    }
     if wanted.extremes:
-        keep_going()
-        extremes = solution.extremes(tolerance=wanted.tolerance, keep_going=keep_going)
-        answer["extremes"] = {"highest": _place(extremes.hottest), "lowest": _place(extremes.coldest)}
-        bounds += [extremes.hottest.error_bound, extremes.coldest.error_bound]
+        answer["extremes"] = answering.extremes()
     if wanted.means:
-        answer["means"] = []
-        for part in wanted.means:
-            keep_going()
-            mean = solution.mean(part.face, part.where, tolerance=wanted.tolerance)
-            answer["means"].append(
-                describe_part(part) | {"value": float(mean.value), "error_bound": float(mean.error_bound)}
-            )
-            bounds.append(float(mean.error_bound))
+        answer["means"] = [answering.mean(index, part) for index, part in enumerate(wanted.means)]
     keep_going()
+    places = np.concatenate(answering.places)
     return {
         "problem_id": problem.problem_id,
         "potential": problem.potential,
-        "units": answers.units_shown(units),
-        "certificate": answers.certificate(
-            problem, solution, np.concatenate(places), wanted.tolerance, bounds
-        ),
-        "warnings": warnings,
+        "units": answers.units_shown(problem.units),
+        "certificate": answers.certificate(problem, solution, places, wanted.tolerance, answering.bounds),
+        "warnings": answering.warnings,
         **answer,
     }
 
@@ -182,9 +219,7 @@ def _grid_answer(units: UnitSystem, grid: GridPlaces, found: Field, wanted: Fiel
     return answer
 
 
-def _point_answer(
-    units: UnitSystem, point: NamedPoint, found: Field, row: int, wanted: FieldsWanted
-) -> dict[str, Any]:
+def _point_answer(units: UnitSystem, point: NamedPoint, found: Field, row: int, wanted: FieldsWanted) -> dict[str, Any]:
     answer: dict[str, Any] = {} if point.name is None else {"name": point.name}
     answer["at"] = list(point.at)
     if wanted.with_potential:
@@ -195,9 +230,7 @@ def _point_answer(
         assert found.flux_bound is not None
         flux = answers.vector(units, found.flux[:, row])
         answer["flux"] = {axis: answers.number_or_none(float(value)) for axis, value in flux.items()}
-        answer["flux_error_bound"] = answers.number_or_none(
-            units.write(Kind.FLUX, float(found.flux_bound[row]))
-        )
+        answer["flux_error_bound"] = answers.number_or_none(units.write(Kind.FLUX, float(found.flux_bound[row])))
     return answer
 
 

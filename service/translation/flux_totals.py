@@ -143,8 +143,7 @@ def _unbounded_warning(total: Total, where: str) -> answers.Warning_:
     lines = ", ".join(cause.line for cause in total.causes)
     return answers.warning(
         "unbounded-total",
-        f"The total has no finite value, because of: {lines}. Name an edge gap to get the flow through the "
-        "rest.",
+        f"The total has no finite value, because of: {lines}. Name an edge gap to get the flow through the rest.",
         where,
     )
 

@@ -94,9 +94,7 @@ class PlaceReader:
         has_intervals = any(interval is not None for interval in (part.x, part.y, part.z))
         if part.patch is not None:
             if has_intervals:
-                self.collector.add(
-                    (*path, "patch"), "Give either a patch or intervals along the axes.", "one-of"
-                )
+                self.collector.add((*path, "patch"), "Give either a patch or intervals along the axes.", "one-of")
                 return None
             return self._patch(part, face, (*path, "patch"))
         if not has_intervals:
@@ -124,10 +122,7 @@ class PlaceReader:
         given = {axis: getattr(plane, axis) for axis in AXES}
         fixed = [axis for axis, value in given.items() if value is not None and not isinstance(value, list)]
         if len(fixed) != 1:
-            detail = (
-                'Give one length along exactly one axis, such as {"z": 20}; intervals along the others '
-                "are free."
-            )
+            detail = 'Give one length along exactly one axis, such as {"z": 20}; intervals along the others are free.'
             self.collector.add(path, detail, "plane")
             return None
         axis = AXES.index(fixed[0])
@@ -144,13 +139,9 @@ class PlaceReader:
                 else self.collector.read_interval(interval, self.size[other], (*path, AXES[other]))
             )
         where = Rectangle(*ends)
-        return (
-            PlanePart(plane.name, axis, position, where) if self._rectangle_fits(where, along, path) else None
-        )
+        return PlanePart(plane.name, axis, position, where) if self._rectangle_fits(where, along, path) else None
 
-    def _axis(
-        self, places: float | str | list[float | str] | models.EvenAxis, axis: int, path: Path
-    ) -> FloatArray:
+    def _axis(self, places: float | str | list[float | str] | models.EvenAxis, axis: int, path: Path) -> FloatArray:
         if isinstance(places, models.EvenAxis):
             first = self._inside(places.from_, axis, (*path, "from"))
             last = self._inside(places.to, axis, (*path, "to"))
@@ -171,9 +162,7 @@ class PlaceReader:
         if place < 0 or place > length:
             units = self.problem.units
             shown = units.show(Kind.LENGTH, value)
-            reach = (
-                "from 0 without end" if math.isinf(length) else f"from 0 to {units.show(Kind.LENGTH, length)}"
-            )
+            reach = "from 0 without end" if math.isinf(length) else f"from 0 to {units.show(Kind.LENGTH, length)}"
             self.collector.add(
                 path, f"{AXES[axis]} = {shown} lies outside the body, which reaches {reach}.", "outside-body"
             )

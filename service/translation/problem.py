@@ -102,9 +102,7 @@ def _size(collector: Collector, size: models.Size) -> tuple[float, float, float]
         path: Path = ("body", "size", axis)
         if value == "semi-infinite":
             if axis != "z":
-                collector.add(
-                    path, "Only z can be semi-infinite; turn the body so that its long axis is z.", "size"
-                )
+                collector.add(path, "Only z can be semi-infinite; turn the body so that its long axis is z.", "size")
             lengths.append(math.inf if axis == "z" else UNREAD)
         else:
             lengths.append(collector.read_positive(Kind.LENGTH, value, path, f"The size along {axis}"))
@@ -184,9 +182,7 @@ def _sources(
             for axis, interval, length in zip(AXES, (source.x, source.y, source.z), size, strict=True)
         ]
         density = collector.read(Kind.DENSITY, source.density, (*path, "density"))
-        boxes.append(
-            BoxSource((ends[0][0], ends[1][0], ends[2][0]), (ends[0][1], ends[1][1], ends[2][1]), density)
-        )
+        boxes.append(BoxSource((ends[0][0], ends[1][0], ends[2][0]), (ends[0][1], ends[1][1], ends[2][1]), density))
     return tuple(boxes)
 
 

@@ -53,9 +53,7 @@ class Solver:
         if solved is None:
             content = self._store.get(question.problem_id)
             if content is None:
-                detail = (
-                    "No problem is stored under this id; post it to /v1/problems, or send the problem itself."
-                )
+                detail = "No problem is stored under this id; post it to /v1/problems, or send the problem itself."
                 raise RequestRefused((Issue(("problem_id",), detail, "unknown-problem"),))
             solved = self.of_problem(Problem.model_validate_json(content), ("problem_id",))
         return solved

@@ -39,9 +39,7 @@ def problem(name: str, path: str, new: Any, pointer: str, sentence: str, base: A
     return Wrong(name, "/v1/problems", json.dumps(body).encode(), 422, pointer, sentence)
 
 
-def question(
-    name: str, call: str, path: str, new: Any, pointer: str, sentence: str, base: Any = None
-) -> Wrong:
+def question(name: str, call: str, path: str, new: Any, pointer: str, sentence: str, base: Any = None) -> Wrong:
     """A question about the bar with one field changed."""
     body = changed(QUESTIONS[call] if base is None else base, path, new)
     return Wrong(name, f"/v1/{call}", json.dumps(body).encode(), 422, pointer, sentence)
@@ -244,9 +242,7 @@ def test_table_is_long_enough_and_names_are_unique_within_a_call() -> None:
 
 
 @pytest.mark.parametrize("wrong", TABLE, ids=lambda wrong: f"{wrong.path[4:]}: {wrong.name}")
-async def test_wrong_request_is_answered_with_one_clear_sentence(
-    client: httpx.AsyncClient, wrong: Wrong
-) -> None:
+async def test_wrong_request_is_answered_with_one_clear_sentence(client: httpx.AsyncClient, wrong: Wrong) -> None:
     headers = JSON_TYPE | dict(wrong.headers)
     answer = await client.post(wrong.path, content=wrong.content, headers=headers)
     document = check_problem_document(answer, wrong.status)

@@ -6,6 +6,8 @@ import httpx
 import pytest
 
 from service.models.convergence_answer import ConvergenceAnswer
+from service.settings import Settings
+from tests.api.client import open_client
 from tests.api.halden_reach import Json, sight_port_bar
 
 pytestmark = pytest.mark.anyio
@@ -58,3 +60,15 @@ async def test_cut_series_overshoots_a_jump_however_many_terms_it_has(client: ht
         overshoots.append(end["overshoot"])
     # Wilbraham's 8.95 % on each of two sides that meet in a corner; it does not go away.
     assert all(0.05 < value < 0.25 for value in overshoots)
+
+
+async def test_overshoot_that_would_take_too_much_memory_is_left_out(settings: Settings) -> None:
+    question = {
+        "problem": sight_port_bar(),
+        "evaluate": {"points": [{"at": [20, 30, 40]}], "overshoot_terms": 4096},
+    }
+    async with open_client(settings.model_copy(update={"memory_bytes": 1_000_000})) as client:
+        answer = (await client.post("/v1/convergence", json=question)).json()
+    ConvergenceAnswer.model_validate(answer)
+    assert answer["overshoot"] == []
+    assert [remark["code"] for remark in answer["warnings"]] == ["overshoot-left-out"]

@@ -17,9 +17,7 @@ from tests.api.halden_reach import ask_points, changed, sight_port_bar, slab
 pytestmark = pytest.mark.anyio
 
 
-@pytest.mark.parametrize(
-    "path", ["/nowhere", "/v1", "/v1/fields/", "/static/nowhere.js", "/problem-types/none"]
-)
+@pytest.mark.parametrize("path", ["/nowhere", "/v1", "/v1/fields/", "/static/nowhere.js", "/problem-types/none"])
 async def test_unknown_address(client: httpx.AsyncClient, path: str) -> None:
     document = check_problem_document(await client.get(path), 404)
     assert document["type"] == "/problem-types/not-found"
@@ -76,18 +74,14 @@ async def test_unforeseen_failure_says_nothing_of_itself_and_is_logged(
 async def test_solver_errors_point_into_the_request(client: httpx.AsyncClient) -> None:
     problem = changed(slab(), "faces/z_low", {"condition": "flux", "inflow": 5})
     problem = changed(problem, "faces/z_high", {"condition": "insulated"})
-    document = check_problem_document(
-        await client.post("/v1/fields", json=ask_points(problem, [1, 1, 1])), 422
-    )
+    document = check_problem_document(await client.post("/v1/fields", json=ask_points(problem, [1, 1, 1])), 422)
     assert document["type"] == "/problem-types/no-steady-state"
     assert pointers(document) == ["#/problem/faces"]
 
 
 async def test_many_errors_are_counted_and_the_first_shown(client: httpx.AsyncClient) -> None:
     places: list[list[float | str]] = [[99, 30, 5]] * 200
-    document = check_problem_document(
-        await client.post("/v1/fields", json=ask_points(sight_port_bar(), *places)), 422
-    )
+    document = check_problem_document(await client.post("/v1/fields", json=ask_points(sight_port_bar(), *places)), 422)
     assert document["detail"].startswith("200 fields")
     assert len(document["errors"]) == 50
 

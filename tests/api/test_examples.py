@@ -81,9 +81,7 @@ def test_there_are_examples_of_every_call_and_every_potential() -> None:
     assert len(EXAMPLES) >= 8
     assert {example["path"] for example in EXAMPLES.values()} == set(MODELS)
     assert {example["method"] for example in EXAMPLES.values()} == {"POST"}
-    potentials = {
-        example["request"].get("problem", example["request"])["potential"] for example in EXAMPLES.values()
-    }
+    potentials = {example["request"].get("problem", example["request"])["potential"] for example in EXAMPLES.values()}
     assert potentials == {"temperature", "electric_potential", "concentration", "hydraulic_head"}
 
 

@@ -163,9 +163,7 @@ async def test_stored_problem_and_problem_in_the_question_answer_alike(client: h
     problem_id = (await client.post("/v1/problems", json=sight_port_bar())).json()["problem_id"]
     question = ask_points(sight_port_bar(), [20, 30, 5])
     inline = await client.post("/v1/fields", json=question)
-    stored = await client.post(
-        "/v1/fields", json={"problem_id": problem_id, "evaluate": question["evaluate"]}
-    )
+    stored = await client.post("/v1/fields", json={"problem_id": problem_id, "evaluate": question["evaluate"]})
     assert inline.json() == stored.json()
     assert inline.json()["problem_id"] == problem_id
 

@@ -79,9 +79,7 @@ async def test_total_beside_a_jump_is_null_with_its_cause(client: httpx.AsyncCli
         pytest.approx(value, rel=1e-6) for value in sorted(expected)
     ]
     assert all(cause["largest_jump"] == pytest.approx(610) for cause in lines.values())
-    assert ("unbounded-total", "#/patches/0") in {
-        (remark["code"], remark["where"]) for remark in answer["warnings"]
-    }
+    assert ("unbounded-total", "#/patches/0") in {(remark["code"], remark["where"]) for remark in answer["warnings"]}
 
 
 async def test_gap_gives_a_finite_total_that_grows_as_the_coefficient_says(client: httpx.AsyncClient) -> None:

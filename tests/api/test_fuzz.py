@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import logging
 from pathlib import Path
+from typing import Any
 
 import pytest
 import schemathesis
@@ -45,7 +46,7 @@ schema = schemathesis.openapi.from_asgi("/openapi.json", create_app(SETTINGS), c
     phases=[Phase.explicit, Phase.generate],
     suppress_health_check=list(HealthCheck),
 )
-def test_made_up_requests(case: schemathesis.Case, caplog: pytest.LogCaptureFixture) -> None:
+def test_made_up_requests(case: schemathesis.Case[Any], caplog: pytest.LogCaptureFixture) -> None:
     with caplog.at_level(logging.ERROR):
         # Physics is no matter of schemas: a request of the right shape may have no steady state, and gets a
         # 422.

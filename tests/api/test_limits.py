@@ -110,9 +110,7 @@ async def test_costly_request_is_refused_with_estimate_and_limit(
 async def test_binary_answer_may_hold_more(settings: Settings) -> None:
     async with open_client(settings.model_copy(update={"answer_bytes": 150_000})) as client:
         check_problem_document(await client.post("/v1/fields", json=ask_grid()), 422)
-        binary = await client.post(
-            "/v1/fields", json=ask_grid(), headers={"Accept": "application/vnd.stillfield.npz"}
-        )
+        binary = await client.post("/v1/fields", json=ask_grid(), headers={"Accept": "application/vnd.stillfield.npz"})
         assert binary.status_code == 200
 
 
@@ -141,9 +139,7 @@ async def test_binary_answer_may_hold_more(settings: Settings) -> None:
     ],
     ids=["grid", "all grids", "grids", "points", "means", "sources", "patches"],
 )
-async def test_lists_are_bounded(
-    settings: Settings, limits: dict[str, int], question: Json, wrong: str
-) -> None:
+async def test_lists_are_bounded(settings: Settings, limits: dict[str, int], question: Json, wrong: str) -> None:
     async with open_client(settings.model_copy(update=limits)) as client:
         document = check_problem_document(await client.post("/v1/fields", json=question), 422)
     assert pointers(document) == [wrong]
@@ -212,9 +208,7 @@ async def test_request_that_was_given_up_stops_at_its_next_step(
         assert await asyncio.to_thread(stopped.wait, 10)
 
 
-async def test_loop_answers_while_all_workers_compute(
-    settings: Settings, monkeypatch: pytest.MonkeyPatch
-) -> None:
+async def test_loop_answers_while_all_workers_compute(settings: Settings, monkeypatch: pytest.MonkeyPatch) -> None:
     with held_up(monkeypatch) as go:
         async with open_client(settings) as client:
             tasks = [

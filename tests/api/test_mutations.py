@@ -28,7 +28,7 @@ SETTINGS = Settings(
 
 EXAMPLES = load_examples()
 
-STRANGE = st.sampled_from(
+STRANGE: st.SearchStrategy[Any] = st.sampled_from(
     [
         None, True, False, 0, -1, 1, 2, -0.0, 0.5, 1e-300, 1e149, 1e300, 10**30,
         "", " ", "0 m", "-1 mm", "1e-9 mm", "5 K", "1e149 km", "semi-infinite", "end", "held", "patches",
@@ -42,9 +42,7 @@ STRANGE = st.sampled_from(
 
 def places_of(value: Any, path: tuple[str | int, ...] = ()) -> list[tuple[str | int, ...]]:
     """Paths of all parts of a document but the whole."""
-    entries = (
-        value.items() if isinstance(value, dict) else enumerate(value) if isinstance(value, list) else ()
-    )
+    entries = value.items() if isinstance(value, dict) else enumerate(value) if isinstance(value, list) else ()
     found = []
     for key, entry in entries:
         found += [(*path, key), *places_of(entry, (*path, key))]

@@ -29,11 +29,7 @@ async def document(client: httpx.AsyncClient) -> dict[str, Any]:
 
 
 def operations(document: dict[str, Any]) -> dict[tuple[str, str], dict[str, Any]]:
-    return {
-        (method, path): operation
-        for path, item in document["paths"].items()
-        for method, operation in item.items()
-    }
+    return {(method, path): operation for path, item in document["paths"].items() for method, operation in item.items()}
 
 
 def fields(document: dict[str, Any]) -> list[tuple[str, dict[str, Any]]]:

@@ -102,10 +102,17 @@ def test_settings_come_from_the_environment(monkeypatch: pytest.MonkeyPatch, tmp
     assert settings.cors_origins == ["https://desk.example"]
 
 
-@pytest.mark.parametrize(
-    ("name", "value"), [("PORT", "99999"), ("BODY_BYTES", "0"), ("WORKER_THREADS", "-1")]
-)
+@pytest.mark.parametrize(("name", "value"), [("PORT", "99999"), ("BODY_BYTES", "0"), ("WORKER_THREADS", "-1")])
 def test_impossible_settings_are_refused(monkeypatch: pytest.MonkeyPatch, name: str, value: str) -> None:
     monkeypatch.setenv(f"STILLFIELD_{name}", value)
     with pytest.raises(ValueError, match=name.lower()):
         Settings()
+
+
+@pytest.mark.anyio
+async def test_store_that_cannot_be_opened_is_named_at_the_start(settings: Settings, tmp_path: Path) -> None:
+    (tmp_path / "file").write_text("in the way")
+    elsewhere = settings.model_copy(update={"store_path": tmp_path / "file" / "problems.sqlite3"})
+    with pytest.raises(RuntimeError, match="set STILLFIELD_STORE_PATH to a file that can be written"):
+        async with open_client(elsewhere):
+            pass

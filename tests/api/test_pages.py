@@ -48,9 +48,7 @@ async def test_plot_script_comes_out_of_the_installed_package(client: httpx.Asyn
     plain = await client.get("/static/vendor/plotly.min.js", headers={"Accept-Encoding": "identity"})
     assert plain.content == answer.content
     assert len(gzip.compress(plain.content[:100_000])) < 100_000
-    unchanged = await client.get(
-        "/static/vendor/plotly.min.js", headers={"If-None-Match": answer.headers["etag"]}
-    )
+    unchanged = await client.get("/static/vendor/plotly.min.js", headers={"If-None-Match": answer.headers["etag"]})
     assert (unchanged.status_code, unchanged.content) == (304, b"")
 
 

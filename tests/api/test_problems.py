@@ -25,9 +25,7 @@ async def test_id_stands_for_the_content_and_not_for_its_spelling(client: httpx.
     problem = sight_port_bar()
     respelt = dict(reversed(problem.items())) | {"sources": []}
     respelt = changed(respelt, "body/size/x", 40.0)
-    ids = [
-        (await client.post("/v1/problems", json=given)).json()["problem_id"] for given in (problem, respelt)
-    ]
+    ids = [(await client.post("/v1/problems", json=given)).json()["problem_id"] for given in (problem, respelt)]
     assert ids[0] == ids[1]
     other = await client.post("/v1/problems", json=changed(problem, "body/size/x", 40.5))
     assert other.status_code == 201
@@ -66,9 +64,7 @@ async def test_client_that_has_the_problem_is_told_so(client: httpx.AsyncClient)
 
 async def test_unknown_id_is_not_found(client: httpx.AsyncClient) -> None:
     check_problem_document(await client.get(f"/v1/problems/{'0' * 64}"), 404)
-    asked = await client.post(
-        "/v1/fields", json={"problem_id": "0" * 64, "evaluate": {"points": [{"at": [1, 1, 1]}]}}
-    )
+    asked = await client.post("/v1/fields", json={"problem_id": "0" * 64, "evaluate": {"points": [{"at": [1, 1, 1]}]}})
     assert pointers(check_problem_document(asked, 422)) == ["#/problem_id"]
 
 
@@ -115,9 +111,7 @@ async def test_open_level_is_remarked(client: httpx.AsyncClient) -> None:
     faces["x_low"] = {"condition": "flux", "inflow": 100}
     faces["x_high"] = {"condition": "flux", "inflow": -100}
     answer = (await client.post("/v1/problems", json=block(**faces))).json()
-    assert [(remark["code"], remark["where"]) for remark in answer["warnings"]] == [
-        ("level-pinned", "#/problem/faces")
-    ]
+    assert [(remark["code"], remark["where"]) for remark in answer["warnings"]] == [("level-pinned", "#/problem/faces")]
 
 
 async def test_problem_is_refused_to_a_client_that_takes_no_json(client: httpx.AsyncClient) -> None:

@@ -106,8 +106,7 @@ async def test_table_and_text_are_the_same_readings(client: httpx.AsyncClient) -
     by_text = held_by(csv=CSV)
     places: list[list[float | str]] = [[20, 30, 0], [10, 15, 0], [10, 15, 3]]
     answers = [
-        (await client.post("/v1/fields", json=ask_points(problem, *places))).json()
-        for problem in (by_table, by_text)
+        (await client.post("/v1/fields", json=ask_points(problem, *places))).json() for problem in (by_table, by_text)
     ]
     assert answers[0]["points"] == answers[1]["points"]
     values = [point["potential"] for point in answers[0]["points"]]

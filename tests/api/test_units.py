@@ -90,9 +90,7 @@ def test_differences_are_answered_without_an_offset() -> None:
     assert units("electric_potential", potential="mV").declared[Kind.POTENTIAL_DIFFERENCE] == "mV"
 
 
-@pytest.mark.parametrize(
-    "text", ["40 W/(m degC)", "40 W/(m K)", "40 W/m/K", "40 W m^-1 K^-1", "0.4 W/(cm·°C)"]
-)
+@pytest.mark.parametrize("text", ["40 W/(m degC)", "40 W/(m K)", "40 W/m/K", "40 W m^-1 K^-1", "0.4 W/(cm·°C)"])
 def test_per_kelvin_and_per_degree_are_the_same(text: str) -> None:
     """W/(mm K) in the solver."""
     assert MILLIMETRES.read(Kind.CONDUCTIVITY, text) == pytest.approx(0.04, rel=1e-15)
@@ -109,9 +107,7 @@ def test_per_kelvin_and_per_degree_are_the_same(text: str) -> None:
         (Kind.DENSITY, "2 W/cm^3", 2e-3),
     ],
 )
-def test_everything_else_becomes_what_the_declared_length_implies(
-    kind: Kind, text: str, expected: float
-) -> None:
+def test_everything_else_becomes_what_the_declared_length_implies(kind: Kind, text: str, expected: float) -> None:
     assert MILLIMETRES.read(kind, text) == pytest.approx(expected, rel=1e-15)
 
 
