@@ -1,0 +1,139 @@
+/** Building blocks of the page: elements, labelled fields with a unit and a place for a mistake. */
+
+/**
+ * An element with attributes, listeners (keys that begin with "on") and children.
+ * @param {string} tag
+ * @param {Record<string, any>} [attributes] null and false leave an attribute out
+ * @param {...(Node|string|null)} children
+ * @returns {any}
+ */
+export function make(tag, attributes = {}, ...children) {
+  return filled(document.createElement(tag), attributes, children);
+}
+
+/** The same for a drawing. @returns {any} */
+export function draw(tag, attributes = {}, ...children) {
+  return filled(document.createElementNS("http://www.w3.org/2000/svg", tag), attributes, children);
+}
+
+function filled(element, attributes, children) {
+  for (const [name, value] of Object.entries(attributes)) {
+    if (value === null || value === undefined || value === false) continue;
+    if (name.startsWith("on")) element.addEventListener(name.slice(2), value);
+    else if (name === "value") element.value = value;
+    else element.setAttribute(name, value === true ? "" : String(value));
+  }
+  element.append(...children.flat(Infinity).filter((child) => child !== null && child !== undefined));
+  return element;
+}
+
+/** The place under a field where a sentence about it appears. */
+export function mistakePlace(id) {
+  return make("p", { class: "mistake", id: `${id}-mistake`, hidden: true });
+}
+
+/**
+ * @typedef {object} FieldText
+ * @property {string} id
+ * @property {string} label
+ * @property {string} value
+ * @property {(value: string) => void} onInput
+ * @property {string} [unit] shown behind the input
+ * @property {string} [hint] shown under it
+ * @property {string} [list] id of a datalist
+ * @property {string} [spoken] label for those who cannot see what stands around, if it has to say more
+ * @property {boolean} [isText] plain words, no quantity
+ * @property {string} [extraClass]
+ */
+
+/** A labelled input. @param {FieldText} text @returns {HTMLElement} */
+export function field(text) {
+  const { id, label, value, onInput, unit, hint, list, spoken, isText, extraClass } = text;
+  const described = [unit ? `${id}-unit` : "", hint ? `${id}-hint` : "", `${id}-mistake`];
+  const input = make("input", {
+    id,
+    value,
+    list,
+    type: "text",
+    class: isText ? "words" : "quantity",
+    autocomplete: "off",
+    autocapitalize: "off",
+    spellcheck: "false",
+    "aria-describedby": described.filter(Boolean).join(" "),
+    oninput: (event) => onInput(event.target.value),
+  });
+  return make(
+    "div",
+    { class: `field ${extraClass ?? ""}` },
+    labelOf(id, label, spoken),
+    make(
+      "div",
+      { class: "entry" },
+      input,
+      unit ? make("span", { class: "unit", id: `${id}-unit` }, unit) : null,
+    ),
+    hint ? make("p", { class: "hint", id: `${id}-hint` }, hint) : null,
+    mistakePlace(id),
+  );
+}
+
+/**
+ * A labelled choice.
+ * @param {{id: string, label: string, value: string, options: [string, string][],
+ *   onChange: (value: string) => void, spoken?: string, hint?: string, extraClass?: string}} text
+ * @returns {HTMLElement}
+ */
+export function choice({ id, label, value, options, onChange, spoken, hint, extraClass }) {
+  const select = make(
+    "select",
+    {
+      id,
+      "aria-describedby": [hint ? `${id}-hint` : "", `${id}-mistake`].filter(Boolean).join(" "),
+      onchange: (event) => onChange(event.target.value),
+    },
+    options.map(([key, words]) => make("option", { value: key }, words)),
+  );
+  select.value = value;
+  return make(
+    "div",
+    { class: `field ${extraClass ?? ""}` },
+    labelOf(id, label, spoken),
+    make("div", { class: "entry" }, select),
+    hint ? make("p", { class: "hint", id: `${id}-hint` }, hint) : null,
+    mistakePlace(id),
+  );
+}
+
+/** A labelled text of several lines. @returns {HTMLElement} */
+export function longText({ id, label, value, onInput, hint, rows = 5, spoken = "" }) {
+  const area = make("textarea", {
+    id,
+    rows,
+    value,
+    spellcheck: "false",
+    "aria-describedby": `${hint ? `${id}-hint ` : ""}${id}-mistake`,
+    oninput: (event) => onInput(event.target.value),
+  });
+  return make(
+    "div",
+    { class: "field whole" },
+    labelOf(id, label, spoken),
+    area,
+    hint ? make("p", { class: "hint", id: `${id}-hint` }, hint) : null,
+    mistakePlace(id),
+  );
+}
+
+function labelOf(id, label, spoken) {
+  return make("label", { for: id }, spoken ? make("span", { class: "unseen" }, `${spoken}: `) : null, label);
+}
+
+/** Save a blob or text under a file name. */
+export function save(name, content, type) {
+  const address = URL.createObjectURL(new Blob([content], { type }));
+  const link = make("a", { href: address, download: name });
+  document.body.append(link);
+  link.click();
+  link.remove();
+  setTimeout(() => URL.revokeObjectURL(address), 1000);
+}

@@ -1,0 +1,235 @@
+/** The part of the form for the faces: one card each, with what its condition needs. */
+
+import { emptyDatum, facesOf, idOf } from "./draft.js";
+import { choice, field, longText, make, mistakePlace } from "./elements.js";
+import { axesAcross, axisOf, CONDITIONS, PHYSICS, placeOf, PLACES } from "./words.js";
+
+const DATUM_CHOICES = [
+  ["uniform", "the same all over"],
+  ["patches", "patches over a background"],
+  ["samples", "readings (CSV)"],
+];
+
+/**
+ * All cards.
+ * @param {any} draft
+ * @param {() => void} changed called after every change
+ */
+export function faceCards(draft, changed) {
+  return make(
+    "div",
+    { class: "face-cards", id: "faces" },
+    facesOf(draft).map((face) => faceCard(draft, face, changed)),
+  );
+}
+
+function faceCard(draft, face, changed) {
+  const known = draft.faces[face];
+  const details = make("div", { class: "face-details" });
+  const redraw = () => details.replaceChildren(...conditionFields(draft, face, changed));
+  const select = choice({
+    id: idOf(face, "condition"),
+    label: "Condition",
+    spoken: face,
+    value: known.condition,
+    options: Object.entries(CONDITIONS),
+    onChange: (value) => {
+      known.condition = value;
+      redraw();
+      changed();
+    },
+  });
+  redraw();
+  return make(
+    "fieldset",
+    { class: "face-card", "data-face": face },
+    make(
+      "legend",
+      {},
+      make("span", { class: "face-name" }, face),
+      make("span", { class: "face-place" }, ` ${PLACES[face]}, ${placeOf(face, draft.size, draft.units.length)}`),
+    ),
+    select,
+    details,
+  );
+}
+
+function conditionFields(draft, face, changed) {
+  const known = draft.faces[face];
+  const words = PHYSICS[draft.potential];
+  if (known.condition === "insulated") return [];
+  const meaning = {
+    held: { label: words.potential, unit: draft.units.potential },
+    flux: { label: words.inflow, unit: draft.units.flux },
+    film: { label: words.ambient, unit: draft.units.potential },
+  }[known.condition];
+  const fields = [];
+  if (known.condition === "film") {
+    fields.push(
+      field({
+        id: idOf(face, "coefficient"),
+        label: words.film,
+        spoken: face,
+        unit: draft.units.film_coefficient,
+        value: known.coefficient,
+        onInput: (value) => {
+          known.coefficient = value;
+          changed();
+        },
+      }),
+    );
+  }
+  return [...fields, datumFields(draft, face, meaning, changed)];
+}
+
+function datumFields(draft, face, meaning, changed) {
+  const condition = draft.faces[face].condition;
+  const datum = (draft.faces[face].data[condition] ??= emptyDatum());
+  const id = idOf(face, condition);
+  const rest = make("div", { class: "datum" });
+  const redraw = () => rest.replaceChildren(...kindFields(draft, face, datum, id, meaning, changed, redraw));
+  const kind = choice({
+    id: idOf(id, "kind"),
+    label: `${meaning.label}:`,
+    spoken: face,
+    value: datum.kind,
+    options: DATUM_CHOICES,
+    onChange: (value) => {
+      datum.kind = value;
+      if (value === "patches" && !datum.patches.length) datum.patches.push(emptyPatch());
+      redraw();
+      changed();
+    },
+  });
+  redraw();
+  return make("div", { class: "datum-group" }, kind, rest);
+}
+
+const emptyPatch = () => ({ name: "", from: ["", ""], to: ["", ""], value: "" });
+
+function kindFields(draft, face, datum, id, meaning, changed, redraw) {
+  if (datum.kind === "samples") return readingFields(draft, face, datum, id, meaning, changed);
+  const value = field({
+    id: idOf(id, "value"),
+    label: datum.kind === "patches" ? "Background" : "Value",
+    spoken: `${face}, ${meaning.label}`,
+    unit: meaning.unit,
+    value: datum.value,
+    onInput: (typed) => {
+      datum.value = typed;
+      changed();
+    },
+  });
+  if (datum.kind === "uniform") return [value];
+  const add = make(
+    "button",
+    {
+      type: "button",
+      class: "small",
+      onclick: () => {
+        datum.patches.push(emptyPatch());
+        redraw();
+        changed();
+        document.getElementById(idOf(id, "patch", datum.patches.length - 1, "name"))?.focus();
+      },
+    },
+    "Add a patch",
+    make("span", { class: "unseen" }, ` on ${face}`),
+  );
+  return [
+    value,
+    ...datum.patches.map((_, index) => patchFields(draft, face, datum, index, id, meaning, changed, redraw)),
+    add,
+  ];
+}
+
+function patchFields(draft, face, datum, index, id, meaning, changed, redraw) {
+  const patch = datum.patches[index];
+  const part = idOf(id, "patch", index);
+  const spoken = `${face}, patch ${index + 1}`;
+  const remove = make(
+    "button",
+    {
+      type: "button",
+      class: "small quiet",
+      onclick: () => {
+        datum.patches.splice(index, 1);
+        redraw();
+        changed();
+        document.getElementById(idOf(id, "kind"))?.focus();
+      },
+    },
+    "Remove",
+    make("span", { class: "unseen" }, ` ${spoken}`),
+  );
+  const note = (key) => (value) => {
+    patch[key] = value;
+    changed();
+  };
+  return make(
+    "fieldset",
+    { class: "patch" },
+    make("legend", {}, `Patch ${index + 1}`),
+    field({ id: idOf(part, "name"), label: "Name (optional)", spoken, value: patch.name, isText: true, onInput: note("name") }),
+    field({ id: idOf(part, "value"), label: "Value", spoken, unit: meaning.unit, value: patch.value, onInput: note("value") }),
+    intervals(axesAcross(axisOf(face)), patch, part, spoken, draft.units.length, changed),
+    remove,
+  );
+}
+
+/** From and to along some axes; the texts stand in `owner.from` and `owner.to`, one for each axis. */
+export function intervals(axes, owner, part, spoken, unit, changed) {
+  return axes.flatMap((axis, side) =>
+    ["from", "to"].map((end) =>
+      field({
+        id: idOf(part, axis, end),
+        label: `${axis} ${end}`,
+        spoken,
+        unit,
+        value: owner[end][side],
+        onInput: (value) => {
+          owner[end][side] = value;
+          changed();
+        },
+      }),
+    ),
+  );
+}
+
+function readingFields(draft, face, datum, id, meaning, changed) {
+  const [first, second] = axesAcross(axisOf(face));
+  const tick = (key, label) =>
+    make(
+      "label",
+      { class: "tick" },
+      make("input", {
+        type: "checkbox",
+        id: idOf(id, key),
+        checked: datum[key],
+        onchange: (event) => {
+          datum[key] = event.target.checked;
+          changed();
+        },
+      }),
+      make("span", { class: "unseen" }, `${face}: `),
+      label,
+    );
+  return [
+    longText({
+      id: idOf(id, "csv"),
+      label: `Readings in ${meaning.unit}`,
+      spoken: face,
+      value: datum.csv,
+      hint:
+        `First row: places along ${second}; first column: places along ${first}, both in ${draft.units.length}; ` +
+        "the corner is free. Between readings the value runs bilinearly.",
+      onInput: (value) => {
+        datum.csv = value;
+        changed();
+      },
+    }),
+    tick("hold", "Hold the outermost reading where readings end before the face"),
+    tick("fill", "Fill missing readings smoothly from their neighbours"),
+    mistakePlace(idOf(id, "map")),
+  ];
+}

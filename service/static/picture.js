@@ -1,0 +1,144 @@
+/** The plane as a heat map with labelled isotherms, drawn by the plotting script the service brings along. */
+
+import { brief, bounded, evenStep } from "./numbers.js";
+
+const INK = "#1b2730";
+const FONT = { family: "system-ui, 'Liberation Sans', 'DejaVu Sans', sans-serif", size: 13, color: INK };
+const HIGHEST_PICTURE = 500;
+/** Beyond this a picture with equal axes would be a hairline. */
+const LONGEST_RATIO = 10;
+
+/** Plotly once its script has run. @returns {Promise<any>} */
+function plotting() {
+  if (window.Plotly) return Promise.resolve(window.Plotly);
+  const script = document.getElementById("plotting");
+  return new Promise((resolve, reject) => {
+    const done = () => (window.Plotly ? resolve(window.Plotly) : reject(new Error("no plotting script")));
+    // The script may have failed before anyone listened.
+    if (document.readyState === "complete") done();
+    script.addEventListener("load", done);
+    script.addEventListener("error", () => reject(new Error("no plotting script")));
+  });
+}
+
+/** Isotherms at round values. @param {import("./plane.js").PlaneData} plane */
+export function levelsOf(plane) {
+  const span = plane.highest - plane.lowest;
+  // Nothing but rounding and error is left of a uniform plane.
+  if (!(span > 4 * plane.bound) || span < 1e-12 * Math.abs(plane.highest)) return null;
+  const step = evenStep(span, 10);
+  return { step, start: Math.ceil(plane.lowest / step) * step, end: plane.highest };
+}
+
+/** @param {import("./plane.js").PlaneData} plane */
+export function hasEqualAxes(plane) {
+  const wide = plane.columns.at(-1) - plane.columns[0];
+  const high = plane.rows.at(-1) - plane.rows[0];
+  return Math.max(wide / high, high / wide) <= LONGEST_RATIO;
+}
+
+function sizes(plane, width, isNarrow) {
+  const margin = isNarrow ? { l: 52, r: 12, t: 12, b: 118 } : { l: 66, r: 112, t: 14, b: 54 };
+  const wide = plane.columns.at(-1) - plane.columns[0];
+  const high = plane.rows.at(-1) - plane.rows[0];
+  const room = Math.max(180, width - margin.l - margin.r);
+  if (!hasEqualAxes(plane)) return { margin, width, height: 320 + margin.t + margin.b };
+  const scale = Math.min(room / wide, HIGHEST_PICTURE / high);
+  return {
+    margin,
+    width: Math.round(scale * wide + margin.l + margin.r),
+    height: Math.round(Math.max(scale * high, 70) + margin.t + margin.b),
+  };
+}
+
+/** Data and layout. @param {import("./plane.js").PlaneData} plane */
+function figureOf(plane, words, units, marks, width) {
+  const isNarrow = width < 560;
+  const levels = levelsOf(plane);
+  const stops = words.scale.map((colour, index) => [index / (words.scale.length - 1), colour]);
+  const bar = { title: { text: `${words.potential}, ${units.potential}`, font: FONT }, tickfont: FONT, outlinewidth: 1, outlinecolor: INK };
+  const barAt = isNarrow
+    ? { orientation: "h", x: 0.5, y: 0, yanchor: "top", ypad: 52, thickness: 14, len: 1, xpad: 0, nticks: 5 }
+    : { thickness: 16, len: 1, lenmode: "fraction", xpad: 14, ypad: 0 };
+  if (!isNarrow) bar.title.side = "right";
+  const trace = {
+    type: "contour",
+    x: plane.columns, y: plane.rows, z: plane.values,
+    colorscale: stops,
+    zmin: plane.lowest, zmax: plane.highest,
+    autocontour: false,
+    contours: {
+      coloring: "heatmap", showlines: levels !== null, showlabels: levels !== null,
+      labelfont: { ...FONT, size: 12 },
+      ...(levels ? { start: levels.start, end: levels.end, size: levels.step } : { start: 0, end: 0, size: 1 }),
+    },
+    line: { color: INK, width: 0.9, smoothing: 0.6 },
+    colorbar: { ...bar, ...barAt },
+    hovertemplate: `${plane.across} = %{x:.5~g} ${units.length}<br>${plane.up} = %{y:.5~g} ${units.length}`
+      + `<br><b>%{z:.7~g} ${units.potential}</b><extra></extra>`,
+  };
+  const axis = (name) => ({
+    title: { text: `${name}, ${units.length}`, font: FONT, standoff: 8 }, tickfont: FONT, zeroline: false,
+    showgrid: false, ticks: "outside", ticklen: 5, tickcolor: INK, linecolor: INK, mirror: true, showline: true,
+  });
+  const isEqual = hasEqualAxes(plane);
+  const layout = {
+    ...sizes(plane, width, isNarrow), font: FONT, paper_bgcolor: "rgba(0,0,0,0)", plot_bgcolor: "#fffefa",
+    xaxis: { ...axis(plane.across), range: [plane.columns[0], plane.columns.at(-1)], ...(isEqual ? { constrain: "domain" } : {}) },
+    yaxis: { ...axis(plane.up), range: [plane.rows[0], plane.rows.at(-1)], ...(isEqual ? { scaleanchor: "x", constrain: "domain" } : {}) },
+    hoverlabel: { bgcolor: "#fffefa", bordercolor: INK, font: FONT },
+    showlegend: false, dragmode: false,
+  };
+  return { data: [trace, ...markTraces(marks)], layout };
+}
+
+/** Hottest and coldest place by their shape, not by colour. */
+function markTraces(marks) {
+  return marks.map((mark) => ({
+    type: "scatter", mode: "markers", x: [mark.x], y: [mark.y], cliponaxis: false,
+    marker: { symbol: mark.isHighest ? "triangle-up" : "triangle-down", size: 13, color: "#fffefa", line: { color: INK, width: 1.6 } },
+    hovertemplate: `${mark.words}<extra></extra>`,
+  }));
+}
+
+/** Extremes of the body that lie in the plane. @param {import("./plane.js").PlaneData} plane */
+export function marksOf(plane, extremes, words) {
+  const index = { x: 0, y: 1, z: 2 };
+  const near = 1e-9 * Math.max(...plane.columns.map(Math.abs), ...plane.rows.map(Math.abs));
+  return ["highest", "lowest"].flatMap((which) => {
+    const { at } = extremes[which];
+    const [along, x, y] = [plane.axis, plane.across, plane.up].map((axis) => at[index[axis]]);
+    const isShown = along !== null && x !== null && y !== null && Math.abs(along - plane.position) <= near
+      && x <= plane.columns.at(-1) && y <= plane.rows.at(-1);
+    return isShown ? [{ x, y, isHighest: which === "highest", words: `${words[which]} of the body` }] : [];
+  });
+}
+
+/**
+ * Draw into an element.
+ * @param {HTMLElement} element @param {import("./plane.js").PlaneData} plane
+ */
+export async function drawPicture(element, plane, words, units, marks) {
+  const Plotly = await plotting();
+  const { data, layout } = figureOf(plane, words, units, marks, element.parentElement.clientWidth);
+  await Plotly.react(element, data, layout, { displayModeBar: false, responsive: false, scrollZoom: false, doubleClick: false });
+}
+
+/** Save as an image that says by itself what it shows. @param {import("./plane.js").PlaneData} plane */
+export async function savePicture(plane, words, units, marks, name) {
+  const Plotly = await plotting();
+  const figure = figureOf(plane, words, units, marks, 900);
+  const place = `${plane.axis} = ${brief(plane.position)} ${units.length}`;
+  figure.layout.title = {
+    text: `${name ? `${name.replace(/[<>&]/g, " ")}<br>` : ""}${words.potential} on ${place}, each value within ${bounded(plane.bound)} ${units.potential_difference}`,
+    font: { ...FONT, size: 14 }, x: 0, xref: "container", xanchor: "left", pad: { l: 12 },
+  };
+  figure.layout.margin = { ...figure.layout.margin, t: 64 };
+  figure.layout.height += 50;
+  figure.layout.width = Math.max(figure.layout.width, 620);
+  figure.layout.paper_bgcolor = "#ffffff";
+  await Plotly.downloadImage(figure, {
+    format: "png", scale: 2, width: figure.layout.width, height: figure.layout.height,
+    filename: `plane_${plane.axis}_${plane.position}`,
+  });
+}

@@ -1,0 +1,70 @@
+/** The plane of an answer as rows and columns, its table, and its text for saving. */
+
+import { make, save } from "./elements.js";
+import { brief, shown } from "./numbers.js";
+
+/**
+ * @typedef {object} PlaneData
+ * @property {string} axis the plane is square to
+ * @property {number} position
+ * @property {string} across axis drawn to the right
+ * @property {string} up axis drawn upwards
+ * @property {number[]} columns places to the right
+ * @property {number[]} rows places upwards
+ * @property {number[][]} values rows of columns
+ * @property {number} lowest
+ * @property {number} highest
+ * @property {number} bound
+ */
+
+/** z is drawn to the right where it is in the plane, as in the sketch. @returns {PlaneData} */
+export function planeOf(answer, axis) {
+  const [grid] = answer.grids;
+  const [across, up] = { x: ["z", "y"], y: ["z", "x"], z: ["x", "y"] }[axis];
+  const columns = grid.axes[across];
+  const rows = grid.axes[up];
+  const at = (row, column) => {
+    const index = { [axis]: 0, [across]: column, [up]: row };
+    return grid.potential[index.x][index.y][index.z];
+  };
+  const values = rows.map((_, row) => columns.map((__, column) => at(row, column)));
+  const all = values.flat();
+  return {
+    axis, position: grid.axes[axis][0], across, up, columns, rows, values,
+    lowest: all.reduce((a, b) => Math.min(a, b)),
+    highest: all.reduce((a, b) => Math.max(a, b)),
+    bound: grid.error_bound,
+  };
+}
+
+/** Every so many indices, both ends among them. */
+function thinned(count, most) {
+  const wanted = Math.min(count, most);
+  return Array.from({ length: wanted }, (_, index) => Math.round((index * (count - 1)) / (wanted - 1)));
+}
+
+/** A table of part of the values, upwards as in the picture. @param {PlaneData} plane */
+export function planeTable(plane, words, units) {
+  const columns = thinned(plane.columns.length, 9);
+  const rows = thinned(plane.rows.length, 13).reverse();
+  return make(
+    "table", { class: "numbers" },
+    make("caption", {}, `${words.potential} in ${units.potential}; ${plane.across} and ${plane.up} in ${units.length}`),
+    make("thead", {}, make("tr", {},
+      make("th", { scope: "col" }, `${plane.up} \\ ${plane.across}`),
+      columns.map((column) => make("th", { scope: "col" }, brief(plane.columns[column]))))),
+    make("tbody", {}, rows.map((row) => make("tr", {},
+      make("th", { scope: "row" }, brief(plane.rows[row])),
+      columns.map((column) => make("td", {}, shown(plane.values[row][column], Math.max(plane.bound, tableStep(plane)))))))),
+  );
+}
+
+/** A table is for a look: a hundred thousandth of the range is enough. */
+const tableStep = (plane) => (plane.highest - plane.lowest) * 1e-5;
+
+/** Save all values as CSV, in the shape in which readings of a face are read. @param {PlaneData} plane */
+export function savePlane(plane, words, units) {
+  const head = [`${plane.up}/${plane.across} [${units.length}], ${words.potential} [${units.potential}]`.replace(/,/g, ""), ...plane.columns];
+  const lines = [head, ...plane.rows.map((place, row) => [place, ...plane.values[row]])];
+  save(`plane_${plane.axis}_${plane.position}.csv`, `${lines.map((line) => line.join(",")).join("\n")}\n`, "text/csv");
+}

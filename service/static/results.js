@@ -1,0 +1,84 @@
+/** Fills the answer side of the page: picture, extremes, flows, certificate, warnings. */
+
+import { bodySentence, certificateView, extremesView, flowsView, scrolled, warningsView } from "./answer.js";
+import { make } from "./elements.js";
+import { bounded, brief } from "./numbers.js";
+import { drawPicture, hasEqualAxes, levelsOf, marksOf, savePicture } from "./picture.js";
+import { planeOf, planeTable, savePlane } from "./plane.js";
+import { PHYSICS } from "./words.js";
+
+const part = (name) => document.getElementById(name);
+
+/**
+ * @typedef {object} Outcome
+ * @property {any} fields answer of POST /v1/fields
+ * @property {any} flows answer of POST /v1/flux-totals
+ * @property {any} problem as it was sent
+ * @property {any} evaluate what was asked of the flows
+ * @property {string} axis the plane shown is square to
+ */
+
+/** The picture on the page, to draw again when the width changes. @type {(() => void)|null} */
+let redraw = null;
+let saveShown = { picture: () => {}, values: () => {} };
+
+export const redrawPicture = () => redraw?.();
+export const savePictureShown = () => saveShown.picture();
+export const saveValuesShown = () => saveShown.values();
+
+/** @param {Outcome} outcome */
+export async function showAnswer({ fields, flows, problem, evaluate, axis }) {
+  const words = PHYSICS[fields.potential];
+  const { units } = fields;
+  const plane = planeOf(fields, axis);
+  const marks = marksOf(plane, fields.extremes, words);
+
+  part("nothing-yet").hidden = true;
+  part("answer").hidden = false;
+  part("answer-title").textContent = problem.name ?? "Problem without a name";
+  part("answer-body").textContent = bodySentence(problem, units);
+  part("answer-id").textContent = fields.problem_id.slice(0, 16);
+  part("answer-id").title = fields.problem_id;
+  part("picture-heading").textContent = `${words.potential} on the plane ${plane.axis} = ${brief(plane.position)} ${units.length}`;
+  part("picture-caption").replaceChildren(caption(plane, words, units, marks));
+  part("plane-table").replaceChildren(scrolled(planeTable(plane, words, units), "Values behind the picture"));
+  part("extremes").replaceChildren(extremesView(fields, words));
+  part("flows").replaceChildren(...flowsView(flows, problem, evaluate.edge_gap, words));
+  part("certificate").replaceChildren(...certificateView(fields, plane));
+  part("warnings").replaceChildren(warningsView([fields, flows]));
+
+  const element = part("picture");
+  element.setAttribute("aria-label", label(plane, words, units));
+  redraw = () => drawPicture(element, plane, words, units, marks).catch(noPicture);
+  saveShown = {
+    picture: () => savePicture(plane, words, units, marks, problem.name),
+    values: () => savePlane(plane, words, units),
+  };
+  await redraw();
+}
+
+function noPicture() {
+  part("picture").replaceChildren(
+    make("p", { class: "hint" }, "The picture could not be drawn, since its script did not load. The values are in the table below."),
+  );
+  part("plane-details").open = true;
+}
+
+function label(plane, words, units) {
+  return `Heat map with labelled ${words.line}s on the plane ${plane.axis} = ${brief(plane.position)} ${units.length}; `
+    + `${words.potential.toLowerCase()} from ${brief(plane.lowest)} to ${brief(plane.highest)} ${units.potential}. `
+    + "The values are in the table that follows.";
+}
+
+function caption(plane, words, units, marks) {
+  const levels = levelsOf(plane);
+  const sentences = [
+    `From ${brief(plane.lowest)} to ${brief(plane.highest)} ${units.potential}, each value within ${bounded(plane.bound)} ${units.potential_difference}.`,
+    levels
+      ? `One ${words.line} for every ${brief(levels.step)} ${units.potential_difference}.`
+      : "The plane is uniform within the bound, so no lines are drawn.",
+  ];
+  if (!hasEqualAxes(plane)) sentences.push("The axes are stretched: the plane is too long for equal ones.");
+  for (const mark of marks) sentences.push(`${mark.isHighest ? "\u25b3" : "\u25bd"} ${mark.words}.`);
+  return sentences.join(" ");
+}

@@ -1,0 +1,142 @@
+/** What each potential calls its quantities, its default units, and where the faces are. */
+
+/** @typedef {"x"|"y"|"z"} Axis */
+/** @typedef {"x_low"|"x_high"|"y_low"|"y_high"|"z_low"|"z_high"} Face */
+/** @typedef {"held"|"flux"|"film"|"insulated"} Condition */
+
+/** @type {Axis[]} */
+export const AXES = ["x", "y", "z"];
+/** @type {Face[]} */
+export const FACES = ["x_low", "x_high", "y_low", "y_high", "z_low", "z_high"];
+
+export const LENGTH_UNITS = ["um", "mm", "cm", "m", "km", "in", "ft"];
+/** Metres in a unit, for drawings in proportion; other units are drawn without. */
+export const METRES = {
+  nm: 1e-9, um: 1e-6, "µm": 1e-6, mm: 1e-3, cm: 0.01, dm: 0.1, m: 1, km: 1000, in: 0.0254, ft: 0.3048,
+};
+
+/**
+ * Words of each potential. `scale` runs from low to high and darkens all the way, so that it also reads in
+ * grey; isotherms are drawn in ink on it.
+ */
+export const PHYSICS = {
+  temperature: {
+    name: "Temperature",
+    subject: "heat",
+    potential: "Temperature",
+    conductivity: "Thermal conductivity",
+    film: "Film coefficient",
+    ambient: "Temperature of the surroundings",
+    inflow: "Heat flux into the body",
+    density: "Heat generated per volume",
+    flow: "Heat flow",
+    highest: "Hottest place",
+    lowest: "Coldest place",
+    line: "isotherm",
+    units: {
+      potential: "degC", conductivity: "W/(m K)", film_coefficient: "W/(m^2 K)", flux: "W/m^2",
+      density: "W/m^3", flow: "W",
+    },
+    difference: "K",
+    scale: ["#e3eff4", "#f6e2b3", "#f0b071", "#d96f48"],
+  },
+  electric_potential: {
+    name: "Voltage",
+    subject: "current",
+    potential: "Voltage",
+    conductivity: "Electrical conductivity",
+    film: "Contact conductance per area",
+    ambient: "Voltage of the surroundings",
+    inflow: "Current density into the body",
+    density: "Current fed in per volume",
+    flow: "Current",
+    highest: "Highest voltage",
+    lowest: "Lowest voltage",
+    line: "equipotential",
+    units: {
+      potential: "V", conductivity: "S/m", film_coefficient: "S/m^2", flux: "A/m^2", density: "A/m^3",
+      flow: "A",
+    },
+    difference: "V",
+    scale: ["#f2efe4", "#dcd7ea", "#b9aadb", "#9078c4"],
+  },
+  concentration: {
+    name: "Concentration",
+    subject: "substance",
+    potential: "Concentration",
+    conductivity: "Diffusivity",
+    film: "Film velocity",
+    ambient: "Concentration of the surroundings",
+    inflow: "Diffusive flux into the body",
+    density: "Substance generated per volume",
+    flow: "Rate of transport",
+    highest: "Highest concentration",
+    lowest: "Lowest concentration",
+    line: "line of equal concentration",
+    units: {
+      potential: "mol/m^3", conductivity: "m^2/s", film_coefficient: "m/s", flux: "mol/(m^2 s)",
+      density: "mol/(m^3 s)", flow: "mol/s",
+    },
+    difference: "mol/m^3",
+    scale: ["#f4f1e3", "#d8e6c3", "#a5cf9b", "#62a67c"],
+  },
+  hydraulic_head: {
+    name: "Hydraulic head",
+    subject: "water",
+    potential: "Head",
+    conductivity: "Hydraulic conductivity",
+    film: "Leakance",
+    ambient: "Head of the surroundings",
+    inflow: "Seepage velocity into the body",
+    density: "Recharge per volume",
+    flow: "Discharge",
+    highest: "Highest head",
+    lowest: "Lowest head",
+    line: "line of equal head",
+    units: {
+      potential: "m", conductivity: "m/s", film_coefficient: "1/s", flux: "m/s", density: "1/s",
+      flow: "m^3/s",
+    },
+    difference: "m",
+    scale: ["#f4f0e2", "#cfe4ea", "#93c3dc", "#5795c2"],
+  },
+};
+
+export const UNIT_LABELS = {
+  length: "Lengths", potential: "Potential", conductivity: "Conductivities",
+  film_coefficient: "Film coefficients", flux: "Flows per area", density: "Generation per volume",
+  flow: "Total flows",
+};
+
+/** Where a face is in the sketch. */
+export const PLACES = {
+  x_low: "front", x_high: "back", y_low: "bottom", y_high: "top", z_low: "left end", z_high: "right end",
+};
+
+export const CONDITIONS = {
+  held: "held at a value",
+  flux: "given inflow",
+  film: "film to surroundings",
+  insulated: "insulated",
+};
+
+/** @param {Face} face @returns {Axis} */
+export const axisOf = (face) => /** @type {Axis} */ (face[0]);
+
+/** The two axes of a face or plane square to an axis. @param {Axis} axis @returns {Axis[]} */
+export const axesAcross = (axis) => AXES.filter((other) => other !== axis);
+
+/** Where a face lies: "x = 0" or "x = 40 mm". */
+export function placeOf(face, size, unit) {
+  const axis = axisOf(face);
+  if (face.endsWith("_low")) return `${axis} = 0`;
+  const length = size[axis].trim();
+  if (!length) return `${axis} = size`;
+  return `${axis} = ${Number.isFinite(Number(length)) ? `${length} ${unit}` : length}`;
+}
+
+/** The unit of differences of a potential in a unit. */
+export function differenceUnit(draft) {
+  const unit = draft.units.potential;
+  return { degC: "K", "°C": "K", degF: "delta_degF", "°F": "delta_degF" }[unit] ?? unit;
+}
