@@ -1,0 +1,69 @@
+"""A line's two forms in time meet to rounding, whatever its ends and whatever drives it."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+import pytest
+
+from service.core.lines import images
+from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Drive, Line, Order, WallDrive
+from service.core.lines.time_response import Places, respond
+from service.core.maps import Profiles
+
+ENDS = (0.0, 1e-6, 0.3, 50.0, 1e9, math.inf)
+STEPS_AND_RAMPS = Profiles(
+    np.array([0.0, 0.3, 1.1, 2.0]),
+    np.array([[1.0, 2.0], [0.0, 1.0], [0.5, 3.0]]),
+    np.array([[1.0, 0.0], [0.3, 1.0], [0.5, -1.0]]),
+)
+DRIVES: dict[str, Drive] = {"profiles": STEPS_AND_RAMPS, "low end": WallDrive(False), "high end": WallDrive(True)}
+COORDINATES = np.array([0.0, 1e-6, 0.1, 0.3, 0.7, 1.1, 1.5, 2.0 - 1e-7, 2.0])
+
+
+def asked(order: Order) -> Places:
+    if order == PRIMITIVE:
+        return Places(COORDINATES[:-1], PRIMITIVE, COORDINATES[1:])
+    return Places(COORDINATES, order)
+
+
+@pytest.mark.parametrize("order", [VALUE, SLOPE, PRIMITIVE], ids=["values", "slopes", "integrals"])
+@pytest.mark.parametrize("name", DRIVES)
+@pytest.mark.parametrize("high", ENDS)
+@pytest.mark.parametrize("low", ENDS)
+def test_images_and_modes_agree_where_one_hands_over_to_the_other(
+    low: float, high: float, name: str, order: Order
+) -> None:
+    line = Line(2.0, 0.7, low, high)
+    switch = images.LATEST * line.extent**2
+    # One time on either side of the switch, so close that the answer itself does not change.
+    times = switch * np.array([1.0 - 1e-15, 1.0 + 1e-15])
+    early, late = np.moveaxis(respond(line, DRIVES[name], asked(order), times).total, 1, 0)
+    # 3e-13 of the largest answer: sums of 30 modes with wave numbers up to 30 pi / l.
+    np.testing.assert_allclose(early, late, rtol=0, atol=3e-13 * float(np.abs(late).max()) + 1e-14)
+
+
+@pytest.mark.parametrize("low", ENDS)
+def test_departure_and_initial_profile_make_up_the_answer(low: float) -> None:
+    line = Line(2.0, 0.7, low, math.inf)
+    answer = respond(line, STEPS_AND_RAMPS, asked(VALUE), np.geomspace(1e-12, 1.0, 40))
+    np.testing.assert_allclose(answer.total, answer.departure + answer.initial[:, None, :], rtol=0, atol=1e-15)
+
+
+def test_departure_keeps_its_digits_where_it_is_far_below_rounding() -> None:
+    line = Line(2.0, 1.0, math.inf, math.inf)
+    even = Profiles(np.array([0.0, math.inf]), np.ones((1, 1)), np.ones((1, 1)))
+    place, time = 0.5, 0.0025
+    departure = respond(line, even, Places(np.array([place]), VALUE), np.array([time])).departure[0, 0, 0]
+    # -erfc(0.5 / (2 * 0.05)) = -erfc(5), to ten digits from Abramowitz and Stegun, table 7.3 (from memory)
+    assert departure == pytest.approx(-1.5374597944e-12, rel=1e-9)
+
+
+def test_even_profile_between_insulated_ends_does_not_change_at_all() -> None:
+    line = Line(3.0, 1.3, 0.0, 0.0)
+    even = Profiles(np.array([0.0, math.inf]), np.full((1, 1), 7.0), np.full((1, 1), 7.0))
+    times = np.geomspace(1e-9, 1e3, 30)
+    places = Places(np.linspace(0.0, 3.0, 5), VALUE)
+    assert (respond(line, even, places, times).total == 7.0).all()
+    assert (respond(line, even, Places(places.low, SLOPE), times).total == 0.0).all()
