@@ -66,13 +66,17 @@ SPECIAL_CASES: dict[str, tuple[Case, tuple[Place, ...]]] = {
 
 
 def scale_at(case: Case, place: Place) -> float:
-    """Largest k / distance, over faces and lines where data jump: what turns a difference of potential into
-    a flux.
+    """What turns a difference of potential into a flux here: largest sqrt(k k_max) / distance over the axes.
+
+    Distances are those to faces and to lines where data jump; a distance d along an axis with conductivity k
+    counts d sqrt(k_j / k) along another.
     """
-    scales = [k / length for k, length in zip(case.conductivity, case.size, strict=True)]
+    largest = max(case.conductivity)
+    scales = []
     for axis, (k, length, c) in enumerate(zip(case.conductivity, case.size, place, strict=True)):
-        distances = [abs(c - at) for at in (0.0, length, *jump_places(case, axis))]
-        scales.extend(k / distance for distance in distances if distance > 0)
+        marks = (0.0, length, *jump_places(case, axis))
+        distances = [length, *(abs(c - mark) for mark in marks if c != mark)]
+        scales.append(math.sqrt(k * largest) / min(distances))
     return max(scales)
 
 
