@@ -32,7 +32,7 @@ FloatArray = NDArray[np.float64]
 LAST_EXPONENT = 36.0
 
 # More terms than this are not summed at one place; the time form stands alone there.
-MOST_TERMS = 250_000
+MOST_TERMS = 60_000
 
 ORDERS: tuple[tuple[int, int, int], ...] = ((0, 1, 2), (0, 2, 1), (1, 0, 2), (1, 2, 0), (2, 0, 1), (2, 1, 0))
 

@@ -188,11 +188,18 @@ def _flow(setting: Setting, axis: int, position: float, rectangle: Rectangle, si
         beyond = Rectangle(rectangle.p_low, rectangle.p_high, far, 2 * far)
         leftover, leftover_bound = _integral(setting, axis, position, beyond, SLOPE, tolerance)
         if abs(leftover) > 4 * leftover_bound:
-            face = f"{AXES[axis]} = {position:g}"
-            return Total(None, None, (UnboundedCause("endless", face, factor * leftover / far, 0.0),))
+            name = _section_name(setting.body, axis, position)
+            return Total(None, None, (UnboundedCause("endless", name, factor * leftover / far, 0.0),))
         rectangle = Rectangle(rectangle.p_low, rectangle.p_high, rectangle.q_low, far)
     value, bound = _integral(setting, axis, position, rectangle, SLOPE, tolerance)
     return Total(factor * value, abs(factor) * bound)
+
+
+def _section_name(body: Body, axis: int, position: float) -> str:
+    """The face at a position, or the plane."""
+    if position in (0.0, body.size[axis]):
+        return f"face {AXES[axis]}_{'low' if position == 0.0 else 'high'}"
+    return f"plane {AXES[axis]} = {position:g}"
 
 
 def _far_along(setting: Setting) -> float:
@@ -249,7 +256,7 @@ def _given_total(face: Face, condition: Inflow, rectangle: Rectangle) -> Total:
         far = float(first @ given.second.right[-1])
         size = float(np.abs(first) @ np.abs(given.second.right[-1]))
         if abs(far) > NO_JUMP * size or (size > 0 and given.is_uniform):
-            return Total(None, None, (UnboundedCause("endless", face, far, 0.0),))
+            return Total(None, None, (UnboundedCause("endless", f"face {face}", far, 0.0),))
         last = max(float(given.second_knots[-2]), rectangle.q_low)
         rectangle = Rectangle(rectangle.p_low, rectangle.p_high, rectangle.q_low, last)
     value, size = map_integral(given, (rectangle.p_low, rectangle.q_low), (rectangle.p_high, rectangle.q_high))

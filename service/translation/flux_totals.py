@@ -141,11 +141,13 @@ def _total(units: UnitSystem, total: Total, word: str) -> dict[str, Any]:
 
 def _unbounded_warning(total: Total, where: str) -> answers.Warning_:
     lines = ", ".join(cause.line for cause in total.causes)
-    return answers.warning(
-        "unbounded-total",
-        f"The total has no finite value, because of: {lines}. Name an edge gap to get the flow through the rest.",
-        where,
+    endless = any(cause.kind == "endless" for cause in total.causes)
+    advice = (
+        "It goes on without end; name a rectangle of it to get the flow through that."
+        if endless
+        else "Name an edge gap to get the flow through the rest."
     )
+    return answers.warning("unbounded-total", f"The total has no finite value, because of: {lines}. {advice}", where)
 
 
 def _plane_described(plane: PlanePart) -> dict[str, Any]:
