@@ -16,9 +16,7 @@ CELLS, LENGTH_CELLS = 50, 165
 
 def second_difference(count: int) -> sparse.dia_matrix:
     """Matrix of -u'' times the square of the spacing between two held ends."""
-    return sparse.diags_array(
-        [-np.ones(count - 1), 2 * np.ones(count), -np.ones(count - 1)], offsets=(-1, 0, 1)
-    )
+    return sparse.diags_array([-np.ones(count - 1), 2 * np.ones(count), -np.ones(count - 1)], offsets=(-1, 0, 1))
 
 
 def solve_bar() -> tuple[FloatArray, FloatArray, FloatArray]:

@@ -70,9 +70,7 @@ def empty_app() -> FastAPI:
 
 
 def _serve(which: str, port: int, store: str) -> None:
-    app = (
-        empty_app() if which == "empty" else create_app(Settings(store_path=Path(store) / "problems.sqlite3"))
-    )
+    app = empty_app() if which == "empty" else create_app(Settings(store_path=Path(store) / "problems.sqlite3"))
     uvicorn.run(app, host="127.0.0.1", port=port, log_level="error")
 
 
@@ -83,9 +81,7 @@ def server(which: str) -> Iterator[httpx.Client]:
         free.bind(("127.0.0.1", 0))
         port = free.getsockname()[1]
     with tempfile.TemporaryDirectory() as store:
-        process = multiprocessing.get_context("spawn").Process(
-            target=_serve, args=(which, port, store), daemon=True
-        )
+        process = multiprocessing.get_context("spawn").Process(target=_serve, args=(which, port, store), daemon=True)
         process.start()
         try:
             with httpx.Client(base_url=f"http://127.0.0.1:{port}", timeout=30, trust_env=False) as client:
