@@ -13,7 +13,6 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.ndimage import maximum_filter1d
 
 from service.core.lines.images import LATEST
 from service.core.lines.line import Drive, Line, WallDrive
@@ -58,12 +57,14 @@ def step_for(relative_error: float) -> float:
 
 def bound_everywhere(integral: Integral) -> float:
     """One error bound for all places, less sharp than the others and quick."""
-    total, relative = 0.0, _rule_error(integral)
+    total = 0.0
     for product in integral.products:
-        most = [_widened(np.abs(f).max(axis=0, keepdims=True), integral.step) for f in product.factors]
-        total += relative * float(_weigh(most[0] * most[1] * most[2], product.weights)[0])
-        total += ROUNDING * float(_rounded(integral, product, most)[0])
-    return total
+        most = [np.abs(factor).max(axis=0, keepdims=True) for factor in product.factors]
+        if product.weights.size > 1:
+            most = [np.maximum(size, carried) for size, carried in zip(most, integral.carried, strict=True)]
+        x, y, z = (_widened(size, integral.step) for size in most)
+        total += float(_weigh(x * y * z, product.weights)[0])
+    return (_rule_error(integral) + ROUNDING) * total
 
 
 def bound_on_grid(integral: Integral) -> Factors:
@@ -115,14 +116,14 @@ def carried_by(line: Line, drive: Drive, places: Places, times: FloatArray) -> F
     if line.is_endless:
         return sizes
     late = times > LATEST * line.extent**2
-    modes = modes_of(line, 2)
+    modes = modes_of(line, MODE_COUNT)
     strengths = np.abs(eigen_integrals(line, drive, MODE_COUNT))
     slowest = np.abs(places.mode_shapes(line)[:, 0]).max()
     factor = float(modes.wave_numbers[1]) if places.order == -1 else 1.0
     if places.high is not None:
         factor = float((places.high - places.low).max()) * line.scale
     # The slowest mode as it is at the places asked; the others by the strongest of them, at the pace of the second.
-    decay = np.exp(-np.outer(times[late], modes.rates))
+    decay = np.exp(-np.outer(times[late], modes.rates[:2]))
     sizes[0, late] = decay[:, :1] * strengths[0] * float(slowest)
     sizes[0, late] += decay[:, 1:] * strengths[1:].max(axis=0) * factor
     return sizes
@@ -140,4 +141,12 @@ def _widened(sizes: FloatArray, step: float) -> FloatArray:
     if sizes.shape[1] == 1:
         return sizes
     reach = math.ceil(-math.log(math.sin(ANGLE)) / step)
-    return np.asarray(maximum_filter1d(sizes, 2 * reach + 1, axis=1, mode="nearest"))
+    nodes = np.arange(sizes.shape[1])
+    widest, reached = sizes, 0
+    while reached < reach:
+        # Three windows side by side, each as wide as those before: 1, 3, 9, ... nodes.
+        shift = min(2 * reached + 1, reach - reached)
+        earlier, later = np.maximum(nodes - shift, 0), np.minimum(nodes + shift, nodes.size - 1)
+        widest = np.maximum(np.maximum(widest[:, earlier], widest[:, later]), widest)
+        reached += shift
+    return widest

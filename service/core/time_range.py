@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from service.core.lines.line import Drive, Line, WallDrive, active_breaks, wall_distance
 from service.core.lines.modes import modes_of
-from service.core.lines.time_response import Places
+from service.core.lines.time_response import MODE_COUNT, Places
 from service.core.maps import Profiles
 from service.core.split import Part
 
@@ -52,7 +52,7 @@ def times_for(
 def slowest_rate(lines: Sequence[Line]) -> float:
     """Decay rate of the slowest product of modes, not counting one that does not decay at all."""
     finite = [line for line in lines if not line.is_endless]
-    rates = [modes_of(line, 2).rates for line in finite]
+    rates = [modes_of(line, MODE_COUNT).rates for line in finite]
     together = sum(float(rate[0]) for rate in rates)
     return together if together > 0 else min(float(rate[1]) for rate in rates)
 
