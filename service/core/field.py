@@ -147,13 +147,6 @@ def check_inside(body: Body, columns: Sequence[FloatArray]) -> None:
             )
 
 
-def rough_potential(setting: Setting, columns: Sequence[FloatArray]) -> FloatArray:
-    """Potential on a small grid to a few digits, for scales."""
-    places = [Places(column, VALUE) for column in columns]
-    integrals = [time_form.integrate(setting.lines, part, places, time_error.COARSEST_STEP) for part in setting.parts]
-    return sum((time_form.on_grid(integral) for integral in integrals), start=np.zeros(()))
-
-
 def kept_rows() -> time_form.Rows:
     """A function that answers for a line as `respond` does and keeps the answers for parts that share them."""
     kept: dict[tuple[object, ...], TimeResponse] = {}

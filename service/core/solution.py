@@ -12,11 +12,11 @@ from service.core.convergence import Convergence, Overshoot
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes
 from service.core.field import Field, Grid, KeepGoing, Setting
-from service.core.lines.line import Line
 from service.core.maps import Rectangle
-from service.core.problem import Body, Face, Film, Held, map_of
+from service.core.problem import Body, Face
 from service.core.solvability import check_steady_state, level_is_pinned
-from service.core.split import Part, lines_of, parts_of, reference_level
+from service.core.span import span_of
+from service.core.split import lines_of, parts_of, reference_level
 from service.core.totals import Balance, Bounded, Total
 
 FloatArray = NDArray[np.float64]
@@ -28,7 +28,7 @@ def solve(body: Body) -> Solution:
     lines = lines_of(body)
     reference = reference_level(body)
     parts = parts_of(body, reference)
-    return Solution(Setting(body, lines, parts, reference, _span(body, lines, parts)))
+    return Solution(Setting(body, lines, parts, reference, span_of(body, lines, parts)))
 
 
 class Solution:
@@ -118,43 +118,3 @@ class Solution:
     def balance(self, *, gap: float | None = None, tolerance: float) -> Balance:
         """Inflow of every face, generation, and what is left over."""
         return totals.balance(self._setting, tolerance, gap)
-
-
-def _span(body: Body, lines: tuple[Line, Line, Line], parts: tuple[Part, ...]) -> float:
-    """Range of held values and ambients, or what inflows and sources raise, whichever is larger.
-
-    The latter is read off a few places of the body, to the two digits that a scale needs.
-    """
-    levels = [map_of(condition) for condition in body.faces.values() if isinstance(condition, Held | Film)]
-    given = [level for face_map in levels if face_map is not None for level in (face_map.lowest, face_map.highest)]
-    span = max(given) - min(given) if given else 0.0
-    flows = tuple(part for part in parts if part.wall_axis is None or lines_end_is_insulated(lines, part))
-    if flows:
-        setting = Setting(body, lines, flows, 0.0, 1.0)
-        columns = [_sample(lines, flows, axis) for axis in range(3)]
-        potential = fields.rough_potential(setting, columns)
-        span = max(span, float(potential.max() - min(potential.min(), 0.0)), -float(potential.min()))
-    return span
-
-
-def lines_end_is_insulated(lines: tuple[Line, Line, Line], part: Part) -> bool:
-    """Whether a part is driven by a given inflow."""
-    assert part.wall_axis is not None
-    line = lines[part.wall_axis]
-    return (line.film_high if part.is_high else line.film_low) == 0.0
-
-
-def _sample(lines: tuple[Line, Line, Line], parts: tuple[Part, ...], axis: int) -> FloatArray:
-    line = lines[axis]
-    if line.is_endless:
-        widest = max(other.extent for other in lines if not other.is_endless) / line.scale
-        places = [0.0, 0.5 * widest, widest]
-    else:
-        places = [0.0, 0.5 * line.length, line.length]
-    for part in parts:
-        knots = part.knots(axis)
-        if knots.size > 2:
-            middle = 0.5 * (knots[1:] + knots[:-1])
-            places.extend(middle[np.isfinite(middle)])
-    unique = np.unique(places)
-    return unique[np.unique(np.linspace(0, unique.size - 1, min(unique.size, 9)).astype(int))]
