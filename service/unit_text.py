@@ -14,11 +14,11 @@ from functools import lru_cache
 
 import pint
 
+from service.number_range import LARGEST_NUMBER, RANGE_IN_WORDS, SMALLEST_NUMBER
+
 LONGEST_TEXT = 64
 # A unit such as Btu/(hr ft^2 degF) has four names; six leave room and keep the parser's work small.
 MOST_NAMES = 6
-# No quantity of an engineer is as large, and its square still is a finite number.
-LARGEST_NUMBER = 1e150
 
 # Exponents of at most three digits: exact arithmetic would build a power of ten as long as it is asked to.
 _NUMBER = r"[+-]?(?:\d+(?:\.\d*)?|\.\d+)(?:[eE][+-]?\d{1,3})?"
@@ -54,16 +54,16 @@ def convert(text: str, target: Target) -> float:
     """The quantity in units of the target. Raises UnitError when it is none or measures something else."""
     number, unit = _split(text)
     if unit == target.unit:
-        return float(number)
-    if target.is_level:
+        exact = number
+    elif target.is_level:
         exact = _convert_level(number, unit, target)
     else:
         factor = factor_between(unit, target.unit)
         if factor is None:
             raise _refusal(unit, target)
         exact = number * factor
-    if abs(exact) > LARGEST_NUMBER:
-        raise UnitError(f"The quantity is too large in {target.unit}; at most {LARGEST_NUMBER:g} is read.")
+    if exact and not SMALLEST_NUMBER <= abs(exact) <= LARGEST_NUMBER:
+        raise UnitError(f"The quantity in {target.unit} has to be {RANGE_IN_WORDS}.")
     return float(exact)
 
 
@@ -107,8 +107,6 @@ def _split(text: str) -> tuple[Fraction, str]:
     if unit[0] in ",.'_":
         raise UnitError("The number is not readable; write decimals with a point and leave thousands unmarked.")
     _check_unit_text(unit)
-    if abs(float(number)) > LARGEST_NUMBER:
-        raise UnitError(f"The number is too large; at most {LARGEST_NUMBER:g} is read.")
     return Fraction(number), unit
 
 

@@ -7,9 +7,10 @@ from typing import Annotated, Any
 from pydantic import BaseModel, BeforeValidator, ConfigDict, WithJsonSchema
 from pydantic_core import PydanticCustomError
 
+from service.number_range import LARGEST_NUMBER, RANGE_IN_WORDS, is_readable
+
 LONGEST_QUANTITY = 64
 LONGEST_NAME = 200
-LARGEST_NUMBER = 1e150
 
 
 class Model(BaseModel):
@@ -44,14 +45,9 @@ def _check_quantity(value: Any) -> float | str:
 
 
 def _bounded(value: float) -> float:
-    # NaN fails every comparison.
-    if abs(value) <= LARGEST_NUMBER:
+    if is_readable(value):
         return float(value)
-    raise PydanticCustomError(
-        "number_range",
-        "The number has to lie between -{limit} and {limit}.",
-        {"limit": f"{LARGEST_NUMBER:g}"},
-    )
+    raise PydanticCustomError("number_range", "The number has to be {range}.", {"range": RANGE_IN_WORDS})
 
 
 def _got(value: Any) -> str:

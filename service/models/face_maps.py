@@ -8,6 +8,7 @@ from pydantic import Discriminator, Field, Tag, WithJsonSchema, model_validator
 from pydantic_core import PydanticCustomError
 
 from service.models.base import LONGEST_NAME, Model, Quantity
+from service.number_range import LARGEST_NUMBER
 
 # Bounds of the document itself; the service's settings bound the problem further.
 MOST_PATCHES = 1_000
@@ -73,6 +74,10 @@ class PatchesMap(Model):
     )
 
 
+# Checked by the validation library itself: there may be a hundred thousand of them.
+Reading = Annotated[float, Field(ge=-LARGEST_NUMBER, le=LARGEST_NUMBER)]
+
+
 class SamplesMap(Model):
     """Readings on rectilinear axes, bilinear between them.
 
@@ -92,7 +97,7 @@ class SamplesMap(Model):
         None, max_length=LONGEST_AXIS, description="Places of the readings along z, increasing lengths.",
         examples=[[0, 10]],
     )  # fmt: skip
-    table: list[list[float | None]] | None = Field(
+    table: list[list[Reading | None]] | None = Field(
         None,
         max_length=LONGEST_AXIS,
         description="One row for each place on the first of the face's axes (in the order x, y, z), one "

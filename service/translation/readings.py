@@ -11,10 +11,11 @@ from numpy.typing import NDArray
 from scipy.sparse import csr_array
 from scipy.sparse.linalg import spsolve
 
+from service.number_range import is_readable
+
 FloatArray = NDArray[np.float64]
 
 _MISSING = frozenset({"", "-", "na", "n/a", "nan", "null"})
-_LARGEST = 1e150
 
 
 class ReadingsError(ValueError):
@@ -81,7 +82,7 @@ def _number(entry: str, decimal_comma: bool) -> float | None:
         number = float(entry)
     except ValueError:
         return None
-    return number if abs(number) <= _LARGEST else None
+    return number if is_readable(number) else None
 
 
 def _place(entry: str, row: int, column: int, decimal_comma: bool) -> float:

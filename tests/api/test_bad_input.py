@@ -88,7 +88,7 @@ UNITS = [
     problem("arithmetic in a length", "body/size/x", "2**3**4**5 m", "#/body/size/x", "The unit is not readable"),
     problem("two statements", "body/size/x", "1 m; 2", "#/body/size/x", "The unit is not readable"),
     problem("unknown unit", "body/size/x", "4 xyzzy", "#/body/size/x", 'The unit "xyzzy" is not known'),
-    problem("length beyond numbers", "body/size/x", "1e999 m", "#/body/size/x", "The number is too large"),
+    problem("length beyond numbers", "body/size/x", "1e999 m", "#/body/size/x", "The quantity in mm has to be zero or between 1e-60 and 1e+60 in size."),
     problem("empty text", "body/size/x", " ", "#/body/size/x", "The text is empty"),
     problem("long text", "body/size/x", "4 " + "m" * 99, "#/body/size/x", "longer than 64 characters"),
     problem("flux as conductivity", "body/conductivity/x", "95 W/m^2", "#/body/conductivity/x", 'The unit "W/m^2" does not measure thermal conductivity'),
@@ -113,7 +113,9 @@ NUMBERS = [
     problem("truth as a size", "body/size/x", True, "#/body/size/x", "a number and a unit is wanted here, not true or false."),
     problem("list as a size", "body/size/x", [40], "#/body/size/x", "is wanted here, not a list."),
     problem("null as a size", "body/size/x", None, "#/body/size/x", "is wanted here, not null."),
-    problem("huge whole number", "body/size/x", 10**400, "#/body/size/x", "The number has to lie between -1e+150 and 1e+150."),
+    problem("huge whole number", "body/size/x", 10**400, "#/body/size/x", "The number has to be zero or between 1e-60 and 1e+60 in size."),
+    problem("size too small for a body", "body/size/x", 1e-200, "#/body/size/x", "The number has to be zero or between 1e-60 and 1e+60 in size."),
+    problem("reading beyond all measure", "faces/z_low/value/table/1/1", 1e200, "#/faces/z_low/value/table/1/1", "The number has to be at most 1e+60.", BLOCK),
     problem("number as a name", "name", 5, "#/name", "A text is wanted here."),
     question("text as a count", "fields", "evaluate/grids/0/x/count", "5", "#/evaluate/grids/0/x/count", "A whole number is wanted here."),
     question("truth as a count", "fields", "evaluate/grids/0/x/count", True, "#/evaluate/grids/0/x/count", "A whole number is wanted here."),
@@ -230,7 +232,7 @@ BODIES = [
     raw("another character set", "{}", 415, "The body has to be encoded in UTF-8.", Content_Type="application/json; charset=utf-16"),
     raw("compressed", b"\x1f\x8b", 415, "Compressed bodies are not read", Content_Encoding="gzip"),
     raw("answer as a web page", json.dumps(QUESTIONS["fields"]), 406, "Answers are application/json or", Accept="text/html"),
-    Wrong("number that is infinite as a double", "/v1/fields", b'{"problem_id": "' + b"0" * 64 + b'", "evaluate": {"points": [{"at": [1e999, 0, 0]}]}}', 422, "#/evaluate/points/0/at/0", "The number has to lie between -1e+150 and 1e+150."),
+    Wrong("number that is infinite as a double", "/v1/fields", b'{"problem_id": "' + b"0" * 64 + b'", "evaluate": {"points": [{"at": [1e999, 0, 0]}]}}', 422, "#/evaluate/points/0/at/0", "The number has to be zero or between 1e-60 and 1e+60 in size."),
 ]  # fmt: skip
 
 TABLE = [*UNITS, *NUMBERS, *SHAPES, *MAPS, *PLACES, *BODIES]

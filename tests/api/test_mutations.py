@@ -30,9 +30,9 @@ EXAMPLES = load_examples()
 
 STRANGE: st.SearchStrategy[Any] = st.sampled_from(
     [
-        None, True, False, 0, -1, 1, 2, -0.0, 0.5, 1e-300, 1e149, 1e300, 10**30,
-        "", " ", "0 m", "-1 mm", "1e-9 mm", "5 K", "1e149 km", "semi-infinite", "end", "held", "patches",
-        "\u0000", "é" * 65, [], {}, [[]], [1, 2], [2, 1], ["end", 1], [0, "end"], [[1, 2], [3, 4]],
+        None, True, False, 0, -1, 1, 2, -0.0, 0.5, 1e-300, 1e59, 1e149, 1e-59, 10**30,
+        "", " ", "0 m", "-1 mm", "1e-9 mm", "5 K", "1e55 km", "1e149 km", "semi-infinite", "end", "held",
+        "patches", "\u0000", "é" * 65, [], {}, [[]], [1, 2], [2, 1], ["end", 1], [0, "end"], [[1, 2], [3, 4]],
         {"from": 0, "to": 1, "count": 3}, {"condition": "insulated"}, {"map": "patches"},
         {"map": "samples", "csv": ",0,1\n0,1,2\n1,2,3\n", "beyond": "hold"},
         {"relative": 1e-3}, {"absolute": 1e-3},
@@ -66,7 +66,8 @@ def mutated_requests(draw: st.DrawFn) -> tuple[str, Any]:
         if action == "remove":
             del here[key]
         elif action == "scale" and isinstance(here[key], int | float):
-            here[key] *= draw(st.sampled_from([-1, 1e-9, 1e-3, 0.999999999, 1e3, 1e9, 1e40]))
+            scaled = here[key] * draw(st.sampled_from([-1, 1e-9, 1e-3, 0.999999999, 1e3, 1e9, 1e40]))
+            here[key] = max(-1e300, min(scaled, 1e300))
         elif action == "copy":
             other = example["request"]
             for part in draw(st.sampled_from(places_of(other))):
