@@ -72,7 +72,10 @@ function faceDraftOf(face, known) {
   if (known.condition === "insulated") return draft;
   const datum = draft.data[known.condition];
   const given = known[DATUM_KEYS[known.condition]];
-  if (typeof given !== "object") return Object.assign(draft, { data: { ...draft.data, [known.condition]: { ...datum, value: text(given) } } });
+  if (typeof given !== "object") {
+    datum.value = text(given);
+    return draft;
+  }
   datum.kind = given.map;
   datum.value = text(given.background);
   const across = axesAcross(axisOf(face));
@@ -131,8 +134,12 @@ export function requestsOf(draft) {
     grid[other] = { from: 0, to: quantity(to), count: Number(draft.plane.count) };
     note(`#/evaluate/grids/0/${other}`, isOpen ? "plane-reach" : idOf("size", other));
   }
-  const flows = { planes: [{ name: "plane shown", [axis]: quantity(position) }] };
+  const flows = { planes: [{ name: "plane shown", [axis]: quantity(position) }], patches: patchesOf(draft) };
   note("#/evaluate/planes/0", "plane-position");
+  flows.patches.forEach(({ face, patch }, index) => {
+    const { condition } = draft.faces[face];
+    note(`#/evaluate/patches/${index}`, idOf(face, condition, "patch", patch, "value"));
+  });
   if (draft.edgeGap.trim()) flows.edge_gap = quantity(draft.edgeGap);
   note("#/evaluate/edge_gap", "edge-gap");
   return {
@@ -140,6 +147,15 @@ export function requestsOf(draft) {
     flows: { problem, evaluate: flows, accuracy },
     places,
   };
+}
+
+/** Every patch of every face, by its number. */
+function patchesOf(draft) {
+  return facesOf(draft).flatMap((face) => {
+    const { condition, data } = draft.faces[face];
+    if (condition === "insulated" || data[condition].kind !== "patches") return [];
+    return data[condition].patches.map((_, patch) => ({ face, patch }));
+  });
 }
 
 function problemOf(draft, note) {
@@ -209,7 +225,8 @@ function datumOf(face, condition, datum, pointer, note) {
     patches: datum.patches.map((patch, index) => {
       const here = `${pointer}/patches/${index}`;
       const part = idOf(id, "patch", index);
-      note(here, idOf(part, "value"));
+      // Most often a patch as a whole is wrong in its place.
+      note(here, idOf(part, across[0], "from"));
       const written = patch.name.trim() ? { name: patch.name.trim() } : {};
       note(`${here}/name`, idOf(part, "name"));
       across.forEach((axis, side) => {

@@ -1,5 +1,7 @@
 /** Building blocks of the page: elements, labelled fields with a unit and a place for a mistake. */
 
+import { pretty } from "./numbers.js";
+
 /**
  * An element with attributes, listeners (keys that begin with "on") and children.
  * @param {string} tag
@@ -38,7 +40,7 @@ export function mistakePlace(id) {
  * @property {string} label
  * @property {string} value
  * @property {(value: string) => void} onInput
- * @property {string} [unit] shown behind the input
+ * @property {string} [kind] what it measures; its unit is shown behind the input, see showUnits
  * @property {string} [hint] shown under it
  * @property {string} [list] id of a datalist
  * @property {string} [spoken] label for those who cannot see what stands around, if it has to say more
@@ -46,10 +48,18 @@ export function mistakePlace(id) {
  * @property {string} [extraClass]
  */
 
+/**
+ * Write the units behind all fields. They change while someone types, so no field may be made anew for it.
+ * @param {Record<string, string>} units by kind
+ */
+export function showUnits(units) {
+  for (const place of document.querySelectorAll(".unit[data-kind]")) place.textContent = pretty(units[place.dataset.kind] ?? "");
+}
+
 /** A labelled input. @param {FieldText} text @returns {HTMLElement} */
 export function field(text) {
-  const { id, label, value, onInput, unit, hint, list, spoken, isText, extraClass } = text;
-  const described = [unit ? `${id}-unit` : "", hint ? `${id}-hint` : "", `${id}-mistake`];
+  const { id, label, value, onInput, kind, hint, list, spoken, isText, extraClass } = text;
+  const described = [kind ? `${id}-unit` : "", hint ? `${id}-hint` : "", `${id}-mistake`];
   const input = make("input", {
     id,
     value,
@@ -70,7 +80,7 @@ export function field(text) {
       "div",
       { class: "entry" },
       input,
-      unit ? make("span", { class: "unit", id: `${id}-unit` }, unit) : null,
+      kind ? make("span", { class: "unit", id: `${id}-unit`, "data-kind": kind }) : null,
     ),
     hint ? make("p", { class: "hint", id: `${id}-hint` }, hint) : null,
     mistakePlace(id),
@@ -136,4 +146,17 @@ export function save(name, content, type) {
   link.click();
   link.remove();
   setTimeout(() => URL.revokeObjectURL(address), 1000);
+}
+
+/** A sentence behind a sign and a word, so that colour is not alone. @param {"good"|"bad"|"open"} kind */
+export function verdict(kind, title, sentence) {
+  const sign = { good: "\u2713", bad: "\u2717", open: "\u25cb" }[kind];
+  return make("p", { class: `verdict ${kind}` },
+    make("span", { class: "sign", "aria-hidden": "true" }, sign),
+    make("span", {}, make("strong", {}, `${title}. `), sentence));
+}
+
+/** A wide table may be moved sideways by itself. */
+export function scrolled(table, label) {
+  return make("div", { class: "scrolled", tabindex: 0, role: "region", "aria-label": label }, table);
 }

@@ -5,10 +5,18 @@ import { choice, field, longText, make, mistakePlace } from "./elements.js";
 import { axesAcross, axisOf, CONDITIONS, PHYSICS, placeOf, PLACES } from "./words.js";
 
 const DATUM_CHOICES = [
-  ["uniform", "the same all over"],
-  ["patches", "patches over a background"],
-  ["samples", "readings (CSV)"],
+  ["uniform", "uniform"],
+  ["patches", "with patches"],
+  ["samples", "from readings"],
 ];
+
+/** Write where each face lies, which changes with the sizes. */
+export function showPlaces(draft) {
+  for (const place of document.querySelectorAll("[data-place]")) {
+    const { place: face } = place.dataset;
+    place.textContent = ` ${PLACES[face]}, ${placeOf(face, draft.size, draft.units.length)}`;
+  }
+}
 
 /**
  * All cards.
@@ -18,7 +26,8 @@ const DATUM_CHOICES = [
 export function faceCards(draft, changed) {
   return make(
     "div",
-    { class: "face-cards", id: "faces" },
+    { class: "face-cards", id: "faces", tabindex: -1 },
+    mistakePlace("faces"),
     facesOf(draft).map((face) => faceCard(draft, face, changed)),
   );
 }
@@ -47,7 +56,7 @@ function faceCard(draft, face, changed) {
       "legend",
       {},
       make("span", { class: "face-name" }, face),
-      make("span", { class: "face-place" }, ` ${PLACES[face]}, ${placeOf(face, draft.size, draft.units.length)}`),
+      make("span", { class: "face-place", "data-place": face }),
     ),
     select,
     details,
@@ -59,9 +68,9 @@ function conditionFields(draft, face, changed) {
   const words = PHYSICS[draft.potential];
   if (known.condition === "insulated") return [];
   const meaning = {
-    held: { label: words.potential, unit: draft.units.potential },
-    flux: { label: words.inflow, unit: draft.units.flux },
-    film: { label: words.ambient, unit: draft.units.potential },
+    held: { label: words.potential, kind: "potential" },
+    flux: { label: words.inflow, kind: "flux" },
+    film: { label: words.ambient, kind: "potential" },
   }[known.condition];
   const fields = [];
   if (known.condition === "film") {
@@ -70,7 +79,7 @@ function conditionFields(draft, face, changed) {
         id: idOf(face, "coefficient"),
         label: words.film,
         spoken: face,
-        unit: draft.units.film_coefficient,
+        kind: "film_coefficient",
         value: known.coefficient,
         onInput: (value) => {
           known.coefficient = value;
@@ -90,7 +99,7 @@ function datumFields(draft, face, meaning, changed) {
   const redraw = () => rest.replaceChildren(...kindFields(draft, face, datum, id, meaning, changed, redraw));
   const kind = choice({
     id: idOf(id, "kind"),
-    label: `${meaning.label}:`,
+    label: meaning.label,
     spoken: face,
     value: datum.kind,
     options: DATUM_CHOICES,
@@ -113,7 +122,7 @@ function kindFields(draft, face, datum, id, meaning, changed, redraw) {
     id: idOf(id, "value"),
     label: datum.kind === "patches" ? "Background" : "Value",
     spoken: `${face}, ${meaning.label}`,
-    unit: meaning.unit,
+    kind: meaning.kind,
     value: datum.value,
     onInput: (typed) => {
       datum.value = typed;
@@ -171,21 +180,21 @@ function patchFields(draft, face, datum, index, id, meaning, changed, redraw) {
     { class: "patch" },
     make("legend", {}, `Patch ${index + 1}`),
     field({ id: idOf(part, "name"), label: "Name (optional)", spoken, value: patch.name, isText: true, onInput: note("name") }),
-    field({ id: idOf(part, "value"), label: "Value", spoken, unit: meaning.unit, value: patch.value, onInput: note("value") }),
-    intervals(axesAcross(axisOf(face)), patch, part, spoken, draft.units.length, changed),
+    field({ id: idOf(part, "value"), label: "Value", spoken, kind: meaning.kind, value: patch.value, onInput: note("value") }),
+    intervals(axesAcross(axisOf(face)), patch, part, spoken, changed),
     remove,
   );
 }
 
 /** From and to along some axes; the texts stand in `owner.from` and `owner.to`, one for each axis. */
-export function intervals(axes, owner, part, spoken, unit, changed) {
+export function intervals(axes, owner, part, spoken, changed) {
   return axes.flatMap((axis, side) =>
     ["from", "to"].map((end) =>
       field({
         id: idOf(part, axis, end),
         label: `${axis} ${end}`,
         spoken,
-        unit,
+        kind: "length",
         value: owner[end][side],
         onInput: (value) => {
           owner[end][side] = value;
@@ -217,12 +226,13 @@ function readingFields(draft, face, datum, id, meaning, changed) {
   return [
     longText({
       id: idOf(id, "csv"),
-      label: `Readings in ${meaning.unit}`,
+      label: "Readings",
       spoken: face,
       value: datum.csv,
       hint:
-        `First row: places along ${second}; first column: places along ${first}, both in ${draft.units.length}; ` +
-        "the corner is free. Between readings the value runs bilinearly.",
+        `First row: places along ${second}; first column: places along ${first}, the corner ` +
+        `is free. Bare numbers in the units of lengths and of the ${meaning.kind === "flux" ? "flow per area" : "potential"}. ` +
+        "Between readings the value runs bilinearly.",
       onInput: (value) => {
         datum.csv = value;
         changed();
@@ -230,6 +240,5 @@ function readingFields(draft, face, datum, id, meaning, changed) {
     }),
     tick("hold", "Hold the outermost reading where readings end before the face"),
     tick("fill", "Fill missing readings smoothly from their neighbours"),
-    mistakePlace(idOf(id, "map")),
   ];
 }

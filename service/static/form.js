@@ -3,17 +3,18 @@
 import { idOf } from "./draft.js";
 import { choice, field, make } from "./elements.js";
 import { faceCards, intervals } from "./faces_form.js";
-import { axesAcross, AXES, differenceUnit, LENGTH_UNITS, PHYSICS, UNIT_LABELS } from "./words.js";
+import { AXES, axesAcross, LENGTH_UNITS, PHYSICS, UNIT_LABELS } from "./words.js";
 
 /**
  * Draw the whole form, and its parts again when a choice changes what they ask for.
  * @param {any} draft
  * @param {() => void} changed called after every change of the draft
+ * @param {() => void} drawn called after every drawing
  */
-export function drawForm(draft, changed) {
+export function drawForm(draft, changed, drawn) {
   const parts = {
     body: () => bodyFields(draft, changed, redraw),
-    units: () => unitFields(draft, changed, redraw),
+    units: () => unitFields(draft, changed),
     faces: () => [faceCards(draft, changed)],
     sources: () => sourceFields(draft, changed, redraw),
     view: () => viewFields(draft, changed, redraw),
@@ -22,36 +23,27 @@ export function drawForm(draft, changed) {
     for (const name of names) {
       document.getElementById(`${name}-fields`).replaceChildren(...parts[name]().flat());
     }
+    drawn();
   }
   redraw(...Object.keys(parts));
 }
 
-/** Write a text of the draft; parts that show it are drawn again once it is left. */
+/** Writes a text of the draft. */
 const writer = (owner, key, changed) => (value) => {
   owner[key] = value;
   changed();
 };
 
-/** Draw parts again when a field loses the focus after a change, so that no keystroke takes the focus away. */
-function onLeave(element, redraw, ...names) {
-  element.addEventListener("change", () => redraw(...names));
-  return element;
-}
-
 function bodyFields(draft, changed, redraw) {
-  const unit = draft.units.length;
   const size = (axis) =>
-    onLeave(
-      field({
-        id: idOf("size", axis), label: `Length ${axis}`, unit, value: draft.size[axis],
-        onInput: writer(draft.size, axis, changed),
-      }),
-      redraw, "faces",
-    );
+    field({
+      id: idOf("size", axis), label: `Length ${axis}`, kind: "length", value: draft.size[axis],
+      onInput: writer(draft.size, axis, changed),
+    });
   const words = PHYSICS[draft.potential];
   const conductivity = (key, label) =>
     field({
-      id: idOf("conductivity", key), label, unit: draft.units.conductivity, value: draft.conductivity[key],
+      id: idOf("conductivity", key), label, kind: "conductivity", value: draft.conductivity[key],
       spoken: words.conductivity, onInput: writer(draft.conductivity, key, changed),
     });
   return [
@@ -97,24 +89,18 @@ function bodyFields(draft, changed, redraw) {
         document.getElementById("conductivity-kind").focus();
       },
     }),
-    make(
-      "div", { class: "triple" },
-      draft.isSame
-        ? conductivity("all", "Along all")
-        : AXES.map((axis) => conductivity(axis, `Along ${axis}`)),
-    ),
+    draft.isSame
+      ? conductivity("all", "Along all axes")
+      : make("div", { class: "triple" }, AXES.map((axis) => conductivity(axis, `Along ${axis}`))),
   ];
 }
 
-function unitFields(draft, changed, redraw) {
+function unitFields(draft, changed) {
   const unit = (kind) =>
-    onLeave(
-      field({
-        id: idOf("unit", kind), label: UNIT_LABELS[kind], value: draft.units[kind], isText: true,
-        list: kind === "length" ? "length-units" : undefined, onInput: writer(draft.units, kind, changed),
-      }),
-      redraw, "body", "faces", "sources", "view",
-    );
+    field({
+      id: idOf("unit", kind), label: UNIT_LABELS[kind], value: draft.units[kind], isText: true,
+      list: kind === "length" ? "length-units" : undefined, onInput: writer(draft.units, kind, changed),
+    });
   return [
     make("datalist", { id: "length-units" }, LENGTH_UNITS.map((name) => make("option", { value: name }))),
     ...Object.keys(UNIT_LABELS).map(unit),
@@ -152,10 +138,10 @@ function sourceFields(draft, changed, redraw) {
     return make(
       "fieldset", { class: "patch" }, make("legend", {}, spoken), extent,
       field({
-        id: idOf(id, "density"), label: words.density, spoken, unit: draft.units.density, value: source.density,
+        id: idOf(id, "density"), label: words.density, spoken, kind: "density", value: source.density,
         hint: "Negative for a sink.", onInput: writer(source, "density", changed),
       }),
-      source.whole ? null : intervals(AXES, source, id, spoken, draft.units.length, changed),
+      source.whole ? null : intervals(AXES, source, id, spoken, changed),
       source.whole ? null : make("p", { class: "hint whole" }, "An axis left empty: the whole length."),
       remove,
     );
@@ -179,7 +165,6 @@ function sourceFields(draft, changed, redraw) {
 
 function viewFields(draft, changed, redraw) {
   const { plane, accuracy } = draft;
-  const unit = draft.units.length;
   const showsOpenEnd = draft.isBar && plane.axis !== "z";
   return [
     choice({
@@ -193,12 +178,12 @@ function viewFields(draft, changed, redraw) {
       },
     }),
     field({
-      id: "plane-position", label: `at ${plane.axis} =`, unit, value: plane.position, spoken: "Plane",
+      id: "plane-position", label: `at ${plane.axis} =`, kind: "length", value: plane.position, spoken: "Plane",
       onInput: writer(plane, "position", changed),
     }),
     showsOpenEnd
       ? field({
-          id: "plane-reach", label: "Draw the bar up to z =", unit, value: plane.reach,
+          id: "plane-reach", label: "Draw the bar up to z =", kind: "length", value: plane.reach,
           onInput: writer(plane, "reach", changed),
         })
       : null,
@@ -226,12 +211,12 @@ function viewFields(draft, changed, redraw) {
     }),
     accuracy.kind === "absolute"
       ? field({
-          id: "accuracy-absolute", label: "At most", unit: differenceUnit(draft), value: accuracy.absolute,
+          id: "accuracy-absolute", label: "At most", kind: "difference", value: accuracy.absolute,
           spoken: "Largest error", onInput: writer(accuracy, "absolute", changed),
         })
       : null,
     field({
-      id: "edge-gap", label: "Edge gap (optional)", unit, value: draft.edgeGap, extraClass: "whole",
+      id: "edge-gap", label: "Edge gap (optional)", kind: "length", value: draft.edgeGap, extraClass: "whole",
       hint: "Width of the strip left out beside lines where held values jump. With it a flow that has no "
         + "finite value also comes as the finite flow through the rest.",
       onInput: writer(draft, "edgeGap", changed),

@@ -70,15 +70,15 @@ function entryOf(input, pointer, detail) {
   if (!input || !place) return make("li", {}, make("code", {}, pointer), " ", detail);
   place.textContent = place.textContent ? `${place.textContent} ${detail}` : detail;
   place.hidden = false;
-  input.setAttribute("aria-invalid", "true");
+  if (input.matches("input, select, textarea")) input.setAttribute("aria-invalid", "true");
   for (let around = input.closest("details"); around; around = around.parentElement.closest("details")) {
     around.open = true;
   }
-  const label = document.querySelector(`label[for="${input.id}"]`)?.textContent ?? pointer;
+  const label = document.querySelector(`label[for="${input.id}"]`)?.textContent ?? input.id;
   const follow = (event) => {
     event.preventDefault();
     input.focus();
     input.scrollIntoView({ block: "center" });
   };
-  return make("li", {}, make("a", { href: `#${input.id}`, onclick: follow }, label), " ", detail);
+  return make("li", {}, make("a", { href: `#${input.id}`, onclick: follow }, label), ": ", detail);
 }

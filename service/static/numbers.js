@@ -17,7 +17,9 @@ export function shown(value, bound = 0) {
   const digits = Math.min(MOST_DIGITS, covered);
   if (digits < 1) return "0";
   if (size >= 7 || size < -4) return tidy(value.toExponential(digits - 1));
-  return tidy(value.toFixed(Math.max(0, digits - 1 - size)));
+  const text = value.toFixed(Math.max(0, digits - 1 - size));
+  // Zeros at the end of an exact value say nothing.
+  return tidy(bound > 0 ? text : String(Number(text)));
 }
 
 /** A bound to two digits, rounded up. @param {number} bound */
@@ -31,11 +33,23 @@ export function bounded(bound) {
   return tidy(up.toFixed(Math.max(0, 1 - size)));
 }
 
+/** A remainder of which only the size matters, to two digits. @param {number} value */
+export const rough = (value) => `${value < 0 ? "\u2212" : ""}${bounded(Math.abs(value))}`;
+
 /** A few digits, for axes, labels and captions. @param {number} value */
 export const brief = (value) => tidy(String(Number(value.toPrecision(6))));
 
 /** A whole number with thin spaces between thousands. */
 export const counted = (count) => String(count).replace(/\B(?=(\d{3})+$)/g, "\u202f");
+
+/** A unit as it is printed: °C, W/(m² K). @param {string} unit */
+export const pretty = (unit) => unit
+  .replace(/\bdelta_deg/g, "\u00b0").replace(/\bdeg(?=[CF]\b)/g, "\u00b0").replace(/\bu(?=m\b)/g, "\u00b5")
+  .replace(/\^(-?[1-4])/g, (_, power) => [...power].map((sign) => POWERS[sign]).join(""));
+const POWERS = { "-": "\u207b", 1: "\u00b9", 2: "\u00b2", 3: "\u00b3", 4: "\u2074" };
+
+/** A quantity of a request as it is printed: "850 W/(m² K)". @param {number|string} value */
+export const written = (value, unit) => (typeof value === "number" ? `${brief(value)} ${pretty(unit)}` : pretty(value));
 
 /** A step of 1, 2, 2.5 or 5 times a power of ten that cuts a span into about this many parts. */
 export function evenStep(span, parts) {

@@ -2,12 +2,15 @@
 
 import { addressOf, ask, Failure } from "./calls.js";
 import { draftOf, requestsOf } from "./draft.js";
-import { make } from "./elements.js";
+import { make, showUnits } from "./elements.js";
 import { EXAMPLES } from "./examples.js";
+import { showPlaces } from "./faces_form.js";
 import { drawForm } from "./form.js";
 import { clearMistakes, forgive, showMistakes } from "./mistakes.js";
+import { plotting } from "./picture.js";
 import { redrawPicture, savePictureShown, saveValuesShown, showAnswer } from "./results.js";
 import { drawSketch } from "./sketch.js";
+import { differenceUnit } from "./words.js";
 
 const part = (name) => document.getElementById(name);
 const CALLS = { fields: "/v1/fields", flows: "/v1/flux-totals" };
@@ -44,9 +47,16 @@ function keep() {
 /** After every change of the draft. */
 function changed() {
   keep();
+  labelForm();
   sketch();
   showRequest();
   if (!part("answer").hidden) part("stale").hidden = false;
+}
+
+/** Everything in the form that follows from what is typed elsewhere in it. */
+function labelForm() {
+  showUnits({ ...draft.units, difference: differenceUnit(draft) });
+  showPlaces(draft);
 }
 
 function sketch() {
@@ -88,6 +98,8 @@ async function compute() {
   clearMistakes();
   setBusy(true);
   say("Computing.");
+  // Meanwhile the picture's script may come; if it fails, the picture says so.
+  plotting().catch(() => {});
   const { fields, flows, places } = requestsOf(draft);
   const { axis } = draft.plane;
   const outcomes = await Promise.allSettled([
@@ -145,7 +157,7 @@ function startFrom(next) {
   setBusy(false);
   clearMistakes();
   draft = next;
-  drawForm(draft, changed);
+  drawForm(draft, changed, labelForm);
   changed();
 }
 

@@ -1,6 +1,7 @@
 /** The plane as a heat map with labelled isotherms, drawn by the plotting script the service brings along. */
 
-import { brief, bounded, evenStep } from "./numbers.js";
+import { make } from "./elements.js";
+import { bounded, brief, evenStep, pretty } from "./numbers.js";
 
 const INK = "#1b2730";
 const FONT = { family: "system-ui, 'Liberation Sans', 'DejaVu Sans', sans-serif", size: 13, color: INK };
@@ -8,17 +9,20 @@ const HIGHEST_PICTURE = 500;
 /** Beyond this a picture with equal axes would be a hairline. */
 const LONGEST_RATIO = 10;
 
+/** The plotting script, loaded when the first picture is wanted: the form does without it. @type {Promise<any>|null} */
+let loading = null;
+
 /** Plotly once its script has run. @returns {Promise<any>} */
-function plotting() {
-  if (window.Plotly) return Promise.resolve(window.Plotly);
-  const script = document.getElementById("plotting");
-  return new Promise((resolve, reject) => {
-    const done = () => (window.Plotly ? resolve(window.Plotly) : reject(new Error("no plotting script")));
-    // The script may have failed before anyone listened.
-    if (document.readyState === "complete") done();
-    script.addEventListener("load", done);
-    script.addEventListener("error", () => reject(new Error("no plotting script")));
+export function plotting() {
+  loading ??= new Promise((resolve, reject) => {
+    const failed = () => {
+      loading = null;
+      reject(new Error("no plotting script"));
+    };
+    const script = make("script", { src: "/static/vendor/plotly.min.js", onload: () => resolve(window.Plotly), onerror: failed });
+    document.head.append(script);
   });
+  return loading;
 }
 
 /** Isotherms at round values. @param {import("./plane.js").PlaneData} plane */
@@ -38,7 +42,7 @@ export function hasEqualAxes(plane) {
 }
 
 function sizes(plane, width, isNarrow) {
-  const margin = isNarrow ? { l: 52, r: 12, t: 12, b: 118 } : { l: 66, r: 112, t: 14, b: 54 };
+  const margin = isNarrow ? { l: 52, r: 14, t: 12, b: 124 } : { l: 66, r: 112, t: 14, b: 54 };
   const wide = plane.columns.at(-1) - plane.columns[0];
   const high = plane.rows.at(-1) - plane.rows[0];
   const room = Math.max(180, width - margin.l - margin.r);
@@ -56,29 +60,25 @@ function figureOf(plane, words, units, marks, width) {
   const isNarrow = width < 560;
   const levels = levelsOf(plane);
   const stops = words.scale.map((colour, index) => [index / (words.scale.length - 1), colour]);
-  const bar = { title: { text: `${words.potential}, ${units.potential}`, font: FONT }, tickfont: FONT, outlinewidth: 1, outlinecolor: INK };
+  const bar = { title: { text: `${words.potential}, ${pretty(units.potential)}`, font: FONT }, tickfont: FONT, outlinewidth: 1, outlinecolor: INK };
   const barAt = isNarrow
-    ? { orientation: "h", x: 0.5, y: 0, yanchor: "top", ypad: 52, thickness: 14, len: 1, xpad: 0, nticks: 5 }
+    ? { orientation: "h", x: 0.5, yref: "container", y: 0, yanchor: "bottom", ypad: 4, thickness: 14, len: 1, xpad: 0, nticks: 6 }
     : { thickness: 16, len: 1, lenmode: "fraction", xpad: 14, ypad: 0 };
-  if (!isNarrow) bar.title.side = "right";
-  const trace = {
-    type: "contour",
-    x: plane.columns, y: plane.rows, z: plane.values,
-    colorscale: stops,
-    zmin: plane.lowest, zmax: plane.highest,
-    autocontour: false,
-    contours: {
-      coloring: "heatmap", showlines: levels !== null, showlabels: levels !== null,
-      labelfont: { ...FONT, size: 12 },
-      ...(levels ? { start: levels.start, end: levels.end, size: levels.step } : { start: 0, end: 0, size: 1 }),
-    },
-    line: { color: INK, width: 0.9, smoothing: 0.6 },
+  bar.title.side = isNarrow ? "top" : "right";
+  const places = { x: plane.columns, y: plane.rows, z: plane.values };
+  const heat = {
+    type: "heatmap", ...places, zsmooth: "best", colorscale: stops, zmin: plane.lowest, zmax: plane.highest,
     colorbar: { ...bar, ...barAt },
-    hovertemplate: `${plane.across} = %{x:.5~g} ${units.length}<br>${plane.up} = %{y:.5~g} ${units.length}`
-      + `<br><b>%{z:.7~g} ${units.potential}</b><extra></extra>`,
+    hovertemplate: `${plane.across} = %{x:.5~g} ${pretty(units.length)}<br>${plane.up} = %{y:.5~g} ${pretty(units.length)}`
+      + `<br><b>%{z:.7~g} ${pretty(units.potential)}</b><extra></extra>`,
+  };
+  const lines = levels && {
+    type: "contour", ...places, autocontour: false, showscale: false, hoverinfo: "skip",
+    contours: { coloring: "none", showlabels: true, labelfont: { ...FONT, size: 12 }, start: levels.start, end: levels.end, size: levels.step },
+    line: { color: INK, width: 0.9, smoothing: 0.6 },
   };
   const axis = (name) => ({
-    title: { text: `${name}, ${units.length}`, font: FONT, standoff: 8 }, tickfont: FONT, zeroline: false,
+    title: { text: `${name}, ${pretty(units.length)}`, font: FONT, standoff: 8 }, tickfont: FONT, zeroline: false,
     showgrid: false, ticks: "outside", ticklen: 5, tickcolor: INK, linecolor: INK, mirror: true, showline: true,
   });
   const isEqual = hasEqualAxes(plane);
@@ -89,7 +89,7 @@ function figureOf(plane, words, units, marks, width) {
     hoverlabel: { bgcolor: "#fffefa", bordercolor: INK, font: FONT },
     showlegend: false, dragmode: false,
   };
-  return { data: [trace, ...markTraces(marks)], layout };
+  return { data: [heat, ...(lines ? [lines] : []), ...markTraces(marks)], layout };
 }
 
 /** Hottest and coldest place by their shape, not by colour. */
@@ -120,7 +120,9 @@ export function marksOf(plane, extremes, words) {
  */
 export async function drawPicture(element, plane, words, units, marks) {
   const Plotly = await plotting();
-  const { data, layout } = figureOf(plane, words, units, marks, element.parentElement.clientWidth);
+  const { data, layout } = figureOf(plane, words, units, marks, element.parentElement.parentElement.clientWidth);
+  // The caption is as wide as the picture, so that what stands beside it may come close.
+  element.parentElement.style.width = `${layout.width}px`;
   await Plotly.react(element, data, layout, { displayModeBar: false, responsive: false, scrollZoom: false, doubleClick: false });
 }
 
@@ -128,9 +130,9 @@ export async function drawPicture(element, plane, words, units, marks) {
 export async function savePicture(plane, words, units, marks, name) {
   const Plotly = await plotting();
   const figure = figureOf(plane, words, units, marks, 900);
-  const place = `${plane.axis} = ${brief(plane.position)} ${units.length}`;
+  const place = `${plane.axis} = ${brief(plane.position)} ${pretty(units.length)}`;
   figure.layout.title = {
-    text: `${name ? `${name.replace(/[<>&]/g, " ")}<br>` : ""}${words.potential} on ${place}, each value within ${bounded(plane.bound)} ${units.potential_difference}`,
+    text: `${name ? `${name.replace(/[<>&]/g, " ")}<br>` : ""}${words.potential} on ${place}, each value within ${bounded(plane.bound)} ${pretty(units.potential_difference)}`,
     font: { ...FONT, size: 14 }, x: 0, xref: "container", xanchor: "left", pad: { l: 12 },
   };
   figure.layout.margin = { ...figure.layout.margin, t: 64 };

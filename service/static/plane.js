@@ -1,7 +1,7 @@
 /** The plane of an answer as rows and columns, its table, and its text for saving. */
 
 import { make, save } from "./elements.js";
-import { brief, shown } from "./numbers.js";
+import { brief, pretty, shown } from "./numbers.js";
 
 /**
  * @typedef {object} PlaneData
@@ -49,7 +49,7 @@ export function planeTable(plane, words, units) {
   const rows = thinned(plane.rows.length, 13).reverse();
   return make(
     "table", { class: "numbers" },
-    make("caption", {}, `${words.potential} in ${units.potential}; ${plane.across} and ${plane.up} in ${units.length}`),
+    make("caption", {}, `${words.potential} in ${pretty(units.potential)}; ${plane.across} and ${plane.up} in ${pretty(units.length)}`),
     make("thead", {}, make("tr", {},
       make("th", { scope: "col" }, `${plane.up} \\ ${plane.across}`),
       columns.map((column) => make("th", { scope: "col" }, brief(plane.columns[column]))))),

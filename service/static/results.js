@@ -1,8 +1,9 @@
 /** Fills the answer side of the page: picture, extremes, flows, certificate, warnings. */
 
-import { bodySentence, certificateView, extremesView, flowsView, scrolled, warningsView } from "./answer.js";
-import { make } from "./elements.js";
-import { bounded, brief } from "./numbers.js";
+import { bodySentence, certificateView, extremesView, warningsView } from "./answer.js";
+import { make, scrolled } from "./elements.js";
+import { flowsView } from "./flows.js";
+import { bounded, brief, pretty } from "./numbers.js";
 import { drawPicture, hasEqualAxes, levelsOf, marksOf, savePicture } from "./picture.js";
 import { planeOf, planeTable, savePlane } from "./plane.js";
 import { PHYSICS } from "./words.js";
@@ -39,7 +40,7 @@ export async function showAnswer({ fields, flows, problem, evaluate, axis }) {
   part("answer-body").textContent = bodySentence(problem, units);
   part("answer-id").textContent = fields.problem_id.slice(0, 16);
   part("answer-id").title = fields.problem_id;
-  part("picture-heading").textContent = `${words.potential} on the plane ${plane.axis} = ${brief(plane.position)} ${units.length}`;
+  part("picture-heading").textContent = `${words.potential} on the plane ${plane.axis} = ${brief(plane.position)} ${pretty(units.length)}`;
   part("picture-caption").replaceChildren(caption(plane, words, units, marks));
   part("plane-table").replaceChildren(scrolled(planeTable(plane, words, units), "Values behind the picture"));
   part("extremes").replaceChildren(extremesView(fields, words));
@@ -65,17 +66,17 @@ function noPicture() {
 }
 
 function label(plane, words, units) {
-  return `Heat map with labelled ${words.line}s on the plane ${plane.axis} = ${brief(plane.position)} ${units.length}; `
-    + `${words.potential.toLowerCase()} from ${brief(plane.lowest)} to ${brief(plane.highest)} ${units.potential}. `
+  return `Heat map with labelled ${words.line}s on the plane ${plane.axis} = ${brief(plane.position)} ${pretty(units.length)}; `
+    + `${words.potential.toLowerCase()} from ${brief(plane.lowest)} to ${brief(plane.highest)} ${pretty(units.potential)}. `
     + "The values are in the table that follows.";
 }
 
 function caption(plane, words, units, marks) {
   const levels = levelsOf(plane);
   const sentences = [
-    `From ${brief(plane.lowest)} to ${brief(plane.highest)} ${units.potential}, each value within ${bounded(plane.bound)} ${units.potential_difference}.`,
+    `From ${brief(plane.lowest)} to ${brief(plane.highest)} ${pretty(units.potential)}, each value within ${bounded(plane.bound)} ${pretty(units.potential_difference)}.`,
     levels
-      ? `One ${words.line} for every ${brief(levels.step)} ${units.potential_difference}.`
+      ? `One ${words.line} for every ${brief(levels.step)} ${pretty(units.potential_difference)}.`
       : "The plane is uniform within the bound, so no lines are drawn.",
   ];
   if (!hasEqualAxes(plane)) sentences.push("The axes are stretched: the plane is too long for equal ones.");

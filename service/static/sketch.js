@@ -54,6 +54,7 @@ const CORNERS = {
   z_low: [[0, 0, 0], [1, 0, 0], [1, 1, 0], [0, 1, 0]],
   z_high: [[0, 0, 1], [1, 0, 1], [1, 1, 1], [0, 1, 1]],
 };
+const SHORT = { held: "held", flux: "inflow", film: "film", insulated: "insulated" };
 const VISIBLE = ["x_low", "y_high", "z_low"];
 
 const points = (place, corners) => corners.map((corner) => place(...corner).map((v) => v.toFixed(1)).join(",")).join(" ");
@@ -65,9 +66,9 @@ function labels(place) {
   const [leftEdge] = place(1, 0.5, 0);
   const [, bottom] = place(0, 0, 0.5);
   return {
-    x_low: { at: [place(0, 0.5, 0.6)[0], bottom + 26], to: place(0, 0.3, 0.6), anchor: "middle" },
+    x_low: { at: [place(0, 0.5, 0.42)[0], bottom + 26], to: place(0, 0.3, 0.42), anchor: "middle" },
     x_high: { at: [place(1, 1, 0.8)[0] + 18, top - 14], to: place(1, 0.7, 0.72), anchor: "start" },
-    y_low: { at: [leftEdge + 6, bottom + 26], to: place(0.5, 0, 0.22), anchor: "middle" },
+    y_low: { at: [place(0, 0, 0.82)[0], bottom + 26], to: place(0.45, 0, 0.8), anchor: "middle" },
     y_high: { at: [place(1, 1, 0.22)[0], top - 14], to: place(0.5, 1, 0.3), anchor: "middle" },
     z_low: { at: [leftEdge - 14, place(0.5, 0.62, 0)[1]], to: place(0.5, 0.55, 0), anchor: "end" },
     z_high: { at: [rightEdge + 16, place(0.3, 0.5, 1)[1]], to: place(0.45, 0.5, 1), anchor: "start" },
@@ -83,12 +84,7 @@ export function drawSketch(svg, draft, current) {
   const place = projection(sides);
   const faces = facesOf(draft);
   const parts = [];
-  for (const [from, to] of [[[1, 0, 0], [1, 0, 1]], [[1, 0, 0], [0, 0, 0]], [[1, 0, 0], [1, 1, 0]]]) {
-    // Only the edge behind both the front and the end is out of sight; the others bound visible faces.
-    if (to[2] === 1) parts.push(line(place(...from), place(...to), "edge unseen-edge"));
-  }
-  if (!draft.isBar) parts.push(line(place(1, 0, 1), place(0, 0, 1), "edge unseen-edge"));
-  if (!draft.isBar) parts.push(line(place(1, 0, 1), place(1, 1, 1), "edge unseen-edge"));
+  for (const [from, to] of edgesOf(draft.isBar, false)) parts.push(line(place(...from), place(...to), "edge unseen-edge"));
   if (current && faces.includes(current) && !VISIBLE.includes(current)) {
     parts.push(draw("polygon", { class: "side current", points: points(place, CORNERS[current]) }));
   }
@@ -96,6 +92,7 @@ export function drawSketch(svg, draft, current) {
     const isCurrent = face === current ? " current" : "";
     parts.push(draw("polygon", { class: `side ${face}${isCurrent}`, points: points(place, CORNERS[face]) }));
   }
+  for (const [from, to] of edgesOf(draft.isBar, true)) parts.push(line(place(...from), place(...to), "edge"));
   if (draft.isBar) parts.push(...openEnd(place));
   parts.push(...axes(place));
   for (const face of faces) parts.push(...label(face, labels(place)[face], draft, face === current));
@@ -108,13 +105,24 @@ export function drawSketch(svg, draft, current) {
 const line = ([x1, y1], [x2, y2], name) =>
   draw("line", { class: name, x1: x1.toFixed(1), y1: y1.toFixed(1), x2: x2.toFixed(1), y2: y2.toFixed(1) });
 
-/** A bar is cut off by a broken edge, and its long edges go on dotted. */
+/** Edges in sight or out of it: those that meet in the far lower corner are hidden. A bar has none at its end. */
+function edgesOf(isBar, areSeen) {
+  const corners = [0, 1].flatMap((x) => [0, 1].flatMap((y) => [0, 1].map((z) => [x, y, z])));
+  const edges = corners.flatMap((from) => [0, 1, 2]
+    .filter((axis) => from[axis] === 0)
+    .map((axis) => [from, from.map((value, index) => (index === axis ? 1 : value))]));
+  const isHidden = ([x, y, z]) => x === 1 && y === 0 && z === 1;
+  return edges
+    .filter((edge) => !(isBar && edge.every((corner) => corner[2] === 1)))
+    .filter((edge) => edge.some(isHidden) !== areSeen);
+}
+
+/** A bar is broken off in a zigzag, and its long edges go on dotted. */
 function openEnd(place) {
-  const zigzag = [];
-  const outline = [[0, 0], [0, 0.25], [0, 0.5], [0, 0.75], [0, 1], [0.5, 1], [1, 1]];
-  outline.forEach(([x, y], index) => zigzag.push(place(x, y, index % 2 ? 0.955 : 1.03).map((v) => v.toFixed(1)).join(",")));
+  const outline = [[0, 0], [0, 0.2], [0, 0.4], [0, 0.6], [0, 0.8], [0, 1], [0.33, 1], [0.67, 1], [1, 1]];
+  const zigzag = outline.map(([x, y], index) => place(x, y, 1 + [0, 0.025, -0.025][index === 0 || index > 7 ? 0 : 1 + (index % 2)]));
   const onward = [[0, 0], [0, 1], [1, 1]].map(([x, y]) => line(place(x, y, 1.02), place(x, y, 1.14), "edge onward"));
-  return [draw("polyline", { class: "break", points: zigzag.join(" ") }), ...onward];
+  return [draw("polyline", { class: "break", points: zigzag.map((at) => at.map((v) => v.toFixed(1)).join(",")).join(" ") }), ...onward];
 }
 
 function axes(place) {
@@ -137,7 +145,7 @@ function axes(place) {
 function label(face, { at: [x, y], to, anchor }, draft, isCurrent) {
   const isSeen = VISIBLE.includes(face);
   const start = { middle: [x, y < to[1] ? y + 6 : y - 22], start: [x - 4, y - 2], end: [x + 4, y - 2] }[anchor];
-  const condition = CONDITIONS[draft.faces[face].condition].split(" ")[0];
+  const condition = SHORT[draft.faces[face].condition];
   return [
     line(start, to, isSeen ? "leader" : "leader behind"),
     draw("circle", { class: isSeen ? "spot" : "spot behind", cx: to[0].toFixed(1), cy: to[1].toFixed(1), r: 3 }),

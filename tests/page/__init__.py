@@ -1,0 +1,1 @@
+"""Behaviour of the service as its clients see it."""

@@ -1,0 +1,184 @@
+"""From what is described to the picture, the flows and the certificate."""
+
+from __future__ import annotations
+
+import json
+import re
+from pathlib import Path
+from typing import Any
+
+import pytest
+from playwright.sync_api import Page, expect
+
+from tests.page.acts import compute, load_example
+
+EXAMPLES = Path(__file__).resolve().parents[2] / "openapi_examples"
+
+
+def sent(page: Page, call: str) -> dict[str, Any]:
+    """The request that the page shows for a call."""
+    page.locator("details.request").evaluate("element => { element.open = true }")
+    page.get_by_label("Call", exact=True).select_option(call)
+    request: dict[str, Any] = json.loads(page.locator("#request-text").text_content() or "")
+    return request
+
+
+def flow_row(page: Page, name: str) -> str:
+    """The text of a row of the table of flows."""
+    return page.locator("#flows tbody tr", has_text=name).first.inner_text()
+
+
+def test_ready_example_computes_at_one_press(page: Page) -> None:
+    expect(page.get_by_text("Nothing computed yet")).to_be_visible()
+    compute(page)
+    expect(page.get_by_role("heading", name="Halden Reach, sight-port bar in a cooled frame")).to_be_focused()
+    expect(page.get_by_role("heading", name="Temperature on the plane z = 5 mm")).to_be_visible()
+    picture = page.get_by_role("img", name=re.compile("Heat map with labelled isotherms on the plane z = 5 mm"))
+    expect(picture).to_be_visible()
+    # Isotherms carry their values, and the colours their unit.
+    labels = page.locator("#picture .contourlabels text").all_text_contents()
+    assert {"100", "200", "450"} <= set(labels)
+    expect(page.locator("#picture")).to_contain_text("Temperature, °C")
+    # The window held at 640 degC is the hottest place, with no doubt about it.
+    expect(page.locator("#extremes")).to_contain_text("640 °C")
+    expect(page.locator("#extremes")).to_contain_text("exact")
+
+
+def test_equal_lengths_are_drawn_equally_long(page: Page) -> None:
+    compute(page)
+    scales = page.evaluate(
+        """() => {
+            const { xaxis, yaxis } = document.getElementById("picture")._fullLayout;
+            const perLength = (axis) => axis._length / Math.abs(axis.range[1] - axis.range[0]);
+            return [perLength(xaxis), perLength(yaxis)];
+        }"""
+    )
+    assert scales[0] == pytest.approx(scales[1], rel=0.02)
+
+
+def test_picture_holds_the_numbers_of_the_service(page: Page) -> None:
+    with page.expect_response("**/v1/fields") as caught:
+        compute(page)
+    (grid,) = caught.value.json()["grids"]
+    drawn = page.evaluate("document.getElementById('picture').data[0].z")
+    # Rows run along y, columns along x.
+    for column, row in ((0, 0), (80, 0), (13, 57)):
+        assert drawn[row][column] == grid["potential"][column][row][0]
+
+
+def test_flows_without_finite_value_say_why(page: Page) -> None:
+    compute(page)
+    assert "no finite value" in flow_row(page, "x_low")
+    window = flow_row(page, "window")
+    # The strip beside the window's rim is left out, since the example names an edge gap.
+    assert "no finite value" in window
+    assert re.search(r"22218\.\d", window)
+    reasons = page.locator("#flows .reasons")
+    expect(reasons).to_contain_text("It goes on without end")
+    expect(reasons).to_contain_text("Held values jump by up to 610 K along x = 5 on z_low")
+    expect(page.locator("#flows")).to_contain_text("No balance.")
+
+
+def test_edge_gap_is_offered_where_one_would_help(page: Page) -> None:
+    page.get_by_label("Edge gap (optional)").fill("")
+    compute(page)
+    page.locator("#flows").get_by_role("link", name="edge gap").click()
+    assert page.evaluate("location.hash") == "#edge-gap"
+
+
+def test_block_has_a_closed_balance(page: Page) -> None:
+    load_example(page, "Crown brick")
+    compute(page)
+    expect(page.locator("#flows .verdict.good")).to_contain_text("Balance closed.")
+    assert "held, by readings" in flow_row(page, "z_low")
+    assert re.search(r"−\d+\.\d+", flow_row(page, "z_high"))
+
+
+def test_certificate_can_be_judged(page: Page) -> None:
+    with page.expect_response("**/v1/fields") as caught:
+        compute(page)
+    certificate = caught.value.json()["certificate"]
+    text = page.locator("#certificate").inner_text()
+    assert "Within the accuracy asked for." in text
+    assert "Both representations agree." in text
+    assert certificate["method"] in text
+    assert f"{certificate['terms']['time_nodes']} nodes" in text
+    (shown,) = re.findall(r"further than ([\d.e−]+) K", text)
+    bound = float(shown.replace("−", "-"))
+    # Rounded up to two digits, never down.
+    assert certificate["error_bound"] <= bound <= 1.1 * certificate["error_bound"]
+
+
+def test_change_after_an_answer_marks_it_as_old(page: Page) -> None:
+    compute(page)
+    old = page.get_by_text("The form has changed since.")
+    expect(old).to_be_hidden()
+    page.locator("#size-x").fill("41")
+    expect(old).to_be_visible()
+    compute(page)
+    expect(old).to_be_hidden()
+
+
+def test_values_behind_the_picture_can_be_read_and_saved(page: Page) -> None:
+    compute(page)
+    page.get_by_text("Values behind the picture").click()
+    table = page.get_by_role("region", name="Values behind the picture").get_by_role("table")
+    expect(table.get_by_role("columnheader", name="40", exact=True)).to_be_visible()
+    expect(table.get_by_role("rowheader", name="60", exact=True)).to_be_visible()
+    with page.expect_download() as caught:
+        page.get_by_role("button", name="Save all values (CSV)").click()
+    rows = Path(caught.value.path()).read_text().splitlines()
+    assert len(rows) == 82
+    assert {len(row.split(",")) for row in rows} == {82}
+
+
+def test_picture_is_saved_as_an_image(page: Page) -> None:
+    compute(page)
+    with page.expect_download() as caught:
+        page.get_by_role("button", name="Save picture").click()
+    assert caught.value.suggested_filename == "plane_z_5.png"
+    assert Path(caught.value.path()).read_bytes().startswith(b"\x89PNG")
+
+
+def test_plane_along_the_bar_shows_z_to_the_right(page: Page) -> None:
+    page.get_by_label("Plane square to").select_option("x")
+    page.get_by_label("Plane: at x =").fill("20")
+    page.get_by_label("Draw the bar up to z =").fill("90")
+    compute(page)
+    expect(page.locator("#picture .xtitle")).to_have_text("z, mm")
+    expect(page.locator("#picture .ytitle")).to_have_text("y, mm")
+    # The hottest place lies in this plane and is marked by a shape.
+    expect(page.locator("#picture-caption")).to_contain_text("△ Hottest place of the body")
+
+
+def test_uniform_field_is_said_to_be_uniform(page: Page) -> None:
+    load_example(page, "Crown brick")
+    page.locator("#z_low-held-kind").select_option("uniform")
+    page.locator("#z_low-held-value").fill("45")
+    compute(page)
+    expect(page.locator("#picture-caption")).to_contain_text("uniform within the bound")
+
+
+def test_shown_request_can_be_sent_by_a_program(page: Page, address: str) -> None:
+    for call, path in (("fields", "/v1/fields"), ("flows", "/v1/flux-totals")):
+        request = sent(page, call)
+        expect(page.locator("#request-address")).to_have_text(f"POST {address}{path}")
+        answer = page.request.post(f"{address}{path}", data=request)
+        assert answer.status == 200
+        assert answer.json()["potential"] == "temperature"
+
+
+def test_example_is_the_one_of_the_description(page: Page) -> None:
+    described = json.loads((EXAMPLES / "fields_sight_port_plane.json").read_text())["request"]["problem"]
+    shown = sent(page, "fields")["problem"]
+    # The page writes out the units that the description leaves to be the usual ones.
+    assert shown["units"].items() >= described["units"].items()
+    assert {**shown, "units": None} == {**described, "units": None}
+
+
+def test_copied_request_is_the_shown_one(page: Page) -> None:
+    page.context.grant_permissions(["clipboard-read", "clipboard-write"])
+    request = sent(page, "flows")
+    page.get_by_role("button", name="Copy").click()
+    expect(page.locator("#copy-status")).to_have_text("Copied.")
+    assert json.loads(page.evaluate("navigator.clipboard.readText()")) == request
