@@ -71,6 +71,21 @@ class Profiles:
         """Slope of each piece, shape (n_pieces, n_profiles); zero on an endless piece."""
         return (self.right - self.left) / self.widths[:, None]
 
+    @cached_property
+    def _widths_of_what_is_there(self) -> FloatArray:
+        something = self.left.any(axis=1) | self.right.any(axis=1)
+        return np.where(something, self.widths, math.inf)
+
+    @property
+    def narrowest_index(self) -> int:
+        """Which piece is the narrowest of those that are not zero."""
+        return int(self._widths_of_what_is_there.argmin())
+
+    @cached_property
+    def narrowest(self) -> float:
+        """Width of the narrowest piece that is not zero, infinite if there is none or it has no end."""
+        return float(self._widths_of_what_is_there.min())
+
     def at(self, coordinates: FloatArray) -> FloatArray:
         """Values, shape (n_points, n_profiles); the mean of both sides exactly on a jump."""
         if self.is_constant:

@@ -9,28 +9,25 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines.images import LATEST
-from service.core.lines.line import Drive, Line, WallDrive
+from service.core.lines.images import LATEST, NARROW
+from service.core.lines.line import Drive, Line, WallDrive, breaks_of
 from service.core.lines.modes import eigen_integrals, modes_of
 from service.core.lines.time_response import MODE_COUNT, Places
-
-if TYPE_CHECKING:
-    from service.core.time_form import Integral, Product
+from service.core.maps import Profiles
+from service.core.time_integral import Factors, Integral, Product
 
 FloatArray = NDArray[np.float64]
-Factors = tuple[FloatArray, FloatArray, FloatArray]
 
 # Angle kept between the contour shifted by i (pi / 2 - ANGLE) and the edge of the sector, in the error bound; near
 # the best for steps around 0.3.
 ANGLE = 0.12
 
 # Steps in ln t outside this range are not taken: coarser saves little, finer is below rounding.
-COARSEST_STEP, FINEST_STEP = 0.5, 0.2
+COARSEST_STEP, FINEST_STEP = 0.4, 0.2
 
 # Rounding in a product of three factors, relative to what their lines carry: special functions, sums over breaks.
 ROUNDING = 8e-15
@@ -57,12 +54,15 @@ def step_for(relative_error: float) -> float:
 
 def bound_everywhere(integral: Integral) -> float:
     """One error bound for all places, less sharp than the others and quick."""
-    total = 0.0
+    total, carried = 0.0, _carried(integral)
     for product in integral.products:
         most = [np.abs(factor).max(axis=0, keepdims=True) for factor in product.factors]
         if product.weights.size > 1:
-            most = [np.maximum(size, carried) for size, carried in zip(most, integral.carried, strict=True)]
-        x, y, z = (_widened(size, integral.step) for size in most)
+            most = [np.maximum(size, least) for size, least in zip(most, carried, strict=True)]
+            # All three in one go: the work is in the calls, not in the numbers.
+            columns = np.cumsum([size.shape[2] for size in most])[:2]
+            most = np.split(_widened(np.concatenate(most, axis=2), integral.step), columns, axis=2)
+        x, y, z = most
         total += float(_weigh(x * y * z, product.weights)[0])
     return (_rule_error(integral) + ROUNDING) * total
 
@@ -70,11 +70,11 @@ def bound_everywhere(integral: Integral) -> float:
 def bound_on_grid(integral: Integral) -> Factors:
     """Error bounds for each coordinate of a grid, shape (n,) each; each of the three holds, so the least does."""
     bounds = [np.zeros(factor.shape[0]) for factor in integral.products[0].factors]
-    relative = _rule_error(integral)
+    relative, carried = _rule_error(integral), _carried(integral)
     for product in integral.products:
         sizes = [_widened(np.abs(factor), integral.step) for factor in product.factors]
         most = [size.max(axis=0, keepdims=True) for size in sizes]
-        rounding = ROUNDING * float(_rounded(integral, product, most)[0])
+        rounding = ROUNDING * float(_rounded(carried, product, most)[0])
         for axis in range(3):
             others = most[(axis + 1) % 3] * most[(axis + 2) % 3]
             bounds[axis] += relative * _weigh(sizes[axis] * others, product.weights) + rounding
@@ -84,11 +84,11 @@ def bound_on_grid(integral: Integral) -> Factors:
 def bound_at_points(integral: Integral) -> FloatArray:
     """Error bound at each point, shape (n,)."""
     total = np.zeros(())
-    relative = _rule_error(integral)
+    relative, carried = _rule_error(integral), _carried(integral)
     for product in integral.products:
         sizes = [_widened(np.abs(factor), integral.step) for factor in product.factors]
         total = total + relative * _weigh(sizes[0] * sizes[1] * sizes[2], product.weights)
-        total = total + ROUNDING * _rounded(integral, product, sizes)
+        total = total + ROUNDING * _rounded(carried, product, sizes)
     return total
 
 
@@ -99,23 +99,56 @@ def _rule_error(integral: Integral) -> float:
     return step_error(integral.step, 3.5 if integral.places[wall].order == -1 else 2.5)
 
 
-def _rounded(integral: Integral, product: Product, sizes: Sequence[FloatArray]) -> FloatArray:
+def _rounded(carried: Factors, product: Product, sizes: Sequence[FloatArray]) -> FloatArray:
     """Sum over nodes of what rounding refers to: a factor's own size, or what its modes carry where they cancel."""
     if product.weights.size > 1:
-        sizes = [np.maximum(size, carried) for size, carried in zip(sizes, integral.carried, strict=True)]
+        sizes = [np.maximum(size, least) for size, least in zip(sizes, carried, strict=True)]
     return _weigh(sizes[0] * sizes[1] * sizes[2], product.weights)
 
 
-def carried_by(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
-    """Size of the modes that a line's late answers are summed from, shape (1, n_times, n_columns); 0 before that.
+def _carried(integral: Integral) -> Factors:
+    """For each axis what rounding in its factor refers to at each node, shape (1, n_nodes, n_columns)."""
+    x, y, z = (
+        _carried_by(line, drive, places, integral.times)
+        for line, drive, places in zip(integral.lines, integral.part.drives, integral.places, strict=True)
+    )
+    return x, y, z
 
-    Early answers are sums of images that keep their digits where they are small.
+
+def _carried_by(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
+    """Size of what a line's answers are summed from where it cancels, shape (1, n_times, n_columns), else 0.
+
+    Images cancel once the fronts from both ends of a piece of the profile overlap, modes whenever they are used.
     """
-    columns = 1 if isinstance(drive, WallDrive) else drive.n_profiles
-    sizes = np.zeros((1, times.size, columns))
-    if line.is_endless:
-        return sizes
     late = times > LATEST * line.extent**2
+    if isinstance(drive, WallDrive):
+        sizes = np.zeros((1, times.size, 1))
+    else:
+        sizes = _carried_by_images(line, drive, places, times)
+    if late.any():
+        sizes[0, late] = _carried_by_modes(line, drive, places, times[late])
+    return sizes
+
+
+def _carried_by_images(line: Line, profiles: Profiles, places: Places, times: FloatArray) -> FloatArray:
+    breaks = breaks_of(line, profiles)
+    sizes = np.zeros((1, times.size, profiles.n_profiles))
+    narrowest = profiles.narrowest * line.scale
+    if narrowest == math.inf:
+        return sizes
+    root_time = np.sqrt(times)[:, None]
+    # The breaks cancel down to this part of their jumps; a narrower piece is summed from its inside.
+    left = np.minimum(1.0, NARROW * narrowest / root_time) / (4 * NARROW)
+    size = np.abs(breaks.jumps).max(axis=0) + root_time * np.abs(breaks.slope_jumps).max(axis=0)
+    per_length = 1 / root_time if places.order == -1 else np.ones_like(root_time)
+    if places.high is not None:
+        per_length = per_length * float((places.high - places.low).max()) * line.scale
+    overlap = root_time[:, 0] > math.sqrt(LATEST) * narrowest
+    sizes[0, overlap] = (size * left * per_length)[overlap]
+    return sizes
+
+
+def _carried_by_modes(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
     modes = modes_of(line, MODE_COUNT)
     strengths = np.abs(eigen_integrals(line, drive, MODE_COUNT))
     slowest = np.abs(places.mode_shapes(line)[:, 0]).max()
@@ -123,10 +156,8 @@ def carried_by(line: Line, drive: Drive, places: Places, times: FloatArray) -> F
     if places.high is not None:
         factor = float((places.high - places.low).max()) * line.scale
     # The slowest mode as it is at the places asked; the others by the strongest of them, at the pace of the second.
-    decay = np.exp(-np.outer(times[late], modes.rates[:2]))
-    sizes[0, late] = decay[:, :1] * strengths[0] * float(slowest)
-    sizes[0, late] += decay[:, 1:] * strengths[1:].max(axis=0) * factor
-    return sizes
+    decay = np.exp(-np.outer(times, modes.rates[:2]))
+    return decay[:, :1] * strengths[0] * float(slowest) + decay[:, 1:] * strengths[1:].max(axis=0) * factor
 
 
 def _weigh(sizes: FloatArray, weights: FloatArray) -> FloatArray:

@@ -15,7 +15,6 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -24,56 +23,16 @@ from service.core.lines import laplace
 from service.core.lines.line import Drive, Line, WallDrive
 from service.core.lines.time_response import Places, TimeResponse, respond
 from service.core.split import Part
-from service.core.time_error import carried_by, step_error
+from service.core.time_error import step_error
+from service.core.time_integral import Integral, Product
 from service.core.time_range import is_undying, profile_is_taken_out, slowest_rate, times_for
 
 FloatArray = NDArray[np.float64]
-Factors = tuple[FloatArray, FloatArray, FloatArray]
 
 # Up to so many places along the shortest axis it does not pay to look for the nodes that matter at each.
 FEW_PLACES = 8
 
 Rows = Callable[[Line, Drive, Places, FloatArray], TimeResponse]
-
-
-@dataclass(frozen=True, eq=False)
-class Product:
-    """Sum over nodes q and columns r of weight_q X_iqr Y_jqr Z_kqr.
-
-    factors: shape (n, n_nodes, n_columns) each; a factor may have 1 in place of n_nodes or n_columns.
-    """
-
-    weights: FloatArray
-    factors: Factors
-
-
-@dataclass(frozen=True, eq=False)
-class Integral:
-    """A part's time integral on the product of three sets of places.
-
-    lines, part, places, times: what it was made from. products: what to add up. step: in ln t.
-    """
-
-    lines: Sequence[Line]
-    part: Part
-    places: Sequence[Places]
-    times: FloatArray
-    step: float
-    products: tuple[Product, ...]
-
-    @cached_property
-    def carried(self) -> Factors:
-        """For each axis what rounding in its factor refers to at each node, shape (1, n_nodes, n_columns)."""
-        x, y, z = (
-            carried_by(line, drive, places, self.times)
-            for line, drive, places in zip(self.lines, self.part.drives, self.places, strict=True)
-        )
-        return x, y, z
-
-    @property
-    def node_count(self) -> int:
-        """How many times it is summed over."""
-        return self.times.size
 
 
 def integrate(

@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 
 from service.core import time_error, time_form, time_range
 from service.core.errors import NotPhysical, OutsideBody
-from service.core.field import STORED, Setting, kept_rows, step_for
+from service.core.field import Setting, kept_rows, step_for
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE
 from service.core.lines.time_response import Places
 from service.core.maps import Rectangle
@@ -29,6 +29,9 @@ FloatArray = NDArray[np.float64]
 
 # Totals are computed with an error factor this much below the field's: their bound is in flow, not in potential.
 HEADROOM = 1e-3
+
+# Rounding of a given inflow integrated from the products of its map, relative to their sizes.
+GIVEN = 2e-15
 
 
 @dataclass(frozen=True)
@@ -260,7 +263,7 @@ def _given_total(face: Face, condition: Inflow, rectangle: Rectangle) -> Total:
         last = max(float(given.second_knots[-2]), rectangle.q_low)
         rectangle = Rectangle(rectangle.p_low, rectangle.p_high, rectangle.q_low, last)
     value, size = map_integral(given, (rectangle.p_low, rectangle.q_low), (rectangle.p_high, rectangle.q_high))
-    return Total(value, STORED * size)
+    return Total(value, GIVEN * size)
 
 
 def _negated(total: Total) -> Total:

@@ -19,12 +19,13 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.special import erfc, erfcx
 
-from service.core.lines.line import Breaks, Line, Order, WallDrive, breaks_of, wall_distance
+from service.core.lines.line import PRIMITIVE, Breaks, Line, Order, WallDrive, breaks_of, wall_distance
 from service.core.maps import Profiles
 
 FloatArray = NDArray[np.float64]
@@ -33,6 +34,10 @@ SQRT_PI = math.sqrt(math.pi)
 
 # Up to this t / l^2 the second image is below exp(-1 / (4 * 0.006)) = 8e-19 of the first. See modes for later times.
 LATEST = 0.006
+
+# A piece of a profile is summed from its inside once it is narrower than sqrt(t) by this factor; its two breaks then
+# cancel to a sixtieth.
+NARROW = 16.0
 
 # A front has arrived within this many sqrt(t): beyond it exp(-w^2) is below 1e-19.
 ARRIVAL = 13.2
@@ -46,13 +51,15 @@ LARGE_ARGUMENT = 10.0
 
 
 def free(order: int, distance: FloatArray, root_time: FloatArray) -> FloatArray:
-    """g_n for n = -1, 0, 1, 2 at distances >= 0; root_time is sqrt(t), both of shape (n,)."""
+    """g_n for n = -2 to 2 at distances >= 0; root_time is sqrt(t), both of shape (n,)."""
     w = distance / (2 * root_time)
     if order == 0:
         return np.asarray(0.5 * erfc(w))
     gauss = np.exp(-w * w)
     if order == -1:
         return gauss / (2 * SQRT_PI * root_time)
+    if order == -2:
+        return w * gauss / (2 * SQRT_PI * root_time**2)
     if order == 1:
         return root_time * (gauss / SQRT_PI - w * erfc(w))
     return 0.5 * root_time**2 * ((1 + 2 * w * w) * erfc(w) - 2 / SQRT_PI * w * gauss)
@@ -73,7 +80,7 @@ def derivative_of_erfcx(y: FloatArray, erfcx_of_y: FloatArray) -> FloatArray:
 
 
 def film_part(order: int, distance: FloatArray, root_time: FloatArray, film: float) -> FloatArray:
-    """K_n for n = -1, 0, 1, 2 of an end with film H > 0, finite."""
+    """K_n for n = -2 to 2 of an end with film H > 0, finite."""
     w = distance / (2 * root_time)
     eta = film * root_time
     if order == 0:
@@ -83,6 +90,8 @@ def film_part(order: int, distance: FloatArray, root_time: FloatArray, film: flo
         scaled = erfcx(y)
         # exp(-w^2) / sqrt(pi t) - H K_0, written without the difference
         return np.exp(-w * w) / root_time * (derivative_of_erfcx(y, scaled) + w * scaled)
+    if order == -2:
+        return w * np.exp(-w * w) / (SQRT_PI * root_time**2) - film * film_part(-1, distance, root_time, film)
     below = film_part(order - 1, distance, root_time, film)
     values = (2 * free(order - 1, distance, root_time) - below) / film
     small = eta < SMALL_FILM
@@ -113,7 +122,7 @@ def end_part(order: int, distance: FloatArray, root_time: FloatArray, film: floa
 
 
 def reflected(order: int, distance: FloatArray, root_time: FloatArray, film: float) -> FloatArray:
-    """rho_n = g_n - K_n for n = -1, 0, 1, 2: what an end adds at the mirrored distance."""
+    """rho_n = g_n - K_n for n = -2 to 2: what an end adds at the mirrored distance."""
     return free(order, distance, root_time) - end_part(order, distance, root_time, film)
 
 
@@ -127,7 +136,64 @@ def with_its_image(order: int, distance: FloatArray, root_time: FloatArray, film
 def departure(
     line: Line, profiles: Profiles, coordinates: FloatArray, root_time: FloatArray, order: Order
 ) -> FloatArray:
-    """u - f (order 0), its slope (-1) or antiderivative (1), shape (n_points, n_times, n_profiles)."""
+    """u - f (order 0), its slope (-1) or antiderivative (1), shape (n_points, n_times, n_profiles).
+
+    What a piece much narrower than sqrt t sends out is summed from its inside, since its two breaks nearly cancel.
+    """
+    overlap = int(np.searchsorted(root_time, NARROW * profiles.narrowest * line.scale))
+    if order == PRIMITIVE or overlap == root_time.size:
+        return _from_breaks(line, profiles, coordinates, root_time, order)
+    piece, rest = narrowest_piece(profiles)
+    late = departure(line, rest, coordinates, root_time[overlap:], order)
+    late += _from_piece(line, piece, coordinates, root_time[overlap:], order)
+    if order == 0:
+        late -= (profiles.at(coordinates) - rest.at(coordinates))[:, None, :]
+    else:
+        late -= (profiles.slope_at(coordinates) - rest.slope_at(coordinates))[:, None, :] / line.scale
+    early = _from_breaks(line, profiles, coordinates, root_time[:overlap], order)
+    return np.concatenate([early, late], axis=1)
+
+
+@lru_cache(maxsize=512)
+def narrowest_piece(profiles: Profiles) -> tuple[Profiles, Profiles]:
+    """The narrowest piece of profiles that is not zero, alone, and the profiles with zero in its place."""
+    index = profiles.narrowest_index
+    low, high = profiles.knots[index], profiles.knots[index + 1]
+    piece = Profiles(np.array([low, high]), profiles.left[index : index + 1], profiles.right[index : index + 1])
+    left, right = profiles.left.copy(), profiles.right.copy()
+    left[index] = right[index] = 0.0
+    return piece, Profiles(profiles.knots, left, right)
+
+
+def _from_piece(
+    line: Line, piece: Profiles, coordinates: FloatArray, root_time: FloatArray, order: Order
+) -> FloatArray:
+    """What a piece narrow against sqrt t sends out: the point source and its images, by quadrature over the piece.
+
+    The error of five points is below (1 / NARROW)^10.
+    """
+    nodes, weights = np.polynomial.legendre.leggauss(5)
+    low, high = piece.knots
+    at = 0.5 * (low + high) + 0.5 * (high - low) * nodes
+    share = 0.5 * (1.0 + nodes)[:, None]
+    values = (1.0 - share) * piece.left + share * piece.right
+    amounts = (0.5 * (high - low) * line.scale * weights)[:, None] * values
+    difference = (coordinates[:, None] - at) * line.scale
+    from_low = wall_distance(line, coordinates, high=False)[:, None] + at * line.scale
+    kernel: int = order - 1
+    side = -np.sign(difference) if order == -1 else None
+    sign = -1.0 if order == 0 else 1.0
+    total = _sum(lambda d, t: free(kernel, d, t), np.abs(difference), root_time, amounts, side)
+    total += _sum(lambda d, t: reflected(kernel, d, t, line.film_low), from_low, root_time, sign * amounts)
+    if not line.is_endless:
+        from_high = wall_distance(line, coordinates, high=True)[:, None] + (line.length - at) * line.scale
+        total += _sum(lambda d, t: reflected(kernel, d, t, line.film_high), from_high, root_time, -amounts)
+    return np.asarray(total)
+
+
+def _from_breaks(
+    line: Line, profiles: Profiles, coordinates: FloatArray, root_time: FloatArray, order: Order
+) -> FloatArray:
     breaks = breaks_of(line, profiles)
     last = breaks.knots.size if line.is_endless else breaks.knots.size - 1
     low = wall_distance(line, coordinates, high=False)[:, None]
@@ -206,7 +272,7 @@ def _sum(
         values *= side[:, :, None]
     if weights.shape[0] == 1:
         return values[:, 0, :, None] * weights[0]
-    return np.einsum("pbt,br->ptr", values, weights)
+    return np.asarray(values.transpose(0, 2, 1) @ weights)
 
 
 def _where_arrived(

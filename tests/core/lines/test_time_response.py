@@ -67,3 +67,56 @@ def test_even_profile_between_insulated_ends_does_not_change_at_all() -> None:
     places = Places(np.linspace(0.0, 3.0, 5), VALUE)
     assert (respond(line, even, places, times).total == 7.0).all()
     assert (respond(line, even, Places(places.low, SLOPE), times).total == 0.0).all()
+
+
+@pytest.mark.parametrize("order", [VALUE, SLOPE], ids=["values", "slopes"])
+@pytest.mark.parametrize("high", [0.0, 0.3, 50.0, math.inf])
+@pytest.mark.parametrize("low", [0.0, 0.3, 50.0, math.inf])
+def test_piece_far_narrower_than_the_line_keeps_its_digits(low: float, high: float, order: Order) -> None:
+    line = Line(2.0, 0.7, low, high)
+    width = 1e-7
+    narrow = Profiles(
+        np.array([0.0, 0.7, 0.7 + width, 2.0]), np.array([[0.0], [2.0], [0.0]]), np.array([[0.0], [2.0], [0.0]])
+    )
+    switch = images.LATEST * line.extent**2
+    # Away from the piece; on it the answer is the profile less nearly all of it.
+    places = Places(COORDINATES[COORDINATES != 0.7], order)
+    early, late = np.moveaxis(respond(line, narrow, places, switch * np.array([1.0 - 1e-15, 1.0 + 1e-15])).total, 1, 0)
+    # The answer itself is of the order of 1e-7; its digits are its own.
+    assert 0 < np.abs(late).max() < 1e-5
+    np.testing.assert_allclose(early, late, rtol=0, atol=1e-12 * float(np.abs(late).max()))
+
+
+def test_narrow_piece_is_handed_over_from_its_breaks_to_its_inside_without_a_step() -> None:
+    line = Line(2.0, 1.0, 0.3, math.inf)
+    width = 1e-3
+    narrow = Profiles(
+        np.array([0.0, 0.7, 0.7 + width, 2.0]), np.array([[0.5], [1.0], [0.2]]), np.array([[0.4], [3.0], [0.2]])
+    )
+    time = (images.NARROW * width) ** 2
+    for order in (VALUE, SLOPE):
+        before, after = np.moveaxis(
+            respond(line, narrow, asked(order), time * np.array([1 - 1e-14, 1 + 1e-14])).total, 1, 0
+        )
+        np.testing.assert_allclose(before, after, rtol=0, atol=3e-13 * float(np.abs(after).max()))
+
+
+def test_mean_over_a_narrow_interval_agrees_with_the_value_in_its_middle() -> None:
+    line = Line(2.0, 1.0, 0.3, math.inf)
+    low, high = np.array([0.9]), np.array([0.9 + 1e-6])
+    times = np.geomspace(1e-14, 1e-2, 25)
+    mean = respond(line, STEPS_AND_RAMPS, Places(low, PRIMITIVE, high), times).total[0] / 1e-6
+    middle = respond(line, STEPS_AND_RAMPS, Places(0.5 * (low + high), VALUE), times).total[0]
+    # A smooth profile's mean over 1e-6 is its middle value to 1e-13.
+    np.testing.assert_allclose(mean, middle, rtol=0, atol=1e-9)
+
+
+def test_endless_line_with_only_its_last_piece_left_is_served() -> None:
+    line = Line(math.inf, 1.0, 1e-3, 0.0)
+    steps = Profiles(
+        np.array([0.0, 3e-3, 4e-3, math.inf]), np.array([[1.0], [2.0], [1.5]]), np.array([[1.0], [2.0], [1.5]])
+    )
+    late = respond(line, steps, Places(np.array([0.0, 1.0]), VALUE), np.array([1e-4, 1.0, 1e4])).total
+    # Long after, the line is at its far value but for what the narrow pieces hold and the film takes: 1.5 / 1e3 of it.
+    assert np.isfinite(late).all()
+    assert late[0, 1, 0] == pytest.approx(1.5, abs=5e-3)
