@@ -13,7 +13,7 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines.images import LATEST, NARROW
+from service.core.lines.images import LATEST, NARROW, narrow_from
 from service.core.lines.line import Drive, Line, WallDrive, breaks_of
 from service.core.lines.modes import eigen_integrals, modes_of
 from service.core.lines.time_response import MODE_COUNT, Places
@@ -138,7 +138,7 @@ def _carried_by_images(line: Line, profiles: Profiles, places: Places, times: Fl
         return sizes
     root_time = np.sqrt(times)[:, None]
     # The breaks cancel down to this part of their jumps; a narrower piece is summed from its inside.
-    left = np.minimum(1.0, NARROW * narrowest / root_time) / (4 * NARROW)
+    left = np.minimum(1.0, narrow_from(line, profiles) / root_time) / (4 * NARROW)
     size = np.abs(breaks.jumps).max(axis=0) + root_time * np.abs(breaks.slope_jumps).max(axis=0)
     per_length = 1 / root_time if places.order == -1 else np.ones_like(root_time)
     if places.high is not None:
@@ -171,13 +171,13 @@ def _widened(sizes: FloatArray, step: float) -> FloatArray:
     """
     if sizes.shape[1] == 1:
         return sizes
-    reach = math.ceil(-math.log(math.sin(ANGLE)) / step)
-    nodes = np.arange(sizes.shape[1])
-    widest, reached = sizes, 0
-    while reached < reach:
-        # Three windows side by side, each as wide as those before: 1, 3, 9, ... nodes.
-        shift = min(2 * reached + 1, reach - reached)
-        earlier, later = np.maximum(nodes - shift, 0), np.minimum(nodes + shift, nodes.size - 1)
-        widest = np.maximum(np.maximum(widest[:, earlier], widest[:, later]), widest)
-        reached += shift
-    return widest
+    reach, count = math.ceil(-math.log(math.sin(ANGLE)) / step), sizes.shape[1]
+    widest = np.zeros((sizes.shape[0], count + 2 * reach, sizes.shape[2]))
+    widest[:, reach : reach + count] = sizes
+    # Windows of 2, 4, 8, ... nodes, and two of the last kind side by side.
+    width = 1
+    while 2 * width <= 2 * reach + 1:
+        widest = np.maximum(widest[:, :-width], widest[:, width:])
+        width *= 2
+    rest = 2 * reach + 1 - width
+    return np.maximum(widest[:, :count], widest[:, rest : rest + count])

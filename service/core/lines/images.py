@@ -39,6 +39,10 @@ LATEST = 0.006
 # cancel to a sixtieth.
 NARROW = 16.0
 
+# With more pieces than this none is summed from its inside: neighbouring readings differ little, and their breaks
+# cancel little.
+MOST_PIECES = 12
+
 # A front has arrived within this many sqrt(t): beyond it exp(-w^2) is below 1e-19.
 ARRIVAL = 13.2
 
@@ -140,7 +144,7 @@ def departure(
 
     What a piece much narrower than sqrt t sends out is summed from its inside, since its two breaks nearly cancel.
     """
-    overlap = int(np.searchsorted(root_time, NARROW * profiles.narrowest * line.scale))
+    overlap = int(np.searchsorted(root_time, narrow_from(line, profiles)))
     if order == PRIMITIVE or overlap == root_time.size:
         return _from_breaks(line, profiles, coordinates, root_time, order)
     piece, rest = narrowest_piece(profiles)
@@ -152,6 +156,13 @@ def departure(
         late -= (profiles.slope_at(coordinates) - rest.slope_at(coordinates))[:, None, :] / line.scale
     early = _from_breaks(line, profiles, coordinates, root_time[:overlap], order)
     return np.concatenate([early, late], axis=1)
+
+
+def narrow_from(line: Line, profiles: Profiles) -> float:
+    """The sqrt t from which on the narrowest piece is summed from its inside, infinite if none ever is."""
+    if profiles.left.shape[0] > MOST_PIECES:
+        return math.inf
+    return NARROW * profiles.narrowest * line.scale
 
 
 @lru_cache(maxsize=512)

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, field
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -77,13 +78,20 @@ class TimeResponse:
     """Answer of a line to its drive.
 
     total: shape (n, n_times, n_profiles). initial: what it is just after time 0, shape (n, n_profiles): the profile,
-    0 on a held end and for slopes on any end, and zero for a driven end. departure: total less initial, with digits
-    of its own.
+    0 on a held end and for slopes on any end, and zero for a driven end. early: departures from it
+    at the short times, from which the total there is made.
     """
 
     total: FloatArray
-    departure: FloatArray
     initial: FloatArray
+    early: FloatArray
+
+    @cached_property
+    def departure(self) -> FloatArray:
+        """The total less what the line is just after time 0, with digits of its own while times are short."""
+        departure = self.total - self.initial[:, None, :]
+        departure[:, : self.early.shape[1]] = self.early
+        return departure
 
 
 def respond(line: Line, drive: Drive, places: Places, times: FloatArray) -> TimeResponse:
@@ -99,7 +107,7 @@ def respond(line: Line, drive: Drive, places: Places, times: FloatArray) -> Time
         # An even profile between insulated ends stays as it is, exactly.
         initial = places.initial(line, drive)
         total[:] = initial[:, None, :]
-        return TimeResponse(total, np.zeros_like(total), initial)
+        return TimeResponse(total, initial, np.zeros_like(total))
     elif count == 0:
         initial = places.initial(line, drive)
         early = np.zeros((places.low.size, 0, columns))
@@ -108,13 +116,10 @@ def respond(line: Line, drive: Drive, places: Places, times: FloatArray) -> Time
         early = _early_departure(line, drive, places, root_time)
         # Where the line leaves its profile at once, the departure is from what it becomes.
         early += (places.profile(line, drive) - initial)[:, None, :]
-    departure = np.empty_like(total)
-    departure[:, :count] = early
     total[:, :count] = early + initial[:, None, :]
     if count < times.size:
         total[:, count:] = _late(line, drive, places, times[count:])
-        departure[:, count:] = total[:, count:] - initial[:, None, :]
-    return TimeResponse(total, departure, initial)
+    return TimeResponse(total, initial, early)
 
 
 def _early_wall(line: Line, drive: WallDrive, places: Places, root_time: FloatArray) -> FloatArray:
