@@ -90,8 +90,8 @@ function reasonsView(rows, units, hasGap) {
   const jumps = open.some(({ total }) => total.unbounded.some(({ kind }) => kind !== "endless"));
   return [
     make("h3", {}, "Why some flows have no finite value"),
-    make("ul", { class: "reasons" }, open.map(({ name, place, total }) => make("li", {},
-      make("strong", {}, name, " ", make("span", { class: "face-place" }, place), ": "), reasonOf(total.unbounded, units)))),
+    make("ul", { class: "reasons" }, open.map(({ name, place, total, kind }) => make("li", {},
+      make("strong", {}, name, " ", make("span", { class: "face-place" }, place), ": "), reasonOf(total.unbounded, units, kind === "plane-row" ? ["pass towards the higher side", "pass towards the lower side"] : ["enter", "leave"])))),
     jumps ? make("p", { class: "hint" }, "Next to a line where held values jump the flow per area grows as one over the "
       + "distance, so its total grows without limit as the line is approached. A real joint always leaves a gap.") : null,
     jumps && !hasGap
@@ -100,12 +100,13 @@ function reasonsView(rows, units, hasGap) {
   ].filter(Boolean);
 }
 
-function reasonOf(causes, units) {
+/** @param {[string, string]} ways what flow does that is counted as positive, and as negative */
+function reasonOf(causes, units, ways) {
   const flow = pretty(units.flow);
   const digits = (value) => brief(Number(Math.abs(value).toPrecision(4)));
   const endless = causes.filter(({ kind }) => kind === "endless").map(({ coefficient }) =>
     `It goes on without end; far along the bar ${digits(coefficient)} ${flow} `
-    + `${coefficient >= 0 ? "enter" : "leave"} through each ${pretty(units.length)} of its length.`);
+    + `${coefficient >= 0 ? ways[0] : ways[1]} through each ${pretty(units.length)} of its length.`);
   const jumps = causes.filter(({ kind }) => kind !== "endless");
   if (!jumps.length) return endless.join(" ");
   const lines = jumps.map(({ line }) => line.replace(/^line /, ""));

@@ -65,6 +65,8 @@ function figureOf(plane, words, units, marks, width) {
     ? { orientation: "h", x: 0.5, yref: "container", y: 0, yanchor: "bottom", ypad: 4, thickness: 14, len: 1, xpad: 0, nticks: 6 }
     : { thickness: 16, len: 1, lenmode: "fraction", xpad: 14, ypad: 0 };
   bar.title.side = isNarrow ? "top" : "right";
+  // Above a lying bar the title would touch it.
+  if (isNarrow) bar.title.text += "<br> ";
   const places = { x: plane.columns, y: plane.rows, z: plane.values };
   const heat = {
     type: "heatmap", ...places, zsmooth: "best", colorscale: stops, zmin: plane.lowest, zmax: plane.highest,

@@ -48,6 +48,10 @@ export async function showAnswer({ fields, flows, problem, evaluate, axis }) {
   part("certificate").replaceChildren(...certificateView(fields, plane));
   part("warnings").replaceChildren(warningsView([fields, flows]));
 
+  const sketch = part("sketch").cloneNode(true);
+  sketch.removeAttribute("id");
+  part("answer-sketch").replaceChildren(sketch);
+
   const element = part("picture");
   element.setAttribute("aria-label", label(plane, words, units));
   redraw = () => drawPicture(element, plane, words, units, marks).catch(noPicture);

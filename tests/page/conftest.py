@@ -22,7 +22,7 @@ from service.app import create_app
 from service.settings import Settings
 
 ARGUMENTS = ["--no-sandbox", "--disable-gpu", "--disable-background-networking"]
-DESKTOP, PHONE = (1280, 900), (390, 844)
+DESKTOP, TABLET, PHONE = (1280, 900), (768, 1024), (390, 844)
 
 # What a browser says of an answer with an error status; the page tells the person itself.
 STATUS_NOTICE = "Failed to load resource: the server responded with a status of 422"
@@ -36,6 +36,16 @@ class Watched:
     complaints: list[str] = field(default_factory=list)
     expected: list[str] = field(default_factory=lambda: [STATUS_NOTICE])
     outside: list[str] = field(default_factory=list)
+
+    def hear(self, kind: str, text: str) -> None:
+        """Note what the browser complains of."""
+        if kind in ("error", "warning"):
+            self.complaints.append(text)
+
+    def see(self, url: str, own: tuple[str, ...]) -> None:
+        """Note an address that is not of the service's own."""
+        if not url.startswith(own):
+            self.outside.append(url)
 
 
 @contextmanager
@@ -86,14 +96,8 @@ def watched(address: str, browser: BrowserContext, request: pytest.FixtureReques
     page.set_default_timeout(20_000)
     watched = Watched(page)
     page.on("pageerror", lambda error: watched.complaints.append(str(error)))
-    page.on(
-        "console",
-        lambda message: watched.complaints.append(message.text) if message.type in ("error", "warning") else None,
-    )
-    page.on(
-        "request",
-        lambda sent: None if sent.url.startswith((address, "data:", "blob:")) else watched.outside.append(sent.url),
-    )
+    page.on("console", lambda message: watched.hear(message.type, message.text))
+    page.on("request", lambda sent: watched.see(sent.url, (address, "data:", "blob:")))
     page.goto(address)
     yield watched
     page.close()

@@ -12,6 +12,7 @@ from playwright.sync_api import Page, expect
 
 from tests.page.acts import compute, load_example
 
+MINUS = "\N{MINUS SIGN}"
 EXAMPLES = Path(__file__).resolve().parents[2] / "openapi_examples"
 
 
@@ -33,7 +34,7 @@ def test_ready_example_computes_at_one_press(page: Page) -> None:
     compute(page)
     expect(page.get_by_role("heading", name="Halden Reach, sight-port bar in a cooled frame")).to_be_focused()
     expect(page.get_by_role("heading", name="Temperature on the plane z = 5 mm")).to_be_visible()
-    picture = page.get_by_role("img", name=re.compile("Heat map with labelled isotherms on the plane z = 5 mm"))
+    picture = page.get_by_role("img", name="Heat map with labelled isotherms on the plane z = 5 mm")
     expect(picture).to_be_visible()
     # Isotherms carry their values, and the colours their unit.
     labels = page.locator("#picture .contourlabels text").all_text_contents()
@@ -91,7 +92,7 @@ def test_block_has_a_closed_balance(page: Page) -> None:
     compute(page)
     expect(page.locator("#flows .verdict.good")).to_contain_text("Balance closed.")
     assert "held, by readings" in flow_row(page, "z_low")
-    assert re.search(r"−\d+\.\d+", flow_row(page, "z_high"))
+    assert re.search(f"{MINUS}[0-9]+[.][0-9]+", flow_row(page, "z_high"))
 
 
 def test_certificate_can_be_judged(page: Page) -> None:
@@ -103,8 +104,8 @@ def test_certificate_can_be_judged(page: Page) -> None:
     assert "Both representations agree." in text
     assert certificate["method"] in text
     assert f"{certificate['terms']['time_nodes']} nodes" in text
-    (shown,) = re.findall(r"further than ([\d.e−]+) K", text)
-    bound = float(shown.replace("−", "-"))
+    (shown,) = re.findall(f"further than ([0-9.e{MINUS}]+) K", text)
+    bound = float(shown.replace(MINUS, "-"))
     # Rounded up to two digits, never down.
     assert certificate["error_bound"] <= bound <= 1.1 * certificate["error_bound"]
 
