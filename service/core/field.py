@@ -16,6 +16,7 @@ from service.core.lines.time_response import Places, TimeResponse, respond
 from service.core.problem import AXES, Body
 from service.core.singular import has_no_finite_flux, held_edges
 from service.core.split import Part
+from service.core.time_integral import Integral
 
 FloatArray = NDArray[np.float64]
 KeepGoing = Callable[[], None]
@@ -27,7 +28,7 @@ POINTS_AT_ONCE = 2048
 FLUX_HEADROOM = 1e-3
 
 # Headroom between the error factor aimed at and the sum of absolute values that multiplies it, per part.
-SPREAD_HEADROOM = 8.0
+SPREAD_HEADROOM = 32.0
 
 # Rounding of the sum of parts and the reference when it is stored, relative to the answer.
 STORED = 4e-16
@@ -177,14 +178,15 @@ def _accurate(
     step = step_for(setting, tolerance)
     while True:
         potential, bounds, nodes = _sum_of_parts(
-            setting, columns, (VALUE, VALUE, VALUE), step, tensor, keep_going, enough=0.5 * tolerance
+            setting, columns, (VALUE, VALUE, VALUE), step, tensor, keep_going, wanted=tolerance
         )
-        if setting.reference != 0.0:
-            potential += setting.reference
-        largest = max(float(potential.max()), -float(potential.min()))
-        bound = _largest(bounds, tensor) + STORED * largest + time_range.CUT_ERROR * setting.span
-        if bound <= tolerance:
-            return potential, bound, nodes
+        bound = _largest(bounds, tensor) + time_range.CUT_ERROR * setting.span
+        if potential is not None:
+            if setting.reference != 0.0:
+                potential += setting.reference
+            bound += STORED * max(float(potential.max()), -float(potential.min()))
+            if bound <= tolerance:
+                return potential, bound, nodes
         if step <= time_error.FINEST_STEP:
             raise AccuracyNotReached(
                 f"The accuracy asked for is {tolerance:.3g}; the best bound that can be promised here is {bound:.3g}.",
@@ -210,6 +212,7 @@ def _flux(
         orders: list[Order] = [VALUE, VALUE, VALUE]
         orders[axis] = SLOPE
         slope, bounds, _ = _sum_of_parts(setting, columns, (orders[0], orders[1], orders[2]), step, tensor, keep_going)
+        assert slope is not None
         factor = math.sqrt(setting.body.conductivity[axis])
         flux[axis] = -factor * slope
         if tensor:
@@ -229,33 +232,41 @@ def _sum_of_parts(
     step: float,
     tensor: bool,
     keep_going: KeepGoing | None,
-    enough: float = 0.0,
-) -> tuple[FloatArray, list[FloatArray], int]:
+    wanted: float = math.inf,
+) -> tuple[FloatArray | None, list[FloatArray], int]:
     """Sum over the parts, its bounds (of each coordinate on a grid, of each point else), and the most nodes taken.
 
-    enough: a bound that needs no sharpening.
+    wanted: a bound that has to be met and needs no sharpening; once it is missed the sum is not finished and None.
     """
     shape = tuple(column.size for column in columns) if tensor else columns[0].shape
     places = [Places(column, order) for column, order in zip(columns, orders, strict=True)]
-    total: FloatArray | None = None
+    total = np.zeros(shape)
     bounds = [np.zeros(column.size) for column in columns] if tensor else [np.zeros(shape)]
     nodes, rows = 0, kept_rows()
-    for part in setting.parts:
+    for index, part in enumerate(setting.parts):
         if keep_going is not None:
             keep_going()
         integral = time_form.integrate(setting.lines, part, places, step, rows)
         nodes = max(nodes, integral.node_count)
+        share = 0.9 * (wanted - _largest(bounds, tensor)) / (len(setting.parts) - index)
+        for bound, more in zip(bounds, _bounds(integral, share, tensor), strict=True):
+            bound += more
+        if _largest(bounds, tensor) > wanted:
+            return None, [bound * (len(setting.parts) / (index + 1)) for bound in bounds], nodes
         answer = time_form.on_grid(integral) if tensor else time_form.at_points(integral)
-        total = answer if total is None else np.add(total, answer, out=total)
-        if tensor:
-            quick = time_error.bound_everywhere(integral) if enough > 0.0 else math.inf
-            sharp = quick > enough / len(setting.parts)
-            more = time_error.bound_on_grid(integral) if sharp else (quick, quick, quick)
-            for bound, part_bound in zip(bounds, more, strict=True):
-                bound += part_bound
-        else:
-            bounds[0] += time_error.bound_at_points(integral)
-    return np.zeros(shape) if total is None else total, bounds, nodes
+        total = answer if index == 0 else np.add(total, answer, out=total)
+    return total, bounds, nodes
+
+
+def _bounds(integral: Integral, enough: float, tensor: bool) -> Sequence[FloatArray | float]:
+    """Bounds of a part: one for all places where that is enough."""
+    if not tensor:
+        return [time_error.bound_at_points(integral)]
+    if math.isfinite(enough):
+        quick = time_error.bound_everywhere(integral)
+        if quick <= enough:
+            return [quick, quick, quick]
+    return time_error.bound_on_grid(integral)
 
 
 def _joined(pieces: list[Field]) -> Field:

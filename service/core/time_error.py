@@ -53,18 +53,28 @@ def step_for(relative_error: float) -> float:
 
 
 def bound_everywhere(integral: Integral) -> float:
-    """One error bound for all places, less sharp than the others and quick."""
-    total, carried = 0.0, _carried(integral)
+    """One error bound for the values at all places, less sharp than the others and quick.
+
+    Rounding refers to the largest jump of a profile all along, which is at least what its line carries.
+    """
+    carried = [
+        breaks_of(line, drive).largest_jump if isinstance(drive, Profiles) else 0.0
+        for line, drive in zip(integral.lines, integral.part.drives, strict=True)
+    ]
+    by_rule = by_rounding = 0.0
     for product in integral.products:
         most = [np.abs(factor).max(axis=0, keepdims=True) for factor in product.factors]
         if product.weights.size > 1:
-            most = [np.maximum(size, least) for size, least in zip(most, carried, strict=True)]
             # All three in one go: the work is in the calls, not in the numbers.
             columns = np.cumsum([size.shape[2] for size in most])[:2]
-            most = np.split(_widened(np.concatenate(most, axis=2), integral.step), columns, axis=2)
+            shape = (1, product.weights.size)
+            same = [np.broadcast_to(size, (*shape, size.shape[2])) for size in most]
+            most = np.split(_widened(np.concatenate(same, axis=2), integral.step), columns, axis=2)
         x, y, z = most
-        total += float(_weigh(x * y * z, product.weights)[0])
-    return (_rule_error(integral) + ROUNDING) * total
+        by_rule += float(_weigh(x * y * z, product.weights)[0])
+        x, y, z = (np.maximum(size, least) for size, least in zip(most, carried, strict=True))
+        by_rounding += float(_weigh(x * y * z, product.weights)[0])
+    return _rule_error(integral) * by_rule + ROUNDING * by_rounding
 
 
 def bound_on_grid(integral: Integral) -> Factors:

@@ -84,13 +84,15 @@ class Breaks:
     """Knots with the jumps of value and of slope that profiles, zero outside their line, have there.
 
     knots: in the caller's unit, shape (n_breaks,). jumps, slope_jumps: per scaled length, (n_breaks, n_profiles).
-    has_slopes: whether any slope jumps. On a half-line the last piece ends nowhere and has no last break.
+    has_slopes: whether any slope jumps. largest_jump: shape (n_profiles,). On a half-line the last piece ends nowhere
+    and has no last break.
     """
 
     knots: FloatArray
     jumps: FloatArray
     slope_jumps: FloatArray
     has_slopes: bool
+    largest_jump: FloatArray
 
 
 @lru_cache(maxsize=1024)
@@ -103,7 +105,7 @@ def breaks_of(line: Line, profiles: Profiles) -> Breaks:
     knots = np.minimum(profiles.knots, line.length)
     if line.is_endless:
         knots, jumps, slope_jumps = knots[:-1], jumps[:-1], slope_jumps[:-1]
-    return Breaks(knots, jumps, slope_jumps, bool(slope_jumps.any()))
+    return Breaks(knots, jumps, slope_jumps, bool(slope_jumps.any()), np.abs(jumps).max(axis=0))
 
 
 def active_breaks(line: Line, profiles: Profiles) -> tuple[FloatArray, NDArray[np.bool_], NDArray[np.bool_]]:
