@@ -118,9 +118,10 @@ def _by_search(
     setting: Setting, tolerance: float, sign: float, held: Place | None, keep_going: field.KeepGoing | None
 ) -> Place:
     axes = [_first_places(setting, axis) for axis in range(3)]
-    values = sign * _field(setting, axes, max(tolerance, FIRST_ACCURACY * setting.span), keep_going).potential
+    accuracy = max(tolerance, FIRST_ACCURACY * setting.span)
+    values = sign * _field(setting, axes, accuracy, keep_going).potential
     best = held
-    for start in _starts(values):
+    for start in _starts(values, 2 * accuracy):
         # A peak that does not come near the best so far, by twice the steps around it, is not followed.
         if best is not None and values[start] + 2 * _steps(values, start) < sign * best.value:
             continue
@@ -131,8 +132,10 @@ def _by_search(
     return best
 
 
-def _starts(values: FloatArray) -> list[tuple[int, int, int]]:
+def _starts(values: FloatArray, alike: float) -> list[tuple[int, int, int]]:
     """Places of the first grid that are not below any neighbour, the highest few."""
+    # Places that differ by less than this grid's accuracy are alike, and the first of them stands for a plateau.
+    values = np.round(values / alike) * alike if alike > 0 else values
     peaks = np.argwhere(values >= maximum_filter(values, size=3, mode="nearest"))
     order = np.argsort([-values[tuple(peak)] for peak in peaks], kind="stable")
     return [(int(i), int(j), int(k)) for i, j, k in peaks[order[:STARTS]]]
