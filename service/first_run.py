@@ -68,8 +68,7 @@ def prepare(part: str, checkout: Path = CHECKOUT) -> None:
 def _refuse_if_too_old(version: tuple[int, int]) -> None:
     if version < OLDEST_PYTHON:
         _give_up(
-            f"Stillfield needs Python {_dotted(OLDEST_PYTHON)} or newer; this is {_dotted(version)}, "
-            f"{sys.executable}."
+            f"Stillfield needs Python {_dotted(OLDEST_PYTHON)} or newer; this is {_dotted(version)}, {sys.executable}."
         )
 
 

@@ -36,9 +36,7 @@ def strangers_in_core(imported: Mapping[str, set[str]]) -> set[tuple[str, str]]:
         (module, name)
         for module, names in imported.items()
         for name in names
-        if part_of(module) == "core"
-        and part_of(name) != "core"
-        and name.partition(".")[0] not in ALLOWED_IN_CORE
+        if part_of(module) == "core" and part_of(name) != "core" and name.partition(".")[0] not in ALLOWED_IN_CORE
     }
 
 

@@ -163,9 +163,7 @@ def test_package_other_than_the_locked_one_is_refused_and_then_tried_again(
     checkout.lock("1.0", digest="0" * 64)
     code, printed, said = checkout.run()
     assert (code, printed) == (1, "")
-    assert said.endswith(
-        "The packages could not be installed; pip says why above. The next start tries again.\n"
-    )
+    assert said.endswith("The packages could not be installed; pip says why above. The next start tries again.\n")
     assert "Traceback" not in said
 
     checkout.lock("1.0")
@@ -223,9 +221,7 @@ def test_python_without_ensurepip_is_told_what_to_install(
     with pytest.raises(SystemExit) as end:
         first_run._make(checkout.environment)
     assert end.value.code == 1
-    assert capsys.readouterr().err.endswith(
-        "On Debian and Ubuntu install it with: apt install python3-venv\n"
-    )
+    assert capsys.readouterr().err.endswith("On Debian and Ubuntu install it with: apt install python3-venv\n")
     assert not checkout.environment.exists()
 
 

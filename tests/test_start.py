@@ -67,9 +67,7 @@ def test_service_answers_and_ends_in_order(service: tuple[subprocess.Popen[str],
         ("cors_origins", "not JSON", "cors_origins"),
     ],
 )
-def test_wrong_setting_is_named_and_nothing_starts(
-    tmp_path: Path, name: str, text: str, sentence: str
-) -> None:
+def test_wrong_setting_is_named_and_nothing_starts(tmp_path: Path, name: str, text: str, sentence: str) -> None:
     process = start(folder=tmp_path, **{name: text})
     _, said = process.communicate(timeout=60)
     assert process.returncode == 2

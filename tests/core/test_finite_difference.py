@@ -54,17 +54,13 @@ CASES = {
     "flat orthotropic plate": Case(
         (4.0, 2.0, 0.25),
         (1.0, 2.0, 0.125),
-        walls(
-            z_low=Wall("N", Cells(0.0, ((1.0, 2.0, 0.5, 1.0, 3.0),))), z_high=Wall("R", 0.0, 1.0), x_high="D"
-        ),
+        walls(z_low=Wall("N", Cells(0.0, ((1.0, 2.0, 0.5, 1.0, 3.0),))), z_high=Wall("R", 0.0, 1.0), x_high="D"),
     ),
 }
 
 COARSE, FINE = (8, 8, 8), (16, 16, 16)
 # Fractions of the sides; all are nodes of both meshes.
-PLACES = np.array(
-    [(0.5, 0.5, 0.5), (0.25, 0.5, 0.125), (0.75, 0.25, 0.75), (0.5, 0.375, 0.0), (1.0, 0.75, 0.5)]
-)
+PLACES = np.array([(0.5, 0.5, 0.5), (0.25, 0.5, 0.125), (0.75, 0.25, 0.75), (0.5, 0.375, 0.0), (1.0, 0.75, 0.5)])
 
 
 @pytest.mark.parametrize("name", CASES)

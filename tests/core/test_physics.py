@@ -38,9 +38,7 @@ SEEDS = st.integers(min_value=1000, max_value=10**6)
 BODIES = settings(max_examples=25, deadline=None, derandomize=True)
 
 
-def answer(
-    case: Case, places: list[Place], with_flux: bool = False
-) -> tuple[Solution, NDArray[np.float64], float]:
+def answer(case: Case, places: list[Place], with_flux: bool = False) -> tuple[Solution, NDArray[np.float64], float]:
     """Solution, potentials at places and their bound."""
     solution = solve(case.body())
     found = solution.field_at(np.array(places), tolerance=ACCURACY * scale(solution), with_flux=with_flux)
@@ -151,9 +149,7 @@ def flow_scale(solution: Solution, case: Case) -> float:
     """Span times the largest conductance of the body from face to face."""
     lengths = [length if math.isfinite(length) else max(case.size[:2]) for length in case.size]
     volume = math.prod(lengths)
-    return solution.span * max(
-        k * volume / length**2 for k, length in zip(case.conductivity, lengths, strict=True)
-    )
+    return solution.span * max(k * volume / length**2 for k, length in zip(case.conductivity, lengths, strict=True))
 
 
 @BODIES
@@ -174,9 +170,7 @@ def test_mirrored_body_has_the_mirrored_field(seed: int, axis: int) -> None:
 def test_fields_of_two_sets_of_data_add_up(seed: int) -> None:
     case = random_case(seed)
     places = list(hard_places(case, seed).values())
-    added = {
-        face: 0.0 if wall.kind == "N" else 0.25 * (i + 1) for i, (face, wall) in enumerate(case.walls.items())
-    }
+    added = {face: 0.0 if wall.kind == "N" else 0.25 * (i + 1) for i, (face, wall) in enumerate(case.walls.items())}
     other = replace(case, walls={f: replace(w, data=added[f]) for f, w in case.walls.items()}, sources=())
     both = {f: replace(w, data=change_data(w.data, 1.0, added[f])) for f, w in case.walls.items()}
     total = replace(case, walls=both)
@@ -281,9 +275,7 @@ def test_two_dimensional_part_is_exactly_flat() -> None:
         walls(y_low=Wall("D", 100.0), x_high=Wall("R", 0.0, 750.0), y_high=Wall("R", 0.0, 750.0)),
     )
     heights = (0.0, 1e-7, 0.1, 0.2, 0.37)
-    found = solve(case.body()).field_at(
-        np.array([(0.3, 0.2, z) for z in heights]), tolerance=1e-7, with_flux=True
-    )
+    found = solve(case.body()).field_at(np.array([(0.3, 0.2, z) for z in heights]), tolerance=1e-7, with_flux=True)
     assert found.flux is not None
     assert (found.flux[2] == 0.0).all()
     assert np.ptp(found.potential) <= ROUNDING * 100

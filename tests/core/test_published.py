@@ -59,9 +59,7 @@ def test_every_case_has_its_source_and_what_is_off_is_told() -> None:
     quantities = published_quantities()
     assert len(quantities) == 228
     assert all(quantity.source for quantity in quantities)
-    assert {
-        quantity.case_id for quantity in quantities if quantity.printed and not quantity.printed.agrees
-    } == {
+    assert {quantity.case_id for quantity in quantities if quantity.printed and not quantity.printed.agrees} == {
         "C02-column-film",
         "C05-roots-cot",
         "P01-torsion-constant",

@@ -133,9 +133,7 @@ PAIRS = list(zip(KINDS, (*reversed(PLACES), PLACES[1]), strict=True))
 
 
 @pytest.mark.parametrize(("kinds", "place"), PAIRS, ids=str)
-def test_trilinear_field_is_reproduced_with_every_kind_of_face(
-    kinds: str, place: tuple[float, float, float]
-) -> None:
+def test_trilinear_field_is_reproduced_with_every_kind_of_face(kinds: str, place: tuple[float, float, float]) -> None:
     case = trilinear_case(kinds)
     potential, flux = HighPrecision(case).potential_and_flux(place)
     nearest = min(d for c, length in zip(place, case.size, strict=True) for d in (c, length - c) if d > 0)
@@ -146,9 +144,7 @@ def test_trilinear_field_is_reproduced_with_every_kind_of_face(
         assert abs(part - wanted) < TWENTY_DIGITS * 10 / nearest
 
 
-@pytest.mark.parametrize(
-    "place", [(0.5, 0.5, 1e-6), (1e-8, 0.5, 1e-6), (0.3, 0.5, 0.2), (0.3, 0.5, 10.0)], ids=str
-)
+@pytest.mark.parametrize("place", [(0.5, 0.5, 1e-6), (1e-8, 0.5, 1e-6), (0.3, 0.5, 0.2), (0.3, 0.5, 10.0)], ids=str)
 def test_closed_form_of_the_strip(place: tuple[float, float, float]) -> None:
     """u = (2 / pi) atan(sin(pi x) / sinh(pi z)) on a strip one wide (Carslaw and Jaeger 1959, chapter V)."""
     case = Case((1.0, 1.0, INFINITE), (1.0, 1.0, 1.0), walls(x_low="D", x_high="D", z_low=Wall("D", 1.0)))
@@ -166,9 +162,7 @@ PARTITION = Cells(1.0, ((0.25, 0.5, 0.25, 0.5, 1.0), (0.5, 0.75, 0.0, 0.5, 1.0))
     [(1.0, (0.25, 0.25 + 1e-8, 0.0)), (INFINITE, (0.5, 1e-7, 1e-6)), (1.0, (0.4, 0.6, 0.7))],
     ids=["block, beside a jump line", "bar, beside two faces", "block, inside"],
 )
-def test_patches_that_cover_everything_with_one_make_one(
-    size_z: float, place: tuple[float, float, float]
-) -> None:
+def test_patches_that_cover_everything_with_one_make_one(size_z: float, place: tuple[float, float, float]) -> None:
     given = {
         "x_low": Wall("D", PARTITION),
         "x_high": Wall("R", PARTITION, 1e6),
@@ -210,9 +204,7 @@ def _sources(*boxes: Sequence[float]) -> Case:
 
 def test_source_in_the_whole_cube_equals_its_parts() -> None:
     whole = HighPrecision(_sources((0, 0, 0, 1, 1, 1))).potential((0.5, 0.5, 0.5))
-    parts = HighPrecision(
-        _sources((0, 0, 0, 1, 1, 0.375), (0, 0, 0.375, 0.25, 1, 1), (0.25, 0, 0.375, 1, 1, 1))
-    )
+    parts = HighPrecision(_sources((0, 0, 0, 1, 1, 0.375), (0, 0, 0.375, 0.25, 1, 1), (0.25, 0, 0.375, 1, 1, 1)))
     assert abs(parts.potential((0.5, 0.5, 0.5)) - whole) < TWENTY_DIGITS
     # Centre of a unit cube with unit source and cold faces, a classical constant.
     assert abs(whole - arithmetic.mpf("0.0562128298294354")) < 1e-15

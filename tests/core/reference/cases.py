@@ -60,9 +60,7 @@ class Case:
     size: tuple[float, float, float]
     conductivity: tuple[float, float, float]
     walls: Mapping[Face, Wall]
-    sources: tuple[tuple[tuple[float, float, float], tuple[float, float, float], float], ...] = field(
-        default=()
-    )
+    sources: tuple[tuple[tuple[float, float, float], tuple[float, float, float], float], ...] = field(default=())
 
     @property
     def faces(self) -> tuple[Face, ...]:

@@ -104,9 +104,7 @@ def _film_and_driving(case: Case, face: Face, mesh: MeshHex) -> tuple[Any, Float
     """Matrix h u v and load h U v of a film face, or nothing and q v of one with a given inflow."""
     wall = case.walls[face]
     axis, across = _axes(face)
-    facets = mesh.facets_satisfying(
-        lambda x: np.abs(x[axis] - _position(case, face)) < ON_FACE * case.size[axis]
-    )
+    facets = mesh.facets_satisfying(lambda x: np.abs(x[axis] - _position(case, face)) < ON_FACE * case.size[axis])
     basis = FacetBasis(mesh, ElementHex1(), facets=facets)
     film = wall.coefficient if wall.kind == "R" else 0.0
     strength = wall.coefficient if wall.kind == "R" else 1.0

@@ -114,10 +114,7 @@ def split_data(
     if isinstance(data, (int, float)):
         return (indicator(0, extent[0]),), (indicator(0, extent[1]),), {(0, 0): arithmetic.mpf(data)}
     if isinstance(data, Cells):
-        edges = [
-            sorted({0.0, extent[k], *(p[i] for p in data.patches for i in (2 * k, 2 * k + 1))})
-            for k in (0, 1)
-        ]
+        edges = [sorted({0.0, extent[k], *(p[i] for p in data.patches for i in (2 * k, 2 * k + 1))}) for k in (0, 1)]
         bases = [tuple(indicator(*pair) for pair in pairwise(edge)) for edge in edges]
         table = {}
         for i, p in enumerate(edges[0][:-1]):

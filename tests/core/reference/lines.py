@@ -139,18 +139,14 @@ class Line:
         def rough(angle: float) -> float:
             total = 0.0
             for end, film in ((self.low, low), (self.high, high)):
-                total += (
-                    math.atan2(float(film * length), angle) if end == "R" else (math.pi / 2) * (end == "D")
-                )
+                total += math.atan2(float(film * length), angle) if end == "R" else (math.pi / 2) * (end == "D")
             return angle - index * math.pi - total
 
         if "R" not in (self.low, self.high):
             return (
                 index * arithmetic.pi + self._angle(self.low, low, ONE) + self._angle(self.high, high, ONE)
             ) / length
-        start = brentq(
-            rough, max(index * math.pi, 1e-300), (index + 1) * math.pi + 1e-9, xtol=1e-300, rtol=1e-15
-        )
+        start = brentq(rough, max(index * math.pi, 1e-300), (index + 1) * math.pi + 1e-9, xtol=1e-300, rtol=1e-15)
         beta = arithmetic.mpf(start) / length
         for _ in range(4):
             miss = beta * length - index * arithmetic.pi

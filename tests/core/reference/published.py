@@ -65,9 +65,7 @@ def _quantity(case: Mapping[str, Any], quantity: Mapping[str, Any]) -> Quantity:
         quantity["how"],
         quantity,
         _case(case["body"], quantity) if "body" in case else None,
-        None
-        if printed is None
-        else Printed(printed["value"], printed["as"], printed["tolerance"], printed["agrees"]),
+        None if printed is None else Printed(printed["value"], printed["as"], printed["tolerance"], printed["agrees"]),
         None if value is None else float(value),
     )
 

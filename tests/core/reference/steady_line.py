@@ -33,9 +33,7 @@ class _Particular:
         return -total / self.line.conductivity
 
 
-def steady(
-    line: Line, source: Profile, place: Number, low_drive: Number, high_drive: Number
-) -> tuple[Number, Number]:
+def steady(line: Line, source: Profile, place: Number, low_drive: Number, high_drive: Number) -> tuple[Number, Number]:
     """V and V' at a place for a source and end data (held value, inflow or ambient), both ends together."""
     if line.is_insulated:
         mean = (source.integral(line.length) + low_drive + high_drive) / line.length

@@ -97,9 +97,7 @@ def stretch(case: Case, factors: Sequence[float]) -> Case:
         across = factors[axis] if wall.kind == "N" else 1.0
         data = _stretch_data(scale_data(wall.data, 1.0 / across), first, second)
         made[face] = Wall(wall.kind, data, wall.coefficient / factors[axis])
-    sources = tuple(
-        (shrink(low, factors), shrink(high, factors), density) for low, high, density in case.sources
-    )
+    sources = tuple((shrink(low, factors), shrink(high, factors), density) for low, high, density in case.sources)
     conductivity = shrink(shrink(case.conductivity, factors), factors)
     return Case(shrink(case.size, factors), conductivity, made, sources)
 
@@ -109,9 +107,7 @@ def _stretch_data(data: Data, first: float, second: float) -> Data:
         patches = ((a / first, b / first, c / second, d / second, v) for a, b, c, d, v in data.patches)
         return Cells(data.background, tuple(patches))
     if isinstance(data, Readings):
-        return Readings(
-            tuple(p / first for p in data.first), tuple(q / second for q in data.second), data.table
-        )
+        return Readings(tuple(p / first for p in data.first), tuple(q / second for q in data.second), data.table)
     return data
 
 
