@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Sized
 
 import pytest
 from playwright.sync_api import Page, Route, expect
@@ -21,12 +22,12 @@ def held_back(page: Page) -> list[Route]:
     return caught
 
 
-def wait_for(page: Page, caught: list[Route], count: int) -> None:
-    for _ in range(200):
+def wait_for(page: Page, caught: Sized, count: int) -> None:
+    for _ in range(400):
         if len(caught) >= count:
             return
         page.wait_for_timeout(25)
-    raise AssertionError(f"{len(caught)} requests came, {count} were expected")
+    raise AssertionError(f"{len(caught)} came, {count} were expected")
 
 
 def test_waiting_is_shown_and_can_be_cancelled(page: Page, held_back: list[Route]) -> None:
@@ -50,6 +51,8 @@ def test_repeated_presses_leave_one_request_under_way(page: Page, held_back: lis
     for press in range(1, 5):
         press_compute(page)
         wait_for(page, held_back, 2 * press)
+    # The browser tells of them a moment later.
+    wait_for(page, given_up, 6)
     assert given_up == ["net::ERR_ABORTED"] * 6
     for route in held_back[-2:]:
         route.continue_()
