@@ -3,24 +3,30 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from service.core import field, time_range
 from service.core.field import Setting
+from service.core.split import Part
 
-# Factors of one line cost about this many multiplications a value: special functions and sums over breaks.
-FACTOR_COST = 60.0
+# Costs in multiplications of plain array arithmetic, about 10^9 a second, as measured on the bodies of the tests.
+# A special function at one place, break and time; all passes over a factor value; one step of a matrix product.
+FUNCTION, PASS, IN_PRODUCT = 40.0, 25.0, 0.2
 
-# Work arrays held at once for each factor value: the factor, its departure, its size and their products.
-ARRAYS = 6.0
+# Every part takes so many calls of array functions that they cost this much however few the numbers.
+PART = 2e6
 
-# The flux takes three more integrals on a finer rule, and its profiles taken out.
-FLUX_COST = 8.0
+# The flux takes three integrals more, each with its profile taken out, on a finer rule and a longer range.
+FLUX = 7.0
+
+# Arrays of a factor's size, and of the size of its breaks, held at once.
+FACTORS_HELD, BREAKS_HELD = 12.0, 5.0
 
 
 @dataclass(frozen=True)
 class Estimate:
-    """multiplications: of all matrix products and factors. bytes: of the work arrays and the answer at once."""
+    """multiplications: of plain array arithmetic, about 10^9 a second. bytes: of all arrays held at once."""
 
     multiplications: float
     bytes: float
@@ -28,35 +34,41 @@ class Estimate:
 
 def on_grid(setting: Setting, shape: tuple[int, int, int], tolerance: float, with_flux: bool) -> Estimate:
     """Cost of a field on a grid of a shape."""
-    nodes = _nodes(setting, tolerance)
-    columns = sum(part.columns for part in setting.parts)
-    widest = max((part.columns for part in setting.parts), default=1)
-    breaks = max((part.knots(axis).size for part in setting.parts for axis in range(3)), default=2)
-    points = math.prod(shape)
-    times = FLUX_COST if with_flux else 1.0
-    factors = nodes * sum(shape)
-    return Estimate(
-        times * (points * nodes * columns + factors * FACTOR_COST * (breaks * len(setting.parts) + columns)),
-        8.0 * (factors * ARRAYS * (widest + breaks) + points * (8 if with_flux else 3)),
-    )
+    points, nodes = math.prod(shape), _nodes(setting, tolerance)
+    work = most = 0.0
+    for part in setting.parts:
+        factors, held = _factors(part, shape, nodes)
+        work += PART + factors + 2 * IN_PRODUCT * points * nodes * part.columns
+        most = max(most, held)
+    return Estimate((1 + FLUX * with_flux) * work, most + 8.0 * points * (10 if with_flux else 4))
 
 
 def at_points(setting: Setting, count: int, tolerance: float, with_flux: bool) -> Estimate:
     """Cost of a field at points, which are served in runs."""
-    nodes = _nodes(setting, tolerance)
-    columns = sum(part.columns for part in setting.parts)
-    widest = max((part.columns for part in setting.parts), default=1)
-    breaks = max((part.knots(axis).size for part in setting.parts for axis in range(3)), default=2)
-    times = FLUX_COST if with_flux else 1.0
-    run = min(count, field.POINTS_AT_ONCE)
-    return Estimate(
-        times * 3 * count * nodes * FACTOR_COST * (breaks * len(setting.parts) + columns),
-        8.0 * (3 * run * nodes * ARRAYS * (widest + breaks) + count * (8 if with_flux else 3)),
-    )
+    nodes, run = _nodes(setting, tolerance), min(count, field.points_at_once(setting))
+    runs = math.ceil(count / max(run, 1))
+    work = most = 0.0
+    for part in setting.parts:
+        factors, held = _factors(part, (run, run, run), nodes)
+        work += runs * (PART + factors)
+        most = max(most, held)
+    return Estimate((1 + FLUX * with_flux) * work, most + 8.0 * count * 10)
+
+
+def _factors(part: Part, shape: Sequence[int], nodes: float) -> tuple[float, float]:
+    """Cost of the factors of a part's three lines and of their bounds, and the memory they take."""
+    work = held = 0.0
+    for axis, places in enumerate(shape):
+        breaks = max(part.knots(axis).size, 1)
+        values = places * nodes
+        work += values * (breaks * (FUNCTION + IN_PRODUCT * part.columns) + PASS * part.columns)
+        held += 8.0 * values * (FACTORS_HELD * part.columns + BREAKS_HELD * breaks)
+    return work, held
 
 
 def _nodes(setting: Setting, tolerance: float) -> float:
     """Nodes of the longest range any part can take: from the earliest time that is looked at to the last."""
     least = min(line.extent for line in setting.lines if not line.is_endless)
     last = time_range.CUT / time_range.slowest_rate(setting.lines)
-    return (math.log(last / least**2) - math.log(time_range.EARLIEST_FOR_SLOPES)) / field.step_for(setting, tolerance)
+    span = math.log(last / least**2) - math.log(time_range.EARLIEST_FOR_SLOPES)
+    return span / field.step_for(setting, tolerance)

@@ -21,8 +21,9 @@ from service.core.time_integral import Integral
 FloatArray = NDArray[np.float64]
 KeepGoing = Callable[[], None]
 
-# Points are served in runs of this many, so that memory stays bounded and a computation can be stopped.
-POINTS_AT_ONCE = 2048
+# Points are served in runs of so many values of a factor at one time, at least so many points, so that memory stays
+# bounded and a computation can be stopped.
+VALUES_AT_ONCE, FEWEST_AT_ONCE = 2048, 32
 
 # The flux is computed on a step finer by this factor in error, since it is asked next to edges where it is large.
 FLUX_HEADROOM = 1e-3
@@ -100,11 +101,16 @@ def at_points(
     """Field at points, shape (n, 3). Raises OutsideBody and AccuracyNotReached."""
     columns = (points[:, 0], points[:, 1], points[:, 2])
     check_inside(setting.body, columns)
-    pieces = []
-    for start in range(0, points.shape[0], POINTS_AT_ONCE):
-        chunk = [column[start : start + POINTS_AT_ONCE] for column in columns]
+    pieces, run = [], points_at_once(setting)
+    for start in range(0, points.shape[0], run):
+        chunk = [column[start : start + run] for column in columns]
         pieces.append(_field(setting, chunk, chunk, chunk[0].shape, tolerance, with_flux, keep_going))
     return pieces[0] if len(pieces) == 1 else _joined(pieces)
+
+
+def points_at_once(setting: Setting) -> int:
+    """How many points are served in one run."""
+    return max(VALUES_AT_ONCE // max((part.columns for part in setting.parts), default=1), FEWEST_AT_ONCE)
 
 
 def _field(
