@@ -42,7 +42,8 @@ SMALLEST_WIDTH = 1e-9
 class Place:
     """An extreme of the field.
 
-    value: of the potential there. error_bound: of that value, and of how far the peak it belongs to may exceed it.
+    position: z is infinite where the value is only approached, far along an endless bar. value: of the potential
+    there. error_bound: of that value, and of how far the peak it belongs to may exceed it.
     where: "inside", or the faces the place is on, such as "face z_low".
     """
 
@@ -129,7 +130,21 @@ def _by_search(
         if best is None or sign * found.value > sign * best.value:
             best = found
     assert best is not None
-    return best
+    return best if best is held else _far_if_only_approached(setting, best, tolerance, sign)
+
+
+def _far_if_only_approached(setting: Setting, found: Place, tolerance: float, sign: float) -> Place:
+    """The place as it is, or far along an endless bar where the field only comes to the same value there."""
+    if not setting.lines[2].is_endless:
+        return found
+    x, y, _ = found.position
+    answer = field.at_points(
+        setting, np.array([[x, y, field.far_along(setting)]]), tolerance=tolerance, with_flux=False
+    )
+    far, bound = float(answer.potential[0]), answer.potential_bound
+    if sign * far < sign * found.value - bound - found.error_bound:
+        return found
+    return Place((x, y, math.inf), far, bound + found.error_bound, f"{found.where}, far along the bar")
 
 
 def _starts(values: FloatArray, alike: float) -> list[tuple[int, int, int]]:

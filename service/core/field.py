@@ -154,6 +154,13 @@ def check_inside(body: Body, columns: Sequence[FloatArray]) -> None:
             )
 
 
+def far_along(setting: Setting) -> float:
+    """A distance along an endless bar beyond which the field shows nothing of its end, in the caller's unit."""
+    knots = [part.knots(2) for part in setting.parts]
+    last = max((float(knot[np.isfinite(knot)].max()) for knot in knots if knot.size), default=0.0)
+    return last + 2 * time_range.CUT / math.sqrt(time_range.slowest_rate(setting.lines)) / setting.lines[2].scale
+
+
 def kept_rows() -> time_form.Rows:
     """A function that answers for a line as `respond` does and keeps the answers for parts that share them."""
     kept: dict[tuple[object, ...], TimeResponse] = {}

@@ -15,9 +15,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import time_error, time_form, time_range
+from service.core import time_error, time_form
 from service.core.errors import NotPhysical, OutsideBody
-from service.core.field import Setting, kept_rows, step_for
+from service.core.field import Setting, far_along, kept_rows, step_for
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE
 from service.core.lines.time_response import Places
 from service.core.maps import Rectangle
@@ -187,7 +187,7 @@ def _flow(setting: Setting, axis: int, position: float, rectangle: Rectangle, si
     factor = -sign * math.sqrt(setting.body.conductivity[axis])
     factor /= setting.lines[first].scale * setting.lines[second].scale
     if math.isinf(rectangle.q_high):
-        far = _far_along(setting)
+        far = far_along(setting)
         beyond = Rectangle(rectangle.p_low, rectangle.p_high, far, 2 * far)
         leftover, leftover_bound = _integral(setting, axis, position, beyond, SLOPE, tolerance)
         if abs(leftover) > 4 * leftover_bound:
@@ -203,13 +203,6 @@ def _section_name(body: Body, axis: int, position: float) -> str:
     if position in (0.0, body.size[axis]):
         return f"face {AXES[axis]}_{'low' if position == 0.0 else 'high'}"
     return f"plane {AXES[axis]} = {position:g}"
-
-
-def _far_along(setting: Setting) -> float:
-    """A distance along an endless bar beyond which the field shows nothing of its end, in the caller's unit."""
-    knots = [part.knots(2) for part in setting.parts]
-    last = max((float(knot[np.isfinite(knot)].max()) for knot in knots if knot.size), default=0.0)
-    return last + 2 * time_range.CUT / math.sqrt(time_range.slowest_rate(setting.lines)) / setting.lines[2].scale
 
 
 def _integral(

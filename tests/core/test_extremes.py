@@ -70,3 +70,15 @@ def test_body_driven_by_inflow_alone_has_its_extremes_on_the_driven_faces() -> N
     extremes = solve(Body(UNIT, UNIT, faces)).extremes(tolerance=1e-9)
     assert extremes.hottest.value == pytest.approx(0.5, abs=1e-9)
     assert extremes.coldest.value == pytest.approx(-0.5, abs=1e-9)
+
+
+def test_value_only_approached_along_a_bar_is_said_to_be_far_along_it() -> None:
+    faces = {
+        face: condition
+        for face, condition in all_insulated(x_low=film(2.0, 10.0), z_low=Inflow(FaceMap.uniform(3.0))).items()
+        if face != "z_high"
+    }
+    coldest = solve(Body((1.0, 1.0, np.inf), UNIT, faces)).extremes(tolerance=1e-9).coldest
+    assert coldest.position[2] == np.inf
+    assert coldest.where.endswith("far along the bar")
+    assert coldest.value == pytest.approx(10.0, abs=1e-8)
