@@ -26,11 +26,19 @@ class NotPhysical(CoreError):
 
 
 class NoSteadyState(CoreError):
-    """Every face is insulated or has a given inflow and the flows do not add up to zero."""
+    """Every face is insulated or has a given inflow and the flows do not add up to zero.
 
-    def __init__(self, message: str, imbalance: float, field: tuple[str | int, ...] = ()) -> None:
-        super().__init__(message, field)
+    sentence: the message with `{amount}` in place of the imbalance, for whoever knows its unit. per_length: whether
+    the imbalance is a flow per length of an endless bar.
+    """
+
+    def __init__(
+        self, sentence: str, imbalance: float, field: tuple[str | int, ...] = (), *, per_length: bool = False
+    ) -> None:
+        super().__init__(sentence.format(amount=f"{imbalance:.6g}"), field)
+        self.sentence = sentence
         self.imbalance = imbalance
+        self.per_length = per_length
 
 
 class OutsideBody(CoreError):
@@ -38,10 +46,13 @@ class OutsideBody(CoreError):
 
 
 class AccuracyNotReached(CoreError):
-    """The bound that can be promised is wider than the accuracy asked for."""
+    """The bound that can be promised is wider than the accuracy asked for; both in the unit of the potential."""
 
-    def __init__(self, message: str, bound: float, field: tuple[str | int, ...] = ()) -> None:
-        super().__init__(message, field)
+    SENTENCE = "The accuracy asked for is {asked}; the best bound that can be promised here is {bound}."
+
+    def __init__(self, asked: float, bound: float) -> None:
+        super().__init__(self.SENTENCE.format(asked=f"{asked:.3g}", bound=f"{bound:.3g}"), ("accuracy",))
+        self.asked = asked
         self.bound = bound
 
 

@@ -201,11 +201,7 @@ def _accurate(
             if bound <= tolerance:
                 return potential, bound, nodes
         if step <= time_error.FINEST_STEP:
-            raise AccuracyNotReached(
-                f"The accuracy asked for is {tolerance:.3g}; the best bound that can be promised here is {bound:.3g}.",
-                bound,
-                ("accuracy",),
-            )
+            raise AccuracyNotReached(tolerance, bound)
         step = time_error.step_for(0.5 * time_error.step_error(step) * tolerance / bound)
 
 

@@ -32,10 +32,11 @@ def check_steady_state(body: Body) -> None:
         endless, size = _flow_per_length_far_away(body)
         if abs(endless) > BALANCED * size:
             raise NoSteadyState(
-                f"The sides of the bar are insulated or have a given inflow, and the inflow and generation per length "
-                f"come to {endless:.6g} far along the bar; it has to come to zero there.",
+                "The sides of the bar are insulated or have a given inflow, and the inflow and generation per length "
+                "come to {amount} far along the bar; it has to come to zero there.",
                 endless,
                 ("faces",),
+                per_length=True,
             )
     elif any(isinstance(body.faces[face], Held | Film) for face in ("z_low", "z_high")):
         return
@@ -43,8 +44,8 @@ def check_steady_state(body: Body) -> None:
         total, size = total_given(body)
         if abs(total) > BALANCED * size:
             raise NoSteadyState(
-                f"Every face is insulated or has a given inflow, and the inflows and the generation add up to "
-                f"{total:.6g}; they have to add up to zero, or one face has to be held or get a film.",
+                "Every face is insulated or has a given inflow, and the inflows and the generation add up to "
+                "{amount}; they have to add up to zero, or one face has to be held or get a film.",
                 total,
                 ("faces",),
             )

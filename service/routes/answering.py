@@ -2,16 +2,17 @@
 
 from __future__ import annotations
 
+import asyncio
 import hashlib
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Coroutine
 from dataclasses import dataclass
 from typing import Any, Generic, TypeVar
 
 from fastapi import Request, Response
 
 from service import __version__
-from service.core import CoreError, Solution
+from service.core import CoreError, Interrupted, Solution
 from service.media import ARRAYS_FORM, Form, choose_form, encode
 from service.models.evaluate import Question
 from service.refusals import TooCostly
@@ -24,6 +25,7 @@ from service.translation.solving import point_into_question
 
 Asked = TypeVar("Asked", bound=Question)
 Wanted = TypeVar("Wanted")
+Outcome = TypeVar("Outcome")
 
 
 @dataclass(frozen=True)
@@ -50,11 +52,32 @@ async def answer(request: Request, question: Asked, call: Call[Asked, Wanted]) -
     state = state_of(request)
     form = choose_form(request.headers.get("accept"))
     key = _key(request, form)
-    (body, times), waited = await state.worker.run(lambda keep_going: _work(state, question, call, form, keep_going))
+    work = state.worker.run(lambda keep_going: _work(state, question, call, form, keep_going))
+    (body, times), waited = await _unless_client_leaves(request, work)
     kept = KeptAnswer(body, form.media_type, f'"{key}"', form.file_name)
     state.answers.keep(key, kept)
     times = {"queue": waited, **times}
     return _response(kept, ", ".join(f"{name};dur={1000 * seconds:.3f}" for name, seconds in times.items()))
+
+
+async def _unless_client_leaves(request: Request, work: Coroutine[Any, Any, Outcome]) -> Outcome:
+    """The outcome of the work, which is stopped at its next step when the client goes away before."""
+    working = asyncio.ensure_future(work)
+    leaving = asyncio.ensure_future(_client_leaves(request))
+    try:
+        await asyncio.wait({working, leaving}, return_when=asyncio.FIRST_COMPLETED)
+        if not working.done():
+            raise Interrupted("The request was given up before its answer was complete.")
+        return working.result()
+    finally:
+        working.cancel()
+        leaving.cancel()
+
+
+async def _client_leaves(request: Request) -> None:
+    """Return once the connection is closed; the body has been read, so nothing else can come."""
+    while (await request.receive())["type"] != "http.disconnect":
+        pass
 
 
 def _work(
@@ -78,7 +101,7 @@ def _work(
         content = call.answer(solved.problem, solved.solution, wanted, keep_going)
         lap("compute")
     except CoreError as error:
-        point_into_question(error)
+        point_into_question(error, solved.problem.units)
         raise
     body = encode(content, form)
     lap("encode")

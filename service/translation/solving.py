@@ -22,7 +22,7 @@ from service.refusals import Issue, Path, RequestRefused
 from service.settings import Settings
 from service.store import ProblemStore
 from service.translation.problem import ReadProblem, canonical, path_in_request, problem_id_of, read_problem
-from service.units import Kind
+from service.units import Kind, UnitSystem
 
 
 @dataclass(frozen=True)
@@ -69,16 +69,23 @@ class Solver:
             except CoreError as error:
                 error.field = prefix + path_in_request(error, problem)
                 if isinstance(error, NoSteadyState):
-                    error.imbalance = read.units.write(Kind.FLOW, error.imbalance)
+                    _name_unit_of_imbalance(error, read.units)
                 raise
             self.kept.keep(problem_id, solved)
         return solved
 
 
-def point_into_question(error: CoreError) -> None:
+def _name_unit_of_imbalance(error: NoSteadyState, units: UnitSystem) -> None:
+    unit = units.declared[Kind.FLOW] + (f"/{units.declared[Kind.LENGTH]}" if error.per_length else "")
+    error.imbalance = units.write(Kind.FLOW, error.imbalance)
+    error.message = error.sentence.format(amount=f"{error.imbalance:.6g} {unit}")
+
+
+def point_into_question(error: CoreError, units: UnitSystem) -> None:
     """Make an error the solver raised while it answered point to the part of the question it is about."""
     if isinstance(error, AccuracyNotReached):
-        error.field = ("accuracy",)
+        unit = units.declared[Kind.POTENTIAL_DIFFERENCE]
+        error.message = error.SENTENCE.format(asked=f"{error.asked:.3g} {unit}", bound=f"{error.bound:.3g} {unit}")
     elif error.field == ("edge_gap",):
         error.field = ("evaluate", "edge_gap")
     elif isinstance(error, OutsideBody | NotPhysical):

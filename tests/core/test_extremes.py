@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from service.core import Body, BoxSource, FaceMap, Inflow, solve
-from tests.core.bodies import BODIES, UNIT, all_held, all_insulated, film, held, pad
+from tests.core.bodies import BODIES, UNIT, all_held, all_insulated, film, held, pad, without_far_face
 
 
 def test_held_extremes_are_exact() -> None:
@@ -73,11 +73,7 @@ def test_body_driven_by_inflow_alone_has_its_extremes_on_the_driven_faces() -> N
 
 
 def test_value_only_approached_along_a_bar_is_said_to_be_far_along_it() -> None:
-    faces = {
-        face: condition
-        for face, condition in all_insulated(x_low=film(2.0, 10.0), z_low=Inflow(FaceMap.uniform(3.0))).items()
-        if face != "z_high"
-    }
+    faces = without_far_face(all_insulated(x_low=film(2.0, 10.0), z_low=Inflow(FaceMap.uniform(3.0))))
     coldest = solve(Body((1.0, 1.0, np.inf), UNIT, faces)).extremes(tolerance=1e-9).coldest
     assert coldest.position[2] == np.inf
     assert coldest.where.endswith("far along the bar")
