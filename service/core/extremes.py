@@ -17,12 +17,12 @@ from scipy.ndimage import maximum_filter
 
 from service.core import field
 from service.core.field import Grid, Setting
-from service.core.problem import AXES, Body, Film, Held, Inflow, axes_along, axis_of, is_high
+from service.core.problem import AXES, Body, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
 
 FloatArray = NDArray[np.float64]
 
-# Places along an axis of the first grid at the most, and starts that are followed.
-FIRST_PLACES, STARTS = 25, 4
+# Places along an axis of the first grid through the body at the most, and starts that are followed from each grid.
+FIRST_PLACES, STARTS = 25, 8
 
 # Accuracy of the first grid, in parts of the span.
 FIRST_ACCURACY = 1e-6
@@ -115,22 +115,90 @@ def _representative(knots: FloatArray, index: int, bilinear: bool, length: float
     return low if math.isinf(high) else 0.5 * (low + high)
 
 
+@dataclass(frozen=True)
+class _Start:
+    """A place to climb from. value, slack: signed, and by how much the peak may exceed it. widths: half widths of the
+    first grid around it. limits: where the climb has to stay, for each axis.
+    """
+
+    place: tuple[float, float, float]
+    value: float
+    slack: float
+    widths: tuple[float, float, float]
+    limits: tuple[tuple[float, float], ...]
+
+
 def _by_search(
     setting: Setting, tolerance: float, sign: float, held: Place | None, keep_going: field.KeepGoing | None
 ) -> Place:
-    axes = [_first_places(setting, axis) for axis in range(3)]
-    accuracy = max(tolerance, FIRST_ACCURACY * setting.span)
-    values = sign * _field(setting, axes, accuracy, keep_going).potential
     best = held
-    for start in _starts(values, 2 * accuracy):
-        # A peak that does not come near the best so far, by twice the steps around it, is not followed.
-        if best is not None and values[start] + 2 * _steps(values, start) < sign * best.value:
+    starts = _from_boxes(setting, sign)
+    for axes in _grids(setting):
+        starts += _from_grid(setting, axes, max(tolerance, FIRST_ACCURACY * setting.span), sign, keep_going)
+    for start in sorted(starts, key=lambda start: -start.value):
+        # A peak that does not come near the best so far is not followed.
+        if best is not None and start.value + start.slack < sign * best.value:
             continue
-        found = _climb(setting, axes, start, tolerance, sign, keep_going)
+        found = _climb(setting, start, tolerance, sign, keep_going)
         if best is None or sign * found.value > sign * best.value:
             best = found
     assert best is not None
     return best if best is held else _far_if_only_approached(setting, best, tolerance, sign)
+
+
+def _grids(setting: Setting) -> list[list[FloatArray]]:
+    """The first grids: one through the body, and one on each inflow or film face with all that its data show."""
+    body = setting.body
+    grids = [[_thinned(_first_places(setting, axis)) for axis in range(3)]]
+    for face, condition in body.faces.items():
+        face_map = map_of(condition)
+        if face_map is None or isinstance(condition, Held) or face_map.is_uniform:
+            continue
+        axes = [np.zeros(1)] * 3
+        axes[axis_of(face)] = np.array([body.size[axis_of(face)] if is_high(face) else 0.0])
+        for axis in axes_along(face):
+            axes[axis] = _first_places(setting, axis)
+        grids.append(axes)
+    return grids
+
+
+def _from_grid(
+    setting: Setting, axes: list[FloatArray], accuracy: float, sign: float, keep_going: field.KeepGoing | None
+) -> list[_Start]:
+    values = sign * _field(setting, axes, accuracy, keep_going).potential
+    limits = tuple((float(axis[0]), float(axis[-1])) for axis in axes)
+    starts = []
+    for at in _peaks(values, 2 * accuracy):
+        place = [float(axis[index]) for axis, index in zip(axes, at, strict=True)]
+        x, y, z = (
+            max(float(axis[min(index + 1, axis.size - 1)]) - here, here - float(axis[max(index - 1, 0)]))
+            for axis, index, here in zip(axes, at, place, strict=True)
+        )
+        slack = 2 * _steps(values, at)
+        starts.append(_Start((place[0], place[1], place[2]), float(values[at]), slack, (x, y, z), limits))
+    return starts
+
+
+def _from_boxes(setting: Setting, sign: float) -> list[_Start]:
+    """The middles of the boxes of generation, with half their size to climb in."""
+    boxes = [box for box in setting.body.sources if sign * box.density > 0 and math.isfinite(box.high[2])]
+    if not boxes:
+        return []
+    low, high = np.array([box.low for box in boxes]), np.array([box.high for box in boxes])
+    middles, halves = 0.5 * (low + high), 0.5 * (high - low)
+    rough = field.at_points(setting, middles, tolerance=FIRST_ACCURACY * setting.span, with_flux=False)
+    limits = tuple((0.0, length) for length in setting.body.size)
+    order = np.argsort(-sign * rough.potential, kind="stable")[:STARTS]
+    return [
+        _Start(
+            (float(middles[i, 0]), float(middles[i, 1]), float(middles[i, 2])),
+            float(sign * rough.potential[i]),
+            setting.span,
+            (float(halves[i, 0]), float(halves[i, 1]), float(halves[i, 2])),
+            limits,
+        )
+        for i in order
+    ]
 
 
 def _far_if_only_approached(setting: Setting, found: Place, tolerance: float, sign: float) -> Place:
@@ -147,7 +215,7 @@ def _far_if_only_approached(setting: Setting, found: Place, tolerance: float, si
     return Place((x, y, math.inf), far, bound + found.error_bound, f"{found.where}, far along the bar")
 
 
-def _starts(values: FloatArray, alike: float) -> list[tuple[int, int, int]]:
+def _peaks(values: FloatArray, alike: float) -> list[tuple[int, int, int]]:
     """Places of the first grid that are not below any neighbour, the highest few."""
     # Places that differ by less than this grid's accuracy are alike, and the first of them stands for a plateau.
     values = np.round(values / alike) * alike if alike > 0 else values
@@ -173,24 +241,14 @@ def _line_through(values: FloatArray, at: tuple[int, int, int], axis: int) -> Fl
     return np.asarray(np.moveaxis(values, axis, 0)[:, first, second])
 
 
-def _climb(
-    setting: Setting,
-    axes: list[FloatArray],
-    start: tuple[int, int, int],
-    tolerance: float,
-    sign: float,
-    keep_going: field.KeepGoing | None,
-) -> Place:
+def _climb(setting: Setting, start: _Start, tolerance: float, sign: float, keep_going: field.KeepGoing | None) -> Place:
     """Follow one peak on finer and finer grids until what lies between their places is below the tolerance."""
-    place = [float(axis[index]) for axis, index in zip(axes, start, strict=True)]
-    widths = [
-        max(float(axis[min(index + 1, axis.size - 1)]) - value, value - float(axis[max(index - 1, 0)]))
-        for axis, index, value in zip(axes, start, place, strict=True)
-    ]
+    place, widths = list(start.place), list(start.widths)
+    smallest = SMALLEST_WIDTH * max(length for length in setting.body.size if math.isfinite(length))
     while True:
         local = [
-            np.unique(np.clip(at + width * FINER, axis[0], axis[-1]))
-            for at, width, axis in zip(place, widths, axes, strict=True)
+            np.unique(np.clip(at + width * FINER, low, high))
+            for at, width, (low, high) in zip(place, widths, start.limits, strict=True)
         ]
         answer = _field(setting, local, tolerance, keep_going)
         values = sign * answer.potential
@@ -199,7 +257,7 @@ def _climb(
         place = [float(axis[i]) for axis, i in zip(local, index, strict=True)]
         vertices = [_vertex(local[axis], values, index, axis) for axis in range(3)]
         gap = PEAK_SAFETY * sum(rise for _, rise in vertices)
-        if gap <= tolerance or max(widths) <= SMALLEST_WIDTH * max(axis[-1] - axis[0] for axis in axes):
+        if gap <= tolerance or max(widths) <= smallest:
             found = (place[0], place[1], place[2])
             return Place(found, sign * float(values[index]), answer.potential_bound + gap, _where(setting.body, found))
         place = [vertex for vertex, _ in vertices]
@@ -248,10 +306,13 @@ def _first_places(setting: Setting, axis: int) -> FloatArray:
         knots = knots[np.isfinite(knots)]
         places += [knots, 0.5 * (knots[1:] + knots[:-1])]
     unique = np.unique(np.concatenate(places))
-    unique = unique[unique <= line.length]
-    if unique.size > FIRST_PLACES:
-        unique = unique[np.unique(np.linspace(0, unique.size - 1, FIRST_PLACES).round().astype(int))]
-    return unique
+    return unique[unique <= line.length]
+
+
+def _thinned(places: FloatArray) -> FloatArray:
+    if places.size <= FIRST_PLACES:
+        return places
+    return places[np.unique(np.linspace(0, places.size - 1, FIRST_PLACES).round().astype(int))]
 
 
 def _where(body: Body, place: tuple[float, float, float]) -> str:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from service.core import Body, BoxSource, FaceMap, Inflow, solve
+from service.core import Body, BoxSource, FaceMap, Inflow, Patch, Rectangle, solve
 from tests.core.bodies import BODIES, UNIT, all_held, all_insulated, film, held, pad, without_far_face
 
 
@@ -78,3 +78,21 @@ def test_value_only_approached_along_a_bar_is_said_to_be_far_along_it() -> None:
     assert coldest.position[2] == np.inf
     assert coldest.where.endswith("far along the bar")
     assert coldest.value == pytest.approx(10.0, abs=1e-8)
+
+
+def test_hottest_of_many_small_pads_is_found_among_them() -> None:
+    generator = np.random.default_rng(5)
+    pads = []
+    for i in range(14):
+        for j in range(14):
+            low = np.array([i, j]) / 14 + generator.uniform(0.005, 0.03, 2)
+            high = low + generator.uniform(0.002, 0.02, 2)
+            pads.append(Patch(Rectangle(low[0], high[0], low[1], high[1]), float(generator.uniform(10, 900))))
+    face_map = FaceMap.patches((1.0, 1.0), 0.0, pads)
+    solution = solve(Body(UNIT, UNIT, all_insulated(z_low=Inflow(face_map), z_high=held(0.0))))
+    hottest = solution.extremes(tolerance=1e-8 * solution.span).hottest
+    middles = np.array(
+        [[(p.where.p_low + p.where.p_high) / 2, (p.where.q_low + p.where.q_high) / 2, 0.0] for p in pads]
+    )
+    values = solution.field_at(middles, tolerance=1e-8 * solution.span).potential
+    assert hottest.value >= values.max() - hottest.error_bound - 1e-8 * solution.span
