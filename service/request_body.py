@@ -21,6 +21,9 @@ from service.refusals import MalformedBody, UnsupportedMediaType
 _SURROGATE_ESCAPE = re.compile(r"\\u[dD][89abAB]|\\u[dD][c-fC-F]")
 _LONGEST_KEY_SHOWN = 40
 
+# No object of any request has a third as many keys; each unknown one would cost a sentence.
+MOST_KEYS = 100
+
 
 def parse_json(raw: bytes) -> Any:
     """The JSON value of a body.
@@ -56,6 +59,8 @@ def _expected(error: json.JSONDecodeError) -> str:
 
 
 def _object(pairs: list[tuple[str, Any]]) -> dict[str, Any]:
+    if len(pairs) > MOST_KEYS:
+        raise MalformedBody(f"An object in the body has {len(pairs)} keys; no object here has more than {MOST_KEYS}.")
     value = dict(pairs)
     if len(value) != len(pairs):
         seen: set[str] = set()

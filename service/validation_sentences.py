@@ -10,6 +10,9 @@ from typing import Any
 from service.models.base import Model
 from service.refusals import Issue, Path
 
+# More mistakes than this are not told at once.
+MOST_ISSUES = 100
+
 # Sentences by the library's own type of error; {…} are filled from its context.
 _SENTENCES = {
     "missing": "This field is required.",
@@ -40,8 +43,9 @@ _SENTENCES = {
 
 
 def issues_of(errors: Sequence[Any], body: Any) -> tuple[Issue, ...]:
-    """One issue for each error of the validation library, in its order, without repetitions."""
-    issues = (Issue(_path(error, body), _sentence(error, body), str(error["type"])) for error in errors)
+    """One issue for each error of the validation library, in its order, without repetitions; the first MOST_ISSUES."""
+    first = errors[:MOST_ISSUES]
+    issues = (Issue(_path(error, body), _sentence(error, body), str(error["type"])) for error in first)
     return tuple(dict.fromkeys(issues))
 
 

@@ -219,6 +219,7 @@ BODIES = [
     raw("single quotes", "{'problem': 1}", 400, "The body is not JSON at line 1, column 2"),
     raw("NaN", '{"problem": NaN}', 400, "NaN is not a JSON number"),
     raw("Infinity", '{"problem": -Infinity}', 400, "-Infinity is not a JSON number"),
+    raw("thousands of keys", "{" + ",".join(f'"k{i}": 1' for i in range(20_000)) + "}", 400, "An object in the body has 20000 keys; no object here has more than 100."),
     raw("key twice", '{"problem": 1, "problem": 2}', 400, 'The key "problem" stands twice in one object'),
     raw("a hundred thousand brackets", "[" * 100_000, 400, "The body is nested too deeply."),
     raw("number of five thousand digits", '{"problem": ' + "9" * 5_000 + "}", 400, "too many digits"),

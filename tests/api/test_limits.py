@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import asyncio
+import json
 import threading
 from collections.abc import AsyncIterator, Iterator
 from contextlib import contextmanager
@@ -10,6 +11,7 @@ from contextlib import contextmanager
 import httpx
 import pytest
 
+from service.app import create_app
 from service.core.errors import Interrupted
 from service.middleware import BodyLimit
 from service.settings import Settings
@@ -206,6 +208,37 @@ async def test_request_that_was_given_up_stops_at_its_next_step(
         await asyncio.to_thread(started.wait, 10)
         task.cancel()
         assert await asyncio.to_thread(stopped.wait, 10)
+
+
+async def test_work_of_a_client_that_leaves_is_stopped(settings: Settings, monkeypatch: pytest.MonkeyPatch) -> None:
+    app = create_app(settings)
+    body = json.dumps(ask_grid()).encode()
+    messages: list[dict[str, object]] = [
+        {"type": "http.request", "body": body, "more_body": False},
+        {"type": "http.disconnect"},
+    ]
+    scope = {
+        "type": "http", "asgi": {"version": "3.0"}, "http_version": "1.1", "method": "POST", "scheme": "http",
+        "path": "/v1/fields", "raw_path": b"/v1/fields", "root_path": "", "query_string": b"",
+        "headers": [(b"content-type", b"application/json"), (b"content-length", str(len(body)).encode())],
+        "client": ("127.0.0.1", 1), "server": ("stillfield.test", 80), "state": {},
+    }  # fmt: skip
+
+    async def receive() -> dict[str, object]:
+        return messages.pop(0)
+
+    async def send(_: object) -> None:
+        """Nobody is there any more."""
+
+    async with app.router.lifespan_context(app):
+        with held_up(monkeypatch):
+            # The computation waits in its thread; the call ends all the same, since the client is gone.
+            await asyncio.wait_for(app(scope, receive, send), 10)
+            worker = app.state.service.worker
+            assert worker.report().running == 1
+        while worker.report().running:
+            await asyncio.sleep(0.01)
+        assert worker.report().interrupted == 1
 
 
 async def test_loop_answers_while_all_workers_compute(settings: Settings, monkeypatch: pytest.MonkeyPatch) -> None:
