@@ -166,7 +166,7 @@ def kept_rows() -> time_form.Rows:
     kept: dict[tuple[object, ...], TimeResponse] = {}
 
     def rows(line: Line, drive: Drive, places: Places, times: FloatArray) -> TimeResponse:
-        key = (line, drive, places.order, places.low.tobytes(), times[0], times.size)
+        key = (line, drive, places.key, times[0], times[-1], times.size)
         if key not in kept:
             kept[key] = respond(line, drive, places, times)
         return kept[key]

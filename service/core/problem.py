@@ -40,11 +40,6 @@ def axes_along(face_or_axis: Face | int) -> tuple[int, int]:
     return ((1, 2), (0, 2), (0, 1))[axis]
 
 
-def opposite(face: Face) -> Face:
-    """The face at the other end of the same axis."""
-    return FACES[FACES.index(face) ^ 1]
-
-
 @dataclass(frozen=True)
 class Held:
     """The potential on the face is given (a condition of the first kind, Dirichlet)."""

@@ -41,6 +41,11 @@ class Places:
     _shapes: dict[Line, FloatArray] = field(default_factory=dict, repr=False)
     _profiles: dict[tuple[Line, Profiles], FloatArray] = field(default_factory=dict, repr=False)
 
+    @cached_property
+    def key(self) -> tuple[Order, bytes, bytes | None]:
+        """All that is asked, by which answers are kept."""
+        return self.order, self.low.tobytes(), None if self.high is None else self.high.tobytes()
+
     def mode_shapes(self, line: Line) -> FloatArray:
         """The line's eigenfunctions asked in the same way, shape (n, MODE_COUNT), kept for the next time."""
         if line not in self._shapes:
