@@ -7,9 +7,14 @@ from dataclasses import replace
 
 import numpy as np
 
-from service.core.problem import Face, opposite
+from service.core.problem import FACES, Face
 from tests.core.reference.cases import Case, Cells, Data, Readings, Wall
 from tests.core.reference.random_cases import Place
+
+
+def opposite(face: Face) -> Face:
+    """The face at the other end of the same axis."""
+    return FACES[FACES.index(face) ^ 1]
 
 
 def data_range(case: Case) -> float:
