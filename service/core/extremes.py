@@ -10,6 +10,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -24,8 +25,15 @@ FloatArray = NDArray[np.float64]
 # Places along an axis of the first grid through the body at the most, and starts that are followed from each grid.
 FIRST_PLACES, STARTS = 25, 8
 
-# Accuracy of the first grid, in parts of the span.
+# Peaks that are followed for one extreme at the most.
+MOST_CLIMBS = 6
+
+# Places along an axis of a face's first grid; beyond it only its readings or the middles of its cells are looked at.
+MOST_FACE_PLACES = 100
+
+# Accuracy of the first grid, in parts of the span; of a finer one, in parts of what may lie between its places.
 FIRST_ACCURACY = 1e-6
+ACCURACY_OF_GAP = 1e-3
 
 # Places of each finer grid in parts of its half width, and by how much the next one is narrower.
 FINER = np.linspace(-1.0, 1.0, 5)
@@ -63,17 +71,17 @@ class Extremes:
 
 def find(setting: Setting, tolerance: float, keep_going: field.KeepGoing | None) -> Extremes:
     """Hottest and coldest place of the closed body."""
-    return Extremes(
-        _extreme(setting, tolerance, 1.0, keep_going),
-        _extreme(setting, tolerance, -1.0, keep_going),
-    )
+    # Half of the tolerance for the values, half for what lies between the places of the last grid.
+    search = _Search(setting, 0.5 * tolerance, keep_going)
+    return Extremes(_extreme(search, 1.0), _extreme(search, -1.0))
 
 
-def _extreme(setting: Setting, tolerance: float, sign: float, keep_going: field.KeepGoing | None) -> Place:
-    held = _extreme_held(setting.body, sign)
-    if held is not None and not _may_exceed(setting.body, sign * held.value, sign):
+def _extreme(search: _Search, sign: float) -> Place:
+    body = search.setting.body
+    held = _extreme_held(body, sign)
+    if held is not None and not _may_exceed(body, sign * held.value, sign):
         return held
-    return _by_search(setting, tolerance, sign, held, keep_going)
+    return _by_search(search, sign, held)
 
 
 def _may_exceed(body: Body, level: float, sign: float) -> bool:
@@ -115,6 +123,26 @@ def _representative(knots: FloatArray, index: int, bilinear: bool, length: float
     return low if math.isinf(high) else 0.5 * (low + high)
 
 
+class _Search:
+    """The first grids with their values, which serve for both extremes."""
+
+    def __init__(self, setting: Setting, tolerance: float, keep_going: field.KeepGoing | None) -> None:
+        self.setting = setting
+        self.tolerance = tolerance
+        self.keep_going = keep_going
+        self.accuracy = max(tolerance, FIRST_ACCURACY * setting.span)
+
+    @cached_property
+    def grids(self) -> list[tuple[list[FloatArray], FloatArray]]:
+        """Axes and potential of each first grid."""
+        return [(axes, self.field(axes, self.accuracy).potential) for axes in _grids(self.setting)]
+
+    def field(self, axes: list[FloatArray], accuracy: float) -> field.Field:
+        """The field on the tensor product of three axes."""
+        grid = Grid(axes[0], axes[1], axes[2])
+        return field.on_grid(self.setting, grid, tolerance=accuracy, with_flux=False, keep_going=self.keep_going)
+
+
 @dataclass(frozen=True)
 class _Start:
     """A place to climb from. value, slack: signed, and by how much the peak may exceed it. widths: half widths of the
@@ -128,22 +156,23 @@ class _Start:
     limits: tuple[tuple[float, float], ...]
 
 
-def _by_search(
-    setting: Setting, tolerance: float, sign: float, held: Place | None, keep_going: field.KeepGoing | None
-) -> Place:
-    best = held
-    starts = _from_boxes(setting, sign)
-    for axes in _grids(setting):
-        starts += _from_grid(setting, axes, max(tolerance, FIRST_ACCURACY * setting.span), sign, keep_going)
+def _by_search(search: _Search, sign: float, held: Place | None) -> Place:
+    best, climbs = held, 0
+    starts = _from_boxes(search.setting, sign)
+    for axes, potential in search.grids:
+        starts += _from_grid(axes, sign * potential, 2 * search.accuracy)
     for start in sorted(starts, key=lambda start: -start.value):
         # A peak that does not come near the best so far is not followed.
         if best is not None and start.value + start.slack < sign * best.value:
             continue
-        found = _climb(setting, start, tolerance, sign, keep_going)
+        found = _climb(search, start, sign)
+        climbs += 1
         if best is None or sign * found.value > sign * best.value:
             best = found
+        if climbs == MOST_CLIMBS:
+            break
     assert best is not None
-    return best if best is held else _far_if_only_approached(setting, best, tolerance, sign)
+    return best if best is held else _far_if_only_approached(search.setting, best, search.tolerance, sign)
 
 
 def _grids(setting: Setting) -> list[list[FloatArray]]:
@@ -156,19 +185,25 @@ def _grids(setting: Setting) -> list[list[FloatArray]]:
             continue
         axes = [np.zeros(1)] * 3
         axes[axis_of(face)] = np.array([body.size[axis_of(face)] if is_high(face) else 0.0])
-        for axis in axes_along(face):
-            axes[axis] = _first_places(setting, axis)
+        for axis, knots in zip(axes_along(face), (face_map.first_knots, face_map.second_knots), strict=True):
+            axes[axis] = _data_places(setting, axis, knots, face_map.bilinear)
         grids.append(axes)
     return grids
 
 
-def _from_grid(
-    setting: Setting, axes: list[FloatArray], accuracy: float, sign: float, keep_going: field.KeepGoing | None
-) -> list[_Start]:
-    values = sign * _field(setting, axes, accuracy, keep_going).potential
+def _data_places(setting: Setting, axis: int, knots: FloatArray, bilinear: bool) -> FloatArray:
+    """Where a face's data show along an axis: everything if that is little, else its readings or its cells' middles."""
+    places = _first_places(setting, axis)
+    if places.size <= MOST_FACE_PLACES:
+        return places
+    knots = knots[np.isfinite(knots)]
+    return knots if bilinear else 0.5 * (knots[1:] + knots[:-1])
+
+
+def _from_grid(axes: list[FloatArray], values: FloatArray, alike: float) -> list[_Start]:
     limits = tuple((float(axis[0]), float(axis[-1])) for axis in axes)
     starts = []
-    for at in _peaks(values, 2 * accuracy):
+    for at in _peaks(values, alike):
         place = [float(axis[index]) for axis, index in zip(axes, at, strict=True)]
         x, y, z = (
             max(float(axis[min(index + 1, axis.size - 1)]) - here, here - float(axis[max(index - 1, 0)]))
@@ -241,27 +276,31 @@ def _line_through(values: FloatArray, at: tuple[int, int, int], axis: int) -> Fl
     return np.asarray(np.moveaxis(values, axis, 0)[:, first, second])
 
 
-def _climb(setting: Setting, start: _Start, tolerance: float, sign: float, keep_going: field.KeepGoing | None) -> Place:
+def _climb(search: _Search, start: _Start, sign: float) -> Place:
     """Follow one peak on finer and finer grids until what lies between their places is below the tolerance."""
+    body, accuracy = search.setting.body, search.accuracy
     place, widths = list(start.place), list(start.widths)
-    smallest = SMALLEST_WIDTH * max(length for length in setting.body.size if math.isfinite(length))
+    smallest = SMALLEST_WIDTH * max(length for length in body.size if math.isfinite(length))
     while True:
         local = [
             np.unique(np.clip(at + width * FINER, low, high))
             for at, width, (low, high) in zip(place, widths, start.limits, strict=True)
         ]
-        answer = _field(setting, local, tolerance, keep_going)
+        answer = search.field(local, accuracy)
         values = sign * answer.potential
         top = np.unravel_index(int(values.argmax()), values.shape)
         index = (int(top[0]), int(top[1]), int(top[2]))
         place = [float(axis[i]) for axis, i in zip(local, index, strict=True)]
         vertices = [_vertex(local[axis], values, index, axis) for axis in range(3)]
         gap = PEAK_SAFETY * sum(rise for _, rise in vertices)
-        if gap <= tolerance or max(widths) <= smallest:
+        done = gap <= search.tolerance or max(widths) <= smallest
+        if done and accuracy <= search.tolerance:
             found = (place[0], place[1], place[2])
-            return Place(found, sign * float(values[index]), answer.potential_bound + gap, _where(setting.body, found))
-        place = [vertex for vertex, _ in vertices]
-        widths = [width / NARROWING for width in widths]
+            return Place(found, sign * float(values[index]), answer.potential_bound + gap, _where(body, found))
+        accuracy = search.tolerance if done else max(search.tolerance, ACCURACY_OF_GAP * gap)
+        if not done:
+            place = [vertex for vertex, _ in vertices]
+            widths = [width / NARROWING for width in widths]
 
 
 def _vertex(places: FloatArray, values: FloatArray, top: tuple[int, int, int], axis: int) -> tuple[float, float]:
@@ -283,13 +322,6 @@ def _vertex(places: FloatArray, values: FloatArray, top: tuple[int, int, int], a
     vertex = float(min(max(vertex, places[0]), places[-1]))
     rise = y[1] + (vertex - x[1]) * (left + curvature * (vertex - x[0])) - line[here]
     return vertex, max(float(rise), 0.0)
-
-
-def _field(
-    setting: Setting, axes: list[FloatArray], tolerance: float, keep_going: field.KeepGoing | None
-) -> field.Field:
-    grid = Grid(axes[0], axes[1], axes[2])
-    return field.on_grid(setting, grid, tolerance=tolerance, with_flux=False, keep_going=keep_going)
 
 
 def _first_places(setting: Setting, axis: int) -> FloatArray:

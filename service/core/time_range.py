@@ -85,9 +85,17 @@ def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], ear
     if wall is not None and not profile_is_taken_out(lines, part, places):
         return _nearest_to_wall(lines[wall], part.drives[wall], places[wall]) ** 2 / (4 * CUT)
     slopes = any(asked.order == -1 for asked in places)
-    least = min(line.extent for line in lines if not line.is_endless)
     film = max((film for line in lines for film in (line.film_low, line.film_high) if film < math.inf), default=0.0)
-    floor = least**2 * (EARLIEST_FOR_SLOPES / (1 + film * least) ** 2 if slopes else earliest / (1 + film * least))
+    least = min(line.extent for line in lines if not line.is_endless)
+    # A kink between narrow pieces is steep, and a film of a large Biot number acts early, against another such film
+    # with the square of it.
+    narrowest = min(
+        drive.narrowest * line.scale
+        for line, drive in zip(lines, part.drives, strict=True)
+        if isinstance(drive, Profiles)
+    )
+    scale = min(least, narrowest) / (1 + film * least)
+    floor = scale**2 * (EARLIEST_FOR_SLOPES if slopes else earliest)
     if wall is None and not slopes:
         return floor
     if wall is not None and _film_at(lines[wall], part.drives[wall]) > 0:
