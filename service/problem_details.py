@@ -54,6 +54,7 @@ _TYPES = (
     ProblemType("internal-error", 500, "Something failed inside the service"),
     ProblemType("queue-full", 503, "The service is busy"),
     ProblemType("not-ready", 503, "The service is not ready"),
+    ProblemType("store-busy", 503, "The store of problems is held by another process"),
     ProblemType("store-full", 507, "The store of problems is full"),
 )
 TYPES: dict[str, ProblemType] = {kind.name: kind for kind in _TYPES}
@@ -67,6 +68,7 @@ _TYPE_OF_EXCEPTION: dict[type[Exception], str] = {
     refusals.UnknownProblem: "not-found",
     refusals.TooCostly: "too-costly",
     refusals.QueueFull: "queue-full",
+    refusals.StoreBusy: "store-busy",
     refusals.StoreFull: "store-full",
     core.NotPhysical: "not-physical",
     core.NoSteadyState: "no-steady-state",
@@ -135,7 +137,7 @@ async def _on_refusal(_: Request, error: Exception) -> Response:
     headers: dict[str, str] = {}
     if isinstance(error, refusals.TooCostly):
         extra = {"estimate": error.estimate, "limit": error.limit}
-    if isinstance(error, refusals.QueueFull):
+    if isinstance(error, refusals.QueueFull | refusals.StoreBusy):
         headers["Retry-After"] = str(error.retry_after_seconds)
     return problem_response(kind, error.detail, error.issues, extra, headers)
 

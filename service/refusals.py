@@ -9,6 +9,7 @@ Refusal
 ├── UnknownProblem        no problem is stored under this id
 ├── TooCostly             the work or the answer would pass a limit; known before it starts
 ├── QueueFull             all workers are busy and no one more may wait
+├── StoreBusy             the file of stored problems is held by another process
 └── StoreFull             no room for another problem
 """
 
@@ -80,6 +81,12 @@ class QueueFull(Refusal):
     def __init__(self, detail: str, retry_after_seconds: int) -> None:
         super().__init__(detail)
         self.retry_after_seconds = retry_after_seconds
+
+
+class StoreBusy(Refusal):
+    """The file of stored problems is held by another process."""
+
+    retry_after_seconds = 5
 
 
 class StoreFull(Refusal):

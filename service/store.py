@@ -8,10 +8,12 @@ from __future__ import annotations
 
 import sqlite3
 import threading
+from collections.abc import Iterator
+from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 
-from service.refusals import StoreFull
+from service.refusals import StoreBusy, StoreFull
 
 # Another process may hold the file for a moment, a backup above all.
 _BUSY_SECONDS = 5.0
@@ -43,8 +45,8 @@ class ProblemStore:
         )
 
     def put(self, problem_id: str, content: bytes) -> bool:
-        """Store a problem; whether it is new. Raises StoreFull when there is no room for it."""
-        with self._lock:
+        """Store a problem; whether it is new. Raises StoreFull when there is no room for it, and StoreBusy."""
+        with self._ready():
             self._connection.execute("BEGIN IMMEDIATE")
             try:
                 is_new = not self._has(problem_id)
@@ -58,8 +60,8 @@ class ProblemStore:
             return is_new
 
     def get(self, problem_id: str) -> bytes | None:
-        """The canonical text of a problem, None if it is not stored."""
-        with self._lock:
+        """The canonical text of a problem, None if it is not stored. Raises StoreBusy."""
+        with self._ready():
             row = self._connection.execute("SELECT content FROM problem WHERE id = ?", (problem_id,)).fetchone()
         return None if row is None else bytes(row[0])
 
@@ -75,6 +77,15 @@ class ProblemStore:
         """Let go of the file."""
         with self._lock:
             self._connection.close()
+
+    @contextmanager
+    def _ready(self) -> Iterator[None]:
+        """The connection to ourselves; another process that holds the file too long is a reason to come again."""
+        with self._lock:
+            try:
+                yield
+            except sqlite3.OperationalError as error:
+                raise StoreBusy("The stored problems cannot be reached at the moment; try again later.") from error
 
     def _has(self, problem_id: str) -> bool:
         return self._connection.execute("SELECT 1 FROM problem WHERE id = ?", (problem_id,)).fetchone() is not None

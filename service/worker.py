@@ -71,8 +71,11 @@ class Worker:
         abandoned = threading.Event()
         queued = time.perf_counter()
         future = self._pool.submit(self._run, work, abandoned, queued)
+        waiting = asyncio.wrap_future(future)
+        # Whoever waits may go away; the work itself always runs, if only to find that it was given up and to make room.
+        waiting.add_done_callback(lambda done: done.cancelled() or done.exception())
         try:
-            return await asyncio.wrap_future(future)
+            return await asyncio.shield(waiting)
         except asyncio.CancelledError:
             abandoned.set()
             raise

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -14,7 +15,7 @@ from service.core.field import Setting
 from service.core.lines.line import VALUE, Line
 from service.core.lines.modes import eigen_integrals, modes_of
 from service.core.lines.time_response import Places
-from service.core.maps import Profiles
+from service.core.maps import FaceMap, Profiles
 from service.core.problem import FACES, Face
 from service.core.split import SOURCES, Part
 
@@ -195,16 +196,32 @@ def _overshoot(setting: Setting, part: Part, axes: list[int], terms: int) -> Ove
         sums.append(modes_of(line, terms).at(at, VALUE) @ eigen_integrals(line, drive, terms))
         data.append(drive.at(at))
     summed, given = part.factor * (sums[0] @ sums[1].T), part.factor * (data[0] @ data[1].T)
-    highest, lowest = max(float(given.max()), 0.0), min(float(given.min()), 0.0)
+    face: Face = part.cause  # type: ignore[assignment]
+    assert part.face_map is not None
+    jump, meets_zero = _largest_jump([setting.lines[axis] for axis in axes], part.face_map)
+    # A uniform face has its value in the factor.
+    jump *= abs(part.factor) / (abs(part.face_map.lowest) if part.face_map.is_uniform else 1.0)
+    # On an edge with a held face the series has to come down to that face, which is zero in this part.
+    highest = max(float(given.max()), 0.0) if meets_zero else float(given.max())
+    lowest = min(float(given.min()), 0.0) if meets_zero else float(given.min())
     excess = np.maximum(summed - highest, lowest - summed)
     i, j = np.unravel_index(int(excess.argmax()), excess.shape)
-    face: Face = part.cause  # type: ignore[assignment]
-    return Overshoot(
-        face,
-        terms,
-        max(float(excess[i, j]), 0.0) / (highest - lowest),
-        (float(coordinates[0][i]), float(coordinates[1][j])),
-    )
+    scale = jump if jump > 0 else max(highest - lowest, abs(highest))
+    overshoot = max(float(excess[i, j]), 0.0) / scale
+    return Overshoot(face, terms, overshoot, (float(coordinates[0][i]), float(coordinates[1][j])))
+
+
+def _largest_jump(lines: Sequence[Line], face_map: FaceMap) -> tuple[float, bool]:
+    """Largest jump of a face's data, inside it or at an edge with a held face; and whether there is such an edge."""
+    table, jump, meets_zero = face_map.table, 0.0, False
+    for axis, line in enumerate(lines):
+        along = np.moveaxis(table, axis, 0)
+        if not face_map.bilinear and along.shape[0] > 1:
+            jump = max(jump, float(np.abs(np.diff(along, axis=0)).max()))
+        for film, border in ((line.film_low, along[0]), (line.film_high, along[-1])):
+            if film == math.inf:
+                jump, meets_zero = max(jump, float(np.abs(border).max())), True
+    return jump, meets_zero
 
 
 def _near_jumps(line: Line, drive: object, terms: int) -> FloatArray:

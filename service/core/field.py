@@ -31,6 +31,9 @@ FLUX_HEADROOM = 1e-3
 # Headroom between the error factor aimed at and the sum of absolute values that multiplies it, per part.
 SPREAD_HEADROOM = 32.0
 
+# An accuracy is offered in place of one that cannot be met with so much room that it will be met when asked for.
+OFFERED = 1.25
+
 # Rounding of the sum of parts and the reference when it is stored, relative to the answer.
 STORED = 4e-16
 
@@ -201,7 +204,7 @@ def _accurate(
             if bound <= tolerance:
                 return potential, bound, nodes
         if step <= time_error.FINEST_STEP:
-            raise AccuracyNotReached(tolerance, bound)
+            raise AccuracyNotReached(tolerance, OFFERED * bound)
         step = time_error.step_for(0.5 * time_error.step_error(step) * tolerance / bound)
 
 

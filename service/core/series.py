@@ -34,6 +34,9 @@ LAST_EXPONENT = 36.0
 # More terms than this are not summed at one place; the time form stands alone there.
 MOST_TERMS = 60_000
 
+# Nor more than this many products of a term and a column of the part's profiles.
+MOST_PRODUCTS = 4_000_000
+
 ORDERS: tuple[tuple[int, int, int], ...] = ((0, 1, 2), (0, 2, 1), (1, 0, 2), (1, 2, 0), (2, 0, 1), (2, 1, 0))
 
 # Rounding of one term relative to its size, and where f / gamma^2 and the waves cancel relative to that: there the
@@ -75,7 +78,7 @@ def summed(lines: Sequence[Line], part: Part, point: Sequence[float]) -> SeriesV
     ]
     best: SeriesValue | None = None
     for cost, order in sorted(orders):
-        if cost > MOST_TERMS:
+        if math.isinf(cost):
             break
         found = _sum(lines, part, point, order)
         if best is None or found.bound < best.bound:
@@ -103,12 +106,13 @@ def _modes_needed(lines: Sequence[Line], axes: Sequence[int], distance: float) -
 
 
 def _cost(lines: Sequence[Line], part: Part, point: Sequence[float], order: tuple[int, int, int]) -> float:
+    """Terms an order of the axes takes at a place; infinite where that is more than is summed."""
     first = reach(lines[order[0]], part.drives[order[0]], point[order[0]])
-    cost = math.prod(_modes_needed(lines, order[1:], first)) * part.columns
-    if isinstance(part.drives[order[0]], WallDrive):
-        return cost
-    second = reach(lines[order[1]], part.drives[order[1]], point[order[1]])
-    return cost + math.prod(_modes_needed(lines, order[2:], second)) * part.columns
+    terms = math.prod(_modes_needed(lines, order[1:], first))
+    if not isinstance(part.drives[order[0]], WallDrive):
+        second = reach(lines[order[1]], part.drives[order[1]], point[order[1]])
+        terms += math.prod(_modes_needed(lines, order[2:], second))
+    return terms if terms <= MOST_TERMS and terms * part.columns <= MOST_PRODUCTS else math.inf
 
 
 def _sum(lines: Sequence[Line], part: Part, point: Sequence[float], order: tuple[int, int, int]) -> SeriesValue:
@@ -187,7 +191,8 @@ def partial_sums(
     """A part's double series along one axis, cut at each of the given numbers of modes per axis.
 
     The whole answer of the axial line is in every term, as in a textbook's series. The bound on the rest uses that
-    coefficients do not grow and that gamma >= (alpha_m + beta_n) / sqrt 2.
+    coefficients do not grow and that gamma >= (alpha_m + beta_n) / sqrt 2; a part driven by held values or ambients
+    also stays within its data (maximum principle), so that the rest is at most these and the sum together.
     """
     axes = [axis for axis in range(3) if axis != axial]
     most = max(terms)
@@ -199,10 +204,22 @@ def partial_sums(
         waves = waves + share[:, None] * drive.at(np.array([point[axial]]))
     table = (amplitudes * waves).sum(axis=1).reshape(most, most)
     sums = table.cumsum(axis=0).cumsum(axis=1)
-    return [
-        PartialSum(count, float(sums[count - 1, count - 1]), tail_bound(lines, part, point, axial, count))
-        for count in terms
-    ]
+    largest = _largest_value(lines, part)
+    found = []
+    for count in terms:
+        value, tail = float(sums[count - 1, count - 1]), tail_bound(lines, part, point, axial, count)
+        found.append(PartialSum(count, value, min(tail, largest + abs(value)) if math.isfinite(tail) else tail))
+    return found
+
+
+def _largest_value(lines: Sequence[Line], part: Part) -> float:
+    """What the size of a part cannot exceed: its largest held value or ambient; infinite for inflows and sources."""
+    if part.face_map is None or part.wall_axis is None:
+        return math.inf
+    line = lines[part.wall_axis]
+    if (line.film_high if part.is_high else line.film_low) == 0.0:
+        return math.inf
+    return max(abs(part.face_map.lowest), abs(part.face_map.highest))
 
 
 def tail_bound(lines: Sequence[Line], part: Part, point: Sequence[float], axial: int, count: int) -> float:

@@ -111,9 +111,17 @@ class Solution:
         """Flow into the body through a face or a rectangle of it; unbounded where held values meet in a jump."""
         return totals.face_total(self._setting, face, rectangle, gap, tolerance)
 
-    def plane_total(self, axis: int, position: float, rectangle: Rectangle | None = None, *, tolerance: float) -> Total:
-        """Flow along an axis through a plane square to it or a rectangle of that plane."""
-        return totals.plane_total(self._setting, axis, position, rectangle, tolerance)
+    def plane_total(
+        self,
+        axis: int,
+        position: float,
+        rectangle: Rectangle | None = None,
+        *,
+        gap: float | None = None,
+        tolerance: float,
+    ) -> Total:
+        """Flow along an axis through a plane square to it or a rectangle of that plane; unbounded like a face."""
+        return totals.plane_total(self._setting, axis, position, rectangle, gap, tolerance)
 
     def balance(self, *, gap: float | None = None, tolerance: float) -> Balance:
         """Inflow of every face, generation, and what is left over."""

@@ -24,6 +24,9 @@ CUT, CUT_ERROR = 50.0, 1e-21
 # a slope on a driven face meets it with t^(-3/2), and begins where the square of that is below rounding.
 EARLIEST, EARLIEST_FOR_SLOPES = 1e-3, 1e-30
 
+# A place within this part of the body of a driven end is on it; no range begins before the square of that.
+NEGLIGIBLE, TINY = 1e-50, 1e-110
+
 # Part of the slowest time constant by which a range has begun where a profile or a mean is let go with it:
 # (t / release)^(5/2) is then below rounding.
 LATEST_BEGINNING = 3e-7
@@ -42,7 +45,7 @@ def times_for(
     slowest = slowest_rate(lines)
     last = CUT / slowest
     lets_go = profile_is_taken_out(lines, part, places) or is_undying(lines)
-    first = _first_time(lines, part, places, EARLIEST * rule_error)
+    first = max(_first_time(lines, part, places, EARLIEST * rule_error), TINY * _shortest(lines) ** 2)
     # A plain integrand begins only when the front from its end arrives; the others begin with what is let go.
     first = min(first, LATEST_BEGINNING / slowest if lets_go else last / 16)
     begin = LATTICE * math.floor(math.log(first) / LATTICE)
@@ -71,8 +74,9 @@ def profile_is_taken_out(lines: Sequence[Line], part: Part, places: Sequence[Pla
     assert isinstance(drive, WallDrive)
     if asked.order == -1:
         return True
-    end = lines[part.wall_axis].length if drive.high else 0.0
-    return bool((asked.low == end).any() or (asked.high is not None and (asked.high == end).any()))
+    line, on_it = lines[part.wall_axis], NEGLIGIBLE * _shortest(lines)
+    ends = [asked.low] if asked.high is None else [asked.low, asked.high]
+    return any(bool((wall_distance(line, end, high=drive.high) <= on_it).any()) for end in ends)
 
 
 def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], earliest: float) -> float:
@@ -86,7 +90,7 @@ def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], ear
         return _nearest_to_wall(lines[wall], part.drives[wall], places[wall]) ** 2 / (4 * CUT)
     slopes = any(asked.order == -1 for asked in places)
     film = max((film for line in lines for film in (line.film_low, line.film_high) if film < math.inf), default=0.0)
-    least = min(line.extent for line in lines if not line.is_endless)
+    least = _shortest(lines)
     # A kink between narrow pieces is steep, and a film of a large Biot number acts early, against another such film
     # with the square of it.
     narrowest = min(
@@ -104,6 +108,10 @@ def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], ear
     along = [axis for axis in range(3) if axis != wall]
     jump, other = np.min([_nearest_to_break(lines[axis], part.drives[axis], places[axis]) for axis in along], axis=0)
     return float(min(jump**2 / (4 * CUT), max(other**2 / (4 * CUT), floor), least**2))
+
+
+def _shortest(lines: Sequence[Line]) -> float:
+    return min(line.extent for line in lines if not line.is_endless)
 
 
 def _film_at(line: Line, drive: Drive) -> float:

@@ -23,7 +23,13 @@ from service.core.lines.time_response import Places
 from service.core.maps import Rectangle
 from service.core.problem import AXES, Body, Face, Held, Inflow, Insulated, axes_along, axis_of, is_high
 from service.core.solvability import generation, map_integral
-from service.core.unbounded import NO_JUMP, UnboundedCause, cut_constant, unbounded_lines
+from service.core.unbounded import (
+    NO_JUMP,
+    UnboundedCause,
+    cut_constant,
+    unbounded_lines,
+    unbounded_plane_lines,
+)
 
 FloatArray = NDArray[np.float64]
 
@@ -91,20 +97,47 @@ def mean(setting: Setting, face: Face, rectangle: Rectangle | None, tolerance: f
     return Bounded(setting.reference + value / scale, bound / scale)
 
 
-def plane_total(setting: Setting, axis: int, position: float, rectangle: Rectangle | None, tolerance: float) -> Total:
-    """Flow in the direction of an axis through a plane square to it, strictly inside the body or on its faces."""
-    if not (0 <= position <= setting.body.size[axis] and math.isfinite(position)):
+def plane_total(
+    setting: Setting, axis: int, position: float, rectangle: Rectangle | None, gap: float | None, tolerance: float
+) -> Total:
+    """Flow in the direction of an axis through a plane square to it, inside the body or on its faces.
+
+    gap: as for a face; an inner plane is unbounded where it meets a held face on a line where its data jump.
+    """
+    body = setting.body
+    if not (0 <= position <= body.size[axis] and math.isfinite(position)):
         raise OutsideBody(
-            f"The plane {AXES[axis]} = {position:g} is outside the body, which reaches from 0 to "
-            f"{setting.body.size[axis]:g}.",
+            f"The plane {AXES[axis]} = {position:g} is outside the body, which reaches from 0 to {body.size[axis]:g}.",
             (AXES[axis],),
         )
-    for face in setting.body.present_faces:
-        if axis_of(face) == axis and _end(setting.body, face) == position:
-            total = face_total(setting, face, rectangle, None, tolerance)
+    for face in body.present_faces:
+        if axis_of(face) == axis and _end(body, face) == position:
+            total = face_total(setting, face, rectangle, gap, tolerance)
             return total if not is_high(face) else _negated(total)
-    rectangle = _inside(setting.body, axis, rectangle)
-    return _flow(setting, axis, position, rectangle, 1.0, tolerance)
+    rectangle = _inside(body, axis, rectangle)
+    finite = _flow(setting, axis, position, rectangle, 1.0, tolerance)
+    causes = unbounded_plane_lines(body, axis, position, rectangle)
+    net = [cause for cause, _ in causes if cause.coefficient != 0.0]
+    if not net:
+        return finite
+    with_gap = None
+    if gap is not None:
+        inner = _without_strips(rectangle, [border for _, border in causes], gap)
+        rest = _flow(setting, axis, position, inner, 1.0, tolerance)
+        if rest.value is not None and rest.error_bound is not None:
+            with_gap = Bounded(rest.value, rest.error_bound)
+    return Total(None, None, (*net, *finite.causes), with_gap)
+
+
+def _without_strips(rectangle: Rectangle, borders: Sequence[tuple[int, bool]], gap: float) -> Rectangle:
+    """The rectangle less a strip of the gap's width along some of its borders."""
+    ends = [rectangle.p_low, rectangle.p_high, rectangle.q_low, rectangle.q_high]
+    for index, high in borders:
+        ends[2 * index + high] += -gap if high else gap
+    inner = Rectangle(*ends)
+    if not (inner.p_low < inner.p_high and inner.q_low < inner.q_high):
+        raise NotPhysical(f"The edge gap {gap:g} leaves nothing of the face or plane.", ("edge_gap",))
+    return inner
 
 
 def face_total(setting: Setting, face: Face, rectangle: Rectangle | None, gap: float | None, tolerance: float) -> Total:
@@ -169,12 +202,7 @@ def _with_gap(
 ) -> Bounded | None:
     if gap is None:
         return None
-    borders = [rectangle.p_low, rectangle.p_high, rectangle.q_low, rectangle.q_high]
-    for _, (index, high) in causes:
-        borders[2 * index + high] += -gap if high else gap
-    inner = Rectangle(*borders)
-    if not (inner.p_low < inner.p_high and inner.q_low < inner.q_high):
-        raise NotPhysical(f"The edge gap {gap:g} leaves nothing of {face}.", ("edge_gap",))
+    inner = _without_strips(rectangle, [border for _, border in causes], gap)
     total = finite_part(setting, face, inner, tolerance)
     if total.value is None or total.error_bound is None:
         return None

@@ -28,6 +28,9 @@ FloatArray = NDArray[np.float64]
 # Where a jump, or the sum of jumps along a line, is below this part of the data's size it is zero: two maps that meet.
 NO_JUMP = 1e-12
 
+# How far inside a stretch its end is looked at, in parts of half its length.
+INSIDE = 1e-12
+
 
 @dataclass(frozen=True)
 class UnboundedCause:
@@ -83,14 +86,51 @@ def _border_cause(body: Body, face: Face, rectangle: Rectangle, index: int, high
     if at.size == 0:
         return None
     jump, size = _jump_along(body, face, own, neighbour, index, place, high, at)
-    net, largest = float(weights @ jump), float(np.abs(jump).max())
+    mean_conductivity = math.sqrt(body.conductivity[axis] * body.conductivity[across])
+    return _cause(kind, name, share * mean_conductivity, jump, weights, size)
+
+
+def _cause(
+    kind: str, name: str, factor: float, jump: FloatArray, weights: FloatArray, size: float
+) -> UnboundedCause | None:
+    """The cause that jumps along a line are; its coefficient is exactly 0 where they cancel, None without a jump."""
+    largest = float(np.abs(jump).max())
     if largest <= NO_JUMP * size:
         return None
-    mean_conductivity = math.sqrt(body.conductivity[axis] * body.conductivity[across])
-    coefficient = share / math.pi * mean_conductivity * net
-    if abs(net) <= NO_JUMP * float(weights @ np.abs(jump)):
-        coefficient = 0.0
-    return UnboundedCause(kind, name, coefficient, largest)
+    net, gross = float(weights @ jump), float(weights @ np.abs(jump))
+    return UnboundedCause(kind, name, factor / math.pi * net if abs(net) > NO_JUMP * gross else 0.0, largest)
+
+
+def unbounded_plane_lines(
+    body: Body, axis: int, position: float, rectangle: Rectangle
+) -> list[tuple[UnboundedCause, tuple[int, bool]]]:
+    """Borders of a rectangle of an inner plane that lie on a held face just where its data jump across the plane.
+
+    Each with which border it is, as for a face. The flux along the plane is k J / (pi r) there.
+    """
+    causes = []
+    for index in (0, 1):
+        across, along = axes_along(axis)[index], axes_along(axis)[1 - index]
+        for high in (False, True):
+            place, (low, top) = _border(rectangle, index, high)
+            if place not in (0.0, body.size[across]) or math.isinf(place):
+                continue
+            face: Face = f"{AXES[across]}_{'low' if place == 0.0 else 'high'}"  # type: ignore[assignment]
+            condition = body.faces[face]
+            if not isinstance(condition, Held):
+                continue
+            own, square = condition.value, axes_along(face).index(axis)
+            at, weights = _fine_rule(own.second_knots if axes_along(face)[1] == along else own.first_knots, low, top)
+            if at.size == 0:
+                continue
+            below, above = (_side_value(own, square, position, at, from_above=side) for side in (False, True))
+            size = float(max(np.abs(below).max(), np.abs(above).max()))
+            mean_conductivity = math.sqrt(body.conductivity[axis] * body.conductivity[across])
+            name = line_name(face, axis, position)
+            cause = _cause("jump_line", name, mean_conductivity, below - above, weights, size)
+            if cause is not None:
+                causes.append((cause, (index, high)))
+    return causes
 
 
 def _border(rectangle: Rectangle, index: int, high: bool) -> tuple[float, tuple[float, float]]:
@@ -101,12 +141,15 @@ def _border(rectangle: Rectangle, index: int, high: bool) -> tuple[float, tuple[
 
 
 def _fine_rule(knots: FloatArray, low: float, high: float) -> tuple[FloatArray, FloatArray]:
-    """Gauss points and weights on each stretch between knots, exact for the bilinear data of both faces."""
+    """Points and weights on each stretch between knots, exact for the bilinear data of both faces.
+
+    Lobatto's rule with three points, whose outer two show the largest jump; they are taken just inside the stretch.
+    """
     if math.isinf(high):
         finite = knots[np.isfinite(knots)]
         high = max(float(finite.max()), low) + 1.0
     cuts = np.unique(np.concatenate([[low, high], knots[(knots > low) & (knots < high)]]))
-    nodes, weights = np.polynomial.legendre.leggauss(4)
+    nodes, weights = np.array([-1.0 + INSIDE, 0.0, 1.0 - INSIDE]), np.array([1.0, 4.0, 1.0]) / 3.0
     half = 0.5 * np.diff(cuts)
     middle = 0.5 * (cuts[1:] + cuts[:-1])
     return (middle[:, None] + half[:, None] * nodes).ravel(), (half[:, None] * weights).ravel()

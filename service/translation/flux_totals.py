@@ -90,7 +90,7 @@ def answer_totals(
     planes = [
         _plane_described(plane)
         | shown(
-            solution.plane_total(plane.axis, plane.position, plane.where, tolerance=tolerance),
+            solution.plane_total(plane.axis, plane.position, plane.where, gap=gap, tolerance=tolerance),
             "flow",
             f"#/planes/{index}",
         )
@@ -141,12 +141,12 @@ def _total(units: UnitSystem, total: Total, word: str) -> dict[str, Any]:
 
 def _unbounded_warning(total: Total, where: str) -> answers.Warning_:
     lines = ", ".join(cause.line for cause in total.causes)
-    endless = any(cause.kind == "endless" for cause in total.causes)
-    advice = (
-        "It goes on without end; name a rectangle of it to get the flow through that."
-        if endless
-        else "Name an edge gap to get the flow through the rest."
-    )
+    if any(cause.kind == "endless" for cause in total.causes):
+        advice = "It goes on without end; name a rectangle of it to get the flow through that."
+    elif total.with_gap is not None:
+        advice = "The flow through the rest, without the edge gap, is given beside it."
+    else:
+        advice = "Name an edge gap to get the flow through the rest."
     return answers.warning("unbounded-total", f"The total has no finite value, because of: {lines}. {advice}", where)
 
 

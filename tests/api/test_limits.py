@@ -16,7 +16,7 @@ from service.core.errors import Interrupted
 from service.middleware import BodyLimit
 from service.settings import Settings
 from service.translation.solving import Solved, Solver
-from service.worker import KeepGoing
+from service.worker import KeepGoing, Worker
 from tests.api.client import check_problem_document, open_client, pointers
 from tests.api.halden_reach import Json, ask_points, sight_port_bar, slab
 
@@ -253,3 +253,22 @@ async def test_loop_answers_while_all_workers_compute(settings: Settings, monkey
                 assert (await client.get("/health/live")).status_code == 200
             go.set()
             await asyncio.gather(*tasks)
+
+
+async def test_work_given_up_while_it_waits_leaves_its_place_in_the_queue() -> None:
+    worker = Worker(threads=1, queue_length=2, time_limit_seconds=30)
+    go = threading.Event()
+    first = asyncio.ensure_future(worker.run(lambda _: go.wait(20)))
+    waiting = [asyncio.ensure_future(worker.run(lambda _: None)) for _ in range(2)]
+    await asyncio.sleep(0.05)
+    for task in waiting:
+        task.cancel()
+    go.set()
+    await first
+    while worker.report().running or worker.report().waiting:
+        await asyncio.sleep(0.01)
+    # Twice over: nothing of what was given up is still counted.
+    for _ in range(6):
+        await worker.run(lambda _: None)
+    assert worker.report().interrupted == 2
+    worker.close()

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import sqlite3
 import threading
 from pathlib import Path
 
 import pytest
 
-from service.refusals import StoreFull
+from service.refusals import StoreBusy, StoreFull
 from service.store import ProblemStore
 
 
@@ -51,3 +52,16 @@ def test_two_stores_on_one_file_and_many_threads_agree(tmp_path: Path) -> None:
     assert [store.report().problems for store in stores] == [50, 50]
     for store in stores:
         store.close()
+
+
+def test_store_held_by_another_process_is_busy_and_not_lost(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("service.store._BUSY_SECONDS", 0.05)
+    store = ProblemStore(tmp_path / "problems.sqlite3", 1_000)
+    other = sqlite3.connect(tmp_path / "problems.sqlite3", isolation_level=None)
+    other.execute("BEGIN EXCLUSIVE")
+    with pytest.raises(StoreBusy, match="try again later"):
+        store.put("a", b"content")
+    other.execute("ROLLBACK")
+    other.close()
+    assert store.put("a", b"content") is True
+    store.close()

@@ -7,8 +7,8 @@ import math
 import numpy as np
 import pytest
 
-from service.core import solve
-from tests.core.bodies import BODIES
+from service.core import Body, FaceMap, Held, Patch, Rectangle, solve
+from tests.core.bodies import BODIES, all_insulated, film
 
 BAR = BODIES["square bar, end held"]
 
@@ -73,3 +73,17 @@ def test_no_overshoot_where_the_data_do_not_jump() -> None:
     overshoots = {found.face: found.overshoot for found in solve(BODIES["closed body, balanced"]).overshoot(32)}
     assert overshoots["x_low"] == pytest.approx(0.0, abs=1e-12)
     assert overshoots["y_high"] > 0.08
+
+
+@pytest.mark.parametrize("ambient", [0.0, 20.0, -100.0])
+def test_overshoot_is_a_part_of_the_jump_whatever_the_level(ambient: float) -> None:
+    half = Held(FaceMap.patches((1.0, 1.0), 0.0, [Patch(Rectangle(0.0, 0.5, 0.0, 1.0), 1.0)]))
+    body = Body((1.0, 1.0, 1.0), (1.0, 1.0, 1.0), all_insulated(z_low=film(5.0, ambient), z_high=half))
+    overshoots = {found.face: found.overshoot for found in solve(body).overshoot(128)}
+    # (2 / pi) Si(pi) / 2 - 1 / 2 of the jump (Wilbraham, Gibbs)
+    assert overshoots["z_high"] == pytest.approx(0.0894898722, rel=2e-2)
+
+
+def test_tail_bound_near_the_driven_face_is_never_beyond_the_data() -> None:
+    (found,) = solve(BAR).convergence(np.array([[0.4, 0.3, 1e-3]]), tolerance=1e-9)
+    assert all(step.tail_bound is not None and step.tail_bound < 3.0 for step in found.series)

@@ -61,3 +61,9 @@ def test_plane_on_a_face_has_the_flow_of_the_face(face: str) -> None:
     along_axis = solution.plane_total("xyz".index(face[0]), position, tolerance=1e-10).value
     assert inflow is not None
     assert along_axis == pytest.approx(-inflow if face.endswith("high") else inflow, abs=1e-12)
+
+
+@pytest.mark.parametrize("distance", [1e-300, 1e-100, 1e-40, 1e-12])
+def test_place_no_distance_from_a_held_face_has_its_value(distance: float) -> None:
+    found = solve(CUBE).field_at(np.array([[0.5, 0.5, distance], [distance, 0.5, 0.5]]), tolerance=1e-10)
+    np.testing.assert_allclose(found.potential, [1.0, 0.0], rtol=0, atol=1e-9)

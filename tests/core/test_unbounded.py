@@ -6,7 +6,7 @@ import math
 
 import pytest
 
-from service.core import Body, FaceMap, Held, Rectangle, solve
+from service.core import Body, FaceMap, Held, Patch, Rectangle, solve
 from tests.core.bodies import BODIES, UNIT, all_held, all_insulated, held, pad
 
 BAR = BODIES["square bar, end held"]
@@ -105,3 +105,28 @@ def test_books_close(name: str) -> None:
         assert abs(balance.residual) <= balance.error_bound
         flows = [abs(total.value) for total in balance.inflow.values() if total.value is not None]
         assert balance.error_bound <= 1e-7 * max([*flows, abs(balance.generation), solution.span])
+
+
+def test_inner_plane_through_a_jump_of_a_held_face_has_no_total() -> None:
+    half = Held(FaceMap.patches((2.0, 1.0), 2.0, [Patch(Rectangle(0.0, 1.0, 0.0, 1.0), 6.0)]))
+    solution = solve(Body((2.0, 1.0, 1.0), (3.0, 1.0, 3.0), all_insulated(z_high=half)))
+    total = solution.plane_total(0, 1.0, gap=1e-4, tolerance=1e-9)
+    assert total.value is None
+    (cause,) = total.causes
+    # From 6 to 2 along x: k J / pi for each factor e (elementary local solution u = J theta / pi)
+    assert cause.coefficient == pytest.approx(3.0 * 4.0 / math.pi, rel=1e-12)
+    assert cause.largest_jump == pytest.approx(4.0, rel=1e-12)
+    narrower = solution.plane_total(0, 1.0, gap=1e-4 / math.e, tolerance=1e-9)
+    assert total.with_gap is not None
+    assert narrower.with_gap is not None
+    assert narrower.with_gap.value - total.with_gap.value == pytest.approx(cause.coefficient, rel=1e-6)
+    # A part of the plane that stops short of the face, and a plane beside the jump, have plain totals.
+    assert solution.plane_total(0, 1.0, Rectangle(0.0, 1.0, 0.0, 0.9), tolerance=1e-9).value is not None
+    assert solution.plane_total(0, 1.001, tolerance=1e-9).value is not None
+
+
+def test_largest_jump_is_the_one_at_the_end_of_an_edge() -> None:
+    rising = FaceMap.readings((2.0, 1.0), [0.0, 2.0], [0.0, 1.0], [[0.0, 0.0], [1.0, 1.0]])
+    body = Body((2.0, 2.0, 1.0), UNIT, all_insulated(x_low=Held(rising), z_high=held(0.0)))
+    causes = solve(body).face_total("x_low", tolerance=1e-9).causes
+    assert [cause.largest_jump for cause in causes] == [pytest.approx(1.0, rel=1e-9)]
