@@ -2,19 +2,22 @@
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 from numpy.typing import NDArray
 
 from service.core import field, time_error, time_form
 from service.core.lines.line import VALUE, Line
 from service.core.lines.time_response import Places
-from service.core.problem import Body, Film, Held, Inflow, map_of
+from service.core.maps import FaceMap
+from service.core.problem import Body, Face, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
 from service.core.split import SOURCES, Part
 
 FloatArray = NDArray[np.float64]
 
-# Places along an axis at which the rise is read.
-PLACES = 5
+# Places along an axis at which the rise is read, and strongest boxes and patches at which it is read as well.
+PLACES, HOT_PLACES = 5, 8
 
 
 def span_of(body: Body, lines: tuple[Line, Line, Line], parts: tuple[Part, ...]) -> float:
@@ -26,20 +29,66 @@ def span_of(body: Body, lines: tuple[Line, Line, Line], parts: tuple[Part, ...])
     maps = [map_of(condition) for condition in body.faces.values() if isinstance(condition, Held | Film)]
     levels = [level for face_map in maps if face_map is not None for level in (face_map.lowest, face_map.highest)]
     flows = [part for part in parts if part.cause == SOURCES or isinstance(body.faces[part.cause], Inflow)]  # type: ignore[index]
-    rises = _rises(lines, flows) if flows else np.zeros(1)
+    rises = _rises(body, lines, flows) if flows else np.zeros(1)
     return max(
         max(levels) - min(levels) if levels else 0.0,
         float(max(rises.max(), 0.0) - min(rises.min(), 0.0)),
     )
 
 
-def _rises(lines: tuple[Line, Line, Line], flows: list[Part]) -> FloatArray:
-    places = [Places(_coordinates(lines, flows, axis), VALUE) for axis in range(3)]
-    rows = field.kept_rows()
-    return sum(
-        (time_form.on_grid(time_form.integrate(lines, part, places, time_error.COARSEST_STEP, rows)) for part in flows),
+def _rises(body: Body, lines: tuple[Line, Line, Line], flows: list[Part]) -> FloatArray:
+    grid = [Places(_coordinates(lines, flows, axis), VALUE) for axis in range(3)]
+    hot = _strongest(body)
+    points = [Places(hot[:, axis], VALUE) for axis in range(3)]
+    rows, step = field.kept_rows(), time_error.COARSEST_STEP
+    on_grid = sum(
+        (time_form.on_grid(time_form.integrate(lines, part, grid, step, rows)) for part in flows), start=np.zeros(())
+    )
+    if not len(hot):
+        return on_grid
+    at_points = sum(
+        (time_form.at_points(time_form.integrate(lines, part, points, step, rows)) for part in flows),
         start=np.zeros(()),
     )
+    return np.concatenate([on_grid.ravel(), at_points])
+
+
+def _strongest(body: Body) -> FloatArray:
+    """The middles of the boxes, patches and readings that raise most where there are many, by their data and size.
+
+    A box raises the potential by about its density times the square of its least size, a patch by its inflow times it.
+    """
+    found = []
+    if len(body.sources) > 1:
+        for source in body.sources:
+            low, high = np.array(source.low), np.minimum(source.high, np.array(source.low) + max(body.size[:2]))
+            found.append((abs(source.density) * float((high - low).min()) ** 2, 0.5 * (low + high)))
+    for face, condition in body.faces.items():
+        if isinstance(condition, Inflow) and condition.inflow.table.size > 9:
+            found.extend(_strongest_cells(body, face, condition.inflow))
+    found.sort(key=lambda entry: -entry[0])
+    return np.array([place for _, place in found[:HOT_PLACES]]).reshape(-1, 3)
+
+
+def _strongest_cells(body: Body, face: Face, face_map: FaceMap) -> list[tuple[float, FloatArray]]:
+    first, second = axes_along(face)
+    at, sizes = [], []
+    for axis, knots in ((first, face_map.first_knots), (second, face_map.second_knots)):
+        ends = np.minimum(knots, body.size[axis] if math.isfinite(body.size[axis]) else knots[-2] + max(body.size[:2]))
+        widths = np.diff(ends)
+        at.append(ends if face_map.bilinear else 0.5 * (ends[1:] + ends[:-1]))
+        sizes.append(
+            np.minimum(np.append(widths, widths[-1]), np.append(widths[0], widths)) if face_map.bilinear else widths
+        )
+    strength = np.abs(face_map.table) * np.minimum(sizes[0][:, None], sizes[1])
+    cells = []
+    for index in np.argsort(-strength, axis=None, kind="stable")[:HOT_PLACES]:
+        i, j = np.unravel_index(int(index), strength.shape)
+        place = np.zeros(3)
+        place[first], place[second] = at[0][i], at[1][j]
+        place[axis_of(face)] = body.size[axis_of(face)] if is_high(face) else 0.0
+        cells.append((float(strength[i, j]), place))
+    return cells
 
 
 def _coordinates(lines: tuple[Line, Line, Line], flows: list[Part], axis: int) -> FloatArray:

@@ -161,6 +161,10 @@ def _carried_by_images(line: Line, profiles: Profiles, places: Places, times: Fl
 def _carried_by_modes(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
     modes = modes_of(line, MODE_COUNT)
     strengths = np.abs(eigen_integrals(line, drive, MODE_COUNT))
+    if isinstance(drive, Profiles):
+        # An eigen-integral that cancels keeps the rounding of what it is summed from.
+        widths = np.diff(np.minimum(drive.knots, line.length)) / line.length
+        strengths = np.maximum(strengths, 2 * widths @ np.maximum(np.abs(drive.left), np.abs(drive.right)))
     slowest = np.abs(places.mode_shapes(line)[:, 0]).max()
     factor = float(modes.wave_numbers[1]) if places.order == -1 else 1.0
     if places.high is not None:

@@ -124,7 +124,8 @@ def plane_total(
     if gap is not None:
         inner = _without_strips(rectangle, [border for _, border in causes], gap)
         rest = _flow(setting, axis, position, inner, 1.0, tolerance)
-        if rest.value is not None and rest.error_bound is not None:
+        ends_on_jump = any(cause.coefficient for cause, _ in unbounded_plane_lines(body, axis, position, inner))
+        if not ends_on_jump and rest.value is not None and rest.error_bound is not None:
             with_gap = Bounded(rest.value, rest.error_bound)
     return Total(None, None, (*net, *finite.causes), with_gap)
 
@@ -203,6 +204,9 @@ def _with_gap(
     if gap is None:
         return None
     inner = _without_strips(rectangle, [border for _, border in causes], gap)
+    if any(cause.coefficient != 0.0 for cause, _ in unbounded_lines(setting.body, face, inner)):
+        # The strip ends just on another jump.
+        return None
     total = finite_part(setting, face, inner, tolerance)
     if total.value is None or total.error_bound is None:
         return None

@@ -6,8 +6,8 @@ import math
 
 import pytest
 
-from service.core import Body, FaceMap, Held, Patch, Rectangle, solve
-from tests.core.bodies import BODIES, UNIT, all_held, all_insulated, held, pad
+from service.core import Body, FaceMap, Held, Inflow, Patch, Rectangle, solve
+from tests.core.bodies import BODIES, UNIT, all_held, all_insulated, film, held, pad
 
 BAR = BODIES["square bar, end held"]
 LINEAR = FaceMap.readings((1.0, 1.0), [0.0, 1.0], [0.0, 1.0], [[0.0, 0.0], [1.0, 1.0]])
@@ -130,3 +130,20 @@ def test_largest_jump_is_the_one_at_the_end_of_an_edge() -> None:
     body = Body((2.0, 2.0, 1.0), UNIT, all_insulated(x_low=Held(rising), z_high=held(0.0)))
     causes = solve(body).face_total("x_low", tolerance=1e-9).causes
     assert [cause.largest_jump for cause in causes] == [pytest.approx(1.0, rel=1e-9)]
+
+
+def test_gap_that_ends_just_on_another_jump_has_no_flow_either() -> None:
+    patch = FaceMap.patches((1.0, 1.0), 0.2, [Patch(Rectangle(0.3, 0.6, 0.2, 0.7), 1.0)])
+    solution = solve(Body(UNIT, UNIT, all_held(z_low=Held(patch), x_high=held(0.0))))
+    assert solution.face_total("z_low", gap=0.2, tolerance=1e-9).with_gap is None
+    assert solution.face_total("z_low", gap=0.21, tolerance=1e-9).with_gap is not None
+
+
+def test_bound_covers_the_rounding_of_inflows_that_cancel_behind_a_thin_film() -> None:
+    # The mean of the film face is its ambient exactly, since the inflows cancel; 1 / h magnifies their rounding.
+    opposed = FaceMap.patches(
+        (1.0, 1.0), 0.0, [Patch(Rectangle(0.1, 0.4, 0.2, 0.9), 1.0), Patch(Rectangle(0.55, 0.85, 0.1, 0.8), -1.0)]
+    )
+    solution = solve(Body(UNIT, UNIT, all_insulated(x_low=film(1e-9, 20.0), z_low=Inflow(opposed))))
+    mean = solution.mean("x_low", tolerance=1e-9)
+    assert abs(mean.value - 20.0) <= mean.error_bound
