@@ -25,8 +25,8 @@ FloatArray = NDArray[np.float64]
 # Places along an axis of the first grid through the body at the most, and starts that are followed from each grid.
 FIRST_PLACES, STARTS = 25, 8
 
-# Peaks that are followed for one extreme at the most.
-MOST_CLIMBS = 6
+# Peaks that are followed for one extreme at the most, and that are looked at more closely to choose those.
+MOST_CLIMBS, MOST_PEAKS = 6, 128
 
 # Places along an axis of a face's first grid; beyond it only its readings or the middles of its cells are looked at.
 MOST_FACE_PLACES = 100
@@ -160,7 +160,7 @@ def _by_search(search: _Search, sign: float, held: Place | None) -> Place:
     best, climbs = held, 0
     starts = _from_boxes(search.setting, sign)
     for axes, potential in search.grids:
-        starts += _from_grid(axes, sign * potential, 2 * search.accuracy)
+        starts += _from_grid(search, axes, sign * potential, sign)
     for start in sorted(starts, key=lambda start: -start.value):
         # A peak that does not come near the best so far is not followed.
         if best is not None and start.value + start.slack < sign * best.value:
@@ -200,17 +200,22 @@ def _data_places(setting: Setting, axis: int, knots: FloatArray, bilinear: bool)
     return knots if bilinear else 0.5 * (knots[1:] + knots[:-1])
 
 
-def _from_grid(axes: list[FloatArray], values: FloatArray, alike: float) -> list[_Start]:
+def _from_grid(search: _Search, axes: list[FloatArray], values: FloatArray, sign: float) -> list[_Start]:
+    """The highest peaks of a grid. Those that its accuracy cannot tell apart are told apart first."""
     limits = tuple((float(axis[0]), float(axis[-1])) for axis in axes)
+    peaks = _peaks(values, 2 * search.accuracy)
+    places = np.array([[axis[index] for axis, index in zip(axes, at, strict=True)] for at in peaks])
+    exact = sign * field.at_points(search.setting, places, tolerance=search.tolerance, with_flux=False).potential
     starts = []
-    for at in _peaks(values, alike):
-        place = [float(axis[index]) for axis, index in zip(axes, at, strict=True)]
+    for number in np.argsort(-exact, kind="stable")[:STARTS]:
+        at, place = peaks[number], places[number]
         x, y, z = (
             max(float(axis[min(index + 1, axis.size - 1)]) - here, here - float(axis[max(index - 1, 0)]))
             for axis, index, here in zip(axes, at, place, strict=True)
         )
         slack = 2 * _steps(values, at)
-        starts.append(_Start((place[0], place[1], place[2]), float(values[at]), slack, (x, y, z), limits))
+        start = (float(place[0]), float(place[1]), float(place[2]))
+        starts.append(_Start(start, float(exact[number]), slack, (x, y, z), limits))
     return starts
 
 
@@ -251,12 +256,11 @@ def _far_if_only_approached(setting: Setting, found: Place, tolerance: float, si
 
 
 def _peaks(values: FloatArray, alike: float) -> list[tuple[int, int, int]]:
-    """Places of the first grid that are not below any neighbour, the highest few."""
-    # Places that differ by less than this grid's accuracy are alike, and the first of them stands for a plateau.
-    values = np.round(values / alike) * alike if alike > 0 else values
-    peaks = np.argwhere(values >= maximum_filter(values, size=3, mode="nearest"))
-    order = np.argsort([-values[tuple(peak)] for peak in peaks], kind="stable")
-    return [(int(i), int(j), int(k)) for i, j, k in peaks[order[:STARTS]]]
+    """Places of a first grid that are not below any neighbour by what its accuracy can tell, the highest first."""
+    rounded = np.round(values / alike) * alike if alike > 0 else values
+    peaks = np.argwhere(rounded >= maximum_filter(rounded, size=3, mode="nearest"))
+    order = np.argsort([-rounded[tuple(peak)] for peak in peaks], kind="stable")
+    return [(int(i), int(j), int(k)) for i, j, k in peaks[order[:MOST_PEAKS]]]
 
 
 def _steps(values: FloatArray, at: tuple[int, int, int]) -> float:

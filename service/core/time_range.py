@@ -91,15 +91,14 @@ def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], ear
     slopes = any(asked.order == -1 for asked in places)
     film = max((film for line in lines for film in (line.film_low, line.film_high) if film < math.inf), default=0.0)
     least = _shortest(lines)
-    # A kink between narrow pieces is steep, and a film of a large Biot number acts early, against another such film
-    # with the square of it.
-    narrowest = min(
-        drive.narrowest * line.scale
-        for line, drive in zip(lines, part.drives, strict=True)
-        if isinstance(drive, Profiles)
-    )
-    scale = min(least, narrowest) / (1 + film * least)
-    floor = scale**2 * (EARLIEST_FOR_SLOPES if slopes else earliest)
+    # A film of a large Biot number acts early, against another such film with the square of it.
+    scale = least / (1 + film * least)
+    if slopes:
+        # The same for all parts of a body: what their totals have in common at short times cancels between them.
+        floor = EARLIEST_FOR_SLOPES * scale**2
+    else:
+        # A kink between narrow pieces is steep.
+        floor = earliest * (scale * min(1.0, _narrowest(lines, part) / least)) ** 2
     if wall is None and not slopes:
         return floor
     if wall is not None and _film_at(lines[wall], part.drives[wall]) > 0:
@@ -108,6 +107,15 @@ def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], ear
     along = [axis for axis in range(3) if axis != wall]
     jump, other = np.min([_nearest_to_break(lines[axis], part.drives[axis], places[axis]) for axis in along], axis=0)
     return float(min(jump**2 / (4 * CUT), max(other**2 / (4 * CUT), floor), least**2))
+
+
+def _narrowest(lines: Sequence[Line], part: Part) -> float:
+    """Scaled width of the narrowest piece of a part's profiles."""
+    return min(
+        drive.narrowest * line.scale
+        for line, drive in zip(lines, part.drives, strict=True)
+        if isinstance(drive, Profiles)
+    )
 
 
 def _shortest(lines: Sequence[Line]) -> float:

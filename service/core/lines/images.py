@@ -134,10 +134,10 @@ def with_its_image(order: int, distance: FloatArray, root_time: FloatArray, film
     """g_n + rho_n: a jump on the end itself together with its image; exactly 0 on an insulated end."""
     if film == 0.0:
         return np.zeros_like(distance)
-    if order == -1 and film < math.inf:
-        # 2 g_-1 - K_-1 = H K_0, which keeps its digits next to an end that is nearly insulated.
-        return film * film_part(0, distance, root_time, film)
-    return 2 * free(order, distance, root_time) - end_part(order, distance, root_time, film)
+    if film == math.inf:
+        return 2 * free(order, distance, root_time)
+    # 2 g_n - K_n = H K_(n+1), which keeps its digits next to an end that is nearly insulated.
+    return film * film_part(order + 1, distance, root_time, film)
 
 
 def departure(
