@@ -74,7 +74,13 @@ class Certificate(Model):
 class Remark(Model):
     """A warning."""
 
-    code: str = Field(description="A short word for programs.", examples=["unbounded-total"])
+    code: str = Field(
+        description=(
+            "A short word for programs: `unbounded-total`, `level-pinned`, `flux-without-finite-value`, "
+            "`readings-filled`, `accuracy-not-reached` or `overshoot-left-out`; more may be added."
+        ),
+        examples=["unbounded-total"],
+    )
     message: str = Field(
         description="What to be aware of.",
         examples=["The total has no finite value, because of: edge x_low/z_low."],

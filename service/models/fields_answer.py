@@ -83,7 +83,11 @@ class ExtremePlace(Model):
     )
     value: float = Field(description="The potential there; unit `potential`.", examples=[640.0])
     error_bound: float = Field(
-        description="The extreme is not further off; unit `potential_difference`.", examples=[0.0]
+        description=(
+            "The value, and the peak it belongs to, are not further off; unit `potential_difference`. Extremes that "
+            "the data do not give outright are searched for, from every patch, reading and box."
+        ),
+        examples=[0.0],
     )
     where: str = Field(description="On which face, or inside.", examples=["face z_low"])
 

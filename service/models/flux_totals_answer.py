@@ -37,11 +37,22 @@ class InflowWithGap(Model):
     error_bound: float = Field(description="It is not further off; unit `flow`.", examples=[1e-5])
 
 
+class FlowWithGap(Model):
+    """The flow through a plane without a strip of the gap's width along the lines that make it unbounded."""
+
+    flow: float = Field(description="The flow along the axis; unit `flow`.", examples=[812.4])
+    error_bound: float = Field(description="It is not further off; unit `flow`.", examples=[1e-5])
+
+
 class InflowTotal(Model):
     """Total inflow of a face or a part of it, positive into the body."""
 
     inflow: float | None = Field(
-        description="The inflow; unit `flow`. null where it has no finite value.", examples=[1234.5]
+        description=(
+            "The inflow; unit `flow`. null where it has no finite value. Across a jump that the face or part reaches "
+            "over to both sides, or along an edge where jumps of both signs cancel, it is the limit of equal gaps."
+        ),
+        examples=[1234.5],
     )
     error_bound: float | None = Field(description="It is not further off; unit `flow`.", examples=[1e-6])
     unbounded: list[UnboundedCause] | None = Field(None, description="Why the inflow has no finite value.")
@@ -65,6 +76,7 @@ class PlaneFlowTotal(Model):
     )
     error_bound: float | None = Field(description="It is not further off; unit `flow`.", examples=[1e-6])
     unbounded: list[UnboundedCause] | None = Field(None, description="Why the flow has no finite value.")
+    with_gap: FlowWithGap | None = Field(None, description="The flow with the gap, if `edge_gap` was named.")
 
 
 class FaceTotals(Model):

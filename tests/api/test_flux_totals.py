@@ -7,7 +7,7 @@ import pytest
 
 from service.models.flux_totals_answer import FluxTotalsAnswer
 from tests.api.client import check_problem_document
-from tests.api.halden_reach import changed, sight_port_bar, slab
+from tests.api.halden_reach import block, changed, sight_port_bar, slab
 
 pytestmark = pytest.mark.anyio
 
@@ -109,3 +109,26 @@ async def test_too_many_parts_are_refused(client: httpx.AsyncClient) -> None:
     question = {"problem": slab(), "evaluate": {"planes": [{"z": 10}] * 201}}
     document = check_problem_document(await client.post("/v1/flux-totals", json=question), 422)
     assert document["errors"][0]["detail"].startswith("There are 201 patches and planes; at most 200")
+
+
+async def test_plane_through_the_border_of_a_held_patch_is_null_and_has_a_flow_with_a_gap(
+    client: httpx.AsyncClient,
+) -> None:
+    half = {
+        "condition": "held",
+        "value": {"map": "patches", "background": 30, "patches": [{"x": [0, 20], "y": [0, 60], "value": 90}]},
+    }
+    insulated = {"condition": "insulated"}
+    problem = block(x_low=insulated, x_high=insulated, y_low=insulated, y_high=insulated, z_high=half)
+    question = {"problem": problem, "evaluate": {"planes": [{"x": 20}], "edge_gap": "10 um"}}
+    answer = (await client.post("/v1/flux-totals", json=question)).json()
+    FluxTotalsAnswer.model_validate(answer)
+    (plane,) = answer["planes"]
+    assert plane["flow"] is None
+    (cause,) = plane["unbounded"]
+    assert cause["kind"] == "jump_line"
+    # sqrt(95 * 130) W/(m K) * 60 K * 60 mm / pi, from the hot half to the cold one
+    assert cause["coefficient"] == pytest.approx(127.345, rel=1e-5)
+    assert plane["with_gap"]["flow"] > 0
+    (warning,) = [warning for warning in answer["warnings"] if warning["where"] == "#/planes/0"]
+    assert warning["message"].endswith("The flow through the rest, without the edge gap, is given beside it.")
