@@ -225,6 +225,8 @@ async def test_work_of_a_client_that_leaves_is_stopped(settings: Settings, monke
     }  # fmt: skip
 
     async def receive() -> dict[str, object]:
+        while len(messages) == 1 and not app.state.service.worker.report().running:
+            await asyncio.sleep(0.01)
         return messages.pop(0)
 
     async def send(_: object) -> None:
@@ -263,6 +265,7 @@ async def test_work_given_up_while_it_waits_leaves_its_place_in_the_queue() -> N
     await asyncio.sleep(0.05)
     for task in waiting:
         task.cancel()
+    await asyncio.gather(*waiting, return_exceptions=True)
     go.set()
     await first
     while worker.report().running or worker.report().waiting:
