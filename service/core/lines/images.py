@@ -46,9 +46,10 @@ MOST_PIECES = 12
 # A front has arrived within this many sqrt(t): beyond it exp(-w^2) is below 1e-19.
 ARRIVAL = 13.2
 
-# Below this H sqrt(t) the differences that define K_1 and K_2 cancel, and their power series is short.
-SMALL_FILM = 0.1
-SERIES_TERMS = 13
+# Below this H sqrt(t) the differences that define K_1 and K_2 cancel, by 1 / (2 eta) once and twice, and their power
+# series is short: so many terms, the next being below 1e-17.
+SMALL_FILM = {1: 0.02, 2: 0.1}
+SERIES_TERMS = {1: 9, 2: 13}
 
 # Beyond this argument 1 / sqrt(pi) - y erfcx(y) cancels, and its asymptotic series is at rounding with 13 terms.
 LARGE_ARGUMENT = 10.0
@@ -98,7 +99,7 @@ def film_part(order: int, distance: FloatArray, root_time: FloatArray, film: flo
         return w * np.exp(-w * w) / (SQRT_PI * root_time**2) - film * film_part(-1, distance, root_time, film)
     below = film_part(order - 1, distance, root_time, film)
     values = (2 * free(order - 1, distance, root_time) - below) / film
-    small = eta < SMALL_FILM
+    small = eta < SMALL_FILM[order]
     values[small] = _small_film(order, distance[small], root_time[small], film)
     return values
 
@@ -107,7 +108,7 @@ def _small_film(order: int, distance: FloatArray, root_time: FloatArray, film: f
     """K_n = 2 sum over k of (-H)^k g_(n+k), which follows from K_n = 2 g_n - H K_(n+1)."""
     before, this = free(order - 1, distance, root_time), free(order, distance, root_time)
     total, factor = 2 * this, 2.0
-    for k in range(1, SERIES_TERMS):
+    for k in range(1, SERIES_TERMS[order]):
         n = order + k
         # n g_n = 2 t g_(n-2) - d g_(n-1)
         before, this = this, (2 * root_time**2 * before - distance * this) / n
