@@ -11,7 +11,8 @@ export function extremesView(answer, words) {
   const difference = pretty(units.potential_difference);
   const one = (which, sign) => {
     const { at, value, error_bound: bound, where } = extremes[which];
-    const place = at.map((length, index) => `${AXES[index]} = ${length === null ? "far away" : brief(length)}`);
+    // An end infinitely far is null; `where` says so in words.
+    const place = at.flatMap((length, index) => (length === null ? [] : [`${AXES[index]} = ${brief(length)}`]));
     return make(
       "div", { class: "extreme" },
       make("dt", {}, make("span", { "aria-hidden": "true" }, `${sign} `), `${words[which]} of the body`),

@@ -74,7 +74,7 @@ function rowOf({ name, place, known, value, total, kind }, hasGap) {
     "tr", { class: kind },
     make("th", { scope: "row" }, name, make("span", { class: "face-place" }, ` ${place}`), make("span", { class: "known" }, known)),
     value === null ? make("td", { class: "no-value" }, "no finite value") : numberCell(value, total.error_bound),
-    hasGap ? (gap ? numberCell(gap.inflow, gap.error_bound) : make("td", {}, "\u2013")) : null,
+    hasGap ? (gap ? numberCell(gap.inflow ?? gap.flow, gap.error_bound) : make("td", {}, "\u2013")) : null,
   );
 }
 
