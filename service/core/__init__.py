@@ -26,6 +26,7 @@ from service.core.problem import (
     Held,
     Inflow,
     Insulated,
+    Layer,
 )
 from service.core.solution import Solution, solve
 from service.core.totals import Balance, Bounded, Total
@@ -55,6 +56,7 @@ __all__ = [
     "Inflow",
     "Insulated",
     "Interrupted",
+    "Layer",
     "NoSteadyState",
     "NodeStep",
     "NotPhysical",

@@ -12,7 +12,7 @@ Signs: an inflow is positive into the body; a flux component is positive along i
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Literal
 
@@ -22,6 +22,9 @@ from service.core.maps import FaceMap
 Face = Literal["x_low", "x_high", "y_low", "y_high", "z_low", "z_high"]
 FACES: tuple[Face, ...] = ("x_low", "x_high", "y_low", "y_high", "z_low", "z_high")
 AXES = ("x", "y", "z")
+
+# Ratios of conductivities given in decimal are the same if they differ by less than this.
+SAME_RATIO = 1e-9
 
 
 def axis_of(face: Face) -> int:
@@ -84,13 +87,31 @@ class BoxSource:
 
 
 @dataclass(frozen=True)
+class Layer:
+    """A layer of a stack, which fills its whole section.
+
+    thickness: > 0 and finite. conductivity: (kx, ky, kz), each > 0; ky / kx is the same in all layers of a stack.
+    contact_below: contact conductance per area between this layer and the one below it, > 0; infinite where they
+    are bonded perfectly. generation: per volume, uniform in the layer. name: what to call it, or None.
+    """
+
+    thickness: float
+    conductivity: tuple[float, float, float]
+    contact_below: float = math.inf
+    generation: float = 0.0
+    name: str | None = None
+
+
+@dataclass(frozen=True)
 class Body:
-    """A homogeneous rectangular body with its faces and sources.
+    """A rectangular body with its faces and sources: of one material, or a stack of layers along z.
 
     size: (a, b, c), each > 0; c may be math.inf: a bar that begins at z = 0 and has no far end.
-    conductivity: (kx, ky, kz), each > 0 and finite.
-    faces: one condition for every face; `z_high` is absent when c is infinite.
+    conductivity: (kx, ky, kz), each > 0 and finite; that of the first layer in a stack.
+    faces: one condition for every face; `z_high` is absent when c is infinite. The coefficient of a film on the side
+    of a stack is that beside its first layer; beside the others it is in proportion to their kx.
     sources: boxes of uniform generation, which may overlap and then add up.
+    layers: from z_low to z_high, empty for a body of one material. See `stack`.
     Raises NotPhysical where one of these does not hold, or a map or box does not fit the body.
     """
 
@@ -98,9 +119,31 @@ class Body:
     conductivity: tuple[float, float, float]
     faces: Mapping[Face, Condition]
     sources: tuple[BoxSource, ...] = field(default=())
+    layers: tuple[Layer, ...] = field(default=())
+
+    @classmethod
+    def stack(
+        cls,
+        section: tuple[float, float],
+        layers: Sequence[Layer],
+        faces: Mapping[Face, Condition],
+        sources: tuple[BoxSource, ...] = (),
+    ) -> Body:
+        """A stack of layers along z, from z_low up, of a section (a, b)."""
+        if not layers:
+            raise NotPhysical("A stack needs at least one layer.", ("layers",))
+        height = math.fsum(layer.thickness for layer in layers)
+        return cls((*section, height), layers[0].conductivity, faces, sources, tuple(layers))
+
+    @property
+    def interfaces(self) -> tuple[float, ...]:
+        """Heights z of the interfaces between layers, from below, without the two faces."""
+        heights = [math.fsum(layer.thickness for layer in self.layers[:n]) for n in range(1, len(self.layers))]
+        return tuple(heights)
 
     def __post_init__(self) -> None:
         self._check_size_and_conductivity()
+        self._check_layers()
         self._check_faces()
         for index, source in enumerate(self.sources):
             self._check_source(index, source)
@@ -124,6 +167,42 @@ class Body:
                     f"The conductivity along {AXES[axis]} is {conductivity:g}; it has to be greater than zero.",
                     ("conductivity", AXES[axis]),
                 )
+
+    def _check_layers(self) -> None:
+        for index, layer in enumerate(self.layers):
+            where: tuple[str | int, ...] = ("layers", index)
+            if not (layer.thickness > 0 and math.isfinite(layer.thickness)):
+                raise NotPhysical(
+                    f"The thickness of layer {index} is {layer.thickness:g}; it has to be greater than zero and finite.",
+                    (*where, "thickness"),
+                )
+            for axis, conductivity in enumerate(layer.conductivity):
+                if not (conductivity > 0 and math.isfinite(conductivity)):
+                    raise NotPhysical(
+                        f"The conductivity of layer {index} along {AXES[axis]} is {conductivity:g}; it has to be greater "
+                        "than zero.",
+                        (*where, "conductivity", AXES[axis]),
+                    )
+            if not layer.contact_below > 0:
+                raise NotPhysical(
+                    f"The contact conductance below layer {index} is {layer.contact_below:g}; it has to be greater than "
+                    "zero.",
+                    (*where, "contact_below"),
+                )
+            if not math.isfinite(layer.generation):
+                raise NotPhysical(f"The generation in layer {index} is not a finite number.", (*where, "generation"))
+            (x, y, _), (first_x, first_y, _) = layer.conductivity, self.layers[0].conductivity
+            if abs(y * first_x - x * first_y) > SAME_RATIO * x * first_y:
+                raise NotPhysical(
+                    f"Layer {index} conducts along y {y / x:g} times as well as along x, the first layer "
+                    f"{first_y / first_x:g} times; that ratio has to be the same in all layers.",
+                    (*where, "conductivity"),
+                )
+        if self.layers and self.layers[0].contact_below != math.inf:
+            raise NotPhysical(
+                "The first layer has nothing below it; describe what the stack stands on as a film on z_low.",
+                ("layers", 0, "contact_below"),
+            )
 
     def _check_faces(self) -> None:
         for face in self.present_faces:
