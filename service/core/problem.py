@@ -173,20 +173,21 @@ class Body:
             where: tuple[str | int, ...] = ("layers", index)
             if not (layer.thickness > 0 and math.isfinite(layer.thickness)):
                 raise NotPhysical(
-                    f"The thickness of layer {index} is {layer.thickness:g}; it has to be greater than zero and finite.",
+                    f"The thickness of layer {index} is {layer.thickness:g}; it has to be greater than zero and "
+                    "finite.",
                     (*where, "thickness"),
                 )
             for axis, conductivity in enumerate(layer.conductivity):
                 if not (conductivity > 0 and math.isfinite(conductivity)):
                     raise NotPhysical(
-                        f"The conductivity of layer {index} along {AXES[axis]} is {conductivity:g}; it has to be greater "
-                        "than zero.",
+                        f"The conductivity of layer {index} along {AXES[axis]} is {conductivity:g}; it has to be "
+                        "greater than zero.",
                         (*where, "conductivity", AXES[axis]),
                     )
             if not layer.contact_below > 0:
                 raise NotPhysical(
-                    f"The contact conductance below layer {index} is {layer.contact_below:g}; it has to be greater than "
-                    "zero.",
+                    f"The contact conductance below layer {index} is {layer.contact_below:g}; it has to be greater "
+                    "than zero.",
                     (*where, "contact_below"),
                 )
             if not math.isfinite(layer.generation):
