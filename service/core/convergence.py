@@ -14,7 +14,7 @@ from service.core.certificate import by_series
 from service.core.field import Setting
 from service.core.lines.line import VALUE, Line
 from service.core.lines.modes import eigen_integrals, modes_of
-from service.core.lines.time_response import Places
+from service.core.lines.places import Places
 from service.core.maps import FaceMap, Profiles
 from service.core.problem import FACES, Face
 from service.core.split import SOURCES, Part

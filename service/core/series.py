@@ -23,7 +23,7 @@ from numpy.typing import NDArray
 from service.core.lines import laplace
 from service.core.lines.line import VALUE, Drive, Line, WallDrive, active_breaks, wall_distance
 from service.core.lines.modes import eigen_integrals, modes_of
-from service.core.lines.time_response import Places
+from service.core.lines.places import Places
 from service.core.split import Part
 
 FloatArray = NDArray[np.float64]

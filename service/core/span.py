@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from service.core import field, time_error, time_form
 from service.core.lines.line import VALUE, Line
-from service.core.lines.time_response import Places
+from service.core.lines.places import Places
 from service.core.maps import FaceMap
 from service.core.problem import Body, Face, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
 from service.core.split import SOURCES, Part

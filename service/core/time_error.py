@@ -15,8 +15,8 @@ from numpy.typing import NDArray
 
 from service.core.lines.images import LATEST, NARROW, narrow_from
 from service.core.lines.line import Drive, Line, WallDrive, breaks_of
-from service.core.lines.modes import eigen_integrals, modes_of
-from service.core.lines.time_response import MODE_COUNT, Places
+from service.core.lines.modes import MODE_COUNT, eigen_integrals, modes_of
+from service.core.lines.places import Places
 from service.core.maps import Profiles
 from service.core.time_integral import Factors, Integral, Product
 

@@ -21,7 +21,8 @@ from numpy.typing import NDArray
 
 from service.core.lines import laplace
 from service.core.lines.line import Drive, Line, WallDrive
-from service.core.lines.time_response import Places, TimeResponse, respond
+from service.core.lines.places import Places, TimeResponse
+from service.core.lines.time_response import respond
 from service.core.split import Part
 from service.core.time_error import step_error
 from service.core.time_integral import Integral, Product

@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core.lines.line import Line
-from service.core.lines.time_response import Places
+from service.core.lines.places import Places
 from service.core.split import Part
 
 FloatArray = NDArray[np.float64]

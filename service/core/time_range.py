@@ -9,8 +9,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core.lines.line import Drive, Line, WallDrive, active_breaks, wall_distance
-from service.core.lines.modes import modes_of
-from service.core.lines.time_response import MODE_COUNT, Places
+from service.core.lines.modes import MODE_COUNT, modes_of
+from service.core.lines.places import Places
 from service.core.maps import Profiles
 from service.core.split import Part
 

@@ -19,7 +19,7 @@ from service.core import time_error, time_form
 from service.core.errors import NotPhysical, OutsideBody
 from service.core.field import Setting, far_along, kept_rows, step_for
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE
-from service.core.lines.time_response import Places
+from service.core.lines.places import Places
 from service.core.maps import Rectangle
 from service.core.problem import AXES, Body, Face, Held, Inflow, Insulated, axes_along, axis_of, is_high
 from service.core.solvability import generation, map_integral

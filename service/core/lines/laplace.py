@@ -15,8 +15,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Drive, Line, Order, WallDrive, breaks_of, wall_distance
+from service.core.lines.places import Places
 from service.core.lines.steady import closed_line_wall, half_line_profile, half_line_wall
-from service.core.lines.time_response import Places
 from service.core.maps import Profiles
 
 FloatArray = NDArray[np.float64]

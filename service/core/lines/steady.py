@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core.lines.line import PRIMITIVE, Line, Order, WallDrive, wall_distance
-from service.core.lines.time_response import Places
+from service.core.lines.places import Places
 from service.core.maps import Profiles
 
 FloatArray = NDArray[np.float64]

@@ -9,7 +9,8 @@ import pytest
 
 from service.core.lines import laplace
 from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order, WallDrive
-from service.core.lines.time_response import Places, respond
+from service.core.lines.places import Places
+from service.core.lines.time_response import respond
 from service.core.maps import Profiles
 
 FAR = 2.0

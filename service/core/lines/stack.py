@@ -1,0 +1,423 @@
+"""The z line of a stack: layers with a contact conductance between them.
+
+The stack separates like a body of one material if the conductivity along x takes the place of the heat capacity,
+
+    c Z_t = (k Z')',   c = kx / kx of the first layer,   k = kz,
+
+since ky / kx is the same in all layers. In the Laplace domain a layer is a piece of a transmission line with the
+admittance Y = sqrt(k c s) and the propagation q = sqrt(c s / k) (Carslaw and Jaeger 1959, sections 3.7 and 15.9): what
+an end or a source sends is passed on from layer to layer by factors that are all sums of numbers in one half-plane, so
+that nothing cancels however thin a layer is. Only decaying exponentials are formed.
+
+A load is what a layer meets at its end, written as a pair (p, m): the field there is p cosh + m sinh of the distance
+from that end. p = 1, m = Y_load / Y, but p = 0, m = 1 at a held end.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from functools import cached_property
+from itertools import pairwise
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core.lines.line import SLOPE, VALUE, Drive, Order, WallDrive
+from service.core.lines.places import Places
+from service.core.maps import Profiles
+
+FloatArray = NDArray[np.float64]
+# Real or complex: the same formulas serve the series and the inversion.
+Array = NDArray[np.inexact]
+
+# In place of s = 0: so small, in terms of the slowest rate, that the answer is the steady one to rounding.
+AT_REST = 1e-24
+
+
+@dataclass(frozen=True)
+class StackLine:
+    """Layers from 0 up.
+
+    thickness: of each layer, in the caller's unit; the heights of borders would not keep the digits of a thin one.
+    conductivity, capacity: k and c of each layer. contacts: conductance at each inner border, infinite if bonded.
+    film_low, film_high: coefficients at the ends; 0 insulated, infinite held.
+    Slopes are k Z', the flow per area towards the low end, which is continuous; an inflow drives with its own amount.
+    """
+
+    thickness: tuple[float, ...]
+    conductivity: tuple[float, ...]
+    capacity: tuple[float, ...]
+    contacts: tuple[float, ...]
+    film_low: float
+    film_high: float
+
+    # Its flows and films are in the caller's units; only times of travel are scaled.
+    scale = 1.0
+    is_endless = False
+
+    @cached_property
+    def heights(self) -> FloatArray:
+        """Heights of the borders, from 0 to the top, shape (n_layers + 1,)."""
+        return np.array([math.fsum(self.thickness[:count]) for count in range(len(self.thickness) + 1)])
+
+    @cached_property
+    def length(self) -> float:
+        """Height of the stack."""
+        return math.fsum(self.thickness)
+
+    @cached_property
+    def travel(self) -> FloatArray:
+        """Scaled distance of each border from the low end: the sum of thickness * sqrt(c / k)."""
+        slowness = np.sqrt(np.array(self.capacity) / np.array(self.conductivity))
+        return np.concatenate([[0.0], np.cumsum(np.array(self.thickness) * slowness)])
+
+    @cached_property
+    def extent(self) -> float:
+        """Scaled length."""
+        return float(self.travel[-1])
+
+    @property
+    def keeps_its_mean(self) -> bool:
+        """Whether nothing leaves the line at either end."""
+        return self.film_low == 0.0 and self.film_high == 0.0
+
+    @cached_property
+    def films_per_extent(self) -> tuple[float, ...]:
+        """Films and contacts per scaled length, as a line of one material has them."""
+        k, c = np.array(self.conductivity), np.array(self.capacity)
+        effusivity = np.sqrt(k * c)
+        contacts = [
+            contact / float(min(pair)) for contact, pair in zip(self.contacts, pairwise(effusivity), strict=True)
+        ]
+        return (self.film_low / float(effusivity[0]), self.film_high / float(effusivity[-1]), *contacts)
+
+    @cached_property
+    def whole_capacity(self) -> float:
+        """Integral of c over the height."""
+        return float(np.array(self.thickness) @ np.array(self.capacity))
+
+    @cached_property
+    def slow_rates(self) -> tuple[float, float]:
+        """Lower bounds on the decay rates of the first two modes; the first is 0 where nothing leaves the line.
+
+        The sum of 1 / rate over all modes is the integral of c G(z, z) with Green's function G of the line at rest, a
+        product of resistances (Mercer's theorem); no single 1 / rate exceeds it.
+        """
+        if self.keeps_its_mean:
+            return 0.0, 1.0 / self._trace_about_the_mean()
+        rate = 1.0 / self._trace()
+        return rate, rate
+
+    def _resistances(self) -> tuple[FloatArray, FloatArray]:
+        """Resistance per area of each layer, and of the contact below it (0 below the first)."""
+        contacts = np.concatenate([[0.0], 1 / np.array(self.contacts)]) if self.contacts else np.zeros(1)
+        return np.array(self.thickness) / np.array(self.conductivity), contacts
+
+    def _trace(self) -> float:
+        layers, contacts = self._resistances()
+        whole = float(layers.sum() + contacts.sum())
+        nodes, weights = np.polynomial.legendre.leggauss(3)
+        below = np.cumsum(layers + contacts) - layers
+        at = below[:, None] + layers[:, None] * 0.5 * (1 + nodes)
+        low = at + (1 / self.film_low if self.film_low > 0 else math.inf)
+        high = whole - at + (1 / self.film_high if self.film_high > 0 else math.inf)
+        green = 1 / (1 / low + 1 / high)
+        content = np.array(self.thickness) * np.array(self.capacity)
+        return float(content @ (green @ (0.5 * weights)))
+
+    def _trace_about_the_mean(self) -> float:
+        layers, contacts = self._resistances()
+        content = np.array(self.thickness) * np.array(self.capacity)
+        borders = np.concatenate([[0.0], np.cumsum(content)])
+        nodes, weights = np.polynomial.legendre.leggauss(3)
+        inside = borders[:-1, None] + content[:, None] * 0.5 * (1 + nodes)
+        whole = borders[-1]
+        total = float(layers @ ((inside * (whole - inside)) @ (0.5 * weights)))
+        total += float(contacts @ (borders[:-1] * (whole - borders[:-1])))
+        return total / float(whole)
+
+    def travelled(self, coordinates: FloatArray) -> FloatArray:
+        """Scaled distance from the low end."""
+        return np.interp(coordinates, self.heights, self.travel)
+
+    def travelled_from_high(self, coordinates: FloatArray) -> FloatArray:
+        """Scaled distance from the high end, with digits of its own there."""
+        depths = self.length - np.array(self.heights[::-1])
+        return np.interp(self.length - coordinates, depths, self.extent - self.travel[::-1])
+
+    def mirrored(self) -> StackLine:
+        """The same line upside down."""
+        return StackLine(
+            self.thickness[::-1],
+            self.conductivity[::-1],
+            self.capacity[::-1],
+            self.contacts[::-1],
+            self.film_high,
+            self.film_low,
+        )
+
+    def divided(self, knots: FloatArray) -> StackLine:
+        """The same line with bonded borders at further heights."""
+        inner = knots[(knots > 0) & (knots < self.length)]
+        if not np.setdiff1d(inner, self.heights).size:
+            return self
+        thickness: list[float] = []
+        layers: list[int] = []
+        contacts: list[float] = []
+        for layer, whole in enumerate(self.thickness):
+            bottom, top = self.heights[layer : layer + 2]
+            cuts = np.unique(inner[(inner > bottom) & (inner < top)])
+            parts = np.diff(np.concatenate([[bottom], cuts, [top]])) if cuts.size else np.array([whole])
+            thickness += [float(part) for part in parts]
+            layers += [layer] * parts.size
+            contacts += [math.inf] * (parts.size - 1) + list(self.contacts[layer : layer + 1])
+        return StackLine(
+            tuple(thickness),
+            tuple(self.conductivity[layer] for layer in layers),
+            tuple(self.capacity[layer] for layer in layers),
+            tuple(contacts),
+            self.film_low,
+            self.film_high,
+        )
+
+    def layer_of(self, coordinates: FloatArray) -> NDArray[np.intp]:
+        """Which layer each place is in; a border belongs to the layer below it."""
+        return np.clip(np.searchsorted(self.heights, coordinates, side="left") - 1, 0, len(self.capacity) - 1)
+
+
+@dataclass(frozen=True, eq=False)
+class _Pieces:
+    """Places cut at the borders. Piece `index` of the answer begins `below` over the bottom of layer `layer`.
+
+    above: from its upper end to the top of the layer. width: of an interval, 0 for a place.
+    """
+
+    index: NDArray[np.intp]
+    layer: NDArray[np.intp]
+    below: FloatArray
+    above: FloatArray
+    width: FloatArray
+    order: Order
+
+    def upside_down(self, n_layers: int) -> _Pieces:
+        """The same pieces as the mirrored line has them."""
+        return _Pieces(self.index, n_layers - 1 - self.layer, self.above, self.below, self.width, self.order)
+
+    def within(self, layer: int) -> NDArray[np.intp]:
+        """Numbers of the pieces in a layer."""
+        return np.flatnonzero(self.layer == layer)
+
+
+def _pieces(line: StackLine, places: Places) -> _Pieces:
+    heights, thickness = line.heights, np.array(line.thickness)
+    if places.high is None:
+        layer = line.layer_of(places.low)
+        below, above = places.low - heights[layer], heights[layer + 1] - places.low
+        # The digits of a thin layer high up are those of its thickness.
+        below = np.where(above == 0, thickness[layer], below)
+        above = np.where(below == 0, thickness[layer], above)
+        return _Pieces(np.arange(layer.size), layer, below, above, np.zeros(layer.size), places.order)
+    start = np.maximum(places.low[:, None], heights[:-1])
+    stop = np.minimum(places.high[:, None], heights[1:])
+    index, layer = np.nonzero(stop > start)
+    start, stop = start[index, layer], stop[index, layer]
+    below, above = start - heights[layer], heights[layer + 1] - stop
+    width = np.where((below == 0) & (above == 0), thickness[layer], stop - start)
+    return _Pieces(index, layer, below, above, width, places.order)
+
+
+@dataclass(frozen=True)
+class _Load:
+    """What a layer meets at its end: the field there is p cosh + m sinh of the distance from that end."""
+
+    p: Array | float
+    m: Array | float
+
+    def value(self, plus: Array, minus: Array) -> Array:
+        """2 exp(-y) (p cosh y + m sinh y), from 1 + exp(-2y) and 1 - exp(-2y)."""
+        return self.p * plus + self.m * minus
+
+    def slope(self, plus: Array, minus: Array) -> Array:
+        """2 exp(-y) (p sinh y + m cosh y)."""
+        return self.p * minus + self.m * plus
+
+    def run(self, y: Array) -> Array:
+        """2 exp(-y) times the integral of the field up to y: p sinh y + m (cosh y - 1)."""
+        return self.p * -np.expm1(-2 * y) + self.m * np.expm1(-y) ** 2
+
+
+def _plus_minus(y: Array) -> tuple[Array, Array]:
+    """1 + exp(-2 y) and 1 - exp(-2 y)."""
+    minus = -np.expm1(-2 * y)
+    return 2 - minus, minus
+
+
+class _Upward:
+    """What goes up through a stack, for many s at once."""
+
+    def __init__(self, line: StackLine, s: Array) -> None:
+        k, c = np.array(line.conductivity)[:, None], np.array(line.capacity)[:, None]
+        root, n = np.sqrt(s), len(line.thickness)
+        self.s, self.capacity, self.thickness = s, line.capacity, line.thickness
+        self.q, self.admittance = np.sqrt(c / k) * root, np.sqrt(k * c) * root
+        self.loads: list[_Load] = [_Load(0.0, 1.0)] * n
+        # seen: the admittance into a layer from its bottom. passed: the field on its top for 1 at its bottom. beyond:
+        # the field just above the contact on its top for 1 just below it.
+        self.seen: list[Array] = [root] * n
+        self.passed: list[Array] = [root] * n
+        self.beyond: list[Array | float] = [1.0] * n
+        for j in reversed(range(n)):
+            if j < n - 1:
+                contact, met = line.contacts[j], self.seen[j + 1]
+                if contact < math.inf:
+                    met = 1 / (1 / self.seen[j + 1] + 1 / contact)
+                    self.beyond[j] = met / self.seen[j + 1]
+                self.loads[j] = _Load(1.0, met / self.admittance[j])
+            elif line.film_high < math.inf:
+                self.loads[j] = _Load(1.0, line.film_high / self.admittance[j])
+            y = self.q[j] * line.thickness[j]
+            plus, minus = _plus_minus(y)
+            value = self.loads[j].value(plus, minus)
+            self.seen[j] = self.admittance[j] * self.loads[j].slope(plus, minus) / value
+            self.passed[j] = 2 * self.loads[j].p * np.exp(-y) / value
+
+    def inside(self, j: int, below: float, above: float, width: float, order: Order) -> Array:
+        """The field in layer j (its flow k Z', its integral) for 1 at the bottom of the layer."""
+        q, load = self.q[j], self.loads[j]
+        come = np.exp(-q * below) / load.value(*_plus_minus(q * self.thickness[j]))
+        value, slope = load.value(*_plus_minus(q * above)), load.slope(*_plus_minus(q * above))
+        if order == VALUE:
+            return come * value
+        if order == SLOPE:
+            return -self.admittance[j] * come * slope
+        y = q * width
+        return come * (value * -np.expm1(-2 * y) + slope * np.expm1(-y) ** 2) / (2 * q)
+
+    def generated(self, j: int, down: _Load, below: float, above: float, width: float, order: Order) -> Array:
+        """The field in layer j that holds a unit profile, with the load that it meets at its bottom.
+
+        Green's function integrated over the layer, C_b [sinh + a (cosh - 1)] + C_a [sinh + b (cosh - 1)] over the
+        Wronskian: every term is positive for positive s.
+        """
+        q, up = self.q[j], self.loads[j]
+        plus, minus = _plus_minus(q * self.thickness[j])
+        whole = 2 * self.s * ((down.m * up.p + down.p * up.m) * plus + (down.p * up.p + down.m * up.m) * minus)
+
+        def value(y: float, z: float) -> Array:
+            from_above = down.value(*_plus_minus(q * y)) * up.run(q * z)
+            return (up.value(*_plus_minus(q * z)) * down.run(q * y) + from_above) / whole
+
+        def flow(y: float, z: float) -> Array:
+            from_above = down.slope(*_plus_minus(q * y)) * up.run(q * z)
+            return self.admittance[j] * (from_above - up.slope(*_plus_minus(q * z)) * down.run(q * y)) / whole
+
+        if order == VALUE:
+            return value(below, above)
+        if order == SLOPE:
+            return flow(below, above)
+        # Where a wave fades within the interval from its balance, k Z'' - c s Z + c = 0; the field is smooth elsewhere.
+        gain = flow(below + width, above) - flow(below, above + width)
+        nodes, weights = np.polynomial.legendre.leggauss(12)
+        shares = 0.5 * (1 + nodes) * width
+        smooth = sum(
+            (0.5 * width * weight * value(below + share, above + width - share))
+            for weight, share in zip(weights, shares, strict=True)
+        )
+        fades = np.abs(q) * width > 3.0
+        return np.where(fades, (width + gain / self.capacity[j]) / self.s, smooth)
+
+
+def transform(line: StackLine, drive: Drive, places: Places, s: Array) -> Array:
+    """The answer in the Laplace domain, shape (n, n_s, n_columns). s: real and >= 0, or complex off the negative axis.
+
+    Profiles have to be constant between their knots.
+    """
+    s = np.where(s == 0, AT_REST * line.slow_rates[1], s)
+    if isinstance(drive, WallDrive):
+        return _of_end(line, drive, _pieces(line, places), places.low.size, s)[:, :, None]
+    line = line.divided(drive.knots)
+    values, pieces, n = _of_layers(line, drive), _pieces(line, places), len(line.thickness)
+    up, down = _Upward(line, s), _Upward(line.mirrored(), s)
+    fields = _Fields(up, down, pieces, places.low.size, drive.n_profiles)
+    for j in np.flatnonzero(values.any(axis=1)):
+        below, thickness = down.loads[n - 1 - j], line.thickness[j]
+        for number in pieces.within(j):
+            place = pieces.below[number], pieces.above[number], pieces.width[number], places.order
+            fields.add(number, up.generated(j, below, *place), values[j])
+        fields.rise(j + 1, up.generated(j, below, thickness, 0.0, 0.0, VALUE) * up.beyond[j], values[j])
+        fields.fall(j - 1, up.generated(j, below, 0.0, thickness, 0.0, VALUE) * down.beyond[n - 1 - j], values[j])
+    return fields.total
+
+
+def departure(line: StackLine, profiles: Profiles, places: Places, s: Array) -> Array:
+    """The transformed answer less profile / s: what the borders send out, shape (n, n_s, n_profiles)."""
+    line = line.divided(profiles.knots)
+    values, pieces, n = _of_layers(line, profiles), _pieces(line, places), len(line.thickness)
+    up, down = _Upward(line, s), _Upward(line.mirrored(), s)
+    fields = _Fields(up, down, pieces, places.low.size, profiles.n_profiles)
+    if line.film_low > 0:
+        fields.rise(0, -_taken_in(line.film_low, up.seen[0]) / s, values[0])
+    if line.film_high > 0:
+        fields.fall(n - 1, -_taken_in(line.film_high, down.seen[0]) / s, values[-1])
+    for border in range(1, n):
+        jump = values[border] - values[border - 1]
+        if jump.any():
+            above, below = up.seen[border], down.seen[n - border]
+            flow = -1 / s / (1 / above + 1 / below + 1 / line.contacts[border - 1])
+            fields.rise(border, flow / above, jump)
+            fields.fall(border - 1, -flow / below, jump)
+    return fields.total
+
+
+class _Fields:
+    """Sums up what goes up and down through a stack."""
+
+    def __init__(self, up: _Upward, down: _Upward, pieces: _Pieces, n_places: int, n_columns: int) -> None:
+        self.up, self.down, self.pieces = up, down, pieces
+        self.n_layers = len(up.thickness)
+        self.mirrored = pieces.upside_down(self.n_layers)
+        self.total = np.zeros((n_places, up.s.size, n_columns), dtype=up.s.dtype)
+
+    def add(self, number: int, values: Array, columns: FloatArray) -> None:
+        """Add values at a piece, times each column."""
+        self.total[self.pieces.index[number]] += values[:, None] * columns
+
+    def rise(self, layer: int, start: Array, columns: FloatArray) -> None:
+        """Add what goes up from the bottom of a layer, where the field is `start`."""
+        self._follow(self.up, self.pieces, layer, start, columns)
+
+    def fall(self, layer: int, start: Array, columns: FloatArray) -> None:
+        """Add what goes down from the top of a layer, where the field is `start`."""
+        sign = -1.0 if self.pieces.order == SLOPE else 1.0
+        self._follow(self.down, self.mirrored, self.n_layers - 1 - layer, start, sign * columns)
+
+    def _follow(self, way: _Upward, pieces: _Pieces, first: int, start: Array, columns: FloatArray) -> None:
+        for j in range(first, int(pieces.layer.max(initial=-1)) + 1):
+            for number in pieces.within(j):
+                place = pieces.below[number], pieces.above[number], pieces.width[number], pieces.order
+                self.add(number, start * way.inside(j, *place), columns)
+            start = start * way.passed[j] * way.beyond[j]
+
+
+def _of_end(line: StackLine, drive: WallDrive, pieces: _Pieces, n_places: int, s: Array) -> Array:
+    """The answer to a unit of an end's data."""
+    up, down = _Upward(line, s), _Upward(line.mirrored(), s)
+    fields = _Fields(up, down, pieces, n_places, 1)
+    film, seen = (line.film_high, down.seen[0]) if drive.high else (line.film_low, up.seen[0])
+    start = 1 / seen if film == 0.0 else _taken_in(film, seen) * np.ones_like(s)
+    if drive.high:
+        fields.fall(fields.n_layers - 1, start, np.ones(1))
+    else:
+        fields.rise(0, start, np.ones(1))
+    return fields.total[:, :, 0]
+
+
+def _taken_in(film: float, seen: Array) -> Array | float:
+    """The field an end takes on for a unit of its held value or ambient."""
+    return 1.0 if film == math.inf else film / (film + seen)
+
+
+def _of_layers(line: StackLine, profiles: Profiles) -> FloatArray:
+    """The profiles in each layer, shape (n_layers, n_profiles)."""
+    return profiles.at(0.5 * (line.heights[1:] + line.heights[:-1]))
