@@ -39,6 +39,7 @@ class Settings(BaseSettings):
     convergence_points: PositiveInt = Field(16, description="Most points in one convergence request.")
     patches: PositiveInt = Field(200, description="Most patches on one face.")
     readings: PositiveInt = Field(100_000, description="Most readings on one face.")
+    layers: PositiveInt = Field(100, description="Most layers of one stack.")
     sources: PositiveInt = Field(100, description="Most source boxes in one problem.")
     totals: PositiveInt = Field(200, description="Most patches and planes in one request for flux totals.")
     means: PositiveInt = Field(100, description="Most mean values in one request.")

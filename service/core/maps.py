@@ -140,6 +140,11 @@ class Rectangle:
     q_low: float
     q_high: float
 
+    @property
+    def area(self) -> float:
+        """Its area, infinite where it has no end."""
+        return (self.p_high - self.p_low) * (self.q_high - self.q_low)
+
     def overlaps(self, other: Rectangle) -> bool:
         """Whether the two share more than an edge."""
         return max(self.p_low, other.p_low) < min(self.p_high, other.p_high) and max(self.q_low, other.q_low) < min(

@@ -36,6 +36,9 @@ def _kind_of_axis(value: Any) -> str:
     return "one place"
 
 
+Side = Literal["below", "above"]
+_SIDE = "For places exactly on an interface of a stack: on which side of it they are meant; below if left out."
+
 GridAxis = Annotated[
     Annotated[Quantity, Tag("one place")]
     | Annotated[list[Quantity], Field(min_length=1, max_length=LONGEST_AXIS), Tag("list of places")]
@@ -59,6 +62,7 @@ class Grid(Model):
     z: GridAxis = Field(
         description="Places along z: one length, a list of lengths, or from, to and count.", examples=[20]
     )
+    side: Side | None = Field(None, description=_SIDE, examples=["above"])
 
 
 Position = Annotated[
@@ -67,11 +71,45 @@ Position = Annotated[
 ]
 
 
+PlanePosition = Annotated[
+    list[Quantity],
+    Field(min_length=2, max_length=2, description="Lengths along x and y.", examples=[[20, 30]]),
+]
+
+
+def _check_interface_reference(value: Any) -> int | str:
+    if isinstance(value, bool) or not isinstance(value, int | str) or value == "":
+        raise PydanticCustomError(
+            "interface",
+            "The number of an interface, counted from 1, or the names of the layers below and above it, such as "
+            '"base/solder", are wanted here.',
+        )
+    return value
+
+
 class Point(Model):
     """One place with a name."""
 
     name: Name | None = Field(None, description="What to call the point in the answer.", examples=["probe A"])
     at: Position
+    side: Side | None = Field(None, description=_SIDE, examples=["above"])
+
+
+class Interface(Model):
+    """Places on an interface between two layers of a stack, seen from both sides."""
+
+    name: Name | None = Field(None, description="What to call them in the answer.", examples=["under the chip"])
+    interface: Annotated[int | str, BeforeValidator(_check_interface_reference)] = Field(
+        description="The interface: the number of the layer above it, counted from 0, so that 1 is the lowest; or the "
+        "names of the layers below and above it with a slash between them.",
+        examples=["base/solder", 1],
+    )
+    at: list[PlanePosition] = Field(
+        min_length=1,
+        max_length=LONGEST_LIST,
+        description="Places in the plane of the interface, lengths along x and y each.",
+        examples=[[[10, 10], [20, 30]]],
+    )
 
 
 def _check_patch_reference(value: Any) -> int | str:
@@ -202,10 +240,20 @@ class FieldsEvaluate(Model):
         examples=[[{"face": "z_low", "patch": "sight port"}]],
     )
 
+    interfaces: list[Interface] = Field(
+        default_factory=list,
+        max_length=LONGEST_LIST,
+        description="Places on interfaces of a stack, answered with the potential on both sides, the step across the "
+        "contact and the flux through it.",
+        examples=[[{"interface": "base/solder", "at": [[20, 30]]}]],
+    )
+
     @model_validator(mode="after")
     def _something(self) -> Self:
-        if not (self.grids or self.points or self.means or self.extremes):
-            raise PydanticCustomError("nothing", "Ask for something: `grids`, `points`, `means` or `extremes`.")
+        if not (self.grids or self.points or self.means or self.extremes or self.interfaces):
+            raise PydanticCustomError(
+                "nothing", "Ask for something: `grids`, `points`, `means`, `extremes` or `interfaces`."
+            )
         return self
 
 

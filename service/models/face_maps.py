@@ -25,9 +25,8 @@ Interval = Annotated[
     Field(
         min_length=2,
         max_length=2,
-        description='From and to along this axis, lengths; a text such as "5 mm" carries its own unit. "end" '
-        "as "
-        "the second stands for the far side of the body, also of a semi-infinite one.",
+        description='From and to along this axis, lengths; a text such as "5 mm" carries its own unit. "begin" as '
+        'the first and "end" as the second stand for the sides of the body, also where it has no end there.',
         examples=[[5, 35], [10, "end"]],
     ),
 ]
@@ -42,14 +41,21 @@ class AxisIntervals(Model):
 
 
 class Patch(AxisIntervals):
-    """A rectangle of a face with its own constant value.
+    """A rectangle of a face with its own constant value: where the face is given a flow, a pad.
 
-    Give an interval along each of the face's two axes.
+    Give an interval along each of the face's two axes, and either `value` or, on a face with a given flow, `flow`.
     """
 
-    value: Quantity = Field(
+    value: Quantity | None = Field(
+        None,
         description="The value on the patch, of the same kind and declared unit as the background.",
         examples=[640, "1.5 kW/m^2"],
+    )
+    flow: Quantity | None = Field(
+        None,
+        description="In place of `value` on a face with a given flow: the total flow into the body through the patch, "
+        "in the declared unit `flow`, spread evenly over it.",
+        examples=["35 W"],
     )
     name: str | None = Field(
         None,

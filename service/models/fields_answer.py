@@ -106,6 +106,42 @@ class MeanAnswer(PartAnswer):
     error_bound: float = Field(description="The mean is not further off; unit `potential_difference`.", examples=[4e-8])
 
 
+class InterfaceAnswer(Model):
+    """Both sides of an interface between two layers of a stack, each list in the order of the places."""
+
+    name: str | None = Field(None, description="The name the request gave.", examples=["under the chip"])
+    interface: int = Field(description="Number of the layer above it, counted from 0.", examples=[1])
+    layer_below: str = Field(description="The layer below, by its name or its number.", examples=["base"])
+    layer_above: str = Field(description="The layer above, by its name or its number.", examples=["solder"])
+    z: float = Field(description="Height of the interface; unit `length`.", examples=[3.0])
+    contact_conductance: float | None = Field(
+        description="Contact conductance per area; unit `film_coefficient`. null where bonded perfectly.",
+        examples=[25000.0],
+    )
+    at: list[list[float]] = Field(description="Places along x and y; unit `length`.", examples=[[[20, 30]]])
+    potential_below: list[float] = Field(
+        description="Potential on top of the layer below; unit `potential`.", examples=[[61.2]]
+    )
+    potential_above: list[float] = Field(
+        description="Potential at the bottom of the layer above; unit `potential`.", examples=[[64.9]]
+    )
+    error_bound: float = Field(description="No potential is further off; unit `potential_difference`.", examples=[4e-8])
+    step: list[float] = Field(
+        description="Potential above less potential below; unit `potential_difference`. It is the flux downwards over "
+        "the contact conductance, and zero where the layers are bonded perfectly.",
+        examples=[[3.7]],
+    )
+    step_error_bound: list[float] = Field(
+        description="No step is further off; unit `potential_difference`.", examples=[[1e-9]]
+    )
+    flux: list[float | None] = Field(
+        description="Flux density through the interface, positive along z; unit `flux`. null where it has no finite "
+        "value.",
+        examples=[[-92500.0]],
+    )
+    flux_error_bound: list[float | None] = Field(description="No flux is further off; unit `flux`.", examples=[[1e-4]])
+
+
 class FieldsAnswer(Answer):
     """Potential and flux on grids and at points."""
 
@@ -113,3 +149,6 @@ class FieldsAnswer(Answer):
     points: list[PointAnswer] = Field(description="Values at each point, in the order asked for.")
     extremes: Extremes | None = Field(None, description="The highest and lowest potential, if asked for.")
     means: list[MeanAnswer] | None = Field(None, description="The means, in the order asked for.")
+    interfaces: list[InterfaceAnswer] | None = Field(
+        None, description="Both sides of each interface asked for, in the order asked for."
+    )

@@ -12,6 +12,9 @@ from service.models.faces import Faces
 
 PotentialName = Literal["temperature", "electric_potential", "concentration", "hydraulic_head"]
 
+# Bound of the document itself; the service's settings bound the problem further.
+MOST_LAYERS = 1_000
+
 UnitText = Annotated[str, Field(min_length=1, max_length=64)]
 
 
@@ -51,13 +54,21 @@ class DeclaredUnits(Model):
     )
 
 
-class Size(Model):
-    """Edge lengths of the body, which reaches from 0 to the size along each axis."""
+_OPEN = '"semi-infinite" (from 0, no far end) or "infinite" (no end at all)'
 
-    x: Quantity = Field(description="Length along x, greater than zero.", examples=[40])
-    y: Quantity = Field(description="Length along y, greater than zero.", examples=[60])
-    z: Quantity = Field(
-        description='Length along z, greater than zero, or "semi-infinite" for a bar that has no far end.',
+
+class Size(Model):
+    """Edge lengths of the body, which reaches from 0 to the size along each axis that ends.
+
+    An infinite axis has places from minus to plus infinity and no faces; a semi-infinite one has the low face alone.
+    """
+
+    x: Quantity = Field(description=f"Length along x, greater than zero, or {_OPEN}.", examples=[40])
+    y: Quantity = Field(description=f"Length along y, greater than zero, or {_OPEN}.", examples=[60, "infinite"])
+    z: Quantity | None = Field(
+        None,
+        description=f"Length along z, greater than zero, or {_OPEN}. Left out exactly where `layers` are given, whose "
+        "thicknesses add up to it.",
         examples=["semi-infinite", 25],
     )
 
@@ -70,27 +81,78 @@ class AxisConductivities(Model):
     z: Quantity = Field(description="Conductivity along z, greater than zero.", examples=[130])
 
 
+class PlaneConductivities(Model):
+    """Conductivity along x and y alike, and along z, as sheets and laminates have it."""
+
+    in_plane: Quantity = Field(description="Conductivity along x and y, greater than zero.", examples=[12])
+    through: Quantity = Field(description="Conductivity along z, greater than zero.", examples=[0.8])
+
+
 def _kind_of_conductivity(value: Any) -> str:
     """Tag of the union below: words no field is called, so that they can be taken out of error paths."""
+    if isinstance(value, PlaneConductivities) or (isinstance(value, dict) and value.keys() & {"in_plane", "through"}):
+        return "in the plane and through it"
     return "along each axis" if isinstance(value, dict | AxisConductivities) else "the same along all"
 
 
 Conductivity = Annotated[
-    Annotated[Quantity, Tag("the same along all")] | Annotated[AxisConductivities, Tag("along each axis")],
+    Annotated[Quantity, Tag("the same along all")]
+    | Annotated[AxisConductivities, Tag("along each axis")]
+    | Annotated[PlaneConductivities, Tag("in the plane and through it")],
     Discriminator(_kind_of_conductivity),
 ]
 
 
+class Layer(Model):
+    """One layer of a stack, which fills its whole section."""
+
+    name: str | None = Field(
+        None,
+        min_length=1,
+        max_length=LONGEST_NAME,
+        description="What to call the layer; no two layers of a stack may have the same name.",
+        examples=["solder"],
+    )
+    thickness: Quantity = Field(description="Thickness along z, greater than zero.", examples=["80 um"])
+    conductivity: Conductivity = Field(
+        description="Conductivity, in the declared unit `conductivity`: one value, one along each axis, or one in the "
+        "plane and one through it. The ratio of y to x has to be the same in all layers.",
+        examples=[57, {"in_plane": 12, "through": 0.8}],
+    )
+    contact_conductance_below: Quantity | None = Field(
+        None,
+        description="Contact conductance per area between this layer and the one below it, greater than zero, in the "
+        "declared unit `film_coefficient`; bonded perfectly if left out. The first layer has none.",
+        examples=["25 kW/(m^2 K)"],
+    )
+    generation: Quantity | None = Field(
+        None,
+        description="Generation per volume in the whole layer, in the declared unit `density`; none if left out.",
+        examples=["2 MW/m^3"],
+    )
+
+
 class Body(Model):
-    """A homogeneous rectangular body with one corner at the origin."""
+    """A rectangular body, of one material or a stack of layers along z, with one corner at the origin.
+
+    Either `size.z` and `conductivity`, or `layers`.
+    """
 
     size: Size = Field(
         description="Edge lengths, in the declared unit `length`.",
-        examples=[{"x": 40, "y": 60, "z": "semi-infinite"}],
+        examples=[{"x": 40, "y": 60, "z": "semi-infinite"}, {"x": 40, "y": 60}],
     )
-    conductivity: Conductivity = Field(
+    conductivity: Conductivity | None = Field(
+        None,
         description="Conductivity, in the declared unit `conductivity`: one value, or one along each axis.",
         examples=[{"x": 95, "y": 95, "z": 130}, 95],
+    )
+    layers: list[Layer] | None = Field(
+        None,
+        min_length=1,
+        max_length=MOST_LAYERS,
+        description="Layers of a stack from z = 0 up.",
+        examples=[[{"name": "base", "thickness": 3, "conductivity": 390}, {"thickness": 0.6, "conductivity": 24}]],
     )
 
 

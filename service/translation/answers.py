@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Sequence
 from typing import Any
 
@@ -70,9 +71,14 @@ def certificate(
 
 
 def place_inside(problem: ReadProblem) -> FloatArray:
-    """The middle of the body, or of its first cube's length when it is semi-infinite; shape (1, 3)."""
-    a, b, c = problem.body.size
-    return np.array([[a / 2, b / 2, c / 2 if np.isfinite(c) else max(a, b) / 2]])
+    """The middle of the body; along an axis without end as far from its end as the body is wide; shape (1, 3)."""
+    extents = problem.extents
+    widest = max((extent.high for extent in extents if math.isfinite(extent.high)), default=1.0)
+    middles = [
+        0.0 if math.isinf(extent.low) else 0.5 * (extent.high if math.isfinite(extent.high) else widest)
+        for extent in extents
+    ]
+    return np.array([middles])
 
 
 def warning(code: str, message: str, where: str) -> Warning_:

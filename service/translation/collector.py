@@ -7,6 +7,7 @@ import math
 from service.core.errors import CoreError
 from service.models.face_maps import Interval
 from service.refusals import Issue, Path, RequestRefused
+from service.translation.extent import AxisExtent
 from service.unit_text import UnitError
 from service.units import Kind, UnitSystem
 
@@ -50,12 +51,16 @@ class Collector:
             return UNREAD
         return number
 
-    def read_interval(self, interval: Interval, length: float, path: Path) -> tuple[float, float]:
-        """From and to along an axis of the body that is `length` long; "end" is its far side."""
-        low = self.read(Kind.LENGTH, interval[0], (*path, 0))
-        if interval[1] == "end":
-            return low, length
-        return low, self.read(Kind.LENGTH, interval[1], (*path, 1))
+    def read_interval(self, interval: Interval, extent: AxisExtent, path: Path) -> tuple[float, float]:
+        """From and to along an axis of the body; "begin" and "end" are its sides."""
+        first, second = interval
+        low = extent.low if first == "begin" else self.read_place(first, extent, (*path, 0))
+        high = extent.high if second == "end" else self.read_place(second, extent, (*path, 1))
+        return low, high
+
+    def read_place(self, value: float | str, extent: AxisExtent, path: Path) -> float:
+        """A coordinate along an axis of the body, UNREAD if there is none."""
+        return extent.settle(self.read(Kind.LENGTH, value, path))
 
     def raise_if_any(self) -> None:
         """Refuse the request if a field could not be used."""

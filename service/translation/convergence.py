@@ -58,7 +58,7 @@ def answer_convergence(
     bounds = []
     for point in wanted.points:
         keep_going()
-        (found,) = solution.convergence(np.array([point.at]), tolerance=wanted.tolerance)
+        (found,) = solution.convergence(np.array([point.place]), tolerance=wanted.tolerance)
         points.append(({} if point.name is None else {"name": point.name}) | _point(point, found))
         bounds.append(float(found.error_bound))
     keep_going()
@@ -74,7 +74,7 @@ def answer_convergence(
                 "#/overshoot",
             )
         )
-    places = np.array([point.at for point in wanted.points])
+    places = np.array([point.place for point in wanted.points])
     return {
         "problem_id": problem.problem_id,
         "potential": problem.potential,

@@ -13,7 +13,8 @@ from service.models.face_maps import AxisIntervals, FaceData, PatchesMap, Sample
 from service.models.face_maps import Patch as PatchModel
 from service.refusals import Path
 from service.settings import Settings
-from service.translation.collector import Collector
+from service.translation.collector import UNREAD, Collector
+from service.translation.extent import Extents
 from service.translation.readings import Readings, ReadingsError, fill_smoothly, readings_of_csv
 from service.units import Kind
 
@@ -41,16 +42,17 @@ class FaceContents:
 class FaceReader:
     """Reads the data of one face.
 
-    size: edge lengths of the body in the declared unit, NaN where they could not be read.
+    extents: of the body's axes in the declared unit.
     """
 
-    def __init__(self, collector: Collector, settings: Settings, face: Face, size: tuple[float, float, float]) -> None:
+    def __init__(self, collector: Collector, settings: Settings, face: Face, extents: Extents) -> None:
         self.collector = collector
         self.settings = settings
         self.face = face
         first, second = axes_along(face)
         self.axes = (AXES[first], AXES[second])
-        self.extent = (size[first], size[second])
+        self.along = (extents[first], extents[second])
+        self.extent = (extents[first].high, extents[second].high)
 
     def read(self, kind: Kind, data: FaceData, path: Path) -> FaceContents | None:
         """The solver's map of the data, or None when something was wrong, which is then noted."""
@@ -84,8 +86,8 @@ class FaceReader:
                 detail = f"An interval along {axis} is required on the face {self.face}, from and to."
                 self.collector.add((*path, axis), detail, "missing")
             else:
-                length = self.extent[self.axes.index(axis)]
-                ends.extend(self.collector.read_interval(interval, length, (*path, axis)))
+                extent = self.along[self.axes.index(axis)]
+                ends.extend(self.collector.read_interval(interval, extent, (*path, axis)))
         if len(self.collector.issues) > noted or any(math.isnan(end) for end in ends):
             return None
         return maps.Rectangle(*ends)
@@ -99,8 +101,8 @@ class FaceReader:
         patches, named = [], []
         for index, patch in enumerate(data.patches):
             here: Path = (*path, "patches", index)
-            value = self.collector.read(kind, patch.value, (*here, "value"))
             where = self.rectangle(patch, here)
+            value = self._value_of_patch(kind, patch, where, here)
             self._check_name(data.patches[:index], patch, here)
             if where is not None and not math.isnan(value):
                 patches.append(maps.Patch(where, value))
@@ -108,6 +110,31 @@ class FaceReader:
         if len(patches) < len(data.patches) or math.isnan(background) or self._has_unread_extent():
             return None
         return FaceContents(maps.FaceMap.patches(self.extent, background, patches), tuple(named))
+
+    def _value_of_patch(self, kind: Kind, patch: PatchModel, where: maps.Rectangle | None, path: Path) -> float:
+        """The value on a patch; the density of the flow where that is given as a total."""
+        if patch.flow is not None and kind is not Kind.FLUX:
+            self.collector.add((*path, "flow"), "Only a face with the condition flux takes a total flow.", "one-of")
+            return UNREAD
+        if patch.flow is None and patch.value is None:
+            detail = "This field is required." if kind is not Kind.FLUX else "Give either `value` or `flow`."
+            self.collector.add((*path, "value"), detail, "missing")
+            return UNREAD
+        if patch.flow is None:
+            assert patch.value is not None
+            return self.collector.read(kind, patch.value, (*path, "value"))
+        if patch.value is not None:
+            self.collector.add((*path, "flow"), "Give either `value` or `flow`, not both.", "one-of")
+            return UNREAD
+        flow = self.collector.read(Kind.FLOW, patch.flow, (*path, "flow"))
+        if where is None:
+            return UNREAD
+        if not math.isfinite(where.area):
+            detail = "A flow cannot be spread over a patch without end; give `value`, the flow per area."
+            self.collector.add((*path, "flow"), detail, "endless")
+            return UNREAD
+        # An empty patch is refused with a sentence of its own.
+        return flow / where.area if where.area else 0.0
 
     def _check_name(self, before: list[PatchModel], patch: PatchModel, path: Path) -> None:
         if patch.name is not None and any(patch.name == other.name for other in before):
@@ -167,7 +194,8 @@ class FaceReader:
                 detail = f"The places of the readings along {axis} are required on the face {self.face}."
                 self.collector.add((*path, axis), detail, "missing")
             else:
-                places.append([self.collector.read(Kind.LENGTH, v, (*path, axis, i)) for i, v in enumerate(values)])
+                extent = self.along[self.axes.index(axis)]
+                places.append([self.collector.read_place(v, extent, (*path, axis, i)) for i, v in enumerate(values)])
         assert data.table is not None
         if len(self.collector.issues) > noted or not self._check_shape(data.table, places, path):
             return None

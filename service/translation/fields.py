@@ -18,7 +18,8 @@ from service.settings import Settings
 from service.translation import answers
 from service.translation.answers import KeepGoing
 from service.translation.collector import Collector
-from service.translation.places import FacePart, GridPlaces, NamedPoint, PlaceReader
+from service.translation.interfaces import both_sides, interface_answer
+from service.translation.places import FacePart, GridPlaces, InterfacePlaces, NamedPoint, PlaceReader
 from service.translation.problem import ReadProblem
 from service.units import Kind, UnitSystem
 
@@ -35,12 +36,13 @@ class FieldsWanted:
     with_flux: bool
     extremes: bool
     means: tuple[FacePart, ...]
+    interfaces: tuple[InterfacePlaces, ...]
     tolerance: float
 
     @property
     def points_array(self) -> FloatArray:
         """The points, shape (n_points, 3)."""
-        return np.array([point.at for point in self.points], dtype=float).reshape(-1, 3)
+        return np.array([point.place for point in self.points], dtype=float).reshape(-1, 3)
 
     @property
     def numbers(self) -> int:
@@ -58,6 +60,8 @@ def read_fields(
     cost.check_count(collector, ("evaluate", "grids"), "grids", len(ask.grids), settings.grids)
     cost.check_count(collector, ("evaluate", "points"), "points", len(ask.points), settings.points)
     cost.check_count(collector, ("evaluate", "means"), "means", len(ask.means), settings.means)
+    on_interfaces = sum(len(interface.at) for interface in ask.interfaces)
+    cost.check_count(collector, ("evaluate", "interfaces"), "places on interfaces", on_interfaces, settings.points)
     cost.check_grid_points(collector, ask.grids, settings.grid_points)
     collector.raise_if_any()
 
@@ -69,6 +73,9 @@ def read_fields(
         if part is not None and reader.is_endless(part):
             detail = "The mean over an endless part is that of the far end; give a finite rectangle."
             collector.add(("evaluate", "means", index), detail, "endless")
+    interfaces = [
+        reader.interface(interface, ("evaluate", "interfaces", index)) for index, interface in enumerate(ask.interfaces)
+    ]
     tolerance = answers.read_tolerance(collector, question.accuracy, solution)
     collector.raise_if_any()
     return FieldsWanted(
@@ -78,6 +85,7 @@ def read_fields(
         "flux" in ask.quantities,
         ask.extremes,
         tuple(part for part in means if part is not None),
+        tuple(interface for interface in interfaces if interface is not None),
         tolerance,
     )
 
@@ -90,6 +98,10 @@ def check_cost(wanted: FieldsWanted, solution: Solution, settings: Settings, byt
     if wanted.points:
         count = len(wanted.points)
         estimates.append(solution.estimate_points(count, tolerance=tolerance, with_flux=with_flux))
+    estimates += [
+        solution.estimate_points(2 * len(interface.at), tolerance=tolerance, with_flux=True)
+        for interface in wanted.interfaces
+    ]
     cost.check_work(estimates, settings)
 
 
@@ -109,7 +121,7 @@ class _Answering:
         """Values on one grid."""
         wanted = self.wanted
         found = self.solution.field(
-            Grid(*grid.axes),
+            Grid(*grid.sides),
             tolerance=wanted.tolerance,
             with_flux=wanted.with_flux,
             keep_going=self.keep_going,
@@ -149,6 +161,17 @@ class _Answering:
         self._note_bound(mean.error_bound, f"#/means/{index}")
         return describe_part(part) | {"value": float(mean.value), "error_bound": float(mean.error_bound)}
 
+    def interface(self, index: int, asked: InterfacePlaces) -> dict[str, Any]:
+        """Both sides of an interface."""
+        sides = both_sides(self.solution.body, asked)
+        found = self.solution.field_at(
+            sides, tolerance=self.wanted.tolerance, with_flux=True, keep_going=self.keep_going
+        )
+        self.warnings += _flux_warnings(found, f"#/interfaces/{index}/flux")
+        self.bounds.append(float(found.potential_bound))
+        self.places.append(sides)
+        return interface_answer(self.units, self.solution.body, asked, found)
+
     def _note_bound(self, bound: float, where: str) -> None:
         self.bounds.append(float(bound))
         if bound > self.wanted.tolerance:
@@ -175,6 +198,8 @@ def answer_fields(
         answer["extremes"] = answering.extremes()
     if wanted.means:
         answer["means"] = [answering.mean(index, part) for index, part in enumerate(wanted.means)]
+    if wanted.interfaces:
+        answer["interfaces"] = [answering.interface(index, asked) for index, asked in enumerate(wanted.interfaces)]
     keep_going()
     places = np.concatenate(answering.places)
     return {
@@ -269,5 +294,5 @@ def _place(place: Place) -> dict[str, Any]:
 
 def _corners_and_middle(grid: GridPlaces) -> FloatArray:
     """Three places of a grid, shape (3, 3): its first and last corner and the middle."""
-    rows = [[axis[round(part * (axis.size - 1))] for axis in grid.axes] for part in (0.0, 0.5, 1.0)]
+    rows = [[axis[round(part * (axis.size - 1))] for axis in grid.sides] for part in (0.0, 0.5, 1.0)]
     return np.array(rows, dtype=float)

@@ -9,24 +9,29 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core.maps import Rectangle
-from service.core.problem import AXES, Face, axes_along
+from service.core.problem import AXES, Body, Face, axes_along, axis_of
 from service.models import evaluate as models
 from service.refusals import Path
 from service.settings import Settings
 from service.translation.collector import Collector
+from service.translation.extent import AxisExtent
 from service.translation.face_maps import FaceReader
-from service.translation.problem import ReadProblem
+from service.translation.problem import ReadProblem, endless_in_words
 from service.units import Kind
 
 FloatArray = NDArray[np.float64]
 
+# More interfaces than these are counted but not listed in a sentence.
+INTERFACES_LISTED = 8
+
 
 @dataclass(frozen=True)
 class GridPlaces:
-    """A rectilinear grid. axes: places along x, y and z."""
+    """A rectilinear grid. axes: places along x, y and z. sides: the same on the wanted side of interfaces."""
 
     name: str | None
     axes: tuple[FloatArray, FloatArray, FloatArray]
+    sides: tuple[FloatArray, FloatArray, FloatArray]
 
     @property
     def shape(self) -> tuple[int, int, int]:
@@ -36,10 +41,25 @@ class GridPlaces:
 
 @dataclass(frozen=True)
 class NamedPoint:
-    """One place."""
+    """One place. z: its height, just above it where the upper side of an interface is meant."""
 
     name: str | None
     at: tuple[float, float, float]
+    z: float
+
+    @property
+    def place(self) -> tuple[float, float, float]:
+        """What the solver is asked for."""
+        return self.at[0], self.at[1], self.z
+
+
+@dataclass(frozen=True)
+class InterfacePlaces:
+    """Places on an interface of a stack. number: of the layer above it. at: shape (n_places, 2)."""
+
+    name: str | None
+    number: int
+    at: FloatArray
 
 
 @dataclass(frozen=True)
@@ -62,6 +82,16 @@ class PlanePart:
     where: Rectangle | None
 
 
+def layer_name(body: Body, index: int) -> str:
+    """The name of a layer, or its number from 0."""
+    return body.layers[index].name or str(index)
+
+
+def interface_names(body: Body) -> list[str]:
+    """The interfaces of a stack by the layers below and above each, from below."""
+    return [f"{layer_name(body, upper - 1)}/{layer_name(body, upper)}" for upper in range(1, len(body.layers))]
+
+
 class PlaceReader:
     """Reads the places of one question, noting with its path each that lies outside the body."""
 
@@ -69,7 +99,7 @@ class PlaceReader:
         self.collector = collector
         self.settings = settings
         self.problem = problem
-        self.size = problem.body.size
+        self.extents = problem.extents
 
     def grid(self, grid: models.Grid, path: Path) -> GridPlaces:
         """The places of a grid."""
@@ -77,12 +107,30 @@ class PlaceReader:
             self._axis(places, index, (*path, axis))
             for index, (axis, places) in enumerate(zip(AXES, (grid.x, grid.y, grid.z), strict=True))
         ]
-        return GridPlaces(grid.name, (axes[0], axes[1], axes[2]))
+        z = self._on_side(axes[2], grid.side, path)
+        return GridPlaces(grid.name, (axes[0], axes[1], axes[2]), (axes[0], axes[1], z))
 
     def point(self, point: models.Point, path: Path) -> NamedPoint:
         """The place of a point."""
         at = [self._inside(value, axis, (*path, "at", axis)) for axis, value in enumerate(point.at)]
-        return NamedPoint(point.name, (at[0], at[1], at[2]))
+        z = self._on_side(np.array(at[2:]), point.side, path)
+        return NamedPoint(point.name, (at[0], at[1], at[2]), float(z[0]))
+
+    def interface(self, asked: models.Interface, path: Path) -> InterfacePlaces | None:
+        """Places on an interface; None when there is no such interface, which is then noted."""
+        names = interface_names(self.problem.body)
+        at = [
+            [self._inside(value, axis, (*path, "at", index, axis)) for axis, value in enumerate(place)]
+            for index, place in enumerate(asked.at)
+        ]
+        for number, name in enumerate(names, start=1):
+            if asked.interface in (number, name):
+                return InterfacePlaces(asked.name, number, np.array(at))
+        listed = ", ".join(f'{number} ("{name}")' for number, name in enumerate(names[:INTERFACES_LISTED], start=1))
+        more = f" and {len(names) - INTERFACES_LISTED} more" if len(names) > INTERFACES_LISTED else ""
+        has = f"the stack has {listed}{more}" if names else "the body is of one piece"
+        self.collector.add((*path, "interface"), f"There is no such interface; {has}.", "no-such-interface")
+        return None
 
     def face_part(self, part: models.FacePart, path: Path) -> FacePart | None:
         """A face, one of its patches or a rectangle of it; None when it is none of these, which is then
@@ -99,7 +147,7 @@ class PlaceReader:
             return self._patch(part, face, (*path, "patch"))
         if not has_intervals:
             return FacePart(part.name, face, None, None)
-        where = FaceReader(self.collector, self.settings, face, self.size).rectangle(part, path)
+        where = FaceReader(self.collector, self.settings, face, self.extents).rectangle(part, path)
         if where is None or not self._rectangle_fits(where, axes_along(face), path):
             return None
         return FacePart(part.name, face, None, where)
@@ -108,14 +156,15 @@ class PlaceReader:
         """Whether the body has the face; noted when it has not."""
         if face in self.problem.body.present_faces:
             return True
-        self.collector.add(path, f"A semi-infinite body has no face {face}.", "no-such-face")
+        extent = self.extents[axis_of(face)]
+        self.collector.add(path, f"{endless_in_words(extent, face)} has no face {face}.", "no-such-face")
         return False
 
     def is_endless(self, part: FacePart) -> bool:
-        """Whether the part reaches without end along a semi-infinite body."""
+        """Whether the part reaches without end along the body."""
         if part.where is None:
-            return any(math.isinf(self.size[axis]) for axis in axes_along(part.face))
-        return math.isinf(part.where.p_high) or math.isinf(part.where.q_high)
+            return any(math.isinf(self.extents[axis].high) for axis in axes_along(part.face))
+        return math.isinf(part.where.area)
 
     def plane(self, plane: models.Plane, path: Path) -> PlanePart | None:
         """A plane or a rectangle of it; None when it is neither, which is then noted."""
@@ -133,10 +182,11 @@ class PlaceReader:
         ends: list[float] = []
         for other in along:
             interval = given[AXES[other]]
+            extent = self.extents[other]
             ends.extend(
-                (0.0, self.size[other])
+                (extent.low, extent.high)
                 if interval is None
-                else self.collector.read_interval(interval, self.size[other], (*path, AXES[other]))
+                else self.collector.read_interval(interval, extent, (*path, AXES[other]))
             )
         where = Rectangle(*ends)
         return PlanePart(plane.name, axis, position, where) if self._rectangle_fits(where, along, path) else None
@@ -157,26 +207,42 @@ class PlaceReader:
 
     def _inside(self, value: float | str, axis: int, path: Path) -> float:
         """A coordinate of the closed body."""
-        place = self.collector.read(Kind.LENGTH, value, path)
-        length = self.size[axis]
-        if place < 0 or place > length:
-            units = self.problem.units
-            shown = units.show(Kind.LENGTH, value)
-            reach = "from 0 without end" if math.isinf(length) else f"from 0 to {units.show(Kind.LENGTH, length)}"
+        extent = self.extents[axis]
+        place = self.collector.read_place(value, extent, path)
+        if place < extent.low or place > extent.high:
+            shown = self.problem.units.show(Kind.LENGTH, value)
             self.collector.add(
-                path, f"{AXES[axis]} = {shown} lies outside the body, which reaches {reach}.", "outside-body"
+                path,
+                f"{AXES[axis]} = {shown} lies outside the body, which reaches {self._reach(extent)}.",
+                "outside-body",
             )
         return place
+
+    def _reach(self, extent: AxisExtent) -> str:
+        if math.isinf(extent.high):
+            return "from 0 without end"
+        return f"from 0 to {self.problem.units.show(Kind.LENGTH, extent.high)}"
+
+    def _on_side(self, z: FloatArray, side: models.Side | None, path: Path) -> FloatArray:
+        """Heights as the solver is asked for them: what lies on an interface is below it unless moved above."""
+        if side is None:
+            return z
+        on_interface = np.isin(z, self.extents[2].interfaces)
+        if not on_interface.any():
+            detail = "None of the places lies on an interface between layers; leave `side` out."
+            self.collector.add((*path, "side"), detail, "side")
+        return np.where(on_interface, np.nextafter(z, math.inf), z) if side == "above" else z
 
     def _rectangle_fits(self, where: Rectangle, along: tuple[int, int], path: Path) -> bool:
         noted = len(self.collector.issues)
         ends = ((where.p_low, where.p_high), (where.q_low, where.q_high))
         for axis, (low, high) in zip(along, ends, strict=True):
-            if not 0 <= low < high <= self.size[axis]:
+            extent = self.extents[axis]
+            if not extent.low <= low < high <= extent.high:
                 self.collector.add(
                     (*path, AXES[axis]),
-                    f"The interval from {low:g} to {high:g} has to have a positive extent and lie between 0 "
-                    f"and {self.size[axis]:g}.",
+                    f"The interval from {low:g} to {high:g} has to have a positive extent and lie between "
+                    f"{extent.low:g} and {extent.high:g}.",
                     "outside-body",
                 )
         return len(self.collector.issues) == noted

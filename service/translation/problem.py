@@ -6,13 +6,15 @@ import hashlib
 import math
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import Any, cast
+from typing import Any
 
 from pydantic_core import to_json
 
 from service.core import errors
 from service.core.problem import (
     AXES,
+    FACES,
+    SAME_RATIO,
     Body,
     BoxSource,
     Condition,
@@ -21,12 +23,17 @@ from service.core.problem import (
     Held,
     Inflow,
     Insulated,
+    Layer,
+    axis_of,
+    is_high,
 )
 from service.models import problem as models
-from service.models.faces import FaceCondition, Faces, FilmFace, FluxFace, HeldFace
+from service.models.faces import FaceCondition, FilmCoefficient, FilmFace, FluxFace, HeldFace
 from service.refusals import Issue, Path, RequestRefused
 from service.settings import Settings
+from service.translation.body import Material, path_of_layer, read_material
 from service.translation.collector import UNREAD, Collector
+from service.translation.extent import AxisExtent, Extents
 from service.translation.face_maps import FaceContents, FaceReader, NamedPatch
 from service.units import Kind, UnitSystem, declare
 
@@ -35,14 +42,15 @@ from service.units import Kind, UnitSystem, declare
 class ReadProblem:
     """A problem ready for the solver.
 
-    body: in the solver's units. units: to read questions and write answers. patches: of each face, in their
-    order. filled: how many missing readings were filled on each face.
+    body: in the solver's units. units: to read questions and write answers. extents: of its three axes. patches: of
+    each face, in their order. filled: how many missing readings were filled on each face.
     """
 
     problem_id: str
     potential: str
     units: UnitSystem
     body: Body
+    extents: Extents
     patches: Mapping[Face, tuple[NamedPatch, ...]] = field(default_factory=dict)
     filled: Mapping[Face, int] = field(default_factory=dict)
 
@@ -76,13 +84,12 @@ def read_problem(problem: models.Problem, settings: Settings, prefix: Path = ())
     for kind, detail in refused_units.items():
         collector.add(("units", kind.value), detail, "unit")
 
-    size = _size(collector, problem.body.size)
-    conductivity = _conductivity(collector, problem.body)
-    conditions, contents = _faces(collector, settings, problem, size)
-    sources = _sources(collector, settings, problem.sources, size)
+    material = read_material(collector, settings, problem.body)
+    conditions, contents = _faces(collector, settings, problem, material)
+    sources = _sources(collector, settings, problem.sources, material.extents)
     collector.raise_if_any()
     try:
-        body = Body(size, conductivity, conditions, sources)
+        body = _body(material, conditions, sources)
     except errors.NotPhysical as error:
         issue = Issue(prefix + path_in_request(error, problem), error.message, "not-physical")
         raise RequestRefused((issue,)) from None
@@ -91,62 +98,50 @@ def read_problem(problem: models.Problem, settings: Settings, prefix: Path = ())
         problem.potential,
         units,
         body,
+        material.extents,
         {face: read.patches for face, read in contents.items()},
         {face: read.filled for face, read in contents.items() if read.filled},
     )
 
 
-def _size(collector: Collector, size: models.Size) -> tuple[float, float, float]:
-    lengths = []
-    for axis, value in zip(AXES, (size.x, size.y, size.z), strict=True):
-        path: Path = ("body", "size", axis)
-        if value == "semi-infinite":
-            if axis != "z":
-                collector.add(path, "Only z can be semi-infinite; turn the body so that its long axis is z.", "size")
-            lengths.append(math.inf if axis == "z" else UNREAD)
-        else:
-            lengths.append(collector.read_positive(Kind.LENGTH, value, path, f"The size along {axis}"))
-    return lengths[0], lengths[1], lengths[2]
-
-
-def _conductivity(collector: Collector, body: models.Body) -> tuple[float, float, float]:
-    path: Path = ("body", "conductivity")
-    along = body.conductivity
-    if isinstance(along, models.AxisConductivities):
-        kx, ky, kz = (
-            collector.read_positive(Kind.CONDUCTIVITY, value, (*path, axis), f"The conductivity along {axis}")
-            for axis, value in zip(AXES, (along.x, along.y, along.z), strict=True)
-        )
-        return kx, ky, kz
-    value = collector.read_positive(Kind.CONDUCTIVITY, along, path, "The conductivity")
-    return value, value, value
+def _body(material: Material, conditions: Mapping[Face, Condition], sources: tuple[BoxSource, ...]) -> Body:
+    x, y, z = material.extents
+    if material.layers:
+        return Body.stack((x.high, y.high), material.layers, conditions, sources)
+    return Body((x.high, y.high, z.high), material.conductivity, conditions, sources)
 
 
 def _faces(
-    collector: Collector, settings: Settings, problem: models.Problem, size: tuple[float, float, float]
+    collector: Collector, settings: Settings, problem: models.Problem, material: Material
 ) -> tuple[dict[Face, Condition], dict[Face, FaceContents]]:
     conditions: dict[Face, Condition] = {}
-    contents: dict[Face, FaceContents | None] = {}
-    is_endless = size[2] == math.inf
-    if is_endless and problem.faces.z_high is not None:
-        detail = "A semi-infinite body has no face z_high; leave it out."
-        collector.add(("faces", "z_high"), detail, "no-such-face")
-    if not is_endless and problem.faces.z_high is None:
-        collector.add(("faces", "z_high"), "This field is required.", "missing")
-    for name in Faces.model_fields:
-        face = cast(Face, name)
+    contents: dict[Face, FaceContents] = {}
+    for face in FACES:
         condition: FaceCondition | None = getattr(problem.faces, face)
-        if condition is None or (is_endless and face == "z_high"):
-            continue
-        reader = FaceReader(collector, settings, face, size)
-        read = _condition(collector, reader, condition, ("faces", face))
-        if read is not None:
-            conditions[face], contents[face] = read
-    return conditions, {face: read for face, read in contents.items() if read is not None}
+        extent = material.extents[axis_of(face)]
+        if math.isinf(extent.high if is_high(face) else extent.low):
+            if condition is not None:
+                detail = f"{endless_in_words(extent, face)} has no face {face}; leave it out."
+                collector.add(("faces", face), detail, "no-such-face")
+        elif condition is None:
+            collector.add(("faces", face), "This field is required.", "missing")
+        else:
+            reader = FaceReader(collector, settings, face, material.extents)
+            read = _condition(collector, reader, condition, material.layers, ("faces", face))
+            if read is not None:
+                conditions[face], known = read
+                if known is not None:
+                    contents[face] = known
+    return conditions, contents
+
+
+def endless_in_words(extent: AxisExtent, face: Face) -> str:
+    """The body a face is missing from, to begin a sentence with."""
+    return f"A body that is {'infinite' if math.isinf(extent.low) else 'semi-infinite'} along {face[0]}"
 
 
 def _condition(
-    collector: Collector, reader: FaceReader, condition: FaceCondition, path: Path
+    collector: Collector, reader: FaceReader, condition: FaceCondition, layers: tuple[Layer, ...], path: Path
 ) -> tuple[Condition, FaceContents | None] | None:
     """The solver's condition and the contents of its map; None when something was wrong and was noted."""
     match condition:
@@ -157,18 +152,60 @@ def _condition(
             read = reader.read(Kind.FLUX, condition.inflow, (*path, "inflow"))
             return None if read is None else (Inflow(read.face_map), read)
         case FilmFace():
-            what = "The film coefficient"
-            coefficient = collector.read_positive(
-                Kind.FILM_COEFFICIENT, condition.coefficient, (*path, "coefficient"), what
-            )
+            coefficient = _coefficient(collector, condition.coefficient, reader.face, layers, (*path, "coefficient"))
             read = reader.read(Kind.POTENTIAL, condition.ambient, (*path, "ambient"))
             return None if read is None else (Film(coefficient, read.face_map), read)
         case _:
             return Insulated(), None
 
 
+def _coefficient(
+    collector: Collector, given: FilmCoefficient, face: Face, layers: tuple[Layer, ...], path: Path
+) -> float:
+    """The coefficient of a film; beside the first layer where there is one for each layer on a side of a stack."""
+    what = "The film coefficient"
+    on_side = bool(layers) and axis_of(face) != 2
+    if not isinstance(given, list):
+        coefficient = collector.read_positive(Kind.FILM_COEFFICIENT, given, path, what)
+        if on_side and any(abs(_ratio(layer, layers[0]) - 1.0) > SAME_RATIO for layer in layers):
+            detail = (
+                "The layers conduct differently along x; give a list with one coefficient beside each layer, in "
+                "proportion to those conductivities."
+            )
+            collector.add(path, detail, "film-of-stack")
+        return coefficient
+    if not on_side:
+        detail = "A list of coefficients is for the sides of a stack; give one coefficient here."
+        collector.add(path, detail, "film-of-stack")
+        return UNREAD
+    if len(given) != len(layers):
+        detail = f"There are {len(given)} coefficients; one is wanted beside each of the {len(layers)} layers."
+        collector.add(path, detail, "film-of-stack")
+        return UNREAD
+    beside = [
+        collector.read_positive(Kind.FILM_COEFFICIENT, value, (*path, index), what) for index, value in enumerate(given)
+    ]
+    for index, (coefficient, layer) in enumerate(zip(beside, layers, strict=True)):
+        wanted = beside[0] * _ratio(layer, layers[0])
+        if abs(coefficient - wanted) > SAME_RATIO * wanted:
+            shown = collector.units.show(Kind.FILM_COEFFICIENT, given[index])
+            proper = f"{collector.units.write(Kind.FILM_COEFFICIENT, wanted):.12g}"
+            detail = (
+                f"The coefficient beside layer {index} is {shown}; in proportion to the conductivities along x, as "
+                f"the exact field of a stack needs it, it is {proper} "
+                f"{collector.units.declared[Kind.FILM_COEFFICIENT]}."
+            )
+            collector.add((*path, index), detail, "film-of-stack")
+    return beside[0]
+
+
+def _ratio(layer: Layer, first: Layer) -> float:
+    """How much better a layer conducts along x than the first one."""
+    return layer.conductivity[0] / first.conductivity[0]
+
+
 def _sources(
-    collector: Collector, settings: Settings, sources: list[models.Source], size: tuple[float, float, float]
+    collector: Collector, settings: Settings, sources: list[models.Source], extents: Extents
 ) -> tuple[BoxSource, ...]:
     if len(sources) > settings.sources:
         detail = f"There are {len(sources)} sources; at most {settings.sources} are allowed."
@@ -178,8 +215,8 @@ def _sources(
     for index, source in enumerate(sources):
         path: Path = ("sources", index)
         ends = [
-            (0.0, length) if interval is None else collector.read_interval(interval, length, (*path, axis))
-            for axis, interval, length in zip(AXES, (source.x, source.y, source.z), size, strict=True)
+            (extent.low, extent.high) if interval is None else collector.read_interval(interval, extent, (*path, axis))
+            for axis, interval, extent in zip(AXES, (source.x, source.y, source.z), extents, strict=True)
         ]
         density = collector.read(Kind.DENSITY, source.density, (*path, "density"))
         boxes.append(BoxSource((ends[0][0], ends[1][0], ends[2][0]), (ends[0][1], ends[1][1], ends[2][1]), density))
@@ -189,6 +226,8 @@ def _sources(
 def path_in_request(error: errors.CoreError, problem: models.Problem) -> Path:
     """The part of the body that the solver names, as the client's document calls it."""
     path = error.field
+    if path[:1] == ("layers",):
+        return path_of_layer(path[1:], problem.body)
     if path[:1] == ("conductivity",) and not isinstance(problem.body.conductivity, models.AxisConductivities):
         path = ("conductivity",)
     return ("body", *path) if path[:1] in (("size",), ("conductivity",)) else path

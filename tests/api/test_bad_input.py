@@ -6,7 +6,6 @@
 from __future__ import annotations
 
 import json
-from dataclasses import dataclass
 from typing import Any
 
 import httpx
@@ -14,23 +13,9 @@ import pytest
 
 from tests.api.client import check_problem_document
 from tests.api.halden_reach import ask_points, block, changed, sight_port_bar
+from tests.api.wrong_requests import Wrong, check_wrong
 
 pytestmark = pytest.mark.anyio
-
-JSON_TYPE = {"Content-Type": "application/json"}
-
-
-@dataclass(frozen=True)
-class Wrong:
-    """One wrong request. pointer: the field at fault, or None. sentence: part of what is said about it."""
-
-    name: str
-    path: str
-    content: bytes
-    status: int
-    pointer: str | None
-    sentence: str
-    headers: tuple[tuple[str, str], ...] = ()
 
 
 def problem(name: str, path: str, new: Any, pointer: str, sentence: str, base: Any = None) -> Wrong:
@@ -134,8 +119,8 @@ SHAPES = [
     problem("missing body", "body", ..., "#/body", "This field is required."),
     problem("missing face", "faces/y_low", ..., "#/faces/y_low", "This field is required."),
     problem("missing far end", "body/size/z", 25, "#/faces/z_high", "This field is required."),
-    problem("far end of a bar", "faces/z_high", {"condition": "insulated"}, "#/faces/z_high", "A semi-infinite body has no face z_high; leave it out."),
-    problem("semi-infinite along x", "body/size/x", "semi-infinite", "#/body/size/x", "Only z can be semi-infinite"),
+    problem("far end of a bar", "faces/z_high", {"condition": "insulated"}, "#/faces/z_high", "A body that is semi-infinite along z has no face z_high; leave it out."),
+    problem("far side of a body open along x", "body/size/x", "semi-infinite", "#/faces/x_high", "A body that is semi-infinite along x has no face x_high; leave it out."),
     problem("unknown potential", "potential", "pressure", "#/potential", 'One of "temperature", "electric_potential"'),
     problem("unknown condition", "faces/y_low/condition", "warm", "#/faces/y_low/condition", 'One of "held", "flux", "film", "insulated" is wanted here.'),
     problem("face without condition", "faces/y_low", {}, "#/faces/y_low/condition", "The field condition is required."),
@@ -197,7 +182,7 @@ PLACES = [
     question("patch by truth", "flux-totals", "evaluate/patches/0/patch", True, "#/evaluate/patches/0/patch", "The number of a patch, counted from 0, or its name is wanted here."),
     question("patch and rectangle", "flux-totals", "evaluate/patches/0/x", [0, 5], "#/evaluate/patches/0/patch", "Give either a patch or intervals"),
     question("rectangle outside", "flux-totals", "evaluate/patches", [{"face": "z_low", "x": [0, 50], "y": [0, 5]}], "#/evaluate/patches/0/x", "The interval from 0 to 50"),
-    question("total of a face that is not there", "flux-totals", "evaluate/faces", ["z_high"], "#/evaluate/faces/0", "A semi-infinite body has no face z_high."),
+    question("total of a face that is not there", "flux-totals", "evaluate/faces", ["z_high"], "#/evaluate/faces/0", "A body that is semi-infinite along z has no face z_high."),
     question("total of an unknown face", "flux-totals", "evaluate/faces", ["top"], "#/evaluate/faces/0", 'One of "x_low"'),
     question("plane outside", "flux-totals", "evaluate/planes", [{"x": 50}], "#/evaluate/planes/0/x", "x = 50 mm lies outside the body"),
     question("plane along two axes", "flux-totals", "evaluate/planes", [{"x": 5, "y": 5}], "#/evaluate/planes/0", "Give one length along exactly one axis"),
@@ -246,17 +231,7 @@ def test_table_is_long_enough_and_names_are_unique_within_a_call() -> None:
 
 @pytest.mark.parametrize("wrong", TABLE, ids=lambda wrong: f"{wrong.path[4:]}: {wrong.name}")
 async def test_wrong_request_is_answered_with_one_clear_sentence(client: httpx.AsyncClient, wrong: Wrong) -> None:
-    headers = JSON_TYPE | dict(wrong.headers)
-    answer = await client.post(wrong.path, content=wrong.content, headers=headers)
-    document = check_problem_document(answer, wrong.status)
-    said = {error["pointer"]: error["detail"] for error in document.get("errors", [])}
-    if wrong.pointer is None:
-        sentences = [document["detail"], *said.values()]
-        assert any(wrong.sentence in sentence for sentence in sentences), sentences
-    else:
-        assert wrong.pointer in said, said
-        assert wrong.sentence in said[wrong.pointer]
-        assert len(said) == 1, said
+    await check_wrong(client, wrong)
 
 
 async def test_all_wrong_fields_are_named_at_once(client: httpx.AsyncClient) -> None:
