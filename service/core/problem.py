@@ -17,6 +17,7 @@ from dataclasses import dataclass, field
 from typing import Literal
 
 from service.core.errors import NotPhysical
+from service.core.laws import ConductivityLaw, Radiation
 from service.core.maps import FaceMap
 
 Face = Literal["x_low", "x_high", "y_low", "y_high", "z_low", "z_high"]
@@ -59,10 +60,14 @@ class Inflow:
 
 @dataclass(frozen=True)
 class Film:
-    """The inflow per area is coefficient * (ambient - potential) (third kind, Robin). coefficient > 0."""
+    """The inflow per area is coefficient * (ambient - potential) (third kind, Robin), and radiation if there is any.
+
+    coefficient: > 0, or 0 beside radiation.
+    """
 
     coefficient: float
     ambient: FaceMap
+    radiation: Radiation | None = None
 
 
 @dataclass(frozen=True)
@@ -112,6 +117,7 @@ class Body:
     of a stack is that beside its first layer; beside the others it is in proportion to their kx.
     sources: boxes of uniform generation, which may overlap and then add up.
     layers: from z_low to z_high, empty for a body of one material. See `stack`.
+    law: a factor on the conductivity that varies with the potential, or None where it does not.
     Raises NotPhysical where one of these does not hold, or a map or box does not fit the body.
     """
 
@@ -120,6 +126,7 @@ class Body:
     faces: Mapping[Face, Condition]
     sources: tuple[BoxSource, ...] = field(default=())
     layers: tuple[Layer, ...] = field(default=())
+    law: ConductivityLaw | None = None
 
     @classmethod
     def stack(
@@ -212,11 +219,8 @@ class Body:
         for face, condition in self.faces.items():
             if face not in self.present_faces:
                 raise NotPhysical(f"A semi-infinite bar has no face {face}.", ("faces", face))
-            if isinstance(condition, Film) and not (condition.coefficient > 0 and math.isfinite(condition.coefficient)):
-                raise NotPhysical(
-                    f"The film coefficient of {face} is {condition.coefficient:g}; it has to be greater than zero.",
-                    ("faces", face, "coefficient"),
-                )
+            if isinstance(condition, Film):
+                _check_film(condition, face)
             first, second = axes_along(face)
             face_map = map_of(condition)
             if face_map is not None:
@@ -234,6 +238,24 @@ class Body:
                     f"0 and {length:g} and have a positive extent.",
                     (*where, AXES[axis]),
                 )
+
+
+def _check_film(film: Film, face: Face) -> None:
+    radiates = film.radiation is not None
+    if not (film.coefficient > 0 or (radiates and film.coefficient == 0)) or math.isinf(film.coefficient):
+        raise NotPhysical(
+            f"The film coefficient of {face} is {film.coefficient:g}; it has to be greater than zero.",
+            ("faces", face, "coefficient"),
+        )
+    if film.radiation is None:
+        return
+    if not (film.radiation.coefficient > 0 and math.isfinite(film.radiation.coefficient)):
+        raise NotPhysical(f"The radiation of {face} has to be greater than zero and finite.", ("faces", face))
+    if not film.ambient.lowest + film.radiation.zero > 0:
+        raise NotPhysical(
+            f"The ambient of {face} goes down to {film.ambient.lowest:g}, which is not above absolute zero.",
+            ("faces", face, "ambient"),
+        )
 
 
 def map_of(condition: Condition) -> FaceMap | None:
