@@ -10,7 +10,8 @@ import pytest
 
 from service.core.lines.line import PRIMITIVE, Line
 from service.core.lines.pairs import Intervals, pair_means
-from service.core.lines.time_response import Places, respond
+from service.core.lines.places import Places
+from service.core.lines.time_response import respond
 from service.core.maps import Profiles
 
 # Touching, overlapping, one inside another, at both ends of a line of length 2, and slivers of a millionth of it.
