@@ -32,7 +32,8 @@ RANK_TOLERANCE = 4e-16
 class Profiles:
     """Piecewise linear functions of one coordinate that share their knots; they may jump at a knot.
 
-    knots: shape (n_pieces + 1,), increasing, first 0; the last may be infinite if the profiles are constant there.
+    knots: shape (n_pieces + 1,), increasing, first 0; the last may be infinite if the profiles are constant there, and
+        along an axis without ends the first is -infinity.
     left, right: values at the left and right end of each piece, shape (n_pieces, n_profiles).
     """
 
@@ -104,6 +105,9 @@ class Profiles:
 
     def integrals(self, low: FloatArray, high: FloatArray) -> FloatArray:
         """Integral of each profile over each interval, shape (n_intervals, n_profiles)."""
+        if self.is_constant:
+            with np.errstate(invalid="ignore"):
+                return np.where(self.left == 0.0, 0.0, self.left * (high - low)[:, None])
         total = np.zeros((low.size, self.n_profiles))
         slopes = self.slopes
         for piece in range(self.left.shape[0]):
@@ -123,7 +127,8 @@ class Profiles:
 
     def _from_side(self, coordinates: FloatArray, side: str) -> FloatArray:
         piece = self._piece(coordinates, side)
-        distance = coordinates - self.knots[piece]
+        start = self.knots[piece]
+        distance = coordinates - np.where(np.isfinite(start), start, coordinates)
         return np.where(
             (coordinates == self.knots[piece + 1])[:, None],
             self.right[piece],
@@ -164,10 +169,11 @@ class Patch:
 class FaceMap:
     """Data over a face. Build one with `uniform`, `patches` or `readings`.
 
-    first_knots, second_knots: places along the face's two axes, the first 0; the last may be infinite.
+    first_knots, second_knots: places along the face's two axes, from where an axis begins; the last may be infinite.
     table: a value for each cell between the knots, or for each pair of knots when the data are bilinear.
     bilinear: which of the two.
     extent: lengths of the face the map was made for, or None for a uniform map, which fits every face.
+    begins: where the axes of that face begin, 0 or -infinity.
     usual: the background, or for readings the lowest; the level other faces are likely to share.
     """
 
@@ -177,6 +183,7 @@ class FaceMap:
     bilinear: bool
     extent: tuple[float, float] | None
     usual: float
+    begins: tuple[float, float] = (0.0, 0.0)
 
     @classmethod
     def uniform(cls, value: float) -> FaceMap:
@@ -187,23 +194,30 @@ class FaceMap:
         return cls(knots, knots, np.full((1, 1), float(value)), False, None, float(value))
 
     @classmethod
-    def patches(cls, extent: tuple[float, float], background: float, patches: Sequence[Patch]) -> FaceMap:
+    def patches(
+        cls,
+        extent: tuple[float, float],
+        background: float,
+        patches: Sequence[Patch],
+        *,
+        begins: tuple[float, float] = (0.0, 0.0),
+    ) -> FaceMap:
         """Constant patches over a background.
 
-        extent: lengths of the face along its two axes; the second may be infinite.
+        extent: lengths of the face along its two axes, infinite along an endless one.
+        begins: where the axes begin: 0, or -infinity along one without ends.
         Raises NotPhysical for a patch that is empty, outside the face or over another one.
         """
-        _check_patches(extent, background, patches)
-        first, second = (
-            np.unique([0.0, extent[0], *(p for patch in patches for p in (patch.where.p_low, patch.where.p_high))]),
-            np.unique([0.0, extent[1], *(q for patch in patches for q in (patch.where.q_low, patch.where.q_high))]),
-        )
+        _check_patches(extent, begins, background, patches)
+        ends = [(patch.where.p_low, patch.where.p_high, patch.where.q_low, patch.where.q_high) for patch in patches]
+        first = np.unique([begins[0], extent[0], *(p for end in ends for p in end[:2])])
+        second = np.unique([begins[1], extent[1], *(q for end in ends for q in end[2:])])
         cells = np.full((first.size - 1, second.size - 1), float(background))
         for patch in patches:
             rows = slice(*np.searchsorted(first, (patch.where.p_low, patch.where.p_high)))
             columns = slice(*np.searchsorted(second, (patch.where.q_low, patch.where.q_high)))
             cells[rows, columns] = patch.value
-        return cls(first, second, cells, False, extent, float(background))
+        return cls(first, second, cells, False, extent, float(background), begins)
 
     @classmethod
     def readings(
@@ -214,6 +228,7 @@ class FaceMap:
         table: Sequence[Sequence[float]],
         *,
         extend: bool = False,
+        begins: tuple[float, float] = (0.0, 0.0),
     ) -> FaceMap:
         """Bilinear between readings on rectilinear axes.
 
@@ -231,9 +246,10 @@ class FaceMap:
             )
         if not np.isfinite(values).all():
             raise NotPhysical("The table of readings has entries that are not finite numbers.", ("table",))
-        first, values = _reach_edges(np.asarray(first_axis, dtype=float), values, extent[0], extend, "first_axis")
-        second, values = _reach_edges(np.asarray(second_axis, dtype=float), values.T, extent[1], extend, "second_axis")
-        return cls(first, second, values.T.copy(), True, extent, float(values.min()))
+        along_first, along_second = (begins[0], extent[0]), (begins[1], extent[1])
+        first, values = _reach_edges(np.asarray(first_axis, dtype=float), values, along_first, extend, "first_axis")
+        second, values = _reach_edges(np.asarray(second_axis, dtype=float), values.T, along_second, extend, "second_axis")
+        return cls(first, second, values.T.copy(), True, extent, float(values.min()), begins)
 
     @property
     def lowest(self) -> float:
@@ -278,9 +294,19 @@ class FaceMap:
         """The same map counted from another zero."""
         return replace(self, table=self.table - reference, usual=self.usual - reference)
 
-    def check_covers(self, first_length: float, second_length: float, face: str) -> None:
-        """Raise NotPhysical unless the map was made for a face of these lengths."""
-        if self.extent is not None and self.extent != (first_length, second_length):
+    def check_covers(
+        self, first_length: float, second_length: float, face: str, begins: tuple[float, float] = (0.0, 0.0)
+    ) -> None:
+        """Raise NotPhysical unless the map was made for a face of these lengths that begins there."""
+        if self.extent is None:
+            return
+        if self.extent == (first_length, second_length) and self.begins != begins:
+            raise NotPhysical(
+                f"The map on {face} was made for a face that begins at ({self.begins[0]:g}, {self.begins[1]:g}); the "
+                f"face begins at ({begins[0]:g}, {begins[1]:g}).",
+                ("faces", face),
+            )
+        if self.extent != (first_length, second_length):
             raise NotPhysical(
                 f"The map on {face} was made for a face of {self.extent[0]:g} by {self.extent[1]:g}; the face "
                 f"measures {first_length:g} by {second_length:g}.",
@@ -310,40 +336,45 @@ def _factor(table: FloatArray) -> tuple[FloatArray, FloatArray]:
 
 
 def _reach_edges(
-    axis: FloatArray, values: FloatArray, length: float, extend: bool, name: str
+    axis: FloatArray, values: FloatArray, ends: tuple[float, float], extend: bool, name: str
 ) -> tuple[FloatArray, FloatArray]:
     """An axis of readings and its table, rows along the axis, carried to the edges of the face if allowed."""
     if axis.size < 2 or not np.isfinite(axis).all() or (np.diff(axis) <= 0).any():
         raise NotPhysical("An axis of readings needs at least two places in increasing order.", (name,))
-    if axis[0] < 0 or axis[-1] > length:
+    low, high = ends
+    if axis[0] < low or axis[-1] > high:
         raise NotPhysical(
-            f"The readings reach from {axis[0]:g} to {axis[-1]:g}; the face reaches from 0 to {length:g}.", (name,)
+            f"The readings reach from {axis[0]:g} to {axis[-1]:g}; the face reaches from {low:g} to {high:g}.", (name,)
         )
-    if not extend and (axis[0] > 0 or axis[-1] < length):
+    if not extend and (axis[0] > low or axis[-1] < high):
         raise NotPhysical(
-            f"The readings reach from {axis[0]:g} to {axis[-1]:g} but the face from 0 to {length:g}; add readings at "
-            "its edges or ask for the outermost readings to be held.",
+            f"The readings reach from {axis[0]:g} to {axis[-1]:g} but the face from {low:g} to {high:g}; add readings "
+            "at its edges or ask for the outermost readings to be held.",
             (name,),
         )
-    if axis[0] > 0:
-        axis, values = np.concatenate([[0.0], axis]), np.vstack([values[:1], values])
-    if axis[-1] < length:
-        axis, values = np.concatenate([axis, [length]]), np.vstack([values, values[-1:]])
+    if axis[0] > low:
+        axis, values = np.concatenate([[low], axis]), np.vstack([values[:1], values])
+    if axis[-1] < high:
+        axis, values = np.concatenate([axis, [high]]), np.vstack([values, values[-1:]])
     return axis, values
 
 
-def _check_patches(extent: tuple[float, float], background: float, patches: Sequence[Patch]) -> None:
+def _check_patches(
+    extent: tuple[float, float], begins: tuple[float, float], background: float, patches: Sequence[Patch]
+) -> None:
     if not math.isfinite(background):
         raise NotPhysical("The background is not a finite number.", ("background",))
     for index, patch in enumerate(patches):
         where = patch.where
         if not math.isfinite(patch.value):
             raise NotPhysical(f"The value of patch {index} is not a finite number.", ("patches", index, "value"))
-        if not (0 <= where.p_low < where.p_high <= extent[0] and 0 <= where.q_low < where.q_high <= extent[1]):
+        along_first = begins[0] <= where.p_low < where.p_high <= extent[0]
+        along_second = begins[1] <= where.q_low < where.q_high <= extent[1]
+        if not (along_first and along_second):
             raise NotPhysical(
                 f"Patch {index} reaches from ({where.p_low:g}, {where.q_low:g}) to ({where.p_high:g}, "
-                f"{where.q_high:g}); it has to have a positive extent and lie in the face, which reaches from (0, 0) "
-                f"to ({extent[0]:g}, {extent[1]:g}).",
+                f"{where.q_high:g}); it has to have a positive extent and lie in the face, which reaches from "
+                f"({begins[0]:g}, {begins[1]:g}) to ({extent[0]:g}, {extent[1]:g}).",
                 ("patches", index),
             )
         for other in range(index):

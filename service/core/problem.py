@@ -1,6 +1,8 @@
 """The engineer's problem: a rectangular body, what is known on its faces, what is generated inside.
 
-    kx u_xx + ky u_yy + kz u_zz + g = 0   in   0 < x < a, 0 < y < b, 0 < z < c   (c finite or infinite)
+    kx u_xx + ky u_yy + kz u_zz + g = 0   in   0 < x < a, 0 < y < b, 0 < z < c
+
+Each of a, b and c may be infinite, and an axis may also run from -infinity to infinity.
 
 Any consistent set of units will do: lengths in one unit, the potential in one, and flows per area, conductivities
 and film coefficients in the units these imply. Nothing here or below converts a number. The service passes lengths
@@ -82,8 +84,8 @@ Condition = Held | Inflow | Film | Insulated
 class BoxSource:
     """Generation per volume, uniform in an axis-aligned box inside the body.
 
-    low, high: opposite corners, each (x, y, z). `high` may be infinite along z in a semi-infinite body only
-    when the far field stays bounded, which `solve` checks.
+    low, high: opposite corners, each (x, y, z). They may be infinite along an endless axis if the field stays bounded
+    there, which `solve` checks.
     """
 
     low: tuple[float, float, float]
@@ -111,12 +113,15 @@ class Layer:
 class Body:
     """A rectangular body with its faces and sources: of one material, or a stack of layers along z.
 
-    size: (a, b, c), each > 0; c may be math.inf: a bar that begins at z = 0 and has no far end.
+    size: (a, b, c), each > 0; math.inf along an axis without a far end: semi-infinite, it begins at 0 and has only the
+        low face, or without ends if `infinite` says so.
     conductivity: (kx, ky, kz), each > 0 and finite; that of the first layer in a stack.
-    faces: one condition for every face; `z_high` is absent when c is infinite. The coefficient of a film on the side
+    faces: one condition for every face the body has, see `present_faces`. The coefficient of a film on the side
     of a stack is that beside its first layer; beside the others it is in proportion to their kx.
     sources: boxes of uniform generation, which may overlap and then add up.
     layers: from z_low to z_high, empty for a body of one material. See `stack`.
+    infinite: which axes have no ends: their size is infinite, their coordinates run from -infinity to infinity, and
+        neither face is there.
     law: a factor on the conductivity that varies with the potential, or None where it does not.
     Raises NotPhysical where one of these does not hold, or a map or box does not fit the body.
     """
@@ -126,6 +131,7 @@ class Body:
     faces: Mapping[Face, Condition]
     sources: tuple[BoxSource, ...] = field(default=())
     layers: tuple[Layer, ...] = field(default=())
+    infinite: tuple[bool, bool, bool] = (False, False, False)
     law: ConductivityLaw | None = None
 
     @classmethod
@@ -135,12 +141,13 @@ class Body:
         layers: Sequence[Layer],
         faces: Mapping[Face, Condition],
         sources: tuple[BoxSource, ...] = (),
+        infinite: tuple[bool, bool, bool] = (False, False, False),
     ) -> Body:
         """A stack of layers along z, from z_low up, of a section (a, b)."""
         if not layers:
             raise NotPhysical("A stack needs at least one layer.", ("layers",))
         height = math.fsum(layer.thickness for layer in layers)
-        return cls((*section, height), layers[0].conductivity, faces, sources, tuple(layers))
+        return cls((*section, height), layers[0].conductivity, faces, sources, tuple(layers), infinite)
 
     @property
     def interfaces(self) -> tuple[float, ...]:
@@ -157,15 +164,30 @@ class Body:
 
     @property
     def present_faces(self) -> tuple[Face, ...]:
-        """The faces the body has: six, or five without z_high for a semi-infinite bar."""
-        return FACES if math.isfinite(self.size[2]) else FACES[:5]
+        """The faces the body has: both along a finite axis, the low one along a semi-infinite one, else none."""
+        return tuple(face for face in FACES if math.isfinite(self.end_of(face)))
+
+    @property
+    def begins(self) -> tuple[float, float, float]:
+        """Where the body begins along each axis: at 0, or at -infinity along an axis without ends."""
+        x, y, z = (-math.inf if endless else 0.0 for endless in self.infinite)
+        return x, y, z
+
+    def end_of(self, face: Face) -> float:
+        """The coordinate of a face along its axis; infinite if the body does not have it."""
+        axis = axis_of(face)
+        return self.size[axis] if is_high(face) else self.begins[axis]
 
     def _check_size_and_conductivity(self) -> None:
         for axis, length in enumerate(self.size):
-            endless_z = axis == 2 and length == math.inf
-            if not (length > 0 and (math.isfinite(length) or endless_z)):
+            if not length > 0:
                 raise NotPhysical(
-                    f"The size along {AXES[axis]} is {length:g}; it has to be greater than zero and finite.",
+                    f"The size along {AXES[axis]} is {length:g}; it has to be greater than zero.",
+                    ("size", AXES[axis]),
+                )
+            if self.infinite[axis] and math.isfinite(length):
+                raise NotPhysical(
+                    f"The body has no ends along {AXES[axis]}, and yet its size there is {length:g}.",
                     ("size", AXES[axis]),
                 )
         for axis, conductivity in enumerate(self.conductivity):
@@ -218,24 +240,26 @@ class Body:
                 raise NotPhysical(f"The face {face} has no condition; every face needs one.", ("faces", face))
         for face, condition in self.faces.items():
             if face not in self.present_faces:
-                raise NotPhysical(f"A semi-infinite bar has no face {face}.", ("faces", face))
+                which = "without ends" if self.infinite[axis_of(face)] else "semi-infinite"
+                raise NotPhysical(f"A body that is {which} along {face[0]} has no face {face}.", ("faces", face))
             if isinstance(condition, Film):
                 _check_film(condition, face)
             first, second = axes_along(face)
             face_map = map_of(condition)
             if face_map is not None:
-                face_map.check_covers(self.size[first], self.size[second], face)
+                begins = (self.begins[first], self.begins[second])
+                face_map.check_covers(self.size[first], self.size[second], face, begins)
 
     def _check_source(self, index: int, source: BoxSource) -> None:
         where: tuple[str | int, ...] = ("sources", index)
         if not math.isfinite(source.density):
             raise NotPhysical(f"The density of source {index} is not a finite number.", (*where, "density"))
         for axis in range(3):
-            low, high, length = source.low[axis], source.high[axis], self.size[axis]
-            if not 0 <= low < high <= length:
+            low, high, begin, length = source.low[axis], source.high[axis], self.begins[axis], self.size[axis]
+            if not begin <= low < high <= length:
                 raise NotPhysical(
                     f"Source {index} reaches from {low:g} to {high:g} along {AXES[axis]}; it has to lie between "
-                    f"0 and {length:g} and have a positive extent.",
+                    f"{begin:g} and {length:g} and have a positive extent.",
                     (*where, AXES[axis]),
                 )
 

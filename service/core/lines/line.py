@@ -28,17 +28,22 @@ PRIMITIVE: Order = 1
 
 @dataclass(frozen=True)
 class Line:
-    """A rod from 0 to `length`.
+    """A rod from 0 to `length`, a half-line from 0, or a line without ends.
 
-    length: in the caller's unit, > 0; infinite for a half-line that begins at 0.
+    length: in the caller's unit, > 0; infinite for a half-line and for a line without ends.
     scale: scaled length per caller's length, 1 / sqrt(conductivity).
-    film_low, film_high: H of phi' = H phi (low) and phi' = -H phi (high) per scaled length; 0 insulated, inf held.
+    film_low, film_high: H of phi' = H phi (low) and phi' = -H phi (high) per scaled length; 0 insulated or no end
+        there, inf held.
+    begins: 0, or -infinity for a line without ends.
+    data: on an endless line from where to where what drives the body changes along it, in the caller's unit.
     """
 
     length: float
     scale: float
     film_low: float
     film_high: float
+    begins: float = 0.0
+    data: tuple[float, float] = (0.0, 0.0)
 
     @cached_property
     def extent(self) -> float:
@@ -49,6 +54,52 @@ class Line:
     def is_endless(self) -> bool:
         """Whether the line has no far end."""
         return self.length == math.inf
+
+    @property
+    def has_low_end(self) -> bool:
+        """Whether the line begins at 0."""
+        return self.begins == 0.0
+
+    @property
+    def stretch(self) -> tuple[float, float]:
+        """The whole of a finite line; of an endless one the part where what drives the body changes."""
+        return self.data if self.is_endless else (0.0, self.length)
+
+    @property
+    def steepest(self) -> float:
+        """Conductance per area from end to end, in the caller's units; 0 of an endless line."""
+        return 1 / (self.scale * self.extent)
+
+    @property
+    def films_per_extent(self) -> tuple[float, ...]:
+        """All films per scaled length, those that are infinite too."""
+        return self.film_low, self.film_high
+
+    def from_end(self, coordinates: FloatArray, *, high: bool) -> FloatArray:
+        """Scaled distance of places from one end."""
+        return (self.length - coordinates) * self.scale if high else coordinates * self.scale
+
+    def between(self, coordinates: FloatArray, others: FloatArray) -> FloatArray:
+        """Scaled distance between places."""
+        return np.abs(coordinates - others) * self.scale
+
+    def active_breaks(self, profiles: Profiles) -> tuple[FloatArray, NDArray[np.bool_], NDArray[np.bool_]]:
+        """Knots, and which of them send out a jump and which a kink as time begins, shape (n_breaks,) each."""
+        return active_breaks(self, profiles)
+
+    def largest_jump(self, profiles: Profiles) -> FloatArray:
+        """Largest jump of each profile, shape (n_profiles,)."""
+        return breaks_of(self, profiles).largest_jump
+
+    def narrowest(self, profiles: Profiles) -> float:
+        """Scaled width of the narrowest piece of profiles that is not zero."""
+        return profiles.narrowest * self.scale
+
+    def mean(self, drive: Drive) -> FloatArray:
+        """What a line that loses nothing comes to, shape (n_columns,)."""
+        if isinstance(drive, WallDrive):
+            return np.ones(1) / self.extent
+        return drive.integrals(np.zeros(1), np.array([self.length]))[0] / self.length
 
     @property
     def biot_numbers(self) -> tuple[float, float]:
@@ -76,7 +127,7 @@ Drive = Profiles | WallDrive
 
 def wall_distance(line: Line, coordinates: FloatArray, *, high: bool) -> FloatArray:
     """Scaled distance of places from one end."""
-    return (line.length - coordinates) * line.scale if high else coordinates * line.scale
+    return line.from_end(coordinates, high=high)
 
 
 @dataclass(frozen=True, eq=False)
@@ -84,8 +135,8 @@ class Breaks:
     """Knots with the jumps of value and of slope that profiles, zero outside their line, have there.
 
     knots: in the caller's unit, shape (n_breaks,). jumps, slope_jumps: per scaled length, (n_breaks, n_profiles).
-    has_slopes: whether any slope jumps. largest_jump: shape (n_profiles,). On a half-line the last piece ends nowhere
-    and has no last break.
+    has_slopes: whether any slope jumps. largest_jump: shape (n_profiles,). On an endless line the last piece ends
+    nowhere and has no last break, on one without ends the first piece has no first break either.
     """
 
     knots: FloatArray
@@ -104,8 +155,9 @@ def breaks_of(line: Line, profiles: Profiles) -> Breaks:
     slope_jumps = np.vstack([slopes, nothing]) - np.vstack([nothing, slopes])
     knots = np.minimum(profiles.knots, line.length)
     if line.is_endless:
-        knots, jumps, slope_jumps = knots[:-1], jumps[:-1], slope_jumps[:-1]
-    return Breaks(knots, jumps, slope_jumps, bool(slope_jumps.any()), np.abs(jumps).max(axis=0))
+        there = slice(0 if line.has_low_end else 1, -1)
+        knots, jumps, slope_jumps = knots[there], jumps[there], slope_jumps[there]
+    return Breaks(knots, jumps, slope_jumps, bool(slope_jumps.any()), np.abs(jumps).max(axis=0, initial=0.0))
 
 
 def active_breaks(line: Line, profiles: Profiles) -> tuple[FloatArray, NDArray[np.bool_], NDArray[np.bool_]]:
@@ -116,8 +168,8 @@ def active_breaks(line: Line, profiles: Profiles) -> tuple[FloatArray, NDArray[n
     """
     breaks = breaks_of(line, profiles)
     has_jump, has_kink = np.array(breaks.jumps.any(axis=1)), np.array(breaks.slope_jumps.any(axis=1))
-    ends = [(0, line.film_low)] if line.is_endless else [(0, line.film_low), (-1, line.film_high)]
-    for index, film in ends:
+    ends = [(0, line.film_low), (-1, line.film_high)]
+    for index, film in ends[0 if line.has_low_end else 1 : 1 if line.is_endless else 2]:
         has_kink[index] |= has_jump[index] and 0.0 < film < math.inf
         has_jump[index] &= film == math.inf
     return breaks.knots, has_jump, has_kink

@@ -61,7 +61,7 @@ class Places:
 
     def _settled(self, line: Line, values: FloatArray) -> FloatArray:
         if self.high is None:
-            for place, film in ((0.0, line.film_low), (line.length, line.film_high)):
+            for place, film in ((line.begins, line.film_low), (line.length, line.film_high)):
                 if film == math.inf or self.order == -1:
                     values[self.low == place] = 0.0
         return values
@@ -73,12 +73,14 @@ class TimeResponse:
 
     total: shape (n, n_times, n_profiles). initial: what it is just after time 0, shape (n, n_profiles): the profile,
     0 on a held end and for slopes on any end, and zero for a driven end. early: departures from it
-    at the short times, from which the total there is made.
+    at the short times, from which the total there is made. carried: the most that an answer was summed from at each
+    time where that is not had from the line's modes and images, shape (1, n_times, n_profiles), else None.
     """
 
     total: FloatArray
     initial: FloatArray
     early: FloatArray
+    carried: FloatArray | None = None
 
     @cached_property
     def departure(self) -> FloatArray:

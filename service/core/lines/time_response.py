@@ -1,18 +1,22 @@
 """What a line answers at given times, by images while they are short and by eigenfunctions after that.
 
-Both forms are exact to rounding where they meet, so that a field, a mean or a total is one integral over time of
+An endless line has no eigenfunctions; at long times it sees what drives it as a few point sources. All forms are exact to rounding where they meet, so that a field, a mean or a total is one integral over time of
 products of three lines' answers, whatever drives the body.
 """
 
 from __future__ import annotations
 
+import math
+from collections.abc import Callable
+
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines import images
-from service.core.lines.line import PRIMITIVE, Drive, Line, WallDrive
+from service.core.lines import images, stack_response
+from service.core.lines.line import PRIMITIVE, VALUE, Drive, Line, WallDrive
 from service.core.lines.modes import MODE_COUNT, eigen_integrals, modes_of
 from service.core.lines.places import Places, TimeResponse
+from service.core.lines.stack import StackLine
 from service.core.maps import Profiles
 
 FloatArray = NDArray[np.float64]
@@ -23,7 +27,9 @@ SMOOTH_POINTS = 12
 
 def respond(line: Line, drive: Drive, places: Places, times: FloatArray) -> TimeResponse:
     """Answer of a line at the given times (scaled length squared), which have to increase."""
-    count = int(np.searchsorted(times, images.LATEST * line.extent**2, side="right"))
+    if isinstance(line, StackLine):
+        return stack_response.respond(line, drive, places, times)
+    count = int(np.searchsorted(times, _early_until(line, drive), side="right"))
     root_time = np.sqrt(times[:count])
     columns = 1 if isinstance(drive, WallDrive) else drive.n_profiles
     total = np.empty((places.low.size, times.size, columns))
@@ -45,8 +51,38 @@ def respond(line: Line, drive: Drive, places: Places, times: FloatArray) -> Time
         early += (places.profile(line, drive) - initial)[:, None, :]
     total[:, :count] = early + initial[:, None, :]
     if count < times.size:
-        total[:, count:] = _late(line, drive, places, times[count:])
+        late = _afar if line.is_endless else _late
+        total[:, count:] = late(line, drive, places, times[count:])
     return TimeResponse(total, initial, early)
+
+
+def _early_until(line: Line, drive: Drive) -> float:
+    """The time until which a line answers by the breaks of its drive."""
+    if not line.is_endless:
+        return images.LATEST * line.extent**2
+    seen = None if isinstance(drive, WallDrive) else images.seen_from_afar(line, drive)
+    return math.inf if seen is None else seen.root_time**2
+
+
+def _afar(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
+    """An endless line at times long against all that changes along it."""
+    assert isinstance(drive, Profiles)
+    seen, root_time = images.seen_from_afar(line, drive), np.sqrt(times)
+    assert seen is not None
+    if places.high is None:
+        return images.from_afar(line, seen, places.low, root_time, places.order)
+    low, high = places.low, places.high
+    smooth = _smooth_from(line, low, high, root_time)
+    wide = images.from_afar(line, seen, high, root_time[:smooth], PRIMITIVE)
+    wide -= images.from_afar(line, seen, low, root_time[:smooth], PRIMITIVE)
+    wide += seen.step.integrals(low, high)[:, None, :] * line.scale
+    if smooth == root_time.size:
+        return wide
+
+    def value(at: FloatArray) -> FloatArray:
+        return images.from_afar(line, seen, at, root_time[smooth:], VALUE)
+
+    return np.concatenate([wide, _integrated(value, line, low, high)], axis=1)
 
 
 def _early_wall(line: Line, drive: WallDrive, places: Places, root_time: FloatArray) -> FloatArray:
@@ -72,20 +108,31 @@ def _early_integrals(
     While an interval is wide against sqrt(t) by antiderivatives, then by quadrature over the smooth answer: the
     antiderivatives would cancel.
     """
-    widest = float((high - low).max()) * line.scale
-    smooth = int(np.searchsorted(root_time, widest))
+    smooth = _smooth_from(line, low, high, root_time)
     early = images.departure(line, drive, high, root_time[:smooth], PRIMITIVE)
     early -= images.departure(line, drive, low, root_time[:smooth], PRIMITIVE)
     if smooth == root_time.size:
         return early
+
+    def value(at: FloatArray) -> FloatArray:
+        return images.departure(line, drive, at, root_time[smooth:], 0) + drive.at(at)[:, None, :]
+
+    late = _integrated(value, line, low, high) - drive.integrals(low, high)[:, None, :] * line.scale
+    return np.concatenate([early, late], axis=1)
+
+
+def _smooth_from(line: Line, low: FloatArray, high: FloatArray, root_time: FloatArray) -> int:
+    """The first of the times at which the widest interval is no wider than sqrt(t)."""
+    return int(np.searchsorted(root_time, float((high - low).max()) * line.scale))
+
+
+def _integrated(value: Callable[[FloatArray], FloatArray], line: Line, low: FloatArray, high: FloatArray) -> FloatArray:
+    """Integrals over intervals, in scaled length, of an answer that is smooth on them; value: (n,) to (n, t, r)."""
     nodes, weights = np.polynomial.legendre.leggauss(SMOOTH_POINTS)
     half = 0.5 * (high - low)
-    at = (0.5 * (low + high)[:, None] + half[:, None] * nodes).ravel()
-    values = images.departure(line, drive, at, root_time[smooth:], 0) + drive.at(at)[:, None, :]
-    values = values.reshape(low.size, SMOOTH_POINTS, -1, drive.n_profiles)
-    integrals = np.einsum("nptr,p->ntr", values, weights) * (half * line.scale)[:, None, None]
-    late = integrals - drive.integrals(low, high)[:, None, :] * line.scale
-    return np.concatenate([early, late], axis=1)
+    values = value((0.5 * (low + high)[:, None] + half[:, None] * nodes).ravel())
+    values = values.reshape(low.size, SMOOTH_POINTS, *values.shape[1:])
+    return np.asarray(np.einsum("nptr,p->ntr", values, weights) * (half * line.scale)[:, None, None])
 
 
 def _early_slope(line: Line, drive: Profiles, places: Places, root_time: FloatArray) -> FloatArray:
@@ -93,7 +140,7 @@ def _early_slope(line: Line, drive: Profiles, places: Places, root_time: FloatAr
     from the value: the images' slopes would cancel there to a rounding error larger than itself.
     """
     slopes = images.departure(line, drive, places.low, root_time, places.order)
-    for end, film, sign in ((0.0, line.film_low, 1.0), (line.length, line.film_high, -1.0)):
+    for end, film, sign in ((line.begins, line.film_low, 1.0), (line.length, line.film_high, -1.0)):
         on_end = places.low == end
         if on_end.any() and 0.0 < film * line.extent < 1.0:
             at_end = places.low[on_end]
