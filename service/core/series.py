@@ -21,9 +21,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core.lines import laplace
-from service.core.lines.line import VALUE, Drive, Line, WallDrive, active_breaks, wall_distance
+from service.core.lines.line import VALUE, Drive, Line, WallDrive, wall_distance
 from service.core.lines.modes import eigen_integrals, modes_of
 from service.core.lines.places import Places
+from service.core.lines.stack import StackLine
 from service.core.split import Part
 
 FloatArray = NDArray[np.float64]
@@ -74,7 +75,7 @@ def summed(lines: Sequence[Line], part: Part, point: Sequence[float]) -> SeriesV
     orders = [
         (_cost(lines, part, point, order), order)
         for order in ORDERS
-        if not any(lines[axis].is_endless for axis in order[1:])
+        if all(_has_modes(lines[axis]) for axis in order[1:])
     ]
     best: SeriesValue | None = None
     for cost, order in sorted(orders):
@@ -92,11 +93,16 @@ def reach(line: Line, drive: Drive, place: float) -> float:
     """Scaled distance from a place to the nearest break of what drives its line, infinite where there is none."""
     if isinstance(drive, WallDrive):
         return float(wall_distance(line, np.array([place]), high=drive.high)[0])
-    knots, has_jump, has_kink = active_breaks(line, drive)
+    knots, has_jump, has_kink = line.active_breaks(drive)
     active = has_jump | has_kink
     if not active.any():
         return math.inf
-    return float(np.abs(place - knots[active]).min()) * line.scale
+    return float(line.between(np.array(place), knots[active]).min())
+
+
+def _has_modes(line: Line) -> bool:
+    """Whether a line gives eigenfunctions here: it has two ends and is of one material."""
+    return not (line.is_endless or isinstance(line, StackLine))
 
 
 def _modes_needed(lines: Sequence[Line], axes: Sequence[int], distance: float) -> list[float]:

@@ -57,10 +57,11 @@ def bound_everywhere(integral: Integral) -> float:
 
     Rounding refers to the largest jump of a profile all along, which is at least what its line carries.
     """
-    carried = [
-        breaks_of(line, drive).largest_jump if isinstance(drive, Profiles) else 0.0
+    jumps = [
+        line.largest_jump(drive) if isinstance(drive, Profiles) else np.zeros(1)
         for line, drive in zip(integral.lines, integral.part.drives, strict=True)
     ]
+    carried = [jump if own is None else own for jump, own in zip(jumps, integral.carried, strict=True)]
     by_rule = by_rounding = 0.0
     for product in integral.products:
         most = [np.abs(factor).max(axis=0, keepdims=True) for factor in product.factors]
@@ -72,7 +73,9 @@ def bound_everywhere(integral: Integral) -> float:
             most = np.split(_widened(np.concatenate(same, axis=2), integral.step), columns, axis=2)
         x, y, z = most
         by_rule += float(_weigh(x * y * z, product.weights)[0])
-        x, y, z = (np.maximum(size, least) for size, least in zip(most, carried, strict=True))
+        if product.weights.size > 1:
+            most = [np.maximum(size, least) for size, least in zip(most, carried, strict=True)]
+        x, y, z = most
         by_rounding += float(_weigh(x * y * z, product.weights)[0])
     return _rule_error(integral) * by_rule + ROUNDING * by_rounding
 
@@ -119,8 +122,10 @@ def _rounded(carried: Factors, product: Product, sizes: Sequence[FloatArray]) ->
 def _carried(integral: Integral) -> Factors:
     """For each axis what rounding in its factor refers to at each node, shape (1, n_nodes, n_columns)."""
     x, y, z = (
-        _carried_by(line, drive, places, integral.times)
-        for line, drive, places in zip(integral.lines, integral.part.drives, integral.places, strict=True)
+        _carried_by(line, drive, places, integral.times) if own is None else own
+        for line, drive, places, own in zip(
+            integral.lines, integral.part.drives, integral.places, integral.carried, strict=True
+        )
     )
     return x, y, z
 

@@ -52,7 +52,8 @@ def integrate(
         products = [Product(nodes.weights, (answers[0].total, answers[1].total, answers[2].total))]
     if is_undying(lines):
         products += _never_decaying(lines, part, places, answers, nodes)
-    return Integral(lines, part, places, times, step, tuple(products))
+    x, y, z = (answer.carried for answer in answers)
+    return Integral(lines, part, places, times, step, tuple(products), (x, y, z))
 
 
 def on_grid(integral: Integral) -> FloatArray:
@@ -148,12 +149,8 @@ def _limit(line: Line, drive: Drive, places: Places) -> FloatArray:
     columns = 1 if isinstance(drive, WallDrive) else drive.n_profiles
     if not line.keeps_its_mean or places.order == -1:
         return np.zeros((places.low.size, columns))
-    if isinstance(drive, WallDrive):
-        mean = np.ones(1) / line.extent
-    else:
-        mean = drive.integrals(np.zeros(1), np.array([line.length]))[0] / line.length
     span = np.ones(places.low.size) if places.high is None else (places.high - places.low) * line.scale
-    return span[:, None] * mean
+    return span[:, None] * line.mean(drive)
 
 
 def _contract(product: Product) -> FloatArray:

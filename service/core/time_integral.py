@@ -31,7 +31,8 @@ class Product:
 class Integral:
     """A part's time integral on the product of three sets of places.
 
-    lines, part, places, times: what it was made from. products: what to add up. step: in ln t.
+    lines, part, places, times: what it was made from. products: what to add up. step: in ln t. carried: for each line
+    the most that its answers were summed from, shape (1, n_nodes, n_columns), or None where its modes and images say.
     """
 
     lines: Sequence[Line]
@@ -40,6 +41,7 @@ class Integral:
     times: FloatArray
     step: float
     products: tuple[Product, ...]
+    carried: tuple[FloatArray | None, FloatArray | None, FloatArray | None]
 
     @property
     def node_count(self) -> int:

@@ -8,9 +8,10 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines.line import Drive, Line, WallDrive, active_breaks, wall_distance
+from service.core.lines.line import Drive, Line, WallDrive, wall_distance
 from service.core.lines.modes import MODE_COUNT, modes_of
 from service.core.lines.places import Places
+from service.core.lines.stack import StackLine
 from service.core.maps import Profiles
 from service.core.split import Part
 
@@ -54,10 +55,17 @@ def times_for(
 
 def slowest_rate(lines: Sequence[Line]) -> float:
     """Decay rate of the slowest product of modes, not counting one that does not decay at all."""
-    finite = [line for line in lines if not line.is_endless]
-    rates = [modes_of(line, MODE_COUNT).rates for line in finite]
-    together = sum(float(rate[0]) for rate in rates)
-    return together if together > 0 else min(float(rate[1]) for rate in rates)
+    rates = [_slow_rates(line) for line in lines if not line.is_endless]
+    together = sum(first for first, _ in rates)
+    return together if together > 0 else min(second for _, second in rates)
+
+
+def _slow_rates(line: Line) -> tuple[float, float]:
+    """Decay rates of a line's first two modes, or what they cannot fall below."""
+    if isinstance(line, StackLine):
+        return line.slow_rates
+    first, second = modes_of(line, MODE_COUNT).rates[:2]
+    return float(first), float(second)
 
 
 def is_undying(lines: Sequence[Line]) -> bool:
@@ -89,7 +97,7 @@ def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], ear
     if wall is not None and not profile_is_taken_out(lines, part, places):
         return _nearest_to_wall(lines[wall], part.drives[wall], places[wall]) ** 2 / (4 * CUT)
     slopes = any(asked.order == -1 for asked in places)
-    film = max((film for line in lines for film in (line.film_low, line.film_high) if film < math.inf), default=0.0)
+    film = max((film for line in lines for film in line.films_per_extent if film < math.inf), default=0.0)
     least = _shortest(lines)
     # A film of a large Biot number acts early, against another such film with the square of it.
     scale = least / (1 + film * least)
@@ -112,9 +120,7 @@ def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], ear
 def _narrowest(lines: Sequence[Line], part: Part) -> float:
     """Scaled width of the narrowest piece of a part's profiles."""
     return min(
-        drive.narrowest * line.scale
-        for line, drive in zip(lines, part.drives, strict=True)
-        if isinstance(drive, Profiles)
+        line.narrowest(drive) for line, drive in zip(lines, part.drives, strict=True) if isinstance(drive, Profiles)
     )
 
 
@@ -143,8 +149,8 @@ def _nearest_to_break(line: Line, drive: Drive, places: Places) -> tuple[float, 
     assert isinstance(drive, Profiles)
     if places.high is not None:
         return math.inf, 0.0
-    knots, has_jump, has_kink = active_breaks(line, drive)
-    distances = np.abs(places.low[:, None] - knots) * line.scale
+    knots, has_jump, has_kink = line.active_breaks(drive)
+    distances = line.between(places.low[:, None], knots)
     near_jump = distances[:, has_jump]
     other = float(distances[:, has_kink].min(initial=math.inf))
     if places.order == -1 and (near_jump == 0).any():

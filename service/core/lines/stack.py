@@ -16,6 +16,7 @@ from that end. p = 1, m = Y_load / Y, but p = 0, m = 1 at a held end.
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from itertools import pairwise
@@ -23,7 +24,7 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines.line import SLOPE, VALUE, Drive, Order, WallDrive
+from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order, WallDrive
 from service.core.lines.places import Places
 from service.core.maps import Profiles
 
@@ -36,35 +37,47 @@ AT_REST = 1e-24
 
 
 @dataclass(frozen=True)
-class StackLine:
-    """Layers from 0 up.
+class StackLine(Line):
+    """Layers from 0 up. Make one with `of`.
 
     thickness: of each layer, in the caller's unit; the heights of borders would not keep the digits of a thin one.
     conductivity, capacity: k and c of each layer. contacts: conductance at each inner border, infinite if bonded.
-    film_low, film_high: coefficients at the ends; 0 insulated, infinite held.
-    Slopes are k Z', the flow per area towards the low end, which is continuous; an inflow drives with its own amount.
+    film_low, film_high are coefficients in the caller's units and scale is 1: slopes are k Z', the flow per area
+    towards the low end, which is continuous, and an inflow drives with its own amount. Only distances that waves
+    travel are scaled.
     """
 
-    thickness: tuple[float, ...]
-    conductivity: tuple[float, ...]
-    capacity: tuple[float, ...]
-    contacts: tuple[float, ...]
-    film_low: float
-    film_high: float
+    thickness: tuple[float, ...] = ()
+    conductivity: tuple[float, ...] = ()
+    capacity: tuple[float, ...] = ()
+    contacts: tuple[float, ...] = ()
 
-    # Its flows and films are in the caller's units; only times of travel are scaled.
-    scale = 1.0
-    is_endless = False
+    @classmethod
+    def of(
+        cls,
+        thickness: Sequence[float],
+        conductivity: Sequence[float],
+        capacity: Sequence[float],
+        contacts: Sequence[float],
+        film_low: float,
+        film_high: float,
+    ) -> StackLine:
+        """The line of layers given from below; one contact fewer than layers."""
+        return cls(
+            math.fsum(thickness),
+            1.0,
+            film_low,
+            film_high,
+            thickness=tuple(thickness),
+            conductivity=tuple(conductivity),
+            capacity=tuple(capacity),
+            contacts=tuple(contacts),
+        )
 
     @cached_property
     def heights(self) -> FloatArray:
         """Heights of the borders, from 0 to the top, shape (n_layers + 1,)."""
         return np.array([math.fsum(self.thickness[:count]) for count in range(len(self.thickness) + 1)])
-
-    @cached_property
-    def length(self) -> float:
-        """Height of the stack."""
-        return math.fsum(self.thickness)
 
     @cached_property
     def travel(self) -> FloatArray:
@@ -78,9 +91,9 @@ class StackLine:
         return float(self.travel[-1])
 
     @property
-    def keeps_its_mean(self) -> bool:
-        """Whether nothing leaves the line at either end."""
-        return self.film_low == 0.0 and self.film_high == 0.0
+    def steepest(self) -> float:
+        """Largest conductance per area of a layer."""
+        return max(k / thickness for k, thickness in zip(self.conductivity, self.thickness, strict=True))
 
     @cached_property
     def films_per_extent(self) -> tuple[float, ...]:
@@ -137,18 +150,52 @@ class StackLine:
         total += float(contacts @ (borders[:-1] * (whole - borders[:-1])))
         return total / float(whole)
 
-    def travelled(self, coordinates: FloatArray) -> FloatArray:
-        """Scaled distance from the low end."""
+    def from_end(self, coordinates: FloatArray, *, high: bool) -> FloatArray:
+        """Scaled distance of places from one end, with digits of its own there."""
+        if high:
+            return self.mirrored().from_end(self.length - coordinates, high=False)
         return np.interp(coordinates, self.heights, self.travel)
 
-    def travelled_from_high(self, coordinates: FloatArray) -> FloatArray:
-        """Scaled distance from the high end, with digits of its own there."""
-        depths = self.length - np.array(self.heights[::-1])
-        return np.interp(self.length - coordinates, depths, self.extent - self.travel[::-1])
+    def between(self, coordinates: FloatArray, others: FloatArray) -> FloatArray:
+        """Scaled distance between places."""
+        return np.abs(self.from_end(coordinates, high=False) - self.from_end(others, high=False))
+
+    def active_breaks(self, profiles: Profiles) -> tuple[FloatArray, NDArray[np.bool_], NDArray[np.bool_]]:
+        """Borders, and which of them send out a jump and which a kink as time begins, shape (n,) each."""
+        divided = self.divided(profiles.knots)
+        values = divided.held_by_layers(profiles)
+        has_jump = np.concatenate([[False], (values[1:] != values[:-1]).any(axis=1), [False]])
+        has_kink = np.zeros_like(has_jump)
+        for index, film in ((0, self.film_low), (-1, self.film_high)):
+            has_jump[index] = film == math.inf and values[index].any()
+            has_kink[index] = 0.0 < film < math.inf and values[index].any()
+        return divided.heights, has_jump, has_kink
+
+    def largest_jump(self, profiles: Profiles) -> FloatArray:
+        """What a profile carries at the most, shape (n_profiles,)."""
+        return np.abs(profiles.left).max(axis=0)
+
+    def narrowest(self, profiles: Profiles) -> float:
+        """Scaled width of the narrowest piece of profiles that is not zero, borders of layers ending a piece."""
+        divided = self.divided(profiles.knots)
+        driven = divided.held_by_layers(profiles).any(axis=1)
+        return float(np.diff(divided.travel)[driven].min(initial=math.inf))
+
+    def mean(self, drive: Drive) -> FloatArray:
+        """What a line that loses nothing comes to, shape (n_columns,)."""
+        if isinstance(drive, WallDrive):
+            return np.ones(1) / self.whole_capacity
+        divided = self.divided(drive.knots)
+        content = np.array(divided.thickness) * np.array(divided.capacity)
+        return content @ divided.held_by_layers(drive) / self.whole_capacity
+
+    def held_by_layers(self, profiles: Profiles) -> FloatArray:
+        """The profiles in the middle of each layer, shape (n_layers, n_profiles)."""
+        return profiles.at(0.5 * (self.heights[1:] + self.heights[:-1]))
 
     def mirrored(self) -> StackLine:
         """The same line upside down."""
-        return StackLine(
+        return StackLine.of(
             self.thickness[::-1],
             self.conductivity[::-1],
             self.capacity[::-1],
@@ -172,11 +219,11 @@ class StackLine:
             thickness += [float(part) for part in parts]
             layers += [layer] * parts.size
             contacts += [math.inf] * (parts.size - 1) + list(self.contacts[layer : layer + 1])
-        return StackLine(
-            tuple(thickness),
-            tuple(self.conductivity[layer] for layer in layers),
-            tuple(self.capacity[layer] for layer in layers),
-            tuple(contacts),
+        return StackLine.of(
+            thickness,
+            [self.conductivity[layer] for layer in layers],
+            [self.capacity[layer] for layer in layers],
+            contacts,
             self.film_low,
             self.film_high,
         )
@@ -337,7 +384,7 @@ def transform(line: StackLine, drive: Drive, places: Places, s: Array) -> Array:
     if isinstance(drive, WallDrive):
         return _of_end(line, drive, _pieces(line, places), places.low.size, s)[:, :, None]
     line = line.divided(drive.knots)
-    values, pieces, n = _of_layers(line, drive), _pieces(line, places), len(line.thickness)
+    values, pieces, n = line.held_by_layers(drive), _pieces(line, places), len(line.thickness)
     up, down = _Upward(line, s), _Upward(line.mirrored(), s)
     fields = _Fields(up, down, pieces, places.low.size, drive.n_profiles)
     for j in np.flatnonzero(values.any(axis=1)):
@@ -353,7 +400,7 @@ def transform(line: StackLine, drive: Drive, places: Places, s: Array) -> Array:
 def departure(line: StackLine, profiles: Profiles, places: Places, s: Array) -> Array:
     """The transformed answer less profile / s: what the borders send out, shape (n, n_s, n_profiles)."""
     line = line.divided(profiles.knots)
-    values, pieces, n = _of_layers(line, profiles), _pieces(line, places), len(line.thickness)
+    values, pieces, n = line.held_by_layers(profiles), _pieces(line, places), len(line.thickness)
     up, down = _Upward(line, s), _Upward(line.mirrored(), s)
     fields = _Fields(up, down, pieces, places.low.size, profiles.n_profiles)
     if line.film_low > 0:
@@ -416,8 +463,3 @@ def _of_end(line: StackLine, drive: WallDrive, pieces: _Pieces, n_places: int, s
 def _taken_in(film: float, seen: Array) -> Array | float:
     """The field an end takes on for a unit of its held value or ambient."""
     return 1.0 if film == math.inf else film / (film + seen)
-
-
-def _of_layers(line: StackLine, profiles: Profiles) -> FloatArray:
-    """The profiles in each layer, shape (n_layers, n_profiles)."""
-    return profiles.at(0.5 * (line.heights[1:] + line.heights[:-1]))
