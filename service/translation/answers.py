@@ -75,7 +75,7 @@ def place_inside(problem: ReadProblem) -> FloatArray:
     extents = problem.extents
     widest = max((extent.high for extent in extents if math.isfinite(extent.high)), default=1.0)
     middles = [
-        0.0 if math.isinf(extent.low) else 0.5 * (extent.high if math.isfinite(extent.high) else widest)
+        0.0 if extent.is_infinite else 0.5 * (extent.high if math.isfinite(extent.high) else widest)
         for extent in extents
     ]
     return np.array([middles])

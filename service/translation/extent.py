@@ -30,9 +30,9 @@ class AxisExtent:
         return cls(0.0, top, tuple(interfaces), (len(thicknesses) + 2) * float(np.spacing(top)))
 
     @property
-    def is_read(self) -> bool:
-        """Whether the size could be read."""
-        return not math.isnan(self.high)
+    def is_infinite(self) -> bool:
+        """Whether the body has no end at all along the axis."""
+        return math.isinf(self.low)
 
     def settle(self, place: float) -> float:
         """A coordinate; the height of an interface or of the top itself where it is that height but for rounding."""
@@ -41,10 +41,6 @@ class AxisExtent:
             if abs(nearest - place) <= self.rounding:
                 return nearest
         return place
-
-    def contains(self, place: float) -> bool:
-        """Whether a coordinate is in the closed body; false for NaN."""
-        return self.low <= place <= self.high
 
 
 Extents = tuple[AxisExtent, AxisExtent, AxisExtent]

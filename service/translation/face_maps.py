@@ -53,6 +53,7 @@ class FaceReader:
         self.axes = (AXES[first], AXES[second])
         self.along = (extents[first], extents[second])
         self.extent = (extents[first].high, extents[second].high)
+        self.begins = (extents[first].low, extents[second].low)
 
     def read(self, kind: Kind, data: FaceData, path: Path) -> FaceContents | None:
         """The solver's map of the data, or None when something was wrong, which is then noted."""
@@ -109,7 +110,7 @@ class FaceReader:
                 named.append(NamedPatch(patch.name, where))
         if len(patches) < len(data.patches) or math.isnan(background) or self._has_unread_extent():
             return None
-        return FaceContents(maps.FaceMap.patches(self.extent, background, patches), tuple(named))
+        return FaceContents(maps.FaceMap.patches(self.extent, background, patches, begins=self.begins), tuple(named))
 
     def _value_of_patch(self, kind: Kind, patch: PatchModel, where: maps.Rectangle | None, path: Path) -> float:
         """The value on a patch; the density of the flow where that is given as a total."""
@@ -171,6 +172,7 @@ class FaceReader:
             readings.second_axis,
             (readings.table * factor).tolist(),
             extend=data.beyond == "hold",
+            begins=self.begins,
         )
         return FaceContents(face_map, filled=missing)
 

@@ -106,9 +106,11 @@ def read_problem(problem: models.Problem, settings: Settings, prefix: Path = ())
 
 def _body(material: Material, conditions: Mapping[Face, Condition], sources: tuple[BoxSource, ...]) -> Body:
     x, y, z = material.extents
+    infinite = (x.is_infinite, y.is_infinite, z.is_infinite)
     if material.layers:
-        return Body.stack((x.high, y.high), material.layers, conditions, sources)
-    return Body((x.high, y.high, z.high), material.conductivity, conditions, sources)
+        return Body.stack((x.high, y.high), material.layers, conditions, sources, infinite)
+    size = (x.high, y.high, z.high)
+    return Body(size, material.conductivity, conditions, sources, infinite=infinite)
 
 
 def _faces(
@@ -137,7 +139,7 @@ def _faces(
 
 def endless_in_words(extent: AxisExtent, face: Face) -> str:
     """The body a face is missing from, to begin a sentence with."""
-    return f"A body that is {'infinite' if math.isinf(extent.low) else 'semi-infinite'} along {face[0]}"
+    return f"A body that is {'infinite' if extent.is_infinite else 'semi-infinite'} along {face[0]}"
 
 
 def _condition(
