@@ -1,12 +1,12 @@
-"""Data that vary over a face: sums of products of one-dimensional piecewise linear profiles.
+"""Data that vary over a face: sums of products of one-dimensional profiles, polynomials in pieces.
 
 A map f(p, q) over a face with axes p and q (in the order x, y, z) is kept as
 
     f(p, q) = sum over r of  P_r(p) Q_r(q)
 
-with profiles P_r on common knots. Constant patches over a background and bilinear readings both have this form, and
-the solver then needs nothing but the response of one line to one profile. The number of products is the numerical
-rank of the table of cell values or readings, found by a singular value decomposition.
+with profiles P_r on common knots. Constant patches over a background, bilinear readings and the curved pieces of a
+formula all have this form, and the solver then needs nothing but the response of one line to one profile. The number
+of products is the numerical rank of the table of cell values or readings, found by a singular value decomposition.
 """
 
 from __future__ import annotations
@@ -27,29 +27,53 @@ FloatArray = NDArray[np.float64]
 # Singular values below this part of the largest are rounding noise of the decomposition, not data.
 RANK_TOLERANCE = 4e-16
 
+# Degree of the pieces of a curved profile, which passes through the data at the Chebyshev points of each piece.
+DEGREE = 7
+
+# Points of Gauss's rule that is exact for a curved piece.
+EXACT_POINTS = 4
+
 
 @dataclass(frozen=True, eq=False)
 class Profiles:
-    """Piecewise linear functions of one coordinate that share their knots; they may jump at a knot.
+    """Functions of one coordinate, linear in pieces or curved, that share their knots; they may jump at a knot.
 
     knots: shape (n_pieces + 1,), increasing, first 0; the last may be infinite if the profiles are constant there, and
         along an axis without ends the first is -infinity.
     left, right: values at the left and right end of each piece, shape (n_pieces, n_profiles).
+    bends: how a curved piece departs from the straight line between its ends: the weight of P_k - P_(k-2) for each
+        degree k from 2 on, P_k Legendre's polynomials, shape (n_degrees, n_pieces, n_profiles). None for straight
+        pieces; none of the pieces is endless then.
     """
 
     knots: FloatArray
     left: FloatArray
     right: FloatArray
+    bends: FloatArray | None = None
 
     def __post_init__(self) -> None:
-        for array in (self.knots, self.left, self.right):
+        for array in self._arrays:
             array.setflags(write=False)
+
+    @property
+    def _arrays(self) -> list[FloatArray]:
+        straight = [self.knots, self.left, self.right]
+        return straight if self.bends is None else [*straight, self.bends]
+
+    @classmethod
+    def through(cls, knots: FloatArray, values: FloatArray) -> Profiles:
+        """Curved profiles with these values at `chebyshev_places(knots)`, shape (n_places, n_profiles)."""
+        starts = DEGREE * np.arange(knots.size - 1)
+        table = values[starts[:, None] + np.arange(DEGREE + 1)]
+        ends = table[:, :1] * _NEAR_LEFT[:, None] + table[:, -1:] * _NEAR_RIGHT[:, None]
+        bends = np.einsum("kn,pnr->kpr", _BENDS_OF_VALUES, (table - ends)[:, 1:-1])
+        return cls(knots, table[:, 0].copy(), table[:, -1].copy(), bends)
 
     @cached_property
     def digest(self) -> bytes:
         """Fingerprint of the numbers, by which eigen-integrals are cached."""
-        content = b"".join(array.tobytes() for array in (self.knots, self.left, self.right))
-        return hashlib.sha256(content + repr(self.left.shape).encode()).digest()
+        content = b"".join(array.tobytes() for array in self._arrays)
+        return hashlib.sha256(content + repr([array.shape for array in self._arrays]).encode()).digest()
 
     def __hash__(self) -> int:
         return hash(self.digest)
@@ -72,9 +96,57 @@ class Profiles:
         """Slope of each piece, shape (n_pieces, n_profiles); zero on an endless piece."""
         return (self.right - self.left) / self.widths[:, None]
 
+    @property
+    def is_curved(self) -> bool:
+        """Whether the pieces are curved."""
+        return self.bends is not None
+
+    @cached_property
+    def sizes(self) -> FloatArray:
+        """What the size of each profile does not exceed on each piece, shape (n_pieces, n_profiles)."""
+        straight = np.maximum(np.abs(self.left), np.abs(self.right))
+        return straight if self.bends is None else straight + 2.0 * np.abs(self.bends).sum(axis=0)
+
+    @cached_property
+    def legendre(self) -> FloatArray:
+        """Weights of Legendre's polynomials on each piece, shape (n_degrees, n_pieces, n_profiles)."""
+        straight = np.stack([0.5 * (self.left + self.right), 0.5 * (self.right - self.left)])
+        if self.bends is None:
+            return straight
+        weights = np.concatenate([straight, self.bends])
+        weights[: self.bends.shape[0]] -= self.bends
+        return weights
+
+    def derivative(self, order: int) -> Profiles:
+        """The profiles' derivative of some order along the coordinate, piece by piece."""
+        weights = np.polynomial.legendre.legder(self.legendre, order, axis=0) * (2.0 / self.widths[:, None]) ** order
+        weights = np.concatenate([weights, np.zeros((max(2 - weights.shape[0], 0), *weights.shape[1:]))])
+        bends = weights[2:].copy()
+        for k in range(bends.shape[0] - 1, -1, -1):
+            if k + 2 < bends.shape[0]:
+                bends[k] += bends[k + 2]
+        straight = weights[:2].copy()
+        for k in range(min(bends.shape[0], 2)):
+            straight[k] += bends[k]
+        left, right = straight[0] - straight[1], straight[0] + straight[1]
+        return Profiles(self.knots, left, right, bends if bends.size else None)
+
+    def only(self, pieces: NDArray[np.bool_]) -> Profiles:
+        """The profiles with zero on all other pieces."""
+        chosen = pieces[:, None]
+        bends = None if self.bends is None else np.where(chosen, self.bends, 0.0)
+        return Profiles(self.knots, np.where(chosen, self.left, 0.0), np.where(chosen, self.right, 0.0), bends)
+
+    def on_piece(self, piece: int | NDArray[np.intp], places: FloatArray) -> FloatArray:
+        """Values of the polynomials of pieces at places from -1 to 1 in them, shape (*places.shape, n_profiles)."""
+        straight = 0.5 * (1 - places[..., None]) * self.left[piece] + 0.5 * (1 + places[..., None]) * self.right[piece]
+        if self.bends is None:
+            return straight
+        return straight + np.einsum("...k,k...r->...r", _bend_shapes(places, self.bends.shape[0]), self.bends[:, piece])
+
     @cached_property
     def _widths_of_what_is_there(self) -> FloatArray:
-        something = self.left.any(axis=1) | self.right.any(axis=1)
+        something = self.sizes.any(axis=1)
         return np.where(something, self.widths, math.inf)
 
     @property
@@ -95,13 +167,15 @@ class Profiles:
 
     def slope_at(self, coordinates: FloatArray) -> FloatArray:
         """Slopes, shape (n_points, n_profiles); the mean of both sides exactly on a knot."""
+        if self.is_curved:
+            return self.derivative(1).at(coordinates)
         slopes = self.slopes
         return 0.5 * (slopes[self._piece(coordinates, "left")] + slopes[self._piece(coordinates, "right")])
 
     @cached_property
     def is_constant(self) -> bool:
         """Whether none of the profiles changes along the line."""
-        return self.left.shape[0] == 1 and bool((self.left == self.right).all())
+        return self.left.shape[0] == 1 and not self.is_curved and bool((self.left == self.right).all())
 
     def integrals(self, low: FloatArray, high: FloatArray) -> FloatArray:
         """Integral of each profile over each interval, shape (n_intervals, n_profiles)."""
@@ -113,12 +187,23 @@ class Profiles:
         for piece in range(self.left.shape[0]):
             start = np.clip(low, self.knots[piece], self.knots[piece + 1])
             stop = np.clip(high, self.knots[piece], self.knots[piece + 1])
+            if self.is_curved:
+                total += self._integral_in(piece, start, stop)
+                continue
             middle = 0.5 * (start + stop) - self.knots[piece] if slopes[piece].any() else np.zeros_like(start)
             values = self.left[piece] + slopes[piece] * middle[:, None]
             # A piece that is zero adds nothing, even over an endless interval.
             with np.errstate(invalid="ignore"):
                 total += np.where(values == 0.0, 0.0, values * (stop - start)[:, None])
         return total
+
+    def _integral_in(self, piece: int, start: FloatArray, stop: FloatArray) -> FloatArray:
+        """Integral over intervals inside one curved piece, by a rule that is exact for it."""
+        nodes, weights = np.polynomial.legendre.leggauss(EXACT_POINTS)
+        half = 0.5 * (stop - start)[:, None]
+        at = (0.5 * (start + stop) - self.knots[piece])[:, None] + half * nodes
+        values = self.on_piece(piece, 2.0 * at / self.widths[piece] - 1.0)
+        return np.asarray(np.einsum("ng,ngr->nr", half * weights, values))
 
     def _piece(self, coordinates: FloatArray, side: str) -> NDArray[np.intp]:
         last = self.left.shape[0] - 1
@@ -129,11 +214,29 @@ class Profiles:
         piece = self._piece(coordinates, side)
         start = self.knots[piece]
         distance = coordinates - np.where(np.isfinite(start), start, coordinates)
-        return np.where(
-            (coordinates == self.knots[piece + 1])[:, None],
-            self.right[piece],
-            self.left[piece] + self.slopes[piece] * distance[:, None],
-        )
+        if self.is_curved:
+            inside = self.on_piece(piece, 2.0 * distance / self.widths[piece] - 1.0)
+        else:
+            inside = self.left[piece] + self.slopes[piece] * distance[:, None]
+        return np.where((coordinates == self.knots[piece + 1])[:, None], self.right[piece], inside)
+
+
+def _bend_shapes(places: FloatArray, count: int) -> FloatArray:
+    """P_k - P_(k-2) for the first k from 2 on, shape (*places.shape, count)."""
+    polynomials = np.polynomial.legendre.legvander(places, count + 1)
+    return np.asarray(polynomials[..., 2:] - polynomials[..., :-2])
+
+
+# Chebyshev's points of a piece from -1 to 1 with its ends, and the weights of a piece's bends from its inner values.
+CHEBYSHEV = -np.cos(np.pi * np.arange(DEGREE + 1) / DEGREE)
+_NEAR_LEFT, _NEAR_RIGHT = 0.5 * (1 - CHEBYSHEV), 0.5 * (1 + CHEBYSHEV)
+_BENDS_OF_VALUES = np.linalg.inv(_bend_shapes(CHEBYSHEV[1:-1], DEGREE - 1))
+
+
+def chebyshev_places(knots: FloatArray) -> FloatArray:
+    """The places at which curved pieces between knots are given, each knot once."""
+    inner = knots[:-1, None] + 0.5 * (1 + CHEBYSHEV[1:-1]) * np.diff(knots)[:, None]
+    return np.append(np.column_stack([knots[:-1], inner]).ravel(), knots[-1])
 
 
 @dataclass(frozen=True)
@@ -165,16 +268,31 @@ class Patch:
     value: float
 
 
+@dataclass(frozen=True)
+class Peak:
+    """Where the data of a formula are highest or lowest, and by how much they may go beyond that value."""
+
+    value: float
+    first: float
+    second: float
+    slack: float
+
+
 @dataclass(frozen=True, eq=False)
 class FaceMap:
-    """Data over a face. Build one with `uniform`, `patches` or `readings`.
+    """Data over a face. Build one with `uniform`, `patches`, `readings` or `formula_map.of_formula`.
 
     first_knots, second_knots: places along the face's two axes, from where an axis begins; the last may be infinite.
-    table: a value for each cell between the knots, or for each pair of knots when the data are bilinear.
-    bilinear: which of the two.
+    table: a value for each cell between the knots, or for each pair of knots when the data are bilinear; along a
+        curved axis for each of `chebyshev_places(knots)`.
+    bilinear: whether the values are those at places and not in cells.
     extent: lengths of the face the map was made for, or None for a uniform map, which fits every face.
     begins: where the axes of that face begin, 0 or -infinity.
     usual: the background, or for readings the lowest; the level other faces are likely to share.
+    curved: whether the pieces along each axis are curved.
+    error: by how much the map may differ from the data it stands for, and slope_error the slopes of both along any
+        direction of the face; 0 for data that are the map itself.
+    peaks: the lowest and the highest of the data where they are not in the table.
     """
 
     first_knots: FloatArray
@@ -184,6 +302,10 @@ class FaceMap:
     extent: tuple[float, float] | None
     usual: float
     begins: tuple[float, float] = (0.0, 0.0)
+    curved: tuple[bool, bool] = (False, False)
+    error: float = 0.0
+    slope_error: float = 0.0
+    peaks: tuple[Peak, Peak] | None = None
 
     @classmethod
     def uniform(cls, value: float) -> FaceMap:
@@ -254,12 +376,12 @@ class FaceMap:
     @property
     def lowest(self) -> float:
         """Least of the data."""
-        return float(self.table.min())
+        return float(self.table.min()) if self.peaks is None else self.peaks[0].value
 
     @property
     def highest(self) -> float:
         """Greatest of the data."""
-        return float(self.table.max())
+        return float(self.table.max()) if self.peaks is None else self.peaks[1].value
 
     @property
     def is_uniform(self) -> bool:
@@ -276,12 +398,27 @@ class FaceMap:
         """Profiles along the second axis."""
         return self._factors[1]
 
+    @property
+    def first_places(self) -> FloatArray:
+        """Places of the table along the first axis, of data given at places."""
+        return chebyshev_places(self.first_knots) if self.curved[0] else self.first_knots
+
+    @property
+    def second_places(self) -> FloatArray:
+        """The same along the second axis."""
+        return chebyshev_places(self.second_knots) if self.curved[1] else self.second_knots
+
     @cached_property
     def _factors(self) -> tuple[Profiles, Profiles]:
         along_first, along_second = _factor(self.table)
-        return self._profiles(self.first_knots, along_first), self._profiles(self.second_knots, along_second)
+        return (
+            self._profiles(self.first_knots, along_first, curved=self.curved[0]),
+            self._profiles(self.second_knots, along_second, curved=self.curved[1]),
+        )
 
-    def _profiles(self, knots: FloatArray, values: FloatArray) -> Profiles:
+    def _profiles(self, knots: FloatArray, values: FloatArray, *, curved: bool) -> Profiles:
+        if curved:
+            return Profiles.through(knots, values)
         if self.bilinear:
             return Profiles(knots, values[:-1].copy(), values[1:].copy())
         return Profiles(knots, values, values.copy())
@@ -292,7 +429,11 @@ class FaceMap:
 
     def minus(self, reference: float) -> FaceMap:
         """The same map counted from another zero."""
-        return replace(self, table=self.table - reference, usual=self.usual - reference)
+        peaks = None
+        if self.peaks is not None:
+            lowest, highest = (replace(peak, value=peak.value - reference) for peak in self.peaks)
+            peaks = lowest, highest
+        return replace(self, table=self.table - reference, usual=self.usual - reference, peaks=peaks)
 
     def check_covers(
         self, first_length: float, second_length: float, face: str, begins: tuple[float, float] = (0.0, 0.0)
@@ -324,8 +465,11 @@ def _factor(table: FloatArray) -> tuple[FloatArray, FloatArray]:
     core = table[np.ix_(rows, columns)]
     if core.size == 0:
         return along_first, along_second
-    if (core == core.flat[0]).all():
-        along_first[rows], along_second[columns] = core.flat[0], 1.0
+    if (core == core[:, :1]).all():
+        along_first[rows, 0], along_second[columns] = core[:, 0], 1.0
+        return along_first, along_second
+    if (core == core[:1]).all():
+        along_first[rows], along_second[columns, 0] = 1.0, core[0]
         return along_first, along_second
     left, singular, right = np.linalg.svd(core, full_matrices=False)
     rank = int(np.count_nonzero(singular > RANK_TOLERANCE * max(table.shape) * singular[0]))
