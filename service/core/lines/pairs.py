@@ -165,9 +165,10 @@ def _block(line: Line, first: _Readings, second: _Readings, root_time: FloatArra
         # The antiderivative in the place of the interval read by its ends; in the second it looks the other way.
         values = (0.5 - values) * np.sign(difference if first.by_ends else -difference)
     # The image is -rho_(-1); of its antiderivatives the one in a single place changes its sign at the low end.
-    at_low = np.add.outer(first.base + first.shift, second.base + second.shift) * line.scale
-    image = _arrived(lambda s, t: images.reflected(order, s, t, line.film_low), at_low, root_time)
-    values += image if order == 0 else -image
+    if line.has_low_end:
+        at_low = np.add.outer(first.base + first.shift, second.base + second.shift) * line.scale
+        image = _arrived(lambda s, t: images.reflected(order, s, t, line.film_low), at_low, root_time)
+        values += image if order == 0 else -image
     if not line.is_endless:
         at_high = np.add.outer((line.length - first.base) - first.shift, (line.length - second.base) - second.shift)
         values -= _arrived(lambda s, t: images.reflected(order, s, t, line.film_high), at_high * line.scale, root_time)

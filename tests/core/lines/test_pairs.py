@@ -35,6 +35,8 @@ def exact(line: Line, i: int, j: int, time: float) -> float:
             return total / ((b - a) * (d - c))
 
         at_low, at_high = (1 if film == 0.0 else -1 for film in (line.film_low, line.film_high))
+        if not line.has_low_end:
+            return float(mean(c, d))
         if line.is_endless:
             return float(mean(c, d) + at_low * mean(-d, -c))
         period = 2 * mpmath.mpf(line.length) * scale
@@ -53,8 +55,9 @@ def exact(line: Line, i: int, j: int, time: float) -> float:
         Line(2.0, 0.7, math.inf, math.inf),
         Line(math.inf, 1.3, 0.0, 0.0),
         Line(math.inf, 1.3, math.inf, 0.0),
+        Line(math.inf, 1.3, 0.0, 0.0, begins=-math.inf),
     ],
-    ids=["insulated", "insulated and held", "held", "half-line insulated", "half-line held"],
+    ids=["insulated", "insulated and held", "held", "half-line insulated", "half-line held", "without ends"],
 )
 def test_means_are_exact_to_rounding_at_every_time_and_width(line: Line) -> None:
     times = np.geomspace(1e-16, 1.0, 9)
