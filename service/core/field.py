@@ -139,8 +139,9 @@ def _field(
         return Field(potential, bound, None, None, nodes)
     flux, flux_bound = _flux(setting, columns, tolerance, tensor, keep_going)
     for edge in edges:
-        for component, conductivity, slope in zip(flux, setting.body.conductivity, edge.slopes, strict=True):
-            component[edge.index] = -conductivity * slope
+        z = columns[2][edge.index[-1]]
+        for axis, slope in enumerate(edge.slopes):
+            flux[axis][edge.index] = -setting.body.conductivity_at(axis, z) * slope
     flux[:, has_no_finite_flux(setting.body, places, shape)] = np.nan
     return Field(potential, bound, flux, flux_bound, nodes)
 
@@ -148,12 +149,12 @@ def _field(
 def check_inside(body: Body, columns: Sequence[FloatArray]) -> None:
     """Raise OutsideBody for a coordinate that is not in the closed body."""
     for axis, column in enumerate(columns):
-        wrong = ~((column >= 0) & (column <= body.size[axis]) & np.isfinite(column))
+        wrong = ~((column >= body.begins[axis]) & (column <= body.size[axis]) & np.isfinite(column))
         if wrong.any():
             index = int(np.argmax(wrong))
             raise OutsideBody(
-                f"{AXES[axis]} = {column[index]:g} is outside the body, which reaches from 0 to "
-                f"{body.size[axis]:g} along {AXES[axis]}.",
+                f"{AXES[axis]} = {column[index]:g} is outside the body, which reaches from "
+                f"{body.begins[axis]:g} to {body.size[axis]:g} along {AXES[axis]}.",
                 (AXES[axis], index),
             )
 
@@ -226,7 +227,7 @@ def _flux(
         orders[axis] = SLOPE
         slope, bounds, _ = _sum_of_parts(setting, columns, (orders[0], orders[1], orders[2]), step, tensor, keep_going)
         assert slope is not None
-        factor = math.sqrt(setting.body.conductivity[axis])
+        factor = _conductivity_over_scale(setting.body, setting.lines[axis], axis, columns, tensor)
         flux[axis] = -factor * slope
         if tensor:
             x, y, z = bounds
@@ -234,8 +235,19 @@ def _flux(
         else:
             bound = bounds[0]
         np.maximum(flux_bound, factor * bound, out=flux_bound)
-    steepest = max(math.sqrt(k) / line.extent for k, line in zip(setting.body.conductivity, setting.lines, strict=True))
+    least = time_range.shortest(setting.lines)
+    steepest = max(1 / (line.scale * least) if line.is_endless else line.steepest for line in setting.lines)
     return flux, flux_bound + STORED * np.abs(flux).max(axis=0) + time_range.CUT_ERROR * setting.span * steepest
+
+
+def _conductivity_over_scale(
+    body: Body, line: Line, axis: int, columns: Sequence[FloatArray], tensor: bool
+) -> FloatArray | float:
+    """Flow per area along an axis for a slope of 1 per scaled length, to broadcast to the field."""
+    if axis == 2 or not body.layers:
+        return 1 / line.scale
+    factor = body.conductivity_at(axis, columns[2]) * line.scale
+    return factor[None, None, :] if tensor else factor
 
 
 def _sum_of_parts(

@@ -16,7 +16,11 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
+from functools import cached_property
 from typing import Literal
+
+import numpy as np
+from numpy.typing import NDArray
 
 from service.core.errors import NotPhysical
 from service.core.laws import ConductivityLaw, Radiation
@@ -149,11 +153,34 @@ class Body:
         height = math.fsum(layer.thickness for layer in layers)
         return cls((*section, height), layers[0].conductivity, faces, sources, tuple(layers), infinite)
 
-    @property
+    @cached_property
     def interfaces(self) -> tuple[float, ...]:
         """Heights z of the interfaces between layers, from below, without the two faces."""
         heights = [math.fsum(layer.thickness for layer in self.layers[:n]) for n in range(1, len(self.layers))]
         return tuple(heights)
+
+    @cached_property
+    def generating(self) -> tuple[BoxSource, ...]:
+        """The sources, and the layers that generate, leaving out what generates nothing."""
+        borders = (0.0, *self.interfaces, self.size[2])
+        low = tuple(-math.inf if endless else 0.0 for endless in self.infinite)
+        layers = [
+            BoxSource(
+                (low[0], low[1], borders[index]), (self.size[0], self.size[1], borders[index + 1]), layer.generation
+            )
+            for index, layer in enumerate(self.layers)
+        ]
+        return tuple(source for source in (*self.sources, *layers) if source.density != 0.0)
+
+    def layer_at(self, z: NDArray[np.float64]) -> NDArray[np.intp]:
+        """Which layer each height is in; an interface belongs to the layer below it."""
+        return np.searchsorted(self.interfaces, z, side="left")
+
+    def conductivity_at(self, axis: int, z: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Conductivity along an axis at heights z, of the same shape."""
+        if not self.layers:
+            return np.full_like(z, self.conductivity[axis])
+        return np.array([layer.conductivity[axis] for layer in self.layers])[self.layer_at(z)]
 
     def __post_init__(self) -> None:
         self._check_size_and_conductivity()
@@ -227,6 +254,14 @@ class Body:
                     f"Layer {index} conducts along y {y / x:g} times as well as along x, the first layer "
                     f"{first_y / first_x:g} times; that ratio has to be the same in all layers.",
                     (*where, "conductivity"),
+                )
+        for face in self.present_faces if self.layers else ():
+            face_map = map_of(self.faces[face]) if face in self.faces else None
+            if axis_of(face) != 2 and face_map is not None and not face_map.is_uniform:
+                raise NotPhysical(
+                    f"The face {face} is a side of a stack and has data that vary over it; on the sides of a stack one "
+                    "value a face can be given, and any map on its bottom and top.",
+                    ("faces", face),
                 )
         if self.layers and self.layers[0].contact_below != math.inf:
             raise NotPhysical(

@@ -2,12 +2,10 @@
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import field, time_error, time_form
+from service.core import field, time_error, time_form, time_range
 from service.core.lines.line import VALUE, Line
 from service.core.lines.places import Places
 from service.core.maps import FaceMap
@@ -38,7 +36,7 @@ def span_of(body: Body, lines: tuple[Line, Line, Line], parts: tuple[Part, ...])
 
 def _rises(body: Body, lines: tuple[Line, Line, Line], flows: list[Part]) -> FloatArray:
     grid = [Places(_coordinates(lines, flows, axis), VALUE) for axis in range(3)]
-    hot = _strongest(body)
+    hot = _strongest(body, lines)
     points = [Places(hot[:, axis], VALUE) for axis in range(3)]
     rows, step = field.kept_rows(), time_error.COARSEST_STEP
     on_grid = sum(
@@ -53,28 +51,41 @@ def _rises(body: Body, lines: tuple[Line, Line, Line], flows: list[Part]) -> Flo
     return np.concatenate([on_grid.ravel(), at_points])
 
 
-def _strongest(body: Body) -> FloatArray:
+def _looked_at(lines: tuple[Line, Line, Line], axis: int) -> tuple[float, float]:
+    """The whole of a finite axis; along an endless one as far beyond the data as the body is wide elsewhere, or as
+    what drives it where it has no width.
+    """
+    line = lines[axis]
+    low, high = line.stretch
+    if not line.is_endless:
+        return low, high
+    widest = max((other.extent for other in lines if not other.is_endless), default=time_range.shortest(lines))
+    return max(low - widest / line.scale, line.begins), high + widest / line.scale
+
+
+def _strongest(body: Body, lines: tuple[Line, Line, Line]) -> FloatArray:
     """The middles of the boxes, patches and readings that raise most where there are many, by their data and size.
 
     A box raises the potential by about its density times the square of its least size, a patch by its inflow times it.
     """
     found = []
-    if len(body.sources) > 1:
-        for source in body.sources:
-            low, high = np.array(source.low), np.minimum(source.high, np.array(source.low) + max(body.size[:2]))
+    limits = np.array([_looked_at(lines, axis) for axis in range(3)]).T
+    if len(body.generating) > 1:
+        for source in body.generating:
+            low, high = np.maximum(source.low, limits[0]), np.minimum(source.high, limits[1])
             found.append((abs(source.density) * float((high - low).min()) ** 2, 0.5 * (low + high)))
     for face, condition in body.faces.items():
         if isinstance(condition, Inflow) and condition.inflow.table.size > 9:
-            found.extend(_strongest_cells(body, face, condition.inflow))
+            found.extend(_strongest_cells(body, face, condition.inflow, limits))
     found.sort(key=lambda entry: -entry[0])
     return np.array([place for _, place in found[:HOT_PLACES]]).reshape(-1, 3)
 
 
-def _strongest_cells(body: Body, face: Face, face_map: FaceMap) -> list[tuple[float, FloatArray]]:
+def _strongest_cells(body: Body, face: Face, face_map: FaceMap, limits: FloatArray) -> list[tuple[float, FloatArray]]:
     first, second = axes_along(face)
     at, sizes = [], []
     for axis, knots in ((first, face_map.first_knots), (second, face_map.second_knots)):
-        ends = np.minimum(knots, body.size[axis] if math.isfinite(body.size[axis]) else knots[-2] + max(body.size[:2]))
+        ends = np.clip(knots, limits[0, axis], limits[1, axis])
         widths = np.diff(ends)
         at.append(ends if face_map.bilinear else 0.5 * (ends[1:] + ends[:-1]))
         sizes.append(
@@ -92,11 +103,8 @@ def _strongest_cells(body: Body, face: Face, face_map: FaceMap) -> list[tuple[fl
 
 
 def _coordinates(lines: tuple[Line, Line, Line], flows: list[Part], axis: int) -> FloatArray:
-    line = lines[axis]
-    reach = line.length
-    if line.is_endless:
-        reach = max(other.extent for other in lines if not other.is_endless) / line.scale
-    places = [0.0, 0.5 * reach, reach]
+    low, high = _looked_at(lines, axis)
+    places = [low, 0.5 * (low + high), high]
     for part in flows:
         knots = part.knots(axis)
         if knots.size > 2:

@@ -8,12 +8,14 @@ from __future__ import annotations
 
 import math
 from collections import Counter
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from service.core.lines.line import Drive, Line, WallDrive
+from service.core.lines.stack import StackLine
 from service.core.maps import FaceMap, Profiles
 from service.core.problem import AXES, Body, BoxSource, Face, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
 
@@ -22,6 +24,9 @@ FloatArray = NDArray[np.float64]
 SOURCES = "sources"
 
 UNIT = FaceMap.uniform(1.0).first
+
+# The same along an axis without ends.
+EVERYWHERE = Profiles(np.array([-math.inf, math.inf]), np.ones((1, 1)), np.ones((1, 1)))
 
 
 @dataclass(frozen=True, eq=False)
@@ -55,13 +60,18 @@ class Part:
         return drive.knots if isinstance(drive, Profiles) else np.zeros(0)
 
 
+def scale_of(body: Body, axis: int) -> float:
+    """Scaled length per length of an axis: 1 / sqrt(conductivity), but 1 through a stack."""
+    return 1.0 if body.layers and axis == 2 else 1 / math.sqrt(body.conductivity[axis])
+
+
 def film_of(body: Body, face: Face) -> float:
     """H per scaled length of a face: 0 for a given inflow or insulation, infinite for a held value."""
     condition = body.faces.get(face)
     if isinstance(condition, Held):
         return math.inf
     if isinstance(condition, Film):
-        return condition.coefficient / math.sqrt(body.conductivity[axis_of(face)])
+        return condition.coefficient * scale_of(body, axis_of(face))
     return 0.0
 
 
@@ -70,19 +80,61 @@ def lines_of(body: Body) -> tuple[Line, Line, Line]:
     x, y, z = (
         Line(
             body.size[axis],
-            1 / math.sqrt(body.conductivity[axis]),
+            scale_of(body, axis),
             film_of(body, f"{AXES[axis]}_low"),  # type: ignore[arg-type]
             film_of(body, f"{AXES[axis]}_high"),  # type: ignore[arg-type]
+            body.begins[axis],
+            _stretch_of_data(body, axis) if math.isinf(body.size[axis]) else (0.0, 0.0),
         )
         for axis in range(3)
     )
-    return x, y, z
+    return x, y, _stack_line(body) if body.layers else z
+
+
+def _stack_line(body: Body) -> StackLine:
+    layers = body.layers
+    return StackLine.of(
+        [layer.thickness for layer in layers],
+        [layer.conductivity[2] for layer in layers],
+        _capacities(body),
+        [layer.contact_below for layer in layers[1:]],
+        film_of(body, "z_low"),
+        film_of(body, "z_high"),
+    )
+
+
+def _capacities(body: Body) -> list[float]:
+    """What takes the place of the heat capacity in each layer: its kx over that of the first."""
+    return [layer.conductivity[0] / body.conductivity[0] for layer in body.layers]
+
+
+def _per_capacity(body: Body, profiles: Profiles) -> Profiles:
+    """Profiles along z of flow that is taken up, as the potential they raise."""
+    if not body.layers:
+        return profiles
+    knots = np.union1d(np.minimum(profiles.knots, body.size[2]), body.interfaces)
+    middles = 0.5 * (knots[1:] + knots[:-1])
+    values = profiles.at(middles) / np.array(_capacities(body))[body.layer_at(middles)][:, None]
+    return Profiles(knots, values, values.copy())
+
+
+def _stretch_of_data(body: Body, axis: int) -> tuple[float, float]:
+    """From where to where what drives a body changes along an endless axis, its end included."""
+    marks = [mark for source in body.generating for mark in (source.low[axis], source.high[axis])]
+    for face, condition in body.faces.items():
+        face_map = map_of(condition)
+        if face_map is not None and axis in axes_along(face):
+            marks.extend(face_map.first_knots if axes_along(face)[0] == axis else face_map.second_knots)
+    there = [float(mark) for mark in marks if math.isfinite(mark)]
+    if not body.infinite[axis]:
+        there.append(0.0)
+    return (min(there), max(there)) if there else (0.0, 0.0)
 
 
 def reference_level(body: Body) -> float:
     """The level everything is counted from: the one that leaves most faces undriven.
 
-    In an endless bar its sides count first: what they come to far away drives flows without end.
+    Faces without end count first: what they come to far away drives flows without end.
     """
     levels: Counter[float] = Counter()
     for face in body.present_faces:
@@ -90,17 +142,16 @@ def reference_level(body: Body) -> float:
         if isinstance(condition, Held | Film):
             face_map = map_of(condition)
             assert face_map is not None
-            side_of_bar = body.size[2] == math.inf and axis_of(face) != 2
-            levels[face_map.usual] += 10 if side_of_bar else 1
+            endless = any(math.isinf(body.size[axis]) for axis in axes_along(face))
+            levels[face_map.usual] += 10 if endless else 1
     return levels.most_common(1)[0][0] if levels else 0.0
 
 
 def parts_of(body: Body, reference: float) -> tuple[Part, ...]:
     """The driven faces and the sources of a body, leaving out what drives nothing."""
     parts = [part for face in body.present_faces if (part := _face_part(body, face, reference)) is not None]
-    sources = [source for source in body.sources if source.density != 0.0]
-    if sources:
-        parts.append(Part(_source_profiles(body, sources), 1.0, None, SOURCES, None))
+    if body.generating:
+        parts.append(Part(_source_profiles(body, body.generating), 1.0, None, SOURCES, None))
     return tuple(parts)
 
 
@@ -112,7 +163,7 @@ def _face_part(body: Body, face: Face, reference: float) -> Part | None:
     axis = axis_of(face)
     factor = 1.0
     if isinstance(condition, Inflow):
-        factor = 1 / math.sqrt(body.conductivity[axis])
+        factor = scale_of(body, axis)
     else:
         face_map = face_map.minus(reference)
     if face_map.is_uniform and face_map.lowest == 0.0:
@@ -122,21 +173,23 @@ def _face_part(body: Body, face: Face, reference: float) -> Part | None:
     drives[first], drives[second] = face_map.first, face_map.second
     if face_map.is_uniform:
         # One unit profile for all uniform faces, so that their lines' answers are shared.
-        drives[first] = drives[second] = UNIT
+        drives[first], drives[second] = (EVERYWHERE if body.infinite[axis] else UNIT for axis in (first, second))
         factor *= face_map.lowest
+    if isinstance(condition, Inflow) and isinstance(drives[2], Profiles):
+        drives[2] = _per_capacity(body, drives[2])
     return Part((drives[0], drives[1], drives[2]), factor, axis, face, face_map)
 
 
-def _source_profiles(body: Body, sources: list[BoxSource]) -> tuple[Profiles, Profiles, Profiles]:
+def _source_profiles(body: Body, sources: Sequence[BoxSource]) -> tuple[Profiles, Profiles, Profiles]:
     """Indicator profiles of all boxes on common knots, one column a box; the densities go with the x profiles."""
     profiles = []
     for axis in range(3):
         low = np.array([source.low[axis] for source in sources])
         high = np.array([source.high[axis] for source in sources])
-        knots = np.unique(np.concatenate([[0.0, body.size[axis]], low, high]))
+        knots = np.unique(np.concatenate([[body.begins[axis], body.size[axis]], low, high]))
         inside = (knots[:-1, None] >= low) & (knots[1:, None] <= high)
         values = inside.astype(float)
         if axis == 0:
             values = values * np.array([source.density for source in sources])
         profiles.append(Profiles(knots, values, values.copy()))
-    return profiles[0], profiles[1], profiles[2]
+    return profiles[0], profiles[1], _per_capacity(body, profiles[2])

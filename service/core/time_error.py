@@ -13,7 +13,7 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines.images import LATEST, NARROW, narrow_from
+from service.core.lines.images import ARRIVAL, LATEST, NARROW, narrow_from, seen_from_afar
 from service.core.lines.line import Drive, Line, WallDrive, breaks_of
 from service.core.lines.modes import MODE_COUNT, eigen_integrals, modes_of
 from service.core.lines.places import Places
@@ -58,8 +58,8 @@ def bound_everywhere(integral: Integral) -> float:
     Rounding refers to the largest jump of a profile all along, which is at least what its line carries.
     """
     jumps = [
-        line.largest_jump(drive) if isinstance(drive, Profiles) else np.zeros(1)
-        for line, drive in zip(integral.lines, integral.part.drives, strict=True)
+        _most_carried(line, drive, places, integral.times)
+        for line, drive, places in zip(integral.lines, integral.part.drives, integral.places, strict=True)
     ]
     carried = [jump if own is None else own for jump, own in zip(jumps, integral.carried, strict=True)]
     by_rule = by_rounding = 0.0
@@ -145,6 +145,13 @@ def _carried_by(line: Line, drive: Drive, places: Places, times: FloatArray) -> 
     return sizes
 
 
+def _most_carried(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
+    """At least what a line's answers are summed from, quickly had."""
+    if isinstance(drive, WallDrive):
+        return np.zeros(1)
+    return _carried_by_images(line, drive, places, times) if line.is_endless else line.largest_jump(drive)
+
+
 def _carried_by_images(line: Line, profiles: Profiles, places: Places, times: FloatArray) -> FloatArray:
     breaks = breaks_of(line, profiles)
     sizes = np.zeros((1, times.size, profiles.n_profiles))
@@ -156,10 +163,19 @@ def _carried_by_images(line: Line, profiles: Profiles, places: Places, times: Fl
     left = np.minimum(1.0, narrow_from(line, profiles) / root_time) / (4 * NARROW)
     size = np.abs(breaks.jumps).max(axis=0) + root_time * np.abs(breaks.slope_jumps).max(axis=0)
     per_length = 1 / root_time if places.order == -1 else np.ones_like(root_time)
+    seen = seen_from_afar(line, profiles) if line.is_endless else None
     if places.high is not None:
-        per_length = per_length * float((places.high - places.low).max()) * line.scale
+        widths = np.full_like(root_time, float((places.high - places.low).max()) * line.scale)
+        if seen is not None:
+            # Nothing is there beyond what fronts have reached.
+            widths = np.minimum(widths, seen.width + 2 * ARRIVAL * root_time)
+        per_length = per_length * widths
     overlap = root_time[:, 0] > math.sqrt(LATEST) * narrowest
     sizes[0, overlap] = (size * left * per_length)[overlap]
+    if seen is not None:
+        late = root_time[:, 0] >= seen.root_time
+        step = np.abs(seen.step.left).max(axis=0) / (4 * NARROW)
+        sizes[0, late] = ((np.abs(seen.amounts).sum(axis=0) / root_time + step) * per_length)[late]
     return sizes
 
 

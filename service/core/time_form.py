@@ -26,7 +26,7 @@ from service.core.lines.time_response import respond
 from service.core.split import Part
 from service.core.time_error import step_error
 from service.core.time_integral import Integral, Product
-from service.core.time_range import is_undying, profile_is_taken_out, slowest_rate, times_for
+from service.core.time_range import CUT, is_undying, profile_is_taken_out, settling_time, times_for, weights
 
 FloatArray = NDArray[np.float64]
 
@@ -45,7 +45,7 @@ def integrate(
     """
     times = times_for(lines, part, places, step, step_error(step))
     answers = [rows(lines[axis], part.drives[axis], places[axis], times) for axis in range(3)]
-    nodes = _Nodes(times, step * times * part.factor, 1 / slowest_rate(lines), part.factor)
+    nodes = _Nodes(times, weights(lines, times, step) * part.factor, settling_time(lines), part.factor)
     if profile_is_taken_out(lines, part, places):
         products = _with_profile_taken_out(lines, part, places, answers, nodes)
     else:
@@ -86,6 +86,11 @@ class _Nodes:
         """1 less the share taken out, chi = 3 e^-r - 3 e^-2r + e^-3r with r = t / release: (1 - e^-r)^3."""
         return -(np.expm1(-self.times / self.release) ** 3)
 
+    @property
+    def all_gone(self) -> int:
+        """The first node at which the share taken out is nothing."""
+        return int(np.searchsorted(self.times, CUT * self.release))
+
     def transformed(self, line: Line, drive: Drive, places: Places) -> FloatArray:
         """Integral over all times of chi times a line's answer, shape (n, 1, n_columns)."""
         rates = np.sqrt(np.array([1.0, 2.0, 3.0]) / self.release)
@@ -105,7 +110,12 @@ def _with_profile_taken_out(
     a, b = (axis for axis in range(3) if axis != wall)
     initial_a, initial_b = answers[a].initial[:, None, :], answers[b].initial[:, None, :]
     kernel = answers[wall].total
-    slow_b = answers[b].departure + initial_b * nodes.kept[None, :, None]
+    departure_a, slow_b = answers[a].departure, answers[b].departure + initial_b * nodes.kept[None, :, None]
+    gone = nodes.all_gone
+    if gone < nodes.times.size:
+        # AB itself once chi is nothing: the two would cancel where no mode decays.
+        departure_a = np.concatenate([departure_a[:, :gone], answers[a].total[:, gone:]], axis=1)
+        slow_b[:, gone:] = 0.0
     closed = nodes.transformed(lines[wall], part.drives[wall], places[wall])
 
     def product(weights: FloatArray, at_a: FloatArray, at_b: FloatArray, at_wall: FloatArray) -> Product:
@@ -113,7 +123,7 @@ def _with_profile_taken_out(
         return Product(weights, (ordered[0], ordered[1], ordered[2]))
 
     return [
-        product(nodes.weights, answers[a].departure, answers[b].total, kernel),
+        product(nodes.weights, departure_a, answers[b].total, kernel),
         product(nodes.weights, initial_a, slow_b, kernel),
         product(np.full(1, nodes.factor), initial_a, initial_b, closed),
     ]
@@ -132,16 +142,19 @@ def _never_decaying(
     insulated sides it is the one-dimensional field along the bar, known in closed form.
     """
     limits = [_limit(lines[axis], part.drives[axis], places[axis])[:, None, :] for axis in range(3)]
-    if lines[2].keeps_its_mean:
+    along = next((axis for axis in range(3) if lines[axis].is_endless), None)
+    if along is None:
         # The integral of chi is release (3 - 3/2 + 1/3).
         dropped = float(nodes.weights @ nodes.kept) + nodes.factor * nodes.release * 11 / 6
         return [Product(np.array([-dropped]), (limits[0], limits[1], limits[2]))]
-    steady = laplace.transform(lines[2], part.drives[2], places[2], np.zeros(1))
-    steady = steady - nodes.transformed(lines[2], part.drives[2], places[2])
-    return [
-        Product(-nodes.weights * nodes.kept, (limits[0], limits[1], answers[2].total)),
-        Product(np.full(1, nodes.factor), (limits[0], limits[1], steady)),
-    ]
+    steady = laplace.transform(lines[along], part.drives[along], places[along], np.zeros(1))
+    steady = steady - nodes.transformed(lines[along], part.drives[along], places[along])
+
+    def product(weights: FloatArray, at_bar: FloatArray) -> Product:
+        x, y, z = (at_bar if axis == along else limit for axis, limit in enumerate(limits))
+        return Product(weights, (x, y, z))
+
+    return [product(-nodes.weights * nodes.kept, answers[along].total), product(np.full(1, nodes.factor), steady)]
 
 
 def _limit(line: Line, drive: Drive, places: Places) -> FloatArray:

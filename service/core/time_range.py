@@ -32,6 +32,11 @@ NEGLIGIBLE, TINY = 1e-50, 1e-110
 # (t / release)^(5/2) is then below rounding.
 LATEST_BEGINNING = 3e-7
 
+# Where no mode decays the integrand falls as a power of t. Its expansion begins with t^(-1/2) and goes on with 1 / t at
+# the least, in ln t and in terms of the square of all distances; the first is added up without end, and at this many
+# squares the rest is below CUT_ERROR.
+AFAR = 1 / CUT_ERROR
+
 # Ranges begin at multiples of this in ln t: parts that begin at about the same time share their lines' answers.
 LATTICE = 3.0
 
@@ -43,14 +48,33 @@ def times_for(
 
     rule_error: relative error of the trapezoidal rule on that step.
     """
-    slowest = slowest_rate(lines)
-    last = CUT / slowest
+    settling = settling_time(lines)
+    last = CUT * settling if has_decay(lines) else AFAR * _reach(lines, places) ** 2
     lets_go = profile_is_taken_out(lines, part, places) or is_undying(lines)
-    first = max(_first_time(lines, part, places, EARLIEST * rule_error), TINY * _shortest(lines) ** 2)
+    first = max(_first_time(lines, part, places, EARLIEST * rule_error), TINY * shortest(lines) ** 2)
     # A plain integrand begins only when the front from its end arrives; the others begin with what is let go.
-    first = min(first, LATEST_BEGINNING / slowest if lets_go else last / 16)
+    first = min(first, LATEST_BEGINNING * settling if lets_go else last / 16)
     begin = LATTICE * math.floor(math.log(first) / LATTICE)
     return np.exp(step * np.arange(math.floor(begin / step), math.ceil(math.log(last) / step) + 1))
+
+
+def weights(lines: Sequence[Line], times: FloatArray, step: float) -> FloatArray:
+    """Weights of the nodes; where no mode decays the last stands for all that would follow it."""
+    weight = step * times
+    if not has_decay(lines):
+        weight[-1] /= -math.expm1(-0.5 * step)
+    return weight
+
+
+def has_decay(lines: Sequence[Line]) -> bool:
+    """Whether what remains, without the product of means where that never decays, decays exponentially."""
+    lossy = any(not (line.is_endless or line.keeps_its_mean) for line in lines)
+    return lossy or sum(line.is_endless for line in lines) <= 1
+
+
+def settling_time(lines: Sequence[Line]) -> float:
+    """Time constant of the slowest decay, or of a body as large as its data where there is none."""
+    return 1 / slowest_rate(lines) if has_decay(lines) else (shortest(lines) / math.pi) ** 2
 
 
 def slowest_rate(lines: Sequence[Line]) -> float:
@@ -70,8 +94,7 @@ def _slow_rates(line: Line) -> tuple[float, float]:
 
 def is_undying(lines: Sequence[Line]) -> bool:
     """Whether the product of the lines' means never decays: a closed body, or a bar with insulated sides."""
-    sides_keep = lines[0].keeps_its_mean and lines[1].keeps_its_mean
-    return sides_keep and (lines[2].keeps_its_mean or lines[2].is_endless)
+    return has_decay(lines) and all(line.keeps_its_mean or line.is_endless for line in lines)
 
 
 def profile_is_taken_out(lines: Sequence[Line], part: Part, places: Sequence[Places]) -> bool:
@@ -82,7 +105,7 @@ def profile_is_taken_out(lines: Sequence[Line], part: Part, places: Sequence[Pla
     assert isinstance(drive, WallDrive)
     if asked.order == -1:
         return True
-    line, on_it = lines[part.wall_axis], NEGLIGIBLE * _shortest(lines)
+    line, on_it = lines[part.wall_axis], NEGLIGIBLE * shortest(lines)
     ends = [asked.low] if asked.high is None else [asked.low, asked.high]
     return any(bool((wall_distance(line, end, high=drive.high) <= on_it).any()) for end in ends)
 
@@ -98,7 +121,7 @@ def _first_time(lines: Sequence[Line], part: Part, places: Sequence[Places], ear
         return _nearest_to_wall(lines[wall], part.drives[wall], places[wall]) ** 2 / (4 * CUT)
     slopes = any(asked.order == -1 for asked in places)
     film = max((film for line in lines for film in line.films_per_extent if film < math.inf), default=0.0)
-    least = _shortest(lines)
+    least = shortest(lines)
     # A film of a large Biot number acts early, against another such film with the square of it.
     scale = least / (1 + film * least)
     if slopes:
@@ -124,8 +147,26 @@ def _narrowest(lines: Sequence[Line], part: Part) -> float:
     )
 
 
-def _shortest(lines: Sequence[Line]) -> float:
-    return min(line.extent for line in lines if not line.is_endless)
+def shortest(lines: Sequence[Line]) -> float:
+    """Shortest scaled length of the body; of what drives it where it has no end; of the unit where that has none."""
+    finite = [line.extent for line in lines if not line.is_endless]
+    widths = [(line.data[1] - line.data[0]) * line.scale for line in lines]
+    return min(finite or [width for width in widths if width > 0] or [line.scale for line in lines])
+
+
+def _reach(lines: Sequence[Line], places: Sequence[Places]) -> float:
+    """Largest scaled distance of the places from what drives a body, its own size, and the depth of its films."""
+    found = []
+    for line, asked in zip(lines, places, strict=True):
+        if not line.is_endless:
+            found.append(line.extent)
+            continue
+        marks = np.concatenate([asked.low, line.data] if asked.high is None else [asked.low, asked.high, line.data])
+        marks = marks[np.isfinite(marks)]
+        found.append(float(marks.max() - marks.min()) * line.scale)
+        if 0.0 < line.film_low < math.inf:
+            found.append(1 / line.film_low)
+    return max(*found, shortest(lines))
 
 
 def _film_at(line: Line, drive: Drive) -> float:

@@ -32,7 +32,7 @@ def transform(line: Line, drive: Drive, places: Places, gamma: FloatArray) -> Fl
 
     gamma: >= 0, shape (n_gamma,), per scaled length. At 0 it is the steady one-dimensional solution. A line that
     loses nothing has none: it answers for the drive less its mean, counted from the mean of the answer. A half-line
-    insulated at its end counts from its value far away.
+    insulated at its end counts from its value far away, a line without ends from the mean of both.
     """
     if isinstance(line, StackLine):
         return stack.transform(line, drive, places, gamma**2).real
@@ -185,7 +185,8 @@ def _waves(line: Line, profiles: Profiles, coordinates: FloatArray, gamma: Float
     low_knot = (knots * line.scale)[None, :, None]
     difference = ((coordinates[:, None] - knots) * line.scale)[:, :, None]
     side = np.sign(difference)
-    side[:, 0] = 1.0
+    if line.has_low_end:
+        side[:, 0] = 1.0
     if not line.is_endless:
         side[:, -1] = -1.0
     rising = (-g) ** -order if order else np.ones_like(g)
@@ -207,11 +208,11 @@ def _waves(line: Line, profiles: Profiles, coordinates: FloatArray, gamma: Float
 
     low_film, high_film = line.film_low, line.film_high
     reflected_low = reflection(low_film, g)
-    if line.is_endless:
+    if line.is_endless and line.has_low_end:
         from_low = reflected_low * np.exp(-g * (low_distance + low_knot)) * rising
         with_jump = with_jump + from_low
         with_slope = with_slope + from_low
-    else:
+    elif not line.is_endless:
         high_distance = wall_distance(line, coordinates, high=True)[:, None, None]
         high_knot = ((line.length - knots) * line.scale)[None, :, None]
         reflected_high = reflection(high_film, g)

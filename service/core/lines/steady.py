@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterator
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -33,18 +35,13 @@ def closed_line_wall(line: Line, drive: WallDrive, coordinates: FloatArray, orde
 
 
 def half_line_profile(line: Line, profiles: Profiles, places: Places) -> FloatArray:
-    """The steady answer of a half-line to generation on a bounded part of it.
+    """The steady answer of an endless line to generation on a bounded part of it.
 
-    Green's function is min(x, x') + 1 / H, or -max(x, x') with an insulated end, where a constant is left open.
-    What the profiles come to far away is left out.
+    Green's function is min(x, x') + 1 / H, or -max(x, x') with an insulated end, or -|x - x'| / 2 without ends; with
+    the last two a constant is left open. What the profiles come to far away is left out.
     """
-    knots = profiles.knots * line.scale
-    finite = np.isfinite(knots[1:])
     columns = np.zeros((places.low.size, profiles.n_profiles))
-    for piece in np.flatnonzero(finite):
-        start, stop = knots[piece], knots[piece + 1]
-        # Generation that has no end has to cancel between the drives of a body, so that each may go without it.
-        left, slope = profiles.left[piece] - profiles.left[-1], profiles.slopes[piece] / line.scale
+    for start, stop, left, slope in _bounded_pieces(line, profiles):
         if places.high is None:
             even, rising = _half_line_piece(line, places.low * line.scale, start, stop, places.order)
         else:
@@ -53,6 +50,25 @@ def half_line_profile(line: Line, profiles: Profiles, places: Places) -> FloatAr
             even, rising = upper[0] - lower[0], upper[1] - lower[1]
         columns += even[:, None] * left + rising[:, None] * slope
     return columns
+
+
+def _bounded_pieces(line: Line, profiles: Profiles) -> Iterator[tuple[float, float, FloatArray, FloatArray]]:
+    """Pieces with their scaled ends, the profiles at the lower one and their slopes, less what they are far along.
+
+    Generation that has no end has to cancel between the drives of a body, so that each may go without it; on a line
+    without ends it is taken off on either side of 0.
+    """
+    finite = profiles.knots[np.isfinite(profiles.knots)]
+    cuts = finite if line.has_low_end else np.unique([0.0, *finite])
+    for low, high in pairwise(cuts):
+        piece = int(np.searchsorted(profiles.knots, 0.5 * (low + high))) - 1
+        slope, far = profiles.slopes[piece], profiles.left[0 if high <= 0.0 else -1]
+        left = (
+            profiles.left[piece]
+            if np.isinf(profiles.knots[piece])
+            else profiles.left[piece] + slope * (low - profiles.knots[piece])
+        )
+        yield float(low * line.scale), float(high * line.scale), left - far, slope / line.scale
 
 
 def _half_line_piece(
@@ -69,7 +85,12 @@ def _half_line_piece(
         # U = integral of min(x, x') f = first moment - twofold integral beyond x
         level = whole[n] / line.film_low if 0 < line.film_low < math.inf else 0.0
         constant = first_moment[n] + level
-        if line.film_low == 0.0:
+        if not line.has_low_end:
+            # -|x - x'| / 2 = min(x, x') - (x + x') / 2
+            half = 0.5 * first_moment[n]
+            value, slope = half - beyond[1] - 0.5 * whole[n] * x, beyond[0] - 0.5 * whole[n]
+            primitive = half * x + beyond[2] - 0.25 * whole[n] * x * x
+        elif line.film_low == 0.0:
             # -max(x, x') = min(x, x') - x - x'
             value, slope, primitive = -beyond[1] - whole[n] * x, beyond[0] - whole[n], beyond[2] - whole[n] * x * x / 2
         else:
