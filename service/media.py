@@ -1,4 +1,4 @@
-"""The forms of an answer: JSON, or the same with its arrays in binary, as the client accepts.
+"""The forms of an answer, as the client accepts: JSON, the same with its arrays in binary, and forms of single calls.
 
 The binary form is a ZIP archive of .npy arrays, which numpy.load opens as it is. Its entry `answer` is the
 JSON text of the answer in which the name of an entry stands in place of each array.
@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import io
 import zipfile
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -22,30 +23,6 @@ ARRAYS = "application/vnd.stillfield.npz"
 
 # The same bytes for the same answer: the archive carries this in place of the time it was made.
 _NO_TIME = (1980, 1, 1, 0, 0, 0)
-
-
-@dataclass(frozen=True)
-class Form:
-    """One form of an answer. bytes_a_number: what a double takes at most."""
-
-    media_type: str
-    bytes_a_number: int
-    file_name: str
-
-
-# -1.7976931348623157e+308 and a comma
-JSON_FORM = Form(JSON, 25, "answer.json")
-ARRAYS_FORM = Form(ARRAYS, 8, "answer.npz")
-
-
-def choose_form(accept: str | None) -> Form:
-    """The form the client likes best, JSON when it does not mind. Raises NotAcceptable."""
-    if not accept:
-        return JSON_FORM
-    quality = {form.media_type: _quality(accept, form.media_type) for form in (JSON_FORM, ARRAYS_FORM)}
-    if quality[JSON] <= 0 and quality[ARRAYS] <= 0:
-        raise NotAcceptable(f"Answers are {JSON} or {ARRAYS}; name one of them in Accept, or leave it out.")
-    return JSON_FORM if quality[JSON] >= quality[ARRAYS] else ARRAYS_FORM
 
 
 def check_accepts_json(accept: str | None) -> None:
@@ -75,14 +52,6 @@ def _quality(accept: str, media_type: str) -> float:
                     weight = 0.0
         best = max(best, (specificity, weight))
     return best[1]
-
-
-def encode(answer: dict[str, Any], form: Form) -> bytes:
-    """An answer as bytes.
-
-    Arrays stand in it as numpy arrays; what is not finite in them becomes null, or stays NaN.
-    """
-    return _json(answer) if form is JSON_FORM else _archive(answer)
 
 
 def _json(answer: dict[str, Any]) -> bytes:
@@ -116,3 +85,36 @@ def _map_arrays(value: Any, change: Any, name: str = "") -> Any:
     if isinstance(value, list):
         return [_map_arrays(entry, change, f"{name}_{index}") for index, entry in enumerate(value)]
     return value
+
+
+@dataclass(frozen=True)
+class Form:
+    """One form of an answer. bytes_a_number: what a double takes at most.
+
+    encode: the answer as bytes. Arrays stand in it as numpy arrays; what is not finite in them becomes null, or stays
+    NaN in binary.
+    """
+
+    media_type: str
+    bytes_a_number: int
+    file_name: str
+    encode: Callable[[dict[str, Any]], bytes]
+
+
+# -1.7976931348623157e+308 and a comma
+JSON_FORM = Form(JSON, 25, "answer.json", _json)
+ARRAYS_FORM = Form(ARRAYS, 8, "answer.npz", _archive)
+
+# What every call can answer in, the form of a client that does not mind first.
+FORMS = (JSON_FORM, ARRAYS_FORM)
+
+
+def choose_form(accept: str | None, forms: Sequence[Form] = FORMS) -> Form:
+    """The form the client likes best, the first of those it likes as much. Raises NotAcceptable."""
+    quality = [1.0 if not accept else _quality(accept, form.media_type) for form in forms]
+    if max(quality) <= 0:
+        names = ", ".join(form.media_type for form in forms[:-1])
+        raise NotAcceptable(
+            f"Answers are {names} or {forms[-1].media_type}; name one of them in Accept, or leave it out."
+        )
+    return forms[quality.index(max(quality))]

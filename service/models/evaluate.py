@@ -118,11 +118,14 @@ def _check_patch_reference(value: Any) -> int | str:
     return value
 
 
+PatchReference = Annotated[int | str, BeforeValidator(_check_patch_reference)]
+
+
 class FacePart(AxisIntervals):
     """A face, a patch of its map, or a rectangle given by an interval along each of the face's two axes."""
 
     face: FaceName = Field(description="The face.", examples=["z_low"])
-    patch: Annotated[int | str | None, BeforeValidator(_check_patch_reference)] = Field(
+    patch: PatchReference | None = Field(
         None,
         description="A patch of the face's map, by its number from 0 or its name.",
         examples=["sight port", 0],

@@ -5,7 +5,7 @@ from __future__ import annotations
 import asyncio
 import hashlib
 import time
-from collections.abc import Callable, Coroutine
+from collections.abc import Callable, Coroutine, Sequence
 from dataclasses import dataclass
 from typing import Any, Generic, TypeVar
 
@@ -13,7 +13,7 @@ from fastapi import Request, Response
 
 from service import __version__
 from service.core import CoreError, Interrupted, Solution
-from service.media import ARRAYS_FORM, Form, choose_form, encode
+from service.media import FORMS, JSON_FORM, Form, choose_form
 from service.models.evaluate import Question
 from service.refusals import TooCostly
 from service.request_body import StrictJsonRoute
@@ -30,19 +30,22 @@ Outcome = TypeVar("Outcome")
 
 @dataclass(frozen=True)
 class Call(Generic[Asked, Wanted]):
-    """The three steps of one call: read the question, refuse what is too costly, answer."""
+    """The three steps of one call: read the question, refuse what is too costly, answer. forms: of its answers."""
 
     read: Callable[[Asked, ReadProblem, Solution, Settings], Wanted]
     check_cost: Callable[[Wanted, Solution, Settings, int], None]
     answer: Callable[[ReadProblem, Solution, Wanted, KeepGoing], dict[str, Any]]
+    forms: Sequence[Form] = FORMS
 
 
 class AnswerRoute(StrictJsonRoute):
     """A route whose answers are kept under the digest of the request, so that asking again costs no work."""
 
+    forms: Sequence[Form] = FORMS
+
     def answered_before(self, request: Request) -> Response | None:
         """The answer to a request of the same bytes and form, if it is still kept."""
-        form = choose_form(request.headers.get("accept"))
+        form = choose_form(request.headers.get("accept"), self.forms)
         kept = state_of(request).answers.get(_key(request, form))
         return None if kept is None else _response(kept, 'cache;desc="hit"')
 
@@ -50,7 +53,7 @@ class AnswerRoute(StrictJsonRoute):
 async def answer(request: Request, question: Asked, call: Call[Asked, Wanted]) -> Response:
     """Answer a question off the event loop, and keep the answer."""
     state = state_of(request)
-    form = choose_form(request.headers.get("accept"))
+    form = choose_form(request.headers.get("accept"), call.forms)
     key = _key(request, form)
     work = state.worker.run(lambda keep_going: _work(state, question, call, form, keep_going))
     (body, times), waited = await _unless_client_leaves(request, work)
@@ -103,7 +106,7 @@ def _work(
     except CoreError as error:
         point_into_question(error, solved.problem.units)
         raise
-    body = encode(content, form)
+    body = form.encode(content)
     lap("encode")
     if len(body) > state.settings.answer_bytes:
         raise TooCostly(
@@ -122,6 +125,6 @@ def _key(request: Request, form: Form) -> str:
 
 def _response(kept: KeptAnswer, timing: str) -> Response:
     headers = {"ETag": kept.etag, "Vary": "Accept", "Server-Timing": timing}
-    if kept.media_type == ARRAYS_FORM.media_type:
+    if kept.media_type != JSON_FORM.media_type:
         headers["Content-Disposition"] = f'attachment; filename="{kept.file_name}"'
     return Response(kept.body, media_type=kept.media_type, headers=headers)
