@@ -91,7 +91,7 @@ def _may_exceed(body: Body, level: float, sign: float) -> bool:
             return True
         if isinstance(condition, Film) and (sign * condition.ambient.table).max() > level:
             return True
-    return any(sign * source.density > 0 for source in body.sources)
+    return any(sign * source.density > 0 for source in body.generating)
 
 
 def _extreme_held(body: Body, sign: float) -> Place | None:
@@ -221,7 +221,7 @@ def _from_grid(search: _Search, axes: list[FloatArray], values: FloatArray, sign
 
 def _from_boxes(setting: Setting, sign: float) -> list[_Start]:
     """The middles of the boxes of generation, with half their size to climb in."""
-    boxes = [box for box in setting.body.sources if sign * box.density > 0 and math.isfinite(box.high[2])]
+    boxes = [box for box in setting.body.generating if sign * box.density > 0 and math.isfinite(box.high[2])]
     if not boxes:
         return []
     low, high = np.array([box.low for box in boxes]), np.array([box.high for box in boxes])
@@ -337,6 +337,10 @@ def _first_places(setting: Setting, axis: int) -> FloatArray:
     else:
         spread = line.length * np.linspace(0.0, 1.0, 11)
     places = [spread]
+    if axis == 2:
+        # Behind a contact the potential steps.
+        interfaces = np.array(setting.body.interfaces)
+        places += [interfaces, np.nextafter(interfaces, math.inf)]
     for part in setting.parts:
         knots = part.knots(axis)
         knots = knots[np.isfinite(knots)]

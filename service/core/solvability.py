@@ -83,7 +83,7 @@ def generation(body: Body) -> float:
     """Total generated in the body."""
     return math.fsum(
         source.density * math.prod(high - low for low, high in zip(source.low, source.high, strict=True))
-        for source in body.sources
+        for source in body.generating
         if source.density != 0.0
     )
 
@@ -91,7 +91,7 @@ def generation(body: Body) -> float:
 def total_given(body: Body) -> tuple[float, float]:
     """Sum of all given inflows and generation, and the sum of their sizes."""
     flows = [flow for face in body.present_faces for flow in given_inflows(body, face)]
-    for source in body.sources:
+    for source in body.generating:
         section = source.density * (source.high[0] - source.low[0]) * (source.high[1] - source.low[1])
         # A source without end is counted from what it is far away, like an inflow.
         flows.append(section * (-source.low[2] if source.high[2] == math.inf else source.high[2] - source.low[2]))
@@ -116,7 +116,7 @@ def _flow_per_length_far_away(body: Body) -> tuple[float, float]:
             flows.extend(_far_inflows(condition.inflow, across))
     flows.extend(
         source.density * (source.high[0] - source.low[0]) * (source.high[1] - source.low[1])
-        for source in body.sources
+        for source in body.generating
         if source.high[2] == math.inf
     )
     return math.fsum(flows), math.fsum(map(abs, flows))

@@ -11,6 +11,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -216,8 +217,7 @@ def _with_gap(
 def _flow(setting: Setting, axis: int, position: float, rectangle: Rectangle, sign: float, tolerance: float) -> Total:
     """sign times the flow along an axis through a rectangle of a plane; endless ones are followed to the far field."""
     first, second = axes_along(axis)
-    factor = -sign * math.sqrt(setting.body.conductivity[axis])
-    factor /= setting.lines[first].scale * setting.lines[second].scale
+    factor = -sign / (setting.lines[axis].scale * setting.lines[first].scale * setting.lines[second].scale)
     if math.isinf(rectangle.q_high):
         far = far_along(setting)
         beyond = Rectangle(rectangle.p_low, rectangle.p_high, far, 2 * far)
@@ -226,8 +226,27 @@ def _flow(setting: Setting, axis: int, position: float, rectangle: Rectangle, si
             name = _section_name(setting.body, axis, position)
             return Total(None, None, (UnboundedCause("endless", name, factor * leftover / far, 0.0),))
         rectangle = Rectangle(rectangle.p_low, rectangle.p_high, rectangle.q_low, far)
+    if setting.body.layers and axis != 2:
+        return _flow_through_layers(setting, axis, position, rectangle, factor, tolerance)
     value, bound = _integral(setting, axis, position, rectangle, SLOPE, tolerance)
     return Total(factor * value, abs(factor) * bound)
+
+
+def _flow_through_layers(
+    setting: Setting, axis: int, position: float, rectangle: Rectangle, factor: float, tolerance: float
+) -> Total:
+    """Flow through a rectangle of a plane that cuts the layers, each of which conducts in its own way."""
+    body = setting.body
+    borders = (0.0, *body.interfaces, body.size[2])
+    value = bound = 0.0
+    for layer, (low, high) in zip(body.layers, pairwise(borders), strict=True):
+        low, high = max(low, rectangle.q_low), min(high, rectangle.q_high)
+        if low < high:
+            share = factor * layer.conductivity[axis] / body.conductivity[axis]
+            piece = Rectangle(rectangle.p_low, rectangle.p_high, low, high)
+            integral, error = _integral(setting, axis, position, piece, SLOPE, tolerance)
+            value, bound = value + share * integral, bound + abs(share) * error
+    return Total(value, bound)
 
 
 def _section_name(body: Body, axis: int, position: float) -> str:

@@ -79,12 +79,28 @@ def _border_cause(body: Body, face: Face, rectangle: Rectangle, index: int, high
         along_first = axes_along(other)[0] == along
         knots = np.concatenate([knots, neighbour.first_knots if along_first else neighbour.second_knots])
         name, kind, share = edge_name(face, other), "edge", 2.0
-    at, weights = _fine_rule(knots, low, top)
+    at, weights = _fine_rule(_with_interfaces(body, along, knots), low, top)
     if at.size == 0:
         return None
     jump, size = _jump_along(body, face, own, neighbour, index, place, high, at)
-    mean_conductivity = math.sqrt(body.conductivity[axis] * body.conductivity[across])
-    return _cause(kind, name, share * mean_conductivity, jump, weights, size)
+    end = body.size[axis] if is_high(face) else 0.0
+    weights = weights * _mean_conductivity(body, (axis, end), (across, place), at)
+    return _cause(kind, name, share, jump, weights, size)
+
+
+def _with_interfaces(body: Body, along: int, knots: FloatArray) -> FloatArray:
+    """Knots along an axis, and the interfaces of a stack."""
+    return np.concatenate([knots, body.interfaces]) if along == 2 else knots
+
+
+def _mean_conductivity(body: Body, first: tuple[int, float], second: tuple[int, float], at: FloatArray) -> FloatArray:
+    """Geometric mean of the conductivities across a line, which lies where two axes are at given places.
+
+    at: places along the line, shape (n,).
+    """
+    fixed = dict([first, second])
+    z = np.full_like(at, fixed[2]) if 2 in fixed else at
+    return np.sqrt(body.conductivity_at(first[0], z) * body.conductivity_at(second[0], z))
 
 
 def _cause(
@@ -119,14 +135,15 @@ def unbounded_plane_lines(
             if not isinstance(condition, Held):
                 continue
             own, square = condition.value, axes_along(face).index(axis)
-            at, weights = _fine_rule(own.second_knots if axes_along(face)[1] == along else own.first_knots, low, top)
+            knots = own.second_knots if axes_along(face)[1] == along else own.first_knots
+            at, weights = _fine_rule(_with_interfaces(body, along, knots), low, top)
             if at.size == 0:
                 continue
+            weights = weights * _mean_conductivity(body, (axis, position), (across, place), at)
             below, above = (_side_value(own, square, position, at, from_above=side) for side in (False, True))
             size = float(max(np.abs(below).max(), np.abs(above).max()))
-            mean_conductivity = math.sqrt(body.conductivity[axis] * body.conductivity[across])
             name = line_name(face, axis, position)
-            cause = _cause("jump_line", name, mean_conductivity, below - above, weights, size)
+            cause = _cause("jump_line", name, 1.0, below - above, weights, size)
             if cause is not None:
                 causes.append((cause, (index, high)))
     return causes
@@ -199,16 +216,17 @@ def cut_constant(body: Body, face: Face, rectangle: Rectangle, reference: float)
         for high in (False, True):
             place, (low, top) = _border(rectangle, index, high)
             knots = own.second_knots if index == 0 else own.first_knots
-            at, weights = _fine_rule(knots, low, top)
+            at, weights = _fine_rule(_with_interfaces(body, axes_along(face)[1 - index], knots), low, top)
             if math.isinf(place) or at.size == 0:
                 continue
-            mean_conductivity = math.sqrt(body.conductivity[axis] * body.conductivity[across])
+            end = body.size[axis] if is_high(face) else 0.0
+            weights = weights * _mean_conductivity(body, (axis, end), (across, place), at)
             inside = _side_value(own, index, place, at, from_above=not high)
             if place in (0.0, body.size[across]):
                 other: Face = f"{AXES[across]}_{'low' if place == 0.0 else 'high'}"  # type: ignore[assignment]
                 if isinstance(body.faces[other], Held):
-                    total += 2 / math.pi * mean_conductivity * float(weights @ inside)
+                    total += 2 / math.pi * float(weights @ inside)
             else:
                 outside = _side_value(own, index, place, at, from_above=high)
-                total += 1 / math.pi * mean_conductivity * float(weights @ (inside - outside))
+                total += 1 / math.pi * float(weights @ (inside - outside))
     return total

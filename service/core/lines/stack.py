@@ -387,7 +387,7 @@ def transform(line: StackLine, drive: Drive, places: Places, s: Array) -> Array:
     values, pieces, n = line.held_by_layers(drive), _pieces(line, places), len(line.thickness)
     up, down = _Upward(line, s), _Upward(line.mirrored(), s)
     fields = _Fields(up, down, pieces, places.low.size, drive.n_profiles)
-    for j in np.flatnonzero(values.any(axis=1)):
+    for j in map(int, np.flatnonzero(values.any(axis=1))):
         below, thickness = down.loads[n - 1 - j], line.thickness[j]
         for number in pieces.within(j):
             place = pieces.below[number], pieces.above[number], pieces.width[number], places.order

@@ -28,9 +28,6 @@ ComplexArray = NDArray[np.complex128]
 # Places on the parabola. The rule errs by 3e-15 of the transform's size there.
 PLACES = 16
 
-# Rounding in a term of the inversion, in terms of that in a factor of one material: admittances pass several layers.
-MORE_ROUNDING = 32.0
-
 # Times whose transforms are held at once.
 TIMES_AT_ONCE = 128
 
@@ -79,7 +76,7 @@ def _inverted(
             transformed = stack.transform(line, drive, places, s)
         terms = transformed.reshape(places.low.size, -1, PLACES, columns) * _WEIGHTS[:, None]
         answer[:, run] = terms.imag.sum(axis=2) / times[run, None]
-        carried[0, run] = MORE_ROUNDING * np.abs(terms).sum(axis=2).max(axis=0, initial=0.0) / times[run, None]
+        carried[0, run] = np.abs(terms).sum(axis=2).max(axis=0, initial=0.0) / times[run, None]
     return answer, carried
 
 
