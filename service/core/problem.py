@@ -24,7 +24,7 @@ from numpy.typing import NDArray
 
 from service.core.errors import NotPhysical
 from service.core.laws import ConductivityLaw, Radiation
-from service.core.maps import FaceMap
+from service.core.maps import FaceMap, Rectangle
 
 Face = Literal["x_low", "x_high", "y_low", "y_high", "z_low", "z_high"]
 FACES: tuple[Face, ...] = ("x_low", "x_high", "y_low", "y_high", "z_low", "z_high")
@@ -81,7 +81,42 @@ class Insulated:
     """Nothing flows through the face."""
 
 
-Condition = Held | Inflow | Film | Insulated
+@dataclass(frozen=True)
+class HeldPad:
+    """A rectangle of a mixed face with one potential all over.
+
+    value: that potential; or flow: the total flow into the body through it, its potential being unknown. One of the
+    two. name: what to call it, or None.
+    """
+
+    where: Rectangle
+    value: float | None = None
+    flow: float | None = None
+    name: str | None = None
+
+
+@dataclass(frozen=True)
+class FilmPad:
+    """A rectangle of a mixed face behind a film with one ambient. coefficient > 0. name: what to call it, or None."""
+
+    where: Rectangle
+    coefficient: float
+    ambient: float
+    name: str | None = None
+
+
+@dataclass(frozen=True)
+class Mixed:
+    """Several conditions on one face: pads of their own conditions on a background with uniform data.
+
+    pads: they may touch but not overlap.
+    """
+
+    background: Inflow | Film | Insulated
+    pads: tuple[HeldPad | FilmPad, ...]
+
+
+Condition = Held | Inflow | Film | Insulated | Mixed
 
 
 @dataclass(frozen=True)
@@ -279,11 +314,50 @@ class Body:
                 raise NotPhysical(f"A body that is {which} along {face[0]} has no face {face}.", ("faces", face))
             if isinstance(condition, Film):
                 _check_film(condition, face)
+            if isinstance(condition, Mixed):
+                self._check_mixed(face, condition)
             first, second = axes_along(face)
             face_map = map_of(condition)
             if face_map is not None:
                 begins = (self.begins[first], self.begins[second])
                 face_map.check_covers(self.size[first], self.size[second], face, begins)
+
+    def _check_mixed(self, face: Face, mixed: Mixed) -> None:
+        if isinstance(mixed.background, Film):
+            _check_film(mixed.background, face)
+        background = map_of(mixed.background)
+        if background is not None and not background.is_uniform:
+            raise NotPhysical(
+                f"The background of {face} varies; beside pads it has one value all over.",
+                ("faces", face, "background"),
+            )
+        if not mixed.pads:
+            raise NotPhysical(f"The mixed face {face} has no pads; it needs at least one.", ("faces", face, "pads"))
+        first, second = axes_along(face)
+        for index, pad in enumerate(mixed.pads):
+            where: tuple[str | int, ...] = ("faces", face, "pads", index)
+            _check_pad(pad, f"Pad {index} of {face}", where)
+            spot = pad.where
+            inside = (
+                self.begins[first] <= spot.p_low < spot.p_high <= self.size[first]
+                and self.begins[second] <= spot.q_low < spot.q_high <= self.size[second]
+                and math.isfinite(spot.p_low + spot.p_high + spot.q_low + spot.q_high)
+            )
+            if not inside:
+                raise NotPhysical(
+                    f"Pad {index} of {face} reaches from ({spot.p_low:g}, {spot.q_low:g}) to ({spot.p_high:g}, "
+                    f"{spot.q_high:g}); it has to have a positive, finite extent and lie in the face.",
+                    where,
+                )
+            for other in range(index):
+                if spot.overlaps(mixed.pads[other].where):
+                    raise NotPhysical(f"Pads {other} and {index} of {face} overlap.", where)
+        for other_face, condition in self.faces.items():
+            if isinstance(condition, Mixed) and axis_of(other_face) != axis_of(face):
+                raise NotPhysical(
+                    f"The faces {face} and {other_face} are both mixed; mixed faces have to be square to one axis.",
+                    ("faces", face),
+                )
 
     def _check_source(self, index: int, source: BoxSource) -> None:
         where: tuple[str | int, ...] = ("sources", index)
@@ -317,10 +391,28 @@ def _check_film(film: Film, face: Face) -> None:
         )
 
 
+def _check_pad(pad: HeldPad | FilmPad, name: str, where: tuple[str | int, ...]) -> None:
+    if isinstance(pad, FilmPad):
+        if not (pad.coefficient > 0 and math.isfinite(pad.coefficient)):
+            raise NotPhysical(
+                f"The film coefficient of {name[0].lower()}{name[1:]} is {pad.coefficient:g}; it has to be greater "
+                "than zero and finite.",
+                (*where, "coefficient"),
+            )
+        if not math.isfinite(pad.ambient):
+            raise NotPhysical(f"{name} has an ambient that is not a finite number.", (*where, "ambient"))
+        return
+    given = [number for number in (pad.value, pad.flow) if number is not None]
+    if len(given) != 1 or not math.isfinite(given[0]):
+        raise NotPhysical(f"{name} is held; it needs a finite value or a finite flow, one of the two.", where)
+
+
 def map_of(condition: Condition) -> FaceMap | None:
-    """The data of a face, or None for an insulated one."""
+    """The data of a face, or None for an insulated one; of a mixed face those of its background."""
     match condition:
         case Held(value=face_map) | Inflow(inflow=face_map) | Film(ambient=face_map):
             return face_map
         case Insulated():
             return None
+        case Mixed(background=background):
+            return map_of(background)
