@@ -162,9 +162,7 @@ class Jet:
         """c' = a' c."""
         with np.errstate(over="ignore"):
             first = Interval(np.exp(self.value.low), np.exp(self.value.high))
-        return self._recurrence(
-            first, lambda k, c: _sum((self[j] * c[k - j]).times(j / k) for j in range(1, k + 1))
-        )
+        return self._recurrence(first, lambda k, c: _sum((self[j] * c[k - j]).times(j / k) for j in range(1, k + 1)))
 
     def log(self) -> Jet:
         """c' = a' / a."""
@@ -294,6 +292,4 @@ def _sine(x: Interval) -> Interval:
     with np.errstate(invalid="ignore"):
         has_top = wide | (np.ceil((x.low - math.pi / 2) / turn) <= (x.high - math.pi / 2) / turn)
         has_bottom = wide | (np.ceil((x.low + math.pi / 2) / turn) <= (x.high + math.pi / 2) / turn)
-    return Interval(
-        np.where(has_bottom, -1.0, np.minimum(*ends)), np.where(has_top, 1.0, np.maximum(*ends))
-    )
+    return Interval(np.where(has_bottom, -1.0, np.minimum(*ends)), np.where(has_top, 1.0, np.maximum(*ends)))

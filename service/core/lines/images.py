@@ -198,10 +198,10 @@ def _from_piece(
     share = 0.5 * (1.0 + nodes)[:, None]
     values = (1.0 - share) * piece.left + share * piece.right
     amounts = (0.5 * (high - low) * line.scale * weights)[:, None] * values
-    return _from_points(line, at, amounts, coordinates, root_time, order)
+    return from_points(line, at, amounts, coordinates, root_time, order)
 
 
-def _from_points(
+def from_points(
     line: Line, at: FloatArray, amounts: FloatArray, coordinates: FloatArray, root_time: FloatArray, order: Order
 ) -> FloatArray:
     """Point sources of amounts, shape (n_points, n_profiles), and their images."""
@@ -276,7 +276,7 @@ def seen_from_afar(line: Line, profiles: Profiles) -> Afar | None:
 
 def from_afar(line: Line, seen: Afar, coordinates: FloatArray, root_time: FloatArray, order: Order) -> FloatArray:
     """u itself (order 0), its slope (-1), or its antiderivative (1) less that of the step, (n_points, n_times, r)."""
-    total = _from_points(line, seen.at, seen.amounts, coordinates, root_time, order)
+    total = from_points(line, seen.at, seen.amounts, coordinates, root_time, order)
     if seen.step.left.any():
         total += _from_breaks(line, seen.step, coordinates, root_time, order)
         if order == 0:

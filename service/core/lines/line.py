@@ -135,7 +135,7 @@ class Breaks:
     """Knots with the jumps of value and of slope that profiles, zero outside their line, have there.
 
     knots: in the caller's unit, shape (n_breaks,). jumps, slope_jumps: per scaled length, (n_breaks, n_profiles).
-    has_slopes: whether any slope jumps. largest_jump: shape (n_profiles,). On an endless line the last piece ends
+    has_slopes: whether any slope jumps. largest_jump: shape (n_profiles,), of curved profiles their size. On an endless line the last piece ends
     nowhere and has no last break, on one without ends the first piece has no first break either.
     """
 
@@ -149,15 +149,17 @@ class Breaks:
 @lru_cache(maxsize=1024)
 def breaks_of(line: Line, profiles: Profiles) -> Breaks:
     """The breaks of profiles on a line."""
-    slopes = profiles.slopes / line.scale
     nothing = np.zeros((1, profiles.n_profiles))
     jumps = np.vstack([profiles.left, nothing]) - np.vstack([nothing, profiles.right])
-    slope_jumps = np.vstack([slopes, nothing]) - np.vstack([nothing, slopes])
+    along = profiles.derivative(1) if profiles.is_curved else None
+    left, right = (profiles.slopes, profiles.slopes) if along is None else (along.left, along.right)
+    slope_jumps = np.vstack([left / line.scale, nothing]) - np.vstack([nothing, right / line.scale])
     knots = np.minimum(profiles.knots, line.length)
     if line.is_endless:
         there = slice(0 if line.has_low_end else 1, -1)
         knots, jumps, slope_jumps = knots[there], jumps[there], slope_jumps[there]
-    return Breaks(knots, jumps, slope_jumps, bool(slope_jumps.any()), np.abs(jumps).max(axis=0, initial=0.0))
+    largest = profiles.sizes.max(axis=0) if profiles.is_curved else np.abs(jumps).max(axis=0, initial=0.0)
+    return Breaks(knots, jumps, slope_jumps, bool(slope_jumps.any()), largest)
 
 
 def active_breaks(line: Line, profiles: Profiles) -> tuple[FloatArray, NDArray[np.bool_], NDArray[np.bool_]]:

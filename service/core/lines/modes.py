@@ -14,6 +14,7 @@ from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.special import spherical_jn
 
 from service.core.lines.eigenvalues import roots
 from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order, WallDrive, wall_distance
@@ -138,6 +139,26 @@ def _profile_integrals(modes: Modes, profiles: Profiles) -> FloatArray:
         phase = modes.wave_numbers[:, None] * half
         odd = 2 * half * _bessel_over_wave(phase) / np.where(modes.wave_numbers == 0, 1.0, modes.wave_numbers)[:, None]
         total = total + (modes.at(middle, SLOPE).T * odd) @ rise
+    return total if profiles.bends is None else total + _bend_integrals(modes, profiles.bends, knots)
+
+
+def _bend_integrals(modes: Modes, bends: FloatArray, knots: FloatArray) -> FloatArray:
+    """Integrals of the bends of curved pieces times the eigenfunctions.
+
+    P_k times cos(y s + phase) over s from -1 to 1 is 2 j_k(y) cos(phase + k pi / 2), j_k the spherical Bessel function.
+    """
+    middle, half = 0.5 * (knots[1:] + knots[:-1]), 0.5 * modes.line.scale * np.diff(knots)
+    waves = np.where(modes.wave_numbers == 0, 1.0, modes.wave_numbers)[:, None]
+    # cos(phase) and -sin(phase) at the middle of each piece, (n_modes, n_pieces)
+    even, odd = modes.at(middle, VALUE).T, modes.at(middle, SLOPE).T / waves
+    turns = (even, odd, -even, -odd)
+    moments = [
+        2 * half * spherical_jn(k, modes.wave_numbers[:, None] * half) * turns[k % 4]
+        for k in range(bends.shape[0] + 2)
+    ]
+    total = np.zeros((even.shape[0], bends.shape[2]))
+    for k, weights in enumerate(bends):
+        total += (moments[k + 2] - moments[k]) @ weights
     return total
 
 

@@ -12,8 +12,8 @@ from collections.abc import Callable
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines import images, stack_response
-from service.core.lines.line import PRIMITIVE, VALUE, Drive, Line, WallDrive
+from service.core.lines import curves, images, stack_response
+from service.core.lines.line import PRIMITIVE, VALUE, Drive, Line, Order, WallDrive
 from service.core.lines.modes import MODE_COUNT, eigen_integrals, modes_of
 from service.core.lines.places import Places, TimeResponse
 from service.core.lines.stack import StackLine
@@ -92,11 +92,19 @@ def _early_wall(line: Line, drive: WallDrive, places: Places, root_time: FloatAr
     return upper - images.wall_kernel(line, drive, places.low, root_time, PRIMITIVE)
 
 
+def _departure(
+    line: Line, drive: Profiles, coordinates: FloatArray, root_time: FloatArray, order: Order
+) -> FloatArray:
+    """The answer at short times less the profile, by what its breaks send out."""
+    from_breaks = curves.departure if drive.is_curved else images.departure
+    return from_breaks(line, drive, coordinates, root_time, order)
+
+
 def _early_departure(line: Line, drive: Profiles, places: Places, root_time: FloatArray) -> FloatArray:
     if places.order == -1:
         return _early_slope(line, drive, places, root_time)
     if places.high is None:
-        return images.departure(line, drive, places.low, root_time, places.order)
+        return _departure(line, drive, places.low, root_time, places.order)
     return _early_integrals(line, drive, places.low, places.high, root_time)
 
 
@@ -109,13 +117,13 @@ def _early_integrals(
     antiderivatives would cancel.
     """
     smooth = _smooth_from(line, low, high, root_time)
-    early = images.departure(line, drive, high, root_time[:smooth], PRIMITIVE)
-    early -= images.departure(line, drive, low, root_time[:smooth], PRIMITIVE)
+    early = _departure(line, drive, high, root_time[:smooth], PRIMITIVE)
+    early -= _departure(line, drive, low, root_time[:smooth], PRIMITIVE)
     if smooth == root_time.size:
         return early
 
     def value(at: FloatArray) -> FloatArray:
-        return images.departure(line, drive, at, root_time[smooth:], 0) + drive.at(at)[:, None, :]
+        return _departure(line, drive, at, root_time[smooth:], 0) + drive.at(at)[:, None, :]
 
     late = _integrated(value, line, low, high) - drive.integrals(low, high)[:, None, :] * line.scale
     return np.concatenate([early, late], axis=1)
@@ -139,12 +147,12 @@ def _early_slope(line: Line, drive: Profiles, places: Places, root_time: FloatAr
     """Slopes less those of the profile. On an end with little film the slope is H times the value, and so it is had
     from the value: the images' slopes would cancel there to a rounding error larger than itself.
     """
-    slopes = images.departure(line, drive, places.low, root_time, places.order)
+    slopes = _departure(line, drive, places.low, root_time, places.order)
     for end, film, sign in ((line.begins, line.film_low, 1.0), (line.length, line.film_high, -1.0)):
         on_end = places.low == end
         if on_end.any() and 0.0 < film * line.extent < 1.0:
             at_end = places.low[on_end]
-            values = images.departure(line, drive, at_end, root_time, 0) + drive.at(at_end)[:, None, :]
+            values = _departure(line, drive, at_end, root_time, 0) + drive.at(at_end)[:, None, :]
             slopes[on_end] = sign * film * values - drive.slope_at(at_end)[:, None, :] / line.scale
     return slopes
 
