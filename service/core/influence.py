@@ -1,0 +1,264 @@
+"""What a unit of flow into one pad raises at every other: the influence matrix of pads on faces of a body.
+
+    M_ij = mean rise over pad i for a unit of flow into pad j, with every held value and ambient at zero
+
+is symmetric (Green's reciprocity; Carslaw and Jaeger 1959, section 14.1). For pads on faces square to one axis it is
+one time integral for all pairs: the mean of one interval over another along each of the two axes of the faces, times
+what the third line answers at its ends. As in `time_form` the pads' own shapes at short times are taken out with
+chi = 1 - (1 - exp(-t / T))^3, whose integral against the third line is known in the Laplace domain.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core import time_error, time_range
+from service.core.errors import NoSteadyState, NotPhysical
+from service.core.field import KeepGoing
+from service.core.lines import laplace
+from service.core.lines.line import VALUE, Line, WallDrive
+from service.core.lines.pairs import Intervals, pair_means
+from service.core.lines.places import Places
+from service.core.lines.time_response import respond
+from service.core.maps import FaceMap, Patch, Rectangle
+from service.core.problem import Body, Condition, Face, Film, Held, Inflow, Insulated, axes_along, axis_of, is_high
+from service.core.solution import solve
+from service.core.split import lines_of, scale_of
+
+FloatArray = NDArray[np.float64]
+
+# Step in ln t: the rule's relative error is 6e-14 before the spread of sums of absolute values.
+STEP = 0.25
+
+# The range begins at this part of the square of the narrowest pad: the means leave the pads' shapes as sqrt t, and the
+# answer of the end falls as sqrt t too.
+EARLIEST = 1e-18
+
+# What a sum of absolute values at the nodes may grow to on the shifted contour of the error bound: the means of pads
+# are positive and change by sqrt(1 / sin(ANGLE)) in t at the most, the two of them and the end together.
+SPREAD = math.sin(time_error.ANGLE) ** -1.5
+
+# Rounding of a mean of one pad over another, relative to the mean of a narrowest pad over itself.
+PAIR_ROUNDING = 2e-13
+
+# Numbers of the matrix times nodes that are held at once.
+NUMBERS_AT_ONCE = 4_000_000
+
+# Pairs of pads whose means are had a second time, both ways, by the general integral.
+CHECKED_PAIRS = 3
+
+
+@dataclass(frozen=True)
+class Pad:
+    """A rectangle of a face. where: in the face's axes in the order x, y, z. name: what to call it, or None."""
+
+    face: Face
+    where: Rectangle
+    name: str | None = None
+
+
+@dataclass(frozen=True, eq=False)
+class Influence:
+    """Mean rises per unit flow of pads.
+
+    mean, bound: shape (n, n), symmetric; row: the pad that is read, column: the pad that flow goes into.
+    agreement: largest difference between an entry and the same by the general integral, from pad to pad and back.
+    agreement_bound: what that may be. checked: how many entries were compared.
+    """
+
+    pads: tuple[Pad, ...]
+    mean: FloatArray
+    bound: FloatArray
+    agreement: float
+    agreement_bound: float
+    checked: int
+
+
+def influence(body: Body, pads: Sequence[Pad], *, tolerance: float, keep_going: KeepGoing | None = None) -> Influence:
+    """The influence matrix of pads on insulated, given-inflow or film faces of a body.
+
+    tolerance: of the entries that are checked, in potential per flow.
+    Raises NotPhysical for a pad on a held face or outside its face, NoSteadyState where flow into a pad has no way out.
+    """
+    lines = lines_of(body)
+    _check(body, lines, pads)
+    n = len(pads)
+    mean, bound = np.zeros((n, n)), np.zeros((n, n))
+    for axis in range(3):
+        of_axis = [index for index, pad in enumerate(pads) if axis_of(pad.face) == axis]
+        if of_axis:
+            block = np.ix_(of_axis, of_axis)
+            mean[block], bound[block] = _same_axis(body, lines, [pads[index] for index in of_axis], keep_going)
+    for j, column in enumerate(pads):
+        others = [i for i in range(j) if axis_of(pads[i].face) != axis_of(column.face)]
+        if others:
+            driven = solve(with_flow_into(environment(body), column, 1.0))
+            for i in others:
+                found = driven.mean(pads[i].face, pads[i].where, tolerance=tolerance)
+                mean[i, j] = mean[j, i] = found.value
+                bound[i, j] = bound[j, i] = found.error_bound
+            if keep_going is not None:
+                keep_going()
+    return Influence(tuple(pads), mean, bound, *_agreement(body, pads, mean, bound, tolerance))
+
+
+def environment(body: Body) -> Body:
+    """The body with every held value and ambient at zero and nothing given or generated."""
+    zero = FaceMap.uniform(0.0)
+
+    def at_rest(condition: Condition) -> Condition:
+        if isinstance(condition, Held):
+            return Held(zero)
+        return Film(condition.coefficient, zero) if isinstance(condition, Film) else Insulated()
+
+    faces = {face: at_rest(condition) for face, condition in body.faces.items()}
+    return replace(body, faces=faces, sources=(), layers=tuple(replace(layer, generation=0.0) for layer in body.layers))
+
+
+def with_flow_into(body: Body, pad: Pad, flow: float) -> Body:
+    """A body at rest with a flow into one pad. On a film face a warmer ambient before the pad drives as much."""
+    condition, (first, second) = body.faces[pad.face], axes_along(pad.face)
+    density = flow / pad.where.area
+    amount = density / condition.coefficient if isinstance(condition, Film) else density
+    begins = body.begins[first], body.begins[second]
+    driven = FaceMap.patches((body.size[first], body.size[second]), 0.0, [Patch(pad.where, amount)], begins=begins)
+    drive = Film(condition.coefficient, driven) if isinstance(condition, Film) else Inflow(driven)
+    return replace(body, faces={**body.faces, pad.face: drive})
+
+
+def _check(body: Body, lines: Sequence[Line], pads: Sequence[Pad]) -> None:
+    for index, pad in enumerate(pads):
+        if pad.face not in body.present_faces:
+            raise NotPhysical(f"The body has no face {pad.face}.", ("pads", index, "face"))
+        if isinstance(body.faces[pad.face], Held):
+            raise NotPhysical(
+                f"The face {pad.face} is held: a flow into it raises nothing; put pads on faces that are not.",
+                ("pads", index, "face"),
+            )
+        first, second = axes_along(pad.face)
+        where = pad.where
+        fits = (
+            body.begins[first] <= where.p_low < where.p_high <= body.size[first]
+            and body.begins[second] <= where.q_low < where.q_high <= body.size[second]
+            and math.isfinite(where.area)
+        )
+        if not fits:
+            raise NotPhysical(
+                f"Pad {index} reaches from ({where.p_low:g}, {where.q_low:g}) to ({where.p_high:g}, {where.q_high:g}); "
+                f"it has to have a positive finite extent and lie in the face {pad.face}.",
+                ("pads", index),
+            )
+    if pads and (time_range.is_undying(lines) or not _comes_to_rest(lines)):
+        raise NoSteadyState(
+            "A flow of {amount} into a pad has no way out of this body: no face is held or has a film, so that its "
+            "rise has no end.",
+            1.0,
+            ("faces",),
+        )
+
+
+def _comes_to_rest(lines: Sequence[Line]) -> bool:
+    """Whether a flow into a body that decays as a power of time raises it to a steady level: three open axes do."""
+    return time_range.has_decay(lines) or sum(line.is_endless for line in lines) == 3
+
+
+def _same_axis(
+    body: Body, lines: Sequence[Line], pads: Sequence[Pad], keep_going: KeepGoing | None
+) -> tuple[FloatArray, FloatArray]:
+    """The matrix of pads on faces square to one axis, and its bound."""
+    axis = axis_of(pads[0].face)
+    along = axes_along(axis)
+    spans = [
+        Intervals.unique(np.array([pad.where.p_low for pad in pads]), np.array([pad.where.p_high for pad in pads])),
+        Intervals.unique(np.array([pad.where.q_low for pad in pads]), np.array([pad.where.q_high for pad in pads])),
+    ]
+    which = [index for _, index in spans]
+    times = _times(
+        lines, [lines[a].scale * float(some.widths.min()) for a, (some, _) in zip(along, spans, strict=True)]
+    )
+    weights = time_range.weights(lines, times, STEP)
+    release = time_range.settling_time(lines)
+    taken_out = 1 + np.expm1(-times / release) ** 3
+    faces = sorted({pad.face for pad in pads})
+    face_of = np.array([faces.index(pad.face) for pad in pads])
+    through, closed = _third_line(body, lines[axis], faces, times, release)
+    n = len(pads)
+    shapes = [_shape(lines[a], some)[np.ix_(at, at)] for a, (some, at) in zip(along, spans, strict=True)]
+    shape = shapes[0] * shapes[1]
+    total, size = shape * closed[np.ix_(face_of, face_of)], np.zeros((n, n))
+    run = max(NUMBERS_AT_ONCE // n**2, 1)
+    for start in range(0, times.size, run):
+        if keep_going is not None:
+            keep_going()
+        part = slice(start, start + run)
+        first, second = (
+            pair_means(lines[a], some, some, times[part]) for a, (some, _) in zip(along, spans, strict=True)
+        )
+        for index in range(first.shape[2]):
+            q = start + index
+            means = first[:, :, index][np.ix_(which[0], which[0])] * second[:, :, index][np.ix_(which[1], which[1])]
+            end = weights[q] * through[:, :, q][np.ix_(face_of, face_of)]
+            total += (means - taken_out[q] * shape) * end
+            size += (means + taken_out[q] * shape) * np.abs(end)
+    scale = scale_of(body, axis) * lines[along[0]].scale * lines[along[1]].scale
+    own = np.abs(np.diag(total))
+    rounding = PAIR_ROUNDING * np.sqrt(np.outer(own, own))
+    relative = time_error.step_error(STEP) * SPREAD + 4 * time_error.ROUNDING
+    return scale * total, scale * (relative * (size + np.abs(shape * closed[np.ix_(face_of, face_of)])) + rounding)
+
+
+def _times(lines: Sequence[Line], widths: Sequence[float]) -> FloatArray:
+    settling = time_range.settling_time(lines)
+    reach = max(widths)
+    last = time_range.CUT * settling if time_range.has_decay(lines) else time_range.AFAR * reach**2
+    first = min(EARLIEST * min(widths) ** 2, time_range.LATEST_BEGINNING * settling)
+    return np.exp(STEP * np.arange(math.floor(math.log(first) / STEP), math.ceil(math.log(last) / STEP) + 1))
+
+
+def _third_line(
+    body: Body, line: Line, faces: Sequence[Face], times: FloatArray, release: float
+) -> tuple[FloatArray, FloatArray]:
+    """What a unit inflow at the end of one face raises at another's: at times, and integrated with chi over all times.
+
+    Shapes (n_faces, n_faces, n_times) and (n_faces, n_faces).
+    """
+    ends = Places(np.array([line.length if is_high(face) else 0.0 for face in faces]), VALUE)
+    rates = np.sqrt(np.array([1.0, 2.0, 3.0]) / release)
+    through, closed = np.empty((len(faces), len(faces), times.size)), np.empty((len(faces), len(faces)))
+    for column, face in enumerate(faces):
+        film = line.film_high if is_high(face) else line.film_low
+        per_inflow = 1 / film if film > 0 else 1.0
+        drive = WallDrive(is_high(face))
+        through[:, column] = per_inflow * respond(line, drive, ends, times).total[:, :, 0]
+        transformed = laplace.transform(line, drive, ends, rates)[:, :, 0]
+        closed[:, column] = per_inflow * transformed @ np.array([3.0, -3.0, 1.0])
+    return through, closed
+
+
+def _shape(line: Line, some: Intervals) -> FloatArray:
+    """Means of intervals over intervals as time begins: their overlap over both widths, per scaled length."""
+    overlap = np.minimum(some.high[:, None], some.high) - np.maximum(some.low[:, None], some.low)
+    return np.maximum(overlap, 0.0) / np.outer(some.widths, some.widths) / line.scale
+
+
+def _agreement(
+    body: Body, pads: Sequence[Pad], mean: FloatArray, bound: FloatArray, tolerance: float
+) -> tuple[float, float, int]:
+    """Entries had a second time by the general integral, from pad to pad and back."""
+    n = len(pads)
+    largest, allowed, checked = 0.0, 0.0, 0
+    rest = environment(body)
+    for j in np.unique(np.linspace(0, n - 1, min(n, CHECKED_PAIRS)).round().astype(int)):
+        i = (int(j) + 1) % n
+        for row, column in {(i, int(j)), (int(j), i)}:
+            setting = solve(with_flow_into(rest, pads[column], 1.0))
+            found = setting.mean(pads[row].face, pads[row].where, tolerance=tolerance)
+            largest = max(largest, abs(found.value - float(mean[row, column])))
+            allowed = max(allowed, found.error_bound + float(bound[row, column]))
+            checked += 1
+    return largest, allowed, checked
