@@ -43,6 +43,7 @@ class Settings(BaseSettings):
     sources: PositiveInt = Field(100, description="Most source boxes in one problem.")
     totals: PositiveInt = Field(200, description="Most patches and planes in one request for flux totals.")
     means: PositiveInt = Field(100, description="Most mean values in one request.")
+    pads: PositiveInt = Field(200, description="Most pads in one request about pads or resistances.")
 
     cost_multiplications: PositiveFloat = Field(
         4e10, description="Most multiplications estimated for one request; about 10^9 take a second."

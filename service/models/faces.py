@@ -6,11 +6,12 @@ from typing import Annotated, Any, Literal
 
 from pydantic import Discriminator, Field, Tag
 
-from service.models.base import Model, Quantity
-from service.models.face_maps import FaceData
+from service.models.base import LONGEST_NAME, Model, Quantity
+from service.models.face_maps import AxisIntervals, FaceData
 
-# Bound of the document itself: as many as a stack may have layers.
+# Bounds of the document itself: coefficients as many as a stack may have layers.
 MOST_COEFFICIENTS = 1_000
+MOST_PADS = 1_000
 
 FaceName = Literal["x_low", "x_high", "y_low", "y_high", "z_low", "z_high"]
 
@@ -69,8 +70,83 @@ class InsulatedFace(Model):
     condition: Literal["insulated"] = Field(description="Nothing flows through the face.")
 
 
+class UniformFlux(Model):
+    """The same flow per area into the body everywhere beside the pads."""
+
+    condition: Literal["flux"] = Field(description="The flow per area into the body is given.")
+    inflow: Quantity = Field(
+        description="Flow per area, positive into the body, in the declared unit `flux`.", examples=["1.5 kW/m^2"]
+    )
+
+
+class UniformFilm(Model):
+    """The same film to the same surroundings everywhere beside the pads."""
+
+    condition: Literal["film"] = Field(description="The inflow is coefficient * (ambient - potential of the face).")
+    coefficient: FilmCoefficient = Field(
+        description="Film coefficient, greater than zero, in the declared unit `film_coefficient`.",
+        examples=["12 W/(m^2 K)"],
+    )
+    ambient: Quantity = Field(
+        description="Potential of the surroundings, in the declared unit `potential`.", examples=[24]
+    )
+
+
+class HeldPad(AxisIntervals):
+    """A rectangle of a mixed face with one potential all over: given, or what a given flow makes it.
+
+    Give an interval along each of the face's two axes, and either `value` or `flow`.
+    """
+
+    condition: Literal["held"] = Field(description="One potential all over.")
+    name: str | None = Field(
+        None, min_length=1, max_length=LONGEST_NAME, description="What to call the pad.", examples=["clamp A"]
+    )
+    value: Quantity | None = Field(None, description="Its potential, in the declared unit `potential`.", examples=[640])
+    flow: Quantity | None = Field(
+        None,
+        description="In place of `value`: the total flow into the body through the pad, in the declared unit `flow`; "
+        "its potential is then part of the answer.",
+        examples=["35 W"],
+    )
+
+
+class FilmPad(AxisIntervals):
+    """A rectangle of a mixed face with a film of its own.
+
+    Give an interval along each of the face's two axes.
+    """
+
+    condition: Literal["film"] = Field(description="The inflow is coefficient * (ambient - potential of the face).")
+    name: str | None = Field(
+        None, min_length=1, max_length=LONGEST_NAME, description="What to call the pad.", examples=["fin block"]
+    )
+    coefficient: FilmCoefficient = Field(
+        description="Film coefficient, greater than zero, in the declared unit `film_coefficient`.",
+        examples=["850 W/(m^2 K)"],
+    )
+    ambient: Quantity = Field(
+        description="Potential of the surroundings, in the declared unit `potential`.", examples=[24]
+    )
+
+
+class MixedFace(Model):
+    """Several conditions on one face: pads that are held or have a film of their own, on a uniform background."""
+
+    condition: Literal["mixed"] = Field(description="Pads with conditions of their own on a background.")
+    background: Annotated[UniformFlux | UniformFilm | InsulatedFace, Field(discriminator="condition")] = Field(
+        description="The condition everywhere else.", examples=[{"condition": "insulated"}]
+    )
+    pads: list[Annotated[HeldPad | FilmPad, Field(discriminator="condition")]] = Field(
+        min_length=1,
+        max_length=MOST_PADS,
+        description="The rectangles; they may touch but not overlap.",
+        examples=[[{"name": "clamp A", "x": [5, 35], "y": [10, 50], "condition": "held", "value": 640}]],
+    )
+
+
 FaceCondition = Annotated[
-    HeldFace | FluxFace | FilmFace | InsulatedFace,
+    HeldFace | FluxFace | FilmFace | InsulatedFace | MixedFace,
     Field(
         discriminator="condition",
         examples=[{"condition": "held", "value": 30}],

@@ -11,30 +11,16 @@ from typing import Any
 from pydantic_core import to_json
 
 from service.core import errors
-from service.core.problem import (
-    AXES,
-    FACES,
-    SAME_RATIO,
-    Body,
-    BoxSource,
-    Condition,
-    Face,
-    Film,
-    Held,
-    Inflow,
-    Insulated,
-    Layer,
-    axis_of,
-    is_high,
-)
+from service.core.problem import AXES, FACES, Body, BoxSource, Condition, Face, axis_of, is_high
 from service.models import problem as models
-from service.models.faces import FaceCondition, FilmCoefficient, FilmFace, FluxFace, HeldFace
+from service.models.faces import FaceCondition
 from service.refusals import Issue, Path, RequestRefused
 from service.settings import Settings
 from service.translation.body import Material, path_of_layer, read_material
-from service.translation.collector import UNREAD, Collector
+from service.translation.collector import Collector
+from service.translation.conditions import ConditionReader
 from service.translation.extent import AxisExtent, Extents
-from service.translation.face_maps import FaceContents, FaceReader, NamedPatch
+from service.translation.face_maps import FaceContents, NamedPatch
 from service.units import Kind, UnitSystem, declare
 
 
@@ -128,8 +114,8 @@ def _faces(
         elif condition is None:
             collector.add(("faces", face), "This field is required.", "missing")
         else:
-            reader = FaceReader(collector, settings, face, material.extents)
-            read = _condition(collector, reader, condition, material.layers, ("faces", face))
+            reader = ConditionReader(collector, settings, face, material)
+            read = reader.read(condition, ("faces", face))
             if read is not None:
                 conditions[face], known = read
                 if known is not None:
@@ -140,70 +126,6 @@ def _faces(
 def endless_in_words(extent: AxisExtent, face: Face) -> str:
     """The body a face is missing from, to begin a sentence with."""
     return f"A body that is {'infinite' if extent.is_infinite else 'semi-infinite'} along {face[0]}"
-
-
-def _condition(
-    collector: Collector, reader: FaceReader, condition: FaceCondition, layers: tuple[Layer, ...], path: Path
-) -> tuple[Condition, FaceContents | None] | None:
-    """The solver's condition and the contents of its map; None when something was wrong and was noted."""
-    match condition:
-        case HeldFace():
-            read = reader.read(Kind.POTENTIAL, condition.value, (*path, "value"))
-            return None if read is None else (Held(read.face_map), read)
-        case FluxFace():
-            read = reader.read(Kind.FLUX, condition.inflow, (*path, "inflow"))
-            return None if read is None else (Inflow(read.face_map), read)
-        case FilmFace():
-            coefficient = _coefficient(collector, condition.coefficient, reader.face, layers, (*path, "coefficient"))
-            read = reader.read(Kind.POTENTIAL, condition.ambient, (*path, "ambient"))
-            return None if read is None else (Film(coefficient, read.face_map), read)
-        case _:
-            return Insulated(), None
-
-
-def _coefficient(
-    collector: Collector, given: FilmCoefficient, face: Face, layers: tuple[Layer, ...], path: Path
-) -> float:
-    """The coefficient of a film; beside the first layer where there is one for each layer on a side of a stack."""
-    what = "The film coefficient"
-    on_side = bool(layers) and axis_of(face) != 2
-    if not isinstance(given, list):
-        coefficient = collector.read_positive(Kind.FILM_COEFFICIENT, given, path, what)
-        if on_side and any(abs(_ratio(layer, layers[0]) - 1.0) > SAME_RATIO for layer in layers):
-            detail = (
-                "The layers conduct differently along x; give a list with one coefficient beside each layer, in "
-                "proportion to those conductivities."
-            )
-            collector.add(path, detail, "film-of-stack")
-        return coefficient
-    if not on_side:
-        detail = "A list of coefficients is for the sides of a stack; give one coefficient here."
-        collector.add(path, detail, "film-of-stack")
-        return UNREAD
-    if len(given) != len(layers):
-        detail = f"There are {len(given)} coefficients; one is wanted beside each of the {len(layers)} layers."
-        collector.add(path, detail, "film-of-stack")
-        return UNREAD
-    beside = [
-        collector.read_positive(Kind.FILM_COEFFICIENT, value, (*path, index), what) for index, value in enumerate(given)
-    ]
-    for index, (coefficient, layer) in enumerate(zip(beside, layers, strict=True)):
-        wanted = beside[0] * _ratio(layer, layers[0])
-        if abs(coefficient - wanted) > SAME_RATIO * wanted:
-            shown = collector.units.show(Kind.FILM_COEFFICIENT, given[index])
-            proper = f"{collector.units.write(Kind.FILM_COEFFICIENT, wanted):.12g}"
-            detail = (
-                f"The coefficient beside layer {index} is {shown}; in proportion to the conductivities along x, as "
-                f"the exact field of a stack needs it, it is {proper} "
-                f"{collector.units.declared[Kind.FILM_COEFFICIENT]}."
-            )
-            collector.add((*path, index), detail, "film-of-stack")
-    return beside[0]
-
-
-def _ratio(layer: Layer, first: Layer) -> float:
-    """How much better a layer conducts along x than the first one."""
-    return layer.conductivity[0] / first.conductivity[0]
 
 
 def _sources(
