@@ -9,6 +9,7 @@ around every place that could still hold the extreme, on finer and finer grids.
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -18,7 +19,8 @@ from scipy.ndimage import maximum_filter
 
 from service.core import field
 from service.core.field import Grid, Setting
-from service.core.problem import AXES, Body, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
+from service.core.maps import FaceMap, Peak, Rectangle
+from service.core.problem import AXES, Body, Face, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
 
 FloatArray = NDArray[np.float64]
 
@@ -38,6 +40,10 @@ ACCURACY_OF_GAP = 1e-3
 # Places of each finer grid in parts of its half width, and by how much the next one is narrower.
 FINER = np.linspace(-1.0, 1.0, 5)
 NARROWING = 4.0
+
+# Places along each side of a pad, in parts of it, closer at its edges; peaks that are followed on it.
+PAD_PLACES = 0.5 - 0.5 * np.cos(np.linspace(0.0, math.pi, 9))
+MOST_PAD_CLIMBS = 2
 
 # How many times the rise of a parabola above the highest of its three points is allowed for a peak between them.
 PEAK_SAFETY = 4.0
@@ -76,6 +82,20 @@ def find(setting: Setting, tolerance: float, keep_going: field.KeepGoing | None)
     return Extremes(_extreme(search, 1.0), _extreme(search, -1.0))
 
 
+def highest_on(
+    setting: Setting, face: Face, rectangle: Rectangle, tolerance: float, keep_going: field.KeepGoing | None
+) -> Place:
+    """The highest potential on a rectangle of a face, its border included."""
+    search = _Search(setting, 0.5 * tolerance, keep_going)
+    axes = [np.array([setting.body.end_of(face)])] * 3
+    ends = ((rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high))
+    for axis, (low, high) in zip(axes_along(face), ends, strict=True):
+        axes[axis] = np.append(low + (high - low) * PAD_PLACES[:-1], high)
+    starts = _from_grid(search, axes, search.field(axes, search.accuracy).potential, 1.0)
+    followed = [start for start in starts if start.value + start.slack >= starts[0].value][:MOST_PAD_CLIMBS]
+    return max((_climb(search, start, 1.0) for start in followed), key=lambda place: place.value)
+
+
 def _extreme(search: _Search, sign: float) -> Place:
     body = search.setting.body
     held = _extreme_held(body, sign)
@@ -87,32 +107,48 @@ def _extreme(search: _Search, sign: float) -> Place:
 def _may_exceed(body: Body, level: float, sign: float) -> bool:
     """Whether an inflow, a source or an ambient could lift the potential above a level (below, for sign -1)."""
     for condition in body.faces.values():
-        if isinstance(condition, Inflow) and (sign * condition.inflow.table).max() > 0:
+        if isinstance(condition, Inflow) and _highest(condition.inflow, sign) > 0:
             return True
-        if isinstance(condition, Film) and (sign * condition.ambient.table).max() > level:
+        if isinstance(condition, Film) and _highest(condition.ambient, sign) > level:
             return True
     return any(sign * source.density > 0 for source in body.generating)
 
 
+def _highest(face_map: FaceMap, sign: float) -> float:
+    """The highest of a face's data, for sign -1 the lowest turned round, with what may lie beyond it."""
+    slack = 0.0 if face_map.peaks is None else face_map.peaks[1 if sign > 0 else 0].slack
+    return sign * (face_map.highest if sign > 0 else face_map.lowest) + slack
+
+
 def _extreme_held(body: Body, sign: float) -> Place | None:
     """The highest (lowest) held value and a place where it is held."""
-    best: tuple[float, tuple[float, float, float]] | None = None
+    best: tuple[Peak, Face] | None = None
     for face in body.present_faces:
         condition = body.faces[face]
         if isinstance(condition, Held):
-            face_map = condition.value
-            table = sign * face_map.table
-            i, j = np.unravel_index(int(table.argmax()), table.shape)
-            if best is None or table[i, j] > best[0]:
-                place = [0.0, 0.0, 0.0]
-                place[axis_of(face)] = body.size[axis_of(face)] if is_high(face) else 0.0
-                knots = (face_map.first_knots, face_map.second_knots)
-                for axis, knot, index in zip(axes_along(face), knots, (int(i), int(j)), strict=True):
-                    place[axis] = _representative(knot, index, face_map.bilinear, body.size[axis])
-                best = float(table[i, j]), (place[0], place[1], place[2])
+            peak = _peak_of(condition.value, [body.size[axis] for axis in axes_along(face)], sign)
+            if best is None or sign * peak.value > sign * best[0].value:
+                best = peak, face
     if best is None:
         return None
-    return Place(best[1], sign * best[0], 0.0, _where(body, best[1]))
+    peak, face = best
+    place = [0.0, 0.0, 0.0]
+    place[axis_of(face)] = body.size[axis_of(face)] if is_high(face) else 0.0
+    for axis, at in zip(axes_along(face), (peak.first, peak.second), strict=True):
+        place[axis] = at
+    found = (place[0], place[1], place[2])
+    return Place(found, peak.value, peak.slack, _where(body, found))
+
+
+def _peak_of(face_map: FaceMap, lengths: Sequence[float], sign: float) -> Peak:
+    """Where the data of a face are highest (lowest)."""
+    if face_map.peaks is not None:
+        return face_map.peaks[1 if sign > 0 else 0]
+    table = sign * face_map.table
+    i, j = np.unravel_index(int(table.argmax()), table.shape)
+    first = _representative(face_map.first_knots, int(i), face_map.bilinear, lengths[0])
+    second = _representative(face_map.second_knots, int(j), face_map.bilinear, lengths[1])
+    return Peak(sign * float(table[i, j]), first, second, 0.0)
 
 
 def _representative(knots: FloatArray, index: int, bilinear: bool, length: float) -> float:

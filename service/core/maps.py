@@ -168,9 +168,15 @@ class Profiles:
     def slope_at(self, coordinates: FloatArray) -> FloatArray:
         """Slopes, shape (n_points, n_profiles); the mean of both sides exactly on a knot."""
         if self.is_curved:
-            return self.derivative(1).at(coordinates)
+            return 0.5 * (self.slope_from(coordinates, "left") + self.slope_from(coordinates, "right"))
         slopes = self.slopes
         return 0.5 * (slopes[self._piece(coordinates, "left")] + slopes[self._piece(coordinates, "right")])
+
+    def slope_from(self, coordinates: FloatArray, side: str) -> FloatArray:
+        """Slopes of curved profiles from one side of each place, "left" or "right"."""
+        piece = self._piece(coordinates, side)
+        places = 2.0 * (coordinates - self.knots[piece]) / self.widths[piece] - 1.0
+        return self.derivative(1).on_piece(piece, places)
 
     @cached_property
     def is_constant(self) -> bool:
@@ -293,6 +299,7 @@ class FaceMap:
     error: by how much the map may differ from the data it stands for, and slope_error the slopes of both along any
         direction of the face; 0 for data that are the map itself.
     peaks: the lowest and the highest of the data where they are not in the table.
+    kinks: places along each axis where the slopes of curved data jump.
     """
 
     first_knots: FloatArray
@@ -306,6 +313,7 @@ class FaceMap:
     error: float = 0.0
     slope_error: float = 0.0
     peaks: tuple[Peak, Peak] | None = None
+    kinks: tuple[tuple[float, ...], tuple[float, ...]] = ((), ())
 
     @classmethod
     def uniform(cls, value: float) -> FaceMap:
@@ -370,7 +378,8 @@ class FaceMap:
             raise NotPhysical("The table of readings has entries that are not finite numbers.", ("table",))
         along_first, along_second = (begins[0], extent[0]), (begins[1], extent[1])
         first, values = _reach_edges(np.asarray(first_axis, dtype=float), values, along_first, extend, "first_axis")
-        second, values = _reach_edges(np.asarray(second_axis, dtype=float), values.T, along_second, extend, "second_axis")
+        values = values.T
+        second, values = _reach_edges(np.asarray(second_axis, dtype=float), values, along_second, extend, "second_axis")
         return cls(first, second, values.T.copy(), True, extent, float(values.min()), begins)
 
     @property
@@ -387,6 +396,18 @@ class FaceMap:
     def is_uniform(self) -> bool:
         """Whether the data are the same everywhere."""
         return self.lowest == self.highest
+
+    @property
+    def cell_means(self) -> FloatArray:
+        """Mean of the data in each cell between the knots."""
+        if any(self.curved):
+            first = self.first.integrals(self.first_knots[:-1], self.first_knots[1:]) / self.first.widths[:, None]
+            second = self.second.integrals(self.second_knots[:-1], self.second_knots[1:]) / self.second.widths[:, None]
+            return first @ second.T
+        if not self.bilinear:
+            return self.table
+        table = self.table
+        return 0.25 * (table[1:, 1:] + table[1:, :-1] + table[:-1, 1:] + table[:-1, :-1])
 
     @property
     def first(self) -> Profiles:

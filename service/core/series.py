@@ -90,9 +90,14 @@ def summed(lines: Sequence[Line], part: Part, point: Sequence[float]) -> SeriesV
 
 
 def reach(line: Line, drive: Drive, place: float) -> float:
-    """Scaled distance from a place to the nearest break of what drives its line, infinite where there is none."""
+    """Scaled distance from a place to the nearest break of what drives its line, infinite where there is none.
+
+    A curved profile is not made of waves from its breaks; along it there is no distance that would end a series.
+    """
     if isinstance(drive, WallDrive):
         return float(wall_distance(line, np.array([place]), high=drive.high)[0])
+    if drive.is_curved:
+        return 0.0
     knots, has_jump, has_kink = line.active_breaks(drive)
     active = has_jump | has_kink
     if not active.any():
@@ -255,5 +260,4 @@ def _coefficient_bound(line: Line, drive: Drive) -> FloatArray:
     """Bound on coefficient times eigenfunction of any mode: 2 times the mean of the profile's size, per column."""
     assert not isinstance(drive, WallDrive)
     knots = np.minimum(drive.knots, line.length)
-    size = np.maximum(np.abs(drive.left), np.abs(drive.right))
-    return np.asarray(2.0 * (np.diff(knots) @ size) / line.length)
+    return np.asarray(2.0 * (np.diff(knots) @ drive.sizes) / line.length)

@@ -45,6 +45,8 @@ def local_data(face_map: FaceMap, p: FloatArray, q: FloatArray) -> LocalData:
     if face_map.is_uniform:
         nothing = np.zeros((1, *p.shape))
         return LocalData(np.full((1, *p.shape), face_map.lowest), (nothing, nothing))
+    if any(face_map.curved):
+        return _curved_data(face_map, p, q)
     values, slopes_p, slopes_q = [], [], []
     for side_p in ("left", "right"):
         i = np.clip(np.searchsorted(knots_p, p, side=side_p) - 1, 0, knots_p.size - 2)
@@ -56,7 +58,7 @@ def local_data(face_map: FaceMap, p: FloatArray, q: FloatArray) -> LocalData:
                 slopes_q.append(np.zeros(p.shape))
                 continue
             width_p, width_q = knots_p[i + 1] - knots_p[i], knots_q[j + 1] - knots_q[j]
-            s = (p - knots_p[i]) / width_p
+            s = np.where(np.isfinite(width_p), (p - knots_p[i]) / width_p, 0.0)
             t = np.where(np.isfinite(width_q), (q - knots_q[j]) / width_q, 0.0)
             low, high = table[i, j] * (1 - t) + table[i, j + 1] * t, table[i + 1, j] * (1 - t) + table[i + 1, j + 1] * t
             near, far = table[i, j] * (1 - s) + table[i + 1, j] * s, table[i, j + 1] * (1 - s) + table[i + 1, j + 1] * s
@@ -66,19 +68,40 @@ def local_data(face_map: FaceMap, p: FloatArray, q: FloatArray) -> LocalData:
     return LocalData(np.array(values), (np.array(slopes_p), np.array(slopes_q)))
 
 
+def _curved_data(face_map: FaceMap, p: FloatArray, q: FloatArray) -> LocalData:
+    """The same of a formula, which has no jumps; its slopes differ at the kinks that it has, not at other knots."""
+    first, second = face_map.first, face_map.second
+
+    def sums(along_first: FloatArray, along_second: FloatArray) -> FloatArray:
+        return np.asarray((along_first * along_second).sum(axis=1).reshape(p.shape))
+
+    at_p, at_q = first.at(p.ravel()), second.at(q.ravel())
+    kinks_p, kinks_q = face_map.kinks
+    sides_p = [first.slope_from(p.ravel(), side) for side in ("left", "right")]
+    sides_q = [second.slope_from(q.ravel(), side) for side in ("left", "right")]
+    values, slopes_p, slopes_q = sums(at_p, at_q), [], []
+    for index in range(4):
+        both_p, both_q = 0.5 * (sides_p[0] + sides_p[1]), 0.5 * (sides_q[0] + sides_q[1])
+        slope_p = np.where(np.isin(p.ravel(), kinks_p)[:, None], sides_p[index // 2], both_p)
+        slope_q = np.where(np.isin(q.ravel(), kinks_q)[:, None], sides_q[index % 2], both_q)
+        slopes_p.append(sums(slope_p, at_q))
+        slopes_q.append(sums(at_p, slope_q))
+    return LocalData(np.array([values] * 4), (np.array(slopes_p), np.array(slopes_q)))
+
+
 def has_no_finite_flux(body: Body, places: Sequence[FloatArray], shape: tuple[int, ...]) -> NDArray[np.bool_]:
     """Where the flux has no finite value; places: three arrays that broadcast to the shape."""
     found = np.zeros(shape, dtype=bool)
     for face in body.present_faces:
         axis = axis_of(face)
-        on_face = places[axis] == _end(body, face)
+        on_face = places[axis] == body.end_of(face)
         if not on_face.any():
             continue
         found |= on_face & _jumps(body, face, places)
         if isinstance(body.faces[face], Held):
             for other in body.present_faces:
                 if axis_of(other) != axis:
-                    on_edge = on_face & (places[axis_of(other)] == _end(body, other))
+                    on_edge = on_face & (places[axis_of(other)] == body.end_of(other))
                     if on_edge.any():
                         found |= on_edge & _edge_mismatch(body, face, other, places)
     return found
@@ -150,7 +173,7 @@ def held_edges(body: Body, columns: Sequence[FloatArray], *, tensor: bool) -> li
     for first, second in combinations(held, 2):
         if axis_of(first) == axis_of(second):
             continue
-        on_first, on_second = (columns[axis_of(face)] == _end(body, face) for face in (first, second))
+        on_first, on_second = (columns[axis_of(face)] == body.end_of(face) for face in (first, second))
         if not (on_first.any() and on_second.any()):
             continue
         if tensor:
@@ -171,7 +194,7 @@ def _said_by(body: Body, held: Sequence[Face], places: Sequence[FloatArray]) -> 
     count, potential = np.zeros(shape), np.zeros(shape)
     slopes, slope_count = np.zeros((3, *shape)), np.zeros((3, *shape))
     for face in held:
-        here = np.broadcast_to(places[axis_of(face)] == _end(body, face), shape)
+        here = np.broadcast_to(places[axis_of(face)] == body.end_of(face), shape)
         data = _face_data(body, face, places)
         assert data is not None
         count += here
@@ -180,10 +203,6 @@ def _said_by(body: Body, held: Sequence[Face], places: Sequence[FloatArray]) -> 
             slopes[axis] += np.where(here, slope.mean(axis=0), 0.0)
             slope_count[axis] += here
     return potential / count, slopes / slope_count
-
-
-def _end(body: Body, face: Face) -> float:
-    return body.size[axis_of(face)] if is_high(face) else 0.0
 
 
 def edge_name(first: Face, second: Face) -> str:

@@ -84,8 +84,8 @@ def _strongest(body: Body, lines: tuple[Line, Line, Line]) -> FloatArray:
 def _strongest_cells(body: Body, face: Face, face_map: FaceMap, limits: FloatArray) -> list[tuple[float, FloatArray]]:
     first, second = axes_along(face)
     at, sizes = [], []
-    for axis, knots in ((first, face_map.first_knots), (second, face_map.second_knots)):
-        ends = np.clip(knots, limits[0, axis], limits[1, axis])
+    for axis, places in ((first, face_map.first_places), (second, face_map.second_places)):
+        ends = np.clip(places, limits[0, axis], limits[1, axis])
         widths = np.diff(ends)
         at.append(ends if face_map.bilinear else 0.5 * (ends[1:] + ends[:-1]))
         sizes.append(

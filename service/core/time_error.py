@@ -153,6 +153,8 @@ def _most_carried(line: Line, drive: Drive, places: Places, times: FloatArray) -
 
 
 def _carried_by_images(line: Line, profiles: Profiles, places: Places, times: FloatArray) -> FloatArray:
+    if profiles.is_curved:
+        return _carried_by_curves(line, profiles, places, times)
     breaks = breaks_of(line, profiles)
     sizes = np.zeros((1, times.size, profiles.n_profiles))
     narrowest = profiles.narrowest * line.scale
@@ -179,13 +181,22 @@ def _carried_by_images(line: Line, profiles: Profiles, places: Places, times: Fl
     return sizes
 
 
+def _carried_by_curves(line: Line, profiles: Profiles, places: Places, times: FloatArray) -> FloatArray:
+    """Of curved pieces: the rounding of their slopes where breaks cancel, and all of the profile once they are narrow."""
+    root_time = np.sqrt(times)[:, None]
+    size = profiles.sizes.max(axis=0) * np.minimum(1.0, root_time / (profiles.narrowest * line.scale))
+    if places.high is not None:
+        return np.array([size * float((places.high - places.low).max()) * line.scale])
+    return np.array([size / root_time if places.order == -1 else size])
+
+
 def _carried_by_modes(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
     modes = modes_of(line, MODE_COUNT)
     strengths = np.abs(eigen_integrals(line, drive, MODE_COUNT))
     if isinstance(drive, Profiles):
         # An eigen-integral that cancels keeps the rounding of what it is summed from.
         widths = np.diff(np.minimum(drive.knots, line.length)) / line.length
-        strengths = np.maximum(strengths, 2 * widths @ np.maximum(np.abs(drive.left), np.abs(drive.right)))
+        strengths = np.maximum(strengths, 2 * widths @ drive.sizes)
     slowest = np.abs(places.mode_shapes(line)[:, 0]).max()
     factor = float(modes.wave_numbers[1]) if places.order == -1 else 1.0
     if places.high is not None:

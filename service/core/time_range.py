@@ -194,7 +194,7 @@ def _nearest_to_break(line: Line, drive: Drive, places: Places) -> tuple[float, 
     distances = line.between(places.low[:, None], knots)
     near_jump = distances[:, has_jump]
     other = float(distances[:, has_kink].min(initial=math.inf))
-    if places.order == -1 and (near_jump == 0).any():
-        # On a held end the slope begins as 1 / sqrt(t).
+    if drive.is_curved or (places.order == -1 and (near_jump == 0).any()):
+        # A curved profile changes everywhere from the beginning; on a held end the slope begins as 1 / sqrt(t).
         other = 0.0
     return float(near_jump[near_jump > 0].min(initial=math.inf)), other

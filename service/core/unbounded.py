@@ -19,7 +19,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.maps import FaceMap, Rectangle
+from service.core.maps import EXACT_POINTS, FaceMap, Rectangle
 from service.core.problem import AXES, Body, Face, Held, axes_along, axis_of, is_high, map_of
 from service.core.singular import edge_name, line_name, local_data
 
@@ -33,8 +33,10 @@ NO_JUMP = 1e-12
 class UnboundedCause:
     """Why a total has no bound.
 
-    kind: "edge" of two held faces, "jump_line" inside a held face, or "endless" for a side that goes on for ever.
-    line: which. coefficient: flow gained for each factor e by which the gap shrinks; for "endless" flow per length.
+    kind: "edge" of two held faces, "jump_line" inside a held face, "endless" for a side that goes on for ever, or
+    "endless_plane" for one that does so along both of its axes.
+    line: which. coefficient: flow gained for each factor e by which the gap shrinks; for "endless" flow per length,
+    for "endless_plane" flow per area.
     largest_jump: largest difference of the values that meet.
     """
 
@@ -70,8 +72,8 @@ def _border_cause(body: Body, face: Face, rectangle: Rectangle, index: int, high
     knots = own.second_knots if index == 0 else own.first_knots
     neighbour: FaceMap | None = None
     name, kind, share = line_name(face, across, place), "jump_line", 1.0
-    if place in (0.0, body.size[across]):
-        other: Face = f"{AXES[across]}_{'low' if place == 0.0 else 'high'}"  # type: ignore[assignment]
+    other = body.face_at(across, place)
+    if other is not None:
         condition = body.faces[other]
         if not isinstance(condition, Held):
             return None
@@ -83,7 +85,7 @@ def _border_cause(body: Body, face: Face, rectangle: Rectangle, index: int, high
     if at.size == 0:
         return None
     jump, size = _jump_along(body, face, own, neighbour, index, place, high, at)
-    end = body.size[axis] if is_high(face) else 0.0
+    end = body.end_of(face)
     weights = weights * _mean_conductivity(body, (axis, end), (across, place), at)
     return _cause(kind, name, share, jump, weights, size)
 
@@ -107,9 +109,9 @@ def _cause(
     kind: str, name: str, factor: float, jump: FloatArray, weights: FloatArray, size: float
 ) -> UnboundedCause | None:
     """The cause that jumps along a line are; its coefficient is exactly 0 where they cancel, None without a jump."""
-    # Along each stretch the jump is linear: from its two Gauss points to its ends.
-    first, second = jump.reshape(-1, 2).T
-    largest = float((np.abs(first + second) / 2 + math.sqrt(3) / 2 * np.abs(second - first)).max())
+    # Along each stretch the jump is a polynomial: from its Gauss points to its ends.
+    stretches = jump.reshape(-1, EXACT_POINTS)
+    largest = float(max(np.abs(stretches).max(), np.abs(stretches @ _TO_ENDS).max()))
     if largest <= NO_JUMP * size:
         return None
     net, gross = float(weights @ jump), float(weights @ np.abs(jump))
@@ -128,9 +130,9 @@ def unbounded_plane_lines(
         across, along = axes_along(axis)[index], axes_along(axis)[1 - index]
         for high in (False, True):
             place, (low, top) = _border(rectangle, index, high)
-            if place not in (0.0, body.size[across]) or math.isinf(place):
+            face = body.face_at(across, place)
+            if face is None:
                 continue
-            face: Face = f"{AXES[across]}_{'low' if place == 0.0 else 'high'}"  # type: ignore[assignment]
             condition = body.faces[face]
             if not isinstance(condition, Held):
                 continue
@@ -149,6 +151,14 @@ def unbounded_plane_lines(
     return causes
 
 
+# Values at the ends of a stretch from those at its Gauss points, shape (EXACT_POINTS, 2).
+_POINTS = np.polynomial.legendre.leggauss(EXACT_POINTS)[0]
+_TO_ENDS = np.linalg.solve(
+    np.polynomial.legendre.legvander(_POINTS, EXACT_POINTS - 1).T,
+    np.polynomial.legendre.legvander(np.array([-1.0, 1.0]), EXACT_POINTS - 1).T,
+)
+
+
 def _border(rectangle: Rectangle, index: int, high: bool) -> tuple[float, tuple[float, float]]:
     """Where a border lies and from where to where it runs."""
     p, q = (rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high)
@@ -157,12 +167,14 @@ def _border(rectangle: Rectangle, index: int, high: bool) -> tuple[float, tuple[
 
 
 def _fine_rule(knots: FloatArray, low: float, high: float) -> tuple[FloatArray, FloatArray]:
-    """Gauss points and weights, two on each stretch between knots, exact for the bilinear data of both faces."""
+    """Gauss points and weights on each stretch between knots, exact for the data of both faces, curved ones too."""
+    finite = knots[np.isfinite(knots)]
+    if math.isinf(low):
+        low = min(float(finite.min(initial=0.0)), high) - 1.0
     if math.isinf(high):
-        finite = knots[np.isfinite(knots)]
-        high = max(float(finite.max()), low) + 1.0
+        high = max(float(finite.max(initial=0.0)), low) + 1.0
     cuts = np.unique(np.concatenate([[low, high], knots[(knots > low) & (knots < high)]]))
-    nodes, weights = np.polynomial.legendre.leggauss(2)
+    nodes, weights = np.polynomial.legendre.leggauss(EXACT_POINTS)
     half = 0.5 * np.diff(cuts)
     middle = 0.5 * (cuts[1:] + cuts[:-1])
     return (middle[:, None] + half[:, None] * nodes).ravel(), (half[:, None] * weights).ravel()
@@ -185,7 +197,7 @@ def _jump_along(
     else:
         # On the neighbour the edge is where its own axis, square to this face, ends.
         across = axes_along(face)[index]
-        end = body.size[axis_of(face)] if is_high(face) else 0.0
+        end = body.end_of(face)
         position = 1 - axes_along(across).index(axes_along(face)[1 - index])
         outside = _side_value(neighbour, position, end, at, from_above=end == 0.0)
     size = float(max(np.abs(inside).max(), np.abs(outside).max()))
@@ -219,11 +231,11 @@ def cut_constant(body: Body, face: Face, rectangle: Rectangle, reference: float)
             at, weights = _fine_rule(_with_interfaces(body, axes_along(face)[1 - index], knots), low, top)
             if math.isinf(place) or at.size == 0:
                 continue
-            end = body.size[axis] if is_high(face) else 0.0
+            end = body.end_of(face)
             weights = weights * _mean_conductivity(body, (axis, end), (across, place), at)
             inside = _side_value(own, index, place, at, from_above=not high)
-            if place in (0.0, body.size[across]):
-                other: Face = f"{AXES[across]}_{'low' if place == 0.0 else 'high'}"  # type: ignore[assignment]
+            other = body.face_at(across, place)
+            if other is not None:
                 if isinstance(body.faces[other], Held):
                     total += 2 / math.pi * float(weights @ inside)
             else:
