@@ -37,6 +37,8 @@ NARROW = 0.2
 # (n!)^4 / ((2 n + 1) (2 n)!^3) width^(2 n) times the derivative of order 2 n of exp(-x^2 / 4 t).
 WIDEST = {1: 1e-7, 2: 2e-3, 3: 0.04, 4: 0.2, 5: math.inf}
 
+_RULES = {count: np.polynomial.legendre.leggauss(count) for count in WIDEST}
+
 # Times are taken in groups within this factor of each other in sqrt(t); five points are good up to NARROW times it.
 GROUP = 2.0
 
@@ -130,7 +132,7 @@ def _readings(intervals: Intervals, scale: float, root_time: FloatArray) -> list
             base, shift = np.concatenate([low, high], axis=1), np.zeros((which.size, 2))
             weights = np.array([-1.0, 1.0]) / (width * scale)
         else:
-            nodes, shares = np.polynomial.legendre.leggauss(int(count))
+            nodes, shares = _RULES[int(count)]
             base = np.where(nodes < 0, low, high)
             shift = 0.5 * width * np.where(nodes < 0, 1.0 + nodes, nodes - 1.0)
             weights = np.broadcast_to(0.5 * shares, base.shape)
