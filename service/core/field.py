@@ -159,11 +159,11 @@ def check_inside(body: Body, columns: Sequence[FloatArray]) -> None:
             )
 
 
-def far_along(setting: Setting) -> float:
-    """A distance along an endless bar beyond which the field shows nothing of its end, in the caller's unit."""
-    knots = [part.knots(2) for part in setting.parts]
-    last = max((float(knot[np.isfinite(knot)].max()) for knot in knots if knot.size), default=0.0)
-    return last + 2 * time_range.CUT / math.sqrt(time_range.slowest_rate(setting.lines)) / setting.lines[2].scale
+def far_along(setting: Setting, axis: int = 2, *, high: bool = True) -> float:
+    """A place along an endless axis beyond which a field that decays shows nothing of its data."""
+    line = setting.lines[axis]
+    decay = 2 * time_range.CUT * math.sqrt(time_range.settling_time(setting.lines)) / line.scale
+    return line.data[1] + decay if high else line.data[0] - decay
 
 
 def kept_rows() -> time_form.Rows:

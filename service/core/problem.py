@@ -240,6 +240,11 @@ class Body:
         axis = axis_of(face)
         return self.size[axis] if is_high(face) else self.begins[axis]
 
+    def face_at(self, axis: int, place: float) -> Face | None:
+        """The face where an axis is at a place, None if there is none."""
+        on_it = (face for face in self.present_faces if axis_of(face) == axis and self.end_of(face) == place)
+        return next(on_it, None)
+
     def _check_size_and_conductivity(self) -> None:
         for axis, length in enumerate(self.size):
             if not length > 0:

@@ -22,7 +22,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core.maps import FaceMap
-from service.core.problem import AXES, Body, Face, Film, Held, axes_along, axis_of, is_high, map_of
+from service.core.problem import AXES, Body, Face, Film, Held, axes_along, axis_of, map_of
 
 FloatArray = NDArray[np.float64]
 

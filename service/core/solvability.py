@@ -107,10 +107,7 @@ def _given(body: Body) -> _Given:
 
 def _cells(body: Body, face: Face, face_map: FaceMap) -> tuple[FloatArray, FloatArray, FloatArray]:
     """Mean inflow of each cell between the knots of a face, and its corners."""
-    cells = face_map.table
-    if face_map.bilinear:
-        cells = 0.25 * (cells[1:, 1:] + cells[1:, :-1] + cells[:-1, 1:] + cells[:-1, :-1])
-    axes = axes_along(face)
+    cells, axes = face_map.cell_means, axes_along(face)
     if face_map.is_uniform:
         cells = cells[:1, :1]
         first, second = (np.array([body.begins[axis], body.size[axis]]) for axis in axes)

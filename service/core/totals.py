@@ -17,15 +17,15 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import time_error, time_form
+from service.core.endless import cut_off, endless_sides, far_profiles, far_setting, with_interval
 from service.core.errors import NotPhysical, OutsideBody
-from service.core.field import Setting, far_along, kept_rows, step_for
+from service.core.field import Setting, kept_rows, step_for
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE
 from service.core.lines.places import Places
-from service.core.maps import Rectangle
+from service.core.maps import Profiles, Rectangle
 from service.core.problem import AXES, Body, Face, Held, Inflow, Insulated, axes_along, axis_of, is_high
-from service.core.solvability import generation, map_integral
+from service.core.solvability import generation
 from service.core.unbounded import (
-    NO_JUMP,
     UnboundedCause,
     cut_constant,
     unbounded_lines,
@@ -36,6 +36,9 @@ FloatArray = NDArray[np.float64]
 
 # Totals are computed with an error factor this much below the field's: their bound is in flow, not in potential.
 HEADROOM = 1e-3
+
+# What a flow per length far along has to exceed to go on without end, in terms of its bound.
+FAR_BOUNDS = 4.0
 
 # Rounding of a given inflow integrated from the products of its map, relative to their sizes.
 GIVEN = 2e-15
@@ -82,16 +85,16 @@ class Balance:
 def whole_face(body: Body, axis: int) -> Rectangle:
     """The rectangle of a whole face or section square to an axis."""
     first, second = axes_along(axis)
-    return Rectangle(0.0, body.size[first], 0.0, body.size[second])
+    return Rectangle(body.begins[first], body.size[first], body.begins[second], body.size[second])
 
 
 def mean(setting: Setting, face: Face, rectangle: Rectangle | None, tolerance: float) -> Bounded:
     """Mean of the potential over a face or a rectangle of it."""
     axis = axis_of(face)
-    rectangle = _inside(setting.body, axis, rectangle)
-    if math.isinf(rectangle.q_high):
+    rectangle = checked_rectangle(setting.body, axis, rectangle)
+    if endless_sides(rectangle):
         raise NotPhysical("The mean over a side without end is not defined; name a rectangle of it.", ("rectangle",))
-    value, bound = _integral(setting, axis, _end(setting.body, face), rectangle, VALUE, tolerance)
+    value, bound = _integral(setting, axis, setting.body.end_of(face), rectangle, VALUE, tolerance)
     first, second = axes_along(axis)
     area = (rectangle.p_high - rectangle.p_low) * (rectangle.q_high - rectangle.q_low)
     scale = setting.lines[first].scale * setting.lines[second].scale * area
@@ -106,16 +109,17 @@ def plane_total(
     gap: as for a face; an inner plane is unbounded where it meets a held face on a line where its data jump.
     """
     body = setting.body
-    if not (0 <= position <= body.size[axis] and math.isfinite(position)):
+    if not (body.begins[axis] <= position <= body.size[axis] and math.isfinite(position)):
         raise OutsideBody(
-            f"The plane {AXES[axis]} = {position:g} is outside the body, which reaches from 0 to {body.size[axis]:g}.",
+            f"The plane {AXES[axis]} = {position:g} is outside the body, which reaches from {body.begins[axis]:g} to "
+            f"{body.size[axis]:g}.",
             (AXES[axis],),
         )
     for face in body.present_faces:
-        if axis_of(face) == axis and _end(body, face) == position:
+        if axis_of(face) == axis and body.end_of(face) == position:
             total = face_total(setting, face, rectangle, gap, tolerance)
-            return total if not is_high(face) else _negated(total)
-    rectangle = _inside(body, axis, rectangle)
+            return total if not is_high(face) else negated(total)
+    rectangle = checked_rectangle(body, axis, rectangle)
     finite = _flow(setting, axis, position, rectangle, 1.0, tolerance)
     causes = unbounded_plane_lines(body, axis, position, rectangle)
     net = [cause for cause, _ in causes if cause.coefficient != 0.0]
@@ -148,12 +152,12 @@ def face_total(setting: Setting, face: Face, rectangle: Rectangle | None, gap: f
     gap: width of the strip to leave out along each line that makes the total unbounded, for `with_gap`.
     """
     body, axis = setting.body, axis_of(face)
-    rectangle = _inside(body, axis, rectangle)
+    rectangle = checked_rectangle(body, axis, rectangle)
     condition = body.faces[face]
     if isinstance(condition, Insulated):
         return Total(0.0, 0.0)
     if isinstance(condition, Inflow):
-        return _given_total(face, condition, rectangle)
+        return _given_total(face, (condition.inflow.first, condition.inflow.second), rectangle)
     causes = unbounded_lines(body, face, rectangle) if isinstance(condition, Held) else []
     net = [cause for cause, _ in causes if cause.coefficient != 0.0]
     finite = finite_part(setting, face, rectangle, tolerance)
@@ -167,7 +171,7 @@ def finite_part(setting: Setting, face: Face, rectangle: Rectangle, tolerance: f
     """The total of a held or film face; where it is unbounded, what is left when the logarithms are dropped."""
     axis = axis_of(face)
     sign = -1.0 if is_high(face) else 1.0
-    total = _flow(setting, axis, _end(setting.body, face), rectangle, sign, tolerance)
+    total = _flow(setting, axis, setting.body.end_of(face), rectangle, sign, tolerance)
     if total.value is None:
         return total
     return Total(total.value - cut_constant(setting.body, face, rectangle, setting.reference), total.error_bound)
@@ -216,16 +220,20 @@ def _with_gap(
 
 def _flow(setting: Setting, axis: int, position: float, rectangle: Rectangle, sign: float, tolerance: float) -> Total:
     """sign times the flow along an axis through a rectangle of a plane; endless ones are followed to the far field."""
+    for index, high in endless_sides(rectangle):
+        far = far_setting(setting, axes_along(axis)[index], high=high)
+        goes_on = _flow(far, axis, position, with_interval(rectangle, index, 0.0, 1.0), sign, tolerance)
+        cause = _goes_on(goes_on, _section_name(setting.body, axis, position))
+        if cause is not None:
+            return Total(None, None, (cause,))
+    if endless_sides(rectangle):
+        bounded = cut_off(setting, axis, rectangle)
+        if bounded is None:
+            name = _section_name(setting.body, axis, position)
+            return Total(None, None, (UnboundedCause("endless", name, 0.0, 0.0),))
+        rectangle = bounded
     first, second = axes_along(axis)
     factor = -sign / (setting.lines[axis].scale * setting.lines[first].scale * setting.lines[second].scale)
-    if math.isinf(rectangle.q_high):
-        far = far_along(setting)
-        beyond = Rectangle(rectangle.p_low, rectangle.p_high, far, 2 * far)
-        leftover, leftover_bound = _integral(setting, axis, position, beyond, SLOPE, tolerance)
-        if abs(leftover) > 4 * leftover_bound:
-            name = _section_name(setting.body, axis, position)
-            return Total(None, None, (UnboundedCause("endless", name, factor * leftover / far, 0.0),))
-        rectangle = Rectangle(rectangle.p_low, rectangle.p_high, rectangle.q_low, far)
     if setting.body.layers and axis != 2:
         return _flow_through_layers(setting, axis, position, rectangle, factor, tolerance)
     value, bound = _integral(setting, axis, position, rectangle, SLOPE, tolerance)
@@ -249,11 +257,20 @@ def _flow_through_layers(
     return Total(value, bound)
 
 
+def _goes_on(per_length: Total, name: str) -> UnboundedCause | None:
+    """Why a flow has no bound, from what it is per length far along; None where that is nothing."""
+    if per_length.value is None:
+        return UnboundedCause("endless_plane", name, per_length.causes[0].coefficient, 0.0)
+    assert per_length.error_bound is not None
+    if abs(per_length.value) <= FAR_BOUNDS * per_length.error_bound:
+        return None
+    return UnboundedCause("endless", name, per_length.value, 0.0)
+
+
 def _section_name(body: Body, axis: int, position: float) -> str:
     """The face at a position, or the plane."""
-    if position in (0.0, body.size[axis]):
-        return f"face {AXES[axis]}_{'low' if position == 0.0 else 'high'}"
-    return f"plane {AXES[axis]} = {position:g}"
+    face = body.face_at(axis, position)
+    return f"plane {AXES[axis]} = {position:g}" if face is None else f"face {face}"
 
 
 def _integral(
@@ -273,44 +290,49 @@ def _integral(
     return value, bound
 
 
-def _inside(body: Body, axis: int, rectangle: Rectangle | None) -> Rectangle:
+def checked_rectangle(body: Body, axis: int, rectangle: Rectangle | None) -> Rectangle:
+    """The rectangle, or the whole face or section where there is none. Raises OutsideBody unless it lies in it."""
     whole = whole_face(body, axis)
     if rectangle is None:
         return whole
     fits = (
-        0 <= rectangle.p_low < rectangle.p_high <= whole.p_high
-        and 0 <= rectangle.q_low < rectangle.q_high <= whole.q_high
+        whole.p_low <= rectangle.p_low < rectangle.p_high <= whole.p_high
+        and whole.q_low <= rectangle.q_low < rectangle.q_high <= whole.q_high
     )
     if not fits:
         raise OutsideBody(
             f"The rectangle from ({rectangle.p_low:g}, {rectangle.q_low:g}) to ({rectangle.p_high:g}, "
-            f"{rectangle.q_high:g}) has to have a positive extent and lie within (0, 0) to ({whole.p_high:g}, "
-            f"{whole.q_high:g}).",
+            f"{rectangle.q_high:g}) has to have a positive extent and lie within ({whole.p_low:g}, "
+            f"{whole.q_low:g}) to ({whole.p_high:g}, {whole.q_high:g}).",
             ("rectangle",),
         )
     return rectangle
 
 
-def _end(body: Body, face: Face) -> float:
-    return body.size[axis_of(face)] if is_high(face) else 0.0
-
-
-def _given_total(face: Face, condition: Inflow, rectangle: Rectangle) -> Total:
+def _given_total(face: Face, profiles: tuple[Profiles, Profiles], rectangle: Rectangle) -> Total:
     """A given inflow integrated over a rectangle; its bound is the rounding of the products it is summed from."""
-    given = condition.inflow
-    if math.isinf(rectangle.q_high):
-        first = given.first.integrals(np.array([rectangle.p_low]), np.array([rectangle.p_high]))[0]
-        far = float(first @ given.second.right[-1])
-        size = float(np.abs(first) @ np.abs(given.second.right[-1]))
-        if abs(far) > NO_JUMP * size or (size > 0 and given.is_uniform):
-            return Total(None, None, (UnboundedCause("endless", f"face {face}", far, 0.0),))
-        last = max(float(given.second_knots[-2]), rectangle.q_low)
-        rectangle = Rectangle(rectangle.p_low, rectangle.p_high, rectangle.q_low, last)
-    value, size = map_integral(given, (rectangle.p_low, rectangle.q_low), (rectangle.p_high, rectangle.q_high))
-    return Total(value, GIVEN * size)
+    for index, high in endless_sides(rectangle):
+        far = far_profiles(profiles[index], high=high)
+        if far is None:
+            # Where nothing is given nothing adds up, however far the rectangle reaches.
+            continue
+        other = (far, profiles[1]) if index == 0 else (profiles[0], far)
+        cause = _goes_on(_given_total(face, other, with_interval(rectangle, index, 0.0, 1.0)), f"face {face}")
+        if cause is not None:
+            return Total(None, None, (cause,))
+        ends = profiles[index].knots[np.isfinite(profiles[index].knots)]
+        p, q = (rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high)
+        low, high_end = (p, q)[index]
+        # What goes on for ever cancels across it.
+        last = (low, max(float(ends[-1]), low)) if high else (min(float(ends[0]), high_end), high_end)
+        rectangle = with_interval(rectangle, index, *last)
+    first = profiles[0].integrals(np.array([rectangle.p_low]), np.array([rectangle.p_high]))
+    second = profiles[1].integrals(np.array([rectangle.q_low]), np.array([rectangle.q_high]))
+    return Total(float((first * second).sum()), GIVEN * float(np.abs(first * second).sum()))
 
 
-def _negated(total: Total) -> Total:
+def negated(total: Total) -> Total:
+    """The flow the other way."""
     return Total(
         None if total.value is None else -total.value,
         total.error_bound,

@@ -135,8 +135,9 @@ class Breaks:
     """Knots with the jumps of value and of slope that profiles, zero outside their line, have there.
 
     knots: in the caller's unit, shape (n_breaks,). jumps, slope_jumps: per scaled length, (n_breaks, n_profiles).
-    has_slopes: whether any slope jumps. largest_jump: shape (n_profiles,), of curved profiles their size. On an endless line the last piece ends
-    nowhere and has no last break, on one without ends the first piece has no first break either.
+    has_slopes: whether any slope jumps. largest_jump: shape (n_profiles,), of curved profiles their size. On an endless
+    line the last piece ends nowhere and has no last break, on one without ends the first piece has no first break
+    either.
     """
 
     knots: FloatArray

@@ -1,7 +1,8 @@
 """What a line answers at given times, by images while they are short and by eigenfunctions after that.
 
-An endless line has no eigenfunctions; at long times it sees what drives it as a few point sources. All forms are exact to rounding where they meet, so that a field, a mean or a total is one integral over time of
-products of three lines' answers, whatever drives the body.
+An endless line has no eigenfunctions; at long times it sees what drives it as a few point sources. All forms are exact
+to rounding where they meet, so that a field, a mean or a total is one integral over time of products of three lines'
+answers, whatever drives the body.
 """
 
 from __future__ import annotations
@@ -92,9 +93,7 @@ def _early_wall(line: Line, drive: WallDrive, places: Places, root_time: FloatAr
     return upper - images.wall_kernel(line, drive, places.low, root_time, PRIMITIVE)
 
 
-def _departure(
-    line: Line, drive: Profiles, coordinates: FloatArray, root_time: FloatArray, order: Order
-) -> FloatArray:
+def _departure(line: Line, drive: Profiles, coordinates: FloatArray, root_time: FloatArray, order: Order) -> FloatArray:
     """The answer at short times less the profile, by what its breaks send out."""
     from_breaks = curves.departure if drive.is_curved else images.departure
     return from_breaks(line, drive, coordinates, root_time, order)
