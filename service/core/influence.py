@@ -85,8 +85,8 @@ def influence(body: Body, pads: Sequence[Pad], *, tolerance: float, keep_going: 
     tolerance: of the entries that are checked, in potential per flow.
     Raises NotPhysical for a pad on a held face or outside its face, NoSteadyState where flow into a pad has no way out.
     """
+    check_pads(body, pads)
     lines = lines_of(body)
-    _check(body, lines, pads)
     n = len(pads)
     mean, bound = np.zeros((n, n)), np.zeros((n, n))
     for axis in range(3):
@@ -105,6 +105,24 @@ def influence(body: Body, pads: Sequence[Pad], *, tolerance: float, keep_going: 
             if keep_going is not None:
                 keep_going()
     return Influence(tuple(pads), mean, bound, *_agreement(body, pads, mean, bound, tolerance))
+
+
+def peaks(
+    body: Body, pads: Sequence[Pad], *, tolerance: float, keep_going: KeepGoing | None = None
+) -> tuple[FloatArray, FloatArray]:
+    """Highest rise on each pad (row) for a unit of flow into each pad (column), and its bounds, (n, n) each.
+
+    It is not symmetric. Every entry is searched for on its own, to the tolerance in potential per flow.
+    """
+    check_pads(body, pads)
+    n, rest = len(pads), environment(body)
+    highest, bound = np.empty((n, n)), np.empty((n, n))
+    for j, column in enumerate(pads):
+        driven = solve(with_flow_into(rest, column, 1.0))
+        for i, row in enumerate(pads):
+            place = driven.peak(row.face, row.where, tolerance=tolerance, keep_going=keep_going)
+            highest[i, j], bound[i, j] = place.value, place.error_bound
+    return highest, bound
 
 
 def environment(body: Body) -> Body:
@@ -131,7 +149,9 @@ def with_flow_into(body: Body, pad: Pad, flow: float) -> Body:
     return replace(body, faces={**body.faces, pad.face: drive})
 
 
-def _check(body: Body, lines: Sequence[Line], pads: Sequence[Pad]) -> None:
+def check_pads(body: Body, pads: Sequence[Pad]) -> None:
+    """Raise NotPhysical or NoSteadyState for pads that have no influence matrix."""
+    lines = lines_of(body)
     for index, pad in enumerate(pads):
         if pad.face not in body.present_faces:
             raise NotPhysical(f"The body has no face {pad.face}.", ("pads", index, "face"))
