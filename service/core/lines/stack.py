@@ -309,6 +309,9 @@ class _Upward:
         self.s, self.capacity, self.thickness = s, line.capacity, line.thickness
         self.q, self.admittance = np.sqrt(c / k) * root, np.sqrt(k * c) * root
         self.loads: list[_Load] = [_Load(0.0, 1.0)] * n
+        # Of the whole of each layer: 1 + and 1 - exp(-2 y), and the load's field over it.
+        self.across: list[tuple[Array, Array]] = [(root, root)] * n
+        self.whole: list[Array] = [root] * n
         # seen: the admittance into a layer from its bottom. passed: the field on its top for 1 at its bottom. beyond:
         # the field just above the contact on its top for 1 just below it.
         self.seen: list[Array] = [root] * n
@@ -324,20 +327,20 @@ class _Upward:
             elif line.film_high < math.inf:
                 self.loads[j] = _Load(1.0, line.film_high / self.admittance[j])
             y = self.q[j] * line.thickness[j]
-            plus, minus = _plus_minus(y)
-            value = self.loads[j].value(plus, minus)
-            self.seen[j] = self.admittance[j] * self.loads[j].slope(plus, minus) / value
-            self.passed[j] = 2 * self.loads[j].p * np.exp(-y) / value
+            self.across[j] = _plus_minus(y)
+            self.whole[j] = self.loads[j].value(*self.across[j])
+            self.seen[j] = self.admittance[j] * self.loads[j].slope(*self.across[j]) / self.whole[j]
+            self.passed[j] = 2 * self.loads[j].p * np.exp(-y) / self.whole[j]
 
     def inside(self, j: int, below: float, above: float, width: float, order: Order) -> Array:
         """The field in layer j (its flow k Z', its integral) for 1 at the bottom of the layer."""
         q, load = self.q[j], self.loads[j]
-        come = np.exp(-q * below) / load.value(*_plus_minus(q * self.thickness[j]))
-        value, slope = load.value(*_plus_minus(q * above)), load.slope(*_plus_minus(q * above))
+        come, rest = np.exp(-q * below) / self.whole[j], _plus_minus(q * above)
         if order == VALUE:
-            return come * value
+            return come * load.value(*rest)
         if order == SLOPE:
-            return -self.admittance[j] * come * slope
+            return -self.admittance[j] * come * load.slope(*rest)
+        value, slope = load.value(*rest), load.slope(*rest)
         y = q * width
         return come * (value * -np.expm1(-2 * y) + slope * np.expm1(-y) ** 2) / (2 * q)
 
@@ -348,7 +351,7 @@ class _Upward:
         Wronskian: every term is positive for positive s.
         """
         q, up = self.q[j], self.loads[j]
-        plus, minus = _plus_minus(q * self.thickness[j])
+        plus, minus = self.across[j]
         whole = 2 * self.s * ((down.m * up.p + down.p * up.m) * plus + (down.p * up.p + down.m * up.m) * minus)
 
         def value(y: float, z: float) -> Array:
