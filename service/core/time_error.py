@@ -182,7 +182,7 @@ def _carried_by_images(line: Line, profiles: Profiles, places: Places, times: Fl
 
 
 def _carried_by_curves(line: Line, profiles: Profiles, places: Places, times: FloatArray) -> FloatArray:
-    """Of curved pieces: the rounding of their slopes where breaks cancel, and all of the profile once they are narrow."""
+    """Of curved pieces: the rounding of their slopes where breaks cancel, all of the profile once they are narrow."""
     root_time = np.sqrt(times)[:, None]
     size = profiles.sizes.max(axis=0) * np.minimum(1.0, root_time / (profiles.narrowest * line.scale))
     if places.high is not None:
