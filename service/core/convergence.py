@@ -58,6 +58,7 @@ class NodeStep:
 class Convergence:
     """How the answer at one place converges.
 
+    series: empty where two axes are endless.
     terms_needed: modes per axis at which the series' tail bound meets the tolerance, None if no number does.
     agreement: difference of the two converged representations, with what it may be; None where the series takes too
     many terms. node_count, node_count_tenfold: nodes for the tolerance and for a tenth of it; their ratio is what
@@ -128,14 +129,24 @@ def overshoots(setting: Setting, terms: int) -> list[Overshoot]:
 
 def _axial(setting: Setting, part: Part) -> int:
     """The axis along which a textbook would solve: the driven one, or the one without an end, or the longest."""
-    if setting.lines[2].is_endless:
+    if setting.body.layers:
         return 2
+    endless = [axis for axis in range(3) if setting.lines[axis].is_endless]
+    if endless:
+        return endless[0]
     if part.cause == SOURCES or part.wall_axis is None:
         return int(np.argmax([line.extent for line in setting.lines]))
     return part.wall_axis
 
 
+def _has_series(setting: Setting) -> bool:
+    """Whether there are eigenfunctions along two axes at least."""
+    return sum(line.is_endless for line in setting.lines) + bool(setting.body.layers) <= 1
+
+
 def _series_steps(setting: Setting, point: FloatArray, value: float) -> list[SeriesStep]:
+    if not _has_series(setting):
+        return []
     totals = np.full(len(SERIES_TERMS), setting.reference)
     tails = np.zeros(len(SERIES_TERMS))
     where = [float(x) for x in point]
@@ -150,6 +161,8 @@ def _series_steps(setting: Setting, point: FloatArray, value: float) -> list[Ser
 
 
 def _terms_needed(setting: Setting, point: FloatArray, tolerance: float) -> int | None:
+    if not _has_series(setting):
+        return None
     where = [float(x) for x in point]
 
     def tail(terms: int) -> float:

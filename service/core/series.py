@@ -245,15 +245,24 @@ def tail_bound(lines: Sequence[Line], part: Part, point: Sequence[float], axial:
         return math.inf
     # Modes are within [m pi, (m + 1) pi] / extent, so the slowest left out has at least this gamma.
     gamma = min(math.pi * count / lines[axis].extent for axis in axes)
-    film = line.film_high if drive.high else line.film_low
-    amplitude = 2 * float(laplace.wall_amplitude(film, gamma))
-    if not line.is_endless:
-        amplitude /= -math.expm1(-2 * gamma * line.extent)
+    amplitude = _sent(line, drive, gamma)
     sizes = [_coefficient_bound(lines[axis], part.drives[axis]) for axis in axes]
     products = abs(part.factor) * float((sizes[0] * sizes[1]).sum())
     first, second = ratios
     sums = first**count / (1 - first) / (1 - second) + second**count / (1 - second) / (1 - first)
     return amplitude * products * sums
+
+
+def _sent(line: Line, drive: WallDrive, gamma: float) -> float:
+    """What the answer of a driven end, times exp(gamma s), cannot exceed at this gamma or a larger one."""
+    if isinstance(line, StackLine):
+        # The end itself, and a factor of 2 for every layer: what it passes on is below 2 exp(-y), contacts take more.
+        end = line.length if drive.high else 0.0
+        at_end = laplace.wall_values(line, drive, end, np.array([gamma]))[0]
+        return float(at_end) * 2.0 ** len(line.thickness)
+    film = line.film_high if drive.high else line.film_low
+    amplitude = 2 * float(laplace.wall_amplitude(film, gamma))
+    return amplitude if line.is_endless else amplitude / -math.expm1(-2 * gamma * line.extent)
 
 
 def _coefficient_bound(line: Line, drive: Drive) -> FloatArray:

@@ -28,8 +28,8 @@ ComplexArray = NDArray[np.complex128]
 # Places on the parabola. The rule errs by 3e-15 of the transform's size there.
 PLACES = 16
 
-# Times whose transforms are held at once.
-TIMES_AT_ONCE = 128
+# Numbers of a transform that are held at once.
+NUMBERS_AT_ONCE = 1_000_000
 
 # A layer that holds a profile is seen by its borders while sqrt(t) is below this part of its scaled thickness; the
 # profile and what the borders send out cancel later.
@@ -66,8 +66,9 @@ def _inverted(
     columns = 1 if isinstance(drive, WallDrive) else drive.n_profiles
     answer = np.empty((places.low.size, times.size, columns))
     carried = np.empty((1, times.size, columns))
-    for start in range(0, times.size, TIMES_AT_ONCE):
-        run = slice(start, min(start + TIMES_AT_ONCE, times.size))
+    at_once = max(NUMBERS_AT_ONCE // (max(places.low.size, 1) * PLACES * columns), 1)
+    for start in range(0, times.size, at_once):
+        run = slice(start, start + at_once)
         s = (_MU / times[run, None] * _RAY).ravel()
         if less_profile:
             assert isinstance(drive, Profiles)
