@@ -10,10 +10,10 @@ from service.core import field as fields
 from service.core.certificate import Certificate
 from service.core.convergence import Convergence, Overshoot
 from service.core.estimate import Estimate
-from service.core.extremes import Extremes
+from service.core.extremes import Extremes, Place
 from service.core.field import Field, Grid, KeepGoing, Setting
 from service.core.maps import Rectangle
-from service.core.problem import Body, Face
+from service.core.problem import Body, Face, axis_of
 from service.core.solvability import check_steady_state, level_is_pinned
 from service.core.span import span_of
 from service.core.split import lines_of, parts_of, reference_level
@@ -72,6 +72,13 @@ class Solution:
     def extremes(self, *, tolerance: float, keep_going: KeepGoing | None = None) -> Extremes:
         """The hottest and the coldest place of the closed body."""
         return extremes.find(self._setting, tolerance, keep_going)
+
+    def peak(
+        self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float, keep_going: KeepGoing | None = None
+    ) -> Place:
+        """The highest potential on a face or a rectangle of it."""
+        rectangle = totals.checked_rectangle(self.body, axis_of(face), rectangle)
+        return extremes.highest_on(self._setting, face, rectangle, tolerance, keep_going)
 
     def certificate(self, points: FloatArray, error_bound: float, *, tolerance: float) -> Certificate:
         """What stands behind an answer with that bound: agreement of both representations at some of its points."""
