@@ -8,6 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import field, series
+from service.core.endless import neighbourhood
 from service.core.field import Setting
 
 FloatArray = NDArray[np.float64]
@@ -17,7 +18,7 @@ CHECKED_PLACES = 4
 
 METHOD = "time integral of three lines multiplied"
 CHECKED = f"{METHOD}; eigenfunction series as the check"
-UNCHECKED = f"{METHOD}; the eigenfunction series takes too many terms to check it here"
+UNCHECKED = f"{METHOD}; the eigenfunction series takes too many terms to check it here, or has none"
 
 
 @dataclass(frozen=True)
@@ -25,9 +26,12 @@ class Certificate:
     """What stands behind an answer.
 
     error_bound: holds at every place asked for. agreement: largest difference between the time form and the
-    eigenfunction series at the checked places, None if the series takes too many terms at all of them.
+    eigenfunction series at the checked places, None if the series takes too many terms at all of them, or if there is
+    none because two axes are endless.
     check_bound: what that difference may be, the sum of both forms' bounds. checked_places: how many.
     time_nodes, products, series_terms: what was summed: nodes in time, products of profiles, terms of the series.
+    iterations, residual: of film faces, where the conductivity varies or they radiate: steps taken, and bound on what
+    is left over of their condition, a flow per area; 0 steps and None where nothing was iterated.
     """
 
     error_bound: float
@@ -37,11 +41,14 @@ class Certificate:
     time_nodes: int
     products: int
     series_terms: int
+    iterations: int = 0
+    residual: float | None = None
 
     @property
     def method(self) -> str:
         """How the answer was had and checked, in words."""
-        return CHECKED if self.checked_places else UNCHECKED
+        method = CHECKED if self.checked_places else UNCHECKED
+        return f"{method}; film faces iterated" if self.iterations else method
 
 
 @dataclass(frozen=True)
@@ -101,6 +108,5 @@ def _checked(setting: Setting, places: FloatArray) -> list[tuple[FloatArray, Ser
 
 def _inner_places(setting: Setting) -> FloatArray:
     """Two places well inside the body, off its planes of symmetry."""
-    finite = [line.length for line in setting.lines if not line.is_endless]
-    lengths = np.array([max(finite) if line.is_endless else line.length for line in setting.lines])
-    return np.array([[0.43, 0.57, 0.46], [0.61, 0.38, 0.53]]) * lengths
+    low, high = np.array([neighbourhood(setting.lines, axis) for axis in range(3)]).T
+    return low + np.array([[0.43, 0.57, 0.46], [0.61, 0.38, 0.53]]) * (high - low)

@@ -7,6 +7,7 @@ without ends. That is a body of the same kind with one dimension less.
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -57,6 +58,16 @@ def _far_part(part: Part, axis: int, *, high: bool) -> Part | None:
         return None
     drives[axis] = far
     return replace(part, drives=(drives[0], drives[1], drives[2]))
+
+
+def neighbourhood(lines: Sequence[Line], axis: int) -> tuple[float, float]:
+    """The whole of a finite axis; along an endless one as far beyond the data as the body or its data are wide."""
+    line = lines[axis]
+    low, high = line.stretch
+    if not line.is_endless:
+        return low, high
+    beyond = time_range.widest(lines) / line.scale
+    return max(low - beyond, line.begins), high + beyond
 
 
 def cut_off(setting: Setting, axis: int, rectangle: Rectangle) -> Rectangle | None:

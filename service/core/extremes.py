@@ -18,9 +18,11 @@ from numpy.typing import NDArray
 from scipy.ndimage import maximum_filter
 
 from service.core import field
+from service.core.endless import far_setting, neighbourhood
 from service.core.field import Grid, Setting
 from service.core.maps import FaceMap, Peak, Rectangle
-from service.core.problem import AXES, Body, Face, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
+from service.core.problem import AXES, Body, Face, Film, Held, Inflow, axes_along, axis_of, map_of
+from service.core.time_range import has_decay, widest
 
 FloatArray = NDArray[np.float64]
 
@@ -56,8 +58,8 @@ SMALLEST_WIDTH = 1e-9
 class Place:
     """An extreme of the field.
 
-    position: z is infinite where the value is only approached, far along an endless bar. value: of the potential
-    there. error_bound: of that value, and of how far the peak it belongs to may exceed it.
+    position: infinite along an axis far along which the value is only approached. value: of the potential there.
+    error_bound: of that value, and of how far the peak it belongs to may exceed it.
     where: "inside", or the faces the place is on, such as "face z_low".
     """
 
@@ -133,7 +135,7 @@ def _extreme_held(body: Body, sign: float) -> Place | None:
         return None
     peak, face = best
     place = [0.0, 0.0, 0.0]
-    place[axis_of(face)] = body.size[axis_of(face)] if is_high(face) else 0.0
+    place[axis_of(face)] = body.end_of(face)
     for axis, at in zip(axes_along(face), (peak.first, peak.second), strict=True):
         place[axis] = at
     found = (place[0], place[1], place[2])
@@ -152,10 +154,12 @@ def _peak_of(face_map: FaceMap, lengths: Sequence[float], sign: float) -> Peak:
 
 
 def _representative(knots: FloatArray, index: int, bilinear: bool, length: float) -> float:
-    """A reading's own place, or the middle of a cell (its beginning if the cell has no end)."""
+    """A reading's own place, or the middle of a cell; of a cell without an end the end it has, or 0."""
     if bilinear:
-        return float(min(knots[index], length))
+        return float(knots[index + 1] if np.isneginf(knots[index]) else min(knots[index], length))
     low, high = float(knots[index]), float(min(knots[index + 1], length))
+    if math.isinf(low):
+        return 0.0 if math.isinf(high) else high
     return low if math.isinf(high) else 0.5 * (low + high)
 
 
@@ -220,7 +224,7 @@ def _grids(setting: Setting) -> list[list[FloatArray]]:
         if face_map is None or isinstance(condition, Held) or face_map.is_uniform:
             continue
         axes = [np.zeros(1)] * 3
-        axes[axis_of(face)] = np.array([body.size[axis_of(face)] if is_high(face) else 0.0])
+        axes[axis_of(face)] = np.array([body.end_of(face)])
         for axis, knots in zip(axes_along(face), (face_map.first_knots, face_map.second_knots), strict=True):
             axes[axis] = _data_places(setting, axis, knots, face_map.bilinear)
         grids.append(axes)
@@ -257,13 +261,14 @@ def _from_grid(search: _Search, axes: list[FloatArray], values: FloatArray, sign
 
 def _from_boxes(setting: Setting, sign: float) -> list[_Start]:
     """The middles of the boxes of generation, with half their size to climb in."""
-    boxes = [box for box in setting.body.generating if sign * box.density > 0 and math.isfinite(box.high[2])]
+    boxes = [box for box in setting.body.generating if sign * box.density > 0]
     if not boxes:
         return []
-    low, high = np.array([box.low for box in boxes]), np.array([box.high for box in boxes])
+    ends = np.array([neighbourhood(setting.lines, axis) for axis in range(3)]).T
+    low, high = (np.clip([getattr(box, end) for box in boxes], *ends) for end in ("low", "high"))
     middles, halves = 0.5 * (low + high), 0.5 * (high - low)
     rough = field.at_points(setting, middles, tolerance=FIRST_ACCURACY * setting.span, with_flux=False)
-    limits = tuple((0.0, length) for length in setting.body.size)
+    limits = tuple(zip(setting.body.begins, setting.body.size, strict=True))
     order = np.argsort(-sign * rough.potential, kind="stable")[:STARTS]
     return [
         _Start(
@@ -278,17 +283,38 @@ def _from_boxes(setting: Setting, sign: float) -> list[_Start]:
 
 
 def _far_if_only_approached(setting: Setting, found: Place, tolerance: float, sign: float) -> Place:
-    """The place as it is, or far along an endless bar where the field only comes to the same value there."""
-    if not setting.lines[2].is_endless:
-        return found
-    x, y, _ = found.position
-    answer = field.at_points(
-        setting, np.array([[x, y, field.far_along(setting)]]), tolerance=tolerance, with_flux=False
+    """The place as it is, or far along an endless axis where the field only comes to the same value there."""
+    best: Place | None = None
+    for axis, line in enumerate(setting.lines):
+        if not line.is_endless:
+            continue
+        for high in (True, False) if setting.body.infinite[axis] else (True,):
+            far = _far(setting, found, axis, tolerance, high=high)
+            if sign * far.value < sign * found.value - far.error_bound:
+                continue
+            if best is None or sign * far.value > sign * best.value:
+                best = far
+    return found if best is None else best
+
+
+def _far(setting: Setting, found: Place, axis: int, tolerance: float, *, high: bool) -> Place:
+    """The same place far along an axis."""
+    position = list(found.position)
+    asked = setting
+    if has_decay(setting.lines):
+        position[axis] = field.far_along(setting, axis, high=high)
+    else:
+        asked = far_setting(setting, axis, high=high)
+    answer = field.at_points(asked, np.array([position]), tolerance=tolerance, with_flux=False)
+    position[axis] = math.inf if high else -math.inf
+    bar = sum(line.is_endless for line in setting.lines) == 1 and not setting.body.infinite[axis]
+    where = "far along the bar" if bar else f"far along {'' if high else '-'}{AXES[axis]}"
+    return Place(
+        (position[0], position[1], position[2]),
+        float(answer.potential[0]),
+        answer.potential_bound + found.error_bound,
+        f"{found.where}, {where}",
     )
-    far, bound = float(answer.potential[0]), answer.potential_bound
-    if sign * far < sign * found.value - bound - found.error_bound:
-        return found
-    return Place((x, y, math.inf), far, bound + found.error_bound, f"{found.where}, far along the bar")
 
 
 def _peaks(values: FloatArray, alike: float) -> list[tuple[int, int, int]]:
@@ -320,7 +346,7 @@ def _climb(search: _Search, start: _Start, sign: float) -> Place:
     """Follow one peak on finer and finer grids until what lies between their places is below the tolerance."""
     body, accuracy = search.setting.body, search.accuracy
     place, widths = list(start.place), list(start.widths)
-    smallest = SMALLEST_WIDTH * max(length for length in body.size if math.isfinite(length))
+    smallest = SMALLEST_WIDTH * max(_reach(search.setting, axis) for axis in range(3))
     while True:
         local = [
             np.unique(np.clip(at + width * FINER, low, high))
@@ -364,12 +390,19 @@ def _vertex(places: FloatArray, values: FloatArray, top: tuple[int, int, int], a
     return vertex, max(float(rise), 0.0)
 
 
+def _reach(setting: Setting, axis: int) -> float:
+    """How far the neighbourhood of the data reaches along an axis."""
+    low, high = neighbourhood(setting.lines, axis)
+    return high - low
+
+
 def _first_places(setting: Setting, axis: int) -> FloatArray:
     """Ends, knots and the middles between them, and an even or, along an endless bar, widening spread."""
     line = setting.lines[axis]
     if line.is_endless:
-        widest = max(other.extent for other in setting.lines if not other.is_endless) / line.scale
-        spread = np.concatenate([[0.0], widest * np.geomspace(0.02, 20.0, 11)])
+        beyond = widest(setting.lines) / line.scale * np.geomspace(0.02, 20.0, 11)
+        low, high = line.data
+        spread = np.concatenate([[0.0], beyond] if line.has_low_end else [low - beyond, [low, high], high + beyond])
     else:
         spread = line.length * np.linspace(0.0, 1.0, 11)
     places = [spread]
@@ -394,8 +427,7 @@ def _thinned(places: FloatArray) -> FloatArray:
 def _where(body: Body, place: tuple[float, float, float]) -> str:
     names = []
     for axis, value in enumerate(place):
-        if value == 0.0:
-            names.append(f"{AXES[axis]}_low")
-        elif value == body.size[axis]:
-            names.append(f"{AXES[axis]}_high")
+        face = body.face_at(axis, value)
+        if face is not None:
+            names.append(face)
     return "face " + "/".join(names) if names else "inside"

@@ -5,7 +5,8 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import field, time_error, time_form, time_range
+from service.core import field, time_error, time_form
+from service.core.endless import neighbourhood
 from service.core.lines.line import VALUE, Line
 from service.core.lines.places import Places
 from service.core.maps import FaceMap
@@ -51,25 +52,13 @@ def _rises(body: Body, lines: tuple[Line, Line, Line], flows: list[Part]) -> Flo
     return np.concatenate([on_grid.ravel(), at_points])
 
 
-def _looked_at(lines: tuple[Line, Line, Line], axis: int) -> tuple[float, float]:
-    """The whole of a finite axis; along an endless one as far beyond the data as the body is wide elsewhere, or as
-    what drives it where it has no width.
-    """
-    line = lines[axis]
-    low, high = line.stretch
-    if not line.is_endless:
-        return low, high
-    widest = max((other.extent for other in lines if not other.is_endless), default=time_range.shortest(lines))
-    return max(low - widest / line.scale, line.begins), high + widest / line.scale
-
-
 def _strongest(body: Body, lines: tuple[Line, Line, Line]) -> FloatArray:
     """The middles of the boxes, patches and readings that raise most where there are many, by their data and size.
 
     A box raises the potential by about its density times the square of its least size, a patch by its inflow times it.
     """
     found = []
-    limits = np.array([_looked_at(lines, axis) for axis in range(3)]).T
+    limits = np.array([neighbourhood(lines, axis) for axis in range(3)]).T
     if len(body.generating) > 1:
         for source in body.generating:
             low, high = np.maximum(source.low, limits[0]), np.minimum(source.high, limits[1])
@@ -103,7 +92,7 @@ def _strongest_cells(body: Body, face: Face, face_map: FaceMap, limits: FloatArr
 
 
 def _coordinates(lines: tuple[Line, Line, Line], flows: list[Part], axis: int) -> FloatArray:
-    low, high = _looked_at(lines, axis)
+    low, high = neighbourhood(lines, axis)
     places = [low, 0.5 * (low + high), high]
     for part in flows:
         knots = part.knots(axis)

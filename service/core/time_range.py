@@ -49,7 +49,7 @@ def times_for(
     rule_error: relative error of the trapezoidal rule on that step.
     """
     settling = settling_time(lines)
-    last = CUT * settling if has_decay(lines) else AFAR * _reach(lines, places) ** 2
+    last = last_time(lines, places)
     lets_go = profile_is_taken_out(lines, part, places) or is_undying(lines)
     first = max(_first_time(lines, part, places, EARLIEST * rule_error), TINY * shortest(lines) ** 2)
     # A plain integrand begins only when the front from its end arrives; the others begin with what is let go.
@@ -150,23 +150,44 @@ def _narrowest(lines: Sequence[Line], part: Part) -> float:
 def shortest(lines: Sequence[Line]) -> float:
     """Shortest scaled length of the body; of what drives it where it has no end; of the unit where that has none."""
     finite = [line.extent for line in lines if not line.is_endless]
+    return min(finite or _data_widths(lines) or [line.scale for line in lines])
+
+
+def widest(lines: Sequence[Line]) -> float:
+    """Largest scaled length of the body, or of what drives it where it has none that is finite."""
+    finite = [line.extent for line in lines if not line.is_endless]
+    return max(finite or _data_widths(lines) or [line.scale for line in lines])
+
+
+def _data_widths(lines: Sequence[Line]) -> list[float]:
     widths = [(line.data[1] - line.data[0]) * line.scale for line in lines]
-    return min(finite or [width for width in widths if width > 0] or [line.scale for line in lines])
+    return [width for width in widths if width > 0]
+
+
+def last_time(lines: Sequence[Line], places: Sequence[Places] = ()) -> float:
+    """Until when the integral of a body runs that is asked at some places, or close to what drives it."""
+    if has_decay(lines):
+        return CUT * settling_time(lines)
+    return AFAR * _reach(lines, places) ** 2
 
 
 def _reach(lines: Sequence[Line], places: Sequence[Places]) -> float:
     """Largest scaled distance of the places from what drives a body, its own size, and the depth of its films."""
-    found = []
-    for line, asked in zip(lines, places, strict=True):
+    found = [shortest(lines)]
+    for axis, line in enumerate(lines):
         if not line.is_endless:
             found.append(line.extent)
             continue
-        marks = np.concatenate([asked.low, line.data] if asked.high is None else [asked.low, asked.high, line.data])
-        marks = marks[np.isfinite(marks)]
-        found.append(float(marks.max() - marks.min()) * line.scale)
+        marks = [np.array(line.data)]
+        if places:
+            asked = places[axis]
+            marks += [asked.low] if asked.high is None else [asked.low, asked.high]
+        there = np.concatenate(marks)
+        there = there[np.isfinite(there)]
+        found.append(float(there.max() - there.min()) * line.scale)
         if 0.0 < line.film_low < math.inf:
             found.append(1 / line.film_low)
-    return max(*found, shortest(lines))
+    return max(found)
 
 
 def _film_at(line: Line, drive: Drive) -> float:
