@@ -79,24 +79,36 @@ class Influence:
     checked: int
 
 
-def influence(body: Body, pads: Sequence[Pad], *, tolerance: float, keep_going: KeepGoing | None = None) -> Influence:
+def influence(
+    body: Body,
+    pads: Sequence[Pad],
+    *,
+    tolerance: float,
+    earlier: Influence | None = None,
+    keep_going: KeepGoing | None = None,
+) -> Influence:
     """The influence matrix of pads on insulated, given-inflow or film faces of a body.
 
-    tolerance: of the entries that are checked, in potential per flow.
+    tolerance: of the entries that are checked, in potential per flow. earlier: of the same body; what it says of pads
+    that are still where they were is taken from it, so that a pad that moved costs one column.
     Raises NotPhysical for a pad on a held face or outside its face, NoSteadyState where flow into a pad has no way out.
     """
     check_pads(body, pads)
     lines = lines_of(body)
     n = len(pads)
     mean, bound = np.zeros((n, n)), np.zeros((n, n))
+    known = _taken_over(pads, earlier, mean, bound)
     for axis in range(3):
-        of_axis = [index for index, pad in enumerate(pads) if axis_of(pad.face) == axis]
-        if of_axis:
-            block = np.ix_(of_axis, of_axis)
-            mean[block], bound[block] = _same_axis(body, lines, [pads[index] for index in of_axis], keep_going)
+        of_axis = np.array([index for index, pad in enumerate(pads) if axis_of(pad.face) == axis], dtype=int)
+        new = of_axis[~known[of_axis]]
+        if new.size:
+            rows, columns = [pads[index] for index in of_axis], [pads[index] for index in new]
+            block, error = _same_axis(body, lines, rows, columns, keep_going)
+            mean[np.ix_(of_axis, new)], bound[np.ix_(of_axis, new)] = block, error
+            mean[np.ix_(new, of_axis)], bound[np.ix_(new, of_axis)] = block.T, error.T
     for j, column in enumerate(pads):
-        others = [i for i in range(j) if axis_of(pads[i].face) != axis_of(column.face)]
-        if others:
+        others = [i for i in range(n) if axis_of(pads[i].face) != axis_of(column.face) and (i < j or known[i])]
+        if others and not known[j]:
             driven = solve(with_flow_into(environment(body), column, 1.0))
             for i in others:
                 found = driven.mean(pads[i].face, pads[i].where, tolerance=tolerance)
@@ -187,62 +199,93 @@ def _comes_to_rest(lines: Sequence[Line]) -> bool:
     return time_range.has_decay(lines) or sum(line.is_endless for line in lines) == 3
 
 
+def _taken_over(
+    pads: Sequence[Pad], earlier: Influence | None, mean: FloatArray, bound: FloatArray
+) -> NDArray[np.bool_]:
+    """Fill in what an earlier matrix says; returns of which pads it knows, shape (n,)."""
+    if earlier is None:
+        return np.zeros(len(pads), dtype=bool)
+    place = {(pad.face, pad.where): index for index, pad in enumerate(earlier.pads)}
+    found = np.array([place.get((pad.face, pad.where), -1) for pad in pads])
+    known = found >= 0
+    here, there = np.ix_(known, known), np.ix_(found[known], found[known])
+    mean[here], bound[here] = earlier.mean[there], earlier.bound[there]
+    return known
+
+
+@dataclass(frozen=True, eq=False)
+class _Side:
+    """Rows or columns of a matrix: different intervals along both axes, and which of them each pad has."""
+
+    first: Intervals
+    second: Intervals
+    at_first: NDArray[np.intp]
+    at_second: NDArray[np.intp]
+    face: NDArray[np.intp]
+
+    @classmethod
+    def of(cls, pads: Sequence[Pad], faces: Sequence[Face]) -> _Side:
+        """The side of some pads. faces: in the order they are counted."""
+        ends = np.array([(pad.where.p_low, pad.where.p_high, pad.where.q_low, pad.where.q_high) for pad in pads]).T
+        first, at_first = Intervals.unique(ends[0], ends[1])
+        second, at_second = Intervals.unique(ends[2], ends[3])
+        return cls(first, second, at_first, at_second, np.array([faces.index(pad.face) for pad in pads]))
+
+    def narrowest(self, along: tuple[Line, Line]) -> float:
+        """Least scaled width of a pad."""
+        first, second = along
+        return min(float(self.first.widths.min()) * first.scale, float(self.second.widths.min()) * second.scale)
+
+
 def _same_axis(
-    body: Body, lines: Sequence[Line], pads: Sequence[Pad], keep_going: KeepGoing | None
+    body: Body, lines: Sequence[Line], rows: Sequence[Pad], columns: Sequence[Pad], keep_going: KeepGoing | None
 ) -> tuple[FloatArray, FloatArray]:
-    """The matrix of pads on faces square to one axis, and its bound."""
-    axis = axis_of(pads[0].face)
-    along = axes_along(axis)
-    spans = [
-        Intervals.unique(np.array([pad.where.p_low for pad in pads]), np.array([pad.where.p_high for pad in pads])),
-        Intervals.unique(np.array([pad.where.q_low for pad in pads]), np.array([pad.where.q_high for pad in pads])),
-    ]
-    which = [index for _, index in spans]
-    times = _times(
-        lines, [lines[a].scale * float(some.widths.min()) for a, (some, _) in zip(along, spans, strict=True)]
-    )
+    """The matrix of pads on faces square to one axis, and its bound. columns: all of the rows, or some."""
+    axis = axis_of(rows[0].face)
+    first_axis, second_axis = axes_along(axis)
+    along = lines[first_axis], lines[second_axis]
+    faces = sorted({pad.face for pad in rows})
+    row = _Side.of(rows, faces)
+    column = row if len(columns) == len(rows) else _Side.of(columns, faces)
+    times = _times(lines, row.narrowest(along))
     weights = time_range.weights(lines, times, STEP)
     release = time_range.settling_time(lines)
     taken_out = 1 + np.expm1(-times / release) ** 3
-    faces = sorted({pad.face for pad in pads})
-    face_of = np.array([faces.index(pad.face) for pad in pads])
-    through, closed = _third_line(body, lines[axis], faces, times, release)
-    n = len(pads)
-    shapes = [_shape(lines[a], some)[np.ix_(at, at)] for a, (some, at) in zip(along, spans, strict=True)]
-    shape = shapes[0] * shapes[1]
-    total, size = shape * closed[np.ix_(face_of, face_of)], np.zeros((n, n))
-    run = max(NUMBERS_AT_ONCE // n**2, 1)
+    through, closed = _third_line(lines[axis], faces, times, release)
+    pick_first, pick_second = np.ix_(row.at_first, column.at_first), np.ix_(row.at_second, column.at_second)
+    pick_end = np.ix_(row.face, column.face)
+    shape = (
+        _shape(along[0], row.first, column.first)[pick_first] * _shape(along[1], row.second, column.second)[pick_second]
+    )
+    at_once = shape * closed[pick_end]
+    total, size = at_once.copy(), np.abs(at_once)
+    run = max(NUMBERS_AT_ONCE // total.size, 1)
     for start in range(0, times.size, run):
         if keep_going is not None:
             keep_going()
         part = slice(start, start + run)
-        first, second = (
-            pair_means(lines[a], some, some, times[part]) for a, (some, _) in zip(along, spans, strict=True)
-        )
+        first = pair_means(along[0], row.first, column.first, times[part])
+        second = pair_means(along[1], row.second, column.second, times[part])
         for index in range(first.shape[2]):
             q = start + index
-            means = first[:, :, index][np.ix_(which[0], which[0])] * second[:, :, index][np.ix_(which[1], which[1])]
-            end = weights[q] * through[:, :, q][np.ix_(face_of, face_of)]
+            means = first[:, :, index][pick_first] * second[:, :, index][pick_second]
+            end = weights[q] * through[:, :, q][pick_end]
             total += (means - taken_out[q] * shape) * end
             size += (means + taken_out[q] * shape) * np.abs(end)
-    scale = scale_of(body, axis) * lines[along[0]].scale * lines[along[1]].scale
-    own = np.abs(np.diag(total))
-    rounding = PAIR_ROUNDING * np.sqrt(np.outer(own, own))
     relative = time_error.step_error(STEP) * SPREAD + 4 * time_error.ROUNDING
-    return scale * total, scale * (relative * (size + np.abs(shape * closed[np.ix_(face_of, face_of)])) + rounding)
+    # Means keep their digits in terms of those of a pad over itself, the largest of which are among the sums.
+    rounding = PAIR_ROUNDING * size.max()
+    scale = scale_of(body, axis) * along[0].scale * along[1].scale
+    return scale * total, scale * (relative * size + rounding)
 
 
-def _times(lines: Sequence[Line], widths: Sequence[float]) -> FloatArray:
-    settling = time_range.settling_time(lines)
-    reach = max(widths)
-    last = time_range.CUT * settling if time_range.has_decay(lines) else time_range.AFAR * reach**2
-    first = min(EARLIEST * min(widths) ** 2, time_range.LATEST_BEGINNING * settling)
+def _times(lines: Sequence[Line], narrowest: float) -> FloatArray:
+    first = min(EARLIEST * narrowest**2, time_range.LATEST_BEGINNING * time_range.settling_time(lines))
+    last = time_range.last_time(lines)
     return np.exp(STEP * np.arange(math.floor(math.log(first) / STEP), math.ceil(math.log(last) / STEP) + 1))
 
 
-def _third_line(
-    body: Body, line: Line, faces: Sequence[Face], times: FloatArray, release: float
-) -> tuple[FloatArray, FloatArray]:
+def _third_line(line: Line, faces: Sequence[Face], times: FloatArray, release: float) -> tuple[FloatArray, FloatArray]:
     """What a unit inflow at the end of one face raises at another's: at times, and integrated with chi over all times.
 
     Shapes (n_faces, n_faces, n_times) and (n_faces, n_faces).
@@ -260,10 +303,10 @@ def _third_line(
     return through, closed
 
 
-def _shape(line: Line, some: Intervals) -> FloatArray:
+def _shape(line: Line, rows: Intervals, columns: Intervals) -> FloatArray:
     """Means of intervals over intervals as time begins: their overlap over both widths, per scaled length."""
-    overlap = np.minimum(some.high[:, None], some.high) - np.maximum(some.low[:, None], some.low)
-    return np.maximum(overlap, 0.0) / np.outer(some.widths, some.widths) / line.scale
+    overlap = np.minimum(rows.high[:, None], columns.high) - np.maximum(rows.low[:, None], columns.low)
+    return np.maximum(overlap, 0.0) / np.outer(rows.widths, columns.widths) / line.scale
 
 
 def _agreement(
