@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from collections.abc import Mapping
 from functools import lru_cache
 from pathlib import Path
 from typing import Any
@@ -115,8 +116,17 @@ def error_responses(*statuses: int) -> dict[int | str, dict[str, Any]]:
     return responses
 
 
-def answer_responses(path: str, model: type[BaseModel]) -> dict[int | str, dict[str, Any]]:
-    """Descriptions of the answers of a call that takes a question."""
+def answer_responses(
+    path: str, model: type[BaseModel], texts: Mapping[str, str] | None = None
+) -> dict[int | str, dict[str, Any]]:
+    """Descriptions of the answers of a call that takes a question.
+
+    texts: descriptions of its other forms by their media types.
+    """
+    other_forms = {
+        media_type: {"schema": {"type": "string", "description": description}}
+        for media_type, description in (texts or {}).items()
+    }
     return {
         200: {
             "model": model,
@@ -132,6 +142,7 @@ def answer_responses(path: str, model: type[BaseModel]) -> dict[int | str, dict[
                         "each array. NaN stands for null.",
                     }
                 },
+                **other_forms,
             },
         },
         **error_responses(400, 406, 413, 415, 422, 503),

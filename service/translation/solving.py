@@ -86,6 +86,9 @@ def point_into_question(error: CoreError, units: UnitSystem) -> None:
     if isinstance(error, AccuracyNotReached):
         unit = units.declared[Kind.POTENTIAL_DIFFERENCE]
         error.message = error.SENTENCE.format(asked=f"{error.asked:.3g} {unit}", bound=f"{error.bound:.3g} {unit}")
+    elif isinstance(error, NoSteadyState):
+        _name_unit_of_imbalance(error, units)
+        error.field = ("evaluate",)
     elif error.field == ("edge_gap",):
         error.field = ("evaluate", "edge_gap")
     elif isinstance(error, OutsideBody | NotPhysical):

@@ -122,7 +122,7 @@ SHAPES = [
     problem("far end of a bar", "faces/z_high", {"condition": "insulated"}, "#/faces/z_high", "A body that is semi-infinite along z has no face z_high; leave it out."),
     problem("far side of a body open along x", "body/size/x", "semi-infinite", "#/faces/x_high", "A body that is semi-infinite along x has no face x_high; leave it out."),
     problem("unknown potential", "potential", "pressure", "#/potential", 'One of "temperature", "electric_potential"'),
-    problem("unknown condition", "faces/y_low/condition", "warm", "#/faces/y_low/condition", 'One of "held", "flux", "film", "insulated" is wanted here.'),
+    problem("unknown condition", "faces/y_low/condition", "warm", "#/faces/y_low/condition", 'One of "held", "flux", "film", "insulated", "mixed" is wanted here.'),
     problem("face without condition", "faces/y_low", {}, "#/faces/y_low/condition", "The field condition is required."),
     problem("number as a face", "faces/y_low", 30, "#/faces/y_low", "An object is wanted here."),
     problem("value on an insulated face", "faces/y_low/value", 30, "#/faces/y_low/value", "This key is not known here"),

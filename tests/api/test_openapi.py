@@ -15,6 +15,8 @@ CALLS = {
     ("post", "/v1/fields"),
     ("post", "/v1/flux-totals"),
     ("post", "/v1/convergence"),
+    ("post", "/v1/pads"),
+    ("post", "/v1/resistances"),
     ("get", "/v1/diagnostics"),
     ("get", "/health/live"),
     ("get", "/health/ready"),

@@ -1,0 +1,185 @@
+"""Pads and their potentials: the question read, and its answer."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service import cost
+from service.core import Bounded, Place, Solution
+from service.core.maps import Rectangle
+from service.core.problem import Face, Inflow, axes_along, axis_of
+from service.models import pads as models
+from service.refusals import Path
+from service.settings import Settings
+from service.translation import answers
+from service.translation.answers import KeepGoing
+from service.translation.collector import Collector
+from service.translation.fields import describe_part
+from service.translation.places import FacePart, PlaceReader
+from service.translation.problem import ReadProblem
+from service.units import Kind, UnitSystem
+
+FloatArray = NDArray[np.float64]
+
+
+@dataclass(frozen=True)
+class Pad:
+    """A rectangle of a face that answers are about."""
+
+    part: FacePart
+    where: Rectangle
+
+    @property
+    def face(self) -> Face:
+        """Its face."""
+        return self.part.face
+
+    def described(self) -> dict[str, Any]:
+        """Name, face, number and rectangle, as far as it has them, and its area."""
+        return describe_part(self.part) | {"area": self.where.area}
+
+    def centre(self, problem: ReadProblem) -> tuple[float, float, float]:
+        """The middle of the pad."""
+        place = [0.0, 0.0, 0.0]
+        first, second = axes_along(self.face)
+        place[axis_of(self.face)] = problem.body.end_of(self.face)
+        place[first] = 0.5 * (self.where.p_low + self.where.p_high)
+        place[second] = 0.5 * (self.where.q_low + self.where.q_high)
+        return place[0], place[1], place[2]
+
+
+def pads_of_face(problem: ReadProblem, face: Face) -> list[Pad]:
+    """The pads of a face, none where it has another condition or no patches."""
+    if not isinstance(problem.body.faces[face], Inflow):
+        return []
+    return [
+        Pad(FacePart(patch.name, face, index, patch.where), patch.where)
+        for index, patch in enumerate(problem.patches.get(face, ()))
+        if math.isfinite(patch.where.area)
+    ]
+
+
+def all_pads(collector: Collector, problem: ReadProblem, path: Path) -> list[Pad]:
+    """Every pad of the problem; noted where there is none."""
+    pads = [pad for face in problem.body.present_faces for pad in pads_of_face(problem, face)]
+    if not pads:
+        collector.add(path, _no_pads("The problem"), "no-pads")
+    return pads
+
+
+@dataclass(frozen=True)
+class PadsWanted:
+    """A question about pads in the solver's numbers."""
+
+    pads: tuple[Pad, ...]
+    tolerance: float
+
+
+def read_pads(
+    question: models.PadsQuestion, problem: ReadProblem, solution: Solution, settings: Settings
+) -> PadsWanted:
+    """The question in the solver's numbers. Raises RequestRefused with a sentence for each field at fault."""
+    collector = Collector(problem.units)
+    ask = question.evaluate
+    reader = PlaceReader(collector, settings, problem)
+    pads: list[Pad] = []
+    if ask.faces is None and ask.pads is None:
+        pads = all_pads(collector, problem, ("evaluate",))
+    for index, face in enumerate(ask.faces or ()):
+        path: Path = ("evaluate", "faces", index)
+        if reader.is_present(face, path):
+            found = pads_of_face(problem, face)
+            pads += found
+            if not found:
+                collector.add(path, _no_pads(f"The face {face}"), "no-pads")
+    for index, reference in enumerate(ask.pads or ()):
+        pad = _pad(reader, problem, reference, ("evaluate", "pads", index))
+        if pad is not None:
+            pads.append(pad)
+    cost.check_count(collector, ("evaluate",), "pads", len(pads), settings.pads)
+    tolerance = answers.read_tolerance(collector, question.accuracy, solution)
+    collector.raise_if_any()
+    return PadsWanted(tuple(pads), tolerance)
+
+
+def _no_pads(subject: str) -> str:
+    return f"{subject} has no pads: these are the patches of a face with a given flow and the pads of a mixed face."
+
+
+def _pad(reader: PlaceReader, problem: ReadProblem, reference: models.PadReference, path: Path) -> Pad | None:
+    """The pad a question names; None when there is none, which is then noted."""
+    if not reader.is_present(reference.face, (*path, "face")):
+        return None
+    pads = pads_of_face(problem, reference.face)
+    for pad in pads:
+        if reference.patch in (pad.part.patch, pad.part.name):
+            return pad
+    if pads:
+        detail = f"There is no such pad; the face {reference.face} has the pads 0 to {len(pads) - 1}."
+        reader.collector.add((*path, "patch"), detail, "no-such-patch")
+    else:
+        reader.collector.add((*path, "face"), _no_pads(f"The face {reference.face}"), "no-pads")
+    return None
+
+
+def check_cost(wanted: PadsWanted, solution: Solution, settings: Settings, bytes_a_number: int) -> None:
+    """Raise TooCostly when the middles of the pads would pass a limit; the time limit bounds means and peaks."""
+    cost.check_work([solution.estimate_points(len(wanted.pads), tolerance=wanted.tolerance)], settings)
+
+
+def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, keep_going: KeepGoing) -> dict[str, Any]:
+    """The answer to a question about pads."""
+    tolerance = wanted.tolerance
+    centres = np.array([pad.centre(problem) for pad in wanted.pads])
+    at_centres = solution.field_at(centres, tolerance=tolerance, keep_going=keep_going)
+    bounds = [float(at_centres.potential_bound)]
+    found = []
+    for pad, centre, potential in zip(wanted.pads, centres, at_centres.potential, strict=True):
+        keep_going()
+        mean = solution.mean(pad.face, pad.where, tolerance=tolerance)
+        largest = solution.peak(pad.face, pad.where, tolerance=tolerance, keep_going=keep_going)
+        bounds += [float(mean.error_bound), float(largest.error_bound)]
+        found.append(
+            pad.described()
+            | {
+                "flow": _flow(problem.units, solution, pad, tolerance),
+                "mean": _bounded(mean),
+                "largest": _at(largest),
+                "centre": _at(Place(tuple(centre), float(potential), float(at_centres.potential_bound), "")),
+            }
+        )
+    return {
+        "problem_id": problem.problem_id,
+        "potential": problem.potential,
+        "units": answers.units_shown(problem.units),
+        "certificate": answers.certificate(problem, solution, centres, tolerance, bounds),
+        "warnings": answers.problem_warnings(problem, solution),
+        "pads": found,
+    }
+
+
+def _flow(units: UnitSystem, solution: Solution, pad: Pad, tolerance: float) -> dict[str, float | None]:
+    total = solution.face_total(pad.face, pad.where, tolerance=tolerance)
+    if total.value is None or total.error_bound is None:
+        return {"value": None, "error_bound": None}
+    return {
+        "value": units.write(Kind.FLOW, float(total.value)),
+        "error_bound": units.write(Kind.FLOW, float(total.error_bound)),
+    }
+
+
+def _bounded(number: Bounded) -> dict[str, float]:
+    return {"value": float(number.value), "error_bound": float(number.error_bound)}
+
+
+def _at(place: Place) -> dict[str, Any]:
+    return {
+        "value": float(place.value),
+        "error_bound": float(place.error_bound),
+        "at": [float(coordinate) for coordinate in place.position],
+    }
