@@ -24,6 +24,7 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.lines import stack_at_rest
 from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order, WallDrive
 from service.core.lines.places import Places
 from service.core.maps import Profiles
@@ -176,10 +177,12 @@ class StackLine(Line):
         return np.abs(profiles.left).max(axis=0)
 
     def narrowest(self, profiles: Profiles) -> float:
-        """Scaled width of the narrowest piece of profiles that is not zero, borders of layers ending a piece."""
+        """Scaled width of the narrowest piece of profiles that is not zero, between jumps and the ends of the line."""
         divided = self.divided(profiles.knots)
-        driven = divided.held_by_layers(profiles).any(axis=1)
-        return float(np.diff(divided.travel)[driven].min(initial=math.inf))
+        _, ends_piece, _ = self.active_breaks(profiles)
+        ends_piece[[0, -1]] = True
+        driven = divided.held_by_layers(profiles).any(axis=1)[ends_piece[:-1]]
+        return float(np.diff(divided.travel[ends_piece])[driven].min(initial=math.inf))
 
     def mean(self, drive: Drive) -> FloatArray:
         """What a line that loses nothing comes to, shape (n_columns,)."""
@@ -234,7 +237,7 @@ class StackLine(Line):
 
 
 @dataclass(frozen=True, eq=False)
-class _Pieces:
+class Pieces:
     """Places cut at the borders. Piece `index` of the answer begins `below` over the bottom of layer `layer`.
 
     above: from its upper end to the top of the layer. width: of an interval, 0 for a place.
@@ -247,16 +250,16 @@ class _Pieces:
     width: FloatArray
     order: Order
 
-    def upside_down(self, n_layers: int) -> _Pieces:
+    def upside_down(self, n_layers: int) -> Pieces:
         """The same pieces as the mirrored line has them."""
-        return _Pieces(self.index, n_layers - 1 - self.layer, self.above, self.below, self.width, self.order)
+        return Pieces(self.index, n_layers - 1 - self.layer, self.above, self.below, self.width, self.order)
 
     def within(self, layer: int) -> NDArray[np.intp]:
         """Numbers of the pieces in a layer."""
         return np.flatnonzero(self.layer == layer)
 
 
-def _pieces(line: StackLine, places: Places) -> _Pieces:
+def _pieces(line: StackLine, places: Places) -> Pieces:
     heights, thickness = line.heights, np.array(line.thickness)
     if places.high is None:
         layer = line.layer_of(places.low)
@@ -264,14 +267,14 @@ def _pieces(line: StackLine, places: Places) -> _Pieces:
         # The digits of a thin layer high up are those of its thickness.
         below = np.where(above == 0, thickness[layer], below)
         above = np.where(below == 0, thickness[layer], above)
-        return _Pieces(np.arange(layer.size), layer, below, above, np.zeros(layer.size), places.order)
+        return Pieces(np.arange(layer.size), layer, below, above, np.zeros(layer.size), places.order)
     start = np.maximum(places.low[:, None], heights[:-1])
     stop = np.minimum(places.high[:, None], heights[1:])
     index, layer = np.nonzero(stop > start)
     start, stop = start[index, layer], stop[index, layer]
     below, above = start - heights[layer], heights[layer + 1] - stop
     width = np.where((below == 0) & (above == 0), thickness[layer], stop - start)
-    return _Pieces(index, layer, below, above, width, places.order)
+    return Pieces(index, layer, below, above, width, places.order)
 
 
 @dataclass(frozen=True)
@@ -381,12 +384,22 @@ class _Upward:
 def transform(line: StackLine, drive: Drive, places: Places, s: Array) -> Array:
     """The answer in the Laplace domain, shape (n, n_s, n_columns). s: real and >= 0, or complex off the negative axis.
 
-    Profiles have to be constant between their knots.
+    Profiles have to be constant between their knots. At s = 0 a line that loses nothing answers for the drive less
+    its mean, counted from the mean of the answer.
     """
-    s = np.where(s == 0, AT_REST * line.slow_rates[1], s)
+    line = line if isinstance(drive, WallDrive) else line.divided(drive.knots)
+    at_rest = s == 0
+    s = np.where(at_rest, AT_REST * line.slow_rates[1], s)
+    answer = _moving(line, drive, places, s)
+    if line.keeps_its_mean and at_rest.any():
+        answer[:, at_rest] = stack_at_rest.answer(line, drive, _pieces(line, places), places.low.size)[:, None, :]
+    return answer
+
+
+def _moving(line: StackLine, drive: Drive, places: Places, s: Array) -> Array:
+    """The same for s > 0, of a line that is divided at the knots of the drive."""
     if isinstance(drive, WallDrive):
         return _of_end(line, drive, _pieces(line, places), places.low.size, s)[:, :, None]
-    line = line.divided(drive.knots)
     values, pieces, n = line.held_by_layers(drive), _pieces(line, places), len(line.thickness)
     up, down = _Upward(line, s), _Upward(line.mirrored(), s)
     fields = _Fields(up, down, pieces, places.low.size, drive.n_profiles)
@@ -423,7 +436,7 @@ def departure(line: StackLine, profiles: Profiles, places: Places, s: Array) -> 
 class _Fields:
     """Sums up what goes up and down through a stack."""
 
-    def __init__(self, up: _Upward, down: _Upward, pieces: _Pieces, n_places: int, n_columns: int) -> None:
+    def __init__(self, up: _Upward, down: _Upward, pieces: Pieces, n_places: int, n_columns: int) -> None:
         self.up, self.down, self.pieces = up, down, pieces
         self.n_layers = len(up.thickness)
         self.mirrored = pieces.upside_down(self.n_layers)
@@ -442,7 +455,7 @@ class _Fields:
         sign = -1.0 if self.pieces.order == SLOPE else 1.0
         self._follow(self.down, self.mirrored, self.n_layers - 1 - layer, start, sign * columns)
 
-    def _follow(self, way: _Upward, pieces: _Pieces, first: int, start: Array, columns: FloatArray) -> None:
+    def _follow(self, way: _Upward, pieces: Pieces, first: int, start: Array, columns: FloatArray) -> None:
         for j in range(first, int(pieces.layer.max(initial=-1)) + 1):
             for number in pieces.within(j):
                 place = pieces.below[number], pieces.above[number], pieces.width[number], pieces.order
@@ -450,7 +463,7 @@ class _Fields:
             start = start * way.passed[j] * way.beyond[j]
 
 
-def _of_end(line: StackLine, drive: WallDrive, pieces: _Pieces, n_places: int, s: Array) -> Array:
+def _of_end(line: StackLine, drive: WallDrive, pieces: Pieces, n_places: int, s: Array) -> Array:
     """The answer to a unit of an end's data."""
     up, down = _Upward(line, s), _Upward(line.mirrored(), s)
     fields = _Fields(up, down, pieces, n_places, 1)
