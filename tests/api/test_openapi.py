@@ -113,7 +113,7 @@ async def test_every_reference_leads_somewhere(document: dict[str, Any]) -> None
 
 
 async def test_question_calls_show_examples(document: dict[str, Any]) -> None:
-    for path in ("/v1/problems", "/v1/fields", "/v1/flux-totals", "/v1/convergence"):
+    for path in ("/v1/problems", "/v1/fields", "/v1/flux-totals", "/v1/convergence", "/v1/pads", "/v1/resistances"):
         content = document["paths"][path]["post"]["requestBody"]["content"]["application/json"]
         for example in content["examples"].values():
             assert example["summary"]
