@@ -5,11 +5,12 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import time_error, time_form, time_range
+from service.core import map_error, time_error, time_form, time_range
 from service.core.errors import AccuracyNotReached, OutsideBody
 from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order
 from service.core.lines.places import Places, TimeResponse
@@ -84,6 +85,11 @@ class Setting:
     parts: tuple[Part, ...]
     reference: float
     span: float
+
+    @cached_property
+    def map_error(self) -> float:
+        """What the field may be off by because maps stand for formulas."""
+        return map_error.of_potential(self.body, self.lines)
 
 
 def on_grid(
@@ -189,10 +195,14 @@ def _accurate(
     setting: Setting, columns: Sequence[FloatArray], tolerance: float, tensor: bool, keep_going: KeepGoing | None
 ) -> tuple[FloatArray, float, int]:
     """Potential within the tolerance, its bound and the nodes taken; a finer step where the first is not enough."""
+    off = setting.map_error
+    if off > 0.5 * tolerance:
+        raise AccuracyNotReached(tolerance, OFFERED * 2.0 * off)
+    tolerance -= off
     if not setting.parts:
         # Nothing drives the body: it is at the reference level, exactly.
         shape = tuple(column.size for column in columns) if tensor else columns[0].shape
-        return np.full(shape, setting.reference), 0.0, 0
+        return np.full(shape, setting.reference), off, 0
     step = step_for(setting, tolerance)
     while True:
         potential, bounds, nodes = _sum_of_parts(
@@ -204,9 +214,9 @@ def _accurate(
                 potential += setting.reference
             bound += STORED * max(float(potential.max()), -float(potential.min()))
             if bound <= tolerance:
-                return potential, bound, nodes
+                return potential, bound + off, nodes
         if step <= time_error.FINEST_STEP:
-            raise AccuracyNotReached(tolerance, OFFERED * bound)
+            raise AccuracyNotReached(tolerance + off, OFFERED * (bound + off))
         step = time_error.step_for(0.5 * time_error.step_error(step) * tolerance / bound)
 
 
@@ -235,6 +245,7 @@ def _flux(
         else:
             bound = bounds[0]
         np.maximum(flux_bound, factor * bound, out=flux_bound)
+    flux_bound += map_error.of_flux(setting.body, columns, tensor=tensor)
     least = time_range.shortest(setting.lines)
     steepest = max(1 / (line.scale * least) if line.is_endless else line.steepest for line in setting.lines)
     return flux, flux_bound + STORED * np.abs(flux).max(axis=0) + time_range.CUT_ERROR * setting.span * steepest

@@ -326,6 +326,27 @@ class Body:
             if face_map is not None:
                 begins = (self.begins[first], self.begins[second])
                 face_map.check_covers(self.size[first], self.size[second], face, begins)
+                if any(face_map.curved):
+                    self._check_formula(face, condition, face_map)
+
+    def _check_formula(self, face: Face, condition: Condition, face_map: FaceMap) -> None:
+        """Where a formula is not offered: where lines do not know curved data, or where inflows balance exactly."""
+        first, second = axes_along(face)
+        through_stack = self.layers and 2 in (first, second) and face_map.curved[(first, second).index(2)]
+        reason = None
+        if through_stack:
+            reason = f"The formula on {face} varies along z, through the layers of the stack; use patches or readings."
+        elif self.law is not None:
+            reason = f"The formula on {face} needs a conductivity that does not vary; use patches or readings."
+        elif isinstance(condition, Inflow) and not any(
+            isinstance(other, Held | Film | Mixed) for other in self.faces.values()
+        ):
+            reason = (
+                f"The formula on {face} gives an inflow where no face is held or has a film; inflows have to balance "
+                "exactly then, so use patches or readings."
+            )
+        if reason is not None:
+            raise NotPhysical(reason, ("faces", face))
 
     def _check_mixed(self, face: Face, mixed: Mixed) -> None:
         if isinstance(mixed.background, Film):

@@ -140,14 +140,23 @@ def _edge_mismatch(body: Body, held: Face, other: Face, places: Sequence[FloatAr
     if isinstance(condition, Held):
         assert other_data is not None
         theirs = other_data.values.mean(axis=0)
-        return np.asarray(np.abs(values - theirs) > SAME * np.maximum(np.abs(values), np.abs(theirs)))
+        off = _error_of(body, held) + _error_of(body, other)
+        return np.asarray(np.abs(values - theirs) > SAME * np.maximum(np.abs(values), np.abs(theirs)) + off)
+    held_map = map_of(body.faces[held])
+    assert held_map is not None
     slope = held_data.slopes[axes_along(held).index(axis_of(other))]
     given = np.zeros(()) if other_data is None else np.abs(other_data.values).max(axis=0)
     if isinstance(condition, Film):
         assert other_data is not None
         given = np.abs(other_data.values - held_data.values).max(axis=0)
-        return np.asarray((given > SAME * np.abs(values)) | (np.abs(slope).max(axis=0) > 0))
-    return np.asarray((given > 0) | (np.abs(slope).max(axis=0) > 0))
+        given = np.maximum(given - SAME * np.abs(values) - _error_of(body, held) - _error_of(body, other), 0.0)
+    return np.asarray((given > 0) | (np.abs(slope).max(axis=0) > held_map.slope_error))
+
+
+def _error_of(body: Body, face: Face) -> float:
+    """By how much the data of a face may be off, since they stand for a formula."""
+    face_map = map_of(body.faces[face])
+    return 0.0 if face_map is None else face_map.error
 
 
 @dataclass(frozen=True, eq=False)

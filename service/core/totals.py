@@ -10,21 +10,21 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import time_error, time_form
-from service.core.endless import cut_off, endless_sides, far_profiles, far_setting, with_interval
+from service.core import map_error, time_error, time_form
+from service.core.endless import cut_off, endless_sides, far_profiles, far_setting, neighbourhood, with_interval
 from service.core.errors import NotPhysical, OutsideBody
 from service.core.field import Setting, kept_rows, step_for
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE
 from service.core.lines.places import Places
 from service.core.maps import Profiles, Rectangle
 from service.core.problem import AXES, Body, Face, Held, Inflow, Insulated, axes_along, axis_of, is_high
-from service.core.solvability import generation
+from service.core.solvability import generation, level_is_pinned
 from service.core.unbounded import (
     UnboundedCause,
     cut_constant,
@@ -70,9 +70,11 @@ class Total:
 class Balance:
     """The books of the whole body.
 
-    inflow: total of each face, into the body. generation: inside. residual: their sum; where faces are unbounded the
-    sum of their finite parts, since the logarithms cancel. error_bound: what the residual may be.
-    closed: whether it is within that. None where an endless side takes part.
+    inflow: total of each face, into the body. generation: inside. residual: their sum, less what is carried off; where
+    faces are unbounded the sum of their finite parts, since the logarithms cancel. error_bound: what the residual may
+    be. closed: whether it is within that. None where an endless side takes part.
+    carried_off: what flows away for ever where all axes are endless and no face takes it up, through planes beyond all
+    that drives the body; None for other bodies, where nothing does.
     """
 
     inflow: dict[Face, Total]
@@ -80,6 +82,7 @@ class Balance:
     residual: float | None
     error_bound: float | None
     closed: bool | None
+    carried_off: Bounded | None = None
 
 
 def whole_face(body: Body, axis: int) -> Rectangle:
@@ -98,7 +101,7 @@ def mean(setting: Setting, face: Face, rectangle: Rectangle | None, tolerance: f
     first, second = axes_along(axis)
     area = (rectangle.p_high - rectangle.p_low) * (rectangle.q_high - rectangle.q_low)
     scale = setting.lines[first].scale * setting.lines[second].scale * area
-    return Bounded(setting.reference + value / scale, bound / scale)
+    return Bounded(setting.reference + value / scale, bound / scale + setting.map_error)
 
 
 def plane_total(
@@ -157,7 +160,8 @@ def face_total(setting: Setting, face: Face, rectangle: Rectangle | None, gap: f
     if isinstance(condition, Insulated):
         return Total(0.0, 0.0)
     if isinstance(condition, Inflow):
-        return _given_total(face, (condition.inflow.first, condition.inflow.second), rectangle)
+        given = _given_total(face, (condition.inflow.first, condition.inflow.second), rectangle)
+        return _widened(given, condition.inflow.error, rectangle)
     causes = unbounded_lines(body, face, rectangle) if isinstance(condition, Held) else []
     net = [cause for cause, _ in causes if cause.coefficient != 0.0]
     finite = finite_part(setting, face, rectangle, tolerance)
@@ -182,7 +186,7 @@ def balance(setting: Setting, tolerance: float, gap: float | None) -> Balance:
     body = setting.body
     inflow = {face: face_total(setting, face, None, gap, tolerance) for face in body.present_faces}
     generated = generation(body)
-    endless = any(cause.kind == "endless" for total in inflow.values() for cause in total.causes)
+    endless = any(cause.kind.startswith("endless") for total in inflow.values() for cause in total.causes)
     if endless or not math.isfinite(generated):
         return Balance(inflow, generated, None, None, None)
     values, bounds = [generated], [4e-16 * abs(generated)]
@@ -193,9 +197,23 @@ def balance(setting: Setting, tolerance: float, gap: float | None) -> Balance:
         assert total.error_bound is not None
         values.append(total.value)
         bounds.append(total.error_bound)
+    carried_off = None
+    if all(line.is_endless for line in setting.lines) and level_is_pinned(body):
+        carried_off = _carried_off(setting, tolerance)
+        values.append(-carried_off.value)
+        bounds.append(carried_off.error_bound)
     residual = math.fsum(values)
     bound = math.fsum(bounds)
-    return Balance(inflow, generated, residual, bound, abs(residual) <= bound)
+    return Balance(inflow, generated, residual, bound, abs(residual) <= bound, carried_off)
+
+
+def _carried_off(setting: Setting, tolerance: float) -> Bounded:
+    """Flow through the planes square to z beyond all that drives the body."""
+    low, high = neighbourhood(setting.lines, 2)
+    sides = [(high, 1.0), (low, -1.0)] if setting.body.infinite[2] else [(high, 1.0)]
+    flows = [_flow(setting, 2, place, whole_face(setting.body, 2), sign, tolerance) for place, sign in sides]
+    values, bounds = [flow.value or 0.0 for flow in flows], [flow.error_bound or 0.0 for flow in flows]
+    return Bounded(math.fsum(values), math.fsum(bounds))
 
 
 def _with_gap(
@@ -237,7 +255,7 @@ def _flow(setting: Setting, axis: int, position: float, rectangle: Rectangle, si
     if setting.body.layers and axis != 2:
         return _flow_through_layers(setting, axis, position, rectangle, factor, tolerance)
     value, bound = _integral(setting, axis, position, rectangle, SLOPE, tolerance)
-    return Total(factor * value, abs(factor) * bound)
+    return Total(factor * value, abs(factor) * bound + map_error.of_flow(setting.body, axis, position, rectangle))
 
 
 def _flow_through_layers(
@@ -254,7 +272,7 @@ def _flow_through_layers(
             piece = Rectangle(rectangle.p_low, rectangle.p_high, low, high)
             integral, error = _integral(setting, axis, position, piece, SLOPE, tolerance)
             value, bound = value + share * integral, bound + abs(share) * error
-    return Total(value, bound)
+    return Total(value, bound + map_error.of_flow(body, axis, position, rectangle))
 
 
 def _goes_on(per_length: Total, name: str) -> UnboundedCause | None:
@@ -320,7 +338,8 @@ def _given_total(face: Face, profiles: tuple[Profiles, Profiles], rectangle: Rec
         cause = _goes_on(_given_total(face, other, with_interval(rectangle, index, 0.0, 1.0)), f"face {face}")
         if cause is not None:
             return Total(None, None, (cause,))
-        ends = profiles[index].knots[np.isfinite(profiles[index].knots)]
+        knots = profiles[index].knots
+        ends = knots[np.isfinite(knots)] if np.isfinite(knots).any() else np.zeros(1)
         p, q = (rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high)
         low, high_end = (p, q)[index]
         # What goes on for ever cancels across it.
@@ -329,6 +348,13 @@ def _given_total(face: Face, profiles: tuple[Profiles, Profiles], rectangle: Rec
     first = profiles[0].integrals(np.array([rectangle.p_low]), np.array([rectangle.p_high]))
     second = profiles[1].integrals(np.array([rectangle.q_low]), np.array([rectangle.q_high]))
     return Total(float((first * second).sum()), GIVEN * float(np.abs(first * second).sum()))
+
+
+def _widened(total: Total, error: float, rectangle: Rectangle) -> Total:
+    """A total of data that may be off by an error per area."""
+    if error == 0.0 or total.error_bound is None:
+        return total
+    return replace(total, error_bound=total.error_bound + error * rectangle.area)
 
 
 def negated(total: Total) -> Total:

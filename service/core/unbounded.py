@@ -84,10 +84,10 @@ def _border_cause(body: Body, face: Face, rectangle: Rectangle, index: int, high
     at, weights = _fine_rule(_with_interfaces(body, along, knots), low, top)
     if at.size == 0:
         return None
-    jump, size = _jump_along(body, face, own, neighbour, index, place, high, at)
+    jump, least = _jump_along(body, face, own, neighbour, index, place, high, at)
     end = body.end_of(face)
     weights = weights * _mean_conductivity(body, (axis, end), (across, place), at)
-    return _cause(kind, name, share, jump, weights, size)
+    return _cause(kind, name, share, jump, weights, least)
 
 
 def _with_interfaces(body: Body, along: int, knots: FloatArray) -> FloatArray:
@@ -106,13 +106,13 @@ def _mean_conductivity(body: Body, first: tuple[int, float], second: tuple[int, 
 
 
 def _cause(
-    kind: str, name: str, factor: float, jump: FloatArray, weights: FloatArray, size: float
+    kind: str, name: str, factor: float, jump: FloatArray, weights: FloatArray, least: float
 ) -> UnboundedCause | None:
     """The cause that jumps along a line are; its coefficient is exactly 0 where they cancel, None without a jump."""
     # Along each stretch the jump is a polynomial: from its Gauss points to its ends.
     stretches = jump.reshape(-1, EXACT_POINTS)
     largest = float(max(np.abs(stretches).max(), np.abs(stretches @ _TO_ENDS).max()))
-    if largest <= NO_JUMP * size:
+    if largest <= least:
         return None
     net, gross = float(weights @ jump), float(weights @ np.abs(jump))
     return UnboundedCause(kind, name, factor / math.pi * net if abs(net) > NO_JUMP * gross else 0.0, largest)
@@ -143,9 +143,9 @@ def unbounded_plane_lines(
                 continue
             weights = weights * _mean_conductivity(body, (axis, position), (across, place), at)
             below, above = (_side_value(own, square, position, at, from_above=side) for side in (False, True))
-            size = float(max(np.abs(below).max(), np.abs(above).max()))
+            least = NO_JUMP * float(max(np.abs(below).max(), np.abs(above).max())) + own.error
             name = line_name(face, axis, position)
-            cause = _cause("jump_line", name, 1.0, below - above, weights, size)
+            cause = _cause("jump_line", name, 1.0, below - above, weights, least)
             if cause is not None:
                 causes.append((cause, (index, high)))
     return causes
@@ -190,7 +190,7 @@ def _jump_along(
     high: bool,
     at: FloatArray,
 ) -> tuple[FloatArray, float]:
-    """Own value less the other's along a border, and the size of the data."""
+    """Own value less the other's along a border, and the least jump that is one."""
     inside = _side_value(own, index, place, at, from_above=not high)
     if neighbour is None:
         outside = _side_value(own, index, place, at, from_above=high)
@@ -200,8 +200,8 @@ def _jump_along(
         end = body.end_of(face)
         position = 1 - axes_along(across).index(axes_along(face)[1 - index])
         outside = _side_value(neighbour, position, end, at, from_above=end == 0.0)
-    size = float(max(np.abs(inside).max(), np.abs(outside).max()))
-    return inside - outside, size
+    least = NO_JUMP * float(max(np.abs(inside).max(), np.abs(outside).max())) + own.error
+    return inside - outside, least if neighbour is None else least + neighbour.error
 
 
 def _side_value(face_map: FaceMap, index: int, place: float, at: FloatArray, *, from_above: bool) -> FloatArray:
