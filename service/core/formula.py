@@ -182,7 +182,8 @@ class _Reader:
         where = f"at character {self._where(tree)} of the expression"
         if name in COORDINATES:
             raise NotPhysical(
-                f"The face has no extent along {name}, {where}; its coordinates are {self.names[0]} and {self.names[1]}."
+                f"The face has no extent along {name}, {where}; its coordinates are {self.names[0]} and "
+                f"{self.names[1]}."
             )
         if name in FUNCTIONS or name in SEVERAL:
             raise NotPhysical(f"The function {name} {where} needs its argument in parentheses.")

@@ -125,8 +125,8 @@ class _Maker:
         ]
         _check_finite(self.formula, places[0], places[1])
         table = self.factor * self.formula.at(places[0], places[1])
-        table = np.repeat(table, [1 if along else 2 for along in self.varies][0], axis=0)
-        table = np.repeat(table, [1 if along else 2 for along in self.varies][1], axis=1)
+        table = np.repeat(table, 1 if self.varies[0] else 2, axis=0)
+        table = np.repeat(table, 1 if self.varies[1] else 2, axis=1)
         plain = FaceMap(
             knots[0], knots[1], table, True, self.extent, self.usual, curved=self.varies, kinks=(kinks[0], kinks[1])
         )
@@ -204,8 +204,8 @@ class _Maker:
                 if along
             )
             raise NotPhysical(
-                f"The formula jumps, turns too sharply or is not finite near {where}; kinks may only run along an axis. "
-                "Use patches for a jump and readings for the rest."
+                f"The formula jumps, turns too sharply or is not finite near {where}; kinks may only run along an "
+                "axis. Use patches for a jump and readings for the rest."
             )
         # The products of profiles are that of the table but for what the decomposition left out.
         rows = [own if along else np.array([0.0]) for own, along in zip(places, self.varies, strict=True)]
@@ -247,9 +247,9 @@ def _kinks(formula: Formula, name: str, length: float) -> tuple[float, ...]:
         if switch.names != {name}:
             continue
         signs = np.sign(_along(switch, name, at))
-        found.extend(at[1:-1][signs[1:-1] == 0])
-        for index in np.flatnonzero(signs[:-1] * signs[1:] < 0):
-            found.append(_bisected(switch, name, float(at[index]), float(at[index + 1])))
+        found.extend(float(place) for place in at[1:-1][signs[1:-1] == 0])
+        turns = np.flatnonzero(signs[:-1] * signs[1:] < 0)
+        found.extend(_bisected(switch, name, float(at[index]), float(at[index + 1])) for index in turns)
     shortest = SHORTEST * length
     apart: list[float] = []
     for place in sorted(found):
