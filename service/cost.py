@@ -80,7 +80,7 @@ def check_work(estimates: Sequence[Estimate], settings: Settings) -> None:
     if memory > settings.memory_bytes:
         raise TooCostly(
             f"The request would take about {memory:.2g} bytes of memory; at most {settings.memory_bytes:.2g} "
-            "are allowed. Ask for smaller grids.",
+            "are allowed. Ask for fewer places at once.",
             memory,
             settings.memory_bytes,
         )

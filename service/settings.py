@@ -37,13 +37,13 @@ class Settings(BaseSettings):
     grid_points: PositiveInt = Field(2_000_000, description="Most places of all grids of one request together.")
     points: PositiveInt = Field(2_000, description="Most named points in one request.")
     convergence_points: PositiveInt = Field(16, description="Most points in one convergence request.")
-    patches: PositiveInt = Field(200, description="Most patches on one face.")
+    patches: PositiveInt = Field(400, description="Most patches on one face.")
     readings: PositiveInt = Field(100_000, description="Most readings on one face.")
     layers: PositiveInt = Field(100, description="Most layers of one stack.")
     sources: PositiveInt = Field(100, description="Most source boxes in one problem.")
     totals: PositiveInt = Field(200, description="Most patches and planes in one request for flux totals.")
     means: PositiveInt = Field(100, description="Most mean values in one request.")
-    pads: PositiveInt = Field(200, description="Most pads in one request about pads or resistances.")
+    pads: PositiveInt = Field(400, description="Most pads in one request about pads or resistances.")
 
     cost_multiplications: PositiveFloat = Field(
         4e10, description="Most multiplications estimated for one request; about 10^9 take a second."
