@@ -71,20 +71,45 @@ def neighbourhood(lines: Sequence[Line], axis: int) -> tuple[float, float]:
 
 
 def cut_off(setting: Setting, axis: int, rectangle: Rectangle) -> Rectangle | None:
-    """A rectangle of a plane square to an axis that holds all the flow through one without end, where none goes on.
+    """A rectangle of a plane square to an axis that holds all the flow through one without end.
 
-    Endless itself where nothing drives the body there; None where what drives it goes on and cancels, and does so only
-    slowly with the distance.
+    It stays endless where nothing drives the body far along. None where the flow has no limit however slowly it grows,
+    though it comes to nothing per length.
     """
-    for index, high in endless_sides(rectangle):
+    sides = endless_sides(rectangle)
+    if not time_range.has_decay(setting.lines):
+        return rectangle if all(_adds_up(setting.lines, part, axis, sides) for part in setting.parts) else None
+    for index, high in sides:
         along = axes_along(axis)[index]
-        goes_on = bool(far_setting(setting, along, high=high).parts)
-        if not time_range.has_decay(setting.lines):
-            if goes_on:
-                return None
-            continue
-        if goes_on or time_range.is_undying(setting.lines):
-            ends = [(rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high)][index]
+        if time_range.is_undying(setting.lines) or far_setting(setting, along, high=high).parts:
+            low, top = [(rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high)][index]
             far = far_along(setting, along, high=high)
-            rectangle = with_interval(rectangle, index, *((ends[0], far) if high else (far, ends[1])))
+            rectangle = with_interval(rectangle, index, *((low, far) if high else (far, top)))
     return rectangle
+
+
+def _adds_up(lines: Sequence[Line], part: Part, axis: int, sides: Sequence[Side]) -> bool:
+    """Whether a part's flow along an axis through an endless rectangle falls fast enough with time to have a total.
+
+    Each line leaves a power of t; their product has to fall faster than 1 / t.
+    """
+    endless = {axes_along(axis)[index] for index, _ in sides}
+    powers = [
+        _power(line, drive, slope=number == axis, throughout=number in endless)
+        for number, (line, drive) in enumerate(zip(lines, part.drives, strict=True))
+    ]
+    return sum(powers) > 1.0
+
+
+def _power(line: Line, drive: Drive, *, slope: bool, throughout: bool) -> float:
+    """p of the t^(-p) that an endless line's answer falls with: of its value or slope, or of its integral throughout."""
+    if not line.is_endless:
+        return 0.0
+    takes_up = line.film_low > 0.0
+    goes_on = isinstance(drive, Profiles) and bool(drive.left[0].any() or drive.right[-1].any())
+    power = 0.5 if goes_on == takes_up else 1.5 if takes_up else 0.0
+    if slope and not takes_up:
+        return power + (0.5 if goes_on else 1.0)
+    if throughout:
+        return power - (1.0 if takes_up else 0.5)
+    return power

@@ -20,7 +20,7 @@ from scipy.ndimage import maximum_filter
 from service.core import field
 from service.core.endless import far_setting, neighbourhood
 from service.core.field import Grid, Setting
-from service.core.maps import FaceMap, Peak, Rectangle
+from service.core.maps import FaceMap, Peak, Profiles, Rectangle
 from service.core.problem import AXES, Body, Face, Film, Held, Inflow, axes_along, axis_of, map_of
 from service.core.time_range import has_decay, widest
 
@@ -154,13 +154,16 @@ def _peak_of(face_map: FaceMap, lengths: Sequence[float], sign: float) -> Peak:
 
 
 def _representative(knots: FloatArray, index: int, bilinear: bool, length: float) -> float:
-    """A reading's own place, or the middle of a cell; of a cell without an end the end it has, or 0."""
+    """A reading's own place, or the middle of a cell; in a cell without an end a place off the end it has, or 0."""
     if bilinear:
         return float(knots[index + 1] if np.isneginf(knots[index]) else min(knots[index], length))
     low, high = float(knots[index]), float(min(knots[index + 1], length))
-    if math.isinf(low):
-        return 0.0 if math.isinf(high) else high
-    return low if math.isinf(high) else 0.5 * (low + high)
+    if math.isfinite(low) and math.isfinite(high):
+        return 0.5 * (low + high)
+    # As far from the others' knots as these are apart.
+    finite = knots[np.isfinite(knots)]
+    beyond = float(np.ptp(finite)) if finite.size else 0.0
+    return low + beyond if math.isfinite(low) else high - beyond if math.isfinite(high) else 0.0
 
 
 class _Search:
@@ -286,7 +289,9 @@ def _far_if_only_approached(setting: Setting, found: Place, tolerance: float, si
     """The place as it is, or far along an endless axis where the field only comes to the same value there."""
     best: Place | None = None
     for axis, line in enumerate(setting.lines):
-        if not line.is_endless:
+        drives = [part.drives[axis] for part in setting.parts]
+        changes = any(not (isinstance(drive, Profiles) and drive.is_constant) for drive in drives)
+        if not (line.is_endless and changes):
             continue
         for high in (True, False) if setting.body.infinite[axis] else (True,):
             far = _far(setting, found, axis, tolerance, high=high)

@@ -191,9 +191,9 @@ def map_integral(face_map: FaceMap, low: tuple[float, float], high: tuple[float,
 
 
 def generation(body: Body) -> float:
-    """Total generated in the body."""
-    return math.fsum(
+    """Total generated in the body; not finite where a source has no end."""
+    amounts = [
         source.density * math.prod(high - low for low, high in zip(source.low, source.high, strict=True))
         for source in body.generating
-        if source.density != 0.0
-    )
+    ]
+    return math.fsum(amounts) if all(map(math.isfinite, amounts)) else sum(amounts)

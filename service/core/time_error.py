@@ -74,7 +74,7 @@ def bound_everywhere(integral: Integral) -> float:
         x, y, z = most
         by_rule += float(_weigh(x * y * z, product.weights)[0])
         if product.weights.size > 1:
-            most = [np.maximum(size, least) for size, least in zip(most, carried, strict=True)]
+            most = _at_least(most, carried, product.weights.size)
         x, y, z = most
         by_rounding += float(_weigh(x * y * z, product.weights)[0])
     return _rule_error(integral) * by_rule + ROUNDING * by_rounding
@@ -112,10 +112,16 @@ def _rule_error(integral: Integral) -> float:
     return step_error(integral.step, 3.5 if integral.places[wall].order == -1 else 2.5)
 
 
+def _at_least(sizes: Sequence[FloatArray], carried: Sequence[FloatArray], count: int) -> list[FloatArray]:
+    """Sizes, or what was carried at the first `count` nodes where that is more."""
+    some = [least[:, :count] if least.ndim == 3 else least for least in carried]
+    return [np.maximum(size, least) for size, least in zip(sizes, some, strict=True)]
+
+
 def _rounded(carried: Factors, product: Product, sizes: Sequence[FloatArray]) -> FloatArray:
     """Sum over nodes of what rounding refers to: a factor's own size, or what its modes carry where they cancel."""
     if product.weights.size > 1:
-        sizes = [np.maximum(size, least) for size, least in zip(sizes, carried, strict=True)]
+        sizes = _at_least(sizes, carried, product.weights.size)
     return _weigh(sizes[0] * sizes[1] * sizes[2], product.weights)
 
 

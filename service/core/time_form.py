@@ -113,9 +113,8 @@ def _with_profile_taken_out(
     departure_a, slow_b = answers[a].departure, answers[b].departure + initial_b * nodes.kept[None, :, None]
     gone = nodes.all_gone
     if gone < nodes.times.size:
-        # AB itself once chi is nothing: the two would cancel where no mode decays.
+        # AB itself once chi is nothing: the two products would cancel where no mode decays.
         departure_a = np.concatenate([departure_a[:, :gone], answers[a].total[:, gone:]], axis=1)
-        slow_b[:, gone:] = 0.0
     closed = nodes.transformed(lines[wall], part.drives[wall], places[wall])
 
     def product(weights: FloatArray, at_a: FloatArray, at_b: FloatArray, at_wall: FloatArray) -> Product:
@@ -124,7 +123,7 @@ def _with_profile_taken_out(
 
     return [
         product(nodes.weights, departure_a, answers[b].total, kernel),
-        product(nodes.weights, initial_a, slow_b, kernel),
+        product(nodes.weights[:gone], initial_a, slow_b[:, :gone], kernel[:, :gone]),
         product(np.full(1, nodes.factor), initial_a, initial_b, closed),
     ]
 
