@@ -48,8 +48,8 @@ def check_grid_points(notes: Notes, grids: Sequence[models.Grid], limit: int) ->
         notes.add(("evaluate", "grids"), detail, "too-many")
 
 
-def _places(axis: float | str | list[float | str] | models.EvenAxis) -> int:
-    if isinstance(axis, models.EvenAxis):
+def _places(axis: float | str | list[float | str] | models.EvenAxis | models.LayerAxis) -> int:
+    if isinstance(axis, models.EvenAxis | models.LayerAxis):
         return axis.count
     return len(axis) if isinstance(axis, list) else 1
 

@@ -27,13 +27,36 @@ class EvenAxis(Model):
     count: int = Field(ge=2, le=LONGEST_AXIS, description="How many places, at least 2.", examples=[81])
 
 
+def _check_layer_reference(value: Any) -> int | str:
+    if isinstance(value, bool) or not isinstance(value, int | str) or value == "":
+        raise PydanticCustomError("layer", "The number of a layer, counted from 0, or its name is wanted here.")
+    return value
+
+
+class LayerAxis(Model):
+    """Evenly spaced places through a layer of a stack, from its lower side to its upper one, both in the layer."""
+
+    layer: Annotated[int | str, BeforeValidator(_check_layer_reference)] = Field(
+        description="The layer, by its number from 0 or its name.", examples=["solder", 1]
+    )
+    count: int = Field(ge=2, le=LONGEST_AXIS, description="How many places, at least 2.", examples=[9])
+
+
 def _kind_of_axis(value: Any) -> str:
-    """Tag of the union below: words no field is called, so that they can be taken out of error paths."""
+    """Tag of the unions below: words no field is called, so that they can be taken out of error paths."""
     if isinstance(value, list):
         return "list of places"
+    if isinstance(value, LayerAxis) or (isinstance(value, dict) and "layer" in value):
+        return "places through a layer"
     if isinstance(value, dict | EvenAxis):
         return "even places"
     return "one place"
+
+
+def _kind_across(value: Any) -> str:
+    """The same for an axis in the plane of the layers."""
+    kind = _kind_of_axis(value)
+    return "even places" if kind == "places through a layer" else kind
 
 
 Side = Literal["below", "above"]
@@ -43,6 +66,14 @@ GridAxis = Annotated[
     Annotated[Quantity, Tag("one place")]
     | Annotated[list[Quantity], Field(min_length=1, max_length=LONGEST_AXIS), Tag("list of places")]
     | Annotated[EvenAxis, Tag("even places")],
+    Discriminator(_kind_across),
+]
+
+GridHeights = Annotated[
+    Annotated[Quantity, Tag("one place")]
+    | Annotated[list[Quantity], Field(min_length=1, max_length=LONGEST_AXIS), Tag("list of places")]
+    | Annotated[EvenAxis, Tag("even places")]
+    | Annotated[LayerAxis, Tag("places through a layer")],
     Discriminator(_kind_of_axis),
 ]
 
@@ -59,8 +90,10 @@ class Grid(Model):
         description="Places along y: one length, a list of lengths, or from, to and count.",
         examples=[[0, 30, 60]],
     )
-    z: GridAxis = Field(
-        description="Places along z: one length, a list of lengths, or from, to and count.", examples=[20]
+    z: GridHeights = Field(
+        description="Places along z: one length, a list of lengths, or from, to and count; in a stack also a layer and "
+        "a count.",
+        examples=[20, {"layer": "solder", "count": 9}],
     )
     side: Side | None = Field(None, description=_SIDE, examples=["above"])
 

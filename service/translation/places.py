@@ -103,12 +103,15 @@ class PlaceReader:
 
     def grid(self, grid: models.Grid, path: Path) -> GridPlaces:
         """The places of a grid."""
-        axes = [
-            self._axis(places, index, (*path, axis))
-            for index, (axis, places) in enumerate(zip(AXES, (grid.x, grid.y, grid.z), strict=True))
-        ]
-        z = self._on_side(axes[2], grid.side, path)
-        return GridPlaces(grid.name, (axes[0], axes[1], axes[2]), (axes[0], axes[1], z))
+        x, y = self._axis(grid.x, 0, (*path, "x")), self._axis(grid.y, 1, (*path, "y"))
+        if isinstance(grid.z, models.LayerAxis):
+            z, inside = self._through_layer(grid.z, (*path, "z"))
+            if grid.side is not None:
+                self.collector.add((*path, "side"), "Places through a layer lie in it; leave `side` out.", "side")
+        else:
+            z = self._axis(grid.z, 2, (*path, "z"))
+            inside = self._on_side(z, grid.side, path)
+        return GridPlaces(grid.name, (x, y, z), (x, y, inside))
 
     def point(self, point: models.Point, path: Path) -> NamedPoint:
         """The place of a point."""
@@ -204,6 +207,21 @@ class PlaceReader:
                 self.collector.add(path, "The places have to increase.", "order")
             return np.array(values)
         return np.array([self._inside(places, axis, path)])
+
+    def _through_layer(self, asked: models.LayerAxis, path: Path) -> tuple[FloatArray, FloatArray]:
+        """Heights through a layer, as they are shown and as the solver is asked for them."""
+        layers = self.problem.body.layers
+        for index, layer in enumerate(layers):
+            if asked.layer in (index, layer.name):
+                sides = (0.0, *self.extents[2].interfaces, self.extents[2].high)
+                shown = np.linspace(sides[index], sides[index + 1], asked.count)
+                inside = shown.copy()
+                if index:
+                    inside[0] = np.nextafter(inside[0], math.inf)
+                return shown, inside
+        has = f"has the layers 0 to {len(layers) - 1}" if layers else "has no layers"
+        self.collector.add((*path, "layer"), f"There is no such layer; the body {has}.", "no-such-layer")
+        return np.zeros(1), np.zeros(1)
 
     def _inside(self, value: float | str, axis: int, path: Path) -> float:
         """A coordinate of the closed body."""

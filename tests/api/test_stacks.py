@@ -112,6 +112,18 @@ async def test_grid_across_an_interface_is_read_on_the_side_that_is_named(client
         assert high["potential"][index][0][1] - low["potential"][index][0][1] > 1e3 * low["error_bound"]
 
 
+async def test_grid_through_a_layer_reaches_from_side_to_side(client: httpx.AsyncClient) -> None:
+    grids = [{"x": 8, "y": 6.5, "z": {"layer": layer, "count": 3}} for layer in ("base", 1, "track")]
+    at = [{"interface": 1, "at": [[8, 6.5]]}]
+    found = await ask(client, plate(), grids=grids, interfaces=at)
+    heights = [grid["axes"]["z"] for grid in found["grids"]]
+    assert heights == [pytest.approx([0, 1.5, 3]), pytest.approx([3, 3.04, 3.08]), pytest.approx([3.71, 3.7125, 3.715])]
+    base, solder = (grid["potential"][0][0] for grid in found["grids"][:2])
+    bound = 2 * found["certificate"]["error_bound"]
+    assert base[2] == pytest.approx(found["interfaces"][0]["potential_below"][0], abs=bound)
+    assert solder[0] == pytest.approx(found["interfaces"][0]["potential_above"][0], abs=bound)
+
+
 async def test_decimal_heights_meet_the_interfaces_they_name(client: httpx.AsyncClient) -> None:
     """0.1 + 0.2 is not 0.3 in binary; a height written in decimal is still that of the interface, or the top."""
     layers = [{"thickness": thickness, "conductivity": 1} for thickness in (0.1, 0.2, 0.6, 0.1)]
@@ -203,6 +215,9 @@ TABLE = [
     asked("place beside an interface", {"interfaces": [{"interface": 1, "at": [[31, 1]]}]}, "#/evaluate/interfaces/0/at/0/0", "x = 31 mm lies outside the body"),
     asked("place of three coordinates", {"interfaces": [{"interface": 1, "at": [[1, 1, 1]]}]}, "#/evaluate/interfaces/0/at/0", "At most 2 entries"),
     asked("side of no interface", {"points": [{"at": [1, 1, 1], "side": "above"}]}, "#/evaluate/points/0/side", "None of the places lies on an interface"),
+    asked("grid through a layer that is not there", {"grids": [{"x": 1, "y": 1, "z": {"layer": "glue", "count": 3}}]}, "#/evaluate/grids/0/z/layer", "There is no such layer; the body has the layers 0 to 3."),
+    asked("layer by truth", {"grids": [{"x": 1, "y": 1, "z": {"layer": True, "count": 3}}]}, "#/evaluate/grids/0/z/layer", "The number of a layer"),
+    asked("side of places through a layer", {"grids": [{"x": 1, "y": 1, "z": {"layer": 1, "count": 3}, "side": "above"}]}, "#/evaluate/grids/0/side", "leave `side` out"),
     asked("unknown side", {"points": [{"at": [1, 1, 3], "side": "left"}]}, "#/evaluate/points/0/side", 'One of "below" or "above" is wanted here.'),
     wrong("box above the stack", "sources", [{"z": [0, 5], "density": 1}], "#/sources/0/z", "Source 0 reaches from 0 to 5 along z"),
 ]  # fmt: skip
