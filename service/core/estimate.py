@@ -8,7 +8,8 @@ from dataclasses import dataclass
 
 from service.core import field, time_range
 from service.core.field import Setting
-from service.core.lines import stack_response
+from service.core.lines import curves, stack_response
+from service.core.maps import Profiles
 from service.core.split import Part
 
 # Costs in multiplications of plain array arithmetic, about 10^9 a second, as measured on the bodies of the tests.
@@ -26,6 +27,9 @@ FLUX = 7.0
 
 # Arrays of a factor's size, and of the size of its breaks, held at once.
 FACTORS_HELD, BREAKS_HELD = 12.0, 5.0
+
+# Arrays of a kernel of curved profiles held at once: all orders of two functions, and as many in passing.
+CURVES_HELD = 60.0
 
 
 @dataclass(frozen=True)
@@ -63,10 +67,14 @@ def _factors(setting: Setting, part: Part, shape: Sequence[int], nodes: float) -
     """Cost of the factors of a part's three lines and of their bounds, and the memory they take."""
     work = held = 0.0
     for axis, places in enumerate(shape):
-        breaks = max(part.knots(axis).size, 1)
-        values = places * nodes
+        drive, values = part.drives[axis], places * nodes
+        kept = breaks = max(part.knots(axis).size, 1)
+        if isinstance(drive, Profiles) and drive.is_curved:
+            # Narrow pieces are point sources; so many values of theirs are held at once and no more.
+            breaks, kept = curves.INNER_POINTS * breaks, 0
+            held += 8.0 * CURVES_HELD * curves.VALUES_AT_ONCE
         work += values * (breaks * (FUNCTION + IN_PRODUCT * part.columns) + PASS * part.columns)
-        held += 8.0 * values * (FACTORS_HELD * part.columns + BREAKS_HELD * breaks)
+        held += 8.0 * values * (FACTORS_HELD * part.columns + BREAKS_HELD * kept)
     if setting.body.layers:
         # Each place hears from every layer that holds a profile, at all places on the parabola.
         heard = max(part.knots(2).size, 1)

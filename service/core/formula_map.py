@@ -15,7 +15,7 @@ Kinks of abs, min and max that lie along an axis are found by bisection and get 
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -51,11 +51,18 @@ LOOKED_AT = 129
 MOST_BOXES, MOST_LEVELS, PEAK = 4_000, 60, 1e-13
 
 
-def of_formula(extent: tuple[float, float], formula: Formula, factor: float = 1.0) -> FaceMap:
+def of_formula(
+    extent: tuple[float, float],
+    formula: Formula,
+    factor: float = 1.0,
+    *,
+    begins: tuple[float, float] = (0.0, 0.0),
+) -> FaceMap:
     """The map of a formula over a face.
 
     extent: lengths of the face along its two axes; along an infinite one the formula must not vary.
     factor: what a value of the formula is multiplied by.
+    begins: where the axes begin: 0, or -infinity along one without ends.
     Raises NotPhysical where the formula is not finite on the face, or jumps or turns too sharply to be represented.
     """
     varies = (formula.names[0] in formula.root.names, formula.names[1] in formula.root.names)
@@ -72,7 +79,7 @@ def of_formula(extent: tuple[float, float], formula: Formula, factor: float = 1.
     values = factor * formula.at(looked[0], looked[1])
     if not any(varies):
         return FaceMap.uniform(float(values[0, 0]))
-    return _Maker(formula, factor, extent, varies, values).map()
+    return _Maker(formula, factor, extent, begins, varies, values).map()
 
 
 @dataclass(frozen=True, eq=False)
@@ -92,12 +99,14 @@ class _Maker:
         formula: Formula,
         factor: float,
         extent: tuple[float, float],
+        begins: tuple[float, float],
         varies: tuple[bool, bool],
         values: FloatArray,
     ) -> None:
         self.formula = formula
         self.factor = factor
         self.extent = extent
+        self.begins = begins
         self.varies = varies
         self.range = float(values.max() - values.min())
         self.size = float(np.abs(values).max())
@@ -108,9 +117,10 @@ class _Maker:
     def map(self) -> FaceMap:
         """The map, its error and its peaks."""
         knots, kinks = [], []
-        for name, length, along in zip(self.formula.names, self.extent, self.varies, strict=True):
+        axes = zip(self.formula.names, self.begins, self.extent, self.varies, strict=True)
+        for name, start, length, along in axes:
             found = _kinks(self.formula, name, length) if along else ()
-            marks = np.array([0.0, *found, length])
+            marks = np.array([start, *found, length])
             kinks.append(found)
             knots.append(_split(marks, np.full(marks.size - 1, FIRST_PIECES)) if along else marks)
         cells = self._cells(knots)
@@ -128,23 +138,20 @@ class _Maker:
         table = np.repeat(table, 1 if self.varies[0] else 2, axis=0)
         table = np.repeat(table, 1 if self.varies[1] else 2, axis=1)
         plain = FaceMap(
-            knots[0], knots[1], table, True, self.extent, self.usual, curved=self.varies, kinks=(kinks[0], kinks[1])
-        )
-        error = self._checked_error(cells, knots, plain, places)
-        lowest, highest = (_peak(self, knots, sign) for sign in (-1.0, 1.0))
-        return FaceMap(
             knots[0],
             knots[1],
             table,
             True,
             self.extent,
             self.usual,
+            self.begins,
             curved=self.varies,
-            error=error,
-            slope_error=self._slope_error(cells, knots, error),
-            peaks=(lowest, highest),
             kinks=(kinks[0], kinks[1]),
         )
+        error = self._checked_error(cells, knots, plain, places)
+        lowest, highest = (_peak(self, knots, sign) for sign in (-1.0, 1.0))
+        slope_error = self._slope_error(cells, knots, error)
+        return replace(plain, error=error, slope_error=slope_error, peaks=(lowest, highest))
 
     def jet(self, axis: int | None, boxes: tuple[FloatArray, FloatArray, FloatArray, FloatArray], order: int) -> Jet:
         """Taylor coefficients along an axis over boxes (first low, first high, second low, second high)."""

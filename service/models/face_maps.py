@@ -1,4 +1,4 @@
-"""Data of a face as a client writes them: one number, patches over a background, or a table of readings."""
+"""Data of a face as a client writes them: one number, patches over a background, a table of readings, a formula."""
 
 from __future__ import annotations
 
@@ -14,6 +14,7 @@ from service.number_range import LARGEST_NUMBER
 MOST_PATCHES = 1_000
 LONGEST_AXIS = 10_000
 LONGEST_CSV = 2_000_000
+LONGEST_EXPRESSION = 500
 
 IntervalEnd = Annotated[
     Quantity,
@@ -142,16 +143,22 @@ class SamplesMap(Model):
 
 
 class FormulaMap(Model):
-    """A formula in the coordinates of the face. Refused for now."""
+    """A formula in the two coordinates of the face.
+
+    It is replaced by polynomials in pieces; how far these may be from it is inside the error bounds of every answer.
+    """
 
     map: Literal["formula"] = Field(description="Which kind of map this is.")
-
-    @model_validator(mode="before")
-    @classmethod
-    def _refuse(cls, value: Any) -> Any:
-        raise PydanticCustomError(
-            "formula", "A formula on a face is not offered; use `patches` or `samples` (a table of readings)."
-        )
+    expression: str = Field(
+        min_length=1,
+        max_length=LONGEST_EXPRESSION,
+        description="An expression in the coordinates of the face's two axes, bare numbers in the declared unit "
+        "`length`; its value is in the declared unit of the face's datum. Numbers, + - * / and ^ (or **), parentheses, "
+        "pi and e, sin cos tan asin acos atan sinh cosh tanh exp log (the natural one, also ln) log10 sqrt abs min "
+        "max. "
+        "Kinks of abs, min and max may run along an axis; jumps are for patches.",
+        examples=["30 + 600*exp(-((x-20)/8)^2)*sin(pi*y/60)"],
+    )
 
 
 def _kind_of(value: Any) -> str | None:
@@ -172,10 +179,10 @@ FaceData = Annotated[
     Annotated[Quantity, Tag("one value")]
     | Annotated[PatchesMap, Tag("map of patches")]
     | Annotated[SamplesMap, Tag("map of samples")]
-    | Annotated[FormulaMap, Tag("map of formula"), WithJsonSchema({"not": {}})],
+    | Annotated[FormulaMap, Tag("map of formula")],
     Discriminator(
         _kind_of,
         custom_error_type="map",
-        custom_error_message='A map has to say which it is: "map" is "patches" or "samples".',
+        custom_error_message='A map has to say which it is: "map" is "patches", "samples" or "formula".',
     ),
 ]

@@ -1,4 +1,4 @@
-"""Data of a face: one value, patches or readings as a client writes them to the solver's maps."""
+"""Data of a face: one value, patches, readings or a formula as a client writes them to the solver's maps."""
 
 from __future__ import annotations
 
@@ -7,9 +7,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from service.core import errors, maps
+from service.core import errors, formula, formula_map, maps
 from service.core.problem import AXES, Face, axes_along
-from service.models.face_maps import AxisIntervals, FaceData, PatchesMap, SamplesMap
+from service.models.face_maps import AxisIntervals, FaceData, FormulaMap, PatchesMap, SamplesMap
 from service.models.face_maps import Patch as PatchModel
 from service.refusals import Path
 from service.settings import Settings
@@ -63,6 +63,8 @@ class FaceReader:
                 contents = self._patches(kind, data, path)
             elif isinstance(data, SamplesMap):
                 contents = self._samples(kind, data, path)
+            elif isinstance(data, FormulaMap):
+                contents = self._formula(kind, data)
             elif isinstance(data, float | str):
                 value = self.collector.read(kind, data, path)
                 contents = None if math.isnan(value) else FaceContents(maps.FaceMap.uniform(value))
@@ -176,6 +178,14 @@ class FaceReader:
         )
         return FaceContents(face_map, filled=missing)
 
+    def _formula(self, kind: Kind, data: FormulaMap) -> FaceContents | None:
+        expression = formula.read(data.expression, self.axes)
+        if self._has_unread_extent():
+            return None
+        # Bare numbers of a formula are in the declared units; the solver wants its own.
+        factor = self.collector.units.read(kind, 1.0)
+        return FaceContents(formula_map.of_formula(self.extent, expression, factor, begins=self.begins))
+
     def _table(self, data: SamplesMap, path: Path) -> Readings | None:
         """Axes and readings, NaN where one is missing."""
         if data.csv is not None:
@@ -246,6 +256,8 @@ class FaceReader:
 
     def _in_words_of_request(self, error: errors.NotPhysical, data: FaceData) -> errors.NotPhysical:
         """The solver's names of the axes of a table as the names the client wrote."""
+        if isinstance(data, FormulaMap):
+            return errors.NotPhysical(error.message, ("expression",))
         if isinstance(data, SamplesMap) and data.csv is not None:
             return errors.NotPhysical(error.message, ("csv",))
         names = {"first_axis": self.axes[0], "second_axis": self.axes[1]}
