@@ -31,6 +31,9 @@ FACTORS_HELD, BREAKS_HELD = 12.0, 5.0
 # Arrays of a kernel of curved profiles held at once: all orders of two functions, and as many in passing.
 CURVES_HELD = 60.0
 
+# Part of all sources of curved profiles, times and places that is heard from.
+HEARD = 0.25
+
 
 @dataclass(frozen=True)
 class Estimate:
@@ -68,10 +71,10 @@ def _factors(setting: Setting, part: Part, shape: Sequence[int], nodes: float) -
     work = held = 0.0
     for axis, places in enumerate(shape):
         drive, values = part.drives[axis], places * nodes
-        kept = breaks = max(part.knots(axis).size, 1)
+        kept = breaks = float(max(part.knots(axis).size, 1))
         if isinstance(drive, Profiles) and drive.is_curved:
-            # Narrow pieces are point sources; so many values of theirs are held at once and no more.
-            breaks, kept = curves.INNER_POINTS * breaks, 0
+            # Narrow pieces are point sources, heard at some times and from near; few values are held at once.
+            breaks, kept = HEARD * curves.INNER_POINTS * breaks, 0.0
             held += 8.0 * CURVES_HELD * curves.VALUES_AT_ONCE
         work += values * (breaks * (FUNCTION + IN_PRODUCT * part.columns) + PASS * part.columns)
         held += 8.0 * values * (FACTORS_HELD * part.columns + BREAKS_HELD * kept)

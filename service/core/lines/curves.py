@@ -35,7 +35,7 @@ INNER_POINTS = 28
 FROM_ABOVE, ORDERS_ABOVE = 1.0, 40
 
 # So many values of a kernel are held at once.
-VALUES_AT_ONCE = 400_000
+VALUES_AT_ONCE = 100_000
 
 
 def departure(
