@@ -102,7 +102,7 @@ def _adds_up(lines: Sequence[Line], part: Part, axis: int, sides: Sequence[Side]
 
 
 def _power(line: Line, drive: Drive, *, slope: bool, throughout: bool) -> float:
-    """p of the t^(-p) that an endless line's answer falls with: of its value or slope, or of its integral throughout."""
+    """p of the t^(-p) that a line's answer falls with: its value or slope, or its integral throughout."""
     if not line.is_endless:
         return 0.0
     takes_up = line.film_low > 0.0
