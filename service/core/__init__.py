@@ -10,10 +10,12 @@ from service.core.errors import (
     NoSteadyState,
     NotPhysical,
     OutsideBody,
+    OutsideLaw,
 )
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
 from service.core.field import Field, Grid
+from service.core.laws import ConductivityLaw, Radiation
 from service.core.maps import FaceMap, Patch, Rectangle
 from service.core.problem import (
     AXES,
@@ -28,7 +30,8 @@ from service.core.problem import (
     Insulated,
     Layer,
 )
-from service.core.solution import Solution, solve
+from service.core.solution import Solution
+from service.core.solving import solve
 from service.core.totals import Balance, Bounded, Total
 from service.core.unbounded import UnboundedCause
 
@@ -43,6 +46,7 @@ __all__ = [
     "CacheReport",
     "Certificate",
     "Condition",
+    "ConductivityLaw",
     "Convergence",
     "CoreError",
     "Estimate",
@@ -61,9 +65,11 @@ __all__ = [
     "NodeStep",
     "NotPhysical",
     "OutsideBody",
+    "OutsideLaw",
     "Overshoot",
     "Patch",
     "Place",
+    "Radiation",
     "Rectangle",
     "SeriesStep",
     "Solution",

@@ -4,6 +4,7 @@ CoreError
 ├── NotPhysical         a size, conductivity, map or source that no body can have
 ├── NoSteadyState       the flows given cannot balance, so no steady field exists
 ├── OutsideBody         a place asked for that is not in the closed body
+├── OutsideLaw          the potential leaves the range in which the conductivity law holds
 ├── AccuracyNotReached  the bound reached is wider than the one asked for
 └── Interrupted         the time allowed for the computation is over
 
@@ -43,6 +44,10 @@ class NoSteadyState(CoreError):
 
 class OutsideBody(CoreError):
     """A grid coordinate, point, plane or rectangle that lies outside the closed body."""
+
+
+class OutsideLaw(CoreError):
+    """A held value or the field itself leaves the range in which the law of the conductivity holds."""
 
 
 class AccuracyNotReached(CoreError):

@@ -15,6 +15,7 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import pairwise
 
 import numpy as np
 from numpy.typing import NDArray
@@ -74,7 +75,7 @@ class ConductivityLaw:
             )
         if not all(math.isfinite(number) for number in (*potentials, *factors)):
             raise NotPhysical("The numbers of the conductivity law have to be finite.", ("law",))
-        if any(after <= before for before, after in zip(potentials, potentials[1:], strict=False)):
+        if any(after <= before for before, after in pairwise(potentials)):
             raise NotPhysical("The potentials of the conductivity law have to increase.", ("law", "potential"))
         for index, factor in enumerate(factors):
             if factor <= 0.0:
@@ -158,9 +159,7 @@ class Kirchhoff:
         return np.maximum(self.potential(theta + bound) - here, here - self.potential(theta - bound))
 
     @staticmethod
-    def _place(
-        nodes: FloatArray, places: FloatArray, reference: float
-    ) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
+    def _place(nodes: FloatArray, places: FloatArray, reference: float) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
         """The piece that a place is in, and the end of it that is nearer to the reference."""
         piece = np.searchsorted(nodes, places, side="right")
         base = np.where(places >= reference, piece - 1, piece)
@@ -191,9 +190,7 @@ class FilmLaw:
         # Factors of the difference of fourth powers, which keep the digits of a small difference.
         here = np.maximum(potential + self.radiation.zero, 0.0)
         there = max(self.reference + self.radiation.zero, 0.0)
-        return np.asarray(
-            flow + self.radiation.coefficient * (here - there) * (here + there) * (here**2 + there**2)
-        )
+        return np.asarray(flow + self.radiation.coefficient * (here - there) * (here + there) * (here**2 + there**2))
 
     def slope(self, potential: FloatArray) -> FloatArray:
         """Derivative of what is given off, any shape; it does not decrease."""

@@ -21,6 +21,8 @@ from service.core.totals import Balance, Bounded, Total
 
 FloatArray = NDArray[np.float64]
 
+USUAL_ACCURACY = 1e-9
+
 
 def solve(body: Body) -> Solution:
     """Check that a body has a steady field and make it ready to be asked. Raises NoSteadyState."""
@@ -46,6 +48,11 @@ class Solution:
     def span(self) -> float:
         """Range of the potential that accuracies refer to: of the data, or what flows and generation raise."""
         return self._setting.span
+
+    @property
+    def usual_accuracy(self) -> float:
+        """The accuracy that answers have unless another is asked for, in parts of the span."""
+        return USUAL_ACCURACY
 
     @property
     def reference(self) -> float:
