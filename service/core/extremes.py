@@ -100,13 +100,13 @@ def highest_on(
 
 def _extreme(search: _Search, sign: float) -> Place:
     body = search.setting.body
-    held = _extreme_held(body, sign)
-    if held is not None and not _may_exceed(body, sign * held.value, sign):
+    held = extreme_held(body, sign)
+    if held is not None and not may_exceed(body, sign * held.value, sign):
         return held
     return _by_search(search, sign, held)
 
 
-def _may_exceed(body: Body, level: float, sign: float) -> bool:
+def may_exceed(body: Body, level: float, sign: float) -> bool:
     """Whether an inflow, a source or an ambient could lift the potential above a level (below, for sign -1)."""
     for condition in body.faces.values():
         if isinstance(condition, Inflow) and _highest(condition.inflow, sign) > 0:
@@ -122,7 +122,7 @@ def _highest(face_map: FaceMap, sign: float) -> float:
     return sign * (face_map.highest if sign > 0 else face_map.lowest) + slack
 
 
-def _extreme_held(body: Body, sign: float) -> Place | None:
+def extreme_held(body: Body, sign: float) -> Place | None:
     """The highest (lowest) held value and a place where it is held."""
     best: tuple[Peak, Face] | None = None
     for face in body.present_faces:

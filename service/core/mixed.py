@@ -1,0 +1,446 @@
+"""The solved problem of a body with several conditions on one face.
+
+Totals are told by extrapolation from refinements, see `mixed_refinement`. A field errs by what its density errs nearby;
+its bound is the change from half as many panels, or what that should be after the change before it.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Iterable, Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core import extremes, time_error
+from service.core.certificate import Certificate
+from service.core.errors import AccuracyNotReached, NoSteadyState
+from service.core.estimate import Estimate
+from service.core.extremes import Extremes, Place
+from service.core.field import OFFERED, Field, Grid, KeepGoing
+from service.core.maps import Rectangle
+from service.core.mixed_base import Base, Spot, base_of, pads_of
+from service.core.mixed_panels import Refined, given_total, needs_balance
+from service.core.mixed_refinement import LEAST_CHANGE, LEVELS, Ladder, Refinement, change_of
+from service.core.panels import STEP
+from service.core.problem import Body, Face, FilmPad, HeldPad, axes_along, axis_of
+from service.core.solution import Solution
+from service.core.solvability import BALANCED, check_steady_state
+from service.core.totals import Balance, Bounded, Total
+
+FloatArray = NDArray[np.float64]
+
+# Most panels of all pads together: a matrix of 128 MiB, factorised in about a second.
+MOST_PANELS = 4096
+
+# Bounds of totals fall at the most with this power of the number of panels along an axis, those of fields with this.
+ORDER_OF_TOTALS, ORDER_OF_FIELDS = 4.0, 2.0
+
+# No flow is told better than this part of the worst: the error of one is a product with that of all.
+LEAST_OF_WORST = 0.125
+
+# A field is asked of each refinement with this part of the tolerance.
+SHARE = 0.1
+
+# Accuracy, in parts of the span, of means over pads that have their base's film.
+MEAN_ACCURACY = 1e-10
+
+
+@dataclass(frozen=True)
+class PadAnswer:
+    """What passes through a pad of a mixed face.
+
+    face, index, name: which. flow: into the body through it. potential: of a held pad its level, given or found; of a
+    film pad the mean over it.
+    """
+
+    face: Face
+    index: int
+    name: str | None
+    flow: Bounded
+    potential: Bounded
+
+
+def solve_mixed(
+    body: Body, *, accuracy: float = 1e-6, most_panels: int = MOST_PANELS, keep_going: KeepGoing | None = None
+) -> MixedSolution:
+    """Solve a body with mixed faces until the flows of its pads are known to an accuracy.
+
+    accuracy: of the flows, in parts of the sum of their sizes, and of levels that are found, in parts of the span.
+    most_panels: of all pads together. Where they do not suffice the bounds say what was reached.
+    Raises NotPhysical and NoSteadyState.
+    """
+    base = base_of(body)
+    _check_steady(body, base)
+    solution = MixedSolution(Ladder(body, base, most_panels, keep_going))
+    solution.refine_flows(accuracy)
+    return solution
+
+
+def _check_steady(body: Body, base: Base) -> None:
+    """Raise NoSteadyState where flows are given that nothing can carry away."""
+    if not needs_balance(base):
+        check_steady_state(base.body)
+        return
+    given = given_total(base)
+    if not math.isfinite(given):
+        raise NoSteadyState(
+            "Inflow or generation goes on without end, and no face takes it up there ({amount}); it has to end.",
+            given,
+            ("faces",),
+        )
+    if any(spot.level is not None for spot in base.spots):
+        return
+    pads = [pad for face in base.faces for pad in pads_of(body, face)]
+    flows = [pad.flow for pad in pads if isinstance(pad, HeldPad) and pad.flow is not None]
+    total = math.fsum([given, *flows])
+    if abs(total) > BALANCED * math.fsum(map(abs, [given, *flows])):
+        raise NoSteadyState(
+            "No face and no pad is held at a value or has a film, and the inflows, the flows of the pads and the "
+            "generation add up to {amount}; they have to add up to zero.",
+            total,
+            ("faces",),
+        )
+
+
+class MixedSolution:
+    """A body with mixed faces and its field; answers like `Solution`, with finer panels where they are needed."""
+
+    def __init__(self, ladder: Ladder) -> None:
+        self._ladder, self._base = ladder, ladder.base
+        self._count = ladder.counts[0]
+
+    @property
+    def body(self) -> Body:
+        """The body as given."""
+        return self._ladder.body
+
+    @property
+    def _here(self) -> Refinement:
+        return self._ladder.at(self._count)
+
+    @property
+    def panel_count(self) -> int:
+        """Panels of all pads, and pieces of background that are solved like pads, at the present refinement."""
+        return self._count**2 * len(self._base.spots)
+
+    @property
+    def level_pinned(self) -> bool:
+        """Whether the data leave the level open, so that the field is counted from its own mean or from far away."""
+        return needs_balance(self._base) and all(spot.level is None for spot in self._base.spots)
+
+    @property
+    def span(self) -> float:
+        """Range of the potential that accuracies refer to."""
+        return self._here.solutions[0].span
+
+    @property
+    def reference(self) -> float:
+        """The level the parts of the problem are counted from."""
+        return self._here.solutions[0].reference
+
+    def refine_flows(self, accuracy: float) -> None:
+        """Take finer panels until the flows of the pads meet an accuracy, or no finer ones are allowed."""
+        while True:
+            answers = self.pads()
+            size = math.fsum(abs(answer.flow.value) for answer in answers)
+            missed = [
+                _over(max(answer.flow.error_bound for answer in answers), accuracy * size),
+                _over(max(answer.potential.error_bound for answer in answers), accuracy * self.span),
+            ]
+            finer = self._ladder.finer(self._count, max(missed), ORDER_OF_TOTALS)
+            if finer is None:
+                return
+            self._count = finer
+
+    def pads(self) -> tuple[PadAnswer, ...]:
+        """Flow and potential of every pad, face by face."""
+        answers = [
+            self._pad(face, index, pad)
+            for face in self._base.faces
+            for index, pad in enumerate(pads_of(self.body, face))
+        ]
+        least = LEAST_OF_WORST * max(answer.flow.error_bound for answer in answers)
+        return tuple(
+            replace(answer, flow=Bounded(answer.flow.value, max(answer.flow.error_bound, least)))
+            if answer.flow.error_bound > 0.0
+            else answer
+            for answer in answers
+        )
+
+    def _pad(self, face: Face, index: int, pad: HeldPad | FilmPad) -> PadAnswer:
+        number = next((n for n, spot in enumerate(self._base.spots) if (spot.face, spot.pad) == (face, index)), None)
+        if number is None:
+            # It has the film of the base.
+            assert isinstance(pad, FilmPad)
+            area = (pad.where.p_high - pad.where.p_low) * (pad.where.q_high - pad.where.q_low)
+            means = [
+                solution.mean(face, pad.where, tolerance=MEAN_ACCURACY * self.span) for solution in self._here.solutions
+            ]
+            mean = self._ladder.limit(means)
+            flow = Bounded(
+                pad.coefficient * area * (pad.ambient - mean.value), pad.coefficient * area * mean.error_bound
+            )
+            return PadAnswer(face, index, pad.name, flow, mean)
+        spot, rounding = self._base.spots[number], time_error.step_error(STEP)
+        excess = self._ladder.limit(
+            [
+                Bounded(
+                    math.fsum(refined.flows[number]),
+                    rounding * math.fsum(float(np.abs(flows).sum()) for flows in refined.flows),
+                )
+                for refined in self._here.refined
+            ]
+        )
+        if isinstance(pad, HeldPad):
+            flow = excess if pad.flow is None else Bounded(pad.flow, 0.0)
+            return PadAnswer(face, index, pad.name, flow, self._level(number))
+        share = 1.0 + self._base.coefficients[face] / spot.excess
+        per_flow = 1 / (spot.area * spot.excess)
+        potential = Bounded(pad.ambient - per_flow * excess.value, per_flow * excess.error_bound)
+        return PadAnswer(face, index, pad.name, Bounded(share * excess.value, share * excess.error_bound), potential)
+
+    def _level(self, number: int) -> Bounded:
+        """Level of a held spot."""
+        level = self._base.spots[number].level
+        if level is not None:
+            return Bounded(level, 0.0)
+        rounding = time_error.step_error(STEP) * self.span
+        return self._ladder.limit([Bounded(float(refined.levels[number]), rounding) for refined in self._here.refined])
+
+    def field(
+        self, grid: Grid, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
+    ) -> Field:
+        """Potential, and flux density if asked for, on a grid.
+
+        Finer panels are taken until the bound meets the tolerance; raises AccuracyNotReached where none are allowed.
+        On a held pad the potential is its level and the flux along it zero; its flux density is told as panels' means.
+        """
+        x, y, z = np.meshgrid(*grid.axes, indexing="ij")
+        points = np.stack([x.ravel(), y.ravel(), z.ravel()], axis=1)
+
+        def ask(solution: Solution, share: float) -> Field:
+            found = solution.field(grid, tolerance=share, with_flux=with_flux, keep_going=keep_going)
+            flux = None if found.flux is None else found.flux.reshape(3, -1)
+            bound = None if found.flux_bound is None else found.flux_bound.ravel()
+            return replace(found, potential=found.potential.ravel(), flux=flux, flux_bound=bound)
+
+        found = self._field(ask, points, tolerance)
+        return replace(
+            found,
+            potential=found.potential.reshape(grid.shape),
+            flux=None if found.flux is None else found.flux.reshape(3, *grid.shape),
+            flux_bound=None if found.flux_bound is None else found.flux_bound.reshape(grid.shape),
+        )
+
+    def field_at(
+        self, points: FloatArray, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
+    ) -> Field:
+        """Potential, and flux density if asked for, at points, shape (n, 3); see `field`."""
+
+        def ask(solution: Solution, share: float) -> Field:
+            return solution.field_at(points, tolerance=share, with_flux=with_flux, keep_going=keep_going)
+
+        return self._field(ask, points, tolerance)
+
+    def _field(self, ask: Callable[[Solution, float], Field], points: FloatArray, tolerance: float) -> Field:
+        count, share = self._count, SHARE * tolerance
+        while True:
+            here = self._ladder.at(count)
+            if not here.refined:
+                return ask(here.solutions[0], tolerance)
+            levels = zip(here.solutions, here.refined, strict=True)
+            finest = here.refined[0]
+            found = _compared(
+                [
+                    self._on_spots(ask(solution, share), solution, refined, finest, points, share)
+                    for solution, refined in levels
+                ]
+            )
+            if found.potential_bound <= tolerance:
+                return found
+            finer = self._ladder.finer(count, _over(found.potential_bound, tolerance), ORDER_OF_FIELDS)
+            if finer is None:
+                raise AccuracyNotReached(tolerance, OFFERED * found.potential_bound)
+            count = finer
+
+    def _on_spots(
+        self,
+        answer: Field,
+        solution: Solution,
+        refined: Refined,
+        finest: Refined,
+        points: FloatArray,
+        tolerance: float,
+    ) -> Field:
+        """A field with what is known of spots: the level of held ones, and panels' own flux on borders of panels."""
+        for number, spot in enumerate(self._base.spots):
+            on_it, inside = _places_on(self.body, spot, points)
+            if spot.is_held:
+                answer.potential[on_it] = refined.levels[number]
+            if answer.flux is None or answer.flux_bound is None:
+                continue
+            between = np.flatnonzero(inside & np.isnan(answer.flux).any(axis=0))
+            if between.size:
+                # Between two panels the field of their densities has no finite flux, which the true one has.
+                grid, moved = finest.grids[number], points[between].copy()
+                for axis, edges in zip(axes_along(spot.face), (grid.first, grid.second), strict=True):
+                    panel = np.clip(np.searchsorted(edges, moved[:, axis], side="right") - 1, 0, edges.size - 2)
+                    on_edge = np.isin(moved[:, axis], edges)
+                    moved[on_edge, axis] = 0.5 * (edges[panel] + edges[panel + 1])[on_edge]
+                beside = solution.field_at(moved, tolerance=tolerance, with_flux=True)
+                answer.flux[:, between] = beside.flux
+                answer.flux_bound[between] = beside.flux_bound
+            if spot.is_held:
+                for axis in axes_along(spot.face):
+                    answer.flux[axis, inside] = 0.0
+        return answer
+
+    def extremes(self, *, tolerance: float, keep_going: KeepGoing | None = None) -> Extremes:
+        """The hottest and the coldest place of the closed body."""
+        return Extremes(
+            self._extreme(1.0, tolerance, keep_going, "hottest"), self._extreme(-1.0, tolerance, keep_going, "coldest")
+        )
+
+    def _extreme(self, sign: float, tolerance: float, keep_going: KeepGoing | None, which: str) -> Place:
+        held = [self._held_place(number) for number, spot in enumerate(self._base.spots) if spot.is_held]
+        on_face = extremes.extreme_held(self._base.body, sign)
+        best = max([*held, *([on_face] if on_face else [])], key=lambda place: sign * place.value, default=None)
+        films = [spot.level for spot in self._base.spots if not spot.is_held and spot.level is not None]
+        exceeds = best is not None and any(sign * ambient > sign * best.value for ambient in films)
+        if best is not None and not exceeds and not extremes.may_exceed(self._base.body, sign * best.value, sign):
+            return best
+        fine, middle = (
+            getattr(solution.extremes(tolerance=SHARE * tolerance, keep_going=keep_going), which)
+            for solution in self._here.solutions[:2]
+        )
+        error = fine.error_bound + middle.error_bound + abs(fine.value - middle.value)
+        if best is None or sign * fine.value > sign * best.value + error:
+            return replace(fine, error_bound=error)
+        # The two cannot be told apart, or the held one is the higher.
+        return replace(best, error_bound=best.error_bound + max(sign * (fine.value - best.value), 0.0) + error)
+
+    def _held_place(self, number: int) -> Place:
+        spot, level = self._base.spots[number], self._level(number)
+        place = [0.0, 0.0, 0.0]
+        first, second = axes_along(spot.face)
+        place[axis_of(spot.face)] = self.body.end_of(spot.face)
+        place[first] = 0.5 * (spot.where.p_low + spot.where.p_high)
+        place[second] = 0.5 * (spot.where.q_low + spot.where.q_high)
+        return Place((place[0], place[1], place[2]), level.value, level.error_bound, f"face {spot.face}")
+
+    def mean(self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float) -> Bounded:
+        """Mean of the potential over a face or a rectangle of it."""
+        for number, spot in enumerate(self._base.spots):
+            if rectangle is not None and spot.face == face and spot.is_held and _lies_in(rectangle, spot.where):
+                return self._level(number)
+        return change_of([solution.mean(face, rectangle, tolerance=tolerance) for solution in self._here.solutions])
+
+    def face_total(
+        self, face: Face, rectangle: Rectangle | None = None, *, gap: float | None = None, tolerance: float
+    ) -> Total:
+        """Flow into the body through a face or a rectangle of it."""
+        return self._total(
+            lambda solution: solution.face_total(face, rectangle, gap=gap, tolerance=tolerance), whole=rectangle is None
+        )
+
+    def plane_total(
+        self,
+        axis: int,
+        position: float,
+        rectangle: Rectangle | None = None,
+        *,
+        gap: float | None = None,
+        tolerance: float,
+    ) -> Total:
+        """Flow along an axis through a plane square to it or a rectangle of that plane."""
+        return self._total(
+            lambda solution: solution.plane_total(axis, position, rectangle, gap=gap, tolerance=tolerance),
+            whole=rectangle is None,
+        )
+
+    def _total(self, ask: Callable[[Solution], Total], *, whole: bool) -> Total:
+        totals = [ask(solution) for solution in self._here.solutions]
+        gaps = [total.with_gap for total in totals if total.with_gap is not None]
+        with_gap = change_of(gaps) if len(gaps) == LEVELS else None
+        values = [
+            Bounded(total.value, total.error_bound)
+            for total in totals
+            if total.value is not None and total.error_bound is not None
+        ]
+        if len(values) < LEVELS:
+            return replace(totals[0], with_gap=with_gap)
+        # Through a whole face or section a flow is as regular as those of the pads.
+        found = self._ladder.limit(values) if whole else change_of(values)
+        return replace(totals[0], value=found.value, error_bound=found.error_bound, with_gap=with_gap)
+
+    def balance(self, *, gap: float | None = None, tolerance: float) -> Balance:
+        """Inflow of every face, generation, and what is left over; the last of the finest panels alone."""
+        books = self._here.solutions[0].balance(gap=gap, tolerance=tolerance)
+        inflow = {face: self.face_total(face, gap=gap, tolerance=tolerance) for face in books.inflow}
+        return replace(books, inflow=inflow)
+
+    def certificate(self, points: FloatArray, error_bound: float, *, tolerance: float) -> Certificate:
+        """What stands behind an answer with that bound: both representations of the field of the finest panels."""
+        return self._here.solutions[0].certificate(points, error_bound, tolerance=SHARE * tolerance)
+
+    def estimate_grid(self, shape: tuple[int, int, int], *, tolerance: float, with_flux: bool = False) -> Estimate:
+        """Cost of a field on a grid, at the present refinement."""
+        return _together(
+            solution.estimate_grid(shape, tolerance=SHARE * tolerance, with_flux=with_flux)
+            for solution in self._here.solutions
+        )
+
+    def estimate_points(self, count: int, *, tolerance: float, with_flux: bool = False) -> Estimate:
+        """Cost of a field at points, at the present refinement."""
+        return _together(
+            solution.estimate_points(count, tolerance=SHARE * tolerance, with_flux=with_flux)
+            for solution in self._here.solutions
+        )
+
+
+def _over(bound: float, wanted: float) -> float:
+    """How many times too wide a bound is."""
+    return bound / wanted if wanted > 0.0 else math.inf if bound > 0.0 else 0.0
+
+
+def _together(estimates: Iterable[Estimate]) -> Estimate:
+    kept = list(estimates)
+    return Estimate(sum(some.multiplications for some in kept), max(some.bytes for some in kept))
+
+
+def _places_on(body: Body, spot: Spot, points: FloatArray) -> tuple[NDArray[np.bool_], NDArray[np.bool_]]:
+    """Which points are on a spot, and which of them are not on its border, or where that is the border of the body."""
+    first, second = axes_along(spot.face)
+    on_face = points[:, axis_of(spot.face)] == body.end_of(spot.face)
+    on_it, inside = on_face.copy(), on_face.copy()
+    ends = ((spot.where.p_low, spot.where.p_high), (spot.where.q_low, spot.where.q_high))
+    for axis, (low, high) in zip((first, second), ends, strict=True):
+        place = points[:, axis]
+        on_it &= (place >= low) & (place <= high)
+        inside &= ((place > low) | (place == body.begins[axis])) & ((place < high) | (place == body.size[axis]))
+    return on_it, inside & on_it
+
+
+def _lies_in(rectangle: Rectangle, other: Rectangle) -> bool:
+    return (
+        other.p_low <= rectangle.p_low
+        and rectangle.p_high <= other.p_high
+        and other.q_low <= rectangle.q_low
+        and rectangle.q_high <= other.q_high
+    )
+
+
+def _compared(fields: Sequence[Field]) -> Field:
+    """The field of the finest panels, with the changes since coarser ones in its bounds."""
+    fine, middle, coarse = fields
+    last, before = np.abs(fine.potential - middle.potential), np.abs(middle.potential - coarse.potential)
+    bound = float(np.maximum(last, LEAST_CHANGE * before).max()) + fine.potential_bound + middle.potential_bound
+    if fine.flux is None or middle.flux is None or coarse.flux is None:
+        return replace(fine, potential_bound=bound)
+    assert fine.flux_bound is not None
+    assert middle.flux_bound is not None
+    change = np.maximum(np.abs(fine.flux - middle.flux), LEAST_CHANGE * np.abs(middle.flux - coarse.flux))
+    flux_bound = np.nan_to_num(change).max(axis=0) + fine.flux_bound + middle.flux_bound
+    return replace(fine, potential_bound=bound, flux_bound=flux_bound)

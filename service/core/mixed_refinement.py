@@ -1,0 +1,232 @@
+"""A mixed body at refinements from coarse to fine, and what their differences tell of the error.
+
+Each refinement is n panels along each axis of a spot, with n / 2 and n / 4 nested in it. Totals are stationary in the
+density, so that they err by a n^(-3) + b n^(-4) on held pads and by a n^(-2) + b n^(-3) behind films alone; these terms
+are removed (Richardson). The error left over is smaller than the last step of that; the bound is SAFETY such steps.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core.errors import NotPhysical
+from service.core.field import KeepGoing, Setting
+from service.core.mixed_base import Base, Spot, pads_of, with_faces
+from service.core.mixed_panels import (
+    Refined,
+    base_means,
+    given_total,
+    needs_balance,
+    solve_system,
+    system_of,
+    with_flows,
+)
+from service.core.problem import Body, Film, Held, HeldPad, axes_along, map_of
+from service.core.solution import Solution
+from service.core.span import span_of
+from service.core.split import lines_of, parts_of, reference_level, scale_of
+from service.core.totals import Bounded
+
+FloatArray = NDArray[np.float64]
+
+# Panels along each axis of a spot, from coarse to fine; multiples of 4.
+COUNTS = (8, 12, 16, 24, 32, 48, 64)
+
+# Refinements looked at together: all panels, half and a quarter as many along each axis.
+LEVELS = 3
+
+# Panels that grow with the power GRADING of their number are about as wide as they are far from the border, at a
+# distance r of a length L from it, with RESOLVING (L / r)^RESOLVING_POWER panels. Fewer do not see what is at r.
+RESOLVING, RESOLVING_POWER = 5.5, 0.2
+
+# Where more panels than allowed would see all, bounds are widened by the ratio with this power.
+UNRESOLVED_POWER = 3.0
+
+# Steps of the extrapolation that its error is told as. With four it would just cover a total that errs by n^(-2) where
+# n^(-3) and n^(-4) were removed.
+SAFETY = 6.0
+
+# The error is not told as less than this part of the first extrapolation, so that a step that vanishes by chance does
+# not count; nor as less than what changes would come to that go on to fall at their pace, or at the slowest.
+LEAST_STEP, PACE_SAFETY, SLOWEST_PACE = 0.1, 1.5, 1.25
+
+# A change from one refinement to the next is at least this part of the change before it: fields gain an order two.
+LEAST_CHANGE = 0.25
+
+# Part of the span to which the mean over a spot is integrated that a level is counted from.
+LEVEL_ACCURACY = 1e-12
+
+
+@dataclass(frozen=True, eq=False)
+class Refinement:
+    """The answer with `count` panels along each axis of a spot, half and a quarter as many: in that order.
+
+    refined: the flows, empty if there are no spots. solutions: the fields.
+    """
+
+    count: int
+    refined: tuple[Refined, ...]
+    solutions: tuple[Solution, ...]
+
+
+class Ladder:
+    """The refinements of a body, each computed when it is first asked for."""
+
+    def __init__(self, body: Body, base: Base, most_panels: int, keep_going: KeepGoing | None) -> None:
+        self.body, self.base = body, base
+        self._keep_going = keep_going
+        self._kept: dict[int, Refinement] = {}
+        allowed = [count for count in COUNTS if count**2 * len(base.spots) <= most_panels]
+        if not allowed:
+            raise NotPhysical(
+                f"The mixed faces have {len(base.spots)} pads and pieces of background, which take "
+                f"{COUNTS[0] ** 2 * len(base.spots)} panels at the least; {most_panels} are allowed.",
+                ("faces", base.faces[0], "pads"),
+            )
+        needed = RESOLVING * max((_detail(body, base, spot) for spot in base.spots), default=1.0) ** RESOLVING_POWER
+        enough = [count for count in allowed if count >= needed]
+        self.counts = (enough or allowed[-1:]) if base.spots else allowed[:1]
+        self._unresolved = max(needed / self.counts[0], 1.0) ** UNRESOLVED_POWER if base.spots else 1.0
+
+    def at(self, count: int) -> Refinement:
+        """The answer with so many panels along each axis of a spot."""
+        if count not in self._kept:
+            if self._keep_going is not None:
+                self._keep_going()
+            self._kept[count] = self._refinement(count)
+        return self._kept[count]
+
+    def finer(self, count: int, missed_by: float, order: float) -> int | None:
+        """The refinement to take where a bound, which falls as count^-order, is so many times too wide.
+
+        None if it is not, or none is finer.
+        """
+        finer = [other for other in self.counts if other > count]
+        if missed_by <= 1.0 or not finer:
+            return None
+        return max([finer[0], *(other for other in finer if other <= count * missed_by ** (1 / order))])
+
+    def limit(self, values: Sequence[Bounded]) -> Bounded:
+        """The limit of a total at the three levels of a refinement, the finest first."""
+        found = extrapolated(values, held=any(spot.is_held for spot in self.base.spots))
+        return replace(found, error_bound=self._unresolved * found.error_bound)
+
+    def _refinement(self, count: int) -> Refinement:
+        base = self.base
+        if not base.spots:
+            lines, reference = lines_of(base.body), reference_level(base.body)
+            parts = parts_of(base.body, reference)
+            only = Solution(Setting(base.body, lines, parts, reference, span_of(base.body, lines, parts)))
+            return Refinement(count, (), (only,) * LEVELS)
+        system = system_of(base, count)
+        means, given = base_means(base, system.grids), given_total(base) if needs_balance(base) else 0.0
+        refined, solutions = [], []
+        for level in range(LEVELS):
+            half = system.halved(means) if level < LEVELS - 1 else None
+            found = solve_system(system, [spot.level for spot in base.spots], self._given_flows, means, given)
+            found, solution = self._with_level(found)
+            refined.append(found)
+            solutions.append(solution)
+            if half is not None:
+                system, means = half
+        return Refinement(count, tuple(refined), tuple(solutions))
+
+    @cached_property
+    def _given_flows(self) -> FloatArray:
+        """The given flow of each spot, 0 for those that have none."""
+        flows = np.zeros(len(self.base.spots))
+        for number, spot in enumerate(self.base.spots):
+            pad = None if spot.pad is None else pads_of(self.body, spot.face)[spot.pad]
+            if isinstance(pad, HeldPad) and pad.flow is not None:
+                flows[number] = pad.flow
+        return flows
+
+    def _with_level(self, found: Refined) -> tuple[Refined, Solution]:
+        """The field of the flows found, with its level where they fix it only up to a constant."""
+        base = self.base
+        body = with_faces(self.body, with_flows(base, found))
+        lines, reference = lines_of(body), reference_level(body)
+        setting = Setting(body, lines, parts_of(body, reference), reference, self._span_of(found))
+        if not needs_balance(base):
+            return found, Solution(setting)
+        known = [number for number, spot in enumerate(base.spots) if spot.level is not None]
+        number = known[0] if known else 0
+        spot = base.spots[number]
+        mean = Solution(setting).mean(spot.face, spot.where, tolerance=LEVEL_ACCURACY * setting.span).value
+        level = found.levels[number] - float(found.flows[number].sum()) / (spot.area * spot.excess)
+        if known:
+            return found, Solution(replace(setting, reference=level - mean))
+        return replace(found, levels=found.levels + (mean - level)), Solution(setting)
+
+    def _span_of(self, found: Refined) -> float:
+        """Range of all levels, or what flows and sources raise, whichever is larger."""
+        levels = list(found.levels)
+        films = [condition for condition in self.base.body.faces.values() if isinstance(condition, Held | Film)]
+        for condition in films:
+            face_map = map_of(condition)
+            assert face_map is not None
+            levels += [face_map.lowest, face_map.highest]
+        if not films and not needs_balance(self.base):
+            # Far away there is nothing.
+            levels.append(0.0)
+        return max(float(max(levels) - min(levels)), self._span_of_base)
+
+    @cached_property
+    def _span_of_base(self) -> float:
+        lines = lines_of(self.base.body)
+        return span_of(self.base.body, lines, parts_of(self.base.body, reference_level(self.base.body)))
+
+
+def _detail(body: Body, base: Base, spot: Spot) -> float:
+    """Size of a spot over the least distance at which something shows: another spot, a side or the opposite face."""
+    scales = [scale_of(body, axis) for axis in range(3)]
+    first, second = axes_along(spot.face)
+    where, size = spot.where, [0.0, 0.0]
+    near = []
+    ends = ((where.p_low, where.p_high), (where.q_low, where.q_high))
+    for index, (axis, (low, high)) in enumerate(zip((first, second), ends, strict=True)):
+        size[index] = (high - low) * scales[axis]
+        near += [(low - body.begins[axis]) * scales[axis], (body.size[axis] - high) * scales[axis]]
+    for other in base.spots:
+        if other is not spot and other.face == spot.face:
+            across = max(other.where.p_low - where.p_high, where.p_low - other.where.p_high, 0.0) * scales[first]
+            beside = max(other.where.q_low - where.q_high, where.q_low - other.where.q_high, 0.0) * scales[second]
+            near.append(math.hypot(across, beside))
+    # Square to the face a length counts sqrt(capacity / conductivity); see `lines.stack` for the capacity of a layer.
+    depth = body.size[base.axis] * scales[base.axis]
+    if body.layers:
+        layer = body.layers[0 if spot.face == "z_low" else -1]
+        depth = layer.thickness * math.sqrt(layer.conductivity[0] / body.conductivity[0] / layer.conductivity[2])
+    near.append(depth)
+    positive = [distance for distance in near if 0.0 < distance < math.inf]
+    return max(max(size) / min(positive), 1.0) if positive else 1.0
+
+
+def extrapolated(values: Sequence[Bounded], *, held: bool) -> Bounded:
+    """The limit of a total at three refinements, the finest first, each with half as many panels as the one before."""
+    order = 3 if held else 2
+    fine, middle, coarse = (value.value for value in values)
+    once = fine + (fine - middle) / (2.0**order - 1)
+    before = middle + (middle - coarse) / (2.0**order - 1)
+    twice = once + (once - before) / (2.0 ** (order + 1) - 1)
+    change = fine - middle
+    if change == 0.0:
+        return Bounded(twice, SAFETY * abs(twice - once) + 2 * max(value.error_bound for value in values))
+    # As if the changes went on to fall as they do, which panels that do not resolve a narrow gap yet show as too slow.
+    pace = max(abs((middle - coarse) / change), SLOWEST_PACE)
+    further = fine + change / (pace - 1)
+    error = max(SAFETY * abs(twice - once), LEAST_STEP * abs(once - fine), PACE_SAFETY * abs(further - twice))
+    return Bounded(twice, error + 2 * max(value.error_bound for value in values))
+
+
+def change_of(values: Sequence[Bounded]) -> Bounded:
+    """The first of the values at three refinements, which errs by what the last refinement changed at the most."""
+    fine, middle, coarse = values
+    change = max(abs(fine.value - middle.value), LEAST_CHANGE * abs(middle.value - coarse.value))
+    return Bounded(fine.value, change + fine.error_bound + middle.error_bound)
