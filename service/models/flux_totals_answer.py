@@ -14,14 +14,16 @@ from service.models.faces import FaceName
 class UnboundedCause(Model):
     """A line where held values jump, so that the flow through its surroundings has no finite total."""
 
-    kind: Literal["edge", "jump_line", "endless"] = Field(
-        description="An edge between two held faces, a jump of the value inside one, or a face without end.",
+    kind: Literal["edge", "jump_line", "endless", "endless_plane"] = Field(
+        description="An edge between two held faces, a jump of the value inside one, a face without end, or one "
+        "without end along both of its axes.",
         examples=["edge"],
     )
     line: str = Field(description="Which line.", examples=["edge x_low/z_low"])
     coefficient: float = Field(
         description="Flow gained for each factor e by which a gap along the line shrinks; unit `flow`. For a "
-        "face without end the flow per length far along it; unit `flow` per `length`.",
+        "face without end the flow per length far along it, unit `flow` per `length`, along both axes the flow per "
+        "area there; 0 where the flow through the whole grows without limit but ever more slowly.",
         examples=[812.4],
     )
     largest_jump: float = Field(
@@ -91,7 +93,7 @@ class FaceTotals(Model):
 
 
 class Balance(Model):
-    """Inflow of all faces plus generation, which a steady state makes zero."""
+    """Inflow of all faces plus generation, less what is carried off, which a steady state makes zero."""
 
     closed: bool | None = Field(
         description="Whether the sum of inflows and generation is zero within its bound; null where a face "
@@ -99,9 +101,14 @@ class Balance(Model):
         examples=[True],
     )
     generation: float | None = Field(description="Generation in the whole body; unit `flow`.", examples=[96000.0])
+    carried_off: float | None = Field(
+        description="What flows away for ever, where no axis has a far end and no face is held or has a film; unit "
+        "`flow`. null for other bodies, where nothing does.",
+        examples=[None],
+    )
     residual: float | None = Field(
-        description="Sum of inflows and generation; unit `flow`. Where held values jump, the parts that grow "
-        "without bound cancel between the faces and the sum of what is left is given.",
+        description="Sum of inflows and generation, less what is carried off; unit `flow`. Where held values jump, the "
+        "parts that grow without bound cancel between the faces and the sum of what is left is given.",
         examples=[2e-9],
     )
     error_bound: float | None = Field(

@@ -141,7 +141,7 @@ def _total(units: UnitSystem, total: Total, word: str) -> dict[str, Any]:
 
 def _unbounded_warning(total: Total, where: str) -> answers.Warning_:
     lines = ", ".join(cause.line for cause in total.causes)
-    if any(cause.kind == "endless" for cause in total.causes):
+    if any(cause.kind.startswith("endless") for cause in total.causes):
         advice = "It goes on without end; name a rectangle of it to get the flow through that."
     elif total.with_gap is not None:
         advice = "The flow through the rest, without the edge gap, is given beside it."
@@ -165,6 +165,7 @@ def _balance(units: UnitSystem, balance: Balance) -> dict[str, Any]:
     return {
         "closed": None if balance.closed is None else bool(balance.closed),
         "generation": flow(balance.generation),
+        "carried_off": flow(None if balance.carried_off is None else balance.carried_off.value),
         "residual": flow(balance.residual),
         "error_bound": flow(balance.error_bound),
         "unbounded_faces": [face for face, total in balance.inflow.items() if total.value is None],

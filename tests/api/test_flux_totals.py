@@ -132,3 +132,39 @@ async def test_plane_through_the_border_of_a_held_patch_is_null_and_has_a_flow_w
     assert plane["with_gap"]["flow"] > 0
     (warning,) = [warning for warning in answer["warnings"] if warning["where"] == "#/planes/0"]
     assert warning["message"].endswith("The flow through the rest, without the edge gap, is given beside it.")
+
+
+async def test_what_a_half_space_carries_off_closes_its_books(client: httpx.AsyncClient) -> None:
+    """A pad of 40 W on the floor of a half-space: all of it passes every plane below, and no face takes it up."""
+    pad = {"x": [-4, 4], "y": [-2, 2], "flow": 40}
+    problem = {
+        "units": {"length": "mm"},
+        "body": {"size": {"x": "infinite", "y": "infinite", "z": "semi-infinite"}, "conductivity": 2.5},
+        "faces": {"z_low": {"condition": "flux", "inflow": {"map": "patches", "background": 0, "patches": [pad]}}},
+    }
+    answer = (
+        await client.post("/v1/flux-totals", json={"problem": problem, "evaluate": {"planes": [{"z": 7}]}})
+    ).json()
+    FluxTotalsAnswer.model_validate(answer)
+    assert answer["faces"]["z_low"]["inflow"] == pytest.approx(40, rel=1e-12)
+    assert answer["planes"][0]["flow"] == pytest.approx(40, rel=1e-9)
+    balance = answer["balance"]
+    assert balance["carried_off"] == pytest.approx(40, rel=1e-9)
+    assert balance["closed"] is True
+
+
+async def test_flow_through_a_plate_without_ends_is_told_per_area(client: httpx.AsyncClient) -> None:
+    problem = {
+        "units": {"length": "mm"},
+        "body": {"size": {"x": "infinite", "y": "infinite", "z": 20}, "conductivity": 2.5},
+        "faces": {"z_low": {"condition": "held", "value": 20}, "z_high": {"condition": "flux", "inflow": 3000}},
+    }
+    answer = (await client.post("/v1/flux-totals", json={"problem": problem})).json()
+    FluxTotalsAnswer.model_validate(answer)
+    (cause,) = answer["faces"]["z_low"]["unbounded"]
+    assert cause["kind"] == "endless_plane"
+    # 3000 W/m2 is 3e-3 W on each square millimetre, and leaves below.
+    assert cause["coefficient"] == pytest.approx(-3e-3, rel=1e-9)
+    assert answer["faces"]["z_low"]["inflow"] is None
+    assert answer["balance"]["closed"] is None
+    assert any("name a rectangle" in warning["detail"] for warning in answer["warnings"])
