@@ -167,4 +167,4 @@ async def test_flow_through_a_plate_without_ends_is_told_per_area(client: httpx.
     assert cause["coefficient"] == pytest.approx(-3e-3, rel=1e-9)
     assert answer["faces"]["z_low"]["inflow"] is None
     assert answer["balance"]["closed"] is None
-    assert any("name a rectangle" in warning["detail"] for warning in answer["warnings"])
+    assert any("name a rectangle" in warning["message"] for warning in answer["warnings"])
