@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -118,6 +120,10 @@ class Solution:
     def mean(self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float) -> Bounded:
         """Mean of the potential over a face or a rectangle of it."""
         return totals.mean(self._setting, face, rectangle, tolerance)
+
+    def means(self, face: Face, rectangles: Sequence[Rectangle], *, tolerance: float) -> list[Bounded]:
+        """Means of the potential over rectangles of a face, all at once."""
+        return totals.means(self._setting, face, rectangles, tolerance)
 
     def face_total(
         self, face: Face, rectangle: Rectangle | None = None, *, gap: float | None = None, tolerance: float

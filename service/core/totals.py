@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 from service.core import map_error, time_error, time_form
 from service.core.endless import cut_off, endless_sides, far_profiles, far_setting, neighbourhood, with_interval
 from service.core.errors import NotPhysical, OutsideBody
-from service.core.field import Setting, kept_rows, step_for
+from service.core.field import Setting, far_along, kept_rows, points_at_once, step_for
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE
 from service.core.lines.places import Places
 from service.core.maps import Profiles, Rectangle
@@ -93,15 +93,27 @@ def whole_face(body: Body, axis: int) -> Rectangle:
 
 def mean(setting: Setting, face: Face, rectangle: Rectangle | None, tolerance: float) -> Bounded:
     """Mean of the potential over a face or a rectangle of it."""
+    return means(setting, face, [checked_rectangle(setting.body, axis_of(face), rectangle)], tolerance)[0]
+
+
+def means(setting: Setting, face: Face, rectangles: Sequence[Rectangle], tolerance: float) -> list[Bounded]:
+    """Means of the potential over rectangles of a face, all at once."""
     axis = axis_of(face)
-    rectangle = checked_rectangle(setting.body, axis, rectangle)
-    if endless_sides(rectangle):
-        raise NotPhysical("The mean over a side without end is not defined; name a rectangle of it.", ("rectangle",))
-    value, bound = _integral(setting, axis, setting.body.end_of(face), rectangle, VALUE, tolerance)
     first, second = axes_along(axis)
-    area = (rectangle.p_high - rectangle.p_low) * (rectangle.q_high - rectangle.q_low)
-    scale = setting.lines[first].scale * setting.lines[second].scale * area
-    return Bounded(setting.reference + value / scale, bound / scale + setting.map_error)
+    scale = setting.lines[first].scale * setting.lines[second].scale
+    found = []
+    run = points_at_once(setting)
+    for start in range(0, len(rectangles), run):
+        some = [checked_rectangle(setting.body, axis, rectangle) for rectangle in rectangles[start : start + run]]
+        if any(endless_sides(rectangle) for rectangle in some):
+            raise NotPhysical(
+                "The mean over a side without end is not defined; name a rectangle of it.", ("rectangle",)
+            )
+        values, bounds = _integrals(setting, axis, setting.body.end_of(face), some, VALUE, tolerance)
+        for rectangle, value, bound in zip(some, values, bounds, strict=True):
+            area = scale * rectangle.area
+            found.append(Bounded(setting.reference + float(value) / area, float(bound) / area + setting.map_error))
+    return found
 
 
 def plane_total(
@@ -255,7 +267,16 @@ def _flow(setting: Setting, axis: int, position: float, rectangle: Rectangle, si
     if setting.body.layers and axis != 2:
         return _flow_through_layers(setting, axis, position, rectangle, factor, tolerance)
     value, bound = _integral(setting, axis, position, rectangle, SLOPE, tolerance)
-    return Total(factor * value, abs(factor) * bound + map_error.of_flow(setting.body, axis, position, rectangle))
+    return Total(factor * value, abs(factor) * bound + _of_maps(setting, axis, position, rectangle))
+
+
+def _of_maps(setting: Setting, axis: int, position: float, rectangle: Rectangle) -> float:
+    """What the flow may be off by because maps stand for formulas; far along an endless axis nothing is left of that."""
+    for index, high in endless_sides(rectangle):
+        far = far_along(setting, axes_along(axis)[index], high=high)
+        low, top = [(rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high)][index]
+        rectangle = with_interval(rectangle, index, *((low, max(low, far)) if high else (min(far, top), top)))
+    return map_error.of_flow(setting.body, axis, position, rectangle)
 
 
 def _flow_through_layers(
@@ -272,7 +293,7 @@ def _flow_through_layers(
             piece = Rectangle(rectangle.p_low, rectangle.p_high, low, high)
             integral, error = _integral(setting, axis, position, piece, SLOPE, tolerance)
             value, bound = value + share * integral, bound + abs(share) * error
-    return Total(value, bound + map_error.of_flow(body, axis, position, rectangle))
+    return Total(value, bound + _of_maps(setting, axis, position, rectangle))
 
 
 def _goes_on(per_length: Total, name: str) -> UnboundedCause | None:
@@ -295,17 +316,25 @@ def _integral(
     setting: Setting, axis: int, position: float, rectangle: Rectangle, order: int, tolerance: float
 ) -> tuple[float, float]:
     """Integral of the potential (VALUE) or its slope (SLOPE) over a rectangle, in scaled lengths, with its bound."""
+    values, bounds = _integrals(setting, axis, position, [rectangle], order, tolerance)
+    return float(values[0]), float(bounds[0])
+
+
+def _integrals(
+    setting: Setting, axis: int, position: float, rectangles: Sequence[Rectangle], order: int, tolerance: float
+) -> tuple[FloatArray, FloatArray]:
+    """The same over several rectangles of a plane."""
     first, second = axes_along(axis)
+    ends = np.array([(where.p_low, where.p_high, where.q_low, where.q_high) for where in rectangles]).T
     places: list[Places] = [Places(np.array([position]), order)] * 3  # type: ignore[arg-type]
-    places[first] = Places(np.array([rectangle.p_low]), PRIMITIVE, np.array([rectangle.p_high]))
-    places[second] = Places(np.array([rectangle.q_low]), PRIMITIVE, np.array([rectangle.q_high]))
+    places[first], places[second] = Places(ends[0], PRIMITIVE, ends[1]), Places(ends[2], PRIMITIVE, ends[3])
     step, rows = step_for(setting, HEADROOM * tolerance), kept_rows()
-    value = bound = 0.0
+    values, bounds = np.zeros(len(rectangles)), np.zeros(len(rectangles))
     for part in setting.parts:
         integral = time_form.integrate(setting.lines, part, places, step, rows)
-        value += float(time_form.at_points(integral)[0])
-        bound += float(time_error.bound_at_points(integral)[0])
-    return value, bound
+        values = values + time_form.at_points(integral)
+        bounds = bounds + time_error.bound_at_points(integral)
+    return values, bounds
 
 
 def checked_rectangle(body: Body, axis: int, rectangle: Rectangle | None) -> Rectangle:

@@ -146,6 +146,21 @@ class VaryingSolution(Solution):
             found = extremes.find(iterated.setting, FIELD * self._in_theta(tolerance), keep_going)
         return Extremes(self._place(found.hottest, iterated), self._place(found.coldest, iterated))
 
+    def peak(
+        self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float, keep_going: KeepGoing | None = None
+    ) -> Place:
+        """The highest potential on a face or a rectangle of it."""
+        iterated = self._within(tolerance, keep_going)
+        where = totals.checked_rectangle(self._body, axis_of(face), rectangle)
+        with _In(self, tolerance, FIELD):
+            theta = FIELD * self._in_theta(tolerance)
+            found = extremes.highest_on(iterated.setting, face, where, theta, keep_going)
+        return self._place(found, iterated)
+
+    def means(self, face: Face, rectangles: Sequence[Rectangle], *, tolerance: float) -> list[Bounded]:
+        """Means of the potential over rectangles of a face."""
+        return [self.mean(face, rectangle, tolerance=tolerance) for rectangle in rectangles]
+
     def certificate(self, points: FloatArray, error_bound: float, *, tolerance: float) -> Certificate:
         """What stands behind an answer with that bound; both representations are those of theta."""
         iterated = self._within(tolerance, None)

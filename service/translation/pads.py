@@ -138,10 +138,10 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
     centres = np.array([pad.centre(problem) for pad in wanted.pads])
     at_centres = solution.field_at(centres, tolerance=tolerance, keep_going=keep_going)
     bounds = [float(at_centres.potential_bound)]
+    means = _means(solution, wanted, keep_going)
     found = []
-    for pad, centre, potential in zip(wanted.pads, centres, at_centres.potential, strict=True):
+    for pad, centre, potential, mean in zip(wanted.pads, centres, at_centres.potential, means, strict=True):
         keep_going()
-        mean = solution.mean(pad.face, pad.where, tolerance=tolerance)
         largest = solution.peak(pad.face, pad.where, tolerance=tolerance, keep_going=keep_going)
         bounds += [float(mean.error_bound), float(largest.error_bound)]
         found.append(
@@ -161,6 +161,18 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
         "warnings": answers.problem_warnings(problem, solution),
         "pads": found,
     }
+
+
+def _means(solution: Solution, wanted: PadsWanted, keep_going: KeepGoing) -> list[Bounded]:
+    """Means over all pads, those of one face at once."""
+    found: list[Bounded | None] = [None] * len(wanted.pads)
+    for face in dict.fromkeys(pad.face for pad in wanted.pads):
+        keep_going()
+        there = [index for index, pad in enumerate(wanted.pads) if pad.face == face]
+        rectangles = [wanted.pads[index].where for index in there]
+        for index, mean in zip(there, solution.means(face, rectangles, tolerance=wanted.tolerance), strict=True):
+            found[index] = mean
+    return [mean for mean in found if mean is not None]
 
 
 def _flow(units: UnitSystem, solution: Solution, pad: Pad, tolerance: float) -> dict[str, float | None]:
