@@ -327,16 +327,12 @@ class Body:
                 begins = (self.begins[first], self.begins[second])
                 face_map.check_covers(self.size[first], self.size[second], face, begins)
                 if any(face_map.curved):
-                    self._check_formula(face, condition, face_map)
+                    self._check_formula(face, condition)
 
-    def _check_formula(self, face: Face, condition: Condition, face_map: FaceMap) -> None:
-        """Where a formula is not offered: where lines do not know curved data, or where inflows balance exactly."""
-        first, second = axes_along(face)
-        through_stack = self.layers and 2 in (first, second) and face_map.curved[(first, second).index(2)]
+    def _check_formula(self, face: Face, condition: Condition) -> None:
+        """Where a formula is not offered: under a varying conductivity, and where inflows have to balance exactly."""
         reason = None
-        if through_stack:
-            reason = f"The formula on {face} varies along z, through the layers of the stack; use patches or readings."
-        elif self.law is not None:
+        if self.law is not None:
             reason = f"The formula on {face} needs a conductivity that does not vary; use patches or readings."
         elif isinstance(condition, Inflow) and not any(
             isinstance(other, Held | Film | Mixed) for other in self.faces.values()
