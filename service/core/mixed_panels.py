@@ -126,7 +126,9 @@ def solve_system(
     columns += [-np.ones(means.size)] if constant else []
     areas = np.concatenate([grid.areas for grid in system.grids])
     excess = system.spread(np.array([spot.excess for spot in spots]))
-    factor = cho_factor(system.matrix + np.diag(1 / (areas * excess)), check_finite=False, overwrite_a=True)
+    matrix = system.matrix.copy()
+    matrix.flat[:: means.size + 1] += 1 / (areas * excess)
+    factor = cho_factor(matrix, check_finite=False, overwrite_a=True)
     answers = cho_solve(factor, np.stack(columns, axis=1), check_finite=False)
     sums = np.add.reduceat(answers, system.starts[:-1], axis=0)
     # The base lets in its own share of a given flow: least (ambient - level).

@@ -50,6 +50,10 @@ EARLY = 40.0
 AFAR = 1e9
 
 
+# What is added where flows have to balance, in parts of the most negative entry.
+FAR_LEVEL = 2.0
+
+
 def graded(low: float, high: float, count: int, *, at_low: bool, at_high: bool) -> FloatArray:
     """Edges of panels from low to high, shape (count + 1,), narrowing towards the ends named; count is even.
 
@@ -245,6 +249,9 @@ def influence(lines: Sequence[Line], axis: int, factors: dict[bool, float], grid
             there = slice(starts[q], starts[q + 1])
             matrix[here, there] = _between(one, two, kernel, rows, grids[q])
             matrix[there, here] = matrix[here, there].T
+    if keeps_level(lines):
+        # Far along an endless axis the constant left out is negative without bound; with another the matrix is definite.
+        matrix += FAR_LEVEL * max(-float(matrix.min()), 0.0)
     return matrix
 
 
