@@ -362,8 +362,12 @@ class _Upward:
             return (up.value(*_plus_minus(q * z)) * down.run(q * y) + from_above) / whole
 
         def flow(y: float, z: float) -> Array:
-            from_above = down.slope(*_plus_minus(q * y)) * up.run(q * z)
-            return self.admittance[j] * (from_above - up.slope(*_plus_minus(q * z)) * down.run(q * y)) / whole
+            # What the derivative leaves of the products: m p sinh z - p m sinh y + m m (cosh z - cosh y).
+            rises = -np.exp(-q * y) * np.expm1(-2 * q * z) * down.m * up.p
+            falls = -np.exp(-q * z) * np.expm1(-2 * q * y) * down.p * up.m
+            nearer, farther = min(y, z), max(y, z)
+            apart = np.exp(-q * nearer) * np.expm1(-q * (farther - nearer)) * np.expm1(-q * (y + z)) * down.m * up.m
+            return 2 * self.admittance[j] * (rises - falls + (apart if y < z else -apart)) / whole
 
         if order == VALUE:
             return value(below, above)

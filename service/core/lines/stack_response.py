@@ -25,8 +25,9 @@ from service.core.maps import Profiles
 FloatArray = NDArray[np.float64]
 ComplexArray = NDArray[np.complex128]
 
-# Places on the parabola. The rule errs by 3e-15 of the transform's size there.
-PLACES = 16
+# Places on the parabola. The rule errs by 3e-15 of the transform's size there where that falls as s^-2, as a film lets
+# out or an interval next to a jump loses, and by less where it falls less.
+PLACES = 18
 
 # Numbers of a transform that are held at once.
 NUMBERS_AT_ONCE = 1_000_000
