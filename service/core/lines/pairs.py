@@ -43,7 +43,7 @@ _RULES = {count: np.polynomial.legendre.leggauss(count) for count in WIDEST}
 GROUP = 2.0
 
 # Kernel values that are held at once.
-VALUES_AT_ONCE = 2_000_000
+VALUES_AT_ONCE = 200_000
 
 
 @dataclass(frozen=True, eq=False)
@@ -178,11 +178,11 @@ def _block(line: Line, first: _Readings, second: _Readings, root_time: FloatArra
 
 
 def _arrived(kernel: Kernel, distance: FloatArray, root_time: FloatArray) -> FloatArray:
-    """Kernel at distances and times, 0 where no front has arrived, shape (n_times, *distance.shape)."""
+    """Kernel at distances and times, 0 where no front has arrived by the last, shape (n_times, *distance.shape)."""
     values = np.zeros((root_time.size, distance.size))
     flat = distance.ravel()
-    for row, root in zip(values, root_time, strict=True):
-        near = np.flatnonzero(flat < images.ARRIVAL * root)
-        if near.size:
-            row[near] = kernel(flat[near], np.full(near.size, root))
+    near = np.flatnonzero(flat < images.ARRIVAL * root_time[-1])
+    if near.size:
+        at = np.tile(flat[near], root_time.size)
+        values[:, near] = kernel(at, np.repeat(root_time, near.size)).reshape(root_time.size, -1)
     return values.reshape(root_time.size, *distance.shape)
