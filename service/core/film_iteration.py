@@ -453,7 +453,11 @@ def _read(data: Transformed, setting: Setting, film: FilmFace, wanted: float, ke
         axes[axis] = places
     tolerance = min(READ_OFF * wanted * min(_least_slope(data, film) / film.coefficient, 1.0), setting.span)
     grid = Grid(axes[0], axes[1], axes[2])
-    found = fields.on_grid(setting, grid, tolerance=tolerance, with_flux=False, keep_going=keep_going)
+    try:
+        found = fields.on_grid(setting, grid, tolerance=tolerance, with_flux=False, keep_going=keep_going)
+    except AccuracyNotReached as error:
+        # What can be had may do: its bound is counted below.
+        found = fields.on_grid(setting, grid, tolerance=error.bound, with_flux=False, keep_going=keep_going)
     theta = found.potential.reshape(samples[0].size, samples[1].size)
     own = _iterated(data, film, wanted).at(*samples)
     leftover = film.coefficient * (own - theta) + law.given_off(kirchhoff.potential(theta))
