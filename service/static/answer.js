@@ -82,12 +82,25 @@ export function warningsView(answers) {
 
 /** The body in a sentence, from the request. */
 export function bodySentence(problem, units) {
-  const { size, conductivity } = problem.body;
-  const sides = `${written(size.x, units.length)} \u00d7 ${written(size.y, units.length)}`;
-  const body = size.z === "semi-infinite" ? `Bar ${sides}, without end along z` : `Block ${sides} \u00d7 ${written(size.z, units.length)}`;
+  const { size, conductivity, layers } = problem.body;
+  const sources = problem.sources?.length ?? 0;
+  const inside = sources ? `; ${sources} ${sources === 1 ? "source" : "sources"} inside` : "";
+  const open = AXES.filter((axis) => typeof size[axis] === "string" && size[axis].endsWith("infinite"));
+  const sides = AXES.filter((axis) => size[axis] !== undefined && !open.includes(axis))
+    .map((axis) => (open.length ? `${written(size[axis], units.length)} along ${axis}` : written(size[axis], units.length)));
+  const without = [["infinite", "without ends along"], ["semi-infinite", "without a far end along"]];
+  const ends = without.map(([kind, words]) => [words, open.filter((axis) => size[axis] === kind)])
+    .filter(([, axes]) => axes.length).map(([words, axes]) => `${words} ${axes.join(" and ")}`);
+  if (layers) {
+    const names = layers.map(({ name, thickness }, index) => `${name ?? `layer ${index}`} ${written(thickness, units.length)}`);
+    return `Stack on ${[sides.join(open.length ? ", " : " \u00d7 "), ...ends].filter(Boolean).join(", ")}; from below ${names.join(", ")}${inside}.`;
+  }
+  const kind = open.length === 1 && size.z === "semi-infinite" ? "Bar" : open.length ? "Body" : "Block";
+  const body = kind === "Bar"
+    ? `Bar ${AXES.slice(0, 2).map((axis) => written(size[axis], units.length)).join(" \u00d7 ")}, without end along z`
+    : `${kind} ${[sides.join(open.length ? ", " : " \u00d7 "), ...ends].filter(Boolean).join(", ")}`;
   const k = typeof conductivity === "object"
     ? AXES.map((axis) => `${written(conductivity[axis], units.conductivity)} along ${axis}`).join(", ")
     : written(conductivity, units.conductivity);
-  const sources = problem.sources?.length ?? 0;
-  return `${body}; conductivity ${k}${sources ? `; ${sources} ${sources === 1 ? "source" : "sources"} inside` : ""}.`;
+  return `${body}; conductivity ${k}${inside}.`;
 }

@@ -1,5 +1,7 @@
 /** Calls of the service, and every way they fail as a sentence. */
 
+import { save } from "./elements.js";
+
 /**
  * @typedef {object} Mistake
  * @property {string} pointer place in the request
@@ -60,4 +62,14 @@ export async function ask(path, request, signal) {
     `${body.detail ?? "The service gave no reason."}${wait ? ` It asks to wait ${wait} s.` : ""}`,
     body.errors ?? [],
   );
+}
+
+/** Save another form of an answer, which the service keeps ready. @param {string} mediaType @param {string} name */
+export async function saveText(path, request, mediaType, name) {
+  const response = await fetch(path, {
+    method: "POST",
+    headers: { "Content-Type": "application/json", Accept: mediaType },
+    body: JSON.stringify(request),
+  });
+  if (response.ok) save(name, await response.text(), mediaType);
 }

@@ -1,6 +1,7 @@
 /** Building blocks of the page: elements, labelled fields with a unit and a place for a mistake. */
 
 import { pretty } from "./numbers.js";
+import { idOf } from "./typed.js";
 
 /**
  * An element with attributes, listeners (keys that begin with "on") and children.
@@ -136,6 +137,34 @@ export function longText({ id, label, value, onInput, hint, rows = 5, spoken = "
 
 function labelOf(id, label, spoken) {
   return make("label", { for: id }, spoken ? make("span", { class: "unseen" }, `${spoken}: `) : null, label);
+}
+
+/** What writes a text into a draft's part. */
+export const writer = (owner, key, changed) => (value) => {
+  owner[key] = value;
+  changed();
+};
+
+/** A small button. @param {Record<string, any>} attributes @returns {any} */
+export const button = (attributes, ...words) => make("button", { type: "button", class: "small", ...attributes }, ...words);
+
+/** From and to along some axes; the texts stand in `owner.from` and `owner.to`, one for each axis. */
+export function intervals(axes, owner, part, spoken, changed) {
+  return axes.flatMap((axis, side) =>
+    ["from", "to"].map((end) =>
+      field({
+        id: idOf(part, axis, end),
+        label: `${axis} ${end}`,
+        spoken,
+        kind: "length",
+        value: owner[end][side],
+        onInput: (value) => {
+          owner[end][side] = value;
+          changed();
+        },
+      }),
+    ),
+  );
 }
 
 /** Save a blob or text under a file name. */

@@ -24,7 +24,7 @@ export const EXAMPLES = [
         }),
       },
     },
-    view: { plane: { axis: "z", position: "5", reach: "120" }, edgeGap: "10 um" },
+    view: { plane: { axis: "z", position: "5", to: { z: "120" } }, edgeGap: "10 um" },
   },
   {
     title: "Crown brick with a hot spot (block, readings)",
@@ -74,5 +74,73 @@ export const EXAMPLES = [
       },
     },
     view: { plane: { axis: "z", position: "5" } },
+  },
+  {
+    title: "Power module of the furnace controls (stack, pads)",
+    problem: {
+      name: "Halden Reach, power module of the furnace controls",
+      potential: "temperature",
+      units: { length: "mm", potential: "degC" },
+      body: {
+        size: { x: 30, y: 20 },
+        layers: [
+          { name: "base", thickness: 3, conductivity: 390 },
+          { name: "solder", thickness: "80 um", conductivity: 57 },
+          {
+            name: "ceramic", thickness: 0.63, conductivity: { in_plane: 26, through: 24 },
+            contact_conductance_below: "400 kW/(m^2 K)",
+          },
+          { name: "copper", thickness: "20 um", conductivity: 390 },
+        ],
+      },
+      faces: {
+        x_low: insulated,
+        x_high: insulated,
+        y_low: insulated,
+        y_high: insulated,
+        z_low: { condition: "film", coefficient: "6 kW/(m^2 K)", ambient: 35 },
+        z_high: {
+          condition: "flux",
+          inflow: {
+            map: "patches",
+            background: 0,
+            patches: [
+              { name: "valve A", x: [4, 10], y: [4, 9], flow: 30 },
+              { name: "valve B", x: [10, 16], y: [4, 9], flow: 30 },
+              { name: "driver", x: [24, 30], y: [15, 20], flow: 6 },
+            ],
+          },
+        },
+      },
+    },
+    view: { plane: { axis: "y", position: "6.5" }, accuracy: { kind: "1e-6" } },
+  },
+  {
+    title: "Thermal probes on a floor slab (no sides, pads)",
+    problem: {
+      name: "Halden Reach, thermal probes on a floor slab",
+      potential: "temperature",
+      units: { length: "mm", potential: "degC", flow: "mW" },
+      body: { size: { x: "infinite", y: "infinite", z: 250 }, conductivity: "1.6 W/(m K)" },
+      faces: {
+        z_low: held("12 degC"),
+        z_high: {
+          condition: "flux",
+          inflow: {
+            map: "patches",
+            background: 0,
+            patches: [
+              { name: "heater", x: [-15, 15], y: [-15, 15], flow: "2.5 W" },
+              { name: "near probe", x: [40, 50], y: [-5, 5], flow: 0 },
+              { name: "far probe", x: [120, 130], y: [-5, 5], flow: 0 },
+            ],
+          },
+        },
+      },
+    },
+    view: {
+      plane: { axis: "z", position: "250", from: { x: "-100", y: "-100" }, to: { x: "200", y: "100" } },
+      accuracy: { kind: "1e-6" },
+    },
   },
 ];

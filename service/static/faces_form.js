@@ -1,7 +1,10 @@
 /** The part of the form for the faces: one card each, with what its condition needs. */
 
-import { emptyDatum, facesOf, idOf } from "./draft.js";
-import { choice, field, longText, make, mistakePlace } from "./elements.js";
+import { facesOf } from "./body_draft.js";
+import { button, choice, field, intervals, longText, make, mistakePlace, writer } from "./elements.js";
+import { emptyDatum, emptyPad, emptyPatch } from "./faces_draft.js";
+import { mixtureFields } from "./mixture_form.js";
+import { idOf } from "./typed.js";
 import { axesAcross, axisOf, CONDITIONS, PHYSICS, placeOf, PLACES } from "./words.js";
 
 const DATUM_CHOICES = [
@@ -14,7 +17,8 @@ const DATUM_CHOICES = [
 export function showPlaces(draft) {
   for (const place of document.querySelectorAll("[data-place]")) {
     const { place: face } = place.dataset;
-    place.textContent = ` ${PLACES[face]}, ${placeOf(face, draft.size, draft.units.length)}`;
+    const where = draft.isStack && face === "z_high" ? "top of the last layer" : placeOf(face, draft.size, draft.units.length);
+    place.textContent = ` ${PLACES[face]}, ${where}`;
   }
 }
 
@@ -44,6 +48,7 @@ function faceCard(draft, face, changed) {
     options: Object.entries(CONDITIONS),
     onChange: (value) => {
       known.condition = value;
+      if (value === "mixed" && !known.mixture.pads.length) known.mixture.pads.push(emptyPad());
       redraw();
       changed();
     },
@@ -67,6 +72,7 @@ function conditionFields(draft, face, changed) {
   const known = draft.faces[face];
   const words = PHYSICS[draft.potential];
   if (known.condition === "insulated") return [];
+  if (known.condition === "mixed") return mixtureFields(draft, face, changed);
   const meaning = {
     held: { label: words.potential, kind: "potential" },
     flux: { label: words.inflow, kind: "flux" },
@@ -74,6 +80,7 @@ function conditionFields(draft, face, changed) {
   }[known.condition];
   const fields = [];
   if (known.condition === "film") {
+    const isSideOfStack = draft.isStack && axisOf(face) !== "z";
     fields.push(
       field({
         id: idOf(face, "coefficient"),
@@ -81,10 +88,10 @@ function conditionFields(draft, face, changed) {
         spoken: face,
         kind: "film_coefficient",
         value: known.coefficient,
-        onInput: (value) => {
-          known.coefficient = value;
-          changed();
-        },
+        hint: isSideOfStack
+          ? "Where layers conduct differently, one beside each layer from below, with semicolons between, in proportion to their conductivities."
+          : undefined,
+        onInput: writer(known, "coefficient", changed),
       }),
     );
   }
@@ -114,8 +121,6 @@ function datumFields(draft, face, meaning, changed) {
   return make("div", { class: "datum-group" }, kind, rest);
 }
 
-const emptyPatch = () => ({ name: "", from: ["", ""], to: ["", ""], value: "" });
-
 function kindFields(draft, face, datum, id, meaning, changed, redraw) {
   if (datum.kind === "samples") return readingFields(draft, face, datum, id, meaning, changed);
   const value = field({
@@ -130,11 +135,8 @@ function kindFields(draft, face, datum, id, meaning, changed, redraw) {
     },
   });
   if (datum.kind === "uniform") return [value];
-  const add = make(
-    "button",
+  const add = button(
     {
-      type: "button",
-      class: "small",
       onclick: () => {
         datum.patches.push(emptyPatch());
         redraw();
@@ -156,10 +158,8 @@ function patchFields(draft, face, datum, index, id, meaning, changed, redraw) {
   const patch = datum.patches[index];
   const part = idOf(id, "patch", index);
   const spoken = `${face}, patch ${index + 1}`;
-  const remove = make(
-    "button",
+  const remove = button(
     {
-      type: "button",
       class: "small quiet",
       onclick: () => {
         datum.patches.splice(index, 1);
@@ -171,38 +171,35 @@ function patchFields(draft, face, datum, index, id, meaning, changed, redraw) {
     "Remove",
     make("span", { class: "unseen" }, ` ${spoken}`),
   );
-  const note = (key) => (value) => {
-    patch[key] = value;
-    changed();
-  };
+  const isFlow = meaning.kind === "flux";
+  const value = field({
+    id: idOf(part, "value"), label: "Value", spoken, kind: isFlow && patch.isTotal ? "flow" : meaning.kind, value: patch.value,
+    onInput: writer(patch, "value", changed),
+  });
   return make(
     "fieldset",
     { class: "patch" },
     make("legend", {}, `Patch ${index + 1}`),
-    field({ id: idOf(part, "name"), label: "Name (optional)", spoken, value: patch.name, isText: true, onInput: note("name") }),
-    field({ id: idOf(part, "value"), label: "Value", spoken, kind: meaning.kind, value: patch.value, onInput: note("value") }),
+    field({ id: idOf(part, "name"), label: "Name (optional)", spoken, value: patch.name, isText: true, onInput: writer(patch, "name", changed) }),
+    isFlow ? measureChoice(patch, part, spoken, changed, redraw) : null,
+    value,
     intervals(axesAcross(axisOf(face)), patch, part, spoken, changed),
     remove,
   );
 }
 
-/** From and to along some axes; the texts stand in `owner.from` and `owner.to`, one for each axis. */
-export function intervals(axes, owner, part, spoken, changed) {
-  return axes.flatMap((axis, side) =>
-    ["from", "to"].map((end) =>
-      field({
-        id: idOf(part, axis, end),
-        label: `${axis} ${end}`,
-        spoken,
-        kind: "length",
-        value: owner[end][side],
-        onInput: (value) => {
-          owner[end][side] = value;
-          changed();
-        },
-      }),
-    ),
-  );
+/** Whether a patch is given its flow per area or in total. */
+function measureChoice(patch, part, spoken, changed, redraw) {
+  return choice({
+    id: idOf(part, "measure"), label: "Given as", spoken, value: patch.isTotal ? "total" : "density",
+    options: [["density", "flow per area"], ["total", "total flow"]],
+    onChange: (value) => {
+      patch.isTotal = value === "total";
+      redraw();
+      changed();
+      document.getElementById(idOf(part, "measure"))?.focus();
+    },
+  });
 }
 
 function readingFields(draft, face, datum, id, meaning, changed) {

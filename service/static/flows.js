@@ -4,30 +4,47 @@ import { make, scrolled, verdict } from "./elements.js";
 import { bounded, brief, pretty, rough, shown, written } from "./numbers.js";
 import { CONDITIONS, PLACES } from "./words.js";
 
+/** A film coefficient, or the lowest and highest beside layers. */
+const coefficient = ({ coefficient: given }, units) => [given].flat().map((one) => written(one, units.film_coefficient)).join(", ");
+
 /** What is known on a face, in a few words, from the request. */
 function knownOf(face, units) {
   const { condition } = face;
   const datum = (value, unit) => {
     if (typeof value !== "object") return written(value, unit);
     if (value.map === "samples") return "by readings";
+    if (value.map === "formula") return "by a formula";
     const count = value.patches.length;
     return `${written(value.background, unit)} with ${count} ${count === 1 ? "patch" : "patches"}`;
   };
   if (condition === "held") return `held, ${datum(face.value, units.potential)}`;
   if (condition === "flux") return `inflow, ${datum(face.inflow, units.flux)}`;
   if (condition === "film") {
-    return `film, ${written(face.coefficient, units.film_coefficient)} to ${datum(face.ambient, units.potential)}`;
+    return `film, ${coefficient(face, units)} to ${datum(face.ambient, units.potential)}`;
+  }
+  if (condition === "mixed") {
+    const count = face.pads.length;
+    return `${count} ${count === 1 ? "pad" : "pads"} on ${knownOf(face.background, units)}`;
   }
   return CONDITIONS.insulated;
 }
 
-/** What is known on a patch. */
+/** What is known on a patch or pad. */
 function patchKnown({ face, patch, rectangle }, problem, units) {
-  const condition = problem.faces[face];
-  const datum = condition.value ?? condition.inflow ?? condition.ambient;
-  const unit = condition.condition === "flux" ? units.flux : units.potential;
-  const ends = Object.entries(rectangle).map(([axis, [from, to]]) => `${axis} ${brief(from)} to ${to === null ? "the end" : brief(to)}`);
-  return `${written(datum.patches[patch].value, unit)}; ${ends.join(", ")} ${pretty(units.length)}`;
+  const ends = Object.entries(rectangle).map(([axis, [from, to]]) => `${axis} ${from === null ? "without end" : brief(from)} to ${to === null ? "the end" : brief(to)}`);
+  return `${patchData(problem.faces[face], patch, units)}; ${ends.join(", ")} ${pretty(units.length)}`;
+}
+
+function patchData(known, index, units) {
+  if (known.condition === "mixed") {
+    const pad = known.pads[index];
+    if (pad.condition === "film") return `film, ${coefficient(pad, units)} to ${written(pad.ambient, units.potential)}`;
+    return pad.flow === undefined ? `held, ${written(pad.value, units.potential)}` : `held, ${written(pad.flow, units.flow)} given`;
+  }
+  const datum = known.value ?? known.inflow ?? known.ambient;
+  const patch = datum.patches[index];
+  if (patch.flow !== undefined) return `${written(patch.flow, units.flow)} in all`;
+  return written(patch.value, known.condition === "flux" ? units.flux : units.potential);
 }
 
 /** One row of the table for each total, with its name for the reasons below. */
@@ -87,7 +104,7 @@ function numberCell(value, bound) {
 function reasonsView(rows, units, hasGap) {
   const open = rows.filter(({ total }) => total.unbounded);
   if (!open.length) return [];
-  const jumps = open.some(({ total }) => total.unbounded.some(({ kind }) => kind !== "endless"));
+  const jumps = open.some(({ total }) => total.unbounded.some(({ kind }) => !kind.startsWith("endless")));
   return [
     make("h3", {}, "Why some flows have no finite value"),
     make("ul", { class: "reasons" }, open.map(({ name, place, total, kind }) => make("li", {},
@@ -104,10 +121,13 @@ function reasonsView(rows, units, hasGap) {
 function reasonOf(causes, units, ways) {
   const flow = pretty(units.flow);
   const digits = (value) => brief(Number(Math.abs(value).toPrecision(4)));
-  const endless = causes.filter(({ kind }) => kind === "endless").map(({ coefficient }) =>
-    `It goes on without end; far along the bar ${digits(coefficient)} ${flow} `
-    + `${coefficient >= 0 ? ways[0] : ways[1]} through each ${pretty(units.length)} of its length.`);
-  const jumps = causes.filter(({ kind }) => kind !== "endless");
+  const endless = causes.filter(({ kind }) => kind.startsWith("endless")).map(({ kind, coefficient }) => {
+    if (!coefficient) return "It goes on without end, and the flow through it grows without limit, ever more slowly.";
+    const each = kind === "endless" ? `${pretty(units.length)} of its length` : `square ${pretty(units.length)}`;
+    return `It goes on without end; far along ${digits(coefficient)} ${flow} `
+      + `${coefficient >= 0 ? ways[0] : ways[1]} through each ${each}.`;
+  });
+  const jumps = causes.filter(({ kind }) => !kind.startsWith("endless"));
   if (!jumps.length) return endless.join(" ");
   const lines = jumps.map(({ line }) => line.replace(/^line /, ""));
   const most = Math.max(...jumps.map(({ largest_jump: jump }) => jump));
@@ -118,13 +138,13 @@ function reasonOf(causes, units, ways) {
 }
 
 function balanceView({ balance, units }) {
-  const { closed, generation, residual, error_bound: bound, unbounded_faces: open } = balance;
+  const { closed, generation, carried_off: carriedOff, residual, error_bound: bound, unbounded_faces: open } = balance;
   const unit = pretty(units.flow);
   const inside = generation ? ` ${shown(generation)} ${unit} are generated inside.` : "";
   if (closed === null) {
     return verdict("open", "No balance", `Faces without end have no finite inflow (${open.join(", ")}), so there is nothing to add up.${inside}`);
   }
-  const sum = `Inflows and generation add up to ${rough(residual)} ${unit}; the bounds allow ${bounded(bound)} ${unit}.`;
+  const sum = `Inflows and generation${carriedOff === null ? "" : `, less the ${shown(carriedOff)} ${unit} that flow away for ever,`} add up to ${rough(residual)} ${unit}; the bounds allow ${bounded(bound)} ${unit}.`;
   const rest = open.length ? " The parts that grow without limit cancel between the faces." : "";
   return closed
     ? verdict("good", "Balance closed", `${sum}${rest}${inside}`)

@@ -1,8 +1,11 @@
 /** The form: body, faces, sources, and what is to be shown. Every part writes into the draft it is given. */
 
-import { idOf } from "./draft.js";
-import { choice, field, make } from "./elements.js";
-import { faceCards, intervals } from "./faces_form.js";
+import { endsOf } from "./body_draft.js";
+import { bodyFields } from "./body_form.js";
+import { isSection } from "./draft.js";
+import { choice, field, intervals, make, writer } from "./elements.js";
+import { faceCards } from "./faces_form.js";
+import { idOf } from "./typed.js";
 import { AXES, axesAcross, LENGTH_UNITS, PHYSICS, UNIT_LABELS } from "./words.js";
 
 /**
@@ -26,73 +29,6 @@ export function drawForm(draft, changed, drawn) {
     drawn();
   }
   redraw(...Object.keys(parts));
-}
-
-/** Writes a text of the draft. */
-const writer = (owner, key, changed) => (value) => {
-  owner[key] = value;
-  changed();
-};
-
-function bodyFields(draft, changed, redraw) {
-  const size = (axis) =>
-    field({
-      id: idOf("size", axis), label: `Length ${axis}`, kind: "length", value: draft.size[axis],
-      onInput: writer(draft.size, axis, changed),
-    });
-  const words = PHYSICS[draft.potential];
-  const conductivity = (key, label) =>
-    field({
-      id: idOf("conductivity", key), label, kind: "conductivity", value: draft.conductivity[key],
-      spoken: words.conductivity, onInput: writer(draft.conductivity, key, changed),
-    });
-  return [
-    field({
-      id: "name", label: "Name (optional)", value: draft.name, isText: true, extraClass: "whole",
-      onInput: writer(draft, "name", changed),
-    }),
-    choice({
-      id: "potential", label: "Physics", value: draft.potential,
-      options: Object.entries(PHYSICS).map(([key, { name }]) => [key, name]),
-      onChange: (value) => {
-        draft.potential = value;
-        Object.assign(draft.units, PHYSICS[value].units);
-        changed();
-        redraw("units", "faces", "sources", "view", "body");
-        document.getElementById("potential").focus();
-      },
-    }),
-    choice({
-      id: "body-kind", label: "Body", value: draft.isBar ? "bar" : "block",
-      options: [["block", "block, ends at z"], ["bar", "bar, no far end along z"]],
-      onChange: (value) => {
-        draft.isBar = value === "bar";
-        changed();
-        redraw("body", "faces", "view");
-        document.getElementById("body-kind").focus();
-      },
-    }),
-    make(
-      "div", { class: "triple" }, size("x"), size("y"),
-      draft.isBar ? make("p", { class: "endless", id: "endless" }, make("span", {}, "Length z"), "without end") : size("z"),
-    ),
-    choice({
-      id: "conductivity-kind", label: words.conductivity, value: draft.isSame ? "same" : "each", extraClass: "whole",
-      options: [["same", "the same along all axes"], ["each", "one along each axis"]],
-      onChange: (value) => {
-        draft.isSame = value === "same";
-        const all = draft.conductivity;
-        if (draft.isSame) all.all ||= all.x;
-        else for (const axis of AXES) all[axis] ||= all.all;
-        changed();
-        redraw("body");
-        document.getElementById("conductivity-kind").focus();
-      },
-    }),
-    draft.isSame
-      ? conductivity("all", "Along all axes")
-      : make("div", { class: "triple" }, AXES.map((axis) => conductivity(axis, `Along ${axis}`))),
-  ];
 }
 
 function unitFields(draft, changed) {
@@ -165,7 +101,11 @@ function sourceFields(draft, changed, redraw) {
 
 function viewFields(draft, changed, redraw) {
   const { plane, accuracy } = draft;
-  const showsOpenEnd = draft.isBar && plane.axis !== "z";
+  const open = axesAcross(plane.axis).filter((axis) => endsOf(draft, axis) !== "finite");
+  const reach = (axis, end, label) =>
+    field({
+      id: idOf("plane", end, axis), label, kind: "length", value: plane[end][axis], onInput: writer(plane[end], axis, changed),
+    });
   return [
     choice({
       id: "plane-axis", label: "Plane square to", value: plane.axis,
@@ -181,12 +121,11 @@ function viewFields(draft, changed, redraw) {
       id: "plane-position", label: `at ${plane.axis} =`, kind: "length", value: plane.position, spoken: "Plane",
       onInput: writer(plane, "position", changed),
     }),
-    showsOpenEnd
-      ? field({
-          id: "plane-reach", label: "Draw the bar up to z =", kind: "length", value: plane.reach,
-          onInput: writer(plane, "reach", changed),
-        })
-      : null,
+    ...open.flatMap((axis) => [
+      endsOf(draft, axis) === "infinite" ? reach(axis, "from", `Draw from ${axis} =`) : null,
+      reach(axis, "to", `Draw up to ${axis} =`),
+    ]),
+    isSection(draft) ? make("p", { class: "hint whole" }, "Every layer is drawn as thick as the others can bear, so that thin ones are seen.") : null,
     choice({
       id: "plane-count", label: "Places along each side", value: plane.count,
       options: [["41", "41 (quick)"], ["81", "81"], ["161", "161 (fine)"]],

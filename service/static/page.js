@@ -13,9 +13,9 @@ import { drawSketch } from "./sketch.js";
 import { differenceUnit } from "./words.js";
 
 const part = (name) => document.getElementById(name);
-const CALLS = { fields: "/v1/fields", flows: "/v1/flux-totals" };
+const CALLS = { fields: "/v1/fields", flows: "/v1/flux-totals", pads: "/v1/pads", resistances: "/v1/resistances" };
 /** Drafts of another shape are not read. */
-const KEPT_AS = "stillfield draft 1";
+const KEPT_AS = "stillfield draft 2";
 
 let draft = kept() ?? exampleDraft(0);
 /** The request under way. @type {AbortController|null} */
@@ -66,9 +66,12 @@ function sketch() {
 }
 
 function showRequest() {
-  const which = part("request-kind").value;
-  part("request-address").textContent = `POST ${addressOf(CALLS[which])}`;
-  part("request-text").textContent = JSON.stringify(requestsOf(draft)[which], null, 2);
+  const requests = requestsOf(draft);
+  const select = part("request-kind");
+  for (const option of select.options) option.disabled = !requests[option.value];
+  if (!requests[select.value]) select.value = "fields";
+  part("request-address").textContent = `POST ${addressOf(CALLS[select.value])}`;
+  part("request-text").textContent = JSON.stringify(requests[select.value], null, 2);
 }
 
 function say(sentence) {
@@ -100,25 +103,29 @@ async function compute() {
   say("Computing.");
   // Meanwhile the picture's script may come; if it fails, the picture says so.
   plotting().catch(() => {});
-  const { fields, flows, places } = requestsOf(draft);
+  const requests = requestsOf(draft);
+  const { places } = requests;
   const { axis } = draft.plane;
-  const outcomes = await Promise.allSettled([
-    ask(CALLS.fields, fields, controller.signal),
-    ask(CALLS.flows, flows, controller.signal),
-  ]);
+  const outcomes = await Promise.allSettled(
+    Object.entries(CALLS).map(([name, path]) => (requests[name] ? ask(path, requests[name], controller.signal) : null)),
+  );
   if (running !== controller) return;
   running = null;
   setBusy(false);
-  const failures = outcomes.flatMap((outcome) => (outcome.status === "rejected" ? [outcome.reason] : []));
+  // A body may have a field and yet no resistances, where no flow finds a way out; that is told in their place.
+  const failures = outcomes.slice(0, 3).flatMap((outcome) => (outcome.status === "rejected" ? [outcome.reason] : []));
   if (failures.length) {
     const known = failures.map((failure) => (failure instanceof Failure ? failure : new Failure("Something failed in this page", "Load it again; what you have typed is kept.")));
     showMistakes(known, places);
     say(`Not computed: ${known[0].title}.`);
     return;
   }
-  const [fieldsAnswer, flowsAnswer] = outcomes.map((outcome) => outcome.value);
+  const [fields, flows, pads, resistances] = outcomes.map((outcome) => outcome.value ?? outcome.reason);
   part("stale").hidden = true;
-  await showAnswer({ fields: fieldsAnswer, flows: flowsAnswer, problem: fields.problem, evaluate: flows.evaluate, axis });
+  await showAnswer({
+    fields, flows, pads, resistances, askedResistances: requests.resistances, problem: requests.fields.problem,
+    evaluate: requests.flows.evaluate, axis,
+  });
   say("Computed. The answer is shown.");
   bringIntoView();
 }

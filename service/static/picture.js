@@ -2,9 +2,10 @@
 
 import { make } from "./elements.js";
 import { bounded, brief, evenStep, pretty } from "./numbers.js";
+import { heightsDrawn } from "./section.js";
 
-const INK = "#1b2730";
-const FONT = { family: "system-ui, 'Liberation Sans', 'DejaVu Sans', sans-serif", size: 13, color: INK };
+export const INK = "#1b2730";
+export const FONT = { family: "system-ui, 'Liberation Sans', 'DejaVu Sans', sans-serif", size: 13, color: INK };
 const HIGHEST_PICTURE = 500;
 /** Beyond this a picture with equal axes would be a hairline. */
 const LONGEST_RATIO = 10;
@@ -36,6 +37,7 @@ export function levelsOf(plane) {
 
 /** @param {import("./plane.js").PlaneData} plane */
 export function hasEqualAxes(plane) {
+  if (plane.layers) return false;
   const wide = plane.columns.at(-1) - plane.columns[0];
   const high = plane.rows.at(-1) - plane.rows[0];
   return Math.max(wide / high, high / wide) <= LONGEST_RATIO;
@@ -67,18 +69,26 @@ function figureOf(plane, words, units, marks, width) {
   bar.title.side = isNarrow ? "top" : "right";
   // Above a lying bar the title would touch it.
   if (isNarrow) bar.title.text += "<br> ";
-  const places = { x: plane.columns, y: plane.rows, z: plane.values };
-  const heat = {
-    type: "heatmap", ...places, zsmooth: "best", colorscale: stops, zmin: plane.lowest, zmax: plane.highest,
-    colorbar: { ...bar, ...barAt },
-    hovertemplate: `${plane.across} = %{x:.5~g} ${pretty(units.length)}<br>${plane.up} = %{y:.5~g} ${pretty(units.length)}`
-      + `<br><b>%{z:.7~g} ${pretty(units.potential)}</b><extra></extra>`,
-  };
-  const lines = levels && {
-    type: "contour", ...places, autocontour: false, showscale: false, hoverinfo: "skip",
-    contours: { coloring: "none", showlabels: true, labelfont: { ...FONT, size: 12 }, start: levels.start, end: levels.end, size: levels.step },
-    line: { color: INK, width: 0.9, smoothing: 0.6 },
-  };
+  const heights = plane.layers ? heightsDrawn(plane.layers) : null;
+  const data = (plane.layers ?? [plane]).flatMap((piece, index) => {
+    const places = { x: piece.columns, y: heights ? heights.rows[index] : piece.rows, z: piece.values };
+    const heat = {
+      type: "heatmap", ...places, zsmooth: "best", colorscale: stops, zmin: plane.lowest, zmax: plane.highest,
+      customdata: piece.rows.map((height) => piece.columns.map(() => height)),
+      ...(index ? { showscale: false } : { colorbar: { ...bar, ...barAt } }),
+      hovertemplate: `${plane.across} = %{x:.5~g} ${pretty(units.length)}<br>${plane.up} = %{customdata:.5~g} ${pretty(units.length)}`
+        + `<br><b>%{z:.7~g} ${pretty(units.potential)}</b><extra>${piece.name ?? ""}</extra>`,
+    };
+    const lines = levels && {
+      type: "contour", ...places, autocontour: false, showscale: false, hoverinfo: "skip",
+      contours: {
+        coloring: "none", showlabels: !heights || heights.thicknesses[index] > 0.25, labelfont: { ...FONT, size: 12 },
+        start: levels.start, end: levels.end, size: levels.step,
+      },
+      line: { color: INK, width: 0.9, smoothing: 0.6 },
+    };
+    return lines ? [heat, lines] : [heat];
+  });
   const axis = (name) => ({
     title: { text: `${name}, ${pretty(units.length)}`, font: FONT, standoff: 8 }, tickfont: FONT, zeroline: false,
     showgrid: false, ticks: "outside", ticklen: 5, tickcolor: INK, linecolor: INK, mirror: true, showline: true,
@@ -87,11 +97,17 @@ function figureOf(plane, words, units, marks, width) {
   const layout = {
     ...sizes(plane, width, isNarrow), font: FONT, paper_bgcolor: "rgba(0,0,0,0)", plot_bgcolor: "#fffefa",
     xaxis: { ...axis(plane.across), range: [plane.columns[0], plane.columns.at(-1)], ...(isEqual ? { constrain: "domain" } : {}) },
-    yaxis: { ...axis(plane.up), range: [plane.rows[0], plane.rows.at(-1)], ...(isEqual ? { scaleanchor: "x", constrain: "domain" } : {}) },
+    yaxis: {
+      ...axis(plane.up), range: [plane.rows[0], plane.rows.at(-1)], ...(isEqual ? { scaleanchor: "x", constrain: "domain" } : {}),
+      ...(heights ? heights.axis : {}),
+    },
+    shapes: heights ? heights.lines(plane.layers, INK) : [],
+    annotations: heights ? heights.names(plane.layers, FONT) : [],
     hoverlabel: { bgcolor: "#fffefa", bordercolor: INK, font: FONT },
     showlegend: false, dragmode: false,
   };
-  return { data: [heat, ...(lines ? [lines] : []), ...markTraces(marks)], layout };
+  const shownMarks = heights ? marks.map((mark) => ({ ...mark, y: heights.at(mark.y) })) : marks;
+  return { data: [...data, ...markTraces(shownMarks)], layout };
 }
 
 /** Hottest and coldest place by their shape, not by colour. */

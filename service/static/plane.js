@@ -15,12 +15,23 @@ import { brief, pretty, shown } from "./numbers.js";
  * @property {number} lowest
  * @property {number} highest
  * @property {number} bound
+ * @property {any[]} [layers] the planes of the layers of a stack, where this one stands for all of them
  */
 
 /** z is drawn to the right where it is in the plane, as in the sketch. @returns {PlaneData} */
 export function planeOf(answer, axis) {
   const [grid] = answer.grids;
   const [across, up] = { x: ["z", "y"], y: ["z", "x"], z: ["x", "y"] }[axis];
+  return planeOfGrid(grid, axis, across, up);
+}
+
+/**
+ * The section through a stack, one plane for each layer from below: z is drawn upwards, as layers lie.
+ * @returns {PlaneData[]}
+ */
+export const layersOf = (answer, axis) => answer.grids.map((grid) => planeOfGrid(grid, axis, axis === "x" ? "y" : "x", "z"));
+
+function planeOfGrid(grid, axis, across, up) {
   const columns = grid.axes[across];
   const rows = grid.axes[up];
   const at = (row, column) => {
@@ -28,14 +39,25 @@ export function planeOf(answer, axis) {
     return grid.potential[index.x][index.y][index.z];
   };
   const values = rows.map((_, row) => columns.map((__, column) => at(row, column)));
-  const all = values.flat();
-  return {
-    axis, position: grid.axes[axis][0], across, up, columns, rows, values,
-    lowest: all.reduce((a, b) => Math.min(a, b)),
-    highest: all.reduce((a, b) => Math.max(a, b)),
-    bound: grid.error_bound,
-  };
+  return { axis, position: grid.axes[axis][0], across, up, columns, rows, values, ...rangeOf(values.flat()), bound: grid.error_bound };
 }
+
+const rangeOf = (all) => ({ lowest: all.reduce((a, b) => Math.min(a, b)), highest: all.reduce((a, b) => Math.max(a, b)) });
+
+/**
+ * One plane that stands for all layers: their rows one above the other, both sides of each interface among them.
+ * @param {PlaneData[]} layers @param {{name: string, hasContact: boolean}[]} described
+ * @returns {PlaneData & {layers: (PlaneData & {name: string, hasContact: boolean})[]}}
+ */
+export const joined = (layers, described) => ({
+  ...layers[0],
+  layers: layers.map((layer, index) => ({ ...layer, ...described[index] })),
+  rows: layers.flatMap(({ rows }) => rows),
+  values: layers.flatMap(({ values }) => values),
+  lowest: Math.min(...layers.map(({ lowest }) => lowest)),
+  highest: Math.max(...layers.map(({ highest }) => highest)),
+  bound: Math.max(...layers.map(({ bound }) => bound)),
+});
 
 /** Every so many indices, both ends among them. */
 function thinned(count, most) {

@@ -1,11 +1,14 @@
 /** Fills the answer side of the page: picture, extremes, flows, certificate, warnings. */
 
 import { bodySentence, certificateView, extremesView, warningsView } from "./answer.js";
-import { make, scrolled } from "./elements.js";
+import { saveText } from "./calls.js";
+import { make, scrolled, verdict } from "./elements.js";
 import { flowsView } from "./flows.js";
 import { bounded, brief, pretty } from "./numbers.js";
 import { drawPicture, hasEqualAxes, levelsOf, marksOf, savePicture } from "./picture.js";
-import { planeOf, planeTable, savePlane } from "./plane.js";
+import { padsView } from "./pads.js";
+import { joined, layersOf, planeOf, planeTable, savePlane } from "./plane.js";
+import { resistancesView } from "./resistances.js";
 import { PHYSICS } from "./words.js";
 
 const part = (name) => document.getElementById(name);
@@ -14,6 +17,9 @@ const part = (name) => document.getElementById(name);
  * @typedef {object} Outcome
  * @property {any} fields answer of POST /v1/fields
  * @property {any} flows answer of POST /v1/flux-totals
+ * @property {any} pads answer of POST /v1/pads, null where there are no pads
+ * @property {any} resistances answer of POST /v1/resistances, or the failure of it, or null
+ * @property {any} askedResistances its request
  * @property {any} problem as it was sent
  * @property {any} evaluate what was asked of the flows
  * @property {string} axis the plane shown is square to
@@ -28,10 +34,10 @@ export const savePictureShown = () => saveShown.picture();
 export const saveValuesShown = () => saveShown.values();
 
 /** @param {Outcome} outcome */
-export async function showAnswer({ fields, flows, problem, evaluate, axis }) {
+export async function showAnswer({ fields, flows, pads, resistances, askedResistances, problem, evaluate, axis }) {
   const words = PHYSICS[fields.potential];
   const { units } = fields;
-  const plane = planeOf(fields, axis);
+  const plane = planeShown(fields, problem, axis);
   const marks = marksOf(plane, fields.extremes, words);
 
   part("nothing-yet").hidden = true;
@@ -46,7 +52,9 @@ export async function showAnswer({ fields, flows, problem, evaluate, axis }) {
   part("extremes").replaceChildren(extremesView(fields, words));
   part("flows").replaceChildren(...flowsView(flows, problem, evaluate.edge_gap, words));
   part("certificate").replaceChildren(...certificateView(fields, plane));
-  part("warnings").replaceChildren(warningsView([fields, flows]));
+  showPads(pads, words);
+  showResistances(resistances, askedResistances, words);
+  part("warnings").replaceChildren(warningsView([fields, flows, pads, resistances].filter((answer) => answer?.warnings)));
 
   const sketch = part("sketch").cloneNode(true);
   sketch.removeAttribute("id");
@@ -60,6 +68,33 @@ export async function showAnswer({ fields, flows, problem, evaluate, axis }) {
     values: () => savePlane(plane, words, units),
   };
   await redraw();
+}
+
+/** The plane, or the section through a stack as one plane of many layers. */
+function planeShown(fields, problem, axis) {
+  const { layers } = problem.body;
+  if (!layers || axis === "z") return planeOf(fields, axis);
+  const described = layers.map(({ name, contact_conductance_below: contact }, index) => ({
+    name: name ?? `layer ${index}`, hasContact: contact !== undefined,
+  }));
+  return joined(layersOf(fields, axis), described);
+}
+
+function showPads(pads, words) {
+  part("pads-sheet").hidden = !pads;
+  if (pads) part("pads").replaceChildren(padsView(pads, words));
+}
+
+function showResistances(answer, asked, words) {
+  part("resistances-sheet").hidden = !answer;
+  if (!answer) return;
+  const isAnswer = Boolean(answer.mean);
+  part("resistances").replaceChildren(
+    ...(isAnswer ? resistancesView(answer, words) : [verdict("open", answer.title, answer.message)]),
+  );
+  part("resistances-tools").hidden = !isAnswer;
+  part("save-matrix").onclick = () => void saveText("/v1/resistances", asked, "text/csv", "resistances.csv");
+  part("save-resistors").onclick = () => void saveText("/v1/resistances", asked, "text/plain", "resistors.txt");
 }
 
 function noPicture() {
@@ -83,7 +118,9 @@ function caption(plane, words, units, marks) {
       ? `One ${words.line} for every ${brief(levels.step)} ${pretty(units.potential_difference)}.`
       : "The plane is uniform within the bound, so no lines are drawn.",
   ];
-  if (!hasEqualAxes(plane)) sentences.push("The axes are stretched: the plane is too long for equal ones.");
+  if (plane.layers) {
+    sentences.push("Layers are not drawn to scale along z, so that thin ones are seen. Firm lines are contacts, dotted ones perfect bonds.");
+  } else if (!hasEqualAxes(plane)) sentences.push("The axes are stretched: the plane is too long for equal ones.");
   for (const mark of marks) sentences.push(`${mark.isHighest ? "\u25b3" : "\u25bd"} ${mark.words}.`);
   return sentences.join(" ");
 }

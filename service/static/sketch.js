@@ -3,7 +3,7 @@
  * reader (a right-handed set), so that x_low is in front, z_low at the left end and y_high on top.
  */
 
-import { facesOf } from "./draft.js";
+import { endsOf, facesOf, layerName } from "./body_draft.js";
 import { draw } from "./elements.js";
 import { CONDITIONS, METRES, PLACES } from "./words.js";
 
@@ -18,19 +18,43 @@ function metres(typed, unit) {
   return length > 0 && Number.isFinite(length) ? length : null;
 }
 
-/** Lengths to draw, in no unit, and whether they keep the proportions. */
+/** Thickness of each layer in metres, null where one cannot be drawn. */
+const thicknesses = (draft) => draft.layers.map((layer) => metres(layer.thickness, draft.units.length));
+
+function lengthOf(draft, axis) {
+  if (endsOf(draft, axis) !== "finite") return null;
+  if (axis !== "z" || !draft.isStack) return metres(draft.size[axis], draft.units.length);
+  const all = thicknesses(draft);
+  return all.includes(null) ? null : all.reduce((sum, thickness) => sum + thickness, 0);
+}
+
+/** Lengths to draw, in no unit, and whether they keep the proportions. An axis without an end is drawn long. */
 function proportions(draft) {
-  const typed = ["x", "y", "z"].map((axis) =>
-    axis === "z" && draft.isBar ? null : metres(draft.size[axis], draft.units.length),
-  );
+  const axes = ["x", "y", "z"];
+  const typed = axes.map((axis) => lengthOf(draft, axis));
+  const isKnown = axes.every((axis, index) => typed[index] !== null || endsOf(draft, axis) !== "finite");
   const known = typed.filter((length) => length !== null);
-  if (known.length < (draft.isBar ? 2 : 3)) return { sides: [1, 1, 1.6], isTrue: false };
+  if (!isKnown || !known.length) return { sides: [1, 1, 1.6], isTrue: false };
   const longest = Math.max(...known);
-  const cross = Math.max(typed[0], typed[1]);
-  const all = [typed[0], typed[1], typed[2] ?? 2.2 * cross];
+  const [x, y, z] = typed;
+  const across = Math.max(x ?? 0, y ?? 0) || longest;
+  const all = [x ?? 1.2 * longest, y ?? 1.2 * longest, z ?? 2.2 * across];
   const most = Math.max(...all);
-  const sides = all.map((length) => Math.max(length / most, 0.22));
-  return { sides, isTrue: all.every((length) => length / most >= 0.22) && longest > 0 };
+  // A stack is drawn thick enough for its layers to be seen.
+  const least = [0.22, 0.22, draft.isStack ? 0.75 : 0.22];
+  const sides = all.map((length, axis) => Math.max(length / most, least[axis]));
+  return { sides, isTrue: all.every((length, axis) => length / most >= least[axis]) };
+}
+
+/** Where layers meet, in parts of the height; each is drawn thick enough to be seen. */
+function interfaces(draft) {
+  if (!draft.isStack || draft.layers.length < 2) return [];
+  const all = thicknesses(draft);
+  const most = Math.max(...all.map((thickness) => thickness ?? 1));
+  const drawn = all.map((thickness) => Math.max((thickness ?? most) / most, 0.3));
+  const height = drawn.reduce((sum, thickness) => sum + thickness, 0);
+  let sum = 0;
+  return drawn.slice(0, -1).map((thickness) => (sum += thickness / height));
 }
 
 /** Screen coordinates of a place given by fractions of the sides. */
@@ -54,7 +78,7 @@ const CORNERS = {
   z_low: [[0, 0, 0], [1, 0, 0], [1, 1, 0], [0, 1, 0]],
   z_high: [[0, 0, 1], [1, 0, 1], [1, 1, 1], [0, 1, 1]],
 };
-const SHORT = { held: "held", flux: "inflow", film: "film", insulated: "insulated" };
+const SHORT = { held: "held", flux: "inflow", film: "film", insulated: "insulated", mixed: "several" };
 const VISIBLE = ["x_low", "y_high", "z_low"];
 
 const points = (place, corners) => corners.map((corner) => place(...corner).map((v) => v.toFixed(1)).join(",")).join(" ");
@@ -65,10 +89,12 @@ function labels(place) {
   const [rightEdge] = place(0, 0.5, 1);
   const [leftEdge] = place(1, 0.5, 0);
   const [, bottom] = place(0, 0, 0.5);
+  const [front] = place(0, 0.5, 0.42);
   return {
-    x_low: { at: [place(0, 0.5, 0.42)[0], bottom + 26], to: place(0, 0.3, 0.42), anchor: "middle" },
+    x_low: { at: [front, bottom + 26], to: place(0, 0.3, 0.42), anchor: "middle" },
     x_high: { at: [place(1, 1, 0.8)[0] + 18, top - 14], to: place(1, 0.7, 0.72), anchor: "start" },
-    y_low: { at: [place(0, 0, 0.82)[0], bottom + 26], to: place(0.45, 0, 0.8), anchor: "middle" },
+    // Side by side even under a short body.
+    y_low: { at: [Math.max(place(0, 0, 0.82)[0], front + 66), bottom + 26], to: place(0.45, 0, 0.8), anchor: "middle" },
     y_high: { at: [place(1, 1, 0.22)[0], top - 14], to: place(0.5, 1, 0.3), anchor: "middle" },
     z_low: { at: [leftEdge - 14, place(0.5, 0.62, 0)[1]], to: place(0.5, 0.55, 0), anchor: "end" },
     z_high: { at: [rightEdge + 16, place(0.3, 0.5, 1)[1]], to: place(0.45, 0.5, 1), anchor: "start" },
@@ -84,7 +110,9 @@ export function drawSketch(svg, draft, current) {
   const place = projection(sides);
   const faces = facesOf(draft);
   const parts = [];
-  for (const [from, to] of edgesOf(draft.isBar, false)) parts.push(line(place(...from), place(...to), "edge unseen-edge"));
+  const cut = openEnds(draft);
+  for (const [from, to] of cutEdges(cut)) parts.push(line(place(...from), place(...to), "edge onward"));
+  for (const [from, to] of edgesOf(cut, false)) parts.push(line(place(...from), place(...to), "edge unseen-edge"));
   if (current && faces.includes(current) && !VISIBLE.includes(current)) {
     parts.push(draw("polygon", { class: "side current", points: points(place, CORNERS[current]) }));
   }
@@ -92,8 +120,10 @@ export function drawSketch(svg, draft, current) {
     const isCurrent = face === current ? " current" : "";
     parts.push(draw("polygon", { class: `side ${face}${isCurrent}`, points: points(place, CORNERS[face]) }));
   }
-  for (const [from, to] of edgesOf(draft.isBar, true)) parts.push(line(place(...from), place(...to), "edge"));
-  if (draft.isBar) parts.push(...openEnd(place));
+  for (const [from, to] of edgesOf(cut, true)) parts.push(line(place(...from), place(...to), "edge"));
+  for (const height of interfaces(draft)) parts.push(...interfaceLine(place, height));
+  for (const end of cut) parts.push(...onwards(place, end));
+  if (draft.ends.z !== "finite" && !draft.isStack) parts.push(brokenEnd(place));
   parts.push(...axes(place));
   for (const face of faces) parts.push(...label(face, labels(place)[face], draft, face === current));
   svg.setAttribute("viewBox", `0 0 ${WIDTH} ${HEIGHT}`);
@@ -105,25 +135,53 @@ export function drawSketch(svg, draft, current) {
 const line = ([x1, y1], [x2, y2], name) =>
   draw("line", { class: name, x1: x1.toFixed(1), y1: y1.toFixed(1), x2: x2.toFixed(1), y2: y2.toFixed(1) });
 
-/** Edges in sight or out of it: those that meet in the far lower corner are hidden. A bar has none at its end. */
-function edgesOf(isBar, areSeen) {
-  const corners = [0, 1].flatMap((x) => [0, 1].flatMap((y) => [0, 1].map((z) => [x, y, z])));
-  const edges = corners.flatMap((from) => [0, 1, 2]
-    .filter((axis) => from[axis] === 0)
-    .map((axis) => [from, from.map((value, index) => (index === axis ? 1 : value))]));
-  const isHidden = ([x, y, z]) => x === 1 && y === 0 && z === 1;
-  return edges
-    .filter((edge) => !(isBar && edge.every((corner) => corner[2] === 1)))
-    .filter((edge) => edge.some(isHidden) !== areSeen);
+/** Ends that the body does not have: the axis and the side, 0 or 1. @returns {[number, number][]} */
+const openEnds = (draft) => ["x", "y", "z"].flatMap((axis, index) => {
+  const ends = endsOf(draft, axis);
+  return [...(ends === "infinite" ? [[index, 0]] : []), ...(ends === "finite" ? [] : [[index, 1]])];
+});
+
+const CORNERS_OF_BODY = [0, 1].flatMap((x) => [0, 1].flatMap((y) => [0, 1].map((z) => [x, y, z])));
+const EDGES = CORNERS_OF_BODY.flatMap((from) => [0, 1, 2]
+  .filter((axis) => from[axis] === 0)
+  .map((axis) => [from, from.map((value, index) => (index === axis ? 1 : value))]));
+const isHidden = ([x, y, z]) => x === 1 && y === 0 && z === 1;
+const isCut = (edge, cut) => cut.some(([axis, side]) => edge.every((corner) => corner[axis] === side));
+
+/** Edges in sight or out of it: those that meet in the far lower corner are hidden. Open ends have none. */
+const edgesOf = (cut, areSeen) => EDGES.filter((edge) => !isCut(edge, cut) && edge.some(isHidden) !== areSeen);
+
+/** Where the drawing stops across x and y though the body does not; a bar's end is broken off by itself. */
+const cutEdges = (cut) => EDGES.filter((edge) => isCut(edge, cut.filter(([axis]) => axis !== 2)) && !edge.some(isHidden));
+
+/** At an open end the edges in sight go on dotted. */
+function onwards(place, [axis, side]) {
+  const across = [0, 1, 2].filter((other) => other !== axis);
+  const corners = [0, 1].flatMap((first) => [0, 1].map((second) => {
+    const corner = [0, 0, 0];
+    corner[axis] = side;
+    corner[across[0]] = first;
+    corner[across[1]] = second;
+    return corner;
+  }));
+  return corners.filter((corner) => !isHidden(corner)).map((corner) => {
+    const beyond = corner.map((value, index) => (index === axis ? value + (side ? 0.14 : -0.14) : value));
+    return line(place(...corner), place(...beyond), "edge onward");
+  });
 }
 
-/** A bar is broken off in a zigzag, and its long edges go on dotted. */
-function openEnd(place) {
+/** A bar is broken off in a zigzag. */
+function brokenEnd(place) {
   const outline = [[0, 0], [0, 0.2], [0, 0.4], [0, 0.6], [0, 0.8], [0, 1], [0.33, 1], [0.67, 1], [1, 1]];
   const zigzag = outline.map(([x, y], index) => place(x, y, 1 + [0, 0.025, -0.025][index === 0 || index > 7 ? 0 : 1 + (index % 2)]));
-  const onward = [[0, 0], [0, 1], [1, 1]].map(([x, y]) => line(place(x, y, 1.02), place(x, y, 1.14), "edge onward"));
-  return [draw("polyline", { class: "break", points: zigzag.map((at) => at.map((v) => v.toFixed(1)).join(",")).join(" ") }), ...onward];
+  return draw("polyline", { class: "break", points: zigzag.map((at) => at.map((v) => v.toFixed(1)).join(",")).join(" ") });
 }
+
+/** Where two layers meet, on the front and on top. */
+const interfaceLine = (place, height) => [
+  line(place(0, 0, height), place(0, 1, height), "edge interface"),
+  line(place(0, 1, height), place(1, 1, height), "edge interface"),
+];
 
 function axes(place) {
   const [x0, y0] = place(0, 0, 0);
@@ -160,6 +218,11 @@ function label(face, { at: [x, y], to, anchor }, draft, isCurrent) {
 
 function described(draft, faces) {
   const each = faces.map((face) => `${face} (${PLACES[face]}): ${CONDITIONS[draft.faces[face].condition]}`);
-  const end = draft.isBar ? " The bar goes on to the right without end." : "";
-  return `Sketch of the body: z runs to the right, y up, x to the back. ${each.join("; ")}.${end}`;
+  const ends = { x: "to the back", y: "upwards", z: "to the right" };
+  const open = Object.entries(ends).filter(([axis]) => endsOf(draft, axis) !== "finite").map(([axis, way]) => {
+    const both = endsOf(draft, axis) === "infinite" ? " and the other way" : "";
+    return ` The ${axis === "z" && !both ? "bar" : "body"} goes on ${way}${both} without end.`;
+  });
+  const layers = draft.isStack ? ` Layers from z_low: ${draft.layers.map(layerName).join(", ")}.` : "";
+  return `Sketch of the body: z runs to the right, y up, x to the back. ${each.join("; ")}.${open.join("")}${layers}`;
 }

@@ -2,7 +2,7 @@
 
 /** @typedef {"x"|"y"|"z"} Axis */
 /** @typedef {"x_low"|"x_high"|"y_low"|"y_high"|"z_low"|"z_high"} Face */
-/** @typedef {"held"|"flux"|"film"|"insulated"} Condition */
+/** @typedef {"held"|"flux"|"film"|"insulated"|"mixed"} Condition */
 
 /** @type {Axis[]} */
 export const AXES = ["x", "y", "z"];
@@ -118,6 +118,7 @@ export const CONDITIONS = {
   flux: "given inflow",
   film: "film to surroundings",
   insulated: "insulated",
+  mixed: "several conditions",
 };
 
 /** @param {Face} face @returns {Axis} */

@@ -144,7 +144,7 @@ def test_picture_is_saved_as_an_image(page: Page) -> None:
 def test_plane_along_the_bar_shows_z_to_the_right(page: Page) -> None:
     page.get_by_label("Plane square to").select_option("x")
     page.get_by_label("Plane: at x =").fill("20")
-    page.get_by_label("Draw the bar up to z =").fill("90")
+    page.get_by_label("Draw up to z =").fill("90")
     compute(page)
     expect(page.locator("#picture .xtitle")).to_have_text("z, mm")
     expect(page.locator("#picture .ytitle")).to_have_text("y, mm")
