@@ -24,6 +24,7 @@ from service.core import (
     Film,
     Held,
     Inflow,
+    Layer,
     NoSteadyState,
     NotPhysical,
     OutsideBody,
@@ -294,6 +295,46 @@ def test_four_point_probe_on_an_infinite_sheet() -> None:
     assert finite(solution.plane_total(0, 0.0, tolerance=1e-8)) == pytest.approx(1.0, abs=1e-8)
 
 
+def test_conductances_of_the_layers_of_a_sheet_add_up() -> None:
+    # Far from the contacts, in terms of the thickness and of how far what crosses between layers spreads, all layers
+    # are at one potential: ln 2 / (pi sum of k t).
+    layers = [
+        Layer(0.01, (10.0,) * 3),
+        Layer(0.002, (1.0,) * 3, contact_below=500.0),
+        Layer(0.02, (3.0,) * 3),
+    ]
+    probes = on_open_face(contact(-1.5, 0.0, 1.0), contact(1.5, 0.0, -1.0))
+    faces: dict[Face, Condition] = {"z_low": INSULATED, "z_high": Inflow(probes)}
+    sheet = Body.stack((ENDLESS, ENDLESS), layers, faces, infinite=HALF_SPACE)
+    found = voltage(solve(sheet), (-0.5, 0.0, 0.0), (0.5, 0.0, 0.032))
+    assert found * (0.1 + 0.002 + 0.06) == pytest.approx(math.log(2) / math.pi, rel=1e-9)
+
+
+@pytest.mark.parametrize("name", PLATES)
+def test_wide_plate_of_layers_of_one_material_is_the_plate_itself(name: str) -> None:
+    body = PLATES[name]
+    layers = [Layer(thickness, UNIT) for thickness in (0.3, 0.2, 0.5)]
+    stack = Body.stack((ENDLESS, ENDLESS), layers, body.faces, infinite=HALF_SPACE)
+    places = [(0.1, 0.2, 1.0), (0.5, 0.3, 0.6), (-1.0, 1.5, 0.0), (30.0, -0.5, 0.3)]
+    np.testing.assert_allclose(values(solve(stack), places), values(solve(body), places), rtol=0, atol=1e-9)
+
+
+def test_hundred_pads_add_up() -> None:
+    # More breaks along an axis than are told apart singly, against the closed form of each pad.
+    rng = np.random.default_rng(7)
+    wheres = [Rectangle(2.0 * i, 2.0 * i + 1.3, 2.0 * j, 2.0 * j + 0.9) for i in range(10) for j in range(10)]
+    flows = rng.uniform(0.5, 2.0, len(wheres))
+    solution = solve(half_space(Inflow(on_open_face(*zip(wheres, flows.tolist(), strict=True)))))
+    places = [(0.3, 0.7, 0.0), (9.7, 10.95, 1e-3), (1.6, 1.5, 0.0), (1e4, 3.0, 2.0)]
+    pads = [OpenPad(UNIT, ("infinite", "infinite"), where, is_held=False) for where in wheres]
+    expected = [
+        float(sum(flow * pad.potential_and_flux(place)[0] for flow, pad in zip(flows.tolist(), pads, strict=True)))
+        for place in places
+    ]
+    found = solution.field_at(np.array(places), tolerance=1e-9 * solution.span)
+    np.testing.assert_allclose(found.potential, expected, rtol=0, atol=found.potential_bound)
+
+
 def test_four_point_probe_on_a_half_space() -> None:
     # V / I = 1 / (2 pi k s): Valdes, Proceedings of the IRE 42, 1954.
     probes = on_open_face(contact(-1.5, 0.0, 1.0), contact(1.5, 0.0, -1.0))
@@ -405,6 +446,21 @@ def test_all_that_flows_in_passes_every_plane_below() -> None:
         assert finite(total) == pytest.approx(1.0, abs=total.error_bound)
     # By symmetry half of it crosses a plane beside the pad.
     assert finite(solution.plane_total(0, 0.5, tolerance=1e-9)) == pytest.approx(0.5, abs=1e-9)
+
+
+def test_mean_and_flow_of_a_rectangle_are_integrals_of_the_closed_form() -> None:
+    asked = Rectangle(0.75, 1.5, -0.25, 0.5)
+    nodes, weights = np.polynomial.legendre.leggauss(12)
+    x, y = 1.125 + 0.375 * nodes, 0.125 + 0.375 * nodes
+    share = np.outer(weights, weights) / 4
+    pad = OpenPad(UNIT, ("infinite", "infinite"), SQUARE, is_held=False)
+    on_face = [[float(pad.potential_and_flux((a, b, 0.0))[0]) for b in y] for a in x]
+    below = [[float(pad.potential_and_flux((a, b, 0.8))[1][2]) for b in y] for a in x]
+    solution = solve(SQUARE_PAD)
+    mean = solution.mean("z_low", asked, tolerance=1e-12)
+    assert mean.value == pytest.approx(float(np.sum(share * on_face)), rel=1e-11)
+    total = solution.plane_total(2, 0.8, asked, tolerance=1e-12)
+    assert finite(total) == pytest.approx(float(np.sum(share * below)) * asked.area, rel=1e-11)
 
 
 def test_what_a_held_pad_gives_returns_beside_it() -> None:
