@@ -15,10 +15,11 @@ from numpy.typing import NDArray
 
 from service.core import extremes, time_error
 from service.core.certificate import Certificate
-from service.core.errors import AccuracyNotReached, NoSteadyState
+from service.core.convergence import Convergence, Overshoot
+from service.core.errors import AccuracyNotReached, NoSteadyState, NotPhysical
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
-from service.core.field import OFFERED, Field, Grid, KeepGoing
+from service.core.field import OFFERED, Field, Grid, KeepGoing, Setting
 from service.core.maps import Rectangle
 from service.core.mixed_base import Base, Spot, base_of, pads_of
 from service.core.mixed_panels import Refined, given_total, needs_balance
@@ -42,6 +43,9 @@ LEAST_OF_WORST = 0.125
 
 # A field is asked of each refinement with this part of the tolerance.
 SHARE = 0.1
+
+# The accuracy of fields that is usual here, in parts of the span: next to the borders of pads finer panels gain little.
+USUAL_MIXED = 5e-3
 
 # Accuracy, in parts of the span, of means over pads that have their base's film.
 MEAN_ACCURACY = 1e-10
@@ -73,8 +77,11 @@ def solve_mixed(
     """
     base = base_of(body)
     _check_steady(body, base)
-    solution = MixedSolution(Ladder(body, base, most_panels, keep_going))
+    ladder = Ladder(body, base, most_panels, keep_going)
+    solution = MixedSolution(ladder)
     solution.refine_flows(accuracy)
+    # Whoever asks later has a time of their own.
+    ladder.keep_going = None
     return solution
 
 
@@ -104,7 +111,7 @@ def _check_steady(body: Body, base: Base) -> None:
         )
 
 
-class MixedSolution:
+class MixedSolution(Solution):
     """A body with mixed faces and its field; answers like `Solution`, with finer panels where they are needed."""
 
     def __init__(self, ladder: Ladder) -> None:
@@ -115,6 +122,16 @@ class MixedSolution:
     def body(self) -> Body:
         """The body as given."""
         return self._ladder.body
+
+    @property
+    def _setting(self) -> Setting:  # type: ignore[override]
+        """What the answers of faces with one condition each are computed from; there is no such thing here."""
+        raise NotPhysical("This is answered for bodies without mixed faces only.")
+
+    @property
+    def usual_accuracy(self) -> float:
+        """The accuracy that answers have unless another is asked for, in parts of the span."""
+        return USUAL_MIXED
 
     @property
     def _here(self) -> Refinement:
@@ -329,6 +346,33 @@ class MixedSolution:
         place[first] = 0.5 * (spot.where.p_low + spot.where.p_high)
         place[second] = 0.5 * (spot.where.q_low + spot.where.q_high)
         return Place((place[0], place[1], place[2]), level.value, level.error_bound, f"face {spot.face}")
+
+    def peak(
+        self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float, keep_going: KeepGoing | None = None
+    ) -> Place:
+        """The highest potential on a face or a rectangle of it."""
+        for number, spot in enumerate(self._base.spots):
+            if rectangle is not None and spot.face == face and spot.is_held and _lies_in(rectangle, spot.where):
+                return self._held_place(number)
+        fine, middle = (
+            solution.peak(face, rectangle, tolerance=SHARE * tolerance, keep_going=keep_going)
+            for solution in self._here.solutions[:2]
+        )
+        return replace(fine, error_bound=fine.error_bound + middle.error_bound + abs(fine.value - middle.value))
+
+    def means(self, face: Face, rectangles: Sequence[Rectangle], *, tolerance: float) -> list[Bounded]:
+        """Means of the potential over rectangles of a face."""
+        return [self.mean(face, rectangle, tolerance=tolerance) for rectangle in rectangles]
+
+    def convergence(
+        self, points: FloatArray, *, tolerance: float, keep_going: KeepGoing | None = None
+    ) -> list[Convergence]:
+        """How the answers of the finest panels at points, shape (n, 3), converge."""
+        return self._here.solutions[0].convergence(points, tolerance=SHARE * tolerance, keep_going=keep_going)
+
+    def overshoot(self, terms: int) -> list[Overshoot]:
+        """By how much a series of so many modes per axis overshoots the densities of the finest panels."""
+        return self._here.solutions[0].overshoot(terms)
 
     def mean(self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float) -> Bounded:
         """Mean of the potential over a face or a rectangle of it."""
