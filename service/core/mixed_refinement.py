@@ -76,11 +76,14 @@ class Refinement:
 
 
 class Ladder:
-    """The refinements of a body, each computed when it is first asked for."""
+    """The refinements of a body, each computed when it is first asked for.
+
+    keep_going: asked before each, and may raise Interrupted; whoever keeps the ladder for later takes it off.
+    """
 
     def __init__(self, body: Body, base: Base, most_panels: int, keep_going: KeepGoing | None) -> None:
         self.body, self.base = body, base
-        self._keep_going = keep_going
+        self.keep_going = keep_going
         self._kept: dict[int, Refinement] = {}
         allowed = [count for count in COUNTS if count**2 * len(base.spots) <= most_panels]
         if not allowed:
@@ -97,8 +100,8 @@ class Ladder:
     def at(self, count: int) -> Refinement:
         """The answer with so many panels along each axis of a spot."""
         if count not in self._kept:
-            if self._keep_going is not None:
-                self._keep_going()
+            if self.keep_going is not None:
+                self.keep_going()
             self._kept[count] = self._refinement(count)
         return self._kept[count]
 
