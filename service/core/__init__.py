@@ -15,6 +15,7 @@ from service.core.errors import (
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
 from service.core.field import Field, Grid
+from service.core.influence import Influence, Pad, influence, peaks
 from service.core.laws import ConductivityLaw, Radiation
 from service.core.maps import FaceMap, Patch, Rectangle
 from service.core.problem import (
@@ -25,11 +26,15 @@ from service.core.problem import (
     Condition,
     Face,
     Film,
+    FilmPad,
     Held,
+    HeldPad,
     Inflow,
     Insulated,
     Layer,
+    Mixed,
 )
+from service.core.reach import DecayRate, Reach, Reached
 from service.core.solution import Solution
 from service.core.solving import solve
 from service.core.totals import Balance, Bounded, Total
@@ -49,32 +54,42 @@ __all__ = [
     "ConductivityLaw",
     "Convergence",
     "CoreError",
+    "DecayRate",
     "Estimate",
     "Extremes",
     "Face",
     "FaceMap",
     "Field",
     "Film",
+    "FilmPad",
     "Grid",
     "Held",
+    "HeldPad",
     "Inflow",
+    "Influence",
     "Insulated",
     "Interrupted",
     "Layer",
+    "Mixed",
     "NoSteadyState",
     "NodeStep",
     "NotPhysical",
     "OutsideBody",
     "OutsideLaw",
     "Overshoot",
+    "Pad",
     "Patch",
     "Place",
     "Radiation",
+    "Reach",
+    "Reached",
     "Rectangle",
     "SeriesStep",
     "Solution",
     "Total",
     "UnboundedCause",
     "cache_report",
+    "influence",
+    "peaks",
     "solve",
 ]

@@ -26,8 +26,22 @@ from service.core.lines.pairs import Intervals, pair_means
 from service.core.lines.places import Places
 from service.core.lines.time_response import respond
 from service.core.maps import FaceMap, Patch, Rectangle
-from service.core.problem import Body, Condition, Face, Film, Held, Inflow, Insulated, axes_along, axis_of, is_high
-from service.core.solution import solve
+from service.core.problem import (
+    Body,
+    Condition,
+    Face,
+    Film,
+    FilmPad,
+    Held,
+    HeldPad,
+    Inflow,
+    Insulated,
+    Mixed,
+    axes_along,
+    axis_of,
+    is_high,
+)
+from service.core.solving import solve
 from service.core.split import lines_of, scale_of
 
 FloatArray = NDArray[np.float64]
@@ -94,6 +108,8 @@ def influence(
     Raises NotPhysical for a pad on a held face or outside its face, NoSteadyState where flow into a pad has no way out.
     """
     check_pads(body, pads)
+    if _is_mixed(body):
+        return _column_by_column(body, pads, tolerance, keep_going)
     lines = lines_of(body)
     n = len(pads)
     mean, bound = np.zeros((n, n)), np.zeros((n, n))
@@ -119,6 +135,35 @@ def influence(
     return Influence(tuple(pads), mean, bound, *_agreement(body, pads, mean, bound, tolerance))
 
 
+def _is_mixed(body: Body) -> bool:
+    return any(isinstance(condition, Mixed) for condition in body.faces.values())
+
+
+def _column_by_column(body: Body, pads: Sequence[Pad], tolerance: float, keep_going: KeepGoing | None) -> Influence:
+    """The matrix where held or film pads take part: a field for each pad, read at all of them.
+
+    The difference between an entry and its mirror image is the check.
+    """
+    n, rest = len(pads), environment(body)
+    mean, bound = np.zeros((n, n)), np.zeros((n, n))
+    for j, column in enumerate(pads):
+        driven = solve(with_flow_into(rest, column, 1.0), keep_going)
+        for face in {pad.face for pad in pads}:
+            rows = [i for i, pad in enumerate(pads) if pad.face == face]
+            found = driven.means(face, [pads[i].where for i in rows], tolerance=tolerance)
+            mean[rows, j] = [entry.value for entry in found]
+            bound[rows, j] = [entry.error_bound for entry in found]
+    differences, allowed = np.abs(mean - mean.T), bound + bound.T
+    return Influence(
+        tuple(pads),
+        0.5 * (mean + mean.T),
+        0.5 * allowed,
+        float(differences.max(initial=0.0)),
+        float(allowed.max(initial=0.0)),
+        n * n,
+    )
+
+
 def peaks(
     body: Body, pads: Sequence[Pad], *, tolerance: float, keep_going: KeepGoing | None = None
 ) -> tuple[FloatArray, FloatArray]:
@@ -130,7 +175,7 @@ def peaks(
     n, rest = len(pads), environment(body)
     highest, bound = np.empty((n, n)), np.empty((n, n))
     for j, column in enumerate(pads):
-        driven = solve(with_flow_into(rest, column, 1.0))
+        driven = solve(with_flow_into(rest, column, 1.0), keep_going)
         for i, row in enumerate(pads):
             place = driven.peak(row.face, row.where, tolerance=tolerance, keep_going=keep_going)
             highest[i, j], bound[i, j] = place.value, place.error_bound
@@ -141,10 +186,20 @@ def environment(body: Body) -> Body:
     """The body with every held value and ambient at zero and nothing given or generated."""
     zero = FaceMap.uniform(0.0)
 
+    def background_at_rest(condition: Inflow | Film | Insulated) -> Film | Insulated:
+        return Film(condition.coefficient, zero) if isinstance(condition, Film) else Insulated()
+
     def at_rest(condition: Condition) -> Condition:
         if isinstance(condition, Held):
             return Held(zero)
-        return Film(condition.coefficient, zero) if isinstance(condition, Film) else Insulated()
+        if isinstance(condition, Mixed):
+            return Mixed(background_at_rest(condition.background), tuple(pad_at_rest(pad) for pad in condition.pads))
+        return background_at_rest(condition)
+
+    def pad_at_rest(pad: HeldPad | FilmPad) -> HeldPad | FilmPad:
+        if isinstance(pad, FilmPad):
+            return replace(pad, ambient=0.0)
+        return replace(pad, value=None if pad.value is None else 0.0, flow=None if pad.flow is None else 0.0)
 
     faces = {face: at_rest(condition) for face, condition in body.faces.items()}
     return replace(body, faces=faces, sources=(), layers=tuple(replace(layer, generation=0.0) for layer in body.layers))
@@ -163,10 +218,27 @@ def with_flow_into(body: Body, pad: Pad, flow: float) -> Body:
 
 def check_pads(body: Body, pads: Sequence[Pad]) -> None:
     """Raise NotPhysical or NoSteadyState for pads that have no influence matrix."""
+    if body.varies:
+        raise NotPhysical(
+            "Rises are in proportion to flows only where the conductivity does not vary with the potential and no face "
+            "radiates; leave the law or the emissivity out, or ask for the field itself.",
+            ("law",) if body.law is not None else ("faces",),
+        )
+    if body.law is not None or any(isinstance(face, Film) and face.radiation for face in body.faces.values()):
+        raise NotPhysical(
+            "Rises are not in proportion to flows where the conductivity varies or a face radiates; there is no "
+            "influence matrix.",
+            ("law",),
+        )
     lines = lines_of(body)
     for index, pad in enumerate(pads):
         if pad.face not in body.present_faces:
             raise NotPhysical(f"The body has no face {pad.face}.", ("pads", index, "face"))
+        if isinstance(body.faces[pad.face], Mixed):
+            raise NotPhysical(
+                f"The face {pad.face} is mixed; ask for the resistances of its own pads, or put pads on other faces.",
+                ("pads", index, "face"),
+            )
         if isinstance(body.faces[pad.face], Held):
             raise NotPhysical(
                 f"The face {pad.face} is held: a flow into it raises nothing; put pads on faces that are not.",
@@ -185,7 +257,7 @@ def check_pads(body: Body, pads: Sequence[Pad]) -> None:
                 f"it has to have a positive finite extent and lie in the face {pad.face}.",
                 ("pads", index),
             )
-    if pads and (time_range.is_undying(lines) or not _comes_to_rest(lines)):
+    if pads and not _is_mixed(body) and (time_range.is_undying(lines) or not _comes_to_rest(lines)):
         raise NoSteadyState(
             "A flow of {amount} into a pad has no way out of this body: no face is held or has a film, so that its "
             "rise has no end.",
