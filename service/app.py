@@ -10,7 +10,7 @@ from starlette.middleware.cors import CORSMiddleware
 
 from service import __version__, openapi, problem_details
 from service.middleware import BodyLimit, Counting, LastResort, SecurityHeaders
-from service.routes import convergence, fields, flux_totals, health, pads, pages, problems, resistances
+from service.routes import convergence, fields, flux_totals, health, pads, pages, problems, reach, resistances
 from service.settings import Settings
 from service.state import open_state
 
@@ -49,7 +49,7 @@ def create_app(settings: Settings | None = None) -> FastAPI:
     )
     openapi.install(app)
     problem_details.install(app)
-    for module in (problems, fields, flux_totals, convergence, pads, resistances, health, pages):
+    for module in (problems, fields, flux_totals, convergence, pads, resistances, reach, health, pages):
         app.include_router(module.router)
     pages.mount_files(app)
 

@@ -88,14 +88,25 @@ def highest_on(
     setting: Setting, face: Face, rectangle: Rectangle, tolerance: float, keep_going: field.KeepGoing | None
 ) -> Place:
     """The highest potential on a rectangle of a face, its border included."""
-    search = _Search(setting, 0.5 * tolerance, keep_going)
     axes = [np.array([setting.body.end_of(face)])] * 3
     ends = ((rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high))
     for axis, (low, high) in zip(axes_along(face), ends, strict=True):
         axes[axis] = np.append(low + (high - low) * PAD_PLACES[:-1], high)
-    starts = _from_grid(search, axes, search.field(axes, search.accuracy).potential, 1.0)
+    return highest_among(setting, axes, tolerance, keep_going)
+
+
+def highest_among(
+    setting: Setting,
+    axes: list[FloatArray],
+    tolerance: float,
+    keep_going: field.KeepGoing | None,
+    sign: float = 1.0,
+) -> Place:
+    """The highest (for sign -1 the lowest) potential in the box that a grid spans, looked for from its places."""
+    search = _Search(setting, 0.5 * tolerance, keep_going)
+    starts = _from_grid(search, axes, sign * search.field(axes, search.accuracy).potential, sign)
     followed = [start for start in starts if start.value + start.slack >= starts[0].value][:MOST_PAD_CLIMBS]
-    return max((_climb(search, start, 1.0) for start in followed), key=lambda place: place.value)
+    return max((_climb(search, start, sign) for start in followed), key=lambda place: sign * place.value)
 
 
 def _extreme(search: _Search, sign: float) -> Place:

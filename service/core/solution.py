@@ -16,6 +16,7 @@ from service.core.extremes import Extremes, Place
 from service.core.field import Field, Grid, KeepGoing, Setting
 from service.core.maps import Rectangle
 from service.core.problem import Body, Face, axis_of
+from service.core.reach import Reach, reach
 from service.core.solvability import check_steady_state, level_is_pinned
 from service.core.span import span_of
 from service.core.split import lines_of, parts_of, reference_level
@@ -88,6 +89,24 @@ class Solution:
         """The highest potential on a face or a rectangle of it."""
         rectangle = totals.checked_rectangle(self.body, axis_of(face), rectangle)
         return extremes.highest_on(self._setting, face, rectangle, tolerance, keep_going)
+
+    def reach(
+        self,
+        face: Face,
+        fractions: Sequence[float],
+        *,
+        unit: bool = False,
+        modes: int = 10,
+        tolerance: float,
+        keep_going: KeepGoing | None = None,
+    ) -> Reach:
+        """How far from a face what its data drive has fallen below fractions of its largest size on the face.
+
+        unit: follow a unit change all over the face in place of its data. tolerance: in parts of the largest size.
+        """
+        return reach(
+            self._setting, face, fractions, unit=unit, modes=modes, tolerance=tolerance, keep_going=keep_going
+        )
 
     def certificate(self, points: FloatArray, error_bound: float, *, tolerance: float) -> Certificate:
         """What stands behind an answer with that bound: agreement of both representations at some of its points."""

@@ -21,6 +21,7 @@ from service.models.problem import Problem
 from service.refusals import Issue, Path, RequestRefused
 from service.settings import Settings
 from service.store import ProblemStore
+from service.translation.answers import KeepGoing
 from service.translation.problem import ReadProblem, canonical, path_in_request, problem_id_of, read_problem
 from service.units import Kind, UnitSystem
 
@@ -41,13 +42,14 @@ class Solver:
         self._store = store
         self.kept: Kept[Solved] = Kept(settings.solutions_kept)
 
-    def of_question(self, question: Question) -> Solved:
+    def of_question(self, question: Question, keep_going: KeepGoing | None = None) -> Solved:
         """The solution of the problem a question is about.
 
+        keep_going: asked where solving takes steps.
         Raises RequestRefused for an id that is not stored, and what reading and solving the problem raise.
         """
         if question.problem is not None:
-            return self.of_problem(question.problem, ("problem",))
+            return self.of_problem(question.problem, ("problem",), keep_going)
         assert question.problem_id is not None
         solved = self.kept.get(question.problem_id)
         if solved is None:
@@ -55,17 +57,19 @@ class Solver:
             if content is None:
                 detail = "No problem is stored under this id; post it to /v1/problems, or send the problem itself."
                 raise RequestRefused((Issue(("problem_id",), detail, "unknown-problem"),))
-            solved = self.of_problem(Problem.model_validate_json(content), ("problem_id",))
+            solved = self.of_problem(Problem.model_validate_json(content), ("problem_id",), keep_going)
         return solved
 
-    def of_problem(self, problem: Problem, prefix: Path = ()) -> Solved:
+    def of_problem(self, problem: Problem, prefix: Path = (), keep_going: KeepGoing | None = None) -> Solved:
         """The solution of a problem that stands in the request at `prefix`."""
         problem_id = problem_id_of(canonical(problem))
         solved = self.kept.get(problem_id)
         if solved is None:
             read = read_problem(problem, self._settings, prefix)
             try:
-                solved = Solved(read, solve(read.body))
+                solved = Solved(read, solve(read.body, keep_going))
+            except Interrupted:
+                raise
             except CoreError as error:
                 error.field = prefix + path_in_request(error, problem)
                 if isinstance(error, NoSteadyState):
@@ -91,6 +95,8 @@ def point_into_question(error: CoreError, units: UnitSystem) -> None:
         error.field = ("evaluate",)
     elif error.field == ("edge_gap",):
         error.field = ("evaluate", "edge_gap")
+    elif error.field == ("face",):
+        error.field = ("evaluate", "face")
     elif isinstance(error, OutsideBody | NotPhysical):
         error.field = ("evaluate",)
     elif isinstance(error, Interrupted):

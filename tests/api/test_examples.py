@@ -17,6 +17,7 @@ from service.models.fields_answer import FieldsAnswer
 from service.models.flux_totals_answer import FluxTotalsAnswer
 from service.models.operation import ProblemAnswer
 from service.models.pads_answer import PadsAnswer
+from service.models.reach_answer import ReachAnswer
 from service.models.resistances_answer import ResistancesAnswer
 from service.openapi import load_examples
 
@@ -31,6 +32,7 @@ MODELS: dict[str, type[Model]] = {
     "/v1/convergence": ConvergenceAnswer,
     "/v1/pads": PadsAnswer,
     "/v1/resistances": ResistancesAnswer,
+    "/v1/reach": ReachAnswer,
 }
 
 BOUND = "error_bound"
@@ -59,7 +61,7 @@ def check_alike(found: Any, expected: Any, where: str = "", bound: float = 0.0) 
         ]
         for key in expected:
             is_evidence = key in EVIDENCE or key.endswith(BOUND)
-            if is_evidence or (key == "at" and (where.startswith("/extremes") or where.endswith("/largest"))):
+            if is_evidence or (key == "at" and (where.startswith(("/extremes", "/reach")) or where.endswith("/largest"))):
                 # An extreme's value is determined, its place only to where the field is flat within the bound.
                 assert type(found[key]) is type(expected[key]), f"{where}/{key}"
             else:
