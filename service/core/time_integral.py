@@ -32,7 +32,7 @@ class Integral:
     """A part's time integral on the product of three sets of places.
 
     lines, part, places, times: what it was made from. products: what to add up. step: in ln t. carried: for each line
-    the most that its answers were summed from, shape (1, n_nodes, n_columns), or None where its modes and images say.
+    what its answers were summed from, shape (n, n_nodes, n_columns), or None where its modes and images say.
     """
 
     lines: Sequence[Line]

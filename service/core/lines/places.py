@@ -73,8 +73,8 @@ class TimeResponse:
 
     total: shape (n, n_times, n_profiles). initial: what it is just after time 0, shape (n, n_profiles): the profile,
     0 on a held end and for slopes on any end, and zero for a driven end. early: departures from it
-    at the short times, from which the total there is made. carried: the most that an answer was summed from at each
-    time where that is not had from the line's modes and images, shape (1, n_times, n_profiles), else None.
+    at the short times, from which the total there is made. carried: the sizes of what each answer was summed from where
+    that is not had from the line's modes and images, shape (n, n_times, n_profiles), else None.
     """
 
     total: FloatArray

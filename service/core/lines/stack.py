@@ -181,7 +181,7 @@ class StackLine(Line):
         divided = self.divided(profiles.knots)
         _, ends_piece, _ = self.active_breaks(profiles)
         ends_piece[[0, -1]] = True
-        driven = divided.held_by_layers(profiles).any(axis=1)[ends_piece[:-1]]
+        driven = (divided.held_by_layers(profiles)[ends_piece[:-1]] != 0).any(axis=1)
         return float(np.diff(divided.travel[ends_piece])[driven].min(initial=math.inf))
 
     def mean(self, drive: Drive) -> FloatArray:
@@ -394,16 +394,26 @@ def transform(line: StackLine, drive: Drive, places: Places, s: Array) -> Array:
     line = line if isinstance(drive, WallDrive) else line.divided(drive.knots)
     at_rest = s == 0
     s = np.where(at_rest, AT_REST * line.slow_rates[1], s)
-    answer = _moving(line, drive, places, s)
+    answer = _moving(line, drive, places, s)[0]
     if line.keeps_its_mean and at_rest.any():
         answer[:, at_rest] = stack_at_rest.answer(line, drive, _pieces(line, places), places.low.size)[:, None, :]
     return answer
 
 
-def _moving(line: StackLine, drive: Drive, places: Places, s: Array) -> Array:
+def with_sizes(
+    line: StackLine, drive: Drive, places: Places, s: Array, *, less_profile: bool = False
+) -> tuple[Array, FloatArray]:
+    """The transform, or the departure, and the sum of sizes of what it was summed from, both (n, n_s, n_columns)."""
+    if isinstance(drive, WallDrive):
+        return _moving(line, drive, places, s)
+    return (_departing if less_profile else _moving)(line.divided(drive.knots), drive, places, s)
+
+
+def _moving(line: StackLine, drive: Drive, places: Places, s: Array) -> tuple[Array, FloatArray]:
     """The same for s > 0, of a line that is divided at the knots of the drive."""
     if isinstance(drive, WallDrive):
-        return _of_end(line, drive, _pieces(line, places), places.low.size, s)[:, :, None]
+        only = _of_end(line, drive, _pieces(line, places), places.low.size, s)
+        return only, np.abs(only)
     values, pieces, n = line.held_by_layers(drive), _pieces(line, places), len(line.thickness)
     up, down = _Upward(line, s), _Upward(line.mirrored(), s)
     fields = _Fields(up, down, pieces, places.low.size, drive.n_profiles)
@@ -414,12 +424,15 @@ def _moving(line: StackLine, drive: Drive, places: Places, s: Array) -> Array:
             fields.add(number, up.generated(j, below, *place), values[j])
         fields.rise(j + 1, up.generated(j, below, thickness, 0.0, 0.0, VALUE) * up.beyond[j], values[j])
         fields.fall(j - 1, up.generated(j, below, 0.0, thickness, 0.0, VALUE) * down.beyond[n - 1 - j], values[j])
-    return fields.total
+    return fields.total, fields.sizes
 
 
 def departure(line: StackLine, profiles: Profiles, places: Places, s: Array) -> Array:
     """The transformed answer less profile / s: what the borders send out, shape (n, n_s, n_profiles)."""
-    line = line.divided(profiles.knots)
+    return _departing(line.divided(profiles.knots), profiles, places, s)[0]
+
+
+def _departing(line: StackLine, profiles: Profiles, places: Places, s: Array) -> tuple[Array, FloatArray]:
     values, pieces, n = line.held_by_layers(profiles), _pieces(line, places), len(line.thickness)
     up, down = _Upward(line, s), _Upward(line.mirrored(), s)
     fields = _Fields(up, down, pieces, places.low.size, profiles.n_profiles)
@@ -434,21 +447,23 @@ def departure(line: StackLine, profiles: Profiles, places: Places, s: Array) -> 
             flow = -1 / s / (1 / above + 1 / below + 1 / line.contacts[border - 1])
             fields.rise(border, flow / above, jump)
             fields.fall(border - 1, -flow / below, jump)
-    return fields.total
+    return fields.total, fields.sizes
 
 
 class _Fields:
-    """Sums up what goes up and down through a stack."""
+    """Sums up what goes up and down through a stack, and the sizes of it, to which rounding refers."""
 
     def __init__(self, up: _Upward, down: _Upward, pieces: Pieces, n_places: int, n_columns: int) -> None:
         self.up, self.down, self.pieces = up, down, pieces
         self.n_layers = len(up.thickness)
         self.mirrored = pieces.upside_down(self.n_layers)
         self.total = np.zeros((n_places, up.s.size, n_columns), dtype=up.s.dtype)
+        self.sizes = np.zeros(self.total.shape)
 
     def add(self, number: int, values: Array, columns: FloatArray) -> None:
         """Add values at a piece, times each column."""
         self.total[self.pieces.index[number]] += values[:, None] * columns
+        self.sizes[self.pieces.index[number]] += np.abs(values)[:, None] * np.abs(columns)
 
     def rise(self, layer: int, start: Array, columns: FloatArray) -> None:
         """Add what goes up from the bottom of a layer, where the field is `start`."""
@@ -477,7 +492,7 @@ def _of_end(line: StackLine, drive: WallDrive, pieces: Pieces, n_places: int, s:
         fields.fall(fields.n_layers - 1, start, np.ones(1))
     else:
         fields.rise(0, start, np.ones(1))
-    return fields.total[:, :, 0]
+    return fields.total
 
 
 def _taken_in(film: float, seen: Array) -> Array | float:
