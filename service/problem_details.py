@@ -47,6 +47,7 @@ _TYPES = (
     ProblemType("not-physical", 422, "No such body can exist"),
     ProblemType("no-steady-state", 422, "There is no steady state"),
     ProblemType("outside-body", 422, "A place lies outside the body"),
+    ProblemType("outside-law", 422, "The potential leaves the range of the conductivity law"),
     ProblemType("accuracy-not-reached", 422, "The accuracy asked for cannot be promised"),
     ProblemType("too-costly", 422, "The request passes a limit of the server"),
     ProblemType("time-limit", 422, "The time for one request was over before the answer was complete"),
@@ -73,6 +74,7 @@ _TYPE_OF_EXCEPTION: dict[type[Exception], str] = {
     core.NotPhysical: "not-physical",
     core.NoSteadyState: "no-steady-state",
     core.OutsideBody: "outside-body",
+    core.OutsideLaw: "outside-law",
     core.AccuracyNotReached: "accuracy-not-reached",
     core.Interrupted: "time-limit",
 }

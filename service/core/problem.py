@@ -225,6 +225,12 @@ class Body:
             self._check_source(index, source)
 
     @property
+    def varies(self) -> bool:
+        """Whether the field is not in proportion to its data: the conductivity varies with it, or a face radiates."""
+        films = (condition for condition in self.faces.values() if isinstance(condition, Film))
+        return self.law is not None or any(film.radiation is not None for film in films)
+
+    @property
     def present_faces(self) -> tuple[Face, ...]:
         """The faces the body has: both along a finite axis, the low one along a semi-infinite one, else none."""
         return tuple(face for face in FACES if math.isfinite(self.end_of(face)))

@@ -5,10 +5,9 @@ from __future__ import annotations
 from service.core import solution
 from service.core.field import KeepGoing
 from service.core.mixed import solve_mixed
-from service.core.problem import Body, Film, Mixed
+from service.core.problem import Body, Mixed
 from service.core.solution import Solution
 from service.core.varying import VaryingSolution
-
 
 # To which the flows of the pads of mixed faces are solved at first; they are refined when more is asked for.
 FIRST_ACCURACY = 1e-3
@@ -20,9 +19,8 @@ def solve(body: Body, keep_going: KeepGoing | None = None) -> Solution:
     keep_going: asked between the steps of an iteration, may raise Interrupted.
     Raises NoSteadyState, and OutsideLaw where the potential leaves the range of a conductivity law.
     """
+    if body.varies:
+        return VaryingSolution(body, keep_going)
     if any(isinstance(condition, Mixed) for condition in body.faces.values()):
         return solve_mixed(body, accuracy=FIRST_ACCURACY, keep_going=keep_going)
-    radiates = any(isinstance(condition, Film) and condition.radiation for condition in body.faces.values())
-    if body.law is not None or radiates:
-        return VaryingSolution(body, keep_going)
     return solution.solve(body)

@@ -314,17 +314,16 @@ class VaryingSolution(Solution):
                 )
 
     def _check_reached(self, law: ConductivityLaw, coldest: Place, hottest: Place) -> None:
-        for place, end, beyond in (
-            (hottest, law.high, hottest.value - law.high),
-            (coldest, law.low, law.low - coldest.value),
+        for place, end, beyond, reach in (
+            (hottest, law.high, hottest.value - law.high, "up"),
+            (coldest, law.low, law.low - coldest.value, "down"),
         ):
             if beyond > max(place.error_bound, STORED * abs(place.value)):
                 at = ", ".join(f"{coordinate:g}" for coordinate in place.position)
                 raise OutsideLaw(
                     f"The potential reaches about {place.value:.6g} at ({at}), {_on(place.where)}, where the "
-                    f"conductivity law ends at {end:g}; it has to hold from {min(coldest.value, law.low):.6g} to "
-                    f"{max(hottest.value, law.high):.6g} or further. The value is what the last factor, carried on, "
-                    "would lead to.",
+                    f"conductivity law ends at {end:g}; it has to hold {reach} to {place.value:.6g} or further. That "
+                    "value is what the last factor, carried on, would lead to.",
                     ("law",),
                 )
 
@@ -437,7 +436,7 @@ def _check_supported(body: Body) -> None:
         raise NotPhysical(
             "A stack of layers is solved with conductivities that do not vary with the potential and without "
             "radiation; give each layer the conductivity at its own mean potential instead.",
-            ("layers",),
+            ("law",) if body.law is not None else ("faces",),
         )
     for face, condition in body.faces.items():
         if not isinstance(condition, Held | Inflow | Film | Insulated):

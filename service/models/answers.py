@@ -47,6 +47,16 @@ class Terms(Model):
     series_terms: int = Field(description="Terms of the double series at the checked places.", examples=[4096])
 
 
+class Iteration(Model):
+    """How film faces were iterated."""
+
+    steps: int = Field(description="Steps taken in all, also for earlier answers about the problem.", examples=[7])
+    residual: float = Field(
+        description="Nowhere on a film face is more left over of its condition; unit `flux`. Error bounds count it.",
+        examples=[0.02],
+    )
+
+
 class Certificate(Model):
     """Evidence for the answer."""
 
@@ -68,6 +78,9 @@ class Certificate(Model):
     )
     checked_places: int = Field(description="At how many places both were evaluated.", examples=[3])
     terms: Terms = Field(description="How much was summed.")
+    iteration: Iteration | None = Field(
+        None, description="Of film faces that were iterated: where the conductivity varies or they radiate."
+    )
     method: str = Field(description="How the answer was computed.", examples=["time form, checked by double series"])
 
 

@@ -222,9 +222,10 @@ class Question(Model):
         description="The id that POST /v1/problems answered; or give `problem`.",
         examples=["3b0c" * 16],
     )
-    accuracy: Accuracy = Field(
-        default_factory=lambda: Accuracy(absolute=None, relative=1e-9),
-        description="Accuracy wanted; 1e-9 of the span of the data if left out.",
+    accuracy: Accuracy | None = Field(
+        None,
+        description="Accuracy wanted; 1e-9 of the span of the data if left out, and 1e-4 where a film face is iterated "
+        "along which the potential varies.",
         examples=[{"absolute": "1e-6 K"}],
     )
 

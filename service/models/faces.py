@@ -6,7 +6,7 @@ from typing import Annotated, Any, Literal
 
 from pydantic import Discriminator, Field, Tag
 
-from service.models.base import LONGEST_NAME, Model, Quantity
+from service.models.base import LONGEST_NAME, Model, Number, Quantity
 from service.models.face_maps import AxisIntervals, FaceData
 
 # Bounds of the document itself: coefficients as many as a stack may have layers.
@@ -49,7 +49,7 @@ FilmCoefficient = Annotated[
 
 
 class FilmFace(Model):
-    """The flow per area into the body is coefficient * (ambient - potential)."""
+    """The flow per area into the body is coefficient * (ambient - potential), and radiation with an emissivity."""
 
     condition: Literal["film"] = Field(description="The inflow is coefficient * (ambient - potential of the face).")
     coefficient: FilmCoefficient = Field(
@@ -61,6 +61,14 @@ class FilmFace(Model):
     ambient: FaceData = Field(
         description="Potential of the surroundings, in the declared unit `potential`: one value or a map.",
         examples=[24],
+    )
+    emissivity: Number | None = Field(
+        None,
+        gt=0,
+        le=1,
+        description="Emissivity of a face that also radiates to black surroundings at the ambient, from 0 to 1; for "
+        "temperatures only. Beside it the coefficient may be zero.",
+        examples=[0.85],
     )
 
 

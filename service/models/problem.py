@@ -6,7 +6,7 @@ from typing import Annotated, Any, Literal
 
 from pydantic import Discriminator, Field, Tag
 
-from service.models.base import LONGEST_NAME, Model, Quantity
+from service.models.base import LONGEST_NAME, Model, Number, Quantity
 from service.models.face_maps import Interval
 from service.models.faces import Faces
 
@@ -14,6 +14,7 @@ PotentialName = Literal["temperature", "electric_potential", "concentration", "h
 
 # Bound of the document itself; the service's settings bound the problem further.
 MOST_LAYERS = 1_000
+MOST_ENTRIES = 1_000
 
 UnitText = Annotated[str, Field(min_length=1, max_length=64)]
 
@@ -132,6 +133,39 @@ class Layer(Model):
     )
 
 
+class LinearLaw(Model):
+    """The conductivity is its given value times 1 + per_degree * (potential - reference)."""
+
+    law: Literal["linear"] = Field(description="Which kind of law this is.")
+    reference: Quantity = Field(
+        description="Potential at which the conductivity has its given value, in the declared unit `potential`.",
+        examples=[20],
+    )
+    per_degree: Number = Field(
+        description="Part of the conductivity gained for each unit of potential difference; negative where it falls.",
+        examples=[-0.0004],
+    )
+
+
+class TableLaw(Model):
+    """The conductivity is its given value times a factor, linear between the entries of a table."""
+
+    law: Literal["table"] = Field(description="Which kind of law this is.")
+    potential: list[Quantity] = Field(
+        min_length=2,
+        max_length=MOST_ENTRIES,
+        description="Potentials of the entries, increasing, in the declared unit `potential`. They have to cover every "
+        "potential in the body.",
+        examples=[[20, 400, 1600]],
+    )
+    factor: list[Number] = Field(
+        min_length=2,
+        max_length=MOST_ENTRIES,
+        description="Factor on the conductivity at each, greater than zero.",
+        examples=[[1.0, 0.86, 0.71]],
+    )
+
+
 class Body(Model):
     """A rectangular body, of one material or a stack of layers along z, with one corner at the origin.
 
@@ -146,6 +180,12 @@ class Body(Model):
         None,
         description="Conductivity, in the declared unit `conductivity`: one value, or one along each axis.",
         examples=[{"x": 95, "y": 95, "z": 130}, 95],
+    )
+    conductivity_law: Annotated[LinearLaw | TableLaw, Field(discriminator="law")] | None = Field(
+        None,
+        description="How the conductivity varies with the potential, alike along all axes; it does not if left out. "
+        "Not for layers.",
+        examples=[{"law": "linear", "reference": 20, "per_degree": -0.0004}],
     )
     layers: list[Layer] | None = Field(
         None,

@@ -96,7 +96,7 @@ def _work(
         times[name] = now - started
         started = now
 
-    solved = state.solver.of_question(question)
+    solved = state.solver.of_question(question, keep_going)
     try:
         wanted = call.read(question, solved.problem, solved.solution, state.settings)
         call.check_cost(wanted, solved.solution, state.settings, form.bytes_a_number)

@@ -15,7 +15,7 @@ from service.openapi import answer_examples, body_examples, error_responses
 from service.refusals import UnknownProblem
 from service.request_body import StrictJsonRoute
 from service.state import State, state_of
-from service.translation.answers import problem_warnings, units_shown
+from service.translation.answers import KeepGoing, problem_warnings, units_shown
 from service.translation.problem import canonical
 from service.translation.solving import Solved
 
@@ -48,8 +48,8 @@ async def store_problem(
     check_accepts_json(request.headers.get("accept"))
     state = state_of(request)
 
-    def work(_: object) -> tuple[bool, Solved]:
-        solved = state.solver.of_problem(problem)
+    def work(keep_going: KeepGoing) -> tuple[bool, Solved]:
+        solved = state.solver.of_problem(problem, keep_going=keep_going)
         return state.store.put(solved.problem.problem_id, canonical(problem)), solved
 
     (is_new, solved), _ = await state.worker.run(work)
@@ -76,7 +76,7 @@ async def stored_problem(
     """A problem as it is stored: what was posted, with defaults filled in."""
     check_accepts_json(request.headers.get("accept"))
     state = state_of(request)
-    found, _ = await state.worker.run(lambda _: _stored(state, problem_id))
+    found, _ = await state.worker.run(lambda keep_going: _stored(state, problem_id, keep_going))
     if found is None:
         raise UnknownProblem("No problem is stored under this id; post it to /v1/problems.")
     if _has_it_already(request, problem_id):
@@ -84,12 +84,12 @@ async def stored_problem(
     return _response(found, problem_id)
 
 
-def _stored(state: State, problem_id: str) -> dict[str, Any] | None:
+def _stored(state: State, problem_id: str, keep_going: KeepGoing) -> dict[str, Any] | None:
     content = state.store.get(problem_id)
     if content is None:
         return None
     problem = Problem.model_validate_json(content)
-    return _content(problem, state.solver.of_problem(problem))
+    return _content(problem, state.solver.of_problem(problem, keep_going=keep_going))
 
 
 def _content(problem: Problem, solved: Solved) -> dict[str, Any]:

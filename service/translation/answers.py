@@ -22,14 +22,17 @@ KeepGoing = Callable[[], None]
 Warning_ = dict[str, str]
 
 
-def read_tolerance(collector: Collector, accuracy: models.Accuracy, solution: Solution) -> float:
+def read_tolerance(collector: Collector, accuracy: models.Accuracy | None, solution: Solution) -> float:
     """Largest error allowed, in the declared unit of the potential."""
-    if accuracy.absolute is not None:
+    if accuracy is not None and accuracy.absolute is not None:
         path: Path = ("accuracy", "absolute")
         return collector.read_positive(Kind.POTENTIAL_DIFFERENCE, accuracy.absolute, path, "The accuracy")
-    assert accuracy.relative is not None
+    relative = solution.usual_accuracy
+    if accuracy is not None:
+        assert accuracy.relative is not None
+        relative = accuracy.relative
     # A body whose data are all alike has no span; any number will then do.
-    return accuracy.relative * (solution.span or 1.0)
+    return relative * (solution.span or 1.0)
 
 
 def units_shown(units: UnitSystem) -> dict[str, str]:
@@ -55,6 +58,10 @@ def certificate(
     if not bounds:
         bounds = [solution.field_at(places, tolerance=tolerance).potential_bound]
     found = solution.certificate(places, float(max(bounds)), tolerance=tolerance)
+    iteration: dict[str, Any] = {}
+    if found.residual is not None and found.iterations:
+        residual = problem.units.write(Kind.FLUX, found.residual)
+        iteration["iteration"] = {"steps": found.iterations, "residual": residual}
     return {
         "error_bound": found.error_bound,
         "accuracy_asked": tolerance,
@@ -66,6 +73,7 @@ def certificate(
             "products": found.products,
             "series_terms": found.series_terms,
         },
+        **iteration,
         "method": found.method,
     }
 

@@ -5,13 +5,14 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 
-from service.core import Layer
+from service.core import ConductivityLaw, Layer
 from service.core.problem import AXES
 from service.models import problem as models
 from service.refusals import Path
 from service.settings import Settings
 from service.translation.collector import UNREAD, Collector
 from service.translation.extent import AxisExtent, Extents
+from service.translation.laws import read_law
 from service.units import Kind
 
 Conductivities = tuple[float, float, float]
@@ -19,26 +20,29 @@ Conductivities = tuple[float, float, float]
 
 @dataclass(frozen=True)
 class Material:
-    """What a body is made of. layers: empty for a body of one material."""
+    """What a body is made of. layers: empty for a body of one material. law: how the conductivity varies, or None."""
 
     extents: Extents
     conductivity: Conductivities
     layers: tuple[Layer, ...] = ()
+    law: ConductivityLaw | None = None
 
 
 def read_material(collector: Collector, settings: Settings, body: models.Body) -> Material:
     """Size and conductivity, or the layers; NaN for what could not be read, which is then noted."""
     size = body.size
     x, y = (_extent(collector, value, axis) for value, axis in ((size.x, "x"), (size.y, "y")))
+    law = read_law(collector, body.conductivity_law)
     if body.layers is None:
-        return Material((x, y, _extent(collector, size.z, "z")), _conductivity_of_body(collector, body.conductivity))
+        conductivity = _conductivity_of_body(collector, body.conductivity)
+        return Material((x, y, _extent(collector, size.z, "z")), conductivity, law=law)
     for path, value in ((("body", "size", "z"), size.z), (("body", "conductivity"), body.conductivity)):
         if value is not None:
             collector.add(path, f"The layers say this; leave {path[-1]} out.", "one-of")
     layers = _layers(collector, settings, body.layers)
     thicknesses = [layer.thickness for layer in layers]
     z = AxisExtent.of_stack(thicknesses) if layers and all(map(math.isfinite, thicknesses)) else _UNREAD_EXTENT
-    return Material((x, y, z), layers[0].conductivity if layers else (UNREAD,) * 3, layers)
+    return Material((x, y, z), layers[0].conductivity if layers else (UNREAD,) * 3, layers, law)
 
 
 _UNREAD_EXTENT = AxisExtent(0.0, UNREAD)

@@ -25,6 +25,7 @@ from service.settings import Settings
 from service.translation.body import Material
 from service.translation.collector import UNREAD, Collector
 from service.translation.face_maps import FaceContents, FaceReader, NamedPatch
+from service.translation.laws import read_radiation
 from service.units import Kind
 
 
@@ -48,9 +49,10 @@ class ConditionReader:
                 read = self.data.read(Kind.FLUX, condition.inflow, (*path, "inflow"))
                 return None if read is None else (Inflow(read.face_map), read)
             case models.FilmFace():
-                coefficient = self._coefficient(condition.coefficient, (*path, "coefficient"))
+                radiation = read_radiation(self.collector, condition.emissivity, (*path, "emissivity"))
+                coefficient = self._film_coefficient(condition, (*path, "coefficient"))
                 read = self.data.read(Kind.POTENTIAL, condition.ambient, (*path, "ambient"))
-                return None if read is None else (Film(coefficient, read.face_map), read)
+                return None if read is None else (Film(coefficient, read.face_map, radiation), read)
             case models.MixedFace():
                 return self._mixed(condition, path)
             case _:
@@ -107,6 +109,15 @@ class ConditionReader:
             return HeldPad(where, None, self.collector.read(Kind.FLOW, pad.flow, (*path, "flow")), pad.name)
         self.collector.add((*path, "value"), "Give either `value` or `flow`.", "missing")
         return None
+
+    def _film_coefficient(self, film: models.FilmFace, path: Path) -> float:
+        """The coefficient of a film face, which may be zero where the face radiates."""
+        given = film.coefficient
+        if film.emissivity is not None and not isinstance(given, list):
+            coefficient = self.collector.read(Kind.FILM_COEFFICIENT, given, path)
+            if coefficient == 0.0:
+                return coefficient
+        return self._coefficient(given, path)
 
     def _coefficient(self, given: models.FilmCoefficient, path: Path) -> float:
         """The coefficient of a film; that beside the first layer on a side of a stack."""

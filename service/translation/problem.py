@@ -5,7 +5,7 @@ from __future__ import annotations
 import hashlib
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import Any
 
 from pydantic_core import to_json
@@ -94,9 +94,10 @@ def _body(material: Material, conditions: Mapping[Face, Condition], sources: tup
     x, y, z = material.extents
     infinite = (x.is_infinite, y.is_infinite, z.is_infinite)
     if material.layers:
-        return Body.stack((x.high, y.high), material.layers, conditions, sources, infinite)
+        stack = Body.stack((x.high, y.high), material.layers, conditions, sources, infinite)
+        return replace(stack, law=material.law)
     size = (x.high, y.high, z.high)
-    return Body(size, material.conductivity, conditions, sources, infinite=infinite)
+    return Body(size, material.conductivity, conditions, sources, infinite=infinite, law=material.law)
 
 
 def _faces(
@@ -152,6 +153,8 @@ def path_in_request(error: errors.CoreError, problem: models.Problem) -> Path:
     path = error.field
     if path[:1] == ("layers",):
         return path_of_layer(path[1:], problem.body)
+    if path[:1] == ("law",):
+        return ("body", "conductivity_law", *path[1:])
     if path[:1] == ("conductivity",) and not isinstance(problem.body.conductivity, models.AxisConductivities):
         path = ("conductivity",)
     return ("body", *path) if path[:1] in (("size",), ("conductivity",)) else path

@@ -16,6 +16,7 @@ from service.core.influence import Pad as FedPad
 from service.core.maps import Rectangle
 from service.core.network import Network, network
 from service.core.problem import Held, axes_along
+from service.core.solution import USUAL_ACCURACY
 from service.models import pads as models
 from service.models.evaluate import FacePart as FacePartModel
 from service.refusals import Path
@@ -58,12 +59,13 @@ def read_resistances(
         read = (_pad(reader, problem, part, ("evaluate", "pads", index)) for index, part in enumerate(ask.pads))
         pads = [pad for pad in read if pad is not None]
     absolute = None
-    if question.accuracy.absolute is not None:
+    accuracy = question.accuracy
+    if accuracy is not None and accuracy.absolute is not None:
         kind, path = Kind.POTENTIAL_DIFFERENCE, ("accuracy", "absolute")
-        absolute = collector.read_positive(kind, question.accuracy.absolute, path, "The accuracy")
+        absolute = collector.read_positive(kind, accuracy.absolute, path, "The accuracy")
     collector.raise_if_any()
     check_pads(problem.body, [_fed(pad) for pad in pads])
-    tolerance = _tolerance(problem, pads, absolute, question.accuracy.relative)
+    tolerance = _tolerance(problem, pads, absolute, USUAL_ACCURACY if accuracy is None else accuracy.relative)
     return ResistancesWanted(tuple(pads), ask.peaks, tolerance)
 
 
