@@ -58,8 +58,7 @@ def local_data(face_map: FaceMap, p: FloatArray, q: FloatArray) -> LocalData:
                 slopes_q.append(np.zeros(p.shape))
                 continue
             width_p, width_q = knots_p[i + 1] - knots_p[i], knots_q[j + 1] - knots_q[j]
-            s = np.where(np.isfinite(width_p), (p - knots_p[i]) / width_p, 0.0)
-            t = np.where(np.isfinite(width_q), (q - knots_q[j]) / width_q, 0.0)
+            s, t = _share(p, knots_p[i], width_p), _share(q, knots_q[j], width_q)
             low, high = table[i, j] * (1 - t) + table[i, j + 1] * t, table[i + 1, j] * (1 - t) + table[i + 1, j + 1] * t
             near, far = table[i, j] * (1 - s) + table[i + 1, j] * s, table[i, j + 1] * (1 - s) + table[i + 1, j + 1] * s
             values.append(low * (1 - s) + high * s)
@@ -87,6 +86,12 @@ def _curved_data(face_map: FaceMap, p: FloatArray, q: FloatArray) -> LocalData:
         slopes_p.append(sums(slope_p, at_q))
         slopes_q.append(sums(at_p, slope_q))
     return LocalData(np.array([values] * 4), (np.array(slopes_p), np.array(slopes_q)))
+
+
+def _share(place: FloatArray, start: FloatArray, width: FloatArray) -> FloatArray:
+    """Which part of its piece a place has behind it; 0 on a piece without an end, along which nothing changes."""
+    endless = np.isinf(width)
+    return np.where(endless, 0.0, (place - np.where(endless, 0.0, start)) / np.where(endless, 1.0, width))
 
 
 def has_no_finite_flux(body: Body, places: Sequence[FloatArray], shape: tuple[int, ...]) -> NDArray[np.bool_]:

@@ -13,7 +13,7 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines.images import ARRIVAL, LATEST, NARROW, narrow_from, seen_from_afar
+from service.core.lines.images import ARRIVAL, LATEST, NARROW, Afar, narrow_from, seen_from_afar
 from service.core.lines.line import Drive, Line, WallDrive, breaks_of
 from service.core.lines.modes import MODE_COUNT, eigen_integrals, modes_of
 from service.core.lines.places import Places
@@ -194,8 +194,20 @@ def _carried_by_images(line: Line, profiles: Profiles, places: Places, times: Fl
     if seen is not None:
         late = root_time[:, 0] >= seen.root_time
         step = np.abs(seen.step.left).max(axis=0) / (4 * NARROW)
-        sizes[0, late] = ((np.abs(seen.amounts).sum(axis=0) / root_time + step) * per_length)[late]
+        amount = np.abs(seen.amounts).sum(axis=0) / root_time
+        if line.film_low > 0.0:
+            # An end that is held or has a film takes up its share, which falls with the square of all distances.
+            amount = amount * np.minimum(1.0, _depth(line, seen, places) / root_time) ** (
+                1 if places.order == -1 else 2
+            )
+        sizes[0, late] = ((amount + step) * per_length)[late]
     return sizes
+
+
+def _depth(line: Line, seen: Afar, places: Places) -> float:
+    """Scaled distance from an end that takes up flow, and behind a film as much again as that is worth."""
+    ends = np.concatenate([places.low, seen.at] if places.high is None else [places.low, places.high, seen.at])
+    return float(ends.max()) * line.scale + (1 / line.film_low if line.film_low < math.inf else 0.0)
 
 
 def _carried_by_curves(line: Line, profiles: Profiles, places: Places, times: FloatArray) -> FloatArray:

@@ -26,7 +26,7 @@ from service.core.lines.time_response import respond
 from service.core.split import Part
 from service.core.time_error import step_error
 from service.core.time_integral import Integral, Product
-from service.core.time_range import CUT, is_undying, profile_is_taken_out, settling_time, times_for, weights
+from service.core.time_range import CUT, is_undying, profile_is_taken_out, release_time, times_for, weights
 
 FloatArray = NDArray[np.float64]
 
@@ -45,7 +45,7 @@ def integrate(
     """
     times = times_for(lines, part, places, step, step_error(step))
     answers = [rows(lines[axis], part.drives[axis], places[axis], times) for axis in range(3)]
-    nodes = _Nodes(times, weights(lines, times, step) * part.factor, settling_time(lines), part.factor)
+    nodes = _Nodes(times, weights(lines, times, step) * part.factor, release_time(lines), part.factor)
     if profile_is_taken_out(lines, part, places):
         products = _with_profile_taken_out(lines, part, places, answers, nodes)
     else:

@@ -28,7 +28,7 @@ EARLIEST, EARLIEST_FOR_SLOPES = 1e-3, 1e-30
 # A place within this part of the body of a driven end is on it; no range begins before the square of that.
 NEGLIGIBLE, TINY = 1e-50, 1e-110
 
-# Part of the slowest time constant by which a range has begun where a profile or a mean is let go with it:
+# Part of the release time by which a range has begun where a profile or a mean is let go with it:
 # (t / release)^(5/2) is then below rounding.
 LATEST_BEGINNING = 3e-7
 
@@ -48,12 +48,11 @@ def times_for(
 
     rule_error: relative error of the trapezoidal rule on that step.
     """
-    settling = settling_time(lines)
     last = last_time(lines, places)
     lets_go = profile_is_taken_out(lines, part, places) or is_undying(lines)
     first = max(_first_time(lines, part, places, EARLIEST * rule_error), TINY * shortest(lines) ** 2)
     # A plain integrand begins only when the front from its end arrives; the others begin with what is let go.
-    first = min(first, LATEST_BEGINNING * settling if lets_go else last / 16)
+    first = min(first, LATEST_BEGINNING * release_time(lines) if lets_go else last / 16)
     begin = LATTICE * math.floor(math.log(first) / LATTICE)
     return np.exp(step * np.arange(math.floor(begin / step), math.ceil(math.log(last) / step) + 1))
 
@@ -75,6 +74,17 @@ def has_decay(lines: Sequence[Line]) -> bool:
 def settling_time(lines: Sequence[Line]) -> float:
     """Time constant of the slowest decay, or of a body as large as its data where there is none."""
     return 1 / slowest_rate(lines) if has_decay(lines) else (shortest(lines) / math.pi) ** 2
+
+
+def release_time(lines: Sequence[Line]) -> float:
+    """Time on which a profile or a mean that was taken out is let go.
+
+    That of the slowest decay, but where two axes are endless that of the shortest length: profiles spread there long
+    before what they drive decays, and by then nothing may be left of them.
+    """
+    if sum(line.is_endless for line in lines) <= 1:
+        return settling_time(lines)
+    return (shortest(lines) / math.pi) ** 2
 
 
 def slowest_rate(lines: Sequence[Line]) -> float:

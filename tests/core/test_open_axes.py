@@ -13,6 +13,7 @@ import numpy as np
 import pytest
 from mpmath import mp, mpf
 from numpy.typing import NDArray
+from scipy.special import k0
 
 from service.core import (
     AXES,
@@ -546,6 +547,23 @@ def test_strip_beside_a_face_that_takes_up_its_flow_has_a_field() -> None:
     solution = solve(Body((ENDLESS,) * 3, UNIT, faces, infinite=(False, True, False)))
     (found,) = values(solution, [(3.0, 12.0, 0.0)])
     assert found == pytest.approx(math.log(2.0) / math.pi, abs=w**2)
+
+
+def test_slab_of_generation_under_a_film_is_one_dimensional() -> None:
+    # 1 in 1 < z < 2 above a film of 2: 1 / 2 at the face, a straight line to the slab, and constant below it.
+    slab = BoxSource((-ENDLESS, -ENDLESS, 1.0), (ENDLESS, ENDLESS, 2.0), 1.0)
+    body = Body((ENDLESS,) * 3, UNIT, {"z_low": film(2.0, 0.0)}, (slab,), infinite=HALF_SPACE)
+    found = values(solve(body), [(0.0, 3.0, 0.0), (0.0, 0.0, 0.5), (1e3, 2.0, 7.0)], 1e-11)
+    np.testing.assert_allclose(found, [0.5, 1.0, 2.0], rtol=0, atol=2e-11)
+
+
+def test_plate_that_hardly_loses_anything_spreads_as_a_bessel_function() -> None:
+    # Biot number Bi: K_0(r sqrt Bi) / (2 pi k t) but for a part of the order of Bi and of the pad's size / r, squared.
+    biot, distance = 1e-9, 1e4
+    solution = solve(plate(film(biot, 0.0), Inflow(on_open_face((SQUARE, 1.0)))))
+    (found,) = values(solution, [(distance, 0.0, 0.3)])
+    assert found == pytest.approx(k0(distance * math.sqrt(biot)) / (2 * math.pi), rel=2 * biot + distance**-2)
+    assert solution.balance(tolerance=1e-9).closed
 
 
 def test_body_without_ends_has_no_faces_there() -> None:

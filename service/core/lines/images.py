@@ -276,12 +276,34 @@ def seen_from_afar(line: Line, profiles: Profiles) -> Afar | None:
 
 def from_afar(line: Line, seen: Afar, coordinates: FloatArray, root_time: FloatArray, order: Order) -> FloatArray:
     """u itself (order 0), its slope (-1), or its antiderivative (1) less that of the step, (n_points, n_times, r)."""
-    total = from_points(line, seen.at, seen.amounts, coordinates, root_time, order)
+    if line.film_low > 0.0 and order != PRIMITIVE:
+        total = _taken_up(line, seen, coordinates, root_time, order)
+    else:
+        total = from_points(line, seen.at, seen.amounts, coordinates, root_time, order)
     if seen.step.left.any():
         total += _from_breaks(line, seen.step, coordinates, root_time, order)
         if order == 0:
             total += seen.step.at(coordinates)[:, None, :]
     return total
+
+
+def _taken_up(line: Line, seen: Afar, coordinates: FloatArray, root_time: FloatArray, order: Order) -> FloatArray:
+    """Point sources before an end that is held or has a film, each with its image before the two cancel.
+
+    With a film the part K_(-1) of the image is a source itself, and adds to what a held end leaves.
+    """
+    x, source = coordinates[:, None, None] * line.scale, (seen.at * line.scale)[:, None]
+    difference, distance = x - source, x + source
+    point = np.exp(-((difference / (2 * root_time)) ** 2)) / (2 * SQRT_PI * root_time)
+    taken = np.expm1(-x * source / root_time**2)
+    if order == 0:
+        kernel = -point * taken
+    else:
+        kernel = (2 * source * point * (1 + taken) + difference * point * taken) / (2 * root_time**2)
+    if line.film_low < math.inf:
+        returned = film_part(order - 1, distance, root_time, line.film_low)
+        kernel = kernel + (returned if order == 0 else -returned)
+    return np.asarray(kernel.transpose(0, 2, 1) @ seen.amounts)
 
 
 def _from_breaks(
