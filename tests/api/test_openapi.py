@@ -17,6 +17,7 @@ CALLS = {
     ("post", "/v1/convergence"),
     ("post", "/v1/pads"),
     ("post", "/v1/resistances"),
+    ("post", "/v1/reach"),
     ("get", "/v1/diagnostics"),
     ("get", "/health/live"),
     ("get", "/health/ready"),
