@@ -110,7 +110,7 @@ def influence(
     check_pads(body, pads)
     if _is_mixed(body):
         return _column_by_column(body, pads, tolerance, keep_going)
-    lines = lines_of(body)
+    lines = _driven_by(pads, lines_of(body))
     n = len(pads)
     mean, bound = np.zeros((n, n)), np.zeros((n, n))
     known = _taken_over(pads, earlier, mean, bound)
@@ -133,6 +133,20 @@ def influence(
             if keep_going is not None:
                 keep_going()
     return Influence(tuple(pads), mean, bound, *_agreement(body, pads, mean, bound, tolerance))
+
+
+def _driven_by(pads: Sequence[Pad], lines: Sequence[Line]) -> tuple[Line, Line, Line]:
+    """The lines of a body with its pads as all that drives it, which says how far endless axes have to be followed."""
+    found = list(lines)
+    for axis, line in enumerate(lines):
+        if line.is_endless:
+            ends = [0.0] if line.has_low_end else []
+            for pad in pads:
+                along, where = axes_along(pad.face), pad.where
+                if axis in along:
+                    ends += [where.p_low, where.p_high] if along[0] == axis else [where.q_low, where.q_high]
+            found[axis] = replace(line, data=(min(ends, default=0.0), max(ends, default=0.0)))
+    return found[0], found[1], found[2]
 
 
 def _is_mixed(body: Body) -> bool:
@@ -321,7 +335,7 @@ def _same_axis(
     column = row if len(columns) == len(rows) else _Side.of(columns, faces)
     times = _times(lines, row.narrowest(along))
     weights = time_range.weights(lines, times, STEP)
-    release = time_range.settling_time(lines)
+    release = time_range.release_time(lines)
     taken_out = 1 + np.expm1(-times / release) ** 3
     through, closed = _third_line(lines[axis], faces, times, release)
     pick_first, pick_second = np.ix_(row.at_first, column.at_first), np.ix_(row.at_second, column.at_second)
@@ -352,7 +366,7 @@ def _same_axis(
 
 
 def _times(lines: Sequence[Line], narrowest: float) -> FloatArray:
-    first = min(EARLIEST * narrowest**2, time_range.LATEST_BEGINNING * time_range.settling_time(lines))
+    first = min(EARLIEST * narrowest**2, time_range.LATEST_BEGINNING * time_range.release_time(lines))
     last = time_range.last_time(lines)
     return np.exp(STEP * np.arange(math.floor(math.log(first) / STEP), math.ceil(math.log(last) / STEP) + 1))
 

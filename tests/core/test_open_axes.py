@@ -29,10 +29,12 @@ from service.core import (
     NoSteadyState,
     NotPhysical,
     OutsideBody,
+    Pad,
     Patch,
     Rectangle,
     Solution,
     Total,
+    influence,
     solve,
 )
 from service.core.problem import axes_along
@@ -591,3 +593,16 @@ def test_convergence_and_certificate_do_without_a_series_where_there_is_none() -
     assert answer.series == ()
     assert answer.terms_needed is None
     assert [step.error <= step.error_bound + answer.error_bound for step in answer.time_form] == [True] * 6
+
+
+@pytest.mark.parametrize("unit", [1e-6, 1.0, 1e6])
+def test_influence_of_pads_of_any_size_and_distance_on_a_half_space(unit: float) -> None:
+    # The mean of a square over itself as published, and points seen from a thousand and from ten million sides away;
+    # of unit squares in a row the mean of 1 / r exceeds 1 / distance by 1 / 12 of its cube, from the second moments.
+    pads = [Pad("z_low", Rectangle(x * unit, (x + 1) * unit, 0.0, unit)) for x in (0.0, 1e3, 1e7)]
+    found = influence(half_space(INSULATED), pads, tolerance=1e-9 / unit)
+    mean, bound = found.mean * unit, found.bound * unit
+    assert mean[0, 0] == pytest.approx(0.473201004409339, abs=1e-13)
+    assert mean[0, 1] == pytest.approx((1e-3 + 1e-9 / 12) / (2 * math.pi), abs=1e-15)
+    assert mean[0, 2] == pytest.approx(1e-7 / (2 * math.pi), abs=1e-15)
+    assert bound.max() < 1e-11
