@@ -27,7 +27,7 @@ from service.core.endless import neighbourhood
 from service.core.errors import NoSteadyState, NotPhysical
 from service.core.field import KeepGoing, Setting
 from service.core.lines.modes import modes_of
-from service.core.maps import FaceMap
+from service.core.maps import FaceMap, Profiles
 from service.core.problem import (
     Body,
     Condition,
@@ -276,7 +276,7 @@ class _Disturbance:
         slope = self._slope(place, found)
         distance = found + (value - wanted) / slope
         room = (bound + fraction * self.largest_bound) / slope
-        return Reached(fraction, distance, self._proved(distance, fraction, room), self._place(place, distance))
+        return Reached(fraction, distance, self._proved(place, distance, fraction, room), self._place(place, distance))
 
     def on_the_axis(self, fraction: float, middle: tuple[float, float, float]) -> Reached:
         """Where the size in the middle of the section falls below a fraction of the largest size on the face."""
@@ -394,13 +394,13 @@ class _Disturbance:
         ends = max(distance - step, 0.0), min(distance + step, self.length)
         return max(float(sizes[0] - sizes[1]), self.tolerance) / (ends[1] - ends[0])
 
-    def _proved(self, distance: float, fraction: float, room: float) -> float:
+    def _proved(self, place: tuple[float, float, float], distance: float, fraction: float, room: float) -> float:
         """A bound on the error of a distance: before it the disturbance is above the fraction, beyond it below."""
         wanted, off = fraction * self.largest, fraction * self.largest_bound
         for _ in range(MOST_TRIES):
             before, beyond = max(distance - room, 0.0), min(distance + room, self.length)
-            _, value, bound = self._worst(before, self.tolerance)
-            above = before == 0.0 or value - bound > wanted + off
+            sizes, bound = self._along(place, np.array([before]))
+            above = before == 0.0 or float(sizes[0]) - bound > wanted + off
             _, value, bound = self._worst(beyond, self.tolerance)
             if above and value + bound < wanted - off:
                 return room
@@ -419,7 +419,7 @@ class _Disturbance:
         return np.clip(self.end + self.inward * distances, self.setting.body.begins[self.axis], self.length)
 
     def _section_places(self, axis: int) -> FloatArray:
-        """Places across: an even spread with its ends, and the middles between the knots of the face's data.
+        """Places across: an even spread with its ends, and the middles of the patches and readings of the face.
 
         Along an endless axis also far away, where the field is the same all along.
         """
@@ -429,8 +429,10 @@ class _Disturbance:
         places += [np.array([field.far_along(self.setting, axis)])] if math.isinf(body.size[axis]) else []
         places += [np.array([field.far_along(self.setting, axis, high=False)])] if body.infinite[axis] else []
         for part in self.setting.parts:
-            knots = part.knots(axis)
-            knots = knots[np.isfinite(knots)]
+            drive = part.drives[axis]
+            if not isinstance(drive, Profiles) or drive.is_curved:
+                continue
+            knots = drive.knots[np.isfinite(drive.knots)]
             middles = 0.5 * (knots[1:] + knots[:-1])
             places.append(middles[np.linspace(0, middles.size - 1, min(middles.size, SECTION_PLACES)).astype(int)])
         return np.unique(np.concatenate(places))
