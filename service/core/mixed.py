@@ -420,10 +420,16 @@ class MixedSolution(Solution):
         return replace(totals[0], value=found.value, error_bound=found.error_bound, with_gap=with_gap)
 
     def balance(self, *, gap: float | None = None, tolerance: float) -> Balance:
-        """Inflow of every face, generation, and what is left over; the last of the finest panels alone."""
+        """Inflow of every face, generation, and what is left over; where a face is unbounded of the finest panels alone."""
         books = self._here.solutions[0].balance(gap=gap, tolerance=tolerance)
         inflow = {face: self.face_total(face, gap=gap, tolerance=tolerance) for face in books.inflow}
-        return replace(books, inflow=inflow)
+        books = replace(books, inflow=inflow)
+        values = [total.value for total in inflow.values() if total.value is not None]
+        bounds = [total.error_bound for total in inflow.values() if total.error_bound is not None]
+        if books.residual is None or len(values) < len(inflow):
+            return books
+        residual, bound = math.fsum([books.generation, *values]), math.fsum(bounds)
+        return replace(books, residual=residual, error_bound=bound, closed=abs(residual) <= bound)
 
     def certificate(self, points: FloatArray, error_bound: float, *, tolerance: float) -> Certificate:
         """What stands behind an answer with that bound: both representations of the field of the finest panels."""
