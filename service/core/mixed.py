@@ -420,7 +420,7 @@ class MixedSolution(Solution):
         return replace(totals[0], value=found.value, error_bound=found.error_bound, with_gap=with_gap)
 
     def balance(self, *, gap: float | None = None, tolerance: float) -> Balance:
-        """Inflow of every face, generation, and what is left over; where a face is unbounded of the finest panels alone."""
+        """Inflow of every face, generation, and what is left over; of the finest panels alone where a face is unbounded."""
         books = self._here.solutions[0].balance(gap=gap, tolerance=tolerance)
         inflow = {face: self.face_total(face, gap=gap, tolerance=tolerance) for face in books.inflow}
         books = replace(books, inflow=inflow)
@@ -428,6 +428,9 @@ class MixedSolution(Solution):
         bounds = [total.error_bound for total in inflow.values() if total.error_bound is not None]
         if books.residual is None or len(values) < len(inflow):
             return books
+        if books.carried_off is not None:
+            values.append(-books.carried_off.value)
+            bounds.append(books.carried_off.error_bound)
         residual, bound = math.fsum([books.generation, *values]), math.fsum(bounds)
         return replace(books, residual=residual, error_bound=bound, closed=abs(residual) <= bound)
 
