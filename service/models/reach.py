@@ -12,10 +12,10 @@ from service.models.faces import FaceName
 
 MOST_FRACTIONS, MOST_MODES = 10, 100
 
-# Below this the disturbance is within reach of the accuracies that are offered.
-SMALLEST_FRACTION = 1e-6
+# Below the smallest the disturbance comes near the accuracies that are offered; on the face itself it is 1.
+SMALLEST_FRACTION, LARGEST_FRACTION = 1e-6, 0.999
 
-Fraction = Annotated[Number, Field(ge=SMALLEST_FRACTION, lt=1)]
+Fraction = Annotated[Number, Field(ge=SMALLEST_FRACTION, le=LARGEST_FRACTION)]
 
 
 class ReachEvaluate(Model):
