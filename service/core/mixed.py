@@ -112,11 +112,14 @@ def _check_steady(body: Body, base: Base) -> None:
 
 
 class MixedSolution(Solution):
-    """A body with mixed faces and its field; answers like `Solution`, with finer panels where they are needed."""
+    """A body with mixed faces and its field; answers like `Solution`, with finer panels where they are needed.
+
+    count: panels along each axis of a pad from which totals are told.
+    """
 
     def __init__(self, ladder: Ladder) -> None:
         self._ladder, self._base = ladder, ladder.base
-        self._count = ladder.counts[0]
+        self.count = ladder.counts[0]
 
     @property
     def body(self) -> Body:
@@ -135,12 +138,12 @@ class MixedSolution(Solution):
 
     @property
     def _here(self) -> Refinement:
-        return self._ladder.at(self._count)
+        return self._ladder.at(self.count)
 
     @property
     def panel_count(self) -> int:
         """Panels of all pads, and pieces of background that are solved like pads, at the present refinement."""
-        return self._count**2 * len(self._base.spots)
+        return self.count**2 * len(self._base.spots)
 
     @property
     def level_pinned(self) -> bool:
@@ -166,10 +169,10 @@ class MixedSolution(Solution):
                 _over(max(answer.flow.error_bound for answer in answers), accuracy * size),
                 _over(max(answer.potential.error_bound for answer in answers), accuracy * self.span),
             ]
-            finer = self._ladder.finer(self._count, max(missed), ORDER_OF_TOTALS)
+            finer = self._ladder.finer(self.count, max(missed), ORDER_OF_TOTALS)
             if finer is None:
                 return
-            self._count = finer
+            self.count = finer
 
     def pads(self) -> tuple[PadAnswer, ...]:
         """Flow and potential of every pad, face by face."""
@@ -262,7 +265,7 @@ class MixedSolution(Solution):
         return self._field(ask, points, tolerance)
 
     def _field(self, ask: Callable[[Solution, float], Field], points: FloatArray, tolerance: float) -> Field:
-        count, share = self._count, SHARE * tolerance
+        count, share = self.count, SHARE * tolerance
         while True:
             here = self._ladder.at(count)
             if not here.refined:
@@ -375,11 +378,18 @@ class MixedSolution(Solution):
         return self._here.solutions[0].overshoot(terms)
 
     def mean(self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float) -> Bounded:
-        """Mean of the potential over a face or a rectangle of it."""
+        """Mean of the potential over a face or a rectangle of it, with finer panels where its bound asks for them."""
         for number, spot in enumerate(self._base.spots):
             if rectangle is not None and spot.face == face and spot.is_held and _lies_in(rectangle, spot.where):
                 return self._level(number)
-        return change_of([solution.mean(face, rectangle, tolerance=tolerance) for solution in self._here.solutions])
+        count = self.count
+        while True:
+            solutions = self._ladder.at(count).solutions
+            found = change_of([solution.mean(face, rectangle, tolerance=tolerance) for solution in solutions])
+            finer = self._ladder.finer(count, _over(found.error_bound, tolerance), ORDER_OF_FIELDS)
+            if finer is None:
+                return found
+            count = finer
 
     def face_total(
         self, face: Face, rectangle: Rectangle | None = None, *, gap: float | None = None, tolerance: float
@@ -420,7 +430,7 @@ class MixedSolution(Solution):
         return replace(totals[0], value=found.value, error_bound=found.error_bound, with_gap=with_gap)
 
     def balance(self, *, gap: float | None = None, tolerance: float) -> Balance:
-        """Inflow of every face, generation, and what is left over; of the finest panels alone where a face is unbounded."""
+        """Inflow of every face, generation, and what is left over; of the finest panels where a face is unbounded."""
         books = self._here.solutions[0].balance(gap=gap, tolerance=tolerance)
         inflow = {face: self.face_total(face, gap=gap, tolerance=tolerance) for face in books.inflow}
         books = replace(books, inflow=inflow)

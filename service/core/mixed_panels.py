@@ -70,6 +70,19 @@ class System:
         """A value of each spot, repeated for its panels."""
         return np.repeat(values, [grid.count for grid in self.grids], axis=0)
 
+    def solve(self, potentials: FloatArray) -> FloatArray:
+        """Flows of the panels that bring about mean potentials, shape (number of panels, n) each."""
+        matrix = self.matrix.copy()
+        areas = np.concatenate([grid.areas for grid in self.grids])
+        matrix.flat[:: areas.size + 1] += 1 / (areas * self.spread(np.array([spot.excess for spot in self.base.spots])))
+        # The transpose is the same and in the order of LAPACK.
+        factor = cho_factor(matrix.T, check_finite=False, overwrite_a=True)
+        return np.asarray(cho_solve(factor, potentials, check_finite=False))
+
+    def summed(self, flows: FloatArray) -> FloatArray:
+        """Total of each spot, shape (number of spots, n), of flows of the panels."""
+        return np.add.reduceat(flows, self.starts[:-1], axis=0)
+
     def halved(self, means: FloatArray) -> tuple[System, FloatArray]:
         """The equations with half as many panels along each axis, and the means over those."""
         rows = self._gathered(self.matrix)
@@ -124,13 +137,8 @@ def solve_system(
     columns = [system.spread(known) - means]
     columns += [system.spread((np.arange(len(spots)) == index).astype(float)) for index in floating]
     columns += [-np.ones(means.size)] if constant else []
-    areas = np.concatenate([grid.areas for grid in system.grids])
-    excess = system.spread(np.array([spot.excess for spot in spots]))
-    matrix = system.matrix.copy()
-    matrix.flat[:: means.size + 1] += 1 / (areas * excess)
-    factor = cho_factor(matrix, check_finite=False, overwrite_a=True)
-    answers = cho_solve(factor, np.stack(columns, axis=1), check_finite=False)
-    sums = np.add.reduceat(answers, system.starts[:-1], axis=0)
+    answers = system.solve(np.stack(columns, axis=1))
+    sums = system.summed(answers)
     # The base lets in its own share of a given flow: least (ambient - level).
     least = np.array([base.coefficients[spot.face] * spot.area for spot in spots])[floating]
     ambient = np.array([_usual(base, spot.face) for spot in spots])[floating]

@@ -42,8 +42,9 @@ COUNTS = (8, 12, 16, 24, 32, 48, 64)
 LEVELS = 3
 
 # Panels that grow with the power GRADING of their number are about as wide as they are far from the border, at a
-# distance r of a length L from it, with RESOLVING (L / r)^RESOLVING_POWER panels. Fewer do not see what is at r.
-RESOLVING, RESOLVING_POWER = 5.5, 0.2
+# distance r of a length L from it, with RESOLVING (L / r)^RESOLVING_POWER panels. Fewer do not see what is at r, and
+# their changes tell nothing of the error. Two held pads of a length 0.8 with gaps of 0.03 to 0.0001 set the number.
+RESOLVING, RESOLVING_POWER = 8.0, 0.2
 
 # Where more panels than allowed would see all, bounds are widened by the ratio with this power.
 UNRESOLVED_POWER = 3.0
@@ -53,8 +54,10 @@ UNRESOLVED_POWER = 3.0
 SAFETY = 6.0
 
 # The error is not told as less than this part of the first extrapolation, so that a step that vanishes by chance does
-# not count; nor as less than what changes would come to that go on to fall at their pace, or at the slowest.
+# not count; nor as less than what changes would come to that go on to fall at their pace, or at the slowest. Below this
+# part of the final pace it may still become slower, and counts with this power.
 LEAST_STEP, PACE_SAFETY, SLOWEST_PACE = 0.1, 1.5, 1.25
+RESOLVED_PACE, UNRESOLVED_PACE = 0.75, 0.75
 
 # A change from one refinement to the next is at least this part of the change before it: fields gain an order two.
 LEAST_CHANGE = 0.25
@@ -221,8 +224,10 @@ def extrapolated(values: Sequence[Bounded], *, held: bool) -> Bounded:
     change = fine - middle
     if change == 0.0:
         return Bounded(twice, SAFETY * abs(twice - once) + 2 * max(value.error_bound for value in values))
-    # As if the changes went on to fall as they do, which panels that do not resolve a narrow gap yet show as too slow.
+    # As if the changes went on to fall as they do, or more slowly while panels do not resolve a narrow gap yet.
     pace = max(abs((middle - coarse) / change), SLOWEST_PACE)
+    if pace < RESOLVED_PACE * 2.0**order:
+        pace **= UNRESOLVED_PACE
     further = fine + change / (pace - 1)
     error = max(SAFETY * abs(twice - once), LEAST_STEP * abs(once - fine), PACE_SAFETY * abs(further - twice))
     return Bounded(twice, error + 2 * max(value.error_bound for value in values))

@@ -1,0 +1,137 @@
+"""Conductances between the held pads of a body's mixed faces: the flow through each for a unit of potential at another.
+
+Everything else is at rest: held faces and ambients at zero, nothing given, nothing generated. The matrix G of flows
+into the body is symmetric by reciprocity; -G_ij joins pads i and j, and the sum of a row joins its pad with the
+environment.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core import time_error
+from service.core.errors import NotPhysical
+from service.core.field import KeepGoing
+from service.core.mixed import LEAST_OF_WORST, MOST_PANELS, ORDER_OF_TOTALS
+from service.core.mixed_base import base_of, pads_of
+from service.core.mixed_panels import System, needs_balance, system_of
+from service.core.mixed_refinement import LEVELS, Ladder
+from service.core.panels import STEP
+from service.core.problem import Body, Face
+from service.core.totals import Bounded
+
+FloatArray = NDArray[np.float64]
+
+
+@dataclass(frozen=True, eq=False)
+class PadNetwork:
+    """What joins held pads.
+
+    pads: face, index and name of each. conductance, error_bound: shape (n, n), flow into the body through pad i for a
+    unit of potential at pad j, all others at zero; symmetric. closed: whether nothing but the pads takes up a flow, so
+    that rows add up to zero.
+    """
+
+    pads: tuple[tuple[Face, int, str | None], ...]
+    conductance: FloatArray
+    error_bound: FloatArray
+    closed: bool
+    _levels: tuple[FloatArray, ...]
+    _ladder: Ladder
+
+    @cached_property
+    def to_environment(self) -> FloatArray:
+        """Conductance from each pad to all that is not a pad, shape (n,); zero in a closed body."""
+        return np.zeros(len(self.pads)) if self.closed else self.conductance.sum(axis=1)
+
+    def resistance(self, first: int, second: int) -> Bounded:
+        """Potential between two pads per flow from one to the other, the other pads letting nothing through."""
+        if first == second:
+            return Bounded(0.0, 0.0)
+        drive = np.zeros(len(self.pads))
+        drive[first], drive[second] = 1.0, -1.0
+        found = []
+        for matrix in self._levels:
+            # In a closed body the level is free, and the equations are consistent.
+            potential = np.linalg.lstsq(matrix, drive, rcond=None)[0] if self.closed else np.linalg.solve(matrix, drive)
+            value = float(potential @ drive)
+            found.append(Bounded(value, _rounding(matrix) * value**2))
+        return self._ladder.limit(found)
+
+
+def pad_network(
+    body: Body, *, accuracy: float = 1e-6, most_panels: int = MOST_PANELS, keep_going: KeepGoing | None = None
+) -> PadNetwork:
+    """The network of a body's held pads, those with a given flow included.
+
+    accuracy: of every conductance, in parts of the largest. Where `most_panels` do not suffice the bounds say what was
+    reached. Raises NotPhysical where no pad is held or a pad touches another.
+    """
+    ladder = Ladder(body, base_of(body), most_panels, keep_going)
+    base = ladder.base
+    held = [number for number, spot in enumerate(base.spots) if spot.is_held]
+    if not held:
+        raise NotPhysical("No pad is held; conductances join held pads.", ("faces", base.faces[0], "pads"))
+    count = ladder.counts[0]
+    while True:
+        if keep_going is not None:
+            keep_going()
+        levels, system = [], system_of(base, count)
+        for level in range(LEVELS):
+            levels.append(_conductances(system, held))
+            if level < LEVELS - 1:
+                system, _ = system.halved(np.zeros(system.matrix.shape[0]))
+        network = _limit(ladder, held, levels)
+        missed = float(network.error_bound.max()) / (accuracy * float(np.abs(network.conductance).max()))
+        finer = ladder.finer(count, missed, ORDER_OF_TOTALS)
+        if finer is None:
+            return network
+        count = finer
+
+
+def _rounding(matrix: FloatArray) -> float:
+    """What the rule in time may take an entry off by."""
+    return time_error.step_error(STEP) * float(np.abs(matrix).max())
+
+
+def _limit(ladder: Ladder, held: Sequence[int], levels: Sequence[FloatArray]) -> PadNetwork:
+    base, n = ladder.base, len(held)
+    values, bounds = np.empty((n, n)), np.empty((n, n))
+    for i in range(n):
+        for j in range(i + 1):
+            entries = [Bounded(float(matrix[i, j]), _rounding(matrix)) for matrix in levels]
+            found = ladder.limit(entries)
+            values[i, j] = values[j, i] = found.value
+            bounds[i, j] = bounds[j, i] = found.error_bound
+    # The error of an entry is a product of what its two pads err by alone, and is not told as less than a part of it.
+    alone = np.sqrt(np.diag(bounds))
+    bounds = np.maximum(bounds, LEAST_OF_WORST * np.outer(alone, alone))
+    pads = []
+    for number in held:
+        spot = base.spots[number]
+        assert spot.pad is not None
+        pads.append((spot.face, spot.pad, pads_of(ladder.body, spot.face)[spot.pad].name))
+    return PadNetwork(tuple(pads), values, bounds, needs_balance(base), tuple(levels), ladder)
+
+
+def _conductances(system: System, held: Sequence[int]) -> FloatArray:
+    """Flow through each held spot for a unit of potential at each, at one refinement."""
+    units = np.eye(len(system.grids))[:, list(held)]
+    potentials = system.spread(units)
+    if not needs_balance(system.base):
+        flows = system.summed(system.solve(potentials))
+    else:
+        answers = system.solve(np.column_stack([potentials, np.ones(len(potentials))]))
+        flows, even = system.summed(answers[:, :-1]), system.summed(answers[:, -1:])
+        # The constant left open is such that flows balance.
+        flows = flows - even @ (flows.sum(axis=0) / even.sum())[None, :]
+    spots = [system.base.spots[number] for number in held]
+    # The base's film lets out its share of each, whose ambient is at zero.
+    through_base = np.diag([system.base.coefficients[spot.face] * spot.area for spot in spots])
+    matrix = flows[list(held)] - through_base
+    return 0.5 * (matrix + matrix.T)
