@@ -438,11 +438,14 @@ class MixedSolution(Solution):
         bounds = [total.error_bound for total in inflow.values() if total.error_bound is not None]
         if books.residual is None or len(values) < len(inflow):
             return books
-        if books.carried_off is not None:
-            values.append(-books.carried_off.value)
-            bounds.append(books.carried_off.error_bound)
+        carried_off = books.carried_off
+        if carried_off is not None:
+            rest = [solution.balance(gap=gap, tolerance=tolerance).carried_off for solution in self._here.solutions[1:]]
+            carried_off = self._ladder.limit([carried_off, *(off for off in rest if off is not None)])
+            values.append(-carried_off.value)
+            bounds.append(carried_off.error_bound)
         residual, bound = math.fsum([books.generation, *values]), math.fsum(bounds)
-        return replace(books, residual=residual, error_bound=bound, closed=abs(residual) <= bound)
+        return Balance(inflow, books.generation, residual, bound, abs(residual) <= bound, carried_off)
 
     def certificate(self, points: FloatArray, error_bound: float, *, tolerance: float) -> Certificate:
         """What stands behind an answer with that bound: both representations of the field of the finest panels."""
