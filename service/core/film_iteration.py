@@ -342,6 +342,9 @@ def _first_axis(body: Body, face: Face, index: int) -> FaceAxis:
     begin, end = body.begins[axis], body.size[axis]
     ambient = ambient_of(body, face)
     knots = ambient.first_knots if index == 0 else ambient.second_knots
+    if ambient.curved[index]:
+        # The pieces of a formula are no places where anything happens, but for its kinks.
+        knots = np.array(ambient.kinks[index])
     knots = knots[np.isfinite(knots)]
     finite = [place for place in (begin, end) if math.isfinite(place)]
     if len(finite) < 2:

@@ -336,19 +336,15 @@ class Body:
                     self._check_formula(face, condition)
 
     def _check_formula(self, face: Face, condition: Condition) -> None:
-        """Where a formula is not offered: under a varying conductivity, and where inflows have to balance exactly."""
-        reason = None
-        if self.law is not None:
-            reason = f"The formula on {face} needs a conductivity that does not vary; use patches or readings."
-        elif isinstance(condition, Inflow) and not any(
+        """Where a formula is not offered: where inflows have to balance exactly."""
+        if isinstance(condition, Inflow) and not any(
             isinstance(other, Held | Film | Mixed) for other in self.faces.values()
         ):
-            reason = (
+            raise NotPhysical(
                 f"The formula on {face} gives an inflow where no face is held or has a film; inflows have to balance "
-                "exactly then, so use patches or readings."
+                "exactly then, so use patches or readings.",
+                ("faces", face),
             )
-        if reason is not None:
-            raise NotPhysical(reason, ("faces", face))
 
     def _check_mixed(self, face: Face, mixed: Mixed) -> None:
         if isinstance(mixed.background, Film):

@@ -104,9 +104,7 @@ class Solution:
 
         unit: follow a unit change all over the face in place of its data. tolerance: in parts of the largest size.
         """
-        return reach(
-            self._setting, face, fractions, unit=unit, modes=modes, tolerance=tolerance, keep_going=keep_going
-        )
+        return reach(self._setting, face, fractions, unit=unit, modes=modes, tolerance=tolerance, keep_going=keep_going)
 
     def certificate(self, points: FloatArray, error_bound: float, *, tolerance: float) -> Certificate:
         """What stands behind an answer with that bound: agreement of both representations at some of its points."""

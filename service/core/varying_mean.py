@@ -59,7 +59,7 @@ def _of_map(condition: Held | Film, rectangle: Rectangle) -> Bounded:
     assert face_map is not None
     low, high = (rectangle.p_low, rectangle.q_low), (rectangle.p_high, rectangle.q_high)
     value, size = map_integral(face_map, low, high)
-    return Bounded(value / rectangle.area, GIVEN * size / rectangle.area)
+    return Bounded(value / rectangle.area, GIVEN * size / rectangle.area + face_map.error)
 
 
 def _by_panels(

@@ -48,6 +48,7 @@ EVIDENCE = {
     "products",
     "cost_ratio",
     "residual",
+    "steps",
 }
 
 
@@ -61,7 +62,9 @@ def check_alike(found: Any, expected: Any, where: str = "", bound: float = 0.0) 
         ]
         for key in expected:
             is_evidence = key in EVIDENCE or key.endswith(BOUND)
-            if is_evidence or (key == "at" and (where.startswith(("/extremes", "/reach")) or where.endswith("/largest"))):
+            if is_evidence or (
+                key == "at" and (where.startswith(("/extremes", "/reach")) or where.endswith("/largest"))
+            ):
                 # An extreme's value is determined, its place only to where the field is flat within the bound.
                 assert type(found[key]) is type(expected[key]), f"{where}/{key}"
             else:

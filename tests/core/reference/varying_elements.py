@@ -65,7 +65,7 @@ def solve_varying(case: VaryingCase, cells: int, start: float) -> Callable[[Floa
             matrix, residual = matrix + more, residual + rest
         change = _step(matrix, residual, fixed)
         u = u + change
-        if np.abs(change).max() < 1e-9 * np.abs(u).max():
+        if np.abs(change).max() < 1e-7 * np.abs(u).max():
             break
     else:
         raise AssertionError("the iteration did not converge")
