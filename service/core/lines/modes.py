@@ -153,8 +153,7 @@ def _bend_integrals(modes: Modes, bends: FloatArray, knots: FloatArray) -> Float
     even, odd = modes.at(middle, VALUE).T, modes.at(middle, SLOPE).T / waves
     turns = (even, odd, -even, -odd)
     moments = [
-        2 * half * spherical_jn(k, modes.wave_numbers[:, None] * half) * turns[k % 4]
-        for k in range(bends.shape[0] + 2)
+        2 * half * spherical_jn(k, modes.wave_numbers[:, None] * half) * turns[k % 4] for k in range(bends.shape[0] + 2)
     ]
     total = np.zeros((even.shape[0], bends.shape[2]))
     for k, weights in enumerate(bends):
