@@ -67,6 +67,9 @@ class Solution:
         """Whether the data leave the level open and the field is counted from its own mean."""
         return level_is_pinned(self.body)
 
+    def prepare(self, *, tolerance: float, keep_going: KeepGoing | None = None) -> None:
+        """Do ahead, where it can be stopped, what all answers of an accuracy share; nothing where nothing is iterated."""
+
     def field(
         self, grid: Grid, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
     ) -> Field:

@@ -105,6 +105,10 @@ class VaryingSolution(Solution):
         """The accuracy that answers have unless another is asked for, in parts of the span."""
         return self._usual
 
+    def prepare(self, *, tolerance: float, keep_going: KeepGoing | None = None) -> None:
+        """Iterate as far as answers of an accuracy need."""
+        self._within(tolerance, keep_going)
+
     def field(
         self, grid: Grid, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
     ) -> Field:

@@ -58,7 +58,7 @@ def answer_convergence(
     bounds = []
     for point in wanted.points:
         keep_going()
-        (found,) = solution.convergence(np.array([point.place]), tolerance=wanted.tolerance)
+        (found,) = solution.convergence(np.array([point.place]), tolerance=wanted.tolerance, keep_going=keep_going)
         points.append(({} if point.name is None else {"name": point.name}) | _point(point, found))
         bounds.append(float(found.error_bound))
     keep_going()

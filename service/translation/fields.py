@@ -189,6 +189,7 @@ def answer_fields(
     problem: ReadProblem, solution: Solution, wanted: FieldsWanted, keep_going: KeepGoing
 ) -> dict[str, Any]:
     """The answer, with numpy arrays for its tables."""
+    solution.prepare(tolerance=wanted.tolerance, keep_going=keep_going)
     answering = _Answering(problem, solution, wanted, keep_going)
     answer: dict[str, Any] = {
         "grids": [answering.grid(index, grid) for index, grid in enumerate(wanted.grids)],

@@ -68,6 +68,7 @@ def answer_totals(
     """The answer to a question about totals."""
     units = problem.units
     warnings = answers.problem_warnings(problem, solution)
+    solution.prepare(tolerance=wanted.tolerance, keep_going=keep_going)
 
     def shown(total: Total, word: str, where: str) -> dict[str, Any]:
         keep_going()
@@ -111,7 +112,8 @@ def answer_totals(
 
 
 def check_cost(wanted: TotalsWanted, solution: Solution, settings: Settings, bytes_a_number: int) -> None:
-    """Totals are integrals of factors: their number is bounded, and the time limit bounds the rest."""
+    """Raise TooCostly where getting ready takes too much; the number of totals is bounded, and each is cheap."""
+    cost.check_work([solution.estimate_points(1, tolerance=wanted.tolerance)], settings)
 
 
 def _total(units: UnitSystem, total: Total, word: str) -> dict[str, Any]:

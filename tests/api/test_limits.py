@@ -14,6 +14,7 @@ import pytest
 from service.app import create_app
 from service.core.errors import Interrupted
 from service.middleware import BodyLimit
+from service.models.evaluate import Question
 from service.settings import Settings
 from service.translation.solving import Solved, Solver
 from service.worker import KeepGoing, Worker
@@ -36,9 +37,9 @@ def held_up(monkeypatch: pytest.MonkeyPatch) -> Iterator[threading.Event]:
     go = threading.Event()
     solve = Solver.of_question
 
-    def wait_and_solve(self: Solver, question: object) -> Solved:
+    def wait_and_solve(self: Solver, question: Question, keep_going: KeepGoing | None = None) -> Solved:
         assert go.wait(20)
-        return solve(self, question)  # type: ignore[arg-type]
+        return solve(self, question, keep_going)
 
     monkeypatch.setattr(Solver, "of_question", wait_and_solve)
     try:
