@@ -40,6 +40,10 @@ HEADROOM = 1e-3
 # What a flow per length far along has to exceed to go on without end, in terms of its bound.
 FAR_BOUNDS = 4.0
 
+# Means over rectangles whose sides differ by more than this factor are had one after another: the widest of some says
+# how all of them are integrated.
+LIKE_SIZE = 4.0
+
 # Rounding of a given inflow integrated from the products of its map, relative to their sizes.
 GIVEN = 2e-15
 
@@ -97,23 +101,31 @@ def mean(setting: Setting, face: Face, rectangle: Rectangle | None, tolerance: f
 
 
 def means(setting: Setting, face: Face, rectangles: Sequence[Rectangle], tolerance: float) -> list[Bounded]:
-    """Means of the potential over rectangles of a face, all at once."""
+    """Means of the potential over rectangles of a face, those of about the same size at once."""
     axis = axis_of(face)
+    checked = [checked_rectangle(setting.body, axis, rectangle) for rectangle in rectangles]
+    if any(endless_sides(rectangle) for rectangle in checked):
+        raise NotPhysical("The mean over a side without end is not defined; name a rectangle of it.", ("rectangle",))
     first, second = axes_along(axis)
     scale = setting.lines[first].scale * setting.lines[second].scale
-    found = []
-    run = points_at_once(setting)
-    for start in range(0, len(rectangles), run):
-        some = [checked_rectangle(setting.body, axis, rectangle) for rectangle in rectangles[start : start + run]]
-        if any(endless_sides(rectangle) for rectangle in some):
-            raise NotPhysical(
-                "The mean over a side without end is not defined; name a rectangle of it.", ("rectangle",)
-            )
+    found: dict[int, Bounded] = {}
+    for numbers in _of_like_size(checked, points_at_once(setting)):
+        some = [checked[number] for number in numbers]
         values, bounds = _integrals(setting, axis, setting.body.end_of(face), some, VALUE, tolerance)
-        for rectangle, value, bound in zip(some, values, bounds, strict=True):
-            area = scale * rectangle.area
-            found.append(Bounded(setting.reference + float(value) / area, float(bound) / area + setting.map_error))
-    return found
+        areas = scale * np.array([rectangle.area for rectangle in some])
+        for number, value, bound in zip(numbers, values / areas, bounds / areas, strict=True):
+            found[number] = Bounded(setting.reference + float(value), float(bound) + setting.map_error)
+    return [found[number] for number in range(len(checked))]
+
+
+def _of_like_size(rectangles: Sequence[Rectangle], most: int) -> list[list[int]]:
+    """Numbers of rectangles that a line integrates in the same way: within a factor LIKE_SIZE, so many at the most."""
+    groups: dict[tuple[int, int], list[int]] = {}
+    for number, where in enumerate(rectangles):
+        width, height = where.p_high - where.p_low, where.q_high - where.q_low
+        size = (math.floor(math.log(width, LIKE_SIZE)), math.floor(math.log(height, LIKE_SIZE)))
+        groups.setdefault(size, []).append(number)
+    return [group[start : start + most] for group in groups.values() for start in range(0, len(group), most)]
 
 
 def plane_total(
