@@ -283,7 +283,7 @@ def _flow(setting: Setting, axis: int, position: float, rectangle: Rectangle, si
 
 
 def _of_maps(setting: Setting, axis: int, position: float, rectangle: Rectangle) -> float:
-    """What the flow may be off by because maps stand for formulas; far along an endless axis nothing is left of that."""
+    """What the flow may be off by because maps stand for formulas; far along endless axes nothing is left of it."""
     for index, high in endless_sides(rectangle):
         far = far_along(setting, axes_along(axis)[index], high=high)
         low, top = [(rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high)][index]
