@@ -68,7 +68,7 @@ class Solution:
         return level_is_pinned(self.body)
 
     def prepare(self, *, tolerance: float, keep_going: KeepGoing | None = None) -> None:
-        """Do ahead, where it can be stopped, what all answers of an accuracy share; nothing where nothing is iterated."""
+        """Do ahead, where it can be stopped, what all answers of an accuracy share, if anything is iterated."""
 
     def field(
         self, grid: Grid, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None

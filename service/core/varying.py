@@ -55,7 +55,7 @@ STORED = 2e-15
 USUAL_ITERATED, EVEN = 1e-4, 1e-9
 
 # Steps of the iteration that a tenfold accuracy takes, about, on a face with about so many places along each axis.
-STEPS, PLACES = 8, 80
+STEPS, PLACES = 10, 150
 
 
 class VaryingSolution(Solution):
@@ -70,7 +70,6 @@ class VaryingSolution(Solution):
         self._films = first_faces(self._data)
         self._steps = 0
         self._find_range(keep_going)
-        self._flow_error = FlowError(self._data, self._iterated)
         varies = any(np.ptp(film.assumed) > EVEN * np.abs(film.assumed).max() for film in self._films)
         varies |= self._iterated.setting.map_error > EVEN * self._iterated.setting.span
         self._usual = USUAL_ITERATED if varies else super().usual_accuracy
@@ -234,7 +233,7 @@ class VaryingSolution(Solution):
             # What the iteration leaves over far along a face goes on without end; the flow itself does not.
             total = totals.face_total(iterated.setting, face, self._with_ends(face, where), gap, theta)
         causes = unbounded_lines(self._body, face, where) if isinstance(self._body.faces[face], Held) else []
-        return _widened(total, self._flow_error.face_total(face, where), [cause for cause, _ in causes])
+        return _widened(total, FlowError(self._data, iterated).face_total(face, where), [cause for cause, _ in causes])
 
     def plane_total(
         self,
@@ -254,7 +253,9 @@ class VaryingSolution(Solution):
         where = totals.checked_rectangle(self._body, axis, rectangle)
         total = totals.plane_total(iterated.setting, axis, position, where, gap, FIELD * self._in_theta(tolerance))
         causes = unbounded_plane_lines(self._body, axis, position, where)
-        return _widened(total, self._flow_error.plane_total(axis, position, where), [cause for cause, _ in causes])
+        return _widened(
+            total, FlowError(self._data, iterated).plane_total(axis, position, where), [cause for cause, _ in causes]
+        )
 
     def balance(self, *, gap: float | None = None, tolerance: float) -> Balance:
         """Inflow of every face, generation, and what is left over of the field in theta, which is exactly balanced."""
@@ -354,7 +355,6 @@ class VaryingSolution(Solution):
             if self._iterated.error > wanted:
                 with _In(self, tolerance, ITERATION):
                     self._prepare(wanted, keep_going)
-                self._flow_error = FlowError(self._data, self._iterated)
             return self._iterated
 
     def _in_theta(self, tolerance: float) -> float:
@@ -369,7 +369,7 @@ class VaryingSolution(Solution):
         bound = float(off.max(initial=0.0)) + STORED * size
         flux_bound = found.flux_bound
         if flux_bound is not None:
-            flux_bound = flux_bound + self._flow_error.flux(places, flux_bound.shape)
+            flux_bound = flux_bound + FlowError(self._data, iterated).flux(places, flux_bound.shape)
         return replace(found, potential=potential, potential_bound=bound, flux_bound=flux_bound)
 
     def _place(self, found: Place, iterated: Iterated) -> Place:
