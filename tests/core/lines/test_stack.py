@@ -148,7 +148,7 @@ def compare(found: NDArray[np.inexact], wanted: list[Number], least: float, what
         assert off <= 1e-11 * max(abs(number), least) + 1e-290, what
 
 
-@pytest.mark.parametrize("seed", range(4))
+@pytest.mark.parametrize("seed", range(3))
 def test_answer_at_times_is_the_inverse_of_the_transform(seed: int) -> None:
     """Off by no more than what every bound allows for rounding: a part of what the answer is summed from.
 
@@ -162,7 +162,7 @@ def test_answer_at_times_is_the_inverse_of_the_transform(seed: int) -> None:
 
     for name, (drive, given) in found.drives.items():
         answers = [respond(found.line, drive, found.asked(order), times) for order in ORDERS.values()]
-        for index in (0, 20, 33):
+        for index in (0, 28):
             wanted = iter(exact.in_time(found.cut, given, read, float(times[index])))
             for what, answer in zip(ORDERS, answers, strict=True):
                 assert answer.carried is not None

@@ -19,6 +19,7 @@ from service.core import (
     Held,
     Inflow,
     Insulated,
+    Layer,
     Patch,
     Rectangle,
 )
@@ -74,18 +75,37 @@ class Case:
 
     def body(self) -> Body:
         """The same body for the core."""
-        conditions = {face: self._condition(face) for face in self.faces}
+        conditions = {face: _condition(self.walls[face], self.extent(face)) for face in self.faces}
         boxes = tuple(BoxSource(low, high, density) for low, high, density in self.sources)
         return Body(self.size, self.conductivity, conditions, boxes)
 
-    def _condition(self, face: Face) -> Held | Inflow | Film | Insulated:
-        wall = self.walls[face]
-        if wall.kind == "N" and wall.data == 0.0:
-            return Insulated()
-        data = _face_map(wall.data, self.extent(face))
-        if wall.kind == "D":
-            return Held(data)
-        return Inflow(data) if wall.kind == "N" else Film(wall.coefficient, data)
+
+@dataclass(frozen=True)
+class Stack:
+    """A stack of layers (thickness, (kx, ky, kz), contact below, generation) from z_low up."""
+
+    section: tuple[float, float]
+    layers: tuple[tuple[float, tuple[float, float, float], float, float], ...]
+    walls: Mapping[Face, Wall]
+
+    def body(self) -> Body:
+        """The same body for the core."""
+        height = math.fsum(layer[0] for layer in self.layers)
+        lengths = (*self.section, height)
+        conditions: dict[Face, Held | Inflow | Film | Insulated] = {}
+        for face in FACES:
+            p, q = (length for axis, length in zip("xyz", lengths, strict=True) if axis != face[0])
+            conditions[face] = _condition(self.walls[face], (p, q))
+        return Body.stack(self.section, [Layer(*layer) for layer in self.layers], conditions)
+
+
+def _condition(wall: Wall, extent: tuple[float, float]) -> Held | Inflow | Film | Insulated:
+    if wall.kind == "N" and wall.data == 0.0:
+        return Insulated()
+    data = _face_map(wall.data, extent)
+    if wall.kind == "D":
+        return Held(data)
+    return Inflow(data) if wall.kind == "N" else Film(wall.coefficient, data)
 
 
 def _face_map(data: Data, extent: tuple[float, float]) -> FaceMap:

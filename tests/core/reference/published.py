@@ -11,7 +11,7 @@ from pathlib import Path
 from typing import Any
 
 from service.core import Face
-from tests.core.reference.cases import Case, Cells, Data, Wall
+from tests.core.reference.cases import Case, Cells, Data, Stack, Wall
 
 KINDS = {"held": "D", "inflow": "N", "film": "R"}
 
@@ -40,7 +40,7 @@ class Quantity:
     source: str
     how: str
     details: Mapping[str, Any]
-    case: Case | None
+    case: Case | Stack | None
     printed: Printed | None
     value: float | None
 
@@ -70,8 +70,10 @@ def _quantity(case: Mapping[str, Any], quantity: Mapping[str, Any]) -> Quantity:
     )
 
 
-def _case(body: Mapping[str, Any], quantity: Mapping[str, Any]) -> Case:
+def _case(body: Mapping[str, Any], quantity: Mapping[str, Any]) -> Case | Stack:
     """The case's body with the changes a quantity asks for: another size, faces held or insulated."""
+    if "layers" in body:
+        return _stack(body)
     size = [math.inf if s == "semi-infinite" else float(s) for s in quantity.get("size", body["size"])]
     walls: dict[Face, Wall] = {face: _wall(wall) for face, wall in body["faces"].items()}
     walls |= {face: Wall("D", float(value)) for face, value in quantity.get("held_at", {}).items()}
@@ -80,6 +82,16 @@ def _case(body: Mapping[str, Any], quantity: Mapping[str, Any]) -> Case:
     whole = ((0.0, 0.0, 0.0), (size[0], size[1], size[2]), source)
     kx, ky, kz = map(float, body["conductivity"])
     return Case((size[0], size[1], size[2]), (kx, ky, kz), walls, (whole,) if source else ())
+
+
+def _stack(body: Mapping[str, Any]) -> Stack:
+    """A stack, its layers from z_low up."""
+    layers = []
+    for layer in body["layers"]:
+        kx, ky, kz = map(float, layer["conductivity"])
+        layers.append((float(layer["thickness"]), (kx, ky, kz), float(layer.get("contact_below", math.inf)), 0.0))
+    a, b = map(float, body["section"])
+    return Stack((a, b), tuple(layers), {face: _wall(wall) for face, wall in body["faces"].items()})
 
 
 def _wall(wall: Mapping[str, Any]) -> Wall:
