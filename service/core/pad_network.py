@@ -8,7 +8,7 @@ environment.
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -44,10 +44,60 @@ class PadNetwork:
     _levels: tuple[FloatArray, ...]
     _ladder: Ladder
 
-    @cached_property
+    @property
     def to_environment(self) -> FloatArray:
         """Conductance from each pad to all that is not a pad, shape (n,); zero in a closed body."""
-        return np.zeros(len(self.pads)) if self.closed else self.conductance.sum(axis=1)
+        return self._to_environment[0]
+
+    @property
+    def to_environment_bound(self) -> FloatArray:
+        """Bounds of the conductances to the environment, shape (n,)."""
+        return self._to_environment[1]
+
+    @cached_property
+    def _to_environment(self) -> tuple[FloatArray, FloatArray]:
+        if self.closed:
+            return np.zeros(len(self.pads)), np.zeros(len(self.pads))
+        # Much less than the entries where pads are close: their sums converge by themselves.
+        return self._limits([matrix.sum(axis=1) for matrix in self._levels], len(self.pads) * self._rounding_of_finest)
+
+    def part(self, numbers: Sequence[int]) -> PadNetwork:
+        """The network of some of the pads; the others are held at zero, like the rest of the environment."""
+        block = np.ix_(numbers, numbers)
+        return replace(
+            self,
+            pads=tuple(self.pads[number] for number in numbers),
+            conductance=self.conductance[block],
+            error_bound=self.error_bound[block],
+            closed=self.closed and len(numbers) == len(self.pads),
+            _levels=tuple(matrix[block] for matrix in self._levels),
+        )
+
+    def rises(self) -> tuple[FloatArray, FloatArray]:
+        """Rise of each pad (row) above the environment for a unit of flow into each (column), the others passing none.
+
+        With bounds, shape (n, n) each. Raises NotPhysical in a closed body, whose level is free.
+        """
+        if self.closed:
+            raise NotPhysical("Nothing but the pads takes up a flow; their rises above an environment have no value.")
+        inverses = [np.asarray(np.linalg.inv(matrix), dtype=float) for matrix in self._levels]
+        sums = np.abs(inverses[0]).sum(axis=1)
+        return self._limits(inverses, self._rounding_of_finest * np.outer(sums, sums))
+
+    @property
+    def _rounding_of_finest(self) -> float:
+        return _rounding(self._levels[0])
+
+    def _limits(self, levels: Sequence[FloatArray], rounding: float | FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Limits of arrays at the three levels of a refinement, entry by entry, and their bounds."""
+        values, bounds = np.empty(levels[0].shape), np.empty(levels[0].shape)
+        allowed = np.broadcast_to(rounding, levels[0].shape)
+        for index in np.ndindex(*levels[0].shape):
+            entries = [Bounded(float(level[index]), float(allowed[index])) for level in levels]
+            found = self._ladder.limit(entries)
+            values[index], bounds[index] = found.value, found.error_bound
+        # No entry errs by much less than the others: they are of one field.
+        return values, np.maximum(bounds, LEAST_OF_WORST * bounds.max(initial=0.0))
 
     def resistance(self, first: int, second: int) -> Bounded:
         """Potential between two pads per flow from one to the other, the other pads letting nothing through."""
@@ -116,7 +166,8 @@ def _limit(ladder: Ladder, held: Sequence[int], levels: Sequence[FloatArray]) ->
         spot = base.spots[number]
         assert spot.pad is not None
         pads.append((spot.face, spot.pad, pads_of(ladder.body, spot.face)[spot.pad].name))
-    return PadNetwork(tuple(pads), values, bounds, needs_balance(base), tuple(levels), ladder)
+    closed = needs_balance(base) and all(spot.is_held for spot in base.spots)
+    return PadNetwork(tuple(pads), values, bounds, closed, tuple(levels), ladder)
 
 
 def _conductances(system: System, held: Sequence[int]) -> FloatArray:

@@ -61,8 +61,20 @@ class InflowTotal(Model):
     with_gap: InflowWithGap | None = Field(None, description="The inflow with the gap, if `edge_gap` was named.")
 
 
+class PadLevel(Model):
+    """A potential of a pad of a mixed face."""
+
+    value: float = Field(description="The potential; unit `potential`.", examples=[12.7])
+    error_bound: float = Field(description="It is not further off; unit `potential_difference`.", examples=[1e-5])
+
+
 class PartInflowTotal(PartAnswer, InflowTotal):
     """Total inflow of a part of a face."""
+
+    potential: PadLevel | None = Field(
+        None,
+        description="Of a pad of a mixed face: the level of a held pad, given or found; the mean over a film pad.",
+    )
 
 
 class PlaneFlowTotal(Model):

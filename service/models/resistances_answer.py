@@ -44,16 +44,20 @@ class ResistancesCertificate(Model):
     """Evidence for the matrix."""
 
     error_bound: float = Field(
-        description="No mean rise per unit flow is further off than this; unit `resistance`.", examples=[2e-9]
+        description="No mean rise per unit flow, of held pads no entry of `pairs`, is further off than this; unit "
+        "`resistance`.",
+        examples=[2e-9],
     )
     accuracy_asked: float = Field(description="The accuracy that was asked for; unit `resistance`.", examples=[1e-8])
-    agreement: float = Field(
+    agreement: float | None = Field(
         description="Entries between some pads were computed once more by the general integral, from pad to pad and "
-        "back: the largest difference from the matrix, which is symmetric by reciprocity; unit `resistance`.",
+        "back: the largest difference from the matrix, which is symmetric by reciprocity; unit `resistance`. null "
+        "for held pads.",
         examples=[4e-12],
     )
-    agreement_bound: float = Field(
-        description="What that difference may be by the bounds of both; unit `resistance`.", examples=[4e-9]
+    agreement_bound: float | None = Field(
+        description="What that difference may be by the bounds of both; unit `resistance`. null for held pads.",
+        examples=[4e-9],
     )
     checked_entries: int = Field(description="How many entries were computed once more.", examples=[6])
     method: str = Field(
@@ -91,8 +95,15 @@ class ResistancesAnswer(Answer):
     units: ResistanceUnits = Field(description="The unit of each kind of quantity in the answer.")
     certificate: ResistancesCertificate = Field(description="Evidence for the matrix.")  # type: ignore[assignment]
     pads: list[PadOfMatrix] = Field(description="The pads, in the order of the matrices.")
-    mean: Rises = Field(description="Rise of the mean of each pad.")
+    mean: Rises | None = Field(
+        description="Rise of the mean of each pad; of a held pad, of its level, all other held pads passing no "
+        "flow. null where nothing but the pads takes up a flow."
+    )
     peak: Rises | None = Field(None, description="Largest rise of each pad, if asked for.")
+    pairs: Rises = Field(
+        description="Potential between pads i and j for a unit of flow from one to the other, all others passing none: "
+        "the resistance between two pads."
+    )
     network: ResistanceNetwork | None = Field(
         description="The equivalent network; null where pads are too much alike for the accuracy asked for."
     )

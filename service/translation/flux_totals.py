@@ -7,6 +7,7 @@ from typing import Any
 
 from service import cost
 from service.core import Balance, Solution, Total
+from service.core.mixed import PadAnswer
 from service.core.problem import AXES, Face, axes_along
 from service.models import evaluate as models
 from service.settings import Settings
@@ -14,6 +15,7 @@ from service.translation import answers
 from service.translation.answers import KeepGoing
 from service.translation.collector import Collector
 from service.translation.fields import describe_part, rectangle_shown
+from service.translation.mixed_pads import flow_of, mixed_pad, pad_answers, potential_of
 from service.translation.places import FacePart, PlaceReader, PlanePart
 from service.translation.problem import ReadProblem
 from service.units import Kind, UnitSystem
@@ -77,14 +79,19 @@ def answer_totals(
         return _total(units, total, word)
 
     tolerance, gap = wanted.tolerance, wanted.gap
+    mixed = pad_answers(solution, tolerance)
     balance = solution.balance(gap=gap, tolerance=tolerance)
     faces = {face: shown(balance.inflow[face], "inflow", f"#/faces/{face}") for face in wanted.faces}
     patches = [
         describe_part(part)
-        | shown(
-            solution.face_total(part.face, part.where, gap=gap, tolerance=tolerance),
-            "inflow",
-            f"#/patches/{index}",
+        | (
+            shown(
+                solution.face_total(part.face, part.where, gap=gap, tolerance=tolerance),
+                "inflow",
+                f"#/patches/{index}",
+            )
+            if (passed := mixed_pad(mixed, part)) is None
+            else _pad(units, passed)
         )
         for index, part in enumerate(wanted.parts)
     ]
@@ -102,7 +109,13 @@ def answer_totals(
         "problem_id": problem.problem_id,
         "potential": problem.potential,
         "units": answers.units_shown(units),
-        "certificate": answers.certificate(problem, solution, answers.place_inside(problem), tolerance),
+        "certificate": answers.certificate(
+            problem,
+            solution,
+            answers.place_inside(problem),
+            tolerance,
+            [float(pad.potential.error_bound) for pad in mixed.values()],
+        ),
         "warnings": warnings,
         "faces": faces,
         "patches": patches,
@@ -139,6 +152,12 @@ def _total(units: UnitSystem, total: Total, word: str) -> dict[str, Any]:
             "error_bound": units.write(Kind.FLOW, float(total.with_gap.error_bound)),
         }
     return answer
+
+
+def _pad(units: UnitSystem, passed: PadAnswer) -> dict[str, Any]:
+    """Flow and potential of a pad of a mixed face."""
+    flow = flow_of(units, passed)
+    return {"inflow": flow["value"], "error_bound": flow["error_bound"], "potential": potential_of(passed)}
 
 
 def _unbounded_warning(total: Total, where: str) -> answers.Warning_:

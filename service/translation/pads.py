@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from service import cost
 from service.core import Bounded, Place, Solution
 from service.core.maps import Rectangle
-from service.core.problem import Face, Inflow, axes_along, axis_of
+from service.core.problem import Face, Inflow, Mixed, axes_along, axis_of
 from service.models import pads as models
 from service.refusals import Path
 from service.settings import Settings
@@ -20,6 +20,7 @@ from service.translation import answers
 from service.translation.answers import KeepGoing
 from service.translation.collector import Collector
 from service.translation.fields import describe_part
+from service.translation.mixed_pads import flow_of, mixed_pad, pad_answers
 from service.translation.places import FacePart, PlaceReader
 from service.translation.problem import ReadProblem
 from service.units import Kind, UnitSystem
@@ -55,7 +56,7 @@ class Pad:
 
 def pads_of_face(problem: ReadProblem, face: Face) -> list[Pad]:
     """The pads of a face, none where it has another condition or no patches."""
-    if not isinstance(problem.body.faces[face], Inflow):
+    if not isinstance(problem.body.faces[face], Inflow | Mixed):
         return []
     return [
         Pad(FacePart(patch.name, face, index, patch.where), patch.where)
@@ -135,6 +136,7 @@ def check_cost(wanted: PadsWanted, solution: Solution, settings: Settings, bytes
 def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, keep_going: KeepGoing) -> dict[str, Any]:
     """The answer to a question about pads."""
     tolerance = wanted.tolerance
+    mixed = pad_answers(solution, tolerance)
     centres = np.array([pad.centre(problem) for pad in wanted.pads])
     at_centres = solution.field_at(centres, tolerance=tolerance, keep_going=keep_going)
     bounds = [float(at_centres.potential_bound)]
@@ -142,12 +144,17 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
     found = []
     for pad, centre, potential, mean in zip(wanted.pads, centres, at_centres.potential, means, strict=True):
         keep_going()
+        passed = mixed_pad(mixed, pad.part)
         largest = solution.peak(pad.face, pad.where, tolerance=tolerance, keep_going=keep_going)
+        if passed is not None:
+            mean = passed.potential
         bounds += [float(mean.error_bound), float(largest.error_bound)]
         found.append(
             pad.described()
             | {
-                "flow": _flow(problem.units, solution, pad, tolerance),
+                "flow": _flow(problem.units, solution, pad, tolerance)
+                if passed is None
+                else flow_of(problem.units, passed),
                 "mean": _bounded(mean),
                 "largest": _at(largest),
                 "centre": _at(Place(tuple(centre), float(potential), float(at_centres.potential_bound), "")),

@@ -32,12 +32,18 @@ def pad_name(pad: dict[str, Any]) -> str:
 
 
 def matrix_csv(answer: dict[str, Any]) -> bytes:
-    """Mean rises per unit flow: a row for each pad that is warmed, a column for each that is fed."""
+    """Mean rises per unit flow: a row for each pad that rises, a column for each that is fed.
+
+    Where there are none, the resistances between every two pads.
+    """
     names = [pad_name(pad) for pad in answer["pads"]]
+    what, matrix = ("resistance between", answer["pairs"])
+    if answer["mean"] is not None:
+        what, matrix = ("mean rise per unit flow", answer["mean"])
     text = io.StringIO(newline="")
     writer = csv.writer(text, lineterminator="\r\n")
-    writer.writerow([f"mean rise per unit flow [{answer['units']['resistance']}]", *names])
-    for name, row in zip(names, answer["mean"]["value"], strict=True):
+    writer.writerow([f"{what} [{answer['units']['resistance']}]", *names])
+    for name, row in zip(names, matrix["value"], strict=True):
         writer.writerow([name, *(repr(float(entry)) for entry in row)])
     return text.getvalue().encode()
 

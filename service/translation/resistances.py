@@ -6,15 +6,10 @@ import math
 from dataclasses import dataclass
 from typing import Any
 
-import numpy as np
-from numpy.typing import NDArray
-
 from service import cost
-from service.core import Solution, solve
-from service.core.influence import Influence, check_pads, environment, influence, peaks, with_flow_into
-from service.core.influence import Pad as FedPad
+from service.core import Solution
 from service.core.maps import Rectangle
-from service.core.network import Network, network
+from service.core.network import Network
 from service.core.problem import Held, axes_along
 from service.core.solution import USUAL_ACCURACY
 from service.models import pads as models
@@ -24,21 +19,28 @@ from service.settings import Settings
 from service.translation import answers
 from service.translation.answers import KeepGoing
 from service.translation.collector import Collector
+from service.translation.fed_resistances import check_fed, fed_resistances, span_of_rises
+from service.translation.held_resistances import are_held, held_resistances
+from service.translation.mixed_pads import USUAL_OF_FLOWS
 from service.translation.pads import Pad, all_pads
 from service.translation.places import PlaceReader
 from service.translation.problem import ReadProblem
 from service.translation.resistance_forms import count_negative
+from service.translation.resistance_parts import Resistances, Rises
 from service.units import Kind, UnitSystem
-
-FloatArray = NDArray[np.float64]
 
 
 @dataclass(frozen=True)
 class ResistancesWanted:
-    """A question about resistances in the solver's numbers. tolerance: of a rise per unit flow."""
+    """A question about resistances in the solver's numbers.
+
+    are_held: whether the pads are held ones of mixed faces. tolerance: of a rise per unit flow; of held pads that of
+    their conductances, as part of the largest.
+    """
 
     pads: tuple[Pad, ...]
     peaks: bool
+    are_held: bool
     tolerance: float
 
 
@@ -58,15 +60,25 @@ def read_resistances(
         reader = PlaceReader(collector, settings, problem)
         read = (_pad(reader, problem, part, ("evaluate", "pads", index)) for index, part in enumerate(ask.pads))
         pads = [pad for pad in read if pad is not None]
+    held, pads = are_held(collector, problem, pads, is_named=ask.pads is not None)
     absolute = None
     accuracy = question.accuracy
     if accuracy is not None and accuracy.absolute is not None:
         kind, path = Kind.POTENTIAL_DIFFERENCE, ("accuracy", "absolute")
         absolute = collector.read_positive(kind, accuracy.absolute, path, "The accuracy")
+        if held:
+            detail = "For held pads give the accuracy as `relative`, a part of the largest conductance."
+            collector.add(path, detail, "one-of")
     collector.raise_if_any()
-    check_pads(problem.body, [_fed(pad) for pad in pads])
-    tolerance = _tolerance(problem, pads, absolute, USUAL_ACCURACY if accuracy is None else accuracy.relative)
-    return ResistancesWanted(tuple(pads), ask.peaks, tolerance)
+    relative = None if accuracy is None else accuracy.relative
+    if held:
+        return ResistancesWanted(tuple(pads), ask.peaks, True, relative or USUAL_OF_FLOWS)
+    check_fed(problem, pads)
+    if absolute is not None:
+        tolerance = absolute / _resistance_unit(problem.units)
+    else:
+        tolerance = (relative or USUAL_ACCURACY) * span_of_rises(problem, pads)
+    return ResistancesWanted(tuple(pads), ask.peaks, False, tolerance)
 
 
 def _pad(reader: PlaceReader, problem: ReadProblem, asked: FacePartModel, path: Path) -> Pad | None:
@@ -89,22 +101,9 @@ def _pad(reader: PlaceReader, problem: ReadProblem, asked: FacePartModel, path: 
     return Pad(part, part.where)
 
 
-def _tolerance(problem: ReadProblem, pads: list[Pad], absolute: float | None, relative: float | None) -> float:
-    """Largest error allowed of a rise per unit flow.
-
-    absolute: of the rise for one declared unit of flow; or relative: to the span of the field that a flow into the
-    largest pad alone raises, which is the least of all pads.
-    """
-    if absolute is not None:
-        return absolute / _resistance_unit(problem.units)
-    assert relative is not None
-    largest = max(pads, key=lambda pad: pad.where.area)
-    return relative * solve(with_flow_into(environment(problem.body), _fed(largest), 1.0)).span
-
-
 def check_cost(wanted: ResistancesWanted, solution: Solution, settings: Settings, bytes_a_number: int) -> None:
     """Raise TooCostly when the answer would pass a limit: the number of pads bounds the work."""
-    matrices = 6 if wanted.peaks else 4
+    matrices = 8 if wanted.peaks else 6
     cost.check_answer(matrices * len(wanted.pads) ** 2 * bytes_a_number, settings.answer_bytes)
 
 
@@ -112,31 +111,33 @@ def answer_resistances(
     problem: ReadProblem, solution: Solution, wanted: ResistancesWanted, keep_going: KeepGoing
 ) -> dict[str, Any]:
     """The answer to a question about resistances, with numpy arrays for its matrices."""
-    fed = [_fed(pad) for pad in wanted.pads]
-    found = influence(problem.body, fed, tolerance=wanted.tolerance, keep_going=keep_going)
-    keep_going()
+    compute = held_resistances if wanted.are_held else fed_resistances
+    found = compute(problem, wanted.pads, wanted.tolerance, wanted.peaks, keep_going)
     unit = _resistance_unit(problem.units)
+    known, asked = found.mean, wanted.tolerance
+    if known is None or wanted.are_held:
+        # Held pads are asked for to a part of their conductances, and so of the resistances between them.
+        known = found.pairs
+        asked *= float(known.value.max())
     answer: dict[str, Any] = {
         "problem_id": problem.problem_id,
         "potential": problem.potential,
         "units": _units(problem.units),
-        "certificate": _certificate(found, wanted.tolerance, unit),
-        "warnings": _warnings(found, wanted.tolerance, problem.units),
+        "certificate": _certificate(found, known, asked, unit),
+        "warnings": _warnings(found, known, asked, problem.units),
         "pads": [pad.described() for pad in wanted.pads],
-        "mean": {"value": unit * found.mean, "error_bound": unit * found.bound},
+        "mean": _rises(found.mean, unit),
     }
     if wanted.peaks:
-        highest, bound = peaks(problem.body, fed, tolerance=wanted.tolerance, keep_going=keep_going)
-        answer["peak"] = {"value": unit * highest, "error_bound": unit * bound}
-    resistors = network(found.mean, found.bound)
-    if resistors is None:
-        message = "The pads are too much alike for the accuracy asked for: their matrix has no inverse with a bound."
-        answer["warnings"].append(answers.warning("network-not-determined", message, "#/network"))
-    return answer | {"network": None if resistors is None else _network(resistors, unit)}
+        answer["peak"] = _rises(found.peak, unit)
+    return answer | {
+        "pairs": _rises(found.pairs, unit),
+        "network": None if found.network is None else _network(found.network, unit),
+    }
 
 
-def _fed(pad: Pad) -> FedPad:
-    return FedPad(pad.face, pad.where, pad.part.name)
+def _rises(rises: Rises | None, unit: float) -> dict[str, Any] | None:
+    return None if rises is None else {"value": unit * rises.value, "error_bound": unit * rises.bound}
 
 
 def _resistance_unit(units: UnitSystem) -> float:
@@ -156,27 +157,37 @@ def _in_brackets(unit: str) -> str:
     return f"({unit})" if any(sign in unit for sign in "/* ") else unit
 
 
-def _certificate(found: Influence, tolerance: float, unit: float) -> dict[str, Any]:
+def _certificate(found: Resistances, known: Rises, asked: float, unit: float) -> dict[str, Any]:
     return {
-        "error_bound": unit * float(found.bound.max()),
-        "accuracy_asked": unit * tolerance,
-        "agreement": unit * found.agreement,
-        "agreement_bound": unit * found.agreement_bound,
+        "error_bound": unit * float(known.bound.max()),
+        "accuracy_asked": unit * asked,
+        "agreement": None if found.agreement is None else unit * found.agreement,
+        "agreement_bound": None if found.agreement_bound is None else unit * found.agreement_bound,
         "checked_entries": found.checked,
-        "method": "one time integral for all pairs of pads on parallel faces; the general integral as the check",
+        "method": found.method,
     }
 
 
-def _warnings(found: Influence, tolerance: float, units: UnitSystem) -> list[answers.Warning_]:
-    largest = float(found.bound.max())
-    if largest <= tolerance:
-        return []
-    unit, name = _resistance_unit(units), _units(units)["resistance"]
-    message = (
-        f"The largest bound of a rise is {unit * largest:.2g} {name}, wider than the accuracy asked for, "
-        f"{unit * tolerance:.2g} {name}."
-    )
-    return [answers.warning("accuracy-not-reached", message, "#/mean/error_bound")]
+def _warnings(found: Resistances, known: Rises, asked: float, units: UnitSystem) -> list[answers.Warning_]:
+    warnings = []
+    largest = float(known.bound.max())
+    if largest > asked:
+        unit, name = _resistance_unit(units), _units(units)["resistance"]
+        message = (
+            f"The largest bound of a resistance is {unit * largest:.2g} {name}, wider than the accuracy asked for, "
+            f"{unit * asked:.2g} {name}."
+        )
+        warnings.append(answers.warning("accuracy-not-reached", message, "#/certificate/error_bound"))
+    if found.network is None:
+        message = "The pads are too much alike for the accuracy asked for: their matrix has no inverse with a bound."
+        warnings.append(answers.warning("network-not-determined", message, "#/network"))
+    if found.mean is None:
+        message = (
+            "There are no rises above an environment, since nothing but the pads takes up a flow. Resistances between "
+            "two pads are in `pairs`."
+        )
+        warnings.append(answers.warning("no-environment", message, "#/mean"))
+    return warnings
 
 
 def _network(resistors: Network, unit: float) -> dict[str, Any]:

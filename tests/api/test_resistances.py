@@ -125,8 +125,14 @@ async def test_network_gives_the_matrix_back(client: httpx.AsyncClient) -> None:
     network, count = found["network"], 3
     resistors = [(i + 1, j + 1, 1 / network["between"][i][j]) for i in range(count) for j in range(i + 1, count)]
     resistors += [(i + 1, 0, 1 / network["to_environment"][i]) for i in range(count)]
-    assert solved(resistors, count) == pytest.approx(np.array(found["mean"]["value"]), rel=1e-9)
+    rises = np.array(found["mean"]["value"])
+    assert solved(resistors, count) == pytest.approx(rises, rel=1e-9)
     assert network["negative"] == 0
+    # From pad to pad: what a unit of flow from one to the other raises between them.
+    for i in range(count):
+        for j in range(count):
+            by_hand = rises[i, i] + rises[j, j] - 2 * rises[i, j]
+            assert found["pairs"]["value"][i][j] == pytest.approx(by_hand, rel=1e-12)
 
 
 async def test_pads_on_several_faces_are_symmetric(client: httpx.AsyncClient) -> None:

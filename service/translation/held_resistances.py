@@ -1,0 +1,81 @@
+"""Resistances between held pads of mixed faces: what flows between pads that are each at one potential."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core.network import Network
+from service.core.pad_network import PadNetwork, pad_network
+from service.core.problem import Face, HeldPad, Mixed
+from service.translation.answers import KeepGoing
+from service.translation.collector import Collector
+from service.translation.pads import Pad
+from service.translation.problem import ReadProblem
+from service.translation.resistance_parts import Resistances, Rises
+
+FloatArray = NDArray[np.float64]
+
+METHOD = "panels on the pads, refined; bounds by extrapolation from the refinements"
+
+
+def are_held(collector: Collector, problem: ReadProblem, pads: list[Pad], *, is_named: bool) -> tuple[bool, list[Pad]]:
+    """Whether resistances are wanted between held pads of mixed faces, and between which.
+
+    is_named: whether the question names the pads; film pads are left out where it does not. Noted where a film pad is
+    named, or some pads are held and others are fed.
+    """
+    if not is_named:
+        pads = [pad for pad in pads if _is_held(problem, pad) or not _is_on_mixed(problem, pad)]
+    for index, pad in enumerate(pads):
+        if _is_on_mixed(problem, pad) and not _is_held(problem, pad):
+            detail = f"On the mixed face {pad.face} resistances lead to held pads; name one of these by `patch`."
+            collector.add(("evaluate", "pads", index), detail, "not-held")
+    held = [_is_held(problem, pad) for pad in pads]
+    if any(held) and not all(held):
+        detail = "Some pads are held and others are fed a flow; name pads of one kind."
+        collector.add(("evaluate", "pads") if is_named else ("evaluate",), detail, "pads-of-two-kinds")
+    return bool(pads) and all(held), pads
+
+
+def _is_on_mixed(problem: ReadProblem, pad: Pad) -> bool:
+    return isinstance(problem.body.faces[pad.face], Mixed)
+
+
+def _is_held(problem: ReadProblem, pad: Pad) -> bool:
+    condition, patch = problem.body.faces[pad.face], pad.part.patch
+    return isinstance(condition, Mixed) and patch is not None and isinstance(condition.pads[patch], HeldPad)
+
+
+def held_resistances(
+    problem: ReadProblem, pads: Sequence[Pad], accuracy: float, with_peaks: bool, keep_going: KeepGoing
+) -> Resistances:
+    """Everything about the resistances of held pads; those not asked for are part of the environment.
+
+    accuracy: of conductances, as part of the largest.
+    """
+    found = pad_network(problem.body, accuracy=accuracy, keep_going=keep_going)
+    number_of: dict[tuple[Face, int | None], int] = {(face, patch): n for n, (face, patch, _) in enumerate(found.pads)}
+    numbers = [number_of[pad.face, pad.part.patch] for pad in pads]
+    found = found.part(numbers)
+    between, between_bound = -found.conductance, found.error_bound.copy()
+    np.fill_diagonal(between, 0.0)
+    np.fill_diagonal(between_bound, 0.0)
+    resistors = Network(between, between_bound, found.to_environment, found.to_environment_bound)
+    mean = None if found.closed else Rises(*found.rises())
+    # A held pad has one potential, its mean and its largest.
+    return Resistances(mean, mean if with_peaks else None, _pairs(found), resistors, None, None, 0, METHOD)
+
+
+def _pairs(found: PadNetwork) -> Rises:
+    """Potential between every two pads for a unit of flow from one to the other, all others passing none."""
+    size = len(found.pads)
+    value, bound = np.zeros((size, size)), np.zeros((size, size))
+    for i in range(size):
+        for j in range(i):
+            pair = found.resistance(i, j)
+            value[i, j] = value[j, i] = pair.value
+            bound[i, j] = bound[j, i] = pair.error_bound
+    return Rises(value, bound)

@@ -1,0 +1,204 @@
+"""Faces with several conditions over HTTP: flows and levels of pads, resistances between them, and wrong requests."""
+
+# The table reads best with one request a line.
+# ruff: noqa: E501
+
+from __future__ import annotations
+
+import json
+import math
+from typing import Any
+
+import httpx
+import numpy as np
+import pytest
+
+from tests.api.halden_reach import Json, changed
+from tests.api.wrong_requests import Wrong, check_wrong
+
+pytestmark = pytest.mark.anyio
+
+INSULATED = {"condition": "insulated"}
+FEED = {"name": "feed", "x": [5, 25], "y": [10, 50], "condition": "held", "flow": 1200}
+RETURN = {"name": "return", "x": [55, 75], "y": [10, 50], "condition": "held", "value": 0}
+LUG = {"name": "lug", "x": [35, 45], "y": [0, 8], "condition": "film", "coefficient": "400 S/cm^2", "ambient": 0}
+
+
+def stub(*pads: Json, **background: Any) -> Json:
+    """A bus-bar stub with clamped contacts on one face."""
+    mixed = {"condition": "mixed", "background": background or INSULATED, "pads": list(pads) or [FEED, RETURN, LUG]}
+    return {
+        "potential": "electric_potential",
+        "units": {"length": "mm", "potential": "mV", "flow": "A"},
+        "body": {"size": {"x": 80, "y": 60, "z": 25}, "conductivity": "56 MS/m"},
+        "faces": dict.fromkeys(("x_low", "x_high", "y_low", "y_high", "z_low"), INSULATED) | {"z_high": mixed},
+    }
+
+
+async def ask(client: httpx.AsyncClient, call: str, problem: Json, evaluate: Json | None = None, **more: Any) -> Json:
+    content = {"problem": problem} | ({} if evaluate is None else {"evaluate": evaluate}) | more
+    answer = await client.post(f"/v1/{call}", json=content)
+    assert answer.status_code == 200, answer.text
+    found: Json = answer.json()
+    return found
+
+
+async def test_flows_of_pads_balance_and_levels_are_found(client: httpx.AsyncClient) -> None:
+    patches = [{"face": "z_high", "patch": name} for name in ("feed", "return", "lug")]
+    found = await ask(client, "flux-totals", stub(), {"patches": patches})
+    feed, back, lug = found["patches"]
+    assert feed["inflow"] == 1200
+    assert feed["potential"]["value"] > 100 * feed["potential"]["error_bound"] > 0
+    assert back["potential"] == {"value": 0, "error_bound": 0}
+    total = feed["inflow"] + back["inflow"] + lug["inflow"]
+    assert total == pytest.approx(0, abs=back["error_bound"] + lug["error_bound"])
+    # A film lets in its coefficient times area times the difference of its means.
+    by_hand = -400e4 * 80e-6 * lug["potential"]["value"] * 1e-3
+    assert lug["inflow"] == pytest.approx(by_hand, rel=1e-9)
+    assert found["balance"]["closed"]
+
+
+async def test_pads_are_told_by_the_call_for_pads(client: httpx.AsyncClient) -> None:
+    totals = await ask(client, "flux-totals", stub(), {"patches": [{"face": "z_high", "patch": 0}]})
+    found = await ask(client, "pads", stub())
+    feed, back, lug = found["pads"]
+    (known,) = totals["patches"]
+    for key in ("mean", "largest", "centre"):
+        slack = feed[key]["error_bound"] + known["potential"]["error_bound"]
+        assert feed[key]["value"] == pytest.approx(known["potential"]["value"], abs=slack)
+        assert back[key]["value"] == pytest.approx(0, abs=back[key]["error_bound"])
+    assert feed["flow"] == {"value": 1200, "error_bound": 0}
+    assert (
+        lug["centre"]["value"] <= lug["largest"]["value"] + lug["largest"]["error_bound"] + lug["centre"]["error_bound"]
+    )
+
+
+async def test_resistance_between_held_pads_is_level_over_flow(client: httpx.AsyncClient) -> None:
+    """With two clamps alone nothing leads elsewhere: the voltage of the feed over its current is the resistance."""
+    totals = await ask(client, "flux-totals", stub(FEED, RETURN), {"patches": [{"face": "z_high", "patch": 0}]})
+    found = await ask(client, "resistances", stub(FEED, RETURN))
+    level = totals["patches"][0]["potential"]
+    pair, bound = found["pairs"]["value"][0][1], found["pairs"]["error_bound"][0][1]
+    assert pair == pytest.approx(level["value"] / 1200, abs=bound + level["error_bound"] / 1200)
+    assert bound < 1e-4 * pair
+    assert found["units"]["resistance"] == "mV/A"
+    assert found["network"]["to_environment"] == [0, 0]
+    assert 1 / found["network"]["between"][0][1] == pytest.approx(pair, rel=1e-3)
+    assert found["mean"] is None
+    assert "no-environment" in [warning["code"] for warning in found["warnings"]]
+
+
+async def test_square_plate_on_a_half_space_is_as_published(client: httpx.AsyncClient) -> None:
+    """Capacity of a square plate 0.366787 in units of 4 pi eps0 L, printed as 0.3667874 (J. Appl. Phys. 95 (2004) 3798).
+
+    A held square on an insulated half-space lets 2 pi k C' L V pass with C' that number, half of both its sides.
+    """
+    problem = {
+        "units": {"length": "mm"},
+        "body": {"size": {"x": "infinite", "y": "infinite", "z": "semi-infinite"}, "conductivity": 1.5},
+        "faces": {"z_low": {"condition": "mixed", "background": INSULATED, "pads": [
+            {"x": [-3, 7], "y": [0, 10], "condition": "held", "value": 40}]}},
+    }  # fmt: skip
+    found = await ask(
+        client, "flux-totals", problem, {"patches": [{"face": "z_low", "patch": 0}]}, accuracy={"relative": 1e-6}
+    )
+    (pad,) = found["patches"]
+    published = 2 * math.pi * 1.5 * 0.3667874 * 10e-3 * 40
+    assert pad["inflow"] == pytest.approx(published, abs=pad["error_bound"] + 2e-6 * published)
+    assert pad["error_bound"] < 1e-5 * published
+    assert found["balance"]["closed"]
+
+
+async def test_held_pads_with_a_way_out_have_rises_and_a_network(client: httpx.AsyncClient) -> None:
+    film = {"condition": "film", "coefficient": "50 S/cm^2", "ambient": 0}
+    problem = stub(FEED, RETURN)
+    problem["faces"]["z_low"] = film
+    found = await ask(client, "resistances", problem, {"peaks": True})
+    mean, network = np.array(found["mean"]["value"]), found["network"]
+    assert found["peak"] == found["mean"]
+    conductances = np.diag(network["to_environment"]) + np.diag(np.sum(network["between"], axis=1)) - network["between"]
+    slack = np.abs(conductances) @ found["mean"]["error_bound"] + 2 * np.array(network["between_error_bound"]) @ mean
+    assert (np.abs(conductances @ mean - np.eye(2)) <= slack.max()).all()
+    assert slack.max() < 0.05
+    # The level of the feed, the return held at zero: what is left of its rise.
+    totals = await ask(client, "flux-totals", problem, {"patches": [{"face": "z_high", "patch": 0}]})
+    level = totals["patches"][0]["potential"]
+    by_matrix = 1200 * (mean[0, 0] - mean[0, 1] ** 2 / mean[1, 1])
+    slack = 1200 * 4 * np.max(found["mean"]["error_bound"]) + level["error_bound"]
+    assert by_matrix == pytest.approx(level["value"], abs=slack)
+
+
+async def test_held_pads_that_are_left_out_are_part_of_the_environment(client: httpx.AsyncClient) -> None:
+    found = await ask(client, "resistances", stub(FEED, RETURN), {"pads": [{"face": "z_high", "patch": "feed"}]})
+    whole = await ask(client, "resistances", stub(FEED, RETURN))
+    assert 1 / found["network"]["to_environment"][0] == pytest.approx(whole["pairs"]["value"][0][1], rel=1e-4)
+
+
+async def test_pads_on_other_faces_are_fed_beside_held_ones(client: httpx.AsyncClient) -> None:
+    """A pad on the far side of a body whose only way out is a held pad."""
+    problem = stub(RETURN)
+    found = await ask(client, "resistances", problem, {"pads": [{"face": "z_low", "x": [5, 25], "y": [10, 50]}]})
+    fields = changed(problem, "faces/z_low", {"condition": "flux", "inflow": {"map": "patches", "background": 0, "patches": [
+        {"x": [5, 25], "y": [10, 50], "flow": 1}]}})  # fmt: skip
+    mean = (await ask(client, "fields", fields, {"means": [{"face": "z_low", "patch": 0}]}))["means"][0]
+    slack = found["mean"]["error_bound"][0][0] + mean["error_bound"]
+    assert found["mean"]["value"][0][0] == pytest.approx(mean["value"], abs=slack)
+
+
+async def test_film_pads_of_the_background_s_coefficient_are_the_plain_face(client: httpx.AsyncClient) -> None:
+    film = {"coefficient": "30 S/cm^2", "ambient": 5}
+    pads = [{"x": [5, 25], "y": [10, 50], "condition": "film", **film}]
+    problem = stub(*pads, condition="film", **film)
+    problem["faces"]["x_low"] = {"condition": "held", "value": 20}
+    plain = changed(problem, "faces/z_high", {"condition": "film", **film})
+    points = {"points": [{"at": [40, 30, 25]}, {"at": [10, 30, 10]}]}
+    one, other = await ask(client, "fields", problem, points), await ask(client, "fields", plain, points)
+    for here, there in zip(one["points"], other["points"], strict=True):
+        assert here["potential"] == pytest.approx(there["potential"], abs=here["error_bound"] + there["error_bound"])
+
+
+def wrong(name: str, problem: Json, pointer: str, sentence: str) -> Wrong:
+    """A problem to be stored."""
+    return Wrong(name, "/v1/problems", json.dumps(problem).encode(), 422, pointer, sentence)
+
+
+def asked(name: str, problem: Json, evaluate: Json, pointer: str, sentence: str, accuracy: Json | None = None) -> Wrong:
+    """A question about resistances."""
+    content = {"problem": problem, "evaluate": evaluate} | ({"accuracy": accuracy} if accuracy else {})
+    return Wrong(name, "/v1/resistances", json.dumps(content).encode(), 422, pointer, sentence)
+
+
+PADS = "#/faces/z_high/pads"
+TWO_KINDS = stub()
+TWO_KINDS["faces"] = TWO_KINDS["faces"] | {"z_low": {"condition": "flux", "inflow": {
+    "map": "patches", "background": 0, "patches": [{"name": "fed", "x": [1, 2], "y": [1, 2], "flow": 1}]}}}  # fmt: skip
+SIDEWAYS = stub()
+SIDEWAYS["faces"] = SIDEWAYS["faces"] | {"x_low": {"condition": "mixed", "background": INSULATED, "pads": [
+    {"y": [1, 2], "z": [1, 2], "condition": "held", "value": 0}]}}  # fmt: skip
+
+TABLE = [
+    wrong("no pads", changed(stub(), "faces/z_high/pads", []), PADS, "At least 1 entries are wanted here"),
+    wrong("no background", changed(stub(), "faces/z_high/background", ...), "#/faces/z_high/background", "This field is required."),
+    wrong("held background", stub(condition="held", value=3), "#/faces/z_high/background/condition", 'One of "flux", "film", "insulated" is wanted here.'),
+    wrong("background that varies", stub(condition="flux", inflow={"map": "patches"}), "#/faces/z_high/background/inflow", "A number in the declared unit"),
+    wrong("pad of no condition", stub(FEED, RETURN | {"condition": "insulated"}), f"{PADS}/1/condition", 'One of "held", "film" is wanted here.'),
+    wrong("value and flow", stub(FEED | {"value": 3}, RETURN), f"{PADS}/0/flow", "Give either `value` or `flow`, not both."),
+    wrong("neither", stub(RETURN, {"x": [1, 2], "y": [1, 2], "condition": "held"}), f"{PADS}/1/value", "Give either `value` or `flow`."),
+    wrong("flow in volts", stub(FEED | {"flow": "3 V"}, RETURN), f"{PADS}/0/flow", "does not measure current"),
+    wrong("film that conducts nothing", stub(RETURN, LUG | {"coefficient": 0}), f"{PADS}/1/coefficient", "it has to be greater than zero"),
+    wrong("pads that overlap", stub(FEED, RETURN | {"x": [20, 40]}), f"{PADS}/1", "Pads 0 and 1 of z_high overlap."),
+    wrong("pad outside", stub(FEED, RETURN | {"x": [70, 90]}), f"{PADS}/1", "lie in the face"),
+    wrong("pad along z", stub(FEED, RETURN | {"z": [1, 2]}), f"{PADS}/1/z", "The face z_high has no extent along z"),
+    wrong("two pads of one name", stub(FEED, RETURN | {"name": "feed"}), f"{PADS}/1/name", "Another pad of this face has the same name."),
+    wrong("mixed faces askew", SIDEWAYS, "#/faces/x_low", "mixed faces have to be square to one axis"),
+    wrong("flows that find no way out", stub(FEED), "#/faces", "add up to 1200 A"),
+    asked("held and fed pads", TWO_KINDS, {}, "#/evaluate", "Some pads are held and others are fed a flow"),
+    asked("resistance of a film pad", stub(), {"pads": [{"face": "z_high", "patch": "lug"}]}, "#/evaluate/pads/0", "resistances lead to held pads"),
+    asked("rectangle of a mixed face", stub(), {"pads": [{"face": "z_high", "x": [1, 2], "y": [1, 2]}]}, "#/evaluate/pads/0", "name one of these by `patch`"),
+    asked("absolute accuracy of held pads", stub(), {}, "#/accuracy/absolute", "give the accuracy as `relative`", {"absolute": 1e-3}),
+]  # fmt: skip
+
+
+@pytest.mark.parametrize("wrong", TABLE, ids=lambda wrong: wrong.name)
+async def test_wrong_mixed_face_is_answered_with_one_clear_sentence(client: httpx.AsyncClient, wrong: Wrong) -> None:
+    await check_wrong(client, wrong)

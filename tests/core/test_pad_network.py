@@ -1,0 +1,69 @@
+"""Networks of held pads against the fields that they sum up."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+
+from service.core.errors import NotPhysical
+from service.core.maps import Rectangle
+from service.core.mixed import solve_mixed
+from service.core.pad_network import PadNetwork, pad_network
+from service.core.problem import Body, Condition, Face, FilmPad, HeldPad, Insulated, Mixed
+
+FEED, BACK, LUG = Rectangle(0.1, 0.3, 0.2, 0.8), Rectangle(0.6, 0.9, 0.2, 0.8), Rectangle(0.4, 0.5, 0.0, 0.1)
+FILM = FilmPad(LUG, 40.0, 0.0)
+
+
+def plate(*pads: HeldPad | FilmPad) -> Body:
+    """A plate whose only ways out are pads on top."""
+    faces: dict[Face, Condition] = dict.fromkeys(("x_low", "x_high", "y_low", "y_high", "z_low"), Insulated())
+    return Body((1.0, 1.0, 0.3), (2.0, 2.0, 1.5), faces | {"z_high": Mixed(Insulated(), pads)})
+
+
+@pytest.fixture(scope="module")
+def network() -> PadNetwork:
+    return pad_network(plate(HeldPad(FEED, 0.0), HeldPad(BACK, 0.0), FILM), accuracy=1e-4)
+
+
+def test_conductance_to_the_environment_is_what_flows_between_pads_held_alike(network: PadNetwork) -> None:
+    flows = [pad.flow for pad in solve_mixed(plate(HeldPad(FEED, 1.0), HeldPad(BACK, 1.0), FILM), accuracy=1e-5).pads()]
+    assert not network.closed
+    for index in range(2):
+        slack = network.to_environment_bound[index] + flows[index].error_bound
+        assert network.to_environment[index] == pytest.approx(flows[index].value, abs=slack)
+    assert network.to_environment_bound.max() < 0.01 * network.to_environment.min()
+
+
+def test_rises_are_the_levels_of_pads_that_are_fed(network: PadNetwork) -> None:
+    rises, bound = network.rises()
+    levels = [
+        pad.potential
+        for pad in solve_mixed(plate(HeldPad(FEED, flow=1.0), HeldPad(BACK, flow=0.0), FILM), accuracy=1e-5).pads()
+    ]
+    for index in range(2):
+        assert rises[index, 0] == pytest.approx(levels[index].value, abs=bound[index, 0] + levels[index].error_bound)
+    assert rises == pytest.approx(rises.T, abs=1e-9 * rises.max())
+    assert bound.max() < 0.01 * rises.min()
+    # The difference of two rises is the resistance between the pads.
+    pair = network.resistance(0, 1)
+    across = rises[0, 0] + rises[1, 1] - 2 * rises[0, 1]
+    assert pair.value == pytest.approx(across, abs=pair.error_bound + 4 * bound.max())
+
+
+def test_pads_left_out_are_held_at_zero(network: PadNetwork) -> None:
+    part = network.part([1])
+    assert part.conductance[0, 0] == network.conductance[1, 1]
+    assert part.to_environment[0] == pytest.approx(network.conductance[1, 1], abs=network.error_bound[1, 1])
+    rises, bound = part.rises()
+    assert rises[0, 0] == pytest.approx(1 / part.to_environment[0], abs=bound[0, 0] + 1e-3 * rises[0, 0])
+
+
+def test_pads_alone_have_no_rises_above_an_environment() -> None:
+    closed = pad_network(plate(HeldPad(FEED, 0.0), HeldPad(BACK, 0.0)), accuracy=1e-2)
+    assert closed.closed
+    assert closed.to_environment.tolist() == [0.0, 0.0]
+    with pytest.raises(NotPhysical, match="Nothing but the pads"):
+        closed.rises()
+    assert not closed.part([0]).closed
+    assert np.isfinite(closed.part([0]).rises()[0]).all()
