@@ -54,8 +54,8 @@ STORED = 2e-15
 # held data are off by more than that.
 USUAL_ITERATED, EVEN = 1e-4, 1e-9
 
-# Steps of the iteration that a tenfold accuracy takes, about, on a face with about so many places along each axis.
-STEPS, PLACES = 10, 150
+# Steps that a tenfold accuracy takes, about, and by how much the places along each axis of a face grow meanwhile.
+STEPS, GROWTH = 10, 3
 
 
 class VaryingSolution(Solution):
@@ -414,9 +414,12 @@ class VaryingSolution(Solution):
         if not self._films or self._iterated.error <= wanted:
             return found
         tenfolds = math.log10(self._iterated.error / wanted)
-        step = estimate.on_grid(self._iterated.setting, (PLACES, PLACES, 1), wanted, False)
-        steps = STEPS * max(tenfolds, 1.0) * len(self._films)
-        return Estimate(found.multiplications + steps * step.multiplications, max(found.bytes, step.bytes))
+        costs = []
+        for film in self._films:
+            first, second = (GROWTH * axis.samples.size for axis in film.axes)
+            costs.append(estimate.on_grid(self._iterated.setting, (first, second, 1), wanted, False))
+        work = STEPS * max(tenfolds, 1.0) * sum(cost.multiplications for cost in costs)
+        return Estimate(found.multiplications + work, max(found.bytes, *(cost.bytes for cost in costs)))
 
 
 class _In:
