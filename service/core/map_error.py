@@ -7,7 +7,9 @@ Of the flux at a scaled distance s from a held or film face whose data are off b
 half-space the slope along the face is at most (2 / pi) e / s, three times that beside a film, and across it 0.968 e / s
 (integrals of the absolute slope of the kernels of a line). Close to the face the slopes of the error take over: the
 flux that data with slopes e' drive is e' times a number that grows with the logarithm of the smallest distance over
-the largest, which NEAR allows for down to a billionth of a piece. An inflow off by e moves the flux by as many times e.
+the largest, which NEAR allows for down to a billionth of a piece. On an edge with another held face the error may be a
+jump, beside which the gradient is (2 / pi) e / d at a distance d (see `unbounded`). An inflow off by e moves the flux
+by as many times e.
 """
 
 from __future__ import annotations
@@ -15,6 +17,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from functools import reduce
 
 import numpy as np
 from numpy.typing import NDArray
@@ -34,6 +37,9 @@ NEAR = 16.0
 # Flux at a scaled distance from a face, times that distance, per error of its data.
 FAR = 2.0
 
+# Logarithms of distances: the flow beside an edge where the error jumps is had down to exp(-LOGARITHMS) of the body.
+LOGARITHMS = 70.0
+
 # Places along each axis of a face at which the rise of a unit of inflow is read, and what is allowed for between them:
 # a rise that is an arch over the face is off by no more than 1 - cos(pi / 16) twice.
 RISE_PLACES, BETWEEN = 9, 1.05
@@ -47,6 +53,7 @@ class Source:
     """A face whose data may be off: by how much in all, and the slopes of that per scaled length of the face.
 
     axis, place: where the face is. is_inflow: whether the data are an inflow; then slope is that of the field it makes.
+    edges: where the held faces are that it meets, if it is held itself: the axis and the place of each.
     """
 
     axis: int
@@ -54,20 +61,27 @@ class Source:
     error: float
     slope: float
     is_inflow: bool
+    edges: tuple[tuple[int, float], ...] = ()
 
-    def gradient(self, distance: FloatArray) -> FloatArray:
-        """What the scaled gradient of the field may be off by at scaled distances from the face."""
+    def gradient(self, distance: FloatArray, from_edge: FloatArray | float = math.inf) -> FloatArray:
+        """What the scaled gradient may be off by at scaled distances from the face and from the held ones it meets.
+
+        On the edge itself it is that of the data.
+        """
         if self.is_inflow:
             return np.full_like(distance, NEAR * self.slope)
         with np.errstate(divide="ignore"):
-            return np.minimum(FAR * self.error / distance, NEAR * self.slope)
+            beside_edge = np.where((distance == 0.0) & (from_edge == 0.0), 0.0, FAR * self.error / from_edge)
+            return np.minimum(FAR * self.error / distance, NEAR * self.slope + beside_edge)
 
     def mean_gradient(self, near: float, far: float) -> float:
         """Mean of that between two distances, which may be equal."""
         if self.is_inflow or far == near:
             return float(self.gradient(np.array([near]))[0])
         turn = min(max(FAR * self.error / (NEAR * self.slope), near), far)
-        return (NEAR * self.slope * (turn - near) + FAR * self.error * math.log(far / turn)) / (far - near)
+        beside_edge = LOGARITHMS if turn > near else 0.0
+        beyond = FAR * self.error * (math.log(far / turn) + beside_edge)
+        return (NEAR * self.slope * (turn - near) + beyond) / (far - near)
 
 
 def sources_of(body: Body) -> tuple[Source, ...]:
@@ -82,8 +96,18 @@ def sources_of(body: Body) -> tuple[Source, ...]:
             found.append(Source(axis, body.end_of(face), 0.0, face_map.error * scales[axis], is_inflow=True))
         else:
             slope = face_map.slope_error / min(scales[along] for along in axes_along(face))
-            found.append(Source(axis, body.end_of(face), face_map.error, slope, is_inflow=False))
+            edges = _held_beside(body, face) if isinstance(condition, Held) else ()
+            found.append(Source(axis, body.end_of(face), face_map.error, slope, is_inflow=False, edges=edges))
     return tuple(found)
+
+
+def _held_beside(body: Body, face: Face) -> tuple[tuple[int, float], ...]:
+    """Axis and place of the held faces that meet a face in an edge."""
+    return tuple(
+        (axis_of(other), body.end_of(other))
+        for other in body.present_faces
+        if axis_of(other) != axis_of(face) and isinstance(body.faces[other], Held)
+    )
 
 
 def of_potential(body: Body, lines: tuple[Line, Line, Line]) -> float:
@@ -144,14 +168,16 @@ def of_flux(body: Body, columns: Sequence[FloatArray], *, tensor: bool) -> Float
     """What a component of the flux may be off by at places, to broadcast to the field."""
     total: FloatArray | float = 0.0
     for source in sources_of(body):
-        distance = np.abs(columns[source.axis] - source.place) * scales_of(body)[source.axis]
-        gradient = source.gradient(distance)
-        if tensor:
-            shape = [1, 1, 1]
-            shape[source.axis] = gradient.size
-            gradient = gradient.reshape(shape)
-        total = total + gradient
+        distances = [_distance(body, columns, axis, place, tensor) for axis, place in source.edges]
+        from_edge = reduce(np.minimum, distances, np.array(math.inf))
+        total = total + source.gradient(_distance(body, columns, source.axis, source.place, tensor), from_edge)
     return total * _largest_factor(body)
+
+
+def _distance(body: Body, columns: Sequence[FloatArray], axis: int, place: float, tensor: bool) -> FloatArray:
+    """Scaled distances of places from a face, to broadcast to the field."""
+    distance = np.abs(columns[axis] - place) * scales_of(body)[axis]
+    return distance.reshape([-1 if other == axis else 1 for other in range(3)]) if tensor else distance
 
 
 def of_flow(body: Body, axis: int, place: float, rectangle: Rectangle) -> float:

@@ -220,3 +220,14 @@ def test_formula_on_the_top_of_a_stack_of_one_material_is_that_on_the_block() ->
     points = np.array([[11.0, 30.0, 3.0], [20.0, 7.0, 9.9], [39.0, 59.0, 10.0]])
     one, other = (solve(body).field_at(points, tolerance=1e-7) for body in (block, stack))
     np.testing.assert_allclose(one.potential, other.potential, rtol=0, atol=one.potential_bound + other.potential_bound)
+
+
+def test_flux_a_billionth_of_a_side_from_an_edge_where_rounding_makes_a_jump() -> None:
+    # sin(alpha 40) is a film's condition, cos(beta 60) is zero but for a rounding: there the held side meets the data.
+    mode = Mode("held")
+    places = np.array([[21.0, B, 1e-9 * A], [21.0, B, 1e-7 * A], [0.0, 30.0, 1e-9 * A], [0.0, B, 3e-9 * A]])
+    solution = solve(mode.body())
+    found = solution.field_at(places, tolerance=1e-9 * solution.span, with_flux=True)
+    assert found.flux is not None
+    assert found.flux_bound is not None
+    assert (np.abs(found.flux - mode.flux(*places.T)).max(axis=0) <= found.flux_bound).all()
