@@ -18,7 +18,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core.lines.images import ARRIVAL, film_part, free, from_points
-from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Line, Order, wall_distance
+from service.core.lines.line import SLOPE, VALUE, Line, Order, wall_distance
 from service.core.maps import Profiles
 
 FloatArray = NDArray[np.float64]

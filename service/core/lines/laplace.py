@@ -14,7 +14,7 @@ from itertools import pairwise
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines import stack
+from service.core.lines import stack_laplace
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Drive, Line, Order, WallDrive, breaks_of, wall_distance
 from service.core.lines.places import Places
 from service.core.lines.stack import StackLine
@@ -35,7 +35,7 @@ def transform(line: Line, drive: Drive, places: Places, gamma: FloatArray) -> Fl
     insulated at its end counts from its value far away, a line without ends from the mean of both.
     """
     if isinstance(line, StackLine):
-        return stack.transform(line, drive, places, gamma**2).real
+        return stack_laplace.transform(line, drive, places, gamma**2).real
     if isinstance(drive, WallDrive):
         if places.high is None:
             return _wall(line, drive, places.low, gamma, places.order)
@@ -57,7 +57,7 @@ def _wall(line: Line, drive: WallDrive, coordinates: FloatArray, gamma: FloatArr
 def wall_values(line: Line, drive: WallDrive, place: float, gamma: FloatArray) -> FloatArray:
     """The transformed answer of a driven line at one place for many gamma, shape (n_gamma,)."""
     if isinstance(line, StackLine):
-        return stack.transform(line, drive, Places(np.array([place]), VALUE), gamma**2)[0, :, 0].real
+        return stack_laplace.transform(line, drive, Places(np.array([place]), VALUE), gamma**2)[0, :, 0].real
     values = np.empty_like(gamma)
     long = gamma > 0 if line.is_endless else gamma * line.extent > SMALL_LENGTH
     at = np.array([place])
@@ -166,7 +166,7 @@ def _profile(line: Line, profiles: Profiles, places: Places, gamma: float) -> Fl
 def departure(line: Line, profiles: Profiles, places: Places, gamma: FloatArray) -> FloatArray:
     """The transformed answer less f / gamma^2: waves from the breaks, shape (n, n_gamma, n_profiles)."""
     if isinstance(line, StackLine):
-        return stack.departure(line, profiles, places, gamma**2).real
+        return stack_laplace.departure(line, profiles, places, gamma**2).real
     if places.high is None:
         return _waves(line, profiles, places.low, gamma, places.order)
     return _waves(line, profiles, places.high, gamma, PRIMITIVE) - _waves(line, profiles, places.low, gamma, PRIMITIVE)

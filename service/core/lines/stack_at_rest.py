@@ -8,15 +8,12 @@ with m the mean of what drives the line. In a layer the flow is a straight line 
 from __future__ import annotations
 
 import math
-from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
 
 from service.core.lines.line import SLOPE, VALUE, Drive, WallDrive
-
-if TYPE_CHECKING:
-    from service.core.lines.stack import Pieces, StackLine
+from service.core.lines.stack import Pieces, StackLine
 
 FloatArray = NDArray[np.float64]
 

@@ -16,7 +16,7 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines import stack
+from service.core.lines import stack_laplace
 from service.core.lines.images import LATEST
 from service.core.lines.line import SLOPE, Drive, WallDrive
 from service.core.lines.places import Places, TimeResponse
@@ -72,7 +72,7 @@ def _inverted(
     for start in range(0, times.size, at_once):
         run = slice(start, start + at_once)
         s = (_MU / times[run, None] * _RAY).ravel()
-        transformed, sizes = stack.with_sizes(line, drive, places, s, less_profile=less_profile)
+        transformed, sizes = stack_laplace.with_sizes(line, drive, places, s, less_profile=less_profile)
         shape = (places.low.size, -1, PLACES, columns)
         terms = transformed.reshape(shape) * _WEIGHTS[:, None]
         answer[:, run] = terms.imag.sum(axis=2) / times[run, None]

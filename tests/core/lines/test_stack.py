@@ -12,7 +12,7 @@ import scipy.linalg
 from numpy.typing import NDArray
 
 from service.core import time_error
-from service.core.lines import stack
+from service.core.lines import stack_laplace
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Drive, Order, WallDrive
 from service.core.lines.places import Places
 from service.core.lines.stack import StackLine
@@ -117,7 +117,7 @@ def test_transform_solves_the_linear_system_of_the_layers(seed: int) -> None:
         for name, (drive, given) in found.drives.items():
             answer = exact.solve_line(found.cut, given, arithmetic.mpmathify(s))
             for what, order in ORDERS.items():
-                values = stack.transform(found.line, drive, found.asked(order), np.array([s]))[:, 0, 0]
+                values = stack_laplace.transform(found.line, drive, found.asked(order), np.array([s]))[:, 0, 0]
                 wanted = found.read(answer, order)
                 # Within a layer the slopes of a profile are those of waves from both of its ends, which may cancel.
                 least = float(max(map(abs, wanted))) if name == "profile" else 0.0
@@ -134,7 +134,7 @@ def test_departure_is_the_transform_less_the_profile_and_keeps_its_digits(seed: 
     for s in (1e4 * slow, 1e9 * slow, 1e6 * slow * (-4 + 3j)):
         answer = exact.solve_line(found.cut, given, arithmetic.mpmathify(s))
         for order in (VALUE, SLOPE):
-            values = stack.departure(found.line, drive, found.asked(order), np.array([s]))[:, 0, 0]
+            values = stack_laplace.departure(found.line, drive, found.asked(order), np.array([s]))[:, 0, 0]
             wanted = found.read(answer, order)
             if order == VALUE:
                 wanted = [value - held / arithmetic.mpmathify(s) for value, held in zip(wanted, start, strict=True)]
