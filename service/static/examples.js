@@ -143,4 +143,30 @@ export const EXAMPLES = [
       accuracy: { kind: "1e-6" },
     },
   },
+  {
+    title: "Bus-bar stub with clamped contacts (block, several conditions)",
+    problem: {
+      name: "Halden Reach, bus-bar stub with clamped contacts",
+      potential: "electric_potential",
+      units: { length: "mm", potential: "mV", flow: "A" },
+      body: { size: { x: 80, y: 60, z: 25 }, conductivity: "56 MS/m" },
+      faces: {
+        x_low: insulated,
+        x_high: insulated,
+        y_low: insulated,
+        y_high: insulated,
+        z_low: insulated,
+        z_high: {
+          condition: "mixed",
+          background: insulated,
+          pads: [
+            { name: "clamp A", x: [5, 25], y: [10, 50], condition: "held", value: 0 },
+            { name: "clamp B", x: [55, 75], y: [10, 50], condition: "held", flow: 1200 },
+            { name: "fuse lug", x: [35, 45], y: [0, 8], condition: "film", coefficient: "4 MS/m^2", ambient: 0 },
+          ],
+        },
+      },
+    },
+    view: { plane: { axis: "z", position: "25", count: "41" }, accuracy: { kind: "5e-3" } },
+  },
 ];

@@ -174,7 +174,7 @@ function patchFields(draft, face, datum, index, id, meaning, changed, redraw) {
   const isFlow = meaning.kind === "flux";
   const value = field({
     id: idOf(part, "value"), label: "Value", spoken, kind: isFlow && patch.isTotal ? "flow" : meaning.kind, value: patch.value,
-    onInput: writer(patch, "value", changed),
+    onInput: writer(patch, "value", changed), extraClass: isFlow ? "whole" : "",
   });
   return make(
     "fieldset",

@@ -134,6 +134,7 @@ function viewFields(draft, changed, redraw) {
     choice({
       id: "accuracy-kind", label: "Largest error", value: accuracy.kind,
       options: [
+        ["5e-3", "five thousandths of the span"],
         ["1e-3", "a thousandth of the span"],
         ["1e-6", "a millionth of the span"],
         ["1e-9", "1e-9 of the span"],

@@ -95,7 +95,7 @@ function padCard(draft, face, index, changed, redraw) {
       },
     }),
     pad.kind === "film" ? text("coefficient", words.film, "film_coefficient") : null,
-    text("value", label, measure),
+    text("value", label, measure, pad.kind === "film" ? {} : { extraClass: "whole" }),
     intervals(axesAcross(axisOf(face)), pad, id, spoken, changed),
     remove,
   );

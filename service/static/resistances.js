@@ -4,8 +4,9 @@ import { draw, make, scrolled, verdict } from "./elements.js";
 import { bounded, brief, pretty, shown } from "./numbers.js";
 import { padName } from "./pads.js";
 
-/** A larger matrix is shown in its colours alone. */
+/** A larger matrix is shown in its colours alone, and this one with every digit that is certain. */
 const MOST_WRITTEN = 12;
+const MOST_EXACT = 5;
 /** So many resistors are drawn, the strongest. */
 const MOST_DRAWN = 120;
 /** So many pads have the values of their resistors written. */
@@ -13,11 +14,14 @@ const MOST_VALUES = 4;
 
 /** @param {any} answer of POST /v1/resistances */
 export function resistancesView(answer, words) {
+  const flow = `1 ${pretty(answer.units.flow)}`;
+  const meaning = answer.mean
+    ? `By how much the mean of each pad rises for ${flow} into one of them: a row for the pad that rises, a column for the pad that is fed.`
+    : `How far two pads are apart for ${flow} from one to the other, the others passing none. Nothing but the pads takes up a flow here.`;
   return [
-    make("p", { class: "hint" }, `By how much the mean of each pad rises for 1 ${pretty(answer.units.flow)} into one of them: `
-      + "a row for the pad that rises, a column for the pad that is fed."),
+    make("p", { class: "hint" }, meaning),
     matrixView(answer, words),
-    agreementView(answer),
+    certaintyView(answer),
     make("h3", {}, "Equivalent resistors"),
     ...networkView(answer),
   ];
@@ -32,36 +36,43 @@ function tintOf(scale, part) {
   return `rgb(${low.map((value, channel) => Math.round(value + (high[channel] - value) * (at - index))).join(",")})`;
 }
 
-function matrixView({ pads, mean, units }, words) {
-  const all = mean.value.flat();
+function matrixView({ pads, mean, pairs, units }, { scale }) {
+  const matrix = mean ?? pairs;
+  const all = matrix.value.flat().filter((value) => value > 0);
   // By the logarithm: neighbours are seen as well as the pad itself.
   const least = Math.log(Math.max(Math.min(...all), 1e-6 * Math.max(...all)));
   const span = Math.log(Math.max(...all)) - least || 1;
-  const tint = (value) => tintOf(words.scale, (Math.log(Math.max(value, Math.exp(least))) - least) / span);
+  const tint = (value) => tintOf(scale, (Math.log(Math.max(value, Math.exp(least))) - least) / span);
   const isWritten = pads.length <= MOST_WRITTEN;
+  const words = (value, row, column) => {
+    if (pads.length <= MOST_EXACT) return shown(value, matrix.error_bound[row][column]);
+    return isWritten ? brief(Number(value.toPrecision(4))) : null;
+  };
   const entry = (value, row, column) => {
-    const said = `${padName(pads[row])} for ${padName(pads[column])}: ${shown(value, mean.error_bound[row][column])} ${units.resistance}`;
-    return make("td", { style: `background:${tint(value)}`, title: said }, isWritten ? brief(Number(value.toPrecision(4))) : null);
+    const said = `${padName(pads[row])} for ${padName(pads[column])}: ${shown(value, matrix.error_bound[row][column])} ${units.resistance}`;
+    return make("td", { style: `background:${tint(value)}`, title: said }, words(value, row, column));
   };
   const table = make(
     "table", { class: isWritten ? "numbers matrix" : "numbers matrix small-cells" },
-    make("caption", {}, `Mean rise per unit flow, ${pretty(units.resistance)}`),
-    make("thead", {}, make("tr", {}, make("th", { scope: "col" }, "rises \\ fed"),
+    make("caption", {}, `${mean ? "Mean rise per unit flow" : "Resistance between pads"}, ${pretty(units.resistance)}`),
+    make("thead", {}, make("tr", {}, make("th", { scope: "col" }, mean ? "rises \\ fed" : "Pad"),
       pads.map((pad, index) => make("th", { scope: "col", title: padName(pad) }, isWritten ? padName(pad) : String(index + 1))))),
-    make("tbody", {}, mean.value.map((line, row) => make("tr", {},
+    make("tbody", {}, matrix.value.map((line, row) => make("tr", {},
       make("th", { scope: "row", title: padName(pads[row]) }, isWritten ? padName(pads[row]) : String(row + 1)),
       line.map((value, column) => entry(value, row, column))))),
   );
   return scrolled(table, "Matrix of rises per unit flow");
 }
 
-function agreementView({ certificate: c, units }) {
+function certaintyView({ certificate: c, mean, pairs, units }) {
   const unit = pretty(units.resistance);
+  const within = `No entry is further off than ${bounded(Math.max(...(mean ?? pairs).error_bound.flat()))} ${unit}.`;
+  if (c.agreement === null) return verdict("good", "Bounded by refinement", within);
   const agree = c.agreement <= c.agreement_bound;
   return verdict(
     agree ? "good" : "bad",
     agree ? "Symmetric, and within its bound" : "The check failed",
-    `No entry is further off than ${bounded(c.error_bound)} ${unit}. ${c.checked_entries} entries were computed once more, from pad to pad and back; `
+    `${within} ${c.checked_entries} entries were computed once more, from pad to pad and back; `
       + `they differ by at most ${bounded(c.agreement)} ${unit}${agree ? "" : ". Do not rely on these numbers"}.`,
   );
 }
@@ -85,12 +96,12 @@ function resistorsOf(network) {
     return { i, j, conductance, bound: network.between_error_bound[i][j] };
   }));
   const grounds = network.to_environment.map((conductance, i) => ({ i, j: null, conductance, bound: network.to_environment_error_bound[i] }));
-  return [...pairs, ...grounds];
+  // What is zero within its bound joins nothing.
+  return [...pairs, ...grounds].filter(({ conductance, bound }) => Math.abs(conductance) > bound);
 }
 
 /** Resistance with its bound, from a conductance with one. */
 function resistance({ conductance, bound }) {
-  if (Math.abs(conductance) <= bound) return null;
   return { value: 1 / conductance, bound: bound / (Math.abs(conductance) * (Math.abs(conductance) - bound)) };
 }
 
@@ -99,9 +110,7 @@ function resistorTable(pads, network, units) {
     const found = resistance(resistor);
     const to = resistor.j === null ? "environment" : padName(pads[resistor.j]);
     return make("tr", {}, make("th", { scope: "row" }, `${padName(pads[resistor.i])} \u2013 ${to}`),
-      found
-        ? make("td", {}, shown(found.value, found.bound), make("span", { class: "known" }, found.bound > 0 ? `\u00b1 ${bounded(found.bound)}` : "exact"))
-        : make("td", { class: "no-value" }, "nothing within its bound"));
+      make("td", {}, shown(found.value, found.bound), make("span", { class: "known" }, found.bound > 0 ? `\u00b1 ${bounded(found.bound)}` : "exact")));
   });
   return scrolled(
     make("table", { class: "numbers" },
@@ -124,8 +133,8 @@ function networkPicture(pads, network, unit) {
     .sort((a, b) => Math.abs(b.conductance) - Math.abs(a.conductance)).slice(0, MOST_DRAWN).reverse();
   const hasValues = pads.length <= MOST_VALUES;
   const value = (resistor, x, y) => {
-    const found = hasValues && resistance(resistor);
-    return found ? [draw("text", { class: "resistor-value", x: x.toFixed(1), y: y.toFixed(1), "text-anchor": "middle" }, brief(Number(found.value.toPrecision(3))))] : [];
+    const words = brief(Number(resistance(resistor).value.toPrecision(3)));
+    return hasValues ? [draw("text", { class: "resistor-value", x: x.toFixed(1), y: y.toFixed(1), "text-anchor": "middle" }, words)] : [];
   };
   const name = ({ conductance }) => (conductance < 0 ? "resistor negative" : "resistor");
   const joins = pairs.flatMap((pair) => {
