@@ -64,10 +64,11 @@ DESCRIPTION = """
 Steady potential fields (temperature, electric potential, concentration, hydraulic head) in rectangular
 bodies, with an error bound on every number.
 
-A **problem** is a block, or a bar that is semi-infinite along z, with what is known on its faces and what is
-generated inside. Send it with each question, or store it once and name its `problem_id`. A bare number is in
-the declared unit of its kind; a text such as `"25 mm"` carries its own. An inflow is positive into the body,
-a flux component along its axis. Every error is a document of RFC 9457 with a pointer to each field at fault.
+A **problem** is a block, a body without ends along some of its axes, or a stack of layers, with what is known
+on its faces and what is generated inside. Send it with each question, or store it once and name its
+`problem_id`. A bare number is in the declared unit of its kind; a text such as `"25 mm"` carries its own. An
+inflow is positive into the body, a flux component along its axis. Every error is a document of RFC 9457 with
+a pointer to each field at fault.
 """
 
 
