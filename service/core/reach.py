@@ -60,8 +60,8 @@ FIRST_LOOK = 1e-5
 FAR_AT_FIRST, FAR_AT_MOST = 16.0, 1e9
 
 # Rounds of finding the worst place and the distance there, which converge quadratically, and the accuracy of the place
-# in parts of the size that is wanted; the distance is corrected once by what is found there in the end.
-MOST_ROUNDS, PLACE = 12, 1e-5
+# in parts of the size that is wanted; then steps of Newton's method to the accuracy asked for.
+MOST_ROUNDS, PLACE, MOST_CORRECTIONS = 12, 1e-5, 6
 
 # The highest and the lowest potential of a section are both followed where neither is larger by so much.
 ALIKE = 0.8
@@ -272,9 +272,13 @@ class _Disturbance:
                 break
             # The place that is worst at a distance is above the fraction at no larger one than the section is.
             guess = near = found
-        place, value, bound = self._worst(found, self.tolerance)
-        slope = self._slope(place, found)
-        distance = found + (value - wanted) / slope
+        distance = found
+        for _ in range(MOST_CORRECTIONS):
+            place, value, bound = self._worst(distance, self.tolerance)
+            slope = self._slope(place, distance)
+            distance = min(max(distance + (value - wanted) / slope, 0.0), far)
+            if abs(value - wanted) <= bound:
+                break
         room = (bound + fraction * self.largest_bound) / slope
         return Reached(fraction, distance, self._proved(place, distance, fraction, room), self._place(place, distance))
 
