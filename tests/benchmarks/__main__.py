@@ -2,8 +2,8 @@
 
 Each line is a ratio measured in this run, so that the machine cancels: the core against finite differences
 with algebraic multigrid, against one matrix product, against itself with more points and tighter
-tolerances; the service against an empty route. Name parts (a b c d e) to run only these. One BLAS thread,
-as the service has it.
+tolerances, all pads of a stack against one load by finite differences, one pad that moves against all of them; the
+service against an empty route. Name parts (a b c d e f g) to run only these. One BLAS thread, as the service has it.
 """
 
 from __future__ import annotations

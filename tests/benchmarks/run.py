@@ -5,7 +5,7 @@ from __future__ import annotations
 import argparse
 from collections.abc import Callable
 
-from tests.benchmarks import bar_grid, over_http, scaling, small_problems
+from tests.benchmarks import bar_grid, many_pads, over_http, scaling, small_problems
 
 PARTS: dict[str, Callable[[], list[str]]] = {
     "a": bar_grid.against_finite_differences,
@@ -13,13 +13,15 @@ PARTS: dict[str, Callable[[], list[str]]] = {
     "c": small_problems.in_sequence,
     "d": over_http.against_empty_route,
     "e": scaling.with_points_and_tolerance,
+    "f": many_pads.against_one_load,
+    "g": many_pads.with_one_moved,
 }
 
 
 def main() -> None:
     """Print each part's lines as soon as they are known."""
     parser = argparse.ArgumentParser(prog="python3 -m tests.benchmarks", description="Print measured ratios.")
-    parser.add_argument("parts", nargs="*", metavar="part", help="a b c d e; all of them by default")
+    parser.add_argument("parts", nargs="*", metavar="part", help="a b c d e f g; all of them by default")
     options = parser.parse_args()
     unknown = [letter for letter in options.parts if letter not in PARTS]
     if unknown:
