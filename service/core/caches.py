@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+from service.core.influence_kept import KEPT
 from service.core.lines.eigenvalues import roots
 from service.core.lines.modes import eigen_integrals, modes_of
 
@@ -26,4 +27,5 @@ def cache_report() -> dict[str, CacheReport]:
     for name, function in CACHED.items():
         info = function.cache_info()
         reports[name] = CacheReport(info.hits, info.misses, info.currsize, info.maxsize or 0)
+    reports["influence_matrices"] = CacheReport(KEPT.hits, KEPT.misses, len(KEPT), KEPT.limit)
     return reports

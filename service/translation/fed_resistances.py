@@ -7,9 +7,10 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import influence, peaks, solve
+from service.core import peaks, solve
 from service.core.influence import Pad as FedPad
 from service.core.influence import check_pads, environment, with_flow_into
+from service.core.influence_kept import kept_influence
 from service.core.network import network
 from service.translation.answers import KeepGoing
 from service.translation.pads import Pad
@@ -37,7 +38,7 @@ def fed_resistances(
 ) -> Resistances:
     """Everything about the resistances of pads that are fed. tolerance: of a rise per unit flow."""
     fed = [_fed(pad) for pad in pads]
-    found = influence(problem.body, fed, tolerance=tolerance, keep_going=keep_going)
+    found = kept_influence(problem.body, fed, tolerance=tolerance, keep_going=keep_going)
     keep_going()
     highest = None
     if with_peaks:
