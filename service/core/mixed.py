@@ -23,7 +23,8 @@ from service.core.field import OFFERED, Field, Grid, KeepGoing, Setting
 from service.core.maps import Rectangle
 from service.core.mixed_base import Base, Spot, base_of, pads_of
 from service.core.mixed_panels import Refined, given_total, needs_balance
-from service.core.mixed_refinement import LEAST_CHANGE, LEVELS, Ladder, Refinement, change_of
+from service.core.mixed_refinement import LEVELS, Ladder, Refinement, change_of, left_over
+from service.core.panel_noise import noise
 from service.core.panels import STEP
 from service.core.problem import Body, Face, FilmPad, HeldPad, axes_along, axis_of
 from service.core.solution import Solution
@@ -276,7 +277,10 @@ class MixedSolution(Solution):
                 [
                     self._on_spots(ask(solution, share), solution, refined, finest, points, share)
                     for solution, refined in levels
-                ]
+                ],
+                self._noise(finest, points),
+                self._unsettled(here),
+                here.solutions[0].span,
             )
             if found.potential_bound <= tolerance:
                 return found
@@ -284,6 +288,35 @@ class MixedSolution(Solution):
             if finer is None:
                 raise AccuracyNotReached(tolerance, OFFERED * found.potential_bound)
             count = finer
+
+    def _unsettled(self, here: Refinement) -> float:
+        """By what part the flows of the finest panels, and levels that are found, may still be off."""
+        flows = [
+            [Bounded(math.fsum(refined.flows[number]), 0.0) for refined in here.refined]
+            for number in range(len(self._base.spots))
+        ]
+        levels = [
+            [Bounded(float(refined.levels[number]), 0.0) for refined in here.refined]
+            for number, spot in enumerate(self._base.spots)
+            if spot.level is None
+        ]
+        size = math.fsum(abs(fine.value) for fine, _, _ in flows)
+        span = here.solutions[0].span
+        parts = [_over(self._distance_to_limit(values), size) for values in flows]
+        parts += [_over(self._distance_to_limit(values), span) for values in levels]
+        return max(parts)
+
+    def _distance_to_limit(self, values: Sequence[Bounded]) -> float:
+        limit = self._ladder.limit(values)
+        return abs(limit.value - values[0].value) + limit.error_bound
+
+    def _noise(self, refined: Refined, points: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """How far potential and flux may be off where panels are told apart, shape (n,) each."""
+        potential, flux = noise(self._base, refined, points)
+        for spot in self._base.spots:
+            if spot.is_held:
+                potential[_places_on(self.body, spot, points)[0]] = 0.0
+        return potential, flux
 
     def _on_spots(
         self,
@@ -498,15 +531,24 @@ def _lies_in(rectangle: Rectangle, other: Rectangle) -> bool:
     )
 
 
-def _compared(fields: Sequence[Field]) -> Field:
-    """The field of the finest panels, with the changes since coarser ones in its bounds."""
+def _compared(
+    fields: Sequence[Field], noise_of_panels: tuple[FloatArray, FloatArray], unsettled: float, span: float
+) -> Field:
+    """The field of the finest panels, with what it may still be off by in its bounds.
+
+    unsettled: by what part flows may be off. Well off the pads a field is off by some such part, whatever its changes
+    at a place come to by chance.
+    """
     fine, middle, coarse = fields
-    last, before = np.abs(fine.potential - middle.potential), np.abs(middle.potential - coarse.potential)
-    bound = float(np.maximum(last, LEAST_CHANGE * before).max()) + fine.potential_bound + middle.potential_bound
+    left = left_over(np.abs(fine.potential - middle.potential), np.abs(middle.potential - coarse.potential))
+    at_places = np.where(fine.potential == middle.potential, left, np.maximum(left, 0.5 * unsettled * span))
+    bound = float((at_places + noise_of_panels[0]).max()) + fine.potential_bound + middle.potential_bound
     if fine.flux is None or middle.flux is None or coarse.flux is None:
         return replace(fine, potential_bound=bound)
     assert fine.flux_bound is not None
     assert middle.flux_bound is not None
-    change = np.maximum(np.abs(fine.flux - middle.flux), LEAST_CHANGE * np.abs(middle.flux - coarse.flux))
-    flux_bound = np.nan_to_num(change).max(axis=0) + fine.flux_bound + middle.flux_bound
-    return replace(fine, potential_bound=bound, flux_bound=flux_bound)
+    last, before = np.abs(fine.flux - middle.flux), np.abs(middle.flux - coarse.flux)
+    flux_left = left_over(np.nan_to_num(last), np.nan_to_num(before)).max(axis=0)
+    flux_left = np.maximum(flux_left, 2.0 * unsettled * np.nan_to_num(np.abs(fine.flux)).max(axis=0))
+    flux_left += noise_of_panels[1] + fine.flux_bound + middle.flux_bound
+    return replace(fine, potential_bound=bound, flux_bound=flux_left)

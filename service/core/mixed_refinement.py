@@ -59,8 +59,11 @@ SAFETY = 6.0
 LEAST_STEP, PACE_SAFETY, SLOWEST_PACE = 0.1, 1.5, 1.25
 RESOLVED_PACE, UNRESOLVED_PACE = 0.75, 0.75
 
-# A change from one refinement to the next is at least this part of the change before it: fields gain an order two.
-LEAST_CHANGE = 0.25
+# Local values gain between one order, on a pad and beside its border, and three. What is left is told from the pace of
+# their changes, at the most MOST_LEFT times the last; a change that vanishes by chance counts as that of three orders.
+FASTEST_PACE, CHANGE_SAFETY, MOST_LEFT = 8.0, 2.5, 2.0
+
+TINY = 1e-300
 
 # Part of the span to which the mean over a spot is integrated that a level is counted from.
 LEVEL_ACCURACY = 1e-12
@@ -233,8 +236,15 @@ def extrapolated(values: Sequence[Bounded], *, held: bool) -> Bounded:
     return Bounded(twice, error + 2 * max(value.error_bound for value in values))
 
 
+def left_over(last: FloatArray, before: FloatArray) -> FloatArray:
+    """What local values may still be off by after a last change and the one before it, both >= 0."""
+    # Changes fall by 2 to 8 from one to the next, from places on a pad's border to those well off it.
+    pace = np.clip(before / np.maximum(last, TINY), SLOWEST_PACE, FASTEST_PACE)
+    return np.asarray(np.maximum(last, before / FASTEST_PACE) * np.minimum(MOST_LEFT, CHANGE_SAFETY / (pace - 1.0)))
+
+
 def change_of(values: Sequence[Bounded]) -> Bounded:
-    """The first of the values at three refinements, which errs by what the last refinement changed at the most."""
+    """The first of the values at three refinements, with what it may still be off by."""
     fine, middle, coarse = values
-    change = max(abs(fine.value - middle.value), LEAST_CHANGE * abs(middle.value - coarse.value))
-    return Bounded(fine.value, change + fine.error_bound + middle.error_bound)
+    left = left_over(np.abs(fine.value - middle.value), np.abs(middle.value - coarse.value))
+    return Bounded(fine.value, float(left) + fine.error_bound + middle.error_bound)

@@ -328,18 +328,25 @@ def test_the_field_on_a_held_pad_is_its_level_and_its_flux_is_finite_inside() ->
     assert (hot.hottest.value, hot.coldest.value) == (1.0, 0.0)
 
 
-def test_field_bounds_hold_against_finer_panels() -> None:
-    body = BODIES["films above and below"]
-    coarse, fine = (MixedSolution(Ladder(body, base_of(body), 3 * 32**2, None)) for _ in range(2))
-    coarse.count, fine.count = 8, 32
-    grid = Grid(np.linspace(0.0, 1.0, 7), np.linspace(0.0, 1.0, 6), np.array([0.0, 0.3, 0.5]))
-    rough, exact = (some.field(grid, tolerance=1.0, with_flux=True) for some in (coarse, fine))
-    assert np.abs(rough.potential - exact.potential).max() <= rough.potential_bound
-    assert rough.flux is not None
-    assert rough.flux_bound is not None
+@pytest.mark.parametrize("name", ["closed block", "film pads alone", "a narrow gap", "a level to be found"])
+def test_field_bounds_hold_at_every_place_against_finer_panels(name: str) -> None:
+    body = BODIES[name]
+    places = np.random.default_rng(3).uniform(0.0, 1.0, (24, 3)) * SIZE
+    places[:10, 2] = SIZE[2]
+    ladder = Ladder(body, base_of(body), 10000, None)
+    solution = MixedSolution(ladder)
+    solution.count = 48
+    exact = solution.field_at(places, tolerance=1e9, with_flux=True)
     assert exact.flux is not None
-    inside = (slice(None), slice(None), slice(None), slice(0, 2))
-    assert (np.abs(rough.flux - exact.flux)[inside] <= rough.flux_bound[inside[1:]] + 1e-12).all()
+    for solution.count in (16, 24):
+        found = solution.field_at(places, tolerance=1e9, with_flux=True)
+        assert found.flux is not None
+        assert found.flux_bound is not None
+        assert (np.abs(found.flux - exact.flux) <= found.flux_bound).all()
+        # One at a time, so that the bound of one place does not cover for another.
+        for place, value in zip(places, exact.potential, strict=True):
+            alone = solution.field_at(place[None, :], tolerance=1e9)
+            assert abs(alone.potential[0] - value) <= alone.potential_bound
 
 
 def test_an_accuracy_out_of_reach_says_what_was_reached() -> None:
