@@ -84,3 +84,14 @@ def check_work(estimates: Sequence[Estimate], settings: Settings) -> None:
             memory,
             settings.memory_bytes,
         )
+
+
+def check_pairs(work: float, limit: float) -> None:
+    """Raise TooCostly when all pairs of pads take more multiplications than allowed."""
+    if work > limit:
+        raise TooCostly(
+            f"The request would take about {work:.2g} multiplications; at most {limit:.2g} are allowed. Ask for "
+            "fewer pads, for pads on parallel faces, or for no peaks.",
+            work,
+            limit,
+        )

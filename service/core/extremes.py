@@ -19,6 +19,7 @@ from scipy.ndimage import maximum_filter
 
 from service.core import field
 from service.core.endless import far_setting, neighbourhood
+from service.core.errors import AccuracyNotReached
 from service.core.field import Grid, Setting
 from service.core.maps import FaceMap, Peak, Profiles, Rectangle
 from service.core.problem import AXES, Body, Face, Film, Held, Inflow, axes_along, axis_of, map_of
@@ -103,10 +104,14 @@ def highest_among(
     sign: float = 1.0,
 ) -> Place:
     """The highest (for sign -1 the lowest) potential in the box that a grid spans, looked for from its places."""
+    # Half is left for what lies between the places looked at.
     search = _Search(setting, 0.5 * tolerance, keep_going)
-    starts = _from_grid(search, axes, sign * search.field(axes, search.accuracy).potential, sign)
-    followed = [start for start in starts if start.value + start.slack >= starts[0].value][:MOST_PAD_CLIMBS]
-    return max((_climb(search, start, sign) for start in followed), key=lambda place: sign * place.value)
+    try:
+        starts = _from_grid(search, axes, sign * search.field(axes, search.accuracy).potential, sign)
+        followed = [start for start in starts if start.value + start.slack >= starts[0].value][:MOST_PAD_CLIMBS]
+        return max((_climb(search, start, sign) for start in followed), key=lambda place: sign * place.value)
+    except AccuracyNotReached as error:
+        raise AccuracyNotReached(tolerance, 2 * error.bound) from None
 
 
 def _extreme(search: _Search, sign: float) -> Place:

@@ -65,7 +65,8 @@ class Certificate(Model):
         examples=[4e-8],
     )
     accuracy_asked: float = Field(
-        description="The accuracy that was asked for; unit `potential_difference`.", examples=[6.1e-7]
+        description="The accuracy that was asked for, or if none was the one aimed at; unit `potential_difference`.",
+        examples=[6.1e-7],
     )
     agreement: float | None = Field(
         description="Largest difference between the two representations of the solution at the checked "

@@ -224,8 +224,8 @@ class Question(Model):
     )
     accuracy: Accuracy | None = Field(
         None,
-        description="Accuracy wanted; 1e-9 of the span of the data if left out, and 1e-4 where a film face is iterated "
-        "along which the potential varies.",
+        description="Accuracy wanted. If left out, 1e-9 of the span of the data; 1e-4 where a film face is iterated "
+        "along which the potential varies; beside mixed faces 5e-3, and 1e-5 for flows; or what can be promised.",
         examples=[{"absolute": "1e-6 K"}],
     )
 

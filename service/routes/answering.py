@@ -6,13 +6,13 @@ import asyncio
 import hashlib
 import time
 from collections.abc import Callable, Coroutine, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any, Generic, TypeVar
 
 from fastapi import Request, Response
 
 from service import __version__
-from service.core import CoreError, Interrupted, Solution
+from service.core import AccuracyNotReached, CoreError, Interrupted, Solution
 from service.media import FORMS, JSON_FORM, Form, choose_form
 from service.models.evaluate import Question
 from service.refusals import TooCostly
@@ -21,7 +21,10 @@ from service.settings import Settings
 from service.state import KeptAnswer, State, state_of
 from service.translation.answers import KeepGoing
 from service.translation.problem import ReadProblem
-from service.translation.solving import point_into_question
+from service.translation.solving import Solved, point_into_question
+
+# Parts of a question may each be promised less than the one before.
+EASED_AT_MOST = 3
 
 Asked = TypeVar("Asked", bound=Question)
 Wanted = TypeVar("Wanted")
@@ -30,12 +33,17 @@ Outcome = TypeVar("Outcome")
 
 @dataclass(frozen=True)
 class Call(Generic[Asked, Wanted]):
-    """The three steps of one call: read the question, refuse what is too costly, answer. forms: of its answers."""
+    """The three steps of one call: read the question, refuse what is too costly, answer.
+
+    forms: of its answers. has_tolerance: whether what is wanted has a `tolerance` in the potential's unit, which gives
+    way to what can be promised where the client asked for none.
+    """
 
     read: Callable[[Asked, ReadProblem, Solution, Settings], Wanted]
     check_cost: Callable[[Wanted, Solution, Settings, int], None]
     answer: Callable[[ReadProblem, Solution, Wanted, KeepGoing], dict[str, Any]]
     forms: Sequence[Form] = FORMS
+    has_tolerance: bool = True
 
 
 class AnswerRoute(StrictJsonRoute):
@@ -101,7 +109,7 @@ def _work(
         wanted = call.read(question, solved.problem, solved.solution, state.settings)
         call.check_cost(wanted, solved.solution, state.settings, form.bytes_a_number)
         lap("prepare")
-        content = call.answer(solved.problem, solved.solution, wanted, keep_going)
+        content = _answer_as_well_as_can_be(question, call, solved, wanted, keep_going)
         lap("compute")
     except CoreError as error:
         point_into_question(error, solved.problem.units)
@@ -115,6 +123,19 @@ def _work(
             state.settings.answer_bytes,
         )
     return body, times
+
+
+def _answer_as_well_as_can_be(
+    question: Asked, call: Call[Asked, Wanted], solved: Solved, wanted: Wanted, keep_going: KeepGoing
+) -> dict[str, Any]:
+    """The answer; where no accuracy was asked for and the usual one cannot be promised, to one that can."""
+    gives_way = question.accuracy is None and call.has_tolerance
+    for _ in range(EASED_AT_MOST if gives_way else 0):
+        try:
+            return call.answer(solved.problem, solved.solution, wanted, keep_going)
+        except AccuracyNotReached as error:
+            wanted = replace(wanted, tolerance=error.bound)  # type: ignore[type-var]
+    return call.answer(solved.problem, solved.solution, wanted, keep_going)
 
 
 def _key(request: Request, form: Form) -> str:

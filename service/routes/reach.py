@@ -14,7 +14,7 @@ from service.translation.reach import answer_reach, check_cost, read_reach
 
 router = APIRouter(prefix="/v1", tags=["answers"], route_class=AnswerRoute)
 
-_CALL = Call(read_reach, check_cost, answer_reach)
+_CALL = Call(read_reach, check_cost, answer_reach, has_tolerance=False)
 
 
 @router.post(

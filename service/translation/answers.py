@@ -97,6 +97,14 @@ def warning(code: str, message: str, where: str) -> Warning_:
     return {"code": code, "message": message, "where": where}
 
 
+def missed_accuracy(bound: float, tolerance: float, where: str) -> list[Warning_]:
+    """A remark on a number whose bound is wider than the accuracy asked for."""
+    if bound <= tolerance:
+        return []
+    message = f"The bound of this number is {bound:.2g}, wider than the accuracy asked for, {tolerance:.2g}."
+    return [warning("accuracy-not-reached", message, where)]
+
+
 def problem_warnings(problem: ReadProblem, solution: Solution) -> list[Warning_]:
     """Remarks that hold for every answer about the problem."""
     warnings = []

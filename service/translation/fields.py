@@ -174,15 +174,7 @@ class _Answering:
 
     def _note_bound(self, bound: float, where: str) -> None:
         self.bounds.append(float(bound))
-        if bound > self.wanted.tolerance:
-            self.warnings.append(
-                answers.warning(
-                    "accuracy-not-reached",
-                    f"The bound of this number is {bound:.2g}, wider than the accuracy asked for, "
-                    f"{self.wanted.tolerance:.2g}.",
-                    where,
-                )
-            )
+        self.warnings += answers.missed_accuracy(bound, self.wanted.tolerance, where)
 
 
 def answer_fields(

@@ -7,7 +7,7 @@ from typing import Any
 
 from service import cost
 from service.core import Balance, Solution, Total
-from service.core.mixed import PadAnswer
+from service.core.mixed import MixedSolution, PadAnswer
 from service.core.problem import AXES, Face, axes_along
 from service.models import evaluate as models
 from service.settings import Settings
@@ -15,7 +15,7 @@ from service.translation import answers
 from service.translation.answers import KeepGoing
 from service.translation.collector import Collector
 from service.translation.fields import describe_part, rectangle_shown
-from service.translation.mixed_pads import flow_of, mixed_pad, pad_answers, potential_of
+from service.translation.mixed_pads import USUAL_OF_FLOWS, flow_of, mixed_pad, pad_answers, potential_of
 from service.translation.places import FacePart, PlaceReader, PlanePart
 from service.translation.problem import ReadProblem
 from service.units import Kind, UnitSystem
@@ -54,6 +54,9 @@ def read_totals(
     if ask.edge_gap is not None:
         gap = collector.read_positive(Kind.LENGTH, ask.edge_gap, ("evaluate", "edge_gap"), "The edge gap")
     tolerance = answers.read_tolerance(collector, question.accuracy, solution)
+    if question.accuracy is None and isinstance(solution, MixedSolution):
+        # The usual accuracy is that of fields.
+        tolerance = USUAL_OF_FLOWS * (solution.span or 1.0)
     collector.raise_if_any()
     return TotalsWanted(
         tuple(dict.fromkeys(faces)),

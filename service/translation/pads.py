@@ -138,17 +138,22 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
     tolerance = wanted.tolerance
     mixed = pad_answers(solution, tolerance)
     centres = np.array([pad.centre(problem) for pad in wanted.pads])
+    # The peaks first: they ask most of the accuracy, and say best which one can be promised.
+    peaks = _peaks(solution, wanted, keep_going)
     at_centres = solution.field_at(centres, tolerance=tolerance, keep_going=keep_going)
     bounds = [float(at_centres.potential_bound)]
     means = _means(solution, wanted, keep_going)
     found = []
-    for pad, centre, potential, mean in zip(wanted.pads, centres, at_centres.potential, means, strict=True):
+    warnings = answers.problem_warnings(problem, solution)
+    columns = zip(wanted.pads, centres, at_centres.potential, means, peaks, strict=True)
+    for index, (pad, centre, potential, mean, largest) in enumerate(columns):
         keep_going()
         passed = mixed_pad(mixed, pad.part)
-        largest = solution.peak(pad.face, pad.where, tolerance=tolerance, keep_going=keep_going)
         if passed is not None:
             mean = passed.potential
         bounds += [float(mean.error_bound), float(largest.error_bound)]
+        warnings += answers.missed_accuracy(float(mean.error_bound), tolerance, f"#/pads/{index}/mean")
+        warnings += answers.missed_accuracy(float(largest.error_bound), tolerance, f"#/pads/{index}/largest")
         found.append(
             pad.described()
             | {
@@ -165,9 +170,18 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
         "potential": problem.potential,
         "units": answers.units_shown(problem.units),
         "certificate": answers.certificate(problem, solution, centres, tolerance, bounds),
-        "warnings": answers.problem_warnings(problem, solution),
+        "warnings": warnings,
         "pads": found,
     }
+
+
+def _peaks(solution: Solution, wanted: PadsWanted, keep_going: KeepGoing) -> list[Place]:
+    """The largest potential of each pad."""
+    found = []
+    for pad in wanted.pads:
+        keep_going()
+        found.append(solution.peak(pad.face, pad.where, tolerance=wanted.tolerance, keep_going=keep_going))
+    return found
 
 
 def _means(solution: Solution, wanted: PadsWanted, keep_going: KeepGoing) -> list[Bounded]:

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import math
+from collections import Counter
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -10,7 +12,7 @@ from service import cost
 from service.core import Solution
 from service.core.maps import Rectangle
 from service.core.network import Network
-from service.core.problem import Held, axes_along
+from service.core.problem import Held, axes_along, axis_of
 from service.core.solution import USUAL_ACCURACY
 from service.models import pads as models
 from service.models.evaluate import FacePart as FacePartModel
@@ -28,6 +30,9 @@ from service.translation.problem import ReadProblem
 from service.translation.resistance_forms import count_negative
 from service.translation.resistance_parts import Resistances, Rises
 from service.units import Kind, UnitSystem
+
+# Multiplications of one entry between faces that are not parallel, and of one search for a peak, as measured.
+ONE_BY_ONE, SEARCH = 5e6, 4e7
 
 
 @dataclass(frozen=True)
@@ -102,9 +107,19 @@ def _pad(reader: PlaceReader, problem: ReadProblem, asked: FacePartModel, path: 
 
 
 def check_cost(wanted: ResistancesWanted, solution: Solution, settings: Settings, bytes_a_number: int) -> None:
-    """Raise TooCostly when the answer would pass a limit: the number of pads bounds the work."""
+    """Raise TooCostly when the work or the answer would pass a limit."""
     matrices = 8 if wanted.peaks else 6
     cost.check_answer(matrices * len(wanted.pads) ** 2 * bytes_a_number, settings.answer_bytes)
+    if not wanted.are_held:
+        searches = len(wanted.pads) ** 2 if wanted.peaks else 0
+        work = ONE_BY_ONE * _pairs_askew(wanted.pads) + SEARCH * searches
+        cost.check_pairs(work, settings.cost_multiplications)
+
+
+def _pairs_askew(pads: Sequence[Pad]) -> int:
+    """Pairs of pads on faces square to different axes, each of which takes an integral of its own."""
+    counts = Counter(axis_of(pad.face) for pad in pads)
+    return (len(pads) ** 2 - sum(count**2 for count in counts.values())) // 2
 
 
 def answer_resistances(

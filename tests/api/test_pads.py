@@ -113,6 +113,30 @@ async def test_sliver_and_pad_at_the_edge_of_a_thin_layer(client: httpx.AsyncCli
     assert corner_found["largest"]["at"][:2] == pytest.approx([30, 20])
 
 
+async def test_usual_accuracy_gives_way_to_what_can_be_promised(client: httpx.AsyncClient) -> None:
+    """Micrometres on metres leave fewer digits than usual; an accuracy that was asked for is met or refused."""
+    problem = plate({"x": [10, 20], "y": [7, 7.01], "flow": 1})
+    problem["body"] = {
+        "size": {"x": 30, "y": 20},
+        "layers": [
+            {"thickness": "1.5 m", "conductivity": 1.7},
+            {"thickness": "5 um", "conductivity": 0.2},
+            {"thickness": "2 mm", "conductivity": {"in_plane": 24, "through": 0.2}, "contact_conductance_below": 10},
+        ],
+    }
+    found = await ask(client, problem)
+    (pad,) = found["pads"]
+    asked = found["certificate"]["accuracy_asked"]
+    assert pad["centre"]["error_bound"] <= asked
+    # What is wider all the same is said to be.
+    wider = [f"#/pads/0/{key}" for key in ("mean", "largest") if pad[key]["error_bound"] > asked]
+    assert [warning["where"] for warning in found["warnings"]] == wider
+    usual = {"accuracy": {"relative": 1e-14}}
+    refused = check_problem_document(await client.post("/v1/pads", json={"problem": problem} | usual), 422)
+    assert refused["type"] == "/problem-types/accuracy-not-reached"
+    assert (await ask(client, problem, accuracy={"absolute": refused["bound"]}))["pads"]
+
+
 async def test_square_on_a_half_space_is_as_published(client: httpx.AsyncClient) -> None:
     """Centre: 2 ln(1 + sqrt 2) / pi times q a / k, with q = Q / a^2 (Carslaw and Jaeger 1959, section 10.5): 0.561100."""
     problem = {

@@ -23,7 +23,7 @@ from tests.api.wrong_requests import Wrong, check_wrong
 pytestmark = pytest.mark.anyio
 
 INSULATED = {"condition": "insulated"}
-PATCHES = [
+PATCHES: list[Json] = [
     {"name": "valve A", "x": [5, 11], "y": [4, 9], "flow": 30},
     {"name": "valve, B", "x": [11, 17], "y": [4, 9], "flow": 12},
     {"name": 'driver "C"', "x": [24, 30], "y": [15, 20], "value": "2 W/cm^2"},
@@ -277,6 +277,19 @@ async def test_pads_are_counted_and_forms_are_named(settings: Settings) -> None:
         assert "There are 3 pads; at most 2 are allowed" in document["errors"][0]["detail"]
         refused = await client.post("/v1/resistances", json={"problem": plate()}, headers={"Accept": "image/png"})
         assert "text/csv or text/plain" in check_problem_document(refused, 406)["detail"]
+
+
+@pytest.mark.parametrize("evaluate", [{"peaks": True}, {"pads": "askew"}], ids=["peaks", "pads on faces askew"])
+async def test_work_is_estimated_before_it_starts(settings: Settings, evaluate: Json) -> None:
+    if evaluate.get("pads"):
+        strips = [{"face": "x_low", "y": [y, y + 1], "z": [1, 2]} for y in range(15)]
+        evaluate = {"pads": [*strips, *({"face": "z_high", "patch": patch} for patch in range(3))]}
+    async with open_client(settings.model_copy(update={"cost_multiplications": 2e8})) as client:
+        question = {"problem": plate(), "evaluate": evaluate}
+        document = check_problem_document(await client.post("/v1/resistances", json=question), 422)
+    assert document["type"] == "/problem-types/too-costly"
+    assert "Ask for fewer pads" in document["detail"]
+    assert document["estimate"] > document["limit"] == 2e8
 
 
 async def test_square_on_a_half_space_is_as_published(client: httpx.AsyncClient) -> None:
