@@ -19,7 +19,7 @@ from service.core.problem import Body, Face, axis_of
 from service.core.reach import Reach, reach
 from service.core.solvability import check_steady_state, level_is_pinned
 from service.core.span import span_of
-from service.core.split import lines_of, parts_of, reference_level
+from service.core.split import level_of_mean, lines_of, parts_of, reference_level
 from service.core.totals import Balance, Bounded, Total
 
 FloatArray = NDArray[np.float64]
@@ -33,6 +33,8 @@ def solve(body: Body) -> Solution:
     lines = lines_of(body)
     reference = reference_level(body)
     parts = parts_of(body, reference)
+    if body.layers and level_is_pinned(body) and not any(line.is_endless for line in lines):
+        reference = level_of_mean(lines, parts)
     return Solution(Setting(body, lines, parts, reference, span_of(body, lines, parts)))
 
 

@@ -14,7 +14,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines.line import Drive, Line, WallDrive
+from service.core.lines import laplace
+from service.core.lines.line import PRIMITIVE, Drive, Line, WallDrive
+from service.core.lines.places import Places
 from service.core.lines.stack import StackLine
 from service.core.maps import FaceMap, Profiles
 from service.core.problem import AXES, Body, BoxSource, Face, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
@@ -153,6 +155,21 @@ def parts_of(body: Body, reference: float) -> tuple[Part, ...]:
     if body.generating:
         parts.append(Part(_source_profiles(body, body.generating), 1.0, None, SOURCES, None))
     return tuple(parts)
+
+
+def level_of_mean(lines: Sequence[Line], parts: Sequence[Part]) -> float:
+    """The level from which a closed stack has the mean zero over its volume.
+
+    Its parts are counted from their mean weighted by c, which is what does not change in time.
+    """
+    z = lines[2]
+    whole = Places(np.zeros(1), PRIMITIVE, np.array([z.length]))
+    total = 0.0
+    for part in parts:
+        across = lines[0].mean(part.drives[0]) * lines[1].mean(part.drives[1])
+        along = laplace.transform(z, part.drives[2], whole, np.zeros(1))[0, 0] / z.length
+        total += part.factor * float((across * along).sum())
+    return -total
 
 
 def _face_part(body: Body, face: Face, reference: float) -> Part | None:

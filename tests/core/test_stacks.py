@@ -454,3 +454,17 @@ def test_held_side_without_the_edge_grows_as_its_coefficient_says() -> None:
         assert total.with_gap is not None
         values.append(total.with_gap.value)
     assert values[1] - values[0] == pytest.approx(total.causes[0].coefficient, rel=1e-6)
+
+
+def test_closed_stack_that_is_balanced_has_mean_zero_over_its_volume() -> None:
+    """Means over sections by hand: with m at the bottom, m + z^2 in the first layer (k u'' = 2 there), a step of
+    0.6 / 5 at the contact, 0.6 z / 3 above it. The volume has the mean zero if m = -(0.009 + 0.021 + 0.001) / 0.4.
+    """
+    layers = [Layer(0.3, (2.0, 1.0, 1.0), generation=-2.0), Layer(0.1, (4.0, 2.0, 3.0), 5.0)]
+    amount = 2.0 * 0.3 * SECTION[0] * SECTION[1] / PAD.area
+    solution = solve(Body.stack(SECTION, layers, all_insulated(z_high=Inflow(on_pad(amount)))))
+    assert solution.level_pinned
+    for face, wanted in (("z_low", -0.0775), ("z_high", -0.0775 + 0.09 + 0.12 + 0.02)):
+        mean = solution.mean(face, tolerance=1e-10)  # type: ignore[arg-type]
+        assert abs(mean.value - wanted) <= mean.error_bound + 1e-15
+        assert mean.error_bound <= 1e-9
