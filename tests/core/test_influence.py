@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from itertools import pairwise
 
@@ -11,6 +12,7 @@ from numpy.typing import NDArray
 
 from service.core import (
     Body,
+    Condition,
     Face,
     FaceMap,
     Film,
@@ -26,7 +28,7 @@ from service.core import (
 )
 from service.core.influence import environment, with_flow_into
 from service.core.network import network
-from tests.core.bodies import all_insulated, film, held
+from tests.core.bodies import INSULATED, all_insulated, film, held
 
 FloatArray = NDArray[np.float64]
 
@@ -235,6 +237,22 @@ def test_uniform_square_on_a_great_cold_block_is_that_on_a_half_space() -> None:
     # The block lacks c1 / side + c3 / side^3 + ...
     first = [2 * found[1] - found[0], 2 * found[2] - found[1]]
     assert (8 * first[1] - first[0]) / 7 == pytest.approx(0.4732010044093393, abs=1e-9)
+
+
+def test_pads_on_an_endless_plate_are_those_in_the_middle_of_a_wide_one() -> None:
+    """A rise falls by a factor e in half a length or less here, so that edges 16 away are nothing."""
+    spots = ((-0.125, 0.125, -0.25, 0.125), (0.25, 0.5, 0.125, 0.25), (-0.5, -0.5 + 2.0**-10, -0.25, 0.25))
+    faces: dict[Face, Condition] = {"z_low": film(5.0, 0.0), "z_high": INSULATED}
+    plate = Body.stack((math.inf, math.inf), PLATE, faces, infinite=(True, True, False))
+    endless = influence(plate, [Pad("z_high", Rectangle(*spot)) for spot in spots], tolerance=TOLERANCE)
+    # Sides and shifts are powers of two, so that the pads are the same to the last digit.
+    shifted = [Pad("z_high", Rectangle(*(end + 16.0 for end in spot))) for spot in spots]
+    wide = influence(Body.stack((32.0, 32.0), PLATE, all_insulated(**faces)), shifted, tolerance=TOLERANCE)
+    assert (np.abs(endless.mean - wide.mean) <= endless.bound + wide.bound).all()
+    # Between pads nothing cancels.
+    apart = ~np.eye(len(spots), dtype=bool)
+    assert np.abs(endless.mean - wide.mean)[apart].max() <= 1e-14
+    assert endless.bound.max() <= 1e-8 * float(np.diag(endless.mean).min())
 
 
 def test_a_pad_that_moved_has_the_same_matrix_as_all_at_once() -> None:
