@@ -60,8 +60,8 @@ LEAST_STEP, PACE_SAFETY, SLOWEST_PACE = 0.1, 1.5, 1.25
 RESOLVED_PACE, UNRESOLVED_PACE = 0.75, 0.75
 
 # Local values gain between one order, on a pad and beside its border, and three. What is left is told from the pace of
-# their changes, at the most MOST_LEFT times the last; a change that vanishes by chance counts as that of three orders.
-FASTEST_PACE, CHANGE_SAFETY, MOST_LEFT = 8.0, 2.5, 2.0
+# their changes, and is no more than the last; a change that vanishes by chance counts as that of three orders.
+FASTEST_PACE, CHANGE_SAFETY = 8.0, 2.5
 
 TINY = 1e-300
 
@@ -240,7 +240,7 @@ def left_over(last: FloatArray, before: FloatArray) -> FloatArray:
     """What local values may still be off by after a last change and the one before it, both >= 0."""
     # Changes fall by 2 to 8 from one to the next, from places on a pad's border to those well off it.
     pace = np.clip(before / np.maximum(last, TINY), SLOWEST_PACE, FASTEST_PACE)
-    return np.asarray(np.maximum(last, before / FASTEST_PACE) * np.minimum(MOST_LEFT, CHANGE_SAFETY / (pace - 1.0)))
+    return np.asarray(np.maximum(last, before / FASTEST_PACE) * np.minimum(1.0, CHANGE_SAFETY / (pace - 1.0)))
 
 
 def change_of(values: Sequence[Bounded]) -> Bounded:

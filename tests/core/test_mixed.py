@@ -279,7 +279,7 @@ def test_given_flows_alone_leave_the_mean_at_zero() -> None:
     assert solution.level_pinned
     nodes, weights = np.polynomial.legendre.leggauss(20)
     axes = [0.5 * length * (1.0 + nodes) for length in SIZE]
-    potential = solution.field(Grid(*axes), tolerance=1e-2).potential
+    potential = solution.field(Grid(*axes), tolerance=2e-2).potential
     # The rule meets the edges of the pads.
     assert abs(np.einsum("ijk,i,j,k->", potential, *[0.5 * weights] * 3)) < 2e-4
     with pytest.raises(NoSteadyState, match=r"add up to 0\.5;"):
