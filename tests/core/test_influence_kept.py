@@ -7,7 +7,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
-from service.core import Body, FaceMap, Inflow, Pad, Rectangle, influence
+from service.core import Body, Condition, Face, FaceMap, Inflow, Pad, Rectangle, influence
 from service.core.influence_kept import KEPT, kept_influence
 from tests.core.bodies import all_insulated, film
 
@@ -34,8 +34,8 @@ def test_other_data_of_the_same_body_find_the_matrix_kept() -> None:
     assert KEPT.hits == before + 1
 
 
-@pytest.mark.parametrize("faces", [{"z_low": film(5.0, 20.0)}, {"x_low": film(4.0, 20.0)}])
-def test_another_film_makes_another_matrix(faces: dict[str, object]) -> None:
+@pytest.mark.parametrize(("face", "condition"), [("z_low", film(5.0, 20.0)), ("x_low", film(4.0, 20.0))])
+def test_another_film_makes_another_matrix(face: Face, condition: Condition) -> None:
     first = kept_influence(BLOCK, PADS, tolerance=1e-9)
-    other = kept_influence(replace(BLOCK, faces={**BLOCK.faces, **faces}), PADS, tolerance=1e-9)
+    other = kept_influence(replace(BLOCK, faces={**BLOCK.faces, face: condition}), PADS, tolerance=1e-9)
     assert np.abs(first.mean - other.mean).max() > 1e-3 * first.mean.max()
