@@ -44,6 +44,11 @@ function matrixView({ pads, mean, pairs, units }, { scale }) {
   const span = Math.log(Math.max(...all)) - least || 1;
   const tint = (value) => tintOf(scale, (Math.log(Math.max(value, Math.exp(least))) - least) / span);
   const isWritten = pads.length <= MOST_WRITTEN;
+  // In colours alone the whole matrix fits on the page, and every fifth or tenth pad has its number.
+  const every = pads.length > 50 ? 10 : 5;
+  const number = (index) => (index === 0 || (index + 1) % every === 0 ? String(index + 1) : "");
+  const height = isWritten ? null : `height:${Math.max(3, Math.min(16, Math.round(640 / pads.length)))}px`;
+  const head = (index, scope) => make("th", { scope, title: padName(pads[index]) }, isWritten ? padName(pads[index]) : make("span", {}, number(index)));
   const words = (value, row, column) => {
     if (pads.length <= MOST_EXACT) return shown(value, matrix.error_bound[row][column]);
     return isWritten ? brief(Number(value.toPrecision(4))) : null;
@@ -55,11 +60,10 @@ function matrixView({ pads, mean, pairs, units }, { scale }) {
   const table = make(
     "table", { class: isWritten ? "numbers matrix" : "numbers matrix small-cells" },
     make("caption", {}, `${mean ? "Mean rise per unit flow" : "Resistance between pads"}, ${pretty(units.resistance)}`),
-    make("thead", {}, make("tr", {}, make("th", { scope: "col" }, mean ? "rises \\ fed" : "Pad"),
-      pads.map((pad, index) => make("th", { scope: "col", title: padName(pad) }, isWritten ? padName(pad) : String(index + 1))))),
-    make("tbody", {}, matrix.value.map((line, row) => make("tr", {},
-      make("th", { scope: "row", title: padName(pads[row]) }, isWritten ? padName(pads[row]) : String(row + 1)),
-      line.map((value, column) => entry(value, row, column))))),
+    make("thead", {}, make("tr", {}, make("th", { scope: "col" }, mean && isWritten ? "rises \\ fed" : "Pad"),
+      pads.map((_, index) => head(index, "col")))),
+    make("tbody", {}, matrix.value.map((line, row) => make("tr", { style: height },
+      head(row, "row"), line.map((value, column) => entry(value, row, column))))),
   );
   return scrolled(table, "Matrix of rises per unit flow");
 }

@@ -123,6 +123,31 @@ def test_pads_and_resistances_are_told_and_saved(page: Page) -> None:
     assert "\nR1_0 1 0 " in Path(resistors.value.path()).read_text()
 
 
+@pytest.mark.parametrize("watched", [DESKTOP, PHONE], indirect=True, ids=["desk", "phone"])
+def test_matrix_of_many_pads_fits_on_the_page(page: Page) -> None:
+    load_example(page, "Power module")
+    page.evaluate(
+        """() => {
+            const draft = JSON.parse(sessionStorage.getItem("stillfield draft 2"));
+            draft.faces.z_high.data.flux.patches = Array.from({ length: 15 }, (_, index) => ({
+                name: "", isTotal: true, value: "2", from: [String(2 * index), "4"], to: [String(2 * index + 1), "9"],
+            }));
+            sessionStorage.setItem("stillfield draft 2", JSON.stringify(draft));
+        }"""
+    )
+    page.reload()
+    compute(page)
+    matrix = page.get_by_role("region", name="Matrix of rises")
+    expect(matrix.locator("td")).to_have_count(15**2)
+    assert matrix.evaluate("region => region.scrollWidth <= region.clientWidth")
+    # Without room for numbers a cell still says its own.
+    assert re.match(
+        r"z_high, pad 3 for z_high, pad 2: [0-9.]+ K/W", matrix.locator("td").nth(31).get_attribute("title") or ""
+    )
+    colours = matrix.locator("td").evaluate_all("cells => cells.map((cell) => cell.style.background)")
+    assert len(set(colours)) > 15
+
+
 def test_page_without_pads_says_nothing_of_them(page: Page) -> None:
     load_example(page, "Crown brick")
     compute(page)
