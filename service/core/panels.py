@@ -50,6 +50,9 @@ EARLY = 40.0
 AFAR = 1e9
 
 
+# Pairs of sets of intervals whose means are kept; each takes some 10 MB at the most.
+MOST_KEPT = 64
+
 # What is added where flows have to balance, in parts of the most negative entry.
 FAR_LEVEL = 2.0
 
@@ -240,23 +243,41 @@ def influence(lines: Sequence[Line], axis: int, factors: dict[bool, float], grid
     one, two = (line for other, line in enumerate(lines) if other != axis)
     per_flow = {high: factor * one.scale * two.scale for high, factor in factors.items()}
     kernel = _kernel(lines, axis, per_flow, _scales((one, two), grids))
+    first, second = _Means(one, kernel.times), _Means(two, kernel.times)
     starts = np.concatenate([[0], np.cumsum([grid.count for grid in grids])])
     matrix = np.empty((starts[-1], starts[-1]))
     for p, rows in enumerate(grids):
         here = slice(starts[p], starts[p + 1])
-        matrix[here, here] = _within(one, two, kernel, rows)
+        matrix[here, here] = _within(first, second, kernel, rows)
         for q in range(p):
             there = slice(starts[q], starts[q + 1])
-            matrix[here, there] = _between(one, two, kernel, rows, grids[q])
+            matrix[here, there] = _between(first, second, kernel, rows, grids[q])
             matrix[there, here] = matrix[here, there].T
     if keeps_level(lines):
-        # Far along an endless axis the constant left out is negative without bound; with another the matrix is definite.
+        # Far along an endless axis the constant left out is negative without bound; with this one the matrix is
+        # positive definite.
         matrix += FAR_LEVEL * max(-float(matrix.min()), 0.0)
     return matrix
 
 
+class _Means:
+    """Means of edges' intervals on one line, kept for pads that share them: pads often stand in rows."""
+
+    def __init__(self, line: Line, times: FloatArray) -> None:
+        self._line, self._times = line, times
+        self._kept: dict[tuple[bytes, bytes], tuple[FloatArray, list[FloatArray]]] = {}
+
+    def of(self, rows: Intervals, columns: Intervals) -> tuple[FloatArray, list[FloatArray]]:
+        """Means at the times, shape (n_times, n, m), and the two coefficients of their early straight line."""
+        key = (rows.low.tobytes() + rows.high.tobytes(), columns.low.tobytes() + columns.high.tobytes())
+        if key not in self._kept:
+            if len(self._kept) >= MOST_KEPT:
+                self._kept.clear()
+            self._kept[key] = _means(self._line, rows, columns, self._times)
+        return self._kept[key]
+
+
 def _means(line: Line, rows: Intervals, columns: Intervals, times: FloatArray) -> tuple[FloatArray, list[FloatArray]]:
-    """Means of intervals at the times, shape (n_times, n, m), and the two coefficients of their early straight line."""
     means = np.moveaxis(pair_means(line, rows, columns, times), 2, 0)
     shared = np.minimum(rows.high[:, None], columns.high) - np.maximum(rows.low[:, None], columns.low)
     start = np.maximum(shared, 0.0) / rows.widths[:, None] / columns.widths / line.scale
@@ -283,11 +304,10 @@ def _terms(
     return np.concatenate(left), np.concatenate(right)
 
 
-def _within(one: Line, two: Line, kernel: Kernel, grid: Panels) -> FloatArray:
+def _within(one: _Means, two: _Means, kernel: Kernel, grid: Panels) -> FloatArray:
     """Panels of one grid on each other: only half of the pairs along each axis differ."""
     n, m = grid.shape
-    first = _means(one, grid.along_first, grid.along_first, kernel.times)
-    second = _means(two, grid.along_second, grid.along_second, kernel.times)
+    first, second = one.of(grid.along_first, grid.along_first), two.of(grid.along_second, grid.along_second)
     left, right = _terms(first, second, kernel, (grid.high, grid.high))
     (i, pair_i), (j, pair_j) = _pairs(n), _pairs(m)
     product = left[:, i[0], i[1]].T @ right[:, j[0], j[1]]
@@ -302,9 +322,8 @@ def _pairs(count: int) -> tuple[tuple[NDArray[np.intp], NDArray[np.intp]], NDArr
     return (i, j), which
 
 
-def _between(one: Line, two: Line, kernel: Kernel, rows: Panels, columns: Panels) -> FloatArray:
-    first = _means(one, rows.along_first, columns.along_first, kernel.times)
-    second = _means(two, rows.along_second, columns.along_second, kernel.times)
+def _between(one: _Means, two: _Means, kernel: Kernel, rows: Panels, columns: Panels) -> FloatArray:
+    first, second = one.of(rows.along_first, columns.along_first), two.of(rows.along_second, columns.along_second)
     left, right = _terms(first, second, kernel, (columns.high, rows.high))
     (n, m), (r, s) = rows.shape, columns.shape
     product = left.reshape(-1, n * r).T @ right.reshape(-1, m * s)
