@@ -14,10 +14,11 @@ import { axesAcross, axisOf } from "./words.js";
  */
 /**
  * @typedef {object} Datum what is known over a face
- * @property {"uniform"|"patches"|"samples"} kind
+ * @property {"uniform"|"patches"|"samples"|"formula"} kind
  * @property {string} value uniform value, or the background of patches
  * @property {PatchDraft[]} patches
  * @property {string} csv
+ * @property {string} expression of a formula
  * @property {boolean} hold whether readings reach beyond their axes
  * @property {boolean} fill whether missing readings are filled
  */
@@ -44,7 +45,7 @@ import { axesAcross, axisOf } from "./words.js";
  */
 
 /** @returns {Datum} */
-export const emptyDatum = () => ({ kind: "uniform", value: "", patches: [], csv: "", hold: false, fill: false });
+export const emptyDatum = () => ({ kind: "uniform", value: "", patches: [], csv: "", expression: "", hold: false, fill: false });
 /** @returns {PatchDraft} */
 export const emptyPatch = () => ({ name: "", from: ["", ""], to: ["", ""], value: "", isTotal: false });
 /** @returns {PadDraft} */
@@ -106,6 +107,7 @@ export function faceDraftOf(face, known) {
     ...endsText(across, patch),
   }));
   datum.csv = text(given.csv).trim();
+  datum.expression = text(given.expression);
   datum.hold = given.beyond === "hold";
   datum.fill = given.fill_missing === "smooth";
   return draft;
@@ -195,6 +197,10 @@ function datumOf(face, condition, datum, pointer, note) {
     if (datum.hold) map.beyond = "hold";
     if (datum.fill) map.fill_missing = "smooth";
     return map;
+  }
+  if (datum.kind === "formula") {
+    note(pointer, idOf(id, "expression"));
+    return { map: "formula", expression: datum.expression.trim() };
   }
   note(pointer, idOf(id, "kind"));
   note(`${pointer}/background`, idOf(id, "value"));

@@ -11,6 +11,7 @@ const DATUM_CHOICES = [
   ["uniform", "uniform"],
   ["patches", "with patches"],
   ["samples", "from readings"],
+  ["formula", "by a formula"],
 ];
 
 /** Write where each face lies, which changes with the sizes. */
@@ -123,6 +124,7 @@ function datumFields(draft, face, meaning, changed) {
 
 function kindFields(draft, face, datum, id, meaning, changed, redraw) {
   if (datum.kind === "samples") return readingFields(draft, face, datum, id, meaning, changed);
+  if (datum.kind === "formula") return [formulaField(face, datum, id, meaning, changed)];
   const value = field({
     id: idOf(id, "value"),
     label: datum.kind === "patches" ? "Background" : "Value",
@@ -199,6 +201,16 @@ function measureChoice(patch, part, spoken, changed, redraw) {
       changed();
       document.getElementById(idOf(part, "measure"))?.focus();
     },
+  });
+}
+
+function formulaField(face, datum, id, meaning, changed) {
+  const axes = axesAcross(axisOf(face));
+  return field({
+    id: idOf(id, "expression"), label: "Formula", spoken: `${face}, ${meaning.label}`, value: datum.expression, isText: true,
+    extraClass: "whole", onInput: writer(datum, "expression", changed),
+    hint: `In ${axes.join(" and ")}, in the units of lengths and of the ${meaning.kind === "flux" ? "flow per area" : "potential"}, `
+      + `such as 30 + 600*exp(-((${axes[0]}-20)/8)^2).`,
   });
 }
 

@@ -105,6 +105,18 @@ def test_readings_are_pasted_as_csv(page: Page) -> None:
     expect_mistake(page, "x_low-held-csv", "Row 3, column 3 has to be a reading")
 
 
+def test_face_follows_a_formula(page: Page) -> None:
+    load_example(page, "Crown brick")
+    page.locator("#z_low-held-kind").select_option("formula")
+    page.locator("#z_low-held-expression").fill("1480 + 60*exp(-((x-115)/40)^2)*sin(pi*y/114)")
+    compute(page)
+    expect(page.locator("#flows")).to_contain_text("held, by a formula")
+    expect(page.locator("#extremes")).to_contain_text("1540")
+    page.locator("#z_low-held-expression").fill("1480 + 60*w")
+    press_compute(page)
+    expect_mistake(page, "z_low-held-expression", "w")
+
+
 def test_imbalance_of_an_insulated_body_is_explained(page: Page) -> None:
     load_example(page, "Electrode stub")
     page.locator("#z_high-condition").select_option("insulated")
