@@ -57,14 +57,14 @@ EARLIEST = 1e-18
 # are positive and change by sqrt(1 / sin(ANGLE)) in t at the most, the two of them and the end together.
 SPREAD = math.sin(time_error.ANGLE) ** -1.5
 
-# Rounding of a mean of one pad over another, relative to the mean of a narrowest pad over itself.
+# Rounding of a mean of one interval over another, relative to the mean of a narrowest one over itself.
 PAIR_ROUNDING = 2e-13
 
 # Numbers of the matrix times nodes that are held at once.
 NUMBERS_AT_ONCE = 4_000_000
 
-# Pairs of pads whose means are had a second time, both ways, by the general integral.
-CHECKED_PAIRS = 3
+# Pads whose means are had a second time by the general integral.
+CHECKED_PADS = 3
 
 
 @dataclass(frozen=True)
@@ -132,7 +132,11 @@ def influence(
                 bound[i, j] = bound[j, i] = found.error_bound
             if keep_going is not None:
                 keep_going()
-    return Influence(tuple(pads), mean, bound, *_agreement(body, pads, mean, bound, tolerance))
+    if known.all() and earlier is not None and n:
+        checked = earlier.agreement, earlier.agreement_bound, earlier.checked
+    else:
+        checked = _agreement(body, pads, np.flatnonzero(~known), mean, bound, tolerance)
+    return Influence(tuple(pads), mean, bound, *checked)
 
 
 def _driven_by(pads: Sequence[Pad], lines: Sequence[Line]) -> tuple[Line, Line, Line]:
@@ -333,9 +337,11 @@ def _same_axis(
     faces = sorted({pad.face for pad in rows})
     row = _Side.of(rows, faces)
     column = row if len(columns) == len(rows) else _Side.of(columns, faces)
-    times = _times(lines, row.narrowest(along))
+    narrowest = row.narrowest(along)
+    times = _times(lines, narrowest)
     weights = time_range.weights(lines, times, STEP)
-    release = time_range.release_time(lines)
+    # Let go with the narrowest pad, whose answer would be the difference of larger numbers later on.
+    release = min(narrowest**2, time_range.release_time(lines))
     taken_out = 1 + np.expm1(-times / release) ** 3
     through, closed = _third_line(lines[axis], faces, times, release)
     pick_first, pick_second = np.ix_(row.at_first, column.at_first), np.ix_(row.at_second, column.at_second)
@@ -344,7 +350,8 @@ def _same_axis(
         _shape(along[0], row.first, column.first)[pick_first] * _shape(along[1], row.second, column.second)[pick_second]
     )
     at_once = shape * closed[pick_end]
-    total, size = at_once.copy(), np.abs(at_once)
+    total, size, rounding = at_once.copy(), np.abs(at_once), np.zeros_like(at_once)
+    most_first, most_second = _most(along[0], row.first, times), _most(along[1], row.second, times)
     run = max(NUMBERS_AT_ONCE // total.size, 1)
     for start in range(0, times.size, run):
         if keep_going is not None:
@@ -354,15 +361,25 @@ def _same_axis(
         second = pair_means(along[1], row.second, column.second, times[part])
         for index in range(first.shape[2]):
             q = start + index
-            means = first[:, :, index][pick_first] * second[:, :, index][pick_second]
+            one, two = first[:, :, index][pick_first], second[:, :, index][pick_second]
+            means = one * two
             end = weights[q] * through[:, :, q][pick_end]
             total += (means - taken_out[q] * shape) * end
             size += (means + taken_out[q] * shape) * np.abs(end)
+            rounding += (np.abs(one) * most_second[q] + np.abs(two) * most_first[q]) * np.abs(end)
     relative = time_error.step_error(STEP) * SPREAD + 4 * time_error.ROUNDING
-    # Means keep their digits in terms of those of a pad over itself, the largest of which are among the sums.
-    rounding = PAIR_ROUNDING * size.max()
     scale = scale_of(body, axis) * along[0].scale * along[1].scale
-    return scale * total, scale * (relative * size + rounding)
+    return scale * total, scale * (relative * size + PAIR_ROUNDING * rounding)
+
+
+def _most(line: Line, intervals: Intervals, times: FloatArray) -> FloatArray:
+    """What no mean over an interval for a unit on it exceeds at the times, shape (n_times,).
+
+    The narrowest at first, then a point source on an insulated end, and with both ends at last.
+    """
+    at_first = 1 / (float(intervals.widths.min()) * line.scale)
+    at_last = 0.0 if line.is_endless else 2 / line.extent
+    return np.minimum(at_first, 2 / np.sqrt(math.pi * times) + at_last)
 
 
 def _times(lines: Sequence[Line], narrowest: float) -> FloatArray:
@@ -397,17 +414,21 @@ def _shape(line: Line, rows: Intervals, columns: Intervals) -> FloatArray:
 
 
 def _agreement(
-    body: Body, pads: Sequence[Pad], mean: FloatArray, bound: FloatArray, tolerance: float
+    body: Body,
+    pads: Sequence[Pad],
+    new: NDArray[np.intp],
+    mean: FloatArray,
+    bound: FloatArray,
+    tolerance: float,
 ) -> tuple[float, float, int]:
-    """Entries had a second time by the general integral, from pad to pad and back."""
-    n = len(pads)
+    """Some entries of new pads had a second time by the general integral: a pad over itself, to the next and back."""
     largest, allowed, checked = 0.0, 0.0, 0
     rest = environment(body)
-    for j in np.unique(np.linspace(0, n - 1, min(n, CHECKED_PAIRS)).round().astype(int)):
-        i = (int(j) + 1) % n
-        for row, column in {(i, int(j)), (int(j), i)}:
-            setting = solve(with_flow_into(rest, pads[column], 1.0))
-            found = setting.mean(pads[row].face, pads[row].where, tolerance=tolerance)
+    for j in new[np.unique(np.linspace(0, new.size - 1, min(new.size, CHECKED_PADS)).round().astype(int))]:
+        own, other = int(j), (int(j) + 1) % len(pads)
+        driven = {column: solve(with_flow_into(rest, pads[column], 1.0)) for column in {own, other}}
+        for row, column in dict.fromkeys([(own, own), (other, own), (own, other)]):
+            found = driven[column].mean(pads[row].face, pads[row].where, tolerance=tolerance)
             largest = max(largest, abs(found.value - float(mean[row, column])))
             allowed = max(allowed, found.error_bound + float(bound[row, column]))
             checked += 1
