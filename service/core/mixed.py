@@ -26,7 +26,7 @@ from service.core.mixed_panels import Refined, given_total, needs_balance
 from service.core.mixed_refinement import LEVELS, Ladder, Refinement, change_of, left_over
 from service.core.panel_noise import noise
 from service.core.panels import STEP
-from service.core.problem import Body, Face, FilmPad, HeldPad, axes_along, axis_of
+from service.core.problem import Body, Face, FilmPad, HeldPad, axes_along, axis_of, map_of
 from service.core.solution import Solution
 from service.core.solvability import BALANCED, check_steady_state
 from service.core.totals import Balance, Bounded, Total
@@ -76,6 +76,7 @@ def solve_mixed(
     most_panels: of all pads together. Where they do not suffice the bounds say what was reached.
     Raises NotPhysical and NoSteadyState.
     """
+    _check_maps(body)
     base = base_of(body)
     _check_steady(body, base)
     ladder = Ladder(body, base, most_panels, keep_going)
@@ -84,6 +85,18 @@ def solve_mixed(
     # Whoever asks later has a time of their own.
     ladder.keep_going = None
     return solution
+
+
+def _check_maps(body: Body) -> None:
+    """Raise NotPhysical for a formula: what stands for it moves the flows of pads by an amount that is not bounded."""
+    for face, condition in body.faces.items():
+        face_map = map_of(condition)
+        if face_map is not None and face_map.error > 0.0:
+            raise NotPhysical(
+                f"The face {face} has a formula, whose error is not followed into the flows of pads on mixed faces; "
+                "give its data as patches or readings.",
+                ("faces", face),
+            )
 
 
 def _check_steady(body: Body, base: Base) -> None:

@@ -27,6 +27,8 @@ from service.core import (
     Rectangle,
     solve,
 )
+from service.core.formula import read
+from service.core.formula_map import of_formula
 from service.core.mixed import MixedSolution, PadAnswer, solve_mixed
 from service.core.mixed_base import base_of
 from service.core.mixed_refinement import Ladder
@@ -367,6 +369,7 @@ def test_an_accuracy_out_of_reach_says_what_was_reached() -> None:
         ((HeldPad(ONE),), {}, "one of the two"),
         ((HeldPad(Rectangle(0.4, 1.2, 0.1, 0.4), 1.0),), {}, "lie in the face"),
         ((), {}, "needs at least one"),
+        (TWO, {"z_low": Held(of_formula((1.0, 1.0), read("x*exp(-y)", ("x", "y"))))}, "has a formula"),
     ],
 )
 def test_what_cannot_be_solved_is_refused(pads: tuple[HeldPad, ...], others: dict[str, Condition], said: str) -> None:
