@@ -32,10 +32,14 @@ STRANGE: st.SearchStrategy[Any] = st.sampled_from(
     [
         None, True, False, 0, -1, 1, 2, -0.0, 0.5, 1e-300, 1e59, 1e149, 1e-59, 10**30,
         "", " ", "0 m", "-1 mm", "1e-9 mm", "5 K", "1e55 km", "1e149 km", "semi-infinite", "end", "held",
-        "patches", "\u0000", "é" * 65, [], {}, [[]], [1, 2], [2, 1], ["end", 1], [0, "end"], [[1, 2], [3, 4]],
+        "patches", "infinite", "begin", "above", "mixed", "\u0000", "é" * 65,
+        [], {}, [[]], [1, 2], [2, 1], ["end", 1], [0, "end"], [[1, 2], [3, 4]],
         {"from": 0, "to": 1, "count": 3}, {"condition": "insulated"}, {"map": "patches"},
         {"map": "samples", "csv": ",0,1\n0,1,2\n1,2,3\n", "beyond": "hold"},
-        {"relative": 1e-3}, {"absolute": 1e-3},
+        {"relative": 1e-3}, {"absolute": 1e-3}, {"in_plane": 3, "through": 2}, {"layer": 1, "count": 3}, [[1, 2]],
+        [{"thickness": 1, "conductivity": 2}, {"thickness": 2, "conductivity": 1, "contact_conductance_below": 5}],
+        {"condition": "mixed", "background": {"condition": "insulated"},
+         "pads": [{"x": [1, 2], "y": [1, 2], "condition": "held", "flow": 1}]},
     ]
 )  # fmt: skip
 
