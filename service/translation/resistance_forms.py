@@ -52,7 +52,7 @@ def netlist(answer: dict[str, Any]) -> bytes:
     """Resistors between the pads, numbered from 1, and from each to node 0, the environment."""
     units, network = answer["units"], answer["network"]
     lines = [
-        "* Resistors equivalent to a body as seen from the means of its pads",
+        "* Resistors equivalent to a body as seen from its pads",
         f"* problem {answer['problem_id']}",
         f"* values in {units['resistance']}",
         "* node 0: the environment, every held value and ambient",
