@@ -44,7 +44,7 @@ _TYPES = (
     ProblemType("body-too-large", 413, "The request body is too long"),
     ProblemType("unsupported-media-type", 415, "The request body is not of a kind that is read here"),
     ProblemType("invalid-request", 422, "Some fields of the request cannot be used"),
-    ProblemType("not-physical", 422, "No such body can exist"),
+    ProblemType("not-physical", 422, "This cannot be solved as it stands"),
     ProblemType("no-steady-state", 422, "There is no steady state"),
     ProblemType("outside-body", 422, "A place lies outside the body"),
     ProblemType("outside-law", 422, "The potential leaves the range of the conductivity law"),

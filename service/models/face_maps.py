@@ -27,7 +27,8 @@ Interval = Annotated[
         min_length=2,
         max_length=2,
         description='From and to along this axis, lengths; a text such as "5 mm" carries its own unit. "begin" as '
-        'the first and "end" as the second stand for the sides of the body, also where it has no end there.',
+        'the first and "end" as the second stand for the sides of the body, also where it has no end there; '
+        "a pad of a mixed face has to be finite.",
         examples=[[5, 35], [10, "end"]],
     ),
 ]

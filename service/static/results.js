@@ -99,7 +99,7 @@ function showResistances(answer, asked, words) {
 
 function noPicture() {
   part("picture").replaceChildren(
-    make("p", { class: "hint" }, "The picture could not be drawn, since its script did not load. The values are in the table below."),
+    make("p", { class: "hint" }, "The picture could not be drawn. The values are in the table below."),
   );
   part("plane-details").open = true;
 }
