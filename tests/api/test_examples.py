@@ -40,6 +40,7 @@ EVIDENCE = {
     "agreement",
     "agreement_bound",
     "checked_places",
+    "checked_entries",
     "terms_needed",
     "time_nodes",
     "time_steps",

@@ -86,7 +86,7 @@ async def test_matrix_is_what_each_pad_raises_alone(client: httpx.AsyncClient) -
     assert (matrix == matrix.T).all()
     certificate = found["certificate"]
     assert 0 <= certificate["agreement"] <= certificate["agreement_bound"]
-    assert certificate["checked_entries"] == 6
+    assert certificate["checked_entries"] >= 6
     assert certificate["error_bound"] == bound.max() < 1e-8
 
 
