@@ -48,6 +48,9 @@ MOST_PIECES = 12
 # their moments leave out is below 2 (1 / (4 NARROW))^10 / 10! of the derivative of order 10 in width: 1e-22.
 AFAR_POINTS = 10
 
+# Points of the quadrature over an interval no wider than sqrt(t): exact to rounding for a Gauss function that wide.
+SMOOTH_POINTS = 12
+
 # A front has arrived within this many sqrt(t): beyond it exp(-w^2) is below 1e-19.
 ARRIVAL = 13.2
 
@@ -412,6 +415,38 @@ def wall_kernel(
     Held: s / (2 sqrt(pi) t^(3/2)) exp(-s^2 / 4t). Film: H K_(-1). Insulated: exp(-s^2 / 4t) / sqrt(pi t).
     The image in the far end is below exp(-1 / (4 LATEST)) for the times this serves.
     """
+    values = _wall_values(line, drive, wall_distance(line, coordinates, high=drive.high), root_time, order)
+    # Away from the high end is towards the low one.
+    return (values if order == 0 or not drive.high else -values)[:, :, None]
+
+
+def wall_integrals(
+    line: Line, drive: WallDrive, low: FloatArray, high: FloatArray, root_time: FloatArray
+) -> FloatArray:
+    """The same response integrated over intervals, in scaled length, shape (n_intervals, n_times, 1).
+
+    While an interval is wide against sqrt(t) by the antiderivative at its ends, then by quadrature over the smooth
+    response: the two ends would cancel.
+    """
+    ends = (high, low) if drive.high else (low, high)
+    near, far = (wall_distance(line, end, high=drive.high) for end in ends)
+    total = _wall_values(line, drive, far, root_time, PRIMITIVE) - _wall_values(line, drive, near, root_time, PRIMITIVE)
+    widths = (high - low) * line.scale
+    narrow = np.flatnonzero(widths <= root_time[-1]) if root_time.size else np.zeros(0, dtype=int)
+    if narrow.size:
+        nodes, weights = np.polynomial.legendre.leggauss(SMOOTH_POINTS)
+        half = 0.5 * widths[narrow, None]
+        first = int(np.searchsorted(root_time, float(widths[narrow].min())))
+        # In distances from the end, so that those next to it keep their digits.
+        places = (near[narrow, None] + half * (1.0 + nodes)).ravel()
+        values = _wall_values(line, drive, places, root_time[first:], 0).reshape(narrow.size, SMOOTH_POINTS, -1)
+        smooth = np.einsum("npt,p->nt", values, weights) * half
+        total[narrow, first:] = np.where(widths[narrow, None] <= root_time[first:], smooth, total[narrow, first:])
+    return total[:, :, None]
+
+
+def _wall_values(line: Line, drive: WallDrive, distance: FloatArray, root_time: FloatArray, order: Order) -> FloatArray:
+    """Response to a pulse at distances from the end that is driven, shape (n_places, n_times)."""
     film = line.film_high if drive.high else line.film_low
 
     def kernel(distance: FloatArray, root: FloatArray) -> FloatArray:
@@ -420,9 +455,7 @@ def wall_kernel(
             return _held_kernel(w, root, order)
         return _insulated_kernel(w, root, order) if film == 0.0 else _film_kernel(w, root, film, order)
 
-    values = _where_arrived(kernel, wall_distance(line, coordinates, high=drive.high)[:, None], root_time)
-    # Away from the high end is towards the low one.
-    return (values if order == 0 or not drive.high else -values)[:, :, None]
+    return _where_arrived(kernel, distance[:, None], root_time)
 
 
 def _held_kernel(w: FloatArray, root_time: FloatArray, order: Order) -> FloatArray:

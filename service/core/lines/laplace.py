@@ -26,6 +26,9 @@ FloatArray = NDArray[np.float64]
 # Below this gamma * length the hyperbolic form is used.
 SMALL_LENGTH = 1.0
 
+# Points of Gauss's rule that is exact to rounding for the answer over a length up to SMALL_LENGTH / gamma.
+EXACT_POINTS = 12
+
 
 def transform(line: Line, drive: Drive, places: Places, gamma: FloatArray) -> FloatArray:
     """The transformed answer, shape (n, n_gamma, n_profiles).
@@ -39,8 +42,7 @@ def transform(line: Line, drive: Drive, places: Places, gamma: FloatArray) -> Fl
     if isinstance(drive, WallDrive):
         if places.high is None:
             return _wall(line, drive, places.low, gamma, places.order)
-        upper = _wall(line, drive, places.high, gamma, PRIMITIVE)
-        return upper - _wall(line, drive, places.low, gamma, PRIMITIVE)
+        return _wall_integrals(line, drive, places.low, places.high, gamma)
     return np.stack([_profile(line, drive, places, float(g)) for g in gamma], axis=1)
 
 
@@ -52,6 +54,24 @@ def _wall(line: Line, drive: WallDrive, coordinates: FloatArray, gamma: FloatArr
         else:
             columns.append(_wall_by_hyperbolics(line, drive, coordinates, float(g), order))
     return np.stack(columns, axis=1)[:, :, None]
+
+
+def _wall_integrals(line: Line, drive: WallDrive, low: FloatArray, high: FloatArray, gamma: FloatArray) -> FloatArray:
+    """The answer integrated over intervals: by its antiderivative at the ends, which would cancel in an interval that
+    is narrow against 1 / gamma; over that by quadrature, exact to rounding.
+    """
+    total = _wall(line, drive, high, gamma, PRIMITIVE) - _wall(line, drive, low, gamma, PRIMITIVE)
+    widths = (high - low) * line.scale
+    narrow = np.isfinite(widths)[:, None] & (widths[:, None] * gamma <= SMALL_LENGTH)
+    which = np.flatnonzero(narrow.any(axis=1))
+    if which.size:
+        nodes, weights = np.polynomial.legendre.leggauss(EXACT_POINTS)
+        half = 0.5 * (high - low)[which]
+        places = (low[which, None] + half[:, None] * (1.0 + nodes)).ravel()
+        values = _wall(line, drive, places, gamma, VALUE).reshape(which.size, EXACT_POINTS, gamma.size, 1)
+        smooth = np.einsum("npgr,p->ngr", values, weights) * (half * line.scale)[:, None, None]
+        total[which] = np.where(narrow[which, :, None], smooth, total[which])
+    return total
 
 
 def wall_values(line: Line, drive: WallDrive, place: float, gamma: FloatArray) -> FloatArray:
@@ -235,7 +255,7 @@ def _waves(line: Line, profiles: Profiles, coordinates: FloatArray, gamma: Float
 
 def _by_green_function(line: Line, profiles: Profiles, places: Places, gamma: float) -> FloatArray:
     """Quadrature of Green's function times the profile: exact to rounding, since gamma times the length is below 1."""
-    nodes, weights = np.polynomial.legendre.leggauss(12)
+    nodes, weights = np.polynomial.legendre.leggauss(EXACT_POINTS)
     knots = np.minimum(profiles.knots, line.length)
     if places.high is not None:
         middle, half = 0.5 * (places.high + places.low), 0.5 * (places.high - places.low)

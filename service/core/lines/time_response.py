@@ -22,9 +22,6 @@ from service.core.maps import Profiles
 
 FloatArray = NDArray[np.float64]
 
-# Points of the quadrature over an interval no wider than sqrt(t): exact to rounding for a Gauss function that wide.
-SMOOTH_POINTS = 12
-
 
 def respond(line: Line, drive: Drive, places: Places, times: FloatArray) -> TimeResponse:
     """Answer of a line at the given times (scaled length squared), which have to increase."""
@@ -89,8 +86,7 @@ def _afar(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatA
 def _early_wall(line: Line, drive: WallDrive, places: Places, root_time: FloatArray) -> FloatArray:
     if places.high is None:
         return images.wall_kernel(line, drive, places.low, root_time, places.order)
-    upper = images.wall_kernel(line, drive, places.high, root_time, PRIMITIVE)
-    return upper - images.wall_kernel(line, drive, places.low, root_time, PRIMITIVE)
+    return images.wall_integrals(line, drive, places.low, places.high, root_time)
 
 
 def _departure(line: Line, drive: Profiles, coordinates: FloatArray, root_time: FloatArray, order: Order) -> FloatArray:
@@ -135,10 +131,10 @@ def _smooth_from(line: Line, low: FloatArray, high: FloatArray, root_time: Float
 
 def _integrated(value: Callable[[FloatArray], FloatArray], line: Line, low: FloatArray, high: FloatArray) -> FloatArray:
     """Integrals over intervals, in scaled length, of an answer that is smooth on them; value: (n,) to (n, t, r)."""
-    nodes, weights = np.polynomial.legendre.leggauss(SMOOTH_POINTS)
+    nodes, weights = np.polynomial.legendre.leggauss(images.SMOOTH_POINTS)
     half = 0.5 * (high - low)
     values = value((0.5 * (low + high)[:, None] + half[:, None] * nodes).ravel())
-    values = values.reshape(low.size, SMOOTH_POINTS, *values.shape[1:])
+    values = values.reshape(low.size, images.SMOOTH_POINTS, *values.shape[1:])
     return np.asarray(np.einsum("nptr,p->ntr", values, weights) * (half * line.scale)[:, None, None])
 
 

@@ -50,6 +50,18 @@ def test_transform_is_the_integral_over_time(
     np.testing.assert_allclose(found, expected, rtol=0, atol=1e-12 * float(np.abs(expected).max()))
 
 
+@pytest.mark.parametrize("gamma", [0.0, 0.01, 7.0, 300.0])
+@pytest.mark.parametrize("high_end", [False, True])
+def test_integral_over_a_narrow_interval_at_a_driven_end_keeps_its_digits(gamma: float, *, high_end: bool) -> None:
+    line, width = Line(FAR, 0.7, 0.3, 50.0), 2.0**-30
+    ends = np.array([FAR - width, FAR]) if high_end else np.array([0.0, width])
+    drive = WallDrive(high_end)
+    mean = laplace.transform(line, drive, Places(ends[:1], 1, ends[1:]), np.array([gamma])) / (width * line.scale)
+    middle = laplace.transform(line, drive, Places(ends[:1] + 0.5 * width, VALUE), np.array([gamma]))
+    # The answer is smooth on 1 / gamma and the line: its mean differs by (gamma width)^2 / 24, which is nothing.
+    np.testing.assert_allclose(mean, middle, rtol=1e-14)
+
+
 def test_line_that_loses_nothing_answers_with_mean_zero() -> None:
     line = Line(2.0, 1.0, 0.0, 0.0)
     whole = Places(np.array([0.0]), 1, np.array([2.0]))

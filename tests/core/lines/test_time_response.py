@@ -112,6 +112,19 @@ def test_mean_over_a_narrow_interval_agrees_with_the_value_in_its_middle() -> No
     np.testing.assert_allclose(mean, middle, rtol=0, atol=1e-9)
 
 
+@pytest.mark.parametrize("film", ENDS)
+@pytest.mark.parametrize("high_end", [False, True])
+def test_mean_over_a_narrow_interval_at_a_driven_end_keeps_its_digits(film: float, *, high_end: bool) -> None:
+    line = Line(2.0, 1.0, 0.3, film) if high_end else Line(2.0, 1.0, film, 0.3)
+    width, times = 2.0**-30, np.geomspace(1e-12, 1e-2, 15)
+    ends = np.array([2.0 - width, 2.0]) if high_end else np.array([0.0, width])
+    mean = respond(line, WallDrive(high_end), Places(ends[:1], PRIMITIVE, ends[1:]), times).total[0] / width
+    middle = respond(line, WallDrive(high_end), Places(ends[:1] + 0.5 * width, VALUE), times).total[0]
+    # From a kernel with a scale of sqrt(t), 1000 times the width and more, the mean differs by (1e-3)^2 / 24 and less.
+    np.testing.assert_allclose(mean[1:], middle[1:], rtol=1e-7)
+    np.testing.assert_allclose(mean[-5:], middle[-5:], rtol=2e-13)
+
+
 def test_endless_line_with_only_its_last_piece_left_is_served() -> None:
     line = Line(math.inf, 1.0, 1e-3, 0.0)
     steps = Profiles(
