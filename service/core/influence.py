@@ -32,11 +32,12 @@ from service.core.problem import (
     Face,
     Film,
     FilmPad,
+    FluxPad,
     Held,
-    HeldPad,
     Inflow,
     Insulated,
     Mixed,
+    MixedPad,
     axes_along,
     axis_of,
     is_high,
@@ -214,13 +215,21 @@ def environment(body: Body) -> Body:
             return Mixed(background_at_rest(condition.background), tuple(pad_at_rest(pad) for pad in condition.pads))
         return background_at_rest(condition)
 
-    def pad_at_rest(pad: HeldPad | FilmPad) -> HeldPad | FilmPad:
+    def pad_at_rest(pad: MixedPad) -> MixedPad:
+        if isinstance(pad, FluxPad):
+            return replace(pad, inflow=0.0)
         if isinstance(pad, FilmPad):
             return replace(pad, ambient=0.0)
         return replace(pad, value=None if pad.value is None else 0.0, flow=None if pad.flow is None else 0.0)
 
     faces = {face: at_rest(condition) for face, condition in body.faces.items()}
-    return replace(body, faces=faces, sources=(), layers=tuple(replace(layer, generation=0.0) for layer in body.layers))
+    return replace(
+        body,
+        faces=faces,
+        far_level=0.0,
+        sources=(),
+        layers=tuple(replace(layer, generation=0.0) for layer in body.layers),
+    )
 
 
 def with_flow_into(body: Body, pad: Pad, flow: float) -> Body:

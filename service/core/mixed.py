@@ -19,14 +19,14 @@ from service.core.convergence import Convergence, Overshoot
 from service.core.errors import AccuracyNotReached, NoSteadyState, NotPhysical
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
-from service.core.field import OFFERED, Field, Grid, KeepGoing, Setting
+from service.core.field import OFFERED, Field, Grid, KeepGoing, Setting, check_inside
 from service.core.maps import Rectangle
 from service.core.mixed_base import Base, Spot, base_of, pads_of
 from service.core.mixed_panels import Refined, given_total, needs_balance
 from service.core.mixed_refinement import LEVELS, Ladder, Refinement, change_of, left_over
 from service.core.panel_noise import noise
 from service.core.panels import STEP
-from service.core.problem import Body, Face, FilmPad, HeldPad, axes_along, axis_of, map_of
+from service.core.problem import Body, Face, FilmPad, FluxPad, HeldPad, MixedPad, axes_along, axis_of, map_of
 from service.core.solution import Solution
 from service.core.solvability import BALANCED, check_steady_state
 from service.core.totals import Balance, Bounded, Total
@@ -203,20 +203,10 @@ class MixedSolution(Solution):
             for answer in answers
         )
 
-    def _pad(self, face: Face, index: int, pad: HeldPad | FilmPad) -> PadAnswer:
+    def _pad(self, face: Face, index: int, pad: MixedPad) -> PadAnswer:
         number = next((n for n, spot in enumerate(self._base.spots) if (spot.face, spot.pad) == (face, index)), None)
         if number is None:
-            # It has the film of the base.
-            assert isinstance(pad, FilmPad)
-            area = (pad.where.p_high - pad.where.p_low) * (pad.where.q_high - pad.where.q_low)
-            means = [
-                solution.mean(face, pad.where, tolerance=MEAN_ACCURACY * self.span) for solution in self._here.solutions
-            ]
-            mean = self._ladder.limit(means)
-            flow = Bounded(
-                pad.coefficient * area * (pad.ambient - mean.value), pad.coefficient * area * mean.error_bound
-            )
-            return PadAnswer(face, index, pad.name, flow, mean)
+            return self._pad_of_base(face, index, pad)
         spot, rounding = self._base.spots[number], time_error.step_error(STEP)
         excess = self._ladder.limit(
             [
@@ -230,10 +220,24 @@ class MixedSolution(Solution):
         if isinstance(pad, HeldPad):
             flow = excess if pad.flow is None else Bounded(pad.flow, 0.0)
             return PadAnswer(face, index, pad.name, flow, self._level(number))
+        assert isinstance(pad, FilmPad)
         share = 1.0 + self._base.coefficients[face] / spot.excess
         per_flow = 1 / (spot.area * spot.excess)
         potential = Bounded(pad.ambient - per_flow * excess.value, per_flow * excess.error_bound)
         return PadAnswer(face, index, pad.name, Bounded(share * excess.value, share * excess.error_bound), potential)
+
+    def _pad_of_base(self, face: Face, index: int, pad: MixedPad) -> PadAnswer:
+        """A pad with a given inflow, or with the film of the base."""
+        means = [
+            solution.mean(face, pad.where, tolerance=MEAN_ACCURACY * self.span) for solution in self._here.solutions
+        ]
+        mean = self._ladder.limit(means)
+        if isinstance(pad, FluxPad):
+            return PadAnswer(face, index, pad.name, Bounded(pad.inflow * pad.where.area, 0.0), mean)
+        assert isinstance(pad, FilmPad)
+        per_degree = pad.coefficient * pad.where.area
+        flow = Bounded(per_degree * (pad.ambient - mean.value), per_degree * mean.error_bound)
+        return PadAnswer(face, index, pad.name, flow, mean)
 
     def _level(self, number: int) -> Bounded:
         """Level of a held spot."""
@@ -272,11 +276,26 @@ class MixedSolution(Solution):
         self, points: FloatArray, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
     ) -> Field:
         """Potential, and flux density if asked for, at points, shape (n, 3); see `field`."""
+        levels = None if with_flux else self._levels_at(points)
+        if levels is not None:
+            return levels
 
         def ask(solution: Solution, share: float) -> Field:
             return solution.field_at(points, tolerance=share, with_flux=with_flux, keep_going=keep_going)
 
         return self._field(ask, points, tolerance)
+
+    def _levels_at(self, points: FloatArray) -> Field | None:
+        """The field at points all of which are on held pads: the levels of those; None where others are among them."""
+        check_inside(self.body, (points[:, 0], points[:, 1], points[:, 2]))
+        potential, bound, found = np.zeros(len(points)), 0.0, np.zeros(len(points), dtype=bool)
+        for number, spot in enumerate(self._base.spots):
+            on_it, _ = _places_on(self.body, spot, points)
+            if spot.is_held and on_it.any():
+                level = self._level(number)
+                potential[on_it], bound = level.value, max(bound, level.error_bound)
+                found |= on_it
+        return Field(potential, bound, None, None, 0) if found.all() else None
 
     def _field(self, ask: Callable[[Solution, float], Field], points: FloatArray, tolerance: float) -> Field:
         count, share = self.count, SHARE * tolerance
@@ -416,12 +435,19 @@ class MixedSolution(Solution):
     def convergence(
         self, points: FloatArray, *, tolerance: float, keep_going: KeepGoing | None = None
     ) -> list[Convergence]:
-        """How the answers of the finest panels at points, shape (n, 3), converge."""
-        return self._here.solutions[0].convergence(points, tolerance=SHARE * tolerance, keep_going=keep_going)
+        """Refused: here the panels set the error, and the answers of given panels converge to another field."""
+        raise self._of_panels()
 
     def overshoot(self, terms: int) -> list[Overshoot]:
-        """By how much a series of so many modes per axis overshoots the densities of the finest panels."""
-        return self._here.solutions[0].overshoot(terms)
+        """Refused, see `convergence`."""
+        raise self._of_panels()
+
+    def _of_panels(self) -> NotPhysical:
+        return NotPhysical(
+            "The error of a body with mixed faces is that of the panels on its pads, which fields, flows and means "
+            "state; how a series converges is told for bodies with one condition on each face.",
+            ("faces", self._base.faces[0]),
+        )
 
     def mean(self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float) -> Bounded:
         """Mean of the potential over a face or a rectangle of it, with finer panels where its bound asks for them."""

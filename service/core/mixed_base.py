@@ -14,7 +14,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import pairwise
 
 import numpy as np
@@ -27,15 +27,16 @@ from service.core.problem import (
     Face,
     Film,
     FilmPad,
+    FluxPad,
     Held,
     HeldPad,
     Inflow,
     Insulated,
     Mixed,
+    MixedPad,
     axes_along,
     axis_of,
     is_high,
-    map_of,
 )
 from service.core.split import scale_of
 
@@ -95,7 +96,7 @@ def mixed_faces(body: Body) -> tuple[Face, ...]:
     return tuple(face for face in body.present_faces if isinstance(body.faces[face], Mixed))
 
 
-def pads_of(body: Body, face: Face) -> tuple[HeldPad | FilmPad, ...]:
+def pads_of(body: Body, face: Face) -> tuple[MixedPad, ...]:
     """The pads of a face, none if it is not mixed."""
     condition = body.faces[face]
     return condition.pads if isinstance(condition, Mixed) else ()
@@ -120,27 +121,36 @@ def base_of(body: Body) -> Base:
 
 def with_faces(body: Body, faces: dict[Face, Condition]) -> Body:
     """The same body with other conditions."""
-    return Body(body.size, body.conductivity, faces, body.sources, body.layers, body.infinite)
+    return replace(body, faces=faces)
 
 
 def _least_coefficient(mixed: Mixed) -> float:
+    if not isinstance(mixed.background, Film) or any(isinstance(pad, FluxPad) for pad in mixed.pads):
+        return 0.0
     films = [pad.coefficient for pad in mixed.pads if isinstance(pad, FilmPad)]
-    return min([mixed.background.coefficient, *films]) if isinstance(mixed.background, Film) else 0.0
+    return min([mixed.background.coefficient, *films])
 
 
 def _base_condition(body: Body, face: Face, mixed: Mixed, least: float) -> Condition:
-    face_map = map_of(mixed.background)
-    usual = 0.0 if face_map is None else face_map.usual
-    patches = []
-    for pad in mixed.pads:
-        level = pad.ambient if isinstance(pad, FilmPad) else pad.value
-        patches.append(Patch(pad.where, 0.0 if least == 0.0 else usual if level is None else level))
+    if least > 0.0:
+        assert isinstance(mixed.background, Film)
+        usual = mixed.background.ambient.usual
+        patches = [Patch(pad.where, _level_of(pad, usual)) for pad in mixed.pads]
+    else:
+        usual = mixed.background.inflow.usual if isinstance(mixed.background, Inflow) else 0.0
+        patches = [Patch(pad.where, pad.inflow if isinstance(pad, FluxPad) else 0.0) for pad in mixed.pads]
     first, second = axes_along(face)
     extent, begins = (body.size[first], body.size[second]), (body.begins[first], body.begins[second])
     data = FaceMap.patches(extent, usual, patches, begins=begins)
     if least > 0.0:
         return Film(least, FaceMap.uniform(usual) if data.is_uniform else data)
-    return Insulated() if usual == 0.0 else Inflow(data)
+    return Insulated() if data.is_uniform and usual == 0.0 else Inflow(data)
+
+
+def _level_of(pad: MixedPad, usual: float) -> float:
+    """What the ambient before a pad is in the base: its own level where it has one."""
+    level = pad.ambient if isinstance(pad, FilmPad) else pad.value if isinstance(pad, HeldPad) else None
+    return usual if level is None else level
 
 
 def _spots(body: Body, face: Face, mixed: Mixed, least: float) -> list[Spot]:
@@ -148,7 +158,7 @@ def _spots(body: Body, face: Face, mixed: Mixed, least: float) -> list[Spot]:
     for index, pad in enumerate(mixed.pads):
         if isinstance(pad, HeldPad):
             spots.append(Spot(face, pad.where, pad.value, math.inf, index))
-        elif pad.coefficient > least:
+        elif isinstance(pad, FilmPad) and pad.coefficient > least:
             spots.append(Spot(face, pad.where, pad.ambient, pad.coefficient - least, index))
     if isinstance(mixed.background, Film) and mixed.background.coefficient > least:
         rest = _background(body, face, [pad.where for pad in mixed.pads])

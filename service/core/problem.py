@@ -106,6 +106,18 @@ class FilmPad:
 
 
 @dataclass(frozen=True)
+class FluxPad:
+    """A rectangle of a mixed face with a given inflow per area. name: what to call it, or None."""
+
+    where: Rectangle
+    inflow: float
+    name: str | None = None
+
+
+MixedPad = HeldPad | FilmPad | FluxPad
+
+
+@dataclass(frozen=True)
 class Mixed:
     """Several conditions on one face: pads of their own conditions on a background with uniform data.
 
@@ -113,7 +125,7 @@ class Mixed:
     """
 
     background: Inflow | Film | Insulated
-    pads: tuple[HeldPad | FilmPad, ...]
+    pads: tuple[MixedPad, ...]
 
 
 Condition = Held | Inflow | Film | Insulated | Mixed
@@ -161,6 +173,7 @@ class Body:
     layers: from z_low to z_high, empty for a body of one material. See `stack`.
     infinite: which axes have no ends: their size is infinite, their coordinates run from -infinity to infinity, and
         neither face is there.
+    far_level: the potential far away along endless axes where no face fixes it.
     law: a factor on the conductivity that varies with the potential, or None where it does not.
     Raises NotPhysical where one of these does not hold, or a map or box does not fit the body.
     """
@@ -172,6 +185,7 @@ class Body:
     layers: tuple[Layer, ...] = field(default=())
     infinite: tuple[bool, bool, bool] = (False, False, False)
     law: ConductivityLaw | None = None
+    far_level: float = 0.0
 
     @classmethod
     def stack(
@@ -221,6 +235,7 @@ class Body:
         self._check_size_and_conductivity()
         self._check_layers()
         self._check_faces()
+        self._check_far_level()
         for index, source in enumerate(self.sources):
             self._check_source(index, source)
 
@@ -346,6 +361,18 @@ class Body:
                 ("faces", face),
             )
 
+    def _check_far_level(self) -> None:
+        if not math.isfinite(self.far_level):
+            raise NotPhysical("The level far away is not a finite number.", ("far_level",))
+        fixed = [face for face in self.present_faces if _fixes_level(self.faces[face])]
+        if self.far_level != 0.0 and fixed:
+            raise NotPhysical(
+                f"The face {fixed[0]} fixes the level of the potential, far away as well; leave `far_level` out.",
+                ("far_level",),
+            )
+        if self.far_level != 0.0 and all(math.isfinite(length) for length in self.size):
+            raise NotPhysical("The body ends along every axis; it has no level far away.", ("far_level",))
+
     def _check_mixed(self, face: Face, mixed: Mixed) -> None:
         if isinstance(mixed.background, Film):
             _check_film(mixed.background, face)
@@ -397,6 +424,13 @@ class Body:
                 )
 
 
+def _fixes_level(condition: Condition) -> bool:
+    """Whether a face tells the level of the potential wherever nothing else does: pads of a mixed face do not."""
+    return isinstance(condition, Held | Film) or (
+        isinstance(condition, Mixed) and isinstance(condition.background, Film)
+    )
+
+
 def _check_film(film: Film, face: Face) -> None:
     radiates = film.radiation is not None
     if not (film.coefficient > 0 or (radiates and film.coefficient == 0)) or math.isinf(film.coefficient):
@@ -415,7 +449,7 @@ def _check_film(film: Film, face: Face) -> None:
         )
 
 
-def _check_pad(pad: HeldPad | FilmPad, name: str, where: tuple[str | int, ...]) -> None:
+def _check_pad(pad: MixedPad, name: str, where: tuple[str | int, ...]) -> None:
     if isinstance(pad, FilmPad):
         if not (pad.coefficient > 0 and math.isfinite(pad.coefficient)):
             raise NotPhysical(
@@ -425,6 +459,10 @@ def _check_pad(pad: HeldPad | FilmPad, name: str, where: tuple[str | int, ...]) 
             )
         if not math.isfinite(pad.ambient):
             raise NotPhysical(f"{name} has an ambient that is not a finite number.", (*where, "ambient"))
+        return
+    if isinstance(pad, FluxPad):
+        if not math.isfinite(pad.inflow):
+            raise NotPhysical(f"{name} has an inflow that is not a finite number.", (*where, "inflow"))
         return
     given = [number for number in (pad.value, pad.flow) if number is not None]
     if len(given) != 1 or not math.isfinite(given[0]):

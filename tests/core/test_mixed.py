@@ -33,7 +33,7 @@ from service.core.mixed import MixedSolution, PadAnswer, solve_mixed
 from service.core.mixed_base import base_of
 from service.core.mixed_refinement import Ladder
 from service.core.pad_network import pad_network
-from service.core.problem import FilmPad, HeldPad, Mixed
+from service.core.problem import FilmPad, FluxPad, HeldPad, Mixed
 from tests.core.bodies import ENDLESS, INSULATED, all_insulated, film, held, without_far_face
 from tests.core.reference.mixed_elements import Block, limit_of_flows
 
@@ -349,6 +349,57 @@ def test_field_bounds_hold_at_every_place_against_finer_panels(name: str) -> Non
         for place, value in zip(places, exact.potential, strict=True):
             alone = solution.field_at(place[None, :], tolerance=1e9)
             assert abs(alone.potential[0] - value) <= alone.potential_bound
+
+
+def test_a_pad_with_a_given_inflow_on_a_cooled_face_is_a_film_of_next_to_no_coefficient() -> None:
+    others = {"z_low": film(2.0, 0.2)}
+    with_inflow = solve_mixed(block(Mixed(film(3.0, 0.5), (FluxPad(ONE, 4.0, "die"),)), **others), accuracy=1e-4)
+    with_film = solve_mixed(block(Mixed(film(3.0, 0.5), (FilmPad(ONE, 1e-7, 4e7),)), **others), accuracy=1e-4)
+    (die,), (same,) = with_inflow.pads(), with_film.pads()
+    assert die.flow.value == pytest.approx(4.0 * ONE.area, rel=1e-14)
+    assert die.flow.error_bound == 0.0
+    assert abs(die.potential.value - same.potential.value) <= die.potential.error_bound + same.potential.error_bound
+    assert with_inflow.balance(tolerance=1e-6).closed
+
+
+def test_a_pad_with_a_given_inflow_on_an_insulated_face_is_a_patch_of_inflow() -> None:
+    others = {"z_low": film(2.0, 0.2)}
+    pad = solve_mixed(block(Mixed(INSULATED, (FluxPad(ONE, 4.0),)), **others))
+    patch = solve(block(Inflow(FaceMap.patches((1.0, 1.0), 0.0, [Patch(ONE, 4.0)])), **others))
+    found, exact = (solution.field_at(POINTS, tolerance=1e-8).potential for solution in (pad, patch))
+    np.testing.assert_allclose(found, exact, rtol=0, atol=2e-8)
+
+
+def test_flows_follow_the_level_far_away_and_not_the_zero_of_the_scale() -> None:
+    shifted = replace(HALF_SPACE, faces={"z_low": Mixed(INSULATED, (HeldPad(Rectangle(-0.5, 0.5, -0.5, 0.5), 21.0),))})
+    counted = solve_mixed(replace(shifted, far_level=20.0), accuracy=1e-5)
+    plain = solve_mixed(HALF_SPACE, accuracy=1e-5)
+    assert counted.pads()[0].flow.value == pytest.approx(plain.pads()[0].flow.value, rel=1e-12)
+    far = np.array([[0.0, 0.0, 1e4]])
+    assert counted.field_at(far, tolerance=1.0).potential[0] == pytest.approx(20.0, abs=1e-3)
+
+
+def test_a_level_far_away_that_means_nothing_is_refused() -> None:
+    with pytest.raises(NotPhysical, match="fixes the level"):
+        Body(SIZE, UNIT, all_insulated(z_low=held(0.0)), far_level=3.0)
+    with pytest.raises(NotPhysical, match="ends along every axis"):
+        Body(SIZE, UNIT, all_insulated(), far_level=3.0)
+
+
+def test_points_on_a_held_pad_have_its_level_and_its_bound() -> None:
+    solution = solve_mixed(block(Mixed(INSULATED, (TWO[1], HeldPad(ONE, None, 2.0)))), accuracy=1e-4)
+    on_pads = solution.field_at(np.array([[0.25, 0.2, 0.5], [0.7, 0.6, 0.5]]), tolerance=1e-9)
+    fed = solution.pads()[1].potential
+    assert (on_pads.potential[0], on_pads.potential[1]) == (fed.value, 0.0)
+    assert on_pads.potential_bound == fed.error_bound
+
+
+def test_convergence_of_a_series_is_not_told_for_panels() -> None:
+    solution = solve_mixed(block(Mixed(INSULATED, TWO)), accuracy=1e-2)
+    with pytest.raises(NotPhysical, match="panels"):
+        solution.convergence(POINTS, tolerance=1e-6)
+    with pytest.raises(NotPhysical, match="panels"):
+        solution.overshoot(8)
 
 
 def test_an_accuracy_out_of_reach_says_what_was_reached() -> None:
