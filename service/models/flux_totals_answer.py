@@ -6,7 +6,7 @@ from typing import Literal
 
 from pydantic import Field
 
-from service.models.answers import Answer, PartAnswer, Rectangle
+from service.models.answers import Answer, Certificate, PartAnswer, Rectangle
 from service.models.base import Model
 from service.models.faces import FaceName
 
@@ -130,9 +130,28 @@ class Balance(Model):
     unbounded_faces: list[FaceName] = Field(description="Faces whose inflow has no finite value.", examples=[["z_low"]])
 
 
+class FluxTotalsCertificate(Certificate):
+    """Evidence for the answer."""
+
+    error_bound: float = Field(
+        description="No potential in the answer is further off than this, or where it has none that of the middle of "
+        "the body; unit `potential_difference`. 0 where all are given.",
+        examples=[4e-8],
+    )
+    flow_error_bound: float = Field(
+        description="No inflow and no flow through a plane is further off than this; unit `flow`.", examples=[1.5e-2]
+    )
+    flow_accuracy_asked: float | None = Field(
+        description="What flows were asked for where a face is mixed: the same part of the sum of the sizes of all "
+        "flows through pads as the accuracy is of the span; unit `flow`. null where no face is mixed.",
+        examples=[2.8e-2],
+    )
+
+
 class FluxTotalsAnswer(Answer):
     """Total flow through faces, parts of faces and planes."""
 
+    certificate: FluxTotalsCertificate = Field(description="Evidence for the answer.")
     faces: FaceTotals = Field(description="Inflow of each face asked for.")
     patches: list[PartInflowTotal] = Field(description="Inflow of each part asked for, in the order asked for.")
     planes: list[PlaneFlowTotal] = Field(description="Flow through each plane, in the order asked for.")

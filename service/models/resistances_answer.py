@@ -44,8 +44,8 @@ class ResistancesCertificate(Model):
     """Evidence for the matrix."""
 
     error_bound: float = Field(
-        description="No mean rise per unit flow, of held pads no entry of `pairs`, is further off than this; unit "
-        "`resistance`.",
+        description="No mean rise per unit flow is further off than this; of several held pads, and where there are no "
+        "rises, no entry of `pairs`. Unit `resistance`.",
         examples=[2e-9],
     )
     accuracy_asked: float = Field(description="The accuracy that was asked for; unit `resistance`.", examples=[1e-8])

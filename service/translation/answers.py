@@ -97,11 +97,13 @@ def warning(code: str, message: str, where: str) -> Warning_:
     return {"code": code, "message": message, "where": where}
 
 
-def missed_accuracy(bound: float, tolerance: float, where: str) -> list[Warning_]:
-    """A remark on a number whose bound is wider than the accuracy asked for."""
+def missed_accuracy(bound: float, tolerance: float, unit: str, where: str) -> list[Warning_]:
+    """A remark on a number whose bound is wider than the accuracy asked for. unit: of both."""
     if bound <= tolerance:
         return []
-    message = f"The bound of this number is {bound:.2g}, wider than the accuracy asked for, {tolerance:.2g}."
+    message = (
+        f"The bound of this number is {bound:.2g} {unit}, wider than the accuracy asked for, {tolerance:.2g} {unit}."
+    )
     return [warning("accuracy-not-reached", message, where)]
 
 

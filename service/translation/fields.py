@@ -174,7 +174,9 @@ class _Answering:
 
     def _note_bound(self, bound: float, where: str) -> None:
         self.bounds.append(float(bound))
-        self.warnings += answers.missed_accuracy(bound, self.wanted.tolerance, where)
+        self.warnings += answers.missed_accuracy(
+            bound, self.wanted.tolerance, self.units.declared[Kind.POTENTIAL_DIFFERENCE], where
+        )
 
 
 def answer_fields(

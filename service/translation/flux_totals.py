@@ -15,7 +15,14 @@ from service.translation import answers
 from service.translation.answers import KeepGoing
 from service.translation.collector import Collector
 from service.translation.fields import describe_part, rectangle_shown
-from service.translation.mixed_pads import USUAL_OF_FLOWS, flow_of, mixed_pad, pad_answers, potential_of
+from service.translation.mixed_pads import (
+    USUAL_OF_FLOWS,
+    flow_of,
+    flow_tolerance,
+    mixed_pad,
+    pad_answers,
+    potential_of,
+)
 from service.translation.places import FacePart, PlaceReader, PlanePart
 from service.translation.problem import ReadProblem
 from service.units import Kind, UnitSystem
@@ -75,14 +82,28 @@ def answer_totals(
     warnings = answers.problem_warnings(problem, solution)
     solution.prepare(tolerance=wanted.tolerance, keep_going=keep_going)
 
+    tolerance, gap = wanted.tolerance, wanted.gap
+    mixed = pad_answers(solution, tolerance)
+    of_flows = flow_tolerance(units, solution, mixed, tolerance)
+    bounds: list[float] = []
+
+    def checked(answer: dict[str, Any], where: str) -> dict[str, Any]:
+        """An answer whose bounds are noted."""
+        gapped = answer.get("with_gap")
+        for part, at in ((answer, where), (gapped, f"{where}/with_gap")):
+            bound = None if part is None else part["error_bound"]
+            if bound is not None:
+                bounds.append(bound)
+                if of_flows is not None:
+                    warnings.extend(answers.missed_accuracy(bound, of_flows, units.declared[Kind.FLOW], at))
+        return answer
+
     def shown(total: Total, word: str, where: str) -> dict[str, Any]:
         keep_going()
         if total.value is None:
             warnings.append(_unbounded_warning(total, where))
-        return _total(units, total, word)
+        return checked(_total(units, total, word), where)
 
-    tolerance, gap = wanted.tolerance, wanted.gap
-    mixed = pad_answers(solution, tolerance)
     balance = solution.balance(gap=gap, tolerance=tolerance)
     faces = {face: shown(balance.inflow[face], "inflow", f"#/faces/{face}") for face in wanted.faces}
     patches = [
@@ -94,7 +115,7 @@ def answer_totals(
                 f"#/patches/{index}",
             )
             if (passed := mixed_pad(mixed, part)) is None
-            else _pad(units, passed)
+            else checked(_pad(units, passed), f"#/patches/{index}")
         )
         for index, part in enumerate(wanted.parts)
     ]
@@ -118,7 +139,8 @@ def answer_totals(
             answers.place_inside(problem),
             tolerance,
             [float(pad.potential.error_bound) for pad in mixed.values()],
-        ),
+        )
+        | {"flow_error_bound": max(bounds, default=0.0), "flow_accuracy_asked": of_flows},
         "warnings": warnings,
         "faces": faces,
         "patches": patches,

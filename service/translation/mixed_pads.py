@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 
 from service.core import Solution
@@ -25,6 +26,17 @@ def pad_answers(solution: Solution, tolerance: float) -> Answers:
         return {}
     solution.refine_flows(min(tolerance / (solution.span or 1.0), USUAL_OF_FLOWS))
     return {(pad.face, pad.index): pad for pad in solution.pads()}
+
+
+def flow_tolerance(units: UnitSystem, solution: Solution, passed: Answers, tolerance: float) -> float | None:
+    """The accuracy of flows that one of potentials comes to, in the declared unit; None where no face is mixed.
+
+    It is the same part of the sum of the sizes of all flows through pads as `tolerance` is of the span.
+    """
+    if not passed:
+        return None
+    size = math.fsum(abs(pad.flow.value) for pad in passed.values())
+    return units.write(Kind.FLOW, tolerance / (solution.span or 1.0) * size)
 
 
 def mixed_pad(answers: Answers, part: FacePart) -> PadAnswer | None:

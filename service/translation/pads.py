@@ -20,7 +20,7 @@ from service.translation import answers
 from service.translation.answers import KeepGoing
 from service.translation.collector import Collector
 from service.translation.fields import describe_part
-from service.translation.mixed_pads import flow_of, mixed_pad, pad_answers
+from service.translation.mixed_pads import flow_of, flow_tolerance, mixed_pad, pad_answers
 from service.translation.places import FacePart, PlaceReader
 from service.translation.problem import ReadProblem
 from service.units import Kind, UnitSystem
@@ -137,6 +137,8 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
     """The answer to a question about pads."""
     tolerance = wanted.tolerance
     mixed = pad_answers(solution, tolerance)
+    of_flows = flow_tolerance(problem.units, solution, mixed, tolerance)
+    units = problem.units.declared
     centres = np.array([pad.centre(problem) for pad in wanted.pads])
     # The peaks first: they ask most of the accuracy, and say best which one can be promised.
     peaks = _peaks(solution, wanted, keep_going)
@@ -152,14 +154,19 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
         if passed is not None:
             mean = passed.potential
         bounds += [float(mean.error_bound), float(largest.error_bound)]
-        warnings += answers.missed_accuracy(float(mean.error_bound), tolerance, f"#/pads/{index}/mean")
-        warnings += answers.missed_accuracy(float(largest.error_bound), tolerance, f"#/pads/{index}/largest")
+        for name, known in (("mean", mean), ("largest", largest)):
+            unit, where = units[Kind.POTENTIAL_DIFFERENCE], f"#/pads/{index}/{name}"
+            warnings += answers.missed_accuracy(float(known.error_bound), tolerance, unit, where)
+        if passed is None:
+            flow = _flow(problem.units, solution, pad, tolerance)
+        else:
+            flow = flow_of(problem.units, passed)
+            assert of_flows is not None
+            warnings += answers.missed_accuracy(flow["error_bound"], of_flows, units[Kind.FLOW], f"#/pads/{index}/flow")
         found.append(
             pad.described()
             | {
-                "flow": _flow(problem.units, solution, pad, tolerance)
-                if passed is None
-                else flow_of(problem.units, passed),
+                "flow": flow,
                 "mean": _bounded(mean),
                 "largest": _at(largest),
                 "centre": _at(Place(tuple(centre), float(potential), float(at_centres.potential_bound), "")),

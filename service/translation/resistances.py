@@ -131,8 +131,9 @@ def answer_resistances(
     unit = _resistance_unit(problem.units)
     known, asked = found.mean, wanted.tolerance
     if known is None or wanted.are_held:
-        # Held pads are asked for to a part of their conductances, and so of the resistances between them.
-        known = found.pairs
+        # Held pads are asked for to a part of their conductances, and so of the resistances between them; a single
+        # one has that to the environment.
+        known = found.pairs if known is None or len(wanted.pads) > 1 else known
         asked *= float(known.value.max())
     answer: dict[str, Any] = {
         "problem_id": problem.problem_id,

@@ -58,6 +58,42 @@ async def test_flows_of_pads_balance_and_levels_are_found(client: httpx.AsyncCli
     assert found["balance"]["closed"]
 
 
+async def test_certificate_tells_how_well_flows_are_known(client: httpx.AsyncClient) -> None:
+    """Both levels are given, so that no potential in the answer is off at all, but the flows are."""
+    problem = stub({**RETURN, "name": "feed", "x": [5, 25], "value": 1}, RETURN)
+    evaluate = {"faces": ["z_high"], "patches": [{"face": "z_high", "patch": name} for name in ("feed", "return")]}
+    found = await ask(client, "flux-totals", problem, evaluate)
+    certificate, flows = found["certificate"], found["patches"]
+    assert certificate["error_bound"] == 0
+    assert certificate["flow_error_bound"] == max(flow["error_bound"] for flow in flows) > 0
+    size = sum(abs(flow["inflow"]) for flow in flows)
+    assert certificate["flow_accuracy_asked"] == pytest.approx(1e-5 * size, rel=1e-12)
+    assert found["warnings"] == []
+
+
+async def test_tighter_accuracy_refines_flows_and_says_where_it_is_not_reached(client: httpx.AsyncClient) -> None:
+    problem = stub({**RETURN, "name": "feed", "x": [5, 25], "value": 1}, RETURN)
+    evaluate = {"faces": [], "patches": [{"face": "z_high", "patch": 0}]}
+    found = await ask(client, "flux-totals", problem, evaluate, accuracy={"absolute": "1e-9 mV"})
+    (flow,) = found["patches"]
+    size = 2 * abs(flow["inflow"])
+    assert found["certificate"]["flow_accuracy_asked"] == pytest.approx(1e-9 * size, rel=1e-5)
+    assert flow["error_bound"] > found["certificate"]["flow_accuracy_asked"]
+    (warning,) = found["warnings"]
+    assert (warning["code"], warning["where"]) == ("accuracy-not-reached", "#/patches/0")
+    assert " A, wider than the accuracy asked for" in warning["message"]
+    pads = await ask(client, "pads", problem, {"pads": [{"face": "z_high", "patch": 0}]}, accuracy={"relative": 6e-3})
+    assert [warning["where"] for warning in pads["warnings"]] == []
+
+
+async def test_bound_of_a_single_held_pad_is_that_of_its_rise(client: httpx.AsyncClient) -> None:
+    problem = changed(stub(RETURN), "faces/z_low", {"condition": "held", "value": 0})
+    found = await ask(client, "resistances", problem)
+    certificate, mean = found["certificate"], found["mean"]
+    assert certificate["error_bound"] == mean["error_bound"][0][0] > 0
+    assert certificate["accuracy_asked"] == pytest.approx(1e-5 * mean["value"][0][0], rel=1e-12)
+
+
 async def test_pads_are_told_by_the_call_for_pads(client: httpx.AsyncClient) -> None:
     totals = await ask(client, "flux-totals", stub(), {"patches": [{"face": "z_high", "patch": 0}]})
     found = await ask(client, "pads", stub())
