@@ -111,6 +111,9 @@ def read(text: str, names: tuple[str, str]) -> Formula:
     if not text.isascii():
         place = next(index for index, letter in enumerate(text) if not letter.isascii())
         raise NotPhysical(f"Character {place + 1} of the expression is none that is used in a formula.")
+    if "#" in text:
+        # The parser would take what follows for a comment and pass over it.
+        raise NotPhysical(f"Character {text.index('#') + 1} of the expression is none that is used in a formula.")
     try:
         tree = ast.parse(text.strip().replace("^", "**"), mode="eval")
     except (SyntaxError, ValueError, RecursionError, MemoryError) as error:

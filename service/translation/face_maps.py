@@ -11,6 +11,7 @@ from service.core import errors, formula, formula_map, maps
 from service.core.problem import AXES, Face, axes_along
 from service.models.face_maps import AxisIntervals, FaceData, FormulaMap, PatchesMap, SamplesMap
 from service.models.face_maps import Patch as PatchModel
+from service.number_range import LARGEST_NUMBER
 from service.refusals import Path
 from service.settings import Settings
 from service.translation.collector import UNREAD, Collector
@@ -184,7 +185,13 @@ class FaceReader:
             return None
         # Bare numbers of a formula are in the declared units; the solver wants its own.
         factor = self.collector.units.read(kind, 1.0)
-        return FaceContents(formula_map.of_formula(self.extent, expression, factor, begins=self.begins))
+        face_map = formula_map.of_formula(self.extent, expression, factor, begins=self.begins)
+        largest = max(abs(face_map.lowest), abs(face_map.highest)) / abs(factor)
+        if largest > LARGEST_NUMBER:
+            raise errors.NotPhysical(
+                f"The formula reaches {largest:.3g} in size; no number may be larger than {LARGEST_NUMBER:g}."
+            )
+        return FaceContents(face_map)
 
     def _table(self, data: SamplesMap, path: Path) -> Readings | None:
         """Axes and readings, NaN where one is missing."""

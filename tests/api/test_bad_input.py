@@ -145,6 +145,8 @@ MAPS = [
     problem("formula with an attribute", "faces/z_low/value", {"map": "formula", "expression": "x.real"}, "#/faces/z_low/value/expression", "has no place in a formula"),
     problem("formula of two arguments too many", "faces/z_low/value", {"map": "formula", "expression": "exp(x, y)"}, "#/faces/z_low/value/expression", "The function exp at character 1 of the expression takes one argument, not 2."),
     problem("formula of a large power", "faces/z_low/value", {"map": "formula", "expression": "x^100"}, "#/faces/z_low/value/expression", "The exponent at character 3 of the expression is 100; it has to lie between -64 and 64."),
+    problem("formula beyond all numbers that are read", "faces/z_low/value", {"map": "formula", "expression": "1e308"}, "#/faces/z_low/value/expression", "The formula reaches 1e+308 in size; no number may be larger than 1e+60."),
+    problem("formula with a remark", "faces/z_low/value", {"map": "formula", "expression": "20 # + x"}, "#/faces/z_low/value/expression", "Character 4 of the expression is none that is used in a formula."),
     problem("formula that is not finite", "faces/z_low/value", {"map": "formula", "expression": "20/x"}, "#/faces/z_low/value/expression", "The formula has no finite value at x = 0, y = 0."),
     problem("formula with a pole", "faces/z_low/value", {"map": "formula", "expression": "1/(x-20.123)"}, "#/faces/z_low/value/expression", "The formula jumps, turns too sharply or is not finite near x = 20.0781"),
     problem("formula with a kink askew", "faces/z_low/value", {"map": "formula", "expression": "abs(x-y)"}, "#/faces/z_low/value/expression", "kinks may only run along an axis"),
