@@ -226,7 +226,7 @@ def environment(body: Body) -> Body:
     return replace(
         body,
         faces=faces,
-        far_level=0.0,
+        far_level=None,
         sources=(),
         layers=tuple(replace(layer, generation=0.0) for layer in body.layers),
     )

@@ -160,6 +160,12 @@ class MixedSolution(Solution):
         return self.count**2 * len(self._base.spots)
 
     @property
+    def depends_on_far_level(self) -> bool:
+        """Whether flows depend on what the potential comes to far away, which no face tells."""
+        told = [spot for spot in self._base.spots if spot.level is not None]
+        return self.body.leaves_far_level_open and not needs_balance(self._base) and bool(told)
+
+    @property
     def level_pinned(self) -> bool:
         """Whether the data leave the level open, so that the field is counted from its own mean or from far away."""
         return needs_balance(self._base) and all(spot.level is None for spot in self._base.spots)

@@ -182,8 +182,7 @@ class Ladder:
             assert face_map is not None
             levels += [face_map.lowest, face_map.highest]
         if not films and not needs_balance(self.base):
-            # Far away there is nothing.
-            levels.append(0.0)
+            levels.append(self.base.body.far_level or 0.0)
         return max(float(max(levels) - min(levels)), self._span_of_base)
 
     @cached_property

@@ -173,7 +173,7 @@ class Body:
     layers: from z_low to z_high, empty for a body of one material. See `stack`.
     infinite: which axes have no ends: their size is infinite, their coordinates run from -infinity to infinity, and
         neither face is there.
-    far_level: the potential far away along endless axes where no face fixes it.
+    far_level: the potential far away along endless axes where no face fixes it; zero if None.
     law: a factor on the conductivity that varies with the potential, or None where it does not.
     Raises NotPhysical where one of these does not hold, or a map or box does not fit the body.
     """
@@ -185,7 +185,7 @@ class Body:
     layers: tuple[Layer, ...] = field(default=())
     infinite: tuple[bool, bool, bool] = (False, False, False)
     law: ConductivityLaw | None = None
-    far_level: float = 0.0
+    far_level: float | None = None
 
     @classmethod
     def stack(
@@ -361,16 +361,24 @@ class Body:
                 ("faces", face),
             )
 
+    @property
+    def leaves_far_level_open(self) -> bool:
+        """Whether the body goes on without end and no face says what its potential comes to there."""
+        endless = any(math.isinf(length) for length in self.size)
+        return endless and not any(_fixes_level(self.faces[face]) for face in self.present_faces)
+
     def _check_far_level(self) -> None:
+        if self.far_level is None:
+            return
         if not math.isfinite(self.far_level):
             raise NotPhysical("The level far away is not a finite number.", ("far_level",))
         fixed = [face for face in self.present_faces if _fixes_level(self.faces[face])]
-        if self.far_level != 0.0 and fixed:
+        if fixed:
             raise NotPhysical(
                 f"The face {fixed[0]} fixes the level of the potential, far away as well; leave `far_level` out.",
                 ("far_level",),
             )
-        if self.far_level != 0.0 and all(math.isfinite(length) for length in self.size):
+        if all(math.isfinite(length) for length in self.size):
             raise NotPhysical("The body ends along every axis; it has no level far away.", ("far_level",))
 
     def _check_mixed(self, face: Face, mixed: Mixed) -> None:

@@ -65,6 +65,11 @@ class Solution:
         return self._setting.reference
 
     @property
+    def depends_on_far_level(self) -> bool:
+        """Whether flows depend on what the potential comes to far away, which no face tells."""
+        return False
+
+    @property
     def level_pinned(self) -> bool:
         """Whether the data leave the level open and the field is counted from its own mean."""
         return level_is_pinned(self.body)

@@ -146,7 +146,7 @@ def reference_level(body: Body) -> float:
             assert face_map is not None
             endless = any(math.isinf(body.size[axis]) for axis in axes_along(face))
             levels[face_map.usual] += 10 if endless else 1
-    return levels.most_common(1)[0][0] if levels else body.far_level
+    return levels.most_common(1)[0][0] if levels else body.far_level or 0.0
 
 
 def parts_of(body: Body, reference: float) -> tuple[Part, ...]:

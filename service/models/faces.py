@@ -138,14 +138,39 @@ class FilmPad(AxisIntervals):
     )
 
 
+class FluxPad(AxisIntervals):
+    """A rectangle of a mixed face with a given inflow.
+
+    Give an interval along each of the face's two axes, and either `inflow` or `flow`.
+    """
+
+    condition: Literal["flux"] = Field(description="The flow into the body through the pad is given.")
+    name: str | None = Field(
+        None, min_length=1, max_length=LONGEST_NAME, description="What to call the pad.", examples=["die 1"]
+    )
+    inflow: Quantity | None = Field(
+        None,
+        description="Flow per area, positive into the body, in the declared unit `flux`.",
+        examples=["15 kW/m^2"],
+    )
+    flow: Quantity | None = Field(
+        None,
+        description="In place of `inflow`: the total flow, spread evenly, in the declared unit `flow`.",
+        examples=["35 W"],
+    )
+
+
 class MixedFace(Model):
-    """Several conditions on one face: pads that are held or have a film of their own, on a uniform background."""
+    """Several conditions on one face: pads that are held, have a film of their own or a given inflow, on a background.
+
+    The background has one condition with uniform data.
+    """
 
     condition: Literal["mixed"] = Field(description="Pads with conditions of their own on a background.")
     background: Annotated[UniformFlux | UniformFilm | InsulatedFace, Field(discriminator="condition")] = Field(
         description="The condition everywhere else.", examples=[{"condition": "insulated"}]
     )
-    pads: list[Annotated[HeldPad | FilmPad, Field(discriminator="condition")]] = Field(
+    pads: list[Annotated[HeldPad | FilmPad | FluxPad, Field(discriminator="condition")]] = Field(
         min_length=1,
         max_length=MOST_PADS,
         description="The rectangles; they may touch but not overlap.",

@@ -53,6 +53,12 @@ class DeclaredUnits(Model):
     flow: UnitText | None = Field(
         None, description="Unit of total flows in answers; W, A, mol/s or m^3/s if left out.", examples=["W"]
     )
+    resistance: UnitText | None = Field(
+        None,
+        description="Unit of resistances between pads; K/W, ohm, s/m^3 or s/m^2 if left out. Conductances are in its "
+        "inverse.",
+        examples=["K/W", "mohm"],
+    )
 
 
 _OPEN = '"semi-infinite" (from 0, no far end) or "infinite" (no end at all)'
@@ -186,6 +192,12 @@ class Body(Model):
         description="How the conductivity varies with the potential, alike along all axes; it does not if left out. "
         "Not for layers.",
         examples=[{"law": "linear", "reference": 20, "per_degree": -0.0004}],
+    )
+    far_level: Quantity | None = Field(
+        None,
+        description="Potential far away along endless axes, in the declared unit `potential`, where no face fixes it: "
+        "undisturbed ground, remote earth. Zero if left out.",
+        examples=[9.5, "283 K"],
     )
     layers: list[Layer] | None = Field(
         None,

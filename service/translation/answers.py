@@ -36,8 +36,8 @@ def read_tolerance(collector: Collector, accuracy: models.Accuracy | None, solut
 
 
 def units_shown(units: UnitSystem) -> dict[str, str]:
-    """The unit of each kind of quantity in the answer."""
-    return {kind.value: units.declared[kind] for kind in Kind}
+    """The unit of each kind of quantity in the answer; that of resistances stands where there are some."""
+    return {kind.value: units.declared[kind] for kind in Kind if kind is not Kind.RESISTANCE}
 
 
 def certificate(
@@ -110,7 +110,18 @@ def missed_accuracy(bound: float, tolerance: float, unit: str, where: str) -> li
 def problem_warnings(problem: ReadProblem, solution: Solution) -> list[Warning_]:
     """Remarks that hold for every answer about the problem."""
     warnings = []
-    if solution.level_pinned:
+    body = problem.body
+    if solution.depends_on_far_level and body.far_level is None:
+        unit = problem.units.declared[Kind.POTENTIAL]
+        warnings.append(
+            warning(
+                "far-level-assumed",
+                f"No face fixes the potential far away; it is taken as 0 {unit}, and the flows of pads depend on it. "
+                "Give it as `far_level`.",
+                "#/problem/body",
+            )
+        )
+    if solution.level_pinned and body.far_level is None:
         warnings.append(
             warning(
                 "level-pinned",

@@ -11,12 +11,14 @@ from service.core.problem import (
     Face,
     Film,
     FilmPad,
+    FluxPad,
     Held,
     HeldPad,
     Inflow,
     Insulated,
     Layer,
     Mixed,
+    MixedPad,
     axis_of,
 )
 from service.models import faces as models
@@ -94,12 +96,16 @@ class ConditionReader:
             case _:
                 return Insulated()
 
-    def _pad(self, pad: models.HeldPad | models.FilmPad, where: Rectangle, path: Path) -> HeldPad | FilmPad | None:
+    def _pad(
+        self, pad: models.HeldPad | models.FilmPad | models.FluxPad, where: Rectangle, path: Path
+    ) -> MixedPad | None:
         """A pad; None when its condition could not be read, which was then noted."""
         if isinstance(pad, models.FilmPad):
             coefficient = self._coefficient(pad.coefficient, (*path, "coefficient"))
             ambient = self.collector.read(Kind.POTENTIAL, pad.ambient, (*path, "ambient"))
             return FilmPad(where, coefficient, ambient, pad.name)
+        if isinstance(pad, models.FluxPad):
+            return self._flux_pad(pad, where, path)
         if pad.value is not None and pad.flow is not None:
             self.collector.add((*path, "flow"), "Give either `value` or `flow`, not both.", "one-of")
             return None
@@ -108,6 +114,17 @@ class ConditionReader:
         if pad.flow is not None:
             return HeldPad(where, None, self.collector.read(Kind.FLOW, pad.flow, (*path, "flow")), pad.name)
         self.collector.add((*path, "value"), "Give either `value` or `flow`.", "missing")
+        return None
+
+    def _flux_pad(self, pad: models.FluxPad, where: Rectangle, path: Path) -> FluxPad | None:
+        if pad.inflow is not None and pad.flow is not None:
+            self.collector.add((*path, "flow"), "Give either `inflow` or `flow`, not both.", "one-of")
+            return None
+        if pad.inflow is not None:
+            return FluxPad(where, self.collector.read(Kind.FLUX, pad.inflow, (*path, "inflow")), pad.name)
+        if pad.flow is not None:
+            return FluxPad(where, self.collector.read(Kind.FLOW, pad.flow, (*path, "flow")) / where.area, pad.name)
+        self.collector.add((*path, "inflow"), "Give either `inflow` or `flow`.", "missing")
         return None
 
     def _film_coefficient(self, film: models.FilmFace, path: Path) -> float:

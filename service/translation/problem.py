@@ -73,9 +73,11 @@ def read_problem(problem: models.Problem, settings: Settings, prefix: Path = ())
     material = read_material(collector, settings, problem.body)
     conditions, contents = _faces(collector, settings, problem, material)
     sources = _sources(collector, settings, problem.sources, material.extents)
+    far = problem.body.far_level
+    far_level = None if far is None else collector.read(Kind.POTENTIAL, far, ("body", "far_level"))
     collector.raise_if_any()
     try:
-        body = _body(material, conditions, sources)
+        body = replace(_body(material, conditions, sources), far_level=far_level)
     except errors.NotPhysical as error:
         issue = Issue(prefix + path_in_request(error, problem), error.message, "not-physical")
         raise RequestRefused((issue,)) from None
@@ -157,4 +159,4 @@ def path_in_request(error: errors.CoreError, problem: models.Problem) -> Path:
         return ("body", "conductivity_law", *path[1:])
     if path[:1] == ("conductivity",) and not isinstance(problem.body.conductivity, models.AxisConductivities):
         path = ("conductivity",)
-    return ("body", *path) if path[:1] in (("size",), ("conductivity",)) else path
+    return ("body", *path) if path[:1] in (("size",), ("conductivity",), ("far_level",)) else path
