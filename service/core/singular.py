@@ -2,6 +2,7 @@
 
 - Inside a face: where its data jump (flux like 1/r beside a held face, like ln r along an inflow or film face), and
   where the slope of a held face's data jumps (ln r).
+- On a side of a stack that is given an inflow: where two bonded layers meet that conduct unlike along it (ln r).
 - On an edge of two held faces: where their values differ (1/r).
 - On an edge of a held face with an inflow or film face that gives or takes a flow there (ln r).
 
@@ -14,15 +15,16 @@ Nonsmooth Domains, 1985, chapter 4, for the powers that occur; from memory).
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
-from itertools import combinations
+from itertools import combinations, pairwise
 
 import numpy as np
 from numpy.typing import NDArray
 
 from service.core.maps import FaceMap
-from service.core.problem import AXES, Body, Face, Film, Held, axes_along, axis_of, map_of
+from service.core.problem import AXES, Body, Face, Film, Held, Inflow, axes_along, axis_of, map_of
 
 FloatArray = NDArray[np.float64]
 
@@ -103,6 +105,8 @@ def has_no_finite_flux(body: Body, places: Sequence[FloatArray], shape: tuple[in
         if not on_face.any():
             continue
         found |= on_face & _jumps(body, face, places)
+        if axis != 2 and body.layers and isinstance(body.faces[face], Inflow):
+            found |= on_face & _between_unlike_layers(body, face, places)
         if isinstance(body.faces[face], Held):
             for other in body.present_faces:
                 if axis_of(other) != axis:
@@ -133,6 +137,18 @@ def _jumps(body: Body, face: Face, places: Sequence[FloatArray]) -> NDArray[np.b
         for slopes in data.slopes:
             found = found | _varies(slopes, float(np.abs(slopes).max()))
     return found
+
+
+def _between_unlike_layers(body: Body, face: Face, places: Sequence[FloatArray]) -> NDArray[np.bool_]:
+    """Whether an inflow meets a bonded border of two layers, in which it asks for unlike slopes along its axis."""
+    face_map, axis = map_of(body.faces[face]), axis_of(face)
+    assert face_map is not None
+    unlike = [
+        height
+        for height, (below, above) in zip(body.interfaces, pairwise(body.layers), strict=True)
+        if above.contact_below == math.inf and below.conductivity[axis] != above.conductivity[axis]
+    ]
+    return np.isin(places[2], unlike) & (face_map.highest != 0.0 or face_map.lowest != 0.0)
 
 
 def _edge_mismatch(body: Body, held: Face, other: Face, places: Sequence[FloatArray]) -> NDArray[np.bool_]:

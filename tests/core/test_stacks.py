@@ -269,6 +269,52 @@ def test_flow_goes_through_every_plane_between_insulated_sides() -> None:
         assert abs(total.value + 3.0 * PAD.area) <= total.error_bound + 1e-14
 
 
+def test_a_source_that_cuts_a_layer_leaves_places_on_contacts_where_they_are() -> None:
+    """Heights add up to another last digit from the parts of a layer; a place on top or on a contact has to stay."""
+    thickness, k = (
+        (0.14459540051783423, 0.012213731077624874, 246.49002151081527, 0.19573682877039314),
+        (0.2, 8e-5, 4.2),
+    )
+    layers = [
+        Layer(thickness[0], (k[0],) * 3),
+        Layer(thickness[1], (0.03, 0.03, k[1]), contact_below=10.0),
+        Layer(thickness[2], (k[2],) * 3, contact_below=1e-3),
+        Layer(thickness[3], (0.05, 0.05, 1.4e-4), contact_below=1e-2),
+    ]
+    box = BoxSource((188.0, 3050.0, 69.73647367221355), (648.0, 5273.0, 182.05460395258564), 2e-7)
+    body = Body.stack((838.0, 11963.0), layers, all_insulated(z_low=held(0.0), z_high=film(7.5, 1.0)), (box,))
+    solved = solve(body)
+    heights = np.array([*body.interfaces, body.size[2]])
+    points = np.column_stack([np.full(8, 400.0), np.full(8, 4000.0), np.concatenate([heights, heights - 1e-9])])
+    found = solved.field_at(points, tolerance=1e-9 * solved.span)
+    # Over 1e-9 below them the potential changes by flux over conductivity, which is about 1e-2 at the most.
+    np.testing.assert_allclose(found.potential[:4], found.potential[4:], rtol=0, atol=1e-8)
+
+
+def test_flux_has_no_value_where_an_inflow_meets_bonded_layers_that_conduct_unlike() -> None:
+    layers = [
+        Layer(0.3, (1.0, 1.0, 1.0)),
+        Layer(0.4, (5.0, 5.0, 1.0)),
+        Layer(0.2, (5.0, 5.0, 2.0)),
+        Layer(0.3, (2.0, 2.0, 2.0), contact_below=10.0),
+    ]
+    body = Body.stack(SECTION, layers, all_insulated(x_high=uniform_inflow(1.0), z_low=held(0.0)))
+    solved = solve(body)
+    unlike, alike, contact = body.interfaces
+    points = np.array([[1.0, 0.4, z] for z in (unlike, alike, contact, 0.1)])
+    flux = solved.field_at(points, tolerance=1e-9, with_flux=True).flux
+    assert flux is not None
+    assert list(np.isnan(flux).all(axis=0)) == [True, False, False, False]
+    # Square to the side it is the inflow itself, and beside the line the flow along it grows as ln r, by equal steps.
+    np.testing.assert_allclose(flux[0, 1:], -1.0, rtol=1e-9)
+    near = np.array([[1.0 - r, 0.4, unlike] for r in (1e-3, 1e-5, 1e-7)])
+    across = solved.field_at(near, tolerance=1e-9, with_flux=True).flux
+    assert across is not None
+    first, second = np.diff(across[2])
+    assert abs(first) > 0.1
+    assert second == pytest.approx(first, rel=2e-2)
+
+
 def test_very_poor_contact_makes_two_bodies() -> None:
     """With a contact of 1e-12 the layers answer as if each were alone with an insulated face."""
     faces = all_insulated(x_low=held(1.0), z_low=film(2.0, 0.0), z_high=Inflow(on_pad(3.0)))

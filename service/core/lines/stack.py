@@ -11,7 +11,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from itertools import pairwise
 
@@ -30,6 +30,7 @@ class StackLine(Line):
     """Layers from 0 up. Make one with `of`.
 
     thickness: of each layer, in the caller's unit; the heights of borders would not keep the digits of a thin one.
+    borders: heights of the borders where the line is another one divided, whose own it keeps to the last digit.
     conductivity, capacity: k and c of each layer. contacts: conductance at each inner border, infinite if bonded.
     film_low, film_high are coefficients in the caller's units and scale is 1: slopes are k Z', the flow per area
     towards the low end, which is continuous, and an inflow drives with its own amount. Only distances that waves
@@ -40,6 +41,7 @@ class StackLine(Line):
     conductivity: tuple[float, ...] = ()
     capacity: tuple[float, ...] = ()
     contacts: tuple[float, ...] = ()
+    borders: tuple[float, ...] = ()
 
     @classmethod
     def of(
@@ -66,6 +68,8 @@ class StackLine(Line):
     @cached_property
     def heights(self) -> FloatArray:
         """Heights of the borders, from 0 to the top, shape (n_layers + 1,)."""
+        if self.borders:
+            return np.array(self.borders)
         return np.array([math.fsum(self.thickness[:count]) for count in range(len(self.thickness) + 1)])
 
     @cached_property
@@ -203,6 +207,7 @@ class StackLine(Line):
         thickness: list[float] = []
         layers: list[int] = []
         contacts: list[float] = []
+        borders: list[float] = [0.0]
         for layer, whole in enumerate(self.thickness):
             bottom, top = self.heights[layer : layer + 2]
             cuts = np.unique(inner[(inner > bottom) & (inner < top)])
@@ -210,7 +215,8 @@ class StackLine(Line):
             thickness += [float(part) for part in parts]
             layers += [layer] * parts.size
             contacts += [math.inf] * (parts.size - 1) + list(self.contacts[layer : layer + 1])
-        return StackLine.of(
+            borders += [*(float(cut) for cut in cuts), float(top)]
+        line = StackLine.of(
             thickness,
             [self.conductivity[layer] for layer in layers],
             [self.capacity[layer] for layer in layers],
@@ -218,6 +224,8 @@ class StackLine(Line):
             self.film_low,
             self.film_high,
         )
+        # Added up from the parts they would differ in the last digit, and a place on a contact change its side.
+        return replace(line, length=self.length, borders=tuple(borders))
 
     def layer_of(self, coordinates: FloatArray) -> NDArray[np.intp]:
         """Which layer each place is in; a border belongs to the layer below it."""
