@@ -76,6 +76,27 @@ def factor_between(unit_text: str, target_unit: str) -> Fraction | None:
     return Fraction(_REGISTRY.Quantity(Fraction(1), unit).to(target).magnitude)
 
 
+def inverse_of(unit: str) -> str:
+    """One over a readable unit, in plain words where there are some: W/K for K/W, S for ohm, 1/kohm for kohm."""
+    if unit == "ohm":
+        return "S"
+    if unit.count("/") == 1:
+        dividend, divisor = (part.strip() for part in unit.split("/"))
+        turned = f"{_without_brackets(divisor)}/{_in_brackets(_without_brackets(dividend))}"
+        if dividend != "1" and factor_between(turned, f"1/({unit})") == 1:
+            return turned
+    return f"1/{_in_brackets(unit)}"
+
+
+def _without_brackets(unit: str) -> str:
+    is_bracketed = unit.startswith("(") and unit.endswith(")") and unit.count("(") == 1
+    return unit[1:-1] if is_bracketed else unit
+
+
+def _in_brackets(unit: str) -> str:
+    return f"({unit})" if any(sign in unit for sign in "/* ") else unit
+
+
 def check_declared(unit: str, target: Target) -> None:
     """Raise UnitError unless quantities of the target's kind can be declared to be in this unit."""
     _check_unit_text(unit)

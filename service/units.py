@@ -33,6 +33,7 @@ class Kind(StrEnum):
     FLUX = "flux"
     DENSITY = "density"
     FLOW = "flow"
+    RESISTANCE = "resistance"
 
 
 @dataclass(frozen=True)
@@ -43,7 +44,9 @@ class Physics:
     defaults: Mapping[Kind, str]
 
 
-def _names(potential: str, conductivity: str, film: str, flux: str, density: str, flow: str) -> dict[Kind, str]:
+def _names(
+    potential: str, conductivity: str, film: str, flux: str, density: str, flow: str, resistance: str
+) -> dict[Kind, str]:
     return {
         Kind.LENGTH: "a length",
         Kind.POTENTIAL: potential,
@@ -53,10 +56,13 @@ def _names(potential: str, conductivity: str, film: str, flux: str, density: str
         Kind.FLUX: flux,
         Kind.DENSITY: density,
         Kind.FLOW: flow,
+        Kind.RESISTANCE: resistance,
     }
 
 
-def _units(potential: str, conductivity: str, film: str, flux: str, density: str, flow: str) -> dict[Kind, str]:
+def _units(
+    potential: str, conductivity: str, film: str, flux: str, density: str, flow: str, resistance: str
+) -> dict[Kind, str]:
     return {
         Kind.LENGTH: "m",
         Kind.POTENTIAL: potential,
@@ -65,6 +71,7 @@ def _units(potential: str, conductivity: str, film: str, flux: str, density: str
         Kind.FLUX: flux,
         Kind.DENSITY: density,
         Kind.FLOW: flow,
+        Kind.RESISTANCE: resistance,
     }
 
 
@@ -77,8 +84,9 @@ PHYSICS: dict[str, Physics] = {
             "a heat flux",
             "a heat generation per volume",
             "a heat flow",
+            "a thermal resistance",
         ),
-        _units("degC", "W/(m K)", "W/(m^2 K)", "W/m^2", "W/m^3", "W"),
+        _units("degC", "W/(m K)", "W/(m^2 K)", "W/m^2", "W/m^3", "W", "K/W"),
     ),
     "electric_potential": Physics(
         _names(
@@ -88,8 +96,9 @@ PHYSICS: dict[str, Physics] = {
             "a current density",
             "a current source per volume",
             "a current",
+            "a resistance",
         ),
-        _units("V", "S/m", "S/m^2", "A/m^2", "A/m^3", "A"),
+        _units("V", "S/m", "S/m^2", "A/m^2", "A/m^3", "A", "ohm"),
     ),
     "concentration": Physics(
         _names(
@@ -99,8 +108,9 @@ PHYSICS: dict[str, Physics] = {
             "a diffusive flux",
             "a generation rate per volume",
             "a rate of transport",
+            "a resistance to transport",
         ),
-        _units("mol/m^3", "m^2/s", "m/s", "mol/(m^2 s)", "mol/(m^3 s)", "mol/s"),
+        _units("mol/m^3", "m^2/s", "m/s", "mol/(m^2 s)", "mol/(m^3 s)", "mol/s", "s/m^3"),
     ),
     "hydraulic_head": Physics(
         _names(
@@ -110,13 +120,14 @@ PHYSICS: dict[str, Physics] = {
             "a seepage velocity",
             "a recharge per volume",
             "a discharge",
+            "a resistance to seepage",
         ),
-        _units("m", "m/s", "1/s", "m/s", "1/s", "m^3/s"),
+        _units("m", "m/s", "1/s", "m/s", "1/s", "m^3/s", "s/m^2"),
     ),
 }
 
 # A concentration may count mass instead of amount; its flows then do too.
-_MASS_CONCENTRATION = _units("kg/m^3", "m^2/s", "m/s", "kg/(m^2 s)", "kg/(m^3 s)", "kg/s")
+_MASS_CONCENTRATION = _units("kg/m^3", "m^2/s", "m/s", "kg/(m^2 s)", "kg/(m^3 s)", "kg/s", "s/m^3")
 
 
 @dataclass(frozen=True)
@@ -169,6 +180,7 @@ class UnitSystem:
             Kind.FLUX: f"{flow}/{length}^2",
             Kind.DENSITY: f"{flow}/{length}^3",
             Kind.FLOW: flow,
+            Kind.RESISTANCE: f"{potential}/{flow}",
         }
         factors = {kind: factor_between(self.declared[kind], unit) for kind, unit in implied.items()}
         assert all(factor is not None for factor in factors.values())

@@ -199,7 +199,10 @@ class Accuracy(Model):
     """How far off any value may be: as a difference of the potential, or as part of the span of the data."""
 
     absolute: Quantity | None = Field(
-        None, description="Largest error, a difference of the potential.", examples=["1e-6 K"]
+        None,
+        description="Largest error, a difference of the potential; of resistances, that of the rise for a flow of one "
+        "declared unit.",
+        examples=["1e-6 K"],
     )
     relative: Number | None = Field(
         None, ge=1e-14, le=0.1, description="Largest error as part of the span of the data.", examples=[1e-9]

@@ -13,8 +13,8 @@ Matrix = list[list[float]]
 class ResistanceUnits(Units):
     """The unit of each kind of quantity in the answer, those of resistances among them."""
 
-    resistance: str = Field(description="Unit of resistances: `potential_difference` over `flow`.", examples=["K/W"])
-    conductance: str = Field(description="Unit of conductances: `flow` over `potential_difference`.", examples=["W/K"])
+    resistance: str = Field(description="Unit of resistances.", examples=["K/W"])
+    conductance: str = Field(description="Unit of conductances: one over that of resistances.", examples=["W/K"])
 
 
 class PadOfMatrix(PartAnswer):

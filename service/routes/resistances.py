@@ -34,8 +34,9 @@ _CALL = Call(read_resistances, check_cost, answer_resistances, MATRIX_FORMS)
 _TEXT_FORMS = {
     CSV_FORM: "The matrix of mean rises as a table (RFC 4180): a row for each pad that is read, a column for each "
     "that is fed.",
-    NETLIST_FORM: "The network as one resistor a line, its name beginning with R, two nodes and a value in the unit "
-    "that the comment lines name; these begin with an asterisk. Pads are numbered from 1; node 0 is the environment.",
+    NETLIST_FORM: "The network as one resistor a line, its name beginning with R, two nodes and a value, always in "
+    "the coherent SI unit of potential per flow, such as ohm or K/W, which the comment lines name; these begin with an "
+    "asterisk. Pads are numbered from 1; node 0 is the environment.",
 }
 
 

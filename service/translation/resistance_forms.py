@@ -2,7 +2,8 @@
 
 The table is CSV (RFC 4180). The list has one element a line, its name beginning with R, two nodes and a value, and
 comment lines that begin with an asterisk, which is how circuit solvers have long shared networks; node 0 is the
-environment.
+environment. Such a solver takes its numbers for ohms, so that values are in the coherent SI unit whatever is declared:
+ohms for volts and amperes, K/W for temperatures and watts.
 """
 
 from __future__ import annotations
@@ -14,6 +15,8 @@ from typing import Any
 import numpy as np
 
 from service.core.network import resistance
+from service.unit_text import factor_between
+from service.units import PHYSICS, Kind
 
 # Characters that end a line somewhere would end a comment.
 _CONTROL = dict.fromkeys((*range(32), 127, 0x85, 0x2028, 0x2029), " ")
@@ -50,11 +53,14 @@ def matrix_csv(answer: dict[str, Any]) -> bytes:
 
 def netlist(answer: dict[str, Any]) -> bytes:
     """Resistors between the pads, numbered from 1, and from each to node 0, the environment."""
-    units, network = answer["units"], answer["network"]
+    network = answer["network"]
+    unit = PHYSICS[answer["potential"]].defaults[Kind.RESISTANCE]
+    factor = factor_between(answer["units"]["resistance"], unit)
+    assert factor is not None
     lines = [
         "* Resistors equivalent to a body as seen from its pads",
         f"* problem {answer['problem_id']}",
-        f"* values in {units['resistance']}",
+        f"* values in {unit}, the coherent SI unit of potential per flow",
         "* node 0: the environment, every held value and ambient",
     ]
     for number, pad in enumerate(answer["pads"], start=1):
@@ -62,11 +68,12 @@ def netlist(answer: dict[str, Any]) -> bytes:
     if network is None:
         lines.append("* no network: the pads are too much alike for the accuracy asked for")
     else:
-        lines += _resistors(network)
+        lines += _resistors(network, float(factor))
     return ("\n".join(lines) + "\n").encode()
 
 
-def _resistors(network: dict[str, Any]) -> list[str]:
+def _resistors(network: dict[str, Any], factor: float) -> list[str]:
+    """Lines of resistors. factor: of the unit of the list to that of the answer."""
     count = len(network["to_environment"])
     pairs = [(i, j) for i in range(count) for j in range(i + 1, count)]
     conductances = [network["between"][pair] for pair in pairs] + list(network["to_environment"])
@@ -80,7 +87,7 @@ def _resistors(network: dict[str, Any]) -> list[str]:
             continue
         value, error = found
         largest = max(largest, error / abs(value))
-        lines.append(f"R{first}_{second} {first} {second} {value!r}")
+        lines.append(f"R{first}_{second} {first} {second} {factor * value!r}")
     head = [f"* no value is further off than {largest:.1e} of itself"]
     if network["negative"]:
         head.append(f"* {network['negative']} of them are negative: part of an exact equivalent all the same")

@@ -29,6 +29,7 @@ from service.translation.places import PlaceReader
 from service.translation.problem import ReadProblem
 from service.translation.resistance_forms import count_negative
 from service.translation.resistance_parts import Resistances, Rises
+from service.unit_text import inverse_of
 from service.units import Kind, UnitSystem
 
 # Multiplications of one entry between faces that are not parallel, and of one search for a peak, as measured.
@@ -80,7 +81,8 @@ def read_resistances(
         return ResistancesWanted(tuple(pads), ask.peaks, True, relative or USUAL_OF_FLOWS)
     check_fed(problem, pads)
     if absolute is not None:
-        tolerance = absolute / _resistance_unit(problem.units)
+        # Of the rise for a flow of one in its declared unit.
+        tolerance = absolute / problem.units.read(Kind.FLOW, 1.0)
     else:
         tolerance = (relative or USUAL_ACCURACY) * span_of_rises(problem, pads)
     return ResistancesWanted(tuple(pads), ask.peaks, False, tolerance)
@@ -158,19 +160,12 @@ def _rises(rises: Rises | None, unit: float) -> dict[str, Any] | None:
 
 def _resistance_unit(units: UnitSystem) -> float:
     """A resistance of one in the solver's units, in the declared ones."""
-    return 1.0 / units.write(Kind.FLOW, 1.0)
+    return units.write(Kind.RESISTANCE, 1.0)
 
 
 def _units(units: UnitSystem) -> dict[str, str]:
-    potential, flow = units.declared[Kind.POTENTIAL_DIFFERENCE], units.declared[Kind.FLOW]
-    return answers.units_shown(units) | {
-        "resistance": f"{potential}/{_in_brackets(flow)}",
-        "conductance": f"{flow}/{_in_brackets(potential)}",
-    }
-
-
-def _in_brackets(unit: str) -> str:
-    return f"({unit})" if any(sign in unit for sign in "/* ") else unit
+    resistance = units.declared[Kind.RESISTANCE]
+    return answers.units_shown(units) | {"resistance": resistance, "conductance": inverse_of(resistance)}
 
 
 def _certificate(found: Resistances, known: Rises, asked: float, unit: float) -> dict[str, Any]:
@@ -188,7 +183,7 @@ def _warnings(found: Resistances, known: Rises, asked: float, units: UnitSystem)
     warnings = []
     largest = float(known.bound.max())
     if largest > asked:
-        unit, name = _resistance_unit(units), _units(units)["resistance"]
+        unit, name = _resistance_unit(units), units.declared[Kind.RESISTANCE]
         message = (
             f"The largest bound of a resistance is {unit * largest:.2g} {name}, wider than the accuracy asked for, "
             f"{unit * asked:.2g} {name}."

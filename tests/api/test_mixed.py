@@ -115,9 +115,10 @@ async def test_resistance_between_held_pads_is_level_over_flow(client: httpx.Asy
     found = await ask(client, "resistances", stub(FEED, RETURN))
     level = totals["patches"][0]["potential"]
     pair, bound = found["pairs"]["value"][0][1], found["pairs"]["error_bound"][0][1]
-    assert pair == pytest.approx(level["value"] / 1200, abs=bound + level["error_bound"] / 1200)
+    # Levels are in millivolts.
+    assert pair == pytest.approx(1e-3 * level["value"] / 1200, abs=bound + 1e-3 * level["error_bound"] / 1200)
     assert bound < 1e-4 * pair
-    assert found["units"]["resistance"] == "mV/A"
+    assert found["units"]["resistance"] == "ohm"
     assert found["network"]["to_environment"] == [0, 0]
     assert 1 / found["network"]["between"][0][1] == pytest.approx(pair, rel=1e-3)
     assert found["mean"] is None
@@ -159,8 +160,9 @@ async def test_held_pads_with_a_way_out_have_rises_and_a_network(client: httpx.A
     # The level of the feed, the return held at zero: what is left of its rise.
     totals = await ask(client, "flux-totals", problem, {"patches": [{"face": "z_high", "patch": 0}]})
     level = totals["patches"][0]["potential"]
-    by_matrix = 1200 * (mean[0, 0] - mean[0, 1] ** 2 / mean[1, 1])
-    slack = 1200 * 4 * np.max(found["mean"]["error_bound"]) + level["error_bound"]
+    millivolts = 1200e3
+    by_matrix = millivolts * (mean[0, 0] - mean[0, 1] ** 2 / mean[1, 1])
+    slack = millivolts * 4 * np.max(found["mean"]["error_bound"]) + level["error_bound"]
     assert by_matrix == pytest.approx(level["value"], abs=slack)
 
 
@@ -177,8 +179,8 @@ async def test_pads_on_other_faces_are_fed_beside_held_ones(client: httpx.AsyncC
     fields = changed(problem, "faces/z_low", {"condition": "flux", "inflow": {"map": "patches", "background": 0, "patches": [
         {"x": [5, 25], "y": [10, 50], "flow": 1}]}})  # fmt: skip
     mean = (await ask(client, "fields", fields, {"means": [{"face": "z_low", "patch": 0}]}))["means"][0]
-    slack = found["mean"]["error_bound"][0][0] + mean["error_bound"]
-    assert found["mean"]["value"][0][0] == pytest.approx(mean["value"], abs=slack)
+    slack = found["mean"]["error_bound"][0][0] + 1e-3 * mean["error_bound"]
+    assert found["mean"]["value"][0][0] == pytest.approx(1e-3 * mean["value"], abs=slack)
 
 
 async def test_film_pads_of_the_background_s_coefficient_are_the_plain_face(client: httpx.AsyncClient) -> None:

@@ -204,19 +204,61 @@ async def test_accuracy_is_of_the_rise_for_one_unit_of_flow(client: httpx.AsyncC
     problem = plate() | {"units": {"length": "mm", "flow": "mW"}}
     content = {"problem": problem, "accuracy": {"absolute": "1e-9 K"}}
     found = (await client.post("/v1/resistances", json=content)).json()
-    assert found["units"]["resistance"] == "K/mW"
-    assert found["certificate"]["accuracy_asked"] == pytest.approx(1e-9, rel=1e-12)
+    assert found["units"]["resistance"] == "K/W"
+    assert found["certificate"]["accuracy_asked"] == pytest.approx(1e-6, rel=1e-12)
+
+
+@pytest.mark.parametrize(
+    ("declared", "inverse", "factor"), [("K/mW", "mW/K", 1e-3), ("delta_degF hour/Btu", "Btu/(delta_degF hour)", None)]
+)
+async def test_unit_of_resistances_can_be_declared(
+    client: httpx.AsyncClient, declared: str, inverse: str, factor: float | None
+) -> None:
     whole = await ask(client, plate())
-    assert np.array(found["mean"]["value"]) == pytest.approx(np.array(whole["mean"]["value"]) / 1000, rel=1e-12)
+    found = await ask(client, plate() | {"units": {"length": "mm", "resistance": declared}})
+    assert (found["units"]["resistance"], found["units"]["conductance"]) == (declared, inverse)
+    # A Btu is 1055.056 J.
+    factor = factor or 1.8 * 1055.056 / 3600
+    for key in ("value", "error_bound"):
+        assert np.array(found["mean"][key]) == pytest.approx(factor * np.array(whole["mean"][key]), rel=1e-9)
+    between = np.array(found["network"]["between"])
+    assert between == pytest.approx(np.array(whole["network"]["between"]) / factor, rel=1e-9)
+    texts = [
+        (
+            await client.post("/v1/resistances", json={"problem": problem}, headers={"Accept": "text/plain"})
+        ).text.splitlines()[2:]
+        for problem in (plate(), plate() | {"units": {"length": "mm", "resistance": declared}})
+    ]
+    assert texts[0][0] == texts[1][0] == "* values in K/W, the coherent SI unit of potential per flow"
+    ours, theirs = ([float(line.split()[3]) for line in text if line[0] == "R"] for text in texts)
+    assert ours == pytest.approx(theirs, rel=1e-12)
 
 
-async def test_unit_of_a_compound_flow_is_in_brackets(client: httpx.AsyncClient) -> None:
+async def test_volts_in_thousandths_leave_resistances_in_ohms(client: httpx.AsyncClient) -> None:
+    """A rod between a pad that is its whole end and a held end: length over conductivity times area, by hand."""
+    problem = plate() | {"potential": "electric_potential", "units": {"length": "mm", "potential": "mV", "flow": "kA"}}
+    problem["body"] = problem["body"] | {"conductivity": "56 MS/m"}
+    problem["faces"] = problem["faces"] | {"z_low": {"condition": "held", "value": 3}, "z_high": INSULATED}
+    question = {"problem": problem, "evaluate": {"pads": [{"face": "z_high"}]}}
+    by_hand = 4e-3 / (56e6 * 30e-3 * 20e-3)
+    found = await ask(client, problem, **question["evaluate"])
+    assert (found["units"]["resistance"], found["units"]["conductance"]) == ("ohm", "S")
+    assert found["mean"]["value"][0][0] == pytest.approx(by_hand, rel=1e-9)
+    assert found["network"]["to_environment"][0] == pytest.approx(1 / by_hand, rel=1e-9)
+    table = await client.post("/v1/resistances", json=question, headers={"Accept": "text/csv"})
+    assert table.text.splitlines()[0] == "mean rise per unit flow [ohm],z_high"
+    listed = await client.post("/v1/resistances", json=question, headers={"Accept": "text/plain"})
+    assert "* values in ohm, the coherent SI unit of potential per flow" in listed.text
+    assert float(listed.text.splitlines()[-1].split()[3]) == pytest.approx(by_hand, rel=1e-9)
+
+
+async def test_resistance_of_a_concentration_is_a_time_over_a_volume(client: httpx.AsyncClient) -> None:
     problem = plate() | {"potential": "concentration", "units": {"length": "mm"}}
     problem["body"] = problem["body"] | {"conductivity": 1e-9}
     problem["faces"] = problem["faces"] | {"z_low": {"condition": "held", "value": 0}, "z_high": INSULATED}
     found = await ask(client, problem, pads=[{"face": "z_high", "x": [1, 2], "y": [1, 2]}])
-    assert found["units"]["resistance"] == "mol/m^3/(mol/s)"
-    assert found["units"]["conductance"] == "mol/s/(mol/m^3)"
+    assert found["units"]["resistance"] == "s/m^3"
+    assert found["units"]["conductance"] == "m^3/s"
 
 
 async def test_pads_too_much_alike_have_a_matrix_and_no_network(client: httpx.AsyncClient) -> None:

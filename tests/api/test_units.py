@@ -10,7 +10,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from service.unit_text import UnitError
+from service.unit_text import UnitError, inverse_of
 from service.units import PHYSICS, Kind, UnitSystem, declare
 
 
@@ -199,3 +199,22 @@ def test_every_wrong_declared_unit_is_named() -> None:
     system, refused = declare("temperature", {Kind.LENGTH: "s", Kind.FLUX: "W/m^2", Kind.FLOW: "!"})
     assert set(refused) == {Kind.LENGTH, Kind.FLOW}
     assert system.declared[Kind.LENGTH] == "m"
+
+
+@pytest.mark.parametrize(
+    ("unit", "inverse"),
+    [
+        ("K/W", "W/K"),
+        ("mV/A", "A/mV"),
+        ("ohm", "S"),
+        ("kohm", "1/kohm"),
+        ("1/S", "1/(1/S)"),
+        ("s/m^3", "m^3/s"),
+        ("K/(J/s)", "1/(K/(J/s))"),
+        ("K s/J", "J/(K s)"),
+        ("m/(m^3/s)", "1/(m/(m^3/s))"),
+        ("(m s)/m^3", "m^3/(m s)"),
+    ],
+)
+def test_inverse_of_a_unit_is_its_inverse_in_plain_words(unit: str, inverse: str) -> None:
+    assert inverse_of(unit) == inverse
