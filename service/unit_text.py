@@ -36,6 +36,9 @@ _OFFSET_UNITS = ("degC", "degF")
 _REGISTRY: pint.UnitRegistry[Fraction] = pint.UnitRegistry(non_int_type=Fraction)
 
 
+_ZERO = Fraction(0)
+
+
 class UnitError(ValueError):
     """A text that is no quantity, or one of another dimension. The message is a sentence for the client."""
 
@@ -60,7 +63,7 @@ def convert(text: str, target: Target) -> float:
     else:
         factor = factor_between(unit, target.unit)
         if factor is None:
-            raise _refusal(unit, target)
+            raise _refusal(unit, target, number)
         exact = number * factor
     if exact and not SMALLEST_NUMBER <= abs(exact) <= LARGEST_NUMBER:
         raise UnitError(f"The quantity in {target.unit} has to be {RANGE_IN_WORDS}.")
@@ -177,11 +180,16 @@ def _convert_level(number: Fraction, unit_text: str, target: Target) -> Fraction
     return Fraction(_REGISTRY.Quantity(number, unit).to(wanted).magnitude)
 
 
-def _refusal(unit: str, target: Target) -> UnitError:
+def _refusal(unit: str, target: Target, number: Fraction = _ZERO) -> UnitError:
+    """Why a unit is none of the target's kind. number: how many of it there are, 0 if that is not known."""
     wanted = f"wanted is {target.meaning} such as {target.unit}"
     if _parse(_as_difference(unit)) is None:
         return UnitError(f'The unit "{unit}" is not known; {wanted}.')
     what = target.meaning.split(" ", 1)[1]
+    inverse = factor_between(f"1/({unit})", target.unit)
+    if inverse is not None and SMALLEST_NUMBER <= abs(number) <= LARGEST_NUMBER:
+        proper = f"{float(inverse / number):.12g} {target.unit}"
+        return UnitError(f'The unit "{unit}" measures one over {target.meaning}; write {proper} instead.')
     return UnitError(f'The unit "{unit}" does not measure {what}; {wanted}.{_bracket_hint(unit, target)}')
 
 

@@ -11,6 +11,7 @@ K), a difference and anything per kelvin never does.
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 from enum import StrEnum
@@ -19,7 +20,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from service.unit_text import Target, UnitError, check_declared, convert, factor_between, is_same_kind
+from service.unit_text import Target, UnitError, check_declared, convert, factor_between, inverse_of, is_same_kind
 
 
 class Kind(StrEnum):
@@ -148,6 +149,17 @@ class UnitSystem:
         if isinstance(value, str):
             value = convert(value, self._targets[kind])
         return value if kind in _CARRIED_OVER else value * self._to_solver[kind]
+
+    def read_resistance_of_area(self, value: float | str) -> float:
+        """The film coefficient or contact conductance, in the solver's units, of a resistance times area.
+
+        A bare number is in one over the declared unit of film coefficients; 0 reads as infinity. Raises UnitError like
+        `read`.
+        """
+        if isinstance(value, str):
+            unit = inverse_of(self.declared[Kind.FILM_COEFFICIENT])
+            value = convert(value, Target(unit, "a resistance times area", is_level=False))
+        return self.read(Kind.FILM_COEFFICIENT, 1.0 / value) if value else math.inf
 
     def write(self, kind: Kind, value: float) -> float:
         """A number of the solver's set in the declared unit."""

@@ -132,6 +132,12 @@ class Layer(Model):
         "declared unit `film_coefficient`; bonded perfectly if left out. The first layer has none.",
         examples=["25 kW/(m^2 K)"],
     )
+    contact_resistance_below: Quantity | None = Field(
+        None,
+        description="In place of it the contact resistance, times area: one over the conductance, in one over the "
+        "declared unit `film_coefficient`; 0 where the layers are bonded perfectly.",
+        examples=["40 mm^2 K/W", 4e-5],
+    )
     generation: Quantity | None = Field(
         None,
         description="Generation per volume in the whole layer, in the declared unit `density`; none if left out.",
@@ -154,7 +160,7 @@ class LinearLaw(Model):
 
 
 class TableLaw(Model):
-    """The conductivity is its given value times a factor, linear between the entries of a table."""
+    """The conductivity is linear between the entries of a table, of its values or of factors on the given one."""
 
     law: Literal["table"] = Field(description="Which kind of law this is.")
     potential: list[Quantity] = Field(
@@ -164,11 +170,21 @@ class TableLaw(Model):
         "potential in the body.",
         examples=[[20, 400, 1600]],
     )
-    factor: list[Number] = Field(
+    factor: list[Number] | None = Field(
+        None,
         min_length=2,
         max_length=MOST_ENTRIES,
-        description="Factor on the conductivity at each, greater than zero.",
+        description="Factor on the body's conductivity at each, greater than zero; or give `conductivity`.",
         examples=[[1.0, 0.86, 0.71]],
+    )
+    conductivity: list[Quantity] | None = Field(
+        None,
+        min_length=2,
+        max_length=MOST_ENTRIES,
+        description="Conductivity itself at each, greater than zero, in the declared unit `conductivity`; or give "
+        "`factor`. The body's own conductivity may then be left out. A body that conducts differently along its axes "
+        "has these values along x, and those along y and z in proportion.",
+        examples=[[1.9, 1.63, 1.35]],
     )
 
 
@@ -184,7 +200,8 @@ class Body(Model):
     )
     conductivity: Conductivity | None = Field(
         None,
-        description="Conductivity, in the declared unit `conductivity`: one value, or one along each axis.",
+        description="Conductivity, in the declared unit `conductivity`: one value, or one along each axis. It may be "
+        "left out where the conductivity law is a table of conductivities.",
         examples=[{"x": 95, "y": 95, "z": 130}, 95],
     )
     conductivity_law: Annotated[LinearLaw | TableLaw, Field(discriminator="law")] | None = Field(

@@ -51,6 +51,19 @@ class Collector:
             return UNREAD
         return number
 
+    def read_resistance_of_area(self, value: float | str, path: Path, what: str) -> float:
+        """The conductance per area of a resistance times area, which must not be negative; infinite for zero."""
+        try:
+            number = self.units.read_resistance_of_area(value)
+        except UnitError as error:
+            self.add(path, str(error), "unit")
+            return UNREAD
+        if number < 0:
+            shown = value.strip() if isinstance(value, str) else f"{value:g}"
+            self.add(path, f"{what} is {shown}; it must not be negative.", "negative")
+            return UNREAD
+        return number
+
     def read_interval(self, interval: Interval, extent: AxisExtent, path: Path) -> tuple[float, float]:
         """From and to along an axis of the body; "begin" and "end" are its sides."""
         first, second = interval

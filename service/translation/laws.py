@@ -16,8 +16,13 @@ STEFAN_BOLTZMANN = 5.670374419e-8
 _PATH: Path = ("body", "conductivity_law")
 
 
-def read_law(collector: Collector, law: models.LinearLaw | models.TableLaw | None) -> ConductivityLaw | None:
-    """The law of a body; None where there is none or it could not be read, which is then noted."""
+def read_law(
+    collector: Collector, law: models.LinearLaw | models.TableLaw | None, along_x: float
+) -> ConductivityLaw | None:
+    """The law of a body; None where there is none or it could not be read, which is then noted.
+
+    along_x: the body's conductivity along x, to which conductivities in a table are referred.
+    """
     noted = len(collector.issues)
     try:
         match law:
@@ -31,10 +36,33 @@ def read_law(collector: Collector, law: models.LinearLaw | models.TableLaw | Non
                     collector.read(Kind.POTENTIAL, value, (*_PATH, "potential", index))
                     for index, value in enumerate(law.potential)
                 ]
-                return None if len(collector.issues) > noted else ConductivityLaw.table(potentials, law.factor)
+                factors = _factors(collector, law, along_x)
+                return None if len(collector.issues) > noted else ConductivityLaw.table(potentials, factors)
     except NotPhysical as error:
         collector.add((*_PATH, *error.field[1:]), error.message, "not-physical")
         return None
+
+
+def _factors(collector: Collector, law: models.TableLaw, along_x: float) -> list[float]:
+    """Factors of a table; where some could not be read that is noted."""
+    if law.conductivity is not None and law.factor is not None:
+        collector.add((*_PATH, "conductivity"), "Give either `factor` or `conductivity`, not both.", "one-of")
+        return []
+    if law.conductivity is None:
+        if law.factor is None:
+            collector.add((*_PATH, "factor"), "Give either `factor` or `conductivity`.", "missing")
+        return law.factor or []
+    if len(law.conductivity) != len(law.potential):
+        detail = (
+            f"There are {len(law.conductivity)} conductivities and {len(law.potential)} potentials; one is wanted at "
+            "each potential."
+        )
+        collector.add((*_PATH, "conductivity"), detail, "shape")
+    values = [
+        collector.read_positive(Kind.CONDUCTIVITY, value, (*_PATH, "conductivity", index), "The conductivity")
+        for index, value in enumerate(law.conductivity)
+    ]
+    return [value / along_x for value in values]
 
 
 def read_radiation(collector: Collector, emissivity: float | None, path: Path) -> Radiation | None:

@@ -160,9 +160,10 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
         if passed is None:
             flow = _flow(problem.units, solution, pad, tolerance)
         else:
-            flow = flow_of(problem.units, passed)
+            of_pad, where = flow_of(problem.units, passed), f"#/pads/{index}/flow"
             assert of_flows is not None
-            warnings += answers.missed_accuracy(flow["error_bound"], of_flows, units[Kind.FLOW], f"#/pads/{index}/flow")
+            warnings += answers.missed_accuracy(of_pad["error_bound"], of_flows, units[Kind.FLOW], where)
+            flow = {**of_pad}
         found.append(
             pad.described()
             | {

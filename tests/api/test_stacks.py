@@ -69,6 +69,23 @@ async def test_layers_are_resistances_in_a_row_under_a_uniform_flux(client: http
         assert point["flux"]["z"] == pytest.approx(-flux, abs=point["flux_error_bound"] + 1e-12 * flux)
 
 
+@pytest.mark.parametrize("resistance", ["5 mm^2 K/W", 5e-6, "5e-6 (m^2 K)/W"])
+async def test_contact_resistance_is_one_over_a_conductance(client: httpx.AsyncClient, resistance: str | float) -> None:
+    points = [{"at": [8, 6.5, 3.5]}]
+    solder = {key: value for key, value in LAYERS[1].items() if key != "contact_conductance_below"}
+    given = changed(plate(), "body/layers/1", solder | {"contact_resistance_below": resistance})
+    (one,) = (await ask(client, plate(), points=points))["points"]
+    (other,) = (await ask(client, given, points=points))["points"]
+    assert one["potential"] == pytest.approx(other["potential"], rel=1e-13)
+
+
+async def test_contact_resistance_of_zero_is_a_perfect_bond(client: httpx.AsyncClient) -> None:
+    asked = [{"interface": 2, "at": [[8, 6.5]]}]
+    bonded = changed(plate(), "body/layers/2/contact_resistance_below", 0)
+    one, other = (await ask(client, plate(), interfaces=asked), await ask(client, bonded, interfaces=asked))
+    assert one["interfaces"] == other["interfaces"]
+
+
 async def test_interface_is_seen_from_both_sides(client: httpx.AsyncClient) -> None:
     at = [[8, 6.5], [20, 15]]
     asked = [{"interface": "base/solder", "at": at, "name": "die bond"}, {"interface": 2, "at": at}]
@@ -195,14 +212,18 @@ TABLE = [
     wrong("thickness of nothing", "body/layers/1/thickness", 0, "#/body/layers/1/thickness", "The thickness is 0 mm; it has to be greater than zero."),
     wrong("thickness in seconds", "body/layers/1/thickness", "3 s", "#/body/layers/1/thickness", "does not measure length"),
     wrong("layer without thickness", "body/layers/1/thickness", ..., "#/body/layers/1/thickness", "This field is required."),
-    wrong("endless layer", "body/layers/0/thickness", "semi-infinite", "#/body/layers/0/thickness", "does not begin with a number"),
+    wrong("endless layer", "body/layers/0/thickness", "semi-infinite", "#/body/layers/0/thickness", "A layer has a finite thickness. Give one that is deep against all the rest"),
     wrong("negative conductivity through", "body/layers/2/conductivity/through", -1, "#/body/layers/2/conductivity/through", "The conductivity through the plane is -1 W/(m K)"),
     wrong("conductivity in the plane alone", "body/layers/2/conductivity/through", ..., "#/body/layers/2/conductivity/through", "This field is required."),
     wrong("negative conductivity along x", "body/layers/3/conductivity/x", -1, "#/body/layers/3/conductivity/x", "The conductivity along x is -1 W/(m K)"),
     wrong("another ratio of y to x", "body/layers/3/conductivity/y", 300, "#/body/layers/3/conductivity", "that ratio has to be the same in all layers"),
     wrong("contact below the stack", "body/layers/0/contact_conductance_below", 5, "#/body/layers/0/contact_conductance_below", "The first layer has nothing below it"),
     wrong("contact that conducts nothing", "body/layers/1/contact_conductance_below", 0, "#/body/layers/1/contact_conductance_below", "it has to be greater than zero"),
-    wrong("contact as a resistance", "body/layers/1/contact_conductance_below", "3 m^2 K/W", "#/body/layers/1/contact_conductance_below", "does not measure film coefficient"),
+    wrong("contact as a resistance", "body/layers/1/contact_conductance_below", "3 m^2 K/W", "#/body/layers/1/contact_conductance_below", "measures one over a film coefficient; write 0.333333333333 W/(m^2 K) instead."),
+    wrong("conductance as a contact resistance", "body/layers/2/contact_resistance_below", "2 kW/(m^2 K)", "#/body/layers/2/contact_resistance_below", "measures one over a resistance times area; write 0.0005 m^2 K/W instead."),
+    wrong("negative contact resistance", "body/layers/2/contact_resistance_below", -1, "#/body/layers/2/contact_resistance_below", "The contact resistance is -1; it must not be negative."),
+    wrong("contact told twice", "body/layers/1/contact_resistance_below", 1, "#/body/layers/1/contact_resistance_below", "not both."),
+    wrong("contact resistance below the stack", "body/layers/0/contact_resistance_below", 5, "#/body/layers/0/contact_resistance_below", "The first layer has nothing below it"),
     wrong("generation of a flow", "body/layers/1/generation", "3 W", "#/body/layers/1/generation", "does not measure"),
     wrong("two layers of one name", "body/layers/2/name", "base", "#/body/layers/2/name", "Another layer has the same name."),
     wrong("one coefficient beside unlike layers", "faces/x_low", FILM, "#/faces/x_low/coefficient", "give a list with one coefficient beside each layer"),

@@ -166,6 +166,10 @@ def test_hydraulic_head_is_a_length_of_its_own() -> None:
         (Kind.POTENTIAL, "5 degC m/m", "does not measure temperature"),
         (Kind.POTENTIAL_DIFFERENCE, "5 kg", "does not measure difference of temperature"),
         (Kind.CONDUCTIVITY, "40 W/m K", "Write W/(m K)"),
+        (Kind.CONDUCTIVITY, "0.04 m K/W", "one over a thermal conductivity; write 25 W/(m K) instead"),
+        (Kind.FILM_COEFFICIENT, "2 m^2 K/kW", "one over a film coefficient; write 500 W/"),
+        (Kind.FILM_COEFFICIENT, "0 m^2 K/W", "does not measure film coefficient"),
+        (Kind.LENGTH, "1e-999 1/m", "does not measure length"),
     ],
 )
 def test_text_that_is_no_quantity_is_refused(kind: Kind, text: str, sentence: str) -> None:

@@ -50,6 +50,21 @@ async def test_slab_carries_the_conductivity_at_its_mean_temperature(client: htt
     assert "iteration" not in answer["certificate"]
 
 
+@pytest.mark.parametrize("own", [None, 130, "200 W/(m K)", {"x": 260, "y": 95, "z": 130}])
+async def test_table_of_conductivities_is_what_the_body_conducts(client: httpx.AsyncClient, own: Any) -> None:
+    """The same slab with the table's own numbers; one that conducts twice as well along x has them along x."""
+    twice = 2 if isinstance(own, dict) else 1
+    values: list[float | str] = [131.3 * twice, 105.3 * twice, f"{0.663 * twice} W/(cm K)"]
+    law = {"law": "table", "potential": TABLE["potential"], "conductivity": values}
+    problem = changed(lawful(slab(40, 400), law), "body/conductivity", ... if own is None else own)
+    question = ask_points(problem, [1, 2, 12.5], quantities=["potential", "flux"])
+    answer = (await client.post("/v1/fields", json=question)).json()
+    (point,) = answer["points"]
+    assert point["flux"]["z"] == pytest.approx(-130 * 0.9 * 360 / 0.025, rel=1e-9)
+    factor = (0.5 * (0.99**2 + 0.81**2)) ** 0.5
+    assert point["potential"] == pytest.approx(20 + (1 - factor) / 0.0005, abs=point["error_bound"] + 1e-9)
+
+
 @pytest.mark.parametrize("units", [{}, {"potential": "degF"}, {"length": "inch", "flux": "kW/m^2"}])
 async def test_radiating_face_balances_what_flows_in_whatever_the_units(client: httpx.AsyncClient, units: Json) -> None:
     """20 kW/m^2 = 10 W/(m^2 K) (T - 293.15 K) + 0.8 sigma (T^4 - (293.15 K)^4)."""
@@ -126,6 +141,7 @@ async def test_held_value_beyond_the_table_points_to_its_face(client: httpx.Asyn
 
 
 LAW = "problem/body/conductivity_law"
+CONDUCTIVITIES: Json = {"law": "table", "potential": [0, 400, 1000], "conductivity": [95, 0, 60]}
 STACK = [{"thickness": 10, "conductivity": 95}, {"thickness": 15, "conductivity": 20}]
 WRONG: dict[str, tuple[Json, str]] = {
     "law of an unknown kind": (changed({"problem": lawful(slab())}, f"{LAW}/law", "cubic"), f"#/{LAW}/law"),
@@ -143,6 +159,24 @@ WRONG: dict[str, tuple[Json, str]] = {
     ),
     "factor of zero": (changed({"problem": lawful(slab(), TABLE)}, f"{LAW}/factor", [1, 0, 1]), f"#/{LAW}/factor/1"),
     "table of uneven lists": (changed({"problem": lawful(slab(), TABLE)}, f"{LAW}/factor", [1, 1]), f"#/{LAW}"),
+    "factors and conductivities": (
+        changed({"problem": lawful(slab(), TABLE)}, f"{LAW}/conductivity", [3, 2, 1]),
+        f"#/{LAW}/conductivity",
+    ),
+    "table of potentials alone": (changed({"problem": lawful(slab(), TABLE)}, f"{LAW}/factor", ...), f"#/{LAW}/factor"),
+    "conductivity of zero": ({"problem": lawful(slab(), CONDUCTIVITIES)}, f"#/{LAW}/conductivity/1"),
+    "fewer conductivities than potentials": (
+        changed({"problem": lawful(slab(), CONDUCTIVITIES)}, f"{LAW}/conductivity", [3, 2]),
+        f"#/{LAW}/conductivity",
+    ),
+    "conductivity in metres": (
+        changed(
+            changed({"problem": lawful(slab(), CONDUCTIVITIES)}, f"{LAW}/conductivity", ["3 m", 2, 2]),
+            "problem/body/conductivity",
+            ...,
+        ),
+        f"#/{LAW}/conductivity/0",
+    ),
     "emissivity above one": (
         {"problem": plate(emissivity=1.2)},
         "#/problem/faces/z_high/emissivity",
