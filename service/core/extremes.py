@@ -82,7 +82,11 @@ def find(setting: Setting, tolerance: float, keep_going: field.KeepGoing | None)
     """Hottest and coldest place of the closed body."""
     # Half of the tolerance for the values, half for what lies between the places of the last grid.
     search = _Search(setting, 0.5 * tolerance, keep_going)
-    return Extremes(_extreme(search, 1.0), _extreme(search, -1.0))
+    try:
+        return Extremes(_extreme(search, 1.0), _extreme(search, -1.0))
+    except AccuracyNotReached as error:
+        # It was asked of the values, with half of the tolerance.
+        raise AccuracyNotReached(tolerance, 2 * error.bound) from None
 
 
 def highest_on(
@@ -366,12 +370,12 @@ def _line_through(values: FloatArray, at: tuple[int, int, int], axis: int) -> Fl
 def _climb(search: _Search, start: _Start, sign: float) -> Place:
     """Follow one peak on finer and finer grids until what lies between their places is below the tolerance."""
     body, accuracy = search.setting.body, search.accuracy
-    place, widths = list(start.place), list(start.widths)
+    place, widths, limits = list(start.place), list(start.widths), _within_layer(body, start)
     smallest = SMALLEST_WIDTH * max(_reach(search.setting, axis) for axis in range(3))
     while True:
         local = [
             np.unique(np.clip(at + width * FINER, low, high))
-            for at, width, (low, high) in zip(place, widths, start.limits, strict=True)
+            for at, width, (low, high) in zip(place, widths, limits, strict=True)
         ]
         answer = search.field(local, accuracy)
         values = sign * answer.potential
@@ -388,6 +392,17 @@ def _climb(search: _Search, start: _Start, sign: float) -> Place:
         if not done:
             place = [vertex for vertex, _ in vertices]
             widths = [width / NARROWING for width in widths]
+
+
+def _within_layer(body: Body, start: _Start) -> tuple[tuple[float, float], ...]:
+    """Where a climb has to stay: in the layer it starts in, at whose ends the field steps or turns."""
+    *across, (low, high) = start.limits
+    if body.layers and low < high:
+        borders = np.array([low, *(z for z in body.interfaces if low < z < high), high])
+        layer = int(np.clip(np.searchsorted(borders, start.place[2]), 1, borders.size - 1))
+        above_contact = float(borders[layer - 1])
+        low, high = above_contact if layer == 1 else math.nextafter(above_contact, math.inf), float(borders[layer])
+    return (*across, (low, high))
 
 
 def _vertex(places: FloatArray, values: FloatArray, top: tuple[int, int, int], axis: int) -> tuple[float, float]:

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from service.core import Body, BoxSource, FaceMap, Inflow, Patch, Rectangle, solve
+from service.core import AccuracyNotReached, Body, BoxSource, FaceMap, Inflow, Layer, Patch, Rectangle, solve
 from tests.core.bodies import BODIES, UNIT, all_held, all_insulated, film, held, pad, without_far_face
 
 
@@ -96,3 +96,14 @@ def test_hottest_of_many_small_pads_is_found_among_them() -> None:
     )
     values = solution.field_at(middles, tolerance=1e-8 * solution.span).potential
     assert hottest.value >= values.max() - hottest.error_bound - 1e-8 * solution.span
+
+
+def test_the_accuracy_offered_in_place_of_one_out_of_reach_is_met() -> None:
+    # A load on a layer that conducts a hundred times as well as the one behind it.
+    pad = FaceMap.patches((40.0, 60.0), 0.0, [Patch(Rectangle(1, 2, 3, 4), 1.0)])
+    layers = [Layer(5.0, (3.0, 3.0, 3.0)), Layer(5.0, (0.03, 0.03, 0.03))]
+    solution = solve(Body.stack((40.0, 60.0), layers, all_insulated(z_low=Inflow(pad), z_high=held(4.0))))
+    with pytest.raises(AccuracyNotReached) as refused:
+        solution.extremes(tolerance=1e-11)
+    found = solution.extremes(tolerance=refused.value.bound)
+    assert max(found.hottest.error_bound, found.coldest.error_bound) <= refused.value.bound
