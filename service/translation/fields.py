@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 
 from service import cost
 from service.core import Field, Grid, Place, Solution
+from service.core.estimate import Estimate
 from service.core.maps import Rectangle
 from service.core.problem import AXES, axes_along
 from service.models import evaluate as models
@@ -24,6 +25,9 @@ from service.translation.problem import ReadProblem
 from service.units import Kind, UnitSystem
 
 FloatArray = NDArray[np.float64]
+
+# A search for both extremes looks at so many places along each axis first, and then climbs on so many small grids.
+FIRST_PLACES, CLIMB_PLACES, CLIMB_GRIDS = 25, 5, 80
 
 
 @dataclass(frozen=True)
@@ -102,7 +106,16 @@ def check_cost(wanted: FieldsWanted, solution: Solution, settings: Settings, byt
         solution.estimate_points(2 * len(interface.at), tolerance=tolerance, with_flux=True)
         for interface in wanted.interfaces
     ]
+    if wanted.extremes:
+        estimates.append(_search_estimate(solution, tolerance))
     cost.check_work(estimates, settings)
+
+
+def _search_estimate(solution: Solution, tolerance: float) -> Estimate:
+    """Cost of a search for the extremes: its first grid, and as many small ones as it may climb on."""
+    first = solution.estimate_grid((FIRST_PLACES, FIRST_PLACES, FIRST_PLACES), tolerance=tolerance)
+    climb = solution.estimate_grid((CLIMB_PLACES, CLIMB_PLACES, CLIMB_PLACES), tolerance=tolerance)
+    return Estimate(first.multiplications + CLIMB_GRIDS * climb.multiplications, max(first.bytes, climb.bytes))
 
 
 class _Answering:
