@@ -143,7 +143,7 @@ class MixedSolution(Solution):
     @property
     def _setting(self) -> Setting:  # type: ignore[override]
         """What the answers of faces with one condition each are computed from; there is no such thing here."""
-        raise NotPhysical("This is answered for bodies without mixed faces only.")
+        raise NotPhysical("Reach is told of bodies without mixed faces only.")
 
     @property
     def usual_accuracy(self) -> float:

@@ -77,7 +77,10 @@ class VaryingSolution(Solution):
     @property
     def _setting(self) -> Setting:  # type: ignore[override]
         """What the answers of a constant conductivity are computed from; there is no such thing here."""
-        raise NotPhysical("This is answered for bodies of a conductivity that does not vary with the potential only.")
+        raise NotPhysical(
+            "Convergence and reach are told only of bodies whose conductivity does not vary with the potential and "
+            "whose faces do not radiate."
+        )
 
     @property
     def body(self) -> Body:
@@ -313,8 +316,8 @@ class VaryingSolution(Solution):
                 law.low <= condition.value.lowest and condition.value.highest <= law.high
             ):
                 raise OutsideLaw(
-                    f"The face {face} is held at {condition.value.lowest:g} to {condition.value.highest:g}; the "
-                    f"conductivity law holds from {law.low:g} to {law.high:g}.",
+                    f"The face {face} is held at {_from_to(condition.value.lowest, condition.value.highest)}; the "
+                    f"conductivity law holds {_range_of(law)}.",
                     ("faces", face),
                 )
 
@@ -511,3 +514,13 @@ def _widened(total: Total, off: float, as_given: Sequence[UnboundedCause]) -> To
 
 def _on(where: str) -> str:
     return "inside" if where == "inside" else f"on {where}"
+
+
+def _from_to(low: float, high: float) -> str:
+    return f"{low:.6g}" if low == high else f"{low:.6g} to {high:.6g}"
+
+
+def _range_of(law: ConductivityLaw) -> str:
+    if math.isinf(law.low):
+        return f"below {law.high:.6g}"
+    return f"above {law.low:.6g}" if math.isinf(law.high) else f"from {law.low:.6g} to {law.high:.6g}"

@@ -10,6 +10,7 @@ import numpy as np
 from service import cost
 from service.core import Convergence, Solution
 from service.core.problem import map_of
+from service.core.varying import VaryingSolution
 from service.models import evaluate as models
 from service.settings import Settings
 from service.translation import answers
@@ -46,6 +47,13 @@ def read_convergence(
     reader = PlaceReader(collector, settings, problem)
     points = tuple(reader.point(point, ("evaluate", "points", index)) for index, point in enumerate(ask.points))
     tolerance = answers.read_tolerance(collector, question.accuracy, solution)
+    if isinstance(solution, VaryingSolution):
+        detail = (
+            "How series and integral converge is told where the conductivity does not vary with the potential and no "
+            "face radiates. Leave `conductivity_law` and `emissivity` out, or ask /v1/fields, whose certificate has "
+            "the agreement of the two."
+        )
+        collector.add(("evaluate",), detail, "varies")
     collector.raise_if_any()
     return ConvergenceWanted(points, ask.overshoot_terms, tolerance, settings.memory_bytes)
 

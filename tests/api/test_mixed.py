@@ -13,6 +13,7 @@ import httpx
 import numpy as np
 import pytest
 
+from tests.api.client import check_problem_document
 from tests.api.halden_reach import Json, changed
 from tests.api.wrong_requests import Wrong, check_wrong
 
@@ -195,6 +196,13 @@ async def test_film_pads_of_the_background_s_coefficient_are_the_plain_face(clie
         assert here["potential"] == pytest.approx(there["potential"], abs=here["error_bound"] + there["error_bound"])
 
 
+async def test_reach_beside_mixed_faces_is_refused_with_what_to_do(client: httpx.AsyncClient) -> None:
+    answer = await client.post("/v1/reach", json={"problem": stub(), "evaluate": {"face": "z_high"}})
+    (error,) = check_problem_document(answer, 422)["errors"]
+    assert error["pointer"] == "#/evaluate"
+    assert error["detail"].startswith("How far a face reaches is told of bodies without mixed faces.")
+
+
 def wrong(name: str, problem: Json, pointer: str, sentence: str) -> Wrong:
     """A problem to be stored."""
     return Wrong(name, "/v1/problems", json.dumps(problem).encode(), 422, pointer, sentence)
@@ -219,7 +227,7 @@ TABLE = [
     wrong("no background", changed(stub(), "faces/z_high/background", ...), "#/faces/z_high/background", "This field is required."),
     wrong("held background", stub(condition="held", value=3), "#/faces/z_high/background/condition", 'One of "flux", "film", "insulated" is wanted here.'),
     wrong("background that varies", stub(condition="flux", inflow={"map": "patches"}), "#/faces/z_high/background/inflow", "A number in the declared unit"),
-    wrong("pad of no condition", stub(FEED, RETURN | {"condition": "insulated"}), f"{PADS}/1/condition", 'One of "held", "film" is wanted here.'),
+    wrong("pad of no condition", stub(FEED, RETURN | {"condition": "insulated"}), f"{PADS}/1/condition", 'One of "held", "film", "flux" is wanted here.'),
     wrong("value and flow", stub(FEED | {"value": 3}, RETURN), f"{PADS}/0/flow", "Give either `value` or `flow`, not both."),
     wrong("neither", stub(RETURN, {"x": [1, 2], "y": [1, 2], "condition": "held"}), f"{PADS}/1/value", "Give either `value` or `flow`."),
     wrong("flow in volts", stub(FEED | {"flow": "3 V"}, RETURN), f"{PADS}/0/flow", "does not measure current"),

@@ -134,10 +134,39 @@ async def test_field_that_leaves_the_table_is_refused_with_its_place(client: htt
     assert "ends at 1000" in document["detail"]
 
 
-async def test_held_value_beyond_the_table_points_to_its_face(client: httpx.AsyncClient) -> None:
-    question = ask_points(lawful(slab(40, 1200), TABLE), [1, 1, 1])
+@pytest.mark.parametrize(
+    ("law", "sentence"),
+    [
+        (TABLE, "The face z_high is held at 2200; the conductivity law holds from 0 to 1000."),
+        (FALLING, "The face z_high is held at 2200; the conductivity law holds below 2018."),
+        (FALLING | {"per_degree": 1e-3, "reference": 5000}, "holds above 4001."),
+    ],
+)
+async def test_held_value_beyond_the_law_points_to_its_face(
+    client: httpx.AsyncClient, law: Json, sentence: str
+) -> None:
+    low = 4500 if "above" in sentence else 40
+    question = ask_points(lawful(slab(low, 2200), law), [1, 1, 1])
     document = check_problem_document(await client.post("/v1/fields", json=question), 422)
     assert pointers(document) == ["#/problem/faces/z_high"]
+    assert sentence in document["detail"]
+
+
+@pytest.mark.parametrize(
+    ("call", "evaluate", "sentence"),
+    [
+        ("convergence", {"points": [{"at": [1, 1, 1]}]}, "How series and integral converge is told where the"),
+        ("reach", {"face": "z_low"}, "How far a face reaches is told where the conductivity does not vary"),
+    ],
+)
+async def test_what_a_law_leaves_open_is_named(
+    client: httpx.AsyncClient, call: str, evaluate: Json, sentence: str
+) -> None:
+    for problem in (lawful(slab(40, 400)), plate(emissivity=0.8)):
+        answer = await client.post(f"/v1/{call}", json={"problem": problem, "evaluate": evaluate})
+        document = check_problem_document(answer, 422)
+        assert pointers(document) == ["#/evaluate"]
+        assert document["errors"][0]["detail"].startswith(sentence)
 
 
 LAW = "problem/body/conductivity_law"
