@@ -400,8 +400,9 @@ def _within_layer(body: Body, start: _Start) -> tuple[tuple[float, float], ...]:
     if body.layers and low < high:
         borders = np.array([low, *(z for z in body.interfaces if low < z < high), high])
         layer = int(np.clip(np.searchsorted(borders, start.place[2]), 1, borders.size - 1))
-        above_contact = float(borders[layer - 1])
-        low, high = above_contact if layer == 1 else math.nextafter(above_contact, math.inf), float(borders[layer])
+        # A border belongs to the layer below it.
+        low = low if layer == 1 else math.nextafter(float(borders[layer - 1]), math.inf)
+        high = float(borders[layer])
     return (*across, (low, high))
 
 

@@ -144,6 +144,24 @@ def test_extremes_of_a_cut_body_are_those_of_the_whole() -> None:
         assert one.position == pytest.approx(other.position, abs=1e-3)
 
 
+def test_coldest_place_just_under_a_poor_contact_is_found() -> None:
+    layers = [
+        Layer(1.4e-4, (477.0, 0.198, 477.0)),
+        Layer(4.2e-4, (811.0, 811.0 * 0.198 / 477.0, 2.6e5), contact_below=1.8e9),
+        Layer(0.1315, (1.278, 1.278 * 0.198 / 477.0, 415.0)),
+        Layer(3.587, (750.0, 750.0 * 0.198 / 477.0, 750.0), contact_below=2.8e-3),
+    ]
+    sides = {"x_high": film(2e-3, 1.0), "y_low": uniform_inflow(-0.92), "y_high": held(0.67)}
+    faces = all_insulated(**sides, z_low=held(-0.94), z_high=film(8.7e4, 0.27))
+    body = Body.stack((135.0, 135.0), layers, faces)
+    solved = solve(body)
+    tolerance = 1e-6 * solved.span
+    coldest = solved.extremes(tolerance=tolerance).coldest
+    under = solved.field_at(np.array([[0.0, 0.0, body.interfaces[2]]]), tolerance=tolerance)
+    assert coldest.value - coldest.error_bound <= under.potential[0] + under.potential_bound
+    assert coldest.position[2] == body.interfaces[2]
+
+
 @pytest.mark.parametrize("name", ["insulated sides", "held sides"])
 def test_contacts_that_conduct_without_end_change_nothing(name: str) -> None:
     """1e12 times the conductance of the body: a step of 1e-12 of the span at the most."""
@@ -304,7 +322,7 @@ def test_flux_has_no_value_where_an_inflow_meets_bonded_layers_that_conduct_unli
     points = np.array([[1.0, 0.4, z] for z in (unlike, alike, contact, 0.1)])
     flux = solved.field_at(points, tolerance=1e-9, with_flux=True).flux
     assert flux is not None
-    assert list(np.isnan(flux).all(axis=0)) == [True, False, False, False]
+    np.testing.assert_array_equal(np.isnan(flux).all(axis=0), [True, False, False, False])
     # Square to the side it is the inflow itself, and beside the line the flow along it grows as ln r, by equal steps.
     np.testing.assert_allclose(flux[0, 1:], -1.0, rtol=1e-9)
     near = np.array([[1.0 - r, 0.4, unlike] for r in (1e-3, 1e-5, 1e-7)])
