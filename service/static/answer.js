@@ -1,7 +1,7 @@
 /** Extremes, certificate and warnings of an answer in words a person can judge. */
 
 import { make, verdict } from "./elements.js";
-import { bounded, brief, counted, partsIn, pretty, shown, written } from "./numbers.js";
+import { bounded, counted, greatest, partsIn, placed, pretty, shown, written } from "./numbers.js";
 
 const AXES = ["x", "y", "z"];
 
@@ -9,10 +9,11 @@ const AXES = ["x", "y", "z"];
 export function extremesView(answer, words) {
   const { units, extremes, certificate } = answer;
   const difference = pretty(units.potential_difference);
+  const scale = greatest(answer.grids.flatMap(({ axes }) => Object.values(axes).flat()));
   const one = (which, sign) => {
     const { at, value, error_bound: bound, where } = extremes[which];
     // An end infinitely far is null; `where` says so in words.
-    const place = at.flatMap((length, index) => (length === null ? [] : [`${AXES[index]} = ${brief(length)}`]));
+    const place = at.flatMap((length, index) => (length === null ? [] : [`${AXES[index]} = ${placed(length, scale)}`]));
     return make(
       "div", { class: "extreme" },
       make("dt", {}, make("span", { "aria-hidden": "true" }, `${sign} `), `${words[which]} of the body`),

@@ -47,7 +47,7 @@ function kindChoice(draft, changed, redraw) {
   return choice({
     id: "body-kind", label: "Body", value: draft.isStack ? "stack" : along,
     options: [
-      ["block", "block, ends at z"], ["bar", "bar, no far end along z"], ["endless", "no ends along z"],
+      ["block", "block, ends at z"], ["bar", "bar or half-space, no far end along z"], ["endless", "no ends along z"],
       ["stack", "stack of layers along z"],
     ],
     onChange: (value) => {
@@ -91,6 +91,7 @@ function endsFields(draft, changed, redraw) {
   return make(
     "details", { class: "whole", open: across.some((axis) => draft.ends[axis] !== "finite") },
     make("summary", {}, "Ends along x and y"), make("div", { class: "fields" }, choices),
+    make("p", { class: "hint" }, "Without any end along x and y, a body that ends along z is a plate, and one without a far end a half-space."),
   );
 }
 
@@ -137,7 +138,7 @@ function layerFields(draft, changed, redraw) {
   );
   const cards = draft.layers.map((_, index) => layerCard(draft, index, changed, redraw));
   return [
-    make("p", { class: "hint whole" }, "The layers as they lie, the highest z on top. The first stands on z_low."),
+    make("p", { class: "hint whole" }, "The layers as they lie, the highest z on top. The first one is the bottom, z_low."),
     add, mistakePlace("add-layer"),
     make("div", { class: "layers whole" }, cards.reverse()),
   ];

@@ -5,10 +5,11 @@
  * place in it is noted with the field it came from, so that an answer about `#/problem/body/size/x` finds it.
  */
 
-import { bodyDraftOf, bodyOf, endsOf, facesOf } from "./body_draft.js";
+import { bodyDraftOf, bodyOf, facesOf } from "./body_draft.js";
 import { faceDraftOf, faceOf, padsOf, patchesOf } from "./faces_draft.js";
+import { gridsOf } from "./grid_draft.js";
 import { entry, idOf, quantity, text } from "./typed.js";
-import { AXES, axesAcross, FACES, PHYSICS } from "./words.js";
+import { AXES, FACES, PHYSICS } from "./words.js";
 
 /** Matrices of more pads than these are left to programs. */
 const MOST_PADS_IN_MATRIX = 100;
@@ -35,13 +36,10 @@ export function draftOf(problem, view) {
       axis: "z", position: "", count: "81", ...plane,
       from: { ...emptyTexts(), ...plane.from }, to: { ...emptyTexts(), ...plane.to },
     },
-    accuracy: { kind: "1e-9", absolute: "", ...view.accuracy },
+    accuracy: { kind: "usual", absolute: "", ...view.accuracy },
     edgeGap: text(view.edgeGap),
   };
 }
-
-/** Whether the plane shows a section through the layers of a stack. */
-export const isSection = (draft) => draft.isStack && draft.plane.axis !== "z";
 
 /**
  * The requests of a draft and which field each of their places comes from; null for what has nothing to ask.
@@ -51,9 +49,7 @@ export function requestsOf(draft) {
   const places = new Map();
   const note = (pointer, id) => places.set(pointer, id);
   const problem = problemOf(draft, note);
-  const accuracy = draft.accuracy.kind === "absolute"
-    ? { absolute: entry(draft.accuracy.absolute) }
-    : { relative: Number(draft.accuracy.kind) };
+  const accuracy = accuracyOf(draft.accuracy);
   note("#/accuracy", draft.accuracy.kind === "absolute" ? "accuracy-absolute" : "accuracy-kind");
 
   const { axis, position } = draft.plane;
@@ -74,32 +70,10 @@ export function requestsOf(draft) {
   };
 }
 
-/** The plane as one grid, or as one for each layer, so that both sides of an interface are seen. */
-function gridsOf(draft, plane, note) {
-  const { axis, count, from, to } = draft.plane;
-  const across = axesAcross(axis).filter((other) => !(other === "z" && isSection(draft)));
-  const grid = { ...plane };
-  for (const other of across) {
-    const ends = endsOf(draft, other);
-    grid[other] = {
-      from: ends === "infinite" ? entry(from[other]) : 0,
-      to: ends === "finite" ? quantity(draft.size[other]) : quantity(to[other]),
-      count: Number(count),
-    };
-  }
-  const grids = isSection(draft)
-    ? draft.layers.map((_, layer) => ({ ...grid, name: `layer ${layer}`, z: { layer, count: Math.round(Number(count) / 4) } }))
-    : [grid];
-  grids.forEach((_, index) => {
-    const here = `#/evaluate/grids/${index}`;
-    note(here, "plane-position");
-    for (const other of across) {
-      const isFinite = endsOf(draft, other) === "finite";
-      note(`${here}/${other}`, isFinite ? idOf("size", other) : idOf("plane-to", other));
-      note(`${here}/${other}/from`, isFinite ? idOf("size", other) : idOf("plane-from", other));
-    }
-  });
-  return grids;
+/** Nothing for the usual one, which the service chooses by what kind of body it is. */
+function accuracyOf({ kind, absolute }) {
+  if (kind === "usual") return undefined;
+  return kind === "absolute" ? { absolute: entry(absolute) } : { relative: Number(kind) };
 }
 
 function problemOf(draft, note) {

@@ -167,6 +167,6 @@ export const EXAMPLES = [
         },
       },
     },
-    view: { plane: { axis: "z", position: "25", count: "41" }, accuracy: { kind: "5e-3" } },
+    view: { plane: { axis: "z", position: "25" } },
   },
 ];

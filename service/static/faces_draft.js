@@ -113,13 +113,14 @@ export function faceDraftOf(face, known) {
   return draft;
 }
 
-/** Every patch and pad of every face, by its number, with the field that stands for it. */
+/** Every patch and pad of every face, by its number, with the field that stands for it and what is typed of it. */
 export function patchesOf(draft) {
   return facesOf(draft).flatMap((face) => {
     const { condition, data, mixture } = draft.faces[face];
-    if (condition === "mixed") return mixture.pads.map((_, patch) => ({ face, patch, id: idOf(face, "pad", patch, "value") }));
-    if (condition === "insulated" || data[condition].kind !== "patches") return [];
-    return data[condition].patches.map((_, patch) => ({ face, patch, id: idOf(face, condition, "patch", patch, "value") }));
+    const numbered = (rectangles, ...parts) => rectangles.map((rectangle, patch) => (
+      { face, patch, rectangle, id: idOf(face, ...parts, patch, "value") }));
+    if (condition === "mixed") return numbered(mixture.pads, "pad");
+    return condition === "insulated" || data[condition].kind !== "patches" ? [] : numbered(data[condition].patches, condition, "patch");
   });
 }
 

@@ -5,7 +5,7 @@ import { button, choice, field, intervals, longText, make, mistakePlace, writer 
 import { emptyDatum, emptyPad, emptyPatch } from "./faces_draft.js";
 import { mixtureFields } from "./mixture_form.js";
 import { idOf } from "./typed.js";
-import { axesAcross, axisOf, CONDITIONS, PHYSICS, placeOf, PLACES } from "./words.js";
+import { axesAcross, axisOf, CONDITIONS, PHYSICS, placeOf, placesOf } from "./words.js";
 
 const DATUM_CHOICES = [
   ["uniform", "uniform"],
@@ -19,7 +19,7 @@ export function showPlaces(draft) {
   for (const place of document.querySelectorAll("[data-place]")) {
     const { place: face } = place.dataset;
     const where = draft.isStack && face === "z_high" ? "top of the last layer" : placeOf(face, draft.size, draft.units.length);
-    place.textContent = ` ${PLACES[face]}, ${where}`;
+    place.textContent = ` ${placesOf(draft.isStack)[face]}, ${where}`;
   }
 }
 

@@ -2,7 +2,7 @@
 
 import { make, scrolled, verdict } from "./elements.js";
 import { bounded, brief, pretty, rough, shown, written } from "./numbers.js";
-import { CONDITIONS, PLACES } from "./words.js";
+import { CONDITIONS, placesOf } from "./words.js";
 
 /** A film coefficient, or the lowest and highest beside layers. */
 const coefficient = ({ coefficient: given }, units) => [given].flat().map((one) => written(one, units.film_coefficient)).join(", ");
@@ -51,7 +51,7 @@ function patchData(known, index, units) {
 function totalsOf({ faces, patches, planes, units }, problem) {
   const rows = [];
   for (const [name, total] of Object.entries(faces)) {
-    rows.push({ name, place: PLACES[name], known: knownOf(problem.faces[name], units), value: total.inflow, total });
+    rows.push({ name, place: placesOf(Boolean(problem.body.layers))[name], known: knownOf(problem.faces[name], units), value: total.inflow, total });
     for (const part of patches.filter(({ face }) => face === name)) {
       rows.push({
         name: part.name ?? `patch ${part.patch + 1}`, place: `on ${name}`, known: patchKnown(part, problem, units),

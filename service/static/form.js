@@ -2,9 +2,9 @@
 
 import { endsOf } from "./body_draft.js";
 import { bodyFields } from "./body_form.js";
-import { isSection } from "./draft.js";
 import { choice, field, intervals, make, writer } from "./elements.js";
 import { faceCards } from "./faces_form.js";
+import { isSection } from "./grid_draft.js";
 import { idOf } from "./typed.js";
 import { AXES, axesAcross, LENGTH_UNITS, PHYSICS, UNIT_LABELS } from "./words.js";
 
@@ -134,6 +134,7 @@ function viewFields(draft, changed, redraw) {
     choice({
       id: "accuracy-kind", label: "Largest error", value: accuracy.kind,
       options: [
+        ["usual", "the usual one"],
         ["5e-3", "five thousandths of the span"],
         ["1e-3", "a thousandth of the span"],
         ["1e-6", "a millionth of the span"],
@@ -141,7 +142,8 @@ function viewFields(draft, changed, redraw) {
         ["1e-12", "1e-12 of the span"],
         ["absolute", "a value of your own"],
       ],
-      hint: "The span is that of the given data.",
+      hint: "The span is that of the given data. Usual is 1e-9 of it, 1e-4 where film faces are iterated, and 5e-3 or what "
+        + "can be promised beside faces with several conditions.",
       onChange: (value) => {
         accuracy.kind = value;
         changed();

@@ -39,6 +39,15 @@ export const rough = (value) => `${value < 0 ? "\u2212" : ""}${bounded(Math.abs(
 /** A few digits, for axes, labels and captions. @param {number} value */
 export const brief = (value) => tidy(String(Number(value.toPrecision(6))));
 
+/** A place along an axis, where what rounding left of zero is zero. @param {number} scale the greatest length around */
+export const placed = (place, scale) => brief(withoutRounding(place, scale));
+
+/** @param {number} length @param {number} scale the greatest length around */
+export const withoutRounding = (length, scale) => (Math.abs(length) <= 1e-12 * scale ? 0 : length);
+
+/** The size of the greatest of some numbers, those left open aside. @param {(number|null)[]} numbers */
+export const greatest = (numbers) => numbers.reduce((most, number) => Math.max(most, Math.abs(number ?? 0)), 0);
+
 /** A whole number with thin spaces between thousands. */
 export const counted = (count) => String(count).replace(/\B(?=(\d{3})+$)/g, "\u202f");
 

@@ -71,8 +71,12 @@ function showRequest() {
   for (const option of select.options) option.disabled = !requests[option.value];
   if (!requests[select.value]) select.value = "fields";
   part("request-address").textContent = `POST ${addressOf(CALLS[select.value])}`;
-  part("request-text").textContent = JSON.stringify(requests[select.value], null, 2);
+  part("request-text").textContent = readable(requests[select.value]);
 }
+
+/** JSON with lists of plain values on one line each; a line break inside a text is never a plain one. */
+const readable = (request) => JSON.stringify(request, null, 2)
+  .replace(/\[\n\s*([^[\]{}]*?)\n\s*\]/g, (_, list) => `[${list.replace(/\n\s*/g, " ")}]`);
 
 function say(sentence) {
   part("status").textContent = sentence;
@@ -188,7 +192,11 @@ function listen() {
   part("save-values").addEventListener("click", () => saveValuesShown());
   part("print").addEventListener("click", () => window.print());
   let waiting = 0;
+  let width = window.innerWidth;
   window.addEventListener("resize", () => {
+    // On phones the height changes with every bar that comes and goes.
+    if (window.innerWidth === width) return;
+    width = window.innerWidth;
     clearTimeout(waiting);
     waiting = setTimeout(redrawPicture, 150);
   });

@@ -132,16 +132,28 @@ export function marksOf(plane, extremes, words) {
   });
 }
 
+/** The drawing under way; the next one waits for it. @type {Promise<void>} */
+let drawing = Promise.resolve();
+
 /**
  * Draw into an element.
  * @param {HTMLElement} element @param {import("./plane.js").PlaneData} plane
  */
-export async function drawPicture(element, plane, words, units, marks) {
+export function drawPicture(element, plane, words, units, marks) {
+  const drawn = drawing.then(() => drawAnew(element, plane, words, units, marks));
+  drawing = drawn.catch(() => {});
+  return drawn;
+}
+
+async function drawAnew(element, plane, words, units, marks) {
   const Plotly = await plotting();
   const { data, layout } = figureOf(plane, words, units, marks, element.parentElement.parentElement.clientWidth);
   // The caption is as wide as the picture, so that what stands beside it may come close.
   element.parentElement.style.width = `${layout.width}px`;
-  await Plotly.react(element, data, layout, { displayModeBar: false, responsive: false, scrollZoom: false, doubleClick: false });
+  // Changed in place, the script fails where the bar of colours turns.
+  Plotly.purge(element);
+  element.replaceChildren();
+  await Plotly.newPlot(element, data, layout, { displayModeBar: false, responsive: false, scrollZoom: false, doubleClick: false });
 }
 
 /** Save as an image that says by itself what it shows. @param {import("./plane.js").PlaneData} plane */

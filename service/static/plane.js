@@ -1,7 +1,7 @@
 /** The plane of an answer as rows and columns, its table, and its text for saving. */
 
 import { make, save } from "./elements.js";
-import { brief, pretty, shown } from "./numbers.js";
+import { brief, greatest, pretty, shown, withoutRounding } from "./numbers.js";
 
 /**
  * @typedef {object} PlaneData
@@ -32,8 +32,9 @@ export function planeOf(answer, axis) {
 export const layersOf = (answer, axis) => answer.grids.map((grid) => planeOfGrid(grid, axis, axis === "x" ? "y" : "x", "z"));
 
 function planeOfGrid(grid, axis, across, up) {
-  const columns = grid.axes[across];
-  const rows = grid.axes[up];
+  const cleared = (places) => places.map((place) => withoutRounding(place, greatest(places)));
+  const columns = cleared(grid.axes[across]);
+  const rows = cleared(grid.axes[up]);
   const at = (row, column) => {
     const index = { [axis]: 0, [across]: column, [up]: row };
     return grid.potential[index.x][index.y][index.z];
@@ -59,16 +60,25 @@ export const joined = (layers, described) => ({
   bound: Math.max(...layers.map(({ bound }) => bound)),
 });
 
-/** Every so many indices, both ends among them. */
+/** Every so many of some indices, both ends among them. */
 function thinned(count, most) {
   const wanted = Math.min(count, most);
   return Array.from({ length: wanted }, (_, index) => Math.round((index * (count - 1)) / (wanted - 1)));
 }
 
+/** Indices of places about evenly apart, both ends among them. @param {number[]} places */
+function spread(places, most) {
+  const [first, last] = [places[0], places.at(-1)];
+  const nearest = (wanted) => places.reduce((best, place, index) => (
+    Math.abs(place - wanted) < Math.abs(places[best] - wanted) ? index : best), 0);
+  return [...new Set(thinned(most, most).map((index) => nearest(first + ((last - first) * index) / (most - 1))))];
+}
+
 /** A table of part of the values, upwards as in the picture. @param {PlaneData} plane */
 export function planeTable(plane, words, units) {
-  const columns = thinned(plane.columns.length, 9);
-  const rows = thinned(plane.rows.length, 13).reverse();
+  const columns = spread(plane.columns, 9);
+  // Of a stack every layer has its rows, however thin it is.
+  const rows = (plane.layers ? thinned(plane.rows.length, 13) : spread(plane.rows, 13)).reverse();
   return make(
     "table", { class: "numbers" },
     make("caption", {}, `${words.potential} in ${pretty(units.potential)}; ${plane.across} and ${plane.up} in ${pretty(units.length)}`),

@@ -1,47 +1,50 @@
 /**
- * A sketch of the body with its faces named, in oblique projection: z to the right, y up, x away from the
- * reader (a right-handed set), so that x_low is in front, z_low at the left end and y_high on top.
+ * A sketch of the body with its faces named, in oblique projection. A body lies along z, which runs to the right, with
+ * y up and x away from the reader; a stack stands on its first layer, with z up, x to the right and y away.
  */
 
 import { endsOf, facesOf, layerName } from "./body_draft.js";
 import { draw } from "./elements.js";
-import { CONDITIONS, METRES, PLACES } from "./words.js";
+import { lengthIn } from "./lengths.js";
+import { CONDITIONS, placesOf } from "./words.js";
 
 const WIDTH = 440;
 const HEIGHT = 280;
 const DEPTH = { across: -0.52, up: 0.4 };
 
-/** Typed length in metres, or nothing that can be drawn. */
-function metres(typed, unit) {
-  const [, number, own] = /^\s*([\d.eE+-]+)\s*(\S*)\s*$/.exec(typed) ?? [];
-  const length = Number(number) * (METRES[own || unit] ?? NaN);
-  return length > 0 && Number.isFinite(length) ? length : null;
+/** The axes away from the reader, upwards and to the right: a right-handed set. In this file's triples they stand in this order. */
+const drawnAxes = (draft) => (draft.isStack ? ["y", "z", "x"] : ["x", "y", "z"]);
+
+/** A typed length that can be drawn, or null. */
+function drawable(typed, unit) {
+  const length = lengthIn(typed, unit);
+  return length > 0 ? length : null;
 }
 
-/** Thickness of each layer in metres, null where one cannot be drawn. */
-const thicknesses = (draft) => draft.layers.map((layer) => metres(layer.thickness, draft.units.length));
+/** Thickness of each layer, null where one cannot be drawn. */
+const thicknesses = (draft) => draft.layers.map((layer) => drawable(layer.thickness, draft.units.length));
 
 function lengthOf(draft, axis) {
   if (endsOf(draft, axis) !== "finite") return null;
-  if (axis !== "z" || !draft.isStack) return metres(draft.size[axis], draft.units.length);
+  if (axis !== "z" || !draft.isStack) return drawable(draft.size[axis], draft.units.length);
   const all = thicknesses(draft);
   return all.includes(null) ? null : all.reduce((sum, thickness) => sum + thickness, 0);
 }
 
 /** Lengths to draw, in no unit, and whether they keep the proportions. An axis without an end is drawn long. */
 function proportions(draft) {
-  const axes = ["x", "y", "z"];
+  const axes = drawnAxes(draft);
   const typed = axes.map((axis) => lengthOf(draft, axis));
   const isKnown = axes.every((axis, index) => typed[index] !== null || endsOf(draft, axis) !== "finite");
   const known = typed.filter((length) => length !== null);
   if (!isKnown || !known.length) return { sides: [1, 1, 1.6], isTrue: false };
   const longest = Math.max(...known);
-  const [x, y, z] = typed;
-  const across = Math.max(x ?? 0, y ?? 0) || longest;
-  const all = [x ?? 1.2 * longest, y ?? 1.2 * longest, z ?? 2.2 * across];
+  const [away, up, right] = typed;
+  const across = Math.max(away ?? 0, up ?? 0) || longest;
+  const all = [away ?? 1.2 * longest, up ?? 1.2 * longest, right ?? 2.2 * across];
   const most = Math.max(...all);
   // A stack is drawn thick enough for its layers to be seen.
-  const least = [0.22, 0.22, draft.isStack ? 0.75 : 0.22];
+  const least = [0.22, draft.isStack ? 0.45 : 0.22, 0.22];
   const sides = all.map((length, axis) => Math.max(length / most, least[axis]));
   return { sides, isTrue: all.every((length, axis) => length / most >= least[axis]) };
 }
@@ -58,28 +61,30 @@ function interfaces(draft) {
 }
 
 /** Screen coordinates of a place given by fractions of the sides. */
-function projection([x, y, z]) {
-  const spanAcross = z + x * -DEPTH.across;
-  const spanUp = y + x * DEPTH.up;
+function projection([away, up, right]) {
+  const spanAcross = right + away * -DEPTH.across;
+  const spanUp = up + away * DEPTH.up;
   const scale = Math.min((WIDTH - 170) / spanAcross, (HEIGHT - 110) / spanUp);
-  const left = (WIDTH - spanAcross * scale) / 2 + x * -DEPTH.across * scale;
+  const left = (WIDTH - spanAcross * scale) / 2 + away * -DEPTH.across * scale;
   const bottom = (HEIGHT + spanUp * scale) / 2 - 2;
-  return (fx, fy, fz) => [
-    left + scale * (fz * z + fx * x * DEPTH.across),
-    bottom - scale * (fy * y + fx * x * DEPTH.up),
+  return (a, u, r) => [
+    left + scale * (r * right + a * away * DEPTH.across),
+    bottom - scale * (u * up + a * away * DEPTH.up),
   ];
 }
 
 const CORNERS = {
-  x_low: [[0, 0, 0], [0, 1, 0], [0, 1, 1], [0, 0, 1]],
-  x_high: [[1, 0, 0], [1, 1, 0], [1, 1, 1], [1, 0, 1]],
-  y_low: [[0, 0, 0], [1, 0, 0], [1, 0, 1], [0, 0, 1]],
-  y_high: [[0, 1, 0], [1, 1, 0], [1, 1, 1], [0, 1, 1]],
-  z_low: [[0, 0, 0], [1, 0, 0], [1, 1, 0], [0, 1, 0]],
-  z_high: [[0, 0, 1], [1, 0, 1], [1, 1, 1], [0, 1, 1]],
+  front: [[0, 0, 0], [0, 1, 0], [0, 1, 1], [0, 0, 1]],
+  back: [[1, 0, 0], [1, 1, 0], [1, 1, 1], [1, 0, 1]],
+  bottom: [[0, 0, 0], [1, 0, 0], [1, 0, 1], [0, 0, 1]],
+  top: [[0, 1, 0], [1, 1, 0], [1, 1, 1], [0, 1, 1]],
+  left: [[0, 0, 0], [1, 0, 0], [1, 1, 0], [0, 1, 0]],
+  right: [[0, 0, 1], [1, 0, 1], [1, 1, 1], [0, 1, 1]],
 };
+/** Which of these a face is drawn as. */
+const sideOf = (face, draft) => placesOf(draft.isStack)[face].split(" ")[0];
 const SHORT = { held: "held", flux: "inflow", film: "film", insulated: "insulated", mixed: "several" };
-const VISIBLE = ["x_low", "y_high", "z_low"];
+const VISIBLE = ["front", "top", "left"];
 
 const points = (place, corners) => corners.map((corner) => place(...corner).map((v) => v.toFixed(1)).join(",")).join(" ");
 
@@ -91,13 +96,13 @@ function labels(place) {
   const [, bottom] = place(0, 0, 0.5);
   const [front] = place(0, 0.5, 0.42);
   return {
-    x_low: { at: [front, bottom + 26], to: place(0, 0.3, 0.42), anchor: "middle" },
-    x_high: { at: [place(1, 1, 0.8)[0] + 18, top - 14], to: place(1, 0.7, 0.72), anchor: "start" },
+    front: { at: [front, bottom + 26], to: place(0, 0.3, 0.42), anchor: "middle" },
+    back: { at: [place(1, 1, 0.8)[0] + 18, top - 14], to: place(1, 0.7, 0.72), anchor: "start" },
     // Side by side even under a short body.
-    y_low: { at: [Math.max(place(0, 0, 0.82)[0], front + 66), bottom + 26], to: place(0.45, 0, 0.8), anchor: "middle" },
-    y_high: { at: [place(1, 1, 0.22)[0], top - 14], to: place(0.5, 1, 0.3), anchor: "middle" },
-    z_low: { at: [leftEdge - 14, place(0.5, 0.62, 0)[1]], to: place(0.5, 0.55, 0), anchor: "end" },
-    z_high: { at: [rightEdge + 16, place(0.3, 0.5, 1)[1]], to: place(0.45, 0.5, 1), anchor: "start" },
+    bottom: { at: [Math.max(place(0, 0, 0.82)[0], front + 66), bottom + 26], to: place(0.45, 0, 0.8), anchor: "middle" },
+    top: { at: [place(1, 1, 0.22)[0], top - 14], to: place(0.5, 1, 0.3), anchor: "middle" },
+    left: { at: [leftEdge - 14, place(0.5, 0.62, 0)[1]], to: place(0.5, 0.55, 0), anchor: "end" },
+    right: { at: [rightEdge + 16, place(0.3, 0.5, 1)[1]], to: place(0.45, 0.5, 1), anchor: "start" },
   };
 }
 
@@ -113,19 +118,20 @@ export function drawSketch(svg, draft, current) {
   const cut = openEnds(draft);
   for (const [from, to] of cutEdges(cut)) parts.push(line(place(...from), place(...to), "edge onward"));
   for (const [from, to] of edgesOf(cut, false)) parts.push(line(place(...from), place(...to), "edge unseen-edge"));
-  if (current && faces.includes(current) && !VISIBLE.includes(current)) {
-    parts.push(draw("polygon", { class: "side current", points: points(place, CORNERS[current]) }));
+  const currentSide = current && faces.includes(current) ? sideOf(current, draft) : null;
+  if (currentSide && !VISIBLE.includes(currentSide)) {
+    parts.push(draw("polygon", { class: "side current", points: points(place, CORNERS[currentSide]) }));
   }
-  for (const face of VISIBLE) {
-    const isCurrent = face === current ? " current" : "";
-    parts.push(draw("polygon", { class: `side ${face}${isCurrent}`, points: points(place, CORNERS[face]) }));
+  for (const side of VISIBLE) {
+    const isCurrent = side === currentSide ? " current" : "";
+    parts.push(draw("polygon", { class: `side ${side}${isCurrent}`, points: points(place, CORNERS[side]) }));
   }
   for (const [from, to] of edgesOf(cut, true)) parts.push(line(place(...from), place(...to), "edge"));
   for (const height of interfaces(draft)) parts.push(...interfaceLine(place, height));
   for (const end of cut) parts.push(...onwards(place, end));
-  if (draft.ends.z !== "finite" && !draft.isStack) parts.push(brokenEnd(place));
-  parts.push(...axes(place));
-  for (const face of faces) parts.push(...label(face, labels(place)[face], draft, face === current));
+  if (cut.some(([axis, end]) => axis === 2 && end === 1)) parts.push(brokenEnd(place));
+  parts.push(...axes(place, drawnAxes(draft)));
+  for (const face of faces) parts.push(...label(face, labels(place)[sideOf(face, draft)], draft, face === current));
   svg.setAttribute("viewBox", `0 0 ${WIDTH} ${HEIGHT}`);
   svg.setAttribute("aria-label", described(draft, faces));
   svg.replaceChildren(...parts);
@@ -136,22 +142,22 @@ const line = ([x1, y1], [x2, y2], name) =>
   draw("line", { class: name, x1: x1.toFixed(1), y1: y1.toFixed(1), x2: x2.toFixed(1), y2: y2.toFixed(1) });
 
 /** Ends that the body does not have: the axis and the side, 0 or 1. @returns {[number, number][]} */
-const openEnds = (draft) => ["x", "y", "z"].flatMap((axis, index) => {
+const openEnds = (draft) => drawnAxes(draft).flatMap((axis, index) => {
   const ends = endsOf(draft, axis);
   return [...(ends === "infinite" ? [[index, 0]] : []), ...(ends === "finite" ? [] : [[index, 1]])];
 });
 
-const CORNERS_OF_BODY = [0, 1].flatMap((x) => [0, 1].flatMap((y) => [0, 1].map((z) => [x, y, z])));
+const CORNERS_OF_BODY = [0, 1].flatMap((away) => [0, 1].flatMap((up) => [0, 1].map((right) => [away, up, right])));
 const EDGES = CORNERS_OF_BODY.flatMap((from) => [0, 1, 2]
   .filter((axis) => from[axis] === 0)
   .map((axis) => [from, from.map((value, index) => (index === axis ? 1 : value))]));
-const isHidden = ([x, y, z]) => x === 1 && y === 0 && z === 1;
+const isHidden = ([away, up, right]) => away === 1 && up === 0 && right === 1;
 const isCut = (edge, cut) => cut.some(([axis, side]) => edge.every((corner) => corner[axis] === side));
 
 /** Edges in sight or out of it: those that meet in the far lower corner are hidden. Open ends have none. */
 const edgesOf = (cut, areSeen) => EDGES.filter((edge) => !isCut(edge, cut) && edge.some(isHidden) !== areSeen);
 
-/** Where the drawing stops across x and y though the body does not; a bar's end is broken off by itself. */
+/** Where the drawing stops though the body does not; the end at the right is broken off by itself. */
 const cutEdges = (cut) => EDGES.filter((edge) => isCut(edge, cut.filter(([axis]) => axis !== 2)) && !edge.some(isHidden));
 
 /** At an open end the edges in sight go on dotted. */
@@ -170,38 +176,38 @@ function onwards(place, [axis, side]) {
   });
 }
 
-/** A bar is broken off in a zigzag. */
+/** A body without an end at the right is broken off there in a zigzag. */
 function brokenEnd(place) {
   const outline = [[0, 0], [0, 0.2], [0, 0.4], [0, 0.6], [0, 0.8], [0, 1], [0.33, 1], [0.67, 1], [1, 1]];
-  const zigzag = outline.map(([x, y], index) => place(x, y, 1 + [0, 0.025, -0.025][index === 0 || index > 7 ? 0 : 1 + (index % 2)]));
+  const zigzag = outline.map(([away, up], index) => place(away, up, 1 + [0, 0.025, -0.025][index === 0 || index > 7 ? 0 : 1 + (index % 2)]));
   return draw("polyline", { class: "break", points: zigzag.map((at) => at.map((v) => v.toFixed(1)).join(",")).join(" ") });
 }
 
-/** Where two layers meet, on the front and on top. */
+/** Where two layers meet, on the front and on the left. */
 const interfaceLine = (place, height) => [
-  line(place(0, 0, height), place(0, 1, height), "edge interface"),
-  line(place(0, 1, height), place(1, 1, height), "edge interface"),
+  line(place(0, height, 0), place(0, height, 1), "edge interface"),
+  line(place(0, height, 0), place(1, height, 0), "edge interface"),
 ];
 
-function axes(place) {
+function axes(place, names) {
   const [x0, y0] = place(0, 0, 0);
-  const names = { x: place(0.42, 0, 0), y: place(0, 0.42, 0), z: place(0, 0, 0.22) };
-  return Object.entries(names).flatMap(([axis, [x, y]]) => {
+  const towards = [place(0.42, 0, 0), place(0, 0.42, 0), place(0, 0, 0.22)];
+  return towards.flatMap(([x, y], way) => {
     const length = Math.hypot(x - x0, y - y0);
     const [ux, uy] = [(x - x0) / length, (y - y0) / length];
     const [tx, ty] = [x0 + ux * 34, y0 + uy * 34];
     const head = [[tx, ty], [tx - 7 * ux - 3 * uy, ty - 7 * uy + 3 * ux], [tx - 7 * ux + 3 * uy, ty - 7 * uy - 3 * ux]];
-    const beside = axis === "y" ? [tx + 9, ty + 6] : [tx + ux * 3, ty + (axis === "z" ? -7 : -6)];
+    const beside = way === 1 ? [tx + 9, ty + 6] : [tx + ux * 3, ty + (way === 2 ? -7 : -6)];
     return [
       line([x0, y0], [tx, ty], "axis"),
       draw("polygon", { class: "axis-head", points: head.map((at) => at.map((v) => v.toFixed(1)).join(",")).join(" ") }),
-      draw("text", { class: "axis-name", x: beside[0], y: beside[1], "text-anchor": "middle" }, axis),
+      draw("text", { class: "axis-name", x: beside[0], y: beside[1], "text-anchor": "middle" }, names[way]),
     ];
   });
 }
 
 function label(face, { at: [x, y], to, anchor }, draft, isCurrent) {
-  const isSeen = VISIBLE.includes(face);
+  const isSeen = VISIBLE.includes(sideOf(face, draft));
   const start = { middle: [x, y < to[1] ? y + 6 : y - 22], start: [x - 4, y - 2], end: [x + 4, y - 2] }[anchor];
   const condition = SHORT[draft.faces[face].condition];
   return [
@@ -217,12 +223,12 @@ function label(face, { at: [x, y], to, anchor }, draft, isCurrent) {
 }
 
 function described(draft, faces) {
-  const each = faces.map((face) => `${face} (${PLACES[face]}): ${CONDITIONS[draft.faces[face].condition]}`);
-  const ends = { x: "to the back", y: "upwards", z: "to the right" };
-  const open = Object.entries(ends).filter(([axis]) => endsOf(draft, axis) !== "finite").map(([axis, way]) => {
-    const both = endsOf(draft, axis) === "infinite" ? " and the other way" : "";
-    return ` The ${axis === "z" && !both ? "bar" : "body"} goes on ${way}${both} without end.`;
-  });
-  const layers = draft.isStack ? ` Layers from z_low: ${draft.layers.map(layerName).join(", ")}.` : "";
-  return `Sketch of the body: z runs to the right, y up, x to the back. ${each.join("; ")}.${open.join("")}${layers}`;
+  const places = placesOf(draft.isStack);
+  const each = faces.map((face) => `${face} (${places[face]}): ${CONDITIONS[draft.faces[face].condition]}`);
+  const [away, up, right] = drawnAxes(draft);
+  const open = Object.entries({ [away]: "to the back", [up]: "upwards", [right]: "to the right" })
+    .filter(([axis]) => endsOf(draft, axis) !== "finite")
+    .map(([axis, way]) => ` The body goes on ${way}${endsOf(draft, axis) === "infinite" ? " and the other way" : ""} without end.`);
+  const layers = draft.isStack ? ` Layers from below: ${draft.layers.map(layerName).join(", ")}.` : "";
+  return `Sketch of the body: ${right} runs to the right, ${up} up, ${away} to the back. ${each.join("; ")}.${open.join("")}${layers}`;
 }

@@ -10,11 +10,6 @@ export const AXES = ["x", "y", "z"];
 export const FACES = ["x_low", "x_high", "y_low", "y_high", "z_low", "z_high"];
 
 export const LENGTH_UNITS = ["um", "mm", "cm", "m", "km", "in", "ft"];
-/** Metres in a unit, for drawings in proportion; other units are drawn without. */
-export const METRES = {
-  nm: 1e-9, um: 1e-6, "µm": 1e-6, mm: 1e-3, cm: 0.01, dm: 0.1, m: 1, km: 1000, in: 0.0254, ft: 0.3048,
-};
-
 /**
  * Words of each potential. `scale` runs from low to high and darkens all the way, so that it also reads in
  * grey; isotherms are drawn in ink on it.
@@ -108,10 +103,11 @@ export const UNIT_LABELS = {
   flow: "Total flows",
 };
 
-/** Where a face is in the sketch. */
-export const PLACES = {
-  x_low: "front", x_high: "back", y_low: "bottom", y_high: "top", z_low: "left end", z_high: "right end",
-};
+const LYING = { x_low: "front", x_high: "back", y_low: "bottom", y_high: "top", z_low: "left end", z_high: "right end" };
+const STANDING = { x_low: "left", x_high: "right", y_low: "front", y_high: "back", z_low: "bottom", z_high: "top" };
+
+/** Where each face is in the sketch: a stack stands on its first layer, any other body lies along z. */
+export const placesOf = (isStack) => (isStack ? STANDING : LYING);
 
 export const CONDITIONS = {
   held: "held at a value",

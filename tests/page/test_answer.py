@@ -63,8 +63,48 @@ def test_picture_holds_the_numbers_of_the_service(page: Page) -> None:
     (grid,) = caught.value.json()["grids"]
     drawn = page.evaluate("document.getElementById('picture').data[0].z")
     # Rows run along y, columns along x.
-    for column, row in ((0, 0), (80, 0), (13, 57)):
+    for column, row in ((0, 0), (84, 0), (13, 57)):
         assert drawn[row][column] == grid["potential"][column][row][0]
+
+
+def test_picture_has_the_edges_of_patches_where_they_are(page: Page) -> None:
+    page.locator("#z_low-held-patch-0-x-to").fill("3.5 cm")
+    page.locator("#plane-position").fill("0")
+    compute(page)
+    (grid,) = sent(page, "fields")["evaluate"]["grids"]
+    # Every edge has a place of its own, as it was typed, and one on either side that no eye can tell from it.
+    assert {4.98, 5, 5.02, 34.98, "3.5 cm", 35.02} <= set(grid["x"])
+    drawn = page.evaluate(
+        "(({ x, y, z }) => ({ x, row: z[y.indexOf(30)] }))(document.getElementById('picture').data[0])"
+    )
+    at = dict(zip(drawn["x"], drawn["row"], strict=True))
+    assert drawn["x"] == sorted(drawn["x"])
+    assert (at[4.98], at[5.02], at[34.98], at[35.02]) == (30, 640, 640, 30)
+
+
+def test_picture_outlives_a_turned_phone(page: Page) -> None:
+    load_example(page, "Power module")
+    compute(page)
+    width = "document.getElementById('picture')._fullLayout.width"
+    for screen, drawn in ((390, f"() => {width} < 390"), (1280, f"() => {width} > 500")):
+        page.set_viewport_size({"width": screen, "height": 844})
+        page.wait_for_function(drawn)
+        expect(page.locator("#picture .main-svg").first).to_be_visible()
+        expect(page.locator("#picture .annotation-text")).to_have_text(["base", "solder", "ceramic", "copper"])
+        # The bar of colours lies under a narrow picture and stands beside a wide one.
+        bar = page.locator("#picture .cbfills").bounding_box()
+        assert bar is not None
+        assert (bar["width"] > bar["height"]) == (screen == 390)
+
+
+def test_place_that_rounding_left_of_zero_is_zero(page: Page) -> None:
+    shown = page.evaluate(
+        """async () => {
+            const { placed } = await import("/static/numbers.js");
+            return [placed(-1.77636e-15, 40), placed(1e-6, 40), placed(0, 0), placed(-2.5, 40)];
+        }"""
+    )
+    assert shown == ["0", "0.000001", "0", f"{MINUS}2.5"]
 
 
 def test_flows_without_finite_value_say_why(page: Page) -> None:
@@ -129,8 +169,9 @@ def test_values_behind_the_picture_can_be_read_and_saved(page: Page) -> None:
     with page.expect_download() as caught:
         page.get_by_role("button", name="Save all values (CSV)").click()
     rows = Path(caught.value.path()).read_text().splitlines()
-    assert len(rows) == 82
-    assert {len(row.split(",")) for row in rows} == {82}
+    (grid,) = sent(page, "fields")["evaluate"]["grids"]
+    assert len(rows) == 1 + len(grid["y"])
+    assert {len(row.split(",")) for row in rows} == {1 + len(grid["x"])}
 
 
 def test_picture_is_saved_as_an_image(page: Page) -> None:

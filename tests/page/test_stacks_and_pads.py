@@ -64,6 +64,27 @@ def test_section_through_a_stack_shows_both_sides_of_its_interfaces(page: Page) 
     expect(page.locator("#picture-caption")).to_contain_text("Firm lines are contacts")
 
 
+def test_stack_stands_on_its_first_layer(page: Page) -> None:
+    load_example(page, "Power module")
+    for face, place in (("z_low", "bottom"), ("z_high", "top"), ("y_low", "front"), ("x_low", "left")):
+        expect(page.get_by_role("group", name=face)).to_contain_text(f"{face} {place}")
+    sketch = page.locator("#sketch")
+    expect(sketch).to_have_accessible_name(
+        re.compile("x runs to the right, z up, y to the back.*z_high .top.: given inflow")
+    )
+    heights = dict(
+        sketch.locator(".face-label-name").evaluate_all(
+            "names => names.map((name) => [name.textContent, name.getBoundingClientRect().top])"
+        )
+    )
+    assert heights["z_high"] < heights["x_low"] < heights["z_low"]
+    compute(page)
+    expect(page.locator("#flows tbody")).to_contain_text("z_low bottom")
+    # A body of one material lies along z.
+    load_example(page, "Crown brick")
+    expect(page.get_by_role("group", name="z_low")).to_contain_text("z_low left end")
+
+
 def test_layers_are_added_and_removed(page: Page) -> None:
     load_example(page, "Crown brick")
     page.get_by_label("Body", exact=True).select_option("stack")
@@ -109,6 +130,9 @@ def test_pads_and_resistances_are_told_and_saved(page: Page) -> None:
     pads = page.get_by_role("region", name="Pads")
     expect(pads.get_by_role("row").nth(1)).to_contain_text("valve A")
     expect(pads.get_by_role("row").nth(1)).to_contain_text("30.000000 W in")
+    # The pad to look after is told in words.
+    expect(pads.get_by_text("highest of all pads")).to_have_count(1)
+    expect(pads.get_by_role("row").nth(1)).to_contain_text("highest of all pads")
     cells = page.get_by_role("region", name="Matrix of rises").get_by_role("cell")
     expect(cells).to_have_count(9)
     assert [float(cells.nth(index).inner_text()) for index in range(3)] == pytest.approx(matrix[0], rel=1e-6)
