@@ -78,14 +78,14 @@ class Reached:
     """Where the disturbance has fallen below a fraction of its largest size on the face.
 
     distance: from the face, along its axis; error_bound: of that. at: the place (x, y, z) that falls below last.
-    Where it never falls below both are None, at is at the far end and left what is left of it there, in parts of its
+    Where it never falls below all three are None, and left is what is left of it at the far end, in parts of its
     largest size.
     """
 
     fraction: float
     distance: float | None
     error_bound: float | None
-    at: tuple[float, float, float]
+    at: tuple[float, float, float] | None
     left: float | None = None
 
 
@@ -258,7 +258,7 @@ class _Disturbance:
         above = np.flatnonzero(sizes >= wanted)
         at, value, bound = self._worst(float(distances[-1]), self.tolerance)
         if value + bound >= wanted:
-            return Reached(fraction, None, None, at, value / self.largest)
+            return Reached(fraction, None, None, None, value / self.largest)
         near, far = float(distances[above[-1]]) if above.size else 0.0, float(distances[-1])
         step = self._step_at(near, far, lambda place: self._worst(place, self.tolerance)[1:], wanted)
         if step is not None:
@@ -288,8 +288,7 @@ class _Disturbance:
         distances, _ = self._first_look(wanted)
         sizes, bound = self._along(middle, distances)
         if sizes[-1] + bound >= wanted:
-            end = self._place(middle, float(distances[-1]))
-            return Reached(fraction, None, None, end, float(sizes[-1]) / self.largest)
+            return Reached(fraction, None, None, None, float(sizes[-1]) / self.largest)
         above = np.flatnonzero(sizes >= wanted)
         if above.size:
             near, far = float(distances[above[-1]]), float(distances[above[-1] + 1])

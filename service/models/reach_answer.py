@@ -32,8 +32,9 @@ class Reached(Model):
     error_bound: float | None = Field(
         description="The distance is not further off; unit `length`. null with it.", examples=[3e-8]
     )
-    at: list[float | None] = Field(
-        description="The place that falls below last, along x, y and z; unit `length`. null far along an axis.",
+    at: list[float | None] | None = Field(
+        description="The place that falls below last, along x, y and z; unit `length`. A coordinate is null far along "
+        "an axis, the whole where there is no such place.",
         examples=[[39.9, 30, 56.8]],
     )
     left: float | None = Field(
@@ -62,14 +63,17 @@ class Decay(Model):
     """How disturbances die away far from the face."""
 
     length: float | None = Field(
-        description="The distance over which the slowest mode falls by a factor e; unit `length`. null where there is "
-        "none.",
+        description="The distance over which the slowest mode that decays falls by a factor e; unit `length`. null "
+        "where there is none.",
         examples=[29.8],
     )
     rates: list[DecayRate] = Field(description="The slowest modes.")
     reason: str | None = Field(
-        description="Why there is no decay length, where there is none.",
-        examples=["The sides are insulated, so the mean over the section does not decay."],
+        description="Why there is no decay length, where there is none, or what does not decay beside it.",
+        examples=[
+            "The sides are insulated, so the mean over the section does not decay; the length is that of the first "
+            "mode that does."
+        ],
     )
 
 

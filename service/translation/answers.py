@@ -21,6 +21,10 @@ FloatArray = NDArray[np.float64]
 KeepGoing = Callable[[], None]
 Warning_ = dict[str, str]
 
+# What rounding leaves of a coordinate that a search brings to zero, in parts of the lengths it works with. Places meant
+# by a client are further from zero: answers hold from a billionth of a side on.
+ROUNDING = 1e-14
+
 
 def read_tolerance(collector: Collector, accuracy: models.Accuracy | None, solution: Solution) -> float:
     """Largest error allowed, in the declared unit of the potential."""
@@ -148,6 +152,24 @@ def problem_warnings(problem: ReadProblem, solution: Solution) -> list[Warning_]
 def vector(units: UnitSystem, flux: FloatArray) -> dict[str, FloatArray]:
     """Components of a flux density along the axes, in the declared unit. flux: shape (3, ...)."""
     return {axis: units.write_array(Kind.FLUX, flux[index]) for index, axis in enumerate(AXES)}
+
+
+def place(problem: ReadProblem, position: Sequence[float]) -> list[float | None]:
+    """Coordinates of a place that was searched for; null for one that is infinitely far.
+
+    One that is zero but for rounding is zero.
+    """
+    rounding = ROUNDING * _widest(problem, position)
+    return [number_or_none(0.0 if abs(coordinate) <= rounding else coordinate) for coordinate in position]
+
+
+def _widest(problem: ReadProblem, position: Sequence[float]) -> float:
+    """The largest finite length that a place was found from."""
+    lengths = [*position, *(extent.high for extent in problem.extents)]
+    for patches in problem.patches.values():
+        for patch in patches:
+            lengths += [patch.where.p_low, patch.where.p_high, patch.where.q_low, patch.where.q_high]
+    return max((abs(length) for length in lengths if math.isfinite(length)), default=0.0)
 
 
 def number_or_none(value: float) -> float | None:

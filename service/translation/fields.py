@@ -122,6 +122,7 @@ class _Answering:
     """Answers the parts of one question, and collects what they say of accuracy on the way."""
 
     def __init__(self, problem: ReadProblem, solution: Solution, wanted: FieldsWanted, keep_going: KeepGoing) -> None:
+        self.problem = problem
         self.units = problem.units
         self.solution = solution
         self.wanted = wanted
@@ -165,7 +166,15 @@ class _Answering:
         found = self.solution.extremes(tolerance=self.wanted.tolerance, keep_going=self.keep_going)
         self._note_bound(found.hottest.error_bound, "#/extremes/highest")
         self._note_bound(found.coldest.error_bound, "#/extremes/lowest")
-        return {"highest": _place(found.hottest), "lowest": _place(found.coldest)}
+        return {"highest": self._place(found.hottest), "lowest": self._place(found.coldest)}
+
+    def _place(self, place: Place) -> dict[str, Any]:
+        return {
+            "at": answers.place(self.problem, place.position),
+            "value": float(place.value),
+            "error_bound": float(place.error_bound),
+            "where": place.where,
+        }
 
     def mean(self, index: int, part: FacePart) -> dict[str, Any]:
         """The mean of one part of a face."""
@@ -289,15 +298,6 @@ def _flux_warnings(found: Field, where: str) -> list[answers.Warning_]:
             where,
         )
     ]
-
-
-def _place(place: Place) -> dict[str, Any]:
-    return {
-        "at": [answers.number_or_none(float(coordinate)) for coordinate in place.position],
-        "value": float(place.value),
-        "error_bound": float(place.error_bound),
-        "where": place.where,
-    }
 
 
 def _corners_and_middle(grid: GridPlaces) -> FloatArray:

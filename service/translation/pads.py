@@ -169,8 +169,8 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
             | {
                 "flow": flow,
                 "mean": _bounded(mean),
-                "largest": _at(largest),
-                "centre": _at(Place(tuple(centre), float(potential), float(at_centres.potential_bound), "")),
+                "largest": _at(problem, largest),
+                "centre": _at(problem, Place(tuple(centre), float(potential), float(at_centres.potential_bound), "")),
             }
         )
     return {
@@ -218,9 +218,9 @@ def _bounded(number: Bounded) -> dict[str, float]:
     return {"value": float(number.value), "error_bound": float(number.error_bound)}
 
 
-def _at(place: Place) -> dict[str, Any]:
+def _at(problem: ReadProblem, place: Place) -> dict[str, Any]:
     return {
         "value": float(place.value),
         "error_bound": float(place.error_bound),
-        "at": [float(coordinate) for coordinate in place.position],
+        "at": answers.place(problem, place.position),
     }

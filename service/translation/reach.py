@@ -3,14 +3,18 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any, Literal
 
 import numpy as np
 
 from service import cost
-from service.core import Reach, Reached, Solution
+from service.core import Reached, Solution
+from service.core.mixed import MixedSolution
 from service.core.problem import AXES, Face, Film, Held, axis_of, is_high
+from service.core.reach import DecayRate
+from service.core.varying import VaryingSolution
 from service.models import reach as models
 from service.settings import Settings
 from service.translation import answers
@@ -44,6 +48,19 @@ def read_reach(
     ask = question.evaluate
     PlaceReader(collector, settings, problem).is_present(ask.face, ("evaluate", "face"))
     accuracy = answers.read_tolerance(collector, question.accuracy, solution)
+    if isinstance(solution, MixedSolution):
+        detail = (
+            "How far a face reaches is told of bodies without mixed faces. Give each face one condition, or ask "
+            "/v1/fields for points along a line from the face."
+        )
+        collector.add(("evaluate",), detail, "mixed-faces")
+    if isinstance(solution, VaryingSolution):
+        detail = (
+            "How far a face reaches is told where the conductivity does not vary with the potential and no face "
+            "radiates: only then is what the face drives a part of the field by itself. Leave `conductivity_law` and "
+            "`emissivity` out, or ask /v1/fields for points along a line from the face."
+        )
+        collector.add(("evaluate",), detail, "varies")
     collector.raise_if_any()
     tolerance = accuracy / (solution.span or 1.0)
     return ReachWanted(ask.face, tuple(ask.fractions), ask.change, ask.modes, tolerance, accuracy)
@@ -63,7 +80,8 @@ def answer_reach(
         wanted.face,
         wanted.fractions,
         unit=wanted.change == "uniform",
-        modes=wanted.modes,
+        # The mean over an insulated section does not decay; one more mode tells what does.
+        modes=wanted.modes + 1,
         tolerance=wanted.tolerance,
         keep_going=keep_going,
     )
@@ -71,7 +89,8 @@ def answer_reach(
     has_level = isinstance(condition, Held | Film)
     # A uniform change is one unit of what is declared, and the solver's own unit of an inflow is another.
     factor = 1.0 if has_level or wanted.change == "as_given" else problem.units.read(Kind.FLUX, 1.0)
-    places = np.array([reached.at for reached in found.worst if np.isfinite(reached.at).all()])
+    ends = [reached.at for reached in found.worst if reached.at is not None]
+    places = np.array([at for at in ends if np.isfinite(at).all()])
     return {
         "problem_id": problem.problem_id,
         "potential": problem.potential,
@@ -85,7 +104,7 @@ def answer_reach(
             "largest": {"value": factor * found.largest, "error_bound": factor * found.largest_bound},
             "worst": [_reached(problem, wanted.face, reached) for reached in found.worst],
             "on_axis": [_reached(problem, wanted.face, reached) for reached in found.on_axis],
-            "decay": _decay(problem, found),
+            "decay": _decay(problem, found.rates, wanted.modes),
         },
     }
 
@@ -99,7 +118,7 @@ def _reached(problem: ReadProblem, face: Face, reached: Reached) -> dict[str, An
         "fraction": reached.fraction,
         "distance": reached.distance,
         "error_bound": reached.error_bound,
-        "at": list(reached.at),
+        "at": None if reached.at is None else answers.place(problem, reached.at),
         "left": reached.left,
         "reason": reason,
     }
@@ -114,16 +133,21 @@ def _far_side(problem: ReadProblem, face: Face) -> str:
     return f"At the opposite face {opposite}, {problem.units.show(Kind.LENGTH, length)} away"
 
 
-def _decay(problem: ReadProblem, found: Reach) -> dict[str, Any]:
+def _decay(problem: ReadProblem, rates: Sequence[DecayRate], shown: int) -> dict[str, Any]:
+    """How disturbances die away. rates: of all modes that are known. shown: how many of them are listed."""
     reason = None
     if problem.body.layers:
         reason = "The layers of a stack decay together; their rates are not listed."
-    elif not found.rates:
+    elif not rates:
         reason = "The section has no end along an axis, so its modes are not separate and fall as powers of distance."
-    elif found.rates[0].length is None:
-        reason = "The sides are insulated, so the mean over the section does not decay."
+    elif rates[0].length is None:
+        reason = (
+            "The sides are insulated, so the mean over the section does not decay; the length is that of the first "
+            "mode that does."
+        )
+    listed = rates[:shown]
     return {
-        "length": found.rates[0].length if found.rates else None,
-        "rates": [{"numbers": list(mode.numbers), "rate": mode.rate, "length": mode.length} for mode in found.rates],
+        "length": next((mode.length for mode in rates if mode.length is not None), None),
+        "rates": [{"numbers": list(mode.numbers), "rate": mode.rate, "length": mode.length} for mode in listed],
         "reason": reason,
     }

@@ -210,3 +210,20 @@ async def test_pads_are_counted(settings: Settings) -> None:
     async with open_client(settings.model_copy(update={"pads": 1})) as client:
         document = check_problem_document(await client.post("/v1/pads", json={"problem": plate()}), 422)
         assert "There are 2 pads; at most 1 are allowed" in document["errors"][0]["detail"]
+
+
+async def test_place_in_the_middle_of_an_endless_plate_is_told_without_rounding(client: httpx.AsyncClient) -> None:
+    """By symmetry the largest potential is at the middle of the pad, which a search finds but for rounding."""
+    pad = {"x": [-7, 7], "y": [-9.1, 9.1], "flow": 3}
+    problem = {
+        "units": {"length": "mm"},
+        "body": {"size": {"x": "infinite", "y": "infinite", "z": 5}, "conductivity": 3},
+        "faces": {
+            "z_low": {"condition": "flux", "inflow": {"map": "patches", "background": 0, "patches": [pad]}},
+            "z_high": {"condition": "held", "value": 20},
+        },
+    }
+    found = (await client.post("/v1/pads", json={"problem": problem})).json()
+    assert found["pads"][0]["largest"]["at"] == [0, 0, 0]
+    evaluate = {"problem": problem, "evaluate": {"extremes": True}}
+    assert (await client.post("/v1/fields", json=evaluate)).json()["extremes"]["highest"]["at"] == [0, 0, 0]

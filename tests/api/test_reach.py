@@ -29,9 +29,14 @@ async def test_a_slab_halves_in_its_middle(client: httpx.AsyncClient) -> None:
     for reached in (*found["worst"], *found["on_axis"]):
         assert abs(reached["distance"] - 25 * (1 - reached["fraction"])) <= reached["error_bound"] < 1e-5
         assert (reached["left"], reached["reason"]) == (None, None)
-    assert found["decay"]["length"] is None
-    assert found["decay"]["reason"] == "The sides are insulated, so the mean over the section does not decay."
-    assert found["decay"]["rates"][1]["rate"] == pytest.approx(math.pi / 60 * math.sqrt(95 / 130))
+    rate = math.pi / 60 * math.sqrt(95 / 130)
+    assert found["decay"]["rates"][0]["length"] is None
+    assert found["decay"]["rates"][1]["rate"] == pytest.approx(rate)
+    assert found["decay"]["length"] == pytest.approx(1 / rate)
+    assert found["decay"]["reason"].startswith("The sides are insulated, so the mean over the section does not decay;")
+    alone = await reach(client, slab(20, 80), "z_low", fractions=[0.5], modes=1)
+    assert [mode["length"] for mode in alone["decay"]["rates"]] == [None]
+    assert alone["decay"]["length"] == pytest.approx(1 / rate)
 
 
 async def test_what_never_falls_below_is_null_with_a_reason(client: httpx.AsyncClient) -> None:
@@ -39,7 +44,8 @@ async def test_what_never_falls_below_is_null_with_a_reason(client: httpx.AsyncC
     found = await reach(client, slab() | {"faces": slab()["faces"] | {"z_high": film}}, "z_low", fractions=[0.1])
     (reached,) = found["worst"]
     # k / h = 50 mm: 50 / (25 + 50) of it is left.
-    assert (reached["distance"], reached["error_bound"]) == (None, None)
+    assert (reached["distance"], reached["error_bound"], reached["at"]) == (None, None, None)
+    assert found["on_axis"][0]["at"] is None
     assert reached["left"] == pytest.approx(2 / 3)
     assert reached["reason"] == "At the opposite face z_high, 25 mm away, 0.667 of it is left."
 
