@@ -221,19 +221,45 @@ def _check_contacts(body: Body, faces: tuple[Face, ...]) -> None:
                         "value; the flow between them has no bound. Leave a gap, or put a film on one of them.",
                         ("faces", face, "pads", index),
                     )
-            for side in body.present_faces:
-                condition = body.faces[side]
-                if not (isinstance(condition, Held) and axis_of(side) != axis_of(face)):
-                    continue
-                along = axes_along(face).index(axis_of(side))
-                ends = ((pad.where.p_low, pad.where.p_high), (pad.where.q_low, pad.where.q_high))[along]
+            for side, condition in _held_sides(body, face, pad.where):
                 values = (condition.value.lowest, condition.value.highest)
-                if body.end_of(side) in ends and any(_differ(pad.value, value) for value in values):
+                if any(_differ(pad.value, value) for value in values):
                     raise NotPhysical(
                         f"The held pad {index} of {face} touches the face {side}, which is not held at the same value "
                         "all over; the flow between them has no bound. Leave a gap, or put a film on the pad.",
                         ("faces", face, "pads", index),
                     )
+
+
+def check_apart(body: Body, spots: Sequence[Spot]) -> None:
+    """Refuse held spots that touch something else held along an edge, whatever at: the conductance has no bound."""
+    for spot in spots:
+        for index, pad in enumerate(pads_of(body, spot.face)):
+            if index != spot.pad and isinstance(pad, HeldPad) and _share_an_edge(pad.where, spot.where):
+                raise NotPhysical(
+                    f"The held pads {spot.pad} and {index} of {spot.face} touch along an edge; the conductance between "
+                    "them has no bound. Leave a gap, or put a film on one of them.",
+                    ("faces", spot.face, "pads", index),
+                )
+        for side, _ in _held_sides(body, spot.face, spot.where):
+            raise NotPhysical(
+                f"The held pad {spot.pad} of {spot.face} touches the held face {side}; the conductance between them "
+                "has no bound. Leave a gap, or put a film on the pad.",
+                ("faces", spot.face, "pads", spot.pad or 0),
+            )
+
+
+def _held_sides(body: Body, face: Face, where: Rectangle) -> list[tuple[Face, Held]]:
+    """The held faces that a rectangle of another face touches along an edge."""
+    found = []
+    for side in body.present_faces:
+        condition = body.faces[side]
+        if isinstance(condition, Held) and axis_of(side) != axis_of(face):
+            along = axes_along(face).index(axis_of(side))
+            ends = ((where.p_low, where.p_high), (where.q_low, where.q_high))[along]
+            if body.end_of(side) in ends:
+                found.append((side, condition))
+    return found
 
 
 def _share_an_edge(one: Rectangle, two: Rectangle) -> bool:

@@ -19,6 +19,7 @@ from numpy.typing import NDArray
 from scipy.linalg import cho_factor, cho_solve
 
 from service.core import time_error, time_form
+from service.core.errors import NotPhysical
 from service.core.field import kept_rows
 from service.core.lines.line import PRIMITIVE, VALUE
 from service.core.lines.places import Places
@@ -36,6 +37,10 @@ BASE_ACCURACY = 1e-13
 
 # Refinements looked at together: all panels, half and a quarter as many along each axis.
 LEVELS = 3
+
+# Steps between the doubles about a panel's edges that the narrowest one is wide at the least, so that rounding leaves
+# the grading as it is.
+LEAST_STEPS = 16
 
 
 @dataclass(frozen=True, eq=False)
@@ -76,8 +81,22 @@ class System:
         areas = np.concatenate([grid.areas for grid in self.grids])
         matrix.flat[:: areas.size + 1] += 1 / (areas * self.spread(np.array([spot.excess for spot in self.base.spots])))
         # The transpose is the same and in the order of LAPACK.
-        factor = cho_factor(matrix.T, check_finite=False, overwrite_a=True)
-        return np.asarray(cho_solve(factor, potentials, check_finite=False))
+        try:
+            factor = cho_factor(matrix.T, check_finite=False, overwrite_a=True)
+            flows = np.asarray(cho_solve(factor, potentials, check_finite=False))
+        except np.linalg.LinAlgError:
+            raise self.without_digits() from None
+        if not np.isfinite(flows).all():
+            raise self.without_digits()
+        return flows
+
+    def without_digits(self) -> NotPhysical:
+        """What is raised where rounding leaves no digit of the flows."""
+        return NotPhysical(
+            "The pads of the mixed faces and the gaps between them are too unlike in size for the digits of numbers; "
+            "leave the least of them out, or make it larger.",
+            ("faces", self.base.faces[0], "pads"),
+        )
 
     def summed(self, flows: FloatArray) -> FloatArray:
         """Total of each spot, shape (number of spots, n), of flows of the panels."""
@@ -116,6 +135,15 @@ def _grid(base: Base, spot: Spot, count: int) -> Panels:
     return Panels(edges[0], edges[1], is_high(spot.face))
 
 
+def are_told_apart(base: Base, spot: Spot, count: int) -> bool:
+    """Whether the edges of so many panels along each axis of a spot keep their distances when they are rounded."""
+    grid = _grid(base, spot, count)
+    return all(
+        bool((np.diff(edges) >= LEAST_STEPS * np.spacing(np.abs(edges).max())).all())
+        for edges in (grid.first, grid.second)
+    )
+
+
 def needs_balance(base: Base) -> bool:
     """Whether nothing but spots fixes the level, so that all flows have to balance."""
     return keeps_level(lines_of(base.body))
@@ -148,7 +176,10 @@ def solve_system(
     if constant:
         total = sums.sum(axis=0)
         equations, right = np.vstack([equations, total[1:]]), np.append(right, -given - total[0])
-    unknown = np.linalg.solve(equations, right) if right.size else right
+    try:
+        unknown = np.linalg.solve(equations, right) if right.size else right
+    except np.linalg.LinAlgError:
+        raise system.without_digits() from None
     found = answers[:, 0] + answers[:, 1:] @ unknown
     known[floating] = unknown[: floating.size]
     return Refined(system.grids, tuple(np.split(found, system.starts[1:-1])), known)

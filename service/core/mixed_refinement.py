@@ -20,6 +20,7 @@ from service.core.field import KeepGoing, Setting
 from service.core.mixed_base import Base, Spot, pads_of, with_faces
 from service.core.mixed_panels import (
     Refined,
+    are_told_apart,
     base_means,
     given_total,
     needs_balance,
@@ -27,7 +28,7 @@ from service.core.mixed_panels import (
     system_of,
     with_flows,
 )
-from service.core.problem import Body, Film, Held, HeldPad, axes_along, map_of
+from service.core.problem import AXES, Body, Film, Held, HeldPad, axes_along, map_of
 from service.core.solution import Solution
 from service.core.span import span_of
 from service.core.split import lines_of, parts_of, reference_level, scale_of
@@ -56,7 +57,7 @@ SAFETY = 6.0
 # The error is not told as less than this part of the first extrapolation, so that a step that vanishes by chance does
 # not count; nor as less than what changes would come to that go on to fall at their pace, or at the slowest. Below this
 # part of the final pace it may still become slower, and counts with this power.
-LEAST_STEP, PACE_SAFETY, SLOWEST_PACE = 0.1, 1.5, 1.25
+LEAST_STEP, PACE_SAFETY, SLOWEST_PACE = 0.2, 1.5, 1.25
 RESOLVED_PACE, UNRESOLVED_PACE = 0.75, 0.75
 
 # Local values gain between one order, on a pad and beside its border, and three. What is left is told from the pace of
@@ -98,6 +99,9 @@ class Ladder:
                 f"{COUNTS[0] ** 2 * len(base.spots)} panels at the least; {most_panels} are allowed.",
                 ("faces", base.faces[0], "pads"),
             )
+        allowed = [count for count in allowed if all(are_told_apart(base, spot, count) for spot in base.spots)]
+        if not allowed:
+            raise _too_narrow(base)
         needed = RESOLVING * max((_detail(body, base, spot) for spot in base.spots), default=1.0) ** RESOLVING_POWER
         enough = [count for count in allowed if count >= needed]
         self.counts = (enough or allowed[-1:]) if base.spots else allowed[:1]
@@ -189,6 +193,24 @@ class Ladder:
     def _span_of_base(self) -> float:
         lines = lines_of(self.base.body)
         return span_of(self.base.body, lines, parts_of(self.base.body, reference_level(self.base.body)))
+
+
+def _too_narrow(base: Base) -> NotPhysical:
+    spot = next(spot for spot in base.spots if not are_told_apart(base, spot, COUNTS[0]))
+    what = "A piece of the background" if spot.pad is None else f"Pad {spot.pad}"
+    path = ("faces", spot.face) if spot.pad is None else ("faces", spot.face, "pads", spot.pad)
+    where = spot.where
+    sizes = [
+        f"{high - low:.3g} wide at {AXES[axis]} = {low:g}"
+        for axis, (low, high) in zip(
+            axes_along(spot.face), ((where.p_low, where.p_high), (where.q_low, where.q_high)), strict=True
+        )
+    ]
+    return NotPhysical(
+        f"{what} of {spot.face} is {' and '.join(sizes)}, too narrow beside its coordinates for their digits; make it "
+        "wider, or count coordinates from a place near to it.",
+        path,
+    )
 
 
 def _detail(body: Body, base: Base, spot: Spot) -> float:

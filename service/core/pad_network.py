@@ -8,17 +8,17 @@ environment.
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
 
 from service.core import time_error
-from service.core.errors import NotPhysical
+from service.core.errors import NoSteadyState, NotPhysical
 from service.core.field import KeepGoing
 from service.core.mixed import LEAST_OF_WORST, MOST_PANELS, ORDER_OF_TOTALS
-from service.core.mixed_base import base_of, pads_of
+from service.core.mixed_base import Base, base_of, check_apart, pads_of
 from service.core.mixed_panels import System, needs_balance, system_of
 from service.core.mixed_refinement import LEVELS, Ladder
 from service.core.panels import STEP
@@ -60,18 +60,6 @@ class PadNetwork:
             return np.zeros(len(self.pads)), np.zeros(len(self.pads))
         # Much less than the entries where pads are close: their sums converge by themselves.
         return self._limits([matrix.sum(axis=1) for matrix in self._levels], len(self.pads) * self._rounding_of_finest)
-
-    def part(self, numbers: Sequence[int]) -> PadNetwork:
-        """The network of some of the pads; the others are held at zero, like the rest of the environment."""
-        block = np.ix_(numbers, numbers)
-        return replace(
-            self,
-            pads=tuple(self.pads[number] for number in numbers),
-            conductance=self.conductance[block],
-            error_bound=self.error_bound[block],
-            closed=self.closed and len(numbers) == len(self.pads),
-            _levels=tuple(matrix[block] for matrix in self._levels),
-        )
 
     def rises(self) -> tuple[FloatArray, FloatArray]:
         """Rise of each pad (row) above the environment for a unit of flow into each (column), the others passing none.
@@ -115,18 +103,34 @@ class PadNetwork:
 
 
 def pad_network(
-    body: Body, *, accuracy: float = 1e-6, most_panels: int = MOST_PANELS, keep_going: KeepGoing | None = None
+    body: Body,
+    asked: Sequence[tuple[Face, int]] | None = None,
+    *,
+    accuracy: float = 1e-6,
+    most_panels: int = MOST_PANELS,
+    keep_going: KeepGoing | None = None,
 ) -> PadNetwork:
     """The network of a body's held pads, those with a given flow included.
 
+    asked: which, by face and number, each once, all if None; the others are held at zero, like the environment.
     accuracy: of every conductance, in parts of the largest. Where `most_panels` do not suffice the bounds say what was
-    reached. Raises NotPhysical where no pad is held or a pad touches another.
+    reached. Raises NotPhysical where no pad is held or one touches something else that is held, and NoSteadyState for
+    a single pad from which nothing leads away.
     """
     ladder = Ladder(body, base_of(body), most_panels, keep_going)
     base = ladder.base
-    held = [number for number, spot in enumerate(base.spots) if spot.is_held]
+    numbers = {(spot.face, spot.pad): number for number, spot in enumerate(base.spots) if spot.is_held}
+    held = list(numbers.values()) if asked is None else [numbers[pad] for pad in asked]
     if not held:
         raise NotPhysical("No pad is held; conductances join held pads.", ("faces", base.faces[0], "pads"))
+    check_apart(body, [base.spots[number] for number in held])
+    if len(held) == 1 and _is_closed(base, held):
+        raise NoSteadyState(
+            "A flow of {amount} into the held pad has no way out of this body: no face and no other pad is held or has "
+            "a film, so that its rise has no end.",
+            1.0,
+            ("faces",),
+        )
     count = ladder.counts[0]
     while True:
         if keep_going is not None:
@@ -166,8 +170,12 @@ def _limit(ladder: Ladder, held: Sequence[int], levels: Sequence[FloatArray]) ->
         spot = base.spots[number]
         assert spot.pad is not None
         pads.append((spot.face, spot.pad, pads_of(ladder.body, spot.face)[spot.pad].name))
-    closed = needs_balance(base) and all(spot.is_held for spot in base.spots)
-    return PadNetwork(tuple(pads), values, bounds, closed, tuple(levels), ladder)
+    return PadNetwork(tuple(pads), values, bounds, _is_closed(base, held), tuple(levels), ladder)
+
+
+def _is_closed(base: Base, held: Sequence[int]) -> bool:
+    """Whether nothing but these spots takes up a flow."""
+    return needs_balance(base) and len(held) == len(base.spots)
 
 
 def _conductances(system: System, held: Sequence[int]) -> FloatArray:

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from service.core.network import Network
 from service.core.pad_network import PadNetwork, pad_network
-from service.core.problem import Face, HeldPad, Mixed
+from service.core.problem import HeldPad, Mixed
 from service.translation.answers import KeepGoing
 from service.translation.collector import Collector
 from service.translation.pads import Pad
@@ -33,6 +33,8 @@ def are_held(collector: Collector, problem: ReadProblem, pads: list[Pad], *, is_
         if _is_on_mixed(problem, pad) and not _is_held(problem, pad):
             detail = f"On the mixed face {pad.face} resistances lead to held pads; name one of these by `patch`."
             collector.add(("evaluate", "pads", index), detail, "not-held")
+        elif _is_held(problem, pad) and any(pad.part == other.part for other in pads[:index]):
+            collector.add(("evaluate", "pads", index), "This held pad is named before; name each once.", "repeated")
     held = [_is_held(problem, pad) for pad in pads]
     if any(held) and not all(held):
         detail = "Some pads are held and others are fed a flow; name pads of one kind."
@@ -56,10 +58,8 @@ def held_resistances(
 
     accuracy: of conductances, as part of the largest.
     """
-    found = pad_network(problem.body, accuracy=accuracy, keep_going=keep_going)
-    number_of: dict[tuple[Face, int | None], int] = {(face, patch): n for n, (face, patch, _) in enumerate(found.pads)}
-    numbers = [number_of[pad.face, pad.part.patch] for pad in pads]
-    found = found.part(numbers)
+    asked = [(pad.face, pad.part.patch) for pad in pads if pad.part.patch is not None]
+    found = pad_network(problem.body, asked, accuracy=accuracy, keep_going=keep_going)
     between, between_bound = -found.conductance, found.error_bound.copy()
     np.fill_diagonal(between, 0.0)
     np.fill_diagonal(between_bound, 0.0)

@@ -450,3 +450,38 @@ def test_a_held_face_beside_drives_through_a_pad() -> None:
     whole = Mixed(INSULATED, (FilmPad(Rectangle(0.0, 1.0, 0.0, 1.0), 4.0, 1.0),))
     flow = solve_mixed(block(whole, z_low=Held(FaceMap.uniform(0.0)))).pads()[0].flow
     assert flow.value == pytest.approx(1.0 / (0.5 + 0.25), rel=1e-9)
+
+
+@pytest.mark.parametrize("apart", [1e6, 1e9, 1e11])
+def test_square_lets_in_as_much_as_alone_with_another_very_far_away(apart: float) -> None:
+    """A unit square at 1 and one at 0; from a distance r the second takes up no more than 1 / r of it."""
+    far = HeldPad(Rectangle(apart, apart + 1.0, -0.5, 0.5), 0.0)
+    near = HeldPad(Rectangle(-0.5, 0.5, -0.5, 0.5), 1.0)
+    flow = solve_mixed(replace(HALF_SPACE, faces={"z_low": Mixed(INSULATED, (near, far))})).pads()[0].flow
+    assert abs(flow.value - SQUARE) <= flow.error_bound + SQUARE / apart
+    assert flow.error_bound < 0.01 * SQUARE
+
+
+@pytest.mark.parametrize(
+    "narrow",
+    [Rectangle(1e12, 1e12 + 1.0, 0.0, 1.0), Rectangle(1e15, 1e15 + 1.0, 0.0, 1.0), Rectangle(5.0, 5.0 + 1e-13, 0, 5)],
+    ids=["1e12 away", "1e15 away", "a sliver"],
+)
+def test_pad_too_narrow_for_the_digits_of_its_coordinates_is_refused(narrow: Rectangle) -> None:
+    body = replace(HALF_SPACE, faces={"z_low": Mixed(INSULATED, (TWO[0], HeldPad(narrow, 0.0)))})
+    with pytest.raises(NotPhysical, match=r"Pad 1 of z_low .* too narrow beside its coordinates") as refused:
+        solve(body)
+    assert refused.value.field == ("faces", "z_low", "pads", 1)
+
+
+def test_sliver_that_has_its_digits_is_solved() -> None:
+    """A strip of a width w lets in the less the narrower it is, as the reciprocal of ln(1 / w)."""
+    flows = []
+    for width in (1e-3, 1e-6, 1e-9):
+        strip = HeldPad(Rectangle(5.0, 5.0 + width, 0.0, 5.0), 1.0)
+        sliver = replace(HALF_SPACE, faces={"z_low": Mixed(INSULATED, (strip,))})
+        flows.append(solve_mixed(sliver, accuracy=1e-3).pads()[0].flow)
+    # Half the flow of a long strip of a length L on a half-space is that of a wire: pi L / ln(4 L / w) and more terms.
+    one, two, three = (1 / flow.value for flow in flows)
+    assert two - one == pytest.approx(math.log(1e3) / (5 * math.pi), rel=0.03)
+    assert three - two == pytest.approx(math.log(1e3) / (5 * math.pi), rel=0.03)
