@@ -62,8 +62,20 @@ FUNCTIONS: dict[str, Function] = {
 }
 SEVERAL = ("min", "max")
 
+# Arguments at which the slope of a function is infinite though its value is not.
+STEEP_AT: dict[str, tuple[float, ...]] = {"sqrt": (0.0,), "asin": (-1.0, 1.0), "acos": (-1.0, 1.0)}
+
 Numbers = Mapping[str, FloatArray]
 Jets = Mapping[str, Jet]
+
+
+@dataclass(frozen=True)
+class Steep:
+    """A function whose slope is infinite where its argument has one of some values, and where it is in the text."""
+
+    name: str
+    character: int
+    values: tuple[float, ...]
 
 
 @dataclass(frozen=True)
@@ -71,7 +83,7 @@ class Node:
     """A part of an expression. of_numbers, of_jets: its value from those of the coordinates.
 
     names: the coordinates it depends on. switch: of abs, min and max the part whose change of sign is a kink.
-    children: the parts it is made of.
+    children: the parts it is made of. steep: where its slope over its only part is infinite, if anywhere.
     """
 
     of_numbers: Callable[[Numbers], FloatArray]
@@ -79,11 +91,17 @@ class Node:
     names: frozenset[str]
     children: tuple[Node, ...] = ()
     switch: Node | None = None
+    steep: Steep | None = None
 
     def switches(self) -> list[Node]:
         """All parts whose change of sign is a kink."""
         own = [] if self.switch is None else [self.switch]
         return own + [switch for child in self.children for switch in child.switches()]
+
+    def steep_parts(self) -> list[tuple[Steep, Node]]:
+        """All parts that have an infinite slope somewhere, and what that is a slope over."""
+        own = [] if self.steep is None else [(self.steep, self.children[0])]
+        return own + [found for child in self.children for found in child.steep_parts()]
 
 
 @dataclass(frozen=True)
@@ -217,6 +235,7 @@ class _Reader:
             inner.names,
             (inner,),
             inner if name == "abs" else None,
+            Steep(name, self._where(tree), STEEP_AT[name]) if name in STEEP_AT else None,
         )
 
     def _power(self, tree: ast.expr, base: Node, exponent: Node) -> Node:
@@ -239,7 +258,8 @@ class _Reader:
             jet = base.of_jets(jets, order)
             return jet.whole_power(int(power)) if power.is_integer() else jet.real_power(power)
 
-        return Node(lambda numbers: base.of_numbers(numbers) ** power, of_jets, base.names, (base,))
+        steep = Steep("the power", self._where(tree), (0.0,)) if 0.0 < power < 1.0 else None
+        return Node(lambda numbers: base.of_numbers(numbers) ** power, of_jets, base.names, (base,), steep=steep)
 
 
 def _constant(value: float) -> Node:

@@ -153,9 +153,18 @@ class _Maker:
         slope_error = self._slope_error(cells, knots, error)
         return replace(plain, error=error, slope_error=slope_error, peaks=(lowest, highest))
 
-    def jet(self, axis: int | None, boxes: tuple[FloatArray, FloatArray, FloatArray, FloatArray], order: int) -> Jet:
-        """Taylor coefficients along an axis over boxes (first low, first high, second low, second high)."""
-        names, roots = self.formula.names, self.formula.root
+    def jet(
+        self,
+        axis: int | None,
+        boxes: tuple[FloatArray, FloatArray, FloatArray, FloatArray],
+        order: int,
+        part: Node | None = None,
+    ) -> Jet:
+        """Taylor coefficients along an axis over boxes (first low, first high, second low, second high).
+
+        part: of the formula, all of it if left out.
+        """
+        names, roots = self.formula.names, self.formula.root if part is None else part
         with np.errstate(all="ignore"):
             jets = {
                 names[0]: Jet.box(boxes[0], boxes[1], order, varies=axis == 0),
@@ -210,6 +219,14 @@ class _Maker:
                 for name, own, at, along in zip(self.formula.names, knots, (i, j), self.varies, strict=True)
                 if along
             )
+            steep = self._steep_in(knots, int(i), int(j))
+            if steep is not None:
+                value, words = steep
+                raise NotPhysical(
+                    f"The slope of {words} of the expression is infinite where its argument comes to {value:g}, as it "
+                    f"does near {where}; no curved pieces follow that to the accuracy of answers. Give the data as "
+                    "readings, closer together towards there."
+                )
             raise NotPhysical(
                 f"The formula jumps, turns too sharply or is not finite near {where}; kinks may only run along an "
                 "axis. Use patches for a jump and readings for the rest."
@@ -218,6 +235,19 @@ class _Maker:
         rows = [own if along else np.array([0.0]) for own, along in zip(places, self.varies, strict=True)]
         left_out = float(np.abs(plain.at(rows[0], rows[1]) - self.factor * self.formula.at(rows[0], rows[1])).max())
         return largest + LEBESGUE**2 * (2 * left_out + self.rounding)
+
+    def _steep_in(self, knots: list[FloatArray], i: int, j: int) -> tuple[float, str] | None:
+        """The value at which a function of the formula has an infinite slope in a cell, and which; None if none has."""
+        first, second = (own if along else np.zeros(2) for own, along in zip(knots, self.varies, strict=True))
+        i, j = (at if along else 0 for at, along in zip((i, j), self.varies, strict=True))
+        ends = (first[i], first[i + 1], second[j], second[j + 1])
+        boxes = [np.array(end) for end in ends]
+        for steep, argument in self.formula.root.steep_parts():
+            of_it = self.jet(None, (boxes[0], boxes[1], boxes[2], boxes[3]), 0, argument).value
+            for value in steep.values:
+                if of_it.low - SHORTEST <= value <= of_it.high + SHORTEST:
+                    return value, f"{steep.name} at character {steep.character}"
+        return None
 
     def _slope_error(self, cells: _Cells, knots: list[FloatArray], error: float) -> float:
         """The remainder is close to a polynomial of the next degree, whose slopes are bounded by its size."""

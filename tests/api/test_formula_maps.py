@@ -108,6 +108,15 @@ async def test_problem_with_a_formula_is_kept_under_its_text(client: httpx.Async
     assert (await fields(client, question))["points"][0]["potential"] == pytest.approx(40.0)
 
 
+async def test_infinite_slope_is_named_with_its_function_and_what_to_give_instead(client: httpx.AsyncClient) -> None:
+    problem = block(z_low={"condition": "held", "value": formula("30 + 20*sqrt(x)")})
+    answer = await client.post("/v1/problems", json=problem)
+    (error,) = answer.json()["errors"]
+    assert error["pointer"] == "#/faces/z_low/value/expression"
+    assert error["detail"].startswith("The slope of sqrt at character 9 of the expression is infinite where")
+    assert error["detail"].endswith("Give the data as readings, closer together towards there.")
+
+
 @pytest.mark.parametrize(
     "text",
     [

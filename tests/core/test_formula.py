@@ -215,6 +215,11 @@ def test_highest_and_lowest_value_are_found(text: str, sign: int, value: float, 
         ("1/(x-20.123)", r"jumps, turns too sharply or is not finite near x = 20\.07"),
         ("atan(1e9*(x-3))", "jumps, turns too sharply or is not finite near x = "),
         ("abs(x-y)", "kinks may only run along an axis"),
+        ("2+sqrt(x)", "slope of sqrt at character 3 .* comes to 0, as it does near x = 0.0006"),
+        ("abs(x-20)^0.5", "slope of the power at character 11 .* comes to 0, as it does near x = "),
+        ("sqrt(y)*exp(-x)", "slope of sqrt at character 1 .* comes to 0, as it does near x = .*, y = 0.00"),
+        ("asin(x/40)", "slope of asin at character 1 .* comes to 1, as it does near x = 39.99"),
+        ("sqrt(x+1)+atan(1e9*(x-3))", "jumps, turns too sharply"),
     ],
 )
 def test_what_no_map_can_show_is_refused(text: str, sentence: str) -> None:
