@@ -13,6 +13,7 @@ from service import cost
 from service.core import Field, Grid, Place, Solution
 from service.core.estimate import Estimate
 from service.core.maps import Rectangle
+from service.core.mixed import MixedSolution
 from service.core.problem import AXES, axes_along
 from service.models import evaluate as models
 from service.settings import Settings
@@ -25,6 +26,10 @@ from service.translation.problem import ReadProblem
 from service.units import Kind, UnitSystem
 
 FloatArray = NDArray[np.float64]
+
+# A flux is poorly known where its bound is more than this part of it; fluxes below this part of the largest count as
+# that.
+POORLY_KNOWN, NEGLIGIBLE = 0.1, 1e-3
 
 # A search for both extremes looks at so many places along each axis first, and then climbs on so many small grids.
 FIRST_PLACES, CLIMB_PLACES, CLIMB_GRIDS = 25, 5, 80
@@ -140,7 +145,7 @@ class _Answering:
             with_flux=wanted.with_flux,
             keep_going=self.keep_going,
         )
-        self.warnings += _flux_warnings(found, f"#/grids/{index}/flux")
+        self.warnings += self._flux_warnings(found, f"#/grids/{index}/flux")
         self.bounds.append(float(found.potential_bound))
         self.places.append(_corners_and_middle(grid))
         return _grid_answer(self.units, grid, found, wanted)
@@ -156,7 +161,7 @@ class _Answering:
             with_flux=wanted.with_flux,
             keep_going=self.keep_going,
         )
-        self.warnings += _flux_warnings(found, "#/points")
+        self.warnings += self._flux_warnings(found, "#/points")
         self.bounds.append(float(found.potential_bound))
         return [_point_answer(self.units, point, found, row, wanted) for row, point in enumerate(wanted.points)]
 
@@ -189,10 +194,16 @@ class _Answering:
         found = self.solution.field_at(
             sides, tolerance=self.wanted.tolerance, with_flux=True, keep_going=self.keep_going
         )
-        self.warnings += _flux_warnings(found, f"#/interfaces/{index}/flux")
+        self.warnings += self._flux_warnings(found, f"#/interfaces/{index}/flux")
         self.bounds.append(float(found.potential_bound))
         self.places.append(sides)
         return interface_answer(self.units, self.solution.body, asked, found)
+
+    def _flux_warnings(self, found: Field, where: str) -> list[answers.Warning_]:
+        warnings = _without_finite_value(found, where)
+        if isinstance(self.solution, MixedSolution):
+            warnings += _poorly_known(found, where)
+        return warnings
 
     def _note_bound(self, bound: float, where: str) -> None:
         self.bounds.append(float(bound))
@@ -283,7 +294,31 @@ def _finite(potential: FloatArray) -> FloatArray:
     return potential
 
 
-def _flux_warnings(found: Field, where: str) -> list[answers.Warning_]:
+def _poorly_known(found: Field, where: str) -> list[answers.Warning_]:
+    """A remark on fluxes whose bounds are a considerable part of them, as they are beside pads of mixed faces."""
+    if found.flux is None or found.flux_bound is None:
+        return []
+    size = np.linalg.norm(found.flux, axis=0)
+    known = np.isfinite(size)
+    if not known.any():
+        return []
+    # Where next to nothing flows any bound is a large part of it; that matters to nobody.
+    counts = np.maximum(size, NEGLIGIBLE * size[known].max())
+    count = int((found.flux_bound[known] > POORLY_KNOWN * counts[known]).sum())
+    if not count:
+        return []
+    return [
+        answers.warning(
+            "flux-poorly-known",
+            f"At {count} of {size.size} places the bound of the flux is more than a tenth of the flux there. On pads "
+            "of mixed faces and beside them flux densities are known less well than flows: /v1/flux-totals tells what "
+            "passes through each pad.",
+            where,
+        )
+    ]
+
+
+def _without_finite_value(found: Field, where: str) -> list[answers.Warning_]:
     if found.flux is None:
         return []
     unbounded = ~np.isfinite(found.flux)

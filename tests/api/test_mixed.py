@@ -13,7 +13,7 @@ import httpx
 import numpy as np
 import pytest
 
-from tests.api.client import check_problem_document
+from tests.api.client import check_problem_document, pointers
 from tests.api.halden_reach import Json, changed
 from tests.api.wrong_requests import Wrong, check_wrong
 
@@ -85,6 +85,23 @@ async def test_tighter_accuracy_refines_flows_and_says_where_it_is_not_reached(c
     assert " A, wider than the accuracy asked for" in warning["message"]
     pads = await ask(client, "pads", problem, {"pads": [{"face": "z_high", "patch": 0}]}, accuracy={"relative": 6e-3})
     assert [warning["where"] for warning in pads["warnings"]] == []
+
+
+async def test_flux_that_is_poorly_known_beside_a_pad_is_warned_of(client: httpx.AsyncClient) -> None:
+    """On a pad bounds are as large as fluxes; well off it they are small, and in a corner next to nothing flows."""
+    problem = stub({**RETURN, "name": "feed", "x": [5, 25], "value": 1}, RETURN)
+
+    def question(*places: list[float]) -> Json:
+        return {"points": [{"at": place} for place in places], "quantities": ["flux"]}
+
+    found = await ask(client, "fields", problem, question([15, 30, 25], [40, 30, 0], [0, 0, 0]))
+    (warning,) = found["warnings"]
+    assert (warning["code"], warning["where"]) == ("flux-poorly-known", "#/points")
+    assert warning["message"].startswith("At 1 of 3 places the bound of the flux is more than a tenth")
+    on_pad, off_it, _ = found["points"]
+    assert on_pad["flux_error_bound"] > 0.1 * abs(on_pad["flux"]["z"])
+    assert off_it["flux_error_bound"] < 0.1 * abs(off_it["flux"]["x"])
+    assert (await ask(client, "fields", problem, question([40, 30, 0])))["warnings"] == []
 
 
 async def test_bound_of_a_single_held_pad_is_that_of_its_rise(client: httpx.AsyncClient) -> None:
@@ -248,3 +265,49 @@ TABLE = [
 @pytest.mark.parametrize("wrong", TABLE, ids=lambda wrong: wrong.name)
 async def test_wrong_mixed_face_is_answered_with_one_clear_sentence(client: httpx.AsyncClient, wrong: Wrong) -> None:
     await check_wrong(client, wrong)
+
+
+def row_of(count: int, **condition: Any) -> list[Json]:
+    """Pads side by side on the stub."""
+    width = 80 / count
+    return [{"x": [width * i, width * (i + 0.5)], "y": [10, 50], **condition} for i in range(count)]
+
+
+async def test_more_pads_than_are_solved_are_refused_by_a_limit(client: httpx.AsyncClient) -> None:
+    """On one face by the number that is set; on two by what is solved together, with a type of a limit."""
+    held: Json = {"condition": "held", "value": 1}
+    answer = await client.post("/v1/pads", json={"problem": stub(*row_of(65, **held))})
+    document = check_problem_document(answer, 422)
+    assert document["errors"][0]["detail"].startswith("There are 65 held pads and pads behind films; at most 64")
+    below = {"condition": "mixed", "background": INSULATED, "pads": row_of(33, **held)}
+    problem = changed(stub(*row_of(33, **held)), "faces/z_low", below)
+    document = check_problem_document(await client.post("/v1/pads", json={"problem": problem}), 422)
+    assert document["type"] == "/problem-types/too-costly"
+    assert (document["estimate"], document["limit"]) == (66 * 64, 4096)
+    assert "at most 64 are solved together" in document["detail"]
+
+
+async def test_single_pad_without_a_way_out_has_no_resistance(client: httpx.AsyncClient) -> None:
+    document = check_problem_document(await client.post("/v1/resistances", json={"problem": stub(RETURN)}), 422)
+    assert document["type"] == "/problem-types/no-steady-state"
+    assert "A flow of 1 A into the held pad has no way out" in document["detail"]
+
+
+async def test_touching_pads_have_no_resistance_between_them(client: httpx.AsyncClient) -> None:
+    problem = stub(RETURN, {**RETURN, "name": "beside", "x": [75, 79]}, LUG)
+    document = check_problem_document(await client.post("/v1/resistances", json={"problem": problem}), 422)
+    assert "touch along an edge; the conductance between them has no bound" in document["detail"]
+
+
+async def test_held_pad_named_twice_is_refused(client: httpx.AsyncClient) -> None:
+    twice = {"pads": [{"face": "z_high", "patch": "return"}, {"face": "z_high", "patch": 0}]}
+    problem = stub(RETURN, LUG)
+    answer = await client.post("/v1/resistances", json={"problem": problem, "evaluate": twice})
+    assert pointers(check_problem_document(answer, 422)) == ["#/evaluate/pads/1"]
+
+
+async def test_pad_too_narrow_for_its_digits_is_refused_where_it_stands(client: httpx.AsyncClient) -> None:
+    problem = stub(RETURN, {**FEED, "x": [5, "5.0000000000001 mm"]})
+    document = check_problem_document(await client.post("/v1/pads", json={"problem": problem}), 422)
+    assert pointers(document) == ["#/problem/faces/z_high/pads/1"]
+    assert "too narrow beside its coordinates" in document["detail"]
