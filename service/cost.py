@@ -86,6 +86,22 @@ def check_work(estimates: Sequence[Estimate], settings: Settings) -> None:
         )
 
 
+def check_preparation(estimate: Estimate, settings: Settings) -> None:
+    """Raise TooCostly when making a problem ready, before anything is asked of it, takes more than allowed."""
+    for amount, limit, what in (
+        (estimate.multiplications, settings.cost_multiplications, "multiplications"),
+        (estimate.bytes, settings.memory_bytes, "bytes of memory"),
+    ):
+        if amount > limit:
+            raise TooCostly(
+                f"The problem alone would take about {amount:.2g} {what} before anything is asked of it; at most "
+                f"{limit:.2g} are allowed. Give fewer readings on faces that are held or have a film, or a "
+                "conductivity that does not vary.",
+                amount,
+                limit,
+            )
+
+
 def check_pairs(work: float, limit: float) -> None:
     """Raise TooCostly when all pairs of pads take more multiplications than allowed."""
     if work > limit:

@@ -373,7 +373,7 @@ def _middle_slope(kirchhoff: Kirchhoff, law: FilmLaw, theta: FloatArray) -> floa
 def _setting(data: Transformed, films: Sequence[FilmFace], wanted: float) -> tuple[Setting, tuple[Part, ...]]:
     """The linear body of a step, and its parts without those that the iteration adds."""
     coefficients = {film.face: film.coefficient for film in films}
-    given = {film.face: _scaled(data.given[film.face], 1 / film.coefficient) for film in films}
+    given = {film.face: data.given[film.face].times(1 / film.coefficient) for film in films}
     iterated = {film.face: _iterated(data, film, wanted) for film in films}
     driven = data.with_films(coefficients, given)
     alone = data.with_films_alone(coefficients, iterated)
@@ -440,11 +440,6 @@ def _of_low_rank(table: FloatArray, small: float) -> FloatArray:
     left_out = np.sqrt(np.cumsum(singular[::-1] ** 2))[::-1]
     rank = max(int(np.count_nonzero(left_out > small)), 1)
     return np.asarray((left[:, :rank] * singular[:rank]) @ right[:rank])
-
-
-def _scaled(face_map: FaceMap, factor: float) -> FaceMap:
-    """The map times a factor; its errors are counted with what is left over."""
-    return replace(face_map, table=face_map.table * factor, usual=face_map.usual * factor, peaks=None, error=0.0)
 
 
 def _read(data: Transformed, setting: Setting, film: FilmFace, wanted: float, keep_going: KeepGoing | None) -> _Reading:

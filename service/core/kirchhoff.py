@@ -15,13 +15,13 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.field import KeepGoing
 from service.core.laws import ConductivityLaw, FilmLaw, Kirchhoff
 from service.core.maps import DEGREE, FaceMap, chebyshev_places
 from service.core.problem import Body, Face, Film, Held, Insulated, axes_along, map_of
 from service.core.split import reference_level
 
 FloatArray = NDArray[np.float64]
-Function = Callable[[FloatArray], FloatArray]
 
 # Error of a curved map that is aimed at, in parts of the range of its data, and below which it is rounding.
 GOAL, ROUNDING = 1e-12, 4e-15
@@ -31,6 +31,12 @@ MOST_PIECES, STRAIGHT_PIECES = 48, 40
 
 # Places between neighbouring points of a piece at which the error is read off, and how many times that it may be.
 READ_OFF, BETWEEN = 4, 2.0
+
+# Differences that are looked at in one run.
+IN_RUN = 1_000_000
+
+# Degree of what a face gives off by radiation.
+RADIATED = 4
 
 # A polynomial of the degree of a piece that is bounded by 1 from -1 to 1 has slopes of at most this (Markov 1889).
 MARKOV = float(DEGREE**2)
@@ -78,10 +84,15 @@ def film_faces(body: Body) -> tuple[Face, ...]:
     return tuple(face for face in body.present_faces if isinstance(body.faces[face], Film))
 
 
-def transform(body: Body) -> Transformed:
-    """The data of a body in theta."""
-    reference = reference_level(body)
-    kirchhoff = Kirchhoff(body.law or ConductivityLaw.constant(), reference)
+def kirchhoff_of(body: Body) -> Kirchhoff:
+    """The transformation of a body's law, from its reference level."""
+    return Kirchhoff(body.law or ConductivityLaw.constant(), reference_level(body))
+
+
+def transform(body: Body, keep_going: KeepGoing | None = None) -> Transformed:
+    """The data of a body in theta. keep_going: asked between runs of large maps."""
+    kirchhoff = kirchhoff_of(body)
+    reference = kirchhoff.reference
     held, ambients, given, laws = {}, {}, {}, {}
     for face in body.present_faces:
         condition = body.faces[face]
@@ -91,7 +102,8 @@ def transform(body: Body) -> Transformed:
         low, high = face_map.lowest, face_map.highest
         most, bend = kirchhoff.factor_range(low, high)[1], kirchhoff.bend
         lengths = tuple(body.size[axis] for axis in axes_along(face))
-        in_theta = _through(face_map, kirchhoff.theta, most, bend, lengths)
+        degree = kirchhoff.degree(low, high)
+        in_theta = _through(face_map, _Function(kirchhoff.theta, most, bend, degree), lengths, keep_going)
         if isinstance(condition, Held):
             held[face] = in_theta
             continue
@@ -99,14 +111,36 @@ def transform(body: Body) -> Transformed:
         # The film is driven by what it gives off; its ambient in theta is shown to no one who asks for its error.
         ambients[face] = replace(in_theta, error=0.0, slope_error=0.0)
         steepest = float(laws[face].slope(np.array([high]))[0])
-        given[face] = _through(face_map, laws[face].given_off, steepest, laws[face].bend(high), lengths)
+        gives = _Function(laws[face].given_off, steepest, laws[face].bend(high), RADIATED)
+        given[face] = _through(face_map, gives, lengths, keep_going)
     return Transformed(body, kirchhoff, laws, held, ambients, given)
 
 
+@dataclass(frozen=True)
+class _Function:
+    """A function of the data of a face.
+
+    steepest, bend: greatest slope and second derivative over those data. degree: of the polynomial that it is there,
+    None where it is none.
+    """
+
+    of: Callable[[FloatArray], FloatArray]
+    steepest: float
+    bend: float
+    degree: int | None
+
+
+def exact_degree(face_map: FaceMap, degree: int | None, lengths: tuple[float, ...]) -> int | None:
+    """Degree of the curved pieces that a polynomial of a face's data is exactly; None where there are none."""
+    straight = face_map.bilinear and not any(face_map.curved) and all(math.isfinite(length) for length in lengths)
+    return degree if straight else None
+
+
 def _through(
-    face_map: FaceMap, function: Function, steepest: float, bend: float, lengths: tuple[float, ...]
+    face_map: FaceMap, through: _Function, lengths: tuple[float, ...], keep_going: KeepGoing | None
 ) -> FaceMap:
-    """The map of a function of its data, which rises by no more than `steepest` and bends by no more than `bend`."""
+    """The map of a function of its data."""
+    function, steepest, bend = through.of, through.steepest, through.bend
     usual = float(function(np.array([face_map.usual]))[0])
     peaks = face_map.peaks
     if peaks is not None:
@@ -120,7 +154,7 @@ def _through(
     if bend == 0.0 or not face_map.bilinear or face_map.is_uniform:
         table = function(face_map.table)
         return replace(face_map, table=table, usual=usual, peaks=peaks, error=off, slope_error=slope_off)
-    read_off = _ReadOff(face_map, function, lengths)
+    read_off = _ReadOff(face_map, through, lengths, keep_going)
     found, error = read_off.map()
     finest = min(float(np.diff(knots).min()) for knots in (found.first_knots, found.second_knots))
     return replace(
@@ -146,11 +180,15 @@ def _steepest_slope(face_map: FaceMap) -> float:
 class _ReadOff:
     """Reads a function of a map off at the points of curved pieces, which are halved until that is exact enough."""
 
-    def __init__(self, face_map: FaceMap, function: Function, lengths: tuple[float, ...]) -> None:
+    def __init__(
+        self, face_map: FaceMap, through: _Function, lengths: tuple[float, ...], keep_going: KeepGoing | None
+    ) -> None:
         self._source = face_map
-        self._function = function
+        self._function = through.of
+        self._keep_going = keep_going
+        self._degree = exact_degree(face_map, through.degree, lengths)
         self._curved = (math.isfinite(lengths[0]), math.isfinite(lengths[1]))
-        values = function(face_map.table)
+        values = self._function(face_map.table)
         self._goal = GOAL * float(np.ptp(values))
         self._rounding = ROUNDING * float(np.abs(values).max())
 
@@ -160,14 +198,22 @@ class _ReadOff:
             own if curved else _cut_evenly(own)
             for own, curved in zip((self._source.first_knots, self._source.second_knots), self._curved, strict=True)
         ]
+        found = self._on(knots)
+        if self._degree is not None:
+            # Nothing but rounding is left, for which a place in each piece will do.
+            middles = (0.5 * (knots[0][1:] + knots[0][:-1]), 0.5 * (knots[1][1:] + knots[1][:-1]))
+            return found, self._error(found, middles)
         while True:
-            found = self._on(knots)
             finer = [self._finer(found, index) for index in (0, 1)]
             if all(new.size == old.size for new, old in zip(finer, knots, strict=True)):
                 break
             knots = finer
-        error = float(self._departure(found, (self._samples(found, 0), self._samples(found, 1))).max())
-        return found, BETWEEN * error if error > self._rounding else 0.0
+            found = self._on(knots)
+        return found, self._error(found, (self._samples(found, 0), self._samples(found, 1)))
+
+    def _error(self, found: FaceMap, at: tuple[FloatArray, FloatArray]) -> float:
+        error = float(self._departures(found, at, 0).max())
+        return BETWEEN * error if error > self._rounding else 0.0
 
     def _on(self, knots: list[FloatArray]) -> FaceMap:
         places = [chebyshev_places(own) if curved else own for own, curved in zip(knots, self._curved, strict=True)]
@@ -184,11 +230,25 @@ class _ReadOff:
             second_knots=knots[1],
             table=self._function(self._source.at(places[0], places[1])),
             curved=self._curved,
+            degree=DEGREE if self._degree is None else self._degree,
             kinks=kinks,
         )
 
-    def _departure(self, found: FaceMap, at: tuple[FloatArray, FloatArray]) -> FloatArray:
-        return np.abs(found.at(*at) - self._function(self._source.at(*at)))
+    def _departures(self, found: FaceMap, at: tuple[FloatArray, FloatArray], index: int) -> FloatArray:
+        """The largest departure at each place along an axis from any along the other, in runs of bounded size."""
+        other = 1 - index
+        own, source = (
+            [profiles.at(at[i]) for i, profiles in enumerate((m.first, m.second))] for m in (found, self._source)
+        )
+        run = max(IN_RUN // max(at[other].size, 1), 1)
+        largest = []
+        for start in range(0, at[index].size, run):
+            if self._keep_going is not None:
+                self._keep_going()
+            rows = slice(start, start + run)
+            wanted = self._function(source[index][rows] @ source[other].T)
+            largest.append(np.abs(own[index][rows] @ own[other].T - wanted).max(axis=1))
+        return np.concatenate(largest)
 
     def _samples(self, found: FaceMap, index: int) -> FloatArray:
         """Places between the points of a map along an axis."""
@@ -204,13 +264,15 @@ class _ReadOff:
             return knots
         other = found.second_places if index == 0 else found.first_places
         other = other[np.isfinite(other)]
-        samples = self._samples(found, index)
-        departure = self._departure(found, (samples, other) if index == 0 else (other, samples))
-        along = np.moveaxis(departure, index, 0).max(axis=1).reshape(knots.size - 1, -1).max(axis=1)
-        halved = along > max(0.5 * self._goal, self._rounding)
         room = MOST_PIECES - (knots.size - 1)
+        if room <= 0:
+            return knots
+        samples = self._samples(found, index)
+        departures = self._departures(found, (samples, other) if index == 0 else (other, samples), index)
+        along = departures.reshape(knots.size - 1, -1).max(axis=1)
+        halved = along > max(0.5 * self._goal, self._rounding)
         if halved.sum() > room:
-            worst = np.argsort(np.where(halved, -along, math.inf), kind="stable")[: max(room, 0)]
+            worst = np.argsort(np.where(halved, -along, math.inf), kind="stable")[:room]
             halved = np.zeros_like(halved)
             halved[worst] = True
         middles = 0.5 * (knots[1:] + knots[:-1])

@@ -27,6 +27,9 @@ FloatArray = NDArray[np.float64]
 # A linear law is taken to hold down to this factor; below it the potential follows the flows without limit.
 LEAST_FACTOR = 1e-3
 
+# Slopes of a law are the same when they differ by no more than this part of the steepest, which is their rounding.
+SAME_SLOPE = 4e-15
+
 
 @dataclass(frozen=True)
 class ConductivityLaw:
@@ -147,6 +150,12 @@ class Kirchhoff:
         inside = self._factors[(self._nodes > low) & (self._nodes < high)]
         factors = np.concatenate([inside, self.factor(np.array([low, high]))])
         return float(factors.min()), float(factors.max())
+
+    def degree(self, low: float, high: float) -> int | None:
+        """Degree of theta between two potentials, None where the law has a kink between them."""
+        inside = np.flatnonzero((self._nodes > low) & (self._nodes < high))
+        kinks = np.abs(self._slopes[inside + 1] - self._slopes[inside])
+        return 2 if (kinks <= SAME_SLOPE * self.bend).all() else None
 
     @cached_property
     def bend(self) -> float:

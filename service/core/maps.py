@@ -296,6 +296,7 @@ class FaceMap:
     begins: where the axes of that face begin, 0 or -infinity.
     usual: the background, or for readings the lowest; the level other faces are likely to share.
     curved: whether the pieces along each axis are curved.
+    degree: of the curved pieces, where it is known to be less than DEGREE.
     error: by how much the map may differ from the data it stands for, and slope_error the slopes of both along any
         direction of the face; 0 for data that are the map itself.
     peaks: the lowest and the highest of the data where they are not in the table.
@@ -310,6 +311,7 @@ class FaceMap:
     usual: float
     begins: tuple[float, float] = (0.0, 0.0)
     curved: tuple[bool, bool] = (False, False)
+    degree: int = DEGREE
     error: float = 0.0
     slope_error: float = 0.0
     peaks: tuple[Peak, Peak] | None = None
@@ -431,7 +433,19 @@ class FaceMap:
 
     @cached_property
     def _factors(self) -> tuple[Profiles, Profiles]:
-        along_first, along_second = _factor(self.table)
+        # Places that tell all others keep the table that is decomposed small.
+        telling = [
+            _telling(knots.size - 1, self.degree if curved else None, count)
+            for knots, curved, count in zip(
+                (self.first_knots, self.second_knots), self.curved, self.table.shape, strict=True
+            )
+        ]
+        along_first, along_second = (
+            values if places.size == count else _carried(values, self.degree)
+            for values, places, count in zip(
+                _factor(self.table[np.ix_(*telling)]), telling, self.table.shape, strict=True
+            )
+        )
         return (
             self._profiles(self.first_knots, along_first, curved=self.curved[0]),
             self._profiles(self.second_knots, along_second, curved=self.curved[1]),
@@ -450,11 +464,22 @@ class FaceMap:
 
     def minus(self, reference: float) -> FaceMap:
         """The same map counted from another zero."""
+        if reference == 0.0:
+            return self
         peaks = None
         if self.peaks is not None:
             lowest, highest = (replace(peak, value=peak.value - reference) for peak in self.peaks)
             peaks = lowest, highest
         return replace(self, table=self.table - reference, usual=self.usual - reference, peaks=peaks)
+
+    def times(self, factor: float) -> FaceMap:
+        """The map of all values times a factor, without peaks and error; its profiles are not found anew."""
+        scaled = replace(self, table=self.table * factor, usual=self.usual * factor, peaks=None, error=0.0)
+        values = self.first
+        bends = None if values.bends is None else values.bends * factor
+        first = Profiles(values.knots, values.left * factor, values.right * factor, bends)
+        scaled.__dict__["_factors"] = first, self.second
+        return scaled
 
     def check_covers(
         self, first_length: float, second_length: float, face: str, begins: tuple[float, float] = (0.0, 0.0)
@@ -474,6 +499,33 @@ class FaceMap:
                 f"measures {first_length:g} by {second_length:g}.",
                 ("faces", face),
             )
+
+
+def _telling(pieces: int, degree: int | None, count: int) -> NDArray[np.intp]:
+    """Which places along an axis tell the values at all: all but on curved pieces of a low degree (else None)."""
+    if degree is None or degree == DEGREE:
+        return np.arange(count)
+    inside = _places_of_degree(degree)[:-1]
+    return np.append((DEGREE * np.arange(pieces)[:, None] + inside).ravel(), DEGREE * pieces)
+
+
+def _places_of_degree(degree: int) -> NDArray[np.intp]:
+    """As many of Chebyshev's points of a piece, its ends among them, as polynomials of a degree need."""
+    return np.linspace(0, DEGREE, degree + 1).round().astype(int)
+
+
+def _carried(values: FloatArray, degree: int) -> FloatArray:
+    """Values at all places of curved pieces from those that `_telling` names, shape (n_places, n_profiles)."""
+    known = CHEBYSHEV[_places_of_degree(degree)]
+    # Lagrange's polynomials, which are 0 and 1 exactly at the places known.
+    weights = np.ones((DEGREE + 1, degree + 1))
+    for index, own in enumerate(known):
+        for other in np.delete(known, index):
+            weights[:, index] *= (CHEBYSHEV - other) / (own - other)
+    pieces = (values.shape[0] - 1) // degree
+    of_piece = values[degree * np.arange(pieces)[:, None] + np.arange(degree + 1)]
+    inside = np.einsum("jk,pkr->pjr", weights[:-1], of_piece).reshape(DEGREE * pieces, -1)
+    return np.concatenate([inside, values[-1:]])
 
 
 def _factor(table: FloatArray) -> tuple[FloatArray, FloatArray]:

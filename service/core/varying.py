@@ -66,7 +66,7 @@ class VaryingSolution(Solution):
         check_steady_state(body)
         self._body = body
         self._lock = threading.Lock()
-        self._data = transform(body)
+        self._data = transform(body, keep_going)
         self._films = first_faces(self._data)
         self._steps = 0
         self._find_range(keep_going)

@@ -15,6 +15,8 @@ from service.core.errors import (
     NotPhysical,
     OutsideBody,
 )
+from service.core.preparation import estimate
+from service.cost import check_preparation
 from service.kept import Kept
 from service.models.evaluate import Question
 from service.models.problem import Problem
@@ -67,6 +69,7 @@ class Solver:
         if solved is None:
             read = read_problem(problem, self._settings, prefix)
             try:
+                check_preparation(estimate(read.body), self._settings)
                 solved = Solved(read, solve(read.body, keep_going))
             except Interrupted:
                 raise

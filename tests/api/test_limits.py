@@ -110,6 +110,18 @@ async def test_costly_request_is_refused_with_estimate_and_limit(
     assert document["estimate"] > document["limit"] == next(iter(limits.values()))
 
 
+async def test_readings_that_are_costly_to_make_ready_are_refused_before_that(settings: Settings) -> None:
+    rows = "\n".join(f"{x}," + ",".join(str(100 + x * y % 13) for y in range(0, 61, 3)) for x in range(0, 41, 2))
+    csv = "," + ",".join(str(y) for y in range(0, 61, 3)) + "\n" + rows
+    film = {"condition": "film", "coefficient": 5, "ambient": {"map": "samples", "csv": csv}, "emissivity": 0.8}
+    problem = slab() | {"faces": slab()["faces"] | {"z_high": film}}
+    async with open_client(settings.model_copy(update={"cost_multiplications": 1e7})) as client:
+        document = check_problem_document(await client.post("/v1/fields", json=ask_points(problem, [1, 1, 1])), 422)
+    assert document["type"] == "/problem-types/too-costly"
+    assert document["detail"].startswith("The problem alone would take about")
+    assert document["estimate"] > document["limit"] == 1e7
+
+
 async def test_binary_answer_may_hold_more(settings: Settings) -> None:
     async with open_client(settings.model_copy(update={"answer_bytes": 150_000})) as client:
         check_problem_document(await client.post("/v1/fields", json=ask_grid()), 422)

@@ -7,6 +7,7 @@ finite elements for the potential itself, and answers with tighter bounds.
 from __future__ import annotations
 
 import math
+import tracemalloc
 from collections.abc import Callable
 
 import numpy as np
@@ -36,9 +37,11 @@ from service.core import (
     Rectangle,
     solve,
 )
+from service.core.estimate import Estimate
 from service.core.formula import read
 from service.core.formula_map import of_formula
 from service.core.laws import Kirchhoff
+from service.core.preparation import estimate
 from tests.core.bodies import all_held, all_insulated, film, held, pad
 from tests.core.reference.varying_elements import FilmData, VaryingCase, solve_varying
 
@@ -49,6 +52,7 @@ SIGMA = 5.670374419e-8  # W/(m^2 K^4), CODATA 2018
 B = -5e-4
 FALLING = ConductivityLaw.linear(20.0, B)
 TABLE = ConductivityLaw.table([0.0, 200.0, 400.0, 800.0], [1.0, 0.92, 0.86, 0.75])
+TABLE_WITH_KINK = ConductivityLaw.table([0.0, 50.0, 100.0], [1.0, 0.9, 0.95])
 GLOW = Radiation(0.8 * SIGMA, 273.15)
 PLACES = np.array([(0.3, 0.4, 0.5), (0.1, 0.9, 1.0), (1.0, 0.3, 0.2), (0.77, 0.21, 0.02)])
 
@@ -185,6 +189,39 @@ def test_held_readings_are_read_off_again_exactly_in_theta() -> None:
     mean = solution.mean("z_low", tolerance=1e-6)
     assert mean.value == pytest.approx(200.0 + 500.0 / 4, rel=1e-12)
     assert solution.usual_accuracy == 1e-9
+
+
+def test_many_readings_are_held_in_theta_with_little_memory_and_asking_on_the_way() -> None:
+    """Noise of full rank: its square has twice as many products and takes no more than a few tables of its places."""
+    count = 90
+    even = np.linspace(0.0, 1.0, count)
+    readings = FaceMap.readings(
+        UNIT[:2], even.tolist(), even.tolist(), np.random.default_rng(4).uniform(30, 80, (count, count)).tolist()
+    )
+    tracemalloc.start()
+    solution = solve(Body(UNIT, UNIT, all_insulated(z_low=Held(readings), z_high=held(20.0)), law=FALLING))
+    peak = tracemalloc.get_traced_memory()[1]
+    tracemalloc.stop()
+    assert peak < min(12 * 8 * (7 * count) ** 2, estimate(solution.body).bytes)
+    first, second = np.array([0.0, 0.31, 1.0]), np.array([0.05, 0.52])
+    found = solution.field(Grid(first, second, np.zeros(1)), tolerance=1e-6)
+    assert np.abs(found.potential[:, :, 0] - readings.at(first, second)).max() <= found.potential_bound
+
+    bent = Body(UNIT, UNIT, all_insulated(z_low=Held(readings), z_high=held(60.0)), law=TABLE_WITH_KINK)
+    asked: list[None] = []
+    solve(bent, lambda: asked.append(None))
+    assert len(asked) > 5
+
+
+def test_film_of_many_readings_is_known_to_be_costly_before_it_is_iterated() -> None:
+    noise = np.random.default_rng(4).uniform(30, 80, (100, 100))
+    even = np.linspace(0.0, 1.0, 100).tolist()
+    ambient = FaceMap.readings(UNIT[:2], even, even, noise.tolist())
+    faces = all_insulated(z_low=Film(5.0, ambient, GLOW), z_high=held(20.0))
+    assert estimate(Body(UNIT, UNIT, faces)).multiplications > 1e11
+    faces = all_insulated(z_low=Film(5.0, FaceMap.uniform(40.0), GLOW), z_high=held(20.0))
+    assert estimate(Body(UNIT, UNIT, faces)).multiplications < 1e7
+    assert estimate(Body(UNIT, UNIT, all_insulated(z_low=Film(5.0, ambient)))) == Estimate(0.0, 0.0)
 
 
 def test_formula_of_a_held_face_comes_back_with_its_error_in_the_bound() -> None:
