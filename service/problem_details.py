@@ -75,6 +75,7 @@ _TYPE_OF_EXCEPTION: dict[type[Exception], str] = {
     core.NoSteadyState: "no-steady-state",
     core.OutsideBody: "outside-body",
     core.OutsideLaw: "outside-law",
+    core.TooManyPanels: "too-costly",
     core.AccuracyNotReached: "accuracy-not-reached",
     core.Interrupted: "time-limit",
 }
@@ -152,6 +153,8 @@ async def _on_core_error(_: Request, error: Exception) -> Response:
     extra: dict[str, Any] = {}
     if isinstance(error, core.NoSteadyState):
         extra["imbalance"] = error.imbalance
+    if isinstance(error, core.TooManyPanels):
+        extra |= {"estimate": error.needed, "limit": error.allowed}
     if isinstance(error, core.AccuracyNotReached):
         extra["bound"] = error.bound
     return problem_response(kind, error.message, issues, extra)

@@ -43,6 +43,9 @@ class Settings(BaseSettings):
     sources: PositiveInt = Field(100, description="Most source boxes in one problem.")
     totals: PositiveInt = Field(200, description="Most patches and planes in one request for flux totals.")
     means: PositiveInt = Field(100, description="Most mean values in one request.")
+    solved_pads: PositiveInt = Field(
+        64, description="Most held pads and pads behind films on one mixed face; with all of them 64 panels each."
+    )
     pads: PositiveInt = Field(400, description="Most pads in one request about pads or resistances.")
 
     cost_multiplications: PositiveFloat = Field(

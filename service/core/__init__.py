@@ -11,6 +11,7 @@ from service.core.errors import (
     NotPhysical,
     OutsideBody,
     OutsideLaw,
+    TooManyPanels,
 )
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
@@ -88,6 +89,7 @@ __all__ = [
     "Rectangle",
     "SeriesStep",
     "Solution",
+    "TooManyPanels",
     "Total",
     "UnboundedCause",
     "cache_report",

@@ -5,6 +5,7 @@ CoreError
 ├── NoSteadyState       the flows given cannot balance, so no steady field exists
 ├── OutsideBody         a place asked for that is not in the closed body
 ├── OutsideLaw          the potential leaves the range in which the conductivity law holds
+├── TooManyPanels       mixed faces with more pads than are solved together
 ├── AccuracyNotReached  the bound reached is wider than the one asked for
 └── Interrupted         the time allowed for the computation is over
 
@@ -48,6 +49,15 @@ class OutsideBody(CoreError):
 
 class OutsideLaw(CoreError):
     """A held value or the field itself leaves the range in which the law of the conductivity holds."""
+
+
+class TooManyPanels(CoreError):
+    """Mixed faces whose pads take more panels at the least than are allowed. needed, allowed: how many."""
+
+    def __init__(self, message: str, needed: int, allowed: int, field: tuple[str | int, ...] = ()) -> None:
+        super().__init__(message, field)
+        self.needed = needed
+        self.allowed = allowed
 
 
 class AccuracyNotReached(CoreError):

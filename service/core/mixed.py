@@ -29,6 +29,7 @@ from service.core.panels import STEP
 from service.core.problem import Body, Face, FilmPad, FluxPad, HeldPad, MixedPad, axes_along, axis_of, map_of
 from service.core.solution import Solution
 from service.core.solvability import BALANCED, check_steady_state
+from service.core.stopping import go_on, on_behalf_of
 from service.core.totals import Balance, Bounded, Total
 
 FloatArray = NDArray[np.float64]
@@ -79,11 +80,9 @@ def solve_mixed(
     _check_maps(body)
     base = base_of(body)
     _check_steady(body, base)
-    ladder = Ladder(body, base, most_panels, keep_going)
-    solution = MixedSolution(ladder)
-    solution.refine_flows(accuracy)
-    # Whoever asks later has a time of their own.
-    ladder.keep_going = None
+    with on_behalf_of(keep_going):
+        solution = MixedSolution(Ladder(body, base, most_panels))
+        solution.refine_flows(accuracy)
     return solution
 
 
@@ -192,10 +191,13 @@ class MixedSolution(Solution):
             finer = self._ladder.finer(self.count, max(missed), ORDER_OF_TOTALS)
             if finer is None:
                 return
+            # Should this be stopped, the next one to ask is as far as before.
+            self._ladder.at(finer)
             self.count = finer
 
     def pads(self) -> tuple[PadAnswer, ...]:
         """Flow and potential of every pad, face by face."""
+        go_on()
         answers = [
             self._pad(face, index, pad)
             for face in self._base.faces
@@ -270,7 +272,8 @@ class MixedSolution(Solution):
             bound = None if found.flux_bound is None else found.flux_bound.ravel()
             return replace(found, potential=found.potential.ravel(), flux=flux, flux_bound=bound)
 
-        found = self._field(ask, points, tolerance)
+        with on_behalf_of(keep_going):
+            found = self._field(ask, points, tolerance)
         return replace(
             found,
             potential=found.potential.reshape(grid.shape),
@@ -289,7 +292,8 @@ class MixedSolution(Solution):
         def ask(solution: Solution, share: float) -> Field:
             return solution.field_at(points, tolerance=share, with_flux=with_flux, keep_going=keep_going)
 
-        return self._field(ask, points, tolerance)
+        with on_behalf_of(keep_going):
+            return self._field(ask, points, tolerance)
 
     def _levels_at(self, points: FloatArray) -> Field | None:
         """The field at points all of which are on held pads: the levels of those; None where others are among them."""
@@ -390,9 +394,11 @@ class MixedSolution(Solution):
 
     def extremes(self, *, tolerance: float, keep_going: KeepGoing | None = None) -> Extremes:
         """The hottest and the coldest place of the closed body."""
-        return Extremes(
-            self._extreme(1.0, tolerance, keep_going, "hottest"), self._extreme(-1.0, tolerance, keep_going, "coldest")
-        )
+        with on_behalf_of(keep_going):
+            return Extremes(
+                self._extreme(1.0, tolerance, keep_going, "hottest"),
+                self._extreme(-1.0, tolerance, keep_going, "coldest"),
+            )
 
     def _extreme(self, sign: float, tolerance: float, keep_going: KeepGoing | None, which: str) -> Place:
         held = [self._held_place(number) for number, spot in enumerate(self._base.spots) if spot.is_held]

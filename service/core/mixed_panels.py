@@ -29,6 +29,7 @@ from service.core.panels import Panels, graded, influence, keeps_level
 from service.core.problem import Condition, Face, Film, Inflow, axes_along, is_high, map_of
 from service.core.solvability import generation, map_integral
 from service.core.split import lines_of, parts_of, reference_level
+from service.core.stopping import go_on
 
 FloatArray = NDArray[np.float64]
 
@@ -77,6 +78,7 @@ class System:
 
     def solve(self, potentials: FloatArray) -> FloatArray:
         """Flows of the panels that bring about mean potentials, shape (number of panels, n) each."""
+        go_on()
         matrix = self.matrix.copy()
         areas = np.concatenate([grid.areas for grid in self.grids])
         matrix.flat[:: areas.size + 1] += 1 / (areas * self.spread(np.array([spot.excess for spot in self.base.spots])))
@@ -104,6 +106,7 @@ class System:
 
     def halved(self, means: FloatArray) -> tuple[System, FloatArray]:
         """The equations with half as many panels along each axis, and the means over those."""
+        go_on()
         rows = self._gathered(self.matrix)
         matrix = self._gathered(np.ascontiguousarray(rows.T))
         half = System(self.base, tuple(grid.halved() for grid in self.grids), matrix)

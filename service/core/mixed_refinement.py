@@ -15,8 +15,8 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.errors import NotPhysical
-from service.core.field import KeepGoing, Setting
+from service.core.errors import NotPhysical, TooManyPanels
+from service.core.field import Setting
 from service.core.mixed_base import Base, Spot, pads_of, with_faces
 from service.core.mixed_panels import (
     Refined,
@@ -32,6 +32,7 @@ from service.core.problem import AXES, Body, Film, Held, HeldPad, axes_along, ma
 from service.core.solution import Solution
 from service.core.span import span_of
 from service.core.split import lines_of, parts_of, reference_level, scale_of
+from service.core.stopping import go_on
 from service.core.totals import Bounded
 
 FloatArray = NDArray[np.float64]
@@ -83,20 +84,19 @@ class Refinement:
 
 
 class Ladder:
-    """The refinements of a body, each computed when it is first asked for.
+    """The refinements of a body, each computed when it is first asked for."""
 
-    keep_going: asked before each, and may raise Interrupted; whoever keeps the ladder for later takes it off.
-    """
-
-    def __init__(self, body: Body, base: Base, most_panels: int, keep_going: KeepGoing | None) -> None:
+    def __init__(self, body: Body, base: Base, most_panels: int) -> None:
         self.body, self.base = body, base
-        self.keep_going = keep_going
         self._kept: dict[int, Refinement] = {}
         allowed = [count for count in COUNTS if count**2 * len(base.spots) <= most_panels]
         if not allowed:
-            raise NotPhysical(
-                f"The mixed faces have {len(base.spots)} pads and pieces of background, which take "
-                f"{COUNTS[0] ** 2 * len(base.spots)} panels at the least; {most_panels} are allowed.",
+            least = COUNTS[0] ** 2 * len(base.spots)
+            raise TooManyPanels(
+                f"The mixed faces have {len(base.spots)} held pads, pads behind films and pieces of background; at "
+                f"most {most_panels // COUNTS[0] ** 2} are solved together, with {COUNTS[0] ** 2} panels each.",
+                least,
+                most_panels,
                 ("faces", base.faces[0], "pads"),
             )
         allowed = [count for count in allowed if all(are_told_apart(base, spot, count) for spot in base.spots)]
@@ -110,8 +110,7 @@ class Ladder:
     def at(self, count: int) -> Refinement:
         """The answer with so many panels along each axis of a spot."""
         if count not in self._kept:
-            if self.keep_going is not None:
-                self.keep_going()
+            go_on()
             self._kept[count] = self._refinement(count)
         return self._kept[count]
 

@@ -23,6 +23,7 @@ from service.core.mixed_panels import System, needs_balance, system_of
 from service.core.mixed_refinement import LEVELS, Ladder
 from service.core.panels import STEP
 from service.core.problem import Body, Face
+from service.core.stopping import on_behalf_of
 from service.core.totals import Bounded
 
 FloatArray = NDArray[np.float64]
@@ -117,13 +118,17 @@ def pad_network(
     reached. Raises NotPhysical where no pad is held or one touches something else that is held, and NoSteadyState for
     a single pad from which nothing leads away.
     """
-    ladder = Ladder(body, base_of(body), most_panels, keep_going)
+    with on_behalf_of(keep_going):
+        return _network(Ladder(body, base_of(body), most_panels), asked, accuracy)
+
+
+def _network(ladder: Ladder, asked: Sequence[tuple[Face, int]] | None, accuracy: float) -> PadNetwork:
     base = ladder.base
     numbers = {(spot.face, spot.pad): number for number, spot in enumerate(base.spots) if spot.is_held}
     held = list(numbers.values()) if asked is None else [numbers[pad] for pad in asked]
     if not held:
         raise NotPhysical("No pad is held; conductances join held pads.", ("faces", base.faces[0], "pads"))
-    check_apart(body, [base.spots[number] for number in held])
+    check_apart(ladder.body, [base.spots[number] for number in held])
     if len(held) == 1 and _is_closed(base, held):
         raise NoSteadyState(
             "A flow of {amount} into the held pad has no way out of this body: no face and no other pad is held or has "
@@ -133,8 +138,6 @@ def pad_network(
         )
     count = ladder.counts[0]
     while True:
-        if keep_going is not None:
-            keep_going()
         levels, system = [], system_of(base, count)
         for level in range(LEVELS):
             levels.append(_conductances(system, held))

@@ -29,6 +29,7 @@ from service.core.lines.pairs import Intervals, pair_means
 from service.core.lines.places import Places
 from service.core.lines.time_response import respond
 from service.core.maps import Rectangle
+from service.core.stopping import go_on
 
 FloatArray = NDArray[np.float64]
 
@@ -250,6 +251,7 @@ def influence(lines: Sequence[Line], axis: int, factors: dict[bool, float], grid
         here = slice(starts[p], starts[p + 1])
         matrix[here, here] = _within(first, second, kernel, rows)
         for q in range(p):
+            go_on()
             there = slice(starts[q], starts[q + 1])
             matrix[here, there] = _between(first, second, kernel, rows, grids[q])
             matrix[there, here] = matrix[here, there].T

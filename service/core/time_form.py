@@ -24,6 +24,7 @@ from service.core.lines.line import Drive, Line, WallDrive
 from service.core.lines.places import Places, TimeResponse
 from service.core.lines.time_response import respond
 from service.core.split import Part
+from service.core.stopping import go_on
 from service.core.time_error import step_error
 from service.core.time_integral import Integral, Product
 from service.core.time_range import CUT, is_undying, profile_is_taken_out, release_time, times_for, weights
@@ -43,6 +44,7 @@ def integrate(
 
     rows: how a line's answer is had, so that a caller may keep answers that several parts or quantities share.
     """
+    go_on()
     times = times_for(lines, part, places, step, step_error(step))
     answers = [rows(lines[axis], part.drives[axis], places[axis], times) for axis in range(3)]
     nodes = _Nodes(times, weights(lines, times, step) * part.factor, release_time(lines), part.factor)

@@ -173,7 +173,8 @@ class MixedFace(Model):
     pads: list[Annotated[HeldPad | FilmPad | FluxPad, Field(discriminator="condition")]] = Field(
         min_length=1,
         max_length=MOST_PADS,
-        description="The rectangles; they may touch but not overlap.",
+        description="The rectangles; they may touch but not overlap. At most 64 of all mixed faces, unless the server "
+        "is set otherwise, are held or behind films; pads with a given inflow may be more.",
         examples=[[{"name": "clamp A", "x": [5, 35], "y": [10, 50], "condition": "held", "value": 640}]],
     )
 

@@ -13,6 +13,7 @@ from fastapi import Request, Response
 
 from service import __version__
 from service.core import AccuracyNotReached, CoreError, Interrupted, Solution
+from service.core.stopping import on_behalf_of
 from service.media import FORMS, JSON_FORM, Form, choose_form
 from service.models.evaluate import Question
 from service.refusals import TooCostly
@@ -63,7 +64,12 @@ async def answer(request: Request, question: Asked, call: Call[Asked, Wanted]) -
     state = state_of(request)
     form = choose_form(request.headers.get("accept"), call.forms)
     key = _key(request, form)
-    work = state.worker.run(lambda keep_going: _work(state, question, call, form, keep_going))
+
+    def answer_while_waited_for(keep_going: KeepGoing) -> tuple[bytes, dict[str, float]]:
+        with on_behalf_of(keep_going):
+            return _work(state, question, call, form, keep_going)
+
+    work = state.worker.run(answer_while_waited_for)
     (body, times), waited = await _unless_client_leaves(request, work)
     kept = KeptAnswer(body, form.media_type, f'"{key}"', form.file_name)
     state.answers.keep(key, kept)

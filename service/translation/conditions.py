@@ -66,6 +66,14 @@ class ConditionReader:
             detail = f"There are {len(mixed.pads)} pads; at most {self.settings.pads} are allowed on a face."
             self.collector.add((*path, "pads"), detail, "too-many")
             return None
+        solved = sum(not isinstance(pad, models.FluxPad) for pad in mixed.pads)
+        if solved > self.settings.solved_pads:
+            detail = (
+                f"There are {solved} held pads and pads behind films; at most {self.settings.solved_pads} are solved "
+                "together. Pads with a given inflow do not count."
+            )
+            self.collector.add((*path, "pads"), detail, "too-many")
+            return None
         background = self._background(mixed.background, (*path, "background"))
         pads, names = [], set()
         for index, pad in enumerate(mixed.pads):

@@ -20,11 +20,13 @@ from service.core import (
     Held,
     Inflow,
     Insulated,
+    Interrupted,
     Layer,
     NoSteadyState,
     NotPhysical,
     Patch,
     Rectangle,
+    TooManyPanels,
     solve,
 )
 from service.core.formula import read
@@ -34,6 +36,7 @@ from service.core.mixed_base import base_of
 from service.core.mixed_refinement import Ladder
 from service.core.pad_network import pad_network
 from service.core.problem import FilmPad, FluxPad, HeldPad, Mixed
+from service.core.stopping import on_behalf_of
 from tests.core.bodies import ENDLESS, INSULATED, all_insulated, film, held, without_far_face
 from tests.core.reference.mixed_elements import Block, limit_of_flows
 
@@ -98,7 +101,7 @@ BODIES = {
 @pytest.mark.parametrize("name", BODIES)
 def test_error_bounds_hold_at_every_refinement(name: str) -> None:
     body = BODIES[name]
-    ladder = Ladder(body, base_of(body), 10000, None)
+    ladder = Ladder(body, base_of(body), 10000)
     counts = [count for count in ladder.counts if count <= 32]
     found = []
     for count in counts:
@@ -335,7 +338,7 @@ def test_field_bounds_hold_at_every_place_against_finer_panels(name: str) -> Non
     body = BODIES[name]
     places = np.random.default_rng(3).uniform(0.0, 1.0, (24, 3)) * SIZE
     places[:10, 2] = SIZE[2]
-    ladder = Ladder(body, base_of(body), 10000, None)
+    ladder = Ladder(body, base_of(body), 10000)
     solution = MixedSolution(ladder)
     solution.count = 48
     exact = solution.field_at(places, tolerance=1e9, with_flux=True)
@@ -485,3 +488,41 @@ def test_sliver_that_has_its_digits_is_solved() -> None:
     one, two, three = (1 / flow.value for flow in flows)
     assert two - one == pytest.approx(math.log(1e3) / (5 * math.pi), rel=0.03)
     assert three - two == pytest.approx(math.log(1e3) / (5 * math.pi), rel=0.03)
+
+
+def test_whoever_asks_is_the_one_who_stops_a_refinement() -> None:
+    """A solution is kept; each call has a time of its own, and what it was stopped at is computed anew."""
+    solution = solve_mixed(block(Mixed(INSULATED, TWO)), accuracy=1e-2)
+    asked = []
+
+    def give_up() -> None:
+        asked.append(1)
+        if len(asked) > 3:
+            raise Interrupted("No one waits.")
+
+    count = solution.count
+    with pytest.raises(Interrupted), on_behalf_of(give_up):
+        solution.refine_flows(1e-7)
+    with pytest.raises(Interrupted):
+        solution.field_at(POINTS, tolerance=1e-7, keep_going=give_up)
+    assert (solution.count, len(asked)) == (count, 5)
+    solution.refine_flows(1e-7)
+    assert solution.count > count
+
+
+def test_every_block_of_panels_asks_whether_to_go_on() -> None:
+    pads = tuple(HeldPad(Rectangle(0.2 * i, 0.2 * i + 0.1, 0.1, 0.9), float(i)) for i in range(5))
+    asked = []
+    solve_mixed(block(Mixed(INSULATED, pads)), keep_going=lambda: asked.append(1))
+    before = len(asked)
+    pad_network(block(Mixed(INSULATED, pads)), accuracy=1e-2, keep_going=lambda: asked.append(1))
+    # Ten pairs of pads, and equations at three refinements that are solved and halved.
+    assert before >= 10 + 3 + 2
+    assert len(asked) - before >= 10 + 3 + 2
+
+
+def test_more_pads_than_are_solved_pass_a_limit_and_are_no_impossible_body() -> None:
+    pads = tuple(HeldPad(Rectangle(0.1 * i, 0.1 * i + 0.05, 0.1, 0.9), float(i)) for i in range(10))
+    with pytest.raises(TooManyPanels, match="at most 4 are solved together, with 64 panels each") as refused:
+        solve_mixed(block(Mixed(INSULATED, pads)), most_panels=4 * 64)
+    assert (refused.value.needed, refused.value.allowed) == (640, 256)
