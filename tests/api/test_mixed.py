@@ -84,7 +84,9 @@ async def test_tighter_accuracy_refines_flows_and_says_where_it_is_not_reached(c
     assert (warning["code"], warning["where"]) == ("accuracy-not-reached", "#/patches/0")
     assert " A, wider than the accuracy asked for" in warning["message"]
     pads = await ask(client, "pads", problem, {"pads": [{"face": "z_high", "patch": 0}]}, accuracy={"relative": 6e-3})
-    assert [warning["where"] for warning in pads["warnings"]] == []
+    assert pads["warnings"] == []
+    pads = await ask(client, "pads", problem, {"pads": [{"face": "z_high", "patch": 0}]}, accuracy={"relative": 1e-9})
+    assert [warning["where"] for warning in pads["warnings"]] == ["#/pads/0/flow"]
 
 
 async def test_flux_that_is_poorly_known_beside_a_pad_is_warned_of(client: httpx.AsyncClient) -> None:
