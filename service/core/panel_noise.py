@@ -24,6 +24,10 @@ DECAY = 4.0
 # Potential at a saw of height 1 and width 1; its first harmonic, of a height 1 / pi, makes 1 / (2 pi^2).
 SAW = 0.08
 
+# Next to a border the density has no bound, but the potential is off by 1 / pi of mean density times width on it, for a
+# density that goes as r^(-1/2): a saw of four times the mean.
+MOST_OF_BORDER = 4.0
+
 # A place nearer to a border than this part of the panel there counts as so near.
 NEXT_TO_BORDER = 1e-12
 
@@ -53,16 +57,18 @@ def _noise(base: Base, refined: Refined, points: FloatArray) -> tuple[FloatArray
             places = points[:, axis]
             index = np.clip(np.searchsorted(edges, places, side="right") - 1, 0, edges.size - 2)
             ends = (base.body.begins[axis], base.body.size[axis])
-            towards = np.abs(values[index]) * _towards_border(edges, ends, index, places)[:, None]
-            steps = np.maximum(_steps(values)[index], towards)
+            towards = _towards_border(edges, ends, index, places)[:, None]
+            own, steps = np.abs(values[index]), _steps(values)[index]
             beyond = _off(places, edges[:1], edges[-1:]) * scale_of(base.body, axis)
             beside = _off(points[:, other], sides[:-1], sides[1:]) * scale_of(base.body, other)
             distance = np.sqrt(height[:, None] ** 2 + beyond**2 + beside**2)
             width = (np.diff(edges)[index] * scale_of(base.body, axis))[:, None]
             thinner = np.minimum(width, np.diff(sides) * scale_of(base.body, other))
-            left = steps * np.exp(-DECAY * distance / width)
-            flux += (left * thinner / (thinner + distance)).sum(axis=1)
-            potential += SAW * scale * (left * thinner).sum(axis=1)
+            decay = np.exp(-DECAY * distance / width) * thinner
+            left = np.maximum(steps, own * towards) * decay
+            flux += (left / (thinner + distance)).sum(axis=1)
+            towards = np.minimum(towards, MOST_OF_BORDER)
+            potential += SAW * scale * (np.maximum(steps, own * towards) * decay).sum(axis=1)
     return potential, flux
 
 
