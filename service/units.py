@@ -174,6 +174,15 @@ class UnitSystem:
         return value.strip() if isinstance(value, str) else f"{value:g} {self.declared[kind]}"
 
     @cached_property
+    def lowest_level(self) -> float:
+        """Absolute zero of temperatures, in the declared unit; -infinity for the other potentials."""
+        return self.read(Kind.POTENTIAL, "0 K") if self.potential == "temperature" else -math.inf
+
+    def is_too_low(self, level: float) -> bool:
+        """Whether a level lies below the lowest there is, by more than a conversion rounds it."""
+        return level < self.lowest_level - ROUNDED * abs(self.lowest_level)
+
+    @cached_property
     def _targets(self) -> dict[Kind, Target]:
         names = PHYSICS[self.potential].names
         return {kind: Target(unit, names[kind], kind is Kind.POTENTIAL) for kind, unit in self.declared.items()}
@@ -198,6 +207,9 @@ class UnitSystem:
         assert all(factor is not None for factor in factors.values())
         return {kind: float(factor) for kind, factor in factors.items() if factor is not None}
 
+
+# What converting a level rounds, in parts of absolute zero.
+ROUNDED = 1e-14
 
 # The solver works in the declared units of these, so their numbers pass unchanged.
 _CARRIED_OVER = frozenset({Kind.LENGTH, Kind.POTENTIAL, Kind.POTENTIAL_DIFFERENCE})

@@ -39,7 +39,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import field as fields
-from service.core.errors import AccuracyNotReached
+from service.core.errors import AccuracyNotReached, NotPhysical
 from service.core.field import Grid, KeepGoing, Setting
 from service.core.kirchhoff import ZERO, Transformed
 from service.core.laws import FilmLaw, Kirchhoff
@@ -311,7 +311,26 @@ def iterate(data: Transformed, films: list[FilmFace], wanted: float, keep_going:
             mixing.forget()
         else:
             _assume_next(data.kirchhoff, films, readings, mixing)
+    _check_above_absolute_zero(data, films)
     raise AccuracyNotReached(wanted, best)
+
+
+def _check_above_absolute_zero(data: Transformed, films: Sequence[FilmFace]) -> None:
+    """Raise NotPhysical where a face that radiates has come to absolute zero, below which nothing is given off."""
+    for film in films:
+        if film.law.radiation is not None:
+            lowest = float(data.kirchhoff.potential(film.assumed).min())
+            if lowest + film.law.radiation.zero <= 0.0:
+                raise below_absolute_zero(film.face, lowest)
+
+
+def below_absolute_zero(face: Face, lowest: float) -> NotPhysical:
+    """What is said of a body with a face that radiates and a potential that is no temperature."""
+    return NotPhysical(
+        f"The face {face} radiates, and the potential would come down to {lowest:g}, which is not above absolute "
+        "zero: there is no such steady state. Take out less than the surroundings can give.",
+        ("faces", face),
+    )
 
 
 def _assume_next(kirchhoff: Kirchhoff, films: list[FilmFace], readings: Sequence[_Reading], mixing: _Mixing) -> None:
@@ -322,7 +341,8 @@ def _assume_next(kirchhoff: Kirchhoff, films: list[FilmFace], readings: Sequence
     changed = False
     for film, theta in zip(films, found, strict=True):
         middle = _middle_slope(kirchhoff, film.law, theta)
-        if abs(middle - film.coefficient) > KEPT * film.coefficient:
+        # At absolute zero a face that radiates alone has no slope; a film needs one.
+        if middle > 0.0 and abs(middle - film.coefficient) > KEPT * film.coefficient:
             film.coefficient, changed = middle, True
     if changed:
         # Another coefficient is another map.

@@ -22,14 +22,14 @@ from service.core.errors import AccuracyNotReached, NotPhysical, OutsideLaw
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
 from service.core.field import Field, Grid, KeepGoing, Setting
-from service.core.film_iteration import Iterated, first_faces, iterate
+from service.core.film_iteration import Iterated, below_absolute_zero, first_faces, iterate
 from service.core.flow_error import FlowError
-from service.core.kirchhoff import transform
+from service.core.kirchhoff import Transformed, transform
 from service.core.laws import ConductivityLaw
 from service.core.maps import Rectangle
 from service.core.problem import Body, Face, Film, Held, Inflow, Insulated, axes_along, axis_of, is_high, map_of
 from service.core.solution import Solution
-from service.core.solvability import check_steady_state, level_is_pinned
+from service.core.solvability import check_steady_state, generation, level_is_pinned, map_integral
 from service.core.totals import Balance, Bounded, Total
 from service.core.unbounded import UnboundedCause, unbounded_lines, unbounded_plane_lines
 
@@ -285,6 +285,8 @@ class VaryingSolution(Solution):
         levels = [level for face_map in maps if face_map is not None for level in (face_map.lowest, face_map.highest)]
         low, high = min(levels), max(levels)
         self._check_held(law)
+        self._check_above_absolute_zero(low)
+        _check_radiation(self._data)
         theta = self._data.kirchhoff.theta(np.array([low, high]))
         driven = _has_flows(self._body)
         # Until the range is known: that of the data, or what flows raise where there is no other.
@@ -301,13 +303,25 @@ class VaryingSolution(Solution):
             low, high = coldest.value - coldest.error_bound, hottest.value + hottest.error_bound
             reached = self._data.kirchhoff.theta(np.array([min([low, *levels]), max([high, *levels])]))
             span = float(reached[1] - reached[0])
-            if scale <= 10 * span and not _is_close(law, coldest, hottest):
+            if scale <= 10 * span and not _is_close(max(law.low, self._absolute_zero), law.high, coldest, hottest):
+                self._check_above_absolute_zero(coldest.value)
                 self._check_reached(law, coldest, hottest)
                 break
             # A coarse start, or an extreme so near the end of the law that its bound reaches across.
             scale, accuracy = (span, accuracy) if scale > 10 * span else (scale, accuracy / 100)
         self._least_factor = self._data.kirchhoff.factor_range(max(low, law.low), min(high, law.high))[0]
         self._span = max(high, *levels) - min(low, *levels)
+
+    @property
+    def _absolute_zero(self) -> float:
+        """The potential that is absolute zero where a face radiates; -infinity where none does."""
+        zeros = [law.radiation.zero for law in self._data.laws.values() if law.radiation is not None]
+        return -zeros[0] if zeros else -math.inf
+
+    def _check_above_absolute_zero(self, coldest: float) -> None:
+        for face, law in self._data.laws.items():
+            if law.radiation is not None and coldest + law.radiation.zero <= 0.0:
+                raise below_absolute_zero(face, coldest)
 
     def _check_held(self, law: ConductivityLaw) -> None:
         for face in self._body.present_faces:
@@ -469,10 +483,35 @@ def _check_supported(body: Body) -> None:
         )
 
 
-def _is_close(law: ConductivityLaw, coldest: Place, hottest: Place) -> bool:
-    """Whether it takes better bounds to tell if the field leaves the law's range."""
-    distances = ((abs(hottest.value - law.high), hottest), (abs(law.low - coldest.value), coldest))
+def _is_close(low: float, high: float, coldest: Place, hottest: Place) -> bool:
+    """Whether it takes better bounds to tell if the field leaves a range."""
+    distances = ((abs(hottest.value - high), hottest), (abs(low - coldest.value), coldest))
     return any(STORED * abs(place.value) < distance <= place.error_bound for distance, place in distances)
+
+
+def _check_radiation(data: Transformed) -> None:
+    """Raise NotPhysical where more is taken out than radiation, the only way in, gives a body at absolute zero."""
+    body = data.body
+    only_radiation = all(law.radiation is not None and law.coefficient == 0.0 for law in data.laws.values())
+    is_held = any(isinstance(condition, Held) for condition in body.faces.values())
+    if is_held or not only_radiation or not all(math.isfinite(length) for length in body.size):
+        return
+    taken, given = -generation(body), 0.0
+    for face, condition in body.faces.items():
+        first, second = (body.size[axis] for axis in axes_along(face))
+        if isinstance(condition, Inflow):
+            taken -= map_integral(condition.inflow, (0.0, 0.0), (first, second))[0]
+        if face in data.laws:
+            radiation = data.laws[face].radiation
+            assert radiation is not None
+            least = float(data.laws[face].given_off(np.array([-radiation.zero]))[0])
+            given += map_integral(data.given[face], (0.0, 0.0), (first, second))[0] - least * first * second
+    if taken >= given:
+        raise NotPhysical(
+            f"The body loses {taken / given:.3g} times what radiation from its surroundings could bring in even at "
+            "absolute zero; there is no steady state. Take out less, or give a face a film coefficient.",
+            ("faces", next(iter(data.laws))),
+        )
 
 
 def _has_flows(body: Body) -> bool:

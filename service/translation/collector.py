@@ -37,10 +37,19 @@ class Collector:
     def read(self, kind: Kind, value: float | str, path: Path) -> float:
         """The number in the solver's units, UNREAD if there is none."""
         try:
-            return self.units.read(kind, value)
+            number = self.units.read(kind, value)
         except UnitError as error:
             self.add(path, str(error), "unit")
             return UNREAD
+        if kind is Kind.POTENTIAL and self.units.is_too_low(number):
+            self.add(path, self.too_low(f"The temperature is {self.units.show(kind, value)}"), "absolute-zero")
+            return UNREAD
+        return number
+
+    def too_low(self, what: str) -> str:
+        """What is said of a temperature below absolute zero; `what` begins the sentence."""
+        zero = f"{self.units.lowest_level:g} {self.units.declared[Kind.POTENTIAL]}"
+        return f"{what}; there is none below absolute zero, {zero}."
 
     def read_positive(self, kind: Kind, value: float | str, path: Path, what: str) -> float:
         """As `read`, for a quantity that has to be greater than zero; `what` begins the sentence."""

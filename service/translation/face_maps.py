@@ -74,6 +74,11 @@ class FaceReader:
         except errors.NotPhysical as error:
             self.collector.add_core_error(path, self._in_words_of_request(error, data))
             return None
+        if contents is not None and kind is Kind.POTENTIAL and isinstance(data, SamplesMap | FormulaMap):
+            lowest = contents.face_map.lowest
+            if self.collector.units.is_too_low(lowest):
+                what = f"The data go down to {self.collector.units.show(kind, lowest)}"
+                self.collector.add(path, self.collector.too_low(what), "absolute-zero")
         return contents if len(self.collector.issues) == noted else None
 
     def rectangle(self, intervals: AxisIntervals, path: Path) -> maps.Rectangle | None:

@@ -226,6 +226,34 @@ WRONG: dict[str, tuple[Json, str]] = {
         {"problem": plate(emissivity=0.8, ambient=-300)},
         "#/problem/faces/z_high/ambient",
     ),
+    "more taken out than radiation gives": (
+        {"problem": changed(plate(emissivity=0.8, coefficient=0), "faces/z_low/inflow", -500)},
+        "#/problem/faces/z_high",
+    ),
+    "colder than absolute zero": (
+        {"problem": changed(plate(emissivity=0.8, coefficient=5), "faces/z_low/inflow", -1e5)},
+        "#/problem/faces/z_high",
+    ),
+    "colder than absolute zero where most is taken out": (
+        {
+            "problem": changed(
+                changed(plate(emissivity=0.8, coefficient=0), "body/conductivity", 0.1),
+                "faces/z_low/inflow",
+                {"map": "patches", "background": 0, "patches": [{"x": [18, 22], "y": [28, 32], "value": "-40 kW/m^2"}]},
+            )
+        },
+        "#/problem/faces/z_high",
+    ),
+    "held below absolute zero": ({"problem": slab(-400)}, "#/problem/faces/z_low/value"),
+    "held below absolute zero in another unit": ({"problem": slab("-1 K")}, "#/problem/faces/z_low/value"),
+    "readings below absolute zero": (
+        {"problem": slab({"map": "samples", "csv": ",0,60\n0,1,2\n40,3,-274"})},  # type: ignore[arg-type]
+        "#/problem/faces/z_low/value",
+    ),
+    "formula below absolute zero": (
+        {"problem": slab({"map": "formula", "expression": "-20*x"})},  # type: ignore[arg-type]
+        "#/problem/faces/z_low/value",
+    ),
     "law of a stack": (
         changed(
             changed({"problem": lawful(slab())}, "problem/body/layers", STACK), "problem/body/size", {"x": 40, "y": 60}
@@ -241,6 +269,18 @@ async def test_what_is_wrong_is_pointed_at(client: httpx.AsyncClient, name: str)
     question = {**question, "evaluate": {"points": [{"at": [1, 1, 1]}]}}
     document = check_problem_document(await client.post("/v1/fields", json=question), 422)
     assert pointer in pointers(document)
+
+
+async def test_absolute_zero_itself_may_be_held_and_radiation_gives_what_it_can(client: httpx.AsyncClient) -> None:
+    for zero in (-273.15, "0 K", "-459.67 degF"):
+        answer = await client.post("/v1/fields", json=ask_points(slab(zero), [1, 1, 12.5]))
+        assert answer.json()["points"][0]["potential"] == pytest.approx((80 - 273.15) / 2, rel=1e-9)
+    # 0.8 sigma (T0^4 - T^4) = 300 W/m^2 at the top, and 300 W/m^2 * 25 mm / k less below.
+    problem = changed(plate(emissivity=0.8, coefficient=0), "faces/z_low/inflow", -300)
+    answer = await client.post("/v1/fields", json=ask_points(problem, [1, 1, 25]))
+    (top,) = answer.json()["points"]
+    expected = (293.15**4 - 300 / (0.8 * SIGMA)) ** 0.25 - 273.15
+    assert abs(top["potential"] - expected) <= top["error_bound"] + 1e-9
 
 
 async def test_law_of_a_stack_is_refused_with_what_to_do_instead(client: httpx.AsyncClient) -> None:
