@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import ast
 import math
+import re
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
@@ -22,6 +23,9 @@ FloatArray = NDArray[np.float64]
 
 # Bounds of an expression: characters, nodes of its tree, levels of nesting, and the size of a power's exponent.
 LONGEST, MOST_NODES, DEEPEST, LARGEST_EXPONENT = 500, 200, 40, 64.0
+
+# A number in decimal; the parser would also take other bases and underscores.
+DECIMAL = re.compile(r"([0-9]+\.?[0-9]*|\.[0-9]+)([eE][+-]?[0-9]+)?")
 
 CONSTANTS: dict[str, float] = {"pi": math.pi, "e": math.e}
 COORDINATES = ("x", "y", "z")
@@ -187,6 +191,12 @@ class _Reader:
         return _place(self.text, tree.col_offset)
 
     def _number(self, tree: ast.expr, value: float) -> Node:
+        written = ast.get_source_segment(self.text.strip().replace("^", "**"), tree)
+        if written is None or not DECIMAL.fullmatch(written):
+            raise NotPhysical(
+                f"The number at character {self._where(tree)} of the expression is not written in decimal; write for "
+                "example 1000, 0.5 or 1.5e3."
+            )
         try:
             number = float(value)
         except OverflowError:

@@ -38,6 +38,9 @@ MEANINGS: dict[str, Callable[[float, float], float]] = {
 REFUSED = {
     "20 + u": "The name u at character 6 of the expression is not known; the coordinates are x and y",
     "2^2^z": "The face has no extent along z, at character 5 of the expression",
+    "x + 1_000": "The number at character 5 of the expression is not written in decimal",
+    "0x10*x": "The number at character 1 of the expression is not written in decimal",
+    "(x^2 +\n0b1)": "of the expression is not written in decimal",
     "20 + sin": "The function sin at character 6 of the expression needs its argument in parentheses",
     "min(x)": "The function min at character 1 of the expression needs at least two arguments",
     "3*hypot(x, y)": "The function hypot at character 3 of the expression is not known; there are sin, cos",
