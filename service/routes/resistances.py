@@ -58,6 +58,7 @@ async def resistances(
 
     The data of the problem count for nothing here: every held value and ambient is the environment, at zero, and only
     the pad that is fed takes a flow. With `Accept: text/csv` the matrix comes as a table, with `Accept: text/plain` the
-    network as a list of resistors for a circuit solver.
+    network as a list of resistors for a circuit solver. In the table a name that begins with = + - @ or a tab has an
+    apostrophe before it, so that no spreadsheet takes it for a formula.
     """
     return await answer(request, question, _CALL)

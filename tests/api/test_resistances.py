@@ -167,6 +167,15 @@ async def test_table_is_csv_with_quoted_names(client: httpx.AsyncClient) -> None
     assert [[float(entry) for entry in row[1:]] for row in rows] == found["mean"]["value"]
 
 
+@pytest.mark.parametrize("name", ["=HYPERLINK(1)", "+1", "-2", "@SUM(A1)", "\t=1"])
+async def test_name_that_a_spreadsheet_would_run_is_marked_as_a_text(client: httpx.AsyncClient, name: str) -> None:
+    problem = changed(plate(), "faces/z_high/inflow/patches/1/name", name)
+    answer = await client.post("/v1/resistances", json={"problem": problem}, headers={"Accept": "text/csv"})
+    head, *rows = csv.reader(io.StringIO(answer.text, newline=""), strict=True)
+    assert head[2] == rows[1][0] == f"'{name}"
+    assert head[1] == rows[0][0] == PATCHES[0]["name"]
+
+
 async def test_list_of_resistors_solves_to_the_matrix(client: httpx.AsyncClient) -> None:
     found = await ask(client, plate())
     answer = await client.post("/v1/resistances", json={"problem": plate()}, headers={"Accept": "text/plain"})
