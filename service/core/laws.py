@@ -27,6 +27,9 @@ FloatArray = NDArray[np.float64]
 # A linear law is taken to hold down to this factor; below it the potential follows the flows without limit.
 LEAST_FACTOR = 1e-3
 
+# Factors that a law may have where there are data; beyond them theta keeps no digits.
+SMALLEST_FACTOR, LARGEST_FACTOR = 1e-15, 1e15
+
 # Slopes of a law are the same when they differ by no more than this part of the steepest, which is their rounding.
 SAME_SLOPE = 4e-15
 
@@ -60,6 +63,12 @@ class ConductivityLaw:
         if per_degree == 0.0:
             return cls.constant()
         end = reference - (1.0 - LEAST_FACTOR) / per_degree
+        if end == reference:
+            raise NotPhysical(
+                f"The factor of the conductivity law changes by {per_degree:g} for each unit of potential, so that it "
+                f"is above zero on one side of {reference:g} only; give a slope of which a body can make use.",
+                ("law", "per_degree"),
+            )
         if per_degree > 0.0:
             return cls((end, reference), (LEAST_FACTOR, 1.0), (0.0, per_degree), end, math.inf)
         return cls((reference, end), (1.0, LEAST_FACTOR), (per_degree, 0.0), -math.inf, end)
@@ -162,7 +171,7 @@ class Kirchhoff:
         """The greatest |f'|, which is how much theta bends over the potential."""
         return float(np.abs(self._slopes).max())
 
-    def potential_bound(self, theta: FloatArray, bound: float) -> FloatArray:
+    def potential_bound(self, theta: FloatArray, bound: float | FloatArray) -> FloatArray:
         """How far the potential may be off where theta is off by the bound."""
         here = self.potential(theta)
         return np.maximum(self.potential(theta + bound) - here, here - self.potential(theta - bound))

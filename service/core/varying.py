@@ -25,7 +25,7 @@ from service.core.field import Field, Grid, KeepGoing, Setting
 from service.core.film_iteration import Iterated, below_absolute_zero, first_faces, iterate
 from service.core.flow_error import FlowError
 from service.core.kirchhoff import Transformed, transform
-from service.core.laws import ConductivityLaw
+from service.core.laws import LARGEST_FACTOR, SMALLEST_FACTOR, ConductivityLaw, Kirchhoff
 from service.core.maps import Rectangle
 from service.core.problem import Body, Face, Film, Held, Inflow, Insulated, axes_along, axis_of, is_high, map_of
 from service.core.solution import Solution
@@ -171,11 +171,15 @@ class VaryingSolution(Solution):
         """What stands behind an answer with that bound; both representations are those of theta."""
         iterated = self._within(tolerance, None)
         with _In(self, tolerance, FIELD):
-            found = certificate.certify(iterated.setting, points, error_bound, FIELD * self._in_theta(tolerance))
+            found = certificate.certify(
+                iterated.setting,
+                points,
+                error_bound,
+                FIELD * self._in_theta(tolerance),
+                self._data.kirchhoff.potential_bound,
+            )
         return replace(
             found,
-            agreement=None if found.agreement is None else found.agreement / self._least_factor,
-            check_bound=None if found.check_bound is None else found.check_bound / self._least_factor,
             iterations=self._steps,
             residual=max((bound.leftover for bound in iterated.films.values()), default=0.0),
         )
@@ -285,6 +289,7 @@ class VaryingSolution(Solution):
         levels = [level for face_map in maps if face_map is not None for level in (face_map.lowest, face_map.highest)]
         low, high = min(levels), max(levels)
         self._check_held(law)
+        _check_factors(self._data.kirchhoff, low, high)
         self._check_above_absolute_zero(low)
         _check_radiation(self._data)
         theta = self._data.kirchhoff.theta(np.array([low, high]))
@@ -398,16 +403,19 @@ class VaryingSolution(Solution):
         return replace(found, value=value, error_bound=bound + STORED * (abs(value) + abs(self.reference)))
 
     def _converged(self, found: Convergence, iterated: Iterated) -> Convergence:
-        """How an answer converges, in the potential: differences of theta divided by the least factor."""
+        """How an answer converges, in the potential: what is left by a step divided by the least factor."""
         per = 1 / self._least_factor
 
         def potential(theta: float) -> float:
             return float(self._data.kirchhoff.potential(np.array([theta]))[0])
 
+        def off(theta: float) -> float:
+            return float(self._data.kirchhoff.potential_bound(np.array([found.value]), theta)[0])
+
         return replace(
             found,
             value=potential(found.value),
-            error_bound=(found.error_bound + iterated.error) * per,
+            error_bound=off(found.error_bound + iterated.error),
             series=tuple(
                 SeriesStep(
                     step.terms,
@@ -421,8 +429,8 @@ class VaryingSolution(Solution):
                 NodeStep(step.nodes, potential(step.value), step.error * per, step.error_bound * per)
                 for step in found.time_form
             ),
-            agreement=None if found.agreement is None else found.agreement * per,
-            agreement_bound=None if found.agreement_bound is None else found.agreement_bound * per,
+            agreement=None if found.agreement is None else off(found.agreement),
+            agreement_bound=None if found.agreement_bound is None else off(found.agreement_bound),
         )
 
     def _with_iteration(self, found: Estimate, tolerance: float) -> Estimate:
@@ -487,6 +495,18 @@ def _is_close(low: float, high: float, coldest: Place, hottest: Place) -> bool:
     """Whether it takes better bounds to tell if the field leaves a range."""
     distances = ((abs(hottest.value - high), hottest), (abs(low - coldest.value), coldest))
     return any(STORED * abs(place.value) < distance <= place.error_bound for distance, place in distances)
+
+
+def _check_factors(kirchhoff: Kirchhoff, low: float, high: float) -> None:
+    """Raise NotPhysical where the factor of the law at the data of the faces is no number to compute with."""
+    # Outside the law's range its last factor goes on.
+    least, most = kirchhoff.factor_range(low, high)
+    if not SMALLEST_FACTOR <= least <= most <= LARGEST_FACTOR:
+        raise NotPhysical(
+            f"The factor of the conductivity law goes from {least:g} to {most:g} at the values given on the faces; it "
+            f"has to lie between {SMALLEST_FACTOR:g} and {LARGEST_FACTOR:g} there.",
+            ("law",),
+        )
 
 
 def _check_radiation(data: Transformed) -> None:

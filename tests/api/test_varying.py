@@ -254,6 +254,14 @@ WRONG: dict[str, tuple[Json, str]] = {
         {"problem": slab({"map": "formula", "expression": "-20*x"})},  # type: ignore[arg-type]
         "#/problem/faces/z_low/value",
     ),
+    "slope beyond all digits": (
+        changed({"problem": lawful(plate())}, f"{LAW}/per_degree", 1e59),
+        f"#/{LAW}/per_degree",
+    ),
+    "factor beyond all digits": (
+        changed(changed({"problem": lawful(plate())}, f"{LAW}/per_degree", 1e59), f"{LAW}/reference", 0),
+        f"#/{LAW}",
+    ),
     "law of a stack": (
         changed(
             changed({"problem": lawful(slab())}, "problem/body/layers", STACK), "problem/body/size", {"x": 40, "y": 60}

@@ -191,6 +191,21 @@ def test_held_readings_are_read_off_again_exactly_in_theta() -> None:
     assert solution.usual_accuracy == 1e-9
 
 
+def test_agreement_of_both_forms_is_that_near_the_value_whatever_the_law_is_elsewhere() -> None:
+    """The factor is 1e-12 at the cold end only; in the warm half both forms agree to the bound of the answer."""
+    law = ConductivityLaw.table([0.0, 100.0], [1e-12, 1.0])
+    faces = all_insulated(z_low=Held(pad(1.0, 1.0, 90.0, 100.0)), z_high=held(0.0))
+    solution = solve(Body(UNIT, UNIT, faces, law=law))
+    # At the cold end nothing better can be promised, so that this is what has to be asked for.
+    found = solution.field_at(along_z(0.1), tolerance=100.0)
+    assert found.potential_bound <= 1e-9
+    checked = solution.certificate(along_z(0.1), found.potential_bound, tolerance=100.0)
+    assert checked.agreement is not None
+    assert checked.check_bound is not None
+    assert checked.agreement <= checked.check_bound
+    assert checked.agreement <= 1e-9
+
+
 def test_many_readings_are_held_in_theta_with_little_memory_and_asking_on_the_way() -> None:
     """Noise of full rank: its square has twice as many products and takes no more than a few tables of its places."""
     count = 90
