@@ -16,12 +16,14 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.ndimage import maximum_filter1d
 
 from service.core import time_error, time_range
 from service.core.errors import NoSteadyState, NotPhysical
 from service.core.field import KeepGoing
 from service.core.lines import laplace
 from service.core.lines.line import VALUE, Line, WallDrive
+from service.core.lines.modes import MODE_COUNT, modes_of
 from service.core.lines.pairs import Intervals, pair_means
 from service.core.lines.places import Places
 from service.core.lines.time_response import respond
@@ -55,8 +57,15 @@ STEP = 0.25
 EARLIEST = 1e-18
 
 # What a sum of absolute values at the nodes may grow to on the shifted contour of the error bound: the means of pads
-# are positive and change by sqrt(1 / sin(ANGLE)) in t at the most, the two of them and the end together.
+# that touch are positive and change by sqrt(1 / sin(ANGLE)) in t at the most, the two of them and the end together.
 SPREAD = math.sin(time_error.ANGLE) ** -1.5
+
+# Angles that the contours of the bound keep to the edge of the sector for pads that are apart. Near it the rule is
+# better, further off the front between the pads is narrower, and so what is far beyond a decay keeps its digits.
+CONTOURS = (time_error.ANGLE, 0.67)
+
+# Fronts are added up at every so many nodes; between those they change by less than the factor of two allowed for.
+SPARSE = 4
 
 # Rounding of a mean of one interval over another, relative to the mean of a narrowest one over itself.
 PAIR_ROUNDING = 2e-13
@@ -361,6 +370,12 @@ def _same_axis(
     at_once = shape * closed[pick_end]
     total, size, rounding = at_once.copy(), np.abs(at_once), np.zeros_like(at_once)
     most_first, most_second = _most(along[0], row.first, times), _most(along[1], row.second, times)
+    # Of pads that are apart a front is on its way, which comes earlier on the contour.
+    apart = (_gaps(along[0], row.first, column.first) > 0)[pick_first] | (
+        _gaps(along[1], row.second, column.second) > 0
+    )[pick_second]
+    widest_end = maximum_filter1d(np.abs(through), 2 * _nodes_within() + 1, axis=2, mode="nearest")
+    on_its_way = [np.zeros_like(size) for _ in CONTOURS]
     run = max(NUMBERS_AT_ONCE // total.size, 1)
     for start in range(0, times.size, run):
         if keep_going is not None:
@@ -375,10 +390,18 @@ def _same_axis(
             end = weights[q] * through[:, :, q][pick_end]
             total += (means - taken_out[q] * shape) * end
             size += (means + taken_out[q] * shape) * np.abs(end)
+            if q % SPARSE == 0 and apart.any():
+                widest = weights[q] * widest_end[:, :, q][pick_end]
+                for angle, fronts in zip(CONTOURS, on_its_way, strict=True):
+                    front_first = _fronts(along[0], row.first, column.first, times[q], angle)
+                    front_second = _fronts(along[1], row.second, column.second, times[q], angle)
+                    fronts += front_first[pick_first] * front_second[pick_second] * widest
             rounding += (np.abs(one) * most_second[q] + np.abs(two) * most_first[q]) * np.abs(end)
-    relative = time_error.step_error(STEP) * SPREAD + 4 * time_error.ROUNDING
+    by_rule = time_error.step_error(STEP) * SPREAD * size
+    ways = [2 * SPARSE * _rule_error(angle) * fronts for angle, fronts in zip(CONTOURS, on_its_way, strict=True)]
+    by_rule = np.where(apart, np.minimum(*ways), by_rule)
     scale = scale_of(body, axis) * along[0].scale * along[1].scale
-    return scale * total, scale * (relative * size + PAIR_ROUNDING * rounding)
+    return scale * total, scale * (by_rule + 4 * time_error.ROUNDING * size + PAIR_ROUNDING * rounding)
 
 
 def _most(line: Line, intervals: Intervals, times: FloatArray) -> FloatArray:
@@ -389,6 +412,36 @@ def _most(line: Line, intervals: Intervals, times: FloatArray) -> FloatArray:
     at_first = 1 / (float(intervals.widths.min()) * line.scale)
     at_last = 0.0 if line.is_endless else 2 / line.extent
     return np.minimum(at_first, 2 / np.sqrt(math.pi * times) + at_last)
+
+
+def _gaps(line: Line, rows: Intervals, columns: Intervals) -> FloatArray:
+    """Scaled distances between intervals, 0 where they touch or overlap."""
+    beyond = np.maximum(rows.low[:, None] - columns.high, columns.low - rows.high[:, None])
+    return np.maximum(beyond, 0.0) * line.scale
+
+
+def _fronts(line: Line, rows: Intervals, columns: Intervals, time: float, angle: float) -> FloatArray:
+    """What means do not exceed on a contour, by the front between two intervals and the decay of the slowest mode.
+
+    There a front is exp(-d^2 sin(angle) / 4 t), and a mode has decayed by sin(angle) t; see _rule_error for the rest.
+    """
+    widths = np.maximum(rows.widths[:, None], columns.widths) * line.scale
+    at_last = 0.0 if line.is_endless else 2 / line.extent
+    most = np.minimum(2 / widths, 2 / math.sqrt(math.pi * time) + at_last)
+    rate = 0.0 if line.is_endless else float(modes_of(line, MODE_COUNT).rates[0])
+    return np.asarray(most * np.exp(-math.sin(angle) * (_gaps(line, rows, columns) ** 2 / (4 * time) + rate * time)))
+
+
+def _rule_error(angle: float) -> float:
+    """Error of the rule in parts of a sum of absolute values on the contour that keeps an angle to the sector's edge,
+    where the two means and the end are larger by sin(angle)^(-1/2) each.
+    """
+    return 2 * math.sin(angle) ** -1.5 / math.expm1(2 * math.pi * (math.pi / 2 - angle) / STEP)
+
+
+def _nodes_within() -> int:
+    """How many nodes away the end's answer is looked for that it has on the contours."""
+    return math.ceil(-math.log(math.sin(time_error.ANGLE)) / STEP)
 
 
 def _times(lines: Sequence[Line], narrowest: float) -> FloatArray:

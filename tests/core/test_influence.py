@@ -294,3 +294,18 @@ def test_pads_without_an_influence_are_refused(name: str) -> None:
     body, pad, error = REFUSED[name]
     with pytest.raises(error):
         influence(body, [pad], tolerance=TOLERANCE)
+
+
+def test_pads_far_beyond_the_reach_of_each_other_scale_within_their_bounds() -> None:
+    """Another unit of length puts other nodes of the rule: 27 decay lengths apart they tell what the rule leaves."""
+    found = []
+    for unit in (1.0, 2.0**20):
+        faces = all_insulated(x_low=held(0.0), y_low=film(2.57 / unit, 0.0), z_low=film(3.9e-3 / unit, 0.0))
+        body = Body((1.115 * unit, 1.115 * unit, 1.139e-5 * unit), (1.0, 1.0, 1.0), faces)
+        corners = ((1.0, 1.115, 0.0, 1e-4), (0.044, 0.0441, 1.1149, 1.115))
+        pads = [Pad("z_low", Rectangle(*(unit * place for place in corner))) for corner in corners]
+        matrix = influence(body, pads, tolerance=1e-6 / unit)
+        found.append((unit * matrix.mean[0, 1], unit * matrix.bound[0, 1]))
+    (one, one_bound), (other, other_bound) = found
+    assert 0.0 < abs(one - other) <= one_bound + other_bound
+    assert one_bound < 0.1 * one
