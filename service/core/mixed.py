@@ -172,7 +172,7 @@ class MixedSolution(Solution):
     @property
     def span(self) -> float:
         """Range of the potential that accuracies refer to."""
-        return self._here.solutions[0].span
+        return self._here.span
 
     @property
     def reference(self) -> float:
@@ -231,7 +231,7 @@ class MixedSolution(Solution):
         assert isinstance(pad, FilmPad)
         share = 1.0 + self._base.coefficients[face] / spot.excess
         per_flow = 1 / (spot.area * spot.excess)
-        potential = Bounded(pad.ambient - per_flow * excess.value, per_flow * excess.error_bound)
+        potential = self._limited(Bounded(pad.ambient - per_flow * excess.value, per_flow * excess.error_bound))
         return PadAnswer(face, index, pad.name, Bounded(share * excess.value, share * excess.error_bound), potential)
 
     def _pad_of_base(self, face: Face, index: int, pad: MixedPad) -> PadAnswer:
@@ -239,7 +239,7 @@ class MixedSolution(Solution):
         means = [
             solution.mean(face, pad.where, tolerance=MEAN_ACCURACY * self.span) for solution in self._here.solutions
         ]
-        mean = self._ladder.limit(means)
+        mean = self._limited(self._ladder.limit(means))
         if isinstance(pad, FluxPad):
             return PadAnswer(face, index, pad.name, Bounded(pad.inflow * pad.where.area, 0.0), mean)
         assert isinstance(pad, FilmPad)
@@ -322,8 +322,10 @@ class MixedSolution(Solution):
                 ],
                 self._noise(finest, points),
                 self._unsettled(here),
-                here.solutions[0].span,
+                here.span,
             )
+            potential, bound = self._within_limits(found.potential, found.potential_bound)
+            found = replace(found, potential=potential, potential_bound=bound)
             if found.potential_bound <= tolerance:
                 return found
             finer = self._ladder.finer(count, _over(found.potential_bound, tolerance), ORDER_OF_FIELDS)
@@ -343,7 +345,7 @@ class MixedSolution(Solution):
             if spot.level is None
         ]
         size = math.fsum(abs(fine.value) for fine, _, _ in flows)
-        span = here.solutions[0].span
+        span = here.span
         parts = [_over(self._distance_to_limit(values), size) for values in flows]
         parts += [_over(self._distance_to_limit(values), span) for values in levels]
         return max(parts)
@@ -351,6 +353,30 @@ class MixedSolution(Solution):
     def _distance_to_limit(self, values: Sequence[Bounded]) -> float:
         limit = self._ladder.limit(values)
         return abs(limit.value - values[0].value) + limit.error_bound
+
+    @property
+    def _limits(self) -> tuple[float, float] | None:
+        """Between what levels the potential is everywhere, by the maximum principle; None where that does not tell."""
+        if self._ladder.is_driven:
+            return None
+        given = [Bounded(level, 0.0) for level in self._ladder.given_levels]
+        levels = [*given, *(self._level(number) for number in range(len(self._base.spots)))]
+        low = min(level.value - level.error_bound for level in levels)
+        high = max(level.value + level.error_bound for level in levels)
+        return low, high
+
+    def _within_limits(self, potential: FloatArray, bound: float) -> tuple[FloatArray, float]:
+        """Potentials and their common bound, no farther from the truth than the levels between which that is."""
+        limits = self._limits
+        if limits is None:
+            return potential, bound
+        low, high = limits
+        inside = np.clip(potential, low, high)
+        return inside, min(bound, float(np.maximum(inside - low, high - inside).max()))
+
+    def _limited(self, known: Bounded) -> Bounded:
+        value, bound = self._within_limits(np.array([known.value]), known.error_bound)
+        return Bounded(float(value[0]), bound)
 
     def _noise(self, refined: Refined, points: FloatArray) -> tuple[FloatArray, FloatArray]:
         """How far potential and flux may be off where panels are told apart, shape (n,) each."""
@@ -438,7 +464,9 @@ class MixedSolution(Solution):
             solution.peak(face, rectangle, tolerance=SHARE * tolerance, keep_going=keep_going)
             for solution in self._here.solutions[:2]
         )
-        return replace(fine, error_bound=fine.error_bound + middle.error_bound + abs(fine.value - middle.value))
+        error = fine.error_bound + middle.error_bound + abs(fine.value - middle.value)
+        known = self._limited(Bounded(fine.value, error))
+        return replace(fine, value=known.value, error_bound=known.error_bound)
 
     def means(self, face: Face, rectangles: Sequence[Rectangle], *, tolerance: float) -> list[Bounded]:
         """Means of the potential over rectangles of a face."""
@@ -469,7 +497,8 @@ class MixedSolution(Solution):
         count = self.count
         while True:
             solutions = self._ladder.at(count).solutions
-            found = change_of([solution.mean(face, rectangle, tolerance=tolerance) for solution in solutions])
+            means = [solution.mean(face, rectangle, tolerance=tolerance) for solution in solutions]
+            found = self._limited(change_of(means))
             finer = self._ladder.finer(count, _over(found.error_bound, tolerance), ORDER_OF_FIELDS)
             if finer is None:
                 return found

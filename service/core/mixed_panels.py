@@ -87,18 +87,10 @@ class System:
             factor = cho_factor(matrix.T, check_finite=False, overwrite_a=True)
             flows = np.asarray(cho_solve(factor, potentials, check_finite=False))
         except np.linalg.LinAlgError:
-            raise self.without_digits() from None
+            raise without_digits(self.base) from None
         if not np.isfinite(flows).all():
-            raise self.without_digits()
+            raise without_digits(self.base)
         return flows
-
-    def without_digits(self) -> NotPhysical:
-        """What is raised where rounding leaves no digit of the flows."""
-        return NotPhysical(
-            "The pads of the mixed faces and the gaps between them are too unlike in size for the digits of numbers; "
-            "leave the least of them out, or make it larger.",
-            ("faces", self.base.faces[0], "pads"),
-        )
 
     def summed(self, flows: FloatArray) -> FloatArray:
         """Total of each spot, shape (number of spots, n), of flows of the panels."""
@@ -120,6 +112,15 @@ class System:
             some = rows[start : start + grid.count] * grid.shares[:, None]
             found.append(some.reshape(n // 2, 2, m // 2, 2, -1).sum(axis=(1, 3)).reshape(grid.count // 4, -1))
         return np.concatenate(found)
+
+
+def without_digits(base: Base) -> NotPhysical:
+    """What is raised where rounding leaves no digit of the flows."""
+    return NotPhysical(
+        "The pads of the mixed faces and the gaps between them are too unlike in size for the digits of numbers; leave "
+        "the least of them out, or make it larger.",
+        ("faces", base.faces[0], "pads"),
+    )
 
 
 def system_of(base: Base, count: int) -> System:
@@ -182,7 +183,7 @@ def solve_system(
     try:
         unknown = np.linalg.solve(equations, right) if right.size else right
     except np.linalg.LinAlgError:
-        raise system.without_digits() from None
+        raise without_digits(base) from None
     found = answers[:, 0] + answers[:, 1:] @ unknown
     known[floating] = unknown[: floating.size]
     return Refined(system.grids, tuple(np.split(found, system.starts[1:-1])), known)

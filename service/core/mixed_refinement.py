@@ -28,9 +28,9 @@ from service.core.mixed_panels import (
     system_of,
     with_flows,
 )
-from service.core.problem import AXES, Body, Film, Held, HeldPad, axes_along, map_of
+from service.core.problem import AXES, Body, Film, Held, HeldPad, Inflow, axes_along, map_of
 from service.core.solution import Solution
-from service.core.span import span_of
+from service.core.span import rises, span_of
 from service.core.split import lines_of, parts_of, reference_level, scale_of
 from service.core.stopping import go_on
 from service.core.totals import Bounded
@@ -75,12 +75,13 @@ LEVEL_ACCURACY = 1e-12
 class Refinement:
     """The answer with `count` panels along each axis of a spot, half and a quarter as many: in that order.
 
-    refined: the flows, empty if there are no spots. solutions: the fields.
+    refined: the flows, empty if there are no spots. solutions: the fields. span: range of the potential.
     """
 
     count: int
     refined: tuple[Refined, ...]
     solutions: tuple[Solution, ...]
+    span: float
 
 
 class Ladder:
@@ -135,19 +136,19 @@ class Ladder:
             lines, reference = lines_of(base.body), reference_level(base.body)
             parts = parts_of(base.body, reference)
             only = Solution(Setting(base.body, lines, parts, reference, span_of(base.body, lines, parts)))
-            return Refinement(count, (), (only,) * LEVELS)
+            return Refinement(count, (), (only,) * LEVELS, only.span)
         system = system_of(base, count)
         means, given = base_means(base, system.grids), given_total(base) if needs_balance(base) else 0.0
-        refined, solutions = [], []
+        refined, settings = [], []
         for level in range(LEVELS):
             half = system.halved(means) if level < LEVELS - 1 else None
             found = solve_system(system, [spot.level for spot in base.spots], self._given_flows, means, given)
-            found, solution = self._with_level(found)
+            found, setting = self._with_level(found)
             refined.append(found)
-            solutions.append(solution)
+            settings.append(setting)
             if half is not None:
                 system, means = half
-        return Refinement(count, tuple(refined), tuple(solutions))
+        return Refinement(count, tuple(refined), tuple(map(Solution, settings)), self._span_of(refined[0], settings[0]))
 
     @cached_property
     def _given_flows(self) -> FloatArray:
@@ -159,33 +160,56 @@ class Ladder:
                 flows[number] = pad.flow
         return flows
 
-    def _with_level(self, found: Refined) -> tuple[Refined, Solution]:
+    def _with_level(self, found: Refined) -> tuple[Refined, Setting]:
         """The field of the flows found, with its level where they fix it only up to a constant."""
         base = self.base
         body = with_faces(self.body, with_flows(base, found))
         lines, reference = lines_of(body), reference_level(body)
-        setting = Setting(body, lines, parts_of(body, reference), reference, self._span_of(found))
+        parts = parts_of(body, reference)
+        setting = Setting(body, lines, parts, reference, self._size_of(found))
         if not needs_balance(base):
-            return found, Solution(setting)
+            return found, setting
         known = [number for number, spot in enumerate(base.spots) if spot.level is not None]
         number = known[0] if known else 0
         spot = base.spots[number]
         mean = Solution(setting).mean(spot.face, spot.where, tolerance=LEVEL_ACCURACY * setting.span).value
         level = found.levels[number] - float(found.flows[number].sum()) / (spot.area * spot.excess)
         if known:
-            return found, Solution(replace(setting, reference=level - mean))
-        return replace(found, levels=found.levels + (mean - level)), Solution(setting)
+            return found, replace(setting, reference=level - mean)
+        return replace(found, levels=found.levels + (mean - level)), setting
 
-    def _span_of(self, found: Refined) -> float:
-        """Range of all levels, or what flows and sources raise, whichever is larger."""
-        levels = list(found.levels)
+    @cached_property
+    def is_driven(self) -> bool:
+        """Whether something is generated or given per area, which may raise the potential beyond all levels."""
+        conditions = self.base.body.faces.values()
+        maps = [condition.inflow for condition in conditions if isinstance(condition, Inflow)]
+        return bool(self.base.body.generating) or any(one.lowest != 0.0 or one.highest != 0.0 for one in maps)
+
+    @cached_property
+    def given_levels(self) -> list[float]:
+        """Levels of faces and of what lies far away; those of spots are told by each refinement."""
         films = [condition for condition in self.base.body.faces.values() if isinstance(condition, Held | Film)]
+        levels = []
         for condition in films:
             face_map = map_of(condition)
             assert face_map is not None
             levels += [face_map.lowest, face_map.highest]
         if not films and not needs_balance(self.base):
             levels.append(self.base.body.far_level or 0.0)
+        return levels
+
+    def _span_of(self, found: Refined, setting: Setting) -> float:
+        """Range of all levels, and of what they and all that is given raise the potential to."""
+        potentials = np.array([*found.levels, *self.given_levels])
+        if self.is_driven:
+            # Much of what is given leaves through spots, and raises the potential before them.
+            raised = setting.reference + rises(setting.body, setting.lines, setting.parts)
+            potentials = np.concatenate([potentials, raised])
+        return float(np.ptp(potentials))
+
+    def _size_of(self, found: Refined) -> float:
+        """What the field of the base and that of the spots' flows come to at the most."""
+        levels = [*found.levels, *self.given_levels]
         return max(float(max(levels) - min(levels)), self._span_of_base)
 
     @cached_property

@@ -19,7 +19,7 @@ from service.core.errors import NoSteadyState, NotPhysical
 from service.core.field import KeepGoing
 from service.core.mixed import LEAST_OF_WORST, MOST_PANELS, ORDER_OF_TOTALS
 from service.core.mixed_base import Base, base_of, check_apart, pads_of
-from service.core.mixed_panels import System, needs_balance, system_of
+from service.core.mixed_panels import System, needs_balance, system_of, without_digits
 from service.core.mixed_refinement import LEVELS, Ladder
 from service.core.panels import STEP
 from service.core.problem import Body, Face
@@ -69,7 +69,10 @@ class PadNetwork:
         """
         if self.closed:
             raise NotPhysical("Nothing but the pads takes up a flow; their rises above an environment have no value.")
-        inverses = [np.asarray(np.linalg.inv(matrix), dtype=float) for matrix in self._levels]
+        try:
+            inverses = [np.asarray(np.linalg.inv(matrix), dtype=float) for matrix in self._levels]
+        except np.linalg.LinAlgError:
+            raise without_digits(self._ladder.base) from None
         sums = np.abs(inverses[0]).sum(axis=1)
         return self._limits(inverses, self._rounding_of_finest * np.outer(sums, sums))
 
@@ -96,11 +99,19 @@ class PadNetwork:
         drive[first], drive[second] = 1.0, -1.0
         found = []
         for matrix in self._levels:
-            # In a closed body the level is free, and the equations are consistent.
-            potential = np.linalg.lstsq(matrix, drive, rcond=None)[0] if self.closed else np.linalg.solve(matrix, drive)
+            try:
+                potential = self._potential(matrix, drive)
+            except np.linalg.LinAlgError:
+                raise without_digits(self._ladder.base) from None
             value = float(potential @ drive)
             found.append(Bounded(value, _rounding(matrix) * value**2))
         return self._ladder.limit(found)
+
+    def _potential(self, matrix: FloatArray, drive: FloatArray) -> FloatArray:
+        if not self.closed:
+            return np.asarray(np.linalg.solve(matrix, drive))
+        # The level is free, and the equations are consistent.
+        return np.asarray(np.linalg.lstsq(matrix, drive, rcond=None)[0])
 
 
 def pad_network(

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 from numpy.typing import NDArray
 
@@ -28,25 +30,28 @@ def span_of(body: Body, lines: tuple[Line, Line, Line], parts: tuple[Part, ...])
     maps = [map_of(condition) for condition in body.faces.values() if isinstance(condition, Held | Film)]
     levels = [level for face_map in maps if face_map is not None for level in (face_map.lowest, face_map.highest)]
     flows = [part for part in parts if part.cause == SOURCES or isinstance(body.faces[part.cause], Inflow)]  # type: ignore[index]
-    rises = _rises(body, lines, flows) if flows else np.zeros(1)
+    raised = rises(body, lines, flows)
     return max(
         max(levels) - min(levels) if levels else 0.0,
-        float(max(rises.max(), 0.0) - min(rises.min(), 0.0)),
+        float(max(raised.max(), 0.0) - min(raised.min(), 0.0)),
     )
 
 
-def _rises(body: Body, lines: tuple[Line, Line, Line], flows: list[Part]) -> FloatArray:
-    grid = [Places(_coordinates(lines, flows, axis), VALUE) for axis in range(3)]
+def rises(body: Body, lines: tuple[Line, Line, Line], parts: Sequence[Part]) -> FloatArray:
+    """What parts raise at a few places of a body: its ends, its middle, the middles of patches and boxes."""
+    if not parts:
+        return np.zeros(1)
+    grid = [Places(_coordinates(lines, parts, axis), VALUE) for axis in range(3)]
     hot = _strongest(body, lines)
     points = [Places(hot[:, axis], VALUE) for axis in range(3)]
     rows, step = field.kept_rows(), time_error.COARSEST_STEP
     on_grid = sum(
-        (time_form.on_grid(time_form.integrate(lines, part, grid, step, rows)) for part in flows), start=np.zeros(())
+        (time_form.on_grid(time_form.integrate(lines, part, grid, step, rows)) for part in parts), start=np.zeros(())
     )
     if not len(hot):
-        return on_grid
+        return np.asarray(on_grid).ravel()
     at_points = sum(
-        (time_form.at_points(time_form.integrate(lines, part, points, step, rows)) for part in flows),
+        (time_form.at_points(time_form.integrate(lines, part, points, step, rows)) for part in parts),
         start=np.zeros(()),
     )
     return np.concatenate([on_grid.ravel(), at_points])
@@ -91,7 +96,7 @@ def _strongest_cells(body: Body, face: Face, face_map: FaceMap, limits: FloatArr
     return cells
 
 
-def _coordinates(lines: tuple[Line, Line, Line], flows: list[Part], axis: int) -> FloatArray:
+def _coordinates(lines: tuple[Line, Line, Line], flows: Sequence[Part], axis: int) -> FloatArray:
     low, high = neighbourhood(lines, axis)
     places = [low, 0.5 * (low + high), high]
     for part in flows:

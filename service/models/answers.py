@@ -91,7 +91,8 @@ class Remark(Model):
     code: str = Field(
         description=(
             "A short word for programs: `unbounded-total`, `level-pinned`, `flux-without-finite-value`, "
-            "`flux-poorly-known`, `readings-filled`, `accuracy-not-reached`, `overshoot-left-out`, "
+            "`flux-poorly-known`, `potential-poorly-known`, `readings-filled`, `accuracy-not-reached`, "
+            "`overshoot-left-out`, "
             "`network-not-determined` or `no-environment`; more may be added."
         ),
         examples=["unbounded-total"],

@@ -21,6 +21,9 @@ FloatArray = NDArray[np.float64]
 KeepGoing = Callable[[], None]
 Warning_ = dict[str, str]
 
+# A potential is poorly known where its bound is more than this part of the span.
+POORLY_KNOWN = 0.1
+
 # What rounding leaves of a coordinate that a search brings to zero, in parts of the lengths it works with. Places meant
 # by a client are further from zero: answers hold from a billionth of a side on.
 ROUNDING = 1e-14
@@ -109,6 +112,18 @@ def missed_accuracy(bound: float, tolerance: float, unit: str, where: str) -> li
         f"The bound of this number is {bound:.2g} {unit}, wider than the accuracy asked for, {tolerance:.2g} {unit}."
     )
     return [warning("accuracy-not-reached", message, where)]
+
+
+def poorly_known(solution: Solution, bounds: Sequence[float], unit: str) -> list[Warning_]:
+    """A remark on potentials whose largest bound is a considerable part of the span. unit: of both."""
+    largest = max(bounds, default=0.0)
+    if not 0.0 < POORLY_KNOWN * solution.span < largest:
+        return []
+    message = (
+        f"The largest bound of a potential is {largest:.2g} {unit}, more than a tenth of the range of potentials, "
+        f"{solution.span:.2g} {unit}."
+    )
+    return [warning("potential-poorly-known", message, "#/certificate/error_bound")]
 
 
 def problem_warnings(problem: ReadProblem, solution: Solution) -> list[Warning_]:

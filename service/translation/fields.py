@@ -230,12 +230,13 @@ def answer_fields(
         answer["interfaces"] = [answering.interface(index, asked) for index, asked in enumerate(wanted.interfaces)]
     keep_going()
     places = np.concatenate(answering.places)
+    unit = problem.units.declared[Kind.POTENTIAL_DIFFERENCE]
     return {
         "problem_id": problem.problem_id,
         "potential": problem.potential,
         "units": answers.units_shown(problem.units),
         "certificate": answers.certificate(problem, solution, places, wanted.tolerance, answering.bounds),
-        "warnings": answering.warnings,
+        "warnings": answering.warnings + answers.poorly_known(solution, answering.bounds, unit),
         **answer,
     }
 

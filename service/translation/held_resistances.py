@@ -9,10 +9,10 @@ from numpy.typing import NDArray
 
 from service.core.network import Network
 from service.core.pad_network import PadNetwork, pad_network
-from service.core.problem import HeldPad, Mixed
+from service.core.problem import Mixed
 from service.translation.answers import KeepGoing
 from service.translation.collector import Collector
-from service.translation.pads import Pad
+from service.translation.pads import Pad, is_held
 from service.translation.problem import ReadProblem
 from service.translation.resistance_parts import Resistances, Rises
 
@@ -28,14 +28,14 @@ def are_held(collector: Collector, problem: ReadProblem, pads: list[Pad], *, is_
     named, or some pads are held and others are fed.
     """
     if not is_named:
-        pads = [pad for pad in pads if _is_held(problem, pad) or not _is_on_mixed(problem, pad)]
+        pads = [pad for pad in pads if is_held(problem, pad) or not _is_on_mixed(problem, pad)]
     for index, pad in enumerate(pads):
-        if _is_on_mixed(problem, pad) and not _is_held(problem, pad):
+        if _is_on_mixed(problem, pad) and not is_held(problem, pad):
             detail = f"On the mixed face {pad.face} resistances lead to held pads; name one of these by `patch`."
             collector.add(("evaluate", "pads", index), detail, "not-held")
-        elif _is_held(problem, pad) and any(pad.part == other.part for other in pads[:index]):
+        elif is_held(problem, pad) and any(pad.part == other.part for other in pads[:index]):
             collector.add(("evaluate", "pads", index), "This held pad is named before; name each once.", "repeated")
-    held = [_is_held(problem, pad) for pad in pads]
+    held = [is_held(problem, pad) for pad in pads]
     if any(held) and not all(held):
         detail = "Some pads are held and others are fed a flow; name pads of one kind."
         collector.add(("evaluate", "pads") if is_named else ("evaluate",), detail, "pads-of-two-kinds")
@@ -44,11 +44,6 @@ def are_held(collector: Collector, problem: ReadProblem, pads: list[Pad], *, is_
 
 def _is_on_mixed(problem: ReadProblem, pad: Pad) -> bool:
     return isinstance(problem.body.faces[pad.face], Mixed)
-
-
-def _is_held(problem: ReadProblem, pad: Pad) -> bool:
-    condition, patch = problem.body.faces[pad.face], pad.part.patch
-    return isinstance(condition, Mixed) and patch is not None and isinstance(condition.pads[patch], HeldPad)
 
 
 def held_resistances(

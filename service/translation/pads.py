@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from service import cost
 from service.core import Bounded, Place, Solution
 from service.core.maps import Rectangle
-from service.core.problem import Face, Inflow, Mixed, axes_along, axis_of
+from service.core.problem import Face, HeldPad, Inflow, Mixed, axes_along, axis_of
 from service.models import pads as models
 from service.refusals import Path
 from service.settings import Settings
@@ -142,13 +142,13 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
     centres = np.array([pad.centre(problem) for pad in wanted.pads])
     # The peaks first: they ask most of the accuracy, and say best which one can be promised.
     peaks = _peaks(solution, wanted, keep_going)
-    at_centres = solution.field_at(centres, tolerance=tolerance, keep_going=keep_going)
-    bounds = [float(at_centres.potential_bound)]
+    in_middles = _in_middles(problem, solution, wanted, centres, keep_going)
+    bounds = [float(place.error_bound) for place in in_middles]
     means = _means(solution, wanted, keep_going)
     found = []
     warnings = answers.problem_warnings(problem, solution)
-    columns = zip(wanted.pads, centres, at_centres.potential, means, peaks, strict=True)
-    for index, (pad, centre, potential, mean, largest) in enumerate(columns):
+    columns = zip(wanted.pads, in_middles, means, peaks, strict=True)
+    for index, (pad, in_middle, mean, largest) in enumerate(columns):
         keep_going()
         passed = mixed_pad(mixed, pad.part)
         if passed is not None:
@@ -170,7 +170,7 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
                 "flow": flow,
                 "mean": _bounded(mean),
                 "largest": _at(problem, largest),
-                "centre": _at(problem, Place(tuple(centre), float(potential), float(at_centres.potential_bound), "")),
+                "centre": _at(problem, in_middle),
             }
         )
     return {
@@ -178,9 +178,29 @@ def answer_pads(problem: ReadProblem, solution: Solution, wanted: PadsWanted, ke
         "potential": problem.potential,
         "units": answers.units_shown(problem.units),
         "certificate": answers.certificate(problem, solution, centres, tolerance, bounds),
-        "warnings": warnings,
+        "warnings": warnings + answers.poorly_known(solution, bounds, units[Kind.POTENTIAL_DIFFERENCE]),
         "pads": found,
     }
+
+
+def _in_middles(
+    problem: ReadProblem, solution: Solution, wanted: PadsWanted, centres: FloatArray, keep_going: KeepGoing
+) -> list[Place]:
+    """The potential in the middle of each pad: those of held pads are levels, known better than the field of others."""
+    held = np.array([is_held(problem, pad) for pad in wanted.pads])
+    potential, bound = np.zeros(len(centres)), np.zeros(len(centres))
+    for some in (np.flatnonzero(~held), *np.flatnonzero(held)[:, None]):
+        if some.size:
+            found = solution.field_at(centres[some], tolerance=wanted.tolerance, keep_going=keep_going)
+            potential[some], bound[some] = found.potential, found.potential_bound
+    places = zip(centres, potential, bound, strict=True)
+    return [Place((at[0], at[1], at[2]), float(value), float(off), "") for at, value, off in places]
+
+
+def is_held(problem: ReadProblem, pad: Pad) -> bool:
+    """Whether a pad is one of a mixed face that has one potential all over."""
+    condition, patch = problem.body.faces[pad.face], pad.part.patch
+    return isinstance(condition, Mixed) and patch is not None and isinstance(condition.pads[patch], HeldPad)
 
 
 def _peaks(solution: Solution, wanted: PadsWanted, keep_going: KeepGoing) -> list[Place]:

@@ -313,3 +313,39 @@ async def test_pad_too_narrow_for_its_digits_is_refused_where_it_stands(client: 
     document = check_problem_document(await client.post("/v1/pads", json={"problem": problem}), 422)
     assert pointers(document) == ["#/problem/faces/z_high/pads/1"]
     assert "too narrow beside its coordinates" in document["detail"]
+
+
+async def test_middle_of_a_held_pad_is_known_as_well_as_its_level(client: httpx.AsyncClient) -> None:
+    """Levels are given or found for whole pads; the bound beside a film's border is that of the film alone."""
+    found = await ask(client, "pads", stub())
+    feed, back, lug = found["pads"]
+    assert feed["centre"]["error_bound"] == feed["mean"]["error_bound"] > 0
+    assert feed["centre"]["value"] == feed["mean"]["value"]
+    assert (back["centre"]["value"], back["centre"]["error_bound"]) == (0, 0)
+    assert lug["centre"]["error_bound"] > feed["centre"]["error_bound"]
+
+
+async def test_potential_between_pads_next_to_touching_is_between_their_levels(client: httpx.AsyncClient) -> None:
+    """Panels do not resolve a gap of 1e-7 mm; that the potential lies between 3 and 100 mV is all that is known."""
+    near = {**RETURN, "name": "near", "x": [25.0000001, 45], "value": 3}
+    problem = stub({**RETURN, "name": "feed", "x": [5, 25], "value": 100}, near)
+    places = [{"at": [x, 30, z]} for x in (15, 25, 26) for z in (0, 12, 25)]
+    found = await ask(client, "fields", problem, {"points": places})
+    for point in found["points"]:
+        assert 3 <= point["potential"] <= 100
+        assert point["error_bound"] <= 97
+    codes = [(warning["code"], warning["where"]) for warning in found["warnings"]]
+    assert ("potential-poorly-known", "#/certificate/error_bound") in codes
+
+
+async def test_potential_raised_by_generation_through_a_pad_has_an_accuracy_by_default(
+    client: httpx.AsyncClient,
+) -> None:
+    """All that is generated leaves through one held pad, far below which the rise is by hand at least R Q."""
+    problem = stub(RETURN) | {"sources": [{"density": "1e6 A/m^3"}]}
+    found = await ask(client, "fields", problem, {"points": [{"at": [0, 0, 0]}], "means": [{"face": "z_low"}]})
+    (point,), certificate = found["points"], found["certificate"]
+    rise = point["potential"]
+    # The span is within a few parts in a hundred of the largest rise, in the corner farthest off.
+    assert certificate["accuracy_asked"] == pytest.approx(5e-3 * rise, rel=0.1)
+    assert 0 < point["error_bound"] <= certificate["accuracy_asked"]

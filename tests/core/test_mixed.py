@@ -33,6 +33,7 @@ from service.core.formula import read
 from service.core.formula_map import of_formula
 from service.core.mixed import MixedSolution, PadAnswer, solve_mixed
 from service.core.mixed_base import base_of
+from service.core.mixed_panels import system_of
 from service.core.mixed_refinement import Ladder
 from service.core.pad_network import pad_network
 from service.core.problem import FilmPad, FluxPad, HeldPad, Mixed
@@ -43,6 +44,7 @@ from tests.core.reference.mixed_elements import Block, limit_of_flows
 ONE, OTHER, THIRD = Rectangle(0.1, 0.4, 0.1, 0.4), Rectangle(0.6, 0.9, 0.5, 0.9), Rectangle(0.1, 0.3, 0.6, 0.9)
 TWO = (HeldPad(ONE, 1.0, name="feed"), HeldPad(OTHER, 0.0, name="return"))
 SIZE, UNIT = (1.0, 1.0, 0.5), (1.0, 1.0, 1.0)
+ROD_END = Rectangle(0.005, 0.995, 0.005, 0.995)
 POINTS = np.array([[0.5, 0.5, 0.25], [0.3, 0.7, 0.1], [0.9, 0.2, 0.4]])
 
 # Capacitance of a square plate of side L in units of 4 pi eps0 L: 0.366788004057 by a variational computation; printed
@@ -526,3 +528,41 @@ def test_more_pads_than_are_solved_pass_a_limit_and_are_no_impossible_body() -> 
     with pytest.raises(TooManyPanels, match="at most 4 are solved together, with 64 panels each") as refused:
         solve_mixed(block(Mixed(INSULATED, pads)), most_panels=4 * 64)
     assert (refused.value.needed, refused.value.allowed) == (640, 256)
+
+
+def test_span_of_generation_is_what_it_raises_through_the_pads() -> None:
+    """A sheet-like pad over a whole end, but for a margin: the rise of a rod, q c^2 / 2 k, and no less."""
+    rod = Body((1.0, 1.0, 8.0), UNIT, all_insulated(z_high=Mixed(INSULATED, (HeldPad(ROD_END, 5.0),))))
+    solution = solve(replace(rod, sources=(BoxSource((0.0, 0.0, 0.0), (1.0, 1.0, 8.0), 1e-6),)))
+    assert solution.span == pytest.approx(1e-6 * 8.0**2 / 2, rel=0.02)
+    fed = solve(Body((1.0, 1.0, 8.0), UNIT, dict(rod.faces) | {"z_low": Inflow(FaceMap.uniform(1e-3))}))
+    assert fed.span == pytest.approx(1e-3 * 8.0, rel=0.02)
+    filmed = Mixed(Film(1e-6, FaceMap.uniform(5.0)), (HeldPad(ROD_END, 5.0),))
+    solution = solve(
+        Body((1.0, 1.0, 8.0), UNIT, dict(rod.faces) | {"z_low": fed.body.faces["z_low"], "z_high": filmed})
+    )
+    assert solution.span == pytest.approx(1e-3 * 8.0, rel=0.02)
+
+
+def test_field_stays_between_the_levels_where_nothing_is_given() -> None:
+    """Between pads with a gap that no panels resolve the bound is what is left up to the levels."""
+    gap = (HeldPad(ONE, 1.0), HeldPad(Rectangle(0.4 + 1e-9, 0.7, 0.1, 0.4), 0.25))
+    solution = solve_mixed(block(Mixed(INSULATED, gap)), accuracy=1e-2)
+    found = solution.field_at(POINTS, tolerance=1.0)
+    assert found.potential.min() >= 0.25
+    assert found.potential.max() <= 1.0
+    farthest = max(float(found.potential.max()) - 0.25, 1.0 - float(found.potential.min()))
+    assert found.potential_bound == pytest.approx(farthest, rel=1e-12)
+    mean = solution.mean("z_low", tolerance=1.0)
+    assert mean.error_bound <= 0.75
+    # With an inflow the potential may go beyond the levels, and the bound with it.
+    given = solve_mixed(block(Mixed(INSULATED, gap), z_low=Inflow(FaceMap.uniform(10.0))), accuracy=1e-2)
+    assert given.mean("z_low", tolerance=1e3).value > 1.0
+
+
+@pytest.mark.parametrize("entry", [0.0, math.nan])
+def test_equations_without_a_digit_left_are_refused_with_a_sentence(entry: float) -> None:
+    system = system_of(base_of(block(Mixed(INSULATED, TWO))), 8)
+    lost = replace(system, matrix=np.full_like(system.matrix, entry))
+    with pytest.raises(NotPhysical, match="too unlike in size for the digits"):
+        lost.solve(np.ones((len(lost.matrix), 1)))
