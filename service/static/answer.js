@@ -2,6 +2,7 @@
 
 import { make, verdict } from "./elements.js";
 import { bounded, counted, greatest, partsIn, placed, pretty, shown, written } from "./numbers.js";
+import { PHYSICS } from "./words.js";
 
 const AXES = ["x", "y", "z"];
 
@@ -49,8 +50,9 @@ export function certificateView(answer, plane) {
       fact("Method", c.method),
       fact("Work", `${counted(c.terms.time_nodes)} nodes of the time integral, ${counted(c.terms.products)} products of profiles, `
         + `${counted(c.terms.series_terms)} series terms at the checked places`),
+      c.iteration ? fact("Iteration", `Film faces were iterated in ${counted(c.iteration.steps)} steps; the bound holds what is left over of their conditions.`) : null,
       fact("Not covered", "The bound is about the mathematics. It says nothing of conductivities, films or readings that are "
-        + "off, of properties that change with the field, or of a body that is no plain block.")),
+        + "off, of properties that change otherwise than described, or of a body that is no plain block.")),
   ];
 }
 
@@ -83,7 +85,7 @@ export function warningsView(answers) {
 
 /** The body in a sentence, from the request. */
 export function bodySentence(problem, units) {
-  const { size, conductivity, layers } = problem.body;
+  const { size, conductivity, conductivity_law: law, layers } = problem.body;
   const sources = problem.sources?.length ?? 0;
   const inside = sources ? `; ${sources} ${sources === 1 ? "source" : "sources"} inside` : "";
   const open = AXES.filter((axis) => typeof size[axis] === "string" && size[axis].endsWith("infinite"));
@@ -96,12 +98,15 @@ export function bodySentence(problem, units) {
     const names = layers.map(({ name, thickness }, index) => `${name ?? `layer ${index}`} ${written(thickness, units.length)}`);
     return `Stack on ${[sides.join(open.length ? ", " : " \u00d7 "), ...ends].filter(Boolean).join(", ")}; from below ${names.join(", ")}${inside}.`;
   }
-  const kind = open.length === 1 && size.z === "semi-infinite" ? "Bar" : open.length ? "Body" : "Block";
+  const isBar = open.length === 1 && size.z === "semi-infinite";
+  const isHalfSpace = size.x === "infinite" && size.y === "infinite" && size.z === "semi-infinite";
+  const kind = isBar ? "Bar" : isHalfSpace ? "Half-space" : open.length ? "Body" : "Block";
   const body = kind === "Bar"
     ? `Bar ${AXES.slice(0, 2).map((axis) => written(size[axis], units.length)).join(" \u00d7 ")}, without end along z`
     : `${kind} ${[sides.join(open.length ? ", " : " \u00d7 "), ...ends].filter(Boolean).join(", ")}`;
-  const k = typeof conductivity === "object"
+  const k = conductivity === undefined ? "" : typeof conductivity === "object"
     ? AXES.map((axis) => `${written(conductivity[axis], units.conductivity)} along ${axis}`).join(", ")
     : written(conductivity, units.conductivity);
-  return `${body}; conductivity ${k}${inside}.`;
+  const varies = law ? `${conductivity === undefined ? "" : ", "}varying with the ${PHYSICS[problem.potential].potential.toLowerCase()}` : "";
+  return `${body}; conductivity ${k}${varies}${inside}.`;
 }

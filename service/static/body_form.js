@@ -1,7 +1,8 @@
 /** The part of the form for the body: its ends, its material or its layers. */
 
-import { emptyLayer, endsOf } from "./body_draft.js";
+import { emptyLayer, endsOf, isOpen, isTabled } from "./body_draft.js";
 import { button, choice, field, make, mistakePlace, writer } from "./elements.js";
+import { lawFields } from "./law_form.js";
 import { idOf } from "./typed.js";
 import { AXES, PHYSICS } from "./words.js";
 
@@ -88,9 +89,16 @@ function endsFields(draft, changed, redraw) {
       },
     }),
   );
+  const isAny = isOpen(draft);
+  const far = isAny ? field({
+    id: "far-level", label: `${PHYSICS[draft.potential].potential} far away (optional)`, kind: "potential", value: draft.farLevel,
+    hint: "Only where no face fixes it, such as that of undisturbed ground; zero if empty.", extraClass: "whole",
+    onInput: writer(draft, "farLevel", changed),
+  }) : null;
   return make(
     "details", { class: "whole", open: across.some((axis) => draft.ends[axis] !== "finite") },
-    make("summary", {}, "Ends along x and y"), make("div", { class: "fields" }, choices),
+    make("summary", {}, isAny ? "Ends along x and y, and what is far away" : "Ends along x and y"),
+    make("div", { class: "fields" }, choices, far),
     make("p", { class: "hint" }, "Without any end along x and y, a body that ends along z is a plate, and one without a far end a half-space."),
   );
 }
@@ -117,9 +125,12 @@ function conductivityFields(draft, changed, redraw) {
       },
     }),
     draft.isSame
-      ? conductivity("all", "Along all axes")
+      ? (isTabled(draft) ? null : conductivity("all", "Along all axes"))
       : make("div", { class: "triple" }, AXES.map((axis) => conductivity(axis, `Along ${axis}`))),
-  ];
+    ...lawFields(draft, changed, redraw),
+    draft.law.kind === "conductivities" && !draft.isSame
+      ? make("p", { class: "hint whole" }, "The table is that along x; along y and z it is in proportion.") : null,
+  ].filter(Boolean);
 }
 
 /** The layers, drawn as they lie: the last one is on top. */
@@ -166,6 +177,16 @@ function layerCard(draft, index, changed, redraw) {
       focus(idOf(id, "kind"));
     },
   });
+  const contact = choice({
+    id: idOf(id, "contact-kind"), label: "Joined to the layer below", spoken, value: layer.contactKind,
+    options: [["bonded", "bonded perfectly"], ["conductance", "contact conductance"], ["resistance", "contact resistance"]],
+    onChange: (value) => {
+      layer.contactKind = value;
+      changed();
+      redraw("body");
+      focus(idOf(id, "contact-kind"));
+    },
+  });
   const remove = button(
     {
       class: "small quiet",
@@ -186,7 +207,10 @@ function layerCard(draft, index, changed, redraw) {
     layer.kind === "same" ? text("all", "all", "All ways", "conductivity") : text("inPlane", "in-plane", "In the plane", "conductivity"),
     layer.kind === "plane" ? text("through", "through", "Through it", "conductivity") : null,
     text("generation", "generation", "Generation (optional)", "density"),
-    index ? text("contact", "contact", "Contact conductance below (optional)", "film_coefficient", { hint: "Bonded perfectly if empty.", extraClass: "whole" }) : null,
+    index ? contact : null,
+    index && layer.contactKind !== "bonded"
+      ? text("contact", "contact", `Contact ${layer.contactKind}`, layer.contactKind === "resistance" ? "contact_resistance" : "film_coefficient")
+      : null,
     draft.layers.length > 1 ? remove : null,
   );
 }

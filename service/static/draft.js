@@ -38,12 +38,13 @@ export function draftOf(problem, view) {
     },
     accuracy: { kind: "usual", absolute: "", ...view.accuracy },
     edgeGap: text(view.edgeGap),
+    reach: { face: "", change: "as_given", ...view.reach },
   };
 }
 
 /**
  * The requests of a draft and which field each of their places comes from; null for what has nothing to ask.
- * @returns {{fields: any, flows: any, pads: any, resistances: any, places: Map<string, string>}}
+ * @returns {{fields: any, flows: any, pads: any, resistances: any, reach: any, places: Map<string, string>}}
  */
 export function requestsOf(draft) {
   const places = new Map();
@@ -66,6 +67,7 @@ export function requestsOf(draft) {
     flows: { problem, evaluate: flows, accuracy },
     pads: pads ? { problem, accuracy } : null,
     resistances: pads && pads <= MOST_PADS_IN_MATRIX ? { problem, accuracy } : null,
+    reach: facesOf(draft).includes(draft.reach.face) ? { problem, evaluate: { ...draft.reach }, accuracy } : null,
     places,
   };
 }
@@ -86,7 +88,7 @@ function problemOf(draft, note) {
     potential: draft.potential,
     units,
     body: bodyOf(draft, note),
-    faces: Object.fromEntries(facesOf(draft).map((face) => [face, faceOf(face, draft.faces[face], note)])),
+    faces: Object.fromEntries(facesOf(draft).map((face) => [face, faceOf(face, draft, note)])),
   };
   note("#/problem/faces", "faces");
   note("#/problem", "name");

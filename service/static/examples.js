@@ -24,7 +24,7 @@ export const EXAMPLES = [
         }),
       },
     },
-    view: { plane: { axis: "z", position: "5", to: { z: "120" } }, edgeGap: "10 um" },
+    view: { plane: { axis: "z", position: "5", to: { z: "120" } }, edgeGap: "10 um", reach: { face: "z_low" } },
   },
   {
     title: "Crown brick with a hot spot (block, readings)",
@@ -43,6 +43,32 @@ export const EXAMPLES = [
           csv: "x/y,0,57,114\n0,1480,1492,1485\n115,1496,1540,1501\n230,1483,1494,1488\n",
         }),
         z_high: { condition: "film", coefficient: "14 W/(m^2 K)", ambient: "45 degC" },
+      },
+    },
+    view: { plane: { axis: "y", position: "57" } },
+  },
+  {
+    title: "Crown brick whose cold side glows (block, varying conductivity)",
+    problem: {
+      name: "Halden Reach, crown brick whose cold side glows",
+      potential: "temperature",
+      units: { length: "mm", potential: "degC" },
+      body: {
+        size: { x: 230, y: 114, z: 300 },
+        conductivity: "1.4 W/(m K)",
+        conductivity_law: { law: "table", potential: [20, 600, 1200, 1600], factor: [1, 1.21, 1.5, 1.71] },
+      },
+      faces: {
+        x_low: insulated,
+        x_high: insulated,
+        y_low: insulated,
+        y_high: insulated,
+        z_low: held({
+          map: "patches",
+          background: 1480,
+          patches: [{ name: "hot spot", x: [60, 170], y: [30, 84], value: 1540 }],
+        }),
+        z_high: { condition: "film", coefficient: "9 W/(m^2 K)", ambient: "45 degC", emissivity: 0.85 },
       },
     },
     view: { plane: { axis: "y", position: "57" } },
@@ -148,7 +174,7 @@ export const EXAMPLES = [
     problem: {
       name: "Halden Reach, bus-bar stub with clamped contacts",
       potential: "electric_potential",
-      units: { length: "mm", potential: "mV", flow: "A" },
+      units: { length: "mm", potential: "mV", flow: "A", resistance: "uohm" },
       body: { size: { x: 80, y: 60, z: 25 }, conductivity: "56 MS/m" },
       faces: {
         x_low: insulated,

@@ -27,8 +27,9 @@ import { axesAcross, axisOf } from "./words.js";
  * @property {string} name
  * @property {string[]} from
  * @property {string[]} to
- * @property {"held"|"flow"|"film"} kind held at a value, held with a given flow, or behind a film
- * @property {string} value potential, flow or surroundings
+ * @property {"held"|"flow"|"film"|"inflow"|"spread"} kind held at a value, held with a given flow, behind a film, or
+ *   with a given inflow per area or in all
+ * @property {string} value potential, flow, surroundings or inflow
  * @property {string} coefficient
  */
 /**
@@ -40,6 +41,7 @@ import { axesAcross, axisOf } from "./words.js";
  * @typedef {object} FaceDraft
  * @property {string} condition
  * @property {string} coefficient
+ * @property {string} emissivity
  * @property {Record<"held"|"flux"|"film", Datum>} data
  * @property {Mixture} mixture
  */
@@ -55,6 +57,7 @@ export const emptyPad = () => ({ name: "", from: ["", ""], to: ["", ""], kind: "
 const emptyFace = () => ({
   condition: "insulated",
   coefficient: "",
+  emissivity: "",
   data: { held: emptyDatum(), flux: emptyDatum(), film: emptyDatum() },
   mixture: { background: { condition: "insulated", value: "", coefficient: "" }, pads: [] },
 });
@@ -70,6 +73,13 @@ const endsText = (across, owner) => ({
   from: across.map((axis) => text(owner[axis]?.[0])),
   to: across.map((axis) => text(owner[axis]?.[1])),
 });
+
+/** @returns {PadDraft["kind"]} */
+function padKindOf({ condition, flow }) {
+  if (condition === "film") return "film";
+  if (condition === "flux") return flow === undefined ? "inflow" : "spread";
+  return flow === undefined ? "held" : "flow";
+}
 
 /** @returns {FaceDraft} */
 export function faceDraftOf(face, known) {
@@ -87,13 +97,13 @@ export function faceDraftOf(face, known) {
       },
       pads: known.pads.map((pad) => ({
         name: text(pad.name), ...endsText(across, pad),
-        kind: pad.condition === "film" ? "film" : pad.flow === undefined ? "held" : "flow",
-        value: text(pad.value ?? pad.flow ?? pad.ambient), coefficient: coefficientText(pad.coefficient),
+        kind: padKindOf(pad), value: text(pad.value ?? pad.flow ?? pad.ambient ?? pad.inflow), coefficient: coefficientText(pad.coefficient),
       })),
     };
     return draft;
   }
   draft.coefficient = coefficientText(known.coefficient);
+  draft.emissivity = text(known.emissivity);
   const datum = draft.data[known.condition];
   const given = known[DATUM_KEYS[known.condition]];
   if (typeof given !== "object") {
@@ -128,8 +138,12 @@ export function patchesOf(draft) {
 export const padsOf = (draft) =>
   patchesOf(draft).filter(({ face }) => ["flux", "mixed"].includes(draft.faces[face].condition));
 
+/** Whether film faces may radiate as well: those of a body of one material, at temperatures. */
+export const mayRadiate = (draft) => draft.potential === "temperature" && !draft.isStack;
+
 /** A face of a request, each place of which is noted with its field. */
-export function faceOf(face, draft, note) {
+export function faceOf(face, whole, note) {
+  const draft = whole.faces[face];
   const { condition } = draft;
   const pointer = `#/problem/faces/${face}`;
   note(pointer, idOf(face, "condition"));
@@ -140,8 +154,10 @@ export function faceOf(face, draft, note) {
   if (condition === "film") {
     known.coefficient = coefficientOf(draft.coefficient);
     note(`${pointer}/coefficient`, idOf(face, "coefficient"));
+    note(`${pointer}/emissivity`, idOf(face, "emissivity"));
   }
   known[key] = datumOf(face, condition, draft.data[condition], `${pointer}/${key}`, note);
+  if (condition === "film" && mayRadiate(whole) && draft.emissivity.trim()) known.emissivity = quantity(draft.emissivity);
   return known;
 }
 
@@ -163,11 +179,12 @@ function mixedOf(face, { background, pads }, pointer, note) {
 function padOf(face, pad, index, here, note) {
   const id = idOf(face, "pad", index);
   const written = placed(face, pad, id, here, note);
-  for (const key of ["value", "flow", "ambient"]) note(`${here}/${key}`, idOf(id, "value"));
+  for (const key of ["value", "flow", "ambient", "inflow"]) note(`${here}/${key}`, idOf(id, "value"));
   note(`${here}/coefficient`, idOf(id, "coefficient"));
   const value = quantity(pad.value);
   if (pad.kind === "film") return { ...written, condition: "film", coefficient: coefficientOf(pad.coefficient), ambient: value };
-  return { ...written, condition: "held", [pad.kind === "flow" ? "flow" : "value"]: value };
+  const [condition, key] = { held: ["held", "value"], flow: ["held", "flow"], inflow: ["flux", "inflow"], spread: ["flux", "flow"] }[pad.kind];
+  return { ...written, condition, [key]: value };
 }
 
 /** Name and place of a patch or pad. */

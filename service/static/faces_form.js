@@ -2,7 +2,7 @@
 
 import { facesOf } from "./body_draft.js";
 import { button, choice, field, intervals, longText, make, mistakePlace, writer } from "./elements.js";
-import { emptyDatum, emptyPad, emptyPatch } from "./faces_draft.js";
+import { emptyDatum, emptyPad, emptyPatch, mayRadiate } from "./faces_draft.js";
 import { mixtureFields } from "./mixture_form.js";
 import { idOf } from "./typed.js";
 import { axesAcross, axisOf, CONDITIONS, PHYSICS, placeOf, placesOf } from "./words.js";
@@ -96,7 +96,14 @@ function conditionFields(draft, face, changed) {
       }),
     );
   }
-  return [...fields, datumFields(draft, face, meaning, changed)];
+  const emissivity = known.condition === "film" && mayRadiate(draft)
+    ? field({
+        id: idOf(face, "emissivity"), label: "Emissivity (optional)", spoken: face, value: known.emissivity,
+        hint: "With it the face also radiates to black surroundings at the same temperature; the film coefficient may then be 0.",
+        onInput: writer(known, "emissivity", changed),
+      })
+    : null;
+  return [...fields, datumFields(draft, face, meaning, changed), emissivity].filter(Boolean);
 }
 
 function datumFields(draft, face, meaning, changed) {

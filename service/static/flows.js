@@ -20,7 +20,8 @@ function knownOf(face, units) {
   if (condition === "held") return `held, ${datum(face.value, units.potential)}`;
   if (condition === "flux") return `inflow, ${datum(face.inflow, units.flux)}`;
   if (condition === "film") {
-    return `film, ${coefficient(face, units)} to ${datum(face.ambient, units.potential)}`;
+    const radiation = face.emissivity === undefined ? "" : ` and radiation, emissivity ${face.emissivity}`;
+    return `film, ${coefficient(face, units)} to ${datum(face.ambient, units.potential)}${radiation}`;
   }
   if (condition === "mixed") {
     const count = face.pads.length;
@@ -39,6 +40,7 @@ function patchData(known, index, units) {
   if (known.condition === "mixed") {
     const pad = known.pads[index];
     if (pad.condition === "film") return `film, ${coefficient(pad, units)} to ${written(pad.ambient, units.potential)}`;
+    if (pad.condition === "flux") return pad.flow === undefined ? `inflow, ${written(pad.inflow, units.flux)}` : `${written(pad.flow, units.flow)} in all`;
     return pad.flow === undefined ? `held, ${written(pad.value, units.potential)}` : `held, ${written(pad.flow, units.flow)} given`;
   }
   const datum = known.value ?? known.inflow ?? known.ambient;

@@ -1,6 +1,6 @@
 /** The form: body, faces, sources, and what is to be shown. Every part writes into the draft it is given. */
 
-import { endsOf } from "./body_draft.js";
+import { endsOf, facesOf } from "./body_draft.js";
 import { bodyFields } from "./body_form.js";
 import { choice, field, intervals, make, writer } from "./elements.js";
 import { faceCards } from "./faces_form.js";
@@ -142,8 +142,8 @@ function viewFields(draft, changed, redraw) {
         ["1e-12", "1e-12 of the span"],
         ["absolute", "a value of your own"],
       ],
-      hint: "The span is that of the given data. Usual is 1e-9 of it, 1e-4 where film faces are iterated, and 5e-3 or what "
-        + "can be promised beside faces with several conditions.",
+      hint: "In parts of the span of the data. Usual are 1e-9; 1e-4 where film faces are iterated; 5e-3 or what can be "
+        + "promised beside several conditions on a face.",
       onChange: (value) => {
         accuracy.kind = value;
         changed();
@@ -157,6 +157,7 @@ function viewFields(draft, changed, redraw) {
           spoken: "Largest error", onInput: writer(accuracy, "absolute", changed),
         })
       : null,
+    ...reachFields(draft, changed, redraw),
     field({
       id: "edge-gap", label: "Edge gap (optional)", kind: "length", value: draft.edgeGap, extraClass: "whole",
       hint: "Width of the strip left out beside lines where held values jump. With it a flow that has no "
@@ -164,4 +165,29 @@ function viewFields(draft, changed, redraw) {
       onInput: writer(draft, "edgeGap", changed),
     }),
   ].filter(Boolean);
+}
+
+/** Which face is asked how far it reaches, and what of it. */
+function reachFields(draft, changed, redraw) {
+  const { reach } = draft;
+  const faces = facesOf(draft);
+  return [
+    choice({
+      id: "reach-face", label: "How far a face reaches", value: faces.includes(reach.face) ? reach.face : "",
+      options: [["", "not asked"], ...faces.map((face) => [face, `that of ${face}`])],
+      onChange: (value) => {
+        reach.face = value;
+        changed();
+        redraw("view");
+        document.getElementById("reach-face").focus();
+      },
+    }),
+    faces.includes(reach.face)
+      ? choice({
+          id: "reach-change", label: "What of it is followed", value: reach.change,
+          options: [["as_given", "its data as given"], ["uniform", "a change all over it"]],
+          onChange: writer(reach, "change", changed),
+        })
+      : null,
+  ];
 }

@@ -9,6 +9,8 @@ const PAD_KINDS = [
   ["held", "held at a value"],
   ["flow", "held, its total flow given"],
   ["film", "film of its own"],
+  ["inflow", "given inflow per area"],
+  ["spread", "given inflow in all"],
 ];
 
 /** @param {any} draft @param {string} face @param {() => void} changed */
@@ -67,6 +69,7 @@ function padCard(draft, face, index, changed, redraw) {
   const spoken = `${face}, pad ${index + 1}`;
   const [label, measure] = {
     held: [words.potential, "potential"], flow: [words.flow, "flow"], film: [words.ambient, "potential"],
+    inflow: [words.inflow, "flux"], spread: [words.flow, "flow"],
   }[pad.kind];
   const text = (key, named, kind, more = {}) =>
     field({ id: idOf(id, key), label: named, spoken, kind, value: pad[key], onInput: writer(pad, key, changed), ...more });

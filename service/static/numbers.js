@@ -53,7 +53,8 @@ export const counted = (count) => String(count).replace(/\B(?=(\d{3})+$)/g, "\u2
 
 /** A unit as it is printed: °C, W/(m² K). @param {string} unit */
 export const pretty = (unit) => unit
-  .replace(/\bdelta_deg/g, "\u00b0").replace(/\bdeg(?=[CF]\b)/g, "\u00b0").replace(/\bu(?=m\b)/g, "\u00b5")
+  .replace(/\bdelta_deg/g, "\u00b0").replace(/\bdeg(?=[CF]\b)/g, "\u00b0").replace(/\bu(?=m\b|ohm\b)/g, "\u00b5")
+  .replace(/(?<![a-z])([kMm\u00b5]?)ohm\b/g, "$1\u03a9")
   .replace(/\^(-?[1-4])/g, (_, power) => [...power].map((sign) => POWERS[sign]).join(""));
 const POWERS = { "-": "\u207b", 1: "\u00b9", 2: "\u00b2", 3: "\u00b3", 4: "\u2074" };
 

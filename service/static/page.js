@@ -10,12 +10,12 @@ import { clearMistakes, forgive, showMistakes } from "./mistakes.js";
 import { plotting } from "./picture.js";
 import { redrawPicture, savePictureShown, saveValuesShown, showAnswer } from "./results.js";
 import { drawSketch } from "./sketch.js";
-import { differenceUnit } from "./words.js";
+import { differenceUnit, inverseOf } from "./words.js";
 
 const part = (name) => document.getElementById(name);
-const CALLS = { fields: "/v1/fields", flows: "/v1/flux-totals", pads: "/v1/pads", resistances: "/v1/resistances" };
+const CALLS = { fields: "/v1/fields", flows: "/v1/flux-totals", pads: "/v1/pads", resistances: "/v1/resistances", reach: "/v1/reach" };
 /** Drafts of another shape are not read. */
-const KEPT_AS = "stillfield draft 2";
+const KEPT_AS = "stillfield draft 3";
 
 let draft = kept() ?? exampleDraft(0);
 /** The request under way. @type {AbortController|null} */
@@ -55,7 +55,10 @@ function changed() {
 
 /** Everything in the form that follows from what is typed elsewhere in it. */
 function labelForm() {
-  showUnits({ ...draft.units, difference: differenceUnit(draft) });
+  const difference = differenceUnit(draft);
+  showUnits({
+    ...draft.units, difference, per_difference: inverseOf(difference), contact_resistance: inverseOf(draft.units.film_coefficient),
+  });
   showPlaces(draft);
 }
 
@@ -116,7 +119,7 @@ async function compute() {
   if (running !== controller) return;
   running = null;
   setBusy(false);
-  // A body may have a field and yet no resistances, where no flow finds a way out; that is told in their place.
+  // A body may have a field and yet no resistances or no reach of a face; that is told in their place.
   const failures = outcomes.slice(0, 3).flatMap((outcome) => (outcome.status === "rejected" ? [outcome.reason] : []));
   if (failures.length) {
     const known = failures.map((failure) => (failure instanceof Failure ? failure : new Failure("Something failed in this page", "Load it again; what you have typed is kept.")));
@@ -124,10 +127,10 @@ async function compute() {
     say(`Not computed: ${known[0].title}.`);
     return;
   }
-  const [fields, flows, pads, resistances] = outcomes.map((outcome) => outcome.value ?? outcome.reason);
+  const [fields, flows, pads, resistances, reach] = outcomes.map((outcome) => outcome.value ?? outcome.reason);
   part("stale").hidden = true;
   await showAnswer({
-    fields, flows, pads, resistances, askedResistances: requests.resistances, problem: requests.fields.problem,
+    fields, flows, pads, resistances, reach, askedResistances: requests.resistances, problem: requests.fields.problem,
     evaluate: requests.flows.evaluate, axis,
   });
   say("Computed. The answer is shown.");

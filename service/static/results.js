@@ -8,6 +8,7 @@ import { bounded, brief, pretty } from "./numbers.js";
 import { drawPicture, hasEqualAxes, levelsOf, marksOf, savePicture } from "./picture.js";
 import { padsView } from "./pads.js";
 import { joined, layersOf, planeOf, planeTable, savePlane } from "./plane.js";
+import { reachView } from "./reach.js";
 import { resistancesView } from "./resistances.js";
 import { PHYSICS } from "./words.js";
 
@@ -20,6 +21,7 @@ const part = (name) => document.getElementById(name);
  * @property {any} pads answer of POST /v1/pads, null where there are no pads
  * @property {any} resistances answer of POST /v1/resistances, or the failure of it, or null
  * @property {any} askedResistances its request
+ * @property {any} reach answer of POST /v1/reach, or the failure of it, or null
  * @property {any} problem as it was sent
  * @property {any} evaluate what was asked of the flows
  * @property {string} axis the plane shown is square to
@@ -34,7 +36,7 @@ export const savePictureShown = () => saveShown.picture();
 export const saveValuesShown = () => saveShown.values();
 
 /** @param {Outcome} outcome */
-export async function showAnswer({ fields, flows, pads, resistances, askedResistances, problem, evaluate, axis }) {
+export async function showAnswer({ fields, flows, pads, resistances, reach, askedResistances, problem, evaluate, axis }) {
   const words = PHYSICS[fields.potential];
   const { units } = fields;
   const plane = planeShown(fields, problem, axis);
@@ -54,7 +56,8 @@ export async function showAnswer({ fields, flows, pads, resistances, askedResist
   part("certificate").replaceChildren(...certificateView(fields, plane));
   showPads(pads, words);
   showResistances(resistances, askedResistances, words);
-  part("warnings").replaceChildren(warningsView([fields, flows, pads, resistances].filter((answer) => answer?.warnings)));
+  showReach(reach, problem, words);
+  part("warnings").replaceChildren(warningsView([fields, flows, pads, resistances, reach].filter((answer) => answer?.warnings)));
 
   const sketch = part("sketch").cloneNode(true);
   sketch.removeAttribute("id");
@@ -74,8 +77,8 @@ export async function showAnswer({ fields, flows, pads, resistances, askedResist
 function planeShown(fields, problem, axis) {
   const { layers } = problem.body;
   if (!layers || axis === "z") return planeOf(fields, axis);
-  const described = layers.map(({ name, contact_conductance_below: contact }, index) => ({
-    name: name ?? `layer ${index}`, hasContact: contact !== undefined,
+  const described = layers.map(({ name, contact_conductance_below: conductance, contact_resistance_below: resistance }, index) => ({
+    name: name ?? `layer ${index}`, hasContact: (conductance ?? resistance) !== undefined,
   }));
   return joined(layersOf(fields, axis), described);
 }
@@ -90,11 +93,24 @@ function showResistances(answer, asked, words) {
   if (!answer) return;
   const isAnswer = Boolean(answer.mean);
   part("resistances").replaceChildren(
-    ...(isAnswer ? resistancesView(answer, words) : [verdict("open", answer.title, answer.message)]),
+    ...(isAnswer ? resistancesView(answer, words) : [withoutAnswer(answer)]),
   );
   part("resistances-tools").hidden = !isAnswer;
   part("save-matrix").onclick = () => void saveText("/v1/resistances", asked, "text/csv", "resistances.csv");
   part("save-resistors").onclick = () => void saveText("/v1/resistances", asked, "text/plain", "resistors.txt");
+}
+
+/** Why a call beside the field has no answer. @param {import("./calls.js").Failure} failure */
+const withoutAnswer = ({ title, message, mistakes }) =>
+  verdict("open", title, mistakes.length ? mistakes.map(({ detail }) => detail).join(" ") : message);
+
+function showReach(answer, problem, words) {
+  part("reach-sheet").hidden = !answer;
+  if (!answer) return;
+  part("reach-heading").textContent = answer.reach ? `How far ${answer.reach.face} reaches` : "Reach of a face";
+  part("reach").replaceChildren(
+    ...(answer.reach ? reachView(answer, problem, words) : [withoutAnswer(answer)]),
+  );
 }
 
 function noPicture() {

@@ -30,7 +30,7 @@ export const PHYSICS = {
     line: "isotherm",
     units: {
       potential: "degC", conductivity: "W/(m K)", film_coefficient: "W/(m^2 K)", flux: "W/m^2",
-      density: "W/m^3", flow: "W",
+      density: "W/m^3", flow: "W", resistance: "K/W",
     },
     difference: "K",
     scale: ["#e3eff4", "#f6e2b3", "#f2b679", "#e27f58"],
@@ -50,7 +50,7 @@ export const PHYSICS = {
     line: "equipotential",
     units: {
       potential: "V", conductivity: "S/m", film_coefficient: "S/m^2", flux: "A/m^2", density: "A/m^3",
-      flow: "A",
+      flow: "A", resistance: "ohm",
     },
     difference: "V",
     scale: ["#f2efe4", "#dcd7ea", "#bfb1de", "#a390d2"],
@@ -70,7 +70,7 @@ export const PHYSICS = {
     line: "line of equal concentration",
     units: {
       potential: "mol/m^3", conductivity: "m^2/s", film_coefficient: "m/s", flux: "mol/(m^2 s)",
-      density: "mol/(m^3 s)", flow: "mol/s",
+      density: "mol/(m^3 s)", flow: "mol/s", resistance: "s/m^3",
     },
     difference: "mol/m^3",
     scale: ["#f4f1e3", "#d8e6c3", "#a5cf9b", "#62a67c"],
@@ -90,7 +90,7 @@ export const PHYSICS = {
     line: "line of equal head",
     units: {
       potential: "m", conductivity: "m/s", film_coefficient: "1/s", flux: "m/s", density: "1/s",
-      flow: "m^3/s",
+      flow: "m^3/s", resistance: "s/m^2",
     },
     difference: "m",
     scale: ["#f4f0e2", "#cfe4ea", "#9ac8df", "#6ea8d1"],
@@ -100,7 +100,7 @@ export const PHYSICS = {
 export const UNIT_LABELS = {
   length: "Lengths", potential: "Potential", conductivity: "Conductivities",
   film_coefficient: "Film coefficients", flux: "Flows per area", density: "Generation per volume",
-  flow: "Total flows",
+  flow: "Total flows", resistance: "Resistances between pads",
 };
 
 const LYING = { x_low: "front", x_high: "back", y_low: "bottom", y_high: "top", z_low: "left end", z_high: "right end" };
@@ -130,6 +130,13 @@ export function placeOf(face, size, unit) {
   const length = size[axis].trim();
   if (!length) return `${axis} = size`;
   return `${axis} = ${Number.isFinite(Number(length)) ? `${length} ${unit}` : length}`;
+}
+
+/** One over a unit, as it is usually written: "m^2 K/W" for "W/(m^2 K)". */
+export function inverseOf(unit) {
+  const [, over, under] = /^([^/]+)\/\(?([^/()]+)\)?$/.exec(unit.trim()) ?? [];
+  if (!over) return /^\w+$/.test(unit.trim()) ? `1/${unit.trim()}` : `1/(${unit.trim()})`;
+  return over.trim() === "1" ? under : `${under}/${/[\s*]/.test(over.trim()) ? `(${over.trim()})` : over.trim()}`;
 }
 
 /** The unit of differences of a potential in a unit. */

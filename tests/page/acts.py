@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+import json
+from typing import Any
+
 from playwright.sync_api import Page, expect
 
 
@@ -22,3 +25,11 @@ def load_example(page: Page, words: str) -> None:
     (title,) = [option for option in options if words in option]
     page.get_by_label("Start from an example").select_option(label=title)
     page.get_by_role("button", name="Load").click()
+
+
+def sent(page: Page, call: str) -> dict[str, Any]:
+    """The request that the page shows for a call."""
+    page.locator("details.request").evaluate("element => { element.open = true }")
+    page.get_by_label("Call", exact=True).select_option(call)
+    request: dict[str, Any] = json.loads(page.locator("#request-text").text_content() or "")
+    return request

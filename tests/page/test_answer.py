@@ -5,23 +5,14 @@ from __future__ import annotations
 import json
 import re
 from pathlib import Path
-from typing import Any
 
 import pytest
 from playwright.sync_api import Page, expect
 
-from tests.page.acts import compute, load_example
+from tests.page.acts import compute, load_example, sent
 
 MINUS = "\N{MINUS SIGN}"
 EXAMPLES = Path(__file__).resolve().parents[2] / "openapi_examples"
-
-
-def sent(page: Page, call: str) -> dict[str, Any]:
-    """The request that the page shows for a call."""
-    page.locator("details.request").evaluate("element => { element.open = true }")
-    page.get_by_label("Call", exact=True).select_option(call)
-    request: dict[str, Any] = json.loads(page.locator("#request-text").text_content() or "")
-    return request
 
 
 def flow_row(page: Page, name: str) -> str:
@@ -127,8 +118,39 @@ def test_edge_gap_is_offered_where_one_would_help(page: Page) -> None:
     assert page.evaluate("location.hash") == "#edge-gap"
 
 
+def test_reach_of_a_face_is_told(page: Page) -> None:
+    with page.expect_response("**/v1/reach") as caught:
+        compute(page)
+    reach = caught.value.json()["reach"]
+    expect(page.get_by_role("heading", name="How far z_low reaches")).to_be_visible()
+    rows = page.get_by_role("region", name="Reach").get_by_role("row")
+    for row, worst, on_axis in zip((1, 2, 3), reach["worst"], reach["on_axis"], strict=True):
+        told = rows.nth(row).get_by_role("cell").all_inner_texts()
+        assert [float(text.split()[0]) for text in told] == pytest.approx(
+            [worst["distance"], on_axis["distance"]], rel=1e-6
+        )
+    expect(page.locator("#reach")).to_contain_text(f"{reach['decay']['length']:.4f} mm")
+    expect(page.locator("#reach circle")).to_have_count(6)
+
+
+def test_reach_that_has_no_answer_says_why(page: Page) -> None:
+    load_example(page, "hot spot")
+    page.locator("#reach-face").select_option("z_low")
+    page.get_by_label("What of it is followed").select_option("uniform")
+    assert sent(page, "reach")["evaluate"] == {"face": "z_low", "change": "uniform"}
+    compute(page)
+    expect(page.locator("#reach")).to_contain_text("What a change of 1 K all over z_low does")
+    load_example(page, "cold side glows")
+    page.locator("#reach-face").select_option("z_low")
+    compute(page)
+    expect(page.locator("#reach .verdict")).to_contain_text("does not vary")
+    page.locator("#reach-face").select_option("not asked")
+    compute(page)
+    expect(page.get_by_role("heading", name="reaches")).to_be_hidden()
+
+
 def test_block_has_a_closed_balance(page: Page) -> None:
-    load_example(page, "Crown brick")
+    load_example(page, "hot spot")
     compute(page)
     expect(page.locator("#flows .verdict.good")).to_contain_text("Balance closed.")
     assert "held, by readings" in flow_row(page, "z_low")
@@ -194,7 +216,7 @@ def test_plane_along_the_bar_shows_z_to_the_right(page: Page) -> None:
 
 
 def test_uniform_field_is_said_to_be_uniform(page: Page) -> None:
-    load_example(page, "Crown brick")
+    load_example(page, "hot spot")
     page.locator("#z_low-held-kind").select_option("uniform")
     page.locator("#z_low-held-value").fill("45")
     compute(page)

@@ -7,7 +7,7 @@ import re
 import pytest
 from playwright.sync_api import Page, expect
 
-from tests.page.acts import compute, load_example, press_compute
+from tests.page.acts import compute, load_example, press_compute, sent
 
 
 def expect_mistake(page: Page, field: str, words: str) -> None:
@@ -23,7 +23,7 @@ def expect_mistake(page: Page, field: str, words: str) -> None:
 
 
 def test_bar_has_no_far_end(page: Page) -> None:
-    load_example(page, "Crown brick")
+    load_example(page, "hot spot")
     expect(page.get_by_role("group", name="z_high")).to_be_visible()
     expect(page.locator("#size-z")).to_have_value("300")
     page.get_by_label("Body", exact=True).select_option("bar")
@@ -106,7 +106,7 @@ def test_readings_are_pasted_as_csv(page: Page) -> None:
 
 
 def test_face_follows_a_formula(page: Page) -> None:
-    load_example(page, "Crown brick")
+    load_example(page, "hot spot")
     page.locator("#z_low-held-kind").select_option("formula")
     page.locator("#z_low-held-expression").fill("1480 + 60*exp(-((x-115)/40)^2)*sin(pi*y/114)")
     compute(page)
@@ -115,6 +115,52 @@ def test_face_follows_a_formula(page: Page) -> None:
     page.locator("#z_low-held-expression").fill("1480 + 60*w")
     press_compute(page)
     expect_mistake(page, "z_low-held-expression", "w")
+
+
+def test_conductivity_follows_a_table_and_a_face_radiates(page: Page) -> None:
+    load_example(page, "cold side glows")
+    expect(page.get_by_label("Temperature and factor")).to_have_value("20, 1\n600, 1.21\n1200, 1.5\n1600, 1.71")
+    page.get_by_label("With the temperature the conductivity").select_option("conductivities")
+    # The table says all of it.
+    expect(page.locator("#conductivity-all")).to_have_count(0)
+    page.get_by_label("Temperature and conductivity").fill("20, 1.4\n600; 1.694\n1200 2.1\n1600, 2.394 W/(m K)\n")
+    body = sent(page, "fields")["problem"]["body"]
+    law = {"law": "table", "potential": [20, 600, 1200, 1600], "conductivity": [1.4, 1.694, 2.1, "2.394 W/(m K)"]}
+    assert body == {"size": {"x": 230, "y": 114, "z": 300}, "conductivity_law": law}
+    compute(page)
+    expect(page.locator("#answer-body")).to_contain_text("conductivity varying with the temperature")
+    expect(page.locator("#flows")).to_contain_text("to 45 °C and radiation, emissivity 0.85")
+    expect(page.locator("#certificate")).to_contain_text("Film faces were iterated in")
+    page.get_by_label("z_high: Emissivity").fill("1.85")
+    press_compute(page)
+    expect_mistake(page, "z_high-emissivity", "1")
+    page.get_by_label("z_high: Emissivity").fill("0.85")
+    page.locator("#law-table").fill("20, 1.4\n600, none\n")
+    press_compute(page)
+    expect_mistake(page, "law-table", "does not begin with a number")
+
+
+def test_conductivity_falls_linearly(page: Page) -> None:
+    load_example(page, "cold side glows")
+    page.get_by_label("With the temperature the conductivity").select_option("linear")
+    page.get_by_label("As given at a temperature of").fill("20")
+    page.get_by_label("Part gained per unit").fill("-0.0004")
+    expect(page.locator("#law-per-degree-unit")).to_have_text("1/K")
+    law = sent(page, "fields")["problem"]["body"]["conductivity_law"]
+    assert law == {"law": "linear", "reference": 20, "per_degree": -0.0004}
+    compute(page)
+    expect(page.locator("#answer-body")).to_contain_text("conductivity 1.4 W/(m K), varying with the temperature")
+    page.locator("#law-reference").fill("3 kg")
+    press_compute(page)
+    expect_mistake(page, "law-reference", "does not measure temperature")
+
+
+def test_stack_asks_for_no_emissivity_and_no_law(page: Page) -> None:
+    load_example(page, "cold side glows")
+    page.get_by_label("Body", exact=True).select_option("stack")
+    expect(page.get_by_label("z_high: Emissivity")).to_have_count(0)
+    expect(page.locator("#law-kind")).to_have_count(0)
+    assert "emissivity" not in sent(page, "fields")["problem"]["faces"]["z_high"]
 
 
 def test_imbalance_of_an_insulated_body_is_explained(page: Page) -> None:
@@ -127,7 +173,7 @@ def test_imbalance_of_an_insulated_body_is_explained(page: Page) -> None:
 
 
 def test_source_in_a_box(page: Page) -> None:
-    load_example(page, "Crown brick")
+    load_example(page, "hot spot")
     page.get_by_role("button", name="Add a source").click()
     page.get_by_label("Source 1: Where").select_option("box")
     page.get_by_label("Source 1: Heat generated per volume").fill("200 kW/m^3")

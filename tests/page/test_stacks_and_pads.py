@@ -7,29 +7,21 @@ import io
 import json
 import re
 from pathlib import Path
-from typing import Any
 
 import pytest
 from playwright.sync_api import Page, expect
 
-from tests.page.acts import compute, load_example, press_compute
+from tests.page.acts import compute, load_example, press_compute, sent
 from tests.page.conftest import DESKTOP, PHONE
 from tests.page.test_access import FAULTS_OF_CONTRAST, FAULTS_OF_STRUCTURE
 
 EXAMPLES = Path(__file__).resolve().parents[2] / "openapi_examples"
 
 
-def sent(page: Page, call: str) -> dict[str, Any]:
-    """The request that the page shows for a call."""
-    page.locator("details.request").evaluate("element => { element.open = true }")
-    page.get_by_label("Call", exact=True).select_option(call)
-    request: dict[str, Any] = json.loads(page.locator("#request-text").text_content() or "")
-    return request
-
-
 @pytest.mark.parametrize(
     ("words", "call", "file"),
     [
+        ("cold side glows", "fields", "fields_glowing_brick"),
         ("Power module", "pads", "pads_power_module"),
         ("Thermal probes", "pads", "pads_floor_slab"),
         ("Bus-bar", "flows", "flux_totals_bus_bar"),
@@ -81,26 +73,28 @@ def test_stack_stands_on_its_first_layer(page: Page) -> None:
     compute(page)
     expect(page.locator("#flows tbody")).to_contain_text("z_low bottom")
     # A body of one material lies along z.
-    load_example(page, "Crown brick")
+    load_example(page, "hot spot")
     expect(page.get_by_role("group", name="z_low")).to_contain_text("z_low left end")
 
 
 def test_layers_are_added_and_removed(page: Page) -> None:
-    load_example(page, "Crown brick")
+    load_example(page, "hot spot")
     page.get_by_label("Body", exact=True).select_option("stack")
     expect(page.locator("#size-z")).to_have_count(0)
     expect(page.get_by_role("group", name="Layer 0")).to_be_visible()
     page.get_by_label("Layer 0: Name").fill("brick")
     page.get_by_label("Layer 1: Thickness").fill("20")
     page.get_by_label("Layer 1: All ways").fill("0.2")
-    page.get_by_label("Layer 1: Contact conductance below").fill("500")
+    page.get_by_label("Layer 1: Joined to the layer below").select_option("resistance")
+    expect(page.locator("#layer-1-contact-unit")).to_have_text("m² K/W")
+    page.get_by_label("Layer 1: Contact resistance").fill("20 cm^2 K/W")
     page.get_by_role("button", name="Add a layer on top").click()
     expect(page.locator("#layer-2-name")).to_be_focused()
     page.get_by_role("button", name="Remove Layer 2").click()
     compute(page)
     expect(page.locator("#answer-body")).to_contain_text("from below brick 300 mm, layer 1 20 mm")
     body = sent(page, "fields")["problem"]["body"]
-    assert body["layers"][1] == {"thickness": 20, "conductivity": 0.2, "contact_conductance_below": 500}
+    assert body["layers"][1] == {"thickness": 20, "conductivity": 0.2, "contact_resistance_below": "20 cm^2 K/W"}
     assert "z" not in body["size"]
 
 
@@ -152,11 +146,11 @@ def test_matrix_of_many_pads_fits_on_the_page(page: Page) -> None:
     load_example(page, "Power module")
     page.evaluate(
         """() => {
-            const draft = JSON.parse(sessionStorage.getItem("stillfield draft 2"));
+            const draft = JSON.parse(sessionStorage.getItem("stillfield draft 3"));
             draft.faces.z_high.data.flux.patches = Array.from({ length: 15 }, (_, index) => ({
                 name: "", isTotal: true, value: "2", from: [String(2 * index), "4"], to: [String(2 * index + 1), "9"],
             }));
-            sessionStorage.setItem("stillfield draft 2", JSON.stringify(draft));
+            sessionStorage.setItem("stillfield draft 3", JSON.stringify(draft));
         }"""
     )
     page.reload()
@@ -173,7 +167,7 @@ def test_matrix_of_many_pads_fits_on_the_page(page: Page) -> None:
 
 
 def test_page_without_pads_says_nothing_of_them(page: Page) -> None:
-    load_example(page, "Crown brick")
+    load_example(page, "hot spot")
     compute(page)
     expect(page.get_by_role("heading", name="Pads")).to_be_hidden()
     expect(page.get_by_role("heading", name="Resistances between pads")).to_be_hidden()
@@ -190,7 +184,7 @@ def test_body_without_a_way_out_says_why_it_has_no_resistances(page: Page) -> No
 
 
 def test_axis_without_ends_takes_its_faces_away(page: Page) -> None:
-    load_example(page, "Crown brick")
+    load_example(page, "hot spot")
     page.get_by_text("Ends along x and y").click()
     page.get_by_label("Along x").select_option("infinite")
     for face in ("x_low", "x_high"):
@@ -219,6 +213,45 @@ def test_several_conditions_on_one_face(page: Page) -> None:
     page.get_by_label("z_high, pad 2: Current").fill("3 V")
     press_compute(page)
     expect(page.locator("#z_high-pad-1-value-mistake")).to_contain_text("does not measure current")
+
+
+def test_pad_with_an_inflow_stands_beside_held_ones(page: Page) -> None:
+    load_example(page, "Bus-bar")
+    page.get_by_label("z_high, pad 3: Condition").select_option("spread")
+    page.get_by_label("z_high, pad 3: Current").fill("-40")
+    assert sent(page, "flows")["problem"]["faces"]["z_high"]["pads"][2] == {
+        "name": "fuse lug", "x": [35, 45], "y": [0, 8], "condition": "flux", "flow": -40,
+    }  # fmt: skip
+    compute(page)
+    row = page.locator("#flows tbody tr", has_text="fuse lug")
+    expect(row).to_contain_text("\N{MINUS SIGN}40 A in all")
+    expect(row.get_by_role("cell")).to_have_text("\N{MINUS SIGN}40exact")
+    page.get_by_label("z_high, pad 3: Condition").select_option("inflow")
+    page.get_by_label("z_high, pad 3: Current inwards").fill("3 A")
+    press_compute(page)
+    expect(page.locator("#z_high-pad-2-value-mistake")).to_contain_text("does not measure")
+
+
+def test_ground_has_a_level_far_away(page: Page) -> None:
+    load_example(page, "Thermal probes")
+    page.get_by_label("Body", exact=True).select_option(label="bar or half-space, no far end along z")
+    page.locator("#z_low-condition").select_option("mixed")
+    for side, typed in (("x-from", "0"), ("x-to", "100"), ("y-from", "0"), ("y-to", "100"), ("value", "40")):
+        page.locator(f"#z_low-pad-0-{side}").fill(typed)
+    page.locator("#plane-position").fill("50")
+    page.get_by_label("Temperature far away").fill("9.5")
+    page.locator("#accuracy-kind").select_option("usual")
+    compute(page)
+    assert sent(page, "fields")["problem"]["body"]["far_level"] == 9.5
+    expect(page.locator("#answer-body")).to_contain_text("Half-space without ends along x and y")
+    # A square held on insulated ground lets in 2 pi C k L dT with C = 0.366788.
+    watts = 2 * 3.14159265 * 0.366788 * 1.6 * 0.1 * 30.5
+    (shown,) = re.findall(r"([0-9.]+)", page.locator("#flows tbody tr td").first.inner_text().split()[0])
+    assert float(shown) / 1000 == pytest.approx(watts, rel=1e-4)
+    page.locator("#z_low-condition").select_option("held")
+    page.locator("#z_low-held-value").fill("12")
+    press_compute(page)
+    expect(page.locator("#far-level-mistake")).to_contain_text("fixes the level")
 
 
 @pytest.mark.parametrize("watched", [DESKTOP, PHONE], indirect=True, ids=["desk", "phone"])

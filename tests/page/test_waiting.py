@@ -50,14 +50,14 @@ def test_repeated_presses_leave_one_request_under_way(page: Page, held_back: lis
     page.on("requestfailed", lambda request: given_up.append(request.failure or ""))
     for press in range(1, 5):
         press_compute(page)
-        wait_for(page, held_back, 2 * press)
+        wait_for(page, held_back, 3 * press)
     # The browser tells of them a moment later.
-    wait_for(page, given_up, 6)
-    assert given_up == ["net::ERR_ABORTED"] * 6
-    for route in held_back[-2:]:
+    wait_for(page, given_up, 9)
+    assert given_up == ["net::ERR_ABORTED"] * 9
+    for route in held_back[-3:]:
         route.continue_()
     expect(page.locator(STATUS)).to_have_text("Computed. The answer is shown.")
-    assert len(held_back) == 8
+    assert len(held_back) == 12
     expect(page.get_by_role("alert")).to_be_hidden()
 
 
@@ -68,7 +68,7 @@ def test_no_answer_is_told_in_a_sentence(page: Page, watched: Watched) -> None:
     alert = page.get_by_role("alert")
     expect(alert).to_contain_text("The service cannot be reached")
     expect(alert).to_contain_text("what you have typed is kept")
-    # Both calls failed in the same way, of which once is enough.
+    # All calls failed in the same way, of which once is enough.
     expect(alert.get_by_role("heading")).to_have_count(1)
     page.unroute("**/v1/*")
     compute(page)
