@@ -48,6 +48,9 @@ NARROWING = 4.0
 PAD_PLACES = 0.5 - 0.5 * np.cos(np.linspace(0.0, math.pi, 9))
 MOST_PAD_CLIMBS = 2
 
+# Places along a side of a pad at which data of the body begin, end or have their middle, at the most.
+MOST_SHOWN = 40
+
 # How many times the rise of a parabola above the highest of its three points is allowed for a peak between them.
 PEAK_SAFETY = 4.0
 
@@ -96,8 +99,16 @@ def highest_on(
     axes = [np.array([setting.body.end_of(face)])] * 3
     ends = ((rectangle.p_low, rectangle.p_high), (rectangle.q_low, rectangle.q_high))
     for axis, (low, high) in zip(axes_along(face), ends, strict=True):
-        axes[axis] = np.append(low + (high - low) * PAD_PLACES[:-1], high)
+        shown = _thinned(_data_within(setting, axis, low, high), MOST_SHOWN)
+        axes[axis] = np.unique(np.concatenate([low + (high - low) * PAD_PLACES[:-1], [high], shown]))
     return highest_among(setting, axes, tolerance, keep_going)
+
+
+def _data_within(setting: Setting, axis: int, low: float, high: float) -> FloatArray:
+    """Where data begin and end along a stretch of an axis, and the middles between: what drives there may be small."""
+    knots = np.concatenate([np.zeros(0), *(part.knots(axis) for part in setting.parts)])
+    ends = np.unique(np.concatenate([[low], knots[(knots > low) & (knots < high)], [high]]))
+    return np.unique(np.concatenate([ends, 0.5 * (ends[1:] + ends[:-1])]))
 
 
 def highest_among(
@@ -455,10 +466,10 @@ def _first_places(setting: Setting, axis: int) -> FloatArray:
     return unique[unique <= line.length]
 
 
-def _thinned(places: FloatArray) -> FloatArray:
-    if places.size <= FIRST_PLACES:
+def _thinned(places: FloatArray, most: int = FIRST_PLACES) -> FloatArray:
+    if places.size <= most:
         return places
-    return places[np.unique(np.linspace(0, places.size - 1, FIRST_PLACES).round().astype(int))]
+    return places[np.unique(np.linspace(0, places.size - 1, most).round().astype(int))]
 
 
 def _where(body: Body, place: tuple[float, float, float]) -> str:

@@ -234,6 +234,18 @@ def test_highest_rises_are_above_the_means_and_below_nothing_on_a_grid() -> None
     assert highest[0, 0] == pytest.approx(own, rel=1e-2)
 
 
+def test_peak_on_a_wide_pad_beside_a_narrow_load_is_found() -> None:
+    faces = all_insulated(y_high=film(126.0, 0.0), z_high=held(0.0))
+    body = Body((0.877, 6.677, 0.0243), (1.0, 1.0, 1.0), faces)
+    load = Pad("x_high", Rectangle(6.6763, 6.677, 0.017, 0.0243))
+    wide = Pad("x_high", Rectangle(6.0, 6.677, 0.0114, 0.0138))
+    highest, bound = peaks(body, (load, wide), tolerance=1e-3)
+    driven = solve(with_flow_into(environment(body), load, 1.0))
+    row = np.array([[0.877, y, 0.0138] for y in np.linspace(6.66, 6.677, 100)])
+    found = driven.field_at(row, tolerance=1e-3)
+    assert found.potential.max() <= highest[1, 0] + bound[1, 0] + found.potential_bound
+
+
 def test_uniform_square_on_a_great_cold_block_is_that_on_a_half_space() -> None:
     """Mean rise 0.4732010044 q sqrt(A) / k (classical, ten digits in the published cases), less what the block lacks:
 
