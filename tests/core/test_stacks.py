@@ -151,7 +151,7 @@ def test_coldest_place_just_under_a_poor_contact_is_found() -> None:
         Layer(0.1315, (1.278, 1.278 * 0.198 / 477.0, 415.0)),
         Layer(3.587, (750.0, 750.0 * 0.198 / 477.0, 750.0), contact_below=2.8e-3),
     ]
-    sides = {"x_high": film(2e-3, 1.0), "y_low": uniform_inflow(-0.92), "y_high": held(0.67)}
+    sides: dict[str, Condition] = {"x_high": film(2e-3, 1.0), "y_low": uniform_inflow(-0.92), "y_high": held(0.67)}
     faces = all_insulated(**sides, z_low=held(-0.94), z_high=film(8.7e4, 0.27))
     body = Body.stack((135.0, 135.0), layers, faces)
     solved = solve(body)
