@@ -18,7 +18,7 @@ const DATUM_CHOICES = [
 export function showPlaces(draft) {
   for (const place of document.querySelectorAll("[data-place]")) {
     const { place: face } = place.dataset;
-    const where = draft.isStack && face === "z_high" ? "top of the last layer" : placeOf(face, draft.size, draft.units.length);
+    const where = draft.isStack && face === "z_high" ? "on the last layer" : placeOf(face, draft.size, draft.units.length);
     place.textContent = ` ${placesOf(draft.isStack)[face]}, ${where}`;
   }
 }

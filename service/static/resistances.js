@@ -14,10 +14,9 @@ const MOST_VALUES = 4;
 
 /** @param {any} answer of POST /v1/resistances */
 export function resistancesView(answer, words) {
-  const flow = `1 ${pretty(answer.units.flow)}`;
   const meaning = answer.mean
-    ? `By how much the mean of each pad rises for ${flow} into one of them: a row for the pad that rises, a column for the pad that is fed.`
-    : `How far two pads are apart for ${flow} from one to the other, the others passing none. Nothing but the pads takes up a flow here.`;
+    ? "By how much the mean of each pad rises for each unit of flow into one of them: a row for the pad that rises, a column for the pad that is fed."
+    : "How far two pads are apart for each unit of flow from one to the other, the others passing none. Nothing but the pads takes up a flow here.";
   return [
     make("p", { class: "hint" }, meaning),
     matrixView(answer, words),

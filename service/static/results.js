@@ -91,7 +91,7 @@ function showPads(pads, words) {
 function showResistances(answer, asked, words) {
   part("resistances-sheet").hidden = !answer;
   if (!answer) return;
-  const isAnswer = Boolean(answer.mean);
+  const isAnswer = Boolean(answer.pads);
   part("resistances").replaceChildren(
     ...(isAnswer ? resistancesView(answer, words) : [withoutAnswer(answer)]),
   );

@@ -226,6 +226,8 @@ def test_pad_with_an_inflow_stands_beside_held_ones(page: Page) -> None:
     row = page.locator("#flows tbody tr", has_text="fuse lug")
     expect(row).to_contain_text("\N{MINUS SIGN}40 A in all")
     expect(row.get_by_role("cell")).to_have_text("\N{MINUS SIGN}40exact")
+    # With the film gone nothing but the held pads takes up a flow, and the resistance between them is all there is.
+    expect(page.locator("#resistances")).to_contain_text("Nothing but the pads takes up a flow here.")
     page.get_by_label("z_high, pad 3: Condition").select_option("inflow")
     page.get_by_label("z_high, pad 3: Current inwards").fill("3 A")
     press_compute(page)
