@@ -21,7 +21,7 @@ from service.core import field
 from service.core.endless import far_setting, neighbourhood
 from service.core.errors import AccuracyNotReached
 from service.core.field import Grid, Setting
-from service.core.maps import FaceMap, Peak, Profiles, Rectangle
+from service.core.maps import FaceMap, Peak, Profiles, Rectangle, chebyshev_places
 from service.core.problem import AXES, Body, Face, Film, Held, Inflow, axes_along, axis_of, map_of
 from service.core.time_range import has_decay, widest
 
@@ -179,8 +179,13 @@ def _peak_of(face_map: FaceMap, lengths: Sequence[float], sign: float) -> Peak:
         return face_map.peaks[1 if sign > 0 else 0]
     table = sign * face_map.table
     i, j = np.unravel_index(int(table.argmax()), table.shape)
-    first = _representative(face_map.first_knots, int(i), face_map.bilinear, lengths[0])
-    second = _representative(face_map.second_knots, int(j), face_map.bilinear, lengths[1])
+    # The places of curved data include their knots, where readings are highest and lowest under any law.
+    places = [
+        chebyshev_places(knots) if curved else knots
+        for knots, curved in zip((face_map.first_knots, face_map.second_knots), face_map.curved, strict=True)
+    ]
+    first = _representative(places[0], int(i), face_map.bilinear, lengths[0])
+    second = _representative(places[1], int(j), face_map.bilinear, lengths[1])
     return Peak(sign * float(table[i, j]), first, second, 0.0)
 
 

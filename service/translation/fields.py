@@ -31,8 +31,9 @@ FloatArray = NDArray[np.float64]
 # that.
 POORLY_KNOWN, NEGLIGIBLE = 0.1, 1e-3
 
-# A search for both extremes looks at so many places along each axis first, and then climbs on so many small grids.
-FIRST_PLACES, CLIMB_PLACES, CLIMB_GRIDS = 25, 5, 80
+# A search for both extremes looks at so many places along each axis first, and then climbs on small grids that cost
+# as much as so many points.
+FIRST_PLACES, CLIMBED = 25, 800
 
 
 @dataclass(frozen=True)
@@ -117,10 +118,10 @@ def check_cost(wanted: FieldsWanted, solution: Solution, settings: Settings, byt
 
 
 def _search_estimate(solution: Solution, tolerance: float) -> Estimate:
-    """Cost of a search for the extremes: its first grid, and as many small ones as it may climb on."""
+    """Cost of a search for the extremes: its first grid, and the places of all small ones it may climb on."""
     first = solution.estimate_grid((FIRST_PLACES, FIRST_PLACES, FIRST_PLACES), tolerance=tolerance)
-    climb = solution.estimate_grid((CLIMB_PLACES, CLIMB_PLACES, CLIMB_PLACES), tolerance=tolerance)
-    return Estimate(first.multiplications + CLIMB_GRIDS * climb.multiplications, max(first.bytes, climb.bytes))
+    climbs = solution.estimate_points(CLIMBED, tolerance=tolerance)
+    return Estimate(first.multiplications + climbs.multiplications, max(first.bytes, climbs.bytes))
 
 
 class _Answering:

@@ -558,3 +558,16 @@ def test_iteration_asks_whether_to_go_on_and_an_estimate_counts_its_steps() -> N
     with pytest.raises(Interrupted):
         solution.field_at(PLACES, tolerance=1e-7 * solution.span, keep_going=stop)
     assert solution.field_at(PLACES, tolerance=1e-5 * solution.span).potential_bound <= 1e-5 * solution.span
+
+
+@pytest.mark.parametrize(
+    "law", [ConductivityLaw.linear(20.0, 1e-3), ConductivityLaw.table([0.0, 50.0, 100.0], [1.0, 1.2, 0.7])]
+)
+def test_extremes_of_held_readings_are_the_readings_under_any_law(law: ConductivityLaw) -> None:
+    table = [[20.0, 30.0, 20.0], [30.0, 90.0, 30.0], [20.0, 30.0, 20.0]]
+    read = Held(FaceMap.readings((1.0, 1.0), [0.0, 0.5, 1.0], [0.0, 0.5, 1.0], table))
+    faces = all_insulated(z_low=read, z_high=held(20.0))
+    found = solve(Body((1.0, 1.0, 1.0), (1.0, 1.0, 1.0), faces, law=law)).extremes(tolerance=1e-3)
+    assert found.hottest.position == (0.5, 0.5, 0.0)
+    assert found.hottest.value == pytest.approx(90.0, abs=1e-9)
+    assert found.coldest.value == pytest.approx(20.0, abs=1e-9)
