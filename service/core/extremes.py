@@ -362,7 +362,8 @@ def _peaks(values: FloatArray, alike: float) -> list[tuple[int, int, int]]:
     """Places of a first grid that are not below any neighbour by what its accuracy can tell, the highest first."""
     rounded = np.round(values / alike) * alike if alike > 0 else values
     peaks = np.argwhere(rounded >= maximum_filter(rounded, size=3, mode="nearest"))
-    order = np.argsort([-rounded[tuple(peak)] for peak in peaks], kind="stable")
+    # On a plateau those that look highest, though by less than the accuracy.
+    order = np.argsort([-values[tuple(peak)] for peak in peaks], kind="stable")
     return [(int(i), int(j), int(k)) for i, j, k in peaks[order[:MOST_PEAKS]]]
 
 

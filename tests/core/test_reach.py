@@ -17,6 +17,7 @@ from service.core import (
     Face,
     FaceMap,
     Film,
+    Grid,
     Held,
     Inflow,
     Insulated,
@@ -234,3 +235,21 @@ def test_the_side_of_a_long_bar_reaches_as_far_as_that_of_a_plate() -> None:
 def test_a_face_without_a_disturbance_of_its_own_is_refused(body: Body, face: Face, sentence: str) -> None:
     with pytest.raises(NotPhysical, match=sentence):
         solve(body).reach(face, [0.5], tolerance=1e-9)
+
+
+def test_worst_place_on_a_section_that_is_flat_to_less_than_the_first_look_is_found() -> None:
+    """Far along a bar that hardly loses anything the size falls by 1e-5 across it, and 1e-7 is a unit of distance."""
+    size = (464.0, 167.0, math.inf)
+    patch = FaceMap.patches(size[:2], 0.0, [Patch(Rectangle(294.7, 358.0, 36.8, 124.3), 1.0)])
+    faces: dict[Face, Condition] = {"x_high": Insulated(), "y_low": Insulated(), "y_high": Insulated()}
+    faces |= {"x_low": Film(5.77e-8, FaceMap.uniform(0.0)), "z_low": Held(patch)}
+    body = Body(size, (0.1273, 0.6815, 1.039), faces)
+    solution = solve(body)
+    (found,) = solution.reach("z_low", [0.01], tolerance=1e-6).worst
+    assert found.distance is not None
+    assert found.error_bound is not None
+    beyond = found.distance + found.error_bound
+    section = solution.field(
+        Grid(np.linspace(0.0, 464.0, 9), np.linspace(0.0, 167.0, 5), np.array([beyond])), tolerance=1e-9
+    )
+    assert section.potential.max() <= 0.01 + section.potential_bound
