@@ -59,6 +59,9 @@ SAFETY = 6.0
 # not count; nor as less than what changes would come to that go on to fall at their pace, or at the slowest. Below this
 # part of the final pace it may still become slower, and counts with this power.
 LEAST_STEP, PACE_SAFETY, SLOWEST_PACE = 0.2, 1.5, 1.25
+
+# The same where there are films alone, whose changes are seen to fall by 3.2 where the extrapolation takes 4.
+LEAST_STEP_OF_FILMS = 0.6
 RESOLVED_PACE, UNRESOLVED_PACE = 0.75, 0.75
 
 # Local values gain between one order, on a pad and beside its border, and three. What is left is told from the pace of
@@ -276,7 +279,8 @@ def extrapolated(values: Sequence[Bounded], *, held: bool) -> Bounded:
     if pace < RESOLVED_PACE * 2.0**order:
         pace **= UNRESOLVED_PACE
     further = fine + change / (pace - 1)
-    error = max(SAFETY * abs(twice - once), LEAST_STEP * abs(once - fine), PACE_SAFETY * abs(further - twice))
+    least = LEAST_STEP if held else LEAST_STEP_OF_FILMS
+    error = max(SAFETY * abs(twice - once), least * abs(once - fine), PACE_SAFETY * abs(further - twice))
     return Bounded(twice, error + 2 * max(value.error_bound for value in values))
 
 
