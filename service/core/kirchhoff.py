@@ -79,11 +79,6 @@ class Transformed:
         return replace(self.body, faces=faces, sources=(), law=None)
 
 
-def film_faces(body: Body) -> tuple[Face, ...]:
-    """The faces with a film."""
-    return tuple(face for face in body.present_faces if isinstance(body.faces[face], Film))
-
-
 def kirchhoff_of(body: Body) -> Kirchhoff:
     """The transformation of a body's law, from its reference level."""
     return Kirchhoff(body.law or ConductivityLaw.constant(), reference_level(body))

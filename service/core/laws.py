@@ -195,11 +195,6 @@ class FilmLaw:
     radiation: Radiation | None
     reference: float
 
-    @property
-    def is_linear(self) -> bool:
-        """Whether what is given off is in proportion to the potential."""
-        return self.radiation is None
-
     def given_off(self, potential: FloatArray) -> FloatArray:
         """Flow per area, any shape; it increases with the potential."""
         flow = self.coefficient * (potential - self.reference)

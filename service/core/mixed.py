@@ -158,11 +158,6 @@ class MixedSolution(Solution):
         return self._ladder.at(self.count)
 
     @property
-    def panel_count(self) -> int:
-        """Panels of all pads, and pieces of background that are solved like pads, at the present refinement."""
-        return self.count**2 * len(self._base.spots)
-
-    @property
     def depends_on_far_level(self) -> bool:
         """Whether flows depend on what the potential comes to far away, which no face tells."""
         told = [spot for spot in self._base.spots if spot.level is not None]

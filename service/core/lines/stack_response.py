@@ -24,7 +24,6 @@ from service.core.lines.stack import StackLine
 from service.core.maps import Profiles
 
 FloatArray = NDArray[np.float64]
-ComplexArray = NDArray[np.complex128]
 
 # Places on the parabola. The rule errs by 3e-15 of the transform's size there where that falls as s^-2, as a film lets
 # out or an interval next to a jump loses, and by less where it falls less.
