@@ -15,8 +15,9 @@ from service.core.field import Setting
 from service.core.lines.line import VALUE, Line
 from service.core.lines.modes import eigen_integrals, modes_of
 from service.core.lines.places import Places
-from service.core.maps import FaceMap, Profiles
+from service.core.maps import FaceMap
 from service.core.problem import FACES, Face
+from service.core.profiles import Profiles
 from service.core.split import SOURCES, Part
 
 FloatArray = NDArray[np.float64]

@@ -15,8 +15,9 @@ import numpy as np
 from service.core import time_range
 from service.core.field import Setting, far_along
 from service.core.lines.line import Drive, Line
-from service.core.maps import Profiles, Rectangle
+from service.core.maps import Rectangle
 from service.core.problem import axes_along
+from service.core.profiles import Profiles
 from service.core.split import Part
 
 # A side of a rectangle: which of the two axes along its face or plane it bounds, and whether from above.

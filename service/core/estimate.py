@@ -9,7 +9,7 @@ from dataclasses import dataclass
 from service.core import field, time_range
 from service.core.field import Setting
 from service.core.lines import curves, stack_response
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 from service.core.split import Part
 
 # Costs in multiplications of plain array arithmetic, about 10^9 a second, as measured on the bodies of the tests.

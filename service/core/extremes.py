@@ -21,8 +21,9 @@ from service.core import field
 from service.core.endless import far_setting, neighbourhood
 from service.core.errors import AccuracyNotReached
 from service.core.field import Grid, Setting
-from service.core.maps import FaceMap, Peak, Profiles, Rectangle, chebyshev_places
+from service.core.maps import FaceMap, Peak, Rectangle
 from service.core.problem import AXES, Body, Face, Film, Held, Inflow, axes_along, axis_of, map_of
+from service.core.profiles import Profiles, chebyshev_places
 from service.core.time_range import has_decay, widest
 
 FloatArray = NDArray[np.float64]

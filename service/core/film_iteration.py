@@ -43,8 +43,9 @@ from service.core.errors import AccuracyNotReached, NotPhysical
 from service.core.field import Grid, KeepGoing, Setting
 from service.core.kirchhoff import ZERO, Transformed
 from service.core.laws import FilmLaw, Kirchhoff
-from service.core.maps import CHEBYSHEV, FaceMap, chebyshev_places
+from service.core.maps import FaceMap
 from service.core.problem import Body, Condition, Face, Film, Held, Inflow, axes_along
+from service.core.profiles import CHEBYSHEV, chebyshev_places
 from service.core.span import span_of
 from service.core.split import Part, lines_of, parts_of
 

@@ -28,8 +28,9 @@ from numpy.typing import NDArray
 from service.core.field import far_along
 from service.core.film_iteration import Iterated
 from service.core.kirchhoff import Transformed
-from service.core.maps import DEGREE, Rectangle
+from service.core.maps import Rectangle
 from service.core.problem import Body, Face, Held, axes_along, axis_of
+from service.core.profiles import DEGREE
 
 FloatArray = NDArray[np.float64]
 

@@ -23,7 +23,8 @@ from numpy.typing import NDArray
 from service.core.errors import NotPhysical
 from service.core.formula import Formula, Node
 from service.core.jets import Jet
-from service.core.maps import DEGREE, FaceMap, Peak, chebyshev_places
+from service.core.maps import FaceMap, Peak
+from service.core.profiles import DEGREE, chebyshev_places
 
 FloatArray = NDArray[np.float64]
 

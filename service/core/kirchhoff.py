@@ -17,8 +17,9 @@ from numpy.typing import NDArray
 
 from service.core.field import KeepGoing
 from service.core.laws import ConductivityLaw, FilmLaw, Kirchhoff
-from service.core.maps import DEGREE, FaceMap, chebyshev_places
+from service.core.maps import FaceMap
 from service.core.problem import Body, Face, Film, Held, Insulated, axes_along, map_of
+from service.core.profiles import DEGREE, chebyshev_places
 from service.core.split import reference_level
 
 FloatArray = NDArray[np.float64]

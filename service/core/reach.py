@@ -27,7 +27,7 @@ from service.core.endless import neighbourhood
 from service.core.errors import NoSteadyState, NotPhysical
 from service.core.field import KeepGoing, Setting
 from service.core.lines.modes import modes_of
-from service.core.maps import FaceMap, Profiles
+from service.core.maps import FaceMap
 from service.core.problem import (
     Body,
     Condition,
@@ -42,6 +42,7 @@ from service.core.problem import (
     is_high,
     map_of,
 )
+from service.core.profiles import Profiles
 from service.core.solvability import check_steady_state
 from service.core.span import span_of
 from service.core.split import lines_of, parts_of, reference_level

@@ -17,7 +17,7 @@ from service.core.lines.images import ARRIVAL, LATEST, NARROW, Afar, narrow_from
 from service.core.lines.line import Drive, Line, WallDrive, breaks_of
 from service.core.lines.modes import MODE_COUNT, eigen_integrals, modes_of
 from service.core.lines.places import Places
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 from service.core.time_integral import Factors, Integral, Product
 
 FloatArray = NDArray[np.float64]

@@ -12,7 +12,7 @@ from service.core.lines.line import Drive, Line, WallDrive, wall_distance
 from service.core.lines.modes import MODE_COUNT, modes_of
 from service.core.lines.places import Places
 from service.core.lines.stack import StackLine
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 from service.core.split import Part
 
 FloatArray = NDArray[np.float64]

@@ -22,8 +22,9 @@ from service.core.errors import NotPhysical, OutsideBody
 from service.core.field import Setting, far_along, kept_rows, points_at_once, step_for
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE
 from service.core.lines.places import Places
-from service.core.maps import Profiles, Rectangle
+from service.core.maps import Rectangle
 from service.core.problem import AXES, Body, Face, Held, Inflow, Insulated, axes_along, axis_of, is_high
+from service.core.profiles import Profiles
 from service.core.solvability import generation, level_is_pinned
 from service.core.unbounded import (
     UnboundedCause,

@@ -19,8 +19,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.maps import EXACT_POINTS, FaceMap, Rectangle
+from service.core.maps import FaceMap, Rectangle
 from service.core.problem import Body, Face, Held, axes_along, axis_of, map_of
+from service.core.profiles import EXACT_POINTS
 from service.core.singular import edge_name, line_name, local_data
 
 FloatArray = NDArray[np.float64]

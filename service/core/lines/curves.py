@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 
 from service.core.lines.images import ARRIVAL, film_part, free, from_points
 from service.core.lines.line import SLOPE, VALUE, Line, Order, wall_distance
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]
 

@@ -27,7 +27,7 @@ from numpy.typing import NDArray
 from scipy.special import erfc, erfcx
 
 from service.core.lines.line import PRIMITIVE, Breaks, Line, Order, WallDrive, breaks_of, wall_distance
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]
 

@@ -19,7 +19,7 @@ from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Drive, Line, Order,
 from service.core.lines.places import Places
 from service.core.lines.stack import StackLine
 from service.core.lines.steady import closed_line_wall, half_line_profile, half_line_wall
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]
 

@@ -15,7 +15,7 @@ from typing import Literal
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]
 

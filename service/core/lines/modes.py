@@ -18,7 +18,7 @@ from scipy.special import spherical_jn
 
 from service.core.lines.eigenvalues import roots
 from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order, WallDrive, wall_distance
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]
 

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from service.core.lines.line import Line, Order
 from service.core.lines.modes import MODE_COUNT, modes_of
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]
 

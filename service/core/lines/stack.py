@@ -20,7 +20,7 @@ from numpy.typing import NDArray
 
 from service.core.lines.line import Drive, Line, Order, WallDrive
 from service.core.lines.places import Places
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]
 

@@ -21,7 +21,7 @@ from service.core.lines import stack_at_rest
 from service.core.lines.line import SLOPE, VALUE, Drive, Order, WallDrive
 from service.core.lines.places import Places
 from service.core.lines.stack import Pieces, StackLine, pieces_of
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]
 # Real or complex: the same formulas serve the series and the inversion.

@@ -21,7 +21,7 @@ from service.core.lines.images import LATEST
 from service.core.lines.line import SLOPE, Drive, WallDrive
 from service.core.lines.places import Places, TimeResponse
 from service.core.lines.stack import StackLine
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]
 

@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from service.core.lines.line import PRIMITIVE, Line, Order, WallDrive, wall_distance
 from service.core.lines.places import Places
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]
 

@@ -18,7 +18,7 @@ from service.core.lines.line import PRIMITIVE, VALUE, Drive, Line, Order, WallDr
 from service.core.lines.modes import MODE_COUNT, eigen_integrals, modes_of
 from service.core.lines.places import Places, TimeResponse
 from service.core.lines.stack import StackLine
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]
 

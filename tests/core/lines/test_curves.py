@@ -11,7 +11,7 @@ from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Line, Order
 from service.core.lines.modes import eigen_integrals, modes_of
 from service.core.lines.places import Places
 from service.core.lines.time_response import respond
-from service.core.maps import Profiles, chebyshev_places
+from service.core.profiles import Profiles, chebyshev_places
 
 ENDS = [(math.inf, math.inf), (0.0, 0.0), (3.0, 0.0), (1e3, math.inf), (1e-6, 50.0), (0.3, 1e5)]
 EVEN = np.linspace(0.0, 2.0, 11)

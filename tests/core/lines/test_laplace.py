@@ -11,7 +11,7 @@ from service.core.lines import laplace
 from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order, WallDrive
 from service.core.lines.places import Places
 from service.core.lines.time_response import respond
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 FAR = 2.0
 COORDINATES = np.array([1e-3, 0.1, 0.3, 0.7, 1.1, 1.5, 1.99])

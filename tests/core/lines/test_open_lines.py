@@ -12,7 +12,7 @@ from service.core.lines import images, laplace
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Line, Order
 from service.core.lines.places import Places
 from service.core.lines.time_response import respond
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 LINES = {
     "without ends": Line(math.inf, 0.7, 0.0, 0.0, -math.inf),

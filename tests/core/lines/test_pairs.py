@@ -12,7 +12,7 @@ from service.core.lines.line import PRIMITIVE, Line
 from service.core.lines.pairs import Intervals, pair_means
 from service.core.lines.places import Places
 from service.core.lines.time_response import respond
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 # Touching, overlapping, one inside another, at both ends of a line of length 2, and slivers of a millionth of it.
 LOW = np.array([0.0, 0.1, 0.1 + 2e-6, 0.5, 0.5, 1.0, 1.3, 2.0 - 2e-6])

@@ -17,7 +17,7 @@ from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Drive, Order, WallD
 from service.core.lines.places import Places
 from service.core.lines.stack import StackLine
 from service.core.lines.time_response import respond
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 from tests.core.reference import stack_line as exact
 from tests.core.reference.kernels import Number, arithmetic
 

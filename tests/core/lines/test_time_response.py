@@ -11,7 +11,7 @@ from service.core.lines import images
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Drive, Line, Order, WallDrive
 from service.core.lines.places import Places
 from service.core.lines.time_response import respond
-from service.core.maps import Profiles
+from service.core.profiles import Profiles
 
 ENDS = (0.0, 1e-6, 0.3, 50.0, 1e9, math.inf)
 STEPS_AND_RAMPS = Profiles(
