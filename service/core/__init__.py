@@ -2,6 +2,7 @@
 
 from service.core.caches import CacheReport, cache_report
 from service.core.certificate import Certificate
+from service.core.conditions import Condition, Film, FilmPad, FluxPad, Held, HeldPad, Inflow, Insulated, Mixed
 from service.core.convergence import Convergence, NodeStep, Overshoot, SeriesStep
 from service.core.errors import (
     AccuracyNotReached,
@@ -15,27 +16,12 @@ from service.core.errors import (
 )
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
+from service.core.faces import AXES, FACES, Face
 from service.core.field import Field, Grid
 from service.core.influence import Influence, Pad, influence, peaks
 from service.core.laws import ConductivityLaw, Radiation
 from service.core.maps import FaceMap, Patch, Rectangle
-from service.core.problem import (
-    AXES,
-    FACES,
-    Body,
-    BoxSource,
-    Condition,
-    Face,
-    Film,
-    FilmPad,
-    FluxPad,
-    Held,
-    HeldPad,
-    Inflow,
-    Insulated,
-    Layer,
-    Mixed,
-)
+from service.core.problem import Body, BoxSource, Layer
 from service.core.reach import DecayRate, Reach, Reached
 from service.core.solution import Solution
 from service.core.solving import solve

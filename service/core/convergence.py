@@ -11,12 +11,12 @@ from numpy.typing import NDArray
 
 from service.core import field, series, time_error, time_form
 from service.core.certificate import by_series
+from service.core.faces import FACES, Face
 from service.core.field import Setting
 from service.core.lines.line import VALUE, Line
 from service.core.lines.modes import eigen_integrals, modes_of
 from service.core.lines.places import Places
 from service.core.maps import FaceMap
-from service.core.problem import FACES, Face
 from service.core.profiles import Profiles
 from service.core.split import SOURCES, Part
 

@@ -13,10 +13,10 @@ from dataclasses import replace
 import numpy as np
 
 from service.core import time_range
+from service.core.faces import axes_along
 from service.core.field import Setting, far_along
 from service.core.lines.line import Drive, Line
 from service.core.maps import Rectangle
-from service.core.problem import axes_along
 from service.core.profiles import Profiles
 from service.core.split import Part
 

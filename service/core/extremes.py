@@ -18,11 +18,13 @@ from numpy.typing import NDArray
 from scipy.ndimage import maximum_filter
 
 from service.core import field
+from service.core.conditions import Film, Held, Inflow, map_of
 from service.core.endless import far_setting, neighbourhood
 from service.core.errors import AccuracyNotReached
+from service.core.faces import AXES, Face, axes_along, axis_of
 from service.core.field import Grid, Setting
 from service.core.maps import FaceMap, Peak, Rectangle
-from service.core.problem import AXES, Body, Face, Film, Held, Inflow, axes_along, axis_of, map_of
+from service.core.problem import Body
 from service.core.profiles import Profiles, chebyshev_places
 from service.core.time_range import has_decay, widest
 

@@ -12,10 +12,11 @@ from numpy.typing import NDArray
 
 from service.core import map_error, time_error, time_form, time_range
 from service.core.errors import AccuracyNotReached, OutsideBody
+from service.core.faces import AXES
 from service.core.lines.line import SLOPE, VALUE, Drive, Line, Order
 from service.core.lines.places import Places, TimeResponse
 from service.core.lines.time_response import respond
-from service.core.problem import AXES, Body
+from service.core.problem import Body
 from service.core.singular import has_no_finite_flux, held_edges
 from service.core.split import Part
 from service.core.time_integral import Integral

@@ -39,12 +39,14 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import field as fields
+from service.core.conditions import Condition, Film, Held, Inflow
 from service.core.errors import AccuracyNotReached, NotPhysical
+from service.core.faces import Face, axes_along
 from service.core.field import Grid, KeepGoing, Setting
 from service.core.kirchhoff import ZERO, Transformed
 from service.core.laws import FilmLaw, Kirchhoff
 from service.core.maps import FaceMap
-from service.core.problem import Body, Condition, Face, Film, Held, Inflow, axes_along
+from service.core.problem import Body
 from service.core.profiles import CHEBYSHEV, chebyshev_places
 from service.core.span import span_of
 from service.core.split import Part, lines_of, parts_of

@@ -25,11 +25,13 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.conditions import Held
+from service.core.faces import Face, axes_along, axis_of
 from service.core.field import far_along
 from service.core.film_iteration import Iterated
 from service.core.kirchhoff import Transformed
 from service.core.maps import Rectangle
-from service.core.problem import Body, Face, Held, axes_along, axis_of
+from service.core.problem import Body
 from service.core.profiles import DEGREE
 
 FloatArray = NDArray[np.float64]

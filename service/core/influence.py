@@ -19,7 +19,9 @@ from numpy.typing import NDArray
 from scipy.ndimage import maximum_filter1d
 
 from service.core import time_error, time_range
+from service.core.conditions import Condition, Film, FilmPad, FluxPad, Held, Inflow, Insulated, Mixed, MixedPad
 from service.core.errors import NoSteadyState, NotPhysical
+from service.core.faces import Face, axes_along, axis_of, is_high
 from service.core.field import KeepGoing
 from service.core.lines import laplace
 from service.core.lines.line import VALUE, Line, WallDrive
@@ -28,22 +30,7 @@ from service.core.lines.pairs import Intervals, pair_means
 from service.core.lines.places import Places
 from service.core.lines.time_response import respond
 from service.core.maps import FaceMap, Patch, Rectangle
-from service.core.problem import (
-    Body,
-    Condition,
-    Face,
-    Film,
-    FilmPad,
-    FluxPad,
-    Held,
-    Inflow,
-    Insulated,
-    Mixed,
-    MixedPad,
-    axes_along,
-    axis_of,
-    is_high,
-)
+from service.core.problem import Body
 from service.core.solving import solve
 from service.core.split import lines_of, scale_of
 

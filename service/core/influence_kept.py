@@ -9,9 +9,11 @@ import threading
 from collections import OrderedDict
 from collections.abc import Hashable, Sequence
 
+from service.core.conditions import Film, Mixed
+from service.core.faces import axis_of
 from service.core.field import KeepGoing
 from service.core.influence import Influence, Pad, influence
-from service.core.problem import Body, Film, Mixed, axis_of
+from service.core.problem import Body
 
 # Matrices that are kept, and pads of the largest of them: 8 times 16 MiB with its bound.
 MOST_KEPT, MOST_PADS = 8, 1024

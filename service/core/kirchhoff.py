@@ -15,10 +15,12 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.conditions import Film, Held, Insulated, map_of
+from service.core.faces import Face, axes_along
 from service.core.field import KeepGoing
 from service.core.laws import ConductivityLaw, FilmLaw, Kirchhoff
 from service.core.maps import FaceMap
-from service.core.problem import Body, Face, Film, Held, Insulated, axes_along, map_of
+from service.core.problem import Body
 from service.core.profiles import DEGREE, chebyshev_places
 from service.core.split import reference_level
 

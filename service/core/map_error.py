@@ -23,10 +23,12 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import time_error, time_form
+from service.core.conditions import Film, Held, Inflow, map_of
+from service.core.faces import Face, axes_along, axis_of
 from service.core.lines.line import VALUE, Line
 from service.core.lines.places import Places
 from service.core.maps import FaceMap, Rectangle
-from service.core.problem import Body, Face, Film, Held, Inflow, axes_along, axis_of, map_of
+from service.core.problem import Body
 from service.core.split import Part, parts_of
 
 FloatArray = NDArray[np.float64]

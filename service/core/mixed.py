@@ -15,10 +15,12 @@ from numpy.typing import NDArray
 
 from service.core import extremes, time_error
 from service.core.certificate import Certificate
+from service.core.conditions import FilmPad, FluxPad, HeldPad, MixedPad, map_of
 from service.core.convergence import Convergence, Overshoot
 from service.core.errors import AccuracyNotReached, NoSteadyState, NotPhysical
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
+from service.core.faces import Face, axes_along, axis_of
 from service.core.field import OFFERED, Field, Grid, KeepGoing, Setting, check_inside
 from service.core.maps import Rectangle
 from service.core.mixed_base import Base, Spot, base_of, pads_of
@@ -26,7 +28,7 @@ from service.core.mixed_panels import Refined, given_total, needs_balance
 from service.core.mixed_refinement import LEVELS, Ladder, Refinement, change_of, left_over
 from service.core.panel_noise import noise
 from service.core.panels import STEP
-from service.core.problem import Body, Face, FilmPad, FluxPad, HeldPad, MixedPad, axes_along, axis_of, map_of
+from service.core.problem import Body
 from service.core.solution import Solution
 from service.core.solvability import BALANCED, check_steady_state
 from service.core.stopping import go_on, on_behalf_of

@@ -19,25 +19,11 @@ from itertools import pairwise
 
 import numpy as np
 
+from service.core.conditions import Condition, Film, FilmPad, FluxPad, Held, HeldPad, Inflow, Insulated, Mixed, MixedPad
 from service.core.errors import NotPhysical
+from service.core.faces import Face, axes_along, axis_of, is_high
 from service.core.maps import FaceMap, Patch, Rectangle
-from service.core.problem import (
-    Body,
-    Condition,
-    Face,
-    Film,
-    FilmPad,
-    FluxPad,
-    Held,
-    HeldPad,
-    Inflow,
-    Insulated,
-    Mixed,
-    MixedPad,
-    axes_along,
-    axis_of,
-    is_high,
-)
+from service.core.problem import Body
 from service.core.split import scale_of
 
 # Held values that differ by less than this part of their size are the same: they were given in decimal.

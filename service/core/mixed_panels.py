@@ -19,14 +19,15 @@ from numpy.typing import NDArray
 from scipy.linalg import cho_factor, cho_solve
 
 from service.core import time_error, time_form
+from service.core.conditions import Condition, Film, Inflow, map_of
 from service.core.errors import NotPhysical
+from service.core.faces import Face, axes_along, is_high
 from service.core.field import kept_rows
 from service.core.lines.line import PRIMITIVE, VALUE
 from service.core.lines.places import Places
 from service.core.maps import FaceMap
 from service.core.mixed_base import Base, Spot
 from service.core.panels import Panels, graded, influence, keeps_level
-from service.core.problem import Condition, Face, Film, Inflow, axes_along, is_high, map_of
 from service.core.solvability import generation, map_integral
 from service.core.split import lines_of, parts_of, reference_level
 from service.core.stopping import go_on

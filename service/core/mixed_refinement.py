@@ -15,7 +15,9 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.conditions import Film, Held, HeldPad, Inflow, map_of
 from service.core.errors import NotPhysical, TooManyPanels
+from service.core.faces import AXES, axes_along
 from service.core.field import Setting
 from service.core.mixed_base import Base, Spot, pads_of, with_faces
 from service.core.mixed_panels import (
@@ -28,7 +30,7 @@ from service.core.mixed_panels import (
     system_of,
     with_flows,
 )
-from service.core.problem import AXES, Body, Film, Held, HeldPad, Inflow, axes_along, map_of
+from service.core.problem import Body
 from service.core.solution import Solution
 from service.core.span import rises, span_of
 from service.core.split import lines_of, parts_of, reference_level, scale_of

@@ -11,9 +11,9 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.faces import axes_along
 from service.core.mixed_base import Base
 from service.core.mixed_panels import Refined
-from service.core.problem import axes_along
 from service.core.split import scale_of
 
 FloatArray = NDArray[np.float64]

@@ -8,11 +8,13 @@ from __future__ import annotations
 
 import math
 
+from service.core.conditions import Film, Held, map_of
 from service.core.estimate import IN_PRODUCT, Estimate
+from service.core.faces import axes_along
 from service.core.film_iteration import FIRST_PIECES
 from service.core.kirchhoff import MOST_PIECES, RADIATED, READ_OFF, STRAIGHT_PIECES, exact_degree, kirchhoff_of
 from service.core.maps import FaceMap
-from service.core.problem import Body, Film, Held, axes_along, map_of
+from service.core.problem import Body
 from service.core.profiles import DEGREE
 
 # Multiplications of a singular value decomposition of n by n numbers, in n^3, and of a law at one place, as measured.

@@ -17,118 +17,27 @@ import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
-from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.conditions import (
+    Condition,
+    Film,
+    Held,
+    Inflow,
+    Mixed,
+    check_film,
+    check_mixed,
+    fixes_level,
+    map_of,
+)
 from service.core.errors import NotPhysical
-from service.core.laws import ConductivityLaw, Radiation
-from service.core.maps import FaceMap, Rectangle
-
-Face = Literal["x_low", "x_high", "y_low", "y_high", "z_low", "z_high"]
-FACES: tuple[Face, ...] = ("x_low", "x_high", "y_low", "y_high", "z_low", "z_high")
-AXES = ("x", "y", "z")
+from service.core.faces import AXES, FACES, Face, axes_along, axis_of, is_high
+from service.core.laws import ConductivityLaw
 
 # Ratios of conductivities given in decimal are the same if they differ by less than this.
 SAME_RATIO = 1e-9
-
-
-def axis_of(face: Face) -> int:
-    """Index of the axis that a face is square to: 0, 1 or 2."""
-    return AXES.index(face[0])
-
-
-def is_high(face: Face) -> bool:
-    """Whether the face is the one at the far end of its axis."""
-    return face.endswith("high")
-
-
-def axes_along(face_or_axis: Face | int) -> tuple[int, int]:
-    """The two axes that lie in a face, or in a plane square to an axis, in the order x, y, z."""
-    axis = face_or_axis if isinstance(face_or_axis, int) else axis_of(face_or_axis)
-    return ((1, 2), (0, 2), (0, 1))[axis]
-
-
-@dataclass(frozen=True)
-class Held:
-    """The potential on the face is given (a condition of the first kind, Dirichlet)."""
-
-    value: FaceMap
-
-
-@dataclass(frozen=True)
-class Inflow:
-    """The flow per area into the body is given (second kind, Neumann)."""
-
-    inflow: FaceMap
-
-
-@dataclass(frozen=True)
-class Film:
-    """The inflow per area is coefficient * (ambient - potential) (third kind, Robin), and radiation if there is any.
-
-    coefficient: > 0, or 0 beside radiation.
-    """
-
-    coefficient: float
-    ambient: FaceMap
-    radiation: Radiation | None = None
-
-
-@dataclass(frozen=True)
-class Insulated:
-    """Nothing flows through the face."""
-
-
-@dataclass(frozen=True)
-class HeldPad:
-    """A rectangle of a mixed face with one potential all over.
-
-    value: that potential; or flow: the total flow into the body through it, its potential being unknown. One of the
-    two. name: what to call it, or None.
-    """
-
-    where: Rectangle
-    value: float | None = None
-    flow: float | None = None
-    name: str | None = None
-
-
-@dataclass(frozen=True)
-class FilmPad:
-    """A rectangle of a mixed face behind a film with one ambient. coefficient > 0. name: what to call it, or None."""
-
-    where: Rectangle
-    coefficient: float
-    ambient: float
-    name: str | None = None
-
-
-@dataclass(frozen=True)
-class FluxPad:
-    """A rectangle of a mixed face with a given inflow per area. name: what to call it, or None."""
-
-    where: Rectangle
-    inflow: float
-    name: str | None = None
-
-
-MixedPad = HeldPad | FilmPad | FluxPad
-
-
-@dataclass(frozen=True)
-class Mixed:
-    """Several conditions on one face: pads of their own conditions on a background with uniform data.
-
-    pads: they may touch but not overlap.
-    """
-
-    background: Inflow | Film | Insulated
-    pads: tuple[MixedPad, ...]
-
-
-Condition = Held | Inflow | Film | Insulated | Mixed
 
 
 @dataclass(frozen=True)
@@ -338,15 +247,16 @@ class Body:
             if face not in self.present_faces:
                 which = "without ends" if self.infinite[axis_of(face)] else "semi-infinite"
                 raise NotPhysical(f"A body that is {which} along {face[0]} has no face {face}.", ("faces", face))
-            if isinstance(condition, Film):
-                _check_film(condition, face)
-            if isinstance(condition, Mixed):
-                self._check_mixed(face, condition)
             first, second = axes_along(face)
+            begins, ends = (self.begins[first], self.begins[second]), (self.size[first], self.size[second])
+            if isinstance(condition, Film):
+                check_film(condition, face)
+            if isinstance(condition, Mixed):
+                check_mixed(condition, face, begins, ends)
+                self._check_mixed_faces_are_opposite(face)
             face_map = map_of(condition)
             if face_map is not None:
-                begins = (self.begins[first], self.begins[second])
-                face_map.check_covers(self.size[first], self.size[second], face, begins)
+                face_map.check_covers(*ends, face, begins)
                 if any(face_map.curved):
                     self._check_formula(face, condition)
 
@@ -365,14 +275,14 @@ class Body:
     def leaves_far_level_open(self) -> bool:
         """Whether the body goes on without end and no face says what its potential comes to there."""
         endless = any(math.isinf(length) for length in self.size)
-        return endless and not any(_fixes_level(self.faces[face]) for face in self.present_faces)
+        return endless and not any(fixes_level(self.faces[face]) for face in self.present_faces)
 
     def _check_far_level(self) -> None:
         if self.far_level is None:
             return
         if not math.isfinite(self.far_level):
             raise NotPhysical("The level far away is not a finite number.", ("far_level",))
-        fixed = [face for face in self.present_faces if _fixes_level(self.faces[face])]
+        fixed = [face for face in self.present_faces if fixes_level(self.faces[face])]
         if fixed:
             raise NotPhysical(
                 f"The face {fixed[0]} fixes the level of the potential, far away as well; leave `far_level` out.",
@@ -381,36 +291,7 @@ class Body:
         if all(math.isfinite(length) for length in self.size):
             raise NotPhysical("The body ends along every axis; it has no level far away.", ("far_level",))
 
-    def _check_mixed(self, face: Face, mixed: Mixed) -> None:
-        if isinstance(mixed.background, Film):
-            _check_film(mixed.background, face)
-        background = map_of(mixed.background)
-        if background is not None and not background.is_uniform:
-            raise NotPhysical(
-                f"The background of {face} varies; beside pads it has one value all over.",
-                ("faces", face, "background"),
-            )
-        if not mixed.pads:
-            raise NotPhysical(f"The mixed face {face} has no pads; it needs at least one.", ("faces", face, "pads"))
-        first, second = axes_along(face)
-        for index, pad in enumerate(mixed.pads):
-            where: tuple[str | int, ...] = ("faces", face, "pads", index)
-            _check_pad(pad, f"Pad {index} of {face}", where)
-            spot = pad.where
-            inside = (
-                self.begins[first] <= spot.p_low < spot.p_high <= self.size[first]
-                and self.begins[second] <= spot.q_low < spot.q_high <= self.size[second]
-                and math.isfinite(spot.p_low + spot.p_high + spot.q_low + spot.q_high)
-            )
-            if not inside:
-                raise NotPhysical(
-                    f"Pad {index} of {face} reaches from ({spot.p_low:g}, {spot.q_low:g}) to ({spot.p_high:g}, "
-                    f"{spot.q_high:g}); it has to have a positive, finite extent and lie in the face.",
-                    where,
-                )
-            for other in range(index):
-                if spot.overlaps(mixed.pads[other].where):
-                    raise NotPhysical(f"Pads {other} and {index} of {face} overlap.", where)
+    def _check_mixed_faces_are_opposite(self, face: Face) -> None:
         for other_face, condition in self.faces.items():
             if isinstance(condition, Mixed) and axis_of(other_face) != axis_of(face):
                 raise NotPhysical(
@@ -430,59 +311,3 @@ class Body:
                     f"{begin:g} and {length:g} and have a positive extent.",
                     (*where, AXES[axis]),
                 )
-
-
-def _fixes_level(condition: Condition) -> bool:
-    """Whether a face tells the level of the potential wherever nothing else does: pads of a mixed face do not."""
-    return isinstance(condition, Held | Film) or (
-        isinstance(condition, Mixed) and isinstance(condition.background, Film)
-    )
-
-
-def _check_film(film: Film, face: Face) -> None:
-    radiates = film.radiation is not None
-    if not (film.coefficient > 0 or (radiates and film.coefficient == 0)) or math.isinf(film.coefficient):
-        raise NotPhysical(
-            f"The film coefficient of {face} is {film.coefficient:g}; it has to be greater than zero.",
-            ("faces", face, "coefficient"),
-        )
-    if film.radiation is None:
-        return
-    if not (film.radiation.coefficient > 0 and math.isfinite(film.radiation.coefficient)):
-        raise NotPhysical(f"The radiation of {face} has to be greater than zero and finite.", ("faces", face))
-    if not film.ambient.lowest + film.radiation.zero > 0:
-        raise NotPhysical(
-            f"The ambient of {face} goes down to {film.ambient.lowest:g}, which is not above absolute zero.",
-            ("faces", face, "ambient"),
-        )
-
-
-def _check_pad(pad: MixedPad, name: str, where: tuple[str | int, ...]) -> None:
-    if isinstance(pad, FilmPad):
-        if not (pad.coefficient > 0 and math.isfinite(pad.coefficient)):
-            raise NotPhysical(
-                f"The film coefficient of {name[0].lower()}{name[1:]} is {pad.coefficient:g}; it has to be greater "
-                "than zero and finite.",
-                (*where, "coefficient"),
-            )
-        if not math.isfinite(pad.ambient):
-            raise NotPhysical(f"{name} has an ambient that is not a finite number.", (*where, "ambient"))
-        return
-    if isinstance(pad, FluxPad):
-        if not math.isfinite(pad.inflow):
-            raise NotPhysical(f"{name} has an inflow that is not a finite number.", (*where, "inflow"))
-        return
-    given = [number for number in (pad.value, pad.flow) if number is not None]
-    if len(given) != 1 or not math.isfinite(given[0]):
-        raise NotPhysical(f"{name} is held; it needs a finite value or a finite flow, one of the two.", where)
-
-
-def map_of(condition: Condition) -> FaceMap | None:
-    """The data of a face, or None for an insulated one; of a mixed face those of its background."""
-    match condition:
-        case Held(value=face_map) | Inflow(inflow=face_map) | Film(ambient=face_map):
-            return face_map
-        case Insulated():
-            return None
-        case Mixed(background=background):
-            return map_of(background)

@@ -23,25 +23,14 @@ from numpy.typing import NDArray
 from scipy.optimize import brentq
 
 from service.core import extremes, field
+from service.core.conditions import Condition, Film, Held, Inflow, Insulated, Mixed, map_of
 from service.core.endless import neighbourhood
 from service.core.errors import NoSteadyState, NotPhysical
+from service.core.faces import Face, axes_along, axis_of, is_high
 from service.core.field import KeepGoing, Setting
 from service.core.lines.modes import modes_of
 from service.core.maps import FaceMap
-from service.core.problem import (
-    Body,
-    Condition,
-    Face,
-    Film,
-    Held,
-    Inflow,
-    Insulated,
-    Mixed,
-    axes_along,
-    axis_of,
-    is_high,
-    map_of,
-)
+from service.core.problem import Body
 from service.core.profiles import Profiles
 from service.core.solvability import check_steady_state
 from service.core.span import span_of

@@ -23,8 +23,10 @@ from itertools import combinations, pairwise
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.conditions import Film, Held, Inflow, map_of
+from service.core.faces import AXES, Face, axes_along, axis_of
 from service.core.maps import FaceMap
-from service.core.problem import AXES, Body, Face, Film, Held, Inflow, axes_along, axis_of, map_of
+from service.core.problem import Body
 
 FloatArray = NDArray[np.float64]
 

@@ -13,9 +13,10 @@ from service.core.certificate import Certificate
 from service.core.convergence import Convergence, Overshoot
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
+from service.core.faces import Face, axis_of
 from service.core.field import Field, Grid, KeepGoing, Setting
 from service.core.maps import Rectangle
-from service.core.problem import Body, Face, axis_of
+from service.core.problem import Body
 from service.core.reach import Reach, reach
 from service.core.solvability import check_steady_state, level_is_pinned
 from service.core.span import span_of

@@ -15,9 +15,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.conditions import Film, Held, Inflow
 from service.core.errors import NoSteadyState
+from service.core.faces import AXES, Face, axes_along, axis_of
 from service.core.maps import FaceMap
-from service.core.problem import AXES, Body, Face, Film, Held, Inflow, axes_along, axis_of
+from service.core.problem import Body
 
 FloatArray = NDArray[np.float64]
 

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from service.core import solution
+from service.core.conditions import Mixed
 from service.core.field import KeepGoing
 from service.core.mixed import solve_mixed
-from service.core.problem import Body, Mixed
+from service.core.problem import Body
 from service.core.solution import Solution
 from service.core.varying import VaryingSolution
 

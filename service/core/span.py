@@ -8,11 +8,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import field, time_error, time_form
+from service.core.conditions import Film, Held, Inflow, map_of
 from service.core.endless import neighbourhood
+from service.core.faces import Face, axes_along, axis_of, is_high
 from service.core.lines.line import VALUE, Line
 from service.core.lines.places import Places
 from service.core.maps import FaceMap
-from service.core.problem import Body, Face, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
+from service.core.problem import Body
 from service.core.split import SOURCES, Part
 
 FloatArray = NDArray[np.float64]

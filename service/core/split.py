@@ -14,12 +14,14 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.conditions import Film, Held, Inflow, map_of
+from service.core.faces import AXES, Face, axes_along, axis_of, is_high
 from service.core.lines import laplace
 from service.core.lines.line import PRIMITIVE, Drive, Line, WallDrive
 from service.core.lines.places import Places
 from service.core.lines.stack import StackLine
 from service.core.maps import FaceMap
-from service.core.problem import AXES, Body, BoxSource, Face, Film, Held, Inflow, axes_along, axis_of, is_high, map_of
+from service.core.problem import Body, BoxSource
 from service.core.profiles import Profiles
 
 FloatArray = NDArray[np.float64]

@@ -17,13 +17,15 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import map_error, time_error, time_form
+from service.core.conditions import Held, Inflow, Insulated
 from service.core.endless import cut_off, endless_sides, far_profiles, far_setting, neighbourhood, with_interval
 from service.core.errors import NotPhysical, OutsideBody
+from service.core.faces import AXES, Face, axes_along, axis_of, is_high
 from service.core.field import Setting, far_along, kept_rows, points_at_once, step_for
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE
 from service.core.lines.places import Places
 from service.core.maps import Rectangle
-from service.core.problem import AXES, Body, Face, Held, Inflow, Insulated, axes_along, axis_of, is_high
+from service.core.problem import Body
 from service.core.profiles import Profiles
 from service.core.solvability import generation, level_is_pinned
 from service.core.unbounded import (

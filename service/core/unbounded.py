@@ -19,8 +19,10 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.conditions import Held, map_of
+from service.core.faces import Face, axes_along, axis_of
 from service.core.maps import FaceMap, Rectangle
-from service.core.problem import Body, Face, Held, axes_along, axis_of, map_of
+from service.core.problem import Body
 from service.core.profiles import EXACT_POINTS
 from service.core.singular import edge_name, line_name, local_data
 

@@ -17,17 +17,19 @@ from numpy.typing import NDArray
 from service.core import certificate, convergence, estimate, extremes, totals, varying_mean
 from service.core import field as fields
 from service.core.certificate import Certificate
+from service.core.conditions import Film, Held, Inflow, Insulated, map_of
 from service.core.convergence import Convergence, NodeStep, Overshoot, SeriesStep
 from service.core.errors import AccuracyNotReached, NotPhysical, OutsideLaw
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
+from service.core.faces import Face, axes_along, axis_of, is_high
 from service.core.field import Field, Grid, KeepGoing, Setting
 from service.core.film_iteration import Iterated, below_absolute_zero, first_faces, iterate
 from service.core.flow_error import FlowError
 from service.core.kirchhoff import Transformed, transform
 from service.core.laws import LARGEST_FACTOR, SMALLEST_FACTOR, ConductivityLaw, Kirchhoff
 from service.core.maps import Rectangle
-from service.core.problem import Body, Face, Film, Held, Inflow, Insulated, axes_along, axis_of, is_high, map_of
+from service.core.problem import Body
 from service.core.solution import Solution
 from service.core.solvability import check_steady_state, generation, level_is_pinned, map_integral
 from service.core.totals import Balance, Bounded, Total

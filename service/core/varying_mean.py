@@ -13,12 +13,13 @@ from numpy.typing import NDArray
 
 from service.core import field as fields
 from service.core import totals
+from service.core.conditions import Film, Held, map_of
+from service.core.faces import Face, axes_along
 from service.core.field import Grid, KeepGoing
 from service.core.film_iteration import Iterated
 from service.core.flow_error import FlowError
 from service.core.kirchhoff import Transformed
 from service.core.maps import Rectangle
-from service.core.problem import Face, Film, Held, axes_along, map_of
 from service.core.solvability import map_integral
 from service.core.totals import Bounded
 

@@ -10,7 +10,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import Solution
-from service.core.problem import AXES, Film, Held
+from service.core.conditions import Film, Held
+from service.core.faces import AXES
 from service.models import evaluate as models
 from service.refusals import Path
 from service.translation.collector import Collector

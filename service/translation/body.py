@@ -6,7 +6,7 @@ import math
 from dataclasses import dataclass
 
 from service.core import ConductivityLaw, Layer
-from service.core.problem import AXES
+from service.core.faces import AXES
 from service.models import problem as models
 from service.refusals import Path
 from service.settings import Settings

@@ -4,23 +4,10 @@ from __future__ import annotations
 
 import math
 
+from service.core.conditions import Condition, Film, FilmPad, FluxPad, Held, HeldPad, Inflow, Insulated, Mixed, MixedPad
+from service.core.faces import Face, axis_of
 from service.core.maps import FaceMap, Rectangle
-from service.core.problem import (
-    SAME_RATIO,
-    Condition,
-    Face,
-    Film,
-    FilmPad,
-    FluxPad,
-    Held,
-    HeldPad,
-    Inflow,
-    Insulated,
-    Layer,
-    Mixed,
-    MixedPad,
-    axis_of,
-)
+from service.core.problem import SAME_RATIO, Layer
 from service.models import faces as models
 from service.refusals import Path
 from service.settings import Settings

@@ -9,7 +9,7 @@ import numpy as np
 
 from service import cost
 from service.core import Convergence, Solution
-from service.core.problem import map_of
+from service.core.conditions import map_of
 from service.core.varying import VaryingSolution
 from service.models import evaluate as models
 from service.settings import Settings

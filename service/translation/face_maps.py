@@ -8,7 +8,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from service.core import errors, formula, formula_map, maps
-from service.core.problem import AXES, Face, axes_along
+from service.core.faces import AXES, Face, axes_along
 from service.models.face_maps import AxisIntervals, FaceData, FormulaMap, PatchesMap, SamplesMap
 from service.models.face_maps import Patch as PatchModel
 from service.number_range import LARGEST_NUMBER

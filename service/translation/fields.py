@@ -12,9 +12,9 @@ from numpy.typing import NDArray
 from service import cost
 from service.core import Field, Grid, Place, Solution
 from service.core.estimate import Estimate
+from service.core.faces import AXES, axes_along
 from service.core.maps import Rectangle
 from service.core.mixed import MixedSolution
-from service.core.problem import AXES, axes_along
 from service.models import evaluate as models
 from service.settings import Settings
 from service.translation import answers

@@ -7,9 +7,9 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.conditions import Mixed
 from service.core.network import Network
 from service.core.pad_network import PadNetwork, pad_network
-from service.core.problem import Mixed
 from service.translation.answers import KeepGoing
 from service.translation.collector import Collector
 from service.translation.pads import Pad, is_held

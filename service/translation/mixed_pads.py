@@ -6,8 +6,8 @@ import math
 from collections.abc import Mapping
 
 from service.core import Solution
+from service.core.faces import Face
 from service.core.mixed import MixedSolution, PadAnswer
-from service.core.problem import Face
 from service.translation.places import FacePart
 from service.units import Kind, UnitSystem
 

@@ -11,8 +11,9 @@ from numpy.typing import NDArray
 
 from service import cost
 from service.core import Bounded, Place, Solution
+from service.core.conditions import HeldPad, Inflow, Mixed
+from service.core.faces import Face, axes_along, axis_of
 from service.core.maps import Rectangle
-from service.core.problem import Face, HeldPad, Inflow, Mixed, axes_along, axis_of
 from service.models import pads as models
 from service.refusals import Path
 from service.settings import Settings

@@ -8,8 +8,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.faces import AXES, Face, axes_along, axis_of
 from service.core.maps import Rectangle
-from service.core.problem import AXES, Body, Face, axes_along, axis_of
+from service.core.problem import Body
 from service.models import evaluate as models
 from service.refusals import Path
 from service.settings import Settings

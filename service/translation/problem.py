@@ -11,7 +11,9 @@ from typing import Any
 from pydantic_core import to_json
 
 from service.core import errors
-from service.core.problem import AXES, FACES, Body, BoxSource, Condition, Face, axis_of, is_high
+from service.core.conditions import Condition
+from service.core.faces import AXES, FACES, Face, axis_of, is_high
+from service.core.problem import Body, BoxSource
 from service.models import problem as models
 from service.models.faces import FaceCondition
 from service.refusals import Issue, Path, RequestRefused

@@ -11,8 +11,9 @@ import numpy as np
 
 from service import cost
 from service.core import Reached, Solution
+from service.core.conditions import Film, Held
+from service.core.faces import AXES, Face, axis_of, is_high
 from service.core.mixed import MixedSolution
-from service.core.problem import AXES, Face, Film, Held, axis_of, is_high
 from service.core.reach import DecayRate
 from service.core.varying import VaryingSolution
 from service.models import reach as models

@@ -10,9 +10,10 @@ from typing import Any
 
 from service import cost
 from service.core import Solution
+from service.core.conditions import Held
+from service.core.faces import axes_along, axis_of
 from service.core.maps import Rectangle
 from service.core.network import Network
-from service.core.problem import Held, axes_along, axis_of
 from service.core.solution import USUAL_ACCURACY
 from service.models import pads as models
 from service.models.evaluate import FacePart as FacePartModel

@@ -29,6 +29,7 @@ from service.core import (
     TooManyPanels,
     solve,
 )
+from service.core.conditions import FilmPad, FluxPad, HeldPad, Mixed
 from service.core.formula import read
 from service.core.formula_map import of_formula
 from service.core.mixed import MixedSolution, PadAnswer, solve_mixed
@@ -36,7 +37,6 @@ from service.core.mixed_base import base_of
 from service.core.mixed_panels import system_of
 from service.core.mixed_refinement import Ladder
 from service.core.pad_network import pad_network
-from service.core.problem import FilmPad, FluxPad, HeldPad, Mixed
 from service.core.stopping import on_behalf_of
 from tests.core.bodies import ENDLESS, INSULATED, all_insulated, film, held, without_far_face
 from tests.core.reference.mixed_elements import Block, limit_of_flows

@@ -37,7 +37,7 @@ from service.core import (
     influence,
     solve,
 )
-from service.core.problem import axes_along
+from service.core.faces import axes_along
 from tests.core.bodies import INSULATED, UNIT, all_insulated, film, held
 from tests.core.reference.open_pads import OpenPad, Place, places_of, random_pad
 from tests.core.reference.published import Quantity, published_quantities

@@ -7,11 +7,13 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from service.core.conditions import Condition, FilmPad, Held, HeldPad, Insulated, Mixed
 from service.core.errors import NoSteadyState, NotPhysical
+from service.core.faces import Face
 from service.core.maps import FaceMap, Rectangle
 from service.core.mixed import solve_mixed
 from service.core.pad_network import PadNetwork, pad_network
-from service.core.problem import Body, Condition, Face, FilmPad, Held, HeldPad, Insulated, Mixed
+from service.core.problem import Body
 
 FEED, BACK, LUG = Rectangle(0.1, 0.3, 0.2, 0.8), Rectangle(0.6, 0.9, 0.2, 0.8), Rectangle(0.4, 0.5, 0.0, 0.1)
 FILM = FilmPad(LUG, 40.0, 0.0)

@@ -6,8 +6,8 @@ import numpy as np
 import pytest
 
 from service.core import Body, Rectangle
+from service.core.conditions import HeldPad, Mixed
 from service.core.mixed import solve_mixed
-from service.core.problem import HeldPad, Mixed
 from tests.core.bodies import INSULATED, all_insulated, film
 
 PAD = Rectangle(0.2, 0.7, 0.3, 0.5)

@@ -16,7 +16,7 @@ from hypothesis import strategies as st
 from numpy.typing import NDArray
 
 from service.core import NoSteadyState, Rectangle, Solution, solve
-from service.core.problem import Face
+from service.core.faces import Face
 from tests.core.reference.cases import Case, Cells, Wall, walls
 from tests.core.reference.random_cases import Place, hard_places, random_case
 from tests.core.reference.transformations import (

@@ -12,7 +12,7 @@ import numpy as np
 import pytest
 
 from service.core import Body, BoxSource, FaceMap, Film, Held, Inflow, Layer, Patch, Rectangle, solve
-from service.core.problem import Face
+from service.core.faces import Face
 from tests.core.bodies import INSULATED, all_insulated, film, held
 from tests.core.reference.layered_elements import LayeredElements
 

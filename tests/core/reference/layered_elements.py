@@ -20,7 +20,7 @@ from scipy.sparse.linalg import cg
 from skfem import Basis, BilinearForm, ElementHex1, FacetBasis, LinearForm, MeshHex
 
 from service.core import FACES, Body, Face, FaceMap, Film, Held, Inflow, Rectangle
-from service.core.problem import map_of
+from service.core.conditions import map_of
 
 FloatArray = NDArray[np.float64]
 

@@ -7,7 +7,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from service.core.problem import FACES, Face
+from service.core.faces import FACES, Face
 from tests.core.reference.cases import Case, Cells, Data, Readings, Wall
 from tests.core.reference.random_cases import Place
 
