@@ -17,8 +17,9 @@ from service.core.errors import (
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
 from service.core.faces import AXES, FACES, Face
+from service.core.fed_pads import Pad
 from service.core.field import Field, Grid
-from service.core.influence import Influence, Pad, influence, peaks
+from service.core.influence import Influence, influence, peaks
 from service.core.laws import ConductivityLaw, Radiation
 from service.core.maps import FaceMap, Patch, Rectangle
 from service.core.problem import Body, BoxSource, Layer

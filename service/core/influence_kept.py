@@ -9,10 +9,11 @@ import threading
 from collections import OrderedDict
 from collections.abc import Hashable, Sequence
 
-from service.core.conditions import Film, Mixed
+from service.core.conditions import Film
 from service.core.faces import axis_of
+from service.core.fed_pads import Pad
 from service.core.field import KeepGoing
-from service.core.influence import Influence, Pad, influence
+from service.core.influence import Influence, influence
 from service.core.problem import Body
 
 # Matrices that are kept, and pads of the largest of them: 8 times 16 MiB with its bound.
@@ -70,7 +71,7 @@ def _at_rest(body: Body, pads: Sequence[Pad], tolerance: float) -> Hashable | No
 
     The tolerance counts where pads are on faces that are not parallel, whose entries are had to it.
     """
-    if any(isinstance(condition, Mixed) for condition in body.faces.values()):
+    if body.has_mixed_face:
         return None
     faces = tuple(
         (face, type(condition), condition.coefficient if isinstance(condition, Film) else None)

@@ -155,6 +155,11 @@ class Body:
         return self.law is not None or any(film.radiation is not None for film in films)
 
     @property
+    def has_mixed_face(self) -> bool:
+        """Whether a face has several conditions."""
+        return any(isinstance(condition, Mixed) for condition in self.faces.values())
+
+    @property
     def present_faces(self) -> tuple[Face, ...]:
         """The faces the body has: both along a finite axis, the low one along a semi-infinite one, else none."""
         return tuple(face for face in FACES if math.isfinite(self.end_of(face)))

@@ -23,7 +23,7 @@ from numpy.typing import NDArray
 from scipy.optimize import brentq
 
 from service.core import extremes, field
-from service.core.conditions import Condition, Film, Held, Inflow, Insulated, Mixed, map_of
+from service.core.conditions import Condition, Film, Held, Inflow, Insulated, map_of
 from service.core.endless import neighbourhood
 from service.core.errors import NoSteadyState, NotPhysical
 from service.core.faces import Face, axes_along, axis_of, is_high
@@ -168,7 +168,7 @@ def disturbed(body: Body, face: Face, reference: float, *, unit: bool) -> Body:
             "depends on all the others.",
             ("face",),
         )
-    if any(isinstance(condition, Mixed) for condition in body.faces.values()):
+    if body.has_mixed_face:
         raise NotPhysical("The reach of a face is not offered for a body that has mixed faces.", ("face",))
     faces = {other: _quiet(condition) for other, condition in body.faces.items()}
     faces[face] = _driven(body.faces[face], reference, unit=unit)

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from service.core import solution
-from service.core.conditions import Mixed
 from service.core.field import KeepGoing
 from service.core.mixed import solve_mixed
 from service.core.problem import Body
@@ -22,6 +21,6 @@ def solve(body: Body, keep_going: KeepGoing | None = None) -> Solution:
     """
     if body.varies:
         return VaryingSolution(body, keep_going)
-    if any(isinstance(condition, Mixed) for condition in body.faces.values()):
+    if body.has_mixed_face:
         return solve_mixed(body, accuracy=FIRST_ACCURACY, keep_going=keep_going)
     return solution.solve(body)

@@ -8,8 +8,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import peaks, solve
-from service.core.influence import Pad as FedPad
-from service.core.influence import check_pads, environment, with_flow_into
+from service.core.fed_pads import Pad as FedPad
+from service.core.fed_pads import check_pads, environment, with_flow_into
 from service.core.influence_kept import kept_influence
 from service.core.network import network
 from service.translation.answers import KeepGoing

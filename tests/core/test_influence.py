@@ -26,7 +26,7 @@ from service.core import (
     peaks,
     solve,
 )
-from service.core.influence import environment, with_flow_into
+from service.core.fed_pads import environment, with_flow_into
 from service.core.network import network
 from tests.core.bodies import INSULATED, all_insulated, film, held
 
