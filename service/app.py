@@ -10,13 +10,25 @@ from starlette.middleware.cors import CORSMiddleware
 
 from service import __version__, openapi, problem_details
 from service.middleware import BodyLimit, Counting, LastResort, SecurityHeaders
-from service.routes import convergence, fields, flux_totals, health, pads, pages, problems, reach, resistances
+from service.routes import (
+    convergence,
+    fields,
+    flux_totals,
+    health,
+    limits,
+    pads,
+    pages,
+    problems,
+    reach,
+    resistances,
+)
 from service.settings import Settings
 from service.state import open_state
 
 _TAGS = [
     {"name": "problems", "description": "Check and store a problem."},
     {"name": "answers", "description": "Questions about a problem."},
+    {"name": "decisions", "description": "What follows from a field: limits, tolerances, sizes, unknowns."},
     {"name": "operation", "description": "Health, caches and counts."},
 ]
 
@@ -49,7 +61,7 @@ def create_app(settings: Settings | None = None) -> FastAPI:
     )
     openapi.install(app)
     problem_details.install(app)
-    for module in (problems, fields, flux_totals, convergence, pads, resistances, reach, health, pages):
+    for module in (problems, fields, flux_totals, convergence, pads, resistances, reach, limits, health, pages):
         app.include_router(module.router)
     pages.mount_files(app)
 

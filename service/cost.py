@@ -111,3 +111,28 @@ def check_pairs(work: float, limit: float) -> None:
             work,
             limit,
         )
+
+
+# What making one case ready takes beside the work on its results, in multiplications: about two milliseconds.
+CASE_OVERHEAD = 2e6
+
+
+def check_cases(count: int, a_case: Sequence[Estimate], settings: Settings) -> None:
+    """Raise TooCostly when so many cases take more than one request may; a study takes them."""
+    advice = "send it as a study to POST /v1/studies, or ask for fewer cases."
+    if count > settings.cases:
+        raise TooCostly(
+            f"The request would take up to {count} cases; at most {settings.cases} are computed while a client waits: "
+            + advice,
+            count,
+            settings.cases,
+        )
+    work = count * (CASE_OVERHEAD + sum(estimate.multiplications for estimate in a_case))
+    if work > settings.cost_multiplications:
+        raise TooCostly(
+            f"The request would take up to {count} cases and about {work:.2g} multiplications; at most "
+            f"{settings.cost_multiplications:.2g} are allowed while a client waits: {advice}",
+            work,
+            settings.cost_multiplications,
+        )
+    check_work(a_case, settings)

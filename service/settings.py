@@ -48,6 +48,10 @@ class Settings(BaseSettings):
     )
     pads: PositiveInt = Field(400, description="Most pads in one request about pads or resistances.")
 
+    cases: PositiveInt = Field(
+        5_000, description="Most cases of one request about limits, tolerances, sizing and the like; studies take more."
+    )
+
     cost_multiplications: PositiveFloat = Field(
         4e10, description="Most multiplications estimated for one request; about 10^9 take a second."
     )

@@ -30,11 +30,12 @@ from service.units import Kind, UnitSystem, declare
 class ReadProblem:
     """A problem ready for the solver.
 
-    body: in the solver's units. units: to read questions and write answers. extents: of its three axes. patches: of
-    each face, in their order. filled: how many missing readings were filled on each face.
+    given: as the client wrote it. body: in the solver's units. units: to read questions and write answers. extents: of
+    its three axes. patches: of each face, in their order. filled: how many missing readings were filled on each face.
     """
 
     problem_id: str
+    given: models.Problem
     potential: str
     units: UnitSystem
     body: Body
@@ -85,6 +86,7 @@ def read_problem(problem: models.Problem, settings: Settings, prefix: Path = ())
         raise RequestRefused((issue,)) from None
     return ReadProblem(
         problem_id_of(canonical(problem)),
+        problem,
         problem.potential,
         units,
         body,

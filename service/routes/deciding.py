@@ -1,0 +1,30 @@
+"""The way from a question about a decision to its answer while the client waits."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from service.core import Solution
+from service.routes.answering import Call
+from service.settings import Settings
+from service.translation.analysis import Analysis, AnalysisCall, check_cost, prepare
+from service.translation.answers import KeepGoing
+from service.translation.cases import evaluator
+from service.translation.problem import ReadProblem
+
+
+def call_of(kind: AnalysisCall[Any]) -> Call[Any, Analysis]:
+    """The steps of a call whose cases are computed here and now."""
+
+    def read(question: Any, problem: ReadProblem, solution: Solution, settings: Settings) -> Analysis:
+        return kind.read(question, prepare(question, problem, solution, settings))
+
+    return Call(read, _check_cost, _answer, has_tolerance=False)
+
+
+def _check_cost(analysis: Analysis, _: Solution, settings: Settings, __: int) -> None:
+    check_cost(analysis, settings)
+
+
+def _answer(_: ReadProblem, __: Solution, analysis: Analysis, keep_going: KeepGoing) -> dict[str, Any]:
+    return analysis.answer(evaluator(analysis.plan, analysis.prepared.settings, keep_going))
