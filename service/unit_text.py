@@ -85,10 +85,10 @@ def inverse_of(unit: str) -> str:
         return "S"
     if unit.count("/") == 1:
         dividend, divisor = (part.strip() for part in unit.split("/"))
-        turned = f"{_without_brackets(divisor)}/{_in_brackets(_without_brackets(dividend))}"
+        turned = f"{_without_brackets(divisor)}/{in_brackets(_without_brackets(dividend))}"
         if dividend != "1" and factor_between(turned, f"1/({unit})") == 1:
             return turned
-    return f"1/{_in_brackets(unit)}"
+    return f"1/{in_brackets(unit)}"
 
 
 def _without_brackets(unit: str) -> str:
@@ -96,7 +96,8 @@ def _without_brackets(unit: str) -> str:
     return unit[1:-1] if is_bracketed else unit
 
 
-def _in_brackets(unit: str) -> str:
+def in_brackets(unit: str) -> str:
+    """A unit as it can stand after a stroke."""
     return f"({unit})" if any(sign in unit for sign in "/* ") else unit
 
 

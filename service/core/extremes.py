@@ -107,6 +107,18 @@ def highest_on(
     return highest_among(setting, axes, tolerance, keep_going)
 
 
+def places_within(setting: Setting, axis: int, low: float, high: float) -> FloatArray:
+    """Places along a stretch of an axis for a first grid: closer at its ends, and where its data show."""
+    if low == high:
+        return np.array([low])
+    ends = [end for end in (low, high) if math.isfinite(end)]
+    places = _first_places(setting, axis)
+    places = places[(places > low) & (places < high)]
+    if len(ends) == 2:
+        places = np.concatenate([places, low + (high - low) * PAD_PLACES[1:-1]])
+    return np.unique(np.concatenate([ends, _thinned(np.unique(places), MOST_SHOWN)]))
+
+
 def _data_within(setting: Setting, axis: int, low: float, high: float) -> FloatArray:
     """Where data begin and end along a stretch of an axis, and the middles between: what drives there may be small."""
     knots = np.concatenate([np.zeros(0), *(part.knots(axis) for part in setting.parts)])

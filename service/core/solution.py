@@ -7,7 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import certificate, convergence, estimate, extremes, totals
+from service.core import certificate, convergence, estimate, extremes, extremes_within, totals
 from service.core import field as fields
 from service.core.certificate import Certificate
 from service.core.convergence import Convergence, Overshoot
@@ -100,6 +100,18 @@ class Solution:
         """The highest potential on a face or a rectangle of it."""
         rectangle = totals.checked_rectangle(self.body, axis_of(face), rectangle)
         return extremes.highest_on(self._setting, face, rectangle, tolerance, keep_going)
+
+    def highest_within(
+        self, low: Sequence[float], high: Sequence[float], *, tolerance: float, keep_going: KeepGoing | None = None
+    ) -> Place:
+        """The highest potential in a closed box with these corners (x, y, z)."""
+        return extremes_within.highest(self._setting, low, high, tolerance, keep_going)
+
+    def lowest_within(
+        self, low: Sequence[float], high: Sequence[float], *, tolerance: float, keep_going: KeepGoing | None = None
+    ) -> Place:
+        """The lowest potential in a closed box with these corners (x, y, z)."""
+        return extremes_within.highest(self._setting, low, high, tolerance, keep_going, -1.0)
 
     def reach(
         self,

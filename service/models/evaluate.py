@@ -33,12 +33,13 @@ def _check_layer_reference(value: Any) -> int | str:
     return value
 
 
+LayerReference = Annotated[int | str, BeforeValidator(_check_layer_reference)]
+
+
 class LayerAxis(Model):
     """Evenly spaced places through a layer of a stack, from its lower side to its upper one, both in the layer."""
 
-    layer: Annotated[int | str, BeforeValidator(_check_layer_reference)] = Field(
-        description="The layer, by its number from 0 or its name.", examples=["solder", 1]
-    )
+    layer: LayerReference = Field(description="The layer, by its number from 0 or its name.", examples=["solder", 1])
     count: int = Field(ge=2, le=LONGEST_AXIS, description="How many places, at least 2.", examples=[9])
 
 
@@ -60,7 +61,7 @@ def _kind_across(value: Any) -> str:
 
 
 Side = Literal["below", "above"]
-_SIDE = "For places exactly on an interface of a stack: on which side of it they are meant; below if left out."
+SIDE_IN_WORDS = "For places exactly on an interface of a stack: on which side of it they are meant; below if left out."
 
 GridAxis = Annotated[
     Annotated[Quantity, Tag("one place")]
@@ -95,7 +96,7 @@ class Grid(Model):
         "a count.",
         examples=[20, {"layer": "solder", "count": 9}],
     )
-    side: Side | None = Field(None, description=_SIDE, examples=["above"])
+    side: Side | None = Field(None, description=SIDE_IN_WORDS, examples=["above"])
 
 
 Position = Annotated[
@@ -125,7 +126,7 @@ class Point(Model):
 
     name: Name | None = Field(None, description="What to call the point in the answer.", examples=["probe A"])
     at: Position
-    side: Side | None = Field(None, description=_SIDE, examples=["above"])
+    side: Side | None = Field(None, description=SIDE_IN_WORDS, examples=["above"])
 
 
 class Interface(Model):

@@ -113,11 +113,11 @@ def check_cost(wanted: FieldsWanted, solution: Solution, settings: Settings, byt
         for interface in wanted.interfaces
     ]
     if wanted.extremes:
-        estimates.append(_search_estimate(solution, tolerance))
+        estimates.append(search_estimate(solution, tolerance))
     cost.check_work(estimates, settings)
 
 
-def _search_estimate(solution: Solution, tolerance: float) -> Estimate:
+def search_estimate(solution: Solution, tolerance: float) -> Estimate:
     """Cost of a search for the extremes: its first grid, and the places of all small ones it may climb on."""
     first = solution.estimate_grid((FIRST_PLACES, FIRST_PLACES, FIRST_PLACES), tolerance=tolerance)
     climbs = solution.estimate_points(CLIMBED, tolerance=tolerance)

@@ -12,6 +12,7 @@ from service.core.faces import AXES, Face, axes_along, axis_of
 from service.core.maps import Rectangle
 from service.core.problem import Body
 from service.models import evaluate as models
+from service.models.face_maps import AxisIntervals
 from service.refusals import Path
 from service.settings import Settings
 from service.translation.collector import Collector
@@ -21,6 +22,7 @@ from service.translation.problem import ReadProblem, endless_in_words
 from service.units import Kind
 
 FloatArray = NDArray[np.float64]
+Corner = tuple[float, float, float]
 
 # More interfaces than these are counted but not listed in a sentence.
 INTERFACES_LISTED = 8
@@ -209,20 +211,45 @@ class PlaceReader:
             return np.array(values)
         return np.array([self._inside(places, axis, path)])
 
-    def _through_layer(self, asked: models.LayerAxis, path: Path) -> tuple[FloatArray, FloatArray]:
-        """Heights through a layer, as they are shown and as the solver is asked for them."""
+    def box(self, intervals: AxisIntervals, path: Path) -> tuple[Corner, Corner] | None:
+        """Opposite corners of a box, from side to side along axes that are left out; None when it is none, which is
+        then noted.
+        """
+        noted = len(self.collector.issues)
+        ends = [(extent.low, extent.high) for extent in self.extents]
+        for axis, name in enumerate(AXES):
+            interval = getattr(intervals, name)
+            if interval is not None:
+                ends[axis] = self.collector.read_interval(interval, self.extents[axis], (*path, name))
+                self._fits(axis, *ends[axis], path)
+        (x_low, x_high), (y_low, y_high), (z_low, z_high) = ends
+        return ((x_low, y_low, z_low), (x_high, y_high, z_high)) if len(self.collector.issues) == noted else None
+
+    def layer(self, reference: int | str, path: Path) -> int | None:
+        """The number of a layer of a stack; None when there is no such layer, which is then noted."""
         layers = self.problem.body.layers
         for index, layer in enumerate(layers):
-            if asked.layer in (index, layer.name):
-                sides = (0.0, *self.extents[2].interfaces, self.extents[2].high)
-                shown = np.linspace(sides[index], sides[index + 1], asked.count)
-                inside = shown.copy()
-                if index:
-                    inside[0] = np.nextafter(inside[0], math.inf)
-                return shown, inside
+            if reference in (index, layer.name):
+                return index
         has = f"has the layers 0 to {len(layers) - 1}" if layers else "has no layers"
-        self.collector.add((*path, "layer"), f"There is no such layer; the body {has}.", "no-such-layer")
-        return np.zeros(1), np.zeros(1)
+        self.collector.add(path, f"There is no such layer; the body {has}.", "no-such-layer")
+        return None
+
+    def sides_of_layer(self, index: int) -> tuple[float, float]:
+        """The heights of a layer's lower and upper side."""
+        sides = (0.0, *self.extents[2].interfaces, self.extents[2].high)
+        return sides[index], sides[index + 1]
+
+    def _through_layer(self, asked: models.LayerAxis, path: Path) -> tuple[FloatArray, FloatArray]:
+        """Heights through a layer, as they are shown and as the solver is asked for them."""
+        index = self.layer(asked.layer, (*path, "layer"))
+        if index is None:
+            return np.zeros(1), np.zeros(1)
+        shown = np.linspace(*self.sides_of_layer(index), asked.count)
+        inside = shown.copy()
+        if index:
+            inside[0] = np.nextafter(inside[0], math.inf)
+        return shown, inside
 
     def _inside(self, value: float | str, axis: int, path: Path) -> float:
         """A coordinate of the closed body."""
@@ -253,18 +280,22 @@ class PlaceReader:
         return np.where(on_interface, np.nextafter(z, math.inf), z) if side == "above" else z
 
     def _rectangle_fits(self, where: Rectangle, along: tuple[int, int], path: Path) -> bool:
-        noted = len(self.collector.issues)
         ends = ((where.p_low, where.p_high), (where.q_low, where.q_high))
-        for axis, (low, high) in zip(along, ends, strict=True):
-            extent = self.extents[axis]
-            if not extent.low <= low < high <= extent.high:
-                self.collector.add(
-                    (*path, AXES[axis]),
-                    f"The interval from {low:g} to {high:g} has to have a positive extent and lie between "
-                    f"{extent.low:g} and {extent.high:g}.",
-                    "outside-body",
-                )
-        return len(self.collector.issues) == noted
+        fits = [self._fits(axis, *interval, path) for axis, interval in zip(along, ends, strict=True)]
+        return all(fits)
+
+    def _fits(self, axis: int, low: float, high: float, path: Path) -> bool:
+        """Whether an interval lies in the body; noted when it does not."""
+        extent = self.extents[axis]
+        if extent.low <= low < high <= extent.high:
+            return True
+        self.collector.add(
+            (*path, AXES[axis]),
+            f"The interval from {low:g} to {high:g} has to have a positive extent and lie between "
+            f"{extent.low:g} and {extent.high:g}.",
+            "outside-body",
+        )
+        return False
 
     def _patch(self, part: models.FacePart, face: Face, path: Path) -> FacePart | None:
         patches = self.problem.patches.get(face, ())

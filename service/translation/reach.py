@@ -12,6 +12,7 @@ import numpy as np
 from service import cost
 from service.core import Reached, Solution
 from service.core.conditions import Film, Held
+from service.core.estimate import Estimate
 from service.core.faces import AXES, Face, axis_of, is_high
 from service.core.mixed import MixedSolution
 from service.core.reach import DecayRate
@@ -69,8 +70,13 @@ def read_reach(
 
 def check_cost(wanted: ReachWanted, solution: Solution, settings: Settings, bytes_a_number: int) -> None:
     """Raise TooCostly when the search, its memory or the answer would pass a limit."""
-    looks = [(SECTION, SECTION, FIRST_LOOK)] + [(SECTION, SECTION, 1)] * SECTIONS * len(wanted.fractions)
-    cost.check_work([solution.estimate_grid(shape, tolerance=wanted.accuracy) for shape in looks], settings)
+    cost.check_work(reach_estimates(solution, len(wanted.fractions), wanted.accuracy), settings)
+
+
+def reach_estimates(solution: Solution, fractions: int, accuracy: float) -> list[Estimate]:
+    """Cost of a search for so many distances, to an accuracy of the potential."""
+    looks = [(SECTION, SECTION, FIRST_LOOK)] + [(SECTION, SECTION, 1)] * SECTIONS * fractions
+    return [solution.estimate_grid(shape, tolerance=accuracy) for shape in looks]
 
 
 def answer_reach(
