@@ -146,7 +146,8 @@ class UnitSystem:
 
         Raises UnitError when the text is no quantity or measures something else.
         """
-        value = self.in_declared(kind, value)
+        if isinstance(value, str):
+            value = convert(value, self._targets[kind])
         return value if kind in _CARRIED_OVER else value * self._to_solver[kind]
 
     def read_resistance_of_area(self, value: float | str) -> float:
@@ -159,10 +160,6 @@ class UnitSystem:
             unit = inverse_of(self.declared[Kind.FILM_COEFFICIENT])
             value = convert(value, Target(unit, "a resistance times area", is_level=False))
         return self.read(Kind.FILM_COEFFICIENT, 1.0 / value) if value else math.inf
-
-    def in_declared(self, kind: Kind, value: float | str) -> float:
-        """A number in the declared unit as it is, or a text with its own unit as such a number. Raises UnitError."""
-        return convert(value, self._targets[kind]) if isinstance(value, str) else value
 
     def write(self, kind: Kind, value: float) -> float:
         """A number of the solver's set in the declared unit."""

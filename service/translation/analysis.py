@@ -24,6 +24,7 @@ from service.settings import Settings
 from service.translation import answers
 from service.translation.cases import CasePlan
 from service.translation.collector import Collector
+from service.translation.measures import read_measured
 from service.translation.numbers import NumberInfo, NumberTarget, read_numbers
 from service.translation.problem import ReadProblem
 from service.translation.results import (
@@ -82,9 +83,9 @@ class Prepared:
             here = (*path, index)
             number = self.result(collector, limit.result, (*here, "result"))
             measure = self.results.infos[number].measure
-            at_most = math.inf if limit.at_most is None else measure.read(collector, limit.at_most, (*here, "at_most"))
-            at_least = (
-                -math.inf if limit.at_least is None else measure.read(collector, limit.at_least, (*here, "at_least"))
+            at_most, at_least = (
+                far if side is None else read_measured(collector, measure, side, (*here, name))
+                for side, far, name in ((limit.at_most, math.inf, "at_most"), (limit.at_least, -math.inf, "at_least"))
             )
             if at_least > at_most:
                 detail = "`at_least` is greater than `at_most`; no value holds both."

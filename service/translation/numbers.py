@@ -10,7 +10,8 @@ from typing import Any, Literal
 from service.models.numbers import NumberReference
 from service.refusals import Path
 from service.translation.collector import Collector
-from service.translation.measures import Measure, is_coordinate, measure_at, plain_measure
+from service.translation.measures import is_coordinate, measure_at, plain_measure, read_measured
+from service.translation.result_units import Measure
 from service.units import UnitSystem
 
 Way = Literal["at", "shift", "scale"]
@@ -132,7 +133,7 @@ class _Reading:
                 detail = "What is scaled about a level has to be of one kind."
                 self._collector.add((*self._path, "about"), detail, "kind")
                 return None
-            about = measure.read(self._collector, reference.about, (*self._path, "about"))
+            about = read_measured(self._collector, measure, reference.about, (*self._path, "about"))
         return NumberInfo(reference.name, plain_measure(), AS_IT_STANDS[way]), NumberTarget(way, leaves, about)
 
     def _at(self, name: str, measure: Measure, leaves: tuple[Leaf, ...]) -> tuple[NumberInfo, NumberTarget] | None:
@@ -197,7 +198,7 @@ class _Reading:
         if isinstance(value, str) and value in _WORDS:
             return None
         noted = len(self._collector.issues)
-        number = measure.read(self._collector, value, path)
+        number = read_measured(self._collector, measure, value, path)
         return None if len(self._collector.issues) > noted else (Leaf(path, number), measure)
 
     def _resolve(self, pointer: str, place: Path) -> Path | None:
