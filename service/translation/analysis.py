@@ -101,11 +101,11 @@ class Prepared:
 
     def plan(self, infos: Sequence[NumberInfo], targets: Sequence[NumberTarget]) -> CasePlan:
         """The plan of cases of these numbers."""
-        names = tuple(info.name for info in infos)
         return CasePlan(
             {key: self.document[key] for key in ("problem", "results")},
             tuple(targets),
-            names,
+            tuple(info.name for info in infos),
+            tuple(info.measure.unit for info in infos),
             len(self.results.infos),
             self.relative,
             self.absolute,

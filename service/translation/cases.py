@@ -50,13 +50,14 @@ class CasePlan:
     """All that computing a case takes.
 
     document: the request as plain JSON values, its `problem` and `results` above all. numbers: what each changes in it.
-    names: of the numbers. result_count: how many results there are. relative, absolute: accuracy asked for, in parts of
+    names, units: of the numbers. result_count: how many results there are. relative, absolute: accuracy asked for, in parts of
     the span of a case's data or as a difference of the potential; the usual one if both are None.
     """
 
     document: dict[str, Any]
     numbers: tuple[NumberTarget, ...]
     names: tuple[str, ...]
+    units: tuple[str, ...]
     result_count: int
     relative: float | None = None
     absolute: float | None = None
