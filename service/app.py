@@ -11,6 +11,7 @@ from starlette.middleware.cors import CORSMiddleware
 from service import __version__, openapi, problem_details
 from service.middleware import BodyLimit, Counting, LastResort, SecurityHeaders
 from service.routes import (
+    cases,
     convergence,
     fields,
     flux_totals,
@@ -61,7 +62,7 @@ def create_app(settings: Settings | None = None) -> FastAPI:
     )
     openapi.install(app)
     problem_details.install(app)
-    for module in (problems, fields, flux_totals, convergence, pads, resistances, reach, limits, health, pages):
+    for module in (problems, fields, flux_totals, convergence, pads, resistances, reach, limits, cases, health, pages):
         app.include_router(module.router)
     pages.mount_files(app)
 

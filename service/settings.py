@@ -51,6 +51,7 @@ class Settings(BaseSettings):
     cases: PositiveInt = Field(
         5_000, description="Most cases of one request about limits, tolerances, sizing and the like; studies take more."
     )
+    study_cases: PositiveInt = Field(200_000, description="Most cases of one study.")
 
     cost_multiplications: PositiveFloat = Field(
         4e10, description="Most multiplications estimated for one request; about 10^9 take a second."

@@ -39,7 +39,7 @@ def readings_of_csv(text: str) -> Readings:
 
     Raises ReadingsError, with row and column counted from 1 as a spreadsheet shows them.
     """
-    delimiter = _delimiter(text)
+    delimiter = delimiter_of(text)
     try:
         rows = [
             row
@@ -67,13 +67,14 @@ def readings_of_csv(text: str) -> Readings:
     return Readings(first, second, np.array(table))
 
 
-def _delimiter(text: str) -> str:
+def delimiter_of(text: str) -> str:
     """A semicolon or tab in the first row separates; otherwise a comma does."""
     first_row = text.lstrip("\r\n").partition("\n")[0]
     return next((sign for sign in ("\t", ";") if sign in first_row), ",")
 
 
-def _number(entry: str, decimal_comma: bool) -> float | None:
+def number_of(entry: str, decimal_comma: bool) -> float | None:
+    """The number of an entry, None if it is none that is read."""
     if decimal_comma and entry.count(",") == 1 and "." not in entry:
         entry = entry.replace(",", ".")
     if "_" in entry or len(entry) > 40:
@@ -86,7 +87,7 @@ def _number(entry: str, decimal_comma: bool) -> float | None:
 
 
 def _place(entry: str, row: int, column: int, decimal_comma: bool) -> float:
-    number = _number(entry.strip(), decimal_comma)
+    number = number_of(entry.strip(), decimal_comma)
     if number is None:
         raise ReadingsError(f"Row {row}, column {column} has to be a place on the axis, a bare number.")
     return number
@@ -96,7 +97,7 @@ def _reading(entry: str, row: int, column: int, decimal_comma: bool) -> float:
     entry = entry.strip()
     if entry.lower() in _MISSING:
         return np.nan
-    number = _number(entry, decimal_comma)
+    number = number_of(entry, decimal_comma)
     if number is None:
         raise ReadingsError(f"Row {row}, column {column} has to be a reading, a bare number, or empty.")
     return number
