@@ -48,6 +48,15 @@ class Rectangle:
             self.q_high, other.q_high
         )
 
+    def lies_in(self, other: Rectangle) -> bool:
+        """Whether all of it is in another one."""
+        return (
+            other.p_low <= self.p_low
+            and self.p_high <= other.p_high
+            and other.q_low <= self.q_low
+            and self.q_high <= other.q_high
+        )
+
 
 @dataclass(frozen=True)
 class Patch:

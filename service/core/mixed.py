@@ -1,77 +1,44 @@
 """The solved problem of a body with several conditions on one face.
 
-Totals are told by extrapolation from refinements, see `mixed_refinement`. A field errs by what its density errs nearby;
-its bound is the change from half as many panels, or what that should be after the change before it.
+Totals are told by extrapolation from refinements, see `panel_error`; fields have their own, see `mixed_fields`.
 """
 
 from __future__ import annotations
 
 import math
 from collections.abc import Callable, Iterable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import extremes, time_error
+from service.core import mixed_extremes
 from service.core.certificate import Certificate
-from service.core.conditions import FilmPad, FluxPad, HeldPad, MixedPad, map_of
+from service.core.conditions import HeldPad, map_of
 from service.core.convergence import Convergence, Overshoot
-from service.core.errors import AccuracyNotReached, NoSteadyState, NotPhysical
+from service.core.errors import NoSteadyState, NotPhysical
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes, Place
-from service.core.faces import Face, axes_along, axis_of
-from service.core.field import OFFERED, Field, Grid, KeepGoing, Setting, check_inside
+from service.core.faces import Face
+from service.core.field import Field, Grid, KeepGoing, Setting
 from service.core.maps import Rectangle
-from service.core.mixed_base import Base, Spot, base_of, pads_of
-from service.core.mixed_panels import Refined, given_total, needs_balance
-from service.core.mixed_refinement import LEVELS, Ladder, Refinement, change_of, left_over
-from service.core.panel_noise import noise
-from service.core.panels import STEP
+from service.core.mixed_base import Base, base_of, pads_of
+from service.core.mixed_fields import field_of_panels, field_on_held_pads
+from service.core.mixed_levels import Levels
+from service.core.mixed_pads import PadAnswer, pad_answers
+from service.core.mixed_panels import given_total, needs_balance
+from service.core.mixed_refinement import LEVELS, MOST_PANELS, SHARE, Ladder, Refinement
+from service.core.panel_error import ORDER_OF_FIELDS, ORDER_OF_TOTALS, change_of, times_too_wide
 from service.core.problem import Body
 from service.core.solution import Solution
 from service.core.solvability import BALANCED, check_steady_state
-from service.core.stopping import go_on, on_behalf_of
+from service.core.stopping import on_behalf_of
 from service.core.totals import Balance, Bounded, Total
 
 FloatArray = NDArray[np.float64]
 
-# Most panels of all pads together: a matrix of 128 MiB, factorised in about a second.
-MOST_PANELS = 4096
-
-# Bounds of totals fall at the most with this power of the number of panels along an axis, those of fields with this.
-ORDER_OF_TOTALS, ORDER_OF_FIELDS = 4.0, 2.0
-
-# No flow is told better than this part of the worst: the error of one is a product with that of all.
-LEAST_OF_WORST = 0.125
-
-# A field is asked of each refinement with this part of the tolerance.
-SHARE = 0.1
-
-# At the corners of pads changes of the flux fall by less than 2 from one refinement to the next, so that the last one
-# falls short of what is left; by 1.4 where it was looked for on held pads, by more on films.
-FLUX_SAFETY = 3.0
-
 # The accuracy of fields that is usual here, in parts of the span: next to the borders of pads finer panels gain little.
 USUAL_MIXED = 5e-3
-
-# Accuracy, in parts of the span, of means over pads that have their base's film.
-MEAN_ACCURACY = 1e-10
-
-
-@dataclass(frozen=True)
-class PadAnswer:
-    """What passes through a pad of a mixed face.
-
-    face, index, name: which. flow: into the body through it. potential: of a held pad its level, given or found; of a
-    film pad the mean over it.
-    """
-
-    face: Face
-    index: int
-    name: str | None
-    flow: Bounded
-    potential: Bounded
 
 
 def solve_mixed(
@@ -160,6 +127,10 @@ class MixedSolution(Solution):
         return self._ladder.at(self.count)
 
     @property
+    def _levels(self) -> Levels:
+        return Levels(self._ladder, self._here)
+
+    @property
     def depends_on_far_level(self) -> bool:
         """Whether flows depend on what the potential comes to far away, which no face tells."""
         told = [spot for spot in self._base.spots if spot.level is not None]
@@ -186,8 +157,8 @@ class MixedSolution(Solution):
             answers = self.pads()
             size = math.fsum(abs(answer.flow.value) for answer in answers)
             missed = [
-                _over(max(answer.flow.error_bound for answer in answers), accuracy * size),
-                _over(max(answer.potential.error_bound for answer in answers), accuracy * self.span),
+                times_too_wide(max(answer.flow.error_bound for answer in answers), accuracy * size),
+                times_too_wide(max(answer.potential.error_bound for answer in answers), accuracy * self.span),
             ]
             finer = self._ladder.finer(self.count, max(missed), ORDER_OF_TOTALS)
             if finer is None:
@@ -198,63 +169,7 @@ class MixedSolution(Solution):
 
     def pads(self) -> tuple[PadAnswer, ...]:
         """Flow and potential of every pad, face by face."""
-        go_on()
-        answers = [
-            self._pad(face, index, pad)
-            for face in self._base.faces
-            for index, pad in enumerate(pads_of(self.body, face))
-        ]
-        least = LEAST_OF_WORST * max(answer.flow.error_bound for answer in answers)
-        return tuple(
-            replace(answer, flow=Bounded(answer.flow.value, max(answer.flow.error_bound, least)))
-            if answer.flow.error_bound > 0.0
-            else answer
-            for answer in answers
-        )
-
-    def _pad(self, face: Face, index: int, pad: MixedPad) -> PadAnswer:
-        number = next((n for n, spot in enumerate(self._base.spots) if (spot.face, spot.pad) == (face, index)), None)
-        if number is None:
-            return self._pad_of_base(face, index, pad)
-        spot, rounding = self._base.spots[number], time_error.step_error(STEP)
-        excess = self._ladder.limit(
-            [
-                Bounded(
-                    math.fsum(refined.flows[number]),
-                    rounding * math.fsum(float(np.abs(flows).sum()) for flows in refined.flows),
-                )
-                for refined in self._here.refined
-            ]
-        )
-        if isinstance(pad, HeldPad):
-            flow = excess if pad.flow is None else Bounded(pad.flow, 0.0)
-            return PadAnswer(face, index, pad.name, flow, self._level(number))
-        assert isinstance(pad, FilmPad)
-        share = 1.0 + self._base.coefficients[face] / spot.excess
-        per_flow = 1 / (spot.area * spot.excess)
-        potential = self._limited(Bounded(pad.ambient - per_flow * excess.value, per_flow * excess.error_bound))
-        return PadAnswer(face, index, pad.name, Bounded(share * excess.value, share * excess.error_bound), potential)
-
-    def _pad_of_base(self, face: Face, index: int, pad: MixedPad) -> PadAnswer:
-        """A pad with a given inflow, or with the film of the base."""
-        means = [
-            solution.mean(face, pad.where, tolerance=MEAN_ACCURACY * self.span) for solution in self._here.solutions
-        ]
-        mean = self._limited(self._ladder.limit(means))
-        if isinstance(pad, FluxPad):
-            return PadAnswer(face, index, pad.name, Bounded(pad.inflow * pad.where.area, 0.0), mean)
-        assert isinstance(pad, FilmPad)
-        per_degree = pad.coefficient * pad.where.area
-        flow = Bounded(per_degree * (pad.ambient - mean.value), per_degree * mean.error_bound)
-        return PadAnswer(face, index, pad.name, flow, mean)
-
-    def _level(self, number: int) -> Bounded:
-        """Level of a held spot."""
-        level = self._base.spots[number].level
-        if level is not None:
-            return Bounded(level, 0.0)
-        rounding = time_error.step_error(STEP) * self.span
-        return self._ladder.limit([Bounded(float(refined.levels[number]), rounding) for refined in self._here.refined])
+        return pad_answers(self._levels)
 
     def field(
         self, grid: Grid, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
@@ -274,7 +189,7 @@ class MixedSolution(Solution):
             return replace(found, potential=found.potential.ravel(), flux=flux, flux_bound=bound)
 
         with on_behalf_of(keep_going):
-            found = self._field(ask, points, tolerance)
+            found = field_of_panels(self._levels, ask, points, tolerance)
         return replace(
             found,
             potential=found.potential.reshape(grid.shape),
@@ -286,7 +201,7 @@ class MixedSolution(Solution):
         self, points: FloatArray, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
     ) -> Field:
         """Potential, and flux density if asked for, at points, shape (n, 3); see `field`."""
-        levels = None if with_flux else self._levels_at(points)
+        levels = None if with_flux else field_on_held_pads(self._levels, points)
         if levels is not None:
             return levels
 
@@ -294,180 +209,21 @@ class MixedSolution(Solution):
             return solution.field_at(points, tolerance=share, with_flux=with_flux, keep_going=keep_going)
 
         with on_behalf_of(keep_going):
-            return self._field(ask, points, tolerance)
-
-    def _levels_at(self, points: FloatArray) -> Field | None:
-        """The field at points all of which are on held pads: the levels of those; None where others are among them."""
-        check_inside(self.body, (points[:, 0], points[:, 1], points[:, 2]))
-        potential, bound, found = np.zeros(len(points)), 0.0, np.zeros(len(points), dtype=bool)
-        for number, spot in enumerate(self._base.spots):
-            on_it, _ = _places_on(self.body, spot, points)
-            if spot.is_held and on_it.any():
-                level = self._level(number)
-                potential[on_it], bound = level.value, max(bound, level.error_bound)
-                found |= on_it
-        return Field(potential, bound, None, None, 0) if found.all() else None
-
-    def _field(self, ask: Callable[[Solution, float], Field], points: FloatArray, tolerance: float) -> Field:
-        count, share = self.count, SHARE * tolerance
-        while True:
-            here = self._ladder.at(count)
-            if not here.refined:
-                return ask(here.solutions[0], tolerance)
-            levels = zip(here.solutions, here.refined, strict=True)
-            finest = here.refined[0]
-            found = _compared(
-                [
-                    self._on_spots(ask(solution, share), solution, refined, finest, points, share)
-                    for solution, refined in levels
-                ],
-                self._noise(finest, points),
-                self._unsettled(here),
-                here.span,
-            )
-            potential, bound = self._within_limits(found.potential, found.potential_bound)
-            found = replace(found, potential=potential, potential_bound=bound)
-            if found.potential_bound <= tolerance:
-                return found
-            finer = self._ladder.finer(count, _over(found.potential_bound, tolerance), ORDER_OF_FIELDS)
-            if finer is None:
-                raise AccuracyNotReached(tolerance, OFFERED * found.potential_bound)
-            count = finer
-
-    def _unsettled(self, here: Refinement) -> float:
-        """By what part the flows of the finest panels, and levels that are found, may still be off."""
-        flows = [
-            [Bounded(math.fsum(refined.flows[number]), 0.0) for refined in here.refined]
-            for number in range(len(self._base.spots))
-        ]
-        levels = [
-            [Bounded(float(refined.levels[number]), 0.0) for refined in here.refined]
-            for number, spot in enumerate(self._base.spots)
-            if spot.level is None
-        ]
-        size = math.fsum(abs(fine.value) for fine, _, _ in flows)
-        span = here.span
-        parts = [_over(self._distance_to_limit(values), size) for values in flows]
-        parts += [_over(self._distance_to_limit(values), span) for values in levels]
-        return max(parts)
-
-    def _distance_to_limit(self, values: Sequence[Bounded]) -> float:
-        limit = self._ladder.limit(values)
-        return abs(limit.value - values[0].value) + limit.error_bound
-
-    @property
-    def _limits(self) -> tuple[float, float] | None:
-        """Between what levels the potential is everywhere, by the maximum principle; None where that does not tell."""
-        if self._ladder.is_driven:
-            return None
-        given = [Bounded(level, 0.0) for level in self._ladder.given_levels]
-        levels = [*given, *(self._level(number) for number in range(len(self._base.spots)))]
-        low = min(level.value - level.error_bound for level in levels)
-        high = max(level.value + level.error_bound for level in levels)
-        return low, high
-
-    def _within_limits(self, potential: FloatArray, bound: float) -> tuple[FloatArray, float]:
-        """Potentials and their common bound, no farther from the truth than the levels between which that is."""
-        limits = self._limits
-        if limits is None:
-            return potential, bound
-        low, high = limits
-        inside = np.clip(potential, low, high)
-        return inside, min(bound, float(np.maximum(inside - low, high - inside).max()))
-
-    def _limited(self, known: Bounded) -> Bounded:
-        value, bound = self._within_limits(np.array([known.value]), known.error_bound)
-        return Bounded(float(value[0]), bound)
-
-    def _noise(self, refined: Refined, points: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """How far potential and flux may be off where panels are told apart, shape (n,) each."""
-        potential, flux = noise(self._base, refined, points)
-        for spot in self._base.spots:
-            if spot.is_held:
-                potential[_places_on(self.body, spot, points)[0]] = 0.0
-        return potential, flux
-
-    def _on_spots(
-        self,
-        answer: Field,
-        solution: Solution,
-        refined: Refined,
-        finest: Refined,
-        points: FloatArray,
-        tolerance: float,
-    ) -> Field:
-        """A field with what is known of spots: the level of held ones, and panels' own flux on borders of panels."""
-        for number, spot in enumerate(self._base.spots):
-            on_it, inside = _places_on(self.body, spot, points)
-            if spot.is_held:
-                answer.potential[on_it] = refined.levels[number]
-            if answer.flux is None or answer.flux_bound is None:
-                continue
-            between = np.flatnonzero(inside & np.isnan(answer.flux).any(axis=0))
-            if between.size:
-                # Between two panels the field of their densities has no finite flux, which the true one has.
-                grid, moved = finest.grids[number], points[between].copy()
-                for axis, edges in zip(axes_along(spot.face), (grid.first, grid.second), strict=True):
-                    panel = np.clip(np.searchsorted(edges, moved[:, axis], side="right") - 1, 0, edges.size - 2)
-                    on_edge = np.isin(moved[:, axis], edges)
-                    moved[on_edge, axis] = 0.5 * (edges[panel] + edges[panel + 1])[on_edge]
-                beside = solution.field_at(moved, tolerance=tolerance, with_flux=True)
-                answer.flux[:, between] = beside.flux
-                answer.flux_bound[between] = beside.flux_bound
-            if spot.is_held:
-                for axis in axes_along(spot.face):
-                    answer.flux[axis, inside] = 0.0
-        return answer
+            return field_of_panels(self._levels, ask, points, tolerance)
 
     def extremes(self, *, tolerance: float, keep_going: KeepGoing | None = None) -> Extremes:
         """The hottest and the coldest place of the closed body."""
         with on_behalf_of(keep_going):
             return Extremes(
-                self._extreme(1.0, tolerance, keep_going, "hottest"),
-                self._extreme(-1.0, tolerance, keep_going, "coldest"),
+                mixed_extremes.extreme(self._levels, 1.0, tolerance, keep_going),
+                mixed_extremes.extreme(self._levels, -1.0, tolerance, keep_going),
             )
-
-    def _extreme(self, sign: float, tolerance: float, keep_going: KeepGoing | None, which: str) -> Place:
-        held = [self._held_place(number) for number, spot in enumerate(self._base.spots) if spot.is_held]
-        on_face = extremes.extreme_held(self._base.body, sign)
-        best = max([*held, *([on_face] if on_face else [])], key=lambda place: sign * place.value, default=None)
-        films = [spot.level for spot in self._base.spots if not spot.is_held and spot.level is not None]
-        exceeds = best is not None and any(sign * ambient > sign * best.value for ambient in films)
-        if best is not None and not exceeds and not extremes.may_exceed(self._base.body, sign * best.value, sign):
-            return best
-        fine, middle = (
-            getattr(solution.extremes(tolerance=SHARE * tolerance, keep_going=keep_going), which)
-            for solution in self._here.solutions[:2]
-        )
-        error = fine.error_bound + middle.error_bound + abs(fine.value - middle.value)
-        if best is None or sign * fine.value > sign * best.value + error:
-            return replace(fine, error_bound=error)
-        # The two cannot be told apart, or the held one is the higher.
-        return replace(best, error_bound=best.error_bound + max(sign * (fine.value - best.value), 0.0) + error)
-
-    def _held_place(self, number: int) -> Place:
-        spot, level = self._base.spots[number], self._level(number)
-        place = [0.0, 0.0, 0.0]
-        first, second = axes_along(spot.face)
-        place[axis_of(spot.face)] = self.body.end_of(spot.face)
-        place[first] = 0.5 * (spot.where.p_low + spot.where.p_high)
-        place[second] = 0.5 * (spot.where.q_low + spot.where.q_high)
-        return Place((place[0], place[1], place[2]), level.value, level.error_bound, f"face {spot.face}")
 
     def peak(
         self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float, keep_going: KeepGoing | None = None
     ) -> Place:
         """The highest potential on a face or a rectangle of it."""
-        for number, spot in enumerate(self._base.spots):
-            if rectangle is not None and spot.face == face and spot.is_held and _lies_in(rectangle, spot.where):
-                return self._held_place(number)
-        fine, middle = (
-            solution.peak(face, rectangle, tolerance=SHARE * tolerance, keep_going=keep_going)
-            for solution in self._here.solutions[:2]
-        )
-        error = fine.error_bound + middle.error_bound + abs(fine.value - middle.value)
-        known = self._limited(Bounded(fine.value, error))
-        return replace(fine, value=known.value, error_bound=known.error_bound)
+        return mixed_extremes.peak(self._levels, face, rectangle, tolerance, keep_going)
 
     def means(self, face: Face, rectangles: Sequence[Rectangle], *, tolerance: float) -> list[Bounded]:
         """Means of the potential over rectangles of a face."""
@@ -492,15 +248,15 @@ class MixedSolution(Solution):
 
     def mean(self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float) -> Bounded:
         """Mean of the potential over a face or a rectangle of it, with finer panels where its bound asks for them."""
-        for number, spot in enumerate(self._base.spots):
-            if rectangle is not None and spot.face == face and spot.is_held and _lies_in(rectangle, spot.where):
-                return self._level(number)
-        count = self.count
+        levels, count = self._levels, self.count
+        number = levels.held_spot_around(face, rectangle)
+        if number is not None:
+            return levels.of(number)
         while True:
             solutions = self._ladder.at(count).solutions
             means = [solution.mean(face, rectangle, tolerance=tolerance) for solution in solutions]
-            found = self._limited(change_of(means))
-            finer = self._ladder.finer(count, _over(found.error_bound, tolerance), ORDER_OF_FIELDS)
+            found = levels.limited(change_of(means))
+            finer = self._ladder.finer(count, times_too_wide(found.error_bound, tolerance), ORDER_OF_FIELDS)
             if finer is None:
                 return found
             count = finer
@@ -580,57 +336,6 @@ class MixedSolution(Solution):
         )
 
 
-def _over(bound: float, wanted: float) -> float:
-    """How many times too wide a bound is."""
-    return bound / wanted if wanted > 0.0 else math.inf if bound > 0.0 else 0.0
-
-
 def _together(estimates: Iterable[Estimate]) -> Estimate:
     kept = list(estimates)
     return Estimate(sum(some.multiplications for some in kept), max(some.bytes for some in kept))
-
-
-def _places_on(body: Body, spot: Spot, points: FloatArray) -> tuple[NDArray[np.bool_], NDArray[np.bool_]]:
-    """Which points are on a spot, and which of them are not on its border, or where that is the border of the body."""
-    first, second = axes_along(spot.face)
-    on_face = points[:, axis_of(spot.face)] == body.end_of(spot.face)
-    on_it, inside = on_face.copy(), on_face.copy()
-    ends = ((spot.where.p_low, spot.where.p_high), (spot.where.q_low, spot.where.q_high))
-    for axis, (low, high) in zip((first, second), ends, strict=True):
-        place = points[:, axis]
-        on_it &= (place >= low) & (place <= high)
-        inside &= ((place > low) | (place == body.begins[axis])) & ((place < high) | (place == body.size[axis]))
-    return on_it, inside & on_it
-
-
-def _lies_in(rectangle: Rectangle, other: Rectangle) -> bool:
-    return (
-        other.p_low <= rectangle.p_low
-        and rectangle.p_high <= other.p_high
-        and other.q_low <= rectangle.q_low
-        and rectangle.q_high <= other.q_high
-    )
-
-
-def _compared(
-    fields: Sequence[Field], noise_of_panels: tuple[FloatArray, FloatArray], unsettled: float, span: float
-) -> Field:
-    """The field of the finest panels, with what it may still be off by in its bounds.
-
-    unsettled: by what part flows may be off. Well off the pads a field is off by some such part, whatever its changes
-    at a place come to by chance.
-    """
-    fine, middle, coarse = fields
-    left = left_over(np.abs(fine.potential - middle.potential), np.abs(middle.potential - coarse.potential))
-    at_places = np.where(fine.potential == middle.potential, left, np.maximum(left, 0.5 * unsettled * span))
-    bound = float((at_places + noise_of_panels[0]).max()) + fine.potential_bound + middle.potential_bound
-    if fine.flux is None or middle.flux is None or coarse.flux is None:
-        return replace(fine, potential_bound=bound)
-    assert fine.flux_bound is not None
-    assert middle.flux_bound is not None
-    last, before = np.abs(fine.flux - middle.flux), np.abs(middle.flux - coarse.flux)
-    flux_left = left_over(np.nan_to_num(last), np.nan_to_num(before)).max(axis=0)
-    flux_left = np.maximum(flux_left, 2.0 * unsettled * np.nan_to_num(np.abs(fine.flux)).max(axis=0))
-    flux_left *= FLUX_SAFETY
-    flux_left += noise_of_panels[1] + fine.flux_bound + middle.flux_bound
-    return replace(fine, potential_bound=bound, flux_bound=flux_left)

@@ -1,8 +1,7 @@
-"""A mixed body at refinements from coarse to fine, and what their differences tell of the error.
+"""A mixed body at refinements from coarse to fine, each computed when it is first asked for.
 
-Each refinement is n panels along each axis of a spot, with n / 2 and n / 4 nested in it. Totals are stationary in the
-density, so that they err by a n^(-3) + b n^(-4) on held pads and by a n^(-2) + b n^(-3) behind films alone; these terms
-are removed (Richardson). The error left over is smaller than the last step of that; the bound is SAFETY such steps.
+Each refinement is n panels along each axis of a spot, with n / 2 and n / 4 nested in it; see `panel_error` for what
+the three of them tell.
 """
 
 from __future__ import annotations
@@ -30,6 +29,7 @@ from service.core.mixed_panels import (
     system_of,
     with_flows,
 )
+from service.core.panel_error import extrapolated
 from service.core.problem import Body
 from service.core.solution import Solution
 from service.core.span import rises, span_of
@@ -45,6 +45,12 @@ COUNTS = (8, 12, 16, 24, 32, 48, 64)
 # Refinements looked at together: all panels, half and a quarter as many along each axis.
 LEVELS = 3
 
+# Most panels of all pads together: a matrix of 128 MiB, factorised in about a second.
+MOST_PANELS = 4096
+
+# A field is asked of each refinement with this part of the tolerance.
+SHARE = 0.1
+
 # Panels that grow with the power GRADING of their number are about as wide as they are far from the border, at a
 # distance r of a length L from it, with RESOLVING (L / r)^RESOLVING_POWER panels. Fewer do not see what is at r, and
 # their changes tell nothing of the error. Two held pads of a length 0.8 with gaps of 0.03 to 0.0001 set the number.
@@ -52,25 +58,6 @@ RESOLVING, RESOLVING_POWER = 8.0, 0.2
 
 # Where more panels than allowed would see all, bounds are widened by the ratio with this power.
 UNRESOLVED_POWER = 3.0
-
-# Steps of the extrapolation that its error is told as. With four it would just cover a total that errs by n^(-2) where
-# n^(-3) and n^(-4) were removed.
-SAFETY = 6.0
-
-# The error is not told as less than this part of the first extrapolation, so that a step that vanishes by chance does
-# not count; nor as less than what changes would come to that go on to fall at their pace, or at the slowest. Below this
-# part of the final pace it may still become slower, and counts with this power.
-LEAST_STEP, PACE_SAFETY, SLOWEST_PACE = 0.2, 1.5, 1.25
-
-# The same where there are films alone, whose changes are seen to fall by 3.2 where the extrapolation takes 4.
-LEAST_STEP_OF_FILMS = 0.6
-RESOLVED_PACE, UNRESOLVED_PACE = 0.75, 0.75
-
-# Local values gain between one order, on a pad and beside its border, and three. What is left is told from the pace of
-# their changes, and is no more than the last; a change that vanishes by chance counts as that of three orders.
-FASTEST_PACE, CHANGE_SAFETY = 8.0, 2.5
-
-TINY = 1e-300
 
 # Part of the span to which the mean over a spot is integrated that a level is counted from.
 LEVEL_ACCURACY = 1e-12
@@ -264,37 +251,3 @@ def _detail(body: Body, base: Base, spot: Spot) -> float:
     near.append(depth)
     positive = [distance for distance in near if 0.0 < distance < math.inf]
     return max(max(size) / min(positive), 1.0) if positive else 1.0
-
-
-def extrapolated(values: Sequence[Bounded], *, held: bool) -> Bounded:
-    """The limit of a total at three refinements, the finest first, each with half as many panels as the one before."""
-    order = 3 if held else 2
-    fine, middle, coarse = (value.value for value in values)
-    once = fine + (fine - middle) / (2.0**order - 1)
-    before = middle + (middle - coarse) / (2.0**order - 1)
-    twice = once + (once - before) / (2.0 ** (order + 1) - 1)
-    change = fine - middle
-    if change == 0.0:
-        return Bounded(twice, SAFETY * abs(twice - once) + 2 * max(value.error_bound for value in values))
-    # As if the changes went on to fall as they do, or more slowly while panels do not resolve a narrow gap yet.
-    pace = max(abs((middle - coarse) / change), SLOWEST_PACE)
-    if pace < RESOLVED_PACE * 2.0**order:
-        pace **= UNRESOLVED_PACE
-    further = fine + change / (pace - 1)
-    least = LEAST_STEP if held else LEAST_STEP_OF_FILMS
-    error = max(SAFETY * abs(twice - once), least * abs(once - fine), PACE_SAFETY * abs(further - twice))
-    return Bounded(twice, error + 2 * max(value.error_bound for value in values))
-
-
-def left_over(last: FloatArray, before: FloatArray) -> FloatArray:
-    """What local values may still be off by after a last change and the one before it, both >= 0."""
-    # Changes fall by 2 to 8 from one to the next, from places on a pad's border to those well off it.
-    pace = np.clip(before / np.maximum(last, TINY), SLOWEST_PACE, FASTEST_PACE)
-    return np.asarray(np.maximum(last, before / FASTEST_PACE) * np.minimum(1.0, CHANGE_SAFETY / (pace - 1.0)))
-
-
-def change_of(values: Sequence[Bounded]) -> Bounded:
-    """The first of the values at three refinements, with what it may still be off by."""
-    fine, middle, coarse = values
-    left = left_over(np.abs(fine.value - middle.value), np.abs(middle.value - coarse.value))
-    return Bounded(fine.value, float(left) + fine.error_bound + middle.error_bound)

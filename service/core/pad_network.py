@@ -18,10 +18,11 @@ from service.core import time_error
 from service.core.errors import NoSteadyState, NotPhysical
 from service.core.faces import Face
 from service.core.field import KeepGoing
-from service.core.mixed import LEAST_OF_WORST, MOST_PANELS, ORDER_OF_TOTALS
 from service.core.mixed_base import Base, base_of, check_apart, pads_of
+from service.core.mixed_pads import LEAST_OF_WORST
 from service.core.mixed_panels import System, needs_balance, system_of, without_digits
-from service.core.mixed_refinement import LEVELS, Ladder
+from service.core.mixed_refinement import LEVELS, MOST_PANELS, Ladder
+from service.core.panel_error import ORDER_OF_TOTALS
 from service.core.panels import STEP
 from service.core.problem import Body
 from service.core.stopping import on_behalf_of

@@ -32,8 +32,9 @@ from service.core import (
 from service.core.conditions import FilmPad, FluxPad, HeldPad, Mixed
 from service.core.formula import read
 from service.core.formula_map import of_formula
-from service.core.mixed import MixedSolution, PadAnswer, solve_mixed
+from service.core.mixed import MixedSolution, solve_mixed
 from service.core.mixed_base import base_of
+from service.core.mixed_pads import PadAnswer
 from service.core.mixed_panels import system_of
 from service.core.mixed_refinement import Ladder
 from service.core.pad_network import pad_network
