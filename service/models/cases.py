@@ -54,7 +54,7 @@ class CsvOfCases(Model):
     table: Literal["csv"] = Field(description="Which kind of table this is.")
     csv: str = Field(
         max_length=LONGEST_TABLE,
-        description="The first row holds names of numbers, all of them in any order; each further row is a case of bare "
+        description="The first row holds the names of all numbers in any order; each further row is a case of bare "
         "numbers in their units. Separated by commas, semicolons or tabs; a decimal comma is read when it does not "
         "separate.",
         examples=["film,width\n850,40\n900,42\n"],
@@ -79,8 +79,8 @@ class DesignOfCases(Model):
 
     table: Literal["design"] = Field(description="Which kind of table this is.")
     method: Literal["latin_hypercube", "sobol", "random"] = Field(
-        description="How the ranges are filled: `latin_hypercube` has one sample in each of so many equal parts of each "
-        "range; `sobol` is a scrambled sequence, most even for a power of two; `random` is even chance.",
+        description="How the ranges are filled: `latin_hypercube` has one sample in each of so many equal parts of "
+        "each range; `sobol` is a scrambled sequence, most even for a power of two; `random` is even chance.",
         examples=["latin_hypercube"],
     )
     count: int = Field(ge=1, le=MOST_CASES, description="How many cases.", examples=[200])

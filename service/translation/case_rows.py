@@ -27,7 +27,7 @@ MOST_FAULTS = 20
 def read_cases(
     collector: Collector, table: models.CaseTable, numbers: Sequence[NumberInfo], settings: Settings
 ) -> FloatArray:
-    """The cases, shape (n_cases, n_numbers). Notes what is at fault. Raises TooCostly for more than a study may have."""
+    """The cases, shape (n_cases, n_numbers). Notes what is at fault. Raises TooCostly for more than a study takes."""
     path: Path = ("cases",)
     if isinstance(table, models.ListOfCases):
         _check_count(len(table.rows), settings)

@@ -12,9 +12,11 @@ import httpx
 import pytest
 
 from service.models.base import Model
+from service.models.cases_answer import CasesAnswer
 from service.models.convergence_answer import ConvergenceAnswer
 from service.models.fields_answer import FieldsAnswer
 from service.models.flux_totals_answer import FluxTotalsAnswer
+from service.models.limits_answer import LimitsAnswer
 from service.models.operation import ProblemAnswer
 from service.models.pads_answer import PadsAnswer
 from service.models.reach_answer import ReachAnswer
@@ -33,6 +35,8 @@ MODELS: dict[str, type[Model]] = {
     "/v1/pads": PadsAnswer,
     "/v1/resistances": ResistancesAnswer,
     "/v1/reach": ReachAnswer,
+    "/v1/limits": LimitsAnswer,
+    "/v1/cases": CasesAnswer,
 }
 
 BOUND = "error_bound"

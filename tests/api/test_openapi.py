@@ -18,6 +18,8 @@ CALLS = {
     ("post", "/v1/pads"),
     ("post", "/v1/resistances"),
     ("post", "/v1/reach"),
+    ("post", "/v1/limits"),
+    ("post", "/v1/cases"),
     ("get", "/v1/diagnostics"),
     ("get", "/health/live"),
     ("get", "/health/ready"),
