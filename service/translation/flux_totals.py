@@ -8,7 +8,8 @@ from typing import Any
 from service import cost
 from service.core import Balance, Solution, Total
 from service.core.faces import AXES, Face, axes_along
-from service.core.mixed import MixedSolution, PadAnswer
+from service.core.mixed import MixedSolution
+from service.core.mixed_pads import PadAnswer
 from service.models import evaluate as models
 from service.settings import Settings
 from service.translation import answers

@@ -7,7 +7,8 @@ from collections.abc import Mapping
 
 from service.core import Solution
 from service.core.faces import Face
-from service.core.mixed import MixedSolution, PadAnswer
+from service.core.mixed import MixedSolution
+from service.core.mixed_pads import PadAnswer
 from service.translation.places import FacePart
 from service.units import Kind, UnitSystem
 
