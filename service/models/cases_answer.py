@@ -42,6 +42,10 @@ class LimitColumn(Model):
         description="By how much it holds in each case, negative where it does not; null where there is no result.",
         examples=[[5.8, 6.1]],
     )
+    error_bounds: list[float | None] = Field(
+        description="The margin is no further off than this; null where there is none or no finite bound.",
+        examples=[[4e-8, 4e-8]],
+    )
     held: list[HeldWord | None] = Field(
         description="Whether it holds for certain in each case; null where there is no result.",
         examples=[["yes", "yes"]],

@@ -50,6 +50,7 @@ def read_table(question: models.CasesQuestion, prepared: Prepared) -> Analysis:
                 {
                     **limit_shown(asked, limit, prepared),
                     "margins": margin[:, index],
+                    "error_bounds": bound[:, index],
                     "held": held[:, index].tolist(),
                 }
                 for index, (asked, limit) in enumerate(zip(question.limits, limits, strict=True))
