@@ -2,6 +2,7 @@
 
 from service.core.caches import CacheReport, cache_report
 from service.core.certificate import Certificate
+from service.core.climbing import Place
 from service.core.conditions import Condition, Film, FilmPad, FluxPad, Held, HeldPad, Inflow, Insulated, Mixed
 from service.core.convergence import Convergence, NodeStep, Overshoot, SeriesStep
 from service.core.errors import (
@@ -15,7 +16,7 @@ from service.core.errors import (
     TooManyPanels,
 )
 from service.core.estimate import Estimate
-from service.core.extremes import Extremes, Place
+from service.core.extremes import Extremes
 from service.core.faces import AXES, FACES, Face
 from service.core.fed_pads import Pad
 from service.core.field import Field, Grid

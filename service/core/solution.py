@@ -7,17 +7,19 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import certificate, convergence, estimate, extremes, extremes_within, totals
+from service.core import certificate, convergence, estimate, extremes, totals
 from service.core import field as fields
 from service.core.certificate import Certificate
+from service.core.climbing import Place
 from service.core.convergence import Convergence, Overshoot
 from service.core.estimate import Estimate
-from service.core.extremes import Extremes, Place
+from service.core.extremes import Extremes
 from service.core.faces import Face, axis_of
 from service.core.field import Field, Grid, KeepGoing, Setting
 from service.core.maps import Rectangle
 from service.core.problem import Body
 from service.core.reach import Reach, reach
+from service.core.region import Region
 from service.core.solvability import check_steady_state, level_is_pinned
 from service.core.span import span_of
 from service.core.split import level_of_mean, lines_of, parts_of, reference_level
@@ -105,13 +107,15 @@ class Solution:
         self, low: Sequence[float], high: Sequence[float], *, tolerance: float, keep_going: KeepGoing | None = None
     ) -> Place:
         """The highest potential in a closed box with these corners (x, y, z)."""
-        return extremes_within.highest(self._setting, low, high, tolerance, keep_going)
+        region = Region.between(self.body, low, high)
+        return extremes.extreme_within(self._setting, region, 1.0, tolerance, keep_going)
 
     def lowest_within(
         self, low: Sequence[float], high: Sequence[float], *, tolerance: float, keep_going: KeepGoing | None = None
     ) -> Place:
         """The lowest potential in a closed box with these corners (x, y, z)."""
-        return extremes_within.highest(self._setting, low, high, tolerance, keep_going, -1.0)
+        region = Region.between(self.body, low, high)
+        return extremes.extreme_within(self._setting, region, -1.0, tolerance, keep_going)
 
     def reach(
         self,

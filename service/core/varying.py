@@ -17,19 +17,22 @@ from numpy.typing import NDArray
 from service.core import certificate, convergence, estimate, extremes, totals, varying_mean
 from service.core import field as fields
 from service.core.certificate import Certificate
+from service.core.climbing import Place
 from service.core.conditions import Film, Held, Inflow, Insulated, map_of
 from service.core.convergence import Convergence, NodeStep, Overshoot, SeriesStep
 from service.core.errors import AccuracyNotReached, NotPhysical, OutsideLaw
 from service.core.estimate import Estimate
-from service.core.extremes import Extremes, Place
+from service.core.extremes import Extremes
 from service.core.faces import Face, axes_along, axis_of, is_high
 from service.core.field import Field, Grid, KeepGoing, Setting
-from service.core.film_iteration import Iterated, below_absolute_zero, first_faces, iterate
+from service.core.film_faces import first_faces
+from service.core.film_iteration import Iterated, below_absolute_zero, iterate
 from service.core.flow_error import FlowError
 from service.core.kirchhoff import Transformed, transform
 from service.core.laws import LARGEST_FACTOR, SMALLEST_FACTOR, ConductivityLaw, Kirchhoff
 from service.core.maps import Rectangle
 from service.core.problem import Body
+from service.core.region import Region
 from service.core.solution import Solution
 from service.core.solvability import check_steady_state, generation, level_is_pinned, map_integral
 from service.core.totals import Balance, Bounded, Total
@@ -163,6 +166,28 @@ class VaryingSolution(Solution):
         with _In(self, tolerance, FIELD):
             theta = FIELD * self._in_theta(tolerance)
             found = extremes.highest_on(iterated.setting, face, where, theta, keep_going)
+        return self._place(found, iterated)
+
+    def highest_within(
+        self, low: Sequence[float], high: Sequence[float], *, tolerance: float, keep_going: KeepGoing | None = None
+    ) -> Place:
+        """The highest potential in a closed box with these corners (x, y, z)."""
+        return self._extreme_within(low, high, 1.0, tolerance, keep_going)
+
+    def lowest_within(
+        self, low: Sequence[float], high: Sequence[float], *, tolerance: float, keep_going: KeepGoing | None = None
+    ) -> Place:
+        """The lowest potential in a closed box with these corners (x, y, z)."""
+        return self._extreme_within(low, high, -1.0, tolerance, keep_going)
+
+    def _extreme_within(
+        self, low: Sequence[float], high: Sequence[float], sign: float, tolerance: float, keep_going: KeepGoing | None
+    ) -> Place:
+        region = Region.between(self._body, low, high)
+        iterated = self._within(tolerance, keep_going)
+        with _In(self, tolerance, FIELD):
+            theta = FIELD * self._in_theta(tolerance)
+            found = extremes.extreme_within(iterated.setting, region, sign, theta, keep_going)
         return self._place(found, iterated)
 
     def means(self, face: Face, rectangles: Sequence[Rectangle], *, tolerance: float) -> list[Bounded]:

@@ -1,0 +1,149 @@
+"""Where a search for the highest or lowest potential in a region looks first.
+
+On a grid that follows the data of the body, on the faces whose data do not show on it, and in boxes of generation. What
+is highest in a part of the body without generation is on the border of that part (maximum principle), so where the grid
+leaves out places that data show at, the border is looked at more closely.
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+
+from service.core import field
+from service.core.climbing import FIRST_ACCURACY, STARTS, Start
+from service.core.conditions import Held, map_of
+from service.core.endless import neighbourhood
+from service.core.faces import axes_along, axis_of
+from service.core.field import Setting
+from service.core.region import Region
+from service.core.time_range import widest
+
+FloatArray = NDArray[np.float64]
+
+# Places along an axis of the first grid through a region at the most.
+FIRST_PLACES = 25
+
+# Places along an axis of a grid on a face or the border of a region at the most; beyond it only the readings of a face
+# or the middles of its cells are looked at.
+MOST_FACE_PLACES = 100
+
+# Places along each side of a region that is a part of the body, in parts of it, closer at its ends.
+PLACES_WITHIN = 0.5 - 0.5 * np.cos(np.linspace(0.0, math.pi, 9))
+
+# Places far along an endless axis, in parts of the width of the body or its data.
+BEYOND = np.geomspace(0.02, 20.0, 11)
+
+
+def first_grids(setting: Setting, region: Region) -> list[list[FloatArray]]:
+    """The axes of each first grid of a region."""
+    body = setting.body
+    everywhere = [places_along(setting, region, axis) for axis in range(3)]
+    through = [thinned(places) for places in everywhere]
+    has_all = all(some.size == places.size for some, places in zip(through, everywhere, strict=True))
+    grids = [through]
+    for face, condition in body.faces.items():
+        face_map, axis = map_of(condition), axis_of(face)
+        if face_map is None or isinstance(condition, Held) or face_map.is_uniform:
+            continue
+        is_that_face = region.along(axis) == (body.end_of(face), body.end_of(face))
+        if region.touches(axis, body.end_of(face)) and not (is_that_face and has_all):
+            axes = [np.array([body.end_of(face)])] * 3
+            for other, knots in zip(axes_along(face), (face_map.first_knots, face_map.second_knots), strict=True):
+                axes[other] = _data_places(everywhere[other], knots, face_map.bilinear)
+            grids.append(axes)
+    return grids if has_all else grids + _on_border(setting, region, everywhere)
+
+
+def _on_border(setting: Setting, region: Region, everywhere: list[FloatArray]) -> list[list[FloatArray]]:
+    """Grids on the sides of a region that are not faces of the body, and on a region that is flat."""
+    grids = []
+    for axis in range(3):
+        ends = set(region.along(axis))
+        for end in ends:
+            if math.isfinite(end) and (len(ends) == 1 or setting.body.face_at(axis, end) is None):
+                axes = [thinned(places, MOST_FACE_PLACES) for places in everywhere]
+                axes[axis] = np.array([end])
+                grids.append(axes)
+    return grids
+
+
+def _data_places(places: FloatArray, knots: FloatArray, bilinear: bool) -> FloatArray:
+    """Where a face's data show along an axis: everything if that is little, else its readings or its cells' middles."""
+    if places.size <= MOST_FACE_PLACES:
+        return places
+    knots = knots[np.isfinite(knots)]
+    shown = knots if bilinear else 0.5 * (knots[1:] + knots[:-1])
+    inside = (shown > places[0]) & (shown < places[-1])
+    return np.unique(np.concatenate([places[[0, -1]], shown[inside]]))
+
+
+def places_along(setting: Setting, region: Region, axis: int) -> FloatArray:
+    """Places of a region along an axis: its ends, where data begin, end or have their middle, and a spread."""
+    low, high = region.along(axis)
+    if low == high:
+        return np.array([low])
+    places = [_spread(setting, region, axis)]
+    if axis == 2:
+        # Behind a contact the potential steps.
+        interfaces = np.array(setting.body.interfaces)
+        places += [interfaces, np.nextafter(interfaces, math.inf)]
+    for part in setting.parts:
+        knots = part.knots(axis)
+        knots = knots[np.isfinite(knots)]
+        places += [knots, 0.5 * (knots[1:] + knots[:-1])]
+    unique = np.unique(np.concatenate(places))
+    return unique[(unique >= low) & (unique <= high)]
+
+
+def _spread(setting: Setting, region: Region, axis: int) -> FloatArray:
+    """Places all along: even through the body, closer at the ends of a part of it, widening along an endless axis."""
+    low, high = region.along(axis)
+    line = setting.lines[axis]
+    if math.isfinite(low) and math.isfinite(high):
+        if region.is_whole(setting.body, axis):
+            return line.length * np.linspace(0.0, 1.0, 11)
+        return np.append(low + (high - low) * PLACES_WITHIN[:-1], high)
+    beyond = widest(setting.lines) / line.scale * BEYOND
+    if math.isfinite(low):
+        return np.concatenate([[low], low + beyond])
+    if math.isfinite(high):
+        return np.concatenate([high - beyond, [high]])
+    return np.concatenate([line.data[0] - beyond, line.data, line.data[1] + beyond])
+
+
+def thinned(places: FloatArray, most: int = FIRST_PLACES) -> FloatArray:
+    """Places evenly chosen from those that are too many."""
+    if places.size <= most:
+        return places
+    return places[np.unique(np.linspace(0, places.size - 1, most).round().astype(int))]
+
+
+def from_boxes(setting: Setting, region: Region, sign: float) -> list[Start]:
+    """The middles of the boxes of generation as far as they are in a region, with half their size to climb in."""
+    boxes = [box for box in setting.body.generating if sign * box.density > 0]
+    if not boxes:
+        return []
+    ends = np.array([neighbourhood(setting.lines, axis) for axis in range(3)]).T
+    bottom, top = (np.clip(corner, *ends) for corner in (region.low, region.high))
+    low, high = (np.clip([getattr(box, end) for box in boxes], *ends) for end in ("low", "high"))
+    reached = ((low <= top) & (high >= bottom)).all(axis=1)
+    low, high = np.maximum(low, bottom)[reached], np.minimum(high, top)[reached]
+    if not len(low):
+        return []
+    middles, halves = 0.5 * (low + high), 0.5 * (high - low)
+    rough = field.at_points(setting, middles, tolerance=FIRST_ACCURACY * setting.span, with_flux=False)
+    limits = tuple(zip(region.low, region.high, strict=True))
+    order = np.argsort(-sign * rough.potential, kind="stable")[:STARTS]
+    return [
+        Start(
+            (float(middles[i, 0]), float(middles[i, 1]), float(middles[i, 2])),
+            float(sign * rough.potential[i]),
+            setting.span,
+            (float(halves[i, 0]), float(halves[i, 1]), float(halves[i, 2])),
+            limits,
+        )
+        for i in order
+    ]

@@ -1,0 +1,56 @@
+"""A closed box of the body: a layer, a rectangle of a face, a part of the inside, or all of it."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from service.core.errors import OutsideBody
+from service.core.faces import AXES
+from service.core.problem import Body
+
+Corner = tuple[float, float, float]
+
+
+@dataclass(frozen=True)
+class Region:
+    """Opposite corners of it, infinite where it goes on along an endless axis; alike along an axis it is flat along."""
+
+    low: Corner
+    high: Corner
+
+    @classmethod
+    def whole(cls, body: Body) -> Region:
+        """The closed body."""
+        return cls(body.begins, body.size)
+
+    @classmethod
+    def between(cls, body: Body, low: Sequence[float], high: Sequence[float]) -> Region:
+        """The box between two corners. One that begins on an interface, and is not flat, begins above it.
+
+        Raises OutsideBody for one that is not in the body.
+        """
+        for axis, (begin, end) in enumerate(zip(low, high, strict=True)):
+            if not body.begins[axis] <= begin <= end <= body.size[axis] or (begin == end and math.isinf(begin)):
+                raise OutsideBody(
+                    f"The box reaches from {begin:g} to {end:g} along {AXES[axis]}; it has to lie between "
+                    f"{body.begins[axis]:g} and {body.size[axis]:g}.",
+                    ("box", AXES[axis]),
+                )
+        bottom = low[2]
+        if bottom < high[2] and bottom in body.interfaces:
+            bottom = math.nextafter(bottom, math.inf)
+        return cls((low[0], low[1], bottom), (high[0], high[1], high[2]))
+
+    def along(self, axis: int) -> tuple[float, float]:
+        """From where to where it reaches along an axis."""
+        return self.low[axis], self.high[axis]
+
+    def touches(self, axis: int, place: float) -> bool:
+        """Whether a plane square to an axis has a part of it."""
+        return self.low[axis] <= place <= self.high[axis]
+
+    def is_whole(self, body: Body, axis: int) -> bool:
+        """Whether it reaches from end to end of the body along an axis."""
+        return self.along(axis) == (body.begins[axis], body.size[axis])
