@@ -11,7 +11,7 @@ import math
 from service.core.conditions import Film, Held, map_of
 from service.core.estimate import IN_PRODUCT, Estimate
 from service.core.faces import axes_along
-from service.core.film_iteration import FIRST_PIECES
+from service.core.film_faces import FIRST_PIECES
 from service.core.kirchhoff import MOST_PIECES, RADIATED, READ_OFF, STRAIGHT_PIECES, exact_degree, kirchhoff_of
 from service.core.maps import FaceMap
 from service.core.problem import Body
