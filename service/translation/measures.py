@@ -56,6 +56,8 @@ _KINDS = {
     "inflow": Kind.FLUX,
     "value": Kind.POTENTIAL,
 }
+# Parts of a problem that hold numbers.
+_PHYSICAL = {"body", "faces", "sources"}
 _PLAIN_KEYS = {"emissivity", "fraction", "factor"}
 _COORDINATES = {"x", "y", "z"}
 # Data of a map, which measure what the face's datum does.
@@ -75,6 +77,8 @@ def measure_at(path: Path, units: UnitSystem) -> Measure | None:
     """
     keys = [part for part in path if isinstance(part, str)]
     last = keys[-1]
+    if keys[0] == "problem" and (len(keys) < 2 or keys[1] not in _PHYSICAL):
+        return None
     if last in _COORDINATES:
         return measure_of_kind(Kind.CONDUCTIVITY if "conductivity" in keys else Kind.LENGTH, units)
     if last in _PLAIN_KEYS:
