@@ -69,7 +69,7 @@ async def test_what_the_usual_accuracy_leaves_open_is_looked_at_more_closely(cli
 async def test_results_of_every_kind_can_be_limited(client: httpx.AsyncClient) -> None:
     area, k, length = 40e-3 * 60e-3, 130, 25e-3
     flux = k * 60 / length
-    results = [
+    results: list[Json] = [
         {"name": "hot", "result": "mean", "face": "z_high"},
         {"name": "cold", "result": "lowest"},
         {"name": "drop", "result": "difference", "of": "hot", "less": "cold"},
