@@ -48,8 +48,7 @@ def first_grids(setting: Setting, region: Region) -> list[list[FloatArray]]:
         face_map, axis = map_of(condition), axis_of(face)
         if face_map is None or isinstance(condition, Held) or face_map.is_uniform:
             continue
-        is_that_face = region.along(axis) == (body.end_of(face), body.end_of(face))
-        if region.touches(axis, body.end_of(face)) and not (is_that_face and has_all):
+        if region.touches(axis, body.end_of(face)) and not (has_all and region.lies_on(body, face)):
             axes = [np.array([body.end_of(face)])] * 3
             for other, knots in zip(axes_along(face), (face_map.first_knots, face_map.second_knots), strict=True):
                 axes[other] = _data_places(everywhere[other], knots, face_map.bilinear)

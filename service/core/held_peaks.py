@@ -71,13 +71,9 @@ def extreme_held_within(body: Body, region: Region, sign: float) -> Place | None
     return Place(found, peak.value, peak.slack, name_of_place(body, found))
 
 
-def held_face_of(body: Body, region: Region) -> Face | None:
-    """The held face that all of a region lies on, if there is one."""
-    for face in body.present_faces:
-        end = body.end_of(face)
-        if isinstance(body.faces[face], Held) and region.along(axis_of(face)) == (end, end):
-            return face
-    return None
+def is_held_everywhere(body: Body, region: Region) -> bool:
+    """Whether all of a region lies on a held face."""
+    return any(isinstance(body.faces[face], Held) and region.lies_on(body, face) for face in body.present_faces)
 
 
 def _peak_of(face_map: FaceMap, lengths: Sequence[float], sign: float) -> Peak:

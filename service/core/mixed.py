@@ -14,12 +14,13 @@ from numpy.typing import NDArray
 
 from service.core import mixed_extremes
 from service.core.certificate import Certificate
+from service.core.climbing import Place
 from service.core.conditions import HeldPad, map_of
 from service.core.convergence import Convergence, Overshoot
 from service.core.errors import NoSteadyState, NotPhysical
 from service.core.estimate import Estimate
-from service.core.extremes import Extremes, Place
-from service.core.faces import Face
+from service.core.extremes import Extremes
+from service.core.faces import Face, axis_of
 from service.core.field import Field, Grid, KeepGoing, Setting
 from service.core.maps import Rectangle
 from service.core.mixed_base import Base, base_of, pads_of
@@ -30,10 +31,11 @@ from service.core.mixed_panels import given_total, needs_balance
 from service.core.mixed_refinement import LEVELS, MOST_PANELS, SHARE, Ladder, Refinement
 from service.core.panel_error import ORDER_OF_FIELDS, ORDER_OF_TOTALS, change_of, times_too_wide
 from service.core.problem import Body
+from service.core.region import Region
 from service.core.solution import Solution
 from service.core.solvability import BALANCED, check_steady_state
 from service.core.stopping import on_behalf_of
-from service.core.totals import Balance, Bounded, Total
+from service.core.totals import Balance, Bounded, Total, checked_rectangle
 
 FloatArray = NDArray[np.float64]
 
@@ -213,17 +215,33 @@ class MixedSolution(Solution):
 
     def extremes(self, *, tolerance: float, keep_going: KeepGoing | None = None) -> Extremes:
         """The hottest and the coldest place of the closed body."""
-        with on_behalf_of(keep_going):
-            return Extremes(
-                mixed_extremes.extreme(self._levels, 1.0, tolerance, keep_going),
-                mixed_extremes.extreme(self._levels, -1.0, tolerance, keep_going),
-            )
+        region = Region.whole(self.body)
+        return Extremes(
+            self._extreme(region, 1.0, tolerance, keep_going), self._extreme(region, -1.0, tolerance, keep_going)
+        )
+
+    def highest_within(
+        self, low: Sequence[float], high: Sequence[float], *, tolerance: float, keep_going: KeepGoing | None = None
+    ) -> Place:
+        """The highest potential in a closed box with these corners (x, y, z)."""
+        return self._extreme(Region.between(self.body, low, high), 1.0, tolerance, keep_going)
+
+    def lowest_within(
+        self, low: Sequence[float], high: Sequence[float], *, tolerance: float, keep_going: KeepGoing | None = None
+    ) -> Place:
+        """The lowest potential in a closed box with these corners (x, y, z)."""
+        return self._extreme(Region.between(self.body, low, high), -1.0, tolerance, keep_going)
 
     def peak(
         self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float, keep_going: KeepGoing | None = None
     ) -> Place:
         """The highest potential on a face or a rectangle of it."""
-        return mixed_extremes.peak(self._levels, face, rectangle, tolerance, keep_going)
+        where = checked_rectangle(self.body, axis_of(face), rectangle)
+        return self._extreme(Region.on_face(self.body, face, where), 1.0, tolerance, keep_going)
+
+    def _extreme(self, region: Region, sign: float, tolerance: float, keep_going: KeepGoing | None) -> Place:
+        with on_behalf_of(keep_going):
+            return mixed_extremes.extreme(self._levels, region, sign, tolerance, keep_going)
 
     def means(self, face: Face, rectangles: Sequence[Rectangle], *, tolerance: float) -> list[Bounded]:
         """Means of the potential over rectangles of a face."""

@@ -7,7 +7,8 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from service.core.errors import OutsideBody
-from service.core.faces import AXES
+from service.core.faces import AXES, Face, axes_along, axis_of
+from service.core.maps import Rectangle
 from service.core.problem import Body
 
 Corner = tuple[float, float, float]
@@ -42,6 +43,23 @@ class Region:
         if bottom < high[2] and bottom in body.interfaces:
             bottom = math.nextafter(bottom, math.inf)
         return cls((low[0], low[1], bottom), (high[0], high[1], high[2]))
+
+    @classmethod
+    def on_face(cls, body: Body, face: Face, where: Rectangle) -> Region:
+        """A rectangle of a face."""
+        low, high = [body.end_of(face)] * 3, [body.end_of(face)] * 3
+        first, second = axes_along(face)
+        low[first], high[first], low[second], high[second] = where.p_low, where.p_high, where.q_low, where.q_high
+        return cls((low[0], low[1], low[2]), (high[0], high[1], high[2]))
+
+    def section(self, axis: int) -> Rectangle:
+        """Its section square to an axis."""
+        (p_low, p_high), (q_low, q_high) = (self.along(other) for other in axes_along(axis))
+        return Rectangle(p_low, p_high, q_low, q_high)
+
+    def lies_on(self, body: Body, face: Face) -> bool:
+        """Whether all of it is on a face."""
+        return self.along(axis_of(face)) == (body.end_of(face), body.end_of(face))
 
     def along(self, axis: int) -> tuple[float, float]:
         """From where to where it reaches along an axis."""

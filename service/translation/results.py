@@ -331,13 +331,20 @@ class _Evaluation:
         return self.tolerance
 
     def _extreme(self, asked: ExtremeIn) -> Bounded:
-        if asked.box is None:
+        if asked.box is None and self._wants_both:
             place = self._extremes.hottest if asked.sign > 0 else self._extremes.coldest
         else:
-            low, high = asked.box
+            low, high = asked.box or (self.body.begins, self.body.size)
             look = self.solution.highest_within if asked.sign > 0 else self.solution.lowest_within
             place = self._eased(lambda tolerance: look(low, high, tolerance=tolerance, keep_going=self.keep_going))
         return Bounded(float(place.value), float(place.error_bound))
+
+    @cached_property
+    def _wants_both(self) -> bool:
+        """Whether both extremes of the whole body are wanted, which share their first grids."""
+        return {-1.0, 1.0} <= {
+            asked.sign for asked in self.wanted.wanted if isinstance(asked, ExtremeIn) and asked.box is None
+        }
 
     @cached_property
     def _extremes(self) -> Extremes:
