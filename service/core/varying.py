@@ -14,29 +14,36 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import certificate, convergence, estimate, extremes, totals, varying_mean
+from service.core import certificate, convergence, estimate, extremes, totals, varying_mean, varying_totals
 from service.core import field as fields
 from service.core.certificate import Certificate
 from service.core.climbing import Place
-from service.core.conditions import Film, Held, Inflow, Insulated, map_of
-from service.core.convergence import Convergence, NodeStep, Overshoot, SeriesStep
-from service.core.errors import AccuracyNotReached, NotPhysical, OutsideLaw
+from service.core.conditions import Film, Held, map_of
+from service.core.convergence import Convergence, Overshoot
+from service.core.errors import AccuracyNotReached, NotPhysical
 from service.core.estimate import Estimate
 from service.core.extremes import Extremes
-from service.core.faces import Face, axes_along, axis_of, is_high
+from service.core.faces import Face, axis_of, is_high
 from service.core.field import Field, Grid, KeepGoing, Setting
 from service.core.film_faces import first_faces
-from service.core.film_iteration import Iterated, below_absolute_zero, iterate
-from service.core.flow_error import FlowError
-from service.core.kirchhoff import Transformed, transform
-from service.core.laws import LARGEST_FACTOR, SMALLEST_FACTOR, ConductivityLaw, Kirchhoff
+from service.core.film_iteration import Iterated, iterate
+from service.core.kirchhoff import transform
 from service.core.maps import Rectangle
 from service.core.problem import Body
 from service.core.region import Region
 from service.core.solution import Solution
-from service.core.solvability import check_steady_state, generation, level_is_pinned, map_integral
+from service.core.solvability import check_steady_state
 from service.core.totals import Balance, Bounded, Total
-from service.core.unbounded import UnboundedCause, unbounded_lines, unbounded_plane_lines
+from service.core.varying_answers import potential_convergence, potential_field, potential_place
+from service.core.varying_limits import (
+    absolute_zero,
+    check_above_absolute_zero,
+    check_data,
+    check_reached,
+    check_supported,
+    has_flows,
+    is_close,
+)
 
 FloatArray = NDArray[np.float64]
 
@@ -52,9 +59,6 @@ ITERATION, FIELD = 0.45, 0.45
 # An accuracy is offered in place of one that cannot be met with so much room that it will be met when asked for.
 OFFERED = 1.25
 
-# Rounding of theta's inverse, relative to the potential.
-STORED = 2e-15
-
 # The usual accuracy where a film face is iterated along which the potential varies by more than a part of its size, or
 # held data are off by more than that.
 USUAL_ITERATED, EVEN = 1e-4, 1e-9
@@ -67,7 +71,7 @@ class VaryingSolution(Solution):
     """A body with its field in theta, iterated further as accuracies are asked for."""
 
     def __init__(self, body: Body, keep_going: KeepGoing | None = None) -> None:
-        _check_supported(body)
+        check_supported(body)
         check_steady_state(body)
         self._body = body
         self._lock = threading.Lock()
@@ -131,7 +135,7 @@ class VaryingSolution(Solution):
                 keep_going=keep_going,
             )
         places = np.meshgrid(*grid.axes, indexing="ij", sparse=True)
-        return self._put_back(found, iterated, places)
+        return potential_field(self._data, iterated, found, places)
 
     def field_at(
         self, points: FloatArray, *, tolerance: float, with_flux: bool = False, keep_going: KeepGoing | None = None
@@ -148,14 +152,16 @@ class VaryingSolution(Solution):
                 with_flux=with_flux,
                 keep_going=keep_going,
             )
-        return self._put_back(found, iterated, places)
+        return potential_field(self._data, iterated, found, places)
 
     def extremes(self, *, tolerance: float, keep_going: KeepGoing | None = None) -> Extremes:
         """The hottest and the coldest place of the closed body: those of theta, which increases with the potential."""
         iterated = self._within(tolerance, keep_going)
         with _In(self, tolerance, FIELD):
             found = extremes.find(iterated.setting, FIELD * self._in_theta(tolerance), keep_going)
-        return Extremes(self._place(found.hottest, iterated), self._place(found.coldest, iterated))
+        return Extremes(
+            potential_place(self._data, iterated, found.hottest), potential_place(self._data, iterated, found.coldest)
+        )
 
     def peak(
         self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float, keep_going: KeepGoing | None = None
@@ -166,7 +172,7 @@ class VaryingSolution(Solution):
         with _In(self, tolerance, FIELD):
             theta = FIELD * self._in_theta(tolerance)
             found = extremes.highest_on(iterated.setting, face, where, theta, keep_going)
-        return self._place(found, iterated)
+        return potential_place(self._data, iterated, found)
 
     def highest_within(
         self, low: Sequence[float], high: Sequence[float], *, tolerance: float, keep_going: KeepGoing | None = None
@@ -188,7 +194,7 @@ class VaryingSolution(Solution):
         with _In(self, tolerance, FIELD):
             theta = FIELD * self._in_theta(tolerance)
             found = extremes.extreme_within(iterated.setting, region, sign, theta, keep_going)
-        return self._place(found, iterated)
+        return potential_place(self._data, iterated, found)
 
     def means(self, face: Face, rectangles: Sequence[Rectangle], *, tolerance: float) -> list[Bounded]:
         """Means of the potential over rectangles of a face."""
@@ -223,7 +229,7 @@ class VaryingSolution(Solution):
                 keep_going()
             with _In(self, tolerance, FIELD):
                 found = convergence.converge(iterated.setting, point, FIELD * self._in_theta(tolerance))
-            answers.append(self._converged(found, iterated))
+            answers.append(potential_convergence(self._data, iterated, found, self._least_factor))
         return answers
 
     def overshoot(self, terms: int) -> list[Overshoot]:
@@ -262,12 +268,7 @@ class VaryingSolution(Solution):
         iterated = self._within(tolerance, None)
         where = totals.checked_rectangle(self._body, axis_of(face), rectangle)
         theta = FIELD * self._in_theta(tolerance)
-        total = totals.face_total(iterated.setting, face, where, gap, theta)
-        if any(cause.kind == "endless" for cause in total.causes) and _fades(self._body, face):
-            # What the iteration leaves over far along a face goes on without end; the flow itself does not.
-            total = totals.face_total(iterated.setting, face, self._with_ends(face, where), gap, theta)
-        causes = unbounded_lines(self._body, face, where) if isinstance(self._body.faces[face], Held) else []
-        return _widened(total, FlowError(self._data, iterated).face_total(face, where), [cause for cause, _ in causes])
+        return varying_totals.face_total(self._data, iterated, face, where, gap, theta)
 
     def plane_total(
         self,
@@ -285,11 +286,8 @@ class VaryingSolution(Solution):
                 return totals.negated(total) if is_high(face) else total
         iterated = self._within(tolerance, None)
         where = totals.checked_rectangle(self._body, axis, rectangle)
-        total = totals.plane_total(iterated.setting, axis, position, where, gap, FIELD * self._in_theta(tolerance))
-        causes = unbounded_plane_lines(self._body, axis, position, where)
-        return _widened(
-            total, FlowError(self._data, iterated).plane_total(axis, position, where), [cause for cause, _ in causes]
-        )
+        theta = FIELD * self._in_theta(tolerance)
+        return varying_totals.plane_total(self._data, iterated, axis, position, where, gap, theta)
 
     def balance(self, *, gap: float | None = None, tolerance: float) -> Balance:
         """Inflow of every face, generation, and what is left over of the field in theta, which is exactly balanced."""
@@ -298,29 +296,15 @@ class VaryingSolution(Solution):
         inflow = {face: self.face_total(face, gap=gap, tolerance=tolerance) for face in found.inflow}
         return replace(found, inflow=inflow)
 
-    def _with_ends(self, face: Face, where: Rectangle) -> Rectangle:
-        """The part of a rectangle on which anything flows."""
-        setting = self._iterated.setting
-        first, second = axes_along(face)
-        return Rectangle(
-            fields.far_along(setting, first, high=False) if where.p_low == -math.inf else where.p_low,
-            fields.far_along(setting, first) if where.p_high == math.inf else where.p_high,
-            fields.far_along(setting, second, high=False) if where.q_low == -math.inf else where.q_low,
-            fields.far_along(setting, second) if where.q_high == math.inf else where.q_high,
-        )
-
     def _find_range(self, keep_going: KeepGoing | None) -> None:
         """Iterate until the range of the potential in the body is known; refuse a body that leaves its law's."""
         law = self._data.kirchhoff.law
         maps = [map_of(condition) for condition in self._body.faces.values() if isinstance(condition, Held | Film)]
         levels = [level for face_map in maps if face_map is not None for level in (face_map.lowest, face_map.highest)]
         low, high = min(levels), max(levels)
-        self._check_held(law)
-        _check_factors(self._data.kirchhoff, low, high)
-        self._check_above_absolute_zero(low)
-        _check_radiation(self._data)
+        check_data(self._data, low, high)
         theta = self._data.kirchhoff.theta(np.array([low, high]))
-        driven = _has_flows(self._body)
+        driven = has_flows(self._body)
         # Until the range is known: that of the data, or what flows raise where there is no other.
         scale, accuracy = float(theta[1] - theta[0]), FIRST_ACCURACY
         if driven:
@@ -331,55 +315,21 @@ class VaryingSolution(Solution):
             if not driven and law.low <= low and high <= law.high:
                 break
             found = extremes.find(self._iterated.setting, 10 * accuracy * scale, keep_going)
-            hottest, coldest = self._place(found.hottest, self._iterated), self._place(found.coldest, self._iterated)
+            hottest, coldest = (
+                potential_place(self._data, self._iterated, found.hottest),
+                potential_place(self._data, self._iterated, found.coldest),
+            )
             low, high = coldest.value - coldest.error_bound, hottest.value + hottest.error_bound
             reached = self._data.kirchhoff.theta(np.array([min([low, *levels]), max([high, *levels])]))
             span = float(reached[1] - reached[0])
-            if scale <= 10 * span and not _is_close(max(law.low, self._absolute_zero), law.high, coldest, hottest):
-                self._check_above_absolute_zero(coldest.value)
-                self._check_reached(law, coldest, hottest)
+            if scale <= 10 * span and not is_close(max(law.low, absolute_zero(self._data)), law.high, coldest, hottest):
+                check_above_absolute_zero(self._data, coldest.value)
+                check_reached(law, coldest, hottest)
                 break
             # A coarse start, or an extreme so near the end of the law that its bound reaches across.
             scale, accuracy = (span, accuracy) if scale > 10 * span else (scale, accuracy / 100)
         self._least_factor = self._data.kirchhoff.factor_range(max(low, law.low), min(high, law.high))[0]
         self._span = max(high, *levels) - min(low, *levels)
-
-    @property
-    def _absolute_zero(self) -> float:
-        """The potential that is absolute zero where a face radiates; -infinity where none does."""
-        zeros = [law.radiation.zero for law in self._data.laws.values() if law.radiation is not None]
-        return -zeros[0] if zeros else -math.inf
-
-    def _check_above_absolute_zero(self, coldest: float) -> None:
-        for face, law in self._data.laws.items():
-            if law.radiation is not None and coldest + law.radiation.zero <= 0.0:
-                raise below_absolute_zero(face, coldest)
-
-    def _check_held(self, law: ConductivityLaw) -> None:
-        for face in self._body.present_faces:
-            condition = self._body.faces[face]
-            if isinstance(condition, Held) and not (
-                law.low <= condition.value.lowest and condition.value.highest <= law.high
-            ):
-                raise OutsideLaw(
-                    f"The face {face} is held at {_from_to(condition.value.lowest, condition.value.highest)}; the "
-                    f"conductivity law holds {_range_of(law)}.",
-                    ("faces", face),
-                )
-
-    def _check_reached(self, law: ConductivityLaw, coldest: Place, hottest: Place) -> None:
-        for place, end, beyond, reach in (
-            (hottest, law.high, hottest.value - law.high, "up"),
-            (coldest, law.low, law.low - coldest.value, "down"),
-        ):
-            if beyond > max(place.error_bound, STORED * abs(place.value)):
-                at = ", ".join(f"{coordinate:g}" for coordinate in place.position)
-                raise OutsideLaw(
-                    f"The potential reaches about {place.value:.6g} at ({at}), {_on(place.where)}, where the "
-                    f"conductivity law ends at {end:g}; it has to hold {reach} to {place.value:.6g} or further. That "
-                    "value is what the last factor, carried on, would lead to.",
-                    ("law",),
-                )
 
     def _prepare(self, wanted: float, keep_going: KeepGoing | None) -> None:
         """Iterate until theta is off by no more than wanted."""
@@ -410,56 +360,6 @@ class VaryingSolution(Solution):
         """An accuracy of the potential that holds everywhere, in theta."""
         return tolerance * self._least_factor
 
-    def _put_back(self, found: Field, iterated: Iterated, places: Sequence[FloatArray]) -> Field:
-        kirchhoff = self._data.kirchhoff
-        potential = kirchhoff.potential(found.potential)
-        off = kirchhoff.potential_bound(found.potential, found.potential_bound + iterated.error)
-        size = abs(self.reference) + float(np.abs(potential).max(initial=0.0))
-        bound = float(off.max(initial=0.0)) + STORED * size
-        flux_bound = found.flux_bound
-        if flux_bound is not None:
-            flux_bound = flux_bound + FlowError(self._data, iterated).flux(places, flux_bound.shape)
-        return replace(found, potential=potential, potential_bound=bound, flux_bound=flux_bound)
-
-    def _place(self, found: Place, iterated: Iterated) -> Place:
-        """A place of theta in the potential; one that the data give outright is not off by the iteration."""
-        theta = np.array([found.value])
-        value = float(self._data.kirchhoff.potential(theta)[0])
-        off = found.error_bound + iterated.error if found.error_bound > 0.0 else 0.0
-        bound = float(self._data.kirchhoff.potential_bound(theta, off)[0])
-        return replace(found, value=value, error_bound=bound + STORED * (abs(value) + abs(self.reference)))
-
-    def _converged(self, found: Convergence, iterated: Iterated) -> Convergence:
-        """How an answer converges, in the potential: what is left by a step divided by the least factor."""
-        per = 1 / self._least_factor
-
-        def potential(theta: float) -> float:
-            return float(self._data.kirchhoff.potential(np.array([theta]))[0])
-
-        def off(theta: float) -> float:
-            return float(self._data.kirchhoff.potential_bound(np.array([found.value]), theta)[0])
-
-        return replace(
-            found,
-            value=potential(found.value),
-            error_bound=off(found.error_bound + iterated.error),
-            series=tuple(
-                SeriesStep(
-                    step.terms,
-                    potential(step.value),
-                    step.error * per,
-                    None if step.tail_bound is None else step.tail_bound * per,
-                )
-                for step in found.series
-            ),
-            time_form=tuple(
-                NodeStep(step.nodes, potential(step.value), step.error * per, step.error_bound * per)
-                for step in found.time_form
-            ),
-            agreement=None if found.agreement is None else off(found.agreement),
-            agreement_bound=None if found.agreement_bound is None else off(found.agreement_bound),
-        )
-
     def _with_iteration(self, found: Estimate, tolerance: float) -> Estimate:
         """An estimate with the steps of the iteration from where it stands to an accuracy."""
         wanted = ITERATION * self._in_theta(tolerance)
@@ -487,126 +387,3 @@ class _In:
         if isinstance(error, AccuracyNotReached):
             bound = OFFERED * error.bound / (self._share * self._solution._in_theta(1.0))
             raise AccuracyNotReached(self._tolerance, bound) from None
-
-
-def _check_supported(body: Body) -> None:
-    """Raise NotPhysical for what a varying conductivity or radiation cannot be combined with."""
-    if body.layers:
-        raise NotPhysical(
-            "A stack of layers is solved with conductivities that do not vary with the potential and without "
-            "radiation; give each layer the conductivity at its own mean potential instead.",
-            ("law",) if body.law is not None else ("faces",),
-        )
-    for face, condition in body.faces.items():
-        if not isinstance(condition, Held | Inflow | Film | Insulated):
-            raise NotPhysical(
-                f"The face {face} has several conditions at once, which are solved with a conductivity that does not "
-                "vary with the potential and without radiation; give the conductivity at the mean potential instead.",
-                ("faces", face),
-            )
-    if all(math.isinf(length) for length in body.size) and any(isinstance(c, Film) for c in body.faces.values()):
-        raise NotPhysical(
-            "A film on a body that ends along no axis is solved with a conductivity that does not vary with the "
-            "potential and without radiation; give the body a finite size along one axis.",
-            ("size",),
-        )
-    if level_is_pinned(body):
-        raise NotPhysical(
-            "No face fixes the level of the potential, on which a varying conductivity depends; hold a face or give "
-            "it a film.",
-            ("faces",),
-        )
-
-
-def _is_close(low: float, high: float, coldest: Place, hottest: Place) -> bool:
-    """Whether it takes better bounds to tell if the field leaves a range."""
-    distances = ((abs(hottest.value - high), hottest), (abs(low - coldest.value), coldest))
-    return any(STORED * abs(place.value) < distance <= place.error_bound for distance, place in distances)
-
-
-def _check_factors(kirchhoff: Kirchhoff, low: float, high: float) -> None:
-    """Raise NotPhysical where the factor of the law at the data of the faces is no number to compute with."""
-    # Outside the law's range its last factor goes on.
-    least, most = kirchhoff.factor_range(low, high)
-    if not SMALLEST_FACTOR <= least <= most <= LARGEST_FACTOR:
-        raise NotPhysical(
-            f"The factor of the conductivity law goes from {least:g} to {most:g} at the values given on the faces; it "
-            f"has to lie between {SMALLEST_FACTOR:g} and {LARGEST_FACTOR:g} there.",
-            ("law",),
-        )
-
-
-def _check_radiation(data: Transformed) -> None:
-    """Raise NotPhysical where more is taken out than radiation, the only way in, gives a body at absolute zero."""
-    body = data.body
-    only_radiation = all(law.radiation is not None and law.coefficient == 0.0 for law in data.laws.values())
-    is_held = any(isinstance(condition, Held) for condition in body.faces.values())
-    if is_held or not only_radiation or not all(math.isfinite(length) for length in body.size):
-        return
-    taken, given = -generation(body), 0.0
-    for face, condition in body.faces.items():
-        first, second = (body.size[axis] for axis in axes_along(face))
-        if isinstance(condition, Inflow):
-            taken -= map_integral(condition.inflow, (0.0, 0.0), (first, second))[0]
-        if face in data.laws:
-            radiation = data.laws[face].radiation
-            assert radiation is not None
-            least = float(data.laws[face].given_off(np.array([-radiation.zero]))[0])
-            given += map_integral(data.given[face], (0.0, 0.0), (first, second))[0] - least * first * second
-    if taken >= given:
-        raise NotPhysical(
-            f"The body loses {taken / given:.3g} times what radiation from its surroundings could bring in even at "
-            "absolute zero; there is no steady state. Take out less, or give a face a film coefficient.",
-            ("faces", next(iter(data.laws))),
-        )
-
-
-def _has_flows(body: Body) -> bool:
-    """Whether an inflow or a source may take the potential out of the range of held values and ambients."""
-    inflow = any(isinstance(condition, Inflow) and condition.inflow.table.any() for condition in body.faces.values())
-    return inflow or any(source.density != 0.0 for source in body.sources)
-
-
-def _fades(body: Body, face: Face) -> bool:
-    """Whether the flow through an endless face comes to nothing: all data far along it are at one level."""
-    levels: set[float] = set()
-    for axis in axes_along(face):
-        if math.isfinite(body.size[axis]):
-            continue
-        if any(source.density != 0.0 and math.isinf(source.high[axis] - source.low[axis]) for source in body.sources):
-            return False
-        for other, condition in body.faces.items():
-            face_map = map_of(condition)
-            if face_map is None or axis not in axes_along(other):
-                continue
-            along = np.moveaxis(face_map.table, axes_along(other).index(axis), 0)
-            ends = along[-1:] if body.begins[axis] == 0.0 else along[[0, -1]]
-            levels |= {float(value) for value in np.unique(ends)} if isinstance(condition, Held | Film) else set()
-            if isinstance(condition, Inflow) and ends.any():
-                return False
-    return len(levels) <= 1
-
-
-def _widened(total: Total, off: float, as_given: Sequence[UnboundedCause]) -> Total:
-    """A total with a wider bound, and the jumps that make it unbounded in the potential instead of theta."""
-    jumps = {cause.line: cause.largest_jump for cause in as_given}
-    causes = tuple(replace(cause, largest_jump=jumps.get(cause.line, cause.largest_jump)) for cause in total.causes)
-    with_gap = total.with_gap
-    if with_gap is not None:
-        with_gap = Bounded(with_gap.value, with_gap.error_bound + off)
-    bound = None if total.error_bound is None else total.error_bound + off
-    return Total(total.value, bound, causes, with_gap)
-
-
-def _on(where: str) -> str:
-    return "inside" if where == "inside" else f"on {where}"
-
-
-def _from_to(low: float, high: float) -> str:
-    return f"{low:.6g}" if low == high else f"{low:.6g} to {high:.6g}"
-
-
-def _range_of(law: ConductivityLaw) -> str:
-    if math.isinf(law.low):
-        return f"below {law.high:.6g}"
-    return f"above {law.low:.6g}" if math.isinf(law.high) else f"from {law.low:.6g} to {law.high:.6g}"
