@@ -22,6 +22,7 @@ from service.routes import (
     problems,
     reach,
     resistances,
+    studies,
 )
 from service.settings import Settings
 from service.state import open_state
@@ -30,6 +31,7 @@ _TAGS = [
     {"name": "problems", "description": "Check and store a problem."},
     {"name": "answers", "description": "Questions about a problem."},
     {"name": "decisions", "description": "What follows from a field: limits, tolerances, sizes, unknowns."},
+    {"name": "studies", "description": "Questions of many cases, as jobs that outlive a request."},
     {"name": "operation", "description": "Health, caches and counts."},
 ]
 
@@ -62,7 +64,8 @@ def create_app(settings: Settings | None = None) -> FastAPI:
     )
     openapi.install(app)
     problem_details.install(app)
-    for module in (problems, fields, flux_totals, convergence, pads, resistances, reach, limits, cases, health, pages):
+    answering = (problems, fields, flux_totals, convergence, pads, resistances, reach)
+    for module in (*answering, limits, cases, studies, health, pages):
         app.include_router(module.router)
     pages.mount_files(app)
 
@@ -72,9 +75,9 @@ def create_app(settings: Settings | None = None) -> FastAPI:
         app.add_middleware(
             CORSMiddleware,
             allow_origins=settings.cors_origins,
-            allow_methods=["GET", "POST"],
-            allow_headers=["Content-Type", "If-None-Match"],
-            expose_headers=["ETag", "Location", "Retry-After", "Server-Timing"],
+            allow_methods=["GET", "POST", "DELETE"],
+            allow_headers=["Content-Type", "If-None-Match", "Last-Event-ID", "Prefer"],
+            expose_headers=["ETag", "Location", "Preference-Applied", "Retry-After", "Server-Timing"],
         )
     app.add_middleware(LastResort)
     app.add_middleware(SecurityHeaders)

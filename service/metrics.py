@@ -11,6 +11,8 @@ from prometheus_client.registry import Collector
 
 from service.core import CacheReport, cache_report
 from service.kept import Kept, KeptReport
+from service.studies.store import STATES
+from service.studies.studies import Studies
 from service.worker import Worker
 
 # From a cached plane to the default time limit.
@@ -20,8 +22,9 @@ _SECONDS = (0.001, 0.003, 0.01, 0.03, 0.1, 0.3, 1.0, 3.0, 10.0, 30.0)
 class Metrics:
     """Counts of one app. Each app has a registry of its own, so that several can live in one process."""
 
-    def __init__(self, worker: Worker, solutions: Kept[Any], answers: Kept[Any]) -> None:
+    def __init__(self, worker: Worker, studies: Studies, solutions: Kept[Any], answers: Kept[Any]) -> None:
         self._worker = worker
+        self._studies = studies
         self._solutions = solutions
         self._answers = answers
         self._registry = CollectorRegistry()
@@ -75,15 +78,27 @@ class Metrics:
             "seconds": report.seconds,
         }
 
+    def studies(self) -> dict[str, float]:
+        """How many studies there are in each state, how full their store is, and what was computed for them."""
+        report, kept = self._studies.report(), self._studies.kept()
+        return {
+            **{state: report.counts[state] for state in STATES},
+            "size": report.size,
+            "limit": report.limit,
+            "cases": kept.cases,
+            "failed_cases": kept.failed,
+            "seconds": kept.seconds,
+        }
+
 
 class _Live(Collector):
-    """Reads caches and worker at the moment of the scrape."""
+    """Reads caches, worker and studies at the moment of the scrape."""
 
     def __init__(self, metrics: Metrics) -> None:
         self._metrics = metrics
 
     def collect(self) -> Iterator[CounterMetricFamily | GaugeMetricFamily]:
-        """The families of caches and worker."""
+        """The families of caches, worker and studies."""
         hits = CounterMetricFamily("stillfield_cache_hits", "Found in a cache.", labels=("cache",))
         misses = CounterMetricFamily("stillfield_cache_misses", "Not found in a cache.", labels=("cache",))
         size = GaugeMetricFamily("stillfield_cache_size", "Filling of a cache.", labels=("cache",))
@@ -99,3 +114,12 @@ class _Live(Collector):
             words = name.replace("_", " ")
             yield CounterMetricFamily(f"stillfield_work_{name}", f"Computations {words}.", work[name])
         yield CounterMetricFamily("stillfield_work_seconds", "Seconds spent computing.", work["seconds"])
+        studies = self._metrics.studies()
+        states = GaugeMetricFamily("stillfield_studies", "Studies by their state.", labels=("state",))
+        for state in STATES:
+            states.add_metric((state,), studies[state])
+        yield states
+        yield GaugeMetricFamily("stillfield_studies_size", "Bytes of all studies.", studies["size"])
+        yield CounterMetricFamily("stillfield_study_cases", "Cases computed for studies.", studies["cases"])
+        yield CounterMetricFamily("stillfield_study_failed_cases", "Cases that failed.", studies["failed_cases"])
+        yield CounterMetricFamily("stillfield_study_seconds", "Seconds workers spent on cases.", studies["seconds"])

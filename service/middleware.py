@@ -155,5 +155,5 @@ class Counting:
             await self._app(scope, receive, send_and_note)
         finally:
             route = getattr(scope.get("route"), "path", "other")
-            method = scope["method"] if scope["method"] in ("GET", "HEAD", "POST", "OPTIONS") else "other"
+            method = scope["method"] if scope["method"] in ("GET", "HEAD", "POST", "DELETE", "OPTIONS") else "other"
             self._count()(method, route, status, time.perf_counter() - started)

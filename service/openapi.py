@@ -32,6 +32,11 @@ _ERRORS = {
         "not-acceptable",
         f"Answers are application/json or {ARRAYS}; name one of them in Accept, or leave it out.",
     ),
+    409: (
+        "The study is not in a state for this.",
+        "wrong-state",
+        "The study is running; it has an answer when it is finished.",
+    ),
     413: ("The body is too long.", "body-too-large", "The body is longer than 2097152 bytes."),
     415: (
         "The body is not application/json.",
@@ -50,7 +55,7 @@ _ERRORS = {
         "All 4 workers are busy and 32 requests wait; try again later.",
     ),
     507: (
-        "The store of problems is full.",
+        "The store is full.",
         "store-full",
         "The problem needs 2048 bytes and 512 are free; send the problem with each question instead of its id.",
     ),

@@ -55,8 +55,9 @@ _TYPES = (
     ProblemType("internal-error", 500, "Something failed inside the service"),
     ProblemType("queue-full", 503, "The service is busy"),
     ProblemType("not-ready", 503, "The service is not ready"),
-    ProblemType("store-busy", 503, "The store of problems is held by another process"),
-    ProblemType("store-full", 507, "The store of problems is full"),
+    ProblemType("store-busy", 503, "The store is held by another process"),
+    ProblemType("store-full", 507, "The store is full"),
+    ProblemType("wrong-state", 409, "The study is not in a state for this"),
 )
 TYPES: dict[str, ProblemType] = {kind.name: kind for kind in _TYPES}
 
@@ -71,6 +72,8 @@ _TYPE_OF_EXCEPTION: dict[type[Exception], str] = {
     refusals.QueueFull: "queue-full",
     refusals.StoreBusy: "store-busy",
     refusals.StoreFull: "store-full",
+    refusals.UnknownStudy: "not-found",
+    refusals.WrongState: "wrong-state",
     core.NotPhysical: "not-physical",
     core.NoSteadyState: "no-steady-state",
     core.OutsideBody: "outside-body",

@@ -9,8 +9,10 @@ Refusal
 ├── UnknownProblem        no problem is stored under this id
 ├── TooCostly             the work or the answer would pass a limit; known before it starts
 ├── QueueFull             all workers are busy and no one more may wait
-├── StoreBusy             the file of stored problems is held by another process
-└── StoreFull             no room for another problem
+├── StoreBusy             the file of stored problems or studies is held by another process
+├── StoreFull             no room for another problem or study
+├── UnknownStudy          no study is known under this id
+└── WrongState            the study is not in the state that this takes
 """
 
 from __future__ import annotations
@@ -84,10 +86,18 @@ class QueueFull(Refusal):
 
 
 class StoreBusy(Refusal):
-    """The file of stored problems is held by another process."""
+    """The file of stored problems or studies is held by another process."""
 
     retry_after_seconds = 5
 
 
 class StoreFull(Refusal):
-    """No room for another problem."""
+    """No room for another problem or study."""
+
+
+class UnknownStudy(Refusal):
+    """No study is known under this id."""
+
+
+class WrongState(Refusal):
+    """The study is not in the state that this takes."""

@@ -66,6 +66,28 @@ class Settings(BaseSettings):
     queue_length: int = Field(
         32, ge=0, description="Requests that may wait for a worker; more are answered 503 with Retry-After."
     )
+    studies_folder: Path = Field(
+        Path("stillfield-studies"), description="Folder that keeps studies and their cases; made with the first study."
+    )
+    studies_bytes: PositiveInt = Field(
+        1024 * MEBIBYTE, description="Size of all studies together, with what running ones may come to."
+    )
+    studies_running: PositiveInt = Field(2, description="Studies that run at the same time; they share the workers.")
+    studies_waiting: PositiveInt = Field(
+        64, description="Studies that may wait to be run; more are answered 503 with Retry-After."
+    )
+    study_workers: PositiveInt = Field(
+        default_factory=lambda: os.cpu_count() or 1,
+        description="Processes that compute cases of studies, with less priority than requests.",
+    )
+    study_case_seconds: PositiveFloat = Field(60.0, description="Longest computation of one case of a study.")
+    study_memory_bytes: PositiveInt = Field(
+        4096 * MEBIBYTE, description="Most address space of one process that computes cases; not on Windows."
+    )
+    cluster: str = Field(
+        "", description="Address of a Dask scheduler, such as tcp://host:8786, whose workers compute studies instead."
+    )
+
     solutions_kept: PositiveInt = Field(64, description="Prepared problems kept ready for the next request.")
     answer_cache_bytes: int = Field(
         64 * MEBIBYTE, ge=0, description="Finished answers kept for the same request asked again."

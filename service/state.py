@@ -1,5 +1,5 @@
-"""What the routes of one app share: settings, store, worker, solutions and answers kept, and the counts of it
-all.
+"""What the routes of one app share: settings, store, worker, studies, solutions and answers kept, and the counts of
+it all.
 """
 
 from __future__ import annotations
@@ -13,6 +13,7 @@ from service.kept import Kept
 from service.metrics import Metrics
 from service.settings import Settings
 from service.store import ProblemStore
+from service.studies.studies import Studies
 from service.translation.solving import Solver
 from service.worker import Worker
 
@@ -35,19 +36,21 @@ class State:
     store: ProblemStore
     worker: Worker
     solver: Solver
+    studies: Studies
     answers: Kept[KeptAnswer]
     metrics: Metrics
 
     def close(self) -> None:
-        """Stop the work and let go of the file."""
+        """Stop the work and let go of the files."""
         self.worker.close()
+        self.studies.close()
         self.store.close()
 
 
 def open_state(settings: Settings) -> State:
-    """A fresh state: the store's file is opened and the threads are ready.
+    """A fresh state: the store's file is opened, the threads are ready, and studies that were not finished go on.
 
-    Raises RuntimeError with a sentence for whoever starts the service when the file cannot be opened.
+    Raises RuntimeError with a sentence for whoever starts the service when that cannot be.
     """
     try:
         store = ProblemStore(settings.store_path, settings.store_bytes)
@@ -59,7 +62,10 @@ def open_state(settings: Settings) -> State:
     worker = Worker(settings.worker_threads, settings.queue_length, settings.time_limit_seconds)
     solver = Solver(settings, store)
     answers: Kept[KeptAnswer] = Kept(settings.answer_cache_bytes, lambda answer: len(answer.body))
-    return State(settings, store, worker, solver, answers, Metrics(worker, solver.kept, answers))
+    studies = Studies(settings, solver)
+    studies.resume()
+    metrics = Metrics(worker, studies, solver.kept, answers)
+    return State(settings, store, worker, solver, studies, answers, metrics)
 
 
 def state_of(request: Request) -> State:

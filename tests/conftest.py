@@ -29,7 +29,7 @@ def anyio_backend() -> str:
 @pytest.fixture
 def settings(tmp_path: Path) -> Settings:
     """Settings of a small service with a store of its own."""
-    return Settings(store_path=tmp_path / "problems.sqlite3", worker_threads=2)
+    return Settings(store_path=tmp_path / "problems.sqlite3", studies_folder=tmp_path / "studies", worker_threads=2)
 
 
 @pytest.fixture

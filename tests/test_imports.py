@@ -1,4 +1,4 @@
-"""Imports point one way: app, routes, worker, translation, core; the core stands alone."""
+"""Imports point one way: app, routes, worker and studies, translation, core; the core stands alone."""
 
 from __future__ import annotations
 
@@ -21,11 +21,11 @@ GRAPH = graph(SOURCES)
 ALLOWED_IN_CORE = {"numpy", "scipy", *sys.stdlib_module_names}
 
 # A part imports parts of lower rank and of its own. Parts that are not here have no rank.
-RANK = {"core": 0, "translation": 1, "translate": 1, "worker": 2, "routes": 3, "app": 4}
+RANK = {"core": 0, "translation": 1, "translate": 1, "worker": 2, "studies": 2, "routes": 3, "app": 4}
 
 # What a client writes and how it is read knows nothing of how it is answered.
 DESCRIPTIONS = {"models", "units", "unit_text", "settings"}
-ANSWERING = {"app", "routes", "worker", "translation", "translate"}
+ANSWERING = {"app", "routes", "worker", "studies", "translation", "translate"}
 
 # Imported by us, and installed and pinned as part of what stands beside it.
 COMES_WITH = {"starlette": "fastapi", "pydantic-core": "pydantic"}
@@ -62,6 +62,20 @@ def test_no_modules_import_each_other_in_a_circle() -> None:
     ours = {module: {name for name in names if name in SOURCES} for module, names in GRAPH.items()}
     order = list(graphlib.TopologicalSorter(ours).static_order())
     assert set(order) == set(SOURCES)
+
+
+def test_worker_of_studies_starts_without_the_web() -> None:
+    program = "import sys, service.studies.chunk_work; print(*{name.partition('.')[0] for name in sys.modules})"
+    printed = subprocess.check_output([sys.executable, "-c", program], cwd=ROOT, text=True)
+    assert set(printed.split()) & {"fastapi", "starlette", "uvicorn", "plotly", "dbos", "sqlalchemy"} == set()
+
+
+def test_optional_packages_are_imported_by_one_module_that_nobody_imports() -> None:
+    asked = {"dask", "distributed"}
+    assert {module for module, names in GRAPH.items() if {name.partition(".")[0] for name in names} & asked} == {
+        "service.studies.cluster"
+    }
+    assert not any("service.studies.cluster" in names for names in GRAPH.values())
 
 
 def test_core_can_be_used_without_the_packages_of_the_service() -> None:
@@ -101,7 +115,7 @@ def test_arrow_that_points_up_would_be_found(module: str, source: str) -> None:
 @pytest.mark.parametrize("package", ["service", "tests"])
 def test_every_package_imported_is_declared(package: str) -> None:
     project = tomllib.loads((ROOT / "pyproject.toml").read_text(encoding="utf-8"))["project"]
-    texts = [*project["dependencies"]]
+    texts = [*project["dependencies"], *project["optional-dependencies"]["cluster"]]
     if package == "tests":
         texts += project["optional-dependencies"]["test"]
     declared = {canonicalize_name(Requirement(text).name) for text in texts}

@@ -12,7 +12,13 @@ from packaging.requirements import Requirement
 from packaging.utils import canonicalize_name
 
 ROOT = Path(__file__).resolve().parent.parent
-LOCKS = {part: ROOT / part / "requirements.lock" for part in ("service", "tests")}
+LOCKS = {
+    "service": ROOT / "service" / "requirements.lock",
+    "cluster": ROOT / "service" / "cluster.lock",
+    "tests": ROOT / "tests" / "requirements.lock",
+}
+# Which optional packages of pyproject.toml a lock has beside those of the service.
+EXTRAS = {"cluster": "cluster", "tests": "test"}
 PYTHONS = ["3.11", "3.12", "3.13"]
 ENTRY = re.compile(
     r"(?P<requirement>[a-z0-9-]+==\S+(?: ; [^\\\n]+)?) \\\n"
@@ -41,8 +47,8 @@ def pins(part: str) -> set[Pin]:
 def declared(part: str) -> list[Requirement]:
     project = tomllib.loads((ROOT / "pyproject.toml").read_text(encoding="utf-8"))["project"]
     texts = list(project["dependencies"])
-    if part == "tests":
-        texts += project["optional-dependencies"]["test"]
+    if part in EXTRAS:
+        texts += project["optional-dependencies"][EXTRAS[part]]
     return [Requirement(text) for text in texts]
 
 
@@ -69,5 +75,10 @@ def test_lock_has_a_version_in_the_range_of_each_declared_package(part: str, pyt
         assert versions[0] in requirement.specifier, f"{requirement} is locked to {versions[0]}"
 
 
-def test_tests_run_with_the_packages_the_service_runs_with() -> None:
-    assert pins("service") - pins("tests") == set()
+@pytest.mark.parametrize("part", EXTRAS)
+def test_every_lock_has_the_packages_the_service_runs_with(part: str) -> None:
+    assert pins("service") - pins(part) == set()
+
+
+def test_tests_run_with_the_packages_a_cluster_runs_with() -> None:
+    assert pins("cluster") - pins("tests") == set()

@@ -50,6 +50,21 @@ class StoreState(Model):
     limit: int = Field(description="Size allowed, bytes.", examples=[536870912])
 
 
+class StudiesState(Model):
+    """How the studies do."""
+
+    waiting: int = Field(description="Studies that wait to be run.", examples=[0])
+    running: int = Field(description="Studies that run.", examples=[1])
+    finished: int = Field(description="Studies with an answer.", examples=[12])
+    cancelled: int = Field(description="Studies that were cancelled.", examples=[0])
+    failed: int = Field(description="Studies that failed.", examples=[0])
+    size: int = Field(description="Their size, with what running ones may come to, bytes.", examples=[1203455])
+    limit: int = Field(description="Size allowed, bytes.", examples=[1073741824])
+    cases: int = Field(description="Cases computed for studies since the start.", examples=[20000])
+    failed_cases: int = Field(description="Those of them that failed.", examples=[3])
+    seconds: float = Field(description="Time workers spent on them, s.", examples=[61.2])
+
+
 class Diagnostics(Model):
     """What the service is doing."""
 
@@ -60,6 +75,7 @@ class Diagnostics(Model):
     )
     work: WorkState = Field(description="How busy the worker is.")
     store: StoreState = Field(description="How full the store of problems is.")
+    studies: StudiesState = Field(description="How the studies do.")
 
 
 class Health(Model):

@@ -20,6 +20,7 @@ from service.state import state_of
 router = APIRouter(tags=["operation"])
 
 READY_WITHIN_SECONDS = 2.0
+_NOT_READY = "The store of problems or that of studies does not answer."
 
 
 @router.get("/health/live", summary="Whether the process answers", response_model=Health)
@@ -32,21 +33,23 @@ async def live() -> dict[str, str]:
     "/health/ready",
     summary="Whether questions can be answered",
     response_model=Health,
-    responses={503: error_responses(503)[503] | {"description": "The store of problems does not answer."}},
+    responses={503: error_responses(503)[503] | {"description": _NOT_READY}},
 )
 async def ready(request: Request) -> Any:
-    """Answers ok when the store can be read, within two seconds; otherwise 503."""
+    """Answers ok when the stores can be read, within two seconds; otherwise 503."""
     state = state_of(request)
     try:
-        await asyncio.wait_for(asyncio.to_thread(state.store.report), READY_WITHIN_SECONDS)
+        async with asyncio.timeout(READY_WITHIN_SECONDS):
+            await asyncio.to_thread(state.store.report)
+            await asyncio.to_thread(state.studies.report)
     except Exception:
-        return problem_response("not-ready", "The store of problems does not answer.")
+        return problem_response("not-ready", _NOT_READY)
     return {"status": "ok"}
 
 
 @router.get("/v1/diagnostics", summary="What the service is doing", response_model=Diagnostics)
 async def diagnostics(request: Request) -> dict[str, Any]:
-    """Hits and misses of everything that is kept, how busy the worker is, how full the store is."""
+    """Hits and misses of everything that is kept, how busy the worker is, how full the stores are."""
     state = state_of(request)
     store = await asyncio.to_thread(state.store.report)
     return {
@@ -54,6 +57,7 @@ async def diagnostics(request: Request) -> dict[str, Any]:
         "caches": state.metrics.caches(),
         "work": state.metrics.work(),
         "store": {"problems": store.problems, "size": store.size, "limit": store.limit},
+        "studies": await asyncio.to_thread(state.metrics.studies),
     }
 
 

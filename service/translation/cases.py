@@ -50,8 +50,8 @@ class CasePlan:
     """All that computing a case takes.
 
     document: the request as plain JSON values, its `problem` and `results` above all. numbers: what each changes in it.
-    names, units: of the numbers. result_count: how many results there are. relative, absolute: accuracy asked for, in parts of
-    the span of a case's data or as a difference of the potential; the usual one if both are None.
+    names, units: of the numbers. result_count: how many results there are. relative, absolute: accuracy asked for, in
+    parts of the span of a case's data or as a difference of the potential; the usual one if both are None.
     """
 
     document: dict[str, Any]

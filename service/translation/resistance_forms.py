@@ -4,9 +4,6 @@ The table is CSV (RFC 4180). The list has one element a line, its name beginning
 comment lines that begin with an asterisk, which is how circuit solvers have long shared networks; node 0 is the
 environment. Such a solver takes its numbers for ohms, so that values are in the coherent SI unit whatever is declared:
 ohms for volts and amperes, K/W for temperatures and watts.
-
-A spreadsheet takes a cell that begins with = + - @ or a tab for a formula, and runs it; a name of a pad that begins so
-is written with an apostrophe before it, which a spreadsheet takes for the mark of a text.
 """
 
 from __future__ import annotations
@@ -17,12 +14,10 @@ from typing import Any
 
 import numpy as np
 
+from service.cells import as_cell
 from service.core.network import resistance
 from service.unit_text import factor_between
 from service.units import PHYSICS, Kind
-
-# What a cell of a formula begins with.
-_FORMULA_MARKS = ("=", "+", "-", "@", "\t", "\r")
 
 # Characters that end a line somewhere would end a comment.
 _CONTROL = dict.fromkeys((*range(32), 127, 0x85, 0x2028, 0x2029), " ")
@@ -40,17 +35,12 @@ def pad_name(pad: dict[str, Any]) -> str:
     return str(pad["face"])
 
 
-def _as_text(name: str) -> str:
-    """A name as a cell that no spreadsheet takes for a formula."""
-    return f"'{name}" if name.startswith(_FORMULA_MARKS) else name
-
-
 def matrix_csv(answer: dict[str, Any]) -> bytes:
     """Mean rises per unit flow: a row for each pad that rises, a column for each that is fed.
 
     Where there are none, the resistances between every two pads.
     """
-    names = [_as_text(pad_name(pad)) for pad in answer["pads"]]
+    names = [as_cell(pad_name(pad)) for pad in answer["pads"]]
     what, matrix = ("resistance between", answer["pairs"])
     if answer["mean"] is not None:
         what, matrix = ("mean rise per unit flow", answer["mean"])

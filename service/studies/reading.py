@@ -1,0 +1,184 @@
+"""A study as a client writes it: to the analysis that is to be run, to its id, and to the size of its chunks."""
+
+from __future__ import annotations
+
+import hashlib
+import json
+import time
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from pydantic import ValidationError
+
+from service import __version__
+from service.analysis.evaluations import Evaluations, FloatArray
+from service.core.errors import CoreError, Interrupted
+from service.core.stopping import on_behalf_of
+from service.cost import check_work
+from service.models.limits import AnalysisQuestion
+from service.refusals import Issue, Refusal, RequestRefused, TooCostly
+from service.settings import Settings
+from service.studies.chunks import chunk_size_for
+from service.studies.store import Acceptance, Column, Columns
+from service.translation.analyses import ANALYSES
+from service.translation.analysis import Analysis, prepare
+from service.translation.cases import evaluator
+from service.translation.problem import canonical, problem_id_of
+from service.translation.solving import Solver, point_into_question
+from service.validation_sentences import issues_of
+
+KeepGoing = Callable[[], None]
+
+# What is kept free beside the numbers of a case: for the answer, which tells them again, and for failures in words.
+_ROOM_FACTOR = 3
+_ROOM_A_CASE = 200
+_LEAST_ROOM = 100_000
+# How many cases show how long one takes, and how long that may take altogether.
+_TRIED = 4
+_TRY_SECONDS = 0.7
+
+
+@dataclass(frozen=True)
+class ReadStudy:
+    """A study ready to be run. question: its canonical text."""
+
+    study_id: str
+    name: str
+    question: bytes
+    analysis: Analysis
+
+    @property
+    def columns(self) -> Columns:
+        """The columns of its table of cases."""
+        plan = self.analysis.plan
+        numbers = (Column(name, unit) for name, unit in zip(plan.names, plan.units, strict=True))
+        infos = self.analysis.prepared.results.infos
+        return Columns(tuple(numbers), tuple(Column(info.name, info.measure.unit) for info in infos))
+
+
+def read_study(name: str, content: Any, solver: Solver, settings: Settings, keep_going: KeepGoing) -> ReadStudy:
+    """A study from its name and the plain JSON of its question.
+
+    Raises RequestRefused and CoreError with pointers that begin with the key `question`.
+    """
+    if name not in ANALYSES:
+        detail = f"One of {', '.join(ANALYSES)} is wanted here."
+        raise RequestRefused((Issue(("study",), detail, "unknown-study"),))
+    call = ANALYSES[name]
+    with _pointing_below("question"), on_behalf_of(keep_going):
+        question = _validated(call.model, content)
+        solved = solver.of_question(question, keep_going)
+        try:
+            analysis = call.read(question, prepare(question, solved.problem, solved.solution, settings))
+        except CoreError as error:
+            point_into_question(error, solved.problem.units)
+            raise
+    text = _canonical(question)
+    digest = hashlib.sha256("\n".join((name, __version__)).encode() + b"\n" + _named_by_digest(question))
+    return ReadStudy(digest.hexdigest(), name, text, analysis)
+
+
+def acceptance(study: ReadStudy, settings: Settings, keep_going: KeepGoing) -> Acceptance:
+    """What the store is told of a new study. Raises TooCostly for one that passes a limit."""
+    expected = study.analysis.most_cases
+    if expected > settings.study_cases:
+        raise TooCostly(
+            f"The study would take up to {expected} cases; at most {settings.study_cases} are allowed.",
+            expected,
+            settings.study_cases,
+        )
+    check_work(study.analysis.prepared.estimates(), settings)
+    columns = study.columns
+    return Acceptance(
+        study.study_id,
+        study.name,
+        study.question,
+        __version__,
+        columns,
+        chunk_size_for(_seconds_a_case(study.analysis, settings, keep_going)),
+        expected,
+        _LEAST_ROOM + expected * (_ROOM_FACTOR * columns.bytes_a_case + _ROOM_A_CASE),
+    )
+
+
+def _validated(model: type[AnalysisQuestion], content: Any) -> AnalysisQuestion:
+    try:
+        return model.model_validate(content)
+    except ValidationError as error:
+        errors = [{**mistake, "loc": ("body", *mistake["loc"])} for mistake in error.errors()]
+        raise RequestRefused(issues_of(errors, content)) from None
+
+
+@contextmanager
+def _pointing_below(key: str) -> Iterator[None]:
+    """Make pointers of errors, which count from a question, count from the object that has it under a key."""
+    try:
+        yield
+    except Refusal as error:
+        error.issues = tuple(Issue((key, *issue.path), issue.detail, issue.code) for issue in error.issues)
+        raise
+    except CoreError as error:
+        if error.field:
+            error.field = (key, *error.field)
+        raise
+
+
+def _canonical(question: AnalysisQuestion) -> bytes:
+    """The one JSON text of a question: keys sorted, nothing that was left out."""
+    return _text(question.model_dump(mode="json", exclude_none=True, by_alias=True))
+
+
+def _named_by_digest(question: AnalysisQuestion) -> bytes:
+    """The same with the digest of the problem in place of it, so that it does not matter which of both was sent."""
+    content = question.model_dump(mode="json", exclude_none=True, by_alias=True)
+    if question.problem is not None:
+        del content["problem"]
+        content["problem_id"] = problem_id_of(canonical(question.problem))
+    return _text(content)
+
+
+def _text(content: Any) -> bytes:
+    return json.dumps(content, sort_keys=True, separators=(",", ":"), ensure_ascii=False).encode()
+
+
+class _FirstWave(BaseException):
+    """Leaves an analysis once it has said which cases it wants first, past whatever it catches."""
+
+    def __init__(self, cases: FloatArray, accuracy: float | None) -> None:
+        super().__init__()
+        self.cases = cases
+        self.accuracy = accuracy
+
+
+def _seconds_a_case(analysis: Analysis, settings: Settings, keep_going: KeepGoing) -> float:
+    """How long a case takes, tried with the first that the analysis wants."""
+
+    def tell(cases: FloatArray, *, accuracy: float | None = None) -> Evaluations:
+        raise _FirstWave(np.array(cases, dtype=float), accuracy)
+
+    try:
+        analysis.run(tell)
+    except _FirstWave as wave:
+        end = time.perf_counter() + _TRY_SECONDS
+
+        def in_time() -> None:
+            keep_going()
+            if time.perf_counter() > end:
+                raise Interrupted("One case takes longer than a chunk should.")
+
+        evaluate = evaluator(analysis.plan, settings, in_time)
+        spent = []
+        for case in wave.cases[:_TRIED]:
+            begun = time.perf_counter()
+            try:
+                evaluate(case[np.newaxis], accuracy=wave.accuracy)
+            except Interrupted:
+                keep_going()
+                return _TRY_SECONDS
+            spent.append(time.perf_counter() - begun)
+        # The first one also reads what all have in common; of several it is left out.
+        return max(spent[1:] or spent, default=0.0)
+    return 0.0
