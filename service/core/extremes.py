@@ -22,7 +22,7 @@ from service.core.errors import AccuracyNotReached
 from service.core.faces import AXES, Face, axes_along
 from service.core.field import Setting
 from service.core.first_grids import first_grids, from_boxes, thinned
-from service.core.held_peaks import extreme_held, extreme_held_within, is_held_everywhere, may_exceed
+from service.core.held_peaks import extreme_held, extreme_held_within, held_faces_under, may_exceed
 from service.core.maps import Rectangle
 from service.core.profiles import Profiles
 from service.core.region import Region
@@ -114,7 +114,7 @@ class _Looked:
         body = self._setting.body
         held = extreme_held_within(body, self._region, sign)
         if held is not None:
-            if is_held_everywhere(body, self._region):
+            if held_faces_under(body, self._region):
                 return held
             highest = extreme_held(body, sign)
             is_highest = highest is not None and sign * held.value >= sign * highest.value

@@ -16,8 +16,10 @@ from service.core import field
 from service.core.climbing import FIRST_ACCURACY, STARTS, Start
 from service.core.conditions import Held, map_of
 from service.core.endless import neighbourhood
-from service.core.faces import axes_along, axis_of
+from service.core.faces import Face, axes_along, axis_of
 from service.core.field import Setting
+from service.core.maps import FaceMap
+from service.core.problem import Body
 from service.core.region import Region
 from service.core.time_range import widest
 
@@ -41,42 +43,54 @@ def first_grids(setting: Setting, region: Region) -> list[list[FloatArray]]:
     """The axes of each first grid of a region."""
     body = setting.body
     everywhere = [places_along(setting, region, axis) for axis in range(3)]
+    on_faces = [
+        (_on_face(body, face, face_map, everywhere), face)
+        for face, condition in body.faces.items()
+        if (face_map := map_of(condition)) is not None
+        and not (isinstance(condition, Held) or face_map.is_uniform)
+        and region.touches(axis_of(face), body.end_of(face))
+    ]
+    if any(places.size == 1 for places in everywhere):
+        # A flat region is a grid by itself, with all the data of the face it may lie on.
+        on_it = [grid for grid, face in on_faces if region.lies_on(body, face)]
+        return on_it[:1] or [[thinned(places, MOST_FACE_PLACES) for places in everywhere]]
     through = [thinned(places) for places in everywhere]
-    has_all = all(some.size == places.size for some, places in zip(through, everywhere, strict=True))
-    grids = [through]
-    for face, condition in body.faces.items():
-        face_map, axis = map_of(condition), axis_of(face)
-        if face_map is None or isinstance(condition, Held) or face_map.is_uniform:
-            continue
-        if region.touches(axis, body.end_of(face)) and not (has_all and region.lies_on(body, face)):
-            axes = [np.array([body.end_of(face)])] * 3
-            for other, knots in zip(axes_along(face), (face_map.first_knots, face_map.second_knots), strict=True):
-                axes[other] = _data_places(everywhere[other], knots, face_map.bilinear)
-            grids.append(axes)
-    return grids if has_all else grids + _on_border(setting, region, everywhere)
+    grids = [through, *(grid for grid, _ in on_faces)]
+    if all(some.size == places.size for some, places in zip(through, everywhere, strict=True)):
+        return grids
+    return grids + _on_border(body, region, everywhere)
 
 
-def _on_border(setting: Setting, region: Region, everywhere: list[FloatArray]) -> list[list[FloatArray]]:
-    """Grids on the sides of a region that are not faces of the body, and on a region that is flat."""
+def _on_border(body: Body, region: Region, everywhere: list[FloatArray]) -> list[list[FloatArray]]:
+    """Grids on the sides of a region that are not faces of the body."""
     grids = []
     for axis in range(3):
-        ends = set(region.along(axis))
-        for end in ends:
-            if math.isfinite(end) and (len(ends) == 1 or setting.body.face_at(axis, end) is None):
+        for end in region.along(axis):
+            if math.isfinite(end) and body.face_at(axis, end) is None:
                 axes = [thinned(places, MOST_FACE_PLACES) for places in everywhere]
                 axes[axis] = np.array([end])
                 grids.append(axes)
     return grids
 
 
+def _on_face(body: Body, face: Face, face_map: FaceMap, everywhere: list[FloatArray]) -> list[FloatArray]:
+    """A grid on a face where its data show."""
+    axes = [np.array([body.end_of(face)])] * 3
+    for other, knots in zip(axes_along(face), (face_map.first_knots, face_map.second_knots), strict=True):
+        axes[other] = _data_places(everywhere[other], knots, face_map.bilinear)
+    return axes
+
+
 def _data_places(places: FloatArray, knots: FloatArray, bilinear: bool) -> FloatArray:
-    """Where a face's data show along an axis: everything if that is little, else its readings or its cells' middles."""
+    """Where a face's data show along an axis: everything if that is little, else its readings or its cells' middles,
+    and some of everything.
+    """
     if places.size <= MOST_FACE_PLACES:
         return places
     knots = knots[np.isfinite(knots)]
     shown = knots if bilinear else 0.5 * (knots[1:] + knots[:-1])
     inside = (shown > places[0]) & (shown < places[-1])
-    return np.unique(np.concatenate([places[[0, -1]], shown[inside]]))
+    return np.unique(np.concatenate([thinned(places), shown[inside]]))
 
 
 def places_along(setting: Setting, region: Region, axis: int) -> FloatArray:

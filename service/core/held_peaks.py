@@ -45,9 +45,12 @@ def extreme_held(body: Body, sign: float) -> Place | None:
 
 
 def extreme_held_within(body: Body, region: Region, sign: float) -> Place | None:
-    """The same on the parts of faces that lie in a region, as far as their data tell."""
+    """The same on the parts of faces that lie in a region, as far as their data tell.
+
+    Of a region on a held face the data of that face alone, also where another one meets it in a jump.
+    """
     best: tuple[Peak, Face] | None = None
-    for face in body.present_faces:
+    for face in held_faces_under(body, region) or body.present_faces:
         condition = body.faces[face]
         if not isinstance(condition, Held) or not region.touches(axis_of(face), body.end_of(face)):
             continue
@@ -71,9 +74,9 @@ def extreme_held_within(body: Body, region: Region, sign: float) -> Place | None
     return Place(found, peak.value, peak.slack, name_of_place(body, found))
 
 
-def is_held_everywhere(body: Body, region: Region) -> bool:
-    """Whether all of a region lies on a held face."""
-    return any(isinstance(body.faces[face], Held) and region.lies_on(body, face) for face in body.present_faces)
+def held_faces_under(body: Body, region: Region) -> list[Face]:
+    """The held faces that all of a region lies on: one, or those that meet in an edge or corner."""
+    return [face for face in body.present_faces if isinstance(body.faces[face], Held) and region.lies_on(body, face)]
 
 
 def _peak_of(face_map: FaceMap, lengths: Sequence[float], sign: float) -> Peak:
