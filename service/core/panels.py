@@ -23,7 +23,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import time_range
-from service.core.lines.images import ARRIVAL
+from service.core.lines.kernels import ARRIVAL
 from service.core.lines.line import VALUE, Line, WallDrive
 from service.core.lines.pairs import Intervals, pair_means
 from service.core.lines.places import Places

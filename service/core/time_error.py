@@ -13,7 +13,9 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines.images import ARRIVAL, LATEST, NARROW, Afar, narrow_from, seen_from_afar
+from service.core.lines.afar import Afar, seen_from_afar
+from service.core.lines.images import LATEST, NARROW, narrow_from
+from service.core.lines.kernels import ARRIVAL
 from service.core.lines.line import Drive, Line, WallDrive, breaks_of
 from service.core.lines.modes import MODE_COUNT, eigen_integrals, modes_of
 from service.core.lines.places import Places

@@ -5,7 +5,7 @@ equation takes it to
 
     u(x, t) = f + t f'' + t^2 / 2! f'''' + ... + sum over knots of J_n (-sgn d)^(n + 1) g_n(|d|),   d = x - x_knot
 
-with g_n as in `images`, and an end answers with the images it gives there. While a piece is wide against sqrt t this
+with g_n as in `kernels`, and an end answers with the images it gives there. While a piece is wide against sqrt t this
 keeps the digits of the departure u - f. Once it is narrow its breaks cancel, and it is summed from its inside, as
 point sources at the places of Gauss's rule.
 """
@@ -17,7 +17,8 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines.images import ARRIVAL, film_part, free, from_points
+from service.core.lines.images import from_points
+from service.core.lines.kernels import ARRIVAL, film_part, free
 from service.core.lines.line import SLOPE, VALUE, Line, Order, wall_distance
 from service.core.profiles import Profiles
 

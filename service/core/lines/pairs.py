@@ -3,7 +3,7 @@
     E_ij(t) = 1 / (w_i w_j) integral over interval i, integral over interval j of G(x, x', t) dx' dx
 
 with G the line's point source, so that E is symmetric. An interval wide against sqrt(t) is integrated by its two
-ends: free of them -G is the second derivative of |d| / 2 + g_1(|d|) in x and x' (see `images` for g and its images in
+ends: free of them -G is the second derivative of |d| / 2 + g_1(|d|) in x and x' (see `kernels` for g and its images in
 the ends), whose first part adds up to the overlap of the two intervals exactly. A narrow one is averaged by Gauss
 quadrature, since its ends would cancel. Once eigenfunctions are few they serve alone: E = C exp(-rates t) C^T.
 """
@@ -17,7 +17,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines import images
+from service.core.lines import kernels
 from service.core.lines.line import Line
 from service.core.lines.modes import modes_of
 
@@ -160,7 +160,7 @@ def _block(line: Line, first: _Readings, second: _Readings, root_time: FloatArra
     """Means of one class over another without the overlap of wide ones, shape (n_times, n_first, n_second)."""
     order = first.by_ends + second.by_ends - 1
     difference = (np.add.outer(first.base, -second.base) + np.add.outer(first.shift, -second.shift)) * line.scale
-    values = _arrived(lambda d, t: images.free(order, d, t), np.abs(difference), root_time)
+    values = _arrived(lambda d, t: kernels.free(order, d, t), np.abs(difference), root_time)
     if order == 1:
         np.negative(values, out=values)
     elif order == 0:
@@ -169,11 +169,11 @@ def _block(line: Line, first: _Readings, second: _Readings, root_time: FloatArra
     # The image is -rho_(-1); of its antiderivatives the one in a single place changes its sign at the low end.
     if line.has_low_end:
         at_low = np.add.outer(first.base + first.shift, second.base + second.shift) * line.scale
-        image = _arrived(lambda s, t: images.reflected(order, s, t, line.film_low), at_low, root_time)
+        image = _arrived(lambda s, t: kernels.reflected(order, s, t, line.film_low), at_low, root_time)
         values += image if order == 0 else -image
     if not line.is_endless:
         at_high = np.add.outer((line.length - first.base) - first.shift, (line.length - second.base) - second.shift)
-        values -= _arrived(lambda s, t: images.reflected(order, s, t, line.film_high), at_high * line.scale, root_time)
+        values -= _arrived(lambda s, t: kernels.reflected(order, s, t, line.film_high), at_high * line.scale, root_time)
     return np.asarray(np.einsum("tipj,ip->tij", np.einsum("tipjq,jq->tipj", values, second.weights), first.weights))
 
 
@@ -181,7 +181,7 @@ def _arrived(kernel: Kernel, distance: FloatArray, root_time: FloatArray) -> Flo
     """Kernel at distances and times, 0 where no front has arrived by the last, shape (n_times, *distance.shape)."""
     values = np.zeros((root_time.size, distance.size))
     flat = distance.ravel()
-    near = np.flatnonzero(flat < images.ARRIVAL * root_time[-1])
+    near = np.flatnonzero(flat < kernels.ARRIVAL * root_time[-1])
     if near.size:
         at = np.tile(flat[near], root_time.size)
         values[:, near] = kernel(at, np.repeat(root_time, near.size)).reshape(root_time.size, -1)

@@ -13,7 +13,8 @@ from collections.abc import Callable
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.lines import curves, images, stack_response
+from service.core.lines import afar, curves, images, stack_response, wall_pulse
+from service.core.lines.kernels import SMOOTH_POINTS
 from service.core.lines.line import PRIMITIVE, VALUE, Drive, Line, Order, WallDrive
 from service.core.lines.modes import MODE_COUNT, eigen_integrals, modes_of
 from service.core.lines.places import Places, TimeResponse
@@ -58,35 +59,35 @@ def _early_until(line: Line, drive: Drive) -> float:
     """The time until which a line answers by the breaks of its drive."""
     if not line.is_endless:
         return images.LATEST * line.extent**2
-    seen = None if isinstance(drive, WallDrive) else images.seen_from_afar(line, drive)
+    seen = None if isinstance(drive, WallDrive) else afar.seen_from_afar(line, drive)
     return math.inf if seen is None else seen.root_time**2
 
 
 def _afar(line: Line, drive: Drive, places: Places, times: FloatArray) -> FloatArray:
     """An endless line at times long against all that changes along it."""
     assert isinstance(drive, Profiles)
-    seen, root_time = images.seen_from_afar(line, drive), np.sqrt(times)
+    seen, root_time = afar.seen_from_afar(line, drive), np.sqrt(times)
     assert seen is not None
     if places.high is None:
-        return images.from_afar(line, seen, places.low, root_time, places.order)
+        return afar.from_afar(line, seen, places.low, root_time, places.order)
     low, high = places.low, places.high
     smooth = _smooth_from(line, low, high, root_time)
-    wide = images.from_afar(line, seen, high, root_time[:smooth], PRIMITIVE)
-    wide -= images.from_afar(line, seen, low, root_time[:smooth], PRIMITIVE)
+    wide = afar.from_afar(line, seen, high, root_time[:smooth], PRIMITIVE)
+    wide -= afar.from_afar(line, seen, low, root_time[:smooth], PRIMITIVE)
     wide += seen.step.integrals(low, high)[:, None, :] * line.scale
     if smooth == root_time.size:
         return wide
 
     def value(at: FloatArray) -> FloatArray:
-        return images.from_afar(line, seen, at, root_time[smooth:], VALUE)
+        return afar.from_afar(line, seen, at, root_time[smooth:], VALUE)
 
     return np.concatenate([wide, _integrated(value, line, low, high)], axis=1)
 
 
 def _early_wall(line: Line, drive: WallDrive, places: Places, root_time: FloatArray) -> FloatArray:
     if places.high is None:
-        return images.wall_kernel(line, drive, places.low, root_time, places.order)
-    return images.wall_integrals(line, drive, places.low, places.high, root_time)
+        return wall_pulse.wall_kernel(line, drive, places.low, root_time, places.order)
+    return wall_pulse.wall_integrals(line, drive, places.low, places.high, root_time)
 
 
 def _departure(line: Line, drive: Profiles, coordinates: FloatArray, root_time: FloatArray, order: Order) -> FloatArray:
@@ -131,10 +132,10 @@ def _smooth_from(line: Line, low: FloatArray, high: FloatArray, root_time: Float
 
 def _integrated(value: Callable[[FloatArray], FloatArray], line: Line, low: FloatArray, high: FloatArray) -> FloatArray:
     """Integrals over intervals, in scaled length, of an answer that is smooth on them; value: (n,) to (n, t, r)."""
-    nodes, weights = np.polynomial.legendre.leggauss(images.SMOOTH_POINTS)
+    nodes, weights = np.polynomial.legendre.leggauss(SMOOTH_POINTS)
     half = 0.5 * (high - low)
     values = value((0.5 * (low + high)[:, None] + half[:, None] * nodes).ravel())
-    values = values.reshape(low.size, images.SMOOTH_POINTS, *values.shape[1:])
+    values = values.reshape(low.size, SMOOTH_POINTS, *values.shape[1:])
     return np.asarray(np.einsum("nptr,p->ntr", values, weights) * (half * line.scale)[:, None, None])
 
 

@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 from scipy.special import erfc
 
-from service.core.lines import images, laplace
+from service.core.lines import afar, laplace
 from service.core.lines.line import PRIMITIVE, SLOPE, VALUE, Line, Order
 from service.core.lines.places import Places
 from service.core.lines.time_response import respond
@@ -52,7 +52,7 @@ def asked(order: Order) -> Places:
 def test_breaks_and_point_sources_agree_where_one_hands_over_to_the_other(name: str, far: float, order: Order) -> None:
     line = LINES[name]
     drive = profiles_on(line, far=far)
-    seen = images.seen_from_afar(line, drive)
+    seen = afar.seen_from_afar(line, drive)
     assert seen is not None
     times = seen.root_time**2 * np.array([1.0 - 4e-16, 1.0 + 4e-16])
     early, late = np.moveaxis(respond(line, drive, asked(order), times).total, 1, 0)

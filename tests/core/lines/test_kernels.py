@@ -6,7 +6,7 @@ import mpmath
 import numpy as np
 import pytest
 
-from service.core.lines import images
+from service.core.lines import kernels
 
 PLACES = [(0.0, 1e-3), (1e-9, 1e-3), (0.3, 0.1), (2e-3, 1e-3), (0.05, 0.07)]
 FILMS = [1e-12, 1e-9, 1e-3, 0.7, 40.0, 1e4, 1e9]
@@ -37,7 +37,7 @@ def end_function(order: int, distance: float, root_time: float, film: float) -> 
 @pytest.mark.parametrize("order", [-1, 0, 1, 2])
 def test_end_functions_keep_their_digits_for_every_film(order: int, film: float) -> None:
     for distance, root_time in PLACES:
-        found = images.film_part(order, np.array([distance]), np.array([root_time]), film)[0]
+        found = kernels.film_part(order, np.array([distance]), np.array([root_time]), film)[0]
         with mpmath.workdps(60):
             expected = float(end_function(order, distance, root_time, film))
             # What rounding refers to: the same function of an insulated end.
@@ -49,7 +49,7 @@ def test_end_functions_keep_their_digits_for_every_film(order: int, film: float)
 @pytest.mark.parametrize("order", [-1, 0, 1])
 def test_jump_on_a_film_end_and_its_image_do_not_cancel(order: int, film: float) -> None:
     for distance, root_time in PLACES:
-        found = images.with_its_image(order, np.array([distance]), np.array([root_time]), film)[0]
+        found = kernels.with_its_image(order, np.array([distance]), np.array([root_time]), film)[0]
         with mpmath.workdps(60):
             expected = float(film * end_function(order + 1, distance, root_time, film))
         # Relative to itself, however small the film makes it.
