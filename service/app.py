@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import asyncio
 from collections.abc import AsyncIterator
 from contextlib import asynccontextmanager
 
@@ -22,6 +23,8 @@ from service.routes import (
     problems,
     reach,
     resistances,
+    sensitivities,
+    sizing,
     studies,
 )
 from service.settings import Settings
@@ -45,11 +48,12 @@ def create_app(settings: Settings | None = None) -> FastAPI:
 
     @asynccontextmanager
     async def lifespan(app: FastAPI) -> AsyncIterator[None]:
-        app.state.service = open_state(settings)
+        # Files and processes are waited for in a thread.
+        app.state.service = await asyncio.to_thread(open_state, settings)
         try:
             yield
         finally:
-            app.state.service.close()
+            await asyncio.to_thread(app.state.service.close)
 
     app = FastAPI(
         title="Stillfield",
@@ -65,7 +69,7 @@ def create_app(settings: Settings | None = None) -> FastAPI:
     openapi.install(app)
     problem_details.install(app)
     answering = (problems, fields, flux_totals, convergence, pads, resistances, reach)
-    for module in (*answering, limits, cases, studies, health, pages):
+    for module in (*answering, limits, sensitivities, tolerances, sizing, cases, studies, health, pages):
         app.include_router(module.router)
     pages.mount_files(app)
 

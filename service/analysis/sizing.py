@@ -63,7 +63,8 @@ class Edge:
 
     kind: at a limit, at the end of the range that was looked at, or where cases begin to fail. number: of the edge.
     error_bound: by how much the true edge may be off; 0 at the end of the range. limit: which one ends it, and slope:
-    the derivative of that limit's result by the number; None for the other kinds, and where cases beside it fail.
+    the derivative of that limit's result by the number, with an estimate of its error; None for the other kinds, and
+    where cases beside it fail.
     """
 
     kind: Ends
@@ -71,6 +72,7 @@ class Edge:
     error_bound: float = 0.0
     limit: int | None = None
     slope: float | None = None
+    slope_error: float | None = None
 
 
 @dataclass(frozen=True)
@@ -323,8 +325,14 @@ def _proved(samples: Samples, roots: Sequence[tuple[float, float, float]]) -> li
     samples.look(np.concatenate([root, *sides]))
     at, before, after = samples.at(root), samples.at(sides[0]), samples.at(sides[1])
     limits = np.array([samples.binding(index) for index in at])
-    slopes = (samples.values[after, limits] - samples.values[before, limits]) / (sides[1] - sides[0])
+    values = [samples.values[place, limits] for place in (before, at, after)]
+    slopes = (values[2] - values[0]) / (sides[1] - sides[0])
     with np.errstate(divide="ignore", invalid="ignore"):
+        # What the values are off by, and how the slopes to either side differ, which is more than their mean is off.
+        slope_errors = (samples.bounds[before, limits] + samples.bounds[after, limits]) / (sides[1] - sides[0])
+        slope_errors += np.abs(
+            (values[2] - values[1]) / (sides[1] - root) - (values[1] - values[0]) / (root - sides[0])
+        )
         rooms = samples.bounds[at, limits] / np.abs(slopes) + np.spacing(np.abs(root))
     rooms[np.isnan(rooms)] = 0.0
     places = [np.clip(root + sign * far * rooms, low, high) for far in PROOF_AT for sign in (-1, 1)]
@@ -334,8 +342,8 @@ def _proved(samples: Samples, roots: Sequence[tuple[float, float, float]]) -> li
     for index, number in enumerate(root):
         within = decided[(decided >= low[index]) & (decided <= high[index])]
         off = max(number - within[within <= number].max(), within[within >= number].min() - number)
-        slope = float(slopes[index]) if np.isfinite(slopes[index]) else None
-        edges.append(Edge("limit", float(number), float(off), int(limits[index]), slope))
+        slope = (float(slopes[index]), float(slope_errors[index])) if np.isfinite(slope_errors[index]) else (None, None)
+        edges.append(Edge("limit", float(number), float(off), int(limits[index]), *slope))
     return edges
 
 

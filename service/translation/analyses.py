@@ -5,7 +5,10 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
-from service.translation import limits, table_of_cases
+from service.translation import limits, sensitivities, sizing, table_of_cases, tolerances
 from service.translation.analysis import AnalysisCall
 
-ANALYSES: Mapping[str, AnalysisCall[Any]] = {call.name: call for call in (limits.CALL, table_of_cases.CALL)}
+ANALYSES: Mapping[str, AnalysisCall[Any]] = {
+    call.name: call
+    for call in (limits.CALL, sensitivities.CALL, tolerances.CALL, sizing.CALL, table_of_cases.CALL)
+}

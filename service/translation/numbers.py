@@ -79,7 +79,7 @@ def read_numbers(
         if reference.name in seen:
             collector.add((*here, "name"), "Another number has this name already.", "name")
         seen.add(reference.name)
-        read = _Reading(collector, document, units, here).read(reference)
+        read = read_number(collector, reference, document, units, here)
         if read is None:
             continue
         info, target = read
@@ -91,6 +91,13 @@ def read_numbers(
         infos.append(info)
         targets.append(target)
     return tuple(infos), tuple(targets)
+
+
+def read_number(
+    collector: Collector, reference: NumberReference, document: Mapping[str, Any], units: UnitSystem, path: Path
+) -> tuple[NumberInfo, NumberTarget] | None:
+    """One number of a request, which stands in it at `path`. None, and noted, where a pointer leads to no number."""
+    return _Reading(collector, document, units, path).read(reference)
 
 
 def written(path: Path) -> str:

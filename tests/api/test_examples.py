@@ -21,6 +21,7 @@ from service.models.operation import ProblemAnswer
 from service.models.pads_answer import PadsAnswer
 from service.models.reach_answer import ReachAnswer
 from service.models.resistances_answer import ResistancesAnswer
+from service.models.sizing_answer import SizingAnswer
 from service.openapi import load_examples
 
 pytestmark = pytest.mark.anyio
@@ -37,6 +38,7 @@ MODELS: dict[str, type[Model]] = {
     "/v1/reach": ReachAnswer,
     "/v1/limits": LimitsAnswer,
     "/v1/cases": CasesAnswer,
+    "/v1/sizing": SizingAnswer,
 }
 
 # A number may differ by what stands beside it under these.
