@@ -5,6 +5,7 @@ from service.core.certificate import Certificate
 from service.core.climbing import Place
 from service.core.conditions import Condition, Film, FilmPad, FluxPad, Held, HeldPad, Inflow, Insulated, Mixed
 from service.core.convergence import Convergence, NodeStep, Overshoot, SeriesStep
+from service.core.decay_rates import DecayRate
 from service.core.errors import (
     AccuracyNotReached,
     CoreError,
@@ -24,7 +25,7 @@ from service.core.influence import Influence, influence, peaks
 from service.core.laws import ConductivityLaw, Radiation
 from service.core.maps import FaceMap, Patch, Rectangle
 from service.core.problem import Body, BoxSource, Layer
-from service.core.reach import DecayRate, Reach, Reached
+from service.core.reach import Reach, Reached
 from service.core.solution import Solution
 from service.core.solving import solve
 from service.core.totals import Balance, Bounded, Total

@@ -6,35 +6,29 @@ extreme inside, nor on sides that are held at zero, lose to an ambient of zero o
 that its largest size on a section never grows with the distance from the face. The distance at which it falls below a
 fraction is thus one number, found by bracketing, and a value above the fraction at a smaller distance and below it at a
 larger one prove how far that number may be off.
-
-Far from the face what is left is the slowest mode of the section, exp(-gamma s), with the decay rates of the modes from
-the eigenvalues of the two lines across (Carslaw and Jaeger 1959, chapter VI): for a square bar of side a whose sides
-are held the first is pi sqrt(2) / a.
 """
 
 from __future__ import annotations
 
 import math
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.optimize import brentq
 
 from service.core import extremes, field
-from service.core.conditions import Condition, Film, Held, Inflow, Insulated, map_of
+from service.core.conditions import Held, map_of
+from service.core.decay_rates import DecayRate, decay_rates
 from service.core.endless import neighbourhood
-from service.core.errors import NoSteadyState, NotPhysical
+from service.core.errors import NotPhysical
 from service.core.faces import Face, axes_along, axis_of, is_high
 from service.core.field import KeepGoing, Setting
-from service.core.lines.modes import modes_of
-from service.core.maps import FaceMap
-from service.core.problem import Body
+from service.core.lone_face import disturbed, level_of_others
 from service.core.profiles import Profiles
-from service.core.solvability import check_steady_state
 from service.core.span import span_of
-from service.core.split import lines_of, parts_of, reference_level
+from service.core.split import lines_of, parts_of
 from service.core.time_range import has_decay, is_undying, widest
 
 FloatArray = NDArray[np.float64]
@@ -80,19 +74,6 @@ class Reached:
 
 
 @dataclass(frozen=True)
-class DecayRate:
-    """A mode of the section: its numbers along the two axes across, counted from 1, and its rate gamma per length."""
-
-    numbers: tuple[int, int]
-    rate: float
-
-    @property
-    def length(self) -> float | None:
-        """1 / gamma; None of a mode that does not decay."""
-        return 1 / self.rate if self.rate > 0 else None
-
-
-@dataclass(frozen=True)
 class Reach:
     """How far the disturbance of a face reaches.
 
@@ -132,80 +113,6 @@ def reach(
     on_axis = () if middle is None else tuple(disturbance.on_the_axis(fraction, middle) for fraction in fractions)
     rates = decay_rates(setting, axis_of(face), modes)
     return Reach(disturbance.reference, disturbance.largest, disturbance.largest_bound, worst, on_axis, rates)
-
-
-def decay_rates(setting: Setting, axis: int, count: int) -> tuple[DecayRate, ...]:
-    """The slowest decay rates along an axis per length of it; none where the section is endless or cut by layers."""
-    first, second = axes_along(axis)
-    across = [setting.lines[first], setting.lines[second]]
-    if setting.body.layers or any(line.is_endless for line in across):
-        return ()
-    squares = [modes_of(line, count).rates for line in across]
-    together = squares[0][:, None] + squares[1]
-    found = []
-    for index in np.argsort(together, axis=None, kind="stable")[:count]:
-        i, j = np.unravel_index(int(index), together.shape)
-        rate = math.sqrt(float(together[i, j])) * setting.lines[axis].scale
-        found.append(DecayRate((int(i) + 1, int(j) + 1), rate))
-    return tuple(found)
-
-
-def level_of_others(body: Body, face: Face) -> float:
-    """The level that most other faces share; where none has one that of the face itself."""
-    others = {other: condition for other, condition in body.faces.items() if isinstance(condition, Held | Film)}
-    own = others.pop(face, None)
-    if not others:
-        face_map = None if own is None else map_of(own)
-        return 0.0 if face_map is None else face_map.usual
-    return reference_level(replace(body, faces={**body.faces, face: Insulated()}))
-
-
-def disturbed(body: Body, face: Face, reference: float, *, unit: bool) -> Body:
-    """The body with nothing but the data of one face, counted from a level, or a unit of them."""
-    if body.law is not None or any(isinstance(c, Film) and c.radiation for c in body.faces.values()):
-        raise NotPhysical(
-            "Where the conductivity varies or a face radiates, a face has no disturbance of its own: what it does "
-            "depends on all the others.",
-            ("face",),
-        )
-    if body.has_mixed_face:
-        raise NotPhysical("The reach of a face is not offered for a body that has mixed faces.", ("face",))
-    faces = {other: _quiet(condition) for other, condition in body.faces.items()}
-    faces[face] = _driven(body.faces[face], reference, unit=unit)
-    layers = tuple(replace(layer, generation=0.0) for layer in body.layers)
-    quiet = replace(body, faces=faces, sources=(), layers=layers)
-    try:
-        check_steady_state(quiet)
-    except NoSteadyState:
-        raise NotPhysical(
-            f"Nothing takes up what the face {face} gives, so it alone has no steady field and reaches everywhere.",
-            ("face",),
-        ) from None
-    return quiet
-
-
-def _quiet(condition: Condition) -> Condition:
-    zero = FaceMap.uniform(0.0)
-    match condition:
-        case Held():
-            return Held(zero)
-        case Film():
-            return replace(condition, ambient=zero)
-        case _:
-            return Insulated()
-
-
-def _driven(condition: Condition, reference: float, *, unit: bool) -> Condition:
-    one = FaceMap.uniform(1.0)
-    match condition:
-        case Held():
-            return Held(one if unit else condition.value.minus(reference))
-        case Film():
-            return replace(condition, ambient=one if unit else condition.ambient.minus(reference))
-        case Inflow():
-            return Inflow(one) if unit else condition
-        case _:
-            return Inflow(one) if unit else Insulated()
 
 
 class _Disturbance:

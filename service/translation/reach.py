@@ -12,10 +12,10 @@ import numpy as np
 from service import cost
 from service.core import Reached, Solution
 from service.core.conditions import Film, Held
+from service.core.decay_rates import DecayRate
 from service.core.estimate import Estimate
 from service.core.faces import AXES, Face, axis_of, is_high
 from service.core.mixed import MixedSolution
-from service.core.reach import DecayRate
 from service.core.varying import VaryingSolution
 from service.models import reach as models
 from service.settings import Settings
