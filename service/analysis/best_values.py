@@ -16,7 +16,7 @@ from numpy.typing import NDArray
 from scipy.optimize import minimize
 from scipy.stats.qmc import Sobol
 
-from service.analysis.descent import FIRST_CHARGE, LEAST_EXCESS, Descent, Ended, Point, Points
+from service.analysis.descent import FIRST_CHARGE, LEAST_EXCESS, LEAST_FALL, Descent, Ended, Point, Points
 from service.analysis.evaluations import Evaluate, Failure, FloatArray
 from service.analysis.limits import Limit, bounds_of, margins, surely_held, surely_passed
 from service.analysis.samples import NOT_FINITE
@@ -34,6 +34,9 @@ APART = 0.15
 # Limits are aimed to hold by so many bounds of their results, and by what a search may leave missing, so that they do
 # hold for sure.
 BOUNDS_INSIDE = 2.0
+
+# A search stops when its model promises the least fall; so many times that may be left as the model is none too good.
+LEFT = 10.0
 
 # What counts as one: goals, and margins that bind, in parts of the scale; numbers in parts of their ranges.
 SAME_GOAL, BINDS, SAME_NUMBERS, AT_END = 1e-4, 1e-4, 1e-2, 1e-6
@@ -83,6 +86,7 @@ class Best:
     bounds: FloatArray
     goal: float
     goal_bound: float
+    left: float
     leading: tuple[int, ...]
     margins: FloatArray
     margin_bounds: FloatArray
@@ -323,6 +327,10 @@ class _Search:
         ]
         compared = [self._compared(start, best) for start in tried] if best is not None else []
         compared.sort(key=lambda start: self._goal.sign * start.last_goal)
+        if best is not None:
+            # Searches that stopped short of each other all thought that little was left.
+            alike = [start.last_goal for start in compared if start.same_goal and start.ended == "converged"]
+            best = replace(best, left=max([best.left, *(abs(goal - best.goal) for goal in alike)]))
         return BestValues(
             best=best,
             at_first=self._goal_at(0) if has_first else None,
@@ -371,6 +379,7 @@ class _Search:
             bounds=self._bounds[index],
             goal=goal,
             goal_bound=goal_bound,
+            left=LEFT * (LEAST_FALL * self._scale() + goal_bound),
             leading=tuple(np.flatnonzero(near).tolist()),
             margins=held[0][index],
             margin_bounds=held[1][index],

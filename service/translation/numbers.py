@@ -155,10 +155,10 @@ class _Reading:
 
     def _leaves(self, pointer: str, way: Way, place: Path) -> list[tuple[Leaf, Measure]]:
         """The values a pointer leads to, each with what it measures. place: of the pointer in the request."""
-        path = self._resolve(pointer, place)
+        path = resolve(self._collector, self._document, pointer, place)
         if path is None:
             return []
-        here = _value_at(self._document, path)
+        here = value_at(self._document, path)
         if isinstance(here, dict | list):
             if way != "scale":
                 detail = f"{pointer} is no single number; point to one, or use `scale`."
@@ -208,26 +208,27 @@ class _Reading:
         number = read_measured(self._collector, measure, value, path)
         return None if len(self._collector.issues) > noted else (Leaf(path, number), measure)
 
-    def _resolve(self, pointer: str, place: Path) -> Path | None:
-        """The path of a pointer; None, and noted, where it leads nowhere."""
-        path: list[str | int] = []
-        here: Any = self._document
-        for token in pointer[1:].split("/"):
-            key = token.replace("~1", "/").replace("~0", "~")
-            if isinstance(here, list) and _INDEX.fullmatch(key) and int(key) < len(here):
-                path.append(int(key))
-            elif isinstance(here, dict) and key in here:
-                path.append(key)
-            else:
-                before = written(tuple(path)) or "the request"
-                detail = f'There is no "{key[:100]}" in {before}; {_what_is_there(here)}.'
-                self._collector.add(place, detail, "no-such-place")
-                return None
-            here = here[path[-1]]
-        if path[0] not in ("problem", "results"):
-            self._collector.add(place, "Pointers have to begin with /problem or /results.", "no-such-place")
+
+def resolve(collector: Collector, document: Mapping[str, Any], pointer: str, place: Path) -> Path | None:
+    """The path of a pointer into a request; None, and noted, where it leads nowhere. place: where the pointer stands."""
+    path: list[str | int] = []
+    here: Any = document
+    for token in pointer[1:].split("/"):
+        key = token.replace("~1", "/").replace("~0", "~")
+        if isinstance(here, list) and _INDEX.fullmatch(key) and int(key) < len(here):
+            path.append(int(key))
+        elif isinstance(here, dict) and key in here:
+            path.append(key)
+        else:
+            before = written(tuple(path)) or "the request"
+            detail = f'There is no "{key[:100]}" in {before}; {_what_is_there(here)}.'
+            collector.add(place, detail, "no-such-place")
             return None
-        return tuple(path)
+        here = here[path[-1]]
+    if path[0] not in ("problem", "results"):
+        collector.add(place, "Pointers have to begin with /problem or /results.", "no-such-place")
+        return None
+    return tuple(path)
 
 
 # Words that stand in place of a coordinate or a size.
@@ -245,7 +246,8 @@ def _what_is_there(here: Any) -> str:
     return "it is a single value"
 
 
-def _value_at(document: Any, path: Path) -> Any:
+def value_at(document: Any, path: Path) -> Any:
+    """What stands at a path of a request."""
     for part in path:
         document = document[part]
     return document
