@@ -26,6 +26,7 @@ from service.routes import (
     sensitivities,
     sizing,
     studies,
+    tolerances,
 )
 from service.settings import Settings
 from service.state import open_state

@@ -78,7 +78,10 @@ class Settings(BaseSettings):
     )
     study_workers: PositiveInt = Field(
         default_factory=lambda: os.cpu_count() or 1,
-        description="Processes that compute cases of studies, with less priority than requests.",
+        description="Processes that compute cases of studies.",
+    )
+    study_niceness: int = Field(
+        10, ge=0, le=19, description="Steps of priority those processes are below the service, so that requests go first."
     )
     study_case_seconds: PositiveFloat = Field(60.0, description="Longest computation of one case of a study.")
     study_memory_bytes: PositiveInt = Field(

@@ -54,12 +54,8 @@ class Engine:
 
     def close(self) -> None:
         """Begin no more. Those that run have been told to stop and have stopped."""
-        global _running
         with _lock:
-            if self._is_open:
-                DBOS.destroy()
-                self._is_open = False
-                _running = None
+            self._close()
 
     def _open(self) -> None:
         global _running
@@ -76,20 +72,31 @@ class Engine:
             "enable_otlp": False,
             "log_level": logging.getLevelName(logging.CRITICAL),
         }
-        DBOS(config=config)
         # Recovery begins with the launch.
         _running = self
         self._is_open = True
-        DBOS.launch()
-        # What is over is of no more use to it; the store has the studies.
-        over = DBOS.list_workflows(status=["SUCCESS", "ERROR"], load_input=False, load_output=False)
-        DBOS.delete_workflows([workflow.workflow_id for workflow in over])
-        DBOS.register_queue(
-            _QUEUE,
-            worker_concurrency=self._most_running,
-            polling_interval_sec=_POLL_SECONDS,
-            on_conflict="always_update",
-        )
+        try:
+            DBOS(config=config)
+            DBOS.launch()
+            # What is over is of no more use to it; the store has the studies.
+            over = DBOS.list_workflows(status=["SUCCESS", "ERROR"], load_input=False, load_output=False)
+            DBOS.delete_workflows([workflow.workflow_id for workflow in over])
+            DBOS.register_queue(
+                _QUEUE,
+                worker_concurrency=self._most_running,
+                polling_interval_sec=_POLL_SECONDS,
+                on_conflict="always_update",
+            )
+        except BaseException:
+            self._close()
+            raise
+
+    def _close(self) -> None:
+        global _running
+        if self._is_open:
+            DBOS.destroy()
+            self._is_open = False
+            _running = None
 
 
 @DBOS.workflow(name="study", max_recovery_attempts=_MOST_RECOVERIES)

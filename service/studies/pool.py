@@ -20,8 +20,6 @@ from service.studies.crew import TimeOver, WorkerLost
 if sys.platform != "win32":
     import resource
 
-# Steps of priority below the service's own processes: a request that comes in finds a processor at once.
-NICENESS = 10
 # How often a worker looks whether its service still lives.
 _LOOK_EVERY_SECONDS = 0.5
 # A new process imports the solver before its first chunk.
@@ -29,11 +27,16 @@ _START_SECONDS = 60.0
 
 
 class Pool:
-    """Some processes, started with the first chunk. memory_bytes: address space of each."""
+    """Some processes, started with the first chunk.
 
-    def __init__(self, workers: int, memory_bytes: int) -> None:
+    memory_bytes: address space of each. niceness: steps of priority they are below this process, so that a request
+    that comes in finds a processor at once.
+    """
+
+    def __init__(self, workers: int, memory_bytes: int, niceness: int) -> None:
         self._workers = workers
         self._memory_bytes = memory_bytes
+        self._niceness = niceness
         self._lock = threading.Lock()
         self._pool: ProcessPool | None = None
 
@@ -55,7 +58,7 @@ class Pool:
                 self._pool = ProcessPool(
                     max_workers=self._workers,
                     initializer=prepare_worker,
-                    initargs=(os.getpid(), self._memory_bytes),
+                    initargs=(os.getpid(), self._memory_bytes, self._niceness),
                     context=multiprocessing.get_context("spawn"),
                 )
             started = self._pool.schedule(
@@ -90,12 +93,12 @@ def _hand_over(done: Future[ChunkOutcome], outcome: Future[ChunkOutcome]) -> Non
         outcome.set_exception(error)
 
 
-def prepare_worker(parent: int, memory_bytes: int) -> None:
-    """Make this process a worker: low priority, limited memory, and an end when its service ends."""
+def prepare_worker(parent: int, memory_bytes: int, niceness: int) -> None:
+    """Make this process a worker: less priority, limited memory, and an end when its service ends."""
     # Ctrl-C in a terminal reaches the whole group; the service ends its workers itself.
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     if sys.platform != "win32":
-        os.nice(NICENESS)
+        os.nice(niceness)
         resource.setrlimit(resource.RLIMIT_AS, (memory_bytes, memory_bytes))
     threading.Thread(target=_end_with, args=(parent,), daemon=True).start()
 

@@ -250,7 +250,7 @@ def _known(study: Study | None) -> Study:
 def _crew_of(settings: Settings) -> Crew:
     """Processes of this machine, or the cluster of the settings. Raises RuntimeError without the packages for one."""
     if not settings.cluster:
-        return Pool(settings.study_workers, settings.study_memory_bytes)
+        return Pool(settings.study_workers, settings.study_memory_bytes, settings.study_niceness)
     try:
         # They belong to the extra `cluster`, which most do without.
         module = importlib.import_module("service.studies.cluster")
