@@ -18,7 +18,7 @@ places compete, shows as two derivatives that differ.
 from __future__ import annotations
 
 from collections.abc import Generator, Mapping, Sequence
-from dataclasses import dataclass, field, fields
+from dataclasses import dataclass, field, fields, replace
 from functools import lru_cache
 from typing import Literal
 
@@ -44,11 +44,15 @@ STEP = 8.0
 # Looks in the middle of an interval, and at either end of one.
 MOST_LOOKS, MOST_LOOKS_ASIDE = 3, 2
 
+# Cases that each number may take, and those that all stubborn ones share beside, enough for a kink.
+CASES_EACH, CASES_SHARED = 8, 48
+
 # Tries to find a radius at which cases have results.
 MOST_TRIES = 3
 
-# Error aimed at in parts of the derivative, a tenth of what is promised.
-TARGET = 1e-7
+# Truncation aimed at in parts of the derivative, a tenth of what is promised, and rounding beyond which the interval is
+# made wider.
+TARGET, TOO_UNSURE = 1e-7, 5e-7
 
 # Truncation above this part of the derivative is a result that does not look smooth.
 ROUGH = 1e-3
@@ -68,6 +72,8 @@ SLOWEST = 0.9
 ACCURACY = 1e-12
 
 ROUNDING = float(np.finfo(float).eps)
+
+_SPENT = Failure("too-many-cases", "All cases that these derivatives may take were used up before it was varied.")
 
 
 @dataclass(frozen=True)
@@ -110,8 +116,7 @@ class NominalFailed(Exception):
 
 def most_cases(n_numbers: int) -> int:
     """The most cases that derivatives by so many numbers take; a well-behaved number takes 4 or 8 of these."""
-    look = DEGREES[-1]
-    return 1 + n_numbers * ((MOST_LOOKS + 2 * MOST_LOOKS_ASIDE) * look + MOST_TRIES * DEGREES[0])
+    return 1 + CASES_EACH * n_numbers + CASES_SHARED
 
 
 def first_radii(nominal: FloatArray, steps: FloatArray) -> FloatArray:
@@ -167,20 +172,25 @@ def _in_waves(
 ) -> tuple[list[_Entry], int]:
     """What each run of a number returns, and how many cases it took.
 
-    All points that are waited for go into one wave; the first has the nominal case at its head.
+    All points that are waited for go into one wave; the first has the nominal case at its head. Numbers that come last
+    go without once all cases are used up, and are left with the looks they had.
     """
     wanted = {place: next(run) for place, run in enumerate(runs)}
     entries: dict[int, _Entry] = {}
     n_cases = 0
     while wanted:
         head = 1 if n_cases == 0 else 0
-        cases = np.repeat(nominal[None, :], head + sum(map(len, wanted.values())), axis=0)
-        ends = head + np.cumsum([len(points) for points in wanted.values()])
-        rows = {place: slice(end - len(wanted[place]), end) for place, end in zip(wanted, map(int, ends), strict=True)}
+        rows: dict[int, slice] = {}
+        end = head
         for place, points in wanted.items():
-            cases[rows[place], place] = points
-        n_cases += len(cases)
-        answers = evaluate(cases, accuracy=accuracy)
+            if n_cases + end + len(points) <= most_cases(len(runs)):
+                rows[place] = slice(end, end + len(points))
+                end += len(points)
+        cases = np.repeat(nominal[None, :], end, axis=0)
+        for place, row in rows.items():
+            cases[row, place] = wanted[place]
+        n_cases += end
+        answers = evaluate(cases, accuracy=accuracy) if end else _nothing(0, centre)
         if head:
             if 0 in answers.failures:
                 raise NominalFailed(answers.failures[0])
@@ -188,7 +198,8 @@ def _in_waves(
         still: dict[int, FloatArray] = {}
         for place in wanted:
             try:
-                still[place] = runs[place].send(_of_rows(answers, rows[place]))
+                found = _of_rows(answers, rows[place]) if place in rows else _nothing(len(wanted[place]), centre)
+                still[place] = runs[place].send(found)
             except StopIteration as finished:
                 entries[place] = finished.value
         wanted = still
@@ -198,6 +209,12 @@ def _in_waves(
 def _of_rows(answers: Evaluations, rows: slice) -> Evaluations:
     failures = {row - rows.start: why for row, why in answers.failures.items() if rows.start <= row < rows.stop}
     return Evaluations(answers.values[rows], answers.bounds[rows], failures)
+
+
+def _nothing(n_cases: int, centre: _Centre) -> Evaluations:
+    """What cases that may not be computed any more give."""
+    unknown = np.full((n_cases, len(centre.values)), np.nan)
+    return Evaluations(unknown, unknown, dict.fromkeys(range(n_cases), _SPENT))
 
 
 # --- rules ---
@@ -245,7 +262,10 @@ def _rule(degree: int, place: float) -> _Rule:
 
 @dataclass(frozen=True)
 class _Look:
-    """First and second derivatives of all results from one interval, each array of shape (n_results,)."""
+    """First and second derivatives of all results from one interval, each array of shape (n_results,).
+
+    settled: whether truncation matters neither beside the derivative nor beside rounding.
+    """
 
     first: FloatArray
     truncation: FloatArray
@@ -255,6 +275,7 @@ class _Look:
     second_rounding: FloatArray
     affine: BoolArray
     bounded: BoolArray
+    settled: BoolArray
 
     @property
     def error(self) -> FloatArray:
@@ -267,15 +288,10 @@ class _Look:
         return np.where(self.bounded, self.second_truncation + self.second_rounding, np.inf)
 
     @property
-    def settled(self) -> BoolArray:
-        """Whether truncation matters neither beside the derivative nor beside rounding."""
-        return self.truncation <= np.maximum(TARGET * np.abs(self.first), self.rounding)
-
-    @property
     def too_narrow(self) -> BoolArray:
-        """Whether rounding keeps a derivative that is not zero from the target."""
+        """Whether rounding keeps a derivative that is not zero from what is promised."""
         size = np.abs(self.first)
-        return self.settled & (self.rounding > TARGET * size) & (self.rounding < size)
+        return self.settled & (self.rounding > TOO_UNSURE * size) & (self.rounding < size)
 
 
 def _look(rule: _Rule, number: _Number, radius: float, values: FloatArray, bounds: FloatArray) -> _Look:
@@ -298,15 +314,18 @@ def _look(rule: _Rule, number: _Number, radius: float, values: FloatArray, bound
     coarse_first = coarse.first @ differences[::2] / radius
     coarse_second = coarse.second @ differences[::2] / radius**2
     truncation = _left_out(sizes, rule.steep) / radius + COARSER * np.abs(first - coarse_first)
+    truncation[~finite & np.isfinite(number.centre.values)] = np.inf
+    rounding = np.abs(rule.first) @ spread / radius
     return _Look(
         first=first,
-        truncation=np.where(finite | ~np.isfinite(number.centre.values), truncation, np.inf),
-        rounding=np.abs(rule.first) @ spread / radius,
+        truncation=truncation,
+        rounding=rounding,
         second=second,
         second_truncation=_left_out(sizes, rule.bent) / radius**2 + COARSER * np.abs(second - coarse_second),
         second_rounding=np.abs(rule.second) @ spread / radius**2,
         affine=np.all(sizes[2:] == 0, axis=0),
         bounded=bounded,
+        settled=truncation <= np.maximum(TARGET * np.abs(first), rounding),
     )
 
 
@@ -332,10 +351,11 @@ def _left_out(sizes: FloatArray, weights: FloatArray) -> FloatArray:
 
 
 def _better(known: _Look | None, new: _Look) -> _Look:
-    """For each result the look with the smaller error."""
+    """For each result the look with the smaller error, settled if either is."""
     if known is None:
         return new
-    return _chosen(new.truncation + new.rounding < known.truncation + known.rounding, new, known)
+    best = _chosen(new.truncation + new.rounding < known.truncation + known.rounding, new, known)
+    return replace(best, settled=known.settled | new.settled)
 
 
 def _chosen(which: BoolArray, yes: _Look, no: _Look) -> _Look:
@@ -414,7 +434,7 @@ def _vary(number: _Number) -> _Steps:
 
 
 def _looks(number: _Number, place: float, radius: float, most: int) -> Generator[FloatArray, Evaluations, _Course]:
-    """Looks at intervals of growing or falling radius, until all results settle. A case that fails ends them."""
+    """Looks at intervals of growing or falling radius, until all results settle, or one of them fails."""
     course = _Course(radius)
     for _ in range(most):
         course.radius = radius
@@ -434,7 +454,7 @@ def _looks(number: _Number, place: float, radius: float, most: int) -> Generator
 def _look_closely(
     number: _Number, place: float, radius: float, failed: dict[float, Failure]
 ) -> Generator[FloatArray, Evaluations, _Look | None]:
-    """A look at one interval, with more points if the fewer do not settle; None, and why, if a case failed."""
+    """A look at one interval, with more points if the fewer do not settle; None, and why, if a case of these failed."""
     best: _Look | None = None
     values = bounds = np.empty((0, 0))
     for degree in DEGREES:
@@ -448,7 +468,7 @@ def _look_closely(
         answers = yield number.nominal + offsets
         if answers.failures:
             failed.update({float(offsets[row]): why for row, why in answers.failures.items()})
-            return None
+            break
         all_values, all_bounds = np.empty((2, degree + 1, len(answers.values[0])))
         if best is None:
             all_values[rule.own], all_bounds[rule.own] = number.centre.values, number.centre.bounds

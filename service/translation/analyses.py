@@ -9,6 +9,5 @@ from service.translation import limits, sensitivities, sizing, table_of_cases, t
 from service.translation.analysis import AnalysisCall
 
 ANALYSES: Mapping[str, AnalysisCall[Any]] = {
-    call.name: call
-    for call in (limits.CALL, sensitivities.CALL, tolerances.CALL, sizing.CALL, table_of_cases.CALL)
+    call.name: call for call in (limits.CALL, sensitivities.CALL, tolerances.CALL, sizing.CALL, table_of_cases.CALL)
 }
