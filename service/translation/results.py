@@ -16,11 +16,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import Extremes, Field, Solution, Total
+from service.core.bounded import Bounded
 from service.core.errors import AccuracyNotReached, CoreError, Interrupted
 from service.core.estimate import Estimate
 from service.core.laws import Kirchhoff
 from service.core.mixed import MixedSolution
-from service.core.totals import Bounded
 from service.refusals import Issue, Path, RequestRefused
 from service.translation.answers import KeepGoing
 from service.translation.fields import search_estimate
@@ -181,7 +181,7 @@ class _Evaluation:
             try:
                 return ask(tolerance)
             except AccuracyNotReached as error:
-                tolerance = error.bound
+                tolerance *= error.bound / error.asked
         return ask(tolerance)
 
     def _by_itself(self, index: int, asked: object) -> Bounded:
