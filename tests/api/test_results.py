@@ -289,7 +289,7 @@ async def test_results_are_what_the_calls_about_fields_and_flows_tell(client: ht
     ):
         value, off = found[name]
         assert abs(value - told) <= bound + off, name
-        assert off == pytest.approx(bound, rel=0.1), name
+        assert bound / 3 <= off <= 3 * bound, name
 
 
 def test_results_are_the_same_alone_as_beside_others() -> None:
