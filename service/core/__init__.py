@@ -1,5 +1,7 @@
 """The solver core: steady potential fields in rectangular bodies. It knows no web and converts no units."""
 
+from service.core.balance import Balance
+from service.core.bounded import Bounded, Total
 from service.core.caches import CacheReport, cache_report
 from service.core.certificate import Certificate
 from service.core.climbing import Place
@@ -28,7 +30,6 @@ from service.core.problem import Body, BoxSource, Layer
 from service.core.reach import Reach, Reached
 from service.core.solution import Solution
 from service.core.solving import solve
-from service.core.totals import Balance, Bounded, Total
 from service.core.unbounded import UnboundedCause
 
 __all__ = [

@@ -13,6 +13,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import mixed_extremes
+from service.core.balance import Balance
+from service.core.bounded import Bounded, Total
 from service.core.certificate import Certificate
 from service.core.climbing import Place
 from service.core.conditions import HeldPad, map_of
@@ -32,10 +34,10 @@ from service.core.mixed_refinement import LEVELS, MOST_PANELS, SHARE, Ladder, Re
 from service.core.panel_error import ORDER_OF_FIELDS, ORDER_OF_TOTALS, change_of, times_too_wide
 from service.core.problem import Body
 from service.core.region import Region
+from service.core.sections import checked_rectangle
 from service.core.solution import Solution
 from service.core.solvability import BALANCED, check_steady_state
 from service.core.stopping import on_behalf_of
-from service.core.totals import Balance, Bounded, Total, checked_rectangle
 
 FloatArray = NDArray[np.float64]
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import replace
 
+from service.core.bounded import Bounded
 from service.core.climbing import Place
 from service.core.faces import axes_along, axis_of
 from service.core.field import KeepGoing
@@ -11,7 +12,6 @@ from service.core.held_peaks import extreme_held_within, may_exceed
 from service.core.mixed_levels import Levels
 from service.core.mixed_refinement import SHARE
 from service.core.region import Region
-from service.core.totals import Bounded
 
 
 def extreme(levels: Levels, region: Region, sign: float, tolerance: float, keep_going: KeepGoing | None) -> Place:

@@ -13,6 +13,7 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.bounded import Bounded
 from service.core.errors import AccuracyNotReached
 from service.core.faces import axes_along, axis_of
 from service.core.field import OFFERED, Field, check_inside
@@ -24,7 +25,6 @@ from service.core.panel_error import ORDER_OF_FIELDS, left_over, times_too_wide
 from service.core.panel_noise import noise
 from service.core.problem import Body
 from service.core.solution import Solution
-from service.core.totals import Bounded
 
 FloatArray = NDArray[np.float64]
 

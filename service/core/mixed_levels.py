@@ -9,13 +9,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import time_error
+from service.core.bounded import Bounded
 from service.core.faces import Face
 from service.core.maps import Rectangle
 from service.core.mixed_base import Base
 from service.core.mixed_refinement import Ladder, Refinement
 from service.core.panels import STEP
 from service.core.problem import Body
-from service.core.totals import Bounded
 
 FloatArray = NDArray[np.float64]
 

@@ -11,13 +11,13 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from service.core import time_error
+from service.core.bounded import Bounded
 from service.core.conditions import FilmPad, FluxPad, HeldPad, MixedPad
 from service.core.faces import Face
 from service.core.mixed_base import pads_of
 from service.core.mixed_levels import Levels
 from service.core.panels import STEP
 from service.core.stopping import go_on
-from service.core.totals import Bounded
 
 # No flow is told better than this part of the worst: the error of one is a product with that of all.
 LEAST_OF_WORST = 0.125

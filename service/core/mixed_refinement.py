@@ -14,6 +14,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
+from service.core.bounded import Bounded
 from service.core.conditions import Film, Held, HeldPad, Inflow, map_of
 from service.core.errors import NotPhysical, TooManyPanels
 from service.core.faces import AXES, axes_along
@@ -35,7 +36,6 @@ from service.core.solution import Solution
 from service.core.span import rises, span_of
 from service.core.split import lines_of, parts_of, reference_level, scale_of
 from service.core.stopping import go_on
-from service.core.totals import Bounded
 
 FloatArray = NDArray[np.float64]
 

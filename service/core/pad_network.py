@@ -15,6 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import time_error
+from service.core.bounded import Bounded
 from service.core.errors import NoSteadyState, NotPhysical
 from service.core.faces import Face
 from service.core.field import KeepGoing
@@ -26,7 +27,6 @@ from service.core.panel_error import ORDER_OF_TOTALS
 from service.core.panels import STEP
 from service.core.problem import Body
 from service.core.stopping import on_behalf_of
-from service.core.totals import Bounded
 
 FloatArray = NDArray[np.float64]
 

@@ -13,7 +13,7 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core.totals import Bounded
+from service.core.bounded import Bounded
 
 FloatArray = NDArray[np.float64]
 

@@ -7,8 +7,10 @@ from collections.abc import Sequence
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import certificate, convergence, estimate, extremes, totals
+from service.core import balance, certificate, convergence, estimate, extremes, means, totals
 from service.core import field as fields
+from service.core.balance import Balance
+from service.core.bounded import Bounded, Total
 from service.core.certificate import Certificate
 from service.core.climbing import Place
 from service.core.convergence import Convergence, Overshoot
@@ -20,10 +22,10 @@ from service.core.maps import Rectangle
 from service.core.problem import Body
 from service.core.reach import Reach, reach
 from service.core.region import Region
+from service.core.sections import checked_rectangle
 from service.core.solvability import check_steady_state, level_is_pinned
 from service.core.span import span_of
 from service.core.split import level_of_mean, lines_of, parts_of, reference_level
-from service.core.totals import Balance, Bounded, Total
 
 FloatArray = NDArray[np.float64]
 
@@ -100,7 +102,7 @@ class Solution:
         self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float, keep_going: KeepGoing | None = None
     ) -> Place:
         """The highest potential on a face or a rectangle of it."""
-        rectangle = totals.checked_rectangle(self.body, axis_of(face), rectangle)
+        rectangle = checked_rectangle(self.body, axis_of(face), rectangle)
         return extremes.highest_on(self._setting, face, rectangle, tolerance, keep_going)
 
     def highest_within(
@@ -163,11 +165,11 @@ class Solution:
 
     def mean(self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float) -> Bounded:
         """Mean of the potential over a face or a rectangle of it."""
-        return totals.mean(self._setting, face, rectangle, tolerance)
+        return means.mean(self._setting, face, rectangle, tolerance)
 
     def means(self, face: Face, rectangles: Sequence[Rectangle], *, tolerance: float) -> list[Bounded]:
         """Means of the potential over rectangles of a face, all at once."""
-        return totals.means(self._setting, face, rectangles, tolerance)
+        return means.means(self._setting, face, rectangles, tolerance)
 
     def face_total(
         self, face: Face, rectangle: Rectangle | None = None, *, gap: float | None = None, tolerance: float
@@ -189,4 +191,4 @@ class Solution:
 
     def balance(self, *, gap: float | None = None, tolerance: float) -> Balance:
         """Inflow of every face, generation, and what is left over."""
-        return totals.balance(self._setting, tolerance, gap)
+        return balance.balance(self._setting, tolerance, gap)

@@ -14,8 +14,10 @@ from dataclasses import replace
 import numpy as np
 from numpy.typing import NDArray
 
-from service.core import certificate, convergence, estimate, extremes, totals, varying_mean, varying_totals
+from service.core import balance, certificate, convergence, estimate, extremes, totals, varying_mean, varying_totals
 from service.core import field as fields
+from service.core.balance import Balance
+from service.core.bounded import Bounded, Total
 from service.core.certificate import Certificate
 from service.core.climbing import Place
 from service.core.conditions import Film, Held, map_of
@@ -31,9 +33,9 @@ from service.core.kirchhoff import transform
 from service.core.maps import Rectangle
 from service.core.problem import Body
 from service.core.region import Region
+from service.core.sections import checked_rectangle
 from service.core.solution import Solution
 from service.core.solvability import check_steady_state
-from service.core.totals import Balance, Bounded, Total
 from service.core.varying_answers import potential_convergence, potential_field, potential_place
 from service.core.varying_limits import (
     absolute_zero,
@@ -168,7 +170,7 @@ class VaryingSolution(Solution):
     ) -> Place:
         """The highest potential on a face or a rectangle of it."""
         iterated = self._within(tolerance, keep_going)
-        where = totals.checked_rectangle(self._body, axis_of(face), rectangle)
+        where = checked_rectangle(self._body, axis_of(face), rectangle)
         with _In(self, tolerance, FIELD):
             theta = FIELD * self._in_theta(tolerance)
             found = extremes.highest_on(iterated.setting, face, where, theta, keep_going)
@@ -252,7 +254,7 @@ class VaryingSolution(Solution):
     def mean(self, face: Face, rectangle: Rectangle | None = None, *, tolerance: float) -> Bounded:
         """Mean of the potential over a face or a rectangle of it."""
         iterated = self._within(tolerance, None)
-        where = totals.checked_rectangle(self._body, axis_of(face), rectangle)
+        where = checked_rectangle(self._body, axis_of(face), rectangle)
         if not math.isfinite(where.area):
             raise NotPhysical(
                 "The mean over a side without end is not defined; name a rectangle of it.", ("rectangle",)
@@ -266,7 +268,7 @@ class VaryingSolution(Solution):
     ) -> Total:
         """Flow into the body through a face or a rectangle of it; unbounded where held values meet in a jump."""
         iterated = self._within(tolerance, None)
-        where = totals.checked_rectangle(self._body, axis_of(face), rectangle)
+        where = checked_rectangle(self._body, axis_of(face), rectangle)
         theta = FIELD * self._in_theta(tolerance)
         return varying_totals.face_total(self._data, iterated, face, where, gap, theta)
 
@@ -285,14 +287,14 @@ class VaryingSolution(Solution):
                 total = self.face_total(face, rectangle, gap=gap, tolerance=tolerance)
                 return totals.negated(total) if is_high(face) else total
         iterated = self._within(tolerance, None)
-        where = totals.checked_rectangle(self._body, axis, rectangle)
+        where = checked_rectangle(self._body, axis, rectangle)
         theta = FIELD * self._in_theta(tolerance)
         return varying_totals.plane_total(self._data, iterated, axis, position, where, gap, theta)
 
     def balance(self, *, gap: float | None = None, tolerance: float) -> Balance:
         """Inflow of every face, generation, and what is left over of the field in theta, which is exactly balanced."""
         iterated = self._within(tolerance, None)
-        found = totals.balance(iterated.setting, FIELD * self._in_theta(tolerance), gap)
+        found = balance.balance(iterated.setting, FIELD * self._in_theta(tolerance), gap)
         inflow = {face: self.face_total(face, gap=gap, tolerance=tolerance) for face in found.inflow}
         return replace(found, inflow=inflow)
 

@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 
 from service.core import field as fields
 from service.core import totals
+from service.core.bounded import Bounded
 from service.core.conditions import Film, Held, map_of
 from service.core.faces import Face, axes_along
 from service.core.field import Grid, KeepGoing
@@ -21,7 +22,6 @@ from service.core.flow_error import FlowError
 from service.core.kirchhoff import Transformed
 from service.core.maps import Rectangle
 from service.core.solvability import map_integral
-from service.core.totals import Bounded
 
 FloatArray = NDArray[np.float64]
 

@@ -10,6 +10,7 @@ import numpy as np
 
 from service.core import field as fields
 from service.core import totals
+from service.core.bounded import Bounded, Total
 from service.core.conditions import Film, Held, Inflow, map_of
 from service.core.faces import Face, axes_along
 from service.core.field import Setting
@@ -18,7 +19,6 @@ from service.core.flow_error import FlowError
 from service.core.kirchhoff import Transformed
 from service.core.maps import Rectangle
 from service.core.problem import Body
-from service.core.totals import Bounded, Total
 from service.core.unbounded import UnboundedCause, unbounded_lines, unbounded_plane_lines
 
 

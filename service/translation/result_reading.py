@@ -9,7 +9,7 @@ from typing import Literal
 
 from service.core.faces import AXES, Face, axes_along, axis_of
 from service.core.maps import Rectangle
-from service.core.totals import whole_face
+from service.core.sections import whole_face
 from service.models import evaluate as places
 from service.models import results as models
 from service.refusals import Path
