@@ -12,6 +12,7 @@ from starlette.middleware.cors import CORSMiddleware
 from service import __version__, openapi, problem_details
 from service.middleware import BodyLimit, Counting, LastResort, SecurityHeaders
 from service.routes import (
+    best_values,
     cases,
     convergence,
     fields,
@@ -70,7 +71,7 @@ def create_app(settings: Settings | None = None) -> FastAPI:
     openapi.install(app)
     problem_details.install(app)
     answering = (problems, fields, flux_totals, convergence, pads, resistances, reach)
-    for module in (*answering, limits, sensitivities, tolerances, sizing, cases, studies, health, pages):
+    for module in (*answering, limits, sensitivities, tolerances, sizing, best_values, cases, studies, health, pages):
         app.include_router(module.router)
     pages.mount_files(app)
 

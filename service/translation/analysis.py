@@ -111,6 +111,18 @@ class Prepared:
             self.absolute,
         )
 
+    def results_shown(self, values: FloatArray, bounds: FloatArray) -> list[dict[str, Any]]:
+        """The results of one case in the words of the answer."""
+        return [
+            {
+                "name": info.name,
+                "unit": info.measure.unit,
+                "value": float(values[index]),
+                "error_bound": answers.number_or_none(bounds[index]),
+            }
+            for index, info in enumerate(self.results.infos)
+        ]
+
     def estimates(self) -> Sequence[Estimate]:
         """What one case costs, about."""
         return estimate_results(self.results, self.solution, relative=self.relative)
@@ -185,15 +197,7 @@ def envelope(prepared: Prepared) -> dict[str, Any]:
         "potential": problem.potential,
         "units": answers.units_shown(problem.units),
         "certificate": answers.certificate(problem, solution, np.zeros((0, 3)), prepared.absolute or tolerance),
-        "results": [
-            {
-                "name": info.name,
-                "unit": info.measure.unit,
-                "value": float(prepared.nominal.values[index]),
-                "error_bound": answers.number_or_none(prepared.nominal.bounds[index]),
-            }
-            for index, info in enumerate(prepared.results.infos)
-        ],
+        "results": prepared.results_shown(prepared.nominal.values, prepared.nominal.bounds),
         "warnings": answers.problem_warnings(problem, solution),
     }
 

@@ -5,7 +5,10 @@ from __future__ import annotations
 import re
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from typing import Any, Literal
+from typing import Any, Literal, TypeVar
+
+import numpy as np
+from numpy.typing import NDArray
 
 from service.models.numbers import NumberReference
 from service.refusals import Path
@@ -15,6 +18,7 @@ from service.translation.result_units import Measure
 from service.units import UnitSystem
 
 Way = Literal["at", "shift", "scale"]
+Amount = TypeVar("Amount", float, NDArray[np.float64])
 
 _INDEX = re.compile(r"0|[1-9]\d{0,9}")
 
@@ -53,11 +57,15 @@ class NumberTarget:
         """What stands at a leaf for a value of the number. here: what stands there so far."""
         if leaf.base is None:
             return f"{self.about!r} + {number!r} * (({here}) - {self.about!r})"
+        return self.moved(leaf.base, number)
+
+    def moved(self, base: float, number: Amount) -> Amount:
+        """What becomes of a value for a value of the number, or for an array of them."""
         if self.way == "at":
             return number
         if self.way == "shift":
-            return leaf.base + number
-        return self.about + number * (leaf.base - self.about)
+            return base + number
+        return self.about + number * (base - self.about)
 
 
 def read_numbers(
@@ -210,7 +218,10 @@ class _Reading:
 
 
 def resolve(collector: Collector, document: Mapping[str, Any], pointer: str, place: Path) -> Path | None:
-    """The path of a pointer into a request; None, and noted, where it leads nowhere. place: where the pointer stands."""
+    """The path of a pointer into a request; None, and noted, where it leads nowhere.
+
+    place: where the pointer stands.
+    """
     path: list[str | int] = []
     here: Any = document
     for token in pointer[1:].split("/"):

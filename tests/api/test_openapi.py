@@ -20,6 +20,7 @@ CALLS = {
     ("post", "/v1/reach"),
     ("post", "/v1/limits"),
     ("post", "/v1/sizing"),
+    ("post", "/v1/best-values"),
     ("post", "/v1/cases"),
     ("post", "/v1/studies"),
     ("get", "/v1/studies"),

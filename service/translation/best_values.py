@@ -1,0 +1,184 @@
+"""Which values of a few numbers are best: the question read, and its answer."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from service.analysis.best_values import Best, BestValues, Goal, Start, best_values
+from service.analysis.evaluations import Evaluate, FloatArray
+from service.analysis.limits import Limit, verdict
+from service.models import best_values as models
+from service.translation.analysis import Analysis, AnalysisCall, Prepared
+from service.translation.answers import warning
+from service.translation.apart import ApartReader, Rectangles
+from service.translation.collector import Collector
+from service.translation.limits import all_held, limit_shown
+from service.translation.measures import read_measured
+from service.translation.numbers import NumberInfo
+
+LOCAL = (
+    "The best values were found by local searches. They do as well as can be nearby, to the estimate given; no such "
+    "search proves that nothing better lies elsewhere. More `starts` make that less likely."
+)
+NO_ROOM = "No place was found at which all rectangles are as far apart as they have to be."
+ALL_FAILED = "Every case failed; `failures` has the reasons."
+
+
+@dataclass(frozen=True)
+class _Wanted:
+    """The question in the units of its numbers and results."""
+
+    asked: models.BestValuesQuestion
+    infos: tuple[NumberInfo, ...]
+    ranges: tuple[tuple[float, float], ...]
+    goal: Goal
+    limits: tuple[Limit, ...]
+    apart: tuple[Rectangles, ...]
+
+    def clearances(self, cases: FloatArray) -> FloatArray:
+        """Those of all lists of rectangles, one list after the other."""
+        return np.concatenate([rectangles.clearances(cases) for rectangles in self.apart], axis=1)
+
+
+def read_best_values(question: models.BestValuesQuestion, prepared: Prepared) -> Analysis:
+    """The question in the units of its numbers and results. Raises RequestRefused."""
+    collector = prepared.collector()
+    infos, targets = prepared.numbers(collector, question.numbers)
+    goal = _read_goal(collector, question.goal, prepared)
+    limits = prepared.limits(collector, question.limits)
+    apart = ApartReader(collector, prepared, targets).read(question.apart)
+    collector.raise_if_any()
+    ranges = tuple(
+        _read_range(collector, number, info, index)
+        for index, (number, info) in enumerate(zip(question.numbers, infos, strict=True))
+    )
+    collector.raise_if_any()
+    wanted = _Wanted(question, infos, ranges, goal, limits, apart)
+
+    def run(evaluate: Evaluate) -> dict[str, Any]:
+        found = best_values(
+            evaluate,
+            ranges,
+            goal,
+            limits,
+            [info.measure.difference_unit for info in prepared.results.infos],
+            first=np.array([info.nominal for info in infos]),
+            apart=wanted.clearances if apart else None,
+            n_starts=question.starts,
+            most_cases=question.most_cases,
+            seed=question.seed,
+        )
+        warnings = [warning("local-search", LOCAL, "#/best_values")]
+        return {"best_values": _outcome(found, wanted, prepared), "warnings": warnings}
+
+    return Analysis(prepared, prepared.plan(infos, targets), question.most_cases, run)
+
+
+def _read_goal(collector: Collector, goal: models.Goal, prepared: Prepared) -> Goal:
+    """The results of the goal, all of one unit."""
+    key = "minimise" if goal.minimise is not None else "maximise"
+    names = goal.minimise if goal.minimise is not None else goal.maximise
+    assert names is not None
+    results = [prepared.result(collector, name, ("goal", key, index)) for index, name in enumerate(names)]
+    infos = prepared.results.infos
+    for index, result in enumerate(results):
+        if infos[result].measure.unit != infos[results[0]].measure.unit:
+            detail = f"The first result of the goal is in {infos[results[0]].measure.unit}, this one in "
+            detail += f"{infos[result].measure.unit}; compare results of one unit."
+            collector.add(("goal", key, index), detail, "unit")
+    return Goal(tuple(results), "lowest" if key == "minimise" else "highest")
+
+
+def _read_range(collector: Collector, number: models.VariedNumber, info: NumberInfo, index: int) -> tuple[float, float]:
+    low, high = (
+        read_measured(collector, info.measure, end, ("numbers", index, name))
+        for end, name in ((number.low, "low"), (number.high, "high"))
+    )
+    if low >= high:
+        collector.add(("numbers", index, "high"), "`high` has to be greater than `low`.", "order")
+    return low, high
+
+
+def _outcome(found: BestValues, wanted: _Wanted, prepared: Prepared) -> dict[str, Any]:
+    reason = None
+    if found.best is None:
+        reason = ALL_FAILED if found.has_room else NO_ROOM
+    return {
+        "best": None if found.best is None else _best(found, found.best, wanted, prepared),
+        "reason": reason,
+        "searches": [_search(start) for start in found.starts],
+        "same_goal_count": sum(start.same_goal for start in found.starts),
+        "case_count": found.cases,
+        "failed_count": found.failed,
+        "failures": [{"code": failure.code, "message": failure.message} for failure in found.failures.values()],
+        "complete": found.complete,
+    }
+
+
+def _best(found: BestValues, best: Best, wanted: _Wanted, prepared: Prepared) -> dict[str, Any]:
+    held = [verdict(float(m), float(b)) for m, b in zip(best.margins, best.margin_bounds, strict=True)]
+    return {
+        "numbers": [
+            {
+                "name": info.name,
+                "unit": info.measure.unit,
+                "value": float(best.numbers[index]),
+                "as_it_stands": info.nominal,
+                "at_end": "low" if index in best.at_low else "high" if index in best.at_high else None,
+            }
+            for index, info in enumerate(wanted.infos)
+        ],
+        "results": prepared.results_shown(best.values, best.bounds),
+        "goal": _goal(found, best, wanted, prepared),
+        "all_held": all_held(held),
+        "limits": [
+            {
+                **limit_shown(asked, limit, prepared),
+                "held": held[index],
+                "margin": float(best.margins[index]),
+                "error_bound": float(best.margin_bounds[index]),
+                "binds": index in best.binding,
+            }
+            for index, (asked, limit) in enumerate(zip(wanted.asked.limits, wanted.limits, strict=True))
+        ],
+        "apart": [_clearance(rectangles, best.numbers) for rectangles in wanted.apart],
+    }
+
+
+def _goal(found: BestValues, best: Best, wanted: _Wanted, prepared: Prepared) -> dict[str, Any]:
+    infos = [prepared.results.infos[result] for result in wanted.goal.results]
+    first, first_bound = found.at_first or (None, None)
+    return {
+        "unit": infos[0].measure.unit,
+        "value": best.goal,
+        "error_bound": best.goal_bound,
+        "search_error_estimate": best.left,
+        "leading": [infos[place].name for place in best.leading],
+        "as_it_stands": first,
+        "as_it_stands_error_bound": first_bound,
+        "improvement": None if first is None else wanted.goal.sign * (first - best.goal),
+    }
+
+
+def _clearance(rectangles: Rectangles, numbers: FloatArray) -> dict[str, Any]:
+    clear = rectangles.clearances(numbers[None])[0]
+    index = int(np.argmin(clear))
+    return {"least": float(clear[index]), "between": rectangles.pair(index)}
+
+
+def _search(start: Start) -> dict[str, Any]:
+    return {
+        "first": start.first.tolist(),
+        "first_goal": start.first_goal,
+        "last": start.last.tolist(),
+        "last_goal": start.last_goal,
+        "ended": start.ended,
+        "same_goal": start.same_goal,
+        "same_numbers": start.same_numbers,
+    }
+
+
+CALL = AnalysisCall("best-values", models.BestValuesQuestion, read_best_values)
