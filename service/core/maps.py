@@ -20,12 +20,10 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core.errors import NotPhysical
-from service.core.profiles import CHEBYSHEV, DEGREE, Profiles, chebyshev_places
+from service.core.factors import factors_of
+from service.core.profiles import DEGREE, Profiles, chebyshev_places
 
 FloatArray = NDArray[np.float64]
-
-# Singular values below this part of the largest are rounding noise of the decomposition, not data.
-RANK_TOLERANCE = 4e-16
 
 
 @dataclass(frozen=True)
@@ -225,19 +223,9 @@ class FaceMap:
 
     @cached_property
     def _factors(self) -> tuple[Profiles, Profiles]:
-        # Places that tell all others keep the table that is decomposed small.
-        telling = [
-            _telling(knots.size - 1, self.degree if curved else None, count)
-            for knots, curved, count in zip(
-                (self.first_knots, self.second_knots), self.curved, self.table.shape, strict=True
-            )
-        ]
-        along_first, along_second = (
-            values if places.size == count else _carried(values, self.degree)
-            for values, places, count in zip(
-                _factor(self.table[np.ix_(*telling)]), telling, self.table.shape, strict=True
-            )
-        )
+        counts = self.first_knots.size - 1, self.second_knots.size - 1
+        degrees = [self.degree if curved else None for curved in self.curved]
+        along_first, along_second = factors_of(self.table, counts, (degrees[0], degrees[1]))
         return (
             self._profiles(self.first_knots, along_first, curved=self.curved[0]),
             self._profiles(self.second_knots, along_second, curved=self.curved[1]),
@@ -291,57 +279,6 @@ class FaceMap:
                 f"measures {first_length:g} by {second_length:g}.",
                 ("faces", face),
             )
-
-
-def _telling(pieces: int, degree: int | None, count: int) -> NDArray[np.intp]:
-    """Which places along an axis tell the values at all: all but on curved pieces of a low degree (else None)."""
-    if degree is None or degree == DEGREE:
-        return np.arange(count)
-    inside = _places_of_degree(degree)[:-1]
-    return np.append((DEGREE * np.arange(pieces)[:, None] + inside).ravel(), DEGREE * pieces)
-
-
-def _places_of_degree(degree: int) -> NDArray[np.intp]:
-    """As many of Chebyshev's points of a piece, its ends among them, as polynomials of a degree need."""
-    return np.linspace(0, DEGREE, degree + 1).round().astype(int)
-
-
-def _carried(values: FloatArray, degree: int) -> FloatArray:
-    """Values at all places of curved pieces from those that `_telling` names, shape (n_places, n_profiles)."""
-    known = CHEBYSHEV[_places_of_degree(degree)]
-    # Lagrange's polynomials, which are 0 and 1 exactly at the places known.
-    weights = np.ones((DEGREE + 1, degree + 1))
-    for index, own in enumerate(known):
-        for other in np.delete(known, index):
-            weights[:, index] *= (CHEBYSHEV - other) / (own - other)
-    pieces = (values.shape[0] - 1) // degree
-    of_piece = values[degree * np.arange(pieces)[:, None] + np.arange(degree + 1)]
-    inside = np.einsum("jk,pkr->pjr", weights[:-1], of_piece).reshape(DEGREE * pieces, -1)
-    return np.concatenate([inside, values[-1:]])
-
-
-def _factor(table: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Columns A and B with table = A B^T, as few as the numerical rank of the table asks for (at least one).
-
-    Rows and columns of zeros stay exactly zero: the reference level drives nothing.
-    """
-    rows, columns = table.any(axis=1), table.any(axis=0)
-    along_first, along_second = np.zeros((table.shape[0], 1)), np.zeros((table.shape[1], 1))
-    core = table[np.ix_(rows, columns)]
-    if core.size == 0:
-        return along_first, along_second
-    if (core == core[:, :1]).all():
-        along_first[rows, 0], along_second[columns] = core[:, 0], 1.0
-        return along_first, along_second
-    if (core == core[:1]).all():
-        along_first[rows], along_second[columns, 0] = 1.0, core[0]
-        return along_first, along_second
-    left, singular, right = np.linalg.svd(core, full_matrices=False)
-    rank = int(np.count_nonzero(singular > RANK_TOLERANCE * max(table.shape) * singular[0]))
-    along_first, along_second = np.zeros((table.shape[0], rank)), np.zeros((table.shape[1], rank))
-    along_first[rows] = left[:, :rank] * singular[:rank]
-    along_second[columns] = right[:rank].T
-    return along_first, along_second
 
 
 def _reach_edges(
