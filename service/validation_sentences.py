@@ -37,6 +37,7 @@ _SENTENCES = {
     "greater_than_equal": "The number has to be at least {ge}.",
     "less_than_equal": "The number has to be at most {le}.",
     "greater_than": "The number has to be greater than {gt}.",
+    "less_than": "The number has to be less than {lt}.",
     "union_tag_not_found": "The field {discriminator} is required.",
     "union_tag_invalid": "One of {expected_tags} is wanted here.",
 }

@@ -75,8 +75,8 @@ class Propagation:
     """Spread of every result, arrays of shape (n_results,).
 
     mean, standard_deviation: of cases with results. quantiles: shape (n_quantiles, n_results). lowest, highest: seen.
-    limits: each alone; together: all of them at once, shape (1,). n_cases: computed; failures: how many have no
-    results, by the code of the failure, and an example of each.
+    bounds: how far off a value may be at the most. limits: each alone; together: all of them at once, shape (1,).
+    n_cases: computed; failures: how many have no results, by the code of the failure, and an example of each.
     """
 
     mean: Estimate
@@ -84,6 +84,7 @@ class Propagation:
     quantiles: Estimate
     lowest: FloatArray
     highest: FloatArray
+    bounds: FloatArray
     limits: Probability
     together: Probability
     n_cases: int
@@ -152,6 +153,7 @@ def spread_of(
         quantiles=within,
         lowest=pooled.values.min(axis=0) if np.any(has) else nothing,
         highest=pooled.values.max(axis=0) if np.any(has) else nothing,
+        bounds=pooled.largest_bound,
         limits=alone,
         together=together,
         n_cases=len(has),

@@ -128,8 +128,8 @@ class TolerancedNumber(VariedNumber):
             raise PydanticCustomError(
                 "one_of", "Give the tolerance by `plus_minus`, `plus` and `minus`, or `relative`."
             )
-        tells = isinstance(self.distribution, Quantiles) or getattr(self.distribution, "standard_deviation", None)
-        if not given and not tells:
+        has_deviation = getattr(self.distribution, "standard_deviation", None) is not None
+        if not given and not has_deviation and not isinstance(self.distribution, Quantiles):
             raise PydanticCustomError(
                 "no_tolerance",
                 "Give the tolerance by `plus_minus`, `plus` and `minus`, `relative`, or a distribution with its "

@@ -162,6 +162,11 @@ class SpreadAnswer(Model):
     standard_deviation: EstimateAnswer = Field(description="Standard deviation of the cases with results.")
     lowest: float | None = Field(description="The lowest seen.", examples=[51.7])
     highest: float | None = Field(description="The highest seen.", examples=[57.2])
+    error_bound: float | None = Field(
+        description="No sampled value is further off than this; all intervals are wider by it. Null where no finite "
+        "bound is known.",
+        examples=[4e-8],
+    )
     quantiles: list[QuantileAnswer] = Field(description="The quantiles asked for.")
 
 

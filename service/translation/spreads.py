@@ -78,6 +78,7 @@ class _Reading:
         self._shape = asked.distribution or models.Normal(shape="normal")
 
     def read(self) -> Spread | None:
+        noted = len(self._collector.issues)
         if isinstance(self._shape, models.Quantiles):
             return self._by_quantiles(self._shape)
         deviation = self._deviation()
@@ -88,7 +89,9 @@ class _Reading:
             half = deviation * getattr(self._shape, "sigmas", 0.0)
             zone = half, half
         plus, minus = zone
-        if not plus + minus > 0:
+        if len(self._collector.issues) > noted:
+            return None
+        if plus + minus == 0:
             self._refuse((), "The tolerance is zero; leave the number out, or give it one.", "zero")
             return None
         if deviation is None:

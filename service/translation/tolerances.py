@@ -213,6 +213,7 @@ class _Read:
                     "standard_deviation": _estimate(spread.standard_deviation, result),
                     "lowest": number_or_none(spread.lowest[result]),
                     "highest": number_or_none(spread.highest[result]),
+                    "error_bound": number_or_none(spread.bounds[result]),
                     "quantiles": [
                         {**_estimate(spread.quantiles, (index, result)), "probability": level}
                         for index, level in enumerate(self.question.quantiles)

@@ -19,6 +19,8 @@ CALLS = {
     ("post", "/v1/resistances"),
     ("post", "/v1/reach"),
     ("post", "/v1/limits"),
+    ("post", "/v1/sensitivities"),
+    ("post", "/v1/tolerances"),
     ("post", "/v1/sizing"),
     ("post", "/v1/best-values"),
     ("post", "/v1/cases"),
