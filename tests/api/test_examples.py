@@ -22,7 +22,9 @@ from service.models.operation import ProblemAnswer
 from service.models.pads_answer import PadsAnswer
 from service.models.reach_answer import ReachAnswer
 from service.models.resistances_answer import ResistancesAnswer
+from service.models.sensitivities_answer import SensitivitiesAnswer
 from service.models.sizing_answer import SizingAnswer
+from service.models.tolerances_answer import TolerancesAnswer
 from service.openapi import load_examples
 
 pytestmark = pytest.mark.anyio
@@ -38,6 +40,8 @@ MODELS: dict[str, type[Model]] = {
     "/v1/resistances": ResistancesAnswer,
     "/v1/reach": ReachAnswer,
     "/v1/limits": LimitsAnswer,
+    "/v1/sensitivities": SensitivitiesAnswer,
+    "/v1/tolerances": TolerancesAnswer,
     "/v1/cases": CasesAnswer,
     "/v1/sizing": SizingAnswer,
     "/v1/best-values": BestValuesAnswer,
