@@ -7,7 +7,9 @@ FROM python:3.13-slim-bookworm AS build
 ENV PIP_DISABLE_PIP_VERSION_CHECK=1 \
     PIP_NO_CACHE_DIR=1 \
     PIP_NO_COMPILE=1
-COPY service/requirements.lock /tmp/requirements.lock
+# Workers of a cluster are this image with more packages: docker build --build-arg LOCK=service/cluster.lock ...
+ARG LOCK=service/requirements.lock
+COPY ${LOCK} /tmp/requirements.lock
 RUN python -m venv /opt/stillfield/venv \
     && /opt/stillfield/venv/bin/pip install --require-hashes --only-binary :all: --requirement /tmp/requirements.lock
 # Side by side, as in a checkout: the service looks for the examples next to its own folder.
@@ -31,7 +33,8 @@ ENV PATH=/opt/stillfield/venv/bin:$PATH \
     OMP_NUM_THREADS=1 \
     STILLFIELD_HOST=0.0.0.0 \
     STILLFIELD_PORT=8000 \
-    STILLFIELD_STORE_PATH=/data/stillfield-problems.sqlite3
+    STILLFIELD_STORE_PATH=/data/stillfield-problems.sqlite3 \
+    STILLFIELD_STUDIES_FOLDER=/data/stillfield-studies
 WORKDIR /opt/stillfield
 USER 10001:10001
 VOLUME /data

@@ -45,6 +45,7 @@ def test_settings_in_the_image_are_settings_of_the_service(monkeypatch: pytest.M
     assert settings.host == "0.0.0.0"
     assert settings.port == int(*instructions("EXPOSE"))
     assert str(settings.store_path.parent) == instructions("VOLUME")[0] == "/data"
+    assert settings.studies_folder.parent == settings.store_path.parent
 
 
 def test_service_runs_without_root_and_with_one_thread_for_linear_algebra() -> None:
@@ -54,8 +55,12 @@ def test_service_runs_without_root_and_with_one_thread_for_linear_algebra() -> N
 
 
 def test_what_is_copied_is_there_and_is_sent_to_the_builder() -> None:
-    sources = [line.split()[0] for line in instructions("COPY") if not line.startswith("--from")]
-    assert {"service", "openapi_examples", "service/requirements.lock"} == set(sources)
+    # What is installed: the packages of the service, or by request those of a cluster.
+    assert instructions("ARG") == ["LOCK=service/requirements.lock"]
+    locks = ["service/requirements.lock", "service/cluster.lock"]
+    copied = [line.split()[0] for line in instructions("COPY") if not line.startswith("--from")]
+    assert {"service", "openapi_examples", "${LOCK}"} == set(copied)
+    sources = [*(source for source in copied if source != "${LOCK}"), *locks]
     ignore = (ROOT / ".dockerignore").read_text(encoding="utf-8").splitlines()
     assert "*" in ignore
     sent = [line.removeprefix("!") for line in ignore if line.startswith("!")]

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
+import contextlib
 import threading
-import time
 from concurrent.futures import Future
 
 from distributed import Client, KilledWorker
@@ -13,14 +13,14 @@ from service.analysis.evaluations import FloatArray
 from service.studies.chunk_work import ChunkOutcome, evaluate_chunk
 from service.studies.crew import CrewLost, WorkerLost
 
-# A scheduler that does not answer is asked again after this time.
+# How long a scheduler may take to answer before it counts as lost.
 _CONNECT_SECONDS = 3.0
+# How often the connection and the number of workers are looked at.
+_LOOK_EVERY_SECONDS = 0.5
 # How long the outcome of a finished chunk may take from its worker to here.
 _FETCH_SECONDS = 60.0
 # How often an error inside a worker process, above all its end, makes the scheduler try elsewhere.
 _RETRIES = 2
-# How many workers there are is asked again after this time.
-_SIZE_SECONDS = 2.0
 
 
 class Cluster:
@@ -30,33 +30,27 @@ class Cluster:
         self._address = address
         self._lock = threading.Lock()
         self._client: Client | None = None
-        self._next_try = 0.0
         self._size = 1
-        self._next_size = 0.0
-        self._is_closed = False
+        self._closing = threading.Event()
+        self._keeper: threading.Thread | None = None
 
     @property
     def size(self) -> int:
         """How many chunks are computed at the same time; at least 1."""
-        client = self._connected()
-        if client is not None and time.monotonic() >= self._next_size:
-            self._next_size = time.monotonic() + _SIZE_SECONDS
-            try:
-                self._size = max(1, sum(client.nthreads().values()))
-            except Exception:
-                self._size = 1
         return self._size
 
     @property
     def is_reachable(self) -> bool:
         """Whether the scheduler answers."""
-        return self._connected() is not None
+        client = self._client
+        return client is not None and client.status == "running"
 
     def submit(self, work: bytes, cases: FloatArray, accuracy: float | None, seconds: float) -> Future[ChunkOutcome]:
         """Have a chunk computed. Its time is limited case by case in the worker, which nobody can end from here."""
+        self._keep_connected()
         outcome: Future[ChunkOutcome] = Future()
-        client = self._connected()
-        if client is None:
+        client = self._client
+        if client is None or client.status != "running":
             outcome.set_exception(CrewLost())
             return outcome
         try:
@@ -72,25 +66,29 @@ class Cluster:
 
     def close(self) -> None:
         """Let go of the scheduler; it drops what nobody waits for."""
-        with self._lock:
-            self._is_closed = True
-            if self._client is not None:
-                self._client.close(timeout=_CONNECT_SECONDS)
-                self._client = None
+        self._closing.set()
+        if self._keeper is not None:
+            self._keeper.join()
 
-    def _connected(self) -> Client | None:
-        """The connection, made anew where it is lost for good; None while there is none."""
+    def _keep_connected(self) -> None:
         with self._lock:
-            if self._client is not None and self._client.status != "closed":
-                return self._client if self._client.status == "running" else None
-            if self._is_closed or time.monotonic() < self._next_try:
-                return None
-            self._next_try = time.monotonic() + _CONNECT_SECONDS
-            try:
-                self._client = Client(self._address, timeout=_CONNECT_SECONDS, set_as_default=False)
-            except OSError:
-                self._client = None
-            return self._client
+            if self._keeper is None:
+                self._keeper = threading.Thread(target=self._keep, name="cluster", daemon=True)
+                self._keeper.start()
+
+    def _keep(self) -> None:
+        """Connect, look how many workers there are, and connect anew where the connection is lost for good."""
+        while not self._closing.is_set():
+            client = self._client
+            if client is None or client.status == "closed":
+                with contextlib.suppress(OSError):
+                    self._client = Client(self._address, timeout=_CONNECT_SECONDS, set_as_default=False)
+            elif client.status == "running":
+                with contextlib.suppress(Exception):
+                    self._size = max(1, sum(client.nthreads().values()))
+            self._closing.wait(_LOOK_EVERY_SECONDS)
+        if self._client is not None:
+            self._client.close(timeout=_CONNECT_SECONDS)
 
 
 def _give_up(started: DaskFuture[ChunkOutcome]) -> None:

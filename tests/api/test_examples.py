@@ -6,6 +6,7 @@ the number of terms that were summed, may change with every release and is compa
 
 from __future__ import annotations
 
+import json
 from typing import Any
 
 import httpx
@@ -24,6 +25,7 @@ from service.models.reach_answer import ReachAnswer
 from service.models.resistances_answer import ResistancesAnswer
 from service.models.sensitivities_answer import SensitivitiesAnswer
 from service.models.sizing_answer import SizingAnswer
+from service.models.studies import StudyAnswer
 from service.models.tolerances_answer import TolerancesAnswer
 from service.openapi import load_examples
 
@@ -43,6 +45,7 @@ MODELS: dict[str, type[Model]] = {
     "/v1/sensitivities": SensitivitiesAnswer,
     "/v1/tolerances": TolerancesAnswer,
     "/v1/cases": CasesAnswer,
+    "/v1/studies": StudyAnswer,
     "/v1/sizing": SizingAnswer,
     "/v1/best-values": BestValuesAnswer,
 }
@@ -63,6 +66,8 @@ EVIDENCE = {
     "cost_ratio",
     "residual",
     "steps",
+    # The clock.
+    "created",
 }
 # What a search for best values determines only to where its goal is flat, which has an estimate beside it, and how many
 # cases searches and sizings take, which may hang on a last digit.
@@ -112,7 +117,8 @@ def test_there_are_examples_of_every_call_and_every_potential() -> None:
     assert len(EXAMPLES) >= 8
     assert {example["path"] for example in EXAMPLES.values()} == set(MODELS)
     assert {example["method"] for example in EXAMPLES.values()} == {"POST"}
-    potentials = {example["request"].get("problem", example["request"])["potential"] for example in EXAMPLES.values()}
+    asked = [example["request"].get("question", example["request"]) for example in EXAMPLES.values()]
+    potentials = {question.get("problem", question)["potential"] for question in asked}
     assert potentials == {"temperature", "electric_potential", "concentration", "hydraulic_head"}
 
 
@@ -121,9 +127,16 @@ async def test_example_is_answered_as_it_says(client: httpx.AsyncClient, name: s
     example = EXAMPLES[name]
     assert set(example) == {"summary", "description", "method", "path", "request", "answer"}
     answer = await client.post(example["path"], json=example["request"])
-    assert answer.status_code in (200, 201), answer.text
+    assert answer.status_code in (200, 201, 202), answer.text
     MODELS[example["path"]].model_validate(answer.json())
-    check_alike(answer.json(), example["answer"])
+    check_alike(answer.json(), with_id_of(answer.json(), example["answer"]))
+
+
+def with_id_of(found: Any, expected: Any) -> Any:
+    """What is expected with the id that the study has in this release, which its name depends on."""
+    if "study_id" not in expected:
+        return expected
+    return json.loads(json.dumps(expected).replace(expected["study_id"], found["study_id"]))
 
 
 def test_answers_that_differ_by_more_than_their_bounds_would_be_found() -> None:

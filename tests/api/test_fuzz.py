@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import logging
+import tempfile
 from pathlib import Path
 from typing import Any
 
@@ -17,6 +18,9 @@ from service.settings import Settings
 # Small limits, so that a right request is answered at once.
 SETTINGS = Settings(
     store_path=Path(":memory:"),
+    studies_folder=Path(tempfile.mkdtemp()) / "studies",
+    study_cases=20,
+    study_workers=1,
     grid_points=2_000,
     points=20,
     convergence_points=2,

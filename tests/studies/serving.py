@@ -73,9 +73,7 @@ def cases_stored(folder: Path) -> int:
 def children_of(process: int) -> list[int]:
     """The processes that a process has started."""
     return [
-        int(folder.name)
-        for folder in Path("/proc").iterdir()
-        if folder.name.isdigit() and _parent(folder) == process
+        int(folder.name) for folder in Path("/proc").iterdir() if folder.name.isdigit() and _parent(folder) == process
     ]
 
 
