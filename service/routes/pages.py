@@ -19,6 +19,8 @@ from fastapi.responses import FileResponse
 from fastapi.staticfiles import StaticFiles
 from starlette.exceptions import HTTPException
 
+from service.openapi import EXAMPLES
+
 STATIC = Path(__file__).resolve().parent.parent / "static"
 _DOCS_FILES = Path(fastapi_offline.__file__).resolve().parent / "static"
 _PLOTLY = Path(plotly.__file__).resolve().parent / "package_data" / "plotly.min.js"
@@ -77,6 +79,7 @@ async def docs(request: Request) -> Response:
 
 
 def mount_files(app: FastAPI) -> None:
-    """Serve the files of the page and of the description, with entity tags."""
+    """Serve the files of the page, its examples and the description, with entity tags."""
     app.mount("/static/docs", StaticFiles(directory=_DOCS_FILES), name="docs-files")
+    app.mount("/static/examples", StaticFiles(directory=EXAMPLES, check_dir=False), name="examples")
     app.mount("/static", StaticFiles(directory=STATIC, check_dir=False), name="static")

@@ -32,7 +32,7 @@ export function bodyFields(draft, changed, redraw) {
         draft.potential = value;
         Object.assign(draft.units, PHYSICS[value].units);
         changed();
-        redraw("units", "faces", "sources", "view", "body");
+        redraw("units", "faces", "sources", "view", "results", "body");
         focus("potential");
       },
     }),
@@ -58,7 +58,7 @@ function kindChoice(draft, changed, redraw) {
         draft.layers.push({ ...emptyLayer(), thickness: draft.size.z, all: draft.conductivity.all }, emptyLayer());
       }
       changed();
-      redraw("body", "faces", "view");
+      redraw("body", "faces", "view", "results");
       focus("body-kind");
     },
   });

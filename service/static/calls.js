@@ -14,11 +14,13 @@ export class Failure extends Error {
    * @param {string} title what kind of failure
    * @param {string} detail a sentence
    * @param {Mistake[]} mistakes
+   * @param {string} code a word of the service for what kind of failure it is
    */
-  constructor(title, detail, mistakes = []) {
+  constructor(title, detail, mistakes = [], code = "") {
     super(detail);
     this.title = title;
     this.mistakes = mistakes;
+    this.code = code;
   }
 }
 
@@ -30,19 +32,24 @@ export const addressOf = (path) => new URL(path, location.href).href;
  * @param {string} path @param {any} request @param {AbortSignal} signal
  * @throws {Failure} with a sentence; an AbortError when the signal was given
  */
-export async function ask(path, request, signal) {
+export const ask = (path, request, signal) => documentOf(path, {
+  method: "POST",
+  headers: { "Content-Type": "application/json", Accept: "application/json" },
+  body: JSON.stringify(request),
+  signal,
+});
+
+/** Ask for a document that is there. @param {string} path @throws {Failure} with a sentence */
+export const askFor = (path) => documentOf(path, { headers: { Accept: "application/json" } });
+
+async function documentOf(path, asked) {
   let response;
   let body;
   try {
-    response = await fetch(path, {
-      method: "POST",
-      headers: { "Content-Type": "application/json", Accept: "application/json" },
-      body: JSON.stringify(request),
-      signal,
-    });
+    response = await fetch(path, asked);
     body = await response.json();
   } catch (error) {
-    if (signal.aborted) throw error;
+    if (asked.signal?.aborted) throw error;
     if (response) {
       throw new Failure(
         "The answer could not be read",
@@ -61,6 +68,7 @@ export async function ask(path, request, signal) {
     body.title ?? `Status ${response.status}`,
     `${body.detail ?? "The service gave no reason."}${wait ? ` It asks to wait ${wait} s.` : ""}`,
     body.errors ?? [],
+    String(body.type ?? "").split(/[/:#]/).at(-1),
   );
 }
 

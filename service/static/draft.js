@@ -5,10 +5,14 @@
  * place in it is noted with the field it came from, so that an answer about `#/problem/body/size/x` finds it.
  */
 
-import { bodyDraftOf, bodyOf, facesOf } from "./body_draft.js";
-import { faceDraftOf, faceOf, padsOf, patchesOf } from "./faces_draft.js";
+import { bodyDraftOf, facesOf } from "./body_draft.js";
+import { faceDraftOf, padsOf, patchesOf } from "./faces_draft.js";
 import { gridsOf } from "./grid_draft.js";
-import { entry, idOf, quantity, text } from "./typed.js";
+import { limitDraftsOf, limitsOf } from "./limit_draft.js";
+import { problemOf } from "./problem_draft.js";
+import { questionDraftOf, questionOf } from "./question_draft.js";
+import { resultDraftsOf, resultsOf } from "./result_draft.js";
+import { entry, quantity, text } from "./typed.js";
 import { AXES, FACES, PHYSICS } from "./words.js";
 
 /** Matrices of more pads than these are left to programs. */
@@ -16,9 +20,14 @@ const MOST_PADS_IN_MATRIX = 100;
 
 const emptyTexts = () => ({ x: "", y: "", z: "" });
 
-/** A draft that makes a problem again. @param {any} problem @param {any} view */
-export function draftOf(problem, view) {
+/**
+ * A draft that makes a problem again.
+ * @param {any} problem @param {any} view @param {any} [asked] request of a decision: results, limits, numbers
+ * @param {string} [call] name of its call
+ */
+export function draftOf(problem, view, asked = {}, call = "") {
   const { plane = {} } = view;
+  const results = resultDraftsOf(asked.results ?? [], problem);
   return {
     name: text(problem.name),
     potential: problem.potential,
@@ -39,12 +48,15 @@ export function draftOf(problem, view) {
     accuracy: { kind: "usual", absolute: "", ...view.accuracy },
     edgeGap: text(view.edgeGap),
     reach: { face: "", change: "as_given", ...view.reach },
+    results,
+    limits: limitDraftsOf(asked.limits ?? [], results),
+    question: questionDraftOf(call, asked, problem, results),
   };
 }
 
 /**
  * The requests of a draft and which field each of their places comes from; null for what has nothing to ask.
- * @returns {{fields: any, flows: any, pads: any, resistances: any, reach: any, places: Map<string, string>}}
+ * @returns {{fields: any, flows: any, pads: any, resistances: any, reach: any, limits: any, decision: any, places: Map<string, string>}}
  */
 export function requestsOf(draft) {
   const places = new Map();
@@ -62,12 +74,16 @@ export function requestsOf(draft) {
   if (draft.edgeGap.trim()) flows.edge_gap = quantity(draft.edgeGap);
   note("#/evaluate/edge_gap", "edge-gap");
   const pads = padsOf(draft).length;
+  const results = resultsOf(draft, note);
+  const limits = limitsOf(draft, note);
   return {
     fields: { problem, evaluate: { grids: gridsOf(draft, plane, note), extremes: true }, accuracy },
     flows: { problem, evaluate: flows, accuracy },
     pads: pads ? { problem, accuracy } : null,
     resistances: pads && pads <= MOST_PADS_IN_MATRIX ? { problem, accuracy } : null,
     reach: facesOf(draft).includes(draft.reach.face) ? { problem, evaluate: { ...draft.reach }, accuracy } : null,
+    limits: limits.length ? { problem, results, limits, accuracy } : null,
+    decision: draft.question.call ? { problem, results, ...questionOf(draft, limits, note), accuracy } : null,
     places,
   };
 }
@@ -76,42 +92,4 @@ export function requestsOf(draft) {
 function accuracyOf({ kind, absolute }) {
   if (kind === "usual") return undefined;
   return kind === "absolute" ? { absolute: entry(absolute) } : { relative: Number(kind) };
-}
-
-function problemOf(draft, note) {
-  const units = Object.fromEntries(
-    Object.entries(draft.units).map(([kind, unit]) => [kind, unit.trim()]).filter(([, unit]) => unit),
-  );
-  for (const kind of Object.keys(draft.units)) note(`#/problem/units/${kind}`, idOf("unit", kind));
-  note("#/problem/name", "name");
-  const problem = {
-    potential: draft.potential,
-    units,
-    body: bodyOf(draft, note),
-    faces: Object.fromEntries(facesOf(draft).map((face) => [face, faceOf(face, draft, note)])),
-  };
-  note("#/problem/faces", "faces");
-  note("#/problem", "name");
-  if (draft.sources.length) {
-    problem.sources = draft.sources.map((source, index) => sourceOf(source, index, note));
-  }
-  return draft.name.trim() ? { name: draft.name.trim(), ...problem } : problem;
-}
-
-function sourceOf(source, index, note) {
-  const pointer = `#/problem/sources/${index}`;
-  const id = idOf("source", index);
-  note(pointer, idOf(id, "density"));
-  note(`${pointer}/density`, idOf(id, "density"));
-  const written = {};
-  AXES.forEach((axis, side) => {
-    const isLeftOut = source.whole || (!source.from[side].trim() && !source.to[side].trim());
-    if (!isLeftOut) written[axis] = [entry(source.from[side]), entry(source.to[side])];
-    note(`${pointer}/${axis}`, idOf(id, axis, "from"));
-    note(`${pointer}/${axis}/0`, idOf(id, axis, "from"));
-    note(`${pointer}/${axis}/1`, idOf(id, axis, "to"));
-  });
-  written.density = quantity(source.density);
-  if (source.name.trim()) written.name = source.name.trim();
-  return written;
 }

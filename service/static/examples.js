@@ -1,9 +1,14 @@
 /** Ready problems to start from: parts of Halden Reach, an invented glass works. */
 
+import { askFor } from "./calls.js";
+
 const held = (value) => ({ condition: "held", value });
 const insulated = { condition: "insulated" };
 
-/** @type {{title: string, problem: any, view: any}[]} */
+/**
+ * Some hold a problem; others name a file among the examples of the calls, with results, limits and a question.
+ * @type {{title: string, problem?: any, call?: string, file?: string, view: any}[]}
+ */
 export const EXAMPLES = [
   {
     title: "Sight-port bar in a cooled frame (bar, heat)",
@@ -195,4 +200,22 @@ export const EXAMPLES = [
     },
     view: { plane: { axis: "z", position: "25" } },
   },
+  { title: "Does the power module hold its limits? (limits)", call: "limits", file: "limits_power_module", view: { plane: { axis: "y", position: "6.5" } } },
+  { title: "Crown brick: thicknesses and coolings (table of cases)", call: "cases", file: "cases_crown_brick", view: { plane: { axis: "y", position: "57" } } },
+  { title: "Crown brick: how thick? (sizing)", call: "sizing", file: "sizing_crown_brick", view: { plane: { axis: "y", position: "57" } } },
+  { title: "Cold plate: where do its parts go? (best values)", call: "best-values", file: "best_values_cold_plate", view: { plane: { axis: "z", position: "0" } } },
 ];
+
+/** The problem of an example, and the request of a decision if it has one. @throws {import("./calls.js").Failure} */
+export async function exampleOf({ problem, view, call, file }) {
+  if (!file) return { problem, view };
+  const { request } = await askFor(`/static/examples/${file}.json`);
+  const accuracy = accuracyOf(request.accuracy);
+  return { problem: request.problem, view: accuracy ? { ...view, accuracy } : view, asked: request, call };
+}
+
+/** The accuracy of a request as the form has it. */
+function accuracyOf(accuracy) {
+  if (!accuracy) return null;
+  return accuracy.absolute === undefined ? { kind: accuracy.relative.toExponential() } : { kind: "absolute", absolute: String(accuracy.absolute) };
+}

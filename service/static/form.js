@@ -1,10 +1,16 @@
-/** The form: body, faces, sources, and what is to be shown. Every part writes into the draft it is given. */
+/**
+ * The form: body, faces, sources, what is to be shown, results, limits and a question. Every part writes into the draft it
+ * is given.
+ */
 
 import { endsOf, facesOf } from "./body_draft.js";
 import { bodyFields } from "./body_form.js";
 import { choice, field, intervals, make, writer } from "./elements.js";
 import { faceCards } from "./faces_form.js";
 import { isSection } from "./grid_draft.js";
+import { limitFields } from "./limit_form.js";
+import { questionFields } from "./question_form.js";
+import { resultFields } from "./result_form.js";
 import { idOf } from "./typed.js";
 import { AXES, axesAcross, LENGTH_UNITS, PHYSICS, UNIT_LABELS } from "./words.js";
 
@@ -13,14 +19,18 @@ import { AXES, axesAcross, LENGTH_UNITS, PHYSICS, UNIT_LABELS } from "./words.js
  * @param {any} draft
  * @param {() => void} changed called after every change of the draft
  * @param {() => void} drawn called after every drawing
+ * @param {{now: () => void, study: () => void}} ask what the buttons of a question do
  */
-export function drawForm(draft, changed, drawn) {
+export function drawForm(draft, changed, drawn, ask) {
   const parts = {
     body: () => bodyFields(draft, changed, redraw),
     units: () => unitFields(draft, changed),
     faces: () => [faceCards(draft, changed)],
     sources: () => sourceFields(draft, changed, redraw),
     view: () => viewFields(draft, changed, redraw),
+    results: () => resultFields(draft, changed, redraw),
+    limits: () => limitFields(draft, changed, redraw),
+    decision: () => questionFields(draft, changed, redraw, ask),
   };
   function redraw(...names) {
     for (const name of names) {

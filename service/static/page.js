@@ -1,30 +1,43 @@
 /** The page: keeps what is typed, asks the service, and shows what comes back. */
 
-import { addressOf, ask, Failure } from "./calls.js";
+import { addressOf, ask } from "./calls.js";
+import { decide, outdateDecision } from "./decision.js";
 import { draftOf, requestsOf } from "./draft.js";
 import { make, showUnits } from "./elements.js";
-import { EXAMPLES } from "./examples.js";
+import { exampleOf, EXAMPLES } from "./examples.js";
 import { showPlaces } from "./faces_form.js";
 import { drawForm } from "./form.js";
-import { clearMistakes, forgive, showMistakes } from "./mistakes.js";
+import { refreshLists } from "./lists.js";
+import { clearMistakes, forgive } from "./mistakes.js";
+import { showNumbers, unitsOfNumbers } from "./number_form.js";
 import { plotting } from "./picture.js";
+import { unitsOfResult } from "./result_draft.js";
+import { showPlainNames } from "./result_form.js";
 import { redrawPicture, savePictureShown, saveValuesShown, showAnswer } from "./results.js";
 import { drawSketch } from "./sketch.js";
+import { begin, offerStudies } from "./study.js";
+import { bringIntoView, leaveOff, say, tellFailures, waitFor } from "./waiting.js";
 import { differenceUnit, inverseOf } from "./words.js";
 
 const part = (name) => document.getElementById(name);
-const CALLS = { fields: "/v1/fields", flows: "/v1/flux-totals", pads: "/v1/pads", resistances: "/v1/resistances", reach: "/v1/reach" };
+/** What one press computes; those that have to be there for an answer come first. */
+const CALLS = {
+  fields: "/v1/fields", flows: "/v1/flux-totals", pads: "/v1/pads", limits: "/v1/limits", resistances: "/v1/resistances", reach: "/v1/reach",
+};
+const NEEDED = 4;
 /** Drafts of another shape are not read. */
-const KEPT_AS = "stillfield draft 3";
+const KEPT_AS = "stillfield draft 4";
 
-let draft = kept() ?? exampleDraft(0);
-/** The request under way. @type {AbortController|null} */
-let running = null;
-let ticking = 0;
+let draft = kept() ?? draftOf(EXAMPLES[0].problem, EXAMPLES[0].view);
 
-function exampleDraft(index) {
-  const { problem, view } = EXAMPLES[index];
-  return draftOf(problem, view);
+async function loadExample() {
+  try {
+    const { problem, view, asked, call } = await exampleOf(EXAMPLES[Number(part("example").value)]);
+    startFrom(draftOf(problem, view, asked, call));
+    say("Example loaded; nothing is computed yet.");
+  } catch (failure) {
+    say(`Not loaded: ${failure.message}`);
+  }
 }
 
 /** What was typed before this page was loaded again; browsers may forbid keeping anything. */
@@ -51,15 +64,24 @@ function changed() {
   sketch();
   showRequest();
   if (!part("answer").hidden) part("stale").hidden = false;
+  outdateDecision();
 }
 
 /** Everything in the form that follows from what is typed elsewhere in it. */
 function labelForm() {
   const difference = differenceUnit(draft);
-  showUnits({
+  const units = {
     ...draft.units, difference, per_difference: inverseOf(difference), contact_resistance: inverseOf(draft.units.film_coefficient),
+  };
+  const results = Object.fromEntries(draft.results.map(({ id }) => [`result-${id}`, unitsOfResult(draft, id)]));
+  showUnits({
+    ...units, ...unitsOfNumbers(draft, units),
+    ...Object.fromEntries(Object.entries(results).flatMap(([kind, { unit, difference: step }]) => [[kind, unit], [`${kind}-difference`, step]])),
   });
   showPlaces(draft);
+  refreshLists();
+  showPlainNames(draft);
+  showNumbers(draft, units);
 }
 
 function sketch() {
@@ -73,7 +95,7 @@ function showRequest() {
   const select = part("request-kind");
   for (const option of select.options) option.disabled = !requests[option.value];
   if (!requests[select.value]) select.value = "fields";
-  part("request-address").textContent = `POST ${addressOf(CALLS[select.value])}`;
+  part("request-address").textContent = `POST ${addressOf(CALLS[select.value] ?? `/v1/${draft.question.call}`)}`;
   part("request-text").textContent = readable(requests[select.value]);
 }
 
@@ -81,74 +103,41 @@ function showRequest() {
 const readable = (request) => JSON.stringify(request, null, 2)
   .replace(/\[\n\s*([^[\]{}]*?)\n\s*\]/g, (_, list) => `[${list.replace(/\n\s*/g, " ")}]`);
 
-function say(sentence) {
-  part("status").textContent = sentence;
-}
-
-/** Show or end the state of waiting. */
-function setBusy(isBusy) {
-  clearInterval(ticking);
-  document.body.classList.toggle("busy", isBusy);
-  part("waiting").hidden = !isBusy;
-  part("results").setAttribute("aria-busy", String(isBusy));
-  if (!isBusy) return;
-  const started = Date.now();
-  const tick = () => {
-    part("seconds").textContent = `${Math.floor((Date.now() - started) / 1000)} s`;
-  };
-  tick();
-  ticking = setInterval(tick, 1000);
-}
-
-/** Ask for the field and the flows. A press while another is under way takes its place. */
+/** Ask for the field, the flows and what else is computed with them. */
 async function compute() {
-  running?.abort();
-  const controller = new AbortController();
-  running = controller;
-  clearMistakes();
-  setBusy(true);
-  say("Computing.");
   // Meanwhile the picture's script may come; if it fails, the picture says so.
   plotting().catch(() => {});
   const requests = requestsOf(draft);
-  const { places } = requests;
   const { axis } = draft.plane;
-  const outcomes = await Promise.allSettled(
-    Object.entries(CALLS).map(([name, path]) => (requests[name] ? ask(path, requests[name], controller.signal) : null)),
-  );
-  if (running !== controller) return;
-  running = null;
-  setBusy(false);
+  const outcomes = await waitFor("Computing.", (signal) =>
+    Object.entries(CALLS).map(([name, path]) => (requests[name] ? ask(path, requests[name], signal) : null)));
+  if (!outcomes) return;
   // A body may have a field and yet no resistances or no reach of a face; that is told in their place.
-  const failures = outcomes.slice(0, 3).flatMap((outcome) => (outcome.status === "rejected" ? [outcome.reason] : []));
-  if (failures.length) {
-    const known = failures.map((failure) => (failure instanceof Failure ? failure : new Failure("Something failed in this page", "Load it again; what you have typed is kept.")));
-    showMistakes(known, places);
-    say(`Not computed: ${known[0].title}.`);
+  const reasons = outcomes.slice(0, NEEDED).flatMap((outcome) => (outcome.status === "rejected" ? [outcome.reason] : []));
+  if (reasons.length) {
+    tellFailures(reasons, requests.places);
     return;
   }
-  const [fields, flows, pads, resistances, reach] = outcomes.map((outcome) => outcome.value ?? outcome.reason);
+  const [fields, flows, pads, limits, resistances, reach] = outcomes.map((outcome) => outcome.value ?? outcome.reason);
   part("stale").hidden = true;
   await showAnswer({
-    fields, flows, pads, resistances, reach, askedResistances: requests.resistances, problem: requests.fields.problem,
+    fields, flows, pads, limits, resistances, reach, askedResistances: requests.resistances, problem: requests.fields.problem,
     evaluate: requests.flows.evaluate, axis,
   });
   say("Computed. The answer is shown.");
-  bringIntoView();
+  bringIntoView(part("answer-title"));
 }
 
-/** On a narrow page the answer is below the form; go there, and let readers go on from its heading. */
-function bringIntoView() {
-  const heading = part("answer-title");
-  heading.focus({ preventScroll: true });
-  const { top } = heading.getBoundingClientRect();
-  if (top < 0 || top > window.innerHeight * 0.6) heading.scrollIntoView({ block: "start" });
+/** What the buttons of a question do: ask while one waits, or as a study. */
+function asking(how) {
+  plotting().catch(() => {});
+  const { decision, places } = requestsOf(draft);
+  const { call } = draft.question;
+  void how(call, decision, places, () => void begin(call, decision, places));
 }
 
 function cancel() {
-  running?.abort();
-  running = null;
-  setBusy(false);
+  leaveOff();
   say("Cancelled. What you have typed is kept.");
   part("compute").focus();
 }
@@ -166,12 +155,10 @@ async function copyRequest() {
 }
 
 function startFrom(next) {
-  running?.abort();
-  running = null;
-  setBusy(false);
+  leaveOff();
   clearMistakes();
   draft = next;
-  drawForm(draft, changed, labelForm);
+  drawForm(draft, changed, labelForm, { now: () => asking(decide), study: () => asking(begin) });
   changed();
 }
 
@@ -185,10 +172,7 @@ function listen() {
   part("form").addEventListener("focusout", () => setTimeout(sketch));
   part("cancel").addEventListener("click", cancel);
   part("example").append(...EXAMPLES.map(({ title }, index) => make("option", { value: index }, title)));
-  part("load-example").addEventListener("click", () => {
-    startFrom(exampleDraft(Number(part("example").value)));
-    say("Example loaded; nothing is computed yet.");
-  });
+  part("load-example").addEventListener("click", () => void loadExample());
   part("request-kind").addEventListener("change", showRequest);
   part("copy").addEventListener("click", () => void copyRequest());
   part("save-picture").addEventListener("click", () => void savePictureShown());
@@ -207,3 +191,4 @@ function listen() {
 
 listen();
 startFrom(draft);
+offerStudies();

@@ -4,6 +4,7 @@ import { bodySentence, certificateView, extremesView, warningsView } from "./ans
 import { saveText } from "./calls.js";
 import { make, scrolled, verdict } from "./elements.js";
 import { flowsView } from "./flows.js";
+import { limitsView } from "./limit_view.js";
 import { bounded, brief, pretty } from "./numbers.js";
 import { drawPicture, hasEqualAxes, levelsOf, marksOf, savePicture } from "./picture.js";
 import { padsView } from "./pads.js";
@@ -19,6 +20,7 @@ const part = (name) => document.getElementById(name);
  * @property {any} fields answer of POST /v1/fields
  * @property {any} flows answer of POST /v1/flux-totals
  * @property {any} pads answer of POST /v1/pads, null where there are no pads
+ * @property {any} limits answer of POST /v1/limits, null where there are no limits
  * @property {any} resistances answer of POST /v1/resistances, or the failure of it, or null
  * @property {any} askedResistances its request
  * @property {any} reach answer of POST /v1/reach, or the failure of it, or null
@@ -36,7 +38,7 @@ export const savePictureShown = () => saveShown.picture();
 export const saveValuesShown = () => saveShown.values();
 
 /** @param {Outcome} outcome */
-export async function showAnswer({ fields, flows, pads, resistances, reach, askedResistances, problem, evaluate, axis }) {
+export async function showAnswer({ fields, flows, pads, limits, resistances, reach, askedResistances, problem, evaluate, axis }) {
   const words = PHYSICS[fields.potential];
   const { units } = fields;
   const plane = planeShown(fields, problem, axis);
@@ -55,9 +57,10 @@ export async function showAnswer({ fields, flows, pads, resistances, reach, aske
   part("flows").replaceChildren(...flowsView(flows, problem, evaluate.edge_gap, words));
   part("certificate").replaceChildren(...certificateView(fields, plane));
   showPads(pads, words);
+  showLimits(limits);
   showResistances(resistances, askedResistances, words);
   showReach(reach, problem, words);
-  part("warnings").replaceChildren(warningsView([fields, flows, pads, resistances, reach].filter((answer) => answer?.warnings)));
+  part("warnings").replaceChildren(warningsView([fields, flows, pads, limits, resistances, reach].filter((answer) => answer?.warnings)));
 
   const sketch = part("sketch").cloneNode(true);
   sketch.removeAttribute("id");
@@ -86,6 +89,11 @@ function planeShown(fields, problem, axis) {
 function showPads(pads, words) {
   part("pads-sheet").hidden = !pads;
   if (pads) part("pads").replaceChildren(padsView(pads, words));
+}
+
+function showLimits(limits) {
+  part("limits-sheet").hidden = !limits;
+  if (limits) part("limits").replaceChildren(...limitsView(limits));
 }
 
 function showResistances(answer, asked, words) {

@@ -146,11 +146,11 @@ def test_matrix_of_many_pads_fits_on_the_page(page: Page) -> None:
     load_example(page, "Power module")
     page.evaluate(
         """() => {
-            const draft = JSON.parse(sessionStorage.getItem("stillfield draft 3"));
+            const draft = JSON.parse(sessionStorage.getItem("stillfield draft 4"));
             draft.faces.z_high.data.flux.patches = Array.from({ length: 15 }, (_, index) => ({
                 name: "", isTotal: true, value: "2", from: [String(2 * index), "4"], to: [String(2 * index + 1), "9"],
             }));
-            sessionStorage.setItem("stillfield draft 3", JSON.stringify(draft));
+            sessionStorage.setItem("stillfield draft 4", JSON.stringify(draft));
         }"""
     )
     page.reload()
