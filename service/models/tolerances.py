@@ -18,11 +18,11 @@ MOST_SAMPLES = 1_000_000
 MOST_REPLICATES = 64
 MOST_QUANTILES = 50
 MOST_TABULATED = 1000
-MOST_SIGMAS = 20.0
+LEAST_SIGMAS, MOST_SIGMAS = 0.1, 20.0
 
 LARGEST_SEED = 2**32 - 1
 
-_Sigmas = Annotated[float, Field(gt=0, le=MOST_SIGMAS)]
+_Sigmas = Annotated[Number, Field(ge=LEAST_SIGMAS, le=MOST_SIGMAS)]
 _SIGMAS_IN_WORDS = "How many standard deviations half of the tolerance zone is, where only one of the two is given."
 _DEVIATION_IN_WORDS = "Standard deviation, in the unit of differences of the number, greater than zero."
 

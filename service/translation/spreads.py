@@ -17,6 +17,9 @@ from service.translation.measures import read_measured
 from service.translation.numbers import NumberInfo
 from service.translation.result_units import Measure
 
+# A lognormal number may have a standard deviation of this many times its mean.
+WIDEST_LOGNORMAL = 1000.0
+
 
 @dataclass(frozen=True)
 class Spread:
@@ -101,6 +104,9 @@ class _Reading:
     def _of_shape(self, plus: float, minus: float, deviation: float) -> Spread | None:
         nominal = self._info.nominal
         low, high = nominal - minus, nominal + plus
+        if not low < high:
+            self._refuse((), "The tolerance is too small to be told from the number.", "too-small")
+            return None
         middle = nominal + (plus - minus) / 2
         distribution: Distribution
         if isinstance(self._shape, models.Normal):
@@ -115,6 +121,10 @@ class _Reading:
             if nominal <= 0 or not self._info.measure.has_own_zero:
                 detail = "A lognormal number has to be greater than zero, on a scale with a zero of its own."
                 self._refuse(("distribution",), detail, "not-positive")
+                return None
+            if deviation > WIDEST_LOGNORMAL * nominal:
+                detail = f"The standard deviation is more than {WIDEST_LOGNORMAL:g} times the number."
+                self._refuse(("distribution",), detail, "too-wide")
                 return None
             distribution = distributions.lognormal(nominal, deviation)
         return Spread(plus, minus, distribution)

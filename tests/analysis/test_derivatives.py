@@ -123,6 +123,18 @@ def test_steep_and_flat_decay(length: float) -> None:
     assert found.first_error[0, 0] <= max(1e-6 * abs(expected), 4 * 1e-12 * 64 / length)
 
 
+def test_many_kinks_share_the_cases_there_are() -> None:
+    """Twenty pads of one level: whichever is raised is hottest. No more cases than were said, and none told wrong."""
+    evaluate = Counted([lambda *levels: np.max(levels, axis=0), lambda *levels: np.sum(levels, axis=0)])
+    found = of(evaluate, np.full(20, 60.0))
+    assert found.n_cases == evaluate.n_cases <= most_cases(20) == 1 + 8 * 20 + 48
+    assert not found.smooth[0].any()
+    assert np.all(found.first[0] - found.first_error[0] <= 0.5)
+    assert np.all(found.first[0] + found.first_error[0] >= 0.5)
+    np.testing.assert_allclose(found.first[1], 1, rtol=1e-9)
+    assert found.smooth[1].all()
+
+
 def test_kink_is_flagged_and_told_from_both_sides() -> None:
     """Two places compete for the hottest: one grows with the number, the other falls."""
     evaluate = Counted([lambda x: np.maximum(50 + 3 * (x - 2) + (x - 2) ** 2, 50 - 1 * (x - 2)), lambda x: x**3])

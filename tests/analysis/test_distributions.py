@@ -37,6 +37,13 @@ KNOWN = [
 ]  # fmt: skip
 
 
+def test_normal_distribution_cut_far_within_is_even() -> None:
+    for deviation in (900, 1100, 1e9):
+        spread = truncated_normal(20, deviation, 19, 21)
+        np.testing.assert_allclose(spread.ppf(np.array([0, 0.25, 1])), [19, 19.5, 21], rtol=1e-7)
+        np.testing.assert_allclose(spread.std(), 2 / 12**0.5, rtol=1e-7)
+
+
 @pytest.mark.parametrize(("distribution", "mean", "deviation"), KNOWN)
 def test_means_and_deviations_are_those_of_the_textbook(
     distribution: Distribution, mean: float, deviation: float

@@ -238,6 +238,11 @@ async def test_lognormal_numbers_are_positive(client: httpx.AsyncClient) -> None
         ({"numbers": [LOW | {"plus_minus": 1, "plus": 2}]}, "#/numbers/0"),
         ({"numbers": [LOW | {"distribution": {"shape": "uniform"}}]}, "#/numbers/0"),
         ({"numbers": [LOW | {"plus_minus": 0}]}, "#/numbers/0"),
+        ({"numbers": [LOW | {"plus_minus": 1e-30}]}, "#/numbers/0"),
+        (
+            {"numbers": [THICKNESS | {"distribution": {"shape": "lognormal", "standard_deviation": "1 km"}}]},
+            "#/numbers/0/distribution",
+        ),
         ({"numbers": [LOW | {"plus_minus": -1}]}, "#/numbers/0/plus_minus"),
         ({"numbers": [LOW | {"plus_minus": "1 mm"}]}, "#/numbers/0/plus_minus"),
         ({"numbers": [LOW | {"relative": 0.1}]}, "#/numbers/0/relative"),
