@@ -10,7 +10,7 @@ from service.studies.chunk_work import ChunkOutcome
 
 
 class CrewLost(Exception):
-    """The whole crew is out of reach. Nothing is known about the chunk; hand it in again."""
+    """The whole crew is out of reach for a moment. Nothing is known about the chunk; hand it in again."""
 
 
 class WorkerLost(Exception):

@@ -10,12 +10,13 @@ import threading
 import time
 from concurrent.futures import Future
 from concurrent.futures import TimeoutError as FutureTimeout
+from concurrent.futures.process import BrokenProcessPool
 
 from pebble import ProcessExpired, ProcessPool
 
 from service.analysis.evaluations import FloatArray
 from service.studies.chunk_work import ChunkOutcome, evaluate_chunk
-from service.studies.crew import TimeOver, WorkerLost
+from service.studies.crew import CrewLost, TimeOver, WorkerLost
 
 if sys.platform != "win32":
     import resource
@@ -53,6 +54,9 @@ class Pool:
     def submit(self, work: bytes, cases: FloatArray, accuracy: float | None, seconds: float) -> Future[ChunkOutcome]:
         """Have a chunk computed; cancelling its future ends the process that computes it."""
         with self._lock:
+            if self._pool is not None and not self._pool.active:
+                # Processes that were ended from outside took a lock of the pool along.
+                self._end()
             if self._pool is None:
                 # Started afresh: a copy of a process with threads may hang on a lock that one of them held.
                 self._pool = ProcessPool(
@@ -72,10 +76,13 @@ class Pool:
     def close(self) -> None:
         """End all processes, whatever they do."""
         with self._lock:
-            if self._pool is not None:
-                self._pool.stop()
-                self._pool.join()
-                self._pool = None
+            self._end()
+
+    def _end(self) -> None:
+        if self._pool is not None:
+            self._pool.stop()
+            self._pool.join()
+            self._pool = None
 
 
 def _hand_over(done: Future[ChunkOutcome], outcome: Future[ChunkOutcome]) -> None:
@@ -87,6 +94,8 @@ def _hand_over(done: Future[ChunkOutcome], outcome: Future[ChunkOutcome]) -> Non
         outcome.set_result(done.result())
     elif isinstance(error, FutureTimeout):
         outcome.set_exception(TimeOver())
+    elif isinstance(error, BrokenProcessPool):
+        outcome.set_exception(CrewLost())
     elif isinstance(error, ProcessExpired | MemoryError):
         outcome.set_exception(WorkerLost())
     else:
