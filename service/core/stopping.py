@@ -17,8 +17,8 @@ _ASKER: ContextVar[KeepGoing | None] = ContextVar("asker", default=None)
 
 @contextmanager
 def on_behalf_of(keep_going: KeepGoing | None) -> Iterator[None]:
-    """While it lasts, steps in this thread ask `keep_going`, or whom they asked before if that is None."""
-    if keep_going is None:
+    """While it lasts, steps in this thread ask `keep_going`, or whom they asked before if that is None or `go_on`."""
+    if keep_going is None or keep_going is go_on:
         yield
         return
     token = _ASKER.set(keep_going)
