@@ -45,9 +45,9 @@ async def test_request_in_the_readme_has_the_answer_in_the_readme(client: httpx.
 
 
 async def test_calls_named_in_the_readme_exist(client: httpx.AsyncClient) -> None:
-    paths = set((await client.get("/openapi.json")).json()["paths"])
-    named = {path.split("#")[0] for path in re.findall(r"`(?:GET|POST) (/[^`]+)`", README)}
-    assert {path.replace("{id}", "{problem_id}") for path in named if path.startswith("/v1/")} <= paths
+    paths = {re.sub(r"\{\w+\}", "{id}", path) for path in (await client.get("/openapi.json")).json()["paths"]}
+    named = {path.split("#")[0] for path in re.findall(r"`(?:GET|POST|DELETE) (/[^`]+)`", README)}
+    assert {path for path in named if path.startswith("/v1/")} <= paths
 
 
 def test_files_named_in_the_map_exist() -> None:
