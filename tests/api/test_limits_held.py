@@ -10,6 +10,7 @@ import pytest
 from service.models.limits_answer import LimitsAnswer
 from tests.api.client import check_problem_document, pointers
 from tests.api.halden_reach import Json, block, sight_port_bar, slab
+from tests.api.test_mixed import stub
 
 pytestmark = pytest.mark.anyio
 
@@ -117,7 +118,10 @@ async def test_wrong_limits_are_pointed_at(client: httpx.AsyncClient) -> None:
 async def test_a_result_without_a_finite_value_is_pointed_at(client: httpx.AsyncClient) -> None:
     question = {
         "problem": sight_port_bar(),
-        "results": [MIDDLE | {"at": [20, 30, 5]}, {"name": "in", "result": "inflow", "face": "z_low", "patch": "window"}],
+        "results": [
+            MIDDLE | {"at": [20, 30, 5]},
+            {"name": "in", "result": "inflow", "face": "z_low", "patch": "window"},
+        ],
         "limits": [{"result": "in", "at_most": 60}],
     }
     document = check_problem_document(await client.post("/v1/limits", json=question), 422)
@@ -135,3 +139,15 @@ async def test_a_stored_problem_is_answered_alike(client: httpx.AsyncClient) -> 
     by_id = await client.post("/v1/limits", json=question | {"problem_id": stored})
     by_problem = await client.post("/v1/limits", json=question | {"problem": slab(20, 80)})
     assert by_id.json() == by_problem.json()
+
+
+async def test_places_in_a_body_with_a_mixed_face(client: httpx.AsyncClient) -> None:
+    """The level of a place is as POST /v1/fields tells it."""
+    point = {"points": [{"at": [40, 30, 12]}]}
+    fields = (await client.post("/v1/fields", json={"problem": stub(), "evaluate": point})).json()
+    place = {"name": "place", "result": "potential", "at": [40, 30, 12]}
+    answer = await held(client, stub(), [place], [{"result": "place", "at_most": 1000}])
+    (told,) = fields["points"]
+    (result,) = answer["results"]
+    assert abs(result["value"] - told["potential"]) <= result["error_bound"] + told["error_bound"]
+    assert answer["all_held"] == "yes"
