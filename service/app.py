@@ -13,6 +13,7 @@ from service import __version__, openapi, problem_details
 from service.middleware import BodyLimit, Counting, LastResort, SecurityHeaders
 from service.routes import (
     best_values,
+    calibration,
     cases,
     convergence,
     fields,
@@ -71,7 +72,8 @@ def create_app(settings: Settings | None = None) -> FastAPI:
     openapi.install(app)
     problem_details.install(app)
     answering = (problems, fields, flux_totals, convergence, pads, resistances, reach)
-    for module in (*answering, limits, sensitivities, tolerances, sizing, best_values, cases, studies, health, pages):
+    deciding = (limits, sensitivities, tolerances, sizing, best_values, calibration, cases)
+    for module in (*answering, *deciding, studies, health, pages):
         app.include_router(module.router)
     pages.mount_files(app)
 

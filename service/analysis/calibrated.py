@@ -78,9 +78,9 @@ class Rival:
 class Calibration:
     """What readings say.
 
-    correlation: of the unknowns, shape (n, n), NaN with one the readings do not tell. values: all results at the
-    solution; standard_uncertainties: what that of the unknowns does to them, infinite where they follow what is not
-    known. left: reading less result, shape (n_readings,); normalised: in standard
+    correlation: of the unknowns, shape (n, n), NaN with one the readings do not tell. values, bounds: all results at
+    the solution, with how far off they may be; standard_uncertainties: what that of the unknowns does to them, infinite
+    where they follow what is not known. left: reading less result, shape (n_readings,); normalised: in standard
     uncertainties of what is left over, NaN where nothing can be; leverages: part of each reading's variance that the
     fit takes up, 1 for a reading that is followed whatever it says. outliers: places of readings whose misfit one in
     twenty sets of so many would show.
@@ -97,6 +97,7 @@ class Calibration:
     correlation: FloatArray
     together: tuple[Combination, ...]
     values: FloatArray
+    bounds: FloatArray
     standard_uncertainties: FloatArray
     left: FloatArray
     normalised: FloatArray

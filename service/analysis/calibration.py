@@ -10,6 +10,7 @@ what the readings leave over.
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 from scipy.stats import chi2, norm, t
@@ -18,7 +19,6 @@ from service.analysis import fitting, profiles
 from service.analysis.calibrated import Calibration, Estimate, MapEstimate, Rival
 from service.analysis.evaluations import Evaluate, FloatArray
 from service.analysis.fitting import Found
-from service.analysis.looks import Look
 from service.analysis.readings import Readings
 from service.analysis.search import MOST_ROUNDS, Question, Solved, solve
 from service.analysis.smoothing import RECTANGULAR, SmoothMap, resolution
@@ -62,6 +62,8 @@ def most_cases(unknowns: int, smooth: SmoothMap | None = None, *, starts: int = 
     if profile:
         searches += 2 * unknowns * profiles.MOST_LOOKS
     straight = 4 + 2 * unknowns + entries + look
+    if smooth is not None and smooth.affine and not unknowns:
+        return straight
     return straight + searches * look + 2 * unknowns
 
 
@@ -117,10 +119,14 @@ class _Spread:
             self.open = basis[~is_told]
             self.regular = np.hstack((basis[is_told].T / np.hypot(1, sizes), self.open.T))
 
-    def of(self, slopes: FloatArray) -> FloatArray:
-        """Standard uncertainty of what follows the coordinates, shape (n, size); infinite along open directions."""
+    def of(self, slopes: FloatArray, doubts: FloatArray) -> FloatArray:
+        """Standard uncertainty of what follows the coordinates, infinite along open directions.
+
+        slopes: shape (n, size). doubts: by how much they may be off, of the same shape.
+        """
         spread = np.sqrt(np.maximum(np.einsum("ni,ij,nj->n", slopes, self.covariance, slopes), 0.0))
-        follows = np.abs(slopes @ self.open.T) > FOLLOWS * np.linalg.norm(slopes, axis=1)[:, None]
+        least = np.maximum(FOLLOWS * np.linalg.norm(slopes, axis=1), LEAST_TOLD * np.linalg.norm(doubts, axis=1))
+        follows = np.abs(slopes @ self.open.T) > least[:, None]
         return np.where(follows.any(axis=1), np.inf, spread)
 
 
@@ -156,10 +162,10 @@ class _Statistics:
             self._factor = float(t.ppf(0.5 + COVERED / 2, self._freedom))
         self._is_scaled = is_scaled
         self._confounded = self._confounded_with_map()
-        self._spreads = self._scale * self._spread.of(np.eye(self._coordinates.size)[: self._count])
-        alone = [k for k in self._confounded if unknowns[k].prior is None]
-        # What is told of these comes from the smoothness of the map alone.
-        self._spreads[alone] = np.inf
+        alone = np.eye(self._coordinates.size)[: self._count]
+        self._spreads = self._scale * self._spread.of(alone, np.zeros_like(alone))
+        # What is told of these comes from the smoothness of the map and not from the readings.
+        self._spreads[[k for k in self._confounded if unknowns[k].prior is None]] = np.inf
 
     def _confounded_with_map(self) -> list[int]:
         """Unknowns that readings do not tell from the map."""
@@ -190,10 +196,6 @@ class _Statistics:
         normalised = left / free
         limit = float(norm.isf((1 - COVERED) / 2 / len(left)))
         shares, shared = self._shares()
-        with np.errstate(invalid="ignore"):
-            known = np.where(
-                np.isfinite(np.outer(spreads, spreads)), self._scale**2 / np.outer(spreads, spreads), np.nan
-            )
         minima, rivals = self._other_minima()
         probability = None
         if not self._is_scaled and self._freedom > LEAST_FREEDOM:
@@ -204,10 +206,11 @@ class _Statistics:
                 for k in range(self._count)
             ),
             smooth=None if self._smooth is None else self._map(self._smooth),
-            correlation=spread.covariance[: self._count, : self._count] * known,
+            correlation=self._correlation(),
             together=tuple(self._together()),
             values=look.values,
-            standard_uncertainties=self._scale * spread.of(look.slopes),
+            bounds=look.bounds,
+            standard_uncertainties=self._scale * spread.of(look.slopes, look.doubts),
             left=left,
             normalised=normalised,
             leverages=leverages,
@@ -266,6 +269,15 @@ class _Statistics:
             shared = np.array(along).reshape(len(along), self._count).T ** 2 / variances
         return shares, shared
 
+    def _correlation(self) -> FloatArray:
+        """Of the unknowns; NaN with one the readings do not tell."""
+        covariance = self._spread.covariance[: self._count, : self._count]
+        known = np.isfinite(self._spreads)
+        sizes = np.sqrt(np.where(known, np.diag(covariance), np.nan))
+        correlation = np.clip(covariance / np.outer(sizes, sizes), -1.0, 1.0)
+        np.fill_diagonal(correlation, np.where(known, 1.0, np.nan))
+        return correlation
+
     def _together(self) -> list[Combination]:
         if self._count < 2:
             return []
@@ -287,7 +299,7 @@ class _Statistics:
         values, _ = looker.values(np.array(places))
         departures = np.full(len(places), np.inf)
         for number, (place, seen) in enumerate(zip(places, values, strict=True)):
-            left, _ = rows(Look(place, seen, found.look.slopes, found.look.doubts))
+            left, _ = rows(replace(found.look, place=place, values=seen))
             linear = found.left + found.slopes @ (place - found.look.place)
             # The others follow where the valley bends.
             others = np.delete(found.slopes, number // 2, axis=1)

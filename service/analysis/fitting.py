@@ -9,7 +9,7 @@ a search of any number of starts takes as many waves as its slowest.
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 from scipy.optimize import lsq_linear
@@ -144,7 +144,7 @@ def _relaxed(look: Look, looker: Looker, rows: Callable[[Look], Rows]) -> Found:
     step = np.zeros(len(look.place))
     entries = slice(looker.coordinates.count, None)
     step[entries] = np.linalg.lstsq(slopes[:, entries], -left)[0]
-    moved = Look(look.place + step, look.values + look.slopes @ step, look.slopes, look.doubts)
+    moved = replace(look, place=look.place + step, values=look.values + look.slopes @ step)
     change = slopes @ step
     return Found(moved, left + change, slopes, exact=float(change @ change) <= SETTLED)
 

@@ -23,13 +23,14 @@ STRAIGHT = 1e-7
 
 @dataclass(frozen=True, eq=False)
 class Look:
-    """What is seen at a place: values, shape (n_results,), and slopes by coordinates, shape (n_results, size).
+    """What is seen at a place: values and bounds, shape (n_results,), and slopes by coordinates, (n_results, size).
 
     doubts: an estimate of how far off the slopes are.
     """
 
     place: FloatArray
     values: FloatArray
+    bounds: FloatArray
     slopes: FloatArray
     doubts: FloatArray
 
@@ -65,18 +66,18 @@ class Looker:
         if not cases:
             return []
         values, bounds = self.values(np.array(cases))
-        # A value that has no finite bound says nothing about its own error.
-        bounds = np.where(np.isfinite(bounds), bounds, 0.0)
         looks: list[Look | None] = []
         first = 0
         for place, (offsets, weights) in zip(places, plans, strict=True):
-            mine, off = values[first : first + len(offsets)], bounds[first : first + len(offsets)]
+            mine, off = (table[first : first + len(offsets)] for table in (values, bounds))
             first += len(offsets)
             if np.isnan(mine[:, self.needed]).any():
                 looks.append(None)
             else:
                 slopes = (weights @ mine).T
-                looks.append(Look(place, mine[0], slopes, (np.abs(weights) @ off).T + STEP**2 * np.abs(slopes)))
+                # A value that has no finite bound says nothing about its own error.
+                rounding = (np.abs(weights) @ np.where(np.isfinite(off), off, 0.0)).T
+                looks.append(Look(place, mine[0], off[0], slopes, rounding + STEP**2 * np.abs(slopes)))
         return looks
 
     def _offsets(self, place: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -157,4 +158,4 @@ def look_for_straight(looker: Looker, place: FloatArray, slack: FloatArray | Non
     straight = (departures <= allowed + rounding).all(axis=0)
     map_straight = (departures[-1] <= allowed + rounding)[looker.needed].all()
     doubts = np.broadcast_to(rounding[:, None], slopes.shape)
-    return Straight(Look(place, base, slopes, doubts), straight, bool(map_straight) and size > count)
+    return Straight(Look(place, base, bounds[0], slopes, doubts), straight, bool(map_straight) and size > count)

@@ -74,9 +74,14 @@ def solve(question: Question) -> Solved:
     # Whether results are affine in the numbers does not depend on how they are looked for.
     plain = _Search(question, Coordinates(_without_logarithms(question.unknowns), *_entries(question.smooth)))
     straight = look_for_straight(plain.looker, plain.start, _slack(question, needed), question.seed)
-    if straight is not None and straight.affine[needed].all():
+    is_known_linear = not question.unknowns and question.smooth is not None and question.smooth.affine
+    if is_known_linear and straight is None:
+        raise NothingSeen(plain.looker.failure)
+    if straight is not None and (is_known_linear or straight.affine[needed].all()):
         solved = plain.linear(straight)
-        if solved is not None:
+        if is_known_linear and solved is None:
+            raise NothingSeen(plain.looker.failure)
+        if solved is not None and (is_known_linear or solved.found.settled):
             return solved
     if not any(unknown.logarithmic for unknown in question.unknowns):
         search = plain
@@ -118,23 +123,23 @@ class _Search:
         self._departure: float | None = None
 
     def linear(self, straight: Straight) -> Solved | None:
-        """The solution where readings are affine functions, None if they turn out not to be."""
+        """The solution where readings are affine functions; not settled if they turn out not to be."""
         step, smoothed = self._step(straight.look)
         place = straight.look.place + step
         if straight.affine.all():
-            values, _ = self.looker.values(place[None])
-            look: Look | None = Look(place, values[0], straight.look.slopes, straight.look.doubts)
+            values, bounds = self.looker.values(place[None])
+            look: Look | None = Look(place, values[0], bounds[0], straight.look.slopes, straight.look.doubts)
         else:
-            self.looker.affine_entries = straight.affine_entries
+            smooth = self._question.smooth
+            self.looker.affine_entries = straight.affine_entries or (smooth is not None and smooth.affine)
             look = self.looker.look([place])[0]
         if look is None or np.isnan(look.values[self.looker.needed]).any():
             return None
         more, _ = self._step(look)
         left, slopes = self._weighing.rows(look)
-        if float(((slopes @ more) ** 2).sum()) > TURNED_OUT**2 * self._unit(float(left @ left)):
-            return None
+        foreseen = float(((slopes @ more) ** 2).sum()) <= TURNED_OUT**2 * self._unit(float(left @ left))
         self._departure = None if smoothed is None else smoothed.departure
-        found = Found(look, *self._rows(look), settled=True)
+        found = Found(look, *self._rows(look), settled=foreseen)
         return Solved(self.looker, self._weighing, self._rows, found, (), True, smoothed)
 
     def curved(self) -> Solved:

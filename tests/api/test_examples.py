@@ -14,6 +14,7 @@ import pytest
 
 from service.models.base import Model
 from service.models.best_values_answer import BestValuesAnswer
+from service.models.calibration_answer import CalibrationAnswer
 from service.models.cases_answer import CasesAnswer
 from service.models.convergence_answer import ConvergenceAnswer
 from service.models.fields_answer import FieldsAnswer
@@ -48,6 +49,7 @@ MODELS: dict[str, type[Model]] = {
     "/v1/studies": StudyAnswer,
     "/v1/sizing": SizingAnswer,
     "/v1/best-values": BestValuesAnswer,
+    "/v1/calibration": CalibrationAnswer,
 }
 
 # A number may differ by what stands beside it under these.
@@ -70,10 +72,21 @@ EVIDENCE = {
     "created",
 }
 # What a search for best values determines only to where its goal is flat, which has an estimate beside it, and how many
-# cases searches and sizings take, which may hang on a last digit.
+# cases searches and sizings take, which may hang on a last digit. What readings say comes from derivatives and is
+# compared to five digits by its own tests.
 SEARCHED = {
     "/best_values": {"numbers", "results", "limits", "apart", "searches", "case_count", "failed_count"},
     "/sizing": {"case_count"},
+    "/calibration": {
+        "unknowns",
+        "correlation",
+        "smooth_map",
+        "readings",
+        "results",
+        "consistency",
+        "coverage_factor",
+        "case_count",
+    },
 }
 
 

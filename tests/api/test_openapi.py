@@ -23,6 +23,7 @@ CALLS = {
     ("post", "/v1/tolerances"),
     ("post", "/v1/sizing"),
     ("post", "/v1/best-values"),
+    ("post", "/v1/calibration"),
     ("post", "/v1/cases"),
     ("post", "/v1/studies"),
     ("get", "/v1/studies"),
