@@ -28,6 +28,9 @@ PLACES_A_NUMBER, FEWEST_PLACES, MOST_PLACES = 4, 16, 128
 # Points drawn to find places where rectangles are apart, and how many of the others are moved until they are.
 DRAWN, MOVED = 4096, 32
 
+# Rectangles are kept farther apart by this part of the widest clearance, which is more than rounding takes.
+KEPT_CLEAR = 1e-10
+
 # Two starts are as far from each other as this part of the ranges, along some number.
 APART = 0.15
 
@@ -151,7 +154,7 @@ def best_values(
     search.look(places[:most_cases])
     search.settle_scales()
     starts = search.starts(n_starts, has_first=search.stands(first))
-    descents = [Descent(search.u[index], search.point(index), search.apart) for index in starts]
+    descents = [Descent(search.u[index], search.point(index), search.apart, search.kept_clear) for index in starts]
     ended = search.side_by_side(descents)
     return search.outcome(starts, descents, ended, has_first=search.stands(first))
 
@@ -187,6 +190,7 @@ class _Search:
         self._values = self._bounds = np.zeros((0, len(units)))
         self._failures: dict[str, Failure] = {}
         self._failed = 0
+        self.kept_clear = 0.0
 
     # Places
 
@@ -213,7 +217,9 @@ class _Search:
         """Where to look first: the numbers as they stand, and places spread evenly, all with rectangles apart."""
         wanted = most_places(self._low.size)
         drawn = Sobol(self._low.size, rng=seed).random(wanted if self._clearances is None else DRAWN)
-        clear = self.apart(drawn).min(axis=1, initial=np.inf)
+        clearances = self.apart(drawn)
+        self.kept_clear = KEPT_CLEAR * float(np.abs(clearances).max(initial=0.0))
+        clear = clearances.min(axis=1, initial=np.inf)
         places = drawn[clear >= 0.0][:wanted]
         if len(places) < wanted:
             nearly = np.argsort(-np.where(clear < 0.0, clear, -np.inf), kind="stable")[

@@ -108,12 +108,13 @@ class _Step:
 class Descent:
     """A local search. u: where it is; here: what was found there.
 
-    apart: clearances at places, shape (n_places, n_clearances), which are at least 0 at u.
+    apart: clearances at places, shape (n_places, n_clearances), which are at least 0 at u. kept_clear: by how much more
+    than 0 they are aimed at, so that rounding does not bring them below.
     """
 
-    def __init__(self, u: FloatArray, here: Point, apart: Apart) -> None:
+    def __init__(self, u: FloatArray, here: Point, apart: Apart, kept_clear: float) -> None:
         self.u, self.here = u, here
-        self._apart = apart
+        self._apart, self._kept_clear = apart, kept_clear
         self._radius, self._charge = FIRST_RADIUS, FIRST_CHARGE
 
     def steps(self) -> Generator[FloatArray, Points, Ended]:
@@ -222,7 +223,7 @@ class Descent:
         return _Step(step, np.asarray(found.multipliers, dtype=float)[:n_functions])
 
     def _clearances(self, z: FloatArray) -> FloatArray:
-        return self._apart((self.u + z[: self.u.size])[None])[0]
+        return self._apart((self.u + z[: self.u.size])[None])[0] - self._kept_clear
 
     def _clearance_slopes(self, z: FloatArray) -> FloatArray:
         steps = CLEARANCE_STEP * np.eye(self.u.size)
@@ -231,8 +232,8 @@ class Descent:
         return np.pad(slopes, ((0, 0), (0, 2)))
 
     def _drawn_back(self, step: FloatArray) -> FloatArray:
-        """The longest part of a step after which all is apart, where the last digits of a full one are in the way."""
-        parts = 1.0 - np.concatenate([[0.0], np.geomspace(1e-14, 1.0, 71)])
+        """The longest part of a step after which all is apart, where tangents of the clearances led too far."""
+        parts = 1.0 - np.concatenate([[0.0], np.geomspace(1e-6, 1.0, 31)])
         clear = (self._apart(self.u + parts[:, None] * step) >= 0.0).all(axis=1)
         return parts[int(np.argmax(clear))] * step
 

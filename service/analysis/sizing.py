@@ -237,7 +237,8 @@ def _edges(samples: Samples, scan: Range) -> list[Edge]:
         low, high = np.array(brackets).T
         found = find_root(samples.worst_at, (low, high), tolerances=ROOT_TOLERANCES)
         closed += [(float(found.x[index]), *brackets[index]) for index in np.flatnonzero(found.success)]
-    # Where single cases went on failing the edge is known to lie between two that did not.
+    # Where cases went on failing beside it an edge is known to lie between two that did not.
+    _narrow_invalid(samples)
     closed += [(low, low, high) for low, high in _open_brackets(samples, closed)]
     return _proved(samples, sorted(closed))
 
@@ -270,10 +271,21 @@ def _narrow_invalid(samples: Samples) -> None:
 
 
 def _look_into_ends(samples: Samples) -> None:
-    """Look half a step into each stretch, where three neighbours are not to be had on both sides of an extreme."""
-    numbers = samples.numbers
-    steps = [step for first, last in samples.stretches() if last > first + 1 for step in (first, last - 1)]
-    samples.look(np.array([0.5 * (numbers[step] + numbers[step + 1]) for step in steps]))
+    """Look into the first and last step of each stretch, where an extreme has no neighbours on both sides.
+
+    Where a parabola through the three outermost cases has its extreme if that is within the step, half-way if not.
+    """
+    places = []
+    for first, last in samples.stretches():
+        if last < first + 2:
+            continue
+        for end in (slice(first, first + 3), slice(last, last - 3 if last > 2 else None, -1)):
+            (x, y, z), (a, b, c) = samples.numbers[end], samples.worst[end]
+            near, far = (b - a) / (y - x), (c - b) / (z - y)
+            bend = (far - near) / (z - x)
+            extreme = 0.5 * (x + y) - 0.5 * near / bend if bend else np.inf
+            places.append(extreme if min(x, y) < extreme < max(x, y) else 0.5 * (x + y))
+    samples.look(np.array(places))
 
 
 def _look_for_hidden(samples: Samples) -> None:
@@ -337,11 +349,14 @@ def _proved(samples: Samples, roots: Sequence[tuple[float, float, float]]) -> li
     rooms[np.isnan(rooms)] = 0.0
     places = [np.clip(root + sign * far * rooms, low, high) for far in PROOF_AT for sign in (-1, 1)]
     samples.look(np.concatenate(places))
-    decided = samples.numbers[samples.signs != 0]
+    numbers, signs = samples.numbers, samples.signs
     edges = []
     for index, number in enumerate(root):
-        within = decided[(decided >= low[index]) & (decided <= high[index])]
-        off = max(number - within[within <= number].max(), within[within >= number].min() - number)
+        # The nearest cases that are decided as the ends of the bracket are.
+        ends = signs[np.searchsorted(numbers, (low[index], high[index]))]
+        before = numbers[(signs == ends[0]) & (numbers <= number)].max()
+        after = numbers[(signs == ends[1]) & (numbers >= number)].min()
+        off = max(number - before, after - number)
         slope = (float(slopes[index]), float(slope_errors[index])) if np.isfinite(slope_errors[index]) else (None, None)
         edges.append(Edge("limit", float(number), float(off), int(limits[index]), *slope))
     return edges

@@ -96,6 +96,18 @@ def test_limits_that_bend_are_held_for_sure_at_the_optimum() -> None:
     assert best.margins[1] == pytest.approx(1.0, abs=1e-3)
 
 
+def test_limits_are_aimed_at_from_inside_by_two_bounds() -> None:
+    # The published multipliers are 1, 0 and 2: each bound inside costs as much. 100 on top makes the goal positive.
+    functions: list[Function] = [lambda x: ROSEN_SUZUKI[0](x) + 100, *ROSEN_SUZUKI[1:]]
+    outcome = found(Functions(functions, bound=1e-4), [(-3.0, 3.0)] * 4, Goal((0,), "lowest"), ROSEN_SUZUKI_LIMITS)
+    best = outcome.best
+    assert best is not None
+    assert outcome.starts[0].last_goal == pytest.approx(56 + 2e-4 * (1 + 2), abs=2e-5)
+    # What was seen on the way is as good if it holds by one.
+    assert 56 + 1e-4 * (1 + 2) - 1e-6 <= best.goal <= outcome.starts[0].last_goal
+    assert (best.margins >= 1e-4).all()
+
+
 def test_a_limit_to_both_sides_and_a_number_at_the_end_of_its_range() -> None:
     # Problem 71 of Hock and Schittkowski 1981.
     limits = [Limit(1, at_least=25.0), Limit(2, at_most=40.0, at_least=40.0)]
@@ -131,6 +143,14 @@ def test_cases_that_fail_are_gone_around() -> None:
     assert abs(outcome.best.goal - 1.9522245) < 6e-8
     assert outcome.failed == sum(not asked.is_valid(case) for case in asked.seen) > 0
     assert outcome.failures == {BAD.code: BAD}
+
+
+def test_a_best_place_beside_cases_that_fail_is_come_near() -> None:
+    asked = Functions([lambda x: (x[0] - 0.5) ** 2 + (x[1] - 0.3) ** 2], is_valid=lambda x: bool(x[0] >= 0.6))
+    outcome = found(asked, [(0.0, 1.0)] * 2, Goal((0,), "lowest"))
+    assert outcome.best is not None
+    assert outcome.best.goal == pytest.approx(0.01, abs=1e-5)
+    assert outcome.best.numbers == pytest.approx([0.6, 0.3], abs=1e-3)
 
 
 def test_where_no_values_hold_the_limits_the_least_missing_is_told() -> None:
@@ -264,25 +284,33 @@ def test_six_pads_share_a_plate_by_squares(seed: int) -> None:
     assert best.clearances.min() == pytest.approx(1 - PAD - GAP, abs=1e-2)
 
 
-def test_pads_that_attract_each_other_stop_at_the_gap() -> None:
+@pytest.mark.parametrize("seed", range(4))
+def test_pads_that_attract_each_other_stop_at_the_gap(seed: int) -> None:
     # The two are best at one place, which only one can have: apart by the gap, across or along.
     asked = Functions([lambda x: ((x - 1.0) ** 2).sum()])
-    seen: list[FloatArray] = []
 
     def two(cases: FloatArray) -> FloatArray:
         centres = cases.reshape(len(cases), 2, 2)
         return clearances(np.stack([centres - 0.2, centres + 0.2], axis=-1), 0.1)
 
-    def watched(cases: FloatArray, *, accuracy: float | None = None) -> Evaluations:
-        seen.extend(cases)
-        return asked(cases, accuracy=accuracy)
-
-    outcome = best_values(watched, [(0.0, 3.0)] * 4, Goal((0,), "lowest"), [], ["K"], apart=two, seed=1)
+    outcome = best_values(asked, [(0.0, 3.0)] * 4, Goal((0,), "lowest"), [], ["K"], apart=two, seed=seed)
     assert outcome.best is not None
     # 0.5 between the centres: each 0.25 from the best place.
-    assert outcome.best.goal == pytest.approx(2 * 0.25**2, abs=1e-7)
-    assert 0 <= outcome.best.clearances[0] < 1e-6
-    assert outcome.failed == 0
+    assert outcome.best.goal == pytest.approx(2 * 0.25**2, abs=1e-8)
+    assert outcome.best.clearances[0] < 1e-8
+    assert (two(np.array(asked.seen)) >= 0.0).all()
+
+
+def test_what_has_to_keep_apart_does_so_even_if_its_slopes_say_nothing() -> None:
+    asked = Functions([lambda x: -x[0]])
+
+    def walled(cases: FloatArray) -> FloatArray:
+        return np.where(cases <= 0.5, 1.0, -1.0)
+
+    outcome = best_values(asked, [(0.0, 1.0)], Goal((0,), "lowest"), [], ["K"], apart=walled)
+    assert outcome.best is not None
+    assert 0.49 < outcome.best.numbers[0] <= 0.5
+    assert np.array(asked.seen).max() <= 0.5
 
 
 def test_rectangles_without_room_are_told_before_any_case() -> None:

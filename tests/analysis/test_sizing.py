@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from scipy.optimize import brentq
 
+from service.analysis import sizing
 from service.analysis.limits import Limit
 from service.analysis.samples import Range
 from service.analysis.sizing import Edge, Sizing, where_equal, where_limits_hold
@@ -116,6 +117,16 @@ def test_two_solutions_closer_than_the_scan_are_found(half: float, side: float) 
     for edge, expected in zip(edges, (place - half, place + half), strict=True):
         assert abs(edge.number - expected) <= edge.error_bound < 1e-8
     assert len(found.intervals) == (1 if side > 0 else 2)
+    # The search for an extreme ends as soon as it is beyond the limit.
+    assert found.cases < (80 if half > 1e-3 else 110)
+
+
+@pytest.mark.parametrize("place", [0.03, 4.97])
+def test_two_solutions_within_the_first_or_last_step_are_found(place: float) -> None:
+    found = sized(lambda x: (x - place) ** 2 - 1e-4, Limit(0, at_most=0.0), Range(0.0, 5.0))
+    (interval,) = found.intervals
+    assert is_at(interval.low, place - 0.01, within=1e-6)
+    assert is_at(interval.high, place + 0.01, within=1e-6)
 
 
 @pytest.mark.parametrize(("level", "holds"), [(1.0, "somewhere"), (-1.0, "undecided")])
@@ -136,6 +147,14 @@ def test_a_touch_without_error_is_a_solution_of_no_width() -> None:
     found = sized(lambda x: (x - 1.03) ** 2, Limit(0, at_most=0.0), Range(0.0, 3.0), bound=0.0)
     (interval,) = found.intervals
     assert interval.low.number == interval.high.number == pytest.approx(1.03, abs=1e-8)
+
+
+def test_an_edge_without_error_is_told_to_rounding() -> None:
+    found = sized(lambda x: x**3, Limit(0, at_most=5.0), Range(0.0, 3.0), bound=0.0)
+    (interval,) = found.intervals
+    # The cube root of 5 is no number of the machine: the edge lies between it and a neighbour.
+    assert abs(interval.high.number - 5 ** (1 / 3)) <= interval.high.error_bound
+    assert 0 < interval.high.error_bound < 1e-14
 
 
 def test_a_result_that_is_the_limit_everywhere_is_left_open() -> None:
@@ -168,9 +187,15 @@ def test_cases_that_fail_beside_an_edge_leave_it_between_those_that_do_not() -> 
     (interval,) = found.intervals
     assert interval.high.kind == "invalid"
     assert interval.high.number == pytest.approx(1.999, abs=1e-6)
-    speckled = sized(lambda x: x, Limit(0, at_most=2.0), Range(0.1, 3.0), is_valid=lambda x: round(x * 1e7) % 3 > 0)
-    last = speckled.intervals[-1].high
-    assert last.number <= 2.0 <= last.number + last.error_bound
+
+
+def test_an_edge_among_cases_that_go_on_failing_is_told_as_near_as_can_be(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(sizing, "PASSES", 1)
+    # Fails between the edge and the first step of the search that closes it in.
+    found = sized(lambda x: x**3, Limit(0, at_most=8.0), Range(0.0, 3.1), is_valid=lambda x: not 1.97 < x < 1.9995)
+    last = found.intervals[-1].high
+    assert last.kind == "limit"
+    assert 0 <= 2.0 - last.number <= last.error_bound < 0.1
 
 
 def test_where_every_case_fails_there_is_a_reason_and_nothing_else() -> None:
