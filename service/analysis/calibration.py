@@ -193,7 +193,9 @@ class _Statistics:
         left = readings.values - look.values[readings.columns]
         leverages = np.clip(taken_up / variances, 0.0, 1.0)
         free = self._scale * np.sqrt(np.where(leverages < FOLLOWED, variances - taken_up, np.nan))
-        normalised = left / free
+        with np.errstate(invalid="ignore", divide="ignore"):
+            # Scaled uncertainties are zero where nothing is left over.
+            normalised = left / free
         limit = float(norm.isf((1 - COVERED) / 2 / len(left)))
         shares, shared = self._shares()
         minima, rivals = self._other_minima()
@@ -328,19 +330,21 @@ class _Statistics:
 
     def _other_minima(self) -> tuple[int, tuple[Rival, ...]]:
         """How many minima the starts led to, and those that readings do not rule out beside the best."""
-        best = self._solved.found
+        best, *others = self._solved.minima
         if len(self._spread.open):
             # A valley has no minimum of its own; that it is one is said otherwise.
             return 1, ()
         distinct = [best]
-        for other in self._solved.others:
+        for other in others:
             if other.settled and all(self._differ(other, known) for known in distinct):
                 distinct.append(other)
         rise = (self._scale * self._factor) ** 2
         rivals = [other for other in distinct[1:] if other.squares - best.squares < rise]
-        return len(distinct), tuple(
-            Rival(self._coordinates.numbers(rival.look.place)[: self._count], rival.squares) for rival in rivals
-        )
+        return len(distinct), tuple(self._rival(rival) for rival in rivals)
+
+    def _rival(self, found: Found) -> Rival:
+        left, _ = self._weighing.rows(found.look)
+        return Rival(self._coordinates.numbers(found.look.place)[: self._count], float(left @ left))
 
     def _differ(self, one: Found, other: Found) -> bool:
         """Whether two places differ to the readings, as a line between them would have it."""

@@ -55,15 +55,15 @@ class Solved:
     """The solution and what led to it.
 
     looker, weighing: as they were used. rows: what is left over, with the cost of a map. found: where the search came
-    to. others: where other starts came to. linear: all readings are affine functions. smoothed: the average over maps
-    around the solution, None without a map.
+    to. minima: where all starts came to, the best first, a map taken as the likeliest of one departure. linear: all
+    readings are affine functions. smoothed: the average over maps around the solution, None without a map.
     """
 
     looker: Looker
     weighing: Weighing
     rows: Callable[[Look], Rows]
     found: Found
-    others: tuple[Found, ...]
+    minima: tuple[Found, ...]
     linear: bool
     smoothed: Smoothed | None
 
@@ -140,7 +140,7 @@ class _Search:
         foreseen = float(((slopes @ more) ** 2).sum()) <= TURNED_OUT**2 * self._unit(float(left @ left))
         self._departure = None if smoothed is None else smoothed.departure
         found = Found(look, *self._rows(look), settled=foreseen)
-        return Solved(self.looker, self._weighing, self._rows, found, (), True, smoothed)
+        return Solved(self.looker, self._weighing, self._rows, found, (found,), True, smoothed)
 
     def curved(self) -> Solved:
         """The solution by iteration."""
@@ -150,7 +150,7 @@ class _Search:
         best, smoothed = found[0], None
         if self._smoothing is not None:
             best, smoothed = self._settle(best)
-        return Solved(self.looker, self._weighing, self._rows, best, tuple(found[1:]), False, smoothed)
+        return Solved(self.looker, self._weighing, self._rows, best, tuple(found), False, smoothed)
 
     def _starts(self) -> list[FloatArray]:
         count = self.looker.coordinates.count

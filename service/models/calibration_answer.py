@@ -58,7 +58,7 @@ class UnknownFound(Model):
     departure_from_linear: float | None = Field(
         description="By what part the sum of squares, as a root, differs at the ends of the interval from what "
         "derivatives foresee; beyond about 0.15 the plain interval does not hold. null where all results follow in "
-        "proportion.",
+        "proportion, or have no value there.",
         examples=[0.02],
     )
     known_before_part: float | None = Field(

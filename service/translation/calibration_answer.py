@@ -20,6 +20,9 @@ VERDICTS = {"yes": "consistent", "no": "contradiction", "too_well": "too_close",
 
 WHERE = "#/calibration"
 
+# An error bound above this part of a standard uncertainty changes what readings say by more than a hundredth of it.
+COARSE = 0.1
+
 
 @dataclass(frozen=True)
 class Asked:
@@ -224,6 +227,7 @@ def _warnings(found: Calibration, asked: Asked, outcome: dict[str, Any]) -> list
             "uncertainties off what all others say."
         )
         remarks.append(warning("outlier", detail, f"{WHERE}/readings/{index}"))
+    remarks += _of_bounds(found, asked)
     if found.rivals:
         detail = (
             f"The readings are met about as well by other values of the unknowns ({len(found.rivals)} more found); see "
@@ -268,6 +272,23 @@ def _of_unknowns(found: Calibration, asked: Asked, together: list[dict[str, Any]
                 detail = f'The results bend much with "{info.name}"; take its `profile_interval`.'
             remarks.append(warning("bent", detail, where))
     return remarks
+
+
+def _of_bounds(found: Calibration, asked: Asked) -> list[Warning_]:
+    """A remark where results are not computed well enough for their readings."""
+    coarse = [
+        row["result"]
+        for row in _readings(found, asked)
+        if row["error_bound"] is None or row["error_bound"] > COARSE * row["standard_uncertainty"]
+    ]
+    if not coarse:
+        return []
+    names = _listed(list(dict.fromkeys(coarse)))
+    detail = (
+        f"The error bounds of {names} are no longer small beside the uncertainties of their readings, which leave them "
+        "out. Ask for a finer `accuracy`."
+    )
+    return [warning("coarse", detail, f"{WHERE}/readings")]
 
 
 def _of_map(found: MapEstimate, words: dict[str, Any]) -> list[Warning_]:

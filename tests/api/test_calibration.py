@@ -218,6 +218,13 @@ async def test_an_unknown_at_the_end_of_its_range_is_warned_of(client: httpx.Asy
     assert "at-end" in warnings
 
 
+async def test_results_less_certain_than_their_readings_are_warned_of(client: httpx.AsyncClient) -> None:
+    question = wall(1e-5, starts=1, accuracy={"absolute": "1 mK"})
+    found, warnings = await calibrated(client, question)
+    assert found["readings"][0]["error_bound"] > 1e-6
+    assert "coarse" in warnings
+
+
 async def test_profile_intervals_are_those_of_the_line(client: httpx.AsyncClient) -> None:
     found, _ = await calibrated(client, wall(2.0, starts=1, profile_intervals=True))
     columns = np.column_stack((np.ones(4), DEPTH - np.array(PLACES) / 1000)) * INFLOW
