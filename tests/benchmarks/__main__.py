@@ -3,7 +3,10 @@
 Each line is a ratio measured in this run, so that the machine cancels: the core against finite differences
 with algebraic multigrid, against one matrix product, against itself with more points and tighter
 tolerances, all pads of a stack against one load by finite differences, one pad that moves against all of them; the
-service against an empty route. Name parts (a b c d e f g) to run only these. One BLAS thread, as the service has it.
+service against an empty route; a study (h) against a bare loop over the core, two workers against one, and requests
+beside it against those without; a study of 20,000 cases whose service is killed five times (i), and the same on a Dask
+cluster that loses workers (j), against one left alone. Name parts (a to j) to run only these. One BLAS thread, as the
+service has it.
 """
 
 from __future__ import annotations

@@ -5,7 +5,7 @@ from __future__ import annotations
 import argparse
 from collections.abc import Callable
 
-from tests.benchmarks import bar_grid, many_pads, over_http, scaling, small_problems
+from tests.benchmarks import bar_grid, many_pads, over_http, scaling, small_problems, studies
 
 PARTS: dict[str, Callable[[], list[str]]] = {
     "a": bar_grid.against_finite_differences,
@@ -15,13 +15,16 @@ PARTS: dict[str, Callable[[], list[str]]] = {
     "e": scaling.with_points_and_tolerance,
     "f": many_pads.against_one_load,
     "g": many_pads.with_one_moved,
+    "h": studies.costs,
+    "i": studies.killed_here,
+    "j": studies.killed_on_a_cluster,
 }
 
 
 def main() -> None:
     """Print each part's lines as soon as they are known."""
     parser = argparse.ArgumentParser(prog="python3 -m tests.benchmarks", description="Print measured ratios.")
-    parser.add_argument("parts", nargs="*", metavar="part", help="a b c d e f g; all of them by default")
+    parser.add_argument("parts", nargs="*", metavar="part", help="a to j; all of them by default")
     options = parser.parse_args()
     unknown = [letter for letter in options.parts if letter not in PARTS]
     if unknown:
