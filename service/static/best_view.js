@@ -1,6 +1,6 @@
 /** The best values that were found: before and after, and the limits that bind. */
 
-import { axis, behind, chart, COLOURS, plainly } from "./charts.js";
+import { axis, behind, chart, COLOURS, inLines } from "./charts.js";
 import { make, verdict } from "./elements.js";
 import { bounded, brief, counted, pretty, shown } from "./numbers.js";
 import { placement } from "./placement.js";
@@ -52,10 +52,10 @@ function beforeAfter(best, before, asked, units) {
     caption: `Ring: as it stands; dot: with the best values${marks.length ? "; upright stroke: its limit" : ""}.`,
     height: 96 + 34 * rows.length,
     data: [
-      ...rows.map(({ name, from, to }) => ({ type: "scatter", mode: "lines", x: [from, to], y: [plainly(name), plainly(name)], line: { color: COLOURS.tint, width: 4 }, hoverinfo: "skip" })),
-      { type: "scatter", mode: "markers", x: rows.map(({ from }) => from), y: rows.map(({ name }) => plainly(name)), marker: { size: 11, color: "#fffefa", line: { color: COLOURS.limit, width: 1.8 } }, hovertemplate: `as it stands: %{x:.6~g} ${pretty(best.goal.unit)}<extra></extra>` },
-      { type: "scatter", mode: "markers", x: rows.map(({ to }) => to), y: rows.map(({ name }) => plainly(name)), marker: { size: 12, color: COLOURS.main }, hovertemplate: `best: %{x:.6~g} ${pretty(best.goal.unit)}<extra></extra>` },
-      { type: "scatter", mode: "markers", x: marks.map(({ level }) => level), y: marks.map(({ result }) => plainly(result)), marker: { symbol: "line-ns", size: 22, line: { color: COLOURS.limit, width: 2.5 } }, hovertemplate: `limit: %{x:.6~g} ${pretty(best.goal.unit)}<extra></extra>` },
+      ...rows.map(({ name, from, to }) => ({ type: "scatter", mode: "lines", x: [from, to], y: [inLines(name), inLines(name)], line: { color: COLOURS.tint, width: 4 }, hoverinfo: "skip" })),
+      { type: "scatter", mode: "markers", x: rows.map(({ from }) => from), y: rows.map(({ name }) => inLines(name)), marker: { size: 11, color: "#fffefa", line: { color: COLOURS.limit, width: 1.8 } }, hovertemplate: `as it stands: %{x:.6~g} ${pretty(best.goal.unit)}<extra></extra>` },
+      { type: "scatter", mode: "markers", x: rows.map(({ to }) => to), y: rows.map(({ name }) => inLines(name)), marker: { size: 12, color: COLOURS.main }, hovertemplate: `best: %{x:.6~g} ${pretty(best.goal.unit)}<extra></extra>` },
+      { type: "scatter", mode: "markers", x: marks.map(({ level }) => level), y: marks.map(({ result }) => inLines(result)), marker: { symbol: "line-ns", size: 22, line: { color: COLOURS.limit, width: 2.5 } }, hovertemplate: `limit: %{x:.6~g} ${pretty(best.goal.unit)}<extra></extra>` },
     ],
     layout: { xaxis: axis(headed(words, best.goal.unit)), yaxis: axis("", { ticks: "", showline: false, range: [-0.6, rows.length - 0.4] }) },
   });

@@ -85,6 +85,7 @@ function picture({ numbers, limits }, column, number, own) {
 
 /** @param {{numbers: any[], columns: any[], limits?: any[], case?: number[]}} cases */
 export function casesTable({ numbers, columns, limits = [], case: given }) {
+  const what = given ? "cases that are done" : "cases";
   const count = numbers[0]?.values.length ?? 0;
   const rows = Array.from({ length: Math.min(count, MOST_ROWS) }, (_, row) => [
     rowHead(String(given ? given[row] : row)), ...numbers.map(({ values }) => make("td", {}, shown(values[row]))),
@@ -92,5 +93,5 @@ export function casesTable({ numbers, columns, limits = [], case: given }) {
     ...limits.map(({ held }) => make("td", {}, heldWord(held[row]))),
   ]);
   const heads = ["Case", ...[...numbers, ...columns].map(({ name, unit }) => headed(name, unit)), ...limits.map(({ name, result }) => name ?? result)];
-  return table(count > MOST_ROWS ? `The first ${MOST_ROWS} of ${counted(count)} cases` : "Every case", heads, rows, "wraps");
+  return table(count > MOST_ROWS ? `The first ${MOST_ROWS} of ${counted(count)} ${what}` : `All ${what}`, heads, rows, "wraps");
 }

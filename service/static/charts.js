@@ -17,6 +17,9 @@ export const axis = (title, more = {}) => ({
 /** A text of the user where tags would be read. */
 export const plainly = (text) => text.replace(/[<>&]/g, " ");
 
+/** A name beside a bar, in lines that leave room for the bars on a phone. @param {string} text */
+export const inLines = (text) => plainly(text).replace(/(.{12,20}?)\s+/g, "$1<br>");
+
 /** A limit across a picture, with its words. */
 export const limitLine = (value, words, along = "y") => ({
   shape: { type: "line", line: { color: COLOURS.limit, width: 1.8, dash: "dash" }, ...(along === "y"

@@ -2,6 +2,7 @@
 
 import { warningsView } from "./answer.js";
 import { bestView } from "./best_view.js";
+import { calibrationView } from "./calibration_view.js";
 import { casesView } from "./cases_view.js";
 import { behind } from "./charts.js";
 import { make } from "./elements.js";
@@ -17,6 +18,7 @@ const VIEWS = {
   tolerances: { view: tolerancesView },
   sizing: { view: sizingView, also: curveRequest },
   "best-values": { view: bestView },
+  calibration: { view: calibrationView },
 };
 
 /** The cases that a picture wants beside its answer: requests, the finer one first, should it take too long. @param {string} call @param {any} asked @param {any} answer */

@@ -204,6 +204,8 @@ export const EXAMPLES = [
   { title: "Crown brick: thicknesses and coolings (table of cases)", call: "cases", file: "cases_crown_brick", view: { plane: { axis: "y", position: "57" } } },
   { title: "Crown brick: how thick? (sizing)", call: "sizing", file: "sizing_crown_brick", view: { plane: { axis: "y", position: "57" } } },
   { title: "Cold plate: where do its parts go? (best values)", call: "best-values", file: "best_values_cold_plate", view: { plane: { axis: "z", position: "0" } } },
+  { title: "Throat block: film and conductivity from thermocouples (calibration)", call: "calibration", file: "calibration_throat_block", view: { plane: { axis: "y", position: "40" } } },
+  { title: "Burner tile: a heat load from probes (calibration of a map)", call: "calibration", file: "calibration_burner_tile", view: { plane: { axis: "z", position: "60" } } },
 ];
 
 /** The problem of an example, and the request of a decision if it has one. @throws {import("./calls.js").Failure} */

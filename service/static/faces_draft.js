@@ -1,6 +1,7 @@
 /** What is known on the faces as it is typed, and as a request wants it. */
 
 import { facesOf } from "./body_draft.js";
+import { textOfSamples } from "./samples_text.js";
 import { entry, idOf, quantity, text } from "./typed.js";
 import { axesAcross, axisOf } from "./words.js";
 
@@ -116,7 +117,7 @@ export function faceDraftOf(face, known) {
     name: text(patch.name), value: text(patch.value ?? patch.flow), isTotal: patch.flow !== undefined,
     ...endsText(across, patch),
   }));
-  datum.csv = text(given.csv).trim();
+  datum.csv = given.table ? textOfSamples(given, face) : text(given.csv).trim();
   datum.expression = text(given.expression);
   datum.hold = given.beyond === "hold";
   datum.fill = given.fill_missing === "smooth";

@@ -9,6 +9,7 @@ import { idOf, text } from "./typed.js";
  * @typedef {object} NumberDraft
  * @property {string} id
  * @property {string} key of the entry of the catalogue, or OWN
+ * @property {string[]} also keys of further entries that take the same value
  * @property {"at"|"shift"|"scale"} way what a pointer of one's own does
  * @property {string} pointer one or several of one's own, with spaces between
  * @property {string} name
@@ -19,7 +20,7 @@ import { idOf, text } from "./typed.js";
 export const OWN = "own";
 
 /** @returns {NumberDraft} */
-export const emptyNumber = (key = "") => ({ id: newId(), key, way: "at", pointer: "", name: "", texts: {} });
+export const emptyNumber = (key = "") => ({ id: newId(), key, also: [], way: "at", pointer: "", name: "", texts: {} });
 
 /** Every number of a draft's problem and results. @returns {import("./catalogue.js").Entry[]} */
 export const catalogueOfDraft = (draft) => catalogueOf(problemOf(draft, () => {}), resultsOf(draft, () => {}));
@@ -35,8 +36,10 @@ export function numberDraftsOf(references, problem, results, textsOf) {
   return references.map((reference) => {
     const way = ["at", "shift", "scale"].find((one) => reference[one] !== undefined);
     const pointer = [reference[way]].flat().join(" ");
-    const entry = catalogue.find(({ key }) => key === `${way} ${pointer}`);
-    return { ...emptyNumber(entry?.key ?? OWN), way, pointer: entry ? "" : pointer, name: reference.name, texts: textsOf(reference) };
+    const isThere = (key) => catalogue.some((entry) => entry.key === key);
+    const each = pointer.split(" ").map((one) => `at ${one}`);
+    const keys = isThere(`${way} ${pointer}`) ? [`${way} ${pointer}`] : way === "at" && each.every(isThere) ? each : [OWN];
+    return { ...emptyNumber(keys[0]), also: keys.slice(1), way, pointer: keys[0] === OWN ? pointer : "", name: reference.name, texts: textsOf(reference) };
   });
 }
 
@@ -68,7 +71,8 @@ export function referencesOf(draft, numbers, pointers, note, more) {
     const pointer = pointers[index];
     const id = idOf("number", number.id);
     const isOwn = number.key === OWN;
-    const [way, ...places] = isOwn ? [number.way, ...number.pointer.split(/[\s,;]+/).filter(Boolean)] : number.key.split(" ");
+    const [way, ...places] = isOwn ? [number.way, ...number.pointer.split(/[\s,;]+/).filter(Boolean)]
+      : [...number.key.split(" "), ...number.also.map((key) => key.split(" ")[1])];
     note(pointer, idOf(id, "key"));
     note(`${pointer}/name`, idOf(id, "name"));
     for (const one of ["at", "shift", "scale"]) note(`${pointer}/${one}`, idOf(id, isOwn ? "pointer" : "key"));

@@ -76,16 +76,35 @@ function numberCard(draft, index, changed, again, question) {
       id: idOf(id, "key"), label: "Which", spoken, value: number.key, extraClass: "whole", groupsOf: () => numberEntries(draft),
       gone: number.key ? "no longer there" : "choose a number of the problem",
       onChange: (value) => {
-        number.key = value;
+        Object.assign(number, { key: value, also: [] });
         again(idOf(id, "key"));
       },
     }),
+    number.key.startsWith("at ") ? alsoFields(draft, number, id, spoken, again) : null,
     number.key === OWN ? own : null,
     make("p", { class: "hint whole", "data-now": number.id }),
     ...question.fieldsOfNumber(number, id, spoken, changed, again),
     field({ id: idOf(id, "name"), label: "Name (optional)", spoken, value: number.name, isText: true, onInput: writer(number, "name", changed) }),
     remove,
   );
+}
+
+/** Further places that take the same value: those that stand already, and one to add. */
+function alsoFields(draft, number, id, spoken, again) {
+  const entries = () => {
+    const catalogue = catalogueOfDraft(draft);
+    const kind = catalogue.find(({ key }) => key === number.key)?.kind;
+    return catalogue.filter((entry) => entry.way === "at" && entry.kind === kind && entry.key !== number.key).map(({ key, label }) => [key, label]);
+  };
+  if (!entries().length && !number.also.length) return null;
+  const choices = [...number.also, ""].map((chosen, index) => listChoice({
+    id: idOf(id, "also", index), label: "Also", spoken, value: chosen, extraClass: "whole", groupsOf: () => [[null, [["", "nothing else"], ...entries()]]],
+    onChange: (value) => {
+      number.also.splice(index, 1, ...(value ? [value] : []));
+      again(idOf(id, "also", index));
+    },
+  }));
+  return make("details", { class: "whole", open: number.also.length > 0 }, make("summary", {}, "The same value elsewhere"), make("div", { class: "fields" }, choices));
 }
 
 /** A field for one of a number's texts. */

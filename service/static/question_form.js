@@ -1,6 +1,7 @@
 /** The part of the form for a question about numbers: which, the numbers it varies, and its own fields. */
 
 import * as best from "./best_form.js";
+import * as calibration from "./calibration_form.js";
 import * as cases from "./cases_form.js";
 import { button, choice, make } from "./elements.js";
 import { numberFields } from "./number_form.js";
@@ -17,6 +18,7 @@ export const QUESTIONS = {
   tolerances: { ...tolerances, title: "What tolerances add up to", hint: "How far each result may lie: at worst, as a root sum of squares, and sampled, with how often limits hold." },
   sizing: { ...sizing, title: "Size one number", hint: "All values of a number for which every limit holds." },
   "best-values": { ...best, title: "Best values of a few numbers", hint: "Values with which results are as low or high as can be and all limits hold." },
+  calibration: { ...calibration, title: "Calibrate from readings", hint: "What readings say about numbers that are not known." },
 };
 
 /**
@@ -44,7 +46,7 @@ export function questionFields(draft, changed, redraw, ask) {
   return [
     which, make("p", { class: "hint whole" }, kind.hint),
     ...numberFields(draft, changed, redraw, { mostNumbers: kind.mostNumbers, fieldsOfNumber: kind.fieldsOfNumber(draft) }),
-    ...kind.ownFields(draft, changed, again),
+    ...kind.ownFields(draft, changed, again, redraw),
     make("div", { class: "tools whole" },
       button({ id: "ask-now", onclick: ask.now }, "Answer now"),
       button({ id: "ask-study", onclick: ask.study }, "Answer as a study")),

@@ -1,6 +1,6 @@
 /** What each number does to each result: bars in the order of their size, and the table behind them. */
 
-import { axis, behind, chart, COLOURS, plainly } from "./charts.js";
+import { axis, behind, chart, COLOURS, inLines } from "./charts.js";
 import { make, verdict } from "./elements.js";
 import { brief, pretty } from "./numbers.js";
 import { switched } from "./switched.js";
@@ -33,7 +33,7 @@ export function sensitivitiesView(answer) {
     make("p", { class: "hint" }, "How far a result moves when one number grows by a hundredth, or by one unit where a hundredth means nothing, and all else stays."),
     switched("Result", results.map((result) => [result.name, () => view(result)]), "sensitivities-result"),
     ...failed.map(({ name, reason }) => verdict("open", `${name} could not be varied`, reason.message)),
-    behind("Slopes with their errors", table("Change of each result per unit of each number", ["Result and number", "Slope", "Bends by, per unit"], derivatives.map((one) => [
+    behind("Slopes with their errors", table("Change of each result per unit of each number", ["Result and number", "Slope", "Change of slope"], derivatives.map((one) => [
       rowHead(one.number, `on ${one.result}, ${pretty(one.unit)}`),
       valueCell(one.derivative, one.error_estimate, one.smooth ? {} : { title: "at a kink: the mean of both sides" }),
       one.smooth ? valueCell(one.second_derivative, one.second_error_estimate)
@@ -46,10 +46,10 @@ function bars(name, unit, ranked) {
   return chart({
     label: `Bars: how far ${name} moves with each number, the strongest on top. The slopes are in the table that follows.`,
     caption: `Change of ${name}${ranked.length > shown.length ? `; the ${shown.length} strongest of ${ranked.length}` : ""}. Filled: it rises with the number; pale: it falls.`,
-    height: 84 + 46 * shown.length,
+    height: 84 + 58 * shown.length,
     data: [{
       type: "bar", orientation: "h", x: shown.map(({ effect }) => effect),
-      y: shown.map(({ number, words }) => `${plainly(number)}<br>${plainly(pretty(words))} more`),
+      y: shown.map(({ number, words }) => `${inLines(number)}<br>${pretty(words)} more`),
       marker: { color: shown.map(({ effect }) => (effect >= 0 ? COLOURS.main : COLOURS.tint)), line: { color: COLOURS.main, width: 1 } },
       hovertemplate: `%{x:.5~g} ${pretty(unit)}<extra></extra>`,
     }],

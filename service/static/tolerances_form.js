@@ -11,8 +11,8 @@ export const fieldsOfNumber = () => (number, id, spoken, changed, again) => {
   const { texts } = number;
   const kind = `step-${number.id}`;
   const text = (key, label, more) => numberText(number, id, spoken, changed, key, label, more);
-  const pick = (key, label, options, value) => choice({
-    id: idOf(id, key), label, spoken, value, options,
+  const pick = (key, label, options, value, extraClass = "") => choice({
+    id: idOf(id, key), label, spoken, value, options, extraClass,
     onChange: (chosen) => {
       texts[key] = chosen;
       again(idOf(id, key));
@@ -28,7 +28,7 @@ export const fieldsOfNumber = () => (number, id, spoken, changed, again) => {
     pick("shape", "Spread", [
       ["", "normal, half the zone three sigma"], ["normal", "normal"], ["truncated_normal", "normal, cut at the zone"], ["uniform", "even over the zone"],
       ["triangular", "triangle over the zone"], ["lognormal", "lognormal"], ["quantiles", "by its quantiles"],
-    ], shape),
+    ], shape, "whole"),
     ...(WITH_DEVIATION.includes(shape) ? [text("deviation", "Standard deviation (optional)", { kind }), text("sigmas", "Half the zone, in sigma (optional)")] : []),
     shape === "quantiles" ? longText({
       id: idOf(id, "quantiles"), label: "Quantiles", spoken, value: texts.quantiles ?? "", rows: 4, onInput: writer(texts, "quantiles", changed),
@@ -39,7 +39,7 @@ export const fieldsOfNumber = () => (number, id, spoken, changed, again) => {
 
 export function ownFields(draft, changed, again) {
   const own = draft.question.own.tolerances;
-  const text = (key, label, hint) => field({ id: `tolerances-${key}`, label, value: own[key], hint, onInput: writer(own, key, changed) });
+  const text = (key, label, hint, extraClass = "") => field({ id: `tolerances-${key}`, label, value: own[key], hint, extraClass, onInput: writer(own, key, changed) });
   return [
     choice({
       id: "tolerances-method", label: "Samples", value: own.method,
@@ -51,7 +51,7 @@ export function ownFields(draft, changed, again) {
     }),
     own.method ? text("count", own.method === "random" ? "How many" : "How many in each of 8", own.method === "sobol" ? "A power of two." : undefined) : null,
     own.method ? text("seed", "Seed (optional)") : null,
-    text("indices", "Shares of the spread (optional)", "Base cases, such as 64: a power of two. Tells how much of the spread each number is behind, also together with others."),
+    text("indices", "Shares of the spread (optional)", "Base cases, such as 64: a power of two. Tells how much of the spread each number is behind, also together with others.", "whole"),
     longText({
       id: "tolerances-correlations", label: "Numbers that go together (optional)", value: own.correlations, rows: 2,
       hint: "A line for each pair: the names and their correlation, such as width; depth; 0.8.", onInput: writer(own, "correlations", changed),

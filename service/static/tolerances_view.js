@@ -1,6 +1,6 @@
 /** What tolerances do: ranges held against limits, the sampled distribution, what each number adds, and the stack-up. */
 
-import { axis, behind, chart, COLOURS, limitLine, plainly } from "./charts.js";
+import { axis, behind, chart, COLOURS, inLines, limitLine } from "./charts.js";
 import { make, verdict } from "./elements.js";
 import { brief, counted, pretty, shown } from "./numbers.js";
 import { switched } from "./switched.js";
@@ -29,7 +29,7 @@ function limitsTable({ limits, stack_ups: stacks, units }) {
     const step = differenceOf(unit, units);
     const margin = (value, bound, under) => make("td", { class: value < 0 ? "missed" : null },
       value === null ? "\u2013" : `${value < 0 ? "\u2717" : "\u2713"} ${withUnit(shown(value, Math.max(bound ?? 0, Math.abs(value) * 1e-5)), step)}`, under ? make("span", { class: "known" }, under) : null);
-    const corner = limit.corner_margin === null ? null : `computed at the corner: ${withUnit(shown(limit.corner_margin, Math.max(limit.corner_error_bound ?? 0, Math.abs(limit.corner_margin) * 1e-5)), step)}`;
+    const corner = limit.corner_margin === null ? null : `at the corner ${withUnit(shown(limit.corner_margin, Math.max(limit.corner_error_bound ?? 0, Math.abs(limit.corner_margin) * 1e-5)), step)}`;
     const chance = limit.probability;
     return [
       rowHead(limit.name ?? limit.result, limit.name ? `${limit.result} ${limitWords(limit, unit)}` : limitWords(limit, unit)),
@@ -43,7 +43,7 @@ const interval = ({ low, high }) => (low === null ? "" : `${percent(low)} to ${p
 
 function chanceVerdict(words, chance) {
   const kind = chance.low !== null && chance.low > 0.99 ? "good" : chance.value < 0.5 ? "bad" : "open";
-  return verdict(kind, words, `hold in ${percent(chance.value)} of cases, ${interval(chance)}${chance.undecided_cases ? `; ${chance.undecided_cases} cases are undecided` : ""}.`);
+  return verdict(kind, words, `They hold in ${percent(chance.value)} of cases, ${interval(chance)}${chance.undecided_cases ? `; ${chance.undecided_cases} cases are undecided` : ""}.`);
 }
 
 function resultView(answer, stack, index) {
@@ -68,15 +68,15 @@ function ranges(stack, spread, limits) {
   const quantile = (part) => spread?.quantiles.find(({ probability }) => probability === part)?.value ?? null;
   const rows = [
     ["worst case", stack.worst_low, stack.worst_high, COLOURS.main],
-    ["worst corners, computed", stack.low_corner.value, stack.high_corner.value, COLOURS.main],
-    ["root sum of squares", stack.middle - stack.root_sum_square, stack.middle + stack.root_sum_square, COLOURS.second],
+    ["worst corners,<br>computed", stack.low_corner.value, stack.high_corner.value, COLOURS.main],
+    ["root sum<br>of squares", stack.middle - stack.root_sum_square, stack.middle + stack.root_sum_square, COLOURS.second],
     ...(spread ? [["95 % of samples", quantile(0.025), quantile(0.975), COLOURS.held]] : []),
   ].filter(([, low, high]) => low !== null && high !== null && Number.isFinite(low)).reverse();
   const lines = linesOf(limits);
   return chart({
     label: `Ranges of ${stack.result} by each way of adding up tolerances, with its limits. The numbers are in the table that follows.`,
     caption: "How far the result may lie. The ring is the result as it stands; dashed lines are limits.",
-    height: 100 + 34 * rows.length,
+    height: 100 + 38 * rows.length,
     data: [
       ...rows.map(([name, low, high, colour]) => ({
         type: "scatter", mode: "lines+markers", x: [low, high], y: [name, name], line: { color: colour, width: 7 }, marker: { color: colour, symbol: "line-ns", size: 14, line: { color: colour, width: 2.5 } },
@@ -135,13 +135,13 @@ function additions({ result, contributions, unit }, units) {
   const known = contributions.filter(({ low }) => low !== null).slice(0, 20).reverse();
   if (!known.length) return null;
   const side = (key, sign, colour) => ({
-    type: "bar", orientation: "h", y: known.map(({ number }) => plainly(number)), x: known.map((one) => sign * one[key]), name: key, marker: { color: colour, line: { color: COLOURS.main, width: 1 } },
+    type: "bar", orientation: "h", y: known.map(({ number }) => inLines(number)), x: known.map((one) => sign * one[key]), name: key, marker: { color: colour, line: { color: COLOURS.main, width: 1 } },
     hovertemplate: `%{x:.5~g} ${pretty(step)}<extra></extra>`,
   });
   return chart({
     label: `Bars: by how much the tolerance of each number lowers and raises ${result}. The numbers are in the table that follows.`,
     caption: "By how much each tolerance lowers (pale) and raises (filled) the result; the strongest on top.",
-    height: 90 + 36 * known.length, data: [side("low", -1, COLOURS.tint), side("high", 1, COLOURS.main)],
+    height: 90 + 46 * known.length, data: [side("low", -1, COLOURS.tint), side("high", 1, COLOURS.main)],
     layout: { barmode: "overlay", bargap: 0.4, xaxis: axis(headed("change", step), { zeroline: true, zerolinecolor: COLOURS.limit }), yaxis: axis("", { ticks: "", showline: false }) },
   });
 }
@@ -149,7 +149,7 @@ function additions({ result, contributions, unit }, units) {
 function indexBars({ result, numbers }) {
   const ranked = [...numbers].sort((a, b) => (a.total.value ?? 0) - (b.total.value ?? 0));
   const side = (key, name, colour) => ({
-    type: "bar", orientation: "h", name, y: ranked.map(({ number }) => plainly(number)), x: ranked.map((one) => one[key].value), marker: { color: colour, line: { color: COLOURS.second, width: 1 } },
+    type: "bar", orientation: "h", name, y: ranked.map(({ number }) => inLines(number)), x: ranked.map((one) => one[key].value), marker: { color: colour, line: { color: COLOURS.second, width: 1 } },
     error_x: {
       type: "data", symmetric: false, color: COLOURS.limit, thickness: 1.2,
       array: ranked.map((one) => Math.max(0, (one[key].high ?? one[key].value) - one[key].value)), arrayminus: ranked.map((one) => Math.max(0, one[key].value - (one[key].low ?? one[key].value))),
