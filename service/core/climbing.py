@@ -12,6 +12,7 @@ from scipy.ndimage import maximum_filter
 from service.core import field
 from service.core.endless import neighbourhood
 from service.core.field import Grid, Setting
+from service.core.peak_model import Index, between, line_through
 from service.core.problem import Body
 
 FloatArray = NDArray[np.float64]
@@ -27,8 +28,18 @@ ACCURACY_OF_GAP = 1e-3
 FINER = np.linspace(-1.0, 1.0, 5)
 NARROWING = 4.0
 
-# How many times the rise of a parabola above the highest of its three points is allowed for a peak between them.
+# How many times the rise of the model of a small grid above its highest value is allowed for a peak between.
 PEAK_SAFETY = 4.0
+
+# A grid whose highest value is on its edge is moved there, wider each time, so often before it is made finer all the
+# same.
+MOST_MOVES, WIDENING = 8, 1.5
+
+# A variation along an axis is none below this part of the tolerance.
+ALIKE = 1e-3
+
+# Places nearer to each other than this part of their coordinates are the two sides of an interface.
+TWINS = 1e-13
 
 # A grid narrower than this part of the body ends the search.
 SMALLEST_WIDTH = 1e-9
@@ -91,16 +102,23 @@ def from_grid(search: Search, axes: list[FloatArray], values: FloatArray, sign: 
     places = np.array([[axis[index] for axis, index in zip(axes, at, strict=True)] for at in peaks])
     exact = sign * field.at_points(search.setting, places, tolerance=search.tolerance, with_flux=False).potential
     starts = []
-    for number in np.argsort(-exact, kind="stable")[:STARTS]:
+    order = np.argsort(-exact, kind="stable")
+    for number in order[~_beside_higher(np.array(peaks), exact, 2 * search.tolerance)[order]][:STARTS]:
         at, place = peaks[number], places[number]
         x, y, z = (
             max(float(axis[min(index + 1, axis.size - 1)]) - here, here - float(axis[max(index - 1, 0)]))
             for axis, index, here in zip(axes, at, place, strict=True)
         )
-        slack = 2 * _steps(values, at)
+        slack = 2 * _steps(axes, values, at)
         start = (float(place[0]), float(place[1]), float(place[2]))
         starts.append(Start(start, float(exact[number]), slack, (x, y, z), limits))
     return starts
+
+
+def _beside_higher(peaks: NDArray[np.intp], exact: FloatArray, alike: float) -> NDArray[np.bool_]:
+    """Which peaks turn out to have a neighbour among them that is higher. peaks: shape (n, 3)."""
+    beside = (np.abs(peaks[:, None] - peaks) <= 1).all(axis=2)
+    return np.asarray((beside & (exact > exact[:, None] + alike)).any(axis=1))
 
 
 def climb(search: Search, start: Start, sign: float) -> Place:
@@ -108,26 +126,41 @@ def climb(search: Search, start: Start, sign: float) -> Place:
     body, accuracy = search.setting.body, search.accuracy
     place, widths, limits = list(start.place), list(start.widths), _within_layer(body, start)
     smallest = SMALLEST_WIDTH * max(_reach(search.setting, axis) for axis in range(3))
+    moves = 0
     while True:
-        local = [
-            np.unique(np.clip(at + width * FINER, low, high))
-            for at, width, (low, high) in zip(place, widths, limits, strict=True)
-        ]
+        local = [_around(at, width, *limit) for at, width, limit in zip(place, widths, limits, strict=True)]
         answer = search.field(local, accuracy)
         values = sign * answer.potential
-        top = np.unravel_index(int(values.argmax()), values.shape)
-        index = (int(top[0]), int(top[1]), int(top[2]))
-        place = [float(axis[i]) for axis, i in zip(local, index, strict=True)]
-        vertices = [_vertex(local[axis], values, index, axis) for axis in range(3)]
-        gap = PEAK_SAFETY * sum(rise for _, rise in vertices)
-        done = gap <= search.tolerance or max(widths) <= smallest
+        top = _top(local, values, place, answer.potential_bound)
+        model = between(local, values, top, limits, ALIKE * search.tolerance)
+        gap = PEAK_SAFETY * model.rise + float(values.max() - values[top])
+        found = tuple(float(axis[index]) for axis, index in zip(local, top, strict=True))
+        if model.goes_on and moves < MOST_MOVES:
+            place, widths, moves = list(found), [WIDENING * width for width in widths], moves + 1
+            continue
+        done = (gap <= search.tolerance and not model.goes_on) or max(widths) <= smallest
         if done and accuracy <= search.tolerance:
-            found = (place[0], place[1], place[2])
-            return Place(found, sign * float(values[index]), answer.potential_bound + gap, name_of_place(body, found))
+            at = (found[0], found[1], found[2])
+            return Place(at, sign * float(values[top]), answer.potential_bound + gap, name_of_place(body, at))
         accuracy = search.tolerance if done else max(search.tolerance, ACCURACY_OF_GAP * gap)
-        if not done:
-            place = [vertex for vertex, _ in vertices]
-            widths = [width / NARROWING for width in widths]
+        place = list(found) if done else model.place
+        widths = widths if done else [width / NARROWING for width in widths]
+
+
+def _around(at: float, width: float, low: float, high: float) -> FloatArray:
+    """Places around one along an axis, or on the inner side of an end."""
+    if at in (low, high):
+        steps = 0.5 * width * (FINER - FINER[0])
+        return np.unique(np.clip(at + (steps if at == low else -steps), low, high))
+    return np.unique(np.clip(at + width * FINER, low, high))
+
+
+def _top(local: list[FloatArray], values: FloatArray, middle: list[float], bound: float) -> Index:
+    """The highest value of a grid; that in its middle where the bound of the values cannot tell it from that."""
+    at = [int(np.argmin(np.abs(axis - place))) for axis, place in zip(local, middle, strict=True)]
+    if values.max() - values[at[0], at[1], at[2]] > bound:
+        at = [int(index) for index in np.unravel_index(int(values.argmax()), values.shape)]
+    return at[0], at[1], at[2]
 
 
 def _within_layer(body: Body, start: Start) -> tuple[tuple[float, float], ...]:
@@ -142,28 +175,7 @@ def _within_layer(body: Body, start: Start) -> tuple[tuple[float, float], ...]:
     return (*across, (low, high))
 
 
-def _vertex(places: FloatArray, values: FloatArray, top: tuple[int, int, int], axis: int) -> tuple[float, float]:
-    """Top of the parabola through a grid's highest value and its neighbours along an axis, and its rise above it.
-
-    At the end of the axis with the field falling from it, the end itself and 0.
-    """
-    line = _line_through(values, top, axis)
-    here = top[axis]
-    if places.size < 3:
-        return float(places[here]), 0.0
-    middle = min(max(here, 1), places.size - 2)
-    x, y = places[middle - 1 : middle + 2], line[middle - 1 : middle + 2]
-    left, right = (y[1] - y[0]) / (x[1] - x[0]), (y[2] - y[1]) / (x[2] - x[1])
-    curvature = (right - left) / (x[2] - x[0])
-    if curvature >= 0.0:
-        return float(places[here]), 0.0
-    vertex = 0.5 * (x[0] + x[1]) - 0.5 * left / curvature
-    vertex = float(min(max(vertex, places[0]), places[-1]))
-    rise = y[1] + (vertex - x[1]) * (left + curvature * (vertex - x[0])) - line[here]
-    return vertex, max(float(rise), 0.0)
-
-
-def _peaks(values: FloatArray, alike: float) -> list[tuple[int, int, int]]:
+def _peaks(values: FloatArray, alike: float) -> list[Index]:
     """Places of a first grid that are not below any neighbour by what its accuracy can tell, the highest first."""
     rounded = np.round(values / alike) * alike if alike > 0 else values
     peaks = np.argwhere(rounded >= maximum_filter(rounded, size=3, mode="nearest"))
@@ -172,21 +184,22 @@ def _peaks(values: FloatArray, alike: float) -> list[tuple[int, int, int]]:
     return [(int(i), int(j), int(k)) for i, j, k in peaks[order[:MOST_PEAKS]]]
 
 
-def _steps(values: FloatArray, at: tuple[int, int, int]) -> float:
-    """Sum over the axes of the smaller step from a peak to its neighbours, which a smooth peak cannot exceed."""
+def _steps(axes: list[FloatArray], values: FloatArray, at: Index) -> float:
+    """Sum over the axes of the smaller step from a peak to its neighbours, which a smooth peak cannot exceed.
+
+    The other side of an interface is no neighbour.
+    """
     total = 0.0
-    for axis in range(3):
-        line = _line_through(values, at, axis)
-        here = at[axis]
-        near = [abs(float(line[here] - line[other])) for other in (here - 1, here + 1) if 0 <= other < line.size]
+    for axis, places in enumerate(axes):
+        line, here = line_through(values, at, axis), at[axis]
+        twin = TWINS * float(np.abs(places).max())
+        near = [
+            abs(float(line[here] - line[other]))
+            for other in (here - 1, here + 1)
+            if 0 <= other < line.size and abs(places[other] - places[here]) > twin
+        ]
         total += min(near, default=0.0)
     return total
-
-
-def _line_through(values: FloatArray, at: tuple[int, int, int], axis: int) -> FloatArray:
-    """Values along an axis through a place of a grid."""
-    first, second = (at[other] for other in range(3) if other != axis)
-    return np.asarray(np.moveaxis(values, axis, 0)[:, first, second])
 
 
 def _reach(setting: Setting, axis: int) -> float:

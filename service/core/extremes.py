@@ -9,6 +9,7 @@ around every place that could still hold the extreme, on finer and finer grids.
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -16,12 +17,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core import field
-from service.core.climbing import Place, Search, climb, from_grid
+from service.core.climbing import Place, Search, Start, climb, from_grid
+from service.core.conditions import Held
 from service.core.endless import far_setting
 from service.core.errors import AccuracyNotReached
 from service.core.faces import AXES, Face, axes_along
 from service.core.field import Setting
-from service.core.first_grids import first_grids, from_boxes, thinned
+from service.core.first_grids import first_grids, from_boxes, grids_at_held_edges, thinned
 from service.core.held_peaks import extreme_held, extreme_held_within, held_faces_under, may_exceed
 from service.core.maps import Rectangle
 from service.core.profiles import Profiles
@@ -32,6 +34,9 @@ FloatArray = NDArray[np.float64]
 
 # Peaks that are followed for one extreme at the most.
 MOST_CLIMBS = 6
+
+# Beside edges is looked where the best so far is above the highest held value by no more than this part of the span.
+NEARLY_HELD = 0.05
 
 # Places along each side of a pad, in parts of it, closer at its edges; peaks that are followed on it.
 PAD_PLACES = 0.5 - 0.5 * np.cos(np.linspace(0.0, math.pi, 9))
@@ -134,25 +139,55 @@ class _Looked:
             (axes, search.field(axes, search.accuracy).potential) for axes in first_grids(self._setting, self._region)
         ]
 
+    def _is_known(self, start: Start, level: float) -> bool:
+        """Whether a start is on a held face and no higher than what is known to be held."""
+        body = self._setting.body
+        faces = [body.face_at(axis, at) for axis, at in enumerate(start.place)]
+        is_held = any(face is not None and isinstance(body.faces[face], Held) for face in faces)
+        return is_held and start.value <= level + self._search.tolerance
+
     def _by_search(self, sign: float, held: Place | None) -> Place:
-        search, best, climbs = self._search, held, 0
         starts = from_boxes(self._setting, self._region, sign)
         for axes, potential in self._grids:
-            starts += from_grid(search, axes, sign * potential, sign)
-        for start in sorted(starts, key=lambda start: -start.value):
+            starts += from_grid(self._search, axes, sign * potential, sign)
+        best = self._highest_from(starts, sign, held, held)
+        if held is not None and best is not None:
+            level = sign * held.value - NEARLY_HELD * self._setting.span
+            if level + 2 * NEARLY_HELD * self._setting.span >= sign * best.value:
+                best = self._highest_from(self._starts_at_edges(level, sign), sign, held, best)
+        assert best is not None
+        if best is held:
+            return best
+        return _far_if_only_approached(self._setting, self._region, best, self._search.tolerance, sign)
+
+    def _starts_at_edges(self, level: float, sign: float) -> list[Start]:
+        """Starts beside edges with faces held nearly at the highest level."""
+        starts = []
+        for axes in grids_at_held_edges(self._setting, self._region, level, sign):
+            potential = self._search.field(axes, self._search.accuracy).potential
+            starts += from_grid(self._search, axes, sign * potential, sign)
+        return starts
+
+    def _highest_from(
+        self, starts: Sequence[Start], sign: float, held: Place | None, best: Place | None
+    ) -> Place | None:
+        """The highest peak that is reached from some starts, or the best so far."""
+        climbs = 0
+        # The first grids share places.
+        apart = {start.place: start for start in sorted(starts, key=lambda start: start.slack)}
+        for start in sorted(apart.values(), key=lambda start: -start.value):
             # A peak that does not come near the best so far is not followed.
             if best is not None and start.value + start.slack < sign * best.value:
                 continue
-            found = climb(search, start, sign)
+            if held is not None and self._is_known(start, sign * held.value):
+                continue
+            found = climb(self._search, start, sign)
             climbs += 1
             if best is None or sign * found.value > sign * best.value:
                 best = found
             if climbs == MOST_CLIMBS:
                 break
-        assert best is not None
-        if best is held:
-            return best
-        return _far_if_only_approached(self._setting, self._region, best, search.tolerance, sign)
+        return best
 
 
 def _far_if_only_approached(setting: Setting, region: Region, found: Place, tolerance: float, sign: float) -> Place:

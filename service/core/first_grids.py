@@ -18,6 +18,7 @@ from service.core.conditions import Held, map_of
 from service.core.endless import neighbourhood
 from service.core.faces import Face, axes_along, axis_of
 from service.core.field import Setting
+from service.core.held_peaks import drives_beyond, extreme_held_within
 from service.core.maps import FaceMap
 from service.core.problem import Body
 from service.core.region import Region
@@ -32,8 +33,11 @@ FIRST_PLACES = 25
 # or the middles of its cells are looked at.
 MOST_FACE_PLACES = 100
 
-# Places along each side of a region that is a part of the body, in parts of it, closer at its ends.
-PLACES_WITHIN = 0.5 - 0.5 * np.cos(np.linspace(0.0, math.pi, 9))
+# Places spread along an axis of a region, and along one of a region that is flat.
+SPREAD, SPREAD_OF_FLAT = 13, 25
+
+# Places beside an edge, in parts of the distance to the next place of a first grid.
+BESIDE = np.geomspace(1e-8, 1.0, 17)
 
 # Places far along an endless axis, in parts of the width of the body or its data.
 BEYOND = np.geomspace(0.02, 20.0, 11)
@@ -50,7 +54,7 @@ def first_grids(setting: Setting, region: Region) -> list[list[FloatArray]]:
         and not (isinstance(condition, Held) or face_map.is_uniform)
         and region.touches(axis_of(face), body.end_of(face))
     ]
-    if any(places.size == 1 for places in everywhere):
+    if region.is_flat:
         # A flat region is a grid by itself, with all the data of the face it may lie on.
         on_it = [grid for grid, face in on_faces if region.lies_on(body, face)]
         return on_it[:1] or [[thinned(places, MOST_FACE_PLACES) for places in everywhere]]
@@ -79,6 +83,41 @@ def _on_face(body: Body, face: Face, face_map: FaceMap, everywhere: list[FloatAr
     for other, knots in zip(axes_along(face), (face_map.first_knots, face_map.second_knots), strict=True):
         axes[other] = _data_places(everywhere[other], knots, face_map.bilinear)
     return axes
+
+
+def grids_at_held_edges(setting: Setting, region: Region, level: float, sign: float) -> list[list[FloatArray]]:
+    """Grids on faces that drive the potential beyond a level, next to edges with faces held at that level or beyond.
+
+    There the slope along the driving face grows as the logarithm of the distance from the edge, so that the field goes
+    beyond what is held however near to the edge the peak is.
+    """
+    body = setting.body
+    everywhere = [places_along(setting, region, axis) for axis in range(3)]
+    grids = []
+    for face, condition in body.faces.items():
+        axis = axis_of(face)
+        if not drives_beyond(condition, level, sign) or not region.touches(axis, body.end_of(face)):
+            continue
+        for other in body.present_faces:
+            across = axis_of(other)
+            if across == axis or everywhere[across].size == 1 or not region.touches(across, body.end_of(other)):
+                continue
+            edge = region.flattened(axis, body.end_of(face)).flattened(across, body.end_of(other))
+            held = extreme_held_within(body, edge, sign) if isinstance(body.faces[other], Held) else None
+            if held is not None and sign * held.value >= level:
+                axes = [thinned(places) for places in everywhere]
+                axes[axis] = np.array([body.end_of(face)])
+                axes[across] = _beside(everywhere[across], body.end_of(other))
+                grids.append(axes)
+    return grids
+
+
+def _beside(places: FloatArray, end: float) -> FloatArray:
+    """Places that come near to an end of an axis."""
+    away = np.abs(places - end)
+    reach = float(away[away > 0].min())
+    beside = end + (reach if end == places[0] else -reach) * BESIDE
+    return np.unique(np.concatenate([[end], beside, places[np.argsort(away, kind="stable")[:3]]]))
 
 
 def _data_places(places: FloatArray, knots: FloatArray, bilinear: bool) -> FloatArray:
@@ -116,9 +155,10 @@ def _spread(setting: Setting, region: Region, axis: int) -> FloatArray:
     low, high = region.along(axis)
     line = setting.lines[axis]
     if math.isfinite(low) and math.isfinite(high):
-        if region.is_whole(setting.body, axis):
-            return line.length * np.linspace(0.0, 1.0, 11)
-        return np.append(low + (high - low) * PLACES_WITHIN[:-1], high)
+        parts = np.linspace(0.0, 1.0, SPREAD_OF_FLAT if region.is_flat else SPREAD)
+        # Closer at the ends of a part of the body, where its extremes are.
+        within = parts if region.is_whole(setting.body, axis) else 0.5 - 0.5 * np.cos(math.pi * parts)
+        return np.append(low + (high - low) * within[:-1], high)
     beyond = widest(setting.lines) / line.scale * BEYOND
     if math.isfinite(low):
         return np.concatenate([[low], low + beyond])

@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from service.core.climbing import Place, name_of_place
-from service.core.conditions import Film, Held, Inflow
+from service.core.conditions import Condition, Film, Held, Inflow
 from service.core.faces import Face, axes_along, axis_of
 from service.core.maps import FaceMap, Peak
 from service.core.problem import Body
@@ -25,15 +25,18 @@ FloatArray = NDArray[np.float64]
 
 def may_exceed(body: Body, level: float, sign: float) -> bool:
     """Whether an inflow, a source or an ambient could lift the potential above a level (below, for sign -1)."""
-    for condition in body.faces.values():
-        if isinstance(condition, Inflow) and _highest(condition.inflow, sign) > 0:
-            return True
-        if isinstance(condition, Film) and _highest(condition.ambient, sign) > level:
-            return True
-    return any(sign * source.density > 0 for source in body.generating)
+    drives = any(drives_beyond(condition, level, sign) for condition in body.faces.values())
+    return drives or any(sign * source.density > 0 for source in body.generating)
 
 
-def _highest(face_map: FaceMap, sign: float) -> float:
+def drives_beyond(condition: Condition, level: float, sign: float) -> bool:
+    """Whether a face's inflow or ambient could lift the potential above a level (below, for sign -1)."""
+    if isinstance(condition, Inflow):
+        return highest_of(condition.inflow, sign) > 0
+    return isinstance(condition, Film) and highest_of(condition.ambient, sign) > level
+
+
+def highest_of(face_map: FaceMap, sign: float) -> float:
     """The highest of a face's data, for sign -1 the lowest turned round, with what may lie beyond it."""
     slack = 0.0 if face_map.peaks is None else face_map.peaks[1 if sign > 0 else 0].slack
     return sign * (face_map.highest if sign > 0 else face_map.lowest) + slack
@@ -113,7 +116,7 @@ def _peak_within(
         table = face_map.at(p, q)
         i, j = np.unravel_index(int((sign * table).argmax()), table.shape)
         return Peak(float(table[i, j]), float(p[i]), float(q[j]), face_map.error)
-    if any(low == high and low in knots for knots, (low, high) in zip(all_knots, ends, strict=True)):
+    if any(low == high and low in knots[1:-1] for knots, (low, high) in zip(all_knots, ends, strict=True)):
         # A line along which cells meet belongs to none of them.
         return None
     cells = [_cells_within(knots, *interval) for knots, interval in zip(all_knots, ends, strict=True)]
@@ -128,7 +131,7 @@ def _peak_within(
 
 def _cells_within(knots: FloatArray, low: float, high: float) -> slice:
     """The cells between knots that an interval has a part of."""
-    first = max(int(np.searchsorted(knots, low, side="right")) - 1, 0)
+    first = min(max(int(np.searchsorted(knots, low, side="right")) - 1, 0), knots.size - 2)
     return slice(first, max(int(np.searchsorted(knots, high, side="left")), first + 1))
 
 

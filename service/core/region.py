@@ -52,6 +52,12 @@ class Region:
         low[first], high[first], low[second], high[second] = where.p_low, where.p_high, where.q_low, where.q_high
         return cls((low[0], low[1], low[2]), (high[0], high[1], high[2]))
 
+    def flattened(self, axis: int, place: float) -> Region:
+        """Its section at a place of an axis."""
+        low, high = list(self.low), list(self.high)
+        low[axis] = high[axis] = place
+        return Region((low[0], low[1], low[2]), (high[0], high[1], high[2]))
+
     def section(self, axis: int) -> Rectangle:
         """Its section square to an axis."""
         (p_low, p_high), (q_low, q_high) = (self.along(other) for other in axes_along(axis))
@@ -68,6 +74,11 @@ class Region:
     def touches(self, axis: int, place: float) -> bool:
         """Whether a plane square to an axis has a part of it."""
         return self.low[axis] <= place <= self.high[axis]
+
+    @property
+    def is_flat(self) -> bool:
+        """Whether it has no extent along some axis."""
+        return any(low == high for low, high in zip(self.low, self.high, strict=True))
 
     def is_whole(self, body: Body, axis: int) -> bool:
         """Whether it reaches from end to end of the body along an axis."""
