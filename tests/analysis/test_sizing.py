@@ -117,7 +117,7 @@ def test_two_solutions_closer_than_the_scan_are_found(half: float, side: float) 
     for edge, expected in zip(edges, (place - half, place + half), strict=True):
         assert abs(edge.number - expected) <= edge.error_bound < 1e-8
     assert len(found.intervals) == (1 if side > 0 else 2)
-    # The search for an extreme ends as soon as it is beyond the limit.
+    # No search goes on once it is decided what it is for.
     assert found.cases < (80 if half > 1e-3 else 110)
 
 
