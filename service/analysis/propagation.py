@@ -15,7 +15,7 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -140,6 +140,7 @@ def spread_of(
     else:
         mean = _of_replicates(_mean, pooled, replicates, pooled.mean_bound, confidence)
         deviation = _of_replicates(_deviation, pooled, replicates, pooled.deviation_bound, confidence)
+        deviation = replace(deviation, low=np.maximum(deviation.low, 0.0))
         within = _of_replicates(
             lambda some: _quantiles(some, levels), pooled, replicates, pooled.largest_bound, confidence
         )
