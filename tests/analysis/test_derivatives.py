@@ -9,8 +9,9 @@ import mpmath
 import numpy as np
 import pytest
 
-from service.analysis.derivatives import TARGET, Derivatives, NominalFailed, derivatives, first_radii, most_cases
+from service.analysis.derivatives import Derivatives, NominalFailed, derivatives, first_radii, most_cases
 from service.analysis.evaluations import FloatArray
+from service.analysis.interpolants import TARGET
 from tests.analysis.formulas import Counted
 
 # Thickness or length in m, conductivity in W/(m K), film coefficient in W/(m^2 K), flux in W/m^2 or excess in K.
