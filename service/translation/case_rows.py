@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import csv
-import io
 from collections.abc import Sequence
 
 import numpy as np
@@ -16,7 +14,7 @@ from service.settings import Settings
 from service.translation.collector import UNREAD, Collector
 from service.translation.measures import read_measured
 from service.translation.numbers import NumberInfo
-from service.translation.readings import delimiter_of, number_of
+from service.translation.readings import ReadingsError, number_of, rows_of_csv
 
 _NONE = np.zeros((0, 0))
 
@@ -88,15 +86,10 @@ def _values(
 
 def _of_csv(collector: Collector, text: str, numbers: Sequence[NumberInfo], settings: Settings) -> FloatArray:
     path: Path = ("cases", "csv")
-    delimiter = delimiter_of(text)
     try:
-        rows = [
-            row
-            for row in csv.reader(io.StringIO(text, newline=""), delimiter=delimiter, strict=True)
-            if any(entry.strip() for entry in row)
-        ]
-    except csv.Error:
-        collector.add(path, "The text is not readable as CSV; leave quotation marks out.", "csv")
+        rows, decimal_comma = rows_of_csv(text)
+    except ReadingsError as error:
+        collector.add(path, str(error), "csv")
         return _NONE
     names = [entry.strip() for entry in rows[0]] if rows else []
     wanted = [info.name for info in numbers]
@@ -112,7 +105,7 @@ def _of_csv(collector: Collector, text: str, numbers: Sequence[NumberInfo], sett
     faults = 0
     cases = np.full((len(rows) - 1, len(wanted)), UNREAD)
     for number, row in enumerate(rows[1:], start=2):
-        values = [number_of(entry.strip(), delimiter != ",") for entry in row]
+        values = [number_of(entry.strip(), decimal_comma) for entry in row]
         if len(row) != len(names):
             fault = f"Row {number} has {len(row)} entries; the first row has {len(names)}."
         elif None in values:

@@ -39,15 +39,7 @@ def readings_of_csv(text: str) -> Readings:
 
     Raises ReadingsError, with row and column counted from 1 as a spreadsheet shows them.
     """
-    delimiter = delimiter_of(text)
-    try:
-        rows = [
-            row
-            for row in csv.reader(io.StringIO(text, newline=""), delimiter=delimiter, strict=True)
-            if any(entry.strip() for entry in row)
-        ]
-    except csv.Error:
-        raise ReadingsError("The text is not readable as CSV; leave quotation marks out.") from None
+    rows, decimal_comma = rows_of_csv(text)
     if len(rows) < 3 or len(rows[0]) < 3:
         raise ReadingsError(
             "The text needs a first row with at least two places on the second axis and at least two more "
@@ -57,7 +49,6 @@ def readings_of_csv(text: str) -> Readings:
     for number, row in enumerate(rows, start=1):
         if len(row) != width:
             raise ReadingsError(f"Row {number} has {len(row)} entries; the first row has {width}.")
-    decimal_comma = delimiter != ","
     second = [_place(entry, 1, column, decimal_comma) for column, entry in enumerate(rows[0][1:], start=2)]
     first = [_place(row[0], number, 1, decimal_comma) for number, row in enumerate(rows[1:], start=2)]
     table = [
@@ -67,10 +58,22 @@ def readings_of_csv(text: str) -> Readings:
     return Readings(first, second, np.array(table))
 
 
-def delimiter_of(text: str) -> str:
-    """A semicolon or tab in the first row separates; otherwise a comma does."""
+def rows_of_csv(text: str) -> tuple[list[list[str]], bool]:
+    """Rows of entries that are not all empty, and whether a comma in a number is a decimal one.
+
+    A semicolon or tab in the first row separates; otherwise a comma does. Raises ReadingsError.
+    """
     first_row = text.lstrip("\r\n").partition("\n")[0]
-    return next((sign for sign in ("\t", ";") if sign in first_row), ",")
+    delimiter = next((sign for sign in ("\t", ";") if sign in first_row), ",")
+    try:
+        rows = [
+            row
+            for row in csv.reader(io.StringIO(text, newline=""), delimiter=delimiter, strict=True)
+            if any(entry.strip() for entry in row)
+        ]
+    except csv.Error:
+        raise ReadingsError("The text is not readable as CSV; leave quotation marks out.") from None
+    return rows, delimiter != ","
 
 
 def number_of(entry: str, decimal_comma: bool) -> float | None:
