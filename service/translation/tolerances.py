@@ -17,12 +17,10 @@ from service.analysis.propagation import (
     Probability,
     Propagation,
     Sampling,
-    VarianceIndices,
-    cases_of_indices,
     propagate,
-    variance_indices,
 )
 from service.analysis.stack_up import Corners, StackUp, most_cases_of_corners
+from service.analysis.variance_indices import VarianceIndices, cases_of_indices, variance_indices
 from service.models import tolerances as models
 from service.translation.analysis import Analysis, AnalysisCall, Prepared
 from service.translation.answers import number_or_none

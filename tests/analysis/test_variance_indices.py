@@ -1,0 +1,68 @@
+"""Sobol indices, against a function whose indices are known in closed form, and against scipy."""
+
+from __future__ import annotations
+
+import numpy as np
+from scipy import stats
+
+from service.analysis.distributions import uniform
+from service.analysis.evaluations import FloatArray
+from service.analysis.variance_indices import cases_of_indices, variance_indices
+from tests.analysis.formulas import Counted
+
+
+def ishigami(x: FloatArray, y: FloatArray, z: FloatArray) -> FloatArray:
+    return np.sin(x) + 7 * np.sin(y) ** 2 + 0.1 * z**4 * np.sin(x)
+
+
+ISHIGAMI_SPREADS = [uniform(-np.pi, np.pi)] * 3
+
+
+def test_indices_of_the_ishigami_function() -> None:
+    """First 0.3139, 0.4424, 0; total 0.5576, 0.4424, 0.2437 (a = 7, b = 0.1; Saltelli et al. 2008, from memory).
+
+    The closed forms: V = a^2/8 + b pi^4/5 + b^2 pi^8/18 + 1/2.
+    """
+    pi, a, b = np.pi, 7, 0.1
+    size = a**2 / 8 + b * pi**4 / 5 + b**2 * pi**8 / 18 + 0.5
+    first = np.array([0.5 * (1 + b * pi**4 / 5) ** 2, a**2 / 8, 0]) / size
+    total = first + np.array([1, 0, 1]) * b**2 * pi**8 * (1 / 18 - 1 / 50) / size
+    np.testing.assert_allclose(first, [0.3139, 0.4424, 0], atol=5e-5)
+    np.testing.assert_allclose(total, [0.5576, 0.4424, 0.2437], atol=5e-5)
+
+    evaluate = Counted([ishigami, lambda x, y, z: 0 * x + 3])
+    found = variance_indices(evaluate, ISHIGAMI_SPREADS, 4096, seed=1)
+    # Plain sampling of as many has a standard error of about 1 / sqrt(4096), which is 0.016.
+    np.testing.assert_allclose(found.first.value[0], first, rtol=0, atol=0.016)
+    np.testing.assert_allclose(found.total.value[0], total, rtol=0, atol=0.016)
+    assert np.all((found.first.low[0] <= first) & (first <= found.first.high[0]))
+    assert np.all((found.total.low[0] <= total) & (total <= found.total.high[0]))
+    np.testing.assert_array_equal(found.total.value[1], 0)
+    assert found.n_cases == evaluate.n_cases == cases_of_indices(4096, 3)
+
+
+def test_indices_are_those_of_scipy_on_the_same_cases() -> None:
+    evaluate = Counted([ishigami])
+    asked: list[FloatArray] = []
+
+    def watched(cases: FloatArray, *, accuracy: float | None = None):  # type: ignore[no-untyped-def]
+        asked.append(cases)
+        return evaluate(cases)
+
+    found = variance_indices(watched, ISHIGAMI_SPREADS, 256, seed=5)
+    values = ishigami(*np.concatenate(asked).T).reshape(5, 1, 256)
+    expected = stats.sobol_indices(func={"f_A": values[0], "f_B": values[1], "f_AB": values[2:]}, n=256)
+    np.testing.assert_allclose(found.first.value[0], expected.first_order, rtol=1e-9, atol=1e-12)
+    np.testing.assert_allclose(found.total.value[0], expected.total_order, rtol=1e-9, atol=1e-12)
+
+
+def test_indices_do_without_rows_that_failed() -> None:
+    found = variance_indices(Counted([ishigami], fails=lambda x, y, z: x > 3.1), ISHIGAMI_SPREADS, 512, seed=1)
+    assert 0 < found.n_left_out < 30
+    np.testing.assert_allclose(found.first.value[0], [0.3139, 0.4424, 0], atol=0.06)
+
+
+def test_indices_of_nothing_but_failures_are_no_numbers() -> None:
+    found = variance_indices(Counted([ishigami], fails=lambda x, y, z: x > -9), ISHIGAMI_SPREADS, 16)
+    assert found.n_left_out == 16
+    assert np.all(np.isnan(found.total.value))
