@@ -11,6 +11,7 @@ from typing import Any
 from fastapi.sse import format_sse_event
 from pydantic_core import to_json
 
+from service.refusals import UnknownStudy
 from service.studies.store import Study
 
 # How often a stream and a client who waits look for news.
@@ -74,7 +75,11 @@ async def events(study_id: str, show: ShowStudy, last_seen: int) -> AsyncIterato
     """
     said = time.monotonic()
     while True:
-        study, shown = await asyncio.to_thread(show, study_id)
+        try:
+            study, shown = await asyncio.to_thread(show, study_id)
+        except UnknownStudy:
+            # Deleted since.
+            return
         if study.revision > last_seen:
             last_seen, said = study.revision, time.monotonic()
             yield format_sse_event(data_str=to_json(shown).decode(), event=study.state, id=str(study.revision))

@@ -96,9 +96,9 @@ class Acceptance:
 class Study:
     """A study as it stands.
 
-    attempt: how often it was begun. revision: grows with every change. created, started, ended: seconds since 1970.
-    done, failed: cases with an outcome, and those of them without results. seconds: what workers spent on them.
-    fault: why it failed, with `code` and `message`.
+    attempt: names the present try, and grows with each. revision: grows with every change. created, started, ended:
+    seconds since 1970. done, failed: cases with an outcome, and those of them without results. seconds: what workers
+    spent on them. fault: why it failed, with `code` and `message`.
     """
 
     study_id: str
@@ -185,19 +185,23 @@ class StudyStore:
             if known is not None and known.state in ("waiting", "running", "finished"):
                 return known
             self._check_queue()
+            now = time.time()
+            # By the clock, so that a study that was forgotten and comes in again has no try of the same name.
+            attempt = int(1000 * now)
             if known is not None:
+                self._check_room(max(0, new.reserved - self._one("SELECT size FROM study WHERE id = ?", new.study_id)))
                 self._execute(
-                    "UPDATE study SET state = 'waiting', attempt = attempt + 1, revision = revision + 1, "
+                    "UPDATE study SET state = 'waiting', attempt = MAX(attempt + 1, ?), revision = revision + 1, "
                     "started = NULL, ended = NULL, fault = NULL WHERE id = ?",
-                    new.study_id,
+                    *(attempt, new.study_id),
                 )
             else:
                 self._check_room(len(new.question) + new.reserved)
                 self._execute(
-                    "INSERT INTO study SELECT ?, COALESCE(MAX(position), 0) + 1, ?, ?, ?, ?, ?, ?, ?, 'waiting', 1, 1, "
+                    "INSERT INTO study SELECT ?, COALESCE(MAX(position), 0) + 1, ?, ?, ?, ?, ?, ?, ?, 'waiting', ?, 1, "
                     "?, NULL, NULL, 0, 0, 0.0, ?, NULL FROM study",
                     *(new.study_id, new.name, new.question, new.release, _columns_text(new.columns), new.chunk_size),
-                    *(new.expected, new.reserved, time.time(), len(new.question)),
+                    *(new.expected, new.reserved, attempt, now, len(new.question)),
                 )
             return self._known(new.study_id)
 
@@ -291,18 +295,21 @@ class StudyStore:
         self.kept = Kept(kept.cases + count, kept.failed + failed, kept.seconds + seconds)
 
     def finish(self, study_id: str, content: bytes) -> None:
-        """Keep the answer of a study, which is finished with it. What was reserved beyond its size is free again."""
+        """Keep the answer of a study, which is finished with it, unless it was cancelled in the last moment."""
         with self._change():
+            if self._known(study_id).is_over:
+                return
             self._execute("INSERT OR REPLACE INTO answer VALUES (?, ?)", study_id, content)
             self._execute("UPDATE study SET size = size + ? WHERE id = ?", len(content), study_id)
             self._end(study_id, "finished")
 
     def fail(self, study_id: str, code: str, message: str) -> None:
-        """End a study that cannot go on. code: a short word for programs. message: a sentence."""
+        """End a study that cannot go on, unless it is over. code: a short word for programs. message: a sentence."""
         with self._change():
-            self._execute(
-                "UPDATE study SET fault = ? WHERE id = ?", json.dumps({"code": code, "message": message}), study_id
-            )
+            if self._known(study_id).is_over:
+                return
+            fault = json.dumps({"code": code, "message": message})
+            self._execute("UPDATE study SET fault = ? WHERE id = ?", fault, study_id)
             self._end(study_id, "failed")
 
     def cancel(self, study_id: str) -> Study | None:

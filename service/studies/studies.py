@@ -89,6 +89,7 @@ class Studies:
         study = store.study(read.study_id)
         if study is None or study.state in ("cancelled", "failed"):
             study = store.accept(acceptance(read, self._settings, keep_going))
+        if study.state == "waiting":
             self._engine.submit(study.study_id, study.attempt)
         return study
 
@@ -186,6 +187,8 @@ class Studies:
 
     def _run(self, study_id: str, attempt: int) -> None:
         """Run one attempt of a study to its end, in a thread of the engine."""
+        if self._stopping.is_set():
+            raise Stopping
         store = self._opened()
         run = self._run_of(study_id)
         with run.turn:

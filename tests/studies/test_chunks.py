@@ -250,7 +250,7 @@ def test_store_bounds_how_many_studies_wait(path: Path) -> None:
     with pytest.raises(QueueFull, match="2 studies wait already"):
         store.accept(acceptance("c"))
     assert store.accept(acceptance("a")) == first
-    store.begin("a", 1)
+    store.begin("a", first.attempt)
     store.accept(acceptance("c"))
     assert [study.study_id for study in store.newest(2)] == ["c", "b"]
     assert [study.study_id for study in store.unfinished()] == ["a", "b", "c"]
@@ -262,6 +262,14 @@ def test_attempt_of_a_study_that_was_cancelled_since_is_not_begun(store: StudySt
     store.cancel("s")
     assert store.begin("s", study.attempt) is None
     again = store.accept(acceptance("s"))
-    assert again.attempt == study.attempt + 1
+    assert again.attempt > study.attempt
     assert store.begin("s", study.attempt) is None
     assert store.begin("s", again.attempt) is not None
+    # Cancelled while its answer was on the way.
+    store.cancel("s")
+    store.finish("s", b"answer")
+    store.fail("s", "code", "Sentence.")
+    over = store.study("s")
+    assert over is not None
+    assert (over.state, over.fault) == ("cancelled", None)
+    assert store.answer("s") is None

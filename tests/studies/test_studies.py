@@ -110,7 +110,7 @@ async def test_table_is_the_same_in_every_form(studies: httpx.AsyncClient) -> No
 
 
 async def test_cancelled_study_keeps_its_cases_and_goes_on_when_it_is_posted_again(studies: httpx.AsyncClient) -> None:
-    study = cases_of(coefficients(800))
+    study = cases_of(coefficients(400))
     address = (await studies.post("/v1/studies", json=study)).headers["location"]
     async for done in progress_of(studies, address):
         if done > 0:
@@ -120,22 +120,26 @@ async def test_cancelled_study_keeps_its_cases_and_goes_on_when_it_is_posted_aga
     assert cancelled.json()["ended"] is not None
     check_problem_document(await studies.get(f"{address}/answer"), 409)
     partial = (await studies.get(f"{address}/results")).json()
-    assert 0 < len(partial["case"]) < 800
+    assert 0 < len(partial["case"]) < 400
     assert (await studies.post(f"{address}/cancel")).json()["state"] == "cancelled"
 
     shown = await run_to_end(studies, study)
     assert shown["state"] == "finished"
     whole = (await studies.get(f"{address}/results")).json()
-    assert whole["case"] == list(range(800))
+    assert whole["case"] == list(range(400))
     for index, case in enumerate(partial["case"]):
         assert partial["columns"][0]["values"][index] == whole["columns"][0]["values"][case]
     # Each case was computed once, in the first attempt or in the second.
-    assert (await studies.get("/v1/diagnostics")).json()["studies"]["cases"] == 800
+    assert (await studies.get("/v1/diagnostics")).json()["studies"]["cases"] == 400
 
     assert (await studies.delete(address)).status_code == 204
     check_problem_document(await studies.get(address), 404)
     check_problem_document(await studies.delete(address), 404)
     assert (await studies.get("/v1/diagnostics")).json()["studies"]["size"] == 0
+    # What is forgotten is computed again.
+    shown = await run_to_end(studies, cases_of(coefficients(2), "another wall"))
+    assert (await studies.delete(shown["answer"].removesuffix("/answer"))).status_code == 204
+    assert (await run_to_end(studies, cases_of(coefficients(2), "another wall")))["state"] == "finished"
 
 
 async def progress_of(client: httpx.AsyncClient, address: str) -> AsyncIterator[int]:
@@ -149,7 +153,7 @@ async def progress_of(client: httpx.AsyncClient, address: str) -> AsyncIterator[
 
 
 async def test_study_that_runs_is_not_forgotten(studies: httpx.AsyncClient) -> None:
-    address = (await studies.post("/v1/studies", json=cases_of(coefficients(800)))).headers["location"]
+    address = (await studies.post("/v1/studies", json=cases_of(coefficients(400)))).headers["location"]
     check_problem_document(await studies.delete(address), 409)
     await studies.post(f"{address}/cancel")
     assert (await studies.delete(address)).status_code == 204
@@ -187,7 +191,7 @@ def read_events(text: str) -> Iterator[dict[str, str]]:
 
 
 async def test_unfinished_study_goes_on_with_the_next_start(settings: Settings) -> None:
-    study = cases_of(coefficients(800))
+    study = cases_of(coefficients(400))
     async with open_client(quick(settings)) as client:
         address = (await client.post("/v1/studies", json=study)).headers["location"]
         async for done in progress_of(client, address):
@@ -196,14 +200,14 @@ async def test_unfinished_study_goes_on_with_the_next_start(settings: Settings) 
     async with open_client(quick(settings)) as client:
         # Nobody has to ask for it again.
         before = (await client.get(address)).json()["progress"]["cases_done"]
-        assert 0 < before < 800
+        assert 0 < before < 400
         for _ in range(4):
             shown = (await client.get(address, headers={"Prefer": "wait=30"})).json()
             if shown["ended"]:
                 break
         assert shown["state"] == "finished"
         computed = (await client.get("/v1/diagnostics")).json()["studies"]["cases"]
-        assert before + computed >= 800 > computed
+        assert before + computed >= 400 > computed
     async with open_client(quick(settings)) as client:
         again = await client.post("/v1/studies", json=study)
         assert (again.status_code, again.json()) == (200, shown)
@@ -213,7 +217,7 @@ async def test_unfinished_study_goes_on_with_the_next_start(settings: Settings) 
 async def test_study_begun_by_another_release_is_not_mixed_with_this_one(
     settings: Settings, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    study = cases_of(coefficients(800))
+    study = cases_of(coefficients(400))
     async with open_client(quick(settings)) as client:
         first = (await client.post("/v1/studies", json=study)).json()["study_id"]
     for module in ("reading", "studies"):
