@@ -21,7 +21,7 @@ from service.analysis.evaluations import Evaluate, FloatArray
 from service.analysis.fitting import Found
 from service.analysis.readings import Readings
 from service.analysis.search import MOST_ROUNDS, Question, Solved, solve
-from service.analysis.smoothing import RECTANGULAR, SmoothMap, resolution
+from service.analysis.smoothing import RECTANGULAR, WIDEST, SmoothMap, resolution
 from service.analysis.told_apart import Combination, told_together
 from service.analysis.unknowns import Unknown
 
@@ -153,7 +153,7 @@ class _Statistics:
         self._rows_left, self._rows_slopes = self._weighing.rows(self._look)
         self._spread = _Spread(solved, self._count)
         self._squares = float(self._rows_left @ self._rows_left)
-        self._freedom = self._weighing.count - self._determined()
+        self._freedom = max(self._weighing.count - self._determined(), 0.0)
         self._scale, self._factor = 1.0, float(norm.ppf(0.5 + COVERED / 2))
         if is_scaled:
             if not self._freedom > 0:
@@ -169,17 +169,20 @@ class _Statistics:
 
     def _confounded_with_map(self) -> list[int]:
         """Unknowns that readings do not tell from the map."""
-        count, covariance = self._count, self._spread.covariance
+        count = self._count
         if self._smooth is None or not count:
             return []
-        alone = np.linalg.inv(np.linalg.inv(covariance)[:count, :count])
-        return np.flatnonzero(np.diag(covariance)[:count] > CONFOUNDED * np.diag(alone)).tolist()
+        # With the map as it is found the unknowns have the information of their own slopes.
+        known = np.vstack((self._rows_slopes[:, :count], np.eye(count) / WIDEST))
+        _, sizes, basis = np.linalg.svd(known, full_matrices=False)
+        alone = ((basis / sizes[:, None]) ** 2).sum(axis=0)
+        return np.flatnonzero(np.diag(self._spread.covariance)[:count] > CONFOUNDED * alone).tolist()
 
     def _determined(self) -> float:
         """How many independent numbers readings and prior values determine."""
         if self._solved.smoothed is None:
             return float(self._coordinates.size - len(self._spread.open))
-        return float(np.einsum("ij,ji->", self._spread.gain, self._rows_slopes))
+        return self._solved.smoothed.degrees
 
     def answer(self, profile: bool) -> Calibration:
         """All of it. profile: intervals that follow the sum of squares are wanted."""

@@ -22,6 +22,10 @@ STRAIGHT = 1e-3
 # Rounds in which a map and what it is averaged over settle, and the part of a standard uncertainty they settle to.
 MOST_ROUNDS, ROUND_SETTLED = 10, 1e-3
 
+# Least sum of squares a search is measured by where uncertainties are scaled, in parts of that of the readings: it then
+# settles to 1e-14 of them.
+ROUNDING = 1e-20
+
 # A problem is linear after all if the solution is within this part of a standard uncertainty of what was foreseen.
 TURNED_OUT = 0.01
 
@@ -170,7 +174,7 @@ class _Search:
             self._departure = smoothed.departure
             found = Found(look, *self._rows(look))
             step, smoothed = self._averaged(look)
-            if float(step @ np.linalg.solve(smoothed.covariance, step)) <= ROUND_SETTLED**2:
+            if float(np.linalg.norm(found.slopes @ step)) <= ROUND_SETTLED:
                 found.settled = True
                 return found, smoothed
         found.settled = False
@@ -218,4 +222,6 @@ class _Search:
         if not self._question.is_scaled:
             return 1.0
         freedom = self._weighing.count - self.looker.coordinates.size
-        return squares / freedom if freedom > 0 else 1.0
+        readings = self._question.readings
+        rounding = ROUNDING * float(((readings.values / readings.standard_uncertainties) ** 2).sum())
+        return max(squares / freedom, rounding) if freedom > 0 else 1.0

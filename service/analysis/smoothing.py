@@ -114,13 +114,14 @@ class Smoothed:
 
     step: from the place, shape (size,), unknowns before entries, in coordinates. covariance: of the coordinates that
     are free. gain: how they follow the rows, shape (n_free, n_rows). departure: mean of those averaged over, in typical
-    sizes.
+    sizes. degrees: how many independent numbers the rows tell.
     """
 
     step: FloatArray
     covariance: FloatArray
     gain: FloatArray
     departure: float
+    degrees: float
 
 
 class Smoothing:
@@ -154,13 +155,15 @@ class Smoothing:
         """
         free = np.ones(len(place), dtype=bool) if free is None else free
         slopes, rough, wide, centre = slopes[:, free], self._rough[:, free], self._wide[:, free], place[free]
-        triangle = np.linalg.qr(np.vstack((slopes, wide)), mode="r")
+        orthogonal, triangle = np.linalg.qr(np.vstack((slopes, wide)))
         _, sizes, basis = np.linalg.svd(solve_triangular(triangle, rough.T, trans="T").T, full_matrices=False)
         spread = solve_triangular(triangle, basis.T)
         departures = self._departures
         # The prior is about the map itself, so everything is counted from the place where all coordinates are zero.
         seen = slopes @ centre - left
-        forces = spread.T @ (slopes.T @ seen)
+        # What readings are in the basis: slopes @ spread, without the cancellation.
+        seen_as = orthogonal[: len(slopes)] @ basis.T
+        forces = seen_as.T @ seen
         shares = 1.0 / (1.0 + (sizes / departures[:, None]) ** 2)
         misfits = seen @ seen - (shares * forces**2).sum(axis=1)
         likelihoods = -0.5 * (misfits - np.log(shares).sum(axis=1)) - self._bends * np.log(departures)
@@ -171,10 +174,17 @@ class Smoothing:
         means = (shares * forces) @ spread.T
         mean = weights @ means
         scattered = (means - mean) * np.sqrt(weights)[:, None]
-        within = (spread * (weights @ shares)) @ spread.T
+        share = weights @ shares
+        within = (spread * share) @ spread.T
         step = np.zeros(len(place))
         step[free] = mean - centre
-        return Smoothed(step, within + scattered.T @ scattered, within @ slopes.T, float(weights @ departures))
+        return Smoothed(
+            step,
+            within + scattered.T @ scattered,
+            (spread * share) @ seen_as.T,
+            departure=float(weights @ departures),
+            degrees=float(share @ (seen_as**2).sum(axis=0)),
+        )
 
 
 @dataclass(frozen=True, eq=False)
@@ -207,7 +217,11 @@ def resolution(smooth: SmoothMap, kernels: FloatArray, uncertainties: FloatArray
     with np.errstate(divide="ignore"):
         lengths = np.sqrt(areas / np.maximum(height, 0.0))
     # What is smoothed over more than the face is not seen at all.
-    is_open = (lengths > FAR * np.quantile(lengths, 0.25)) | (lengths > face) | (uncertainties > RECTANGULAR)
+    is_open = (
+        (lengths > FAR * np.sort(lengths, axis=None)[lengths.size // 4])
+        | (lengths > face)
+        | (uncertainties > RECTANGULAR)
+    )
     return Resolution(lengths, float(np.trace(kernels)), is_open)
 
 

@@ -27,6 +27,9 @@ AS_GOOD, AS_ZERO = 1.5, 1e-3
 # A factor is replaced by a simple number no farther off than this part of it.
 NEARLY = 0.2
 
+# Powers above it are no product anyone means.
+MOST_POWER = 10.0
+
 Form = Literal["product", "sum"]
 
 
@@ -71,7 +74,7 @@ def _combination(members: tuple[int, ...], factors: FloatArray, values: FloatArr
     multiples = factors / factors[0]
     powers = multiples * values / values[0]
     forms: list[tuple[Form, FloatArray]] = [("product", powers), ("sum", multiples)]
-    if not np.all(values > 0):
+    if not np.all(values > 0) or np.abs(powers).max() > MOST_POWER:
         forms = forms[1:]
     best = _spread(multiples, root) / float(np.linalg.norm(multiples))
     simple = [(form, rounded) for form, plain in forms if (rounded := _rounded(plain)) is not None]

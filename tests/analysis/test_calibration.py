@@ -313,6 +313,15 @@ def test_nothing_left_over_cannot_scale_uncertainties() -> None:
         calibrate(Counted(lambda p: p), [Unknown("a", 0, 9, 1)], readings_of(np.array([2.0]), 0.1), is_scaled=True)
 
 
+def test_readings_that_are_met_exactly_leave_no_uncertainty_to_scale() -> None:
+    evaluate = Counted(lambda p: np.exp(p[0] * np.array([0.5, 1.0, 1.5])))
+    readings = readings_of(np.exp([0.5, 1.0, 1.5]), 0.1)
+    found = calibrate(evaluate, [Unknown("a", 0, 3, 0.5)], readings, is_scaled=True, profile=True)
+    assert found.settled
+    assert found.estimates[0].value == pytest.approx(1.0, abs=1e-9)
+    assert found.estimates[0].standard_uncertainty < 1e-9
+
+
 def test_an_unknown_at_its_bound_is_said_to_be() -> None:
     found = calibrate(Counted(lambda p: np.array([p[0], p[0] ** 2])), [Unknown("a", 0, 1, 0.5)],
                       readings_of(np.array([1.5, 2.0]), 0.1))  # fmt: skip
