@@ -5,10 +5,11 @@ probability is Clopper and Pearson's (Biometrika 26, 1934), that of a quantile i
 (David and Nagaraja, Order Statistics, 2003, section 7.1), both right for any number of samples; those of mean and
 standard deviation are the usual ones for many. From Sobol sequences and Latin hypercubes independent replicates are
 drawn, and the interval is Student's of the values of the replicates. A probability never has a narrower one than as
-many plain samples that all agree would give, since replicates that all say "always" prove no more.
+many plain samples with the same counts would have, so that replicates that all say "always" do not prove it.
 
 A case whose margin is within its error bound, or that has no results, counts as a failure towards the lower end of the
-interval and as a success towards the upper end; a result widens its quantiles by its error bound in the same manner.
+interval and as a success towards the upper end. All intervals of results are wider by the error bounds, and those of
+quantiles by cases without results, which might lie below all others or above.
 """
 
 from __future__ import annotations
@@ -138,9 +139,7 @@ def spread_of(
         mean = _of_replicates(_mean, pooled, replicates, pooled.mean_bound, confidence)
         deviation = _of_replicates(_deviation, pooled, replicates, pooled.deviation_bound, confidence)
         deviation = replace(deviation, low=np.maximum(deviation.low, 0.0))
-        within = _of_replicates(
-            lambda some: _quantiles(some, levels), pooled, replicates, pooled.largest_bound, confidence
-        )
+        within = _quantiles_of_replicates(pooled, replicates, levels, confidence)
     alone, together = _probabilities(results, has, sampling, limits, confidence)
     nothing = np.full(results.values.shape[1], np.nan)
     counts = Counter(why.code for why in results.failures.values())
@@ -246,6 +245,25 @@ def _of_replicates(
     half = _student(len(each), confidence) * each.std(axis=0, ddof=1)
     middle = each.mean(axis=0)
     return Estimate(value, np.minimum(middle - half, value) - bound, np.maximum(middle + half, value) + bound)
+
+
+def _quantiles_of_replicates(
+    pooled: _Results, replicates: Sequence[_Results], levels: FloatArray, confidence: float
+) -> Estimate:
+    """Cases without results might lie anywhere: if all lie below, a quantile of all is a lower one of the others."""
+
+    def at(moved: FloatArray) -> Estimate:
+        inside = np.clip(moved, 0.0, 1.0)
+        bound = pooled.largest_bound
+        return _of_replicates(lambda some: _quantiles(some, inside), pooled, replicates, bound, confidence)
+
+    lost = pooled.failed / (len(pooled.values) + pooled.failed)
+    left = 1 - lost or 1.0
+    return Estimate(
+        at(levels).value,
+        np.where((levels <= lost)[:, None], -np.inf, at((levels - lost) / left).low),
+        np.where((levels >= 1 - lost)[:, None], np.inf, at(levels / left).high),
+    )
 
 
 def _student(n_replicates: int, confidence: float) -> float:

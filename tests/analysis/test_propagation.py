@@ -133,9 +133,13 @@ def test_failed_cases_are_counted_and_count_both_ways(sampling: Sampling) -> Non
     assert count == pytest.approx(stats.norm.sf(1) * sampling.cases, abs=25)
     assert found.n_cases == sampling.cases
     assert np.all(np.isfinite(found.mean.value))
-    # Whatever those cases had come to, the interval covers that of all cases.
+    # Whatever those cases had come to, the intervals cover what all cases tell.
     assert found.limits.estimate.low[0] <= all_known.limits.estimate.low[0]
     assert found.limits.estimate.high[0] >= all_known.limits.estimate.high[0]
+    assert np.all(found.quantiles.low <= all_known.quantiles.value)
+    assert np.all(found.quantiles.high >= all_known.quantiles.value)
+    assert found.quantiles.low[0, 0] == -np.inf
+    assert found.quantiles.high[2, 0] == np.inf
 
 
 def test_nothing_but_failures_is_no_answer_and_no_error() -> None:
