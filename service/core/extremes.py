@@ -10,7 +10,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -157,7 +157,8 @@ class _Looked:
                 best = self._highest_from(self._starts_at_edges(level, sign), sign, held, best)
         assert best is not None
         if best is held:
-            return best
+            # Nothing was found that goes beyond it by as much as the search can tell.
+            return replace(best, error_bound=best.error_bound + self._search.tolerance)
         return _far_if_only_approached(self._setting, self._region, best, self._search.tolerance, sign)
 
     def _starts_at_edges(self, level: float, sign: float) -> list[Start]:

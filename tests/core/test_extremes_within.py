@@ -65,6 +65,35 @@ def test_wall_that_generates_is_highest_where_its_slope_is_zero(
         assert 0.1 <= place.position[0] <= 0.6
 
 
+def test_peak_just_above_an_interface_is_that_of_the_body_in_one_piece() -> None:
+    # The wall of above in two layers that are bonded perfectly, a little below its peak.
+    layers = [Layer(height, (1.0, 1.0, 2.0), generation=10.0) for height in (0.8993, 0.1007)]
+    solution = solve(Body.stack((1.0, 1.0), layers, WALL.faces))
+    hot = solution.highest_within((0.2, 0.2, 0.5), (0.2, 0.2, 1.0), tolerance=1e-9)
+    assert abs(hot.value - of_wall(0.9)) <= hot.error_bound <= 2e-9
+    assert hot.position[2] == pytest.approx(0.9, abs=1e-4)
+
+
+@pytest.mark.parametrize(
+    ("outflow", "coldest", "distance"),
+    # The values by a fine look at the field alone; at 0.2 the coldest place is nearer than anything that is looked at.
+    [(0.2, 0.0, 0.0), (1.0, -8.696e-8, 1.37e-7), (2.0, -4.479e-4, 3.45e-4), (5.0, -0.12451, 0.0386)],
+)
+def test_coldest_place_beside_a_held_edge_is_found_however_near(
+    outflow: float, coldest: float, distance: float
+) -> None:
+    # Held at 0 on y_high and at 10 on y_low, z_high gives off a little: beside the edge the slope along z_high grows as
+    # the logarithm of the distance, so that the coldest place is off the edge, and all the nearer the less flows off.
+    faces = all_insulated(y_low=held(10.0), y_high=held(0.0), z_high=Inflow(FaceMap.uniform(-outflow)))
+    solution = solve(Body((1.0, 1.0, 0.4), UNIT, faces))
+    cold = solution.lowest_within((0.0, 0.0, 0.0), (1.0, 1.0, 0.4), tolerance=1e-9)
+    away = np.geomspace(1e-9, 0.5, 400)
+    beside = solution.field(Grid(np.array([0.5]), np.sort(1.0 - away), np.array([0.4])), tolerance=1e-10)
+    assert beside.potential.min() >= cold.value - cold.error_bound - beside.potential_bound
+    assert cold.value == pytest.approx(coldest, rel=1e-3, abs=1e-9)
+    assert 1.0 - cold.position[1] == pytest.approx(distance, rel=0.3)
+
+
 # Three layers under a flow of 6 per area from the top, held at 0 below, with contacts between them: the potential rises
 # by 6 R over each resistance R. The middle one generates 4 in all as well, which leaves below: its own rise is that of
 # a flow that grows from 6 to 10, highest on its upper side.
