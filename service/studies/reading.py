@@ -172,13 +172,14 @@ def _seconds_a_case(analysis: Analysis, settings: Settings, keep_going: KeepGoin
         evaluate = evaluator(analysis.plan, settings, in_time)
         spent = []
         for case in wave.cases[:_TRIED]:
-            begun = time.perf_counter()
+            # Of the processor, lest chunks become small because the machine is busy at this moment.
+            begun = time.thread_time()
             try:
                 evaluate(case[np.newaxis], accuracy=wave.accuracy)
             except Interrupted:
                 keep_going()
                 return _TRY_SECONDS
-            spent.append(time.perf_counter() - begun)
+            spent.append(time.thread_time() - begun)
         # The first one also reads what all have in common; of several it is left out.
         return max(spent[1:] or spent, default=0.0)
     return 0.0
