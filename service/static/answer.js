@@ -80,7 +80,7 @@ export function warningsView(answers) {
     .filter((warning) => warning.code !== "unbounded-total")
     .map((warning) => warning.message));
   if (!messages.size) return make("p", { class: "hint" }, "No warnings.");
-  return make("ul", { class: "warnings" }, [...messages].map((message) => make("li", {}, message)));
+  return make("ul", { class: "warnings" }, [...messages].map((message) => make("li", {}, message.replace(/`/g, ""))));
 }
 
 /** The body in a sentence, from the request. */

@@ -24,7 +24,7 @@ export const inLines = (text) => plainly(text).replace(/(.{12,20}?)\s+/g, "$1<br
 export const limitLine = (value, words, along = "y") => ({
   shape: { type: "line", line: { color: COLOURS.limit, width: 1.8, dash: "dash" }, ...(along === "y"
     ? { xref: "paper", x0: 0, x1: 1, y0: value, y1: value } : { yref: "paper", y0: 0, y1: 1, x0: value, x1: value }) },
-  note: { text: plainly(words), showarrow: false, font: { ...FONT, size: 12 }, bgcolor: "rgba(255,254,250,0.85)", borderpad: 1, ...(along === "y"
+  note: { text: plainly(words), showarrow: false, font: { ...FONT, size: 12 }, bgcolor: "rgba(255,254,250,0.6)", borderpad: 1, ...(along === "y"
     ? { xref: "paper", x: 1, xanchor: "right", y: value, yanchor: "bottom", yshift: 2 } : { yref: "paper", y: 1, yanchor: "top", x: value, xanchor: "left", xshift: 3 }) },
 });
 

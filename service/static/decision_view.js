@@ -22,9 +22,9 @@ const VIEWS = {
 };
 
 /** The cases that a picture wants beside its answer: requests, the finer one first, should it take too long. @param {string} call @param {any} asked @param {any} answer */
-export const casesBeside = (call, asked, answer) => (VIEWS[call].also ? [61, 21].map((count) => VIEWS[call].also(asked, answer, count)) : []);
+export const casesBeside = (call, asked, answer) => (VIEWS[call].also ? [49, 17].map((count) => VIEWS[call].also(asked, answer, count)) : []);
 
-/** @param {string} call @param {any} answer @param {any} asked its request @param {any} cases see `casesBeside` */
+/** @param {string} call @param {any} answer @param {any} asked its request @param {any} cases of `casesBeside`: undefined until they come, null if they cannot be had */
 export const answerView = (call, answer, asked, cases) => [
   ...VIEWS[call].view(answer, asked, cases),
   behind("Results as the problem stands", resultsTable(answer.results, answer.units)),

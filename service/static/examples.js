@@ -202,6 +202,9 @@ export const EXAMPLES = [
   },
   { title: "Does the power module hold its limits? (limits)", call: "limits", file: "limits_power_module", view: { plane: { axis: "y", position: "6.5" } } },
   { title: "Crown brick: thicknesses and coolings (table of cases)", call: "cases", file: "cases_crown_brick", view: { plane: { axis: "y", position: "57" } } },
+  { title: "A hundred crown bricks (table of cases, as a study)", call: "cases", file: "studies_crown_bricks", view: { plane: { axis: "y", position: "57" } } },
+  { title: "Sight port: what matters? (sensitivities)", call: "sensitivities", file: "sensitivities_sight_port", view: { plane: { axis: "z", position: "0" } } },
+  { title: "Crown brick as it is made (tolerances)", call: "tolerances", file: "tolerances_crown_brick", view: { plane: { axis: "y", position: "57" } } },
   { title: "Crown brick: how thick? (sizing)", call: "sizing", file: "sizing_crown_brick", view: { plane: { axis: "y", position: "57" } } },
   { title: "Cold plate: where do its parts go? (best values)", call: "best-values", file: "best_values_cold_plate", view: { plane: { axis: "z", position: "0" } } },
   { title: "Throat block: film and conductivity from thermocouples (calibration)", call: "calibration", file: "calibration_throat_block", view: { plane: { axis: "y", position: "40" } } },
@@ -212,8 +215,10 @@ export const EXAMPLES = [
 export async function exampleOf({ problem, view, call, file }) {
   if (!file) return { problem, view };
   const { request } = await askFor(`/static/examples/${file}.json`);
-  const accuracy = accuracyOf(request.accuracy);
-  return { problem: request.problem, view: accuracy ? { ...view, accuracy } : view, asked: request, call };
+  // A study holds its question.
+  const asked = request.question ?? request;
+  const accuracy = accuracyOf(asked.accuracy);
+  return { problem: asked.problem, view: accuracy ? { ...view, accuracy } : view, asked, call };
 }
 
 /** The accuracy of a request as the form has it. */

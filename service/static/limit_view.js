@@ -14,11 +14,10 @@ export function limitsView({ results, limits, all_held: allHeld, units }) {
     return [
       rowHead(limit.name ?? limit.result, limit.name ? `${limit.result} ${asked}` : asked),
       make("td", {}, withUnit(shown(result.value, result.error_bound ?? 0), result.unit), boundLine(result.error_bound, difference)),
-      make("td", {}, withUnit(shown(limit.margin, limit.error_bound ?? 0), difference), boundLine(limit.error_bound, difference)),
-      make("td", {}, heldWord(limit.held)),
+      make("td", {}, heldWord(limit.held), make("span", { class: "margin" }, `by ${withUnit(shown(Math.abs(limit.margin), limit.error_bound ?? 0), difference)}`), boundLine(limit.error_bound, difference)),
     ];
   });
-  return [allView(allHeld, limits), table("Limits: each result as it stands, and how far it is on the right side", ["Limit", "Result", "Margin", "Holds"], rows, "limits"),
+  return [allView(allHeld, limits), table("Each result as it stands, and its margin to the limit", ["Limit", "Result", "Margin"], rows, "limits"),
     otherResults(results, limits, units)].filter(Boolean);
 }
 

@@ -23,7 +23,7 @@ export function curveRequest(request, answer, points) {
 
 /**
  * @param {any} answer of POST /v1/sizing @param {any} asked its request
- * @param {any} cases answer of `curveRequest`, or null if there is none
+ * @param {any} cases answer of `curveRequest`; undefined until it comes, null if it cannot be had
  */
 export function sizingView(answer, asked, cases) {
   const { sizing, results } = answer;
@@ -35,7 +35,7 @@ export function sizingView(answer, asked, cases) {
   pictures.sort(([a], [b]) => Number(b === first) - Number(a === first));
   return [
     verdictOf(sizing, asked),
-    cases ? switched("Result", pictures, "sizing-shown") : null,
+    cases ? switched("Result", pictures, "sizing-shown") : make("p", { class: "hint" }, cases === null ? "There is no picture: its cases would take too long." : "The picture follows."),
     isTarget ? edgesTable(sizing.solutions, number, "Where the result has its value") : intervalsTable(sizing, asked),
     ...sizing.touches.map((touch) => verdict("open", "Touched", `Between ${brief(touch.low)} and ${withUnit(brief(touch.high), number.unit)} the limit on ${touch.result ?? "the result"} is met to within the errors, so it is left open whether it is passed.`)),
     ...sizing.invalid.map((part) => verdict("open", `No result from ${brief(part.low)} to ${withUnit(brief(part.high), number.unit)}`, part.message)),
@@ -71,8 +71,8 @@ function edgeCell(edge, asked) {
 
 function intervalsTable({ intervals, number }, asked) {
   if (!intervals.length) return null;
-  return table("Where all limits hold, and what ends it", ["Interval", headed("From", number.unit), headed("To", number.unit)],
-    intervals.map(({ low, high }, index) => [rowHead(String(index + 1)), edgeCell(low, asked), edgeCell(high, asked)]), "wraps");
+  return table("Where all limits hold, and what ends it", ["", headed("From", number.unit), headed("To", number.unit)],
+    intervals.map(({ low, high }, index) => [rowHead(intervals.length > 1 ? `interval ${index + 1}` : "interval"), edgeCell(low, asked), edgeCell(high, asked)]), "wraps");
 }
 
 const edgesTable = (edges, number, caption) => (edges.length ? table(caption, ["Value", headed(number.name, number.unit), "Slope there"],
@@ -82,7 +82,7 @@ function sizesTable({ each, least, greatest }, number, answer) {
   const best = least === null ? "None of the sizes holds all limits for certain." : `The least that holds is ${withUnit(brief(least), number.unit)}, the greatest ${withUnit(brief(greatest), number.unit)}.`;
   return make("div", {}, table("Sizes that can be had", [headed("Size", number.unit), "Worst margin", "Holds"], each.map((size) => [
     rowHead(brief(size.value), size.message ?? size.result), size.margin === null ? make("td", {}, "\u2013") : marginCell(size, answer), make("td", {}, heldWord(size.held)),
-  ])), make("p", { class: "hint" }, best));
+  ]), "wraps"), make("p", { class: "hint" }, best));
 }
 
 function marginCell(size, { results, units }) {

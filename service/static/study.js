@@ -2,7 +2,7 @@
 
 import { ask, askFor } from "./calls.js";
 import { casesTable } from "./cases_view.js";
-import { showDecision, withCases } from "./decision.js";
+import { showDecision } from "./decision.js";
 import { button, make, verdict } from "./elements.js";
 import { counted } from "./numbers.js";
 import { QUESTIONS } from "./question_form.js";
@@ -148,9 +148,9 @@ async function showTable(study) {
 
 async function showAnswer(study, { answer: address }) {
   try {
-    const { answer, cases } = await withCases(study.call, study.request, await askFor(address), new AbortController().signal);
+    const answer = await askFor(address);
     if (followed !== study) return;
-    showDecision(study.call, study.request, answer, cases);
+    showDecision(study.call, study.request, answer);
     say("The study is finished. Its answer is shown.");
   } catch (failure) {
     part("study-fault").replaceChildren(verdict("bad", "The answer cannot be shown", failure.message));

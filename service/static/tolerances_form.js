@@ -49,7 +49,8 @@ export function ownFields(draft, changed, again) {
         again("tolerances-method");
       },
     }),
-    own.method ? text("count", own.method === "random" ? "How many" : "How many in each of 8", own.method === "sobol" ? "A power of two." : undefined) : null,
+    own.method ? text("count", own.method === "random" ? "How many" : "How many in each replicate", own.method === "sobol" ? "A power of two." : undefined) : null,
+    own.method && own.method !== "random" ? text("replicates", "Replicates (optional)", "Usual: 8.") : null,
     own.method ? text("seed", "Seed (optional)") : null,
     text("indices", "Shares of the spread (optional)", "Base cases, such as 64: a power of two. Tells how much of the spread each number is behind, also together with others.", "whole"),
     longText({

@@ -33,3 +33,9 @@ def sent(page: Page, call: str) -> dict[str, Any]:
     page.get_by_label("Call", exact=True).select_option(call)
     request: dict[str, Any] = json.loads(page.locator("#request-text").text_content() or "")
     return request
+
+
+def answer_now(page: Page) -> None:
+    """Ask the question about numbers and wait until its answer is shown."""
+    page.get_by_role("button", name="Answer now").click()
+    expect(page.get_by_role("status").first).to_have_text("Answered. The answer is shown.", timeout=20_000)

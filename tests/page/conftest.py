@@ -71,8 +71,11 @@ def running(settings: Settings) -> Iterator[str]:
 @pytest.fixture(scope="package")
 def address(tmp_path_factory: pytest.TempPathFactory) -> Iterator[str]:
     """Where the page is served."""
-    store: Path = tmp_path_factory.mktemp("store") / "problems.sqlite3"
-    with running(Settings(store_path=store, worker_threads=2)) as address:
+    folder: Path = tmp_path_factory.mktemp("store")
+    settings = Settings(
+        store_path=folder / "problems.sqlite3", studies_folder=folder / "studies", worker_threads=2, study_workers=1
+    )
+    with running(settings) as address:
         yield address
 
 
