@@ -80,9 +80,9 @@ function numberCard(draft, index, changed, again, question) {
         again(idOf(id, "key"));
       },
     }),
-    number.key.startsWith("at ") ? alsoFields(draft, number, id, spoken, again) : null,
     number.key === OWN ? own : null,
     make("p", { class: "hint whole", "data-now": number.id }),
+    number.key.startsWith("at ") ? alsoFields(draft, number, id, spoken, again) : null,
     ...question.fieldsOfNumber(number, id, spoken, changed, again),
     field({ id: idOf(id, "name"), label: "Name (optional)", spoken, value: number.name, isText: true, onInput: writer(number, "name", changed) }),
     remove,

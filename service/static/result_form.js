@@ -138,7 +138,7 @@ function placeFields(draft, result, id, spoken, changed) {
     },
   }));
   return [
-    make("div", { class: "triple" }, at),
+    make("div", { class: "triple tight" }, at),
     make("p", { class: "hint whole" }, "Also low, middle or high for the sides of the body and the middle between them."),
     result.kind === "potential" ? null : choice({
       id: idOf(id, "along"), label: "Along", spoken, value: result.along, options: [["", "its size"], ...AXES.map((axis) => [axis, axis])],

@@ -21,7 +21,7 @@ export const fieldsOfNumber = () => (number, id, spoken, changed, again) => {
   const zone = texts.zone || "even";
   const shape = texts.shape ?? "";
   return [
-    pick("zone", "Tolerance", [["even", "to either side"], ["sides", "up and down"], ["relative", "in parts of it"], ["none", "that of the spread"]], zone),
+    pick("zone", "Tolerance", [["even", "to either side"], ["sides", "up and down"], ["relative", "in parts of it"], ["none", "that of the spread"]], zone, zone === "sides" ? "whole" : ""),
     zone === "even" ? text("plusMinus", "Plus and minus", { kind }) : null,
     zone === "relative" ? text("relative", "Part, such as 0.05") : null,
     ...(zone === "sides" ? [text("plus", "Plus", { kind }), text("minus", "Minus", { kind })] : []),

@@ -52,7 +52,7 @@ function resultView(answer, stack, index) {
   const indices = answer.variance_indices?.results[index];
   return [
     ranges(stack, spread, limits),
-    spread ? distribution(spread, limits) : null,
+    spread ? distribution(spread, limits, answer.propagation.case_count) : null,
     additions(stack, answer.units),
     indices ? indexBars(indices) : null,
     behind("Stack-up in numbers", stackTable(stack, answer.units), ...(spread ? [spreadTable(spread)] : [])),
@@ -91,9 +91,23 @@ function ranges(stack, spread, limits) {
   });
 }
 
+/** A piece of the picture stands for so many cases at least, or its height would be chance. */
+const FEWEST_IN_A_PIECE = 5;
+
+/** Quantiles far enough apart for so many cases, with the lowest and the highest case at the ends. */
+function stepsOf({ lowest, highest, quantiles }, count) {
+  const least = (FEWEST_IN_A_PIECE - 0.5) / count;
+  const steps = [{ value: lowest, probability: 0 }];
+  for (const quantile of quantiles) {
+    const { value, probability } = quantile;
+    if (value !== null && probability - steps.at(-1).probability >= least && 1 - probability >= least) steps.push(quantile);
+  }
+  return [...steps, { value: highest, probability: 1 }];
+}
+
 /** Parts of a distribution between quantiles, cut where a limit runs through one. */
-function piecesOf({ lowest, highest, quantiles }, limits) {
-  const known = [{ value: lowest, probability: 0 }, ...quantiles.filter(({ value }) => value !== null), { value: highest, probability: 1 }];
+function piecesOf(spread, limits, count) {
+  const known = stepsOf(spread, count);
   const cuts = limits.flatMap(({ at_most: most, at_least: least }) => [most, least]).filter((cut) => cut !== undefined);
   const isMissed = (at) => limits.some(({ at_most: most = Infinity, at_least: least = -Infinity }) => at > most || at < least);
   return known.slice(1).flatMap(({ value: to, probability }, index) => {
@@ -105,8 +119,8 @@ function piecesOf({ lowest, highest, quantiles }, limits) {
   });
 }
 
-function distribution(spread, limits) {
-  const pieces = piecesOf(spread, limits);
+function distribution(spread, limits, count) {
+  const pieces = piecesOf(spread, limits, count);
   if (!pieces.length) return null;
   const lines = linesOf(limits);
   return chart({
