@@ -45,6 +45,8 @@ class AnalysisQuestion(Question):
 class LimitsQuestion(AnalysisQuestion):
     """Whether limits hold."""
 
-    limits: Annotated[Limits, Field(min_length=1)] = Field(
-        description="What the results must not pass.", examples=[[{"result": "probe A", "at_most": 60}]]
+    limits: Limits = Field(
+        default_factory=list,
+        description="What the results must not pass; without any the results alone are told.",
+        examples=[[{"result": "probe A", "at_most": 60}]],
     )

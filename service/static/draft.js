@@ -82,7 +82,7 @@ export function requestsOf(draft) {
     pads: pads ? { problem, accuracy } : null,
     resistances: pads && pads <= MOST_PADS_IN_MATRIX ? { problem, accuracy } : null,
     reach: facesOf(draft).includes(draft.reach.face) ? { problem, evaluate: { ...draft.reach }, accuracy } : null,
-    limits: limits.length ? { problem, results, limits, accuracy } : null,
+    limits: results.length || limits.length ? { problem, results, limits, accuracy } : null,
     decision: draft.question.call ? { problem, results, ...questionOf(draft, limits, note, problem), accuracy } : null,
     places,
   };

@@ -30,7 +30,7 @@ export function limitFields(draft, changed, redraw) {
   );
   const cards = draft.limits.map((_, index) => limitCard(draft, index, changed, again));
   const nothing = draft.limits.length ? [] : [make("p", { class: "hint whole" }, draft.results.length
-    ? "Computed together with the field: whether each holds, and by how much." : "A limit is about a result; name one first.")];
+    ? "What results must not pass. Whether each holds, and by how much, is computed together with the field." : "A limit is about a result; name one first.")];
   return [...nothing, ...cards, add, mistakePlace("add-limit")];
 }
 

@@ -17,6 +17,7 @@ export function limitsView({ results, limits, all_held: allHeld, units }) {
       make("td", {}, heldWord(limit.held), make("span", { class: "margin" }, `by ${withUnit(shown(Math.abs(limit.margin), limit.error_bound ?? 0), difference)}`), boundLine(limit.error_bound, difference)),
     ];
   });
+  if (!limits.length) return [resultsTable(results, units, "Each result with its bound")];
   return [allView(allHeld, limits), table("Each result as it stands, and its margin to the limit", ["Limit", "Result", "Margin"], rows, "limits"),
     otherResults(results, limits, units)].filter(Boolean);
 }

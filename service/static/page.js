@@ -20,11 +20,11 @@ import { bringIntoView, leaveOff, say, tellFailures, waitFor } from "./waiting.j
 import { differenceUnit, inverseOf } from "./words.js";
 
 const part = (name) => document.getElementById(name);
-/** What one press computes; those that have to be there for an answer come first. */
+/** What one press computes; what there is no answer without comes first. */
 const CALLS = {
   fields: "/v1/fields", flows: "/v1/flux-totals", pads: "/v1/pads", limits: "/v1/limits", resistances: "/v1/resistances", reach: "/v1/reach",
 };
-const NEEDED = 4;
+const NEEDED = ["fields", "flows", "pads"];
 /** Drafts of another shape are not read. */
 const KEPT_AS = "stillfield draft 4";
 
@@ -112,8 +112,12 @@ async function compute() {
   const outcomes = await waitFor("Computing.", (signal) =>
     Object.entries(CALLS).map(([name, path]) => (requests[name] ? ask(path, requests[name], signal) : null)));
   if (!outcomes) return;
-  // A body may have a field and yet no resistances or no reach of a face; that is told in their place.
-  const reasons = outcomes.slice(0, NEEDED).flatMap((outcome) => (outcome.status === "rejected" ? [outcome.reason] : []));
+  // A body may have a field and yet no resistances or no reach of a face; that is told in their place. What is wrong in
+  // results and limits as they are typed has to be put right first.
+  const reasons = Object.keys(CALLS).flatMap((name, index) => {
+    const { reason } = outcomes[index];
+    return reason && (NEEDED.includes(name) || (name === "limits" && reason.mistakes?.length)) ? [reason] : [];
+  });
   if (reasons.length) {
     tellFailures(reasons, requests.places);
     return;

@@ -51,7 +51,7 @@ export function resultFields(draft, changed, redraw) {
     "Add a result",
   );
   const nothing = draft.results.length
-    ? [] : [make("p", { class: "hint whole" }, "Single numbers to decide by: a place, a pad, the hottest spot, a flow. None is named yet.")];
+    ? [] : [make("p", { class: "hint whole" }, "Single numbers to decide by: a place, a pad, the hottest spot, a flow. None is named yet. They are computed together with the field.")];
   const cards = draft.results.map((_, index) => resultCard(draft, index, changed, redraw));
   return [...nothing, ...cards, add, mistakePlace("add-result")];
 }

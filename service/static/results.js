@@ -20,7 +20,7 @@ const part = (name) => document.getElementById(name);
  * @property {any} fields answer of POST /v1/fields
  * @property {any} flows answer of POST /v1/flux-totals
  * @property {any} pads answer of POST /v1/pads, null where there are no pads
- * @property {any} limits answer of POST /v1/limits, null where there are no limits
+ * @property {any} limits answer of POST /v1/limits, or the failure of it, or null where no results are named
  * @property {any} resistances answer of POST /v1/resistances, or the failure of it, or null
  * @property {any} askedResistances its request
  * @property {any} reach answer of POST /v1/reach, or the failure of it, or null
@@ -93,7 +93,9 @@ function showPads(pads, words) {
 
 function showLimits(limits) {
   part("limits-sheet").hidden = !limits;
-  if (limits) part("limits").replaceChildren(...limitsView(limits));
+  if (!limits) return;
+  part("limits-heading").textContent = limits.limits?.length === 0 ? "Results" : "Limits";
+  part("limits").replaceChildren(...(limits.limits ? limitsView(limits) : [withoutAnswer(limits)]));
 }
 
 function showResistances(answer, asked, words) {

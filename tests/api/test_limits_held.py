@@ -48,6 +48,12 @@ async def test_a_slab_between_20_and_80_has_50_in_its_middle(client: httpx.Async
     ]
 
 
+async def test_without_limits_the_results_alone_are_told(client: httpx.AsyncClient) -> None:
+    found = await held(client, slab(20, 80), [MIDDLE], [])
+    assert [result["value"] for result in found["results"]] == pytest.approx([50])
+    assert (found["limits"], found["all_held"]) == ([], "yes")
+
+
 async def test_a_limit_at_the_value_itself_is_undecided(client: httpx.AsyncClient) -> None:
     found = await held(client, slab(20, 80), [MIDDLE], [{"result": "middle", "at_most": 50}])
     assert found["limits"][0]["held"] == found["all_held"] == "undecided"

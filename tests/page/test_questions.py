@@ -102,11 +102,14 @@ def test_limits_from_what_is_typed(page: Page) -> None:
     add_result(page, "highest temperature in a part", "face z high")
     # Without a name it is called by what it is.
     expect(page.locator("#results-fields input[id$='-name']")).to_have_attribute("placeholder", "highest, z high")
+    compute(page)
+    sheet = page.locator("#limits-sheet")
+    expect(sheet).to_contain_text("531.3095")
+    expect(sheet.get_by_role("heading")).to_have_text("Results")
     limit(page, "highest, z high", at_most="500")
     with page.expect_response("**/v1/limits") as caught:
         compute(page)
     (answered,) = caught.value.json()["limits"]
-    sheet = page.locator("#limits-sheet")
     expect(sheet).to_contain_text("One limit does not hold")
     assert answered["held"] == "no"
     expect(sheet.get_by_role("row").nth(1)).to_contain_text(f"not heldby {abs(answered['margin']):.6f} K")
