@@ -19,6 +19,12 @@ class ResultAnswer(Model):
         "is known.",
         examples=[4e-8],
     )
+    at: list[float | None] | None = Field(
+        None,
+        description="Of a highest or lowest potential: where it was found, along x, y and z; unit `length`. null where "
+        "it lies infinitely far.",
+        examples=[[20, 30, 0]],
+    )
 
 
 class AnalysisAnswer(Answer):

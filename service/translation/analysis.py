@@ -111,14 +111,18 @@ class Prepared:
             self.absolute,
         )
 
-    def results_shown(self, values: FloatArray, bounds: FloatArray) -> list[dict[str, Any]]:
-        """The results of one case in the words of the answer."""
+    def results_shown(
+        self, values: FloatArray, bounds: FloatArray, places: Mapping[int, Sequence[float]] | None = None
+    ) -> list[dict[str, Any]]:
+        """The results of one case in the words of the answer. places: where extremes lie, by the number of a result."""
+        at = {} if places is None else places
         return [
             {
                 "name": info.name,
                 "unit": info.measure.unit,
                 "value": float(values[index]),
                 "error_bound": answers.number_or_none(bounds[index]),
+                **({"at": answers.place(self.problem, at[index])} if index in at else {}),
             }
             for index, info in enumerate(self.results.infos)
         ]
@@ -197,7 +201,7 @@ def envelope(prepared: Prepared) -> dict[str, Any]:
         "potential": problem.potential,
         "units": answers.units_shown(problem.units),
         "certificate": answers.certificate(problem, solution, np.zeros((0, 3)), prepared.absolute or tolerance),
-        "results": prepared.results_shown(prepared.nominal.values, prepared.nominal.bounds),
+        "results": prepared.results_shown(prepared.nominal.values, prepared.nominal.bounds, prepared.nominal.places),
         "warnings": answers.problem_warnings(problem, solution),
     }
 

@@ -6,9 +6,9 @@ Results that share their work are asked for together: places in one field, means
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Iterator, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from contextlib import contextmanager
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import cached_property
 from typing import TypeVar
 
@@ -58,10 +58,12 @@ class ResultValues:
     """Results of one case in their units, shape (n_results,) each.
 
     bounds: how far off each may be, in the unit of its differences; infinite for a ratio whose divisor may be zero.
+    places: where the highest or lowest potential was found, by the number of the result.
     """
 
     values: FloatArray
     bounds: FloatArray
+    places: Mapping[int, tuple[float, float, float]] = field(default_factory=dict)
 
 
 def evaluate_results(
@@ -129,6 +131,7 @@ class _Evaluation:
         self.keep_going = keep_going
         self.tolerance = _tolerance(solution, relative)
         self.found: list[Bounded | None] = [None] * len(wanted.wanted)
+        self.places: dict[int, tuple[float, float, float]] = {}
 
     def values(self) -> ResultValues:
         """Everything, in the order it was asked for."""
@@ -143,7 +146,7 @@ class _Evaluation:
         values = np.array([number.value for number in numbers])
         if not np.isfinite(values).all():
             raise FloatingPointError("a result is not finite")
-        return ResultValues(values, np.array([number.error_bound for number in numbers]))
+        return ResultValues(values, np.array([number.error_bound for number in numbers]), self.places)
 
     def _known(self, index: int) -> Bounded:
         found = self.found[index]
@@ -188,7 +191,7 @@ class _Evaluation:
         """A result that shares its work with no other."""
         match asked:
             case ExtremeIn():
-                return self._extreme(asked)
+                return self._extreme(index, asked)
             case InflowOf():
                 return self._inflow(index, asked)
             case FlowThrough():
@@ -330,13 +333,14 @@ class _Evaluation:
             return USUAL_OF_FLOWS * (self.solution.span or 1.0)
         return self.tolerance
 
-    def _extreme(self, asked: ExtremeIn) -> Bounded:
+    def _extreme(self, index: int, asked: ExtremeIn) -> Bounded:
         if asked.box is None and self._wants_both:
             place = self._extremes.hottest if asked.sign > 0 else self._extremes.coldest
         else:
             low, high = asked.box or (self.body.begins, self.body.size)
             look = self.solution.highest_within if asked.sign > 0 else self.solution.lowest_within
             place = self._eased(lambda tolerance: look(low, high, tolerance=tolerance, keep_going=self.keep_going))
+        self.places[index] = place.position
         return Bounded(float(place.value), float(place.error_bound))
 
     @cached_property

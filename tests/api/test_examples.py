@@ -102,7 +102,7 @@ def check_alike(found: Any, expected: Any, where: str = "", bound: float = 0.0) 
             is_evidence = key in EVIDENCE or key.endswith(BOUNDS)
             is_evidence |= any(where.startswith(call) and key in keys for call, keys in SEARCHED.items())
             if is_evidence or (
-                key == "at" and (where.startswith(("/extremes", "/reach")) or where.endswith("/largest"))
+                key == "at" and (where.startswith(("/extremes", "/reach", "/results")) or where.endswith("/largest"))
             ):
                 # An extreme's value is determined, its place only to where the field is flat within the bound.
                 assert type(found[key]) is type(expected[key]), f"{where}/{key}"

@@ -103,6 +103,19 @@ async def test_results_of_every_kind_can_be_limited(client: httpx.AsyncClient) -
     assert [result["unit"] for result in found["results"]] == ["degC", "degC", "K", "W", "K/W", "K/mm", "W/m^2", "W"]
 
 
+async def test_an_extreme_says_where_it_was_found(client: httpx.AsyncClient) -> None:
+    problem = sight_port_bar()
+    problem["body"]["size"]["z"] = 80
+    problem["faces"]["z_high"] = {"condition": "flux", "inflow": "20 kW/m^2"}
+    results = [MIDDLE, {"name": "end", "result": "highest", "face": "z_high"}]
+    found = await held(client, problem, results, [{"result": "end", "at_most": 60}])
+    assert "at" not in found["results"][0]
+    x, y, z = found["results"][1]["at"]
+    # The side y_high takes up heat, y_low is insulated; x_low is held and x_high cooled.
+    assert 0 < x < 40
+    assert (y, z) == (60, 80)
+
+
 async def test_wrong_limits_are_pointed_at(client: httpx.AsyncClient) -> None:
     question = {
         "problem": slab(20, 80),
