@@ -74,6 +74,12 @@ on its faces and what is generated inside. Send it with each question, or store 
 `problem_id`. A bare number is in the declared unit of its kind; a text such as `"25 mm"` carries its own. An
 inflow is positive into the body, a flux component along its axis. Every error is a document of RFC 9457 with
 a pointer to each field at fault.
+
+**Decisions** read named `results` off the field, hold them against `limits`, and vary `numbers` of the request that
+JSON pointers lead to. What takes many cases is sent as a **study**, which outlives the request and the service.
+
+The numbers are those of the model that was typed in. Hot surfaces burn and live conductors kill whatever a calculation
+says: check against measurement, keep the margins of the trade, and follow local codes and licensed practice.
 """
 
 
