@@ -13,7 +13,7 @@ import pytest
 ROOT = Path(__file__).parent.parent
 README = (ROOT / "README.md").read_text(encoding="utf-8")
 DEVELOPERS = (ROOT / "DEVELOPERS.md").read_text(encoding="utf-8")
-REQUEST, ANSWER = (json.loads(block) for block in re.findall(r"```json\n(.*?)```", README, flags=re.DOTALL))
+REQUEST, ANSWER, DECISION = (json.loads(block) for block in re.findall(r"```json\n(.*?)```", README, flags=re.DOTALL))
 
 pytestmark = pytest.mark.anyio
 
@@ -42,6 +42,22 @@ async def test_request_in_the_readme_has_the_answer_in_the_readme(client: httpx.
     response = await client.post("/v1/fields", json=REQUEST)
     assert response.status_code == 200
     check_printed(response.json(), ANSWER, "")
+
+
+async def test_size_in_the_readme_is_the_one_that_is_answered(client: httpx.AsyncClient) -> None:
+    response = await client.post("/v1/sizing", json=DECISION | {"problem": REQUEST["problem"]})
+    assert response.status_code == 200
+    hottest = response.json()["results"][0]
+    edge = response.json()["sizing"]["intervals"][0]["low"]
+    said = re.search(
+        r"it is ([\d.]+) degC, at \(([^)]+)\); the limit holds from ([\d.]+) W/\(m\^2 K\) up,\s*known to ([\d.e-]+)\.\s",
+        README,
+    )
+    assert said is not None
+    assert hottest["value"] == pytest.approx(float(said[1]), abs=5e-5)
+    assert hottest["at"] == pytest.approx([float(length) for length in said[2].split(",")], abs=0.1)
+    assert edge["value"] == pytest.approx(float(said[3]), abs=5e-4)
+    assert edge["error_bound"] == pytest.approx(float(said[4]), rel=0.5)
 
 
 async def test_calls_named_in_the_readme_exist(client: httpx.AsyncClient) -> None:

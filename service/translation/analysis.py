@@ -16,7 +16,7 @@ from service.analysis.limits import Limit
 from service.core import Solution
 from service.core.estimate import Estimate
 from service.core.stopping import go_on
-from service.cost import check_cases
+from service.cost import check_cases, check_work
 from service.models import limits as models
 from service.models.numbers import NumberReference
 from service.refusals import Path
@@ -182,6 +182,8 @@ def prepare(
     collector.raise_if_any()
     document = question.model_dump(mode="json", exclude_none=True, by_alias=True)
     document["problem"] = problem.given.model_dump(mode="json", exclude_none=True, by_alias=True)
+    # Before the request as it stands is computed, which may be all the work there is.
+    check_work(estimate_results(results, solution, relative=relative), settings)
     wanted = absolute / solution.span if absolute is not None and solution.span > 0 else relative
     nominal = evaluate_results(results, problem, solution, relative=wanted, keep_going=go_on)
     return Prepared(problem, solution, settings, document, results, nominal, relative, absolute)
