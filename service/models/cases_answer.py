@@ -38,6 +38,7 @@ class LimitColumn(Model):
     result: str = Field(description="The name of the result.", examples=["probe A"])
     at_most: float | None = Field(None, description="The limit above, in the result's unit.", examples=[60])
     at_least: float | None = Field(None, description="The limit below, in the result's unit.", examples=[5])
+    unit_of_margins: str = Field(description="Unit of differences of the result.", examples=["K"])
     margins: list[float | None] = Field(
         description="By how much it holds in each case, negative where it does not; null where there is no result.",
         examples=[[5.8, 6.1]],

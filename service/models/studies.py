@@ -8,7 +8,7 @@ from pydantic import Field
 
 from service.models.analysis_answer import FailureAnswer
 from service.models.base import Model
-from service.models.cases_answer import NumberColumn, ResultColumn
+from service.models.cases_answer import LimitColumn, NumberColumn, ResultColumn
 
 StudyId = Annotated[str, Field(description="Digest of the question and the release.", examples=["7d41" * 16])]
 StateWord = Literal["waiting", "running", "finished", "cancelled", "failed"]
@@ -94,4 +94,5 @@ class StudyTable(Model):
     )
     numbers: list[NumberColumn] = Field(description="The numbers, one column each.")
     columns: list[ResultColumn] = Field(description="The results, one column each.")
+    limits: list[LimitColumn] = Field(description="The limits of the question, one column each.")
     failures: list[FailureAnswer] = Field(description="The cases that could not be computed, and why.")

@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Any
 
 from service.core import Solution
+from service.media import FORMS, Form
 from service.routes.answering import Call
 from service.settings import Settings
 from service.translation.analysis import Analysis, AnalysisCall, check_cost, prepare
@@ -13,13 +15,13 @@ from service.translation.cases import evaluator
 from service.translation.problem import ReadProblem
 
 
-def call_of(kind: AnalysisCall[Any]) -> Call[Any, Analysis]:
-    """The steps of a call whose cases are computed here and now."""
+def call_of(kind: AnalysisCall[Any], forms: Sequence[Form] = FORMS) -> Call[Any, Analysis]:
+    """The steps of a call whose cases are computed here and now. forms: of its answers."""
 
     def read(question: Any, problem: ReadProblem, solution: Solution, settings: Settings) -> Analysis:
         return kind.read(question, prepare(question, problem, solution, settings))
 
-    return Call(read, _check_cost, _answer, has_tolerance=False)
+    return Call(read, _check_cost, _answer, forms, has_tolerance=False)
 
 
 def _check_cost(analysis: Analysis, _: Solution, settings: Settings, __: int) -> None:

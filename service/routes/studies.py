@@ -23,7 +23,7 @@ from service.studies.forms import BINARY_TABLE, CSV_TABLE, FORM_OF_WORD, LINES_T
 from service.studies.progress import ADDRESS, LOOK_EVERY_SECONDS, events, study_shown
 from service.studies.store import Study
 from service.translation.answers import KeepGoing
-from service.translation.table_of_cases import failures_shown
+from service.translation.case_columns import failures_shown
 
 router = APIRouter(prefix="/v1", tags=["studies"], route_class=StrictJsonRoute)
 
@@ -146,8 +146,8 @@ async def get_study(request: Request, study_id: StudyId, prefer: Prefer = None) 
                 CSV_TABLE.media_type: {
                     "schema": {
                         "type": "string",
-                        "description": "RFC 4180: a case a row; each result beside its error bound, empty cells where "
-                        "there is no number.",
+                        "description": "RFC 4180: a case a row; each result beside its error bound, the margin of "
+                        "each limit beside whether it holds, empty cells where there is none.",
                     }
                 },
                 BINARY_TABLE.media_type: _BINARY,
@@ -157,7 +157,7 @@ async def get_study(request: Request, study_id: StudyId, prefer: Prefer = None) 
     },
 )
 async def study_results(request: Request, study_id: StudyId, form_word: FormWord = None) -> Response:
-    """Numbers, results and error bounds of each case that is done, in the order of the cases.
+    """Numbers, results and error bounds of each case that is done, in the order of the cases, and how limits hold.
 
     A case that could not be computed has no results and says why. Cases that are not done yet are left out.
     """

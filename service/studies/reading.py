@@ -5,7 +5,7 @@ from __future__ import annotations
 import hashlib
 import json
 import time
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import Any
@@ -18,13 +18,14 @@ from service.analysis.evaluations import Evaluations, FloatArray
 from service.core.errors import CoreError, Interrupted
 from service.core.stopping import on_behalf_of
 from service.cost import check_work
-from service.models.limits import AnalysisQuestion
+from service.models.limits import AnalysisQuestion, Limit
 from service.refusals import Issue, Refusal, RequestRefused, TooCostly
 from service.settings import Settings
 from service.studies.chunks import chunk_size_for
-from service.studies.store import Acceptance, Column, Columns
+from service.studies.store import Acceptance
 from service.translation.analyses import ANALYSES
 from service.translation.analysis import Analysis, prepare
+from service.translation.case_columns import Columns, columns_of
 from service.translation.cases import evaluator
 from service.translation.problem import canonical, problem_id_of
 from service.translation.solving import Solver, point_into_question
@@ -43,20 +44,20 @@ _TRY_SECONDS = 0.7
 
 @dataclass(frozen=True)
 class ReadStudy:
-    """A study ready to be run. question: its canonical text."""
+    """A study ready to be run. question: its canonical text. limits: those it asks about, which have been read."""
 
     study_id: str
     name: str
     question: bytes
+    limits: Sequence[Limit]
     analysis: Analysis
 
     @property
     def columns(self) -> Columns:
-        """The columns of its table of cases."""
-        plan = self.analysis.plan
-        numbers = (Column(name, unit) for name, unit in zip(plan.names, plan.units, strict=True))
-        infos = self.analysis.prepared.results.infos
-        return Columns(tuple(numbers), tuple(Column(info.name, info.measure.unit) for info in infos))
+        """The columns of its table of cases, with the limits of its question."""
+        plan, prepared = self.analysis.plan, self.analysis.prepared
+        named = tuple(zip(plan.names, plan.units, strict=True))
+        return columns_of(named, prepared, self.limits, prepared.limits(prepared.collector(), self.limits))
 
 
 def read_study(name: str, content: Any, solver: Solver, settings: Settings, keep_going: KeepGoing) -> ReadStudy:
@@ -78,7 +79,8 @@ def read_study(name: str, content: Any, solver: Solver, settings: Settings, keep
             raise
     text = _canonical(question)
     digest = hashlib.sha256("\n".join((name, __version__)).encode() + b"\n" + _named_by_digest(question))
-    return ReadStudy(digest.hexdigest(), name, text, analysis)
+    limits: Sequence[Limit] = getattr(question, "limits", None) or ()
+    return ReadStudy(digest.hexdigest(), name, text, limits, analysis)
 
 
 def acceptance(study: ReadStudy, settings: Settings, keep_going: KeepGoing) -> Acceptance:

@@ -20,7 +20,9 @@ from typing import Any, Literal, Self
 import numpy as np
 
 from service.analysis.evaluations import Evaluations, Failure, FloatArray
+from service.analysis.limits import Limit
 from service.refusals import QueueFull, StoreBusy, StoreFull
+from service.translation.case_columns import Column, Columns, LimitColumn
 
 State = Literal["waiting", "running", "finished", "cancelled", "failed"]
 STATES: tuple[State, ...] = ("waiting", "running", "finished", "cancelled", "failed")
@@ -51,27 +53,6 @@ CREATE TABLE IF NOT EXISTS answer (study TEXT PRIMARY KEY, content BLOB NOT NULL
 
 class NotRepeatable(Exception):
     """A study that was resumed asks for other cases than it did before."""
-
-
-@dataclass(frozen=True)
-class Column:
-    """A number or a result of the table of cases."""
-
-    name: str
-    unit: str
-
-
-@dataclass(frozen=True)
-class Columns:
-    """What the table of cases consists of."""
-
-    numbers: tuple[Column, ...]
-    results: tuple[Column, ...]
-
-    @property
-    def bytes_a_case(self) -> int:
-        """What a case takes: its numbers, and a value and a bound of each result."""
-        return 8 * (len(self.numbers) + 2 * len(self.results))
 
 
 @dataclass(frozen=True)
@@ -321,11 +302,11 @@ class StudyStore:
             self._end(study_id, "cancelled")
             return self._known(study_id)
 
-    def forget(self, study_id: str) -> bool:
-        """Drop everything about a study that is over; False if it is not over."""
+    def forget(self, study_id: str, attempt: int) -> bool:
+        """Drop everything about a study that is over; False if it is not over, or not with this attempt."""
         with self._change():
             study = self._study(study_id)
-            if study is not None and not study.is_over:
+            if study is not None and (not study.is_over or study.attempt != attempt):
                 return False
             self._execute("DELETE FROM study WHERE id = ?", study_id)
             self._execute("DELETE FROM wave WHERE study = ?", study_id)
@@ -456,12 +437,21 @@ def _study_of(row: tuple[Any, ...]) -> Study:
 
 
 def _columns_text(columns: Columns) -> str:
-    return json.dumps([[[column.name, column.unit] for column in part] for part in (columns.numbers, columns.results)])
+    limits = [
+        [column.name, column.limit.result, column.limit.at_most, column.limit.at_least, column.unit_of_margins]
+        for column in columns.limits
+    ]
+    given, found = ([[column.name, column.unit] for column in part] for part in (columns.numbers, columns.results))
+    return json.dumps([given, found, limits])
 
 
 def _columns_of(text: str) -> Columns:
-    numbers, results = ([Column(*column) for column in part] for part in json.loads(text))
-    return Columns(tuple(numbers), tuple(results))
+    given, found, limits = json.loads(text)
+    return Columns(
+        tuple(Column(*column) for column in given),
+        tuple(Column(*column) for column in found),
+        tuple(LimitColumn(name, Limit(*limit), unit) for name, *limit, unit in limits),
+    )
 
 
 def packed(outcome: Evaluations) -> bytes:

@@ -8,6 +8,7 @@ import logging
 import sqlite3
 import threading
 import time
+import weakref
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
@@ -34,14 +35,16 @@ _ENGINE = "engine.sqlite3"
 _CLAIM = "in-use.sqlite3"
 # Studies that were told to stop do so between two steps of the solver.
 _END_SECONDS = 20.0
+# How long one that is to be forgotten is waited for to hand in its last chunks.
+_LAST_CHUNKS_SECONDS = 5.0
 
 
-@dataclass(frozen=True)
+@dataclass(eq=False)
 class _Run:
-    """What the attempts of one study share: they run one after the other, and end when it is cancelled."""
+    """What the attempts of one study share: they run one after the other. cancelled: the last one that has to end."""
 
     turn: threading.Lock = field(default_factory=threading.Lock)
-    is_cancelled: threading.Event = field(default_factory=threading.Event)
+    cancelled: int = 0
 
 
 class _Cancelled(BaseException):
@@ -61,7 +64,8 @@ class Studies:
         self._engine = Engine(self._folder / _ENGINE, settings.studies_running, self._run)
         self._crew = _crew_of(settings)
         self._stopping = threading.Event()
-        self._runs: dict[str, _Run] = {}
+        # Of studies that somebody is at work on.
+        self._runs: weakref.WeakValueDictionary[str, _Run] = weakref.WeakValueDictionary()
 
     def resume(self) -> None:
         """Go on with studies that were not finished when the service ended. Without any nothing is started."""
@@ -105,19 +109,24 @@ class Studies:
         """The study, which does not go on. Raises UnknownStudy."""
         study = _known(self._opened().cancel(study_id))
         if study.state == "cancelled":
-            self._run_of(study_id).is_cancelled.set()
+            self._run_of(study_id).cancelled = study.attempt
         return study
 
     def forget(self, study_id: str) -> None:
         """Drop a study that is over, with all its cases. Raises UnknownStudy and WrongState."""
-        store = self._opened()
+        study = self.study(study_id)
+        if not study.is_over:
+            raise WrongState(f"The study is {study.state}; cancel it first.")
+        run = self._run_of(study_id)
         # One that was cancelled a moment ago still hands in its last chunks.
-        with self._run_of(study_id).turn:
-            _known(store.study(study_id))
-            if not store.forget(study_id):
-                raise WrongState("The study is not over; cancel it first.")
-        with self._lock:
-            self._runs.pop(study_id, None)
+        if not run.turn.acquire(timeout=_LAST_CHUNKS_SECONDS):
+            raise WrongState("The study was cancelled and has not come to its end yet; try again in a moment.")
+        try:
+            # If it was begun again meanwhile, that is another attempt, which nobody wants to have dropped.
+            if not self._opened().forget(study_id, study.attempt):
+                raise WrongState("The study was begun again meanwhile; cancel it first.")
+        finally:
+            run.turn.release()
 
     def answer(self, study_id: str) -> bytes:
         """The answer of a finished study, packed. Raises UnknownStudy and WrongState."""
@@ -192,7 +201,6 @@ class Studies:
         store = self._opened()
         run = self._run_of(study_id)
         with run.turn:
-            run.is_cancelled.clear()
             study = store.begin(study_id, attempt)
             if study is None:
                 return
@@ -200,7 +208,7 @@ class Studies:
             def ask_on() -> None:
                 if self._stopping.is_set():
                     raise Stopping
-                if run.is_cancelled.is_set():
+                if run.cancelled >= attempt:
                     raise _Cancelled
 
             try:

@@ -51,9 +51,14 @@ def _verdicts(margin: FloatArray, bound: FloatArray) -> list[Held]:
 
 def limit_shown(asked: models.Limit, limit: Limit, prepared: Prepared) -> dict[str, Any]:
     """What a limit says, in the unit of its result."""
+    return limit_in_words(asked.name, prepared.results.infos[limit.result].name, limit)
+
+
+def limit_in_words(name: str | None, result: str, limit: Limit) -> dict[str, Any]:
+    """What a limit says, in the unit of its result. name: its own, if it has one. result: that of its result."""
     return {
-        **({"name": asked.name} if asked.name is not None else {}),
-        "result": prepared.results.infos[limit.result].name,
+        **({"name": name} if name is not None else {}),
+        "result": result,
         **({"at_most": limit.at_most} if math.isfinite(limit.at_most) else {}),
         **({"at_least": limit.at_least} if math.isfinite(limit.at_least) else {}),
     }

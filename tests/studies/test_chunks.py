@@ -19,7 +19,8 @@ from service.refusals import QueueFull, StoreFull
 from service.studies.chunk_work import ChunkOutcome
 from service.studies.chunks import DurableEvaluate, TooManyCases, chunk_size_for, chunks_of
 from service.studies.crew import CrewLost, TimeOver, WorkerLost
-from service.studies.store import Acceptance, Column, Columns, NotRepeatable, Study, StudyStore
+from service.studies.store import Acceptance, NotRepeatable, Study, StudyStore
+from service.translation.case_columns import Column, Columns
 
 COLUMNS = Columns((Column("a", "1"), Column("b", "mm")), (Column("sum", "K"),))
 
@@ -230,15 +231,15 @@ def test_empty_wave_is_nothing(store: StudyStore) -> None:
 def test_store_bounds_what_is_kept_and_reserved(path: Path) -> None:
     store = StudyStore(path, 2500, 3)
     store.accept(acceptance("a"))
-    store.accept(acceptance("b"))
+    waits = store.accept(acceptance("b"))
     with pytest.raises(StoreFull, match="needs up to 1002 bytes and 500 are free"):
         store.accept(acceptance("c"))
     store.cancel("a")
     # What was kept free for it is free again.
     store.accept(acceptance("c"))
-    assert store.forget("b") is False
+    assert store.forget("b", waits.attempt) is False
     store.cancel("b")
-    assert store.forget("b") is True
+    assert store.forget("b", waits.attempt) is True
     assert store.study("b") is None
     store.close()
 
@@ -273,3 +274,15 @@ def test_attempt_of_a_study_that_was_cancelled_since_is_not_begun(store: StudySt
     assert over is not None
     assert (over.state, over.fault) == ("cancelled", None)
     assert store.answer("s") is None
+
+
+def test_study_that_was_begun_again_is_not_forgotten_for_its_former_attempt(store: StudyStore) -> None:
+    former = begun(store)
+    store.cancel("s")
+    latter = store.accept(acceptance("s", 16))
+    store.finish("s", b"answer")
+    assert latter.attempt > former.attempt
+    assert not store.forget("s", former.attempt)
+    assert store.answer("s") == b"answer"
+    assert store.forget("s", latter.attempt)
+    assert store.study("s") is None

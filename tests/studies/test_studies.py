@@ -109,8 +109,60 @@ async def test_table_is_the_same_in_every_form(studies: httpx.AsyncClient) -> No
     check_problem_document(await studies.get(address, headers={"Accept": "image/png"}), 406)
 
 
+async def test_table_says_in_every_form_how_the_limits_of_the_question_hold(studies: httpx.AsyncClient) -> None:
+    given = [*coefficients(5), -3.0, 3000.0]
+    study = cases_of(given)
+    study["question"]["limits"] = [
+        {"result": "cold side", "at_most": "300 degC", "at_least": 25},
+        {"name": "=loss", "result": "loss", "at_most": 2000},
+    ]
+    shown = await run_to_end(studies, study)
+    address = shown["results"]
+    table = (await studies.get(address)).json()
+    StudyTable.model_validate(table)
+    assert table["limits"] == (await studies.get(shown["answer"])).json()["limits"]
+    limit, named = table["limits"]
+    assert (limit["result"], limit["at_most"], limit["at_least"]) == ("cold side", 300, 25)
+    assert (limit["unit_of_margins"], named["name"], named["unit_of_margins"]) == ("K", "=loss", "W")
+    cold = [cold_side(value) for value in given]
+    for case in (0, 1, 2, 3, 4, 6):
+        expected = min(300 - cold[case], cold[case] - 25)
+        assert abs(limit["margins"][case] - expected) <= limit["error_bounds"][case] + 1e-10
+    assert limit["held"] == ["no", "no", "no", "no", "no", None, "yes"]
+    assert limit["margins"][5] is limit["error_bounds"][5] is named["held"][5] is None
+
+    lines = (await studies.get(address, headers={"Accept": "application/jsonl"})).text.splitlines()
+    told = [json.loads(line)["limits"] for line in lines]
+    assert [one[0]["margin"] for one in told] == limit["margins"]
+    assert [one[1]["held"] for one in told] == named["held"]
+
+    text = await studies.get(address, params={"format": "csv"})
+    head, *rows = read_csv(text.text)
+    assert head[6:10] == [
+        "cold side at least 25 degC and at most 300 degC margin [K]",
+        "cold side at least 25 degC and at most 300 degC held",
+        "'=loss margin [W]",
+        "'=loss held",
+    ]
+    assert [float(row[6]) if row[6] else None for row in rows] == limit["margins"]
+    assert [row[9] or None for row in rows] == named["held"]
+    # While a client waits the table is the same.
+    at_once = await studies.post("/v1/cases", json=study["question"], headers={"Accept": "text/csv"})
+    assert at_once.headers["content-type"].startswith("text/csv")
+    assert at_once.content == text.content
+
+    answer = await studies.get(address, headers={"Accept": "application/vnd.stillfield.npz"})
+    with np.load(io.BytesIO(answer.content)) as archive:
+        shown = json.loads(str(archive["answer"]))["limits"][0]
+        assert np.nan_to_num(archive[shown["margins"]], nan=7.0).tolist() == [
+            7.0 if margin is None else margin for margin in limit["margins"]
+        ]
+        assert shown["held"] == limit["held"]
+
+
 async def test_cancelled_study_keeps_its_cases_and_goes_on_when_it_is_posted_again(studies: httpx.AsyncClient) -> None:
     study = cases_of(coefficients(400))
+    study["question"]["limits"] = [{"result": "cold side", "at_most": 300}]
     address = (await studies.post("/v1/studies", json=study)).headers["location"]
     async for done in progress_of(studies, address):
         if done > 0:
@@ -120,6 +172,7 @@ async def test_cancelled_study_keeps_its_cases_and_goes_on_when_it_is_posted_aga
     assert cancelled.json()["ended"] is not None
     check_problem_document(await studies.get(f"{address}/answer"), 409)
     partial = (await studies.get(f"{address}/results")).json()
+    assert [len(column["held"]) for column in partial["limits"]] == [len(partial["case"])]
     assert 0 < len(partial["case"]) < 400
     assert (await studies.post(f"{address}/cancel")).json()["state"] == "cancelled"
 
@@ -152,9 +205,16 @@ async def progress_of(client: httpx.AsyncClient, address: str) -> AsyncIterator[
     pytest.fail("The study came to nothing.")
 
 
-async def test_study_that_runs_is_not_forgotten(studies: httpx.AsyncClient) -> None:
-    address = (await studies.post("/v1/studies", json=cases_of(coefficients(400)))).headers["location"]
+async def test_study_that_waits_or_runs_is_not_forgotten(studies: httpx.AsyncClient) -> None:
+    address = (await studies.post("/v1/studies", json=cases_of(coefficients(2000)))).headers["location"]
     check_problem_document(await studies.delete(address), 409)
+    async for done in progress_of(studies, address):
+        if done > 0:
+            break
+    # At once: a client that waited for the end would find the answer gone with the study.
+    document = check_problem_document(await studies.delete(address), 409)
+    assert document["detail"] == "The study is running; cancel it first."
+    assert (await studies.get(address)).json()["state"] == "running"
     await studies.post(f"{address}/cancel")
     assert (await studies.delete(address)).status_code == 204
 
