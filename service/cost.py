@@ -135,4 +135,3 @@ def check_cases(count: int, a_case: Sequence[Estimate], settings: Settings) -> N
             work,
             settings.cost_multiplications,
         )
-    check_work(a_case, settings)

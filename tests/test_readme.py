@@ -50,7 +50,8 @@ async def test_size_in_the_readme_is_the_one_that_is_answered(client: httpx.Asyn
     hottest = response.json()["results"][0]
     edge = response.json()["sizing"]["intervals"][0]["low"]
     said = re.search(
-        r"it is ([\d.]+) degC, at \(([^)]+)\); the limit holds from ([\d.]+) W/\(m\^2 K\) up,\s*known to ([\d.e-]+)\.\s",
+        r"it is ([\d.]+) degC, at \(([^)]+)\); the limit holds from ([\d.]+) W/\(m\^2 K\) up,\s*"
+        r"known to ([\d.e-]+)\.\s",
         README,
     )
     assert said is not None
