@@ -19,7 +19,7 @@ export function calibrationView(answer) {
     consistencyVerdict(found.consistency),
     ...found.known_together.map(togetherVerdict),
     found.unknowns.length ? unknownsTable(found) : null,
-    ...found.unknowns.flatMap(cautions),
+    ...found.unknowns.filter(({ name }) => !found.known_together.some(({ numbers, are_told: told }) => !told && numbers.includes(name))).flatMap(cautions),
     found.smooth_map ? mapView(found.smooth_map, units, PHYSICS[answer.potential]) : null,
     leftOver(found.readings),
     contributions.length ? switched("What the readings contribute to", contributions, "calibration-shown") : null,

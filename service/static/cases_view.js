@@ -1,10 +1,12 @@
 /** A table of cases: results over the numbers as a picture, and every case in a table. */
 
 import { axis, behind, chart, COLOURS, limitLine } from "./charts.js";
+import { gridOf, mapOverBoth } from "./cases_map.js";
 import { make, verdict } from "./elements.js";
 import { brief, counted, pretty, shown } from "./numbers.js";
 import { switched } from "./switched.js";
 import { headed, heldWord, rowHead, table, valueCell } from "./tables.js";
+import { PHYSICS } from "./words.js";
 
 /** Longer tables are for programs, and are saved. */
 const MOST_ROWS = 200;
@@ -12,12 +14,14 @@ const MOST_ROWS = 200;
 /** @param {any} answer of POST /v1/cases */
 export function casesView(answer) {
   const { numbers, columns, limits, failures } = answer;
-  const views = columns.flatMap((column) => numbers.map((number, index) => [
+  const grid = gridOf(numbers);
+  const maps = grid ? columns.map((column) => [`${column.name} over both`, () => [mapOverBoth(answer, column, grid, PHYSICS[answer.potential])]]) : [];
+  const curves = columns.flatMap((column) => numbers.map((number, index) => [
     numbers.length > 1 ? `${column.name} over ${number.name}` : column.name, () => [picture(answer, column, number, index)],
   ]));
   return [
     ...summary(answer),
-    switched("Picture", views, "cases-shown"),
+    switched("Picture", grid && Math.min(grid.across.length, grid.up.length) > MOST_CURVES ? [...maps, ...curves] : [...curves, ...maps], "cases-shown"),
     failures.length ? failureList(failures) : null,
     behind(`All ${counted(answer.case_count)} cases`, casesTable({ numbers, columns, limits })),
   ].filter(Boolean);

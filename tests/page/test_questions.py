@@ -21,9 +21,9 @@ FILM = "film coefficient of face z high"
 HOT_MEAN = (1480 + 1485 + 1483 + 1488 + 2 * (1492 + 1496 + 1501 + 1494) + 4 * 1540) / 16
 
 
-def cold_mean(thickness: float) -> float:
+def cold_mean(thickness: float, film: float = 14) -> float:
     """The mean of the brick's cold side in degC, in closed form: means follow the field of one dimension."""
-    return 45 + (HOT_MEAN - 45) / (1 + 14 * thickness / 1000 / 2.1)
+    return 45 + (HOT_MEAN - 45) / (1 + film * thickness / 1000 / 2.1)
 
 
 def add_result(page: Page, what: str, where: str | None = None, **typed: str) -> None:
@@ -180,6 +180,26 @@ def test_bars_rank_what_matters(page: Page) -> None:
     effects = sorted((change * loss[number] for number, change in changes.items()), key=abs)
     assert [size for _, size in drawn] == pytest.approx(effects)
     assert drawn[-1][0] == "thermal conductivity 1 %, 0.021 W/(m K) more"
+
+
+def test_every_combination_of_two_numbers_is_drawn_as_a_map(page: Page) -> None:
+    name_brick_results(page)
+    limit(page, "cold side", at_most="500")
+    page.locator("#question").select_option("cases")
+    add_number(page, "length along z", values="200; 300; 400")
+    add_number(page, FILM, values="10 to 20 in 3")
+    answer_now(page)
+    expected = [[cold_mean(thickness, film) for thickness in (200, 300, 400)] for film in (10, 15, 20)]
+    held = sum(value <= 500 for row in expected for value in row)
+    expect(page.locator("#decision")).to_contain_text(f"Holds for certain in {held} of 9 cases")
+    page.locator("#cases-shown").select_option(label="cold side over both")
+    drawn = page.locator("#decision .chart")
+    expect(drawn.locator(".main-svg").first).to_be_visible()
+    tinted, _, heavy, _ = drawn.evaluate("({ data }) => data")
+    assert [value for row in tinted["z"] for value in row] == pytest.approx(
+        [value for row in expected for value in row]
+    )
+    assert (heavy["contours"]["start"], heavy["contours"]["end"]) == (500, 500)
 
 
 def test_sizing_is_drawn_with_its_limit_and_where_it_holds(page: Page) -> None:
