@@ -8,7 +8,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from service.analysis.distributions import Distribution, numbers_of, parts
-from service.analysis.evaluations import Evaluate, FloatArray
+from service.analysis.evaluations import Evaluate, Evaluations, FloatArray
+from service.analysis.interpolants import BoolArray
 from service.analysis.propagation import Estimate, in_waves
 
 # Resamples for the intervals.
@@ -17,7 +18,9 @@ RESAMPLES = 500
 
 @dataclass(frozen=True)
 class VarianceIndices:
-    """Sobol indices of every result by every number, arrays of shape (n_results, n_numbers); 0 where nothing varies.
+    """Sobol indices of every result by every number, arrays of shape (n_results, n_numbers).
+
+    NaN where a result does not vary beyond what its values may be off.
 
     first: the part of the variance that goes if the number alone is fixed. total: the part that stays if all others
     are. n_cases: computed; n_left_out: rows of the base sample that were left out, since a case of theirs failed.
@@ -64,12 +67,24 @@ def variance_indices(
     outside = (1 - confidence) / 2
     low, high = np.quantile(resampled, [outside, 1 - outside], axis=0)
     first, total = _indices(values)
+    still = _may_be_constant(results)
+    for part in (first, total, low, high):
+        part[..., still, :] = np.nan
     return VarianceIndices(
         first=Estimate(first, low[0], high[0]),
         total=Estimate(total, low[1], high[1]),
         n_cases=len(results.values),
         n_left_out=count - left,
     )
+
+
+def _may_be_constant(results: Evaluations) -> BoolArray:
+    """Whether one value of a result, shape (n_results,), is within the bounds of all cases."""
+    with np.errstate(invalid="ignore"):
+        highest = np.fmin.reduce(results.values + results.bounds, axis=0)
+        lowest = np.fmax.reduce(results.values - results.bounds, axis=0)
+    still: BoolArray = lowest <= highest
+    return still
 
 
 def _indices(values: FloatArray) -> FloatArray:

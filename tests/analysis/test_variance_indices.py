@@ -37,7 +37,8 @@ def test_indices_of_the_ishigami_function() -> None:
     np.testing.assert_allclose(found.total.value[0], total, rtol=0, atol=0.016)
     assert np.all((found.first.low[0] <= first) & (first <= found.first.high[0]))
     assert np.all((found.total.low[0] <= total) & (total <= found.total.high[0]))
-    np.testing.assert_array_equal(found.total.value[1], 0)
+    # A result that does not vary has none.
+    assert np.all(np.isnan([found.total.value[1], found.first.low[1]]))
     assert found.n_cases == evaluate.n_cases == cases_of_indices(4096, 3)
 
 
@@ -66,3 +67,16 @@ def test_indices_of_nothing_but_failures_are_no_numbers() -> None:
     found = variance_indices(Counted([ishigami], fails=lambda x, y, z: x > -9), ISHIGAMI_SPREADS, 16)
     assert found.n_left_out == 16
     assert np.all(np.isnan(found.total.value))
+
+
+def test_noise_within_the_bounds_has_no_indices() -> None:
+    """A result of one value but for noise of 1e-9: with bounds of 1e-8 it may be constant, with 1e-10 it is not."""
+
+    def noise(x: FloatArray, y: FloatArray, z: FloatArray) -> FloatArray:
+        return 5 + 1e-9 * np.sin(1e3 * x + 3e2 * y + z)
+
+    told = [
+        np.isfinite(variance_indices(Counted([noise], bound=bound), ISHIGAMI_SPREADS, 64).total.value).all()
+        for bound in (1e-8, 1e-10)
+    ]
+    assert told == [False, True]
