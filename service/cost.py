@@ -128,10 +128,10 @@ def check_cases(count: int, a_case: Sequence[Estimate], settings: Settings) -> N
             settings.cases,
         )
     work = count * (CASE_OVERHEAD + sum(estimate.multiplications for estimate in a_case))
-    if work > settings.cost_multiplications:
+    if work > settings.cases_multiplications:
         raise TooCostly(
             f"The request would take up to {count} cases and about {work:.2g} multiplications; at most "
-            f"{settings.cost_multiplications:.2g} are allowed while a client waits: {advice}",
+            f"{settings.cases_multiplications:.2g} are allowed while a client waits: {advice}",
             work,
-            settings.cost_multiplications,
+            settings.cases_multiplications,
         )

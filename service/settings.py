@@ -56,6 +56,11 @@ class Settings(BaseSettings):
     cost_multiplications: PositiveFloat = Field(
         4e10, description="Most multiplications estimated for one request; about 10^9 take a second."
     )
+    cases_multiplications: PositiveFloat = Field(
+        2e11,
+        description="Most multiplications estimated for all cases of one request. It counts more cases and more work a "
+        "case than most take; the time limit ends what does take longer.",
+    )
     memory_bytes: PositiveInt = Field(1024 * MEBIBYTE, description="Most working memory estimated for one request.")
     answer_bytes: PositiveInt = Field(128 * MEBIBYTE, description="Largest answer, estimated before the work.")
     time_limit_seconds: PositiveFloat = Field(30.0, description="Longest computation of one request.")
@@ -81,7 +86,10 @@ class Settings(BaseSettings):
         description="Processes that compute cases of studies.",
     )
     study_niceness: int = Field(
-        10, ge=0, le=19, description="Steps of priority those processes are below the service, so that requests go first."
+        10,
+        ge=0,
+        le=19,
+        description="Steps of priority those processes are below the service, so that requests go first.",
     )
     study_case_seconds: PositiveFloat = Field(60.0, description="Longest computation of one case of a study.")
     study_memory_bytes: PositiveInt = Field(
