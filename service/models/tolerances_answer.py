@@ -6,6 +6,7 @@ from pydantic import Field
 
 from service.models.analysis_answer import AnalysisAnswer
 from service.models.base import Model
+from service.models.limits_answer import HeldWord
 from service.models.sensitivities_answer import WhyNot
 
 
@@ -24,15 +25,25 @@ class TolerancedNumberAnswer(Model):
     )
 
 
-class CornerAnswer(Model):
-    """A result at one corner of the tolerance zones, computed."""
+class PlaceNumber(Model):
+    """A number in one case."""
 
-    value: float | None = Field(description="The result there; null where it could not be computed.", examples=[57.1])
+    name: str = Field(description="Its name.", examples=["film"])
+    value: float = Field(description="Its value there, in its unit.", examples=[1020])
+
+
+class WorstAnswer(Model):
+    """The worst of a result among all cases that were computed within the zones."""
+
+    value: float | None = Field(description="The result there; null where no case has one.", examples=[57.1])
     error_bound: float | None = Field(
-        description="It is no further off than this; null where no finite bound is known.", examples=[4e-8]
+        description="The worst of these cases is no further off than this; null where no finite bound is known.",
+        examples=[4e-8],
     )
-    numbers: list[float] = Field(description="The numbers there, in their order.", examples=[[1020, 39.8]])
-    reason: WhyNot | None = Field(None, description="Why it could not be computed; left out if it could.")
+    numbers: list[PlaceNumber] = Field(
+        description="All numbers of that case, in the order asked; a corner of the zones, or a place inside where the "
+        "result turns back."
+    )
 
 
 class ContributionAnswer(Model):
@@ -48,50 +59,84 @@ class ContributionAnswer(Model):
     )
     smooth: bool = Field(description="False where the result has a kink at the nominal number.", examples=[True])
     low: float | None = Field(
-        description="By how much it lowers the result in the worst case, not negative.", examples=[2.1]
+        description="By how much it lowers the result to first order, not negative.", examples=[2.1]
     )
     high: float | None = Field(
-        description="By how much it raises the result in the worst case, not negative.", examples=[2.1]
+        description="By how much it raises the result to first order, not negative.", examples=[2.1]
+    )
+    at_low_end: float | None = Field(
+        description="The result as computed with this number at the lower end of its zone and all others as they "
+        "stand; null where it could not be computed.",
+        examples=[56.4],
+    )
+    at_high_end: float | None = Field(
+        description="The result as computed with this number at the upper end of its zone and all others as they "
+        "stand.",
+        examples=[52.3],
+    )
+    bend: float | None = Field(
+        description="By how much the result, computed at the ends of the zone of this number alone and half-way there, "
+        "departs from first order at the most.",
+        examples=[0.2],
     )
     square_share: float | None = Field(
         description="Its part of the square of the root sum square; all add up to 1, and one may be negative where "
-        "numbers are correlated.",
+        "numbers are correlated. Null where the root sum square is no larger than what the derivatives may be off: "
+        "then it is noise.",
         examples=[0.62],
     )
     variance_share: float | None = Field(
         description="Its part of the variance of the result to first order, from its distribution: its covariance with "
-        "the result over the variance.",
+        "the result over the variance. Null like `square_share`.",
         examples=[0.62],
     )
 
 
 class StackUpAnswer(Model):
-    """What the tolerances add up to in one result, to first order, and the result at the worst corners."""
+    """What the tolerances come to in one result: as computed, which is the safe one, and to first order.
+
+    `lowest` and `highest` are the worst of everything that was computed within the zones: each number at its ends and
+    half-way there, all corners (of more than five numbers a design of them), the places where the results turn back,
+    and the samples that lie in the zones. To first order is how stack-ups are done in the trade: slopes times
+    tolerances. It is unsafe where the result bends.
+    """
 
     result: str = Field(description="The name of the result.", examples=["probe A"])
     unit: str = Field(description="Its unit.", examples=["degC"])
     nominal: float = Field(description="The result as the request stands.", examples=[54.2])
-    worst_low: float | None = Field(description="Lowest in the worst case, to first order.", examples=[49.9])
-    worst_high: float | None = Field(description="Highest in the worst case, to first order.", examples=[58.5])
+    lowest: WorstAnswer = Field(description="The lowest that was computed within the zones.")
+    highest: WorstAnswer = Field(description="The highest that was computed within the zones.")
+    first_order_low: float | None = Field(
+        description="Lowest to first order: what each number takes off by its slope, added up. Go by `lowest`.",
+        examples=[49.9],
+    )
+    first_order_high: float | None = Field(
+        description="Highest to first order: what each number adds by its slope, added up. Go by `highest`.",
+        examples=[58.5],
+    )
     middle: float | None = Field(
         description="The result with all numbers in the middles of their zones, to first order.", examples=[54.2]
     )
     root_sum_square: float | None = Field(
-        description="To either side of the middle: half zones added as standard deviations are, correlations heeded.",
+        description="To either side of the middle, to first order: half zones added as standard deviations are, "
+        "correlations heeded.",
         examples=[2.6],
     )
     standard_deviation: float | None = Field(
         description="Of the result to first order, from the distributions of the numbers.", examples=[0.87]
     )
     error_estimate: float | None = Field(
-        description="How far off the worst cases and the root sum square may be because the derivatives and the "
-        "nominal result are; what bends beyond first order shows at the corners.",
+        description="How far off what is told to first order may be because the derivatives and the nominal result "
+        "are; how far off because the result bends is `bend`.",
         examples=[5e-7],
     )
-    low_corner: CornerAnswer = Field(description="The result where it is lowest to first order.")
-    high_corner: CornerAnswer = Field(description="The result where it is highest to first order.")
+    bend: float | None = Field(
+        description="By how much the result departs from first order within the zones: that of each number alone, "
+        "added up. An estimate.",
+        examples=[0.3],
+    )
     contributions: list[ContributionAnswer] = Field(
-        description="What each number adds, those that add most to the root sum square first."
+        description="What each number adds; first those that by themselves change the result most, as computed."
     )
 
 
@@ -124,23 +169,36 @@ class ToleranceLimitAnswer(Model):
     result: str = Field(description="The name of the result.", examples=["probe A"])
     at_most: float | None = Field(None, description="The limit above, in the result's unit.", examples=[60])
     at_least: float | None = Field(None, description="The limit below, in the result's unit.", examples=[5])
-    worst_case_margin: float | None = Field(
-        description="By how much it holds in the worst case to first order, negative where it does not.", examples=[1.5]
+    held: HeldWord = Field(
+        description="Whether it holds in the worst case that was computed. `no` is certain: a case within the zones "
+        "does not hold it. `yes`: every computed case surely holds it. `undecided` where the margin is within the "
+        "error bound, or a case within the zones has no result.",
+        examples=["yes"],
+    )
+    margin: float | None = Field(
+        description="By how much it holds in the worst case that was computed, negative where it does not.",
+        examples=[1.4],
+    )
+    error_bound: float | None = Field(
+        description="That margin is no further off than this; null where no finite bound is known.", examples=[4e-8]
+    )
+    root_sum_square_held: HeldWord = Field(
+        description="Whether it holds for the middle and the root sum square to either side, which is to first order; "
+        "`undecided` where the margin is within `error_estimate`.",
+        examples=["yes"],
     )
     root_sum_square_margin: float | None = Field(
         description="By how much it holds for the middle and the root sum square to either side.", examples=[3.2]
     )
+    first_order_margin: float | None = Field(
+        description="By how much it holds where tolerances are added up to first order, as is done in the trade. "
+        "Unsafe where the result bends; go by `margin`.",
+        examples=[1.5],
+    )
     error_estimate: float | None = Field(
-        description="How far off these two margins may be because the derivatives and the nominal result are.",
-        examples=[5e-7],
-    )
-    corner_margin: float | None = Field(
-        description="By how much it holds at the worst corners as computed; null where one has no result.",
-        examples=[1.4],
-    )
-    corner_error_bound: float | None = Field(
-        description="The corner margin is no further off than this; null where no finite bound is known.",
-        examples=[4e-8],
+        description="How far off the two margins of first order may be, because the derivatives and the nominal result "
+        "are and because the result bends.",
+        examples=[0.3],
     )
     probability: ProbabilityAnswer | None = Field(
         None, description="How often it holds, from the samples; left out without samples."
@@ -201,8 +259,13 @@ class IndexAnswer(Model):
     """The Sobol indices of one number."""
 
     number: str = Field(description="The name of the number.", examples=["film"])
-    first: EstimateAnswer = Field(description="Part of the variance that goes if this number alone were known.")
-    total: EstimateAnswer = Field(description="Part of the variance that stays if all other numbers were known.")
+    first: EstimateAnswer = Field(
+        description="Part of the variance that goes if this number alone were known; null where the result does not "
+        "vary beyond its error bounds."
+    )
+    total: EstimateAnswer = Field(
+        description="Part of the variance that stays if all other numbers were known; null like `first`."
+    )
 
 
 class ResultIndices(Model):
@@ -228,6 +291,16 @@ class TolerancesAnswer(AnalysisAnswer):
     numbers: list[TolerancedNumberAnswer] = Field(description="The numbers, in the order asked.")
     stack_ups: list[StackUpAnswer] = Field(description="Each result, in the order asked.")
     limits: list[ToleranceLimitAnswer] = Field(description="Each limit, in the order asked.")
+    all_held: HeldWord | None = Field(
+        None,
+        description="`no` if one limit surely does not hold in the worst case that was computed, `yes` if all surely "
+        "do, `undecided` otherwise; left out where there are no limits.",
+        examples=["yes"],
+    )
+    failures: list[CountedFailure] = Field(
+        description="Cases within the zones that could not be computed, by kind; while there are any, no limit is said "
+        "to hold."
+    )
     propagation: PropagationAnswer | None = Field(
         None, description="The spread over samples; left out where none were asked for."
     )

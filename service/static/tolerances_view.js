@@ -24,20 +24,23 @@ export function tolerancesView(answer) {
 }
 
 function limitsTable({ limits, stack_ups: stacks, units }) {
-  return table("Limits under the tolerances: by how much each holds at worst, and how often", ["Limit", "Worst case", "Root sum of squares", "Holds in"], limits.map((limit) => {
+  return table("Limits under the tolerances: by how much each holds at worst, and how often", ["Limit", "Worst case, computed", "Root sum of squares", "Holds in"], limits.map((limit) => {
     const { unit } = stacks.find(({ result }) => result === limit.result);
     const step = differenceOf(unit, units);
-    const margin = (value, bound, under) => make("td", { class: value < 0 ? "missed" : null },
-      value === null ? "\u2013" : `${value < 0 ? "\u2717" : "\u2713"} ${withUnit(shown(value, Math.max(bound ?? 0, Math.abs(value) * 1e-5)), step)}`, under ? make("span", { class: "known" }, under) : null);
-    const corner = limit.corner_margin === null ? null : `at the corner ${withUnit(shown(limit.corner_margin, Math.max(limit.corner_error_bound ?? 0, Math.abs(limit.corner_margin) * 1e-5)), step)}`;
+    const words = (value, bound) => withUnit(shown(value, Math.max(bound ?? 0, Math.abs(value) * 1e-5)), step);
+    const margin = (held, value, bound, under) => make("td", { class: held === "no" ? "missed" : null },
+      value === null ? "\u2013" : `${SIGNS[held]} ${words(value, bound)}`, under ? make("span", { class: "known" }, under) : null);
+    const added = limit.first_order_margin === null ? null : `to first order ${words(limit.first_order_margin, 0)}`;
     const chance = limit.probability;
     return [
       rowHead(limit.name ?? limit.result, limit.name ? `${limit.result} ${limitWords(limit, unit)}` : limitWords(limit, unit)),
-      margin(limit.worst_case_margin, limit.error_estimate, corner), margin(limit.root_sum_square_margin, limit.error_estimate),
+      margin(limit.held, limit.margin, limit.error_bound, added), margin(limit.root_sum_square_held, limit.root_sum_square_margin, 0),
       chance ? make("td", {}, chance.value === null ? "\u2013" : percent(chance.value), make("span", { class: "known" }, interval(chance))) : make("td", {}, "not sampled"),
     ];
   }), "limits wraps");
 }
+
+const SIGNS = { yes: "\u2713", no: "\u2717", undecided: "?" };
 
 const interval = ({ low, high }) => (low === null ? "" : `${percent(low)} to ${percent(high)}`);
 
@@ -67,8 +70,8 @@ const linesOf = (limits) => limits.flatMap(({ name, at_most: most, at_least: lea
 function ranges(stack, spread, limits) {
   const quantile = (part) => spread?.quantiles.find(({ probability }) => probability === part)?.value ?? null;
   const rows = [
-    ["worst case", stack.worst_low, stack.worst_high, COLOURS.main],
-    ["worst corners,<br>computed", stack.low_corner.value, stack.high_corner.value, COLOURS.main],
+    ["worst case,<br>computed", stack.lowest.value, stack.highest.value, COLOURS.main],
+    ["to first order", stack.first_order_low, stack.first_order_high, COLOURS.second],
     ["root sum<br>of squares", stack.middle - stack.root_sum_square, stack.middle + stack.root_sum_square, COLOURS.second],
     ...(spread ? [["95 % of samples", quantile(0.025), quantile(0.975), COLOURS.held]] : []),
   ].filter(([, low, high]) => low !== null && high !== null && Number.isFinite(low)).reverse();
@@ -178,7 +181,7 @@ function indexBars({ result, numbers }) {
   });
 }
 
-function stackTable({ result, unit, nominal, contributions, worst_low: low, worst_high: high, middle, root_sum_square: rss, standard_deviation: deviation, error_estimate: error, low_corner: lowest, high_corner: highest }, units) {
+function stackTable({ result, unit, nominal, contributions, first_order_low: low, first_order_high: high, middle, root_sum_square: rss, standard_deviation: deviation, error_estimate: error, lowest, highest }, units) {
   const step = differenceOf(unit, units);
   const number = (value, bound = error) => make("td", {}, value === null ? "\u2013" : shown(value, Math.max(bound ?? 0, Math.abs(value) * 1e-6)));
   const share = (part) => make("td", {}, part === null ? "\u2013" : percent(part));
@@ -187,8 +190,8 @@ function stackTable({ result, unit, nominal, contributions, worst_low: low, wors
       rowHead(one.number, pretty(one.unit)), valueCell(one.derivative, one.error_estimate), number(one.low), number(one.high), share(one.square_share), share(one.variance_share)]), "wraps"),
     table(`${result}, ${pretty(unit)}`, ["As added up", "Lowest", "Highest"], [
       [rowHead("as it stands"), number(nominal), number(nominal)],
-      [rowHead("worst case, to first order"), number(low), number(high)],
-      [rowHead("worst corners, computed"), valueCell(lowest.value, lowest.error_bound), valueCell(highest.value, highest.error_bound)],
+      [rowHead("worst case, computed"), valueCell(lowest.value, lowest.error_bound), valueCell(highest.value, highest.error_bound)],
+      [rowHead("added up to first order"), number(low), number(high)],
       [rowHead("root sum of squares", `about the middle, ${middle === null ? "\u2013" : brief(Number(middle.toPrecision(7)))}`), number(middle === null ? null : middle - rss), number(middle === null ? null : middle + rss)],
     ], "wraps"),
     deviation === null ? null : make("p", { class: "hint" }, `Standard deviation to first order: ${withUnit(brief(Number(deviation.toPrecision(5))), step)}.`));

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -10,8 +10,8 @@ import numpy as np
 
 from service.analysis import derivatives, stack_up
 from service.analysis.derivatives import Derivatives
-from service.analysis.evaluations import Evaluate, Evaluations, Failure, FloatArray
-from service.analysis.limits import Limit, margins
+from service.analysis.evaluations import Evaluate, Failure, FloatArray
+from service.analysis.limits import Limit
 from service.analysis.propagation import (
     Estimate,
     Probability,
@@ -19,15 +19,16 @@ from service.analysis.propagation import (
     Sampling,
     propagate,
 )
-from service.analysis.stack_up import Corners, StackUp, most_cases_of_corners
 from service.analysis.variance_indices import VarianceIndices, cases_of_indices, variance_indices
+from service.analysis.worst_case import Extreme, Watched, Zone, look, most_cases_of_worst
 from service.models import tolerances as models
 from service.translation.analysis import Analysis, AnalysisCall, Prepared
 from service.translation.answers import number_or_none
-from service.translation.limits import limit_shown
+from service.translation.limits import all_held, limit_shown
 from service.translation.numbers import NumberInfo
 from service.translation.sensitivities import derivatives_of, read_radii, unit_of_derivative
 from service.translation.spreads import Spread, read_correlation, read_spread
+from service.translation.tolerance_findings import Found, warnings_of
 
 
 def read_tolerances(question: models.TolerancesQuestion, prepared: Prepared) -> Analysis:
@@ -74,8 +75,9 @@ class _Read:
 
     @property
     def most_cases(self) -> int:
-        """Of derivatives, corners, samples and indices."""
-        cases = derivatives.most_cases(len(self.infos)) + most_cases_of_corners(len(self.prepared.results.infos))
+        """Of derivatives, the worst case, samples and indices."""
+        n_numbers = len(self.infos)
+        cases = derivatives.most_cases(n_numbers) + most_cases_of_worst(len(self.prepared.results.infos), n_numbers)
         if self.sampling is not None:
             cases += self.sampling.cases
         if self.question.variance_indices is not None:
@@ -86,18 +88,15 @@ class _Read:
         """The answer."""
         plus, minus = (np.array([getattr(spread, side) for spread in self.spreads]) for side in ("plus", "minus"))
         distributions = [spread.distribution for spread in self.spreads]
-        nominal = np.array([info.nominal for info in self.infos])
-        slopes = derivatives_of(evaluate, self.infos, self.radii)
-        stacked = stack_up.stack_up(slopes, plus, minus, self.correlation)
-        corners = stack_up.corners(evaluate, nominal, slopes, plus, minus)
-        deviations = np.array([float(distribution.std()) for distribution in distributions])
-        variance, shares = stack_up.variance(slopes.first, deviations, self.correlation)
-        case_count = slopes.n_cases + corners.n_cases
+        zone = Zone(np.array([info.nominal for info in self.infos]), plus, minus)
+        watched = Watched(evaluate, zone)
+        slopes = derivatives_of(watched, self.infos, self.radii)
+        alone = look(watched, zone, slopes)
 
         spread: Propagation | None = None
         if self.sampling is not None:
             spread = propagate(
-                evaluate,
+                watched,
                 distributions,
                 self.sampling,
                 limits=self.limits,
@@ -105,24 +104,42 @@ class _Read:
                 correlation=self.correlation,
                 confidence=self.question.confidence,
             )
-            case_count += spread.n_cases
         indices: VarianceIndices | None = None
         if self.question.variance_indices is not None:
             asked = self.question.variance_indices
             indices = variance_indices(
-                evaluate, distributions, asked.count, seed=asked.seed, confidence=self.question.confidence
+                watched, distributions, asked.count, seed=asked.seed, confidence=self.question.confidence
             )
-            case_count += indices.n_cases
+
+        stacked = stack_up.stack_up(slopes, plus, minus, self.correlation)
+        found = Found(
+            infos=self.infos,
+            results=self.prepared.results.infos,
+            limits=self.limits,
+            zone=zone,
+            slopes=slopes,
+            stacked=stacked,
+            alone=alone,
+            lowest=watched.lowest,
+            highest=watched.highest,
+            failures=watched.failures,
+            spread=spread,
+        )
+        deviations = np.array([float(distribution.std()) for distribution in distributions])
+        variance, shares = stack_up.variance(slopes, deviations, self.correlation)
         return {
             "numbers": [self._number(slopes, index) for index in range(len(self.infos))],
             "stack_ups": [
-                self._stack_up(result, slopes, stacked, corners, float(np.sqrt(variance[result])), shares[result])
+                self._stack_up(result, found, float(np.sqrt(variance[result])), shares[result])
                 for result in range(len(self.prepared.results.infos))
             ],
-            "limits": self._limits(stacked, corners, spread),
+            "limits": self._limits(found),
+            **({"all_held": all_held(found.held)} if self.limits else {}),
+            "failures": _failures(watched.failures),
             **({"propagation": self._propagation(spread)} if spread is not None else {}),
             **({"variance_indices": self._indices(indices)} if indices is not None else {}),
-            "case_count": case_count,
+            "case_count": watched.n_cases,
+            "warnings": warnings_of(found),
         }
 
     def _number(self, slopes: Derivatives, index: int) -> dict[str, Any]:
@@ -138,62 +155,68 @@ class _Read:
             **_reason(slopes.failures.get(index)),
         }
 
-    def _stack_up(
-        self,
-        result: int,
-        slopes: Derivatives,
-        stacked: StackUp,
-        corners: Corners,
-        deviation: float,
-        shares: FloatArray,
-    ) -> dict[str, Any]:
-        info = self.prepared.results.infos[result]
-        squares = stacked.variance_shares[result]
-        ranked = sorted(range(len(self.infos)), key=lambda number: (-abs(np.nan_to_num(squares[number])), number))
+    def _stack_up(self, result: int, found: Found, deviation: float, shares: FloatArray) -> dict[str, Any]:
+        info, stacked = self.prepared.results.infos[result], found.stacked
         return {
             "result": info.name,
             "unit": info.measure.unit,
             "nominal": float(stacked.nominal[result]),
-            "worst_low": number_or_none(stacked.worst_low[result]),
-            "worst_high": number_or_none(stacked.worst_high[result]),
+            "lowest": self._worst(found.lowest, result),
+            "highest": self._worst(found.highest, result),
+            "first_order_low": number_or_none(stacked.worst_low[result]),
+            "first_order_high": number_or_none(stacked.worst_high[result]),
             "middle": number_or_none(stacked.middle[result]),
             "root_sum_square": number_or_none(stacked.root_sum_square[result]),
             "standard_deviation": number_or_none(deviation),
             "error_estimate": number_or_none(stacked.slope_error[result]),
-            "low_corner": _corner(corners.low, corners.numbers_low, result),
-            "high_corner": _corner(corners.high, corners.numbers_high, result),
+            "bend": number_or_none(found.bend[result]),
             "contributions": [
-                {
-                    "number": self.infos[number].name,
-                    "unit": unit_of_derivative(self.prepared, result, self.infos[number]),
-                    "derivative": number_or_none(slopes.first[result, number]),
-                    "error_estimate": number_or_none(slopes.first_error[result, number]),
-                    "smooth": bool(slopes.smooth[result, number]),
-                    "low": number_or_none(stacked.low_shares[result, number]),
-                    "high": number_or_none(stacked.high_shares[result, number]),
-                    "square_share": number_or_none(squares[number]),
-                    "variance_share": number_or_none(shares[number]),
-                }
-                for number in ranked
+                self._contribution(result, number, found, shares[number]) for number in _ranked(found, result)
             ],
         }
 
-    def _limits(self, stacked: StackUp, corners: Corners, spread: Propagation | None) -> list[dict[str, Any]]:
-        """Margins of each limit at the ends of the stack-ups: the smaller of both ends."""
-        worst = np.minimum(*(margins(self.limits, ends) for ends in (stacked.worst_low, stacked.worst_high)))
-        half = stacked.root_sum_square
-        squares = np.minimum(*(margins(self.limits, stacked.middle + side * half) for side in (-1, 1)))
-        computed = np.minimum(*(margins(self.limits, ends.values) for ends in (corners.low, corners.high)))
-        bounds = np.maximum(corners.low.bounds, corners.high.bounds)
+    def _worst(self, extreme: Extreme, result: int) -> dict[str, Any]:
+        is_known = bool(np.all(np.isfinite(extreme.numbers[result])))
+        return {
+            "value": number_or_none(extreme.values[result]),
+            "error_bound": number_or_none(extreme.bounds[result]),
+            "numbers": [
+                {"name": info.name, "value": float(value)}
+                for info, value in zip(self.infos, extreme.numbers[result], strict=True)
+                if is_known
+            ],
+        }
+
+    def _contribution(self, result: int, number: int, found: Found, share: float) -> dict[str, Any]:
+        place = result, number
+        return {
+            "number": self.infos[number].name,
+            "unit": unit_of_derivative(self.prepared, result, self.infos[number]),
+            "derivative": number_or_none(found.slopes.first[place]),
+            "error_estimate": number_or_none(found.slopes.first_error[place]),
+            "smooth": bool(found.slopes.smooth[place]),
+            "low": number_or_none(found.stacked.low_shares[place]),
+            "high": number_or_none(found.stacked.high_shares[place]),
+            "at_low_end": number_or_none(found.alone.low_end[place]),
+            "at_high_end": number_or_none(found.alone.high_end[place]),
+            "bend": number_or_none(found.alone.bend[place]),
+            "square_share": number_or_none(found.stacked.variance_shares[place]),
+            "variance_share": number_or_none(share),
+        }
+
+    def _limits(self, found: Found) -> list[dict[str, Any]]:
+        """How each limit fares at the worst that was computed, first, and to first order."""
         return [
             {
                 **limit_shown(asked, limit, self.prepared),
-                "worst_case_margin": number_or_none(worst[index]),
-                "root_sum_square_margin": number_or_none(squares[index]),
-                "error_estimate": number_or_none(stacked.slope_error[limit.result]),
-                "corner_margin": number_or_none(computed[index]),
-                "corner_error_bound": number_or_none(bounds[limit.result]),
-                **({"probability": _probability(spread.limits, index)} if spread is not None else {}),
+                "held": found.held[index],
+                "margin": number_or_none(found.worst.margins[index]),
+                "error_bound": number_or_none(found.worst.bounds[index]),
+                "root_sum_square_held": found.squares.verdicts[index],
+                "root_sum_square_margin": number_or_none(found.squares.margins[index]),
+                "first_order_margin": number_or_none(found.first_order.margins[index]),
+                "error_estimate": number_or_none(found.first_order.bounds[index]),
+                **({"probability": _probability(found.spread.limits, index)} if found.spread is not None else {}),
             }
             for index, (asked, limit) in enumerate(zip(self.question.limits, self.limits, strict=True))
         ]
@@ -220,10 +243,7 @@ class _Read:
                 for result, info in enumerate(self.prepared.results.infos)
             ],
             **({"all_limits": _probability(spread.together, 0)} if self.limits else {}),
-            "failures": [
-                {"code": code, "count": count, "message": example.message}
-                for code, (count, example) in spread.failures.items()
-            ],
+            "failures": _failures(spread.failures),
         }
 
     def _intervals_in_words(self) -> str:
@@ -260,13 +280,15 @@ class _Read:
         }
 
 
-def _corner(ends: Evaluations, numbers: FloatArray, result: int) -> dict[str, Any]:
-    return {
-        "value": number_or_none(ends.values[result]),
-        "error_bound": number_or_none(ends.bounds[result]),
-        "numbers": numbers[result].tolist(),
-        **_reason(ends.failures.get(result)),
-    }
+def _ranked(found: Found, result: int) -> list[int]:
+    """Numbers by how much each changes the result as computed, the strongest first."""
+    changes = np.fmax.reduce(np.abs(found.alone.changes[:, result]), axis=0, initial=0.0)
+    return sorted(range(len(changes)), key=lambda number: (-changes[number], number))
+
+
+def _failures(failures: Mapping[str, tuple[int, Failure]]) -> list[dict[str, Any]]:
+    """Failures by their code, with an example of each."""
+    return [{"code": code, "count": count, "message": example.message} for code, (count, example) in failures.items()]
 
 
 def _estimate(estimate: Estimate, place: int | tuple[int, int]) -> dict[str, Any]:

@@ -6,7 +6,7 @@ import numpy as np
 
 from service.analysis.derivatives import Derivatives, derivatives, first_radii
 from service.analysis.evaluations import FloatArray
-from service.analysis.stack_up import corners, stack_up, variance
+from service.analysis.stack_up import stack_up, variance
 from tests.analysis.formulas import Counted
 
 
@@ -33,40 +33,6 @@ def test_linear_stack_with_unequal_sides() -> None:
     np.testing.assert_allclose(found.middle, 1.2, rtol=1e-9)
     np.testing.assert_allclose(found.root_sum_square, np.sqrt(0.2**2 + 0.2**2 + 0.02**2), rtol=1e-9)
     np.testing.assert_allclose(found.variance_shares, np.array([[0.04, 0.04, 0.0004]]) / 0.0804, rtol=1e-9)
-    at = corners(evaluate, nominal, slopes, plus, minus)
-    np.testing.assert_allclose(np.array([at.low.values, at.high.values]), np.array([[0.78], [1.62]]), rtol=1e-12)
-    np.testing.assert_allclose(at.numbers_high, [[50.3, 19.85, 8.98]])
-    assert np.all(np.abs(found.worst_high - at.high.values) <= found.slope_error + at.high.bounds)
-
-
-def test_corners_show_the_bend() -> None:
-    """x^2 from 1 to 3 about 2 is 4 - 4 ... 4 + 4 to first order, and 1 ... 9 in truth."""
-    evaluate = Counted([lambda x, y: x**2 + 0 * y])
-    nominal, ones = np.array([2.0, 5]), np.ones(2)
-    slopes = slopes_of(evaluate, nominal)
-    found = stack_up(slopes, ones, ones)
-    at = corners(evaluate, nominal, slopes, ones, ones)
-    np.testing.assert_allclose([found.worst_low[0], found.worst_high[0]], [0, 8], atol=1e-6)
-    np.testing.assert_allclose([at.low.values[0], at.high.values[0]], [1, 9])
-    # A number that does nothing stays where it is.
-    np.testing.assert_array_equal(at.numbers_low, [[1, 5]])
-
-
-def test_results_share_corners() -> None:
-    evaluate = Counted([gap, lambda housing, block, shim: -2 * gap(housing, block, shim)])
-    nominal, tolerance = np.array([50.0, 20, 9]), np.full(3, 0.1)
-    at = corners(evaluate, nominal, slopes_of(evaluate, nominal), tolerance, tolerance)
-    assert at.n_cases == 2
-    np.testing.assert_allclose(at.low.values, [0.6, -2.8])
-
-
-def test_corner_that_fails_is_a_failure_of_its_result() -> None:
-    evaluate = Counted([lambda x: x, lambda x: -x], fails=lambda x: x > 2.5)
-    nominal, one = np.array([2.0]), np.ones(1)
-    at = corners(evaluate, nominal, slopes_of(evaluate, nominal), one, one)
-    assert set(at.high.failures) == {0}
-    assert set(at.low.failures) == {1}
-    np.testing.assert_array_equal(at.low.values, [1, np.nan])
 
 
 def test_kink_is_worse_on_both_sides() -> None:
@@ -98,7 +64,7 @@ def test_guide_to_uncertainty_example_h2() -> None:
     )
     slopes = slopes_of(evaluate, readings.mean(axis=1))
     deviations = readings.std(axis=1, ddof=1) / 5**0.5
-    total, shares = variance(slopes.first, deviations, np.corrcoef(readings))
+    total, shares = variance(slopes, deviations, np.corrcoef(readings))
     # The last digit of each figure.
     np.testing.assert_allclose(slopes.values, [127.732, 219.847, 254.260], rtol=0, atol=6e-4)
     np.testing.assert_allclose(np.sqrt(total), [0.071, 0.295, 0.236], rtol=0, atol=6e-4)
@@ -106,7 +72,17 @@ def test_guide_to_uncertainty_example_h2() -> None:
 
 
 def test_full_correlation_adds_up_or_cancels() -> None:
-    slopes = np.array([[1.0, 1], [1, -1]])
-    total, shares = variance(slopes, np.array([2.0, 2]), np.ones((2, 2)))
-    np.testing.assert_allclose(total, np.array([16.0, 0]))
-    np.testing.assert_allclose(shares, np.array([[0.5, 0.5], [0, 0]]))
+    """Where nothing is left of two numbers there are no shares of it."""
+    evaluate = Counted([lambda x, y: x + y, lambda x, y: x - y])
+    total, shares = variance(slopes_of(evaluate, np.ones(2)), np.array([2.0, 2]), np.ones((2, 2)))
+    np.testing.assert_allclose(total, np.array([16.0, 0]), atol=1e-9)
+    np.testing.assert_allclose(shares, np.array([[0.5, 0.5], [np.nan, np.nan]]))
+
+
+def test_shares_of_what_does_not_vary_are_not_told() -> None:
+    """Noise of 1e-9 within bounds of 1e-8: whatever its slopes come to, nobody is behind it."""
+    evaluate = Counted([lambda x, y: 5 + 1e-9 * np.sin(1e9 * x + 7e8 * y)], bound=1e-8)
+    nominal = np.array([2.0, 3.0])
+    found = stack_up(slopes_of(evaluate, nominal), np.full(2, 0.1), np.full(2, 0.1))
+    assert found.root_sum_square[0] > 0
+    np.testing.assert_array_equal(found.variance_shares, [[np.nan, np.nan]])

@@ -250,9 +250,9 @@ def test_tolerances_are_drawn_against_the_limit(page: Page) -> None:
     assert sum(pieces) == pytest.approx(1)
     stack = answer["stack_ups"][0]
     worst = page.locator("#decision .chart").first.evaluate(
-        "({ data }) => data.find(({ y }) => y[0] === 'worst case').x"
+        "({ data }) => data.find(({ y }) => y[0] === 'worst case,<br>computed').x"
     )
-    assert worst == [stack["worst_low"], stack["worst_high"]]
+    assert worst == [stack["lowest"]["value"], stack["highest"]["value"]]
 
 
 def test_best_values_are_shown_before_and_after(page: Page) -> None:
