@@ -81,7 +81,7 @@ class Best:
     numbers: shape (n_numbers,). values, bounds: of all results, shape (n_results,). goal, goal_bound: what was to be
     best. leading: places in the goal's list of results that are the largest (least) together. margins, margin_bounds:
     of each limit. binding: the limits that hold only just. at_low, at_high: the numbers at an end of their range.
-    clearances: of rectangles, shape (n_clearances,).
+    clearances: of rectangles, shape (n_clearances,). held_elsewhere: whether each limit surely holds in some case.
     """
 
     numbers: FloatArray
@@ -97,6 +97,7 @@ class Best:
     at_low: tuple[int, ...]
     at_high: tuple[int, ...]
     clearances: FloatArray
+    held_elsewhere: tuple[bool, ...]
 
 
 @dataclass(frozen=True)
@@ -107,7 +108,7 @@ class BestValues:
     they were not given, lie outside or fail. first_holds: whether all limits hold there, for sure or perhaps. starts:
     best first. cases, failed: how many were computed, and failed. failures: one of each code. complete: False where
     searches were stopped because no more cases were allowed. has_room: False where no place was found with all
-    rectangles apart.
+    rectangles apart. goal_changes: whether the results of the goal differ between cases by more than their bounds.
     """
 
     best: Best | None
@@ -119,6 +120,7 @@ class BestValues:
     failures: Mapping[str, Failure]
     complete: bool
     has_room: bool
+    goal_changes: bool = True
 
 
 def most_places(n_numbers: int) -> int:
@@ -347,7 +349,13 @@ class _Search:
             failures=self._failures,
             complete="cases used up" not in ended,
             has_room=True,
+            goal_changes=usable.size < 2 or self._goal_changes(usable),
         )
+
+    def _goal_changes(self, usable: NDArray[np.intp]) -> bool:
+        results = list(self._goal.results)
+        values, bounds = self._values[usable][:, results], self._bounds[usable][:, results]
+        return bool((np.ptp(values, axis=0) > 2.0 * bounds.max(axis=0)).any())
 
     def _scale(self) -> float:
         return float(self._scales[self._goal.results[0]])
@@ -393,6 +401,9 @@ class _Search:
             at_low=tuple(np.flatnonzero(u <= AT_END).tolist()),
             at_high=tuple(np.flatnonzero(u >= 1.0 - AT_END).tolist()),
             clearances=self.apart(u[None])[0],
+            held_elsewhere=tuple(
+                bool(surely_held(*each).any()) for each in zip(*(part.T for part in held), strict=True)
+            ),
         )
 
     def _compared(self, start: Start, best: Best) -> Start:

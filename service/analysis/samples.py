@@ -15,6 +15,10 @@ from service.analysis.scales import scales_of
 NOT_FINITE = Failure("not-finite", "A result has no finite value, or none with a bound.")
 
 
+class CasesUsedUp(Exception):
+    """The next wave would take more cases than are allowed."""
+
+
 @dataclass(frozen=True)
 class Range:
     """Where one number is looked at: `count` places from `low` to `high`, evenly spread, or in their logarithm."""
@@ -36,11 +40,19 @@ class Samples:
 
     numbers: shape (n,). values: of the result each limit is about; margins, bounds: of each limit; all of shape (n,
     n_limits), NaN where a case failed. failures: by the number. scale: what makes margins of several units comparable,
-    from the first cases.
+    from the first cases. most_cases: no more than these are computed.
     """
 
-    def __init__(self, evaluate: Evaluate, limits: Sequence[Limit], units: Sequence[str], first: FloatArray) -> None:
+    def __init__(
+        self,
+        evaluate: Evaluate,
+        limits: Sequence[Limit],
+        units: Sequence[str],
+        first: FloatArray,
+        most_cases: float = np.inf,
+    ) -> None:
         self._evaluate = evaluate
+        self._most_cases = most_cases
         self._limits = limits
         self._results = [limit.result for limit in limits]
         self.numbers = np.zeros(0)
@@ -51,10 +63,12 @@ class Samples:
         self.scale = scales_of(self.margins, units)
 
     def look(self, numbers: FloatArray) -> None:
-        """Compute the cases among these that are new, in one wave."""
+        """Compute the cases among these that are new, in one wave. Raises CasesUsedUp where they would be too many."""
         new = np.setdiff1d(numbers, self.numbers)
         if not new.size:
             return
+        if self.cases + new.size > self._most_cases:
+            raise CasesUsedUp
         found = self._evaluate(new[:, None])
         self.cases += new.size
         values, bounds = found.values[:, self._results].copy(), bounds_of(self._limits, found.bounds)
@@ -94,6 +108,19 @@ class Samples:
     def worst(self) -> FloatArray:
         """The least margin of each case in parts of the scale, NaN where it failed."""
         return (self.margins / self.scale).min(axis=1)
+
+    @property
+    def worst_bounds(self) -> FloatArray:
+        """What the least margins may be off by, in parts of the scale, NaN where a case failed."""
+        return (self.bounds / self.scale).max(axis=1)
+
+    @property
+    def changes(self) -> NDArray[np.bool_]:
+        """Which limits' results change with the number by more than their bounds."""
+        usable = self.usable
+        if usable.sum() < 2:
+            return np.ones(len(self._limits), dtype=bool)
+        return np.asarray(np.ptp(self.values[usable], axis=0) > 2.0 * self.bounds[usable].max(axis=0))
 
     @property
     def signs(self) -> NDArray[np.int_]:

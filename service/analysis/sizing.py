@@ -1,78 +1,31 @@
 """Where one number makes all limits hold: the intervals, with edges to full accuracy.
 
 The number is looked at all over its range. Between neighbours of which one holds and the other does not the edge is
-closed in; where neighbours agree but come near a limit between them the extreme is looked for. Every search goes on in
-waves, all edges and extremes at once. What is narrower than the scan and does not show on it can be missed.
-
-Source of the searches: Chandrupatla, Advances in Engineering Software 28 (1997) 145 (roots), Computer Methods in
-Applied Mechanics and Engineering 152 (1998) 211 (extremes).
+closed in; extremes that show between neighbours are looked into, and followed where they come near a limit. Where all
+that finds no place at which all limits hold, the least miss is looked for, and what it finds to hold has its edges
+found in turn. Every search goes on in waves, all edges and extremes at once. What is narrower than the scan and does
+not show on it can be missed.
 """
 
 from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from itertools import pairwise
 from typing import Literal
 
 import numpy as np
-from numpy.typing import NDArray
-from scipy.optimize.elementwise import find_minimum, find_root
 
+from service.analysis.edges import Edge, Edges, narrow_invalid
 from service.analysis.evaluations import Evaluate, Failure, FloatArray
-from service.analysis.limits import Held, Limit
-from service.analysis.samples import Range, Samples, runs
+from service.analysis.hidden import approach, look_for_hidden
+from service.analysis.limits import Held, Limit, surely_held
+from service.analysis.samples import CasesUsedUp, Range, Samples, runs
 
-# Where cases begin to fail is told to this part of the widest step and of the number, by so many halvings at the most.
-HALVED = 1e-6
-HALVINGS = 24
+# Cases that searches rarely need more of beside the places looked at first: those of ten edges, or of two edges, four
+# extremes and where cases begin to fail.
+SEARCHED = 160
 
-# Edges are closed in again when cases failed within their brackets, so many times at the most.
-PASSES = 3
-
-# Widths of a root's bracket and of an extreme's in parts of the number: full accuracy, and the square root of that,
-# which is what an extreme's value determines of its place.
-ROOT_WIDTH, EXTREME_WIDTH = 1e-15, 1e-8
-MOST_STEPS = 80
-
-# An extreme between three neighbours is looked for if the middle one would reach a limit by going this many times as
-# far as its neighbours are beyond it; a parabola goes an eighth of the sum.
-FARTHEST = 4.0
-
-# It is given up once three neighbours bend by less than this part of what is left to the limit.
-FLAT = 0.1
-
-# The slope at an edge is taken over this part of its bracket to either side.
-SLOPE_STEP = 1e-3
-
-# An edge is proved where the margin is beyond its bound on either side: tried this many times bound / slope away.
-PROOF_AT = (1.5, 12.0)
-
-ROOT_TOLERANCES = {"xatol": 0.0, "xrtol": ROOT_WIDTH, "fatol": 0.0}
-
-# Highest cases around which the nearest miss is looked for.
-MOST_APPROACHED = 3
-
-Ends = Literal["limit", "range", "invalid"]
 Verdict = Literal["everywhere", "somewhere", "nowhere", "undecided"]
-
-
-@dataclass(frozen=True)
-class Edge:
-    """Where an interval ends.
-
-    kind: at a limit, at the end of the range that was looked at, or where cases begin to fail. number: of the edge.
-    error_bound: by how much the true edge may be off; 0 at the end of the range. limit: which one ends it, and slope:
-    the derivative of that limit's result by the number, with an estimate of its error; None for the other kinds, and
-    where cases beside it fail.
-    """
-
-    kind: Ends
-    number: float
-    error_bound: float = 0.0
-    limit: int | None = None
-    slope: float | None = None
-    slope_error: float | None = None
 
 
 @dataclass(frozen=True)
@@ -100,13 +53,30 @@ class Touch:
 
 
 @dataclass(frozen=True)
+class Missed:
+    """A limit that does not hold for sure somewhere, with its margin there and the bound of it.
+
+    held_elsewhere: whether it surely holds in some other case.
+    """
+
+    limit: int
+    margin: float
+    error_bound: float
+    held_elsewhere: bool
+
+
+@dataclass(frozen=True)
 class Nearest:
-    """Where the worst margin is best, or nearest to nothing: the limit it belongs to, the margin and its bound."""
+    """Where the worst margin is best, or nearest to nothing: the limit it belongs to, the margin and its bound.
+
+    missed: all limits that do not hold for sure there.
+    """
 
     number: float
     limit: int
     margin: float
     error_bound: float
+    missed: tuple[Missed, ...]
 
 
 @dataclass(frozen=True)
@@ -136,8 +106,10 @@ class Sizing:
     """Where all limits hold.
 
     holds: in all of the range, in the intervals, nowhere, or nowhere for sure but perhaps at a touch. nearest: where
-    the worst violation is least, if there is no interval and any case did not fail. spacing: features narrower than
-    this may have been missed. cases: how many were computed.
+    the worst violation is least, if there is no interval and any case did not fail; where the limit it belongs to does
+    not change with the number, that is no better than elsewhere, and the number as it stands is told. unchanged: limits
+    whose results do not change over the range by more than their bounds. cases: how many were computed. complete: False
+    where searches were stopped because no more cases were allowed.
     """
 
     holds: Verdict
@@ -146,8 +118,9 @@ class Sizing:
     nearest: Nearest | None
     invalid: tuple[Invalid, ...]
     tried: tuple[Tried, ...]
-    spacing: float
+    unchanged: tuple[int, ...]
     cases: int
+    complete: bool
 
 
 @dataclass(frozen=True)
@@ -161,53 +134,88 @@ class Solutions:
     touches: tuple[Touch, ...]
     nearest: Nearest | None
     invalid: tuple[Invalid, ...]
-    spacing: float
+    unchanged: tuple[int, ...]
     cases: int
+    complete: bool
 
 
-def usual_cases(scan: Range, sizes: int = 0) -> int:
-    """How many cases a search takes, about: the scan, two edges, two extremes and where cases begin to fail."""
-    return scan.count + sizes + 2 * 16 + 2 * 16 + 20
+def fewest_cases(scan: Range, sizes: int = 0) -> int:
+    """How many cases are looked at before any search."""
+    return scan.count + sizes
 
 
 def where_limits_hold(
-    evaluate: Evaluate, scan: Range, limits: Sequence[Limit], units: Sequence[str], sizes: Sequence[float] = ()
+    evaluate: Evaluate,
+    scan: Range,
+    limits: Sequence[Limit],
+    units: Sequence[str],
+    sizes: Sequence[float] = (),
+    *,
+    as_it_stands: float | None = None,
+    most_cases: float = np.inf,
 ) -> Sizing:
     """The intervals of one number over which all limits hold.
 
     evaluate: of cases of the one number. units: of each limit; those of one unit are compared as they are, those of
     several in parts of how far their results change. sizes: a list of which is told one by one whether they hold.
+    most_cases: no more than these are computed, at least `fewest_cases`.
     """
-    samples = Samples(evaluate, limits, units, np.concatenate([scan.places(), np.asarray(sizes, dtype=float)]))
+    places = np.concatenate([scan.places(), np.asarray(sizes, dtype=float)])
+    samples = Samples(evaluate, limits, units, places, most_cases)
     tried = tuple(_tried(samples, size) for size in sizes)
     samples.keep(scan.low, scan.high)
-    edges = _edges(samples, scan)
+    edges, complete = _searched(samples, (1,))
     intervals = _intervals(samples, edges)
-    if not intervals:
-        _approach(samples, 1)
     touches = _touches(samples, edges)
     is_covered = len(intervals) == 1 and intervals[0].low.kind == intervals[0].high.kind == "range"
     if intervals:
         holds: Verdict = "everywhere" if is_covered and not touches else "somewhere"
     else:
         holds = "undecided" if touches else "nowhere"
-    nearest = None if intervals else _nearest(samples, samples.worst)
-    return Sizing(holds, intervals, touches, nearest, _invalid(samples), tried, _spacing(scan), samples.cases)
+    nearest = None if intervals else _nearest(samples, samples.worst, as_it_stands)
+    unchanged = _unchanged(samples)
+    return Sizing(holds, intervals, touches, nearest, _invalid(samples), tried, unchanged, samples.cases, complete)
 
 
-def where_equal(evaluate: Evaluate, scan: Range, result: int, value: float) -> Solutions:
-    """Where one result has a value."""
-    samples = Samples(evaluate, [Limit(result, at_least=value)], [""], scan.places())
-    edges = _edges(samples, scan)
-    for side in (1, -1) if not edges else ():
-        _approach(samples, side)
+def where_equal(
+    evaluate: Evaluate,
+    scan: Range,
+    result: int,
+    value: float,
+    *,
+    as_it_stands: float | None = None,
+    most_cases: float = np.inf,
+) -> Solutions:
+    """Where one result has a value. most_cases: as for `where_limits_hold`."""
+    samples = Samples(evaluate, [Limit(result, at_least=value)], [""], scan.places(), most_cases)
+    edges, complete = _searched(samples, (1, -1))
     touches = _touches(samples, edges)
-    nearest = None if edges else _nearest(samples, -np.abs(samples.worst))
-    return Solutions(tuple(edges), touches, nearest, _invalid(samples), _spacing(scan), samples.cases)
+    nearest = None if edges else _nearest(samples, -np.abs(samples.worst), as_it_stands)
+    unchanged = _unchanged(samples)
+    return Solutions(tuple(edges), touches, nearest, _invalid(samples), unchanged, samples.cases, complete)
 
 
-def _spacing(scan: Range) -> float:
-    return float(np.diff(scan.places()).max())
+def _searched(samples: Samples, sides: tuple[int, ...]) -> tuple[list[Edge], bool]:
+    """All edges, and whether the cases allowed sufficed. sides: where the worst margin is led to without an edge."""
+    known = Edges(samples)
+    edges: list[Edge] | None = None
+    try:
+        known.close_in()
+        look_for_hidden(samples)
+        known.close_in()
+        for side in sides if not known.roots else ():
+            approach(samples, side)
+            narrow_invalid(samples)
+        known.close_in()
+        edges = known.proved()
+        _look_beside_touches(samples, edges)
+    except CasesUsedUp:
+        return known.as_known() if edges is None else edges, False
+    return edges, True
+
+
+def _unchanged(samples: Samples) -> tuple[int, ...]:
+    return tuple(np.flatnonzero(~samples.changes).tolist())
 
 
 def _tried(samples: Samples, size: float) -> Tried:
@@ -218,148 +226,6 @@ def _tried(samples: Samples, size: float) -> Tried:
     held: Held = ("no", "undecided", "yes")[samples.signs[index] + 1]
     margin, bound = float(samples.margins[index, limit]), float(samples.bounds[index, limit])
     return Tried(size, held, limit, margin, bound, None)
-
-
-# Edges
-
-
-def _edges(samples: Samples, scan: Range) -> list[Edge]:
-    """Where the worst margin passes through nothing, in order."""
-    _narrow_invalid(samples)
-    _look_into_ends(samples)
-    _look_for_hidden(samples)
-    closed: list[tuple[float, float, float]] = []
-    for _ in range(PASSES):
-        _narrow_invalid(samples)
-        brackets = _open_brackets(samples, closed)
-        if not brackets:
-            break
-        low, high = np.array(brackets).T
-        found = find_root(samples.worst_at, (low, high), tolerances=ROOT_TOLERANCES)
-        closed += [(float(found.x[index]), *brackets[index]) for index in np.flatnonzero(found.success)]
-    # Where cases went on failing beside it an edge is known to lie between two that did not.
-    _narrow_invalid(samples)
-    closed += [(low, low, high) for low, high in _open_brackets(samples, closed)]
-    return _proved(samples, sorted(closed))
-
-
-def _open_brackets(samples: Samples, closed: Sequence[tuple[float, float, float]]) -> list[tuple[float, float]]:
-    """Neighbours within a stretch that are decided differently, undecided ones between them left out.
-
-    closed: roots, each with the bracket it was found in.
-    """
-    found = []
-    for first, last in samples.stretches():
-        signs, numbers = samples.signs[first : last + 1], samples.numbers[first : last + 1]
-        for before, after in pairwise(np.flatnonzero(signs)):
-            pair = float(numbers[before]), float(numbers[after])
-            is_open = not any(low <= pair[0] and pair[1] <= high for _, low, high in closed)
-            found += [pair] if signs[before] != signs[after] and is_open else []
-    return found
-
-
-def _narrow_invalid(samples: Samples) -> None:
-    """Halve steps of which one end failed, so that it is known where cases begin to fail."""
-    widest = HALVED * np.diff(samples.numbers).max(initial=0.0)
-    for _ in range(HALVINGS):
-        ends = samples.numbers[:-1], samples.numbers[1:]
-        between = samples.usable[:-1] != samples.usable[1:]
-        wide = between & (ends[1] - ends[0] > np.minimum(widest, HALVED * np.abs(ends[1])))
-        if not wide.any():
-            break
-        samples.look(0.5 * (ends[0] + ends[1])[wide])
-
-
-def _look_into_ends(samples: Samples) -> None:
-    """Look into the first and last step of each stretch, where an extreme has no neighbours on both sides.
-
-    Where a parabola through the three outermost cases has its extreme if that is within the step, half-way if not.
-    """
-    places = []
-    for first, last in samples.stretches():
-        if last < first + 2:
-            continue
-        for end in (slice(first, first + 3), slice(last, last - 3 if last > 2 else None, -1)):
-            (x, y, z), (a, b, c) = samples.numbers[end], samples.worst[end]
-            near, far = (b - a) / (y - x), (c - b) / (z - y)
-            bend = (far - near) / (z - x)
-            extreme = 0.5 * (x + y) - 0.5 * near / bend if bend else np.inf
-            places.append(extreme if min(x, y) < extreme < max(x, y) else 0.5 * (x + y))
-    samples.look(np.array(places))
-
-
-def _look_for_hidden(samples: Samples) -> None:
-    """Look for extremes between neighbours on one side of the limits that may reach over to the other."""
-    for side in (1, -1):
-        worst, signs = side * samples.worst, side * samples.signs
-        # The middle one may be undecided; what it touches may be passed beside it.
-        alike = (signs[:-2] == 1) & (signs[1:-1] >= 0) & (signs[2:] == 1)
-        rises = np.maximum(worst[:-2], worst[2:]) - worst[1:-1]
-        near = worst[1:-1] < FARTHEST * rises
-        _descend(samples, side, np.flatnonzero(alike & near & _lowest(worst)) + 1, until_passed=True)
-
-
-def _lowest(worst: FloatArray) -> NDArray[np.bool_]:
-    """Which of all but the first and last is below its neighbours."""
-    lower, higher = np.minimum(worst[:-2], worst[2:]), np.maximum(worst[:-2], worst[2:])
-    return (worst[1:-1] <= lower) & (worst[1:-1] < higher)
-
-
-def _descend(samples: Samples, side: int, middles: NDArray[np.intp], *, until_passed: bool) -> None:
-    """Look for the lowest worst margin times `side` around some cases that are below their neighbours.
-
-    until_passed: go on only until it is below nothing for sure, or plainly stays above.
-    """
-    if not middles.size:
-        return
-
-    def sized(numbers: FloatArray) -> FloatArray:
-        at = samples.at(numbers)
-        # What is not a number ends the search for that element.
-        return np.where(until_passed & (samples.signs[at] == -side), np.nan, side * samples.worst[at])
-
-    bracket = tuple(samples.numbers[middles + step] for step in (-1, 0, 1))
-    tolerances = {"xatol": 0.0, "xrtol": EXTREME_WIDTH, "fatol": 0.0, "frtol": FLAT if until_passed else 0.0}
-    find_minimum(sized, bracket, tolerances=tolerances, maxiter=MOST_STEPS)
-
-
-def _proved(samples: Samples, roots: Sequence[tuple[float, float, float]]) -> list[Edge]:
-    """Edges with what ends them, the slope there, and how far off they may be.
-
-    roots: each with a bracket that is decided on both sides. The margin is continuous, so the edge lies between the
-    nearest cases that are decided; some more are looked at on either side where the slope lets them be.
-    """
-    if not roots:
-        return []
-    root, low, high = np.array(roots).T
-    step = SLOPE_STEP * (high - low)
-    sides = np.maximum(root - step, low), np.minimum(root + step, high)
-    samples.look(np.concatenate([root, *sides]))
-    at, before, after = samples.at(root), samples.at(sides[0]), samples.at(sides[1])
-    limits = np.array([samples.binding(index) for index in at])
-    values = [samples.values[place, limits] for place in (before, at, after)]
-    slopes = (values[2] - values[0]) / (sides[1] - sides[0])
-    with np.errstate(divide="ignore", invalid="ignore"):
-        # What the values are off by, and how the slopes to either side differ, which is more than their mean is off.
-        slope_errors = (samples.bounds[before, limits] + samples.bounds[after, limits]) / (sides[1] - sides[0])
-        slope_errors += np.abs(
-            (values[2] - values[1]) / (sides[1] - root) - (values[1] - values[0]) / (root - sides[0])
-        )
-        rooms = samples.bounds[at, limits] / np.abs(slopes) + np.spacing(np.abs(root))
-    rooms[np.isnan(rooms)] = 0.0
-    places = [np.clip(root + sign * far * rooms, low, high) for far in PROOF_AT for sign in (-1, 1)]
-    samples.look(np.concatenate(places))
-    numbers, signs = samples.numbers, samples.signs
-    edges = []
-    for index, number in enumerate(root):
-        # The nearest cases that are decided as the ends of the bracket are.
-        ends = signs[np.searchsorted(numbers, (low[index], high[index]))]
-        before = numbers[(signs == ends[0]) & (numbers <= number)].max()
-        after = numbers[(signs == ends[1]) & (numbers >= number)].min()
-        off = max(number - before, after - number)
-        slope = (float(slopes[index]), float(slope_errors[index])) if np.isfinite(slope_errors[index]) else (None, None)
-        edges.append(Edge("limit", float(number), float(off), int(limits[index]), *slope))
-    return edges
 
 
 # What the edges enclose
@@ -390,8 +256,6 @@ def _end_of_stretch(samples: Samples, index: int, beyond: int) -> Edge:
 
 def _touches(samples: Samples, edges: Sequence[Edge]) -> tuple[Touch, ...]:
     """Runs of undecided cases that do not belong to an edge."""
-    open_runs = _open_runs(samples, edges)
-    samples.look(np.array([place for run in open_runs for place in _just_outside(samples, *run)]))
     found = []
     for at, low, high in _open_runs(samples, edges):
         limit = samples.binding(at)
@@ -399,6 +263,12 @@ def _touches(samples: Samples, edges: Sequence[Edge]) -> tuple[Touch, ...]:
         ends = float(samples.numbers[low]), float(samples.numbers[high])
         found.append(Touch(float(samples.numbers[at]), *ends, limit, margin, bound))
     return tuple(found)
+
+
+def _look_beside_touches(samples: Samples, edges: Sequence[Edge]) -> None:
+    """Look where it is decided on either side of what is open."""
+    open_runs = _open_runs(samples, edges)
+    samples.look(np.array([place for run in open_runs for place in _just_outside(samples, *run)]))
 
 
 def _open_runs(samples: Samples, edges: Sequence[Edge]) -> list[tuple[int, int, int]]:
@@ -426,22 +296,34 @@ def _just_outside(samples: Samples, at: int, low: int, high: int) -> list[float]
     return found
 
 
-def _approach(samples: Samples, side: int) -> None:
-    """Look for where the worst margin times `side` is highest, around the highest cases."""
-    worst = -side * samples.worst
-    lowest = np.flatnonzero(_lowest(worst)) + 1
-    best = lowest[np.argsort(worst[lowest], kind="stable")[:MOST_APPROACHED]]
-    _descend(samples, -side, best, until_passed=False)
+def _nearest(samples: Samples, merit: FloatArray, as_it_stands: float | None) -> Nearest | None:
+    """The case of greatest merit; None where all failed.
 
-
-def _nearest(samples: Samples, merit: FloatArray) -> Nearest | None:
-    """The case of greatest merit; None where all failed."""
+    Where the limit that decides does not change beyond its bounds, the one nearest to the number as it stands of those
+    that are as good.
+    """
     if not samples.usable.any():
         return None
     index = int(np.nanargmax(merit))
     limit = samples.binding(index)
+    if not samples.changes[limit] and as_it_stands is not None:
+        alike = np.flatnonzero(merit >= merit[index] - 2.0 * np.nanmax(samples.bounds[:, limit]) / samples.scale[limit])
+        index = int(alike[np.argmin(np.abs(samples.numbers[alike] - as_it_stands))])
+        limit = samples.binding(index)
     margin, bound = float(samples.margins[index, limit]), float(samples.bounds[index, limit])
-    return Nearest(float(samples.numbers[index]), limit, margin, bound)
+    return Nearest(float(samples.numbers[index]), limit, margin, bound, _missed(samples, index))
+
+
+def _missed(samples: Samples, index: int) -> tuple[Missed, ...]:
+    """The limits that do not hold for sure in a case, worst first."""
+    held = np.asarray(surely_held(samples.margins, samples.bounds))
+    margins, bounds = samples.margins[index], samples.bounds[index]
+    order = np.argsort(margins / samples.scale, kind="stable")
+    return tuple(
+        Missed(int(limit), float(margins[limit]), float(bounds[limit]), bool(held[:, limit].any()))
+        for limit in order
+        if not held[index, limit]
+    )
 
 
 def _invalid(samples: Samples) -> tuple[Invalid, ...]:

@@ -53,8 +53,8 @@ class GoalReached(Model):
         description="It is no further off than this; null with it.", examples=[4e-8]
     )
     improvement: float | None = Field(
-        description="By how much the best values do better, in the unit of differences; null with it. It may be "
-        "negative where limits do not hold as it stands.",
+        description="By how much the best values do better, in the unit of differences; null with it, and where the "
+        "best values do not hold the limits. It may be negative where limits do not hold as it stands.",
         examples=[13.3],
     )
 
@@ -63,12 +63,19 @@ class BestLimit(LimitAnswer):
     """Whether a limit holds with the best values."""
 
     binds: bool = Field(description="Whether it holds only just: without it better values can be had.", examples=[True])
+    holds_elsewhere: bool = Field(
+        description="Whether it surely holds in some case that was computed.", examples=[True]
+    )
 
 
 class Clearance(Model):
     """How far apart rectangles are."""
 
-    least: float = Field(description="The least distance of two of them beyond the gap; unit `length`.", examples=[0.7])
+    least_distance: float = Field(description="The least distance of two of them; unit `length`.", examples=[2.2])
+    gap: float = Field(description="How far apart they have to be; unit `length`.", examples=[1.5])
+    beyond_gap: float = Field(
+        description="How much farther apart than that they are; unit `length`, not negative.", examples=[0.7]
+    )
     between: list[int] = Field(description="Which two, by their places in the list.", examples=[[0, 2]])
 
 

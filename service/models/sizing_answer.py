@@ -21,6 +21,26 @@ class RangeOfNumber(Model):
     as_it_stands: float = Field(description="Its value in the request as it stands.", examples=[300])
 
 
+class NumberInCase(Model):
+    """A number as it is in one case."""
+
+    number: str = Field(description="Its name.", examples=["film"])
+    unit: str = Field(description="Its unit; 1 for a plain number.", examples=["W/(m^2 K)"])
+    value: float = Field(description="Its value there.", examples=[11.2])
+
+
+class ToleranceZoneAnswer(Model):
+    """A number that may be off."""
+
+    number: str = Field(description="Its name.", examples=["film"])
+    unit: str = Field(description="Its unit; 1 for a plain number.", examples=["W/(m^2 K)"])
+    nominal: float | None = Field(
+        description="Its value as it stands; null for the number that is sized.", examples=[14]
+    )
+    plus: float = Field(description="How far upwards it may be off, in the unit of its differences.", examples=[2.8])
+    minus: float = Field(description="How far downwards.", examples=[2.8])
+
+
 class _OfLimit(Model):
     """Which limit is meant."""
 
@@ -29,15 +49,19 @@ class _OfLimit(Model):
         "meant.",
         examples=[0],
     )
+    name: str | None = Field(
+        description="What the limit is called; null where it has no name, and where none is meant.",
+        examples=["touch temperature"],
+    )
     result: str | None = Field(description="The name of its result; null where none is meant.", examples=["probe A"])
 
 
 class Edge(_OfLimit):
     """Where an interval ends."""
 
-    kind: Literal["limit", "range", "invalid"] = Field(
-        description="`limit`: beyond it a limit does not hold. `range`: the end of the range that was looked at. "
-        "`invalid`: beyond it there is no body, or no result.",
+    kind: Literal["limit", "target", "range", "invalid"] = Field(
+        description="`limit`: beyond it a limit does not hold. `target`: the result passes through the value it is to "
+        "have. `range`: the end of the range that was looked at. `invalid`: beyond it there is no body, or no result.",
         examples=["limit"],
     )
     value: float = Field(description="Value of the number there, in its unit.", examples=[212.6])
@@ -53,6 +77,11 @@ class Edge(_OfLimit):
     )
     slope_error_estimate: float | None = Field(
         description="Estimate of how far off the slope is; null with it.", examples=[4e-6]
+    )
+    corner: list[NumberInCase] | None = Field(
+        None,
+        description="Beside tolerances: the case around this value that holds the limit worst, the number itself "
+        "first. Left out elsewhere.",
     )
 
 
@@ -73,6 +102,34 @@ class WorstLimit(_OfLimit):
         examples=[-1.4],
     )
     error_bound: float | None = Field(description="The margin is no further off than this.", examples=[4e-8])
+    corner: list[NumberInCase] | None = Field(
+        None,
+        description="Beside tolerances: the case around this value that holds the limit worst, the number itself "
+        "first. Left out elsewhere.",
+    )
+
+
+class MissedLimit(_OfLimit):
+    """A limit that does not hold for certain."""
+
+    margin: float = Field(
+        description="Its margin, in the unit of differences of its result; beside `target` the result less the value.",
+        examples=[-5],
+    )
+    error_bound: float = Field(description="The margin is no further off than this.", examples=[4e-8])
+    holds_elsewhere: bool = Field(
+        description="Whether it surely holds at some other value of the number that was looked at: limits of which "
+        "each does exclude each other.",
+        examples=[True],
+    )
+
+
+class Nearest(WorstLimit):
+    """Where limits are missed least."""
+
+    missed: list[MissedLimit] = Field(
+        description="All limits that do not hold for certain there, worst first; empty beside `target`."
+    )
 
 
 class Touch(WorstLimit):
@@ -145,18 +202,31 @@ class SizingOutcome(Model):
     touches: list[Touch] = Field(
         description="Where a limit, or the value, is met to within the errors without being passed for certain."
     )
-    nearest: WorstLimit | None = Field(
+    nearest: Nearest | None = Field(
         description="Where limits hold nowhere: the value of the number at which the worst of them is missed least, "
-        "and by how much. Where a result does not pass through its value: where it comes nearest. null otherwise."
+        "and by how much; the one nearest to the number as it stands if it makes no difference. Where a result does "
+        "not pass through its value: where it comes nearest. null otherwise."
     )
     invalid: list[Invalid] = Field(description="Parts of the range without results, and why.")
     sizes: SizesAnswer | None = Field(description="The sizes that can be had; null where none were asked about.")
-    spacing: float = Field(
-        description="Widest spacing of the places looked at first, in the unit of the number. Between neighbours that "
-        "agree an edge was looked for only where they come near a limit: what is narrower than this may be missed.",
+    tolerances: list[ToleranceZoneAnswer] | None = Field(
+        None, description="What may be off, the number itself first; left out without tolerances."
+    )
+    spacing: float | None = Field(
+        description="Spacing of the places looked at first, in the unit of the number. Between neighbours that agree "
+        "an edge was looked for only where an extreme shows on them: what is narrower than this may be missed. null "
+        "where they are spread with equal ratios.",
         examples=[10.9],
     )
+    spacing_ratio: float | None = Field(
+        description="Ratio of each place looked at first to the one before, where they are spread with equal ratios; "
+        "null elsewhere.",
+        examples=[1.33],
+    )
     case_count: int = Field(description="How many cases were computed.", examples=[49])
+    complete: bool = Field(
+        description="false where the search was stopped because `most_cases` were computed.", examples=[True]
+    )
 
 
 class SizingAnswer(AnalysisAnswer):

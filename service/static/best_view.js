@@ -23,15 +23,17 @@ export function bestView(answer, asked) {
     beforeAfter(best, results, asked, units),
     placement(asked, best.numbers, units),
     best.limits.length ? limitsTable(best.limits, best.results, units) : null,
-    ...best.apart.map(({ least }) => make("p", { class: "hint" }, `Beyond the gap asked for, the nearest two are ${withUnit(found(least), units.length)} apart.`)),
+    ...best.apart.map(({ least_distance: distance, gap }) => make("p", { class: "hint" }, `The nearest two are ${withUnit(found(distance), units.length)} apart; asked for is ${withUnit(brief(gap), units.length)}.`)),
     make("p", { class: "hint" }, `${counted(outcome.case_count)} cases, ${counted(outcome.failed_count)} of them without a result; ${outcome.same_goal_count} of ${outcome.searches.length} searches came to the same. Nothing is proved of values far from where they began.`),
     behind("Searches, and results before and after", searchesTable(outcome, asked), resultsTable(best.results, results)),
   ].filter(Boolean);
 }
 
-function goalVerdict({ goal }, asked, units) {
+function goalVerdict(best, asked, units) {
+  const { goal } = best;
   const step = differenceOf(goal.unit, units);
   const what = `The ${asked.goal.minimise ? "largest" : "least"} is ${withUnit(shown(goal.value, Math.max(goal.error_bound, goal.search_error_estimate)), goal.unit)}, that of ${goal.leading.join(" and ")}`;
+  if (best.all_held === "no") return verdict("open", "What is missed least", `${what}; that is no improvement on anything that holds the limits.`);
   const gain = goal.improvement === null ? "; the numbers as they stand lie outside their ranges." : `, where it is ${withUnit(brief(Number(goal.as_it_stands.toPrecision(6))), goal.unit)} as it stands: ${goal.improvement >= 0 ? "better" : "worse"} by ${withUnit(found(Math.abs(goal.improvement)), step)}.`;
   return verdict(goal.improvement === null || goal.improvement >= 0 ? "good" : "open", "Best values found", `${what}${gain} Nearby it could be better by about ${bounded(goal.search_error_estimate)} ${pretty(step)} at most.`);
 }

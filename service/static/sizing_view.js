@@ -4,7 +4,7 @@ import { axis, behind, chart, COLOURS, HELD_BAND, limitLine } from "./charts.js"
 import { make, verdict } from "./elements.js";
 import { bounded, brief, pretty, shown } from "./numbers.js";
 import { switched } from "./switched.js";
-import { differenceOf, headed, heldWord, limitWords, rowHead, table, valueCell, withUnit } from "./tables.js";
+import { differenceOf, headed, heldWord, rowHead, table, valueCell, withUnit } from "./tables.js";
 
 /**
  * The cases that draw the curve: the answer itself tells only where it crosses. Limits come back in the units of results.
@@ -12,7 +12,7 @@ import { differenceOf, headed, heldWord, limitWords, rowHead, table, valueCell, 
  */
 export function curveRequest(request, answer, points) {
   const { low, high, name } = answer.sizing.number;
-  const { spread, low: typedLow, high: typedHigh, count, ...reference } = request.number;
+  const { spread, low: typedLow, high: typedHigh, count, plus_minus: both, plus, minus, ...reference } = request.number;
   const part = (index) => index / (points - 1);
   const value = spread === "logarithmic" ? (index) => low * (high / low) ** part(index) : (index) => low + (high - low) * part(index);
   const values = Array.from({ length: points }, (_, index) => (index === points - 1 ? high : value(index)));
@@ -40,7 +40,6 @@ export function sizingView(answer, asked, cases) {
     ...sizing.touches.map((touch) => verdict("open", "Touched", `Between ${brief(touch.low)} and ${withUnit(brief(touch.high), number.unit)} the limit on ${touch.result ?? "the result"} is met to within the errors, so it is left open whether it is passed.`)),
     ...sizing.invalid.map((part) => verdict("open", `No result from ${brief(part.low)} to ${withUnit(brief(part.high), number.unit)}`, part.message)),
     sizing.sizes ? sizesTable(sizing.sizes, number, answer) : null,
-    make("p", { class: "hint" }, `Looked at first every ${withUnit(brief(Number(sizing.spacing.toPrecision(3))), number.unit)} or nearer; what is narrower may be missed.`),
     cases ? behind("Values behind the picture", curveTable(cases)) : null,
   ].filter(Boolean);
 }
@@ -61,7 +60,7 @@ function verdictOf({ holds, number, intervals, nearest, solutions }, asked) {
   return verdict("bad", "Nowhere in the range do all limits hold", missed);
 }
 
-const EDGES = { limit: "a limit", range: "end of the range", invalid: "no result beyond" };
+const EDGES = { limit: "a limit", target: "the value", range: "end of the range", invalid: "no result beyond" };
 
 function edgeCell(edge, asked) {
   const why = edge.kind === "limit" && edge.limit !== null ? asked.limits?.[edge.limit]?.name ?? edge.result : EDGES[edge.kind];
@@ -108,7 +107,7 @@ function picture(answer, asked, { numbers, columns, limits }, { name, unit }) {
   const isLogarithmic = asked.number.spread === "logarithmic";
   const band = (from, to, colour) => ({ type: "rect", yref: "paper", y0: 0, y1: 1, x0: from, x1: to, fillcolor: colour, line: { width: 0 }, layer: "below" });
   const drawn = lines.map(([level, words]) => limitLine(level, words));
-  const edges = [...sizing.intervals.flatMap(({ low, high }) => [low, high]), ...sizing.solutions].filter(({ kind }) => kind === "limit");
+  const edges = [...sizing.intervals.flatMap(({ low, high }) => [low, high]), ...sizing.solutions].filter(({ kind }) => kind === "limit" || kind === "target");
   return chart({
     label: `Curve of ${name} over ${number.name}, with its limits; where all limits hold is shaded. The numbers are in the tables that follow.`,
     caption: `${sizing.intervals.length ? "Shaded: all limits hold. " : ""}Dashed: the limit. Thin: where an edge lies. The ring is the number as it stands.`,

@@ -12,11 +12,12 @@ from service.analysis.evaluations import Evaluate, FloatArray
 from service.analysis.limits import Limit, verdict
 from service.models import best_values as models
 from service.translation.analysis import Analysis, AnalysisCall, Prepared
-from service.translation.answers import warning
+from service.translation.answers import Warning_, warning
 from service.translation.apart import ApartReader, Rectangles
 from service.translation.collector import Collector
 from service.translation.limits import all_held, limit_shown
 from service.translation.measures import read_measured
+from service.translation.named_places import with_names
 from service.translation.numbers import NumberInfo
 
 LOCAL = (
@@ -24,6 +25,9 @@ LOCAL = (
     "search proves that nothing better lies elsewhere. More `starts` make that less likely."
 )
 NO_ROOM = "No place was found at which all rectangles are as far apart as they have to be."
+UNDECIDED = "With these values it is not certain that all limits hold: the errors leave it open."
+USED_UP = "Searches were stopped because no more cases were allowed; more `most_cases` may find better values."
+NO_INFLUENCE = "The numbers have no influence on the goal: in all cases it is the same to within the error bounds."
 ALL_FAILED = "Every case failed; `failures` has the reasons."
 
 
@@ -71,8 +75,8 @@ def read_best_values(question: models.BestValuesQuestion, prepared: Prepared) ->
             most_cases=question.most_cases,
             seed=question.seed,
         )
-        warnings = [warning("local-search", LOCAL, "#/best_values")]
-        return {"best_values": _outcome(found, wanted, prepared), "warnings": warnings}
+        outcome = _outcome(found, wanted, prepared)
+        return {"best_values": outcome, "warnings": _remarks(found, outcome, wanted)}
 
     return Analysis(prepared, prepared.plan(infos, targets), question.most_cases, run)
 
@@ -113,7 +117,10 @@ def _outcome(found: BestValues, wanted: _Wanted, prepared: Prepared) -> dict[str
         "same_goal_count": sum(start.same_goal for start in found.starts),
         "case_count": found.cases,
         "failed_count": found.failed,
-        "failures": [{"code": failure.code, "message": failure.message} for failure in found.failures.values()],
+        "failures": [
+            {"code": failure.code, "message": with_names(failure.message, prepared.document)}
+            for failure in found.failures.values()
+        ],
         "complete": found.complete,
     }
 
@@ -132,7 +139,7 @@ def _best(found: BestValues, best: Best, wanted: _Wanted, prepared: Prepared) ->
             for index, info in enumerate(wanted.infos)
         ],
         "results": prepared.results_shown(best.values, best.bounds),
-        "goal": _goal(found, best, wanted, prepared),
+        "goal": _goal(found, best, wanted, prepared, is_missed="no" in held),
         "all_held": all_held(held),
         "limits": [
             {
@@ -141,6 +148,7 @@ def _best(found: BestValues, best: Best, wanted: _Wanted, prepared: Prepared) ->
                 "margin": float(best.margins[index]),
                 "error_bound": float(best.margin_bounds[index]),
                 "binds": index in best.binding,
+                "holds_elsewhere": best.held_elsewhere[index],
             }
             for index, (asked, limit) in enumerate(zip(wanted.asked.limits, wanted.limits, strict=True))
         ],
@@ -148,7 +156,7 @@ def _best(found: BestValues, best: Best, wanted: _Wanted, prepared: Prepared) ->
     }
 
 
-def _goal(found: BestValues, best: Best, wanted: _Wanted, prepared: Prepared) -> dict[str, Any]:
+def _goal(found: BestValues, best: Best, wanted: _Wanted, prepared: Prepared, *, is_missed: bool) -> dict[str, Any]:
     infos = [prepared.results.infos[result] for result in wanted.goal.results]
     first, first_bound = found.at_first or (None, None)
     return {
@@ -159,14 +167,60 @@ def _goal(found: BestValues, best: Best, wanted: _Wanted, prepared: Prepared) ->
         "leading": [infos[place].name for place in best.leading],
         "as_it_stands": first,
         "as_it_stands_error_bound": first_bound,
-        "improvement": None if first is None else wanted.goal.sign * (first - best.goal),
+        "improvement": None if first is None or is_missed else wanted.goal.sign * (first - best.goal),
     }
 
 
 def _clearance(rectangles: Rectangles, numbers: FloatArray) -> dict[str, Any]:
     clear = rectangles.clearances(numbers[None])[0]
     index = int(np.argmin(clear))
-    return {"least": float(clear[index]), "between": rectangles.pair(index)}
+    return {
+        "least_distance": float(clear[index]) + rectangles.gap,
+        "gap": rectangles.gap,
+        "beyond_gap": float(clear[index]),
+        "between": rectangles.pair(index),
+    }
+
+
+def _remarks(found: BestValues, outcome: dict[str, Any], wanted: _Wanted) -> list[Warning_]:
+    """What has to be said beside an outcome."""
+    best = outcome["best"]
+    if best is None:
+        return [warning("no-best-values", outcome["reason"], "#/best_values/reason")]
+    remarks = []
+    if best["all_held"] == "no":
+        remarks.append(warning("limits-missed", _missed(best["limits"], wanted), "#/best_values/best/all_held"))
+    else:
+        remarks.append(warning("local-search", LOCAL, "#/best_values"))
+    if best["all_held"] == "undecided":
+        remarks.append(warning("undecided", UNDECIDED, "#/best_values/best/all_held"))
+    if not found.complete:
+        remarks.append(warning("cases-used-up", USED_UP, "#/best_values/complete"))
+    if not found.goal_changes:
+        remarks.append(warning("no-influence", NO_INFLUENCE, "#/best_values/best/goal"))
+    return remarks
+
+
+def _missed(limits: list[dict[str, Any]], wanted: _Wanted) -> str:
+    """Which limits cannot be had, and which exclude each other."""
+    names = [
+        f'"{asked.name}"' if asked.name is not None else f'limit {index} on "{asked.result}"'
+        for index, asked in enumerate(wanted.asked.limits)
+    ]
+    missed = [index for index, limit in enumerate(limits) if limit["held"] != "yes"]
+    alone = [names[index] for index in missed if limits[index]["holds_elsewhere"]]
+    never = [names[index] for index in missed if not limits[index]["holds_elsewhere"]]
+    sentence = f"No values were found with which all limits hold; these miss {_listed([names[i] for i in missed])} "
+    sentence += "least. They are no improvement on anything that holds."
+    if len(alone) > 1:
+        sentence += f" Each of {_listed(alone)} holds in some case, but nowhere were they found to hold together."
+    if never:
+        sentence += f" In no case was {_listed(never, 'or')} found to hold."
+    return f"{sentence} Local searches do not prove that there are none; more `starts` make that less likely."
+
+
+def _listed(parts: list[str], word: str = "and") -> str:
+    return parts[0] if len(parts) == 1 else f"{', '.join(parts[:-1])} {word} {parts[-1]}"
 
 
 def _search(start: Start) -> dict[str, Any]:

@@ -1,31 +1,26 @@
-"""Where one number makes limits hold: the question read, and its answer."""
+"""Where one number makes limits hold: the question read."""
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from dataclasses import dataclass
 from typing import Any
+
+import numpy as np
 
 from service.analysis.evaluations import Evaluate
 from service.analysis.limits import Limit
 from service.analysis.samples import Range
-from service.analysis.sizing import (
-    Edge,
-    Interval,
-    Invalid,
-    Nearest,
-    Sizing,
-    Solutions,
-    Touch,
-    Tried,
-    usual_cases,
-    where_equal,
-    where_limits_hold,
-)
+from service.analysis.sizing import SEARCHED, fewest_cases, where_equal, where_limits_hold
+from service.analysis.zone import WorstInZone, Zone, looks_at_a_place
 from service.models import sizing as models
+from service.models.tolerances import TolerancedNumber
+from service.refusals import Path
 from service.translation.analysis import Analysis, AnalysisCall, Prepared
 from service.translation.collector import Collector
 from service.translation.measures import read_measured
-from service.translation.numbers import NumberInfo, read_number
+from service.translation.numbers import NumberInfo, NumberTarget, read_number
+from service.translation.sizing_answer import Asked, shown_sizing, shown_solutions
+from service.translation.spreads import Spread, read_spread
 
 
 def read_sizing(question: models.SizingQuestion, prepared: Prepared) -> Analysis:
@@ -35,6 +30,7 @@ def read_sizing(question: models.SizingQuestion, prepared: Prepared) -> Analysis
     read = read_number(collector, asked, prepared.document, prepared.problem.units, ("number",))
     limits = prepared.limits(collector, question.limits or ())
     target = _read_target(collector, question.target, prepared) if question.target is not None else None
+    infos, targets = prepared.numbers(collector, question.tolerances, ("tolerances",))
     collector.raise_if_any()
     assert read is not None
     info, number_target = read
@@ -42,18 +38,40 @@ def read_sizing(question: models.SizingQuestion, prepared: Prepared) -> Analysis
     sizes = [
         read_measured(collector, info.measure, size, ("sizes", index)) for index, size in enumerate(question.sizes)
     ]
+    numbers = _Numbers(question, (info, *infos), (number_target, *targets))
+    zone = numbers.zone(collector) if question.tolerances or asked.is_off else None
     collector.raise_if_any()
 
-    def run(evaluate: Evaluate) -> dict[str, Any]:
-        if target is not None:
-            found = where_equal(evaluate, scan, target.result, target.at_least)
-            return {"sizing": _Shown(info, scan, [target], prepared, is_target=True).solutions(found)}
-        units = [prepared.results.infos[limit.result].measure.difference_unit for limit in limits]
-        held = where_limits_hold(evaluate, scan, limits, units, sizes)
-        return {"sizing": _Shown(info, scan, limits, prepared, is_target=False).sizing(held)}
+    looks = 1 if zone is None else looks_at_a_place(zone)
+    fewest = fewest_cases(scan, len(sizes))
+    if question.most_cases is not None and question.most_cases < fewest * looks:
+        detail = f"The places looked at first take {fewest * looks} cases; allow more, or lower `count`."
+        collector.add(("most_cases",), detail, "too-few")
+        collector.raise_if_any()
+    most_cases = question.most_cases or (fewest + SEARCHED) * looks
+    told = Asked(prepared, numbers.infos, scan, tuple(limits) if target is None else (target,), question, zone, looks)
 
-    plan = prepared.plan((info,), (number_target,))
-    return Analysis(prepared, plan, usual_cases(scan, len(sizes)), run)
+    def run(evaluate: Evaluate) -> dict[str, Any]:
+        most = most_cases // looks
+        if target is not None:
+            solutions = where_equal(
+                evaluate, scan, target.result, target.at_least, as_it_stands=info.nominal, most_cases=most
+            )
+            return shown_solutions(solutions, told)
+        units = [prepared.results.infos[limit.result].measure.difference_unit for limit in limits]
+        worst = None if zone is None else WorstInZone(evaluate, limits, zone, [each.name for each in numbers.infos])
+        held = where_limits_hold(
+            evaluate if worst is None else worst,
+            scan,
+            limits if worst is None else worst.limits,
+            units,
+            sizes,
+            as_it_stands=info.nominal,
+            most_cases=most,
+        )
+        return shown_sizing(held, told, worst)
+
+    return Analysis(prepared, prepared.plan(numbers.infos, numbers.targets), most_cases, run)
 
 
 def _read_target(collector: Collector, target: models.Target, prepared: Prepared) -> Limit:
@@ -76,106 +94,48 @@ def _read_range(collector: Collector, asked: models.SizedNumber, info: NumberInf
     return Range(low, high, asked.count, asked.spread == "logarithmic")
 
 
-class _Shown:
-    """What was found, in the words of the answer."""
+@dataclass(frozen=True)
+class _Numbers:
+    """The number that is sized and those that may be off, in this order."""
 
-    def __init__(
-        self, info: NumberInfo, scan: Range, limits: Sequence[Limit], prepared: Prepared, *, is_target: bool
-    ) -> None:
-        self._info, self._scan = info, scan
-        self._names = [prepared.results.infos[limit.result].name for limit in limits]
-        self._is_target = is_target
+    question: models.SizingQuestion
+    infos: tuple[NumberInfo, ...]
+    targets: tuple[NumberTarget, ...]
 
-    def sizing(self, found: Sizing) -> dict[str, Any]:
-        """Where limits hold."""
-        return {
-            **self._number(),
-            "holds": found.holds,
-            "intervals": [self._interval(interval) for interval in found.intervals],
-            "solutions": [],
-            **self._common(found),
-            "sizes": self._sizes(found.tried) if found.tried else None,
-            **_effort(found),
-        }
+    def zone(self, collector: Collector) -> Zone:
+        """How far all of them may be off. Notes what is at fault."""
+        sized = self.question.number
+        if len(self.question.tolerances) + sized.is_off > models.MOST_TOLERANCES:
+            detail = f"At most {models.MOST_TOLERANCES} tolerances can be had, with that of the number itself: each "
+            detail += "more doubles the corners. Keep those that matter; /v1/tolerances ranks them."
+            collector.add(("tolerances",), detail, "too-many")
+        self._check_apart(collector)
+        spreads = [_spread(collector, sized, self.infos[0], ("number",)) if sized.is_off else None]
+        for index, (each, info) in enumerate(zip(self.question.tolerances, self.infos[1:], strict=True)):
+            spreads.append(_spread(collector, each, info, ("tolerances", index)))
+        return Zone(
+            np.array([info.nominal for info in self.infos[1:]]),
+            np.array([0.0 if spread is None else spread.plus for spread in spreads]),
+            np.array([0.0 if spread is None else spread.minus for spread in spreads]),
+        )
 
-    def solutions(self, found: Solutions) -> dict[str, Any]:
-        """Where a result has its value."""
-        return {
-            **self._number(),
-            "holds": None,
-            "intervals": [],
-            "solutions": [self._edge(crossing) for crossing in found.crossings],
-            **self._common(found),
-            "sizes": None,
-            **_effort(found),
-        }
-
-    def _number(self) -> dict[str, Any]:
-        return {
-            "number": {
-                "name": self._info.name,
-                "unit": self._info.measure.unit,
-                "low": self._scan.low,
-                "high": self._scan.high,
-                "as_it_stands": self._info.nominal,
-            }
-        }
-
-    def _common(self, found: Sizing | Solutions) -> dict[str, Any]:
-        return {
-            "touches": [{**self._worst(touch), "low": touch.low, "high": touch.high} for touch in found.touches],
-            "nearest": None if found.nearest is None else self._worst(found.nearest),
-            "invalid": [_invalid(part) for part in found.invalid],
-        }
-
-    def _of(self, limit: int | None) -> dict[str, Any]:
-        return {
-            "limit": None if self._is_target else limit,
-            "result": None if limit is None else self._names[limit],
-        }
-
-    def _interval(self, interval: Interval) -> dict[str, Any]:
-        return {"low": self._edge(interval.low), "high": self._edge(interval.high)}
-
-    def _edge(self, edge: Edge) -> dict[str, Any]:
-        return {
-            "kind": edge.kind,
-            "value": edge.number,
-            "error_bound": edge.error_bound,
-            **self._of(edge.limit),
-            "slope": edge.slope,
-            "slope_error_estimate": edge.slope_error,
-        }
-
-    def _worst(self, at: Touch | Nearest | Tried) -> dict[str, Any]:
-        return {"value": at.number, **self._of(at.limit), "margin": at.margin, "error_bound": at.error_bound}
-
-    def _sizes(self, tried: Sequence[Tried]) -> dict[str, Any]:
-        good = [size.number for size in tried if size.held == "yes"]
-        return {
-            "each": [self._size(size) for size in tried],
-            "least": min(good, default=None),
-            "greatest": max(good, default=None),
-        }
-
-    def _size(self, size: Tried) -> dict[str, Any]:
-        failure = size.failure
-        why = {} if failure is None else {"code": failure.code, "message": failure.message}
-        return {**self._worst(size), "held": size.held, **why}
+    def _check_apart(self, collector: Collector) -> None:
+        """Note tolerances that are of the number that is sized."""
+        taken = {leaf.path for leaf in self.targets[0].leaves}
+        for index, (info, target) in enumerate(zip(self.infos[1:], self.targets[1:], strict=True)):
+            if info.name == self.infos[0].name:
+                collector.add(("tolerances", index, "name"), "Another number has this name already.", "name")
+            if any(leaf.path in taken for leaf in target.leaves):
+                detail = f'"{self.infos[0].name}" changes the same place; give its own tolerance as `plus_minus` there.'
+                collector.add(("tolerances", index, target.way), detail, "changed-twice")
 
 
-def _invalid(part: Invalid) -> dict[str, Any]:
-    return {
-        "low": part.low,
-        "high": part.high,
-        "error_bound": part.error_bound,
-        "code": part.failure.code,
-        "message": part.failure.message,
-    }
-
-
-def _effort(found: Sizing | Solutions) -> dict[str, Any]:
-    return {"spacing": found.spacing, "case_count": found.cases}
+def _spread(
+    collector: Collector, asked: models.ToleranceOfNumber | models.SizedNumber, info: NumberInfo, path: Path
+) -> Spread | None:
+    """The tolerance of a number, read as the call about tolerances reads it."""
+    fields = asked.model_dump(exclude_none=True, include=set(models.ToleranceOfNumber.model_fields))
+    return read_spread(collector, TolerancedNumber.model_validate(fields), info, path)
 
 
 CALL = AnalysisCall("sizing", models.SizingQuestion, read_sizing)

@@ -9,10 +9,11 @@ import numpy as np
 import pytest
 from scipy.optimize import brentq
 
-from service.analysis import sizing
+from service.analysis import edges
 from service.analysis.limits import Limit
 from service.analysis.samples import Range
-from service.analysis.sizing import Edge, Sizing, where_equal, where_limits_hold
+from service.analysis.edges import Edge
+from service.analysis.sizing import Sizing, where_equal, where_limits_hold
 from tests.analysis.functions import BAD, Functions, of_one
 
 
@@ -190,7 +191,7 @@ def test_cases_that_fail_beside_an_edge_leave_it_between_those_that_do_not() -> 
 
 
 def test_an_edge_among_cases_that_go_on_failing_is_told_as_near_as_can_be(monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr(sizing, "PASSES", 1)
+    monkeypatch.setattr(edges, "PASSES", 1)
     # Fails between the edge and the first step of the search that closes it in.
     found = sized(lambda x: x**3, Limit(0, at_most=8.0), Range(0.0, 3.1), is_valid=lambda x: not 1.97 < x < 1.9995)
     last = found.intervals[-1].high

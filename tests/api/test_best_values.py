@@ -16,12 +16,12 @@ PATCHES = "/problem/faces/z_high/inflow/patches"
 INSULATED: Json = {"condition": "insulated"}
 
 
-async def best(client: httpx.AsyncClient, question: Json) -> Json:
-    """The answer to a question about best values."""
+async def best(client: httpx.AsyncClient, question: Json, *warned: str) -> Json:
+    """The answer to a question about best values. warned: codes of its warnings, one of a local search if left out."""
     answer = await client.post("/v1/best-values", json=question)
     assert answer.status_code == 200, answer.text
     BestValuesAnswer.model_validate(answer.json())
-    assert [warning["code"] for warning in answer.json()["warnings"]] == ["local-search"]
+    assert [warning["code"] for warning in answer.json()["warnings"]] == list(warned or ("local-search",))
     found: Json = answer.json()["best_values"]
     return found
 
@@ -103,7 +103,14 @@ async def test_two_pads_take_half_of_a_strip_each(client: httpx.AsyncClient) -> 
     middles = sorted(4 - shift + number["value"] for shift, number in zip((0, -10), case["numbers"], strict=True))
     assert middles == pytest.approx([10, 30], abs=0.02)
     assert case["goal"]["leading"] == ["pad 0", "pad 1"]
-    assert case["apart"] == [{"least": pytest.approx(15, abs=0.04), "between": [0, 1]}]
+    assert case["apart"] == [
+        {
+            "least_distance": pytest.approx(16, abs=0.04),
+            "gap": 1,
+            "beyond_gap": pytest.approx(15, abs=0.04),
+            "between": [0, 1],
+        }
+    ]
 
 
 async def test_pads_that_both_want_one_place_stop_at_the_gap(client: httpx.AsyncClient) -> None:
@@ -114,11 +121,11 @@ async def test_pads_that_both_want_one_place_stop_at_the_gap(client: httpx.Async
     ends = sorted([8 + case["numbers"][0]["value"], 20 + case["numbers"][1]["value"]])
     # One at the cooled side, the other 1 mm behind it.
     assert ends == pytest.approx([0, 5], abs=1e-3)
-    assert 0 <= case["apart"][0]["least"] < 1e-3
+    assert 0 <= case["apart"][0]["beyond_gap"] < 1e-3
 
 
 async def test_a_search_stops_at_the_cases_it_may_have(client: httpx.AsyncClient) -> None:
-    found = await best(client, strip(2, 12) | {"most_cases": 30})
+    found = await best(client, strip(2, 12) | {"most_cases": 30}, "local-search", "cases-used-up")
     assert not found["complete"]
     assert found["case_count"] <= 30
     assert {search["ended"] for search in found["searches"]} == {"cases used up"}
@@ -127,7 +134,7 @@ async def test_a_search_stops_at_the_cases_it_may_have(client: httpx.AsyncClient
 async def test_rectangles_without_room_have_no_best_values(client: httpx.AsyncClient) -> None:
     question = strip(2, 12)
     question["apart"][0]["gap"] = 39
-    found = await best(client, question)
+    found = await best(client, question, "no-best-values")
     assert (found["best"], found["case_count"]) == (None, 0)
     assert found["reason"].startswith("No place was found at which all rectangles")
 
@@ -136,12 +143,35 @@ async def test_cases_without_a_body_are_named(client: httpx.AsyncClient) -> None
     question = strip(2, 12) | {"apart": []}
     for number in question["numbers"]:
         number["low"], number["high"] = 40, 60
-    found = await best(client, question)
+    found = await best(client, question, "no-best-values")
     assert found["best"] is None
     assert found["reason"].startswith("Every case failed")
     assert found["failed_count"] == found["case_count"] > 0
     assert len(found["failures"]) == 1
-    assert f"{PATCHES}/0" in found["failures"][0]["message"]
+    assert "/problem/faces/z_high/inflow" in found["failures"][0]["message"]
+    assert 'Patch 0 ("pad 0") reaches' in found["failures"][0]["message"]
+
+
+async def test_limits_that_exclude_each_other_are_named_and_nothing_is_called_better(client: httpx.AsyncClient) -> None:
+    question = wall()
+    question["limits"].append({"result": "loss", "at_least": 0})
+    found = await best(client, question, "limits-missed")
+    case = found["best"]
+    assert (case["all_held"], case["goal"]["improvement"]) == ("no", None)
+    assert [limit["holds_elsewhere"] for limit in case["limits"]] == [True, False]
+    answer = (await client.post("/v1/best-values", json=question)).json()
+    assert 'In no case was limit 1 on "loss" found to hold.' in answer["warnings"][0]["message"]
+    question["limits"] = [{"name": "warm", "result": "surface", "at_least": 70}, *question["limits"][:1]]
+    answer = (await client.post("/v1/best-values", json=question)).json()
+    assert [limit["margin"] for limit in answer["best_values"]["best"]["limits"]] == pytest.approx([-5, -5], abs=1e-2)
+    assert 'Each of "warm" and "touch" holds in some case' in answer["warnings"][0]["message"]
+
+
+async def test_a_goal_that_does_not_change_is_told(client: httpx.AsyncClient) -> None:
+    question = wall()
+    question["results"] = [{"name": "behind", "result": "mean", "face": "z_high"}]
+    question |= {"goal": {"minimise": ["behind"]}, "limits": []}
+    await best(client, question, "local-search", "no-influence")
 
 
 @pytest.mark.parametrize(

@@ -39,9 +39,9 @@ def wall() -> Json:
 THICKNESS: Json = {"name": "thickness", "at": "/problem/body/size/z", "low": "1 cm", "high": "5 m"}
 
 
-def check_edge(edge: Json, expected: float, within: float = 1e-6) -> None:
+def check_edge(edge: Json, expected: float, within: float = 1e-6, kind: str = "limit") -> None:
     """Fail unless an edge is where it should be to its bound, and that bound is worth having."""
-    assert edge["kind"] == "limit"
+    assert edge["kind"] == kind
     assert abs(edge["value"] - expected) <= edge["error_bound"] < within * abs(expected)
 
 
@@ -71,7 +71,9 @@ async def test_film_coefficient_over_decades_for_a_value(client: httpx.AsyncClie
     found = await sized(client, problem, [SURFACE], number=film | {"spread": "logarithmic"}, target=target)
     (solution,) = found["solutions"]
     # h (60 - 25) = k (800 - 60) / d
-    check_edge(solution, 1.2 * 740 / 0.3 / 35)
+    check_edge(solution, 1.2 * 740 / 0.3 / 35, kind="target")
+    assert found["spacing"] is None
+    assert found["spacing_ratio"] == pytest.approx(1e6 ** (1 / 32))
     assert (found["holds"], found["intervals"], found["sizes"], solution["limit"]) == (None, [], None, None)
 
 
@@ -96,7 +98,7 @@ async def test_a_probe_is_moved_to_where_a_square_bar_has_decayed(client: httpx.
     number = {"name": "depth", "at": "/results/0/at/2", "low": 0.5, "high": 40}
     found = await sized(client, problem, [probe], number=number, target={"result": "probe", "equals": math.exp(-1)})
     (solution,) = found["solutions"]
-    check_edge(solution, 40 / (math.pi * math.sqrt(2)), within=1e-5)
+    check_edge(solution, 40 / (math.pi * math.sqrt(2)), within=1e-5, kind="target")
 
 
 async def test_where_limits_hold_nowhere_the_nearest_is_told(client: httpx.AsyncClient) -> None:
