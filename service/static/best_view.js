@@ -32,10 +32,10 @@ export function bestView(answer, asked) {
 function goalVerdict(best, asked, units) {
   const { goal } = best;
   const step = differenceOf(goal.unit, units);
-  const what = `The ${asked.goal.minimise ? "largest" : "least"} is ${withUnit(shown(goal.value, Math.max(goal.error_bound, goal.search_error_estimate)), goal.unit)}, that of ${goal.leading.join(" and ")}`;
+  const what = `The ${asked.goal.minimise ? "largest" : "least"} is ${withUnit(shown(goal.value, Math.max(goal.error_bound, goal.search_error_estimate ?? 0)), goal.unit)}, that of ${goal.leading.join(" and ")}`;
   if (best.all_held === "no") return verdict("open", "What is missed least", `${what}; that is no improvement on anything that holds the limits.`);
   const gain = goal.improvement === null ? "; the numbers as they stand lie outside their ranges." : `, where it is ${withUnit(brief(Number(goal.as_it_stands.toPrecision(6))), goal.unit)} as it stands: ${goal.improvement >= 0 ? "better" : "worse"} by ${withUnit(found(Math.abs(goal.improvement)), step)}.`;
-  return verdict(goal.improvement === null || goal.improvement >= 0 ? "good" : "open", "Best values found", `${what}${gain} Nearby it could be better by about ${bounded(goal.search_error_estimate)} ${pretty(step)} at most.`);
+  return verdict(goal.improvement === null || goal.improvement >= 0 ? "good" : "open", "Best values found", `${what}${gain} ${goal.search_error_estimate === null ? "How much better it could be nearby is not known." : `Nearby it could be better by about ${bounded(goal.search_error_estimate)} ${pretty(step)} at most.`}`);
 }
 
 const numbersTable = (numbers) => table("Numbers before and after", ["Number", "As it stands", "Best"], numbers.map((one) => [

@@ -74,11 +74,17 @@ function entryOf(input, pointer, detail) {
   for (let around = input.closest("details"); around; around = around.parentElement.closest("details")) {
     around.open = true;
   }
-  const label = document.querySelector(`label[for="${input.id}"]`)?.textContent ?? input.id;
+  const label = labelOf(input);
   const follow = (event) => {
     event.preventDefault();
     input.focus();
     input.scrollIntoView({ block: "center" });
   };
   return make("li", {}, make("a", { href: `#${input.id}`, onclick: follow }, label), ": ", detail);
+}
+
+/** What a field, a group or a button is called. */
+function labelOf(input) {
+  const named = document.querySelector(`label[for="${input.id}"]`) ?? input.querySelector("legend") ?? (input.matches("button") ? input : null);
+  return named?.textContent ?? input.getAttribute("aria-label") ?? input.id;
 }

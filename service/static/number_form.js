@@ -33,7 +33,7 @@ export function numberFields(draft, changed, redraw, question) {
     {
       id: "add-number",
       onclick: () => {
-        numbers.push(emptyNumber());
+        numbers.push(emptyNumber(catalogueOfDraft(draft).find(({ key }) => numbers.every((number) => number.key !== key))?.key));
         again(idOf("number", numbers.at(-1).id, "key"));
       },
     },
@@ -42,7 +42,7 @@ export function numberFields(draft, changed, redraw, question) {
   return [
     ...cards,
     numbers.length < question.mostNumbers ? add : null,
-    make("div", { id: "numbers", tabindex: -1, class: "whole" }, mistakePlace("numbers")),
+    make("div", { id: "numbers", role: "group", "aria-label": "Numbers", tabindex: -1, class: "whole" }, mistakePlace("numbers")),
   ].filter(Boolean);
 }
 

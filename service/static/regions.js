@@ -9,7 +9,7 @@ import { AXES, axesAcross, axisOf } from "./words.js";
 export const faceWords = (face) => face.replace("_", " ");
 
 /** What a patch or pad is called. @param {{face: string, patch: number, rectangle: any}} numbered of `patchesOf` */
-export const patchName = ({ face, patch, rectangle }) => rectangle.name.trim() || `patch ${patch + 1} of ${faceWords(face)}`;
+const patchName = ({ face, patch, rectangle }) => rectangle.name.trim() || `patch ${patch + 1} of ${faceWords(face)}`;
 
 /**
  * Parts that are offered.

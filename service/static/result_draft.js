@@ -34,7 +34,7 @@ export const newId = () => `${Date.now().toString(36)}${(last += 1)}`;
 
 /** @returns {ResultDraft} */
 export const emptyResult = (kind = "highest") => ({
-  id: newId(), kind, name: "", at: ["", "", ""], along: "", side: "", region: ["mean", "inflow"].includes(kind) ? "" : "body",
+  id: newId(), kind, name: "", at: ["", "", ""], along: "", side: "", region: "body",
   from: ["", "", ""], to: ["", "", ""], axis: "z", position: "", face: "", fraction: "0.1", of: "", other: "",
 });
 

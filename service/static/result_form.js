@@ -69,8 +69,7 @@ function resultCard(draft, index, changed, redraw) {
     id: idOf(id, "kind"), label: "What", spoken, value: result.kind, options: kindsOf(PHYSICS[draft.potential]), extraClass: "whole",
     onChange: (value) => {
       result.kind = value;
-      if (["mean", "inflow"].includes(value) && ["body", "box"].includes(result.region.split(" ")[0])) result.region = "";
-      if (["highest", "lowest"].includes(value)) result.region ||= "body";
+      fitToKind(draft, result);
       again(idOf(id, "kind"));
     },
   });
@@ -92,6 +91,20 @@ function resultCard(draft, index, changed, redraw) {
     }),
     remove,
   );
+}
+
+/** What a result of another kind begins with: a part it can be of, a face, two results before it. */
+function fitToKind(draft, result) {
+  const { kind, region } = result;
+  const [face] = facesOf(draft);
+  const isOfFaces = ["mean", "inflow"].includes(kind);
+  if (isOfFaces && ["body", "box", "layer"].includes(region.split(" ")[0])) result.region = face ? `face ${face}` : "";
+  result.face ||= face ?? "";
+  if (kind in OF_TWO) {
+    const [[, before]] = earlier(draft, result);
+    result.of ||= before[0]?.[0] ?? "";
+    result.other ||= before[1]?.[0] ?? "";
+  }
 }
 
 function detailFields(draft, result, id, spoken, changed, again) {
