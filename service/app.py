@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import asyncio
 from collections.abc import AsyncIterator
+from concurrent.futures import ThreadPoolExecutor
 from contextlib import asynccontextmanager
 
 from fastapi import FastAPI
@@ -51,12 +52,14 @@ def create_app(settings: Settings | None = None) -> FastAPI:
 
     @asynccontextmanager
     async def lifespan(app: FastAPI) -> AsyncIterator[None]:
-        # Files and processes are waited for in a thread.
-        app.state.service = await asyncio.to_thread(open_state, settings)
-        try:
-            yield
-        finally:
-            await asyncio.to_thread(app.state.service.close)
+        # Files and processes are waited for in a thread, one of its own: whatever hangs must not keep it from ending.
+        loop = asyncio.get_running_loop()
+        with ThreadPoolExecutor(1, thread_name_prefix="opening and closing") as own:
+            app.state.service = await loop.run_in_executor(own, open_state, settings)
+            try:
+                yield
+            finally:
+                await loop.run_in_executor(own, app.state.service.close)
 
     app = FastAPI(
         title="Stillfield",

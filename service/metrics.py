@@ -11,6 +11,7 @@ from prometheus_client.registry import Collector
 
 from service.core import CacheReport, cache_report
 from service.kept import Kept, KeptReport
+from service.refusals import StoreBusy
 from service.studies.store import STATES
 from service.studies.studies import Studies
 from service.worker import Worker
@@ -78,9 +79,15 @@ class Metrics:
             "seconds": report.seconds,
         }
 
-    def studies(self) -> dict[str, float]:
-        """How many studies there are in each state, how full their store is, and what was computed for them."""
-        report, kept = self._studies.report(), self._studies.kept()
+    def studies(self) -> dict[str, float] | None:
+        """How many studies there are in each state, how full their store is, and what was computed for them.
+
+        None while their store cannot be reached, which is no reason to tell nothing of the rest.
+        """
+        try:
+            report, kept = self._studies.report(), self._studies.kept()
+        except StoreBusy:
+            return None
         return {
             **{state: report.counts[state] for state in STATES},
             "size": report.size,
@@ -115,6 +122,8 @@ class _Live(Collector):
             yield CounterMetricFamily(f"stillfield_work_{name}", f"Computations {words}.", work[name])
         yield CounterMetricFamily("stillfield_work_seconds", "Seconds spent computing.", work["seconds"])
         studies = self._metrics.studies()
+        if studies is None:
+            return
         states = GaugeMetricFamily("stillfield_studies", "Studies by their state.", labels=("state",))
         for state in STATES:
             states.add_metric((state,), studies[state])

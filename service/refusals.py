@@ -9,7 +9,7 @@ Refusal
 ├── UnknownProblem        no problem is stored under this id
 ├── TooCostly             the work or the answer would pass a limit; known before it starts
 ├── QueueFull             all workers are busy and no one more may wait
-├── StoreBusy             the file of stored problems or studies is held by another process
+├── StoreBusy             the file of stored problems or studies is held by another process, or damaged
 ├── StoreFull             no room for another problem or study
 ├── UnknownStudy          no study is known under this id
 └── WrongState            the study is not in the state that this takes
@@ -86,9 +86,16 @@ class QueueFull(Refusal):
 
 
 class StoreBusy(Refusal):
-    """The file of stored problems or studies is held by another process."""
+    """The file of stored problems or studies is held by another process, or damaged.
+
+    passes: whether it may be reached later without anybody's doing.
+    """
 
     retry_after_seconds = 5
+
+    def __init__(self, detail: str, *, passes: bool = True) -> None:
+        super().__init__(detail)
+        self.passes = passes
 
 
 class StoreFull(Refusal):

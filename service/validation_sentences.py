@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import difflib
+import re
 from collections.abc import Sequence
 from functools import lru_cache
 from typing import Any
@@ -67,6 +68,21 @@ def _path(error: Any, body: Any) -> Path:
     return tuple(path)
 
 
+# What is said of one thing, where the sentence was made for several.
+_OF_ONE = (
+    (re.compile(r"\b1 entries are\b"), "1 entry is"),
+    (re.compile(r"\bthere are 1\b"), "there is 1"),
+    (re.compile(r"\b1 entries\b"), "1 entry"),
+    (re.compile(r"\b1 characters\b"), "1 character"),
+)
+
+
+def _of_one(sentence: str) -> str:
+    for several, one in _OF_ONE:
+        sentence = several.sub(one, sentence)
+    return sentence
+
+
 def _sentence(error: Any, body: Any) -> str:
     kind = error["type"]
     if kind == "extra_forbidden":
@@ -74,7 +90,7 @@ def _sentence(error: Any, body: Any) -> str:
     if kind in _SENTENCES:
         words = {name: str(value).strip("'") if name == "discriminator" else value
                  for name, value in error.get("ctx", {}).items()}  # fmt: skip
-        return _SENTENCES[kind].format(**words).replace("'", '"')
+        return _of_one(_SENTENCES[kind].format(**words).replace("'", '"'))
     return str(error["msg"])
 
 

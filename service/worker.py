@@ -20,6 +20,10 @@ from service.refusals import QueueFull
 
 Outcome = TypeVar("Outcome")
 KeepGoing = Callable[[], None]
+
+# What to do where the time was over.
+ADVICE = "ask for less, or for less accuracy."
+
 Work = Callable[[KeepGoing], Outcome]
 
 
@@ -54,9 +58,10 @@ class Worker:
         self._seconds = 0.0
         self._closing = threading.Event()
 
-    async def run(self, work: Work[Outcome]) -> tuple[Outcome, float]:
+    async def run(self, work: Work[Outcome], advice: str = ADVICE) -> tuple[Outcome, float]:
         """The outcome of the work and the seconds it waited for a thread.
 
+        advice: ends the sentence of Interrupted where the time was over.
         Raises QueueFull when no more may wait, Interrupted when the time was over, and whatever the work
         raises. When the waiting task is cancelled, the work stops at its next step.
         """
@@ -70,7 +75,7 @@ class Worker:
             self._pending += 1
         abandoned = threading.Event()
         queued = time.perf_counter()
-        future = self._pool.submit(self._run, work, abandoned, queued)
+        future = self._pool.submit(self._run, work, abandoned, queued, advice)
         waiting = asyncio.wrap_future(future)
         # Whoever waits may go away; the work itself always runs, if only to find that it was given up and to make room.
         waiting.add_done_callback(lambda done: done.cancelled() or done.exception())
@@ -99,7 +104,9 @@ class Worker:
         self._closing.set()
         self._pool.shutdown(wait=True, cancel_futures=True)
 
-    def _run(self, work: Work[Outcome], abandoned: threading.Event, queued: float) -> tuple[Outcome, float]:
+    def _run(
+        self, work: Work[Outcome], abandoned: threading.Event, queued: float, advice: str
+    ) -> tuple[Outcome, float]:
         started = time.perf_counter()
         deadline = started + self._time_limit
 
@@ -107,10 +114,7 @@ class Worker:
             if abandoned.is_set() or self._closing.is_set():
                 raise Interrupted("The request was given up before its answer was complete.")
             if time.perf_counter() > deadline:
-                raise Interrupted(
-                    f"The answer was not complete after {self._time_limit:g} s; ask for fewer places or "
-                    "totals, or for less accuracy."
-                )
+                raise Interrupted(f"The answer was not complete after {self._time_limit:g} s; {advice}")
 
         with self._lock:
             self._running += 1

@@ -2,10 +2,9 @@
 
 from __future__ import annotations
 
-from typing import Annotated, Any, Literal, Self
+from typing import Annotated, Any, Literal
 
-from pydantic import Discriminator, Field, Tag, model_validator
-from pydantic_core import PydanticCustomError
+from pydantic import Discriminator, Field, Tag
 
 from service.models.base import Model, Quantity
 from service.models.limits import AnalysisQuestion, Limits
@@ -126,30 +125,3 @@ class CasesQuestion(AnalysisQuestion):
         description="Limits that each case is held against.",
         examples=[[{"result": "probe A", "at_most": 60}]],
     )
-
-    @model_validator(mode="after")
-    def _as_many(self) -> Self:
-        count = len(self.numbers)
-        if isinstance(self.cases, ListOfCases):
-            for index, row in enumerate(self.cases.rows):
-                if len(row) != count:
-                    raise PydanticCustomError(
-                        "columns",
-                        "Row {row} of the cases has {length} values; there are {count} numbers.",
-                        {"row": index, "length": len(row), "count": count},
-                    )
-        elif isinstance(self.cases, GridOfCases):
-            _check_length("values", len(self.cases.values), count)
-        elif isinstance(self.cases, DesignOfCases):
-            _check_length("low", len(self.cases.low), count)
-            _check_length("high", len(self.cases.high), count)
-        return self
-
-
-def _check_length(field: str, length: int, count: int) -> None:
-    if length != count:
-        raise PydanticCustomError(
-            "columns",
-            "`{field}` of the cases has {length} entries; there are {count} numbers.",
-            {"field": field, "length": length, "count": count},
-        )

@@ -75,7 +75,9 @@ class Diagnostics(Model):
     )
     work: WorkState = Field(description="How busy the worker is.")
     store: StoreState = Field(description="How full the store of problems is.")
-    studies: StudiesState = Field(description="How the studies do.")
+    studies: StudiesState | None = Field(
+        description="How the studies do; null while their store cannot be reached.",
+    )
 
 
 class Health(Model):

@@ -37,7 +37,7 @@ class Call(Generic[Asked, Wanted]):
     """The three steps of one call: read the question, refuse what is too costly, answer.
 
     forms: of its answers. has_tolerance: whether what is wanted has a `tolerance` in the potential's unit, which gives
-    way to what can be promised where the client asked for none.
+    way to what can be promised where the client asked for none. advice: what to do where the time was over.
     """
 
     read: Callable[[Asked, ReadProblem, Solution, Settings], Wanted]
@@ -45,6 +45,7 @@ class Call(Generic[Asked, Wanted]):
     answer: Callable[[ReadProblem, Solution, Wanted, KeepGoing], dict[str, Any]]
     forms: Sequence[Form] = FORMS
     has_tolerance: bool = True
+    advice: str = "ask for fewer places or totals, or for less accuracy."
 
 
 class AnswerRoute(StrictJsonRoute):
@@ -69,7 +70,7 @@ async def answer(request: Request, question: Asked, call: Call[Asked, Wanted]) -
         with on_behalf_of(keep_going):
             return _work(state, question, call, form, keep_going)
 
-    work = state.worker.run(answer_while_waited_for)
+    work = state.worker.run(answer_while_waited_for, call.advice)
     (body, times), waited = await _unless_client_leaves(request, work)
     kept = KeptAnswer(body, form.media_type, f'"{key}"', form.file_name)
     state.answers.keep(key, kept)

@@ -5,6 +5,7 @@ from __future__ import annotations
 import asyncio
 import re
 import time
+from contextlib import suppress
 from typing import Annotated, Any
 
 from fastapi import APIRouter, Body, Header, Path, Query, Request, Response
@@ -15,7 +16,7 @@ from service.media import ARRAYS_FORM, FORMS, JSON, Form, check_accepts_json, ch
 from service.models.analysis_answer import AnalysisAnswer
 from service.models.studies import StudiesAnswer, StudyAnswer, StudyQuestion, StudyTable
 from service.openapi import answer_examples, body_examples, error_responses
-from service.refusals import NotAcceptable
+from service.refusals import NotAcceptable, UnknownStudy
 from service.request_body import StrictJsonRoute
 from service.state import State, state_of
 from service.studies.answers import unpack_answer
@@ -31,10 +32,13 @@ MOST_LISTED = 100
 MOST_FAILURES_SHOWN = 20
 # Longest wait for a study to be over that a client can ask for (RFC 7240).
 MOST_WAIT_SECONDS = 30
+# What to do where the time was over before a study was accepted.
+_ADVICE = "the results of the request as it stands are computed first, so ask for fewer of them, or for less accuracy."
 # When to ask again how a study stands.
 _RETRY_AFTER_SECONDS = 1
 
-_WAIT = re.compile(r"(?:^|[,;\s])wait\s*=\s*(\d{1,6})(?:$|[,;\s])")
+# Names of preferences are of either case, and values may be quoted.
+_WAIT = re.compile(r"(?:^|[,;\s])wait\s*=\s*(\"?)(\d{1,6})\1(?:$|[,;\s])", re.IGNORECASE)
 
 StudyId = Annotated[str, Path(description="Digest of the question and the release.", examples=["7d41" * 16])]
 Prefer = Annotated[
@@ -96,7 +100,7 @@ async def post_study(
     def work(keep_going: KeepGoing) -> Study:
         return state.studies.accept(question.study, question.question, keep_going)
 
-    study, _ = await state.worker.run(work)
+    study, _ = await state.worker.run(work, _ADVICE)
     headers = {"Location": f"{ADDRESS}/{study.study_id}"}
     return await _when_over(state, study, prefer, headers, status=202)
 
@@ -113,8 +117,12 @@ async def list_studies(request: Request) -> Response:
     state = state_of(request)
 
     def listed() -> bytes:
-        studies = state.studies.newest(MOST_LISTED)
-        return to_json({"studies": [_shown(state, study) for study in studies]})
+        shown = []
+        for study in state.studies.newest(MOST_LISTED):
+            # One may be deleted meanwhile.
+            with suppress(UnknownStudy):
+                shown.append(_shown(state, study))
+        return to_json({"studies": shown})
 
     return Response(await asyncio.to_thread(listed), media_type=JSON)
 
@@ -259,7 +267,7 @@ async def _when_over(state: State, study: Study, prefer: str | None, headers: di
     waited = _WAIT.search(prefer or "")
     headers["Vary"] = "Prefer"
     if waited is not None:
-        seconds = min(int(waited[1]), MOST_WAIT_SECONDS)
+        seconds = min(int(waited[2]), MOST_WAIT_SECONDS)
         headers["Preference-Applied"] = f"wait={seconds}"
         end = time.monotonic() + seconds
         while not study.is_over and time.monotonic() < end:

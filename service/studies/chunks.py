@@ -14,6 +14,7 @@ import numpy as np
 from service.analysis.evaluations import Evaluations, Failure, FloatArray
 from service.studies.chunk_work import ChunkOutcome
 from service.studies.crew import Crew, CrewLost, TimeOver, WorkerLost
+from service.studies.patience import patiently
 from service.studies.store import Study, StudyStore
 
 # A chunk takes about this long: long beside what handing it over takes (2 ms), short beside what a crash may cost.
@@ -96,12 +97,13 @@ class DurableEvaluate:
             raise TooManyCases(f"The study takes more than {self._most_cases} cases.")
         study_id, wave = self._study.study_id, self._waves
         self._waves += 1
-        self._store.begin_wave(study_id, wave, cases, accuracy)
-        finished = self._store.chunks(study_id, wave)
+        patiently(self._ask_on, self._store.begin_wave, study_id, wave, cases, accuracy)
+        finished = patiently(self._ask_on, self._store.chunks, study_id, wave)
         missing = [chunk for chunk in chunks_of(len(cases), self._study.chunk_size) if chunk.start not in finished]
 
         def keep(chunk: range, outcome: ChunkOutcome) -> None:
-            self._store.keep(study_id, wave, chunk.start, outcome.evaluations, outcome.seconds)
+            found = outcome.evaluations
+            patiently(self._ask_on, self._store.keep, study_id, wave, chunk.start, found, outcome.seconds)
             finished[chunk.start] = outcome.evaluations
 
         results = len(self._study.columns.results)

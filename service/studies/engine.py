@@ -8,8 +8,11 @@ process only one at a time can run studies.
 from __future__ import annotations
 
 import logging
+import sqlite3
 import threading
+import time
 from collections.abc import Callable
+from contextlib import closing
 from pathlib import Path
 
 from dbos import DBOS, DBOSConfig, SetWorkflowID
@@ -22,6 +25,8 @@ _QUEUE = "studies"
 _POLL_SECONDS = 0.25
 # A study is resumed however often the service was killed.
 _MOST_RECOVERIES = 1_000_000
+
+logger = logging.getLogger("service")
 
 _lock = threading.Lock()
 _running: Engine | None = None
@@ -72,6 +77,7 @@ class Engine:
             "enable_otlp": False,
             "log_level": logging.getLevelName(logging.CRITICAL),
         }
+        _set_aside_if_damaged(self._path)
         # Recovery begins with the launch.
         _running = self
         self._is_open = True
@@ -97,6 +103,24 @@ class Engine:
             DBOS.destroy()
             self._is_open = False
             _running = None
+
+
+def _set_aside_if_damaged(path: Path) -> None:
+    """Begin with an empty file where the present one cannot be read: which studies go on the store knows as well."""
+    if not path.is_file():
+        return
+    try:
+        with closing(sqlite3.connect(path)) as connection:
+            connection.execute("PRAGMA quick_check(1)").fetchall()
+    except sqlite3.OperationalError:
+        # Held by another process for a moment, which is no damage.
+        return
+    except sqlite3.DatabaseError as error:
+        aside = path.with_name(f"{path.name}.damaged-{int(time.time())}")
+        logger.error("The file of the engine is damaged (%s) and set aside as %s.", error, aside)
+        path.rename(aside)
+        for rest in ("-wal", "-shm"):
+            path.with_name(path.name + rest).unlink(missing_ok=True)
 
 
 @DBOS.workflow(name="study", max_recovery_attempts=_MOST_RECOVERIES)

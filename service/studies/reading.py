@@ -4,18 +4,15 @@ from __future__ import annotations
 
 import hashlib
 import json
-import time
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import Any
 
-import numpy as np
 from pydantic import ValidationError
 
 from service import __version__
-from service.analysis.evaluations import Evaluations, FloatArray
-from service.core.errors import CoreError, Interrupted
+from service.core.errors import CoreError
 from service.core.stopping import on_behalf_of
 from service.cost import check_work
 from service.models.limits import AnalysisQuestion, Limit
@@ -26,7 +23,7 @@ from service.studies.store import Acceptance
 from service.translation.analyses import ANALYSES
 from service.translation.analysis import Analysis, prepare
 from service.translation.case_columns import Columns, columns_of
-from service.translation.cases import evaluator
+from service.translation.case_time import seconds_a_case
 from service.translation.problem import canonical, problem_id_of
 from service.translation.solving import Solver, point_into_question
 from service.validation_sentences import issues_of
@@ -37,9 +34,6 @@ KeepGoing = Callable[[], None]
 _ROOM_FACTOR = 3
 _ROOM_A_CASE = 200
 _LEAST_ROOM = 100_000
-# How many cases show how long one takes, and how long that may take altogether.
-_TRIED = 4
-_TRY_SECONDS = 0.7
 
 
 @dataclass(frozen=True)
@@ -100,7 +94,7 @@ def acceptance(study: ReadStudy, settings: Settings, keep_going: KeepGoing) -> A
         study.question,
         __version__,
         columns,
-        chunk_size_for(_seconds_a_case(study.analysis, settings, keep_going)),
+        chunk_size_for(seconds_a_case(study.analysis, settings, keep_going)),
         expected,
         _LEAST_ROOM + expected * (_ROOM_FACTOR * columns.bytes_a_case + _ROOM_A_CASE),
     )
@@ -144,44 +138,3 @@ def _named_by_digest(question: AnalysisQuestion) -> bytes:
 
 def _text(content: Any) -> bytes:
     return json.dumps(content, sort_keys=True, separators=(",", ":"), ensure_ascii=False).encode()
-
-
-class _FirstWave(BaseException):
-    """Leaves an analysis once it has said which cases it wants first, past whatever it catches."""
-
-    def __init__(self, cases: FloatArray, accuracy: float | None) -> None:
-        super().__init__()
-        self.cases = cases
-        self.accuracy = accuracy
-
-
-def _seconds_a_case(analysis: Analysis, settings: Settings, keep_going: KeepGoing) -> float:
-    """How long a case takes, tried with the first that the analysis wants."""
-
-    def tell(cases: FloatArray, *, accuracy: float | None = None) -> Evaluations:
-        raise _FirstWave(np.array(cases, dtype=float), accuracy)
-
-    try:
-        analysis.run(tell)
-    except _FirstWave as wave:
-        end = time.perf_counter() + _TRY_SECONDS
-
-        def in_time() -> None:
-            keep_going()
-            if time.perf_counter() > end:
-                raise Interrupted("One case takes longer than a chunk should.")
-
-        evaluate = evaluator(analysis.plan, settings, in_time)
-        spent = []
-        for case in wave.cases[:_TRIED]:
-            # Of the processor, lest chunks become small because the machine is busy at this moment.
-            begun = time.thread_time()
-            try:
-                evaluate(case[np.newaxis], accuracy=wave.accuracy)
-            except Interrupted:
-                keep_going()
-                return _TRY_SECONDS
-            spent.append(time.thread_time() - begun)
-        # The first one also reads what all have in common; of several it is left out.
-        return max(spent[1:] or spent, default=0.0)
-    return 0.0

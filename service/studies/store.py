@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import hashlib
 import json
+import logging
 import sqlite3
 import threading
 import time
@@ -21,11 +22,14 @@ import numpy as np
 
 from service.analysis.evaluations import Evaluations, Failure, FloatArray
 from service.analysis.limits import Limit
-from service.refusals import QueueFull, StoreBusy, StoreFull
+from service.refusals import QueueFull, StoreBusy, StoreFull, UnknownStudy, WrongState
 from service.translation.case_columns import Column, Columns, LimitColumn
 
 State = Literal["waiting", "running", "finished", "cancelled", "failed"]
 STATES: tuple[State, ...] = ("waiting", "running", "finished", "cancelled", "failed")
+
+UNKNOWN = "No study is known under this id; post it to /v1/studies."
+DAMAGED = "The stored studies are damaged; the log of the service has more for whoever runs it."
 
 # Another process may hold the file for a moment, a backup above all.
 _BUSY_SECONDS = 5.0
@@ -47,8 +51,11 @@ CREATE TABLE IF NOT EXISTS chunk (
     study TEXT NOT NULL, wave INTEGER NOT NULL, first INTEGER NOT NULL, cases INTEGER NOT NULL,
     failed INTEGER NOT NULL, digest TEXT NOT NULL, payload BLOB NOT NULL, PRIMARY KEY (study, wave, first)
 );
-CREATE TABLE IF NOT EXISTS answer (study TEXT PRIMARY KEY, content BLOB NOT NULL);
+CREATE TABLE IF NOT EXISTS answer (study TEXT PRIMARY KEY, digest TEXT NOT NULL, content BLOB NOT NULL);
 """
+
+
+logger = logging.getLogger("service")
 
 
 class NotRepeatable(Exception):
@@ -194,6 +201,7 @@ class StudyStore:
     def question(self, study_id: str) -> bytes:
         """The canonical text of the question of a study."""
         with self._ready():
+            self._known(study_id)
             return bytes(self._one("SELECT question FROM study WHERE id = ?", study_id))
 
     def newest(self, most: int) -> list[Study]:
@@ -251,13 +259,13 @@ class StudyStore:
         return {
             first: unpacked(payload, count, width)
             for first, count, digest, payload in rows
-            if hashlib.sha256(payload).hexdigest() == digest
+            if _digest(payload) == digest
         }
 
     def keep(self, study_id: str, wave: int, first: int, outcome: Evaluations, seconds: float) -> None:
         """Keep a finished chunk. seconds: what a worker spent on it."""
         payload = packed(outcome)
-        digest = hashlib.sha256(payload).hexdigest()
+        digest = _digest(payload)
         count, failed = len(outcome.values), len(outcome.failures)
         with self._change():
             before = self._connection.execute(
@@ -280,7 +288,7 @@ class StudyStore:
         with self._change():
             if self._known(study_id).is_over:
                 return
-            self._execute("INSERT OR REPLACE INTO answer VALUES (?, ?)", study_id, content)
+            self._execute("INSERT OR REPLACE INTO answer VALUES (?, ?, ?)", study_id, _digest(content), content)
             self._execute("UPDATE study SET size = size + ? WHERE id = ?", len(content), study_id)
             self._end(study_id, "finished")
 
@@ -315,17 +323,24 @@ class StudyStore:
             return True
 
     def answer(self, study_id: str) -> bytes | None:
-        """The answer of a finished study."""
+        """The answer of a finished study, None if it has none. Raises WrongState for one that is damaged on disk."""
         with self._ready():
-            return self._one("SELECT content FROM answer WHERE study = ?", study_id)
+            row = self._connection.execute("SELECT digest, content FROM answer WHERE study = ?", (study_id,)).fetchone()
+        if row is None:
+            return None
+        digest, content = row
+        if _digest(content) != digest:
+            raise WrongState("The answer that was kept is damaged; delete the study and post it again.")
+        return bytes(content)
 
     def table(self, study_id: str) -> Table:
-        """The cases of a study that are done."""
+        """The cases of a study that are done. Those of a chunk that is damaged on disk have failed."""
         with self._ready():
             study = self._known(study_id)
             waves = self._waves(study_id)
             rows = self._connection.execute(
-                "SELECT wave, first, cases, payload FROM chunk WHERE study = ? ORDER BY wave, first", (study_id,)
+                "SELECT wave, first, cases, digest, payload FROM chunk WHERE study = ? ORDER BY wave, first",
+                (study_id,),
             ).fetchall()
         return _table(study.columns, waves, rows)
 
@@ -335,8 +350,8 @@ class StudyStore:
             study = self._known(study_id)
             waves = self._waves(study_id)
             rows = self._connection.execute(
-                "SELECT wave, first, cases, payload FROM chunk WHERE study = ? AND failed > 0 ORDER BY wave, first "
-                "LIMIT ?",
+                "SELECT wave, first, cases, digest, payload FROM chunk WHERE study = ? AND failed > 0 "
+                "ORDER BY wave, first LIMIT ?",
                 (study_id, most),
             ).fetchall()
         return sorted(_table(study.columns, waves, rows).evaluations.failures.items())[:most]
@@ -362,6 +377,9 @@ class StudyStore:
                 yield
             except sqlite3.OperationalError as error:
                 raise StoreBusy("The stored studies cannot be reached at the moment; try again later.") from error
+            except sqlite3.DatabaseError as error:
+                logger.error("The file of the studies is damaged.", exc_info=error)
+                raise StoreBusy(DAMAGED, passes=False) from error
 
     @contextmanager
     def _change(self) -> Iterator[None]:
@@ -370,10 +388,12 @@ class StudyStore:
             self._connection.execute("BEGIN IMMEDIATE")
             try:
                 yield
+                self._connection.execute("COMMIT")
             except BaseException:
-                self._connection.execute("ROLLBACK")
+                # Some errors, such as a full disk, have undone it already.
+                if self._connection.in_transaction:
+                    self._connection.execute("ROLLBACK")
                 raise
-            self._connection.execute("COMMIT")
 
     def _execute(self, statement: str, *values: Any) -> None:
         self._connection.execute(statement, values)
@@ -393,7 +413,8 @@ class StudyStore:
 
     def _known(self, study_id: str) -> Study:
         study = self._study(study_id)
-        assert study is not None
+        if study is None:
+            raise UnknownStudy(UNKNOWN)
         return study
 
     def _end(self, study_id: str, state: State) -> None:
@@ -446,12 +467,15 @@ def _columns_text(columns: Columns) -> str:
 
 
 def _columns_of(text: str) -> Columns:
-    given, found, limits = json.loads(text)
-    return Columns(
-        tuple(Column(*column) for column in given),
-        tuple(Column(*column) for column in found),
-        tuple(LimitColumn(name, Limit(*limit), unit) for name, *limit, unit in limits),
-    )
+    try:
+        given, found, limits = json.loads(text)
+        return Columns(
+            tuple(Column(*column) for column in given),
+            tuple(Column(*column) for column in found),
+            tuple(LimitColumn(name, Limit(*limit), unit) for name, *limit, unit in limits),
+        )
+    except (TypeError, ValueError) as error:
+        raise sqlite3.DatabaseError("The columns of a study are not as they were written.") from error
 
 
 def packed(outcome: Evaluations) -> bytes:
@@ -469,6 +493,17 @@ def unpacked(payload: bytes, cases: int, results: int) -> Evaluations:
     return Evaluations(numbers[0], numbers[1], failures)
 
 
+def _digest(payload: bytes) -> str:
+    return hashlib.sha256(payload).hexdigest()
+
+
+def _lost(cases: int, results: int) -> Evaluations:
+    """What is told of a chunk that cannot be trusted."""
+    nothing = np.full((cases, results), np.nan)
+    failure = Failure("damaged", "What was kept of this case is damaged; delete the study and post it again.")
+    return Evaluations(nothing, nothing.copy(), dict.fromkeys(range(cases), failure))
+
+
 def _table(columns: Columns, waves: list[Any], rows: list[Any]) -> Table:
     width, results = len(columns.numbers), len(columns.results)
     begins, numbers, total = {}, {}, 0
@@ -481,8 +516,8 @@ def _table(columns: Columns, waves: list[Any], rows: list[Any]) -> Table:
     values: list[Any] = [np.zeros((0, results))]
     bounds: list[Any] = [np.zeros((0, results))]
     failures: dict[int, Failure] = {}
-    for wave, first, count, payload in rows:
-        outcome = unpacked(payload, count, results)
+    for wave, first, count, digest, payload in rows:
+        outcome = unpacked(payload, count, results) if _digest(payload) == digest else _lost(count, results)
         begin = begins[wave] + first
         case.append(np.arange(begin, begin + count))
         given.append(numbers[wave][first : first + count])

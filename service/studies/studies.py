@@ -23,9 +23,10 @@ from service.studies.chunk_work import OtherRelease, pack_work
 from service.studies.chunks import DurableEvaluate, TooManyCases
 from service.studies.crew import Crew
 from service.studies.engine import Engine, Stopping
+from service.studies.patience import patiently
 from service.studies.pool import Pool
 from service.studies.reading import KeepGoing, acceptance, read_study
-from service.studies.store import Kept, NotRepeatable, StudiesReport, Study, StudyStore
+from service.studies.store import DAMAGED, UNKNOWN, Kept, NotRepeatable, StudiesReport, Study, StudyStore
 from service.translation.solving import Solver
 
 logger = logging.getLogger("service")
@@ -33,6 +34,7 @@ logger = logging.getLogger("service")
 _STORE = "studies.sqlite3"
 _ENGINE = "engine.sqlite3"
 _CLAIM = "in-use.sqlite3"
+_OUT_OF_REACH = "The studies cannot be reached: another service has them, or their folder cannot be written."
 # Studies that were told to stop do so between two steps of the solver.
 _END_SECONDS = 20.0
 # How long one that is to be forgotten is waited for to hand in its last chunks.
@@ -63,6 +65,7 @@ class Studies:
         self._claim: sqlite3.Connection | None = None
         self._engine = Engine(self._folder / _ENGINE, settings.studies_running, self._run)
         self._crew = _crew_of(settings)
+        self._said = ""
         self._stopping = threading.Event()
         # Of studies that somebody is at work on.
         self._runs: weakref.WeakValueDictionary[str, _Run] = weakref.WeakValueDictionary()
@@ -73,10 +76,11 @@ class Studies:
             return
         try:
             store = self._opened()
+            unfinished = store.unfinished()
         except StoreBusy:
-            # Another service runs these studies, and goes on with them.
+            # Another service runs these studies and goes on with them, or nobody can; other questions can be answered.
             return
-        for study in store.unfinished():
+        for study in unfinished:
             if study.release == __version__:
                 self._engine.submit(study.study_id, study.attempt)
             else:
@@ -166,10 +170,13 @@ class Studies:
         self._engine.close()
         self._crew.close()
         with self._lock:
-            if self._store is not None:
-                self._store.close()
-            if self._claim is not None:
-                self._claim.close()
+            self._let_go()
+
+    def _let_go(self) -> None:
+        for held in (self._store, self._claim):
+            if held is not None:
+                held.close()
+        self._store = self._claim = None
 
     def _has_store(self) -> bool:
         return self._store is not None or (self._folder / _STORE).is_file()
@@ -184,10 +191,14 @@ class Studies:
                     settings = self._settings
                     self._store = StudyStore(self._folder / _STORE, settings.studies_bytes, settings.studies_waiting)
                 except (OSError, sqlite3.Error) as error:
-                    raise StoreBusy(
-                        f"The studies in {self._folder} cannot be reached: another service has them, or the folder "
-                        "cannot be written."
-                    ) from error
+                    # Where that is is for whoever runs the service, and not for its clients.
+                    if str(error) != self._said:
+                        logger.error("The studies in %s cannot be reached (%s).", self._folder, error)
+                    self._said = str(error)
+                    self._let_go()
+                    if isinstance(error, OSError | sqlite3.OperationalError):
+                        raise StoreBusy(_OUT_OF_REACH) from error
+                    raise StoreBusy(DAMAGED, passes=False) from error
             return self._store
 
     def _run_of(self, study_id: str) -> _Run:
@@ -196,40 +207,39 @@ class Studies:
 
     def _run(self, study_id: str, attempt: int) -> None:
         """Run one attempt of a study to its end, in a thread of the engine."""
-        if self._stopping.is_set():
-            raise Stopping
-        store = self._opened()
         run = self._run_of(study_id)
-        with run.turn:
-            study = store.begin(study_id, attempt)
-            if study is None:
-                return
 
-            def ask_on() -> None:
-                if self._stopping.is_set():
-                    raise Stopping
-                if run.cancelled >= attempt:
-                    raise _Cancelled
+        def ask_on() -> None:
+            if self._stopping.is_set():
+                raise Stopping
+            if run.cancelled >= attempt:
+                raise _Cancelled
 
-            try:
-                store.finish(study_id, self._answer(study, store, ask_on))
-            except _Cancelled:
-                pass
-            except (TooManyCases, NotRepeatable, OtherRelease) as error:
-                store.fail(study_id, _CODES[type(error)], str(error))
-            except Refusal as error:
-                sentences = " ".join(issue.detail for issue in error.issues)
-                store.fail(study_id, "refused", f"{error.detail} {sentences}".strip())
-            except CoreError as error:
-                store.fail(study_id, "not-solved", error.message)
-            except Exception as error:
+        try:
+            ask_on()
+            with run.turn:
+                self._attempt(study_id, attempt, ask_on)
+        except _Cancelled:
+            pass
+        except StoreBusy as error:
+            logger.error("Study %s stands still.", study_id, exc_info=error)
+
+    def _attempt(self, study_id: str, attempt: int, ask_on: KeepGoing) -> None:
+        store = self._opened()
+        study = patiently(ask_on, store.begin, study_id, attempt)
+        if study is None:
+            return
+        try:
+            patiently(ask_on, store.finish, study_id, self._answer(study, store, ask_on))
+        except Exception as error:
+            if not isinstance(error, CoreError | Refusal | TooManyCases | NotRepeatable | OtherRelease):
                 logger.error("Study %s failed.", study_id, exc_info=error)
-                store.fail(study_id, "internal-error", "Something failed inside the service; the log has more.")
+            patiently(ask_on, store.fail, study_id, *_fault_of(error))
 
     def _answer(self, study: Study, store: StudyStore, ask_on: KeepGoing) -> bytes:
         settings = self._settings
-        content = json.loads(store.question(study.study_id))
-        read = read_study(study.name, content, self._solver, settings, ask_on)
+        content = json.loads(patiently(ask_on, store.question, study.study_id))
+        read = patiently(ask_on, read_study, study.name, content, self._solver, settings, ask_on)
         # A study has no client who waits: its cases have a time of their own.
         in_study = settings.model_copy(update={"time_limit_seconds": settings.study_case_seconds})
         evaluate = DurableEvaluate(
@@ -249,12 +259,25 @@ _CODES: dict[type[Exception], str] = {
     TooManyCases: "too-many-cases",
     NotRepeatable: "not-repeatable",
     OtherRelease: "other-release",
+    StoreBusy: "store-damaged",
 }
+
+
+def _fault_of(error: Exception) -> tuple[str, str]:
+    """Why a study cannot go on: a short word for programs, and a sentence."""
+    if type(error) in _CODES:
+        return _CODES[type(error)], str(error)
+    if isinstance(error, Refusal):
+        sentences = " ".join(issue.detail for issue in error.issues)
+        return "refused", f"{error.detail} {sentences}".strip()
+    if isinstance(error, CoreError):
+        return "not-solved", error.message
+    return "internal-error", "Something failed inside the service; the log has more."
 
 
 def _known(study: Study | None) -> Study:
     if study is None:
-        raise UnknownStudy("No study is known under this id; post it to /v1/studies.")
+        raise UnknownStudy(UNKNOWN)
     return study
 
 

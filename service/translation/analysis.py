@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import time
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
@@ -44,7 +45,7 @@ class Prepared:
     """A request about decisions, read and computed as it stands.
 
     document: the request as plain JSON values, the problem written out in it. nominal: its results as it stands.
-    relative, absolute: accuracy asked for, as in a CasePlan.
+    seconds: of a processor that these took. relative, absolute: accuracy asked for, as in a CasePlan.
     """
 
     problem: ReadProblem
@@ -53,6 +54,7 @@ class Prepared:
     document: dict[str, Any]
     results: ReadResults
     nominal: ResultValues
+    seconds: float
     relative: float | None
     absolute: float | None
 
@@ -185,8 +187,10 @@ def prepare(
     # Before the request as it stands is computed, which may be all the work there is.
     check_work(estimate_results(results, solution, relative=relative), settings)
     wanted = absolute / solution.span if absolute is not None and solution.span > 0 else relative
+    begun = time.thread_time()
     nominal = evaluate_results(results, problem, solution, relative=wanted, keep_going=go_on)
-    return Prepared(problem, solution, settings, document, results, nominal, relative, absolute)
+    seconds = time.thread_time() - begun
+    return Prepared(problem, solution, settings, document, results, nominal, seconds, relative, absolute)
 
 
 def check_cost(analysis: Analysis, settings: Settings) -> None:

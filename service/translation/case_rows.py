@@ -27,6 +27,8 @@ def read_cases(
 ) -> FloatArray:
     """The cases, shape (n_cases, n_numbers). Notes what is at fault. Raises TooCostly for more than a study takes."""
     path: Path = ("cases",)
+    if _note_lengths(collector, table, len(numbers)):
+        return _NONE
     if isinstance(table, models.ListOfCases):
         _check_count(len(table.rows), settings)
         return np.array(
@@ -64,6 +66,24 @@ def read_cases(
     return filling(table.method, table.count, low, high, table.seed)
 
 
+def _note_lengths(collector: Collector, table: models.CaseTable, count: int) -> bool:
+    """Note lists that have no value for each number; whether there are any."""
+    lists: list[tuple[Path, int]] = []
+    if isinstance(table, models.ListOfCases):
+        lists = [(("rows", index), len(row)) for index, row in enumerate(table.rows)]
+    elif isinstance(table, models.GridOfCases):
+        lists = [(("values",), len(table.values))]
+    elif isinstance(table, models.DesignOfCases):
+        lists = [(("low",), len(table.low)), (("high",), len(table.high))]
+    wrong = [(place, length) for place, length in lists if length != count]
+    for place, length in wrong[:MOST_FAULTS]:
+        detail = f"The list has {length} {'value' if length == 1 else 'values'} and needs one for each of the numbers"
+        collector.add(
+            ("cases", *place), f"{detail}, of which there {'is' if count == 1 else 'are'} {count}.", "columns"
+        )
+    return bool(wrong)
+
+
 def _check_count(count: int, settings: Settings) -> None:
     if count > settings.study_cases:
         raise TooCostly(
@@ -87,7 +107,7 @@ def _values(
 def _of_csv(collector: Collector, text: str, numbers: Sequence[NumberInfo], settings: Settings) -> FloatArray:
     path: Path = ("cases", "csv")
     try:
-        rows, decimal_comma = rows_of_csv(text)
+        rows, lines, decimal_comma = rows_of_csv(text)
     except ReadingsError as error:
         collector.add(path, str(error), "csv")
         return _NONE
@@ -104,14 +124,14 @@ def _of_csv(collector: Collector, text: str, numbers: Sequence[NumberInfo], sett
     order = [names.index(name) for name in wanted]
     faults = 0
     cases = np.full((len(rows) - 1, len(wanted)), UNREAD)
-    for number, row in enumerate(rows[1:], start=2):
+    for index, (row, line) in enumerate(zip(rows[1:], lines[1:], strict=True)):
         values = [number_of(entry.strip(), decimal_comma) for entry in row]
         if len(row) != len(names):
-            fault = f"Row {number} has {len(row)} entries; the first row has {len(names)}."
+            fault = f"Line {line} of the text has {len(row)} of the {len(names)} entries that the first row has."
         elif None in values:
-            fault = f"Row {number}, column {values.index(None) + 1} has to be a bare number."
+            fault = f'Line {line} of the text: "{names[values.index(None)]}" has to be a bare number.'
         else:
-            cases[number - 2] = [values[column] for column in order]
+            cases[index] = [values[column] for column in order]
             continue
         collector.add(path, fault, "csv")
         faults += 1

@@ -39,7 +39,7 @@ def readings_of_csv(text: str) -> Readings:
 
     Raises ReadingsError, with row and column counted from 1 as a spreadsheet shows them.
     """
-    rows, decimal_comma = rows_of_csv(text)
+    rows, _, decimal_comma = rows_of_csv(text)
     if len(rows) < 3 or len(rows[0]) < 3:
         raise ReadingsError(
             "The text needs a first row with at least two places on the second axis and at least two more "
@@ -58,22 +58,22 @@ def readings_of_csv(text: str) -> Readings:
     return Readings(first, second, np.array(table))
 
 
-def rows_of_csv(text: str) -> tuple[list[list[str]], bool]:
-    """Rows of entries that are not all empty, and whether a comma in a number is a decimal one.
+def rows_of_csv(text: str) -> tuple[list[list[str]], list[int], bool]:
+    """Rows of entries that are not all empty, the lines they end on, and whether a comma in a number is a decimal one.
 
-    A semicolon or tab in the first row separates; otherwise a comma does. Raises ReadingsError.
+    Lines are counted from 1. A semicolon or tab in the first row separates; otherwise a comma does. Raises
+    ReadingsError.
     """
+    # Spreadsheets mark a text as Unicode by a character in front.
+    text = text.removeprefix("\ufeff")
     first_row = text.lstrip("\r\n").partition("\n")[0]
     delimiter = next((sign for sign in ("\t", ";") if sign in first_row), ",")
     try:
-        rows = [
-            row
-            for row in csv.reader(io.StringIO(text, newline=""), delimiter=delimiter, strict=True)
-            if any(entry.strip() for entry in row)
-        ]
+        reader = csv.reader(io.StringIO(text, newline=""), delimiter=delimiter, strict=True)
+        numbered = [(row, reader.line_num) for row in reader if any(entry.strip() for entry in row)]
     except csv.Error:
         raise ReadingsError("The text is not readable as CSV; leave quotation marks out.") from None
-    return rows, delimiter != ","
+    return [row for row, _ in numbered], [line for _, line in numbered], delimiter != ","
 
 
 def number_of(entry: str, decimal_comma: bool) -> float | None:

@@ -131,7 +131,7 @@ SHAPES = [
     problem("source outside", "sources", [{"x": [0, 41], "density": 1}], "#/sources/0/x", "Source 0 reaches from 0 to 41 along x"),
     problem("source inside out", "sources", [{"x": [20, 10], "density": 1}], "#/sources/0/x", "positive extent"),
     problem("interval of three", "sources", [{"x": [0, 1, 2], "density": 1}], "#/sources/0/x", "At most 2 entries are allowed here."),
-    problem("interval of one", "sources", [{"x": [0], "density": 1}], "#/sources/0/x", "At least 2 entries are wanted here; there are 1."),
+    problem("interval of one", "sources", [{"x": [0], "density": 1}], "#/sources/0/x", "At least 2 entries are wanted here; there is 1."),
 ]  # fmt: skip
 
 MAPS = [
@@ -185,13 +185,13 @@ PLACES = [
     question("grid outside", "fields", "evaluate/grids/0/x/to", 41, "#/evaluate/grids/0/x/to", "x = 41 mm lies outside the body"),
     question("grid backwards", "fields", "evaluate/grids/0/x/from", 40, "#/evaluate/grids/0/x", "`to` has to be greater than `from`."),
     question("places that do not increase", "fields", "evaluate/grids/0/y", [30, 30], "#/evaluate/grids/0/y", "The places have to increase."),
-    question("empty axis", "fields", "evaluate/grids/0/y", [], "#/evaluate/grids/0/y", "At least 1 entries are wanted here; there are 0."),
+    question("empty axis", "fields", "evaluate/grids/0/y", [], "#/evaluate/grids/0/y", "At least 1 entry is wanted here; there are 0."),
     question("axis left out", "fields", "evaluate/grids/0/z", ..., "#/evaluate/grids/0/z", "This field is required."),
     question("absurd grid", "fields", "evaluate/grids/0", {"x": {"from": 0, "to": 40, "count": 1000}, "y": {"from": 0, "to": 60, "count": 1000}, "z": {"from": 0, "to": 60, "count": 1000}}, "#/evaluate/grids/0", "The grid has 1000000000 places; at most 2000000 are allowed"),
     question("absurd axis", "fields", "evaluate/grids/0/x/count", 10**12, "#/evaluate/grids/0/x/count", "The number has to be at most 1000000."),
     question("nothing asked", "fields", "evaluate", {}, "#/evaluate", "Ask for something"),
     question("unknown quantity", "fields", "evaluate/quantities", ["heat"], "#/evaluate/quantities/0", 'One of "potential" or "flux" is wanted here.'),
-    question("no quantity", "fields", "evaluate/quantities", [], "#/evaluate/quantities", "At least 1 entries are wanted here; there are 0."),
+    question("no quantity", "fields", "evaluate/quantities", [], "#/evaluate/quantities", "At least 1 entry is wanted here; there are 0."),
     question("mean without end", "fields", "evaluate/means", [{"face": "x_low"}], "#/evaluate/means/0", "give a finite rectangle"),
     question("mean of no patch", "fields", "evaluate/means", [{"face": "z_low", "patch": 7}], "#/evaluate/means/0/patch", "There is no such patch; the face z_low has the patches 0 to 0."),
     question("patch of a plain face", "flux-totals", "evaluate/patches", [{"face": "y_low", "patch": 0}], "#/evaluate/patches/0/patch", "the face y_low has no patches."),
@@ -204,7 +204,7 @@ PLACES = [
     question("plane along two axes", "flux-totals", "evaluate/planes", [{"x": 5, "y": 5}], "#/evaluate/planes/0", "Give one length along exactly one axis"),
     question("plane nowhere", "flux-totals", "evaluate/planes", [{}], "#/evaluate/planes/0", "Give one length along exactly one axis"),
     question("gap as wide as the face", "flux-totals", "evaluate/edge_gap", 30, "#/evaluate/edge_gap", "leaves nothing"),
-    question("convergence nowhere", "convergence", "evaluate/points", [], "#/evaluate/points", "At least 1 entries are wanted here; there are 0."),
+    question("convergence nowhere", "convergence", "evaluate/points", [], "#/evaluate/points", "At least 1 entry is wanted here; there are 0."),
     question("no terms", "convergence", "evaluate/overshoot_terms", 0, "#/evaluate/overshoot_terms", "The number has to be at least 1."),
     question("problem and id", "fields", "problem_id", "0" * 64, "#", "Give either `problem` or `problem_id`."),
     question("neither problem nor id", "fields", "problem", ..., "#", "Give either `problem` or `problem_id`."),

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 from typing import Any
 
 import httpx
@@ -11,6 +12,7 @@ import pytest
 from service.media import ARRAYS
 from service.models.cases_answer import CasesAnswer
 from service.settings import Settings
+from service.translation.analysis import Prepared, prepare
 from tests.api.client import check_problem_document, open_client, pointers
 from tests.api.halden_reach import Json, block, changed, sight_port_bar, slab
 
@@ -129,7 +131,7 @@ QUESTION: Json = {
     [
         {"table": "list", "rows": [[10, 20], [10, 30], [30, 20], ["303.15 K", "3 cm"]]},
         {"table": "grid", "values": [[10, 30], {"from": 20, "to": "30 mm", "count": 2}]},
-        {"table": "csv", "csv": "thickness;low\n20;10\n30;10,0\n20;30\n30;3e1\n"},
+        {"table": "csv", "csv": "\ufeffthickness;low\n20;10\n30;10,0\n20;30\n30;3e1\n"},
     ],
 )
 async def test_tables_of_every_kind_mean_the_same(client: httpx.AsyncClient, cases: Json) -> None:
@@ -211,12 +213,13 @@ async def test_two_numbers_with_one_name_or_one_place_are_refused(client: httpx.
 @pytest.mark.parametrize(
     ("cases", "pointer"),
     [
-        ({"table": "list", "rows": [[1]]}, "#"),
+        ({"table": "list", "rows": [[1, 20], [1]]}, "#/cases/rows/1"),
         ({"table": "list", "rows": [[1, "2 kg"]]}, "#/cases/rows/0/1"),
         ({"table": "csv", "csv": "low,thick\n1,2\n"}, "#/cases/csv"),
         ({"table": "csv", "csv": "low,thickness\n1\n"}, "#/cases/csv"),
         ({"table": "csv", "csv": ""}, "#/cases/csv"),
-        ({"table": "grid", "values": [[1]]}, "#"),
+        ({"table": "grid", "values": [[1]]}, "#/cases/values"),
+        ({"table": "design", "method": "random", "count": 5, "low": [0, 3], "high": [1]}, "#/cases/high"),
         ({"table": "design", "method": "random", "count": 5, "low": [0, 30], "high": [1, 20]}, "#/cases/high/1"),
         ({"table": "heap"}, "#/cases/table"),
     ],
@@ -235,3 +238,47 @@ async def test_long_tables_are_sent_to_studies(settings: Settings) -> None:
     huge = {"table": "grid", "values": [{"from": 0, "to": 1, "count": 10**6}, {"from": 20, "to": 21, "count": 10**6}]}
     async with open_client(settings) as client:
         check_problem_document(await client.post("/v1/cases", json=QUESTION | {"cases": huge}), 422)
+
+
+async def test_faults_of_a_text_are_told_by_its_lines(client: httpx.AsyncClient) -> None:
+    text = "low,thickness\n1,20\n\n2\nmuch,20\n"
+    document = check_problem_document(
+        await client.post("/v1/cases", json=QUESTION | {"cases": {"table": "csv", "csv": text}}), 422
+    )
+    assert [entry["detail"] for entry in document["errors"]] == [
+        "Line 4 of the text has 1 of the 2 entries that the first row has.",
+        'Line 5 of the text: "low" has to be a bare number.',
+    ]
+
+
+MANY: Json = {"table": "grid", "values": [{"from": 0, "to": 1, "count": 1500}, [25]]}
+
+
+async def test_cases_that_would_take_far_too_long_are_sent_to_studies(settings: Settings) -> None:
+    # A case takes about two milliseconds: all of them 3 s, and none of those is waited for.
+    async with open_client(settings.model_copy(update={"time_limit_seconds": 0.3})) as client:
+        document = check_problem_document(await client.post("/v1/cases", json=QUESTION | {"cases": MANY}), 422)
+    assert document["type"].endswith("too-costly")
+    assert "up to 1500 cases of about" in document["detail"]
+    assert "POST /v1/studies" in document["detail"]
+
+
+async def test_slow_start_of_a_service_refuses_nothing(
+    client: httpx.AsyncClient, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def slow(*given: Any) -> Prepared:
+        return dataclasses.replace(prepare(*given), seconds=100.0)
+
+    monkeypatch.setattr("service.routes.deciding.prepare", slow)
+    found = await ask(client, QUESTION | {"cases": {"table": "list", "rows": [[10, 20], [10, 30]]}})
+    assert found["columns"][0]["values"] == pytest.approx([45, 45])
+
+
+async def test_decision_that_takes_too_long_is_sent_to_studies(
+    settings: Settings, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr("service.routes.deciding.check_time", lambda *_: None)
+    async with open_client(settings.model_copy(update={"time_limit_seconds": 0.3})) as client:
+        document = check_problem_document(await client.post("/v1/cases", json=QUESTION | {"cases": MANY}), 422)
+    assert document["type"].endswith("time-limit")
+    assert "POST /v1/studies" in document["detail"]

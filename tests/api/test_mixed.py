@@ -242,7 +242,7 @@ SIDEWAYS["faces"] = SIDEWAYS["faces"] | {"x_low": {"condition": "mixed", "backgr
     {"y": [1, 2], "z": [1, 2], "condition": "held", "value": 0}]}}  # fmt: skip
 
 TABLE = [
-    wrong("no pads", changed(stub(), "faces/z_high/pads", []), PADS, "At least 1 entries are wanted here"),
+    wrong("no pads", changed(stub(), "faces/z_high/pads", []), PADS, "At least 1 entry is wanted here"),
     wrong("no background", changed(stub(), "faces/z_high/background", ...), "#/faces/z_high/background", "This field is required."),
     wrong("held background", stub(condition="held", value=3), "#/faces/z_high/background/condition", 'One of "flux", "film", "insulated" is wanted here.'),
     wrong("background that varies", stub(condition="flux", inflow={"map": "patches"}), "#/faces/z_high/background/inflow", "A number in the declared unit"),

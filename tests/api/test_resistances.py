@@ -306,7 +306,7 @@ BAR["faces"] = {face: condition for face, condition in BAR["faces"].items() if f
 
 TABLE = [
     wrong("no pads in the problem", {}, "#/evaluate", "The problem has no pads", PLAIN),
-    wrong("no pads asked for", {"pads": []}, "#/evaluate/pads", "At least 1 entries are wanted here; there are 0."),
+    wrong("no pads asked for", {"pads": []}, "#/evaluate/pads", "At least 1 entry is wanted here; there are 0."),
     wrong("pad on a held face", {"pads": [{"face": "x_low", "y": [1, 2], "z": [1, 2]}]}, "#/evaluate/pads/0/face", "The face x_low is held", BAR),
     wrong("pad without end", {"pads": [{"face": "y_low"}]}, "#/evaluate/pads/0", "A pad has to be finite", BAR),
     wrong("pad without end along z", {"pads": [{"face": "y_low", "x": [1, 2], "z": [1, "end"]}]}, "#/evaluate/pads/0", "A pad has to be finite", BAR),

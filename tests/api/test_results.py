@@ -483,7 +483,7 @@ WRONG = [
     wrong("ratio of a level", "2/of", "A level in degC has no ratio to anything, since its zero is only agreed on; take a difference of two levels.", HERE, FLOW, result("ratio", of="potential", over="inflow")),
     wrong("no results", "", "", problem=slab()),
 ]  # fmt: skip
-WRONG[-1] = Wrong(**{**WRONG[-1].__dict__, "pointer": "#/results", "sentence": "At least 1 entries"})
+WRONG[-1] = Wrong(**{**WRONG[-1].__dict__, "pointer": "#/results", "sentence": "At least 1 entry"})
 
 
 @pytest.mark.parametrize("wrong", WRONG, ids=[wrong.name for wrong in WRONG])

@@ -204,7 +204,7 @@ FILM = {"condition": "film", "coefficient": 5, "ambient": 20}
 ONE_LAYER = changed(plate(), "body/layers", LAYERS[:1])
 
 TABLE = [
-    wrong("no layer at all", "body/layers", [], "#/body/layers", "At least 1 entries"),
+    wrong("no layer at all", "body/layers", [], "#/body/layers", "At least 1 entry"),
     wrong("layers and a size along z", "body/size/z", 3, "#/body/size/z", "The layers say this; leave z out."),
     wrong("layers and a conductivity", "body/conductivity", 3, "#/body/conductivity", "leave conductivity out."),
     wrong("no size along z", "body", {"size": {"x": 30, "y": 20}, "conductivity": 3}, "#/body/size/z", "This field is required, unless `layers` are given."),

@@ -15,10 +15,11 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from service.analysis.evaluations import Evaluations, Failure, FloatArray
-from service.refusals import QueueFull, StoreFull
+from service.refusals import QueueFull, StoreBusy, StoreFull, UnknownStudy, WrongState
 from service.studies.chunk_work import ChunkOutcome
 from service.studies.chunks import DurableEvaluate, TooManyCases, chunk_size_for, chunks_of
 from service.studies.crew import CrewLost, TimeOver, WorkerLost
+from service.studies.patience import patiently
 from service.studies.store import Acceptance, NotRepeatable, Study, StudyStore
 from service.translation.case_columns import Column, Columns
 
@@ -177,6 +178,61 @@ def test_chunk_damaged_on_disk_is_computed_again(store: StudyStore, path: Path) 
     assert study.done == 64
 
 
+def test_damage_on_disk_is_not_told_as_numbers(store: StudyStore, path: Path) -> None:
+    durable(store, Crew())(wave(64))
+    store.finish("s", b"answer")
+    with closing(sqlite3.connect(path, isolation_level=None)) as other:
+        other.execute("UPDATE chunk SET payload = zeroblob(length(payload)) WHERE first = 16")
+        other.execute("UPDATE chunk SET payload = substr(payload, 9) WHERE first = 32")
+        other.execute("UPDATE answer SET content = x'00'")
+    found = store.table("s").evaluations
+    lost = [case for case, failure in found.failures.items() if failure.code == "damaged"]
+    assert lost == list(np.flatnonzero(np.isnan(found.values[:, 0])))
+    assert {16, 32} <= set(lost) < set(range(64))
+    assert np.isnan(found.bounds[lost]).all()
+    kept = [case for case in range(64) if case not in lost]
+    np.testing.assert_array_equal(found.values[kept], computed(wave(64)).values[kept])
+    with pytest.raises(WrongState, match="is damaged; delete the study"):
+        store.answer("s")
+
+
+def test_damaged_file_is_told_as_one_and_not_waited_for(store: StudyStore, path: Path) -> None:
+    begun(store)
+    with closing(sqlite3.connect(path, isolation_level=None)) as other:
+        other.execute("UPDATE study SET columns = '[]'")
+    with pytest.raises(StoreBusy, match="are damaged") as raised:
+        patiently(lambda: None, store.study, "s")
+    assert not raised.value.passes
+
+
+def test_store_that_cannot_be_written_for_a_while_is_waited_for(path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("service.studies.store._BUSY_SECONDS", 0.02)
+    monkeypatch.setattr("service.studies.patience.RETRY_SECONDS", 0.02)
+    with (
+        closing(StudyStore(path, 1_000_000, 10)) as store,
+        closing(sqlite3.connect(path, isolation_level=None)) as other,
+    ):
+        begun(store)
+        holds = iter(range(10))
+
+        def ask_on() -> None:
+            # Asked between tries: the other process lets go after some of them.
+            if other.in_transaction and next(holds) == 5:
+                other.execute("ROLLBACK")
+
+        def hold(cases: FloatArray, _: int) -> None:
+            if cases[0, 0] == 16:
+                other.execute("BEGIN IMMEDIATE")
+
+        crew = Crew(trouble=hold)
+        check_same(durable(store, crew, ask_on)(wave(64)), computed(wave(64)))
+        assert len(crew.cases) == 64
+        study = store.study("s")
+        assert study is not None
+        assert (study.state, study.done) == ("running", 64)
+        assert next(holds) > 5
+
+
 @pytest.mark.parametrize(("error", "code", "times"), [(TimeOver(), "time-limit", 1), (WorkerLost(), "process-lost", 2)])
 def test_case_that_takes_its_worker_along_fails_alone(
     store: StudyStore, error: Exception, code: str, times: int
@@ -286,3 +342,7 @@ def test_study_that_was_begun_again_is_not_forgotten_for_its_former_attempt(stor
     assert store.answer("s") == b"answer"
     assert store.forget("s", latter.attempt)
     assert store.study("s") is None
+    # Whoever looked at it a moment ago is told so, whatever comes next.
+    for look in (store.table, lambda study: store.failures(study, 20), store.question):
+        with pytest.raises(UnknownStudy):
+            look("s")

@@ -344,6 +344,11 @@ async def test_waiting_for_a_study_is_bounded(studies: httpx.AsyncClient) -> Non
     assert answer.headers["preference-applied"] == "wait=30"
     assert answer.status_code == 200
     assert answer.json()["state"] == "finished"
+    address = answer.headers["location"]
+    # Names of preferences are of either case, and values may be quoted.
+    for preference in ("WAIT=5", 'wait="5"', "respond-async, Wait = 5"):
+        answer = await studies.get(address, headers={"Prefer": preference})
+        assert answer.headers["preference-applied"] == "wait=5"
 
 
 async def test_second_service_on_the_same_studies_is_told_so(settings: Settings, tmp_path: object) -> None:
@@ -351,7 +356,38 @@ async def test_second_service_on_the_same_studies_is_told_so(settings: Settings,
         shown = await run_to_end(first, cases_of(coefficients(2)))
         assert shown["state"] == "finished"
         async with open_client(quick(settings)) as second:
-            check_problem_document(await second.get(f"/v1/studies/{shown['study_id']}"), 503)
+            document = check_problem_document(await second.get(f"/v1/studies/{shown['study_id']}"), 503)
+            assert str(settings.studies_folder) not in document["detail"]
             assert (await second.get("/health/live")).status_code == 200
+            # All that is not about studies is told as ever.
+            state = Diagnostics.model_validate((await second.get("/v1/diagnostics")).json())
+            assert state.studies is None
+            text = (await second.get("/metrics")).text
+            assert "stillfield_work_running" in text
+            assert "stillfield_studies" not in text
     async with open_client(quick(settings)) as third:
         assert (await third.get(f"/v1/studies/{shown['study_id']}")).json() == shown
+
+
+async def test_damaged_file_of_the_engine_is_set_aside_and_studies_go_on(settings: Settings) -> None:
+    study = cases_of(coefficients(400))
+    async with open_client(quick(settings)) as client:
+        address = (await client.post("/v1/studies", json=study)).headers["location"]
+    engine = settings.studies_folder / "engine.sqlite3"
+    for rest in ("-wal", "-shm"):
+        engine.with_name(engine.name + rest).unlink(missing_ok=True)
+    engine.write_bytes(b"no such file format" * 500)
+    async with open_client(quick(settings)) as client:
+        async for done in progress_of(client, address):
+            if done > 0:
+                break
+    assert len(list(settings.studies_folder.glob("engine.sqlite3.damaged-*"))) == 1
+
+
+async def test_damaged_store_of_studies_leaves_everything_else_alone(settings: Settings) -> None:
+    settings.studies_folder.mkdir(parents=True)
+    (settings.studies_folder / "studies.sqlite3").write_bytes(b"no such file format" * 500)
+    async with open_client(quick(settings)) as client:
+        for answer in (await client.get("/v1/studies"), await client.post("/v1/studies", json=cases_of([1.0]))):
+            assert "damaged" in check_problem_document(answer, 503)["detail"]
+        assert (await client.post("/v1/cases", json=cases_of([1.0])["question"])).status_code == 200
