@@ -147,7 +147,7 @@ def test_keyboard_alone_is_enough(page: Page) -> None:
             break
     assert [name for name in reached if name in wanted] == wanted
     page.keyboard.press("Enter")
-    expect(page.locator("#status")).to_have_text("Computed. The answer is shown.")
+    expect(page.locator("#status")).to_have_text("Computed. The answer is shown.", timeout=20_000)
     expect(page.locator("#answer-body")).to_contain_text("42 mm")
     # Reading goes on from the answer's heading to what can be done with it.
     expect(page.locator("#answer-title")).to_be_focused()
