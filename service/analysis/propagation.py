@@ -1,22 +1,23 @@
 """What spread in the numbers does to the results, by samples: means, quantiles, the probability that limits hold.
 
-Every estimate has an interval that holds with a given confidence. Where samples are plainly at random that of a
-probability is Clopper and Pearson's (Biometrika 26, 1934), that of a quantile is between two order statistics
-(David and Nagaraja, Order Statistics, 2003, section 7.1), both right for any number of samples; those of mean and
-standard deviation are the usual ones for many. From Sobol sequences and Latin hypercubes independent replicates are
-drawn, and the interval is Student's of the values of the replicates. A probability never has a narrower one than as
-many plain samples with the same counts would have, so that replicates that all say "always" do not prove it.
+Every estimate has an interval for a given confidence (`intervals`). Where samples are plainly at random that of a
+probability is Clopper and Pearson's (Biometrika 26, 1934), that of a quantile is between two order statistics, both
+right for any number of samples; those of mean and standard deviation are approximate. From Sobol sequences and Latin
+hypercubes independent replicates are drawn, and all intervals are approximate and come from how these differ. A
+probability never has a narrower one than as many plain samples with the same counts would have, so that replicates
+that all say "always" do not prove it. A quantile has no end on the side where too few samples lie beyond it.
 
 A case whose margin is within its error bound, or that has no results, counts as a failure towards the lower end of the
-interval and as a success towards the upper end. All intervals of results are wider by the error bounds, and those of
-quantiles by cases without results, which might lie below all others or above.
+interval and as a success towards the upper end. All intervals of results are wider by the error bounds. A case without
+results might lie below all others or above: quantiles count it both ways, and mean and standard deviation of all are
+then not known at all.
 """
 
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, replace
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -24,10 +25,14 @@ from scipy import stats
 
 from service.analysis.distributions import Distribution, Method, numbers_of, parts
 from service.analysis.evaluations import Evaluate, Evaluations, Failure, FloatArray
+from service.analysis.intervals import of_mean, ranks_at_random, ranks_of_replicates, standard_error, student
 from service.analysis.limits import Limit, bounds_of, margins, surely_held, surely_passed
 
 # Cases in a wave.
 WAVE = 512
+
+# How many times the skewness of squares that samples show is heeded: they seldom show the rare cases that make it.
+SEEN_OF_SQUARES = 2.0
 
 
 @dataclass(frozen=True)
@@ -72,7 +77,9 @@ class Probability:
 class Propagation:
     """Spread of every result, arrays of shape (n_results,).
 
-    mean, standard_deviation: of cases with results. quantiles: shape (n_quantiles, n_results). lowest, highest: seen.
+    mean, standard_deviation: of cases with results; their intervals are those of all cases, so that where cases have no
+    results a mean has no finite end, and a standard deviation none but 0. quantiles: shape (n_quantiles, n_results).
+    lowest, highest: seen.
     bounds: how far off a value may be at the most. limits: each alone; together: all of them at once, shape (1,).
     n_cases: computed; failures: how many have no results, by the code of the failure, and an example of each.
     """
@@ -126,20 +133,14 @@ def spread_of(
     """The spread of results of the cases of a sampling, in their order."""
     has = np.ones(len(results.values), dtype=bool)
     has[list(results.failures)] = False
-    replicates = [
-        _Results(results.values[rows][has[rows]], results.bounds[rows][has[rows]], int(np.sum(~has[rows])))
-        for rows in np.split(np.arange(len(has)), sampling.replicates)
-    ]
-    pooled = _Results(results.values[has], results.bounds[has], int(np.sum(~has)))
-    levels = np.asarray(quantiles, dtype=float)
-    if sampling.method == "random":
-        mean, deviation = _mean_at_random(pooled, confidence), _deviation_at_random(pooled, confidence)
-        within = _quantiles_at_random(pooled, levels, confidence)
+    known = results.values[has]
+    bounds = results.bounds[has]
+    # What is independent of each other: cases, or replicates of which each has an equal part of the mean of all.
+    n_pieces = len(known) if sampling.method == "random" else sampling.replicates
+    if len(known) == len(has):
+        mean, deviation = _mean(known, bounds, n_pieces, confidence), _deviation(known, bounds, n_pieces, confidence)
     else:
-        mean = _of_replicates(_mean, pooled, replicates, pooled.mean_bound, confidence)
-        deviation = _of_replicates(_deviation, pooled, replicates, pooled.deviation_bound, confidence)
-        deviation = replace(deviation, low=np.maximum(deviation.low, 0.0))
-        within = _quantiles_of_replicates(pooled, replicates, levels, confidence)
+        mean, deviation = _mean_of_some(known), _deviation_of_some(known)
     alone, together = _probabilities(results, has, sampling, limits, confidence)
     nothing = np.full(results.values.shape[1], np.nan)
     counts = Counter(why.code for why in results.failures.values())
@@ -147,10 +148,10 @@ def spread_of(
     return Propagation(
         mean=mean,
         standard_deviation=deviation,
-        quantiles=within,
-        lowest=pooled.values.min(axis=0) if np.any(has) else nothing,
-        highest=pooled.values.max(axis=0) if np.any(has) else nothing,
-        bounds=pooled.largest_bound,
+        quantiles=_quantiles(results, has, sampling, quantiles, confidence),
+        lowest=known.min(axis=0) if np.any(has) else nothing,
+        highest=known.max(axis=0) if np.any(has) else nothing,
+        bounds=np.max(bounds, axis=0, initial=0.0),
         limits=alone,
         together=together,
         n_cases=len(has),
@@ -161,113 +162,81 @@ def spread_of(
 # --- results of cases ---
 
 
-@dataclass(frozen=True)
-class _Results:
-    """Values and bounds of the cases that have results, shape (n_cases, n_results), and how many others there are."""
-
-    values: FloatArray
-    bounds: FloatArray
-    failed: int
-
-    @property
-    def mean_bound(self) -> FloatArray:
-        return self.bounds.sum(axis=0) / max(len(self.bounds), 1)
-
-    @property
-    def deviation_bound(self) -> FloatArray:
-        """Standard deviations are a norm of the values, so that they differ by that of the errors at the most."""
-        return np.sqrt((self.bounds**2).sum(axis=0) / max(len(self.bounds) - 1, 1))
-
-    @property
-    def largest_bound(self) -> FloatArray:
-        return np.max(self.bounds, axis=0, initial=0.0)
+def _mean(values: FloatArray, bounds: FloatArray, n_pieces: int, confidence: float) -> Estimate:
+    low, high = of_mean(_of_pieces(values, n_pieces), values, confidence)
+    bound = bounds.mean(axis=0)
+    return Estimate(values.mean(axis=0), low - bound, high + bound)
 
 
-def _mean(some: _Results) -> FloatArray:
-    return some.values.mean(axis=0) if len(some.values) else np.full(some.values.shape[1], np.nan)
+def _deviation(values: FloatArray, bounds: FloatArray, n_pieces: int, confidence: float) -> Estimate:
+    """From the mean of the squares about the mean, with what the mean of all is off itself; right without bias.
+
+    The wider of the interval of the mean of squares and of Student's on a logarithmic scale, which keeps it above zero.
+    """
+    mean = values.mean(axis=0)
+    if n_pieces < 2:
+        unknown = np.full_like(mean, np.nan)
+        return Estimate(unknown, np.zeros_like(mean), np.full_like(mean, np.inf))
+    squares = (values - mean) ** 2 + standard_error(_of_pieces(values, n_pieces)) ** 2
+    pieces = _of_pieces(squares, n_pieces)
+    variance = squares.mean(axis=0)
+    low, high = of_mean(pieces, squares, confidence, SEEN_OF_SQUARES)
+    part = np.divide(standard_error(pieces), variance, out=np.zeros_like(variance), where=variance > 0)
+    with np.errstate(over="ignore"):
+        factor = np.exp(student(n_pieces, confidence) * part)
+        low, high = np.minimum(low, variance / factor), np.maximum(high, variance * factor)
+    # Standard deviations are a norm, so that they differ by that of the errors at the most.
+    bound = np.sqrt((bounds**2).mean(axis=0))
+    low = np.maximum(np.sqrt(np.maximum(low, 0.0)) - bound, 0.0)
+    return Estimate(np.sqrt(variance), low, np.sqrt(high) + bound)
 
 
-def _deviation(some: _Results) -> FloatArray:
-    return some.values.std(axis=0, ddof=1) if len(some.values) > 1 else np.full(some.values.shape[1], np.nan)
+def _mean_of_some(values: FloatArray) -> Estimate:
+    """The mean of the cases with results. What the others would add is not known."""
+    unknown = np.full(values.shape[1], np.inf)
+    return Estimate(values.mean(axis=0) if len(values) else np.full_like(unknown, np.nan), -unknown, unknown)
 
 
-def _quantiles(some: _Results, levels: FloatArray) -> FloatArray:
-    if not len(some.values):
-        return np.full((len(levels), some.values.shape[1]), np.nan)
-    return np.quantile(some.values, levels, axis=0, method="median_unbiased")
+def _deviation_of_some(values: FloatArray) -> Estimate:
+    unknown = np.full(values.shape[1], np.inf)
+    value = values.std(axis=0, ddof=1) if len(values) > 1 else np.full_like(unknown, np.nan)
+    return Estimate(value, np.zeros_like(unknown), unknown)
 
 
-def _mean_at_random(pooled: _Results, confidence: float) -> Estimate:
-    n = len(pooled.values)
-    mean, deviation = _mean(pooled), _deviation(pooled)
-    half = stats.t.ppf((1 + confidence) / 2, max(n - 1, 1)) * deviation / np.sqrt(max(n, 1)) + pooled.mean_bound
-    return Estimate(mean, mean - half, mean + half)
+def _of_pieces(values: FloatArray, n_pieces: int) -> FloatArray:
+    """Means of each piece."""
+    means: FloatArray = values.reshape(n_pieces, -1, values.shape[1]).mean(axis=1)
+    return means
 
 
-def _deviation_at_random(pooled: _Results, confidence: float) -> Estimate:
-    """From the fourth moment, on a logarithmic scale."""
-    n = max(len(pooled.values), 1)
-    deviation = _deviation(pooled)
-    fourth = ((pooled.values - _mean(pooled)) ** 4).sum(axis=0) / n
-    # Var(s^2) = (mu_4 - sigma^4) / n to first order.
-    squares = np.sqrt(np.maximum(fourth - deviation**4, 0.0) / n)
-    part = np.divide(squares, 2 * deviation**2, out=np.zeros_like(squares), where=deviation > 0)
-    factor = np.exp(stats.norm.ppf((1 + confidence) / 2) * part)
-    bound = pooled.deviation_bound
-    return Estimate(deviation, np.maximum(deviation / factor - bound, 0.0), deviation * factor + bound)
-
-
-def _quantiles_at_random(pooled: _Results, levels: FloatArray, confidence: float) -> Estimate:
-    """Between order statistics. Cases without results might lie anywhere."""
-    value = _quantiles(pooled, levels)
-    n_results = pooled.values.shape[1]
-    nowhere = np.full((pooled.failed, n_results), np.inf)
-    ends = np.full((1, n_results), np.inf)
-    lower = np.sort(np.concatenate([-ends, -nowhere, pooled.values - pooled.bounds]), axis=0)
-    upper = np.sort(np.concatenate([pooled.values + pooled.bounds, nowhere, ends]), axis=0)
-    n = len(pooled.values) + pooled.failed
-    outside = (1 - confidence) / 2
-    first = stats.binom.ppf(outside, n, levels).astype(int)
-    last = stats.binom.ppf(1 - outside, n, levels).astype(int)
-    return Estimate(value, lower[first], upper[last])
-
-
-def _of_replicates(
-    statistic: Callable[[_Results], FloatArray],
-    pooled: _Results,
-    replicates: Sequence[_Results],
-    bound: FloatArray,
-    confidence: float,
+def _quantiles(
+    results: Evaluations, has: NDArray[np.bool_], sampling: Sampling, quantiles: Sequence[float], confidence: float
 ) -> Estimate:
-    """Student's interval of a statistic of independent replicates, with the value of all of them in it."""
-    value = statistic(pooled)
-    each = np.stack([statistic(some) for some in replicates])
-    half = _student(len(each), confidence) * each.std(axis=0, ddof=1)
-    middle = each.mean(axis=0)
-    return Estimate(value, np.minimum(middle - half, value) - bound, np.maximum(middle + half, value) + bound)
-
-
-def _quantiles_of_replicates(
-    pooled: _Results, replicates: Sequence[_Results], levels: FloatArray, confidence: float
-) -> Estimate:
-    """Cases without results might lie anywhere: if all lie below, a quantile of all is a lower one of the others."""
-
-    def at(moved: FloatArray) -> Estimate:
-        inside = np.clip(moved, 0.0, 1.0)
-        bound = pooled.largest_bound
-        return _of_replicates(lambda some: _quantiles(some, inside), pooled, replicates, bound, confidence)
-
-    lost = pooled.failed / (len(pooled.values) + pooled.failed)
-    left = 1 - lost or 1.0
-    return Estimate(
-        at(levels).value,
-        np.where((levels <= lost)[:, None], -np.inf, at((levels - lost) / left).low),
-        np.where((levels >= 1 - lost)[:, None], np.inf, at(levels / left).high),
-    )
-
-
-def _student(n_replicates: int, confidence: float) -> float:
-    return float(stats.t.ppf((1 + confidence) / 2, n_replicates - 1) / np.sqrt(n_replicates))
+    """Quantiles of cases with results, in intervals of all: those without lie below all others at the lower ends, and
+    above at the upper."""
+    is_random = sampling.method == "random"
+    levels = np.asarray(quantiles, dtype=float)
+    if np.any(has):
+        # Of evenly spread samples each stands for an equal part of all, and lies in the middle of it.
+        value = np.quantile(results.values[has], levels, axis=0, method="median_unbiased" if is_random else "hazen")
+    else:
+        value = np.full((len(levels), results.values.shape[1]), np.nan)
+    at_low = np.where(has[:, None], results.values - results.bounds, -np.inf)
+    at_high = np.where(has[:, None], results.values + results.bounds, np.inf)
+    none = np.full((1, results.values.shape[1]), np.inf)
+    low, high = np.empty_like(value), np.empty_like(value)
+    for ends, side, chosen in ((at_low, 0, low), (at_high, 1, high)):
+        ordered = np.concatenate([-none, np.sort(ends, axis=0), none])
+        for place, level in enumerate(levels):
+            if is_random:
+                chosen[place] = ordered[ranks_at_random(len(has), level, confidence)[side]]
+                continue
+            is_below = ends <= ordered[int(np.ceil(level * len(has)))]
+            each = is_below.reshape(sampling.replicates, sampling.count, -1).mean(axis=1)
+            ranks = ranks_of_replicates(each, sampling.count, level, confidence)[side].astype(int)
+            chosen[place] = np.take_along_axis(ordered, ranks[None], axis=0)[0]
+    # A low confidence leaves the interval narrower than it is to the next sample.
+    return Estimate(value, np.fmin(low, value), np.fmax(high, value))
 
 
 # --- limits ---
@@ -324,5 +293,5 @@ def _exactly(count: int, n: int, confidence: float) -> tuple[float, float]:
 def _end(which: NDArray[np.bool_], sampling: Sampling, confidence: float, side: float) -> FloatArray:
     """The end of Student's interval of how often something is so in independent replicates."""
     each = which.reshape(sampling.replicates, sampling.count, -1).mean(axis=1)
-    half = _student(sampling.replicates, confidence) * each.std(axis=0, ddof=1)
+    half = student(sampling.replicates, confidence) * standard_error(each)
     return np.clip(each.mean(axis=0) + side * half, 0.0, 1.0)

@@ -1,4 +1,8 @@
-"""Sobol indices: which part of the variance of a result each number is behind, alone and together with others."""
+"""Sobol indices: which part of the variance of a result each number is behind, alone and together with others.
+
+The base sample is several independently scrambled Sobol designs. An index is a ratio of means over all of them, and its
+interval that of the mean of what each design departs from the ratio (Cochran, Sampling Techniques, 1977, section 6.4).
+"""
 
 from __future__ import annotations
 
@@ -8,12 +12,12 @@ from dataclasses import dataclass
 import numpy as np
 
 from service.analysis.distributions import Distribution, numbers_of, parts
-from service.analysis.evaluations import Evaluate, Evaluations, FloatArray
-from service.analysis.interpolants import BoolArray
+from service.analysis.evaluations import Evaluate, FloatArray
+from service.analysis.intervals import of_mean
 from service.analysis.propagation import Estimate, in_waves
 
-# Resamples for the intervals.
-RESAMPLES = 500
+# Designs that the base sample is made of.
+DESIGNS = 8
 
 
 @dataclass(frozen=True)
@@ -23,7 +27,9 @@ class VarianceIndices:
     NaN where a result does not vary beyond what its values may be off.
 
     first: the part of the variance that goes if the number alone is fixed. total: the part that stays if all others
-    are. n_cases: computed; n_left_out: rows of the base sample that were left out, since a case of theirs failed.
+    are. Their intervals are wider by what the values may be off. n_cases: computed; n_left_out: rows of the base sample
+    that were left out, since a case of theirs failed; the indices are then those of the other rows, and their
+    intervals, which are of all, have no finite ends.
     """
 
     first: Estimate
@@ -40,63 +46,71 @@ def cases_of_indices(count: int, n_numbers: int) -> int:
 def variance_indices(
     evaluate: Evaluate, distributions: Sequence[Distribution], count: int, *, seed: int = 0, confidence: float = 0.95
 ) -> VarianceIndices:
-    """Sobol indices of independent numbers, from a base sample of count cases, a power of 2.
+    """Sobol indices of independent numbers, from a base sample of count cases, a power of 2 of at least 16.
 
     First-order ones by Saltelli et al. (Computer Physics Communications 181, 2010, table 2 b), total ones by Jansen
-    (same, table 2 f), values counted from their mean. Intervals by resampling rows of the base sample: estimates.
+    (same, table 2 f), values counted from their mean. The intervals are approximate.
     """
     n_numbers = len(distributions)
-    both = numbers_of(parts(2 * n_numbers, count, 1, "sobol", seed)[0], [*distributions, *distributions])
+    points = parts(2 * n_numbers, count // DESIGNS, DESIGNS, "sobol", seed).reshape(count, -1)
+    both = numbers_of(points, [*distributions, *distributions])
     base, other = both[:, :n_numbers], both[:, n_numbers:]
     crossed = np.repeat(base[None], n_numbers, axis=0)
     for number in range(n_numbers):
         crossed[number, :, number] = other[:, number]
     cases = np.concatenate([base[None], other[None], crossed])
     results = in_waves(evaluate, cases.reshape(-1, n_numbers))
-    values = results.values.reshape(n_numbers + 2, count, -1)
-    failed = np.zeros(n_numbers * count + 2 * count, dtype=bool)
+    failed = np.zeros(len(results.values), dtype=bool)
     failed[list(results.failures)] = True
-    values = values[:, ~failed.reshape(n_numbers + 2, count).any(axis=0)]
-    left = values.shape[1]
-    if left < 2:
-        nothing = np.full((values.shape[2], n_numbers), np.nan)
-        empty = Estimate(nothing, nothing, nothing)
-        return VarianceIndices(empty, empty, len(results.values), count - left)
-    source = np.random.default_rng(np.random.SeedSequence(seed).spawn(2)[1])
-    resampled = np.stack([_indices(values[:, source.integers(left, size=left)]) for _ in range(RESAMPLES)])
-    outside = (1 - confidence) / 2
-    low, high = np.quantile(resampled, [outside, 1 - outside], axis=0)
-    first, total = _indices(values)
-    still = _may_be_constant(results)
-    for part in (first, total, low, high):
-        part[..., still, :] = np.nan
-    return VarianceIndices(
-        first=Estimate(first, low[0], high[0]),
-        total=Estimate(total, low[1], high[1]),
-        n_cases=len(results.values),
-        n_left_out=count - left,
+    left = ~failed.reshape(n_numbers + 2, count).any(axis=0)
+    n_left = int(left.sum())
+    shape = n_numbers + 2, count, -1
+    first, total = _indices(
+        results.values.reshape(shape)[:, left], results.bounds.reshape(shape)[:, left], confidence, n_left == count
     )
+    return VarianceIndices(first=first, total=total, n_cases=len(results.values), n_left_out=count - n_left)
 
 
-def _may_be_constant(results: Evaluations) -> BoolArray:
-    """Whether one value of a result, shape (n_results,), is within the bounds of all cases."""
-    with np.errstate(invalid="ignore"):
-        highest = np.fmin.reduce(results.values + results.bounds, axis=0)
-        lowest = np.fmax.reduce(results.values - results.bounds, axis=0)
-    still: BoolArray = lowest <= highest
-    return still
+def _indices(values: FloatArray, bounds: FloatArray, confidence: float, is_whole: bool) -> tuple[Estimate, Estimate]:
+    """First-order and total indices.
 
-
-def _indices(values: FloatArray) -> FloatArray:
-    """First-order and total indices, shape (2, n_results, n_numbers).
-
-    values: at the base sample, the other, and the base with each number from the other: (n_numbers + 2, n, n_results).
+    values, bounds: at the base sample, the other, and the base with each number from the other, of shape (n_numbers +
+    2, n, n_results). is_whole: whether these are all rows of the designs, one design after the other.
     """
+    n_numbers, n, n_results = len(values) - 2, *values.shape[1:]
+    if n < 2:
+        nothing = np.full((n_results, n_numbers), np.nan)
+        return (Estimate(nothing, nothing, nothing),) * 2
     base, other, crossed = values[0], values[1], values[2:]
     mean = (base.mean(axis=0) + other.mean(axis=0)) / 2
-    size = ((base - mean) ** 2).mean(axis=0) / 2 + ((other - mean) ** 2).mean(axis=0) / 2
-    first = ((other - mean) * (crossed - base)).mean(axis=1).T
-    total = ((crossed - base) ** 2).mean(axis=1).T / 2
-    return np.stack(
-        [np.divide(part, size[:, None], out=np.zeros_like(part), where=size[:, None] > 0) for part in (first, total)]
+    # Of each row, what has the variance for its mean, and what has the parts that numbers are behind.
+    size = ((base - mean) ** 2 + (other - mean) ** 2) / 2
+    alone, with_others = (other - mean) * (crossed - base), (crossed - base) ** 2 / 2
+    deviation = np.sqrt(size.mean(axis=0))
+    off = np.sqrt((bounds**2).mean(axis=(0, 1)))
+    deviation[~(deviation > off)] = np.nan
+    first, total = (
+        _ratio(part, size / deviation**2, deviation, off, confidence, is_whole) for part in (alone, with_others)
     )
+    return first, total
+
+
+def _ratio(
+    part: FloatArray, size: FloatArray, deviation: FloatArray, off: FloatArray, confidence: float, is_whole: bool
+) -> Estimate:
+    """Means of a part of the variance over the variance, arrays of shape (n_results, n_numbers).
+
+    part: shape (n_numbers, n, n_results). size: of each row, with a mean of 1.
+    """
+    part = part / deviation**2
+    ratio = part.mean(axis=1)
+    if not is_whole:
+        unknown = np.where(np.isnan(ratio), np.nan, np.inf).T
+        return Estimate(ratio.T, -unknown, unknown)
+    rows = np.moveaxis(part - ratio[:, None] * size, 1, 0).reshape(len(size), -1)
+    pieces = rows.reshape(DESIGNS, -1, rows.shape[1]).mean(axis=1)
+    low, high = (ratio + end.reshape(ratio.shape) for end in of_mean(pieces, rows, confidence))
+    # The root of each part of the variance is a norm of the result, so that it differs by that of the errors at most.
+    least = np.maximum(np.sqrt(np.maximum(low, 0.0)) * deviation - off, 0.0) / (deviation + off)
+    most = (np.sqrt(np.maximum(high, 0.0)) * deviation + off) / (deviation - off)
+    return Estimate(ratio.T, np.minimum(low, least**2).T, np.maximum(high, most**2).T)
