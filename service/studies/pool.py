@@ -23,6 +23,8 @@ if sys.platform != "win32":
 
 # How often a worker looks whether its service still lives.
 _LOOK_EVERY_SECONDS = 0.5
+# The warning of the process that frees what a killed service has left, as an option of the interpreter.
+_QUIET = "ignore:resource_tracker:UserWarning"
 # A new process imports the solver before its first chunk.
 _START_SECONDS = 60.0
 
@@ -58,6 +60,7 @@ class Pool:
                 # Processes that were ended from outside took a lock of the pool along.
                 self._end()
             if self._pool is None:
+                _tidy_up_quietly()
                 # Started afresh: a copy of a process with threads may hang on a lock that one of them held.
                 self._pool = ProcessPool(
                     max_workers=self._workers,
@@ -83,6 +86,13 @@ class Pool:
             self._pool.stop()
             self._pool.join()
             self._pool = None
+
+
+def _tidy_up_quietly() -> None:
+    """Where a service is killed, a process of the interpreter frees its semaphores. That is no news for the log."""
+    if _QUIET not in sys.warnoptions:
+        # That process has the options for warnings that stand here when it starts.
+        sys.warnoptions.append(_QUIET)
 
 
 def _hand_over(done: Future[ChunkOutcome], outcome: Future[ChunkOutcome]) -> None:

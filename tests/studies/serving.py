@@ -24,11 +24,12 @@ class Served:
     process: subprocess.Popen[str]
     client: httpx.Client
 
-    def kill(self) -> None:
-        """End it without a warning, as a crash of the machine would."""
+    def kill(self) -> str:
+        """End it without a warning, as a crash of the machine would; what it and its workers still said."""
         self.client.close()
         self.process.send_signal(signal.SIGKILL)
-        self.process.communicate()
+        _, said = self.process.communicate()
+        return said
 
     def stop(self) -> str:
         """Ask it to end; what it said meanwhile."""
