@@ -1,7 +1,8 @@
 """Derivatives of results by numbers, from values at Chebyshev points around the nominal numbers.
 
 Around p the result is looked at on [p - r, p + r] at 5 Chebyshev points, nested in 9, and the interpolant is
-differentiated at p. A number usually takes four cases or eight. All numbers share their waves.
+differentiated at p. A number usually takes four cases or eight, and two more close to p that show whether detail finer
+than the interval was missed. All numbers share their waves.
 
 What a derivative may be off by has two parts. Truncation is estimated from the coefficients. Rounding is the sum of
 |weight| times the bound of each value and holds whatever the values err by within their bounds; see `interpolants`.
@@ -20,13 +21,16 @@ import numpy as np
 
 from service.analysis.evaluations import Evaluate, Evaluations, Failure, FloatArray
 from service.analysis.interpolants import BoolArray
-from service.analysis.varied_number import Centre, Entry, Number, Side, Steps, vary
+from service.analysis.varied_number import STEP, Centre, Entry, Number, Side, Steps, vary
 
 # The first radius in parts of the number.
 RADIUS = 1 / 64
 
+# First radii below and above these parts of the number are of no use, whoever asks: rounding, and another body.
+LEAST_RADIUS, MOST_RADIUS = 1e-9, 1 / STEP
+
 # Cases that each number may take, and those that all stubborn ones share beside, enough for a kink.
-CASES_EACH, CASES_SHARED = 8, 48
+CASES_EACH, CASES_SHARED = 10, 48
 
 # Accuracy the cases are asked for, in parts of the span of their data.
 ACCURACY = 1e-12
@@ -73,7 +77,7 @@ class NominalFailed(Exception):
 
 
 def most_cases(n_numbers: int) -> int:
-    """The most cases that derivatives by so many numbers take; a well-behaved number takes 4 or 8 of these."""
+    """The most cases that derivatives by so many numbers take; a well-behaved number takes 6 or 10 of these."""
     return 1 + CASES_EACH * n_numbers + CASES_SHARED
 
 
@@ -92,6 +96,8 @@ def derivatives(
     Raises NominalFailed if the case with the nominal numbers has no results.
     """
     centre = Centre()
+    size = np.abs(nominal)
+    radii = np.where(nominal == 0, radii, np.clip(radii, LEAST_RADIUS * size, MOST_RADIUS * size))
     runs = [vary(Number(float(number), float(radius), centre)) for number, radius in zip(nominal, radii, strict=True)]
     entries, n_cases = _in_waves(evaluate, nominal, centre, runs, accuracy)
     has_none = ~np.isfinite(centre.values)
@@ -150,18 +156,15 @@ def _in_waves(
             centre.values, centre.bounds = answers.values[0], answers.bounds[0]
         still: dict[int, FloatArray] = {}
         for place in wanted:
+            found = _nothing(len(wanted[place]), centre)
+            if place in rows:
+                found = answers.part(rows[place].start, rows[place].stop)
             try:
-                found = _of_rows(answers, rows[place]) if place in rows else _nothing(len(wanted[place]), centre)
                 still[place] = runs[place].send(found)
             except StopIteration as finished:
                 entries[place] = finished.value
         wanted = still
     return [entries[place] for place in range(len(runs))], n_cases
-
-
-def _of_rows(answers: Evaluations, rows: slice) -> Evaluations:
-    failures = {row - rows.start: why for row, why in answers.failures.items() if rows.start <= row < rows.stop}
-    return Evaluations(answers.values[rows], answers.bounds[rows], failures)
 
 
 def _nothing(n_cases: int, centre: Centre) -> Evaluations:

@@ -32,6 +32,11 @@ class Evaluations:
     bounds: FloatArray
     failures: Mapping[int, Failure] = field(default_factory=dict)
 
+    def part(self, start: int, stop: int) -> Evaluations:
+        """The results of the cases from start to before stop."""
+        failures = {row - start: why for row, why in self.failures.items() if start <= row < stop}
+        return Evaluations(self.values[start:stop], self.bounds[start:stop], failures)
+
 
 class Evaluate(Protocol):
     """Computes a wave of cases."""

@@ -49,7 +49,8 @@ class DerivativeAnswer(Model):
     )
     error_estimate: float | None = Field(
         description="How far off the derivative may be: the error bounds of the values it was computed from, carried "
-        "through, which holds for certain, and an estimate of what their number leaves out. At a kink it reaches to "
+        "through, which holds for certain, and an estimate of what their number leaves out, which steps of a "
+        "thousandth and a millionth of the varied interval do not contradict. At a kink it reaches to "
         "the derivatives on both sides. Null where a value has no finite bound.",
         examples=[3e-9],
     )
@@ -79,6 +80,21 @@ class DerivativeAnswer(Model):
     second_error_estimate: float | None = Field(
         description="How far off the second derivative may be; null where a value has no finite bound.",
         examples=[4e-9],
+    )
+    per_cent: float | None = Field(
+        description="By how much the result changes for one per cent more of the number, to first order, in the unit "
+        "of its differences; null for a number that is zero or counts from no zero of its own, such as one in degC.",
+        examples=[-0.105],
+    )
+    relative: float | None = Field(
+        description="Per cent by which the result changes for one per cent more of the number, d ln result over "
+        "d ln number; null where either is zero or counts from no zero of its own.",
+        examples=[-0.42],
+    )
+    rank: int | None = Field(
+        description="1 for the number of which one per cent changes this result most, 2 for the next, and so on; null "
+        "where `per_cent` is, and where the derivative may be zero as far as its error tells.",
+        examples=[1],
     )
 
 

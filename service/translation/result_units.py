@@ -52,7 +52,9 @@ class Measure:
         """What a ratio measures. Of levels it means something only if they have a zero of their own."""
         if self.unit == other.unit:
             return Measure(NO_UNIT, NO_UNIT, "a ratio")
-        unit = self.unit if other.unit == NO_UNIT else f"{self.unit}/{in_brackets(other.unit)}"
+        # V/A over A is (V/A)/A: of several strokes nobody knows which one divides.
+        of = in_brackets(self.unit) if "/" in self.unit else self.unit
+        unit = self.unit if other.unit == NO_UNIT else f"{of}/{in_brackets(other.unit)}"
         return Measure(unit, unit, f"{self.meaning} over {other.meaning}")
 
     @property

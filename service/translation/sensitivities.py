@@ -30,12 +30,14 @@ def read_sensitivities(question: models.SensitivitiesQuestion, prepared: Prepare
 
     def run(evaluate: Evaluate) -> dict[str, Any]:
         found = derivatives_of(evaluate, infos, radii)
+        effects = _Effects(found, prepared, infos)
         return {
             "numbers": [_number_shown(found, index, info) for index, info in enumerate(infos)],
             "derivatives": [
                 {"result": prepared.results.infos[result].name, "number": info.name}
                 | {"unit": unit_of_derivative(prepared, result, info)}
                 | derivative_shown(found, result, index)
+                | effects.shown(result, index)
                 for result in range(len(prepared.results.infos))
                 for index, info in enumerate(infos)
             ],
@@ -106,6 +108,35 @@ def derivative_shown(found: Derivatives, result: int, number: int) -> dict[str, 
         "second_derivative": number_or_none(found.second[place]),
         "second_error_estimate": number_or_none(found.second_error[place]),
     }
+
+
+class _Effects:
+    """Derivatives on a common scale: what one per cent of each number does to a result, and which does most.
+
+    Numbers that are zero, or count from no zero of their own, have no per cent.
+    """
+
+    def __init__(self, found: Derivatives, prepared: Prepared, infos: Sequence[NumberInfo]) -> None:
+        sizes = np.array([info.nominal if info.measure.has_own_zero and info.nominal else np.nan for info in infos])
+        self._changes = found.first * sizes / 100
+        has_parts = np.array([info.measure.has_own_zero for info in prepared.results.infos])
+        whole = np.where(has_parts & np.isfinite(found.values) & (found.values != 0), found.values, np.nan)
+        self._relative = found.first * sizes / whole[:, None]
+        # What may be nothing has no rank.
+        told = np.abs(found.first) > found.first_error
+        ranked = np.where(told & np.isfinite(self._changes), np.abs(self._changes), -np.inf)
+        order = np.argsort(-ranked, axis=1, kind="stable")
+        self._ranks = np.argsort(order, axis=1, kind="stable") + 1
+        self._is_ranked = np.isfinite(ranked)
+
+    def shown(self, result: int, number: int) -> dict[str, Any]:
+        """What the table of derivatives tells of this beside."""
+        place = result, number
+        return {
+            "per_cent": number_or_none(self._changes[place]),
+            "relative": number_or_none(self._relative[place]),
+            "rank": int(self._ranks[place]) if self._is_ranked[place] else None,
+        }
 
 
 def _number_shown(found: Derivatives, index: int, info: NumberInfo) -> dict[str, Any]:

@@ -67,7 +67,7 @@ def test_derivatives_are_exact_to_what_is_said(function: Any, precise: Any) -> N
     # 1e-6 is what is promised and a tenth of it is aimed at.
     assert np.all(found.first_error[0] <= 2 * TARGET * np.abs(expected))
     assert np.all(found.smooth)
-    assert found.n_cases == evaluate.n_cases <= 1 + 4 * 8
+    assert found.n_cases == evaluate.n_cases <= 1 + 4 * 10
 
 
 @pytest.mark.parametrize(("function", "precise"), CLOSED_FORMS)
@@ -80,18 +80,19 @@ def test_second_derivatives_are_exact_to_what_is_said(function: Any, precise: An
     assert np.all(found.second_error[0][bent] <= 1e-2 * np.abs(expected[bent]))
 
 
-def test_numbers_a_result_is_affine_in_are_recognised_and_take_four_cases() -> None:
+def test_numbers_a_result_is_affine_in_are_recognised_and_take_six_cases() -> None:
     evaluate = Counted([wall])
     found = of(evaluate)
     assert found.affine.tolist() == [[True, False, False, True]]
     np.testing.assert_allclose(found.first[0, 3], 0.04 / 95 + 1 / 850, rtol=1e-12)
-    assert of(Counted([lambda load: 20 + 0.3 * load]), np.array([500.0])).n_cases == 1 + 4
+    assert of(Counted([lambda load: 20 + 0.3 * load]), np.array([500.0])).n_cases == 1 + 4 + 2
 
 
 def test_all_numbers_share_waves() -> None:
     evaluate = Counted([wall, fin(np), sphere(np)])
     of(evaluate)
-    assert evaluate.waves[0] == 1 + 4 * 4
+    # Four points and two probes of each of four numbers.
+    assert evaluate.waves[0] == 1 + 4 * (4 + 2)
     assert len(evaluate.waves) <= 3
 
 
@@ -128,7 +129,7 @@ def test_many_kinks_share_the_cases_there_are() -> None:
     """Twenty pads of one level: whichever is raised is hottest. No more cases than were said, and none told wrong."""
     evaluate = Counted([lambda *levels: np.max(levels, axis=0), lambda *levels: np.sum(levels, axis=0)])
     found = of(evaluate, np.full(20, 60.0))
-    assert found.n_cases == evaluate.n_cases <= most_cases(20) == 1 + 8 * 20 + 48
+    assert found.n_cases == evaluate.n_cases <= most_cases(20) == 1 + 10 * 20 + 48
     assert not found.smooth[0].any()
     assert np.all(found.first[0] - found.first_error[0] <= 0.5)
     assert np.all(found.first[0] + found.first_error[0] >= 0.5)
@@ -222,3 +223,45 @@ def test_errors_hold_for_random_smooth_functions(seed: int) -> None:
     with mpmath.workdps(40):
         expected = float(mpmath.diff(lambda x: function(x, mpmath), 1))
     assert abs(found.first[0, 0] - expected) <= found.first_error[0, 0] <= 1e-6 * abs(expected)
+
+
+# Results with detail of a width about 1, with the slope at 1: a step, a step on a slope, a wiggle, a step beside.
+DETAILS = [
+    pytest.param(lambda x, w: np.tanh((x - 1) / w), lambda w: 1 / w, id="step"),
+    pytest.param(lambda x, w: x + w * np.arctan((x - 1) / w), lambda w: 2.0, id="step on a slope"),
+    pytest.param(lambda x, w: (x - 1) * np.exp(-(((x - 1) / w) ** 2)), lambda w: 1.0, id="wiggle"),
+    pytest.param(lambda x, w: np.tanh((x - 1) / w + 0.7), lambda w: 1 / np.cosh(0.7) ** 2 / w, id="step beside"),
+]
+
+
+@pytest.mark.parametrize("width", [1e-2, 1e-3, 1e-4, 1e-5, 1e-6, 1e-7, 1e-8])
+@pytest.mark.parametrize(("formula", "slope"), DETAILS)
+def test_detail_far_finer_than_the_number_is_not_missed(formula: Any, slope: Any, width: float) -> None:
+    """Layers of microns in stacks of decimetres: looks of a 64th of the number leave no trace of them."""
+    found = of(Counted([lambda x: formula(x, width)], 1e-12), np.array([1.0]))
+    assert abs(found.first[0, 0] - slope(width)) <= found.first_error[0, 0]
+    # Down to a hundred thousandth it is found, and not only owned up to.
+    if width >= 1e-5:
+        assert found.first_error[0, 0] <= 1e-4 * slope(width)
+        assert found.smooth[0, 0]
+    assert found.n_cases <= most_cases(1)
+
+
+def test_detail_of_one_result_costs_the_others_nothing() -> None:
+    evaluate = Counted([lambda x: x + 1e-4 * np.arctan((x - 1) / 1e-4), lambda x: x**3], 1e-12)
+    found = of(evaluate, np.array([1.0]))
+    np.testing.assert_allclose(found.first[:, 0], [2, 3], rtol=1e-6)
+    assert found.first_error[1, 0] <= 2 * TARGET * 3
+
+
+@pytest.mark.parametrize("radius", [1e60, 1e10, 1e-14, 1e-60])
+def test_absurd_first_radii_are_mended(radius: float) -> None:
+    """1 / (1 + x / 300) at 300 falls by 1 / 1200, whatever step somebody asks for."""
+    evaluate = Counted([lambda x: 1 / (1 + x / 300)])
+    found = derivatives(evaluate, np.array([300.0]), np.array([radius]))
+    assert abs(found.first[0, 0] + 1 / 1200) <= found.first_error[0, 0] <= 1e-3 / 1200
+
+
+def test_step_of_a_number_at_zero_that_is_far_too_wide() -> None:
+    found = of(Counted([lambda x: np.tanh(x / 0.1)]), np.array([0.0]), step=1e3)
+    assert abs(found.first[0, 0] - 10) <= found.first_error[0, 0] <= 1e-6 * 10

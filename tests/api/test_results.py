@@ -125,7 +125,7 @@ def test_units_are_those_of_the_problem() -> None:
         "ratio": ("K/W", "K/W"),
         "per flux": ("K/(W/m^2)", "K/(W/m^2)"),
         "plain": ("1", "1"),
-        "twice": ("K/mm/(K/(W/m^2))", "K/mm/(K/(W/m^2))"),
+        "twice": ("(K/mm)/(K/(W/m^2))", "(K/mm)/(K/(W/m^2))"),
     }
 
 

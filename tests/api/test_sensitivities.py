@@ -117,11 +117,35 @@ async def test_plane_wall(client: httpx.AsyncClient) -> None:
     assert units["cool side", "thickness"] == "K/mm"
     assert units["cool side", "ambient"] == "1"
     assert units["flow", "hot"] == "W/K"
-    assert units["per flow", "conductivity"] == "K/W/(W/(m K))"
+    assert units["per flow", "conductivity"] == "(K/W)/(W/(m K))"
     affine = {(entry["result"], entry["number"]) for entry in answer["derivatives"] if entry["affine"]}
     assert {("flux", "ambient"), ("flux", "hot"), ("cool side", "hot"), ("per flow", "thickness")} <= affine
     assert not {("flux", "film"), ("cool side", "thickness"), ("flow", "conductivity")} & affine
-    assert answer["case_count"] <= 1 + 8 * len(WALL_NUMBERS)
+    assert answer["case_count"] <= 1 + 10 * len(WALL_NUMBERS)
+
+
+async def test_per_cent_and_ranks_of_a_wall(client: httpx.AsyncClient) -> None:
+    """The flux (hot - ambient) / (L / k + 1 / h): relative to L and k by the part of L / k, to h by that of 1 / h."""
+    results: list[Json] = [
+        {"name": "flux", "result": "flux", "at": ["middle", "middle", 10], "along": "z"},
+        {"name": "cool side", "result": "potential", "at": ["middle", "middle", "high"]},
+        {"name": "front", "result": "mean", "face": "z_low"},
+    ]
+    table = (await sensitivities(client, wall(), results, WALL_NUMBERS))["derivatives"]
+    found = {(entry["result"], entry["number"]): entry for entry in table}
+    wall_part = (THICKNESS / K) / (THICKNESS / K + 1 / H)
+    flux = flux_through(*WALL_NOMINAL)
+    for name, part, rank in (("film", 1 - wall_part, 1), ("thickness", -wall_part, 2), ("conductivity", wall_part, 2)):
+        entry = found["flux", name]
+        assert entry["relative"] == pytest.approx(part, rel=1e-6)
+        assert entry["per_cent"] == pytest.approx(part * flux / 100, rel=1e-6)
+        assert entry["rank"] in (rank, rank + (rank > 1))
+    # Temperatures in degC have no per cent, as numbers and as results; what does nothing has no rank.
+    assert (found["flux", "hot"]["per_cent"], found["flux", "hot"]["rank"]) == (None, None)
+    assert found["cool side", "film"]["relative"] is None
+    slope = found["cool side", "film"]["derivative"]
+    assert found["cool side", "film"]["per_cent"] == pytest.approx(slope * H / 100)
+    assert found["front", "film"]["rank"] is None
 
 
 async def test_second_derivative_of_a_wall(client: httpx.AsyncClient) -> None:
@@ -340,10 +364,26 @@ async def test_mistakes_are_pointed_at(client: httpx.AsyncClient, number: Json, 
 
 
 async def test_too_many_cases_are_refused_before_they_are_computed(settings: Settings) -> None:
-    """Eight for each number and 49 more for all, at the most; a study takes them."""
+    """Ten for each number and 49 more for all, at the most; a study takes them."""
     results: list[Json] = [{"name": "cool side", "result": "potential", "at": ["middle", "middle", "high"]}]
     question = {"problem": wall(), "results": results, "numbers": WALL_NUMBERS}
     async with open_client(settings.model_copy(update={"cases": 80})) as client:
         document = check_problem_document(await client.post("/v1/sensitivities", json=question), 422)
     assert document["type"].endswith("too-costly")
-    assert (document["estimate"], document["limit"]) == (89, 80)
+    assert (document["estimate"], document["limit"]) == (99, 80)
+
+
+@pytest.mark.parametrize(("thickness", "conductivity"), [(5e-3, 0.5), (5e-4, 0.5), (5e-5, 0.01), (5e-3, 0.001)])
+async def test_place_in_a_layer_of_microns(client: httpx.AsyncClient, thickness: float, conductivity: float) -> None:
+    """100 K over 100 mm, a film of microns, and 100 mm again: the slope inside it is that of its own resistance."""
+    problem = slab(0, 100)
+    outer = {"thickness": 100.0, "conductivity": 1.0}
+    layers = [outer, {"thickness": thickness, "conductivity": conductivity}, outer]
+    problem["body"] = {"size": {"x": 40, "y": 60}, "layers": layers}
+    results: list[Json] = [{"name": "probe", "result": "potential", "at": ["middle", "middle", 100 + thickness / 2]}]
+    (entry,) = (await sensitivities(client, problem, results, [{"name": "place", "at": "/results/0/at/2"}]))[
+        "derivatives"
+    ]
+    exact = 100 / (200 + thickness / conductivity) / conductivity
+    assert abs(entry["derivative"] - exact) <= entry["error_estimate"]
+    assert entry["error_estimate"] <= 1e-2 * exact
