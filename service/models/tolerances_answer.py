@@ -246,7 +246,7 @@ class PropagationAnswer(Model):
     confidence: float = Field(description="How often the intervals hold the true value.", examples=[0.95])
     intervals: str = Field(
         description="How the intervals were had.",
-        examples=["Student's intervals of the values of 8 independent replicates."],
+        examples=["Approximate, from how 8 independent replicates differ."],
     )
     results: list[SpreadAnswer] = Field(description="Each result, in the order asked.")
     all_limits: ProbabilityAnswer | None = Field(

@@ -252,11 +252,11 @@ class _Read:
         if sampling.method == "random":
             return (
                 "Probabilities have the exact binomial interval, quantiles that between two order statistics; those of "
-                "means and standard deviations hold for many samples."
+                "means and standard deviations are approximate."
             )
         return (
-            f"Student's intervals of the values of {sampling.replicates} independent replicates; that of a probability "
-            "is at least as wide as the exact binomial one of as many plain samples."
+            f"Approximate, from how {sampling.replicates} independent replicates differ; that of a probability is at "
+            "least as wide as the exact binomial one of as many plain samples."
         )
 
     def _indices(self, indices: VarianceIndices) -> dict[str, Any]:

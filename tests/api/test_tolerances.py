@@ -232,8 +232,11 @@ async def test_samples_of_a_linear_result_follow_its_distribution(client: httpx.
         found["propagation"]["all_limits"] | {"exact": exact.cdf(52) - exact.cdf(49)},
     ]
     for entry in inside:
-        assert entry["low"] <= entry["exact"] <= entry["high"], entry
-        assert entry["low"] <= entry["value"] <= entry["high"]
+        # Few samples do not tell an end of a quantile far out.
+        low, high = (far if entry[end] is None else entry[end] for end, far in (("low", -math.inf), ("high", math.inf)))
+        assert low <= entry["exact"] <= high, entry
+        assert low <= entry["value"] <= high
+    assert all(entry["low"] is not None and entry["high"] is not None for entry in (*inside[:2], *inside[3:]))
     count = samples["count"] * samples.get("replicates", 1)
     assert found["propagation"]["case_count"] == count
     # The derivatives, four places of each number, and the corners.
@@ -283,7 +286,7 @@ async def test_variance_indices_of_a_product(client: httpx.AsyncClient) -> None:
         HIGH | {"plus_minus": 30, "distribution": {"shape": "uniform"}},
         {"name": "k", "scale": "/problem/body/conductivity", "plus_minus": 0.5, "distribution": {"shape": "uniform"}},
     )
-    found = await tolerances(client, question(*numbers, results=(FLUX,), variance_indices={"count": 64, "seed": 2}))
+    found = await tolerances(client, question(*numbers, results=(FLUX,), variance_indices={"count": 256, "seed": 2}))
     # q = c a b with a and b uniform about 1 with deviations s = 0.5 / sqrt 3 both: V = (1 + s^2)^2 - 1.
     square = 0.25 / 3
     first = square / ((1 + square) ** 2 - 1)
@@ -292,7 +295,7 @@ async def test_variance_indices_of_a_product(client: httpx.AsyncClient) -> None:
         assert number["first"]["low"] <= first <= number["first"]["high"]
         assert number["total"]["low"] <= 1 - first <= number["total"]["high"]
         assert number["total"]["value"] == pytest.approx(1 - first, abs=0.05)
-    assert found["variance_indices"]["case_count"] == 64 * 4
+    assert found["variance_indices"]["case_count"] == 256 * 4
     shares = {entry["number"]: entry["variance_share"] for entry in found["stack_ups"][0]["contributions"]}
     assert shares == {"high": pytest.approx(0.5), "k": pytest.approx(0.5)}
 
