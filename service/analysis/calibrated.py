@@ -86,7 +86,8 @@ class Calibration:
     twenty sets of so many would show.
     chi_squared: the sum of squares. degrees_of_freedom: readings and prior values less what they determine; no integer
     with a map. probability: that chi_squared is as large or larger by chance, None where there is nothing left to test
-    or the uncertainties were scaled. scaled_by: what given uncertainties were multiplied by, 1 if they are taken as
+    or the uncertainties were scaled. missed: the ranges keep the readings from being met, though there are no more than
+    unknowns. scaled_by: what given uncertainties were multiplied by, 1 if they are taken as
     given. coverage_factor: of the intervals.
     rivals: other minima the readings do not rule out. minima: how many different minima the starts led to. settled: the
     search came to its end. linear: all readings are affine functions of the unknowns. cases: that were computed.
@@ -106,6 +107,7 @@ class Calibration:
     chi_squared: float
     degrees_of_freedom: float
     probability: float | None
+    missed: bool
     scaled_by: float
     coverage_factor: float
     rivals: tuple[Rival, ...]

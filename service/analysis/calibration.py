@@ -15,14 +15,14 @@ from dataclasses import replace
 import numpy as np
 from scipy.stats import chi2, norm, t
 
-from service.analysis import fitting, profiles
+from service.analysis import fitting, profiles, valleys
 from service.analysis.calibrated import Calibration, Estimate, MapEstimate, Rival
 from service.analysis.evaluations import Evaluate, FloatArray
 from service.analysis.fitting import Found
 from service.analysis.readings import Readings
 from service.analysis.search import MOST_ROUNDS, Question, Solved, solve
 from service.analysis.smoothing import RECTANGULAR, WIDEST, SmoothMap, resolution
-from service.analysis.told_apart import Combination, told_together
+from service.analysis.told_apart import Combination, free_members, held_best, told_together
 from service.analysis.unknowns import Unknown
 
 # Places a search begins at, unless told otherwise: the one given and others spread over the ranges.
@@ -43,6 +43,9 @@ FOLLOWED = 1 - 1e-9
 # Degrees of freedom below which there is nothing to test; with a map they are no integers.
 LEAST_FREEDOM = 0.5
 
+# A coordinate as near an end of its range as that is at it, but for rounding.
+AT_END = 1e-12
+
 # Other minima are the same if the readings differ by less than this many standard uncertainties between them.
 SAME = 0.1
 
@@ -61,6 +64,8 @@ def most_cases(unknowns: int, smooth: SmoothMap | None = None, *, starts: int = 
     searches = (starts if unknowns else 1) * fitting.MOST_LOOKS + (MOST_ROUNDS if entries else 0)
     if profile:
         searches += 2 * unknowns * profiles.MOST_LOOKS
+    if smooth is None:
+        searches += valleys.most_looks(unknowns)
     straight = 4 + 2 * unknowns + entries + look
     if smooth is not None and smooth.affine and not unknowns:
         return straight
@@ -192,7 +197,7 @@ class _Statistics:
         spreads = self._spreads
         fitted = look.slopes[readings.columns]
         taken_up = np.einsum("ni,ij,nj->n", fitted, spread.covariance, fitted)
-        variances = np.diag(self._weighing.covariance)
+        variances = readings.variances()
         left = readings.values - look.values[readings.columns]
         leverages = np.clip(taken_up / variances, 0.0, 1.0)
         free = self._scale * np.sqrt(np.where(leverages < FOLLOWED, variances - taken_up, np.nan))
@@ -223,6 +228,7 @@ class _Statistics:
             chi_squared=self._squares,
             degrees_of_freedom=self._freedom,
             probability=probability,
+            missed=self._is_missed(),
             scaled_by=self._scale,
             coverage_factor=self._factor,
             rivals=rivals,
@@ -249,7 +255,7 @@ class _Statistics:
             standard_uncertainty=float(self._rates[k]) * spread,
             low=low,
             high=high,
-            at="low" if place <= 0 else "high" if place >= 1 else None,
+            at="low" if place <= AT_END else "high" if place >= 1 - AT_END else None,
             told=spread <= RECTANGULAR,
             bent=bent,
             profile=ends,
@@ -284,10 +290,38 @@ class _Statistics:
         return correlation
 
     def _together(self) -> list[Combination]:
-        if self._count < 2:
+        """What readings tell of unknowns that are hardly told apart, and how far it holds."""
+        # Nothing is hardly told where no uncertainty is left to scale, and nothing is told by readings that are missed.
+        if self._count < 2 or not self._scale > 0 or self._is_missed():
             return []
-        rates = self._rates[: self._count]
-        return told_together(self._numbers[: self._count], self._scale * rates[:, None] * self._spread.regular)
+        numbers = self._numbers[: self._count]
+        root = self._scale * self._rates[: self._count, None] * self._spread.regular
+        solved = self._solved
+        groups = told_together(numbers, root, sums_only=solved.linear)
+        if not groups or self._smooth is not None or self._count > valleys.MOST_UNKNOWNS:
+            return [group[0] for group in groups]
+        reaches = [(k, self._reach(k)) for k in free_members(groups, root)[: valleys.MOST_LINES]]
+        places = valleys.follow(
+            valleys.straight_looks(solved.found) if solved.linear else solved.looker.look,
+            self._coordinates,
+            solved.rows,
+            solved.weighing.doubts(self._look),
+            solved.found,
+            reaches,
+            self._scale**2,
+            (self._scale * self._factor) ** 2,
+        )
+        walks = [self._coordinates.numbers(line)[:, : self._count] for line in places]
+        return [held_best(group, walks) for group in groups]
+
+    def _is_missed(self) -> bool:
+        """Whether ranges keep readings from being met that nothing else would."""
+        return self._freedom <= LEAST_FREEDOM and self._squares > self._factor**2
+
+    def _reach(self, k: int) -> float:
+        """How far an unknown may be from where it is: by its interval, or anywhere."""
+        spread = float(self._spreads[k])
+        return self._factor * spread if spread <= RECTANGULAR else 1.0
 
     def _bent(self) -> FloatArray:
         """How far the sum of squares is from a parabola at the ends of each interval; see Estimate.bent."""

@@ -111,8 +111,7 @@ def _step(search: Found, looker: Looker, doubt: float, unit: Callable[[float], f
     coordinates, place = looker.coordinates, search.look.place
     low, high = coordinates.low - place, coordinates.high - place
     whole = _damped_step(search, np.full(len(place), doubt), low, high)
-    after = search.left + search.slopes @ whole
-    if search.squares - float(after @ after) <= SETTLED * unit(search.squares):
+    if fall(search.left, search.slopes @ whole) <= SETTLED * unit(search.squares):
         search.settled = search.exact
         return None if search.settled else np.zeros(len(place))
     if search.damping > MOST_DAMPING:
@@ -120,6 +119,11 @@ def _step(search: Found, looker: Looker, doubt: float, unit: Callable[[float], f
     lengths = np.linalg.norm(search.slopes, axis=0)
     search.lengths = np.maximum(search.lengths, lengths) if search.lengths.size else lengths
     return _damped_step(search, np.hypot(np.sqrt(search.damping) * search.lengths, doubt), low, high)
+
+
+def fall(left: FloatArray, change: FloatArray) -> float:
+    """By how much the sum of squares falls with a change of what is left over, however large it is."""
+    return -float((2 * left + change) @ change)
 
 
 def _damped_step(search: Found, damping: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
@@ -152,9 +156,8 @@ def _relaxed(look: Look, looker: Looker, rows: Callable[[Look], Rows]) -> Found:
 def _judge(search: Found, step: FloatArray, seen: Found | None) -> None:
     """Take a step that lessens the sum of squares, and set the damping by how well that was foreseen."""
     if seen is not None:
-        after = search.left + search.slopes @ step
-        foreseen = search.squares - float(after @ after)
-        gain = (search.squares - seen.squares) / foreseen if foreseen > 0 else 0.0
+        foreseen = fall(search.left, search.slopes @ step)
+        gain = fall(search.left, seen.left - search.left) / foreseen if foreseen > 0 else 0.0
         if gain > 0 or not step.any():
             search.look, search.left, search.slopes, search.exact = seen.look, seen.left, seen.slopes, seen.exact
             search.damping *= max(FALL, 1 - (2 * gain - 1) ** 3)

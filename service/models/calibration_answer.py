@@ -74,12 +74,24 @@ class UnknownFound(Model):
     shared_shares: list[SharedShare] = Field(description="What shared errors contribute, in the order given.")
 
 
+class PlaceOfCombination(Model):
+    """Other values of numbers that are hardly told apart, with which the readings are met about as well."""
+
+    values: list[float] = Field(description="The numbers, in the order of `numbers`.", examples=[[120.0, 9.0]])
+    combination: float = Field(description="What the combination is there.", examples=[13.3])
+    holds: bool = Field(
+        description="Whether that is still within 2.5 standard uncertainties of its value.", examples=[True]
+    )
+
+
 class KnownTogether(Model):
     """Numbers that readings tell hardly or not at all from each other, and the combination that they do tell."""
 
     numbers: list[str] = Field(description="Their names.", examples=[["film", "conductivity"]])
-    form: Literal["product", "sum"] = Field(
-        description="Whether the combination is a product of powers or a sum of multiples.", examples=["product"]
+    form: Literal["product", "sum", "reciprocals"] = Field(
+        description="Whether the combination is a product of powers, a sum of multiples, or a sum of multiples of "
+        "`reciprocals`, as of resistances in series: that which holds farthest.",
+        examples=["product"],
     )
     factors: list[float] = Field(
         description="The powers, or the multiples, in the order of `numbers`; the first is 1.", examples=[[1, -1]]
@@ -92,6 +104,18 @@ class KnownTogether(Model):
     are_told: bool = Field(
         description="Whether the numbers are told by themselves as well, if not as well as the combination.",
         examples=[False],
+    )
+    holds: Literal["throughout", "near", "not_followed"] = Field(
+        description="How far the combination holds: `throughout`, at all `places`; only `near` the values found, "
+        "beyond which the readings are met by values with another combination; or `not_followed`: beside a map, with "
+        "more than 12 unknowns, or where no other place with results was found.",
+        examples=["throughout"],
+    )
+    near: list[float] = Field(description="The numbers as found, in the order of `numbers`.", examples=[[80.0, 6.0]])
+    places: list[PlaceOfCombination] = Field(
+        description="Other values with which the readings are met about as well. One number, or two where that many go "
+        "free, is led from the value found to both ends of its range, or of its interval where it is told, and the "
+        "others are fitted anew; a line ends where that leaves the ranges.",
     )
 
 

@@ -25,6 +25,9 @@ from service.translation.unknown_map import read_unknown_map
 # Starts beside a map, which makes up for much of what another start would find.
 STARTS_BESIDE_MAP = 2
 
+# Least standard uncertainty, in parts of its reading: values have sixteen digits, and differences of them fewer.
+LEAST_SPREAD = 1e-13
+
 # A range that is this many times as high as low is looked at by factors.
 WIDE = 10.0
 
@@ -109,7 +112,19 @@ def _read_readings(collector: Collector, question: models.CalibrationQuestion, p
         _read_shared(collector, asked, columns, prepared, ("shared_errors", index))
         for index, asked in enumerate(question.shared_errors)
     ]
+    _check_weights(collector, values, spreads)
     return Readings(np.array(columns, dtype=np.intp), np.array(values), np.array(spreads), tuple(shared))
+
+
+def _check_weights(collector: Collector, values: Sequence[float], spreads: Sequence[float]) -> None:
+    """A reading is not certain to more digits than numbers have."""
+    for index, (value, spread) in enumerate(zip(values, spreads, strict=True)):
+        if 0 < spread < LEAST_SPREAD * abs(value):
+            detail = (
+                f"Beside a reading of {value:.4g} an uncertainty of {spread:.2g} is less than what computing with it "
+                f"rounds to. It has to be at least {LEAST_SPREAD:g} of the reading."
+            )
+            collector.add(("readings", index, "standard_uncertainty"), detail, "too-small")
 
 
 def _read_shared(

@@ -96,6 +96,7 @@ def _part(value: float) -> float:
 
 def _together(group: Combination, found: Calibration, asked: Asked) -> dict[str, Any]:
     names = [asked.infos[member].name for member in group.members]
+    held = group.held
     return {
         "numbers": names,
         "form": group.form,
@@ -104,7 +105,35 @@ def _together(group: Combination, found: Calibration, asked: Asked) -> dict[str,
         "value": group.value,
         "standard_uncertainty": number_or_none(group.standard_uncertainty),
         "are_told": all(found.estimates[member].told for member in group.members),
+        "holds": "not_followed" if held is None else "throughout" if held.throughout else "near",
+        "near": [found.estimates[member].value for member in group.members],
+        "places": []
+        if held is None
+        else [
+            {"values": numbers.tolist(), "combination": float(value), "holds": bool(holds)}
+            for numbers, value, holds in zip(held.numbers, held.values, held.holds, strict=True)
+        ],
     }
+
+
+def _known_together(group: Combination, words: dict[str, Any]) -> str:
+    """What is known of a group, and how far that holds, to go on with after a colon or "that"."""
+    known = f"{words['expression']} is {group.value:.4g}, standard uncertainty {group.standard_uncertainty:.2g}"
+    if words["holds"] == "throughout":
+        return known
+    near = _listed_plainly(
+        [f"{name} = {value:.4g}" for name, value in zip(words["numbers"], words["near"], strict=True)]
+    )
+    known = f"near {near}, {known}"
+    if group.held is None:
+        return f"{known}. How far from there this holds was not followed"
+    first = [words["near"][0], *group.held.numbers[group.held.holds, 0].tolist()]
+    if len(first) == 1:
+        return f"{known}. A little away from there it does not hold: `places` has other values that meet the readings"
+    return (
+        f"{known}. It holds with {words['numbers'][0]} from {min(first):.3g} to {max(first):.3g} only: `places` has "
+        "other values that meet the readings"
+    )
 
 
 def _expression(names: list[str], group: Combination) -> str:
@@ -117,7 +146,8 @@ def _expression(names: list[str], group: Combination) -> str:
             term = name if size == 1 else f"{name}^{size:.3g}"
         else:
             sign = " + " if factor > 0 else " - "
-            term = name if size == 1 else f"{size:.3g} * {name}"
+            over = " / " if group.form == "reciprocals" else " * "
+            term = name if size == 1 and group.form == "sum" else f"{size:.3g}{over}{name}"
         text = f"{text}{sign}{term}" if text else term
     return text
 
@@ -221,6 +251,12 @@ def _warnings(found: Calibration, asked: Asked, outcome: dict[str, Any]) -> list
             else " The uncertainties look too large."
         )
         remarks.append(warning(code, outcome["consistency"]["sentence"] + advice, f"{WHERE}/consistency"))
+    elif found.missed:
+        detail = (
+            f"Within the ranges the readings are not met: chi-squared is {found.chi_squared:.3g}. Either a range is "
+            "too narrow, or something of the body is not as given."
+        )
+        remarks.append(warning("not-met", detail, f"{WHERE}/consistency"))
     for index in found.outliers:
         detail = (
             f'The reading of "{asked.question.readings[index].result}" is {abs(found.normalised[index]):.1f} standard '
@@ -242,7 +278,7 @@ def _of_unknowns(found: Calibration, asked: Asked, together: list[dict[str, Any]
     grouped: set[int] = set()
     for index, (group, words) in enumerate(zip(found.together, together, strict=True)):
         names = _listed([asked.infos[member].name for member in group.members])
-        known = f"{words['expression']} is {group.value:.4g}, standard uncertainty {group.standard_uncertainty:.2g}"
+        known = _known_together(group, words)
         if words["are_told"]:
             detail = f"The readings tell {names} much better together than apart: {known}."
         else:
@@ -311,5 +347,8 @@ def _of_map(found: MapEstimate, words: dict[str, Any]) -> list[Warning_]:
 
 
 def _listed(names: list[str]) -> str:
-    quoted = [f'"{name}"' for name in names]
-    return quoted[0] if len(quoted) == 1 else f"{', '.join(quoted[:-1])} and {quoted[-1]}"
+    return _listed_plainly([f'"{name}"' for name in names])
+
+
+def _listed_plainly(words: list[str]) -> str:
+    return words[0] if len(words) == 1 else f"{', '.join(words[:-1])} and {words[-1]}"

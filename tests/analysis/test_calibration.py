@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import mpmath
 import numpy as np
 import pytest
 from scipy.optimize import least_squares
@@ -10,7 +11,7 @@ from scipy.stats import norm
 from service.analysis.calibrated import Calibration
 from service.analysis.calibration import TooFewReadings, calibrate, most_cases
 from service.analysis.evaluations import Evaluations, Failure, FloatArray
-from service.analysis.readings import Readings, Shared
+from service.analysis.readings import Readings, Root, Shared
 from service.analysis.search import NothingSeen
 from service.analysis.unknowns import Prior, Unknown
 from tests.analysis.heated_face import Counted
@@ -215,6 +216,74 @@ def test_a_sum_that_alone_matters_is_named() -> None:
     assert [estimate.told for estimate in found.estimates] == [False, False, True]
 
 
+@pytest.mark.parametrize("logarithmic", [False, True])
+def test_resistances_in_series_are_told_by_their_sum_wherever_the_search_ended(logarithmic: bool) -> None:
+    # One reading of a wall with a film: 20 + q (0.045 / k + 1 / h); any power of h times k is right at one place only.
+    evaluate = Counted(lambda p: np.array([20 + 3000 * (0.045 / p[0] + 1 / p[1])]))
+    unknowns = [Unknown("k", 0.3, 5, 1.2, logarithmic), Unknown("h", 5, 100, 25, logarithmic)]
+    found = calibrate(evaluate, unknowns, readings_of(np.array([210.0]), 1.0))
+    (group,) = found.together
+    assert (group.members, group.form) == ((0, 1), "reciprocals")
+    assert group.factors == pytest.approx((1.0, 1 / 0.045), rel=1e-3)
+    for k in (0.9, 1.5, 4.0):
+        h = 1 / (190 / 3000 - 0.045 / k)
+        away = group.factors[0] / k + group.factors[1] / h - group.value
+        assert abs(away) < 0.1 * group.standard_uncertainty
+    assert group.held is not None
+    assert group.held.throughout
+    assert np.ptp(group.held.numbers, axis=0).min() > 3
+    np.testing.assert_allclose(evaluate(group.held.numbers).values, 210, atol=0.3)
+    assert evaluate.cases <= most_cases(2)
+
+
+def test_a_combination_of_no_form_is_said_to_hold_near_the_solution_only() -> None:
+    evaluate = Counted(lambda p: np.array([np.exp(p[0]) + p[1] ** 2]))
+    unknowns = [Unknown("a", 0.1, 3, 1.5), Unknown("b", 0.1, 4, 2)]
+    found = calibrate(evaluate, unknowns, readings_of(np.array([9.0]), 0.05))
+    (group,) = found.together
+    held = group.held
+    assert held is not None
+    assert not held.throughout
+    assert held.holds.any()
+    # Where it does not hold the reading is met all the same, by values with another combination.
+    np.testing.assert_allclose(np.exp(held.numbers[:, 0]) + held.numbers[:, 1] ** 2, 9.0, atol=0.1)
+    off = np.abs(held.values - group.value) / group.standard_uncertainty
+    assert off[held.holds].max() <= 2.5
+    assert off.max() > 10
+
+
+def test_three_that_are_known_to_a_factor_are_told_by_two_ratios() -> None:
+    depths = np.array([0.045, 0.025, 0.005])
+    evaluate = Counted(lambda p: 20 + p[2] * (depths / p[0] + 1 / p[1]))
+    unknowns = [Unknown("k", 0.3, 5, 1.2, True), Unknown("h", 5, 100, 25, True), Unknown("q", 500, 20000, 3000, True)]
+    read = 20 + 3000 * (depths / 1.5 + 1 / 30) + np.array([0.5, -0.8, 0.3])
+    found = calibrate(evaluate, unknowns, readings_of(read, 1.0))
+    assert [(group.form, group.factors) for group in found.together] == [("product", (1.0, -1.0))] * 2
+    assert {name for group in found.together for name in group.members} == {0, 1, 2}
+    # Of a straight line, a + b depth, a and b are the ratios upside down.
+    columns = np.column_stack((depths, np.ones(3)))
+    line = np.linalg.lstsq(columns, read - 20)[0]
+    expected = {(0, 2): 1 / line[0], (1, 2): 1 / line[1], (0, 1): line[1] / line[0]}
+    for group in found.together:
+        assert group.value == pytest.approx(expected[group.members[0], group.members[1]], rel=1e-4)
+        assert group.held is not None
+        assert group.held.throughout
+
+
+@pytest.mark.parametrize("start", [0.0, 1.0])
+def test_where_all_is_linear_only_sums_are_told(start: float) -> None:
+    # At equal values the product of two, to first order, is as good as their sum.
+    evaluate = Counted(lambda p: np.array([p[0] + p[1], p[0] + p[1]]))
+    unknowns = [Unknown(name, 0, 10, start) for name in "ab"]
+    found = calibrate(evaluate, unknowns, readings_of(np.array([2.35, 2.45]), 0.05))
+    (group,) = found.together
+    assert (group.form, group.factors) == ("sum", (1.0, 1.0))
+    assert (group.value, group.standard_uncertainty) == pytest.approx((2.4, 0.05 / np.sqrt(2)), rel=1e-3)
+    assert group.held is not None
+    assert group.held.throughout
+    assert evaluate.waves == [8, 1]
+
+
 def test_an_unknown_nothing_depends_on_is_not_told_alone() -> None:
     evaluate = Counted(lambda p: np.array([p[0], np.exp(p[0])]))
     unknowns = [Unknown("a", 0, 2, 0.5), Unknown("idle", 1, 9, 3)]
@@ -257,6 +326,51 @@ def test_a_shared_error_does_not_average_out() -> None:
     assert estimate.shared[0] == pytest.approx(0.3**2 / (0.2**2 / 4 + 0.3**2))
     # It cannot be seen in how readings differ either.
     assert found.chi_squared == pytest.approx(sum(np.array([0.1, 0.1, 0.2, 0.2]) ** 2) / 0.2**2)
+
+
+@pytest.mark.parametrize("seed", range(12))
+def test_shared_errors_of_any_size_weigh_as_their_covariance(seed: int) -> None:
+    random = np.random.default_rng(seed)
+    count = int(random.integers(2, 6))
+    own = 10.0 ** random.uniform(-60, 60) * random.uniform(0.1, 10, count)
+    members = [np.sort(random.choice(count, size, replace=False)) for size in random.integers(1, count + 1, 2)]
+    shared = [Shared(one, float(own.mean() * 10.0 ** random.uniform(-60, 60))) for one in members]
+    root = Root(Readings(np.arange(count), np.zeros(count), own, tuple(shared)))
+    with mpmath.workdps(300):
+        covariance = mpmath.diag([mpmath.mpf(one) ** 2 for one in own.tolist()])
+        for error in shared:
+            row = mpmath.matrix(np.isin(np.arange(count), error.members).astype(float).tolist())
+            covariance += row * row.T * mpmath.mpf(error.standard_uncertainty) ** 2
+        errors = mpmath.matrix((own * random.standard_normal(count)).tolist())
+        weighed = mpmath.inverse(covariance) * errors
+        squares = float((errors.T * weighed)[0])
+        expected = np.array([float(one * mpmath.mpf(size)) for one, size in zip(weighed, own.tolist(), strict=True)])
+    whitened = root.whiten(np.array([float(one) for one in errors]))
+    assert float(whitened @ whitened) == pytest.approx(squares, rel=1e-9, abs=1e-12)
+    np.testing.assert_allclose(root.whiten_back(whitened) * own, expected, rtol=1e-9, atol=1e-12)
+
+
+def test_a_huge_shared_error_leaves_differences_of_readings() -> None:
+    evaluate = Counted(lambda p: np.array([p[0], p[0] + p[1], p[0] + 2 * p[1]]))
+    shared = (Shared(np.arange(3), 1e30),)
+    found = calibrate(evaluate, [Unknown("level", -100, 100, 0), Unknown("slope", -9, 9, 0)],
+                      readings_of(np.array([20.0, 21.0, 22.2]), 0.1, shared))  # fmt: skip
+    level, slope = found.estimates
+    assert not level.told
+    assert slope.value == pytest.approx(1.1, abs=1e-9)
+    assert slope.standard_uncertainty == pytest.approx(0.1 / np.sqrt(2), rel=1e-6)
+    assert found.chi_squared == pytest.approx(0.2**2 / 6 / 0.1**2, rel=1e-6)
+
+
+@pytest.mark.parametrize("reading", [1e4, 1e9, 1e12])
+def test_readings_beyond_anything_drive_an_unknown_to_its_end(reading: float) -> None:
+    evaluate = Counted(lambda p: p[0] ** np.array([1.0, 1.5, 2.0]))
+    for side, end, value in ((1, "high", 7.0), (-1, "low", 0.5)):
+        found = calibrate(evaluate, [Unknown("a", 0.5, 7, 2)], readings_of(np.full(3, side * reading), 0.8))
+        (estimate,) = found.estimates
+        assert estimate.at == end
+        assert estimate.value == pytest.approx(value, rel=1e-9)
+        assert found.consistent == "no"
 
 
 def test_one_result_may_be_read_several_times() -> None:

@@ -140,6 +140,53 @@ async def test_a_wall_between_a_held_side_and_a_film_knows_their_ratio_only(clie
     assert conductivity["known_before_part"] == pytest.approx(1.0, abs=1e-3)
 
 
+async def test_one_reading_tells_resistances_in_series(client: httpx.AsyncClient) -> None:
+    question = wall(1.0, starts=1)
+    question["readings"] = question["readings"][:1]
+    answer = (await client.post("/v1/calibration", json=question)).json()
+    (group,) = answer["calibration"]["known_together"]
+    assert (group["expression"], group["holds"]) == ("1 / film + 0.045 / conductivity", "throughout")
+    assert group["value"] == pytest.approx(1 / FILM + 0.045 / CONDUCTIVITY, rel=1e-3)
+    assert group["standard_uncertainty"] == pytest.approx(1 / INFLOW, rel=1e-3)
+    assert "1 / film + 0.045 / conductivity is 0.03333," in answer["warnings"][0]["message"]
+    assert all(place["holds"] for place in group["places"])
+
+
+async def test_a_combination_that_bends_is_told_near_its_place(client: httpx.AsyncClient) -> None:
+    # The temperature difference over the depth and the film hangs on both by no simple form.
+    question = wall(0.5, starts=1)
+    question["unknowns"][1] = {"name": "depth", "at": "/problem/body/size/z", "low": 50, "high": 150}
+    question["problem"]["faces"]["x_high"] = {"condition": "film", "coefficient": 20, "ambient": AMBIENT}
+    question["readings"] = [question["readings"][3] | {"value": 38}]
+    answer = (await client.post("/v1/calibration", json=question)).json()
+    (group,) = answer["calibration"]["known_together"]
+    assert group["holds"] == "near"
+    assert {place["holds"] for place in group["places"]} == {True, False}
+    message = answer["warnings"][0]["message"]
+    assert "What they tell is that near film = " in message
+    assert " only: `places` has other values that meet the readings." in message
+    found = {unknown["name"]: unknown["value"] for unknown in answer["calibration"]["unknowns"]}
+    assert group["near"] == [found[name] for name in group["numbers"]]
+
+
+async def test_readings_that_ranges_keep_from_being_met_tell_nothing(client: httpx.AsyncClient) -> None:
+    question = wall(0.5, starts=1)
+    question["readings"] = [question["readings"][0] | {"value": 30.5}]
+    found, warnings = await calibrated(client, question)
+    assert found["consistency"]["chi_squared"] > 100
+    assert found["known_together"] == []
+    assert "not-met" in warnings
+
+
+@pytest.mark.parametrize(("own", "shared"), [(0.5, 1e30), (0.5, 1e60), (1e-10, 0.4), (1e60, 0.4), (0.5, 1e-60)])
+async def test_shared_errors_of_any_size_are_answered(client: httpx.AsyncClient, own: float, shared: float) -> None:
+    question = wall(own, starts=1)
+    question["shared_errors"] = [{"results": ["couple 5", "couple 20"], "standard_uncertainty": shared}]
+    found, warnings = await calibrated(client, question)
+    assert (own < 1e-6) == ("coarse" in warnings)
+    assert all(unknown["is_told"] == (own < 1) for unknown in found["unknowns"])
+
+
 async def test_what_follows_in_proportion_is_found_in_two_waves(client: httpx.AsyncClient) -> None:
     question = wall()
     question["problem"]["body"]["conductivity"] = CONDUCTIVITY
@@ -348,6 +395,8 @@ async def test_entries_far_from_all_probes_are_open(client: httpx.AsyncClient) -
         ("unknowns/1/known_before/value", "3 m", "#/unknowns/1/known_before/value", "m"),
         ("readings/0/standard_uncertainty", -1, "#/readings/0/standard_uncertainty", "greater than zero"),
         ("readings/0/standard_uncertainty", "1 W", "#/readings/0/standard_uncertainty", "W"),
+        ("readings/0/standard_uncertainty", 1e-60, "#/readings/0/standard_uncertainty", "has to be at least 1e-13"),
+        ("readings/1/value", 1e20, "#/readings/1/standard_uncertainty", "has to be at least 1e-13"),
         ("readings/2/result", "couple 7", "#/readings/2/result", 'There is no result "couple 7"'),
         ("readings", [], "#/readings", "At least 1"),
         ("shared_errors/0/results/1", "hot side", "#/shared_errors/0/results/1", "no reading"),
