@@ -9,6 +9,7 @@ from contextlib import suppress
 from typing import Annotated, Any
 
 from fastapi import APIRouter, Body, Header, Path, Query, Request, Response
+from fastapi.responses import StreamingResponse
 from fastapi.sse import EventSourceResponse
 from pydantic_core import to_json
 
@@ -16,11 +17,21 @@ from service.media import ARRAYS_FORM, FORMS, JSON, Form, check_accepts_json, ch
 from service.models.analysis_answer import AnalysisAnswer
 from service.models.studies import StudiesAnswer, StudyAnswer, StudyQuestion, StudyTable
 from service.openapi import answer_examples, body_examples, error_responses
-from service.refusals import NotAcceptable, UnknownStudy
+from service.refusals import NotAcceptable, TooCostly, UnknownStudy
 from service.request_body import StrictJsonRoute
+from service.settings import Settings
 from service.state import State, state_of
 from service.studies.answers import unpack_answer
-from service.studies.forms import BINARY_TABLE, CSV_TABLE, FORM_OF_WORD, LINES_TABLE, TABLE_FORMS, table_shown
+from service.studies.forms import (
+    BINARY_TABLE,
+    CSV_TABLE,
+    FORM_OF_WORD,
+    IN_PIECES,
+    LINES_TABLE,
+    TABLE_FORMS,
+    size_at_most,
+    table_shown,
+)
 from service.studies.progress import ADDRESS, LOOK_EVERY_SECONDS, events, study_shown
 from service.studies.store import Study
 from service.translation.answers import KeepGoing
@@ -161,22 +172,23 @@ async def get_study(request: Request, study_id: StudyId, prefer: Prefer = None) 
                 BINARY_TABLE.media_type: _BINARY,
             },
         },
-        **error_responses(404, 406, 503),
+        **error_responses(404, 406, 422, 503),
     },
 )
 async def study_results(request: Request, study_id: StudyId, form_word: FormWord = None) -> Response:
     """Numbers, results and error bounds of each case that is done, in the order of the cases, and how limits hold.
 
-    A case that could not be computed has no results and says why. Cases that are not done yet are left out.
+    A case that could not be computed has no results and says why. Cases that are not done yet are left out. JSON lines
+    and CSV come piece by piece and may be of any length.
     """
     form = _form_of(request, form_word)
     state = state_of(request)
-
-    def work(_: KeepGoing) -> bytes:
-        study = state.studies.study(study_id)
-        return form.encode(table_shown(study, state.studies.store.table(study_id)))
-
-    body, _ = await state.worker.run(work)
+    study = await asyncio.to_thread(state.studies.study, study_id)
+    if form in IN_PIECES:
+        pieces = (table_shown(study, piece) for piece in state.studies.store.pieces(study_id))
+        return StreamingResponse(IN_PIECES[form](pieces), media_type=form.media_type, headers=_headers_of(form))
+    _check_size(size_at_most(study, form), state.settings, "JSON lines and CSV come piece by piece.")
+    body, _ = await state.worker.run(lambda _: form.encode(table_shown(study, state.studies.store.table(study_id))))
     return _response_in(form, body)
 
 
@@ -190,14 +202,24 @@ async def study_results(request: Request, study_id: StudyId, form_word: FormWord
             "description": "What the call of this question answers; here what all of them have in common.",
             "content": {ARRAYS_FORM.media_type: _BINARY},
         },
-        **error_responses(404, 406, 409, 503),
+        **error_responses(404, 406, 409, 422, 503),
     },
 )
 async def study_answer(request: Request, study_id: StudyId) -> Response:
     """The answer of the question, in the forms of the call that answers it while a client waits."""
     form = choose_form(request.headers.get("accept"), FORMS)
     state = state_of(request)
-    body, _ = await state.worker.run(lambda _: form.encode(unpack_answer(state.studies.answer(study_id))))
+
+    def work(_: KeepGoing) -> bytes:
+        packed = state.studies.answer(study_id)
+        advice = "The table of cases comes piece by piece as JSON lines or CSV."
+        if form == ARRAYS_FORM:
+            _check_size(len(packed), state.settings, advice)
+            return packed
+        _check_size(len(packed) * form.bytes_a_number // ARRAYS_FORM.bytes_a_number, state.settings, advice)
+        return form.encode(unpack_answer(packed))
+
+    body, _ = await state.worker.run(work)
     return _response_in(form, body)
 
 
@@ -303,7 +325,21 @@ def _form_of(request: Request, word: str | None) -> Form:
 
 
 def _response_in(form: Form, body: bytes) -> Response:
+    return Response(body, media_type=form.media_type, headers=_headers_of(form))
+
+
+def _headers_of(form: Form) -> dict[str, str]:
     headers = {"Vary": "Accept"}
     if form.media_type != JSON:
         headers["Content-Disposition"] = f'attachment; filename="{form.file_name}"'
-    return Response(body, media_type=form.media_type, headers=headers)
+    return headers
+
+
+def _check_size(size: int, settings: Settings, advice: str) -> None:
+    """Raise TooCostly for a document of more bytes than allowed. advice: what to do instead."""
+    if size > settings.answer_bytes:
+        raise TooCostly(
+            f"The document would take up to {size} bytes; at most {settings.answer_bytes} are sent. {advice}",
+            size,
+            settings.answer_bytes,
+        )

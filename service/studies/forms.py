@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable, Iterable, Iterator, Mapping
 from typing import Any
 
 from service.media import ARRAYS_FORM, JSON_FORM, Form
 from service.studies.store import Study, Table
 from service.translation.case_columns import columns_shown
-from service.translation.case_forms import table_csv, table_lines
+from service.translation.case_forms import csv_of, lines_of, table_csv, table_lines
 
 
 def table_shown(study: Study, table: Table) -> dict[str, Any]:
@@ -24,3 +25,17 @@ TABLE_FORMS = (JSON_TABLE, LINES_TABLE, CSV_TABLE, BINARY_TABLE)
 
 # What browsers, which choose no Accept of their own, may write into the address.
 FORM_OF_WORD = {"json": JSON_TABLE, "jsonl": LINES_TABLE, "csv": CSV_TABLE, "npz": BINARY_TABLE}
+
+# Forms that are made of pieces of a table, as `table_shown` gives them, so that it may be of any length.
+IN_PIECES: Mapping[Form, Callable[[Iterable[dict[str, Any]]], Iterator[bytes]]] = {
+    LINES_TABLE: lines_of,
+    CSV_TABLE: csv_of,
+}
+
+
+def size_at_most(study: Study, form: Form) -> int:
+    """Bytes that the table of the cases that are done takes in a form, at most but for failures in words."""
+    columns = study.columns
+    # Whether a limit holds is a word of no more than a number has digits.
+    numbers = 1 + len(columns.numbers) + 2 * len(columns.results) + 3 * len(columns.limits)
+    return study.done * numbers * form.bytes_a_number

@@ -35,6 +35,9 @@ DAMAGED = "The stored studies are damaged; the log of the service has more for w
 _BUSY_SECONDS = 5.0
 _RETRY_AFTER_SECONDS = 30
 
+# Cases of a table that are handed out at once, about: some megabytes as text.
+_PIECE_CASES = 2048
+
 _TABLES = """
 CREATE TABLE IF NOT EXISTS study (
     id TEXT PRIMARY KEY, position INTEGER NOT NULL, name TEXT NOT NULL, question BLOB NOT NULL, release TEXT NOT NULL,
@@ -283,19 +286,19 @@ class StudyStore:
         kept = self.kept
         self.kept = Kept(kept.cases + count, kept.failed + failed, kept.seconds + seconds)
 
-    def finish(self, study_id: str, content: bytes) -> None:
-        """Keep the answer of a study, which is finished with it, unless it was cancelled in the last moment."""
+    def finish(self, study_id: str, attempt: int, content: bytes) -> None:
+        """Keep the answer of a study, which is finished with it, unless this attempt was cancelled in the end."""
         with self._change():
-            if self._known(study_id).is_over:
+            if not self._is_at(study_id, attempt):
                 return
             self._execute("INSERT OR REPLACE INTO answer VALUES (?, ?, ?)", study_id, _digest(content), content)
             self._execute("UPDATE study SET size = size + ? WHERE id = ?", len(content), study_id)
             self._end(study_id, "finished")
 
-    def fail(self, study_id: str, code: str, message: str) -> None:
-        """End a study that cannot go on, unless it is over. code: a short word for programs. message: a sentence."""
+    def fail(self, study_id: str, attempt: int, code: str, message: str) -> None:
+        """End a study that cannot go on, unless this attempt is over. code: for programs. message: a sentence."""
         with self._change():
-            if self._known(study_id).is_over:
+            if not self._is_at(study_id, attempt):
                 return
             fault = json.dumps({"code": code, "message": message})
             self._execute("UPDATE study SET fault = ? WHERE id = ?", fault, study_id)
@@ -343,6 +346,36 @@ class StudyStore:
                 (study_id,),
             ).fetchall()
         return _table(study.columns, waves, rows)
+
+    def pieces(self, study_id: str) -> Iterator[Table]:
+        """The same table piece by piece, the first of which is empty, so that a long one is never held as a whole."""
+        with self._ready():
+            study = self._known(study_id)
+            waves = self._connection.execute(
+                "SELECT number, cases FROM wave WHERE study = ? ORDER BY number", (study_id,)
+            ).fetchall()
+        yield _table(study.columns, [], [])
+        most = max(1, _PIECE_CASES // study.chunk_size)
+        begin = 0
+        for wave, count in waves:
+            last, numbers = -1, b""
+            while True:
+                with self._ready():
+                    # Deleted meanwhile, it must not seem to have ended here.
+                    self._known(study_id)
+                    numbers = numbers or self._one(
+                        "SELECT numbers FROM wave WHERE study = ? AND number = ?", study_id, wave
+                    )
+                    rows = self._connection.execute(
+                        "SELECT wave, first, cases, digest, payload FROM chunk WHERE study = ? AND wave = ? "
+                        "AND first > ? ORDER BY first LIMIT ?",
+                        (study_id, wave, last, most),
+                    ).fetchall()
+                if not rows:
+                    break
+                last = rows[-1][1]
+                yield _table(study.columns, [(wave, count, numbers)], rows, begin)
+            begin += count
 
     def failures(self, study_id: str, most: int) -> list[tuple[int, Failure]]:
         """The first cases that failed, with their numbers."""
@@ -416,6 +449,11 @@ class StudyStore:
         if study is None:
             raise UnknownStudy(UNKNOWN)
         return study
+
+    def _is_at(self, study_id: str, attempt: int) -> bool:
+        """Whether a study is not over and at this attempt."""
+        study = self._known(study_id)
+        return not study.is_over and study.attempt == attempt
 
     def _end(self, study_id: str, state: State) -> None:
         self._execute(
@@ -504,12 +542,13 @@ def _lost(cases: int, results: int) -> Evaluations:
     return Evaluations(nothing, nothing.copy(), dict.fromkeys(range(cases), failure))
 
 
-def _table(columns: Columns, waves: list[Any], rows: list[Any]) -> Table:
+def _table(columns: Columns, waves: list[Any], rows: list[Any], begin: int = 0) -> Table:
+    """Chunks of some waves as a table. begin: how many cases there are before these waves."""
     width, results = len(columns.numbers), len(columns.results)
-    begins, numbers, total = {}, {}, 0
+    begins, numbers, total = {}, {}, begin
     for wave, count, blob in waves:
         begins[wave] = total
-        numbers[wave] = np.frombuffer(blob, "<f8").astype(float).reshape(count, width)
+        numbers[wave] = np.frombuffer(blob, "<f8").astype(float, copy=False).reshape(count, width)
         total += count
     case: list[Any] = [np.zeros(0, np.int64)]
     given: list[Any] = [np.zeros((0, width))]
@@ -518,11 +557,11 @@ def _table(columns: Columns, waves: list[Any], rows: list[Any]) -> Table:
     failures: dict[int, Failure] = {}
     for wave, first, count, digest, payload in rows:
         outcome = unpacked(payload, count, results) if _digest(payload) == digest else _lost(count, results)
-        begin = begins[wave] + first
-        case.append(np.arange(begin, begin + count))
+        here = begins[wave] + first
+        case.append(np.arange(here, here + count))
         given.append(numbers[wave][first : first + count])
         values.append(outcome.values)
         bounds.append(outcome.bounds)
-        failures |= {begin + index: failure for index, failure in outcome.failures.items()}
+        failures |= {here + index: failure for index, failure in outcome.failures.items()}
     evaluations = Evaluations(np.concatenate(values), np.concatenate(bounds), failures)
     return Table(columns, np.concatenate(case), np.concatenate(given), evaluations)

@@ -85,7 +85,7 @@ class Studies:
                 self._engine.submit(study.study_id, study.attempt)
             else:
                 message = f"The study was begun by release {study.release} of the service; post it again to this one."
-                store.fail(study.study_id, "other-release", message)
+                store.fail(study.study_id, study.attempt, "other-release", message)
 
     def accept(self, name: str, question: Any, keep_going: KeepGoing) -> Study:
         """The study of a question, which is begun unless it is known and was neither cancelled nor failed.
@@ -230,11 +230,11 @@ class Studies:
         if study is None:
             return
         try:
-            patiently(ask_on, store.finish, study_id, self._answer(study, store, ask_on))
+            patiently(ask_on, store.finish, study_id, attempt, self._answer(study, store, ask_on))
         except Exception as error:
             if not isinstance(error, CoreError | Refusal | TooManyCases | NotRepeatable | OtherRelease):
                 logger.error("Study %s failed.", study_id, exc_info=error)
-            patiently(ask_on, store.fail, study_id, *_fault_of(error))
+            patiently(ask_on, store.fail, study_id, attempt, *_fault_of(error))
 
     def _answer(self, study: Study, store: StudyStore, ask_on: KeepGoing) -> bytes:
         settings = self._settings

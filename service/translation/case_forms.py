@@ -5,7 +5,7 @@ from __future__ import annotations
 import csv
 import io
 import math
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -43,8 +43,17 @@ def _finite(value: float) -> float | None:
     return value if math.isfinite(value) else None
 
 
+def lines_of(pieces: Iterable[dict[str, Any]]) -> Iterator[bytes]:
+    """One object a line for each case, which carries the names but not the units; limits in their order.
+
+    pieces: the table column by column, in one piece or in several.
+    """
+    for shown in pieces:
+        yield table_lines(shown)
+
+
 def table_lines(shown: dict[str, Any]) -> bytes:
-    """One object a line for each case, which carries the names but not the units; limits in their order."""
+    """The same of a table in one piece."""
     given, found = ([column["name"] for column in shown[group]] for group in ("numbers", "columns"))
     lines = []
     for row in _rows(shown):
@@ -61,26 +70,39 @@ def table_lines(shown: dict[str, Any]) -> bytes:
     return b"".join(line + b"\n" for line in lines)
 
 
-def table_csv(shown: dict[str, Any]) -> bytes:
+def csv_of(pieces: Iterable[dict[str, Any]]) -> Iterator[bytes]:
     """RFC 4180: numbers, each result with its bound, each limit with its margin and whether it holds, what failed.
 
-    Empty where there is nothing to tell.
+    pieces: the table column by column, in one piece or in several. Empty where there is nothing to tell.
     """
-    text = io.StringIO(newline="")
-    writer = csv.writer(text, lineterminator="\r\n")
+    for number, shown in enumerate(pieces):
+        text = io.StringIO(newline="")
+        writer = csv.writer(text, lineterminator="\r\n")
+        if number == 0:
+            writer.writerow(_heads(shown))
+        for row in _rows(shown):
+            results = (_cell(number) for pair in zip(row.values, row.bounds, strict=True) for number in pair)
+            limits = (
+                cell for margin, held in zip(row.margins, row.held, strict=True) for cell in (_cell(margin), held)
+            )
+            said = ["", ""] if row.failure is None else [row.failure["code"], as_cell(row.failure["message"])]
+            writer.writerow([row.case, *map(_cell, row.numbers), *results, *limits, *said])
+        yield text.getvalue().encode()
+
+
+def table_csv(shown: dict[str, Any]) -> bytes:
+    """The same of a table in one piece."""
+    return b"".join(csv_of((shown,)))
+
+
+def _heads(shown: dict[str, Any]) -> list[str]:
     heads = [f"{column['name']} [{column['unit']}]" for column in shown["numbers"]]
     for column in shown["columns"]:
         heads += [f"{column['name']} [{column['unit']}]", f"{column['name']} error bound"]
     for limit in shown["limits"]:
         name = _name_of(limit, shown["columns"])
         heads += [f"{name} margin [{limit['unit_of_margins']}]", f"{name} held"]
-    writer.writerow(["case", *map(as_cell, heads), "failure code", "failure"])
-    for row in _rows(shown):
-        results = (_cell(number) for pair in zip(row.values, row.bounds, strict=True) for number in pair)
-        limits = (cell for margin, held in zip(row.margins, row.held, strict=True) for cell in (_cell(margin), held))
-        said = ["", ""] if row.failure is None else [row.failure["code"], as_cell(row.failure["message"])]
-        writer.writerow([row.case, *map(_cell, row.numbers), *results, *limits, *said])
-    return text.getvalue().encode()
+    return ["case", *map(as_cell, heads), "failure code", "failure"]
 
 
 def _cell(number: float | None) -> str:

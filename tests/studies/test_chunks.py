@@ -82,6 +82,12 @@ def begun(store: StudyStore, study_id: str = "s", chunk_size: int = 16) -> Study
     return study
 
 
+def attempt_of(store: StudyStore) -> int:
+    study = store.study("s")
+    assert study is not None
+    return study.attempt
+
+
 def acceptance(study_id: str, chunk_size: int = 16, reserved: int = 1000) -> Acceptance:
     return Acceptance(study_id, "cases", b"{}", "0", COLUMNS, chunk_size, 100, reserved)
 
@@ -180,7 +186,7 @@ def test_chunk_damaged_on_disk_is_computed_again(store: StudyStore, path: Path) 
 
 def test_damage_on_disk_is_not_told_as_numbers(store: StudyStore, path: Path) -> None:
     durable(store, Crew())(wave(64))
-    store.finish("s", b"answer")
+    store.finish("s", attempt_of(store), b"answer")
     with closing(sqlite3.connect(path, isolation_level=None)) as other:
         other.execute("UPDATE chunk SET payload = zeroblob(length(payload)) WHERE first = 16")
         other.execute("UPDATE chunk SET payload = substr(payload, 9) WHERE first = 32")
@@ -324,8 +330,8 @@ def test_attempt_of_a_study_that_was_cancelled_since_is_not_begun(store: StudySt
     assert store.begin("s", again.attempt) is not None
     # Cancelled while its answer was on the way.
     store.cancel("s")
-    store.finish("s", b"answer")
-    store.fail("s", "code", "Sentence.")
+    store.finish("s", attempt_of(store), b"answer")
+    store.fail("s", attempt_of(store), "code", "Sentence.")
     over = store.study("s")
     assert over is not None
     assert (over.state, over.fault) == ("cancelled", None)
@@ -336,7 +342,13 @@ def test_study_that_was_begun_again_is_not_forgotten_for_its_former_attempt(stor
     former = begun(store)
     store.cancel("s")
     latter = store.accept(acceptance("s", 16))
-    store.finish("s", b"answer")
+    # The former one is on its way to its end still, which is not that of the latter.
+    store.finish("s", former.attempt, b"other answer")
+    store.fail("s", former.attempt, "code", "Sentence.")
+    waiting = store.study("s")
+    assert waiting is not None
+    assert waiting.state == "waiting"
+    store.finish("s", latter.attempt, b"answer")
     assert latter.attempt > former.attempt
     assert not store.forget("s", former.attempt)
     assert store.answer("s") == b"answer"
@@ -346,3 +358,28 @@ def test_study_that_was_begun_again_is_not_forgotten_for_its_former_attempt(stor
     for look in (store.table, lambda study: store.failures(study, 20), store.question):
         with pytest.raises(UnknownStudy):
             look("s")
+
+
+def test_pieces_of_a_table_make_the_whole(store: StudyStore, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr("service.studies.store._PIECE_CASES", 40)
+    evaluate = durable(store, Crew())
+    for cases in (wave(100, -5.0), wave(0), wave(70, 500.0)):
+        evaluate(cases)
+    whole, (first, *pieces) = store.table("s"), store.pieces("s")
+    assert len(first.case) == 0
+    assert max(len(piece.case) for piece in pieces) <= 40
+    for part in ("case", "numbers"):
+        np.testing.assert_array_equal(np.concatenate([getattr(piece, part) for piece in pieces]), getattr(whole, part))
+    values = [piece.evaluations.values for piece in pieces]
+    np.testing.assert_array_equal(np.concatenate(values), whole.evaluations.values)
+    failures = [failure for piece in pieces for failure in piece.evaluations.failures.items()]
+    assert failures == list(whole.evaluations.failures.items())
+
+    store.cancel("s")
+    begun_to_read = store.pieces("s")
+    for _ in range(2):
+        next(begun_to_read)
+    store.forget("s", attempt_of(store))
+    # It must not seem to have ended here.
+    with pytest.raises(UnknownStudy):
+        next(begun_to_read)

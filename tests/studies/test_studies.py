@@ -391,3 +391,16 @@ async def test_damaged_store_of_studies_leaves_everything_else_alone(settings: S
         for answer in (await client.get("/v1/studies"), await client.post("/v1/studies", json=cases_of([1.0]))):
             assert "damaged" in check_problem_document(answer, 503)["detail"]
         assert (await client.post("/v1/cases", json=cases_of([1.0])["question"])).status_code == 200
+
+
+async def test_long_tables_come_in_pieces_and_not_as_one_document(settings: Settings) -> None:
+    async with open_client(quick(settings).model_copy(update={"answer_bytes": 1000})) as client:
+        shown = await run_to_end(client, cases_of(coefficients(20)))
+        for address in (shown["results"], shown["answer"]):
+            document = check_problem_document(await client.get(address), 422)
+            assert document["type"].endswith("too-costly")
+            assert "piece by piece" in document["detail"]
+        for form, lines in (("jsonl", 20), ("csv", 21)):
+            answer = await client.get(shown["results"], params={"format": form})
+            assert answer.status_code == 200
+            assert len(answer.text.splitlines()) == lines
