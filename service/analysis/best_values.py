@@ -38,8 +38,17 @@ APART = 0.15
 # hold for sure.
 BOUNDS_INSIDE = 2.0
 
-# A search stops when its model promises the least fall; so many times that may be left as the model is none too good.
-LEFT = 10.0
+# A search stops when its model promises the least fall; so many times that may be left as the model is none too good:
+# along a curved valley a hundred times narrower than long some 500 were seen.
+LEFT = 1000.0
+
+# A kink is looked for around the best case this far along each number, in parts of the ranges, and a quarter as far: what
+# bends does so a sixteenth as much there, what has a kink a quarter. More than an eighth, the geometric mean, is a kink.
+KINK_AT, KINK_NEARER, KINK_BENDS = 4e-3, 0.25, 0.125
+
+# Where limits weigh more than this, goals and margins changing by about 1 over the ranges, or had to be charged more than
+# that before they held, they leave hardly any room between them, as in a cusp: what a model promises there says little.
+HEAVIEST, DEAREST = 50.0, 1e4
 
 # What counts as one: goals, and margins that bind, in parts of the scale; numbers in parts of their ranges.
 SAME_GOAL, BINDS, SAME_NUMBERS, AT_END = 1e-4, 1e-4, 1e-2, 1e-6
@@ -79,7 +88,8 @@ class Best:
     """The best case seen.
 
     numbers: shape (n_numbers,). values, bounds: of all results, shape (n_results,). goal, goal_bound: what was to be
-    best. leading: places in the goal's list of results that are the largest (least) together. margins, margin_bounds:
+    best. left: an estimate of how much better it could be nearby; None where limits are missed, no search converged
+    there, or results have kinks there, so that nothing is known of it. leading: places in the goal's list of results that are the largest (least) together. margins, margin_bounds:
     of each limit. binding: the limits that hold only just. at_low, at_high: the numbers at an end of their range.
     clearances: of rectangles, shape (n_clearances,). held_elsewhere: whether each limit surely holds in some case.
     """
@@ -89,7 +99,7 @@ class Best:
     bounds: FloatArray
     goal: float
     goal_bound: float
-    left: float
+    left: float | None
     leading: tuple[int, ...]
     margins: FloatArray
     margin_bounds: FloatArray
@@ -323,6 +333,7 @@ class _Search:
         usable = self._usable()
         has_first = has_first and usable.size > 0 and usable[0] == 0
         best = self._best(usable) if usable.size else None
+        has_kink = best is not None and self._has_kink(best)
         tried = [
             Start(
                 self.numbers(self.u[start]),
@@ -336,9 +347,16 @@ class _Search:
         compared = [self._compared(start, best) for start in tried] if best is not None else []
         compared.sort(key=lambda start: self._goal.sign * start.last_goal)
         if best is not None:
-            # Searches that stopped short of each other all thought that little was left.
-            alike = [start.last_goal for start in compared if start.same_goal and start.ended == "converged"]
-            best = replace(best, left=max([best.left, *(abs(goal - best.goal) for goal in alike)]))
+            alike = [
+                (descent, end)
+                for descent, start, end in zip(descents, tried, ended, strict=True)
+                if self._compared(start, best).same_goal
+            ]
+            settled = bool(alike) and all(end == "converged" and _is_regular(descent) for descent, end in alike)
+            is_missed = bool(surely_passed(best.margins, best.margin_bounds).any())
+            best = replace(best, left=self._left(best, [descent for descent, _ in alike]))
+            if is_missed or has_kink or not settled:
+                best = replace(best, left=None)
         return BestValues(
             best=best,
             at_first=self._goal_at(0) if has_first else None,
@@ -393,7 +411,7 @@ class _Search:
             bounds=self._bounds[index],
             goal=goal,
             goal_bound=goal_bound,
-            left=LEFT * (LEAST_FALL * self._scale() + goal_bound),
+            left=None,
             leading=tuple(np.flatnonzero(near).tolist()),
             margins=held[0][index],
             margin_bounds=held[1][index],
@@ -406,8 +424,50 @@ class _Search:
             ),
         )
 
+    def _left(self, best: Best, alike: Sequence[Descent]) -> float:
+        """What the searches that came to the best leave, as far as they can tell.
+
+        Each thought that little was left, stopped short of the others, and was kept inside of limits that cost it.
+        """
+        left = LEFT * (LEAST_FALL * self._scale() + best.goal_bound)
+        sides = [side.result for side in self._sides]
+        inside = BOUNDS_INSIDE * best.bounds[sides] / self._scales[sides] + LEAST_EXCESS
+        for descent in alike:
+            short = abs(self._goal.sign * self._scale() * descent.here.goal - best.goal)
+            kept = self._scale() * float(np.maximum(descent.weights[descent.here.n_goals :], 0.0) @ inside)
+            left = max(left, short + kept)
+        return left
+
+    def _has_kink(self, best: Best) -> bool:
+        """Whether a result of the goal or of a limit has a kink at or beside the best case.
+
+        Of its bends over two lengths along each number that has room, since tangents do not tell of kinks. Not known,
+        and denied, where no more cases are allowed.
+        """
+        here = self._parts(best.numbers)
+        axes = np.flatnonzero((here >= KINK_AT) & (here <= 1.0 - KINK_AT))
+        steps = np.array([-1.0, -KINK_NEARER, KINK_NEARER, 1.0]) * KINK_AT
+        places = (here + steps[:, None] * np.eye(here.size)[axes][:, None]).reshape(-1, here.size)
+        is_apart = (self.apart(places) >= 0.0).all() if len(places) else False
+        if not is_apart or len(self.u) + len(places) > self._most_cases:
+            return False
+        begin = len(self.u)
+        self.look(places)
+        results = sorted({*self._goal.results, *(limit.result for limit in self._limits)})
+        values = self._values[begin:, results].reshape(axes.size, 4, -1)
+        noise = 4.0 * self._bounds[begin:, results].reshape(axes.size, 4, -1).max(axis=1)
+        far = np.abs(values[:, 0] + values[:, 3] - 2.0 * best.values[results])
+        near = np.abs(values[:, 1] + values[:, 2] - 2.0 * best.values[results])
+        return bool((near - noise > KINK_BENDS * (far + noise)).any())
+
     def _compared(self, start: Start, best: Best) -> Start:
         """A start with whether it came to the best."""
         same_goal = abs(start.last_goal - best.goal) <= SAME_GOAL * self._scale() + 2.0 * best.goal_bound
         away = np.abs(start.last - best.numbers) / (self._high - self._low)
         return replace(start, same_goal=same_goal, same_numbers=bool(same_goal and away.max() <= SAME_NUMBERS))
+
+
+def _is_regular(descent: Descent) -> bool:
+    """Whether a search ended where limits hold as far as it aims at, with weights of usual size."""
+    heaviest = float(np.abs(descent.weights[descent.here.n_goals :]).max(initial=0.0))
+    return descent.here.excess <= LEAST_EXCESS and heaviest <= HEAVIEST and descent.charge <= DEAREST

@@ -106,7 +106,8 @@ class _Step:
 
 
 class Descent:
-    """A local search. u: where it is; here: what was found there.
+    """A local search. u: where it is; here: what was found there; weights: of the f_k and e_j in its last Lagrangian;
+    charge: what an excess is charged.
 
     apart: clearances at places, shape (n_places, n_clearances), which are at least 0 at u. kept_clear: by how much more
     than 0 they are aimed at, so that rounding does not bring them below.
@@ -115,7 +116,8 @@ class Descent:
     def __init__(self, u: FloatArray, here: Point, apart: Apart, kept_clear: float) -> None:
         self.u, self.here = u, here
         self._apart, self._kept_clear = apart, kept_clear
-        self._radius, self._charge = FIRST_RADIUS, FIRST_CHARGE
+        self._radius, self.charge = FIRST_RADIUS, FIRST_CHARGE
+        self.weights = np.zeros(here.values.size)
 
     def steps(self) -> Generator[FloatArray, Points, Ended]:
         """Search, yielding places that are wanted next and taking what was found there, None where a case failed."""
@@ -135,11 +137,12 @@ class Descent:
         stay = np.zeros(self.u.size)
         while self._radius >= SMALLEST_RADIUS:
             step = self._promising(model)
-            promised = model.charged(stay, self._charge) - model.charged(step.by, self._charge)
+            self.weights = step.weights
+            promised = model.charged(stay, self.charge) - model.charged(step.by, self.charge)
             if promised <= LEAST_FALL + self.here.noise:
-                if self.here.excess <= LEAST_EXCESS or self._charge >= LARGEST_CHARGE:
+                if self.here.excess <= LEAST_EXCESS or self.charge >= LARGEST_CHARGE:
                     return "converged"
-                self._charge *= DEARER
+                self.charge *= DEARER
                 continue
             length = float(np.abs(step.by).max())
             there = (yield self._after(step))[0]
@@ -161,7 +164,7 @@ class Descent:
         return np.clip(self.u + step.by, 0.0, 1.0)[None]
 
     def _fall(self, there: Point) -> float:
-        return self.here.charged(self._charge) - there.charged(self._charge)
+        return self.here.charged(self.charge) - there.charged(self.charge)
 
     def _slopes(self) -> Generator[FloatArray, Points, FloatArray]:
         """Slopes of all functions, shape (K + J, n), by parabolas through u and two places of each axis.
@@ -205,7 +208,7 @@ class Descent:
         rows = np.column_stack([-model.slopes, is_goal, ~is_goal])
         gaps = np.where(is_goal, model.point.goal, 0.0) - model.point.values
         curvature = np.pad(model.curvature, ((0, 2), (0, 2)))
-        prices = np.concatenate([np.zeros(size), [1.0, self._charge]])
+        prices = np.concatenate([np.zeros(size), [1.0, self.charge]])
         constraints = [{"type": "ineq", "fun": lambda z: rows @ z + gaps, "jac": lambda z: rows}]
         if self._apart(self.u[None]).size:
             constraints.append({"type": "ineq", "fun": self._clearances, "jac": self._clearance_slopes})

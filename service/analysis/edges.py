@@ -10,6 +10,7 @@ from itertools import pairwise
 from typing import Literal
 
 import numpy as np
+from numpy.typing import NDArray
 from scipy.optimize.elementwise import find_root
 
 from service.analysis.samples import Samples
@@ -86,7 +87,7 @@ class Edges:
         sides = np.maximum(root - step, low), np.minimum(root + step, high)
         samples.look(np.concatenate([root, *sides]))
         at, before, after = samples.at(root), samples.at(sides[0]), samples.at(sides[1])
-        limits = np.array([samples.binding(index) for index in at])
+        limits = self._nearest_limits(at, before, after)
         values = [samples.values[place, limits] for place in (before, at, after)]
         slopes = (values[2] - values[0]) / (sides[1] - sides[0])
         with np.errstate(divide="ignore", invalid="ignore"):
@@ -107,6 +108,23 @@ class Edges:
             slope = (float(slopes[index]), float(slope_errors[index])) if is_told else (None, None)
             edges.append(Edge("limit", float(number), float(off), int(limits[index]), *slope))
         return edges
+
+    def _nearest_limits(
+        self, at: NDArray[np.intp], before: NDArray[np.intp], after: NDArray[np.intp]
+    ) -> NDArray[np.intp]:
+        """The limit of each root that is passed nearest to it, by its margin there and how fast that changes.
+
+        Not by the least margin in parts of the scale, which says little where results change by decades.
+        """
+        samples = self.samples
+        widths = samples.numbers[after] - samples.numbers[before]
+        with np.errstate(divide="ignore", invalid="ignore"):
+            rates = np.abs(samples.margins[after] - samples.margins[before]) / widths[:, None]
+            away = np.abs(samples.margins[at]) / rates
+        # What does not change, or has no value beside the root, is told by its margin alone.
+        away = np.where(np.isnan(away), np.inf, away)
+        by_margin = np.array([samples.binding(index) for index in at])
+        return np.where(np.isfinite(away).any(axis=1), np.argmin(away, axis=1), by_margin)
 
     def as_known(self) -> list[Edge]:
         """Edges without a further case: each at its nearest case that holds, and off by the width of its bracket."""

@@ -35,9 +35,11 @@ class GoalReached(Model):
     error_bound: float = Field(
         description="It is no further off than this with these values of the numbers.", examples=[4e-8]
     )
-    search_error_estimate: float = Field(
-        description="Estimate of how much better it could be nearby, from where the searches stopped and how far apart "
-        "those are that came to the same. Nothing is said of what lies elsewhere.",
+    search_error_estimate: float | None = Field(
+        description="Estimate of how much better it could be nearby, from where the searches stopped, how far apart "
+        "those are that came to the same, and how far inside of limits they are kept. null where nothing is known of "
+        "it: limits are missed, no search converged there, or results have kinks there. Nothing is said of what lies "
+        "elsewhere.",
         examples=[3e-6],
     )
     leading: list[str] = Field(

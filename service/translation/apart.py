@@ -71,12 +71,17 @@ class ApartReader:
         if gap < 0.0:
             self._collector.add((*here, "gap"), "The gap must not be negative.", "negative")
         rectangles = []
+        seen: set[Path] = set()
         axes: tuple[str, ...] | None = None
         for index, pointer in enumerate(apart.rectangles):
             place = (*here, "rectangles", index)
             path = resolve(self._collector, self._document, pointer, place)
             if path is None:
                 continue
+            if path in seen:
+                detail = f"{pointer} stands in this list already; a rectangle cannot keep apart from itself."
+                self._collector.add(place, detail, "twice")
+            seen.add(path)
             given = value_at(self._document, path)
             own = tuple(axis for axis in AXES if isinstance(given, dict) and isinstance(given.get(axis), list))
             if not own or (axes is not None and own != axes):

@@ -187,6 +187,54 @@ def test_a_search_begins_at_the_numbers_as_they_stand_and_is_the_same_each_time(
     assert outcome.starts[0].last_goal == other.starts[0].last_goal
 
 
+def test_nothing_is_estimated_where_a_result_has_a_kink_or_limits_leave_no_room() -> None:
+    # The three of CB2 as one result: its tangents do not tell of the kinks.
+    in_one = Functions([lambda x: max(float(f(x)) for f in CB2)])
+    outcome = found(in_one, [(-3.0, 3.0)] * 2, Goal((0,), "lowest"))
+    assert outcome.best is not None
+    assert outcome.best.goal > 1.9522245 + 1e-6
+    assert outcome.best.left is None
+    apart = found(Functions(CB2), [(-3.0, 3.0)] * 2, Goal((0, 1, 2), "lowest")).best
+    assert apart is not None
+    assert apart.left is not None
+    assert apart.goal - 1.9522245 <= apart.left < 1e-3
+    # Between y = 0 and y = (1 - x)^3 there is less and less room towards x = 1.
+    cusp: list[Function] = [lambda x: -x[0], lambda x: x[1] - (1 - x[0]) ** 3, lambda x: x[1]]
+    limits = [Limit(1, at_most=0.0), Limit(2, at_least=0.0)]
+    for seed in range(3):
+        best = found(Functions(cusp), [(-2.0, 2.0)] * 2, Goal((0,), "lowest"), limits, seed=seed).best
+        assert best is not None
+        assert best.left is None or best.goal + 1 <= best.left
+
+
+@pytest.mark.parametrize("seed", range(6))
+def test_what_is_left_in_a_curved_valley_is_no_more_than_estimated(seed: int) -> None:
+    # Rosenbrock, Computer Journal 3 (1960) 175: 0 at (1, 1).
+    asked = Functions([lambda x: 100 * (x[1] - x[0] ** 2) ** 2 + (1 - x[0]) ** 2], bound=1e-9, noise=0.5)
+    best = found(asked, [(-2.0, 2.0)] * 2, Goal((0,), "lowest"), seed=seed).best
+    assert best is not None
+    assert best.left is not None
+    assert best.goal <= best.left < 0.01
+
+
+def test_what_it_costs_to_keep_inside_of_a_limit_is_part_of_the_estimate() -> None:
+    # The optimum -1 less what two bounds of 1e-3 inside of the limit cost at a slope of 5.
+    asked = Functions([lambda x: -5 * x[0] + x[1] ** 2, lambda x: x[0] + 0.01 * x[1]], bound=1e-3)
+    best = found(asked, [(-1.0, 1.0)] * 2, Goal((0,), "lowest"), [Limit(1, at_most=0.2)]).best
+    assert best is not None
+    assert best.goal > -1.0 + 4e-3
+    assert best.left is not None
+    assert best.goal + 1.0 <= best.left
+
+
+def test_a_goal_that_no_number_changes_is_told() -> None:
+    still = found(Functions([lambda x: 3.0], noise=1.0), [(-1.0, 1.0)], Goal((0,), "lowest"))
+    assert (still.goal_changes, found(Functions(CB2), [(-3.0, 3.0)] * 2, Goal((0,), "lowest")).goal_changes) == (
+        False,
+        True,
+    )
+
+
 def test_several_valleys_are_told_apart() -> None:
     # Two equal wells and a shallow one.
     asked = Functions([lambda x: -np.exp(-8 * (abs(x[0]) - 1) ** 2) - 0.5 * np.exp(-30 * x[0] ** 2)])

@@ -10,9 +10,9 @@ import pytest
 from scipy.optimize import brentq
 
 from service.analysis import edges
+from service.analysis.edges import Edge
 from service.analysis.limits import Limit
 from service.analysis.samples import Range
-from service.analysis.edges import Edge
 from service.analysis.sizing import Sizing, where_equal, where_limits_hold
 from tests.analysis.functions import BAD, Functions, of_one
 
@@ -262,3 +262,101 @@ def test_searches_go_on_side_by_side() -> None:
     where_limits_hold(one, Range(0.1, 0.3), [Limit(0, at_most=0.5)], ["K"])
     assert len(asked.waves) <= len(one.waves) + 8
     assert sum(asked.waves) < 33 + 6 * 18
+
+
+def places_of(found: Sizing) -> list[tuple[float, float]]:
+    return [(interval.low.number, interval.high.number) for interval in found.intervals]
+
+
+@pytest.mark.parametrize("place", [1.4567, 1.7031, 1.9012])
+@pytest.mark.parametrize("width", [3e-3, 1e-2])
+def test_a_peak_between_places_is_followed_from_its_tails(place: float, width: float) -> None:
+    # A Lorentz curve a tenth to a third of the spacing wide: its tails show on the scan, far from the limit.
+    def peak(x: float) -> float:
+        return 2 / (1 + ((x - place) / width) ** 2)
+
+    scan = Range(1.0, 2.0)
+    low, high = place - width, place + width
+    above = sized(peak, Limit(0, at_least=1.0), scan, noise=1.0)
+    assert above.holds == "somewhere"
+    assert places_of(above) == [pytest.approx((low, high), abs=1e-9)]
+    below = sized(peak, Limit(0, at_most=1.0), scan, noise=1.0)
+    assert places_of(below) == [pytest.approx((1.0, low), abs=1e-9), pytest.approx((high, 2.0), abs=1e-9)]
+    crossings = where_equal(Functions([of_one(peak)]), scan, 0, 1.0).crossings
+    assert [crossing.number for crossing in crossings] == pytest.approx([low, high], abs=1e-9)
+    assert max(above.cases, below.cases) < 33 + 60
+
+
+def test_random_peaks_that_show_are_never_denied() -> None:
+    rng = np.random.default_rng(0)
+    for _ in range(60):
+        width, place, height = 10 ** rng.uniform(-3.5, -1.8), rng.uniform(1.05, 1.95), rng.uniform(1.05, 3)
+
+        def dip(x: float, at: tuple[float, float, float] = (width, place, height)) -> float:
+            return 1 - at[2] * at[0] ** 2 / ((x - at[1]) ** 2 + at[0] ** 2)
+
+        half = width * math.sqrt(height - 1)
+        found = sized(dip, Limit(0, at_most=0.0), Range(1.0, 2.0))
+        assert places_of(found) == [pytest.approx((place - half, place + half), abs=1e-8)]
+        crossings = where_equal(Functions([of_one(dip)]), Range(1.0, 2.0), 0, 0.0).crossings
+        assert [crossing.number for crossing in crossings] == pytest.approx([place - half, place + half], abs=1e-8)
+
+
+def test_two_limits_that_hold_together_within_one_step_only_are_found() -> None:
+    asked = Functions([of_one(lambda x: x), of_one(lambda x: 6.02 - x)])
+    found = where_limits_hold(asked, Range(0.0, 7.3), [Limit(0, at_most=3.011), Limit(1, at_most=3.011)], ["K", "K"])
+    assert places_of(found) == [pytest.approx((3.009, 3.011))]
+
+
+def test_limits_that_exclude_each_other_are_both_missed_though_each_holds_elsewhere() -> None:
+    asked = Functions([of_one(lambda x: x), of_one(lambda x: 9.0)])
+    limits = [Limit(0, at_most=3.0), Limit(0, at_least=5.0), Limit(1, at_most=10.0)]
+    nearest = where_limits_hold(asked, Range(0.0, 9.0), limits, ["K"] * 3).nearest
+    assert nearest is not None
+    assert nearest.number == pytest.approx(4.0, abs=1e-6)
+    assert {missed.limit for missed in nearest.missed} == {0, 1}
+    assert all(missed.held_elsewhere for missed in nearest.missed)
+
+
+def test_noise_of_a_result_that_does_not_change_is_not_searched() -> None:
+    asked = Functions([of_one(lambda x: 5.0), of_one(lambda x: x)], noise=1.0)
+    limits = [Limit(0, at_most=4.0), Limit(1, at_most=9.0)]
+    found = where_limits_hold(asked, Range(1.0, 3.0), limits, ["K", "K"], as_it_stands=2.2)
+    assert (found.holds, found.unchanged) == ("nowhere", (0,))
+    assert found.nearest is not None
+    assert abs(found.nearest.number - 2.2) <= 2 / 32
+    assert [(missed.limit, missed.held_elsewhere) for missed in found.nearest.missed] == [(0, False)]
+    assert found.cases <= 33 + 2
+    met = where_equal(Functions([of_one(lambda x: 5.0)], noise=1.0), Range(1.0, 3.0), 0, 5.0)
+    assert met.unchanged == (0,)
+
+
+@pytest.mark.parametrize("most", [33, 35, 40, 50, 60, 75, 90])
+def test_no_more_cases_are_computed_than_allowed_and_bounds_still_hold(most: int) -> None:
+    asked = Functions([of_one(lambda x: math.sin(6 * x))])
+    found = where_limits_hold(asked, Range(0.1, 3.0), [Limit(0, at_most=0.5)], ["K"], most_cases=most)
+    assert found.cases == len(asked.seen) <= most
+    assert not found.complete
+    expected = [math.pi * turn / 36 for turn in (5, 13, 17, 25, 29)]
+    edges = [edge for interval in found.intervals for edge in (interval.low, interval.high) if edge.kind == "limit"]
+    assert len(edges) == len(expected)
+    for edge, place in zip(edges, expected, strict=True):
+        assert abs(edge.number - place) <= edge.error_bound
+
+
+def test_where_cases_begin_at_zero_the_end_is_told_to_a_part_of_the_spacing() -> None:
+    found = sized(lambda x: x, Limit(0, at_most=2.0), Range(-5.0, 30.0), is_valid=lambda x: x > 0.0)
+    (interval,) = found.intervals
+    assert interval.low.kind == "invalid"
+    assert 1e-12 < interval.low.number < 2e-6
+
+
+def test_the_limit_that_ends_an_interval_is_the_one_passed_there_over_sixty_decades() -> None:
+    # The second result changes by so much over the range that its margin is nothing beside that.
+    asked = Functions([of_one(lambda x: 500 * 330 / x), of_one(lambda x: 1e5 / x)], bound=1e-9)
+    limits = [Limit(0, at_most=500.0), Limit(1, at_least=140.0)]
+    found = where_limits_hold(asked, Range(1e-30, 1e30, logarithmic=True), limits, ["K", "W"])
+    (interval,) = found.intervals
+    assert (interval.low.limit, interval.high.limit) == (0, 1)
+    assert interval.low.number == pytest.approx(330.0)
+    assert interval.low.slope == pytest.approx(-500 / 330, rel=0.2)

@@ -186,6 +186,7 @@ async def test_a_goal_that_does_not_change_is_told(client: httpx.AsyncClient) ->
         ("apart/0/gap", -1, "#/apart/0/gap", "must not be negative"),
         ("apart/0/gap", "1 K", "#/apart/0/gap", "K"),
         ("apart/0/rectangles/1", f"{PATCHES}/9", "#/apart/0/rectangles/1", 'There is no "9" in'),
+        ("apart/0/rectangles/1", f"{PATCHES}/0", "#/apart/0/rectangles/1", "cannot keep apart from itself"),
         ("apart/0/rectangles/1", "/problem/body", "#/apart/0/rectangles/1", "has no from and to along any axis"),
         ("apart/0/rectangles/1", "/problem/sources/0", "#/apart/0/rectangles/1", "along the same axes as the others"),
         ("problem/faces/z_high/inflow/patches/1/y/1", "end", "#/apart/0/rectangles/1", 'Write "end" as a length'),
