@@ -14,6 +14,9 @@ from service.analysis.evaluations import FloatArray
 # Parts of a skewness that are looked at, since the ends do not move one way with it.
 PARTS = np.linspace(1 / 16, 1, 16)
 
+# How many times the skewness that samples show is heeded: they seldom show the rare cases that make it.
+SEEN = 2.0
+
 # A smaller skewness moves no end.
 STRAIGHT = 1e-6
 
@@ -32,21 +35,19 @@ def standard_error(pieces: FloatArray) -> FloatArray:
     return error
 
 
-def of_mean(
-    pieces: FloatArray, cases: FloatArray, confidence: float, seen: float = 1.0
-) -> tuple[FloatArray, FloatArray]:
+def of_mean(pieces: FloatArray, cases: FloatArray, confidence: float) -> tuple[FloatArray, FloatArray]:
     """Low and high end for the mean of pieces, shape (n_pieces, n_results).
 
     The wider of Student's interval and of that of Hall's monotone transformation (J. R. Statist. Soc. B 54, 1992),
-    which heeds that the mean of a few long-tailed values is skewed: by the skewness of the pieces or of the cases,
-    shape (n_cases, n_results), times seen, or by any part of it. Infinite ends of fewer than two pieces.
+    which heeds that the mean of a few long-tailed values is skewed: by twice the skewness of the pieces or of the
+    cases, shape (n_cases, n_results), or by any part of it. Infinite ends of fewer than two pieces.
     """
     if len(pieces) < 2:
         unknown = np.full(pieces.shape[1], np.inf)
         return -unknown, unknown
     factor = student(len(pieces), confidence)
     below = above = np.full(pieces.shape[1], factor)
-    for skewness in (_skewness_of_mean(pieces), seen * _skewness_of_mean(cases)):
+    for skewness in (SEEN * _skewness_of_mean(pieces), SEEN * _skewness_of_mean(cases)):
         for part in PARTS:
             below = np.maximum(below, _straightened(factor, part * skewness))
             above = np.maximum(above, -_straightened(-factor, part * skewness))

@@ -25,14 +25,17 @@ from scipy import stats
 
 from service.analysis.distributions import Distribution, Method, numbers_of, parts
 from service.analysis.evaluations import Evaluate, Evaluations, Failure, FloatArray
-from service.analysis.intervals import of_mean, ranks_at_random, ranks_of_replicates, standard_error, student
+from service.analysis.intervals import (
+    of_mean,
+    ranks_at_random,
+    ranks_of_replicates,
+    standard_error,
+    student,
+)
 from service.analysis.limits import Limit, bounds_of, margins, surely_held, surely_passed
 
 # Cases in a wave.
 WAVE = 512
-
-# How many times the skewness of squares that samples show is heeded: they seldom show the rare cases that make it.
-SEEN_OF_SQUARES = 2.0
 
 
 @dataclass(frozen=True)
@@ -180,7 +183,7 @@ def _deviation(values: FloatArray, bounds: FloatArray, n_pieces: int, confidence
     squares = (values - mean) ** 2 + standard_error(_of_pieces(values, n_pieces)) ** 2
     pieces = _of_pieces(squares, n_pieces)
     variance = squares.mean(axis=0)
-    low, high = of_mean(pieces, squares, confidence, SEEN_OF_SQUARES)
+    low, high = of_mean(pieces, squares, confidence)
     part = np.divide(standard_error(pieces), variance, out=np.zeros_like(variance), where=variance > 0)
     with np.errstate(over="ignore"):
         factor = np.exp(student(n_pieces, confidence) * part)
