@@ -129,9 +129,10 @@ class Prepared:
             for index, info in enumerate(self.results.infos)
         ]
 
-    def estimates(self) -> Sequence[Estimate]:
-        """What one case costs, about."""
-        return estimate_results(self.results, self.solution, relative=self.relative)
+    def estimates(self, finest: float | None = None) -> Sequence[Estimate]:
+        """What one case costs, about, in the accuracy asked for or a finer one, in parts of the span."""
+        asked = [relative for relative in (self.relative, finest) if relative is not None]
+        return estimate_results(self.results, self.solution, relative=min(asked, default=None))
 
 
 @dataclass(frozen=True)
@@ -139,13 +140,15 @@ class Analysis:
     """One question of a decision, ready to be answered by whoever computes its cases.
 
     most_cases: how many cases it takes at the most. run: the answer from a way to compute cases; deterministic, so that
-    a run can be taken up again from the cases it had.
+    a run can be taken up again from the cases it had. finest: accuracy that cases are asked for, in parts of the span,
+    where that is finer than the client's.
     """
 
     prepared: Prepared
     plan: CasePlan
     most_cases: int
     run: Callable[[Evaluate], dict[str, Any]]
+    finest: float | None = None
 
     def answer(self, evaluate: Evaluate) -> dict[str, Any]:
         """The whole answer: what every answer of a decision carries, and its own. Warnings of both are joined."""
@@ -195,7 +198,7 @@ def prepare(
 
 def check_cost(analysis: Analysis, settings: Settings) -> None:
     """Raise TooCostly where a question takes more cases or work than one request may."""
-    check_cases(analysis.most_cases, analysis.prepared.estimates(), settings)
+    check_cases(analysis.most_cases, analysis.prepared.estimates(analysis.finest), settings)
 
 
 def envelope(prepared: Prepared) -> dict[str, Any]:

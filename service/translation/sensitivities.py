@@ -8,7 +8,7 @@ from typing import Any
 
 import numpy as np
 
-from service.analysis.derivatives import RADIUS, Derivatives, NominalFailed, derivatives, most_cases
+from service.analysis.derivatives import ACCURACY, RADIUS, Derivatives, NominalFailed, derivatives, most_cases
 from service.analysis.evaluations import Evaluate, FloatArray
 from service.models import sensitivities as models
 from service.refusals import Issue, Path, RequestRefused
@@ -44,7 +44,7 @@ def read_sensitivities(question: models.SensitivitiesQuestion, prepared: Prepare
             "case_count": found.n_cases,
         }
 
-    return Analysis(prepared, prepared.plan(infos, targets), most_cases(len(infos)), run)
+    return Analysis(prepared, prepared.plan(infos, targets), most_cases(len(infos)), run, ACCURACY)
 
 
 def read_radii(

@@ -50,7 +50,7 @@ def read_tolerances(question: models.TolerancesQuestion, prepared: Prepared) -> 
     read = _Read(
         question, prepared, infos, radii, [spread for spread in spreads if spread is not None], correlation, limits
     )
-    return Analysis(prepared, prepared.plan(infos, targets), read.most_cases, read.run)
+    return Analysis(prepared, prepared.plan(infos, targets), read.most_cases, read.run, derivatives.ACCURACY)
 
 
 @dataclass(frozen=True)

@@ -373,6 +373,18 @@ async def test_too_many_cases_are_refused_before_they_are_computed(settings: Set
     assert (document["estimate"], document["limit"]) == (99, 80)
 
 
+async def test_cost_is_that_of_the_accuracy_cases_are_asked_for(settings: Settings) -> None:
+    """Asking for 1e-12 oneself changes nothing, since derivatives ask for as much; 1e-14 costs more."""
+    results: list[Json] = [{"name": "cool side", "result": "potential", "at": [0.02, 0.03, "high"]}]
+    question: Json = {"problem": block_with_pad(), "results": results, "numbers": [LOAD]}
+    costs = []
+    async with open_client(settings.model_copy(update={"cost_multiplications": 1e8})) as client:
+        for more in ({}, {"accuracy": {"relative": 1e-12}}, {"accuracy": {"relative": 1e-14}}):
+            document = check_problem_document(await client.post("/v1/sensitivities", json=question | more), 422)
+            costs.append(document["estimate"])
+    assert costs[0] == costs[1] < costs[2]
+
+
 @pytest.mark.parametrize(("thickness", "conductivity"), [(5e-3, 0.5), (5e-4, 0.5), (5e-5, 0.01), (5e-3, 0.001)])
 async def test_place_in_a_layer_of_microns(client: httpx.AsyncClient, thickness: float, conductivity: float) -> None:
     """100 K over 100 mm, a film of microns, and 100 mm again: the slope inside it is that of its own resistance."""
