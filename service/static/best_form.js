@@ -7,7 +7,7 @@ import { numberText } from "./number_form.js";
 import { problemOf } from "./problem_draft.js";
 import { namesOf } from "./result_draft.js";
 
-export const mostNumbers = 20;
+export const mostNumbers = () => 20;
 
 export const fieldsOfNumber = () => (number, id, spoken, changed) => {
   const kind = `number-${number.id}`;

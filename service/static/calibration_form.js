@@ -10,7 +10,7 @@ import { namesOf } from "./result_draft.js";
 import { resultEntries } from "./result_form.js";
 import { idOf } from "./typed.js";
 
-export const mostNumbers = 20;
+export const mostNumbers = () => 20;
 
 export const fieldsOfNumber = () => (number, id, spoken, changed) => {
   const [kind, step] = [`number-${number.id}`, `step-${number.id}`];

@@ -2,7 +2,7 @@
 
 import { make, verdict } from "./elements.js";
 import { bounded, pretty, shown } from "./numbers.js";
-import { differenceOf, headed, heldWord, limitWords, rowHead, table, valueCell, withUnit } from "./tables.js";
+import { differenceOf, headed, heldWord, limitWords, placeWords, rowHead, table, valueCell, withUnit } from "./tables.js";
 
 /** @param {any} answer of POST /v1/limits */
 export function limitsView({ results, limits, all_held: allHeld, units }) {
@@ -13,7 +13,7 @@ export function limitsView({ results, limits, all_held: allHeld, units }) {
     const asked = limitWords(limit, unitOf(limit.result));
     return [
       rowHead(limit.name ?? limit.result, limit.name ? `${limit.result} ${asked}` : asked),
-      make("td", {}, withUnit(shown(result.value, result.error_bound ?? 0), result.unit), boundLine(result.error_bound, difference)),
+      make("td", {}, withUnit(shown(result.value, result.error_bound ?? 0), result.unit), boundLine(result.error_bound, difference), placeLine(result, units)),
       make("td", {}, heldWord(limit.held), make("span", { class: "margin" }, `by ${withUnit(shown(Math.abs(limit.margin), limit.error_bound ?? 0), difference)}`), boundLine(limit.error_bound, difference)),
     ];
   });
@@ -23,6 +23,9 @@ export function limitsView({ results, limits, all_held: allHeld, units }) {
 }
 
 const boundLine = (bound, unit) => make("span", { class: "known" }, bound === null ? "bound not known" : bound > 0 ? `\u00b1 ${bounded(bound)} ${pretty(unit)}` : "exact");
+
+/** Where the highest or lowest place is. */
+const placeLine = (result, units) => (result.at ? make("span", { class: "known" }, placeWords(result, units)) : null);
 
 function allView(held, limits) {
   const count = limits.filter((limit) => limit.held === "no").length;
@@ -40,5 +43,5 @@ function otherResults(results, limits, units) {
 /** Results as the problem stands. */
 export const resultsTable = (results, units, caption = "Results as the problem stands") => table(
   caption, ["Result", "Value"],
-  results.map((result) => [rowHead(headed(result.name, result.unit)), valueCell(result.value, result.error_bound)]),
+  results.map((result) => [rowHead(headed(result.name, result.unit), placeWords(result, units)), valueCell(result.value, result.error_bound)]),
 );

@@ -114,22 +114,40 @@ function figureOf(plane, words, units, marks, width) {
 function markTraces(marks) {
   return marks.map((mark) => ({
     type: "scatter", mode: "markers", x: [mark.x], y: [mark.y], cliponaxis: false,
-    marker: { symbol: mark.isHighest ? "triangle-up" : "triangle-down", size: 13, color: "#fffefa", line: { color: INK, width: 1.6 } },
+    marker: { symbol: mark.symbol, size: 13, color: "#fffefa", line: { color: INK, width: 1.6 } },
     hovertemplate: `${mark.words}<extra></extra>`,
   }));
 }
 
-/** Extremes of the body that lie in the plane. @param {import("./plane.js").PlaneData} plane */
-export function marksOf(plane, extremes, words) {
+/**
+ * Extremes of the body, and of named results, that lie in the plane.
+ * @param {import("./plane.js").PlaneData} plane @param {any} extremes of the body @param {any[]} results as they are named
+ */
+export function marksOf(plane, extremes, results, words) {
+  const ofBody = ["highest", "lowest"].map((which) => ({ at: extremes[which].at, words: `${words[which]} of the body`, ...SIGNS[which] }));
+  const ofResults = results.filter(({ at }) => at).map(({ at, name }) => ({ at, words: name.replace(/[<>&]/g, " "), ...SIGNS.result }));
+  const marks = [...ofBody, ...ofResults].flatMap(({ at, ...mark }) => {
+    const place = placeIn(plane, at);
+    return place ? [{ ...place, ...mark }] : [];
+  });
+  // Of several at one place the first is drawn, with the words of all.
+  const isAt = (mark) => (other) => mark.x === other.x && mark.y === other.y;
+  return marks.filter((mark, index) => marks.findIndex(isAt(mark)) === index)
+    .map((mark) => ({ ...mark, words: marks.filter(isAt(mark)).map((one) => one.words).join("; ") }));
+}
+
+const SIGNS = {
+  highest: { symbol: "triangle-up", sign: "\u25b3" }, lowest: { symbol: "triangle-down", sign: "\u25bd" }, result: { symbol: "diamond", sign: "\u25c7" },
+};
+
+/** Where a place of the body is in the picture, if it lies in the plane. */
+function placeIn(plane, at) {
   const index = { x: 0, y: 1, z: 2 };
   const near = 1e-9 * Math.max(...plane.columns.map(Math.abs), ...plane.rows.map(Math.abs));
-  return ["highest", "lowest"].flatMap((which) => {
-    const { at } = extremes[which];
-    const [along, x, y] = [plane.axis, plane.across, plane.up].map((axis) => at[index[axis]]);
-    const isShown = along !== null && x !== null && y !== null && Math.abs(along - plane.position) <= near
-      && x <= plane.columns.at(-1) && y <= plane.rows.at(-1);
-    return isShown ? [{ x, y, isHighest: which === "highest", words: `${words[which]} of the body` }] : [];
-  });
+  const [along, x, y] = [plane.axis, plane.across, plane.up].map((axis) => at[index[axis]]);
+  const isShown = along !== null && x !== null && y !== null && Math.abs(along - plane.position) <= near
+    && x <= plane.columns.at(-1) && y <= plane.rows.at(-1);
+  return isShown ? { x, y } : null;
 }
 
 /** The drawing under way; the next one waits for it. @type {Promise<void>} */

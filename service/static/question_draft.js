@@ -17,7 +17,8 @@ const QUESTIONS = { cases, sensitivities, tolerances, sizing, "best-values": bes
  */
 export function questionDraftOf(call, asked, problem, results) {
   const isAsked = call in QUESTIONS;
-  const references = [asked.numbers ?? asked.number ?? asked.unknowns ?? []].flat();
+  // Beside a number that is sized come those that may be off.
+  const references = [asked.numbers ?? asked.number ?? asked.unknowns ?? [], asked.tolerances ?? []].flat();
   return {
     call: isAsked ? call : "",
     numbers: isAsked ? numberDraftsOf(references, problem, asked.results, (reference) => QUESTIONS[call].textsOf(reference, references.indexOf(reference), asked)) : [],

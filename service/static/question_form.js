@@ -9,7 +9,7 @@ import * as sizing from "./sizing_form.js";
 import * as tolerances from "./tolerances_form.js";
 
 /** Questions whose numbers need no more than to be chosen. */
-const plain = { mostNumbers: 100, fieldsOfNumber: () => () => [], ownFields: () => [] };
+const plain = { mostNumbers: () => 100, fieldsOfNumber: () => () => [], ownFields: () => [] };
 
 /** By the last part of each call's address: what it is called, and what it tells. */
 export const QUESTIONS = {
@@ -45,7 +45,7 @@ export function questionFields(draft, changed, redraw, ask) {
   const kind = QUESTIONS[question.call];
   return [
     which, make("p", { class: "hint whole" }, kind.hint),
-    ...numberFields(draft, changed, redraw, { mostNumbers: kind.mostNumbers, fieldsOfNumber: kind.fieldsOfNumber(draft) }),
+    ...numberFields(draft, changed, redraw, { mostNumbers: kind.mostNumbers(draft), fieldsOfNumber: kind.fieldsOfNumber(draft) }),
     ...kind.ownFields(draft, changed, again, redraw),
     make("div", { class: "tools whole" },
       button({ id: "ask-now", onclick: ask.now }, "Answer now"),

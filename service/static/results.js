@@ -42,7 +42,7 @@ export async function showAnswer({ fields, flows, pads, limits, resistances, rea
   const words = PHYSICS[fields.potential];
   const { units } = fields;
   const plane = planeShown(fields, problem, axis);
-  const marks = marksOf(plane, fields.extremes, words);
+  const marks = marksOf(plane, fields.extremes, limits?.results ?? [], words);
 
   part("nothing-yet").hidden = true;
   part("answer").hidden = false;
@@ -147,6 +147,6 @@ function caption(plane, words, units, marks) {
   if (plane.layers) {
     sentences.push("Layers are not drawn to scale along z, so that thin ones are seen. Firm lines are contacts, dotted ones perfect bonds.");
   } else if (!hasEqualAxes(plane)) sentences.push("The axes are stretched: the plane is too long for equal ones.");
-  for (const mark of marks) sentences.push(`${mark.isHighest ? "\u25b3" : "\u25bd"} ${mark.words}.`);
+  for (const mark of marks) sentences.push(`${mark.sign} ${mark.words}.`);
   return sentences.join(" ");
 }

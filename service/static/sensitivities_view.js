@@ -33,9 +33,10 @@ export function sensitivitiesView(answer) {
     make("p", { class: "hint" }, "How far a result moves when one number grows by a hundredth, or by one unit where a hundredth means nothing, and all else stays."),
     switched("Result", results.map((result) => [result.name, () => view(result)]), "sensitivities-result"),
     ...failed.map(({ name, reason }) => verdict("open", `${name} could not be varied`, reason.message)),
-    behind("Slopes with their errors", table("Change of each result per unit of each number", ["Result and number", "Slope", "Change of slope"], derivatives.map((one) => [
+    behind("Slopes with their errors", table("Change of each result per unit of each number", ["Result and number", "Slope", "Per cent for one per cent", "Change of slope"], derivatives.map((one) => [
       rowHead(one.number, `on ${one.result}, ${pretty(one.unit)}`),
       valueCell(one.derivative, one.error_estimate, one.smooth ? {} : { title: "at a kink: the mean of both sides" }),
+      make("td", {}, one.relative === null ? "\u2013" : brief(Number(one.relative.toPrecision(4)))),
       one.smooth ? valueCell(one.second_derivative, one.second_error_estimate)
         : make("td", {}, one.below === null ? "\u2013" : `${brief(one.below)} below, ${brief(one.above)} above`)]))),
   ];

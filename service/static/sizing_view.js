@@ -2,7 +2,7 @@
 
 import { axis, behind, chart, COLOURS, HELD_BAND, limitLine } from "./charts.js";
 import { make, verdict } from "./elements.js";
-import { bounded, brief, pretty, shown } from "./numbers.js";
+import { bounded, brief, counted, pretty, shown } from "./numbers.js";
 import { switched } from "./switched.js";
 import { differenceOf, headed, heldWord, rowHead, table, valueCell, withUnit } from "./tables.js";
 
@@ -12,13 +12,13 @@ import { differenceOf, headed, heldWord, rowHead, table, valueCell, withUnit } f
  */
 export function curveRequest(request, answer, points) {
   const { low, high, name } = answer.sizing.number;
-  const { spread, low: typedLow, high: typedHigh, count, plus_minus: both, plus, minus, ...reference } = request.number;
+  const { spread, at, shift, scale } = request.number;
   const part = (index) => index / (points - 1);
   const value = spread === "logarithmic" ? (index) => low * (high / low) ** part(index) : (index) => low + (high - low) * part(index);
   const values = Array.from({ length: points }, (_, index) => (index === points - 1 ? high : value(index)));
   const { problem, results, accuracy, target } = request;
   const limits = target ? [{ result: target.result, at_least: target.equals }] : request.limits;
-  return { problem, results, numbers: [{ ...reference, name }], cases: { table: "grid", values: [values] }, limits, accuracy };
+  return { problem, results, numbers: [{ name, at, shift, scale }], cases: { table: "grid", values: [values] }, limits, accuracy };
 }
 
 /**
@@ -34,44 +34,71 @@ export function sizingView(answer, asked, cases) {
   const first = sizing.intervals.flatMap(({ low, high }) => [low, high]).find(({ result }) => result)?.result ?? sizing.nearest?.result;
   pictures.sort(([a], [b]) => Number(b === first) - Number(a === first));
   return [
-    verdictOf(sizing, asked),
+    verdictOf(answer, asked),
+    sizing.complete ? null : verdict("open", "Stopped early", "As many cases were computed as were allowed; edges are told as far as they are known."),
     cases ? switched("Result", pictures, "sizing-shown") : make("p", { class: "hint" }, cases === null ? "There is no picture: its cases would take too long." : "The picture follows."),
-    isTarget ? edgesTable(sizing.solutions, number, "Where the result has its value") : intervalsTable(sizing, asked),
-    ...sizing.touches.map((touch) => verdict("open", "Touched", `Between ${brief(touch.low)} and ${withUnit(brief(touch.high), number.unit)} the limit on ${touch.result ?? "the result"} is met to within the errors, so it is left open whether it is passed.`)),
+    isTarget ? edgesTable(sizing.solutions, number, "Where the result has its value") : intervalsTable(sizing),
+    ...sizing.touches.map((touch) => verdict("open", "Touched", `Between ${brief(touch.low)} and ${withUnit(brief(touch.high), number.unit)} ${isTarget ? "the value" : `the limit ${calledBy(touch)}`} is met to within the errors, so it is left open whether it is passed.`)),
     ...sizing.invalid.map((part) => verdict("open", `No result from ${brief(part.low)} to ${withUnit(brief(part.high), number.unit)}`, part.message)),
     sizing.sizes ? sizesTable(sizing.sizes, number, answer) : null,
+    sizing.tolerances ? tolerancesTable(sizing.tolerances) : null,
+    make("p", { class: "hint" }, `${counted(sizing.case_count)} cases.`),
     cases ? behind("Values behind the picture", curveTable(cases)) : null,
   ].filter(Boolean);
 }
 
-function verdictOf({ holds, number, intervals, nearest, solutions }, asked) {
+/** What a limit is called. */
+const calledBy = ({ name, result }) => name ?? result;
+
+function verdictOf(answer, asked) {
+  const { holds, number, intervals, nearest, solutions, tolerances } = answer.sizing;
   const at = (value) => withUnit(brief(value), number.unit);
   if (holds === null) {
     if (solutions.length) return verdict("good", solutions.length === 1 ? "One value will do" : `${solutions.length} values will do`, `${number.name} = ${solutions.map(({ value }) => at(value)).join(", ")}.`);
-    return verdict("bad", "Not reached", `In the range the result never has this value${nearest ? `; it comes nearest at ${number.name} = ${at(nearest.value)}` : ""}.`);
+    const apart = nearest && nearest.margin !== null ? `, ${marginWords(nearest, answer)} ${nearest.margin > 0 ? "above" : "below"} it` : "";
+    return verdict("bad", "Not reached", `In the range ${asked.target.result} never has this value${nearest ? `; it comes nearest at ${number.name} = ${at(nearest.value)}${apart}` : ""}.`);
   }
-  if (holds === "everywhere") return verdict("good", "All limits hold in the whole range", `From ${at(number.low)} to ${at(number.high)}.`);
+  const off = tolerances ? ", with all tolerances" : "";
+  if (holds === "everywhere") return verdict("good", `All limits hold in the whole range${off}`, `From ${at(number.low)} to ${at(number.high)}.`);
   if (holds === "somewhere") {
     const parts = intervals.map(({ low, high }) => `from ${at(Number(low.value.toPrecision(6)))} to ${at(Number(high.value.toPrecision(6)))}`);
-    return verdict("good", parts.length === 1 ? "All limits hold in one interval" : `All limits hold in ${parts.length} intervals`, `${number.name} ${parts.join(", and ")}.`);
+    return verdict("good", parts.length === 1 ? `All limits hold in one interval${off}` : `All limits hold in ${parts.length} intervals${off}`, `${number.name} ${parts.join(", and ")}.`);
   }
   if (holds === "undecided") return verdict("open", "Undecided", "Nowhere for certain, but perhaps where a limit is touched.");
-  const missed = nearest ? ` The worst limit${nearest.limit === null ? "" : `, ${asked.limits[nearest.limit].name ?? nearest.result},`} is missed least at ${number.name} = ${at(nearest.value)}, by ${brief(Math.abs(nearest.margin))}.` : "";
-  return verdict("bad", "Nowhere in the range do all limits hold", missed);
+  return verdict("bad", `Nowhere in the range do all limits hold${off}`, nearest ? missedWords(nearest, answer) : "");
 }
 
-const EDGES = { limit: "a limit", target: "the value", range: "end of the range", invalid: "no result beyond" };
+const marginWords = ({ margin, error_bound: bound, result }, answer) => withUnit(shown(Math.abs(margin), Math.max(bound ?? 0, Math.abs(margin) * 1e-6)), unitOfMargin(result, answer));
 
-function edgeCell(edge, asked) {
-  const why = edge.kind === "limit" && edge.limit !== null ? asked.limits?.[edge.limit]?.name ?? edge.result : EDGES[edge.kind];
+/** The limits that are missed where they are missed least, and which of them hold at all. */
+function missedWords({ value, missed, corner }, answer) {
+  const { number } = answer.sizing;
+  const each = missed.map((limit) => `${calledBy(limit)} by ${limit.margin < 0 ? marginWords(limit, answer) : "less than its error"}`);
+  const never = missed.filter(({ holds_elsewhere: elsewhere }) => !elsewhere).map(calledBy);
+  const why = never.length ? `${never.join(" and ")} ${never.length === 1 ? "holds" : "hold"} nowhere in the range.`
+    : missed.length > 1 ? "Each of them holds elsewhere in the range, but not all at once." : "It holds elsewhere in the range, but not all others do there.";
+  return `They are missed least at ${number.name} = ${withUnit(brief(value), number.unit)}: ${each.join(", ")}${corner ? `, the worst with ${cornerWords(corner)}` : ""}. ${why}`;
+}
+
+/** A case of a tolerance zone. */
+const cornerWords = (corner) => corner.map(({ number, unit, value }) => `${number} = ${withUnit(brief(value), unit)}`).join(", ");
+
+const tolerancesTable = (zones) => table("What may be off: limits hold at the corners of these tolerances and at the ends of each", ["Number", "As it stands", "Up", "Down"], zones.map(({ number, unit, nominal, plus, minus }) => [
+  rowHead(headed(number, unit)), make("td", {}, nominal === null ? "is looked for" : brief(nominal)), make("td", {}, brief(plus)), make("td", {}, brief(minus))]), "wraps");
+
+const EDGES = { target: "the value", range: "end of the range", invalid: "no result beyond" };
+
+const underCell = (corner) => (corner ? make("span", { class: "known" }, `worst with ${cornerWords(corner)}`) : null);
+
+function edgeCell(edge) {
   return make("td", {}, shown(edge.value, edge.error_bound), make("span", { class: "known" }, edge.error_bound > 0 ? `\u00b1 ${bounded(edge.error_bound)}` : "exact"),
-    make("span", { class: "known" }, why));
+    make("span", { class: "known" }, edge.kind === "limit" ? calledBy(edge) : EDGES[edge.kind]), underCell(edge.corner));
 }
 
-function intervalsTable({ intervals, number }, asked) {
+function intervalsTable({ intervals, number }) {
   if (!intervals.length) return null;
   return table("Where all limits hold, and what ends it", ["", headed("From", number.unit), headed("To", number.unit)],
-    intervals.map(({ low, high }, index) => [rowHead(intervals.length > 1 ? `interval ${index + 1}` : "interval"), edgeCell(low, asked), edgeCell(high, asked)]), "wraps");
+    intervals.map(({ low, high }, index) => [rowHead(intervals.length > 1 ? `interval ${index + 1}` : "interval"), edgeCell(low), edgeCell(high)]), "wraps");
 }
 
 const edgesTable = (edges, number, caption) => (edges.length ? table(caption, ["Value", headed(number.name, number.unit), "Slope there"],
@@ -80,14 +107,13 @@ const edgesTable = (edges, number, caption) => (edges.length ? table(caption, ["
 function sizesTable({ each, least, greatest }, number, answer) {
   const best = least === null ? "None of the sizes holds all limits for certain." : `The least that holds is ${withUnit(brief(least), number.unit)}, the greatest ${withUnit(brief(greatest), number.unit)}.`;
   return make("div", {}, table("Sizes that can be had", [headed("Size", number.unit), "Worst margin", "Holds"], each.map((size) => [
-    rowHead(brief(size.value), size.message ?? size.result), size.margin === null ? make("td", {}, "\u2013") : marginCell(size, answer), make("td", {}, heldWord(size.held)),
+    rowHead(brief(size.value), size.message ?? calledBy(size)), size.margin === null ? make("td", {}, "\u2013") : marginCell(size, answer), make("td", {}, heldWord(size.held)),
   ]), "wraps"), make("p", { class: "hint" }, best));
 }
 
-function marginCell(size, { results, units }) {
-  const unit = differenceOf(results.find(({ name }) => name === size.result)?.unit ?? "1", units);
-  return make("td", {}, withUnit(shown(size.margin, size.error_bound ?? 0), unit));
-}
+const unitOfMargin = (name, { results, units }) => differenceOf(results.find((result) => result.name === name)?.unit ?? "1", units);
+
+const marginCell = (size, answer) => make("td", {}, withUnit(shown(size.margin, size.error_bound ?? 0), unitOfMargin(size.result, answer)), underCell(size.corner));
 
 /** Limits of a result as levels with their words. */
 const levelsOf = (limits, name, isTarget) => limits.filter(({ result }) => result === name).flatMap(({ name: called, at_most: most, at_least: least }) => [
@@ -110,7 +136,7 @@ function picture(answer, asked, { numbers, columns, limits }, { name, unit }) {
   const edges = [...sizing.intervals.flatMap(({ low, high }) => [low, high]), ...sizing.solutions].filter(({ kind }) => kind === "limit" || kind === "target");
   return chart({
     label: `Curve of ${name} over ${number.name}, with its limits; where all limits hold is shaded. The numbers are in the tables that follow.`,
-    caption: `${sizing.intervals.length ? "Shaded: all limits hold. " : ""}Dashed: the limit. Thin: where an edge lies. The ring is the number as it stands.`,
+    caption: `${sizing.intervals.length ? `Shaded: all limits hold${sizing.tolerances ? " with all tolerances; the curve is without them" : ""}. ` : ""}Dashed: the limit. Thin: where an edge lies. The ring is the number as it stands.`,
     height: 340,
     data: [
       { type: "scatter", mode: "lines", x, y, connectgaps: false, line: { color: COLOURS.main, width: 2.2 }, hovertemplate: `%{x:.6~g} ${pretty(number.unit)}<br><b>%{y:.6~g} ${pretty(unit)}</b><extra></extra>` },

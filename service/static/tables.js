@@ -1,7 +1,8 @@
 /** Tables of answers to questions: numbers with their bounds under them, and signs that do without colour. */
 
 import { make, scrolled } from "./elements.js";
-import { bounded, pretty, shown } from "./numbers.js";
+import { bounded, greatest, placed, pretty, shown } from "./numbers.js";
+import { AXES } from "./words.js";
 
 /** A cell with a value over its bound. @param {number|null} value @param {number|null} [bound] null where none is known */
 export function valueCell(value, bound = null, attributes = {}) {
@@ -44,4 +45,11 @@ export function heldWord(held) {
 export function limitWords({ at_most: most, at_least: least }, unit) {
   const sides = [most === undefined ? null : `at most ${withUnit(shown(most), unit)}`, least === undefined ? null : `at least ${withUnit(shown(least), unit)}`];
   return sides.filter(Boolean).join(" and ");
+}
+
+/** Where the extreme of a result was found, in words. @param {{at?: (number|null)[]}} result @param {any} units of its answer */
+export function placeWords({ at }, units) {
+  if (!at) return null;
+  const scale = greatest(at);
+  return at.map((length, index) => (length === null ? `infinitely far along ${AXES[index]}` : `${AXES[index]} = ${placed(length, scale)}`)).join(", ").concat(" ", pretty(units.length));
 }

@@ -28,7 +28,8 @@ export function ownOf({ numbers, samples, correlations = [], variance_indices: i
   };
 }
 
-function zoneOf({ zone = "even", plusMinus = "", plus = "", minus = "", relative = "" }) {
+/** How far a number may be off, as a request wants it. */
+export function zoneOf({ zone = "even", plusMinus = "", plus = "", minus = "", relative = "" }) {
   if (zone === "relative") return { relative: quantity(relative) };
   if (zone === "sides") return { plus: quantity(plus), minus: quantity(minus) };
   return zone === "even" ? { plus_minus: quantity(plusMinus) } : {};

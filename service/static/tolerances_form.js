@@ -5,7 +5,7 @@ import { numberText } from "./number_form.js";
 import { WITH_DEVIATION } from "./tolerances_draft.js";
 import { idOf } from "./typed.js";
 
-export const mostNumbers = 100;
+export const mostNumbers = () => 100;
 
 export const fieldsOfNumber = () => (number, id, spoken, changed, again) => {
   const { texts } = number;

@@ -10,9 +10,11 @@ const percent = (part) => `${Number((100 * part).toPrecision(part > 0.99 ? 5 : 3
 
 /** @param {any} answer of POST /v1/tolerances */
 export function tolerancesView(answer) {
-  const { stack_ups: stacks, limits, propagation, numbers } = answer;
+  const { stack_ups: stacks, limits, propagation, numbers, failures } = answer;
   const views = stacks.map((stack, index) => [stack.result, () => resultView(answer, stack, index)]);
   return [
+    limits.length ? heldVerdict(answer) : null,
+    ...failures.map(({ count, message }) => verdict("open", `${counted(count)} ${count === 1 ? "case" : "cases"} within the zones without a result`, message)),
     limits.length ? limitsTable(answer) : null,
     propagation?.all_limits && limits.length > 1 ? chanceVerdict("All limits together", propagation.all_limits) : null,
     ...numbers.filter(({ reason }) => reason).map(({ name, reason }) => verdict("open", `${name} could not be varied`, reason.message)),
@@ -21,6 +23,13 @@ export function tolerancesView(answer) {
     propagation ? make("p", { class: "hint" }, `${counted(propagation.case_count)} sampled cases. Intervals at ${percent(propagation.confidence)}: ${propagation.intervals}`) : null,
     numbersTable(numbers),
   ].filter(Boolean);
+}
+
+function heldVerdict({ limits, all_held: held }) {
+  const missed = limits.filter((limit) => limit.held === "no").length;
+  if (held === "yes") return verdict("good", "All limits hold in the worst case", "Every case that was computed within the tolerances surely holds them.");
+  if (held === "no") return verdict("bad", missed === 1 ? "One limit does not hold in the worst case" : `${missed} limits do not hold in the worst case`, "That is certain: a case within the tolerances was computed that does not hold it.");
+  return verdict("open", "Undecided", "In the worst case a margin is smaller than its error, or a case within the tolerances has no result.");
 }
 
 function limitsTable({ limits, stack_ups: stacks, units }) {
@@ -58,6 +67,7 @@ function resultView(answer, stack, index) {
     spread ? distribution(spread, limits, answer.propagation.case_count) : null,
     additions(stack, answer.units),
     indices ? indexBars(indices) : null,
+    worstTable(stack, answer.numbers),
     behind("Stack-up in numbers", stackTable(stack, answer.units), ...(spread ? [spreadTable(spread)] : [])),
   ].filter(Boolean);
 }
@@ -146,24 +156,37 @@ function distribution(spread, limits, count) {
   });
 }
 
-/** What each number adds to either side, the strongest on top. */
-function additions({ result, contributions, unit }, units) {
+/** The cases in which a result is lowest and highest, number by number. */
+const worstTable = ({ result, unit, lowest, highest }, numbers) => table(`The worst of ${result} that was computed, and the numbers there`, ["", "Lowest", "Highest"], [
+  [rowHead(headed(result, unit)), valueCell(lowest.value, lowest.error_bound), valueCell(highest.value, highest.error_bound)],
+  ...numbers.map(({ name, unit: own }) => [rowHead(headed(name, own)), ...[lowest, highest].map(({ numbers: there }) => make("td", {}, valueOf(there, name)))]),
+], "wraps");
+
+function valueOf(there, name) {
+  const found = there.find((one) => one.name === name);
+  return found ? brief(found.value) : "\u2013";
+}
+
+/** How far the ends of each number's own zone lower and raise the result, as computed; the strongest on top. */
+function additions({ result, contributions, unit, nominal }, units) {
   const step = differenceOf(unit, units);
-  const known = contributions.filter(({ low }) => low !== null).slice(0, 20).reverse();
+  const known = contributions.map(({ number, at_low_end: low, at_high_end: high }) => ({ number, changes: [low, high].filter((value) => value !== null).map((value) => value - nominal) }))
+    .filter(({ changes }) => changes.length).slice(0, 20).reverse();
   if (!known.length) return null;
-  const side = (key, sign, colour) => ({
-    type: "bar", orientation: "h", y: known.map(({ number }) => inLines(number)), x: known.map((one) => sign * one[key]), name: key, marker: { color: colour, line: { color: COLOURS.main, width: 1 } },
+  const side = (name, most, colour) => ({
+    type: "bar", orientation: "h", y: known.map(({ number }) => inLines(number)), x: known.map(({ changes }) => most(0, ...changes)), name, marker: { color: colour, line: { color: COLOURS.main, width: 1 } },
     hovertemplate: `%{x:.5~g} ${pretty(step)}<extra></extra>`,
   });
   return chart({
-    label: `Bars: by how much the tolerance of each number lowers and raises ${result}. The numbers are in the table that follows.`,
-    caption: "By how much each tolerance lowers (pale) and raises (filled) the result; the strongest on top.",
-    height: 90 + 46 * known.length, data: [side("low", -1, COLOURS.tint), side("high", 1, COLOURS.main)],
+    label: `Bars: by how much the tolerance of each number alone lowers and raises ${result}. The numbers are in the table that follows.`,
+    caption: "By how much the ends of each tolerance alone lower (pale) and raise (filled) the result, as computed; the strongest on top.",
+    height: 90 + 46 * known.length, data: [side("low", Math.min, COLOURS.tint), side("high", Math.max, COLOURS.main)],
     layout: { barmode: "overlay", bargap: 0.4, xaxis: axis(headed("change", step), { zeroline: true, zerolinecolor: COLOURS.limit }), yaxis: axis("", { ticks: "", showline: false }) },
   });
 }
 
 function indexBars({ result, numbers }) {
+  if (numbers.every(({ total }) => total.value === null)) return make("p", { class: "hint" }, `${result} does not vary beyond its error bounds, so there are no shares of its spread.`);
   const ranked = [...numbers].sort((a, b) => (a.total.value ?? 0) - (b.total.value ?? 0));
   const side = (key, name, colour) => ({
     type: "bar", orientation: "h", name, y: ranked.map(({ number }) => inLines(number)), x: ranked.map((one) => one[key].value), marker: { color: colour, line: { color: COLOURS.second, width: 1 } },
@@ -181,20 +204,27 @@ function indexBars({ result, numbers }) {
   });
 }
 
-function stackTable({ result, unit, nominal, contributions, first_order_low: low, first_order_high: high, middle, root_sum_square: rss, standard_deviation: deviation, error_estimate: error, lowest, highest }, units) {
+function stackTable({ result, unit, nominal, contributions, first_order_low: low, first_order_high: high, middle, root_sum_square: rss, standard_deviation: deviation, error_estimate: error, bend, lowest, highest }, units) {
   const step = differenceOf(unit, units);
   const number = (value, bound = error) => make("td", {}, value === null ? "\u2013" : shown(value, Math.max(bound ?? 0, Math.abs(value) * 1e-6)));
   const share = (part) => make("td", {}, part === null ? "\u2013" : percent(part));
+  const about = (value) => withUnit(brief(Number(value.toPrecision(5))), step);
+  const remarks = [
+    deviation === null ? "" : `Standard deviation to first order: ${about(deviation)}.`,
+    bend === null ? "" : bend > 0 ? `Within the tolerances the result departs from first order by about ${about(bend)}.` : "Within the tolerances the result follows the numbers in proportion.",
+  ].filter(Boolean);
   return make("div", {},
-    table(`What adds up in ${result}, ${pretty(step)}`, ["Number", "Slope", "Lowers by", "Raises by", "Share of squares", "Share of variance"], contributions.map((one) => [
-      rowHead(one.number, pretty(one.unit)), valueCell(one.derivative, one.error_estimate), number(one.low), number(one.high), share(one.square_share), share(one.variance_share)]), "wraps"),
+    table(`What each number does to ${result}, with all others as they stand, ${pretty(unit)}`, ["Number", "At its lower end", "At its upper end", "Departs from first order"], contributions.map((one) => [
+      rowHead(one.number), number(one.at_low_end, 0), number(one.at_high_end, 0), number(one.bend, 0)]), "wraps"),
+    table(`What adds up in ${result} to first order, ${pretty(step)}`, ["Number", "Slope", "Lowers by", "Raises by", "Share of squares", "Share of variance"], contributions.map((one) => [
+      rowHead(one.number, one.smooth ? pretty(one.unit) : `${pretty(one.unit)}; at a kink`), valueCell(one.derivative, one.error_estimate), number(one.low), number(one.high), share(one.square_share), share(one.variance_share)]), "wraps"),
     table(`${result}, ${pretty(unit)}`, ["As added up", "Lowest", "Highest"], [
       [rowHead("as it stands"), number(nominal), number(nominal)],
       [rowHead("worst case, computed"), valueCell(lowest.value, lowest.error_bound), valueCell(highest.value, highest.error_bound)],
       [rowHead("added up to first order"), number(low), number(high)],
       [rowHead("root sum of squares", `about the middle, ${middle === null ? "\u2013" : brief(Number(middle.toPrecision(7)))}`), number(middle === null ? null : middle - rss), number(middle === null ? null : middle + rss)],
     ], "wraps"),
-    deviation === null ? null : make("p", { class: "hint" }, `Standard deviation to first order: ${withUnit(brief(Number(deviation.toPrecision(5))), step)}.`));
+    remarks.length ? make("p", { class: "hint" }, remarks.join(" ")) : null);
 }
 
 const spreadTable = ({ result, unit, mean, standard_deviation: deviation, lowest, highest, quantiles }) => table(
