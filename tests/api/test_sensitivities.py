@@ -378,7 +378,7 @@ async def test_cost_is_that_of_the_accuracy_cases_are_asked_for(settings: Settin
     results: list[Json] = [{"name": "cool side", "result": "potential", "at": [0.02, 0.03, "high"]}]
     question: Json = {"problem": block_with_pad(), "results": results, "numbers": [LOAD]}
     costs = []
-    async with open_client(settings.model_copy(update={"cost_multiplications": 1e8})) as client:
+    async with open_client(settings.model_copy(update={"cases_multiplications": 1e8})) as client:
         for more in ({}, {"accuracy": {"relative": 1e-12}}, {"accuracy": {"relative": 1e-14}}):
             document = check_problem_document(await client.post("/v1/sensitivities", json=question | more), 422)
             costs.append(document["estimate"])
