@@ -20,7 +20,7 @@ from service.analysis.calibrated import Calibration, Estimate, MapEstimate, Riva
 from service.analysis.evaluations import Evaluate, FloatArray
 from service.analysis.fitting import Found
 from service.analysis.readings import Readings
-from service.analysis.search import MOST_ROUNDS, Question, Solved, solve
+from service.analysis.search import MOST_ROUNDS, SCREENED, Question, Solved, solve
 from service.analysis.smoothing import RECTANGULAR, WIDEST, SmoothMap, resolution
 from service.analysis.told_apart import Combination, free_members, held_best, told_together
 from service.analysis.unknowns import Unknown
@@ -33,6 +33,9 @@ COVERED = 0.95
 
 # What differences err by may not make up more than this part of the information along a direction, as a singular value.
 LEAST_TOLD = 3.0
+
+# Singular values below this part of the largest are rounding whatever differences err by.
+ROUNDING = 1e-14
 
 # A result follows a direction of which nothing is known if it does by more than this part of all it follows.
 FOLLOWS = 1e-4
@@ -69,7 +72,8 @@ def most_cases(unknowns: int, smooth: SmoothMap | None = None, *, starts: int = 
     straight = 4 + 2 * unknowns + entries + look
     if smooth is not None and smooth.affine and not unknowns:
         return straight
-    return straight + searches * look + 2 * unknowns
+    screened = SCREENED * (starts - 1) if smooth is None else 0
+    return straight + screened + searches * look + 2 * unknowns
 
 
 def calibrate(
@@ -113,7 +117,7 @@ class _Spread:
             self.regular = axes * np.sqrt(variances / (1 + variances))
         else:
             left_basis, sizes, basis = np.linalg.svd(slopes)
-            least = LEAST_TOLD * solved.weighing.doubts(solved.found.look)
+            least = max(LEAST_TOLD * solved.weighing.doubts(solved.found.look), ROUNDING * sizes.max(initial=0.0))
             # Fewer rows than unknowns leave directions open whatever they say.
             is_told = np.zeros(size, dtype=bool)
             is_told[: len(sizes)] = sizes > least

@@ -14,8 +14,9 @@ from service.analysis.unknowns import Coordinates
 BoolArray = NDArray[np.bool_]
 
 # Relative step of a difference. Central ones err by its square over 6, 2e-7 of a derivative, and the usual error of a
-# value, 1e-9 of the span, weighs 1e-6 of the change of a result that follows the number in proportion.
-STEP = 1e-3
+# value, 1e-9 of the span, weighs 1e-6 of the change of a result that follows the number in proportion. Both weigh about
+# the same with the third root of the error of values, so where that is larger steps are as well.
+STEP, MOST_STEP = 1e-3, 0.03
 
 # Departure from a straight line over the whole range that does not count, in parts of the change.
 STRAIGHT = 1e-7
@@ -39,7 +40,8 @@ class Looker:
     """Takes looks, and counts the cases they cost.
 
     evaluate: takes the numbers of `coordinates`. needed: columns of the results that have to be finite.
-    affine: entries of these results' map of which they are affine functions: one difference is exact for them.
+    affine_entries: these results are affine functions of the entries of a map: one difference is exact for them.
+    step: of differences, relative.
     """
 
     def __init__(self, evaluate: Evaluate, coordinates: Coordinates, needed: NDArray[np.intp]) -> None:
@@ -47,6 +49,7 @@ class Looker:
         self.coordinates = coordinates
         self.needed = needed
         self.affine_entries = False
+        self.step = STEP
         self.cases = 0
         self.failure: Failure | None = None
 
@@ -77,7 +80,7 @@ class Looker:
                 slopes = (weights @ mine).T
                 # A value that has no finite bound says nothing about its own error.
                 rounding = (np.abs(weights) @ np.where(np.isfinite(off), off, 0.0)).T
-                looks.append(Look(place, mine[0], off[0], slopes, rounding + STEP**2 * np.abs(slopes)))
+                looks.append(Look(place, mine[0], off[0], slopes, rounding + self.step**2 * np.abs(slopes)))
         return looks
 
     def _offsets(self, place: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -87,7 +90,7 @@ class Looker:
         """
         coordinates = self.coordinates
         count, size = coordinates.count, coordinates.size
-        step = coordinates.steps(place, STEP)
+        step = coordinates.steps(place, self.step)
         pairs = size if not self.affine_entries else count
         near, far = -step, step.copy()
         # At an end of a range both differences go inward: beyond it a number may have no meaning.
@@ -116,11 +119,19 @@ class Straight:
 
     look: at the first place, with slopes that are chords over the whole range. affine: which results are affine
     functions of all coordinates. affine_entries: the needed results are affine functions of the entries of a map.
+    errors, changes: of the results over the whole ranges.
     """
 
     look: Look
     affine: BoolArray
     affine_entries: bool
+    errors: FloatArray
+    changes: FloatArray
+
+    def step(self, columns: NDArray[np.intp], uncertainties: FloatArray) -> float:
+        """What step differences take for readings of these results, shape (n_readings,), with their uncertainties."""
+        error, change = (float(np.linalg.norm(sizes[columns] / uncertainties)) for sizes in (self.errors, self.changes))
+        return float(np.clip(np.cbrt(error / change), STEP, MOST_STEP)) if change > 0 else STEP
 
 
 def look_for_straight(looker: Looker, place: FloatArray, slack: FloatArray | None, seed: int) -> Straight | None:
@@ -151,11 +162,13 @@ def look_for_straight(looker: Looker, place: FloatArray, slack: FloatArray | Non
     seen = np.vstack((at[0 : 2 * count : 2], values[-3:]))
     departures = np.abs(seen - (base + (tests - place) @ slopes.T))
     # A value that has no finite bound is judged by the slack alone.
-    rounding = 4 * np.where(np.isfinite(bounds), bounds, 0.0).max(axis=0)
-    allowed = STRAIGHT * np.ptp(values, axis=0)
+    errors = np.where(np.isfinite(bounds), bounds, 0.0).max(axis=0)
+    rounding, changes = 4 * errors, np.ptp(values, axis=0)
+    allowed = STRAIGHT * changes
     if slack is not None:
         allowed[looker.needed] = slack
     straight = (departures <= allowed + rounding).all(axis=0)
     map_straight = (departures[-1] <= allowed + rounding)[looker.needed].all()
     doubts = np.broadcast_to(rounding[:, None], slopes.shape)
-    return Straight(Look(place, base, bounds[0], slopes, doubts), straight, bool(map_straight) and size > count)
+    look = Look(place, base, bounds[0], slopes, doubts)
+    return Straight(look, straight, bool(map_straight) and size > count, errors, changes)

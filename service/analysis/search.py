@@ -19,6 +19,12 @@ from service.analysis.unknowns import Coordinates, Unknown
 # part of the least standard uncertainty it is read with.
 STRAIGHT = 1e-3
 
+# Places of the ranges that are looked at for each start: searches begin at those that leave least over.
+SCREENED = 4
+
+# Two of them are beside each other within so many of the distances they have from each other on the average.
+BESIDE = 1.5
+
 # Rounds in which a map and what it is averaged over settle, and the part of a standard uncertainty they settle to.
 MOST_ROUNDS, ROUND_SETTLED = 10, 1e-3
 
@@ -93,6 +99,9 @@ def solve(question: Question) -> Solved:
         search = _Search(question, Coordinates(question.unknowns, *_entries(question.smooth)))
         search.looker.cases, search.looker.failure = plain.looker.cases, plain.looker.failure
     is_affine = straight is not None and straight.affine_entries
+    if straight is not None:
+        readings = question.readings
+        search.looker.step = straight.step(readings.columns, readings.standard_uncertainties)
     search.looker.affine_entries = is_affine or (question.smooth is not None and question.smooth.affine)
     return search.curved()
 
@@ -157,12 +166,34 @@ class _Search:
         return Solved(self.looker, self._weighing, self._rows, best, tuple(found), False, smoothed)
 
     def _starts(self) -> list[FloatArray]:
-        count = self.looker.coordinates.count
-        starts = [self.start]
-        if count and self._question.starts > 1:
-            cube = qmc.LatinHypercube(count, rng=np.random.default_rng(self._question.seed))
-            starts += [np.concatenate((place, self.start[count:])) for place in cube.random(self._question.starts - 1)]
-        return starts
+        """The given place, and those of many spread over the ranges that promise most."""
+        count, wanted = self.looker.coordinates.count, self._question.starts - 1
+        if not count or not wanted:
+            return [self.start]
+        cube = qmc.LatinHypercube(count, rng=np.random.default_rng(self._question.seed))
+        if self._smoothing is not None:
+            # What a place leaves over says little before a map has made up for it.
+            return [self.start, *(np.concatenate((place, self.start[count:])) for place in cube.random(wanted))]
+        places = cube.random(SCREENED * wanted)
+        values, bounds = self.looker.values(places)
+        slopes = np.zeros((values.shape[1], count))
+        squares = np.array(
+            [
+                np.inf if np.isnan(seen[self.looker.needed]).any() else float(left @ left)
+                for place, seen, bound in zip(places, values, bounds, strict=True)
+                for left in [self._weighing.rows(Look(place, seen, bound, slopes, slopes))[0]]
+            ]
+        )
+        # A place with a better one beside it leads to where that does (multi level single linkage: Rinnooy Kan and
+        # Timmer, Mathematical Programming 39 (1987) 57).
+        beside = BESIDE * len(places) ** (-1 / count)
+        places = places[np.argsort(squares, kind="stable")]
+        lowest: list[FloatArray] = []
+        others: list[FloatArray] = []
+        for number, place in enumerate(places):
+            is_lowest = np.all(np.abs(places[:number] - place).max(axis=1) > beside)
+            (lowest if is_lowest else others).append(place)
+        return [self.start, *(lowest + others)[:wanted]]
 
     def _settle(self, found: Found) -> tuple[Found, Smoothed]:
         """The mean over departures of the map in place of the best map of one departure."""

@@ -141,8 +141,9 @@ class CalibrationQuestion(AnalysisQuestion):
         ge=1,
         le=MOST_STARTS,
         description="How many places of the ranges the search begins at, so that other solutions are noticed; the "
-        "first is the request as it stands. 5 if left out, 2 beside a map. It does not matter where results follow "
-        "all unknowns in proportion.",
+        "first is the request as it stands, the others are the most promising of four times as many, which still may "
+        "miss a solution. 5 if left out, 2 beside a map. It does not matter where results follow all unknowns in "
+        "proportion.",
         examples=[5],
     )
     seed: int = Field(0, ge=0, le=2**31 - 1, description="Which places these are.", examples=[0])

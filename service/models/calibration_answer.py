@@ -134,7 +134,8 @@ class MapFound(Model):
         examples=[[[21000, 30500], [18000, 22100]]],
     )
     standard_uncertainties: list[list[float]] = Field(
-        description="Their standard uncertainties, given that the map is smooth.",
+        description="Their standard uncertainties, given that the map is smooth: beside a step, which is smoothed as "
+        "all else, entries are further off, so a load with an edge is better given as patches with unknown inflows.",
         examples=[[[900, 700], [900, 2100]]],
     )
     low: list[list[float]] = Field(

@@ -464,6 +464,37 @@ def test_a_worse_minimum_is_left_for_the_best() -> None:
     assert found.rivals == ()
 
 
+def test_an_alias_that_meets_readings_as_well_is_found_from_nearly_all_starts() -> None:
+    # A wave read at even times is the same with 2 pi / step more: nothing tells 4 from 18.66.
+    times = np.linspace(0, 3, 8)
+    alias = 4 + 2 * np.pi / times[1]
+    told = 0
+    for seed in range(20):
+        noise = 0.1 * np.random.default_rng(seed).standard_normal(8)
+        found = calibrate(Counted(lambda a: np.sin(a[0] * times)), [Unknown("a", 0, 20, 1)],
+                          readings_of(np.sin(4 * times) + noise, 0.1), seed=seed)  # fmt: skip
+        values = [found.estimates[0].value, *(rival.numbers[0] for rival in found.rivals)]
+        told += all(np.abs(np.array(values) - true).min() < 0.3 for true in (4.0, alias))
+    assert told >= 16
+
+
+@pytest.mark.parametrize("bound", [1e-9, 1e-5, 1e-4])
+def test_values_of_eased_accuracy_tell_what_exact_ones_do(bound: float) -> None:
+    times = np.linspace(0, 1, 10)
+    read = np.exp(-2 * times) + 0.05 * np.random.default_rng(0).standard_normal(10)
+
+    def evaluate(cases: FloatArray, *, accuracy: float | None = None) -> Evaluations:
+        values = np.array([a * np.exp(-b * times) for a, b in cases])
+        return Evaluations(values + bound * np.cos(1e9 * values), np.full(values.shape, bound), {})
+
+    unknowns = [Unknown("a", 0.01, 10, 3), Unknown("b", 0.01, 10, 5)]
+    found = calibrate(evaluate, unknowns, readings_of(read, 0.05))
+    spreads = [estimate.standard_uncertainty for estimate in found.estimates]
+    assert spreads == pytest.approx([0.03962, 0.1370], rel=5e-3)
+    assert found.degrees_of_freedom == 8
+    assert found.together == ()
+
+
 def test_cases_that_fail_are_gone_around() -> None:
     def evaluate(cases: FloatArray, *, accuracy: float | None = None) -> Evaluations:
         values = np.array([[np.exp(p[0]), p[0] ** 2] if p[0] > 0.3 else [np.nan, np.nan] for p in cases])
