@@ -6,15 +6,18 @@ evenly. All intervals are approximate; how often they hold is tested for results
 
 from __future__ import annotations
 
+from functools import cache
+
 import numpy as np
-from scipy import stats
+from numpy.typing import NDArray
+from scipy import special, stats
 
 from service.analysis.evaluations import FloatArray
 
 # Parts of a skewness that are looked at, since the ends do not move one way with it.
 PARTS = np.linspace(1 / 16, 1, 16)
 
-# How many times the skewness that samples show is heeded: they seldom show the rare cases that make it.
+# How many times the skewness that cases show is heeded: they seldom show the rare ones that make it.
 SEEN = 2.0
 
 # A smaller skewness moves no end.
@@ -24,6 +27,7 @@ STRAIGHT = 1e-6
 RANK_ROUNDING = 1e-9
 
 
+@cache
 def student(n_pieces: int, confidence: float) -> float:
     """Student's factor of the standard error of a mean of pieces."""
     return float(stats.t.ppf((1 + confidence) / 2, n_pieces - 1))
@@ -39,15 +43,15 @@ def of_mean(pieces: FloatArray, cases: FloatArray, confidence: float) -> tuple[F
     """Low and high end for the mean of pieces, shape (n_pieces, n_results).
 
     The wider of Student's interval and of that of Hall's monotone transformation (J. R. Statist. Soc. B 54, 1992),
-    which heeds that the mean of a few long-tailed values is skewed: by twice the skewness of the pieces or of the
-    cases, shape (n_cases, n_results), or by any part of it. Infinite ends of fewer than two pieces.
+    which heeds that the mean of a few long-tailed values is skewed: by the skewness of the pieces or twice that of the
+    cases, shape (n_cases, n_results), or by any part of these. Infinite ends of fewer than two pieces.
     """
     if len(pieces) < 2:
         unknown = np.full(pieces.shape[1], np.inf)
         return -unknown, unknown
     factor = student(len(pieces), confidence)
     below = above = np.full(pieces.shape[1], factor)
-    for skewness in (SEEN * _skewness_of_mean(pieces), SEEN * _skewness_of_mean(cases)):
+    for skewness in (_skewness_of_mean(pieces), SEEN * _skewness_of_mean(cases)):
         for part in PARTS:
             below = np.maximum(below, _straightened(factor, part * skewness))
             above = np.maximum(above, -_straightened(-factor, part * skewness))
@@ -73,6 +77,18 @@ def _straightened(factor: float, skewness: FloatArray) -> FloatArray:
     is_straight = np.abs(skewness) < STRAIGHT
     bent = np.where(is_straight, 1.0, skewness)
     return np.where(is_straight, factor, 3 / bent * (np.cbrt(1 + bent * (factor - bent / 6)) - 1))
+
+
+def of_count(counts: NDArray[np.int_], n: int, confidence: float) -> tuple[FloatArray, FloatArray]:
+    """Low and high end for the probability of what is so counts times in n plain samples, arrays of one shape.
+
+    Clopper and Pearson's (Biometrika 26, 1934), right for any number of samples.
+    """
+    outside = (1 - confidence) / 2
+    # Where none or all are so, that end is certain, and the parameters here are only valid ones.
+    low = special.betaincinv(np.maximum(counts, 1), n - np.maximum(counts, 1) + 1, outside)
+    high = special.betainccinv(np.minimum(counts, n - 1) + 1, n - np.minimum(counts, n - 1), outside)
+    return np.where(counts > 0, low, 0.0), np.where(counts < n, high, 1.0)
 
 
 def ranks_at_random(n: int, level: float, confidence: float) -> tuple[int, int]:

@@ -21,11 +21,11 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy import stats
 
 from service.analysis.distributions import Distribution, Method, numbers_of, parts
 from service.analysis.evaluations import Evaluate, Evaluations, Failure, FloatArray
 from service.analysis.intervals import (
+    of_count,
     of_mean,
     ranks_at_random,
     ranks_of_replicates,
@@ -279,18 +279,13 @@ def _probability(
     value = seems[has].sum(axis=0) / with_results if with_results else np.full(seems.shape[1], np.nan)
     may_hold = ~passed
     may_hold[~has] = True
-    low = np.array([_exactly(int(count), n, confidence)[0] for count in held.sum(axis=0)])
-    high = np.array([_exactly(int(count), n, confidence)[1] for count in may_hold.sum(axis=0)])
+    low = of_count(held.sum(axis=0), n, confidence)[0]
+    high = of_count(may_hold.sum(axis=0), n, confidence)[1]
     if sampling.method != "random":
         low = np.minimum(low, _end(held, sampling, confidence, -1.0))
         high = np.maximum(high, _end(may_hold, sampling, confidence, 1.0))
     undecided = np.sum(~held & may_hold & has[:, None], axis=0)
     return Probability(Estimate(value, low, high), undecided)
-
-
-def _exactly(count: int, n: int, confidence: float) -> tuple[float, float]:
-    found = stats.binomtest(count, n).proportion_ci(confidence, method="exact")
-    return float(found.low), float(found.high)
 
 
 def _end(which: NDArray[np.bool_], sampling: Sampling, confidence: float, side: float) -> FloatArray:

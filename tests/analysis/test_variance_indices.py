@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+import pytest
 from scipy import stats
 
 from service.analysis.distributions import uniform
@@ -57,10 +58,52 @@ def test_indices_are_those_of_scipy_on_the_same_cases() -> None:
     np.testing.assert_allclose(found.total.value[0], expected.total_order, rtol=1e-9, atol=1e-12)
 
 
+@pytest.mark.parametrize("count", [16, 64, 256])
+def test_intervals_of_indices_hold_as_often_as_they_say(count: int) -> None:
+    """Over 200 seeds each misses no more often than 999 of 1000 binomials do, and they are no wider for it."""
+    exact = np.array([[0.313905, 0.442411, 0], [0.557589, 0.442411, 0.243684]])
+    misses, widths = np.zeros((2, 3)), []
+    for seed in range(200):
+        found = variance_indices(Counted([ishigami]), ISHIGAMI_SPREADS, count, seed=seed)
+        low, high = (
+            np.array([getattr(part, end)[0] for part in (found.first, found.total)]) for end in ("low", "high")
+        )
+        misses += (exact < low) | (high < exact)
+        widths.append(high - low)
+    assert np.all(misses <= stats.binom.ppf(0.999, 200, 0.05)), misses
+    # The standard error of as many plain rows is about 1 / sqrt(count) of the first, and more of the total.
+    assert np.all(np.median(widths, axis=0) < 16 / count**0.5)
+
+
+def test_indices_of_noise_within_the_bounds_are_not_told() -> None:
+    evaluate = Counted([lambda x, y: 20 + 1e-9 * np.sin(1e7 * x) + 1e-10 * np.sin(1e7 * y)], bound=2e-9)
+    found = variance_indices(evaluate, [uniform(0, 1)] * 2, 64)
+    for part in (found.first, found.total):
+        assert np.all(np.isnan([part.value, part.low, part.high]))
+
+
+def test_intervals_of_indices_are_wider_by_the_bounds() -> None:
+    """A tenth of y is hidden by as large an error: x alone may be behind all of it."""
+
+    def found(bound: float) -> FloatArray:
+        evaluate = Counted([lambda x, y: x + 0.1 * y + bound * np.sin(1e5 * y)], bound)
+        total = variance_indices(evaluate, [uniform(0, 1)] * 2, 256).total
+        return np.array([total.low[0], total.high[0]])
+
+    sure, unsure = found(1e-9), found(0.05)
+    exact = np.array([1, 0.01]) / 1.01
+    assert np.all((sure[0] <= exact) & (exact <= sure[1]))
+    assert np.all((unsure[0] <= exact) & (exact <= unsure[1]))
+    assert sure[0, 1] > 0.008
+    assert unsure[0, 1] == 0
+
+
 def test_indices_do_without_rows_that_failed() -> None:
     found = variance_indices(Counted([ishigami], fails=lambda x, y, z: x > 3.1), ISHIGAMI_SPREADS, 512, seed=1)
     assert 0 < found.n_left_out < 30
     np.testing.assert_allclose(found.first.value[0], [0.3139, 0.4424, 0], atol=0.06)
+    np.testing.assert_array_equal(found.first.low, -np.inf)
+    np.testing.assert_array_equal(found.total.high, np.inf)
 
 
 def test_indices_of_nothing_but_failures_are_no_numbers() -> None:
