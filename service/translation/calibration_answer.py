@@ -221,7 +221,9 @@ def _consistency(found: Calibration, asked: Asked) -> dict[str, Any]:
 
 
 def _agreement(found: Calibration, asked: Asked) -> str:
-    left = f"chi-squared is {found.chi_squared:.3g} with {found.degrees_of_freedom:.3g} degrees of freedom"
+    freedom = f"{found.degrees_of_freedom:.3g}"
+    degrees = f"{freedom} degree{'' if freedom == '1' else 's'} of freedom"
+    left = f"chi-squared is {found.chi_squared:.3g} with {degrees}"
     if asked.question.uncertainties == "relative":
         return f"The uncertainties were multiplied by {found.scaled_by:.3g} to agree with what the readings leave over."
     if found.consistent is None:

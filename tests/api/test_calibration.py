@@ -94,6 +94,13 @@ async def test_a_wall_has_the_film_and_the_conductivity_of_a_straight_line(clien
     assert hot["standard_uncertainty"] == pytest.approx(math.sqrt(at_hot @ covariance @ at_hot), rel=1e-4)
 
 
+async def test_a_single_degree_of_freedom_is_told_as_one(client: httpx.AsyncClient) -> None:
+    question = wall(seed=4)
+    question["readings"] = question["readings"][:3]
+    found, _ = await calibrated(client, question)
+    assert "with 1 degree of freedom, which chance" in found["consistency"]["sentence"]
+
+
 async def test_planted_values_lie_in_their_intervals_in_nearly_all_trials(client: httpx.AsyncClient) -> None:
     hits = {"film": 0, "conductivity": 0}
     for seed in range(12):
