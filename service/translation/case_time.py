@@ -76,7 +76,8 @@ def check_time(analysis: Analysis, settings: Settings) -> None:
     """Raise TooCostly where the cases of a question would take far longer than a client may wait.
 
     The time that the request as it stands took tells so, and then that of a case, because the first thing that a
-    service computes takes longer than what comes after it.
+    service computes takes longer than what comes after it. Where its solution was kept from before it took less than a
+    case does; nothing is refused wrongly for that.
     """
     if not _is_far_beyond(analysis, analysis.prepared.seconds, settings):
         return
