@@ -86,7 +86,7 @@ def acceptance(study: ReadStudy, settings: Settings, keep_going: KeepGoing) -> A
             expected,
             settings.study_cases,
         )
-    check_work(study.analysis.prepared.estimates(), settings)
+    check_work(study.analysis.prepared.estimates(study.analysis.finest), settings)
     columns = study.columns
     return Acceptance(
         study.study_id,

@@ -4,8 +4,12 @@ from __future__ import annotations
 
 import asyncio
 import io
+import itertools
 import json
+import time
 from collections.abc import AsyncIterator, Iterator
+from pathlib import Path
+from types import SimpleNamespace
 
 import httpx
 import numpy as np
@@ -14,6 +18,9 @@ import pytest
 from service.models.operation import Diagnostics
 from service.models.studies import StudiesAnswer, StudyAnswer, StudyTable
 from service.settings import Settings
+from service.store import ProblemStore
+from service.studies.reading import acceptance, read_study
+from service.translation.solving import Solver
 from tests.api.client import check_problem_document, open_client, pointers
 from tests.api.halden_reach import Json, changed
 from tests.studies.asking import cases_of, coefficients, cold_side, quick, read_csv, run_to_end
@@ -404,3 +411,15 @@ async def test_long_tables_come_in_pieces_and_not_as_one_document(settings: Sett
             answer = await client.get(shown["results"], params={"format": form})
             assert answer.status_code == 200
             assert len(answer.text.splitlines()) == lines
+
+
+def test_busy_machine_makes_no_chunks_of_single_cases(
+    settings: Settings, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    solver = Solver(settings, ProblemStore(tmp_path / "problems.sqlite3", 1_000_000))
+    asked = cases_of(coefficients(100))
+    study = read_study(asked["study"], asked["question"], solver, settings, lambda: None)
+    # The processor does little while the clock goes on: the time for trying cases is over at once.
+    clock = SimpleNamespace(perf_counter=itertools.count(step=10.0).__next__, thread_time=time.thread_time)
+    monkeypatch.setattr("service.translation.case_time.time", clock)
+    assert acceptance(study, settings, lambda: None).chunk_size > 5
