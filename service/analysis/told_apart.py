@@ -35,6 +35,9 @@ NEARLY = 0.2
 # Powers above it are no product anyone means.
 MOST_POWER = 10.0
 
+# Products beyond exp of it, or below its inverse, are beyond numbers or nearly so.
+MOST_LOGARITHM = 600.0
+
 # A combination holds where its value is within so many standard uncertainties of that at the solution: an interval of
 # 95 % and a quarter more, for what fits along the way stop short of.
 HOLDS = 2.5
@@ -47,7 +50,8 @@ class Held:
     """How far a combination holds along the places that meet the readings about as well as the solution.
 
     throughout: at all of them. numbers: of its members at these places, shape (n_places, n_members). values: of the
-    combination there, shape (n_places,). holds: where it holds, from the solution on, shape (n_places,).
+    combination there, shape (n_places,), NaN where it has none. holds: where it holds, from the solution on, of the
+    same shape.
     """
 
     numbers: FloatArray
@@ -182,7 +186,7 @@ def _forms(members: tuple[int, ...], factors: FloatArray, values: FloatArray, ro
     forms: list[tuple[Form, FloatArray]] = [("sum", multiples)]
     if np.all(values > 0):
         forms.append(("reciprocals", powers * values / values[0]))
-        if np.abs(powers).max() <= MOST_POWER:
+        if np.abs(powers).max() <= MOST_POWER and np.isfinite(_value("product", powers, values)):
             forms.insert(0, ("product", powers))
     best = _spread(multiples, root) / float(np.linalg.norm(multiples))
     simple = [(form, rounded) for form, plain in forms if (rounded := _rounded(plain)) is not None]
@@ -209,9 +213,15 @@ def _spread(slopes: FloatArray, root: FloatArray) -> float:
 
 
 def _value(form: Form, factors: FloatArray, values: FloatArray) -> float:
-    if form == "product":
-        return math.prod(value**factor for value, factor in zip(values.tolist(), factors.tolist(), strict=True))
-    return float(factors @ (values if form == "sum" else 1 / values))
+    """The combination; NaN where it has none, or none that is a number."""
+    if form == "sum":
+        return float(factors @ values)
+    if not np.all(values > 0):
+        return math.nan
+    if form == "reciprocals":
+        return float(factors @ (1 / values))
+    logarithm = float(factors @ np.log(values))
+    return math.exp(logarithm) if abs(logarithm) < MOST_LOGARITHM else math.nan
 
 
 def _slopes(form: Form, factors: FloatArray, values: FloatArray) -> FloatArray:

@@ -78,7 +78,10 @@ class PlaceOfCombination(Model):
     """Other values of numbers that are hardly told apart, with which the readings are met about as well."""
 
     values: list[float] = Field(description="The numbers, in the order of `numbers`.", examples=[[120.0, 9.0]])
-    combination: float = Field(description="What the combination is there.", examples=[13.3])
+    combination: float | None = Field(
+        description="What the combination is there; null where it has no value, as a product with a number of zero.",
+        examples=[13.3],
+    )
     holds: bool = Field(
         description="Whether that is still within 2.5 standard uncertainties of its value.", examples=[True]
     )

@@ -110,7 +110,7 @@ def _together(group: Combination, found: Calibration, asked: Asked) -> dict[str,
         "places": []
         if held is None
         else [
-            {"values": numbers.tolist(), "combination": float(value), "holds": bool(holds)}
+            {"values": numbers.tolist(), "combination": number_or_none(value), "holds": bool(holds)}
             for numbers, value, holds in zip(held.numbers, held.values, held.holds, strict=True)
         ],
     }

@@ -252,6 +252,16 @@ def test_a_combination_of_no_form_is_said_to_hold_near_the_solution_only() -> No
     assert off.max() > 10
 
 
+def test_a_valley_that_leads_to_zero_is_followed_as_well() -> None:
+    evaluate = Counted(lambda p: np.array([np.exp(p[0] + p[1])]))
+    unknowns = [Unknown("a", -5, 5, 1), Unknown("b", -5, 5, 1.2)]
+    (group,) = calibrate(evaluate, unknowns, readings_of(np.exp([2.0]), 0.01), starts=1).together
+    assert (group.form, group.factors) == ("sum", (1.0, 1.0))
+    assert group.held is not None
+    assert group.held.throughout
+    assert group.held.numbers.min() < 0
+
+
 def test_three_that_are_known_to_a_factor_are_told_by_two_ratios() -> None:
     depths = np.array([0.045, 0.025, 0.005])
     evaluate = Counted(lambda p: 20 + p[2] * (depths / p[0] + 1 / p[1]))
