@@ -216,8 +216,14 @@ class SpreadAnswer(Model):
 
     result: str = Field(description="The name of the result.", examples=["probe A"])
     unit: str = Field(description="Its unit.", examples=["degC"])
-    mean: EstimateAnswer = Field(description="Mean of the cases with results.")
-    standard_deviation: EstimateAnswer = Field(description="Standard deviation of the cases with results.")
+    mean: EstimateAnswer = Field(
+        description="Mean of the cases with results. Where others have none nothing is known of that of all, and the "
+        "interval has no ends."
+    )
+    standard_deviation: EstimateAnswer = Field(
+        description="Standard deviation of the cases with results. Where others have none the interval, which is of "
+        "all, is from 0 without an upper end."
+    )
     lowest: float | None = Field(description="The lowest seen.", examples=[51.7])
     highest: float | None = Field(description="The highest seen.", examples=[57.2])
     error_bound: float | None = Field(
@@ -225,7 +231,10 @@ class SpreadAnswer(Model):
         "bound is known.",
         examples=[4e-8],
     )
-    quantiles: list[QuantileAnswer] = Field(description="The quantiles asked for.")
+    quantiles: list[QuantileAnswer] = Field(
+        description="The quantiles asked for, of the cases with results. Others may lie below all of these or "
+        "above, and widen the intervals."
+    )
 
 
 class CountedFailure(Model):
@@ -276,11 +285,13 @@ class ResultIndices(Model):
 
 
 class VarianceIndicesAnswer(Model):
-    """Sobol indices, with intervals that are estimates, by resampling the base sample."""
+    """Sobol indices, with approximate intervals, from how the independent designs of the base sample differ."""
 
     case_count: int = Field(description="How many cases were computed for them.", examples=[1280])
     left_out: int = Field(
-        description="Rows of the base sample that were left out, since a case of theirs failed.", examples=[0]
+        description="Rows of the base sample that were left out, since a case of theirs failed; if there are any, the "
+        "intervals have no ends.",
+        examples=[0],
     )
     results: list[ResultIndices] = Field(description="Each result, in the order asked.")
 
