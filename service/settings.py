@@ -81,6 +81,9 @@ class Settings(BaseSettings):
     studies_waiting: PositiveInt = Field(
         64, description="Studies that may wait to be run; more are answered 503 with Retry-After."
     )
+    studies_sent: PositiveInt = Field(
+        8, description="Tables and answers of studies sent at the same time; more are answered 503 with Retry-After."
+    )
     study_workers: PositiveInt = Field(
         default_factory=lambda: os.cpu_count() or 1,
         description="Processes that compute cases of studies.",

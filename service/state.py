@@ -13,6 +13,7 @@ from service.kept import Kept
 from service.metrics import Metrics
 from service.settings import Settings
 from service.store import ProblemStore
+from service.studies.sending import Sending
 from service.studies.studies import Studies
 from service.translation.solving import Solver
 from service.worker import Worker
@@ -37,12 +38,14 @@ class State:
     worker: Worker
     solver: Solver
     studies: Studies
+    sending: Sending
     answers: Kept[KeptAnswer]
     metrics: Metrics
 
     def close(self) -> None:
         """Stop the work and let go of the files."""
         self.worker.close()
+        self.sending.close()
         self.studies.close()
         self.store.close()
 
@@ -65,7 +68,7 @@ def open_state(settings: Settings) -> State:
     studies = Studies(settings, solver)
     studies.resume()
     metrics = Metrics(worker, studies, solver.kept, answers)
-    return State(settings, store, worker, solver, studies, answers, metrics)
+    return State(settings, store, worker, solver, studies, Sending(settings.studies_sent), answers, metrics)
 
 
 def state_of(request: Request) -> State:

@@ -5,11 +5,11 @@ from __future__ import annotations
 import asyncio
 import re
 import time
+from collections.abc import Iterator
 from contextlib import suppress
 from typing import Annotated, Any
 
 from fastapi import APIRouter, Body, Header, Path, Query, Request, Response
-from fastapi.responses import StreamingResponse
 from fastapi.sse import EventSourceResponse
 from pydantic_core import to_json
 
@@ -17,22 +17,14 @@ from service.media import ARRAYS_FORM, FORMS, JSON, Form, check_accepts_json, ch
 from service.models.analysis_answer import AnalysisAnswer
 from service.models.studies import StudiesAnswer, StudyAnswer, StudyQuestion, StudyTable
 from service.openapi import answer_examples, body_examples, error_responses
-from service.refusals import NotAcceptable, TooCostly, UnknownStudy
+from service.refusals import NotAcceptable, UnknownStudy
 from service.request_body import StrictJsonRoute
-from service.settings import Settings
 from service.state import State, state_of
-from service.studies.answers import unpack_answer
-from service.studies.forms import (
-    BINARY_TABLE,
-    CSV_TABLE,
-    FORM_OF_WORD,
-    IN_PIECES,
-    LINES_TABLE,
-    TABLE_FORMS,
-    size_at_most,
-    table_shown,
-)
+from service.studies.answers import answer_in
+from service.studies.forms import BINARY_TABLE, CSV_TABLE, FORM_OF_WORD, LINES_TABLE, TABLE_FORMS, table_in
+from service.studies.pages import extent_of
 from service.studies.progress import ADDRESS, LOOK_EVERY_SECONDS, events, study_shown
+from service.studies.sending import Pieces
 from service.studies.store import Study
 from service.translation.answers import KeepGoing
 from service.translation.case_columns import failures_shown
@@ -179,17 +171,17 @@ async def study_results(request: Request, study_id: StudyId, form_word: FormWord
     """Numbers, results and error bounds of each case that is done, in the order of the cases, and how limits hold.
 
     A case that could not be computed has no results and says why. Cases that are not done yet are left out. JSON lines
-    and CSV come piece by piece and may be of any length.
+    and CSV come piece by piece and may be of any length; one that is broken off is a part of the table.
     """
     form = _form_of(request, form_word)
     state = state_of(request)
-    study = await asyncio.to_thread(state.studies.study, study_id)
-    if form in IN_PIECES:
-        pieces = (table_shown(study, piece) for piece in state.studies.store.pieces(study_id))
-        return StreamingResponse(IN_PIECES[form](pieces), media_type=form.media_type, headers=_headers_of(form))
-    _check_size(size_at_most(study, form), state.settings, "JSON lines and CSV come piece by piece.")
-    body, _ = await state.worker.run(lambda _: form.encode(table_shown(study, state.studies.store.table(study_id))))
-    return _response_in(form, body)
+
+    def pieces() -> Iterator[bytes]:
+        study = state.studies.study(study_id)
+        store = state.studies.store
+        yield from table_in(form, store, extent_of(store, study), state.settings.answer_bytes)
+
+    return _sent(state, form, pieces())
 
 
 @router.get(
@@ -210,17 +202,10 @@ async def study_answer(request: Request, study_id: StudyId) -> Response:
     form = choose_form(request.headers.get("accept"), FORMS)
     state = state_of(request)
 
-    def work(_: KeepGoing) -> bytes:
-        packed = state.studies.answer(study_id)
-        advice = "The table of cases comes piece by piece as JSON lines or CSV."
-        if form == ARRAYS_FORM:
-            _check_size(len(packed), state.settings, advice)
-            return packed
-        _check_size(len(packed) * form.bytes_a_number // ARRAYS_FORM.bytes_a_number, state.settings, advice)
-        return form.encode(unpack_answer(packed))
+    def pieces() -> Iterator[bytes]:
+        yield answer_in(form, state.studies.answer(study_id), state.settings.answer_bytes)
 
-    body, _ = await state.worker.run(work)
-    return _response_in(form, body)
+    return _sent(state, form, pieces())
 
 
 @router.get(
@@ -324,22 +309,8 @@ def _form_of(request: Request, word: str | None) -> Form:
     return FORM_OF_WORD[word]
 
 
-def _response_in(form: Form, body: bytes) -> Response:
-    return Response(body, media_type=form.media_type, headers=_headers_of(form))
-
-
-def _headers_of(form: Form) -> dict[str, str]:
+def _sent(state: State, form: Form, pieces: Iterator[bytes]) -> Response:
     headers = {"Vary": "Accept"}
     if form.media_type != JSON:
         headers["Content-Disposition"] = f'attachment; filename="{form.file_name}"'
-    return headers
-
-
-def _check_size(size: int, settings: Settings, advice: str) -> None:
-    """Raise TooCostly for a document of more bytes than allowed. advice: what to do instead."""
-    if size > settings.answer_bytes:
-        raise TooCostly(
-            f"The document would take up to {size} bytes; at most {settings.answer_bytes} are sent. {advice}",
-            size,
-            settings.answer_bytes,
-        )
+    return Pieces(state.sending, pieces, form.media_type, headers)

@@ -35,9 +35,6 @@ DAMAGED = "The stored studies are damaged; the log of the service has more for w
 _BUSY_SECONDS = 5.0
 _RETRY_AFTER_SECONDS = 30
 
-# Cases of a table that are handed out at once, about: some megabytes as text.
-_PIECE_CASES = 2048
-
 _TABLES = """
 CREATE TABLE IF NOT EXISTS study (
     id TEXT PRIMARY KEY, position INTEGER NOT NULL, name TEXT NOT NULL, question BLOB NOT NULL, release TEXT NOT NULL,
@@ -113,16 +110,6 @@ class Study:
     def is_over(self) -> bool:
         """Whether nothing more happens by itself."""
         return self.state not in ("waiting", "running")
-
-
-@dataclass(frozen=True)
-class Table:
-    """The cases that are done, in their order. case: number of each, counted over all waves."""
-
-    columns: Columns
-    case: FloatArray
-    numbers: FloatArray
-    evaluations: Evaluations
 
 
 @dataclass(frozen=True)
@@ -336,58 +323,21 @@ class StudyStore:
             raise WrongState("The answer that was kept is damaged; delete the study and post it again.")
         return bytes(content)
 
-    def table(self, study_id: str) -> Table:
-        """The cases of a study that are done. Those of a chunk that is damaged on disk have failed."""
-        with self._ready():
-            study = self._known(study_id)
-            waves = self._waves(study_id)
-            rows = self._connection.execute(
-                "SELECT wave, first, cases, digest, payload FROM chunk WHERE study = ? ORDER BY wave, first",
-                (study_id,),
-            ).fetchall()
-        return _table(study.columns, waves, rows)
-
-    def pieces(self, study_id: str) -> Iterator[Table]:
-        """The same table piece by piece, the first of which is empty, so that a long one is never held as a whole."""
-        with self._ready():
-            study = self._known(study_id)
-            waves = self._connection.execute(
-                "SELECT number, cases FROM wave WHERE study = ? ORDER BY number", (study_id,)
-            ).fetchall()
-        yield _table(study.columns, [], [])
-        most = max(1, _PIECE_CASES // study.chunk_size)
-        begin = 0
-        for wave, count in waves:
-            last, numbers = -1, b""
-            while True:
-                with self._ready():
-                    # Deleted meanwhile, it must not seem to have ended here.
-                    self._known(study_id)
-                    numbers = numbers or self._one(
-                        "SELECT numbers FROM wave WHERE study = ? AND number = ?", study_id, wave
-                    )
-                    rows = self._connection.execute(
-                        "SELECT wave, first, cases, digest, payload FROM chunk WHERE study = ? AND wave = ? "
-                        "AND first > ? ORDER BY first LIMIT ?",
-                        (study_id, wave, last, most),
-                    ).fetchall()
-                if not rows:
-                    break
-                last = rows[-1][1]
-                yield _table(study.columns, [(wave, count, numbers)], rows, begin)
-            begin += count
-
     def failures(self, study_id: str, most: int) -> list[tuple[int, Failure]]:
-        """The first cases that failed, with their numbers."""
+        """The first cases that failed, with their numbers, counted over all waves."""
         with self._ready():
-            study = self._known(study_id)
-            waves = self._waves(study_id)
+            width = len(self._known(study_id).columns.results)
             rows = self._connection.execute(
-                "SELECT wave, first, cases, digest, payload FROM chunk WHERE study = ? AND failed > 0 "
+                "SELECT first + (SELECT COALESCE(SUM(cases), 0) FROM wave WHERE study = chunk.study AND "
+                "number < chunk.wave), cases, digest, payload FROM chunk WHERE study = ? AND failed > 0 "
                 "ORDER BY wave, first LIMIT ?",
                 (study_id, most),
             ).fetchall()
-        return sorted(_table(study.columns, waves, rows).evaluations.failures.items())[:most]
+        found: dict[int, Failure] = {}
+        for begin, count, digest, payload in rows:
+            failures = checked(payload, digest, count, width).failures
+            found |= {begin + case: failure for case, failure in failures.items()}
+        return sorted(found.items())[:most]
 
     def report(self) -> StudiesReport:
         """What the store holds; also shows that it answers."""
@@ -401,6 +351,12 @@ class StudyStore:
         """Let go of the file."""
         with self._lock:
             self._connection.close()
+
+    @contextmanager
+    def reading(self) -> Iterator[sqlite3.Connection]:
+        """The connection to oneself, for a moment, to read what is kept. Raises StoreBusy."""
+        with self._ready():
+            yield self._connection
 
     @contextmanager
     def _ready(self) -> Iterator[None]:
@@ -438,11 +394,6 @@ class StudyStore:
     def _study(self, study_id: str) -> Study | None:
         row = self._connection.execute(f"{_SELECT} WHERE id = ?", (study_id,)).fetchone()
         return None if row is None else _study_of(row)
-
-    def _waves(self, study_id: str) -> list[Any]:
-        return self._connection.execute(
-            "SELECT number, cases, numbers FROM wave WHERE study = ? ORDER BY number", (study_id,)
-        ).fetchall()
 
     def _known(self, study_id: str) -> Study:
         study = self._study(study_id)
@@ -531,6 +482,11 @@ def unpacked(payload: bytes, cases: int, results: int) -> Evaluations:
     return Evaluations(numbers[0], numbers[1], failures)
 
 
+def checked(payload: bytes, digest: str, cases: int, results: int) -> Evaluations:
+    """What was packed; where that is not what was kept any more, cases that have failed."""
+    return unpacked(payload, cases, results) if _digest(payload) == digest else _lost(cases, results)
+
+
 def _digest(payload: bytes) -> str:
     return hashlib.sha256(payload).hexdigest()
 
@@ -540,28 +496,3 @@ def _lost(cases: int, results: int) -> Evaluations:
     nothing = np.full((cases, results), np.nan)
     failure = Failure("damaged", "What was kept of this case is damaged; delete the study and post it again.")
     return Evaluations(nothing, nothing.copy(), dict.fromkeys(range(cases), failure))
-
-
-def _table(columns: Columns, waves: list[Any], rows: list[Any], begin: int = 0) -> Table:
-    """Chunks of some waves as a table. begin: how many cases there are before these waves."""
-    width, results = len(columns.numbers), len(columns.results)
-    begins, numbers, total = {}, {}, begin
-    for wave, count, blob in waves:
-        begins[wave] = total
-        numbers[wave] = np.frombuffer(blob, "<f8").astype(float, copy=False).reshape(count, width)
-        total += count
-    case: list[Any] = [np.zeros(0, np.int64)]
-    given: list[Any] = [np.zeros((0, width))]
-    values: list[Any] = [np.zeros((0, results))]
-    bounds: list[Any] = [np.zeros((0, results))]
-    failures: dict[int, Failure] = {}
-    for wave, first, count, digest, payload in rows:
-        outcome = unpacked(payload, count, results) if _digest(payload) == digest else _lost(count, results)
-        here = begins[wave] + first
-        case.append(np.arange(here, here + count))
-        given.append(numbers[wave][first : first + count])
-        values.append(outcome.values)
-        bounds.append(outcome.bounds)
-        failures |= {here + index: failure for index, failure in outcome.failures.items()}
-    evaluations = Evaluations(np.concatenate(values), np.concatenate(bounds), failures)
-    return Table(columns, np.concatenate(case), np.concatenate(given), evaluations)

@@ -19,6 +19,7 @@ from service.refusals import QueueFull, StoreBusy, StoreFull, UnknownStudy, Wron
 from service.studies.chunk_work import ChunkOutcome
 from service.studies.chunks import DurableEvaluate, TooManyCases, chunk_size_for, chunks_of
 from service.studies.crew import CrewLost, TimeOver, WorkerLost
+from service.studies.pages import Table, extent_of, whole_table
 from service.studies.patience import patiently
 from service.studies.store import Acceptance, NotRepeatable, Study, StudyStore
 from service.translation.case_columns import Column, Columns
@@ -34,6 +35,13 @@ def computed(cases: FloatArray) -> Evaluations:
     }
     values[list(failures)] = np.nan
     return Evaluations(values, 1e-9 * np.abs(values), failures)
+
+
+def table_of(store: StudyStore) -> Table:
+    """The whole table of the one study."""
+    study = store.study("s")
+    assert study is not None
+    return whole_table(store, extent_of(store, study))
 
 
 @dataclass
@@ -138,7 +146,7 @@ def test_waves_that_are_done_are_not_computed_again(store: StudyStore) -> None:
     study = store.study("s")
     assert study is not None
     assert (study.done, study.failed) == (107, 5)
-    table = store.table("s")
+    table = table_of(store)
     check_same(table.evaluations, computed(np.concatenate([cases, more])))
     np.testing.assert_array_equal(table.numbers, np.concatenate([cases, more]))
     np.testing.assert_array_equal(table.case, np.arange(107))
@@ -164,7 +172,7 @@ def test_study_that_was_stopped_asks_for_the_missing_chunks_only(store: StudySto
     assert study is not None
     assert 0 < study.done < 300
     # What is done is a table of its own, with the numbers of its cases.
-    table = store.table("s")
+    table = table_of(store)
     check_same(table.evaluations, computed(cases[table.case]))
     check_same(durable(store, second)(cases), computed(cases))
     assert sorted(first.cases + second.cases) == cases[:, 0].tolist()
@@ -191,7 +199,7 @@ def test_damage_on_disk_is_not_told_as_numbers(store: StudyStore, path: Path) ->
         other.execute("UPDATE chunk SET payload = zeroblob(length(payload)) WHERE first = 16")
         other.execute("UPDATE chunk SET payload = substr(payload, 9) WHERE first = 32")
         other.execute("UPDATE answer SET content = x'00'")
-    found = store.table("s").evaluations
+    found = table_of(store).evaluations
     lost = [case for case, failure in found.failures.items() if failure.code == "damaged"]
     assert lost == list(np.flatnonzero(np.isnan(found.values[:, 0])))
     assert {16, 32} <= set(lost) < set(range(64))
@@ -355,31 +363,6 @@ def test_study_that_was_begun_again_is_not_forgotten_for_its_former_attempt(stor
     assert store.forget("s", latter.attempt)
     assert store.study("s") is None
     # Whoever looked at it a moment ago is told so, whatever comes next.
-    for look in (store.table, lambda study: store.failures(study, 20), store.question):
+    for look in (lambda _: extent_of(store, latter), lambda study: store.failures(study, 20), store.question):
         with pytest.raises(UnknownStudy):
             look("s")
-
-
-def test_pieces_of_a_table_make_the_whole(store: StudyStore, monkeypatch: pytest.MonkeyPatch) -> None:
-    monkeypatch.setattr("service.studies.store._PIECE_CASES", 40)
-    evaluate = durable(store, Crew())
-    for cases in (wave(100, -5.0), wave(0), wave(70, 500.0)):
-        evaluate(cases)
-    whole, (first, *pieces) = store.table("s"), store.pieces("s")
-    assert len(first.case) == 0
-    assert max(len(piece.case) for piece in pieces) <= 40
-    for part in ("case", "numbers"):
-        np.testing.assert_array_equal(np.concatenate([getattr(piece, part) for piece in pieces]), getattr(whole, part))
-    values = [piece.evaluations.values for piece in pieces]
-    np.testing.assert_array_equal(np.concatenate(values), whole.evaluations.values)
-    failures = [failure for piece in pieces for failure in piece.evaluations.failures.items()]
-    assert failures == list(whole.evaluations.failures.items())
-
-    store.cancel("s")
-    begun_to_read = store.pieces("s")
-    for _ in range(2):
-        next(begun_to_read)
-    store.forget("s", attempt_of(store))
-    # It must not seem to have ended here.
-    with pytest.raises(UnknownStudy):
-        next(begun_to_read)
