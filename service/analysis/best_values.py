@@ -42,12 +42,12 @@ BOUNDS_INSIDE = 2.0
 # along a curved valley a hundred times narrower than long some 500 were seen.
 LEFT = 1000.0
 
-# A kink is looked for around the best case this far along each number, in parts of the ranges, and a quarter as far: what
-# bends does so a sixteenth as much there, what has a kink a quarter. More than an eighth, the geometric mean, is a kink.
+# A kink is looked for around the best case this far along each number, in parts of the ranges, and a quarter as far:
+# what bends does so a sixteenth as much there, a kink a quarter. More than an eighth, their geometric mean, is a kink.
 KINK_AT, KINK_NEARER, KINK_BENDS = 4e-3, 0.25, 0.125
 
-# Where limits weigh more than this, goals and margins changing by about 1 over the ranges, or had to be charged more than
-# that before they held, they leave hardly any room between them, as in a cusp: what a model promises there says little.
+# Where limits weigh more than this, goals and margins changing by about 1 over the ranges, or had to be charged more
+# than that before they held, they leave hardly any room between them, as in a cusp: a model promises little there.
 HEAVIEST, DEAREST = 50.0, 1e4
 
 # What counts as one: goals, and margins that bind, in parts of the scale; numbers in parts of their ranges.
@@ -89,9 +89,10 @@ class Best:
 
     numbers: shape (n_numbers,). values, bounds: of all results, shape (n_results,). goal, goal_bound: what was to be
     best. left: an estimate of how much better it could be nearby; None where limits are missed, no search converged
-    there, or results have kinks there, so that nothing is known of it. leading: places in the goal's list of results that are the largest (least) together. margins, margin_bounds:
-    of each limit. binding: the limits that hold only just. at_low, at_high: the numbers at an end of their range.
-    clearances: of rectangles, shape (n_clearances,). held_elsewhere: whether each limit surely holds in some case.
+    there, or results have kinks there, so that nothing is known of it. leading: places in the goal's list of results
+    that are the largest (least) together. margins, margin_bounds: of each limit. binding: the limits that hold only
+    just. at_low, at_high: the numbers at an end of their range. clearances: of rectangles, shape (n_clearances,).
+    held_elsewhere: whether each limit surely holds in some case.
     """
 
     numbers: FloatArray

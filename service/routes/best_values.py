@@ -32,8 +32,9 @@ async def best_values(
 
     Of several results the largest is made as low as can be, or the least as high. Places all over the ranges are looked
     at first, then local searches go on from the best of them and from the numbers as they stand. Rectangles, such as
-    pads that are being placed, can be kept apart. Limits are aimed at so that they hold for certain. A local search
-    finds what is best nearby and proves nothing of what lies elsewhere; how many searches came to the same is told.
+    pads that are being placed, can be kept apart. Limits are aimed at so that they hold for certain; where no values
+    hold them those that miss them least are told, and a warning names which limits. A local search finds what is best
+    nearby and proves nothing of what lies elsewhere; how many searches came to the same is told.
     Name the places that may be hottest one by one: a single `highest` over many of them has kinks, which stop a search.
     """
     return await answer(request, question, _CALL)

@@ -32,7 +32,9 @@ async def sizing(
 
     Each edge is told to full accuracy, with the limit that ends the interval there, a bound on the edge, and how fast
     the result changes with the number. Where limits hold nowhere the value is told at which the worst of them is missed
-    least. The range is looked at place by place first; what is narrower than their spacing and does not show can be
-    missed. A list of sizes that can be had is held against the limits one by one.
+    least, and which limits exclude each other. The range is looked at place by place first, and whatever shows between
+    places is followed; what is narrower than their spacing and does not show can be missed. A list of sizes that can be
+    had is held against the limits one by one. With tolerances limits have to hold at all corners of the tolerance zone,
+    and each edge names the corner that binds; each place then takes as many cases as there are corners and ends.
     """
     return await answer(request, question, _CALL)

@@ -28,8 +28,8 @@ NO_ROOM = "No place was found at which all rectangles are as far apart as they h
 UNDECIDED = "With these values it is not certain that all limits hold: the errors leave it open."
 USED_UP = "Searches were stopped because no more cases were allowed; more `most_cases` may find better values."
 NO_ESTIMATE = (
-    "How much better it could be nearby is not known: a search stopped there without converging, or a result has a kink "
-    "there, as one `highest` over several places has. Name such places one by one as results of the goal."
+    "How much better it could be nearby is not known: a search stopped there without converging, or a result has a "
+    "kink there, as one `highest` over several places has. Name such places one by one as results of the goal."
 )
 NO_INFLUENCE = "The numbers have no influence on the goal: in all cases it is the same to within the error bounds."
 ALL_FAILED = "Every case failed; `failures` has the reasons."
@@ -196,7 +196,7 @@ def _remarks(found: BestValues, outcome: dict[str, Any], wanted: _Wanted) -> lis
         remarks.append(warning("limits-missed", _missed(best["limits"], wanted), "#/best_values/best/all_held"))
     else:
         remarks.append(warning("local-search", LOCAL, "#/best_values"))
-        if best["goal"]["search_error_estimate"] is None:
+        if found.complete and best["goal"]["search_error_estimate"] is None:
             remarks.append(warning("no-estimate", NO_ESTIMATE, "#/best_values/best/goal/search_error_estimate"))
     if best["all_held"] == "undecided":
         remarks.append(warning("undecided", UNDECIDED, "#/best_values/best/all_held"))
