@@ -16,7 +16,7 @@ export const QUESTIONS = {
   cases: { ...cases, title: "What if: a table of cases", hint: "All results for many values of some numbers." },
   sensitivities: { ...plain, title: "What matters: sensitivities", hint: "By how much each result changes with each number, and which matter most." },
   tolerances: { ...tolerances, title: "What tolerances add up to", hint: "How far each result may lie: at worst, as a root sum of squares, and sampled, with how often limits hold." },
-  sizing: { ...sizing, title: "Size one number", hint: "All values of a number for which every limit holds." },
+  sizing: { ...sizing, title: "Size one number", hint: "All values of a number for which every limit holds, also where it and further numbers are off." },
   "best-values": { ...best, title: "Best values of a few numbers", hint: "Values with which results are as low or high as can be and all limits hold." },
   calibration: { ...calibration, title: "Calibrate from readings", hint: "What readings say about numbers that are not known." },
 };

@@ -77,18 +77,19 @@ function missedWords({ value, missed, corner }, answer) {
   const never = missed.filter(({ holds_elsewhere: elsewhere }) => !elsewhere).map(calledBy);
   const why = never.length ? `${never.join(" and ")} ${never.length === 1 ? "holds" : "hold"} nowhere in the range.`
     : missed.length > 1 ? "Each of them holds elsewhere in the range, but not all at once." : "It holds elsewhere in the range, but not all others do there.";
-  return `They are missed least at ${number.name} = ${withUnit(brief(value), number.unit)}: ${each.join(", ")}${corner ? `, the worst with ${cornerWords(corner)}` : ""}. ${why}`;
+  return `They are missed least at ${number.name} = ${withUnit(brief(value), number.unit)}: ${each.join(", ")}${corner ? `, the worst with ${numbersOf(corner).join(", ")}` : ""}. ${why}`;
 }
 
 /** A case of a tolerance zone. */
-const cornerWords = (corner) => corner.map(({ number, unit, value }) => `${number} = ${withUnit(brief(value), unit)}`).join(", ");
+const numbersOf = (corner) => corner.map(({ number, unit, value }) => `${number} = ${withUnit(brief(value), unit)}`);
 
 const tolerancesTable = (zones) => table("What may be off: limits hold at the corners of these tolerances and at the ends of each", ["Number", "As it stands", "Up", "Down"], zones.map(({ number, unit, nominal, plus, minus }) => [
   rowHead(headed(number, unit)), make("td", {}, nominal === null ? "is looked for" : brief(nominal)), make("td", {}, brief(plus)), make("td", {}, brief(minus))]), "wraps");
 
 const EDGES = { target: "the value", range: "end of the range", invalid: "no result beyond" };
 
-const underCell = (corner) => (corner ? make("span", { class: "known" }, `worst with ${cornerWords(corner)}`) : null);
+/** The case of a tolerance zone that is worst, line by line. */
+const underCell = (corner) => (corner ? ["worst with", ...numbersOf(corner)].map((words) => make("span", { class: "known" }, words)) : null);
 
 function edgeCell(edge) {
   return make("td", {}, shown(edge.value, edge.error_bound), make("span", { class: "known" }, edge.error_bound > 0 ? `\u00b1 ${bounded(edge.error_bound)}` : "exact"),

@@ -28,7 +28,7 @@ export function tolerancesView(answer) {
 function heldVerdict({ limits, all_held: held }) {
   const missed = limits.filter((limit) => limit.held === "no").length;
   if (held === "yes") return verdict("good", "All limits hold in the worst case", "Every case that was computed within the tolerances surely holds them.");
-  if (held === "no") return verdict("bad", missed === 1 ? "One limit does not hold in the worst case" : `${missed} limits do not hold in the worst case`, "That is certain: a case within the tolerances was computed that does not hold it.");
+  if (held === "no") return verdict("bad", missed === 1 ? "One limit does not hold in the worst case" : `${missed} limits do not hold in the worst case`, `That is certain: a case within the tolerances was computed that does not hold ${missed === 1 ? "it" : "one of them"}.`);
   return verdict("open", "Undecided", "In the worst case a margin is smaller than its error, or a case within the tolerances has no result.");
 }
 
@@ -38,7 +38,7 @@ function limitsTable({ limits, stack_ups: stacks, units }) {
     const step = differenceOf(unit, units);
     const words = (value, bound) => withUnit(shown(value, Math.max(bound ?? 0, Math.abs(value) * 1e-5)), step);
     const margin = (held, value, bound, under) => make("td", { class: held === "no" ? "missed" : null },
-      value === null ? "\u2013" : `${SIGNS[held]} ${words(value, bound)}`, under ? make("span", { class: "known" }, under) : null);
+      value === null ? "\u2013" : `${SIGNS[held]}\u00a0${words(value, bound)}`, under ? make("span", { class: "known" }, under) : null);
     const added = limit.first_order_margin === null ? null : `to first order ${words(limit.first_order_margin, 0)}`;
     const chance = limit.probability;
     return [
