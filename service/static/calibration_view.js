@@ -38,10 +38,11 @@ function consistencyVerdict({ verdict: word, sentence, scaled_by: scaled }) {
 }
 
 function togetherVerdict({ numbers, expression, value, standard_uncertainty: uncertainty, are_told: told, holds, near = [] }) {
-  const where = holds === "near" || holds === "not_followed" ? `near ${numbers.map((name, index) => `${name} = ${brief(Number(near[index].toPrecision(4)))}`).join(" and ")}${holds === "near" ? ", and not far from there," : ""} that ` : "";
+  const places = numbers.map((name, index) => `${name} = ${brief(Number((near[index] ?? NaN).toPrecision(4)))}`).join(" and ");
+  const where = { near: `, near ${places} only, that `, not_followed: `, near ${places}, that ` }[holds] ?? " ";
   const known = `${within(value, uncertainty)}${uncertainty === null ? "" : ` \u00b1 ${bounded(uncertainty)}`}`;
   return verdict("open", `${numbers.join(" and ")} ${told ? "are hardly told apart" : "cannot be told apart"}`,
-    `The readings tell ${where}${expression} = ${known}${told ? ", and each by itself much less well" : ", and nothing of each by itself"}. A reading elsewhere, or a value from a data sheet, may part them.`);
+    `The readings tell${where}${expression} = ${known}${told ? ", and each by itself much less well" : ", and nothing of each by itself"}. A reading elsewhere, or a value from a data sheet, may part them.`);
 }
 
 function unknownsTable({ unknowns }) {
