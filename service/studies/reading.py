@@ -33,7 +33,12 @@ KeepGoing = Callable[[], None]
 # What is kept free beside the numbers of a case: for the answer, which tells them again, and for failures in words.
 _ROOM_FACTOR = 3
 _ROOM_A_CASE = 200
+# An answer tells of each case and limit the margin with its bound, and whether it holds in a word.
+_ROOM_A_LIMIT = 60
 _LEAST_ROOM = 100_000
+# What becomes of a case and of a limit of it while the answer is made of all of them: measured, and something on top.
+_MEMORY_FACTOR = 3
+_MEMORY_A_LIMIT = 200
 
 
 @dataclass(frozen=True)
@@ -86,8 +91,16 @@ def acceptance(study: ReadStudy, settings: Settings, keep_going: KeepGoing) -> A
             expected,
             settings.study_cases,
         )
-    check_work(study.analysis.prepared.estimates(study.analysis.finest), settings)
     columns = study.columns
+    memory = expected * (_MEMORY_FACTOR * columns.bytes_a_case + _MEMORY_A_LIMIT * len(columns.limits))
+    if memory > settings.memory_bytes:
+        raise TooCostly(
+            f"The answer would be made of up to {expected} cases, which take about {memory} bytes of memory; at most "
+            f"{settings.memory_bytes} are allowed. Ask for fewer cases, results or limits, or in several studies.",
+            memory,
+            settings.memory_bytes,
+        )
+    check_work(study.analysis.prepared.estimates(study.analysis.finest), settings)
     return Acceptance(
         study.study_id,
         study.name,
@@ -96,8 +109,12 @@ def acceptance(study: ReadStudy, settings: Settings, keep_going: KeepGoing) -> A
         columns,
         chunk_size_for(seconds_a_case(study.analysis, settings, keep_going)),
         expected,
-        _LEAST_ROOM + expected * (_ROOM_FACTOR * columns.bytes_a_case + _ROOM_A_CASE),
+        _LEAST_ROOM + expected * _room_a_case(columns),
     )
+
+
+def _room_a_case(columns: Columns) -> int:
+    return _ROOM_FACTOR * columns.bytes_a_case + _ROOM_A_LIMIT * len(columns.limits) + _ROOM_A_CASE
 
 
 def _validated(model: type[AnalysisQuestion], content: Any) -> AnalysisQuestion:

@@ -331,6 +331,16 @@ async def test_bounds_hold_before_work_begins(settings: Settings) -> None:
         answers = [await client.post("/v1/studies", json=cases_of(coefficients(20), f"wall {n}")) for n in range(2)]
         assert [answer.status_code for answer in answers] == [202, 503]
         assert "retry-after" in answers[1].headers
+    narrow = quick(settings).model_copy(
+        update={"memory_bytes": 200_000, "studies_folder": settings.studies_folder / "a"}
+    )
+    async with open_client(narrow) as client:
+        document = check_problem_document(await client.post("/v1/studies", json=cases_of(coefficients(2000))), 422)
+        # A number and two results with their bounds, as many times as they are there while the answer is made.
+        assert (document["estimate"], document["limit"]) == (2000 * 3 * 40, 200_000)
+        limited = cases_of(coefficients(1000))
+        limited["question"]["limits"] = [{"result": "loss", "at_most": 2000}]
+        assert check_problem_document(await client.post("/v1/studies", json=limited), 422)["estimate"] == 1000 * 320
     small = quick(settings).model_copy(update={"studies_bytes": 1000, "studies_folder": settings.studies_folder / "b"})
     async with open_client(small) as client:
         check_problem_document(await client.post("/v1/studies", json=cases_of(coefficients(20))), 507)
