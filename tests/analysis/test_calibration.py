@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 import mpmath
 import numpy as np
 import pytest
@@ -297,7 +299,7 @@ def test_where_all_is_linear_only_sums_are_told(start: float) -> None:
 def test_an_unknown_nothing_depends_on_is_not_told_alone() -> None:
     evaluate = Counted(lambda p: np.array([p[0], np.exp(p[0])]))
     unknowns = [Unknown("a", 0, 2, 0.5), Unknown("idle", 1, 9, 3)]
-    found = calibrate(evaluate, unknowns, readings_of(np.array([1.0, np.e]), 0.01))
+    found = calibrate(evaluate, unknowns, readings_of(np.array([1.0, math.e]), 0.01))
     assert [estimate.told for estimate in found.estimates] == [True, False]
     assert (found.estimates[1].low, found.estimates[1].high) == (1, 9)
     assert found.together == ()
@@ -511,7 +513,7 @@ def test_cases_that_fail_are_gone_around() -> None:
         failures = {int(row): Failure("no", "None.") for row in np.flatnonzero(np.isnan(values[:, 0]))}
         return Evaluations(values, 1e-12 * np.abs(values), failures)
 
-    found = calibrate(evaluate, [Unknown("a", 0, 3, 0.1)], readings_of(np.array([np.e, 1.0]), 0.1))
+    found = calibrate(evaluate, [Unknown("a", 0, 3, 0.1)], readings_of(np.array([math.e, 1.0]), 0.1))
     assert found.estimates[0].value == pytest.approx(1.0, abs=1e-4)
 
     def nothing(cases: FloatArray, *, accuracy: float | None = None) -> Evaluations:
@@ -520,7 +522,7 @@ def test_cases_that_fail_are_gone_around() -> None:
         )
 
     with pytest.raises(NothingSeen) as raised:
-        calibrate(nothing, [Unknown("a", 0, 3, 0.1)], readings_of(np.array([np.e, 1.0]), 0.1))
+        calibrate(nothing, [Unknown("a", 0, 3, 0.1)], readings_of(np.array([math.e, 1.0]), 0.1))
     assert raised.value.failure == Failure("no", "None.")
 
 
