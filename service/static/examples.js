@@ -206,6 +206,7 @@ export const EXAMPLES = [
   { title: "Sight port: what matters? (sensitivities)", call: "sensitivities", file: "sensitivities_sight_port", view: { plane: { axis: "z", position: "0" } } },
   { title: "Crown brick as it is made (tolerances)", call: "tolerances", file: "tolerances_crown_brick", view: { plane: { axis: "y", position: "57" } } },
   { title: "Crown brick: how thick? (sizing)", call: "sizing", file: "sizing_crown_brick", view: { plane: { axis: "y", position: "57" } } },
+  { title: "Crown brick whatever its tolerances (sizing)", call: "sizing", file: "sizing_crown_brick_tolerances", view: { plane: { axis: "y", position: "57" } } },
   { title: "Cold plate: where do its parts go? (best values)", call: "best-values", file: "best_values_cold_plate", view: { plane: { axis: "z", position: "0" } } },
   { title: "Throat block: film and conductivity from thermocouples (calibration)", call: "calibration", file: "calibration_throat_block", view: { plane: { axis: "y", position: "40" } } },
   { title: "Burner tile: a heat load from probes (calibration of a map)", call: "calibration", file: "calibration_burner_tile", view: { plane: { axis: "z", position: "60" } } },

@@ -78,6 +78,7 @@ def shapes(page: Page, index: int = 0) -> list[dict[str, Any]]:
         ("what matters", "decision", "sensitivities_sight_port"),
         ("as it is made", "decision", "tolerances_crown_brick"),
         ("how thick", "decision", "sizing_crown_brick"),
+        ("whatever its tolerances", "decision", "sizing_crown_brick_tolerances"),
         ("where do its parts go", "decision", "best_values_cold_plate"),
         ("from thermocouples", "decision", "calibration_throat_block"),
         ("heat load from probes", "decision", "calibration_burner_tile"),
@@ -106,6 +107,8 @@ def test_limits_from_what_is_typed(page: Page) -> None:
     sheet = page.locator("#limits-sheet")
     expect(sheet).to_contain_text("531.3095")
     expect(sheet.get_by_role("heading")).to_have_text("Results")
+    # Where it is stands beside it.
+    expect(sheet).to_contain_text("z = 300 mm")
     limit(page, "highest, z high", at_most="500")
     with page.expect_response("**/v1/limits") as caught:
         compute(page)
@@ -224,6 +227,39 @@ def test_sizing_is_drawn_with_its_limit_and_where_it_holds(page: Page) -> None:
     expect(page.locator("#decision-stale")).to_be_visible()
 
 
+def test_limits_that_exclude_each_other_are_named(page: Page) -> None:
+    name_brick_results(page)
+    # Of the range up to 600 mm the cold side has less than 400 degC beyond 463 mm, and the loss 170 W below 320 mm.
+    limit(page, "cold side", at_most="400")
+    limit(page, "loss", at_least="170")
+    page.locator("#question").select_option("sizing")
+    add_number(page, "length along z", low="150", high="600", count="9")
+    answer_now(page)
+    decision = page.locator("#decision")
+    expect(decision).to_contain_text("Nowhere in the range do all limits hold")
+    expect(decision).to_contain_text("Each of them holds elsewhere in the range, but not all at once.")
+
+
+def test_sizing_tells_the_corner_of_tolerances_that_ends_an_interval(page: Page) -> None:
+    name_brick_results(page)
+    limit(page, "cold side", at_most="500")
+    page.locator("#question").select_option("sizing")
+    add_number(page, "length along z", low="150", high="600", count="5")
+    page.get_by_label("Number 1: Tolerance").select_option("even")
+    page.get_by_label("Number 1: Plus and minus").fill("2")
+    add_number(page, FILM)
+    page.get_by_label("Number 2: Tolerance").select_option("relative")
+    page.get_by_label("Number 2: Part, such as 0.05").fill("0.1")
+    with page.expect_response("**/v1/sizing") as caught:
+        answer_now(page)
+    (interval,) = caught.value.json()["sizing"]["intervals"]
+    # A thinner brick that is cooled less is the hottest.
+    assert cold_mean(interval["low"]["value"] - 2, 12.6) == pytest.approx(500, abs=1e-6)
+    decision = page.locator("#decision")
+    expect(decision).to_contain_text("All limits hold in one interval, with all tolerances")
+    expect(decision.get_by_role("table").first).to_contain_text(f"{FILM} = 12.6 W/(m² K)")
+
+
 def test_tolerances_are_drawn_against_the_limit(page: Page) -> None:
     name_brick_results(page)
     limit(page, "cold side", at_most="540")
@@ -238,6 +274,8 @@ def test_tolerances_are_drawn_against_the_limit(page: Page) -> None:
         answer_now(page)
     answer = caught.value.json()
     (held,) = answer["limits"]
+    assert held["held"] == answer["all_held"] == "no"
+    expect(page.locator("#decision")).to_contain_text("One limit does not hold in the worst case")
     expect(page.locator("#decision")).to_contain_text(f"{100 * held['probability']['value']:.3g} %")
     lines = [[shape["x0"] for shape in shapes(page, index)] for index in (0, 1)]
     assert lines == [[540], [540]]
@@ -304,12 +342,16 @@ def test_numbers_that_cannot_be_told_apart_are_named(page: Page) -> None:
             "value": 13.88,
             "standard_uncertainty": 0.12,
             "are_told": False,
+            "holds": "near",
+            "near": [44.7, 3.22],
+            "places": [],
         }
     ]
     page.route("**/v1/calibration", lambda route: route.fulfill(json=answer))
     answer_now(page)
     expect(page.locator("#decision")).to_contain_text("film and conductivity cannot be told apart")
     expect(page.locator("#decision")).to_contain_text("film / conductivity = 13.88 ± 0.12")
+    expect(page.locator("#decision")).to_contain_text("near film = 44.7 and conductivity = 3.22")
 
 
 @pytest.mark.parametrize("watched", [PHONE, DESKTOP], indirect=True, ids=["phone", "desk"])
