@@ -130,8 +130,9 @@ export function marksOf(plane, extremes, results, words) {
     const place = placeIn(plane, at);
     return place ? [{ ...place, ...mark }] : [];
   });
-  // Of several at one place the first is drawn, with the words of all.
-  const isAt = (mark) => (other) => mark.x === other.x && mark.y === other.y;
+  // Of several that would cover each other the first is drawn, with the words of all.
+  const isNear = (one, other, along) => Math.abs(one - other) <= 0.01 * (along.at(-1) - along[0]);
+  const isAt = (mark) => (other) => isNear(mark.x, other.x, plane.columns) && isNear(mark.y, other.y, plane.rows);
   return marks.filter((mark, index) => marks.findIndex(isAt(mark)) === index)
     .map((mark) => ({ ...mark, words: marks.filter(isAt(mark)).map((one) => one.words).join("; ") }));
 }
