@@ -1,4 +1,4 @@
-"""Imports point one way: app, routes, worker and studies, translation, core; the core stands alone."""
+"""Imports point one way: app, routes, worker and studies, translation, core; the core and the analyses stand alone."""
 
 from __future__ import annotations
 
@@ -18,10 +18,12 @@ from tests.import_graph import ROOT, graph, part_of, read_sources
 SOURCES = read_sources("service")
 GRAPH = graph(SOURCES)
 
-ALLOWED_IN_CORE = {"numpy", "scipy", *sys.stdlib_module_names}
+# Parts that import nothing of the others, and what they may import.
+ALONE = ("core", "analysis")
+ALLOWED_ALONE = {"numpy", "scipy", *sys.stdlib_module_names}
 
 # A part imports parts of lower rank and of its own. Parts that are not here have no rank.
-RANK = {"core": 0, "translation": 1, "translate": 1, "worker": 2, "studies": 2, "routes": 3, "app": 4}
+RANK = {"core": 0, "analysis": 0, "translation": 1, "translate": 1, "worker": 2, "studies": 2, "routes": 3, "app": 4}
 
 # What a client writes and how it is read knows nothing of how it is answered.
 DESCRIPTIONS = {"models", "units", "unit_text", "settings"}
@@ -31,12 +33,12 @@ ANSWERING = {"app", "routes", "worker", "studies", "translation", "translate"}
 COMES_WITH = {"starlette": "fastapi", "pydantic-core": "pydantic"}
 
 
-def strangers_in_core(imported: Mapping[str, set[str]]) -> set[tuple[str, str]]:
+def strangers(imported: Mapping[str, set[str]]) -> set[tuple[str, str]]:
     return {
         (module, name)
         for module, names in imported.items()
         for name in names
-        if part_of(module) == "core" and part_of(name) != "core" and name.partition(".")[0] not in ALLOWED_IN_CORE
+        if part_of(module) in ALONE and part_of(name) != part_of(module) and name.partition(".")[0] not in ALLOWED_ALONE
     }
 
 
@@ -49,9 +51,9 @@ def arrows_that_point_up(imported: Mapping[str, set[str]]) -> set[tuple[str, str
     return {(module, name) for module, names in imported.items() for name in names if is_up(module, name)}
 
 
-def test_core_imports_only_numpy_scipy_the_standard_library_and_itself() -> None:
-    assert any(part_of(module) == "core" for module in GRAPH)
-    assert strangers_in_core(GRAPH) == set()
+def test_core_and_analyses_import_only_numpy_scipy_the_standard_library_and_themselves() -> None:
+    assert set(ALONE) <= {part_of(module) for module in GRAPH}
+    assert strangers(GRAPH) == set()
 
 
 def test_imports_point_one_way() -> None:
@@ -92,10 +94,12 @@ def test_core_can_be_used_without_the_packages_of_the_service() -> None:
         ("service.core.bad", "def late() -> None:\n    from fastapi import FastAPI"),
         ("service.core.bad", "from service import units"),
         ("service.core.bad", "import service.worker"),
+        ("service.analysis.bad", "from service.core import solve"),
+        ("service.analysis.bad", "import pydantic"),
     ],
 )
-def test_stranger_in_the_core_would_be_found(module: str, source: str) -> None:
-    assert [found for found, _ in strangers_in_core(graph(SOURCES | {module: source}))] == [module]
+def test_stranger_where_none_belongs_would_be_found(module: str, source: str) -> None:
+    assert [found for found, _ in strangers(graph(SOURCES | {module: source}))] == [module]
 
 
 @pytest.mark.parametrize(
