@@ -132,9 +132,13 @@ export function marksOf(plane, extremes, results, words) {
   });
   // Of several that would cover each other the first is drawn, with the words of all.
   const isNear = (one, other, along) => Math.abs(one - other) <= 0.01 * (along.at(-1) - along[0]);
-  const isAt = (mark) => (other) => isNear(mark.x, other.x, plane.columns) && isNear(mark.y, other.y, plane.rows);
-  return marks.filter((mark, index) => marks.findIndex(isAt(mark)) === index)
-    .map((mark) => ({ ...mark, words: marks.filter(isAt(mark)).map((one) => one.words).join("; ") }));
+  const drawn = [];
+  for (const mark of marks) {
+    const first = drawn.find((other) => isNear(mark.x, other.x, plane.columns) && isNear(mark.y, other.y, plane.rows));
+    if (first) first.words += `; ${mark.words}`;
+    else drawn.push(mark);
+  }
+  return drawn;
 }
 
 const SIGNS = {
