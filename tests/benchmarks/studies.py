@@ -28,7 +28,8 @@ from tests.benchmarks.over_http import QUESTION
 from tests.studies.asking import cases_of, coefficients
 from tests.studies.serving import Served, cases_stored, serve
 
-CASES = 800
+# As many as make a study last: beginning one and its last chunks take their time whatever its length.
+CASES = 2400
 FULL_CASES = 20_000
 KILLS = 5
 REQUESTS = 150
