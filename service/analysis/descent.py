@@ -8,7 +8,7 @@ and that charge fall by a fair part of what was promised. Where curvature alone 
 the values found at its end.
 
 Source: Fletcher, Practical Methods of Optimization, 2nd ed., 1987, sections 14.4 (exact penalty, trust region) and 14.5
-(second-order correction); Powell, Lecture Notes in Mathematics 630 (1978) 144 (damping).
+(second-order correction); Powell, LNM 630 (1978) 144 (damping).
 """
 
 from __future__ import annotations

@@ -84,7 +84,7 @@ def test_the_largest_of_several_is_lowest(
 
 
 def test_limits_that_bend_are_held_for_sure_at_the_optimum() -> None:
-    # Rosen and Suzuki 1965, problem 43 of Hock and Schittkowski, Lecture Notes in Economics 187, 1981: -44.
+    # Rosen and Suzuki 1965, problem 43 of Hock and Schittkowski, LNEMS 187, 1981: -44.
     asked = Functions(ROSEN_SUZUKI, bound=1e-8, noise=1.0)
     outcome = found(asked, [(-3.0, 3.0)] * 4, Goal((0,), "lowest"), ROSEN_SUZUKI_LIMITS)
     best = outcome.best
