@@ -13,7 +13,7 @@ const plain = { mostNumbers: () => 100, fieldsOfNumber: () => () => [], ownField
 
 /** By the last part of each call's address: what it is called, and what it tells. */
 export const QUESTIONS = {
-  cases: { ...cases, title: "What if: a table of cases", hint: "All results for many values of some numbers." },
+  cases: { ...cases, title: "Results of many cases", hint: "All results for many values of some numbers." },
   sensitivities: { ...plain, title: "What matters: sensitivities", hint: "By how much each result changes with each number, and which matter most." },
   tolerances: { ...tolerances, title: "What tolerances add up to", hint: "How far each result may lie: at worst, as a root sum of squares, and sampled, with how often limits hold." },
   sizing: { ...sizing, title: "Size one number", hint: "All values of a number for which every limit holds, also where it and further numbers are off." },

@@ -52,7 +52,7 @@ def test_study_runs_to_its_end_and_is_found_again(page: Page) -> None:
     expect(study).to_be_hidden()
     page.get_by_text("Studies begun on this page").click()
     page.get_by_role(
-        "button", name="What if: a table of cases: Halden Reach, crown brick with a hot spot"
+        "button", name="Results of many cases: Halden Reach, crown brick with a hot spot"
     ).first.click()
     expect(page.locator("#study-state")).to_contain_text("Finished.")
     expect(page.locator("#decision")).to_contain_text(f"Holds for certain in {HELD} of {CASES} cases")
