@@ -51,9 +51,7 @@ def test_study_runs_to_its_end_and_is_found_again(page: Page) -> None:
     page.reload()
     expect(study).to_be_hidden()
     page.get_by_text("Studies begun on this page").click()
-    page.get_by_role(
-        "button", name="Results of many cases: Halden Reach, crown brick with a hot spot"
-    ).first.click()
+    page.get_by_role("button", name="Results of many cases: Halden Reach, crown brick with a hot spot").first.click()
     expect(page.locator("#study-state")).to_contain_text("Finished.")
     expect(page.locator("#decision")).to_contain_text(f"Holds for certain in {HELD} of {CASES} cases")
 
